@@ -1,0 +1,1 @@
+"""Builds a synthesis group's handbook of substitution and elimination conditions from reviewed records."""
