@@ -1,0 +1,1 @@
+"""The chemistry room: structures, what reacts in them, and what becomes of them. The only home of RDKit."""

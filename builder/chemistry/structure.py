@@ -1,0 +1,587 @@
+"""Structure: one chemical structure, read from text, in an atom order that depends on the structure alone.
+
+Atoms are numbered by their place in the canonical SMILES (`AtomId`). However the author ordered the atoms,
+the same structure has the same numbering, so results may be cached by structure, and a site, an edit and a
+drawing speak of the same atom. `Structure.typed_order` leads back to the author's own order, for messages.
+"""
+
+import logging
+import re
+from collections.abc import Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass, field
+from functools import cached_property, lru_cache
+
+from rdkit import Chem, rdBase
+from rdkit.Chem import rdinchi, rdMolDescriptors
+
+__all__ = [
+    "MAX_CHARACTERS",
+    "MAX_HEAVY_ATOMS",
+    "MAX_RINGS",
+    "MAX_STEREO_ELEMENTS",
+    "Atom",
+    "AtomId",
+    "Stereocentres",
+    "Structure",
+    "StructureError",
+    "name_atom",
+    "parse_inchi",
+    "parse_rxn",
+    "parse_smiles",
+    "stereo_key",
+]
+
+AtomId = int
+"""Place of an atom in the canonical SMILES of its structure, from 0."""
+
+MAX_CHARACTERS = 2_000
+"""Longest text read; protects the readers themselves, which take linear time."""
+MAX_HEAVY_ATOMS = 200
+"""Protects everything that grows with size: canonical ranking, InChI, coordinates."""
+MAX_RINGS = 40
+"""Independent rings (bonds - atoms + pieces); protects ring perception, which explodes on dense cages."""
+MAX_STEREO_ELEMENTS = 60
+"""Stereocentres and stereo double bonds as written; protects canonical ranking and stereo perception."""
+
+_INORGANIC_CATIONS = frozenset(
+    {"Li", "Na", "K", "Rb", "Cs", "Mg", "Ca", "Ba", "Ag", "Cu", "Zn", "Tl", "Hg", "Cd"}
+)
+_INORGANIC_ANIONS = frozenset(
+    {"[F-]", "[Cl-]", "[Br-]", "[I-]", "[OH-]", "O=[N+]([O-])[O-]", "O=S(=O)([O-])O", "O=S(=O)([O-])[O-]"}
+    | {"F[B-](F)(F)F", "F[P-](F)(F)(F)(F)F", "F[Sb-](F)(F)(F)(F)F", "[O-][Cl+3]([O-])([O-])[O-]"}
+    | {"O=C([O-])O", "O=C([O-])[O-]", "O=P([O-])(O)O"}
+)
+
+
+class StructureError(ValueError):
+    """Text that is no structure we can work with.
+
+    reason: what is wrong, in a chemist's words.
+    position: character of the text it stands at, from 0; None if unknown.
+    mend: how to put it right.
+    """
+
+    def __init__(self, reason: str, mend: str, position: int | None = None) -> None:
+        super().__init__(reason if position is None else f"{reason} (character {position + 1})")
+        self.reason = reason
+        self.mend = mend
+        self.position = position
+
+    def __reduce__(self) -> tuple[type["StructureError"], tuple[str, str, int | None]]:
+        return (type(self), (self.reason, self.mend, self.position))
+
+
+@dataclass(frozen=True, slots=True)
+class Stereocentres:
+    """How many tetrahedral stereocentres have a drawn configuration, and how many have not."""
+
+    specified: int
+    unspecified: int
+
+    @property
+    def total(self) -> int:
+        """Return all stereocentres, drawn or not."""
+        return self.specified + self.unspecified
+
+
+@dataclass(frozen=True, slots=True)
+class Atom:
+    """One atom as the rest of the handbook sees it, with no RDKit in it.
+
+    neighbours: (atom, bond order) in ascending atom order; 1.5 is an aromatic bond.
+    ring_sizes: sizes of the smallest rings through the atom, ascending.
+    """
+
+    id: AtomId
+    symbol: str
+    charge: int
+    hydrogens: int
+    isotope: int
+    aromatic: bool
+    hybridisation: str
+    neighbours: tuple[tuple[AtomId, float], ...]
+    ring_sizes: tuple[int, ...]
+
+
+class _Complaints(logging.Handler):
+    """Keeps the last lines RDKit would have printed to the terminal."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.lines: list[str] = []
+
+    def emit(self, record: logging.LogRecord) -> None:
+        self.lines.append(record.getMessage())
+        del self.lines[:-8]
+
+
+_complaints = _Complaints()
+rdBase.LogToPythonLogger()
+_rdkit_log = logging.getLogger("rdkit")
+_rdkit_log.handlers[:] = [_complaints]
+_rdkit_log.propagate = False
+
+
+@contextmanager
+def _heard_complaints() -> Iterator[list[str]]:
+    _complaints.lines.clear()
+    yield _complaints.lines
+
+
+@dataclass(frozen=True, eq=False)
+class Structure:
+    """A chemical structure: equal, hashed and pickled by its canonical isomeric SMILES.
+
+    smiles: canonical isomeric SMILES; its atom order is the numbering of this structure.
+    typed: the text it was read from, as given.
+    typed_order: for each atom of the typed text, its AtomId; explicit hydrogens are not counted.
+    mol: the RDKit molecule, atoms in canonical order; for the chemistry room only, never changed in place.
+    """
+
+    smiles: str
+    typed: str = field(repr=False)
+    typed_order: tuple[AtomId, ...] = field(repr=False)
+    mol: Chem.Mol = field(repr=False)
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, Structure) and self.smiles == other.smiles
+
+    def __hash__(self) -> int:
+        return hash(self.smiles)
+
+    def __lt__(self, other: "Structure") -> bool:
+        return self.smiles < other.smiles
+
+    def __str__(self) -> str:
+        return self.smiles
+
+    def __reduce__(self) -> tuple[object, tuple[str, str, tuple[AtomId, ...]]]:
+        return (_restore, (self.smiles, self.typed, self.typed_order))
+
+    @cached_property
+    def flat_smiles(self) -> str:
+        """Return the canonical SMILES without stereochemistry; isotopes stay."""
+        flat = Chem.Mol(self.mol)
+        Chem.RemoveStereochemistry(flat)
+        return Chem.MolToSmiles(flat)
+
+    @cached_property
+    def flat(self) -> "Structure":
+        """Return the same structure without stereochemistry."""
+        return parse_smiles(self.flat_smiles)
+
+    @cached_property
+    def inchi(self) -> str:
+        """Return the standard InChI; empty where InChI cannot express the structure."""
+        return str(rdinchi.MolToInchi(self.mol)[0])
+
+    @cached_property
+    def inchikey(self) -> str:
+        """Return the standard InChIKey; empty where InChI cannot express the structure."""
+        return rdinchi.InchiToInchiKey(self.inchi) if self.inchi else ""
+
+    @cached_property
+    def formula(self) -> str:
+        """Return the molecular formula in Hill order, charge last; isotopes are not separated."""
+        return str(rdMolDescriptors.CalcMolFormula(self.mol))
+
+    @cached_property
+    def mass(self) -> float:
+        """Return the average molar mass in g/mol; the mass of the isotope for a labelled atom."""
+        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in self.mol.GetAtoms())
+
+    @cached_property
+    def charge(self) -> int:
+        """Return the formal charge, in elementary charges."""
+        return Chem.GetFormalCharge(self.mol)
+
+    @cached_property
+    def heavy_atom_count(self) -> int:
+        """Return the number of atoms other than hydrogen and its isotopes."""
+        return self.mol.GetNumHeavyAtoms()
+
+    @cached_property
+    def radical_electrons(self) -> int:
+        """Return the number of unpaired electrons, most often a bracket atom that lacks its hydrogens."""
+        return sum(atom.GetNumRadicalElectrons() for atom in self.mol.GetAtoms())
+
+    @cached_property
+    def atoms(self) -> tuple[Atom, ...]:
+        """Return the atoms by AtomId, as plain values."""
+        rings = self.mol.GetRingInfo()
+        return tuple(
+            Atom(
+                id=atom.GetIdx(),
+                symbol=atom.GetSymbol(),
+                charge=atom.GetFormalCharge(),
+                hydrogens=atom.GetTotalNumHs(),
+                isotope=atom.GetIsotope(),
+                aromatic=atom.GetIsAromatic(),
+                hybridisation=str(atom.GetHybridization()).lower(),
+                neighbours=tuple(
+                    sorted(
+                        (b.GetOtherAtomIdx(atom.GetIdx()), b.GetBondTypeAsDouble()) for b in atom.GetBonds()
+                    )
+                ),
+                ring_sizes=tuple(sorted(rings.AtomRingSizes(atom.GetIdx()))),
+            )
+            for atom in self.mol.GetAtoms()
+        )
+
+    @cached_property
+    def symmetry_classes(self) -> tuple[int, ...]:
+        """Return one number per atom; atoms that symmetry makes equivalent share it."""
+        return tuple(Chem.CanonicalRankAtoms(self.mol, breakTies=False))
+
+    @cached_property
+    def fragments(self) -> tuple["Structure", ...]:
+        """Return the separate species, carbon-bearing ones first, then larger first, then by SMILES."""
+        pieces = [parse_smiles(piece) for piece in self.smiles.split(".")]
+        return tuple(sorted(pieces, key=lambda s: (not _has_carbon(s), -s.heavy_atom_count, s.smiles)))
+
+    @cached_property
+    def without_counter_ions(self) -> "Structure":
+        """Return the structure with inorganic counter-ions dropped; itself if nothing else would be left."""
+        kept = [s for s in self.fragments if not _is_inorganic_counter_ion(s)]
+        if not kept or len(kept) == len(self.fragments):
+            return self
+        return parse_smiles(".".join(sorted(s.smiles for s in kept)))
+
+    @cached_property
+    def without_isotopes(self) -> "Structure":
+        """Return the structure with every isotope label taken off."""
+        plain = Chem.Mol(self.mol)
+        for atom in plain.GetAtoms():
+            atom.SetIsotope(0)
+        return parse_smiles(Chem.MolToSmiles(Chem.RemoveHs(plain)))
+
+    @cached_property
+    def mirror_image(self) -> "Structure":
+        """Return the enantiomer; undrawn stereocentres stay undrawn."""
+        mirrored = Chem.Mol(self.mol)
+        for atom in mirrored.GetAtoms():
+            if atom.GetChiralTag() in _TETRAHEDRAL:
+                atom.InvertChirality()
+        return parse_smiles(Chem.MolToSmiles(mirrored))
+
+    @cached_property
+    def is_achiral(self) -> bool:
+        """Answer whether every stereocentre is drawn and it equals its mirror image, as meso compounds do."""
+        return self.stereocentres.unspecified == 0 and self.mirror_image == self
+
+    @cached_property
+    def stereocentres(self) -> Stereocentres:
+        """Return the count of tetrahedral stereocentres, para-stereocentres included."""
+        marks = [s.specified for s in self._stereo if s.type == Chem.StereoType.Atom_Tetrahedral]
+        drawn = sum(mark == Chem.StereoSpecified.Specified for mark in marks)
+        return Stereocentres(drawn, len(marks) - drawn)
+
+    @cached_property
+    def stereocentre_marks(self) -> dict[AtomId, bool]:
+        """Return, for each tetrahedral stereocentre, whether its configuration is drawn."""
+        return {
+            s.centeredOn: s.specified == Chem.StereoSpecified.Specified
+            for s in self._stereo
+            if s.type == Chem.StereoType.Atom_Tetrahedral
+        }
+
+    @cached_property
+    def _stereo(self) -> tuple[Chem.StereoInfo, ...]:
+        return tuple(Chem.FindPotentialStereo(Chem.Mol(self.mol), cleanIt=False, flagPossible=True))
+
+
+_MASS_OF_H = Chem.GetPeriodicTable().GetAtomicWeight(1)
+_TETRAHEDRAL = (Chem.ChiralType.CHI_TETRAHEDRAL_CW, Chem.ChiralType.CHI_TETRAHEDRAL_CCW)
+
+
+def name_atom(structure: Structure, atom: AtomId) -> str:
+    """Return the atom as its author would point at it: "C2 in CC(Br)CC", the second atom written.
+
+    Raises ValueError if the structure has no such atom.
+    """
+    if atom not in structure.typed_order:
+        raise ValueError(f"{structure.smiles} has no atom {atom}")
+    place = structure.typed_order.index(atom)
+    return f"{structure.mol.GetAtomWithIdx(atom).GetSymbol()}{place + 1} in {structure.typed}"
+
+
+def stereo_key(structure: Structure, kind: str) -> str:
+    """Return InChIKey and kind of stereo, the substrate part of a reaction key.
+
+    kind: the record's word (single enantiomer, racemate, ...), carried along so that a racemate and an
+    enantiomer differ. Either mirror image, or for a single stereocentre the flat formula too, gives the same
+    key for a racemate or an enantiomer not known. Counter-ions are dropped.
+    """
+    plain = structure.without_counter_ions
+    if kind in {"racemate", "unknown enantiomer"}:
+        either = (plain.flat,) if plain.stereocentres.total == 1 else (plain, plain.mirror_image)
+        return f"{min(_key_or_smiles(s) for s in either)} {kind}"
+    return f"{_key_or_smiles(plain)} {kind}"
+
+
+def _key_or_smiles(structure: Structure) -> str:
+    return structure.inchikey or structure.smiles
+
+
+@lru_cache(maxsize=8192)
+def parse_smiles(text: str) -> Structure:
+    """Return the structure a SMILES describes. Atom-map numbers are read and dropped.
+
+    Raises StructureError for what is no single, fully specified structure within the bounds of this module:
+    empty text, wildcards, SMARTS, reaction arrows, broken syntax, impossible valences, too large.
+    """
+    _refuse_what_is_no_smiles(text)
+    with _heard_complaints() as complaints:
+        raw = _unsanitised(text)
+        if raw is None:
+            raise _explain_syntax(text, complaints)
+        _refuse_excess(raw)
+        _sanitise(raw, text)
+    return _from_mol(raw, text)
+
+
+def parse_inchi(text: str) -> Structure:
+    """Return the structure an InChI describes.
+
+    Raises StructureError if the text is no InChI, or is larger than the bounds of this module.
+    """
+    stripped = text.strip()
+    if not stripped.startswith("InChI="):
+        raise StructureError("not an InChI", 'an InChI starts with "InChI=1S/"', 0)
+    if len(stripped) > MAX_CHARACTERS:
+        raise StructureError(f"longer than {MAX_CHARACTERS} characters", "give the structure as SMILES")
+    with _heard_complaints():
+        raw = rdinchi.InchiToMol(stripped, False, False)[0]
+        if raw is None:
+            raise StructureError(
+                "InChI that cannot be read", "copy it again, or give the structure as SMILES"
+            )
+        _refuse_excess(raw)
+        _sanitise(raw, None)
+        Chem.AssignStereochemistry(raw, cleanIt=True, force=True)
+    return _from_mol(raw, stripped)
+
+
+def parse_rxn(text: str) -> tuple[tuple[Structure, ...], tuple[Structure, ...]]:
+    """Return reactants and products of a CTfile RXN block (V2000 or V3000), in file order, no agents.
+
+    Raises StructureError if the block is malformed or one of its molecules is no fully specified structure.
+    """
+    lines = text.splitlines()
+    if not lines or not lines[0].startswith("$RXN"):
+        raise StructureError("not an RXN block", 'its first line is "$RXN"', 0)
+    newer = "V3000" in lines[0]
+    reactants, products = _rxn_blocks_v3000(text) if newer else _rxn_blocks_v2000(text, lines)
+    return tuple(map(_from_molblock, reactants)), tuple(map(_from_molblock, products))
+
+
+def _rxn_blocks_v2000(text: str, lines: list[str]) -> tuple[list[str], list[str]]:
+    blocks = [block.lstrip("\r").removeprefix("\n") for block in text.split("$MOL")[1:]]
+    counts = re.match(r"^([ \d]{3})([ \d]{3})", lines[4] if len(lines) > 4 else "")
+    if counts is None or not all(group.strip() for group in counts.groups()):
+        raise StructureError("RXN block without counts of reactants and products", "write the file again")
+    n_reactants, n_products = (int(group) for group in counts.groups())
+    if len(blocks) < n_reactants + n_products:
+        raise StructureError("RXN block with fewer molecules than it announces", "write the file again")
+    return blocks[:n_reactants], blocks[n_reactants : n_reactants + n_products]
+
+
+def _rxn_blocks_v3000(text: str) -> tuple[list[str], list[str]]:
+    def ctabs(role: str) -> list[str]:
+        part = re.search(rf"M  V30 BEGIN {role}(.*?)M  V30 END {role}", text, re.DOTALL)
+        found = re.findall(r"M  V30 BEGIN CTAB.*?M  V30 END CTAB", part.group(1) if part else "", re.DOTALL)
+        return [f"\n\n\n  0  0  0     0  0            999 V3000\n{ctab}\nM  END\n" for ctab in found]
+
+    return ctabs("REACTANT"), ctabs("PRODUCT")
+
+
+def _from_molblock(block: str) -> Structure:
+    with _heard_complaints():
+        try:
+            raw = Chem.MolFromMolBlock(block, sanitize=False, removeHs=False)
+        except RuntimeError:
+            raw = None
+        if raw is None:
+            raise StructureError("molecule in the RXN block that cannot be read", "write the file again")
+        _refuse_excess(raw)
+        _sanitise(raw, None)
+        if raw.GetNumConformers():
+            Chem.AssignChiralTypesFromBondDirs(raw)
+            Chem.DetectBondStereochemistry(raw)
+        Chem.AssignStereochemistry(raw, cleanIt=True, force=True)
+        return _from_mol(raw, None)
+
+
+def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
+    """Return the Structure of a sanitised molecule, its atoms put into canonical order."""
+    written = [a.GetIdx() for a in raw.GetAtoms()]
+    for atom in raw.GetAtoms():
+        atom.SetAtomMapNum(0)
+        atom.SetIntProp("_written", atom.GetIdx())
+    mol = Chem.RemoveHs(raw, sanitize=False) if any(a.GetAtomicNum() == 1 for a in raw.GetAtoms()) else raw
+    Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
+    place = {a.GetIntProp("_written"): a.GetIdx() for a in mol.GetAtoms()}
+    canonical = mol
+    # RDKit's canonical SMILES is not always a fixed point of reading and writing; another round makes it one.
+    smiles = ""
+    for _ in range(4):
+        again = Chem.MolToSmiles(canonical)
+        if again == smiles:
+            break
+        smiles = again
+        order = {
+            int(old): new
+            for new, old in enumerate(canonical.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"])
+        }
+        place = {key: order[at] for key, at in place.items()}
+        canonical = Chem.MolFromSmiles(smiles)
+    return Structure(smiles, typed or smiles, tuple(place[i] for i in written if i in place), canonical)
+
+
+def _restore(smiles: str, typed: str, typed_order: tuple[AtomId, ...]) -> Structure:
+    same = parse_smiles(smiles)
+    return Structure(same.smiles, typed, typed_order, same.mol)
+
+
+_WRITE_SMILES = "write a SMILES in single quotes, such as 'CCC(C)Br'"
+_SMILES_TOKEN = re.compile(
+    r"(?P<atom>\[[^\[\]]*\]|Br|Cl|[BCNOPSFI]|[bcnops])|(?P<bond>->|<-|[-=#$:/\\])"
+    r"|(?P<ring>%\(\d+\)|%\d\d|\d)|(?P<branch>[()])|(?P<dot>\.)"
+)
+_SMARTS_IN_BRACKET = re.compile(r"[;,&!$#~]|\bR\d*$|^[Aa]$|^[XxDvRr]\d")
+
+
+def _unsanitised(smiles: str) -> Chem.Mol | None:
+    return Chem.MolFromSmiles(smiles, sanitize=False)
+
+
+def _refuse_what_is_no_smiles(text: str) -> None:
+    if not text or not text.strip():
+        raise StructureError("no structure", _WRITE_SMILES)
+    if len(text) > MAX_CHARACTERS:
+        raise StructureError(f"longer than {MAX_CHARACTERS} characters", "write only the species that reacts")
+    space = re.search(r"\s", text)
+    if space:
+        raise StructureError(
+            "space in a SMILES", "write the SMILES alone, its name under `name`", space.start()
+        )
+    arrow = re.search(r"(?<!-)>", text)
+    if arrow:
+        mend = "write one structure; substrate, nucleophile and products have their own keys"
+        raise StructureError("reaction arrow", mend, arrow.start())
+    wildcard = text.find("*")
+    if wildcard >= 0:
+        raise StructureError("wildcard atom", "write a definite atom in place of *", wildcard)
+    if "~" in text:
+        raise StructureError("bond of any order", "write a definite bond in place of ~", text.index("~"))
+    for bracket in re.finditer(r"\[([^\[\]]*)\]", text):
+        if _SMARTS_IN_BRACKET.search(bracket.group(1)):
+            mend = "write a definite atom, with its hydrogens and charge"
+            raise StructureError(f"search pattern {bracket.group()} in a SMILES", mend, bracket.start())
+
+
+def _refuse_excess(raw: Chem.Mol) -> None:
+    """Refuse, before any costly step, what is beyond the bounds; counting atoms and bonds is linear."""
+    heavy = raw.GetNumHeavyAtoms()
+    if raw.GetNumAtoms() == 0:
+        raise StructureError("no structure", _WRITE_SMILES)
+    if any(atom.GetAtomicNum() == 0 for atom in raw.GetAtoms()):
+        raise StructureError("wildcard atom", "write a definite atom in its place")
+    if heavy > MAX_HEAVY_ATOMS or raw.GetNumAtoms() > 3 * MAX_HEAVY_ATOMS:
+        raise StructureError(f"more than {MAX_HEAVY_ATOMS} heavy atoms", "write only the species that reacts")
+    pieces = len(Chem.GetMolFrags(raw))
+    if raw.GetNumBonds() - raw.GetNumAtoms() + pieces > MAX_RINGS:
+        raise StructureError(f"more than {MAX_RINGS} rings", "this handbook does not cover such cages")
+    stereo = sum(atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED for atom in raw.GetAtoms())
+    stereo += sum(bond.GetBondDir() != Chem.BondDir.NONE for bond in raw.GetBonds()) // 2
+    if stereo > MAX_STEREO_ELEMENTS:
+        raise StructureError(
+            f"more than {MAX_STEREO_ELEMENTS} stereo elements", "this handbook does not cover such"
+        )
+
+
+def _sanitise(raw: Chem.Mol, text: str | None) -> None:
+    """Sanitise in place; what RDKit objects to becomes a StructureError that points at the author's atom."""
+    untouched = Chem.Mol(raw)
+    problem = Chem.SanitizeMol(raw, catchErrors=True)
+    if problem == Chem.SanitizeFlags.SANITIZE_NONE:
+        Chem.AssignStereochemistry(raw, cleanIt=True, force=True)
+        return
+    for found in Chem.DetectChemistryProblems(untouched):
+        if found.GetType() == "AtomValenceException":
+            raise _valence_error(untouched.GetAtomWithIdx(found.GetAtomIdx()), text)
+        if found.GetType() == "KekulizeException":
+            at = min(found.GetAtomIndices(), default=None)
+            mend = "check lower-case atoms; an aromatic N-H is written [nH]"
+            raise StructureError("aromatic ring without alternating double bonds", mend, _offset(text, at))
+    raise StructureError("structure that breaks the rules of valence", "check bonds, hydrogens and charges")
+
+
+def _valence_error(atom: Chem.Atom, text: str | None) -> StructureError:
+    at = atom.GetIdx()
+    symbol = atom.GetSymbol()
+    mend = f"count the bonds of this {symbol}; a charge or hydrogen may be missing in its brackets"
+    return StructureError(f"valence of {symbol} at atom {at + 1} exceeded", mend, _offset(text, at))
+
+
+def _offset(text: str | None, atom: int | None) -> int | None:
+    """Return the character at which the n-th atom (from 0) of a SMILES is written."""
+    if text is None or atom is None:
+        return None
+    atoms = [m.start() for m in _SMILES_TOKEN.finditer(text) if m.lastgroup == "atom"]
+    return atoms[atom] if atom < len(atoms) else None
+
+
+def _explain_syntax(text: str, complaints: list[str]) -> StructureError:
+    """Return the error for a SMILES RDKit cannot read: our own reading first, RDKit's words last."""
+    open_rings: dict[str, int] = {}
+    branches: list[int] = []
+    at = 0
+    while at < len(text):
+        token = _SMILES_TOKEN.match(text, at)
+        if token is None:
+            if text[at] == "[":
+                return StructureError("bracket that is not closed", "close it with ]", at)
+            return StructureError(f"character {text[at]!r} is no SMILES", "write a definite atom or bond", at)
+        if token.lastgroup == "ring":
+            label = token.group().strip("%()").lstrip("0") or "0"
+            if open_rings.pop(label, None) is None:
+                open_rings[label] = at
+        elif token.group() == "(":
+            branches.append(at)
+        elif token.group() == ")":
+            if not branches:
+                return StructureError("branch closed that was never opened", "remove the ) or add its (", at)
+            branches.pop()
+        elif token.lastgroup == "atom" and token.group().startswith("["):
+            if _unsanitised(token.group()) is None:
+                return StructureError(
+                    f"unknown atom {token.group()}", "write element, hydrogens, charge: [NH4+]", at
+                )
+        at = token.end()
+    if open_rings:
+        label, where = min(open_rings.items(), key=lambda item: item[1])
+        return StructureError(
+            f"unclosed ring {label}", f"write the ring number {label} at its second atom", where
+        )
+    if branches:
+        return StructureError("branch that is not closed", "close it with )", branches[-1])
+    said = next((line for line in complaints if "position" in line), complaints[-1] if complaints else "")
+    place = re.search(r"position (\d+)", said)
+    if place:
+        at = min(int(place.group(1)), len(text)) - 1
+        return StructureError(f"{text[at]!r} where SMILES allows none", _WRITE_SMILES, at)
+    words = re.search(r"Error: (?!Failed)(.*?)(?= for input|$)", said)
+    return StructureError(words.group(1) if words else "SMILES that cannot be read", _WRITE_SMILES)
+
+
+def _has_carbon(structure: Structure) -> bool:
+    return any(atom.GetAtomicNum() == 6 for atom in structure.mol.GetAtoms())
+
+
+def _is_inorganic_counter_ion(structure: Structure) -> bool:
+    if structure.mol.GetNumAtoms() == 1 and structure.charge > 0:
+        symbol = structure.mol.GetAtomWithIdx(0).GetSymbol()
+        return symbol in _INORGANIC_CATIONS or structure.smiles in {"[NH4+]", "[H+]", "[OH3+]"}
+    return structure.smiles in _INORGANIC_ANIONS
