@@ -1,0 +1,1 @@
+"""The chemists' YAML, with no chemistry in it."""

@@ -1,0 +1,37 @@
+"""Entry identifiers: NS, six random Crockford base-32 characters, one ISO 7064 MOD 37,36 check character."""
+
+import re
+import secrets
+
+from stdnum.iso7064 import mod_37_36
+
+__all__ = ["IDENTIFIER_PATTERN", "is_identifier", "mend_identifier", "mint_identifier"]
+
+CROCKFORD = "0123456789ABCDEFGHJKMNPQRSTVWXYZ"
+IDENTIFIER_PATTERN = f"^NS[{CROCKFORD}]{{7}}$"
+_SHAPE = re.compile(IDENTIFIER_PATTERN)
+_MISREAD = str.maketrans("ILOU", "110V")  # Crockford's decoding of I, L, O; U has none, V is its look-alike
+
+
+def mint_identifier() -> str:
+    """Return a fresh identifier; drawn offline, so uniqueness is checked on the merge result.
+
+    Draws again when the check character would be I, L, O or U, which Crockford's alphabet leaves out.
+    """
+    while True:
+        body = "NS" + "".join(secrets.choice(CROCKFORD) for _ in range(6))
+        check = mod_37_36.calc_check_digit(body)
+        if check in CROCKFORD:
+            return body + check
+
+
+def is_identifier(text: str) -> bool:
+    """Say whether `text` has the shape of an identifier and a right check character."""
+    return bool(_SHAPE.match(text)) and bool(mod_37_36.is_valid(text))
+
+
+def mend_identifier(text: str) -> str | None:
+    """Return the one identifier that `text` was plainly meant to be (case, hyphens, look-alikes), or None."""
+    tidy = re.sub(r"[\s-]", "", text).upper()
+    mended = tidy[:2] + tidy[2:].translate(_MISREAD)
+    return mended if mended != text and is_identifier(mended) else None

@@ -1,0 +1,452 @@
+"""Quantities as chemists type them: "60 °C", "2.083 g", "< 2 %", "0 °C to 25 °C".
+
+Own grammar and a closed list of units; pint converts and never parses. The typed digits are kept as decimals, so
+significant figures survive and no number passes through a float on its way into the digest.
+"""
+
+import re
+from dataclasses import dataclass
+from decimal import Decimal
+from enum import StrEnum
+from functools import cache
+
+import pint
+
+__all__ = [
+    "Dimension",
+    "Percent",
+    "Quantity",
+    "QuantityError",
+    "Temperature",
+    "decimal_text",
+    "number_text",
+    "parse_percent",
+    "parse_quantity",
+    "parse_temperature",
+    "unit_spellings",
+    "units_of",
+]
+
+
+class Dimension(StrEnum):
+    """What a field measures; the value is the word used in messages."""
+
+    MASS = "mass"
+    AMOUNT = "amount"
+    VOLUME = "volume"
+    TIME = "time"
+    TEMPERATURE = "temperature"
+    CONCENTRATION = "concentration"
+    DENSITY = "density"
+    PRESSURE = "pressure"
+    FRACTION = "percentage"
+    RATE_CONSTANT_1 = "first-order rate constant"
+    RATE_CONSTANT_2 = "second-order rate constant"
+
+
+@dataclass(frozen=True, slots=True)
+class _Unit:
+    """One permitted unit: how we write it, pint's name, the spellings accepted."""
+
+    symbol: str
+    pint: str
+    spellings: tuple[str, ...]
+
+
+# Dimension -> permitted units; the first is the canonical one, in which digests and comparisons are made.
+# Rate constants have no exact decimal factor between hours and seconds, so the digest keeps their typed unit.
+_UNITS: dict[Dimension, tuple[_Unit, ...]] = {
+    Dimension.MASS: (
+        _Unit("g", "gram", ("g",)),
+        _Unit("mg", "milligram", ("mg",)),
+        _Unit("µg", "microgram", ("µg", "ug")),
+        _Unit("kg", "kilogram", ("kg",)),
+    ),
+    Dimension.AMOUNT: (
+        _Unit("mol", "mole", ("mol",)),
+        _Unit("mmol", "millimole", ("mmol",)),
+        _Unit("µmol", "micromole", ("µmol", "umol")),
+    ),
+    Dimension.VOLUME: (
+        _Unit("L", "liter", ("L", "l")),
+        _Unit("mL", "milliliter", ("mL", "ml", "cm3", "cm³")),
+        _Unit("µL", "microliter", ("µL", "µl", "uL", "ul")),
+    ),
+    Dimension.TIME: (
+        _Unit("s", "second", ("s",)),
+        _Unit("min", "minute", ("min",)),
+        _Unit("h", "hour", ("h",)),
+        _Unit("d", "day", ("d",)),
+    ),
+    Dimension.TEMPERATURE: (
+        _Unit("°C", "degC", ("°C", "ºC", "℃", "C", "° C")),
+        _Unit("K", "kelvin", ("K",)),
+    ),
+    Dimension.CONCENTRATION: (
+        _Unit("mol/L", "mole/liter", ("mol/L", "mol/l", "M")),
+        _Unit("mmol/L", "millimole/liter", ("mmol/L", "mmol/l", "mM")),
+    ),
+    Dimension.DENSITY: (
+        _Unit("g/mL", "gram/milliliter", ("g/mL", "g/ml", "g/cm3", "g/cm³", "kg/L")),
+        _Unit("kg/m³", "kilogram/meter**3", ("kg/m³", "kg/m3", "g/L")),
+    ),
+    Dimension.PRESSURE: (
+        _Unit("bar", "bar", ("bar",)),
+        _Unit("mbar", "millibar", ("mbar", "hPa")),
+        _Unit("kPa", "kilopascal", ("kPa",)),
+        _Unit("MPa", "megapascal", ("MPa",)),
+        _Unit("Pa", "pascal", ("Pa",)),
+        _Unit("atm", "atm", ("atm",)),
+    ),
+    Dimension.FRACTION: (_Unit("%", "percent", ("%",)),),
+    Dimension.RATE_CONSTANT_1: (
+        _Unit("1/s", "1/second", ("1/s", "s-1", "s^-1", "s⁻¹", "/s")),
+        _Unit("1/min", "1/minute", ("1/min", "min-1", "min^-1", "min⁻¹", "/min")),
+        _Unit("1/h", "1/hour", ("1/h", "h-1", "h^-1", "h⁻¹", "/h")),
+    ),
+    Dimension.RATE_CONSTANT_2: (
+        _Unit(
+            "L/(mol s)",
+            "liter/mole/second",
+            ("L/(mol s)", "L/mol/s", "L mol-1 s-1", "L mol⁻¹ s⁻¹", "1/(M s)", "M-1 s-1", "M⁻¹ s⁻¹"),
+        ),
+        _Unit("L/(mol min)", "liter/mole/minute", ("L/(mol min)", "L/mol/min", "M-1 min-1", "M⁻¹ min⁻¹")),
+        _Unit("L/(mol h)", "liter/mole/hour", ("L/(mol h)", "L/mol/h", "M-1 h-1", "M⁻¹ h⁻¹")),
+    ),
+}
+_BY_SPELLING = {
+    dimension: {spelling: unit for unit in units for spelling in unit.spellings}
+    for dimension, units in _UNITS.items()
+}
+_KEEPS_ITS_UNIT = {Dimension.RATE_CONSTANT_1, Dimension.RATE_CONSTANT_2}
+
+_NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?"
+_QUANTITY = re.compile(rf"(?P<number>{_NUMBER})\s*(?P<unit>\S.*)?")
+_SPACES = re.compile(r"[\s\u00a0\u2000-\u200a\u202f\u205f]+")
+_LOOKALIKES = str.maketrans(
+    {"\u2212": "-", "\u2012": "-", "\u2013": "-", "\u03bc": "µ", "\u2010": "-", "\u2011": "-"}
+)
+_COMMA = re.compile(r"\d,\d")
+_ARITHMETIC = re.compile(r"\d\s*[*×x/+]\s*\d|\d\s+-\s+\d")
+_ABOUT = re.compile(r"^(~|≈|ca\.?|circa|about|approx\.?)\s*", re.IGNORECASE)
+_VAGUE = {
+    "rt": '"20 °C to 25 °C"',
+    "r.t.": '"20 °C to 25 °C"',
+    "room temperature": '"20 °C to 25 °C"',
+    "ambient": '"20 °C to 25 °C"',
+    "reflux": "the boiling temperature, and vessel: reflux",
+    "overnight": '"16 h", or the time it was',
+    "o/n": '"16 h", or the time it was',
+    "weekend": '"64 h", or the time it was',
+    "excess": "the number of equivalents",
+    "catalytic": "the number of equivalents",
+}
+_SPELLED_OUT = {
+    **dict.fromkeys(("hours", "hour", "hr", "hrs"), "h"),
+    **dict.fromkeys(("mins", "minutes", "minute"), "min"),
+    **dict.fromkeys(("sec", "secs", "seconds", "second"), "s"),
+    **dict.fromkeys(("days", "day"), "d"),
+    **dict.fromkeys(("grams", "gram", "gr"), "g"),
+    **dict.fromkeys(("mols", "moles", "mole"), "mol"),
+    **dict.fromkeys(("degc", "celsius", "deg c", "degrees c"), "°C"),
+    **dict.fromkeys(("percent", "pct", "per cent"), "%"),
+    "kelvin": "K",
+    "cc": "mL",
+}
+
+
+class QuantityError(ValueError):
+    """A text that is no quantity of the wanted dimension; carries the rule it breaks and the exact mend."""
+
+    def __init__(self, rule: str, message: str, mend: str, fix: str | None = None) -> None:
+        super().__init__(message)
+        self.rule, self.message, self.mend, self.fix = rule, message, mend, fix
+
+
+@dataclass(frozen=True, slots=True)
+class Quantity:
+    """A number with its unit, as typed and in the canonical unit of its dimension.
+
+    number: the typed decimal, digits kept. unit: our symbol for the typed unit.
+    value: in the canonical unit of the dimension (g, mol, L, s, °C, mol/L, g/mL, bar, %, 1/s, L/(mol s)).
+    """
+
+    dimension: Dimension
+    number: Decimal
+    unit: str
+    value: Decimal
+
+    @property
+    def magnitude(self) -> float:
+        """Return the value in the canonical unit, for arithmetic."""
+        return float(self.value)
+
+    @property
+    def half_digit(self) -> float:
+        """Return half a unit in the last typed digit, relative to the value: the width of honest rounding."""
+        if not self.number:
+            return 0.0
+        exponent = self.number.as_tuple().exponent
+        assert isinstance(exponent, int)  # noqa: S101 - the grammar admits finite numbers only
+        return abs(float(Decimal(5).scaleb(exponent - 1) / self.number))
+
+    @property
+    def canonical(self) -> str:
+        """Return decimal text with the canonical unit, as it enters the digest."""
+        if self.dimension in _KEEPS_ITS_UNIT:
+            return f"{decimal_text(self.number)} {self.unit}"
+        return f"{decimal_text(self.value)} {_UNITS[self.dimension][0].symbol}"
+
+    def __str__(self) -> str:
+        return f"{number_text(self.number)} {self.unit}"
+
+
+@dataclass(frozen=True, slots=True)
+class Temperature:
+    """A temperature, a ramp ("0 °C to 25 °C") or a band ("20–25 °C"); one value stands twice."""
+
+    start: Quantity
+    end: Quantity
+    is_band: bool = False
+
+    @property
+    def lowest_c(self) -> float:
+        """Return the lower end in °C."""
+        return min(self.start.magnitude, self.end.magnitude)
+
+    @property
+    def highest_c(self) -> float:
+        """Return the upper end in °C."""
+        return max(self.start.magnitude, self.end.magnitude)
+
+    @property
+    def canonical(self) -> str:
+        """Return the text that enters the digest."""
+        if self.start == self.end:
+            return self.start.canonical
+        return f"{self.start.canonical} {'..' if self.is_band else 'to'} {self.end.canonical}"
+
+    def __str__(self) -> str:
+        if self.start == self.end:
+            return str(self.start)
+        joint = "–" if self.is_band else " to "
+        return (
+            f"{number_text(self.start.number)}{joint}{self.end}"
+            if self.is_band
+            else f"{self.start}{joint}{self.end}"
+        )
+
+
+@dataclass(frozen=True, slots=True)
+class Percent:
+    """A measured percentage, or a limit of detection ("< 2 %")."""
+
+    quantity: Quantity
+    relation: str = ""
+
+    @property
+    def magnitude(self) -> float:
+        """Return the number of percent."""
+        return self.quantity.magnitude
+
+    @property
+    def is_limit(self) -> bool:
+        """Say whether the value is a bound rather than a measured number."""
+        return bool(self.relation)
+
+    @property
+    def canonical(self) -> str:
+        """Return the text that enters the digest."""
+        return f"{self.relation} {self.quantity.canonical}".strip()
+
+    def __str__(self) -> str:
+        return f"{self.relation} {self.quantity}".strip()
+
+
+def units_of(dimension: Dimension) -> tuple[str, ...]:
+    """Return the symbols of the permitted units, canonical first."""
+    return tuple(unit.symbol for unit in _UNITS[dimension])
+
+
+def unit_spellings(dimension: Dimension) -> tuple[str, ...]:
+    """Return every accepted spelling, for the JSON Schema."""
+    return tuple(_BY_SPELLING[dimension])
+
+
+def parse_quantity(text: object, dimension: Dimension) -> Quantity:
+    """Read a quantity of `dimension`.
+
+    Raises QuantityError for a missing, unknown or unfit unit, a decimal comma, arithmetic, or a vague word.
+    """
+    if isinstance(text, (int, Decimal)) and not isinstance(text, bool):
+        raise _no_unit(str(text), dimension)
+    if not isinstance(text, str):
+        raise QuantityError(
+            "quantity-unreadable",
+            f"{dimension} is not a number with a unit",
+            f'write one like "{_example(dimension)}"',
+        )
+    tidy = _tidy(text)
+    match = _QUANTITY.fullmatch(tidy)
+    spelling = (match["unit"] or "").strip() if match else ""
+    if match and spelling in _BY_SPELLING[dimension]:
+        return _quantity(Decimal(match["number"]), _BY_SPELLING[dimension][spelling], dimension)
+    raise _quantity_error(text, tidy, match["number"] if match else None, spelling, dimension)
+
+
+def parse_temperature(text: object) -> Temperature:
+    """Read a temperature, a ramp or a band.
+
+    Raises QuantityError as `parse_quantity` does.
+    """
+    if isinstance(text, str):
+        parts = re.split(r"\s+to\s+", _SPACES.sub(" ", text.strip()))
+        if len(parts) == 2:
+            end = parse_quantity(parts[1], Dimension.TEMPERATURE)
+            start_text = parts[0] if not re.fullmatch(_NUMBER, _tidy(parts[0])) else f"{parts[0]} {end.unit}"
+            return Temperature(parse_quantity(start_text, Dimension.TEMPERATURE), end)
+        band = re.fullmatch(r"(?P<low>[+\-\u2212]?\d+(?:\.\d+)?)\s*[-\u2013]\s*(?P<high>\S.*)", text.strip())
+        if band:
+            high = parse_quantity(band["high"], Dimension.TEMPERATURE)
+            return Temperature(
+                parse_quantity(f"{band['low']} {high.unit}", Dimension.TEMPERATURE), high, is_band=True
+            )
+    value = parse_quantity(text, Dimension.TEMPERATURE)
+    return Temperature(value, value)
+
+
+def parse_percent(text: object) -> Percent:
+    """Read a percentage or a detection limit.
+
+    Raises QuantityError as `parse_quantity` does, or for a value outside the relation signs <, >, ≤, ≥.
+    """
+    if isinstance(text, str):
+        match = re.fullmatch(r"\s*(?P<relation>[<>≤≥])\s*(?P<rest>.*)", text)
+        if match:
+            return Percent(parse_quantity(match["rest"], Dimension.FRACTION), match["relation"])
+    return Percent(parse_quantity(text, Dimension.FRACTION))
+
+
+def decimal_text(number: Decimal) -> str:
+    """Return plain decimal text, all digits kept and no exponent."""
+    return format(number, "f")
+
+
+def number_text(number: Decimal) -> str:
+    """Return the number for reading: plain from 0.001 to 99999, else with a power of ten."""
+    if not number or Decimal("0.001") <= abs(number) < Decimal(100000):
+        return format(number, "f")
+    mantissa, _, exponent = f"{number:E}".partition("E")
+    return f"{mantissa}e{int(exponent)}"
+
+
+def _tidy(text: str) -> str:
+    return _SPACES.sub(" ", text.strip().translate(_LOOKALIKES))
+
+
+def _quantity(number: Decimal, unit: _Unit, dimension: Dimension) -> Quantity:
+    canonical = _UNITS[dimension][0]
+    if unit is canonical or dimension is Dimension.FRACTION:
+        return Quantity(dimension, number, unit.symbol, number)
+    if dimension is Dimension.TEMPERATURE:
+        return Quantity(
+            dimension, number, unit.symbol, _registry().Quantity(number, unit.pint).to("degC").magnitude
+        )
+    return Quantity(dimension, number, unit.symbol, number * _factor(unit.pint, canonical.pint))
+
+
+@cache
+def _registry() -> "pint.UnitRegistry[Decimal]":
+    return pint.UnitRegistry(non_int_type=Decimal)
+
+
+@cache
+def _factor(unit: str, canonical: str) -> Decimal:
+    magnitude: Decimal = _registry().Quantity(Decimal(1), unit).to(canonical).magnitude
+    return magnitude.normalize()
+
+
+def _a(dimension: Dimension) -> str:
+    return f"an {dimension}" if dimension is Dimension.AMOUNT else f"a {dimension}"
+
+
+def _example(dimension: Dimension) -> str:
+    number = {Dimension.TEMPERATURE: "60", Dimension.TIME: "16", Dimension.FRACTION: "88"}.get(
+        dimension, "1.5"
+    )
+    return f"{number} {_UNITS[dimension][0].symbol}" if dimension is not Dimension.TIME else "16 h"
+
+
+def _no_unit(number: str, dimension: Dimension) -> QuantityError:
+    units = units_of(dimension)
+    offers = [f'"{number} {units[0]}"']
+    if dimension is Dimension.TEMPERATURE:
+        offers.append(f'"{round(Decimal(number) + 273)} K"')
+    elif len(units) > 1:
+        offers.append(f'"{number} {units[1]}"')
+    fix = offers[0] if dimension is Dimension.FRACTION else None
+    return QuantityError(
+        "quantity-without-unit",
+        f"{dimension} has no unit",
+        f"write {' or '.join(offers)}",
+        fix=fix.strip('"') if fix else None,
+    )
+
+
+def _quantity_error(
+    text: str, tidy: str, number: str | None, spelling: str, dimension: Dimension
+) -> QuantityError:
+    word = tidy.casefold()
+    if word in _VAGUE:
+        return QuantityError(
+            "quantity-vague", f'"{text}" is not a measured {dimension}', f"write {_VAGUE[word]}"
+        )
+    if _ABOUT.match(tidy):
+        rest = _ABOUT.sub("", tidy)
+        return QuantityError("quantity-vague", f'"{text}" says "about"', f'write "{rest}"', fix=rest)
+    if _COMMA.search(tidy):
+        point = tidy.replace(",", ".")
+        return QuantityError(
+            "quantity-decimal-comma", f'"{text}" has a comma inside the number', f'write "{point}"', fix=point
+        )
+    if number is not None and not spelling:
+        return _no_unit(number, dimension)
+    if number is not None:
+        return _unit_error(text, number, spelling, dimension)
+    if _ARITHMETIC.search(tidy):
+        return QuantityError(
+            "quantity-arithmetic", f'"{text}" is a sum, not a number', "write the result, with its unit"
+        )
+    return QuantityError(
+        "quantity-unreadable", f'"{text}" is not {_a(dimension)}', f'write one like "{_example(dimension)}"'
+    )
+
+
+def _unit_error(text: str, number: str, spelling: str, dimension: Dimension) -> QuantityError:
+    if _ARITHMETIC.search(f"{number} {spelling}") or re.match(r"[*×+/]", spelling):
+        return QuantityError(
+            "quantity-arithmetic", f'"{text}" is a sum, not a number', "write the result, with its unit"
+        )
+    permitted = ", ".join(units_of(dimension))
+    for other, spellings in _BY_SPELLING.items():
+        if spelling in spellings:
+            return QuantityError(
+                "quantity-wrong-dimension",
+                f'"{text}" is {_a(other)}, and {_a(dimension)} is wanted',
+                f"use one of: {permitted}",
+            )
+    folded = {known.casefold(): unit.symbol for known, unit in _BY_SPELLING[dimension].items()}
+    likely = folded.get(spelling.casefold()) or _SPELLED_OUT.get(spelling.casefold())
+    if likely and likely in units_of(dimension):
+        fixed = f"{number} {likely}"
+        return QuantityError(
+            "quantity-unknown-unit",
+            f'unknown unit "{spelling}"; did you mean "{likely}"?',
+            f'write "{fixed}"',
+            fix=fixed,
+        )
+    mend = f"use one of: {permitted}"
+    if spelling in {"°F", "F"}:
+        celsius = round((Decimal(number) - 32) * 5 / 9, 1)
+        mend = f'write "{celsius} °C"'
+    return QuantityError("quantity-unknown-unit", f'unknown unit "{spelling}" for {_a(dimension)}', mend)

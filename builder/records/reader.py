@@ -1,0 +1,242 @@
+"""A record file -> Record, with the place of every value and every fault of the file at once."""
+
+import re
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from difflib import get_close_matches
+from functools import cache
+from pathlib import Path
+from typing import Any, TypeVar, get_args
+
+from pydantic import BaseModel, ValidationError
+from pydantic_core import ErrorDetails
+
+from builder.finding import Finding, Level, Place
+from builder.records.model import Record
+from builder.records.rules import reading_rule
+from builder.records.yaml_text import Places, Plain, quoted, read_plain
+from builder.rule import Fault
+from builder.rule import Path as ValuePath
+
+__all__ = ["Reading", "read_bytes", "read_into", "read_record"]
+
+MAX_BYTES = 256 * 1024
+_FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\x80-\x84\x86-\x9f\ufffe\uffff]")
+_UNION_TAGS = {"word", "substance"}
+
+Model = TypeVar("Model", bound=BaseModel)
+
+
+@dataclass(frozen=True, slots=True)
+class Reading:
+    """One file as read: the record if it could be made, the reader's findings, the place of every value."""
+
+    file: str
+    text: str
+    record: Record | None
+    findings: tuple[Finding, ...]
+    places: Places
+
+
+def read_record(path: Path, shown_as: str) -> Reading:
+    """Read one record file; `shown_as` is the name that findings carry.
+
+    Never raises for what the file holds; OSError passes for a file that cannot be opened.
+    """
+    size = path.stat().st_size
+    return read_bytes(path.read_bytes(), shown_as) if size <= MAX_BYTES else _too_large(size, shown_as)
+
+
+def read_bytes(data: bytes, shown_as: str) -> Reading:
+    """Read a record from bytes, as `read_record` does."""
+    if len(data) > MAX_BYTES:
+        return _too_large(len(data), shown_as)
+    text = _decode(data, shown_as)
+    if isinstance(text, Finding):
+        return Reading(shown_as, "", None, (text,), Places(shown_as))
+    record, findings, places = read_into(Record, text, shown_as)
+    return Reading(shown_as, text, record, findings, places)
+
+
+def read_into(
+    model: type[Model], text: str, shown_as: str
+) -> tuple[Model | None, tuple[Finding, ...], Places]:
+    """Read YAML text into `model`: the value (None where any error was found), findings, and places."""
+    plainly = read_plain(text, shown_as)
+    findings = list(plainly.findings)
+    made = None
+    if isinstance(plainly.value, dict):
+        try:
+            made = model.model_validate(plainly.value)
+        except ValidationError as error:
+            details = error.errors(include_url=False)
+            findings += [_form_finding(detail, plainly.value, plainly.places, model) for detail in details]
+    elif plainly.value is not None:
+        fault = Fault(at=(), message="the file is not a mapping of keys", mend="write key: value lines")
+        findings.append(reading_rule("value-wrong-type").finding(fault, plainly.places.of(())))
+    kept = tuple(sorted(_one_per_place(findings), key=lambda finding: finding.sort_key))
+    return (None if any(f.level is Level.ERROR for f in kept) else made), kept, plainly.places
+
+
+def _too_large(size: int, file: str) -> Reading:
+    fault = Fault(
+        at=(), message=f"the file has {size / 1e6:.1f} MB", mend="keep data files outside the record"
+    )
+    finding = reading_rule("file-too-large").finding(fault, Place(file, 1, 1, 2))
+    return Reading(file, "", None, (finding,), Places(file))
+
+
+def _decode(data: bytes, file: str) -> str | Finding:
+    try:
+        text = data.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        before = data[: error.start].decode("utf-8", "replace")
+        message = f"byte 0x{data[error.start]:02x} is not UTF-8 text"
+        return _not_text(message, "save the file as UTF-8", before, len(before), file)
+    bad = _FORBIDDEN.search(text)
+    if bad:
+        return _not_text(f"control character U+{ord(bad[0]):04X}", "delete it", text, bad.start(), file)
+    return text.replace("\r\n", "\n").replace("\r", "\n")
+
+
+def _not_text(message: str, mend: str, text: str, index: int, file: str) -> Finding:
+    line, column = text.count("\n", 0, index) + 1, index - text.rfind("\n", 0, index)
+    fault = Fault(at=(), message=message, mend=mend)
+    return reading_rule("file-not-text").finding(fault, Place(file, line, column, column + 1))
+
+
+def _one_per_place(findings: list[Finding]) -> Iterator[Finding]:
+    """Keep the first error on a value: the lexical trap explains what the form then stumbles over."""
+    wrong: set[tuple[int, int]] = set()
+    for finding in sorted(findings, key=lambda finding: -finding.level.weight):
+        spot = (finding.place.line, finding.place.column)
+        if spot not in wrong or finding.rule in {"key-missing", "key-unknown", "duplicate-key"}:
+            yield finding
+        if finding.level is Level.ERROR:
+            wrong.add(spot)
+
+
+# --- pydantic's complaints in the chemist's words -----------------------------------------------------------
+
+
+def _form_finding(detail: ErrorDetails, plain: Plain, places: Places, model: type[BaseModel]) -> Finding:
+    path = _value_path(detail["loc"])
+    kind = detail["type"]
+    context: Mapping[str, Any] = detail.get("ctx", {})
+    if kind == "missing":
+        fault = Fault(at=path[:-1], on_key=True, message=f"{path[-1]} is missing", mend=f"add {path[-1]}: …")
+        return _found("key-missing", fault, places)
+    if kind == "extra_forbidden":
+        return _found("key-unknown", _unknown_key(path, model), places)
+    if "mend" in context:
+        fault = Fault(at=path, message=context["message"], mend=context["mend"], fix=context["fix"])
+        return _found(kind, fault, places)
+    if kind in {"enum", "literal_error"}:
+        return _found("value-not-permitted", _not_permitted(path, plain, context), places)
+    if kind in _WRONG_TYPES:
+        return _found(
+            "value-wrong-type",
+            Fault(at=path, message=_WRONG_TYPES[kind], mend=_type_mend(path, model)),
+            places,
+        )
+    fault = Fault(at=path, message=detail["msg"][:1].lower() + detail["msg"][1:], mend="see How to add")
+    return _found("value-not-permitted", fault, places)
+
+
+_WRONG_TYPES = {
+    "model_type": "keys and values are wanted here, not one value",
+    "model_attributes_type": "keys and values are wanted here, not one value",
+    "dict_type": "keys and values are wanted here, not one value",
+    "tuple_type": "a list is wanted here",
+    "list_type": "a list is wanted here",
+    "string_type": "a text is wanted here",
+}
+
+
+def _found(rule_id: str, fault: Fault, places: Places) -> Finding:
+    return reading_rule(rule_id).finding(fault, places.of(fault.at, on_key=fault.on_key))
+
+
+def _value_path(loc: tuple[int | str, ...]) -> ValuePath:
+    return tuple(step for step in loc if step not in _UNION_TAGS)
+
+
+def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
+    key = str(path[-1])
+    known = sorted({name for owner in _models_at(model, path[:-1]) for name in _keys_of(owner)})
+    near = get_close_matches(key, known, n=1, cutoff=0.6)
+    mend = f"known keys here: {', '.join(known)}"
+    if near:
+        return Fault(
+            at=path,
+            on_key=True,
+            message=f'unknown key "{key}"; did you mean "{near[0]}"?',
+            mend=mend,
+            fix=near[0],
+        )
+    return Fault(at=path, on_key=True, message=f'unknown key "{key}"', mend=mend)
+
+
+def _not_permitted(path: ValuePath, plain: Plain, context: Mapping[str, Any]) -> Fault:
+    permitted = re.findall(
+        r"'((?:[^'\\]|\\.)*)'|\"((?:[^\"\\]|\\.)*)\"|(\d+)", str(context.get("expected", ""))
+    )
+    words = [next(word for word in found if word) for found in permitted]
+    value = _value_at(plain, path)
+    near = get_close_matches(str(value), words, n=1, cutoff=0.6)
+    hint = f'; did you mean "{near[0]}"?' if near else ""
+    fix = (
+        quoted(near[0])
+        if near and not re.fullmatch(r"[A-Za-z0-9' -]+", near[0])
+        else (near[0] if near else None)
+    )
+    return Fault(
+        at=path,
+        message=f'"{value}" is not permitted here{hint}',
+        mend=f"use one of: {', '.join(words)}",
+        fix=fix,
+    )
+
+
+def _type_mend(path: ValuePath, model: type[BaseModel]) -> str:
+    keys = sorted({name for owner in _models_at(model, path) for name in _keys_of(owner)})
+    return (
+        f"write it with the keys {', '.join(keys[:8])}{', …' if len(keys) > 8 else ''}"
+        if keys
+        else "write - items"
+    )
+
+
+def _value_at(plain: Plain, path: ValuePath) -> Plain:
+    for step in path:
+        if isinstance(plain, dict) and isinstance(step, str):
+            plain = plain.get(step)
+        elif isinstance(plain, list) and isinstance(step, int) and step < len(plain):
+            plain = plain[step]
+    return plain
+
+
+@cache
+def _keys_of(model: type[BaseModel]) -> tuple[str, ...]:
+    return tuple(field.alias or name for name, field in model.model_fields.items())
+
+
+def _models_at(model: type[BaseModel], path: ValuePath) -> tuple[type[BaseModel], ...]:
+    """Return the models that may stand at `path`, to name the keys they have."""
+    owners: tuple[type[BaseModel], ...] = (model,)
+    for step in path:
+        if isinstance(step, str):
+            owners = tuple(
+                found
+                for owner in owners
+                for name, info in owner.model_fields.items()
+                if (info.alias or name) == step
+                for found in _models_in(info.annotation)
+            )
+    return owners
+
+
+def _models_in(annotation: object) -> tuple[type[BaseModel], ...]:
+    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
+        return (annotation,)
+    return tuple(found for inner in get_args(annotation) for found in _models_in(inner))

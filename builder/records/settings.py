@@ -1,0 +1,45 @@
+"""The settings of one book, `entries/handbook.yml`: everything book-specific stands there."""
+
+from typing import Annotated, Literal
+
+from pydantic import Field
+
+from builder.records.fields import Count, EntryId, Flag, Line, RelativePath
+from builder.records.model import Part
+
+__all__ = ["SETTINGS_FILE", "Person", "Settings"]
+
+SETTINGS_FILE = "handbook.yml"
+
+
+class Person(Part):
+    """A code that records use for a person, and what may be shown for it."""
+
+    code: Line
+    shown_as: Line
+    orcid: Annotated[str, Field(pattern=r"^https://orcid\.org/\d{4}-\d{4}-\d{4}-\d{3}[\dX]$")] | None = None
+
+
+class Settings(Part):
+    """Title, address, people, house rules of a book.
+
+    notice: shown on every page; a demonstration says here that its data are invented.
+    site_address: full address under which the site is published, for citations.
+    review_interval_months: after how long an entry without its own due date wants another look.
+    retired: identifiers that must never come back.
+    """
+
+    format: Literal[1]
+    title: Annotated[Line, Field(max_length=80)]
+    group: Annotated[Line, Field(max_length=80)] | None = None
+    notice: Annotated[Line, Field(max_length=400)] | None = None
+    invented: Flag = False
+    site_address: Annotated[str, Field(pattern=r"^https?://\S+/$")] | None = None
+    edit_address: Annotated[str, Field(pattern=r"^https?://\S+/$")] | None = None
+    logo: RelativePath | None = None
+    people: tuple[Person, ...] = ()
+    house_rules: tuple[Line, ...] = ()
+    review_interval_months: Count = 24
+    licence: Line = "LicenseRef-Internal"
+    contact: Line | None = None
+    retired: tuple[EntryId, ...] = ()

@@ -1,0 +1,28 @@
+"""The specimen record: a good one, on which the examples of rules are played."""
+
+import re
+from functools import cache
+from importlib import resources
+
+__all__ = ["SPECIMEN_FILE", "specimen_text", "with_example"]
+
+SPECIMEN_FILE = "NS4T9XQ2N.yml"
+_BLOCK = re.compile(r"^(?P<key>[A-Za-z_]+):.*(?:\n(?:[ \-].*|$))*", re.MULTILINE)
+_WITHOUT = re.compile(r"^# without (?P<key>[a-z_]+)$", re.MULTILINE)
+
+
+@cache
+def specimen_text() -> str:
+    """Return the YAML of the specimen."""
+    return resources.files("builder.records").joinpath("specimen.yml").read_text("utf-8")
+
+
+def with_example(example: str) -> str:
+    """Return the specimen with the top-level keys of `example` in place of its own.
+
+    example: YAML text of one or more top-level keys. A line `# without KEY` takes a key away.
+    """
+    dropped = {match["key"] for match in _BLOCK.finditer(example)} | set(_WITHOUT.findall(example))
+    kept = [match[0] for match in _BLOCK.finditer(specimen_text()) if match["key"] not in dropped]
+    added = _WITHOUT.sub("", example).strip("\n")
+    return "\n".join(kept).rstrip("\n") + "\n" + (added + "\n" if added else "")

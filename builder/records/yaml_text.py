@@ -1,0 +1,469 @@
+"""YAML text -> plain values, with the place of every one. The only home of the YAML library.
+
+libyaml composes the node graph; our own constructor gives it YAML 1.2 core meaning (PyYAML's is 1.1), keeps the
+typed digits of numbers, refuses tags and repeated keys, bounds depth and aliases, and notes line and column of
+every key and value. Where the text is no YAML for a reason with one exact mend (an unquoted SMILES, say), the mend
+is applied in memory and reading goes on, so that one run reports everything.
+"""
+
+import re
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, field
+from decimal import Decimal
+
+import yaml
+from yaml.cyaml import CParser
+from yaml.resolver import BaseResolver
+
+from builder.finding import Finding, Place
+from builder.records.rules import reading_rule
+from builder.rule import Fault
+from builder.rule import Path as ValuePath
+
+__all__ = ["Places", "Plain", "Plainly", "quoted", "read_plain"]
+
+MAX_DEPTH = 16
+MAX_VALUES = 20_000
+MAX_MENDS = 60
+
+Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
+
+_STRUCTURE_KEYS = {"smiles", "inchi", "sought"}
+_INTEGER = re.compile(r"[-+]?\d+")
+_FLOAT = re.compile(r"[-+]?(\.\d+|\d+(\.\d*)?)([eE][-+]?\d+)?")
+_ALTERED_NUMBER = re.compile(r"[-+]?0\d[\d.]*|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
+# What a YAML 1.1 reader takes for a boolean, a number to base 60, a number with underscores, or (1e-4) for text.
+_OTHERWISE_IN_1_1 = re.compile(
+    r"y|Y|yes|Yes|YES|n|N|no|No|NO|on|On|ON|off|Off|OFF|=|[-+]?\d[\d_]*(:[0-5]?\d)+(\.\d*)?|[-+]?\d+_[\d_]*"
+    r"|[-+]?\d+[eE][-+]?\d+|[-+]?\d*\.\d*[eE]\d+"
+)
+_WORDS = {"": None, "null": None, "Null": None, "NULL": None, "~": None}
+_BOOLEANS = {"true": True, "True": True, "TRUE": True, "false": False, "False": False, "FALSE": False}
+
+
+@dataclass(frozen=True, slots=True)
+class Places:
+    """Where every key and value of one file stands."""
+
+    file: str
+    values: Mapping[ValuePath, Place] = field(default_factory=dict)
+    keys: Mapping[ValuePath, Place] = field(default_factory=dict)
+
+    def of(self, path: ValuePath, *, on_key: bool = False) -> Place:
+        """Return the place of the value at `path`, or of the key of its nearest existing parent."""
+        if path in self.values and not on_key:
+            return self.values[path]
+        while path:
+            if path in self.keys:
+                return self.keys[path]
+            if path in self.values:
+                return self.values[path]
+            path = path[:-1]
+        return Place(self.file, 1, 1, 2)
+
+
+@dataclass(frozen=True, slots=True)
+class Plainly:
+    """A file's plain values (None where it is no YAML at all), their places and the faults of its text."""
+
+    value: Plain
+    places: Places
+    findings: tuple[Finding, ...]
+
+
+def quoted(text: str) -> str:
+    """Return `text` as a single-quoted YAML scalar."""
+    return "'" + text.replace("'", "''") + "'"
+
+
+def read_plain(text: str, file: str) -> Plainly:
+    """Read one YAML document; faults are returned, never raised."""
+    mended = _MendedText(text, file)
+    findings: list[Finding] = []
+    for _ in range(MAX_MENDS):
+        try:
+            node = _Loader(mended.text).get_single_node()
+        except yaml.MarkedYAMLError as error:
+            finding, is_mended = mended.explain(error)
+            findings.append(finding)
+            if is_mended:
+                continue
+            return Plainly(None, Places(file), tuple(findings))
+        return _construct(node, mended, findings)
+    return Plainly(None, Places(file), tuple(findings))
+
+
+def _construct(node: yaml.Node | None, mended: "_MendedText", findings: list[Finding]) -> Plainly:
+    if node is None:
+        fault = Fault(at=(), message="the file is empty", mend="start one with `handbook new`")
+        findings.append(reading_rule("yaml-unreadable").finding(fault, Place(mended.file, 1, 1, 2)))
+        return Plainly(None, Places(mended.file), tuple(findings))
+    constructor = _Constructor(mended)
+    try:
+        value = constructor.construct(node, ())
+    except _TooMuchError as stop:
+        value = None
+        constructor.report(stop.rule, node if stop.node is None else stop.node, str(stop), stop.mend)
+    places = Places(mended.file, constructor.values, constructor.keys)
+    return Plainly(value, places, (*findings, *constructor.findings))
+
+
+class _Loader(CParser, BaseResolver):
+    """libyaml's composer without implicit types: every plain scalar stays text for our own constructor."""
+
+    def __init__(self, text: str) -> None:
+        CParser.__init__(self, text)
+        BaseResolver.__init__(self)
+
+
+class _TooMuchError(Exception):
+    """Reading stops: the file would cost more than a record may."""
+
+    def __init__(self, rule: str, message: str, mend: str, node: yaml.Node | None) -> None:
+        super().__init__(message)
+        self.rule, self.mend, self.node = rule, mend, node
+
+
+class _Constructor:
+    """Builds plain values from nodes, noting places and lexical faults on the way."""
+
+    def __init__(self, mended: "_MendedText") -> None:
+        self.mended = mended
+        self.text = mended.text
+        self.values: dict[ValuePath, Place] = {}
+        self.keys: dict[ValuePath, Place] = {}
+        self.findings: list[Finding] = []
+        self._count = 0
+
+    def report(
+        self,
+        rule: str,
+        node: yaml.Node,
+        message: str,
+        mend: str,
+        fix: str | None = None,
+        until: yaml.Node | None = None,
+    ) -> None:
+        """Add a finding of a reading rule at `node`."""
+        fault = Fault(at=(), message=message, mend=mend, fix=fix)
+        self.findings.append(reading_rule(rule).finding(fault, self._place(node, until)))
+
+    def construct(self, node: yaml.Node, path: ValuePath) -> Plain:
+        """Return the plain value of `node`.
+
+        Raises _TooMuchError beyond the bounds of depth and number of values.
+        """
+        self._count += 1
+        if self._count > MAX_VALUES:
+            message = f"aliases blow this file up beyond {MAX_VALUES:,} values"
+            raise _TooMuchError("alias-overgrown", message, "write the values out", None)
+        if len(path) > MAX_DEPTH:
+            raise _TooMuchError(
+                "nesting-too-deep", f"more than {MAX_DEPTH} levels", "close the brackets earlier", node
+            )
+        self.values[path] = self._place(node)
+        self._refuse_tag(node)
+        if path and path[-1] in _STRUCTURE_KEYS and self._is_bare_collection(node, path):
+            return self._unquoted_smiles(node)
+        if isinstance(node, yaml.MappingNode):
+            return self._mapping(node, path)
+        if isinstance(node, yaml.SequenceNode):
+            return [
+                self._joined(run, (*path, index)) if len(run) > 1 else self.construct(run[0], (*path, index))
+                for index, run in enumerate(self._whole_names(node))
+            ]
+        return self._scalar(node, path)
+
+    # scalars
+
+    def _scalar(self, node: yaml.ScalarNode, path: ValuePath) -> Plain:
+        text: str = node.value
+        if node.style in {"'", '"', "|", ">"}:
+            return text
+        if text in _WORDS:
+            at_end = (
+                "; YAML reads what follows # as a comment"
+                if self._rest_of_line(node).lstrip().startswith("#")
+                else ""
+            )
+            self.report(
+                "empty-value",
+                node,
+                f"{_named(path)} has no value{at_end}",
+                "write it in quotes, or drop the key",
+            )
+            return None
+        if text in _BOOLEANS:
+            return _BOOLEANS[text]
+        if _ALTERED_NUMBER.fullmatch(text):
+            self.report(
+                "number-altered",
+                node,
+                f"{text} is read as another number",
+                f"write {quoted(text)}",
+                quoted(text),
+            )
+            return text
+        if _OTHERWISE_IN_1_1.fullmatch(text):
+            return self._otherwise(node, text)
+        if _INTEGER.fullmatch(text):
+            return int(text)
+        return Decimal(text) if _FLOAT.fullmatch(text) else text
+
+    def _otherwise(self, node: yaml.ScalarNode, text: str) -> Plain:
+        number = Decimal(text) if _FLOAT.fullmatch(text) else None
+        fix = quoted(text)
+        if number is not None:
+            mantissa, exponent = text.lower().split("e")
+            point = "" if "." in mantissa else ".0"
+            fix = f"{mantissa}{point}e{int(exponent):+d}"
+        self.report("yaml-1-1-reads-otherwise", node, f"an older reader alters {text}", f"write {fix}", fix)
+        return text if number is None else number
+
+    def _unquoted_smiles(self, node: yaml.Node) -> str:
+        source = self.text[node.start_mark.index : node.end_mark.index]
+        self.report(
+            "smiles-unquoted",
+            node,
+            f"YAML reads {source} as a list",
+            f"write {quoted(source)}",
+            quoted(source),
+        )
+        return source
+
+    def _is_bare_collection(self, node: yaml.Node, path: ValuePath) -> bool:
+        may_be_mapping = path[-1] == "sought"
+        return isinstance(node, yaml.SequenceNode) or (
+            isinstance(node, yaml.MappingNode) and not may_be_mapping
+        )
+
+    # collections
+
+    def _mapping(self, node: yaml.MappingNode, path: ValuePath) -> Plain:
+        made: dict[str, Plain] = {}
+        last = ""
+        for key_node, value_node in node.value:
+            if not isinstance(key_node, yaml.ScalarNode):
+                self.report("value-wrong-type", key_node, "a key is a word", "write one word and a colon")
+                continue
+            key: str = key_node.value
+            if self._is_rest_of_a_name(node, key_node, value_node, last):
+                self._join(made, last, key_node, path)
+                continue
+            key_path = (*path, key)
+            if key in made:
+                first = self.keys[key_path].line
+                self.report(
+                    "duplicate-key",
+                    key_node,
+                    f'"{key}" stands again; first on line {first}',
+                    "keep one of them",
+                )
+                continue
+            self.keys[key_path] = self._place(key_node)
+            made[key] = self.construct(value_node, key_path)
+            last = key
+        return made
+
+    def _is_rest_of_a_name(
+        self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node, last: str
+    ) -> bool:
+        """Say whether a flow mapping split "2,2-dimethyl…" at its comma: a key without value right behind it."""
+        is_bare = (
+            isinstance(value, yaml.ScalarNode)
+            and value.start_mark.index == value.end_mark.index
+            and not value.style
+        )
+        return bool(node.flow_style and last and is_bare and self.text[key.start_mark.index - 1] == ",")
+
+    def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
+        place = self.values[(*path, last)]
+        whole = f"{made[last]},{rest.value}"
+        made[last] = whole
+        self.findings = [
+            f for f in self.findings if not (f.rule == "name-split-at-comma" and f.place == place)
+        ]
+        fault = Fault(
+            at=(), message=f"{last} is split at its comma", mend=f"write {quoted(whole)}", fix=quoted(whole)
+        )
+        self.findings.append(reading_rule("name-split-at-comma").finding(fault, place))
+
+    def _whole_names(self, node: yaml.SequenceNode) -> Iterator[list[yaml.Node]]:
+        """Group the items of a flow sequence so that a name split at its commas is one group."""
+        runs: list[list[yaml.Node]] = []
+        for item in node.value:
+            glued = bool(node.flow_style and runs) and self.text[item.start_mark.index - 1] == ","
+            if glued and isinstance(item, yaml.ScalarNode) and not item.style and _is_locant(runs[-1][-1]):
+                runs[-1].append(item)
+            else:
+                runs.append([item])
+        for run in runs:
+            if len(run) > 1 and _begins_with_locant(run[-1]):
+                yield run
+            else:
+                yield from ([item] for item in run)
+
+    def _joined(self, run: Sequence[yaml.Node], path: ValuePath) -> str:
+        whole = ",".join(str(item.value) for item in run)
+        self.values[path] = self._place(run[0], run[-1])
+        message = f"{whole} is read as {len(run)} values"
+        self.report(
+            "name-split-at-comma", run[0], message, f"write {quoted(whole)}", quoted(whole), until=run[-1]
+        )
+        return whole
+
+    def _refuse_tag(self, node: yaml.Node) -> None:
+        head = self.text[node.start_mark.index : node.start_mark.index + 200]
+        if re.match(r"(&\S+\s+)?!", head):
+            self.report(
+                "tag-refused",
+                node,
+                f"{head.split()[0]} is a YAML tag",
+                "drop it, or quote a text that begins with !",
+            )
+
+    def _place(self, node: yaml.Node, until: yaml.Node | None = None) -> Place:
+        end = (until or node).end_mark
+        start = node.start_mark
+        end_column = end.column if end.line == start.line else start.column + 1
+        return self.mended.place(start.line, start.column, max(end_column, start.column + 1))
+
+    def _rest_of_line(self, node: yaml.Node) -> str:
+        start = node.end_mark.index
+        return self.text[start:].partition("\n")[0]
+
+
+def _named(path: ValuePath) -> str:
+    return next((f'"{step}"' for step in reversed(path) if isinstance(step, str)), "the file")
+
+
+def _is_locant(node: yaml.Node) -> bool:
+    return (
+        isinstance(node, yaml.ScalarNode)
+        and not node.style
+        and bool(re.search(r"(^|[^A-Za-z])(\d+'?|[NOSP])$", node.value))
+    )
+
+
+def _begins_with_locant(node: yaml.Node) -> bool:
+    return bool(re.match(r"(\d+'?|[NOSP])-\S", str(node.value)))
+
+
+# --- text that is no YAML ---------------------------------------------------------------------------------
+
+_KEY_AND_VALUE = re.compile(
+    r"^(?P<head>\s*(?:- +)*(?P<key>[A-Za-z_]+): +)(?P<value>\S.*?)(?P<tail>\s+#.*)?\s*$"
+)
+_FLOW_SMILES = re.compile(r"(?P<key>smiles|inchi|sought): +(?P<value>[^\s'\"{,][^\s,}]*|\"[^\"]*\")")
+
+
+class _MendedText:
+    """A file's text with in-memory mends, able to say where something stood before them."""
+
+    def __init__(self, text: str, file: str) -> None:
+        self.text, self.file = text, file
+        self._shifts: list[tuple[int, int, int]] = []  # line, column, characters put in before it
+
+    def place(self, line: int, column: int, end_column: int) -> Place:
+        """Return the place in the file as written of a 0-based position in the mended text."""
+        shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
+        end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
+        return Place(
+            self.file, line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1
+        )
+
+    def explain(self, error: yaml.MarkedYAMLError) -> tuple[Finding, bool]:
+        """Return the finding for a YAML error, and whether its cause has been mended in memory."""
+        mark = error.problem_mark or error.context_mark
+        if (
+            "nesting" in (error.problem or "")
+            or "indent" in (error.problem or "")
+            and "exceeded" in error.problem
+        ):
+            return self._finding(
+                "nesting-too-deep", mark, "more levels than any record needs", "close the brackets"
+            ), False
+        for candidate in (error.problem_mark, error.context_mark):
+            finding = self._mend_line(candidate.line) if candidate is not None else None
+            if finding is not None:
+                return finding, True
+        if error.context_mark is not None and "quoted scalar" in (error.context or ""):
+            return self._finding(
+                "yaml-unreadable", error.context_mark, "this quote is never closed", "close it"
+            ), False
+        said = (
+            "more than one document"
+            if "single document" in (error.context or "")
+            else (error.problem or "not YAML")
+        )
+        return self._finding(
+            "yaml-unreadable", mark, said, "indent with spaces, quote texts with : or #"
+        ), False
+
+    def _mend_line(self, number: int) -> Finding | None:
+        lines = self.text.split("\n")
+        if number >= len(lines):
+            return None
+        line = lines[number]
+        margin = re.match(r"\s*", line)
+        if margin and "\t" in margin[0]:
+            fixed = margin[0].replace("\t", "  ") + line.lstrip()
+            column = margin[0].index("\t")
+            self._replace(lines, number, fixed)
+            return self._at(
+                number,
+                column,
+                column + 1,
+                "yaml-unreadable",
+                "a tab in the margin",
+                "indent with spaces",
+                None,
+            )
+        flow = self._flow_smiles(line)
+        if flow is not None:
+            return self._quote(lines, number, flow.start("value"), flow["value"], "smiles-unquoted")
+        whole = _KEY_AND_VALUE.match(line)
+        if whole and _needs_quotes(whole["value"]):
+            rule = "smiles-unquoted" if whole["key"] in _STRUCTURE_KEYS else "yaml-unreadable"
+            return self._quote(lines, number, whole.start("value"), whole["value"], rule)
+        return None
+
+    def _flow_smiles(self, line: str) -> re.Match[str] | None:
+        return next((match for match in _FLOW_SMILES.finditer(line) if _needs_quotes(match["value"])), None)
+
+    def _quote(self, lines: list[str], number: int, column: int, value: str, rule: str) -> Finding:
+        bare = value[1:-1] if value.startswith('"') and value.endswith('"') and len(value) > 1 else value
+        fix = quoted(bare)
+        line = lines[number]
+        self._replace(lines, number, line[:column] + fix + line[column + len(value) :])
+        finding = self._at(
+            number, column, column + len(value), rule, f"YAML cannot read {value}", f"write {fix}", fix
+        )
+        self._shifts.append((number, column, len(fix) - len(value)))
+        return finding
+
+    def _replace(self, lines: list[str], number: int, line: str) -> None:
+        lines[number] = line
+        self.text = "\n".join(lines)
+
+    def _at(
+        self, line: int, column: int, end: int, rule: str, message: str, mend: str, fix: str | None
+    ) -> Finding:
+        return reading_rule(rule).finding(
+            Fault(at=(), message=message, mend=mend, fix=fix), self.place(line, column, end)
+        )
+
+    def _finding(self, rule: str, mark: yaml.Mark | None, message: str, mend: str) -> Finding:
+        line, column = (mark.line, mark.column) if mark is not None else (0, 0)
+        return self._at(line, column, column + 1, rule, message, mend, None)
+
+
+def _needs_quotes(value: str) -> bool:
+    """Say whether a value without quotes is one that YAML cannot read as text."""
+    if value.startswith("'"):
+        return False
+    if value.startswith('"'):
+        return value.endswith('"') and len(value) > 1 and "\\" in value
+    if value[0] in "[{" and value.endswith({"[": "]", "{": "}"}[value[0]]):
+        return "][" in value or bool(re.search(r"\][^\s,\]}]", value))
+    return value[0] in "@`%&*!|>[{" or ": " in value or value.endswith(":")
