@@ -36,9 +36,7 @@ Canonical = str | int | bool | list["Canonical"] | dict[str, "Canonical"]
 
 def canonical_json(record: Record) -> bytes:
     """Return the canonical JSON of the scientific content (RFC 8785)."""
-    content = {
-        key: _canonical(getattr(record, key)) for key in SCIENTIFIC_KEYS if _is_given(getattr(record, key))
-    }
+    content = {key: _canonical(getattr(record, key)) for key in SCIENTIFIC_KEYS if _is_given(getattr(record, key))}
     return rfc8785.dumps(content)
 
 

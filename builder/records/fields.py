@@ -70,9 +70,7 @@ Q = TypeVar("Q", Quantity, Percent, Temperature)
 _NUMBER_SHAPE = r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?"
 _DAY = re.compile(r"\d{4}-\d{2}-\d{2}")
 _LABEL = r"[A-Za-z0-9]+"
-_RATIO = re.compile(
-    rf"(?P<parts>{_LABEL}(?:\+{_LABEL})*(?::{_LABEL}(?:\+{_LABEL})*)+) = (?P<numbers>[\d.:]+)"
-)
+_RATIO = re.compile(rf"(?P<parts>{_LABEL}(?:\+{_LABEL})*(?::{_LABEL}(?:\+{_LABEL})*)+) = (?P<numbers>[\d.:]+)")
 _CAS = re.compile(r"(\d{2,7})-(\d{2})-(\d)")
 _CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f]")
 
@@ -97,9 +95,7 @@ def _quantity(
     high = quantity.highest_c if isinstance(quantity, Temperature) else quantity.magnitude
     if least is not None and (low < least or (open_below and low == least)):
         bound = "above" if open_below else "at least"
-        raise faulty(
-            "quantity-out-of-range", f'"{value}" is impossible', f"a value {bound} {least:g} is wanted"
-        )
+        raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"a value {bound} {least:g} is wanted")
     if most is not None and high > most:
         raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"a value up to {most:g} is wanted")
     return quantity
@@ -238,9 +234,7 @@ Line = Annotated[
 ]
 """Free text; escaped wherever it is shown."""
 
-SmilesText = Annotated[
-    str, BeforeValidator(_smiles), AfterValidator(_line), Field(min_length=1, max_length=2000)
-]
+SmilesText = Annotated[str, BeforeValidator(_smiles), AfterValidator(_line), Field(min_length=1, max_length=2000)]
 
 
 def _date(value: object) -> dt.date:
@@ -250,12 +244,8 @@ def _date(value: object) -> dt.date:
         try:
             return dt.date.fromisoformat(value)
         except ValueError:
-            raise faulty(
-                "value-not-permitted", f"{value} is no day of the calendar", "correct the date"
-            ) from None
-    raise faulty(
-        "value-not-permitted", f'"{value}" is not a date', "write it as 2026-03-14", _iso_date(str(value))
-    )
+            raise faulty("value-not-permitted", f"{value} is no day of the calendar", "correct the date") from None
+    raise faulty("value-not-permitted", f'"{value}" is not a date', "write it as 2026-03-14", _iso_date(str(value)))
 
 
 def _iso_date(text: str) -> str | None:
@@ -275,9 +265,7 @@ def _entry_id(value: object) -> str:
     raise faulty("value-not-permitted", f'"{text}" is not an entry identifier', hint, mended)
 
 
-EntryId = Annotated[
-    str, BeforeValidator(_entry_id), WithJsonSchema({"type": "string", "pattern": IDENTIFIER_PATTERN})
-]
+EntryId = Annotated[str, BeforeValidator(_entry_id), WithJsonSchema({"type": "string", "pattern": IDENTIFIER_PATTERN})]
 
 
 def _cas(value: object) -> str:
@@ -287,14 +275,10 @@ def _cas(value: object) -> str:
         digits = [int(digit) for digit in reversed(match[1] + match[2])]
         if sum(place * digit for place, digit in enumerate(digits, start=1)) % 10 == int(match[3]):
             return text
-    raise faulty(
-        "value-not-permitted", f'"{text}" is not a CAS number: its check digit fails', "correct or drop it"
-    )
+    raise faulty("value-not-permitted", f'"{text}" is not a CAS number: its check digit fails', "correct or drop it")
 
 
-CasNumber = Annotated[
-    str, BeforeValidator(_cas), WithJsonSchema({"type": "string", "pattern": r"^\d{2,7}-\d{2}-\d$"})
-]
+CasNumber = Annotated[str, BeforeValidator(_cas), WithJsonSchema({"type": "string", "pattern": r"^\d{2,7}-\d{2}-\d$"})]
 
 
 def _whole(value: object) -> int:
@@ -323,9 +307,7 @@ def _number(value: object) -> Decimal:
     if isinstance(value, bool) or not isinstance(value, (int, Decimal)):
         mend = "write the bare number"
         fix = None
-        if isinstance(value, str) and re.fullmatch(
-            rf"({_NUMBER_SHAPE})\s*(equiv\.?|eq\.?|equivalents?)", value
-        ):
+        if isinstance(value, str) and re.fullmatch(rf"({_NUMBER_SHAPE})\s*(equiv\.?|eq\.?|equivalents?)", value):
             fix = value.split("e", 1)[0].strip()
             mend = f"write {fix}"
         elif isinstance(value, str) and re.fullmatch(r"\d+,\d+", value):
@@ -350,9 +332,7 @@ def _relative_path(value: object) -> str:
     text = _text(value)
     parts = re.split(r"[/\\]", text)
     if text.startswith(("/", "\\", "~")) or ":" in text or ".." in parts or "" in parts:
-        raise faulty(
-            "value-not-permitted", f'"{text}" leads out of the book', "name a file beside the record"
-        )
+        raise faulty("value-not-permitted", f'"{text}" leads out of the book', "name a file beside the record")
     return text
 
 
@@ -444,9 +424,7 @@ class _Listed:
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
         return core_schema.no_info_before_validator_function(self._as_list, handler(source))
 
-    def __get_pydantic_json_schema__(
-        self, schema: CoreSchema, handler: GetJsonSchemaHandler
-    ) -> dict[str, Any]:
+    def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
         many = handler(schema)
         return {"anyOf": [many["items"], many]}
 

@@ -316,9 +316,7 @@ class Measurement(Part):
         given = [kind for kind in KINDS_OF_MEASUREMENT if getattr(self, _attribute(kind)) is not None]
         if len(given) != 1:
             held = " and ".join(given) or "none"
-            raise faulty(
-                "measurement-not-one", f"one measurement a line; this one has {held}", "split the line"
-            )
+            raise faulty("measurement-not-one", f"one measurement a line; this one has {held}", "split the line")
         if self.yield_ is not None and (self.kind is None or self.of is None):
             lacking = "kind: isolated, assay or area" if self.kind is None else "of: the product's label"
             raise faulty("key-missing", "a yield needs its kind and its product", f"add {lacking}")
@@ -375,9 +373,7 @@ def _require_products(outcome: "Outcome") -> None:
     if set(outcome.result) <= {Result.NO_REACTION, Result.DECOMPOSITION}:
         return
     if not outcome.products:
-        raise faulty(
-            "key-missing", "a reaction that went has products", "add products: with label, name, smiles"
-        )
+        raise faulty("key-missing", "a reaction that went has products", "add products: with label, name, smiles")
     if not (outcome.measured or outcome.rate_constant or outcome.time_course):
         raise faulty("key-missing", "a reaction that went has a measurement", "add measured: with one line")
 
@@ -464,9 +460,7 @@ class Record(Part):
                 "add one, or a word: solvent, internal, none",
             )
         if bool(self.neat) == bool(self.solvent):
-            raise faulty(
-                "key-missing", "a record has a solvent, or neat: true, and never both", "keep one of them"
-            )
+            raise faulty("key-missing", "a record has a solvent, or neat: true, and never both", "keep one of them")
         for state, given in ((Status.SUPERSEDED, self.superseded), (Status.WITHDRAWN, self.withdrawn)):
             if (self.status is state) != (given is not None):
                 mend = f"add {state}:" if given is None else f"write status: {state}, or drop {state}:"

@@ -115,17 +115,14 @@ _UNITS: dict[Dimension, tuple[_Unit, ...]] = {
     ),
 }
 _BY_SPELLING = {
-    dimension: {spelling: unit for unit in units for spelling in unit.spellings}
-    for dimension, units in _UNITS.items()
+    dimension: {spelling: unit for unit in units for spelling in unit.spellings} for dimension, units in _UNITS.items()
 }
 _KEEPS_ITS_UNIT = {Dimension.RATE_CONSTANT_1, Dimension.RATE_CONSTANT_2}
 
 _NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?"
 _QUANTITY = re.compile(rf"(?P<number>{_NUMBER})\s*(?P<unit>\S.*)?")
 _SPACES = re.compile(r"[\s\u00a0\u2000-\u200a\u202f\u205f]+")
-_LOOKALIKES = str.maketrans(
-    {"\u2212": "-", "\u2012": "-", "\u2013": "-", "\u03bc": "µ", "\u2010": "-", "\u2011": "-"}
-)
+_LOOKALIKES = str.maketrans({"\u2212": "-", "\u2012": "-", "\u2013": "-", "\u03bc": "µ", "\u2010": "-", "\u2011": "-"})
 _COMMA = re.compile(r"\d,\d")
 _ARITHMETIC = re.compile(r"\d\s*[*×x/+]\s*\d|\d\s+-\s+\d")
 _ABOUT = re.compile(r"^(~|≈|ca\.?|circa|about|approx\.?)\s*", re.IGNORECASE)
@@ -231,9 +228,7 @@ class Temperature:
             return str(self.start)
         joint = "–" if self.is_band else " to "
         return (
-            f"{number_text(self.start.number)}{joint}{self.end}"
-            if self.is_band
-            else f"{self.start}{joint}{self.end}"
+            f"{number_text(self.start.number)}{joint}{self.end}" if self.is_band else f"{self.start}{joint}{self.end}"
         )
 
 
@@ -308,9 +303,7 @@ def parse_temperature(text: object) -> Temperature:
         band = re.fullmatch(r"(?P<low>[+\-\u2212]?\d+(?:\.\d+)?)\s*[-\u2013]\s*(?P<high>\S.*)", text.strip())
         if band:
             high = parse_quantity(band["high"], Dimension.TEMPERATURE)
-            return Temperature(
-                parse_quantity(f"{band['low']} {high.unit}", Dimension.TEMPERATURE), high, is_band=True
-            )
+            return Temperature(parse_quantity(f"{band['low']} {high.unit}", Dimension.TEMPERATURE), high, is_band=True)
     value = parse_quantity(text, Dimension.TEMPERATURE)
     return Temperature(value, value)
 
@@ -349,9 +342,7 @@ def _quantity(number: Decimal, unit: _Unit, dimension: Dimension) -> Quantity:
     if unit is canonical or dimension is Dimension.FRACTION:
         return Quantity(dimension, number, unit.symbol, number)
     if dimension is Dimension.TEMPERATURE:
-        return Quantity(
-            dimension, number, unit.symbol, _registry().Quantity(number, unit.pint).to("degC").magnitude
-        )
+        return Quantity(dimension, number, unit.symbol, _registry().Quantity(number, unit.pint).to("degC").magnitude)
     return Quantity(dimension, number, unit.symbol, number * _factor(unit.pint, canonical.pint))
 
 
@@ -371,9 +362,7 @@ def _a(dimension: Dimension) -> str:
 
 
 def _example(dimension: Dimension) -> str:
-    number = {Dimension.TEMPERATURE: "60", Dimension.TIME: "16", Dimension.FRACTION: "88"}.get(
-        dimension, "1.5"
-    )
+    number = {Dimension.TEMPERATURE: "60", Dimension.TIME: "16", Dimension.FRACTION: "88"}.get(dimension, "1.5")
     return f"{number} {_UNITS[dimension][0].symbol}" if dimension is not Dimension.TIME else "16 h"
 
 
@@ -393,14 +382,10 @@ def _no_unit(number: str, dimension: Dimension) -> QuantityError:
     )
 
 
-def _quantity_error(
-    text: str, tidy: str, number: str | None, spelling: str, dimension: Dimension
-) -> QuantityError:
+def _quantity_error(text: str, tidy: str, number: str | None, spelling: str, dimension: Dimension) -> QuantityError:
     word = tidy.casefold()
     if word in _VAGUE:
-        return QuantityError(
-            "quantity-vague", f'"{text}" is not a measured {dimension}', f"write {_VAGUE[word]}"
-        )
+        return QuantityError("quantity-vague", f'"{text}" is not a measured {dimension}', f"write {_VAGUE[word]}")
     if _ABOUT.match(tidy):
         rest = _ABOUT.sub("", tidy)
         return QuantityError("quantity-vague", f'"{text}" says "about"', f'write "{rest}"', fix=rest)

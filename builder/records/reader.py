@@ -58,9 +58,7 @@ def read_bytes(data: bytes, shown_as: str) -> Reading:
     return Reading(shown_as, text, record, findings, places)
 
 
-def read_into(
-    model: type[Model], text: str, shown_as: str
-) -> tuple[Model | None, tuple[Finding, ...], Places]:
+def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:
     """Read YAML text into `model`: the value (None where any error was found), findings, and places."""
     plainly = read_plain(text, shown_as)
     findings = list(plainly.findings)
@@ -79,9 +77,7 @@ def read_into(
 
 
 def _too_large(size: int, file: str) -> Reading:
-    fault = Fault(
-        at=(), message=f"the file has {size / 1e6:.1f} MB", mend="keep data files outside the record"
-    )
+    fault = Fault(at=(), message=f"the file has {size / 1e6:.1f} MB", mend="keep data files outside the record")
     finding = reading_rule("file-too-large").finding(fault, Place(file, 1, 1, 2))
     return Reading(file, "", None, (finding,), Places(file))
 
@@ -178,18 +174,12 @@ def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
 
 
 def _not_permitted(path: ValuePath, plain: Plain, context: Mapping[str, Any]) -> Fault:
-    permitted = re.findall(
-        r"'((?:[^'\\]|\\.)*)'|\"((?:[^\"\\]|\\.)*)\"|(\d+)", str(context.get("expected", ""))
-    )
+    permitted = re.findall(r"'((?:[^'\\]|\\.)*)'|\"((?:[^\"\\]|\\.)*)\"|(\d+)", str(context.get("expected", "")))
     words = [next(word for word in found if word) for found in permitted]
     value = _value_at(plain, path)
     near = get_close_matches(str(value), words, n=1, cutoff=0.6)
     hint = f'; did you mean "{near[0]}"?' if near else ""
-    fix = (
-        quoted(near[0])
-        if near and not re.fullmatch(r"[A-Za-z0-9' -]+", near[0])
-        else (near[0] if near else None)
-    )
+    fix = quoted(near[0]) if near and not re.fullmatch(r"[A-Za-z0-9' -]+", near[0]) else (near[0] if near else None)
     return Fault(
         at=path,
         message=f'"{value}" is not permitted here{hint}',
@@ -200,11 +190,7 @@ def _not_permitted(path: ValuePath, plain: Plain, context: Mapping[str, Any]) ->
 
 def _type_mend(path: ValuePath, model: type[BaseModel]) -> str:
     keys = sorted({name for owner in _models_at(model, path) for name in _keys_of(owner)})
-    return (
-        f"write it with the keys {', '.join(keys[:8])}{', …' if len(keys) > 8 else ''}"
-        if keys
-        else "write - items"
-    )
+    return f"write it with the keys {', '.join(keys[:8])}{', …' if len(keys) > 8 else ''}" if keys else "write - items"
 
 
 def _value_at(plain: Plain, path: ValuePath) -> Plain:

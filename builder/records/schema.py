@@ -50,8 +50,6 @@ def _without_defaults(node: Any) -> Any:
     """Drop the defaults: they are how the reader stores an absent key, nothing a writer should type."""
     if isinstance(node, dict):
         return {
-            key: _without_defaults(value)
-            for key, value in node.items()
-            if key != "default" or isinstance(value, dict)
+            key: _without_defaults(value) for key, value in node.items() if key != "default" or isinstance(value, dict)
         }
     return [_without_defaults(item) for item in node] if isinstance(node, list) else node

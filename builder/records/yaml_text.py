@@ -158,9 +158,7 @@ class _Constructor:
             message = f"aliases blow this file up beyond {MAX_VALUES:,} values"
             raise _TooMuchError("alias-overgrown", message, "write the values out", None)
         if len(path) > MAX_DEPTH:
-            raise _TooMuchError(
-                "nesting-too-deep", f"more than {MAX_DEPTH} levels", "close the brackets earlier", node
-            )
+            raise _TooMuchError("nesting-too-deep", f"more than {MAX_DEPTH} levels", "close the brackets earlier", node)
         self.values[path] = self._place(node)
         self._refuse_tag(node)
         if path and path[-1] in _STRUCTURE_KEYS and self._is_bare_collection(node, path):
@@ -182,9 +180,7 @@ class _Constructor:
             return text
         if text in _WORDS:
             at_end = (
-                "; YAML reads what follows # as a comment"
-                if self._rest_of_line(node).lstrip().startswith("#")
-                else ""
+                "; YAML reads what follows # as a comment" if self._rest_of_line(node).lstrip().startswith("#") else ""
             )
             self.report(
                 "empty-value",
@@ -233,9 +229,7 @@ class _Constructor:
 
     def _is_bare_collection(self, node: yaml.Node, path: ValuePath) -> bool:
         may_be_mapping = path[-1] == "sought"
-        return isinstance(node, yaml.SequenceNode) or (
-            isinstance(node, yaml.MappingNode) and not may_be_mapping
-        )
+        return isinstance(node, yaml.SequenceNode) or (isinstance(node, yaml.MappingNode) and not may_be_mapping)
 
     # collections
 
@@ -265,14 +259,10 @@ class _Constructor:
             last = key
         return made
 
-    def _is_rest_of_a_name(
-        self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node, last: str
-    ) -> bool:
+    def _is_rest_of_a_name(self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node, last: str) -> bool:
         """Say whether a flow mapping split "2,2-dimethyl…" at its comma: a key without value right behind it."""
         is_bare = (
-            isinstance(value, yaml.ScalarNode)
-            and value.start_mark.index == value.end_mark.index
-            and not value.style
+            isinstance(value, yaml.ScalarNode) and value.start_mark.index == value.end_mark.index and not value.style
         )
         return bool(node.flow_style and last and is_bare and self.text[key.start_mark.index - 1] == ",")
 
@@ -280,12 +270,8 @@ class _Constructor:
         place = self.values[(*path, last)]
         whole = f"{made[last]},{rest.value}"
         made[last] = whole
-        self.findings = [
-            f for f in self.findings if not (f.rule == "name-split-at-comma" and f.place == place)
-        ]
-        fault = Fault(
-            at=(), message=f"{last} is split at its comma", mend=f"write {quoted(whole)}", fix=quoted(whole)
-        )
+        self.findings = [f for f in self.findings if not (f.rule == "name-split-at-comma" and f.place == place)]
+        fault = Fault(at=(), message=f"{last} is split at its comma", mend=f"write {quoted(whole)}", fix=quoted(whole))
         self.findings.append(reading_rule("name-split-at-comma").finding(fault, place))
 
     def _whole_names(self, node: yaml.SequenceNode) -> Iterator[list[yaml.Node]]:
@@ -307,9 +293,7 @@ class _Constructor:
         whole = ",".join(str(item.value) for item in run)
         self.values[path] = self._place(run[0], run[-1])
         message = f"{whole} is read as {len(run)} values"
-        self.report(
-            "name-split-at-comma", run[0], message, f"write {quoted(whole)}", quoted(whole), until=run[-1]
-        )
+        self.report("name-split-at-comma", run[0], message, f"write {quoted(whole)}", quoted(whole), until=run[-1])
         return whole
 
     def _refuse_tag(self, node: yaml.Node) -> None:
@@ -351,9 +335,7 @@ def _begins_with_locant(node: yaml.Node) -> bool:
 
 # --- text that is no YAML ---------------------------------------------------------------------------------
 
-_KEY_AND_VALUE = re.compile(
-    r"^(?P<head>\s*(?:- +)*(?P<key>[A-Za-z_]+): +)(?P<value>\S.*?)(?P<tail>\s+#.*)?\s*$"
-)
+_KEY_AND_VALUE = re.compile(r"^(?P<head>\s*(?:- +)*(?P<key>[A-Za-z_]+): +)(?P<value>\S.*?)(?P<tail>\s+#.*)?\s*$")
 _FLOW_SMILES = re.compile(r"(?P<key>smiles|inchi|sought): +(?P<value>[^\s'\"{,][^\s,}]*|\"[^\"]*\")")
 
 
@@ -368,18 +350,12 @@ class _MendedText:
         """Return the place in the file as written of a 0-based position in the mended text."""
         shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
         end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
-        return Place(
-            self.file, line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1
-        )
+        return Place(self.file, line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1)
 
     def explain(self, error: yaml.MarkedYAMLError) -> tuple[Finding, bool]:
         """Return the finding for a YAML error, and whether its cause has been mended in memory."""
         mark = error.problem_mark or error.context_mark
-        if (
-            "nesting" in (error.problem or "")
-            or "indent" in (error.problem or "")
-            and "exceeded" in error.problem
-        ):
+        if "nesting" in (error.problem or "") or "indent" in (error.problem or "") and "exceeded" in error.problem:
             return self._finding(
                 "nesting-too-deep", mark, "more levels than any record needs", "close the brackets"
             ), False
@@ -388,17 +364,9 @@ class _MendedText:
             if finding is not None:
                 return finding, True
         if error.context_mark is not None and "quoted scalar" in (error.context or ""):
-            return self._finding(
-                "yaml-unreadable", error.context_mark, "this quote is never closed", "close it"
-            ), False
-        said = (
-            "more than one document"
-            if "single document" in (error.context or "")
-            else (error.problem or "not YAML")
-        )
-        return self._finding(
-            "yaml-unreadable", mark, said, "indent with spaces, quote texts with : or #"
-        ), False
+            return self._finding("yaml-unreadable", error.context_mark, "this quote is never closed", "close it"), False
+        said = "more than one document" if "single document" in (error.context or "") else (error.problem or "not YAML")
+        return self._finding("yaml-unreadable", mark, said, "indent with spaces, quote texts with : or #"), False
 
     def _mend_line(self, number: int) -> Finding | None:
         lines = self.text.split("\n")
@@ -436,9 +404,7 @@ class _MendedText:
         fix = quoted(bare)
         line = lines[number]
         self._replace(lines, number, line[:column] + fix + line[column + len(value) :])
-        finding = self._at(
-            number, column, column + len(value), rule, f"YAML cannot read {value}", f"write {fix}", fix
-        )
+        finding = self._at(number, column, column + len(value), rule, f"YAML cannot read {value}", f"write {fix}", fix)
         self._shifts.append((number, column, len(fix) - len(value)))
         return finding
 
@@ -446,9 +412,7 @@ class _MendedText:
         lines[number] = line
         self.text = "\n".join(lines)
 
-    def _at(
-        self, line: int, column: int, end: int, rule: str, message: str, mend: str, fix: str | None
-    ) -> Finding:
+    def _at(self, line: int, column: int, end: int, rule: str, message: str, mend: str, fix: str | None) -> Finding:
         return reading_rule(rule).finding(
             Fault(at=(), message=message, mend=mend, fix=fix), self.place(line, column, end)
         )

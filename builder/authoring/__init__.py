@@ -1,0 +1,1 @@
+"""What helps people write records."""

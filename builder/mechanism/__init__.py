@@ -1,0 +1,1 @@
+"""The rule engine: knows substrates and conditions, not files or pages."""

@@ -1,0 +1,1 @@
+"""The gates of the engine, listed by hand in id order."""

@@ -1,0 +1,1 @@
+"""A checked book into pages; returns text, never reads entries."""
