@@ -25,6 +25,7 @@ __all__ = [
     "Stereocentres",
     "Structure",
     "StructureError",
+    "bridgeheads_of",
     "name_atom",
     "parse_inchi",
     "parse_rxn",
@@ -44,9 +45,7 @@ MAX_RINGS = 40
 MAX_STEREO_ELEMENTS = 60
 """Stereocentres and stereo double bonds as written; protects canonical ranking and stereo perception."""
 
-_INORGANIC_CATIONS = frozenset(
-    {"Li", "Na", "K", "Rb", "Cs", "Mg", "Ca", "Ba", "Ag", "Cu", "Zn", "Tl", "Hg", "Cd"}
-)
+_INORGANIC_CATIONS = frozenset({"Li", "Na", "K", "Rb", "Cs", "Mg", "Ca", "Ba", "Ag", "Cu", "Zn", "Tl", "Hg", "Cd"})
 _INORGANIC_ANIONS = frozenset(
     {"[F-]", "[Cl-]", "[Br-]", "[I-]", "[OH-]", "O=[N+]([O-])[O-]", "O=S(=O)([O-])O", "O=S(=O)([O-])[O-]"}
     | {"F[B-](F)(F)F", "F[P-](F)(F)(F)(F)F", "F[Sb-](F)(F)(F)(F)F", "[O-][Cl+3]([O-])([O-])[O-]"}
@@ -220,9 +219,7 @@ class Structure:
                 aromatic=atom.GetIsAromatic(),
                 hybridisation=str(atom.GetHybridization()).lower(),
                 neighbours=tuple(
-                    sorted(
-                        (b.GetOtherAtomIdx(atom.GetIdx()), b.GetBondTypeAsDouble()) for b in atom.GetBonds()
-                    )
+                    sorted((b.GetOtherAtomIdx(atom.GetIdx()), b.GetBondTypeAsDouble()) for b in atom.GetBonds())
                 ),
                 ring_sizes=tuple(sorted(rings.AtomRingSizes(atom.GetIdx()))),
             )
@@ -287,8 +284,44 @@ class Structure:
         }
 
     @cached_property
+    def bridgeheads(self) -> frozenset[AtomId]:
+        """Return the atoms where two smallest rings meet that share three or more atoms, and those of small cages.
+
+        Such an atom cannot be attacked from behind, and in small bicycles cannot become flat.
+        """
+        return bridgeheads_of(self.mol)
+
+    @cached_property
     def _stereo(self) -> tuple[Chem.StereoInfo, ...]:
-        return tuple(Chem.FindPotentialStereo(Chem.Mol(self.mol), cleanIt=False, flagPossible=True))
+        found = Chem.FindPotentialStereo(Chem.Mol(self.mol), cleanIt=False, flagPossible=True)
+        return tuple(s for s in found if not self._is_held_by_a_cage(s))
+
+    def _is_held_by_a_cage(self, info: Chem.StereoInfo) -> bool:
+        """Answer whether a centre has like neighbours that rings tie together, so that it has no second form.
+
+        RDKit takes C1 of adamantane and C1 of norbornan-7-one for possible stereocentres.
+        """
+        if info.type != Chem.StereoType.Atom_Tetrahedral or info.centeredOn not in self.bridgeheads:
+            return False
+        ranks = self.symmetry_classes
+        around = [ranks[n.GetIdx()] for n in self.mol.GetAtomWithIdx(info.centeredOn).GetNeighbors()]
+        return len(set(around)) < len(around)
+
+
+def bridgeheads_of(mol: Chem.Mol) -> frozenset[int]:
+    """Return the bridgehead atoms of an RDKit molecule with ring information; for this room only."""
+    info = mol.GetRingInfo()
+    if info.NumRings() < 2:
+        return frozenset()
+    rings = [frozenset(ring) for ring in info.AtomRings()]
+    shared = [one & other for place, one in enumerate(rings) for other in rings[:place]]
+    found = {a for common in shared if len(common) >= 3 for a in common if _ring_bonds(mol, a) >= 3}
+    small = [ring for ring in rings if len(ring) <= 5]
+    return frozenset(found | {a for a in frozenset().union(*small) if sum(a in ring for ring in small) >= 3})
+
+
+def _ring_bonds(mol: Chem.Mol, atom: int) -> int:
+    return sum(1 for bond in mol.GetAtomWithIdx(atom).GetBonds() if bond.IsInRing())
 
 
 _MASS_OF_H = Chem.GetPeriodicTable().GetAtomicWeight(1)
@@ -354,9 +387,7 @@ def parse_inchi(text: str) -> Structure:
     with _heard_complaints():
         raw = rdinchi.InchiToMol(stripped, False, False)[0]
         if raw is None:
-            raise StructureError(
-                "InChI that cannot be read", "copy it again, or give the structure as SMILES"
-            )
+            raise StructureError("InChI that cannot be read", "copy it again, or give the structure as SMILES")
         _refuse_excess(raw)
         _sanitise(raw, None)
         Chem.AssignStereochemistry(raw, cleanIt=True, force=True)
@@ -431,8 +462,7 @@ def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
             break
         smiles = again
         order = {
-            int(old): new
-            for new, old in enumerate(canonical.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"])
+            int(old): new for new, old in enumerate(canonical.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"])
         }
         place = {key: order[at] for key, at in place.items()}
         canonical = Chem.MolFromSmiles(smiles)
@@ -463,9 +493,7 @@ def _refuse_what_is_no_smiles(text: str) -> None:
         raise StructureError(f"longer than {MAX_CHARACTERS} characters", "write only the species that reacts")
     space = re.search(r"\s", text)
     if space:
-        raise StructureError(
-            "space in a SMILES", "write the SMILES alone, its name under `name`", space.start()
-        )
+        raise StructureError("space in a SMILES", "write the SMILES alone, its name under `name`", space.start())
     arrow = re.search(r"(?<!-)>", text)
     if arrow:
         mend = "write one structure; substrate, nucleophile and products have their own keys"
@@ -496,9 +524,7 @@ def _refuse_excess(raw: Chem.Mol) -> None:
     stereo = sum(atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED for atom in raw.GetAtoms())
     stereo += sum(bond.GetBondDir() != Chem.BondDir.NONE for bond in raw.GetBonds()) // 2
     if stereo > MAX_STEREO_ELEMENTS:
-        raise StructureError(
-            f"more than {MAX_STEREO_ELEMENTS} stereo elements", "this handbook does not cover such"
-        )
+        raise StructureError(f"more than {MAX_STEREO_ELEMENTS} stereo elements", "this handbook does not cover such")
 
 
 def _sanitise(raw: Chem.Mol, text: str | None) -> None:
@@ -541,32 +567,36 @@ def _explain_syntax(text: str, complaints: list[str]) -> StructureError:
     while at < len(text):
         token = _SMILES_TOKEN.match(text, at)
         if token is None:
-            if text[at] == "[":
-                return StructureError("bracket that is not closed", "close it with ]", at)
-            return StructureError(f"character {text[at]!r} is no SMILES", "write a definite atom or bond", at)
+            return _explain_character(text, at)
+        written = token.group()
         if token.lastgroup == "ring":
-            label = token.group().strip("%()").lstrip("0") or "0"
+            label = written.strip("%()").lstrip("0") or "0"
             if open_rings.pop(label, None) is None:
                 open_rings[label] = at
-        elif token.group() == "(":
+        elif written == "(":
             branches.append(at)
-        elif token.group() == ")":
-            if not branches:
-                return StructureError("branch closed that was never opened", "remove the ) or add its (", at)
+        elif written == ")" and not branches:
+            return StructureError("branch closed that was never opened", "remove the ) or add its (", at)
+        elif written == ")":
             branches.pop()
-        elif token.lastgroup == "atom" and token.group().startswith("["):
-            if _unsanitised(token.group()) is None:
-                return StructureError(
-                    f"unknown atom {token.group()}", "write element, hydrogens, charge: [NH4+]", at
-                )
+        elif written.startswith("[") and _unsanitised(written) is None:
+            return StructureError(f"unknown atom {written}", "write element, hydrogens, charge: [NH4+]", at)
         at = token.end()
     if open_rings:
         label, where = min(open_rings.items(), key=lambda item: item[1])
-        return StructureError(
-            f"unclosed ring {label}", f"write the ring number {label} at its second atom", where
-        )
+        return StructureError(f"unclosed ring {label}", f"write {label} at its second atom too", where)
     if branches:
         return StructureError("branch that is not closed", "close it with )", branches[-1])
+    return _in_rdkit_words(text, complaints)
+
+
+def _explain_character(text: str, at: int) -> StructureError:
+    if text[at] == "[":
+        return StructureError("bracket that is not closed", "close it with ]", at)
+    return StructureError(f"character {text[at]!r} is no SMILES", "write a definite atom or bond", at)
+
+
+def _in_rdkit_words(text: str, complaints: list[str]) -> StructureError:
     said = next((line for line in complaints if "position" in line), complaints[-1] if complaints else "")
     place = re.search(r"position (\d+)", said)
     if place:

@@ -1,0 +1,258 @@
+"""The pattern tables, compiled once: leaving groups, classes of reactive carbon, attacking atoms, activations.
+
+Every pattern is a row of a TSV table beside this module; a fault in a table is ours and raises ValueError.
+"""
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from enum import StrEnum
+from functools import cache
+from importlib import resources
+
+from rdkit import Chem
+
+from builder.sources import load_sources
+
+__all__ = [
+    "ActivationPattern",
+    "AttackPattern",
+    "ClassKind",
+    "ClassPattern",
+    "Electrons",
+    "LeavingGroupPattern",
+    "load_activations",
+    "load_attack_patterns",
+    "load_class_patterns",
+    "load_leaving_groups",
+    "read_table",
+]
+
+NOTHING = "-"
+"""Stands in a cell that holds no value, so that a forgotten cell can be told from an empty one."""
+
+
+class ClassKind(StrEnum):
+    """What a class word speaks of: the substitution, the surroundings, or a multiple bond that takes up HX."""
+
+    DEGREE = "degree"
+    SITE = "site"
+    ADDITION = "addition"
+
+
+class Electrons(StrEnum):
+    """Where an attacking atom finds the pair for its new bond; the table's header explains each."""
+
+    LONE_PAIR = "lone pair"
+    SHIFT = "shift"
+    PI_BOND = "pi bond"
+    PROTON_LOST = "proton lost"
+    PROTON_MOVES = "proton moves"
+    CHARGE_MOVES = "charge moves"
+    RING_CARBON = "ring carbon"
+    METAL_BOND = "metal bond"
+    HYDRIDE_TRANSFER = "hydride transfer"
+
+
+@dataclass(frozen=True)
+class LeavingGroupPattern:
+    """One row of leaving_groups.tsv; conjugate_acid_pka is in water, None where the table gives no value."""
+
+    name: str
+    abbreviation: str
+    conjugate_acid: str | None
+    conjugate_acid_pka: float | None
+    needs_activation: bool
+    note: str
+    source: str
+    query: Chem.Mol
+    places: dict[int, int]
+
+
+@dataclass(frozen=True)
+class ClassPattern:
+    """One row of site_classes.tsv; query is None where code decides."""
+
+    name: str
+    kind: ClassKind
+    expected: bool
+    meaning: str
+    source: str
+    query: Chem.Mol | None
+    places: dict[int, int]
+
+
+@dataclass(frozen=True)
+class AttackPattern:
+    """One row of attacking_atoms.tsv."""
+
+    kind: str
+    preference: int
+    electrons: Electrons
+    inside_only: bool
+    note: str
+    source: str
+    query: Chem.Mol
+    places: dict[int, int]
+
+
+@dataclass(frozen=True)
+class ActivationPattern:
+    """One row of activations.tsv: what a hydroxyl group becomes, and with which reagent."""
+
+    group: str
+    reagent_name: str
+    reagent: str
+    query: Chem.Mol
+    places: dict[int, int]
+    source: str
+
+
+def read_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
+    """Yield the rows of a table beside this module, comment lines left out.
+
+    Raises ValueError for a wrong header, a blank cell or an unknown source.
+    """
+    lines = resources.files(__package__).joinpath(name).read_text("utf-8").splitlines()
+    rows = [line.split("\t") for line in lines if line and not line.startswith("#")]
+    if not rows or tuple(rows[0]) != columns:
+        raise ValueError(f"{name}: the header must read {' '.join(columns)}")
+    for cells in rows[1:]:
+        if len(cells) != len(columns) or not all(cell.strip() for cell in cells):
+            raise ValueError(f"{name}: {cells[0]}: a cell is blank or missing; write {NOTHING} for no value")
+        row = dict(zip(columns, cells, strict=True))
+        if row["source"] not in load_sources():
+            raise ValueError(f"{name}: {cells[0]}: unknown source {row['source']}")
+        yield row
+
+
+def _compile(name: str, smarts: str) -> tuple[Chem.Mol, dict[int, int]]:
+    """Return the query and, for each atom number written in it, its index in a match."""
+    query: Chem.Mol | None = Chem.MolFromSmarts(smarts)
+    if query is None:
+        raise ValueError(f"{name}: {smarts} is no SMARTS")
+    places = {a.GetAtomMapNum(): a.GetIdx() for a in query.GetAtoms() if a.GetAtomMapNum()}
+    for atom in query.GetAtoms():
+        atom.SetAtomMapNum(0)
+    return query, places
+
+
+def _yes_or_no(name: str, word: str) -> bool:
+    if word not in {"yes", "no"}:
+        raise ValueError(f"{name}: {word} is neither yes nor no")
+    return word == "yes"
+
+
+def _unique(name: str, keys: list[str]) -> None:
+    twice = sorted({key for key in keys if keys.count(key) > 1})
+    if twice:
+        raise ValueError(f"{name}: given twice: {', '.join(twice)}")
+
+
+def _need(name: str, smarts: str, places: dict[int, int], numbers: set[int]) -> None:
+    if not numbers <= places.keys():
+        raise ValueError(f"{name}: {smarts} must mark atoms {sorted(numbers)}")
+
+
+@cache
+def load_leaving_groups() -> tuple[LeavingGroupPattern, ...]:
+    """Return the leaving groups in table order: of two rows that fit, the first names the group."""
+    columns = ("name", "abbreviation", "smarts", "conjugate_acid", "conjugate_acid_pka", "needs_activation")
+    found = []
+    for row in read_table("leaving_groups.tsv", (*columns, "source", "note")):
+        query, places = _compile(row["name"], row["smarts"])
+        _need(row["name"], row["smarts"], places, {1, 2})
+        pka = row["conjugate_acid_pka"]
+        found.append(
+            LeavingGroupPattern(
+                name=row["name"],
+                abbreviation=row["abbreviation"],
+                conjugate_acid=None if row["conjugate_acid"] == NOTHING else row["conjugate_acid"],
+                conjugate_acid_pka=None if pka == NOTHING else float(pka),
+                needs_activation=_yes_or_no(row["name"], row["needs_activation"]),
+                note="" if row["note"] == NOTHING else row["note"],
+                source=row["source"],
+                query=query,
+                places=places,
+            )
+        )
+    _unique("leaving_groups.tsv", [row.name for row in found])
+    return tuple(found)
+
+
+@cache
+def load_class_patterns() -> tuple[ClassPattern, ...]:
+    """Return the classes of reactive carbon in table order."""
+    found = []
+    for row in read_table("site_classes.tsv", ("name", "kind", "smarts", "expected", "meaning", "source")):
+        query, places = (None, {}) if row["smarts"] == "computed" else _compile(row["name"], row["smarts"])
+        if query is not None:
+            _need(row["name"], row["smarts"], places, {1})
+        found.append(
+            ClassPattern(
+                name=row["name"],
+                kind=ClassKind(row["kind"]),
+                expected=_yes_or_no(row["name"], row["expected"]),
+                meaning=row["meaning"],
+                source=row["source"],
+                query=query,
+                places=places,
+            )
+        )
+    _unique("site_classes.tsv", [row.name for row in found])
+    return tuple(found)
+
+
+@cache
+def load_attack_patterns() -> tuple[AttackPattern, ...]:
+    """Return the attacking atoms in table order, which is the order in which they attack."""
+    needed = {
+        Electrons.SHIFT: {1, 2, 3},
+        Electrons.PI_BOND: {1, 2},
+        Electrons.PROTON_MOVES: {1, 4},
+        Electrons.CHARGE_MOVES: {1, 3},
+        Electrons.RING_CARBON: {1, 2, 3},
+        Electrons.METAL_BOND: {1, 4},
+        Electrons.HYDRIDE_TRANSFER: {4},
+    }
+    found, smarts = [], []
+    columns = ("kind", "preference", "smarts", "electrons", "reach", "note", "source")
+    for row in read_table("attacking_atoms.tsv", columns):
+        query, places = _compile(row["kind"], row["smarts"])
+        electrons = Electrons(row["electrons"])
+        _need(row["kind"], row["smarts"], places, needed.get(electrons, {1}))
+        smarts.append(row["smarts"])
+        found.append(
+            AttackPattern(
+                kind=row["kind"],
+                preference=int(row["preference"]),
+                electrons=electrons,
+                inside_only=row["reach"] == "inside",
+                note="" if row["note"] == NOTHING else row["note"],
+                source=row["source"],
+                query=query,
+                places=places,
+            )
+        )
+    _unique("attacking_atoms.tsv", smarts)
+    return tuple(found)
+
+
+@cache
+def load_activations() -> dict[str, ActivationPattern]:
+    """Return, by leaving group, the reagent that puts it on a hydroxyl oxygen."""
+    found: dict[str, ActivationPattern] = {}
+    columns = ("group", "reagent_name", "reagent", "smarts", "source")
+    for row in read_table("activations.tsv", columns):
+        query, places = _compile(row["group"], row["smarts"])
+        _need(row["group"], row["smarts"], places, {1, 2})
+        if row["group"] in found:
+            raise ValueError(f"activations.tsv: given twice: {row['group']}")
+        found[row["group"]] = ActivationPattern(
+            group=row["group"],
+            reagent_name=row["reagent_name"],
+            reagent=row["reagent"],
+            query=query,
+            places=places,
+            source=row["source"],
+        )
+    return found
