@@ -14,7 +14,7 @@ from functools import lru_cache
 
 from rdkit import Chem
 
-from builder.chemistry.structure import AtomId, Structure, parse_smiles
+from builder.chemistry.structure import AtomId, Structure, output_order, parse_smiles
 
 __all__ = ["GAP", "HYDROGEN", "Alkene", "Centre", "Piece", "UnbalancedTransformation", "Workbench"]
 
@@ -281,9 +281,10 @@ class Workbench:
         Raises UnbalancedTransformation if atoms, hydrogens or charge do not add up, or a valence is impossible.
         """
         mol = Chem.RWMol(self.mol)
-        _rewrite_charges(mol)
+        atoms = [mol.GetAtomWithIdx(at) for at in range(mol.GetNumAtoms())]
+        _rewrite_charges(mol, atoms)
         self._write_stereo(mol)
-        for atom in mol.GetAtoms():
+        for atom in atoms:
             atom.SetIntProp(_ORIGIN, atom.GetIdx())
         try:
             Chem.SanitizeMol(mol)
@@ -291,7 +292,7 @@ class Workbench:
             Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
         except (Chem.MolSanitizeException, RuntimeError) as fault:
             raise UnbalancedTransformation(f"{fault} in an edit of {self._given()}") from fault
-        if any(a.GetAtomicNum() == 1 and not a.GetIsotope() and a.GetDegree() for a in mol.GetAtoms()):
+        if any(a.GetAtomicNum() == 1 and not a.GetIsotope() and a.GetDegree() for a in atoms):
             mol = Chem.RWMol(Chem.RemoveHs(mol))
         pieces = [_piece(part) for part in Chem.GetMolFrags(mol, asMols=True, sanitizeFrags=False)]
         self._check_balance(piece.structure for piece in pieces)
@@ -350,32 +351,28 @@ def _composition(structure: Structure) -> tuple[tuple[str, int], ...]:
 
 def _piece(mol: Chem.Mol) -> Piece:
     smiles = Chem.MolToSmiles(mol)
-    written = [int(i) for i in mol.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"]]
     structure = parse_smiles(smiles)
-    bench = [mol.GetAtomWithIdx(i).GetIntProp(_ORIGIN) for i in written]
+    bench = [mol.GetAtomWithIdx(at).GetIntProp(_ORIGIN) for at in output_order(mol)]
     return Piece(structure, dict(zip(bench, structure.typed_order, strict=True)))
 
 
-def _rewrite_charges(mol: Chem.RWMol) -> None:
+def _rewrite_charges(mol: Chem.RWMol, atoms: list[Chem.Atom]) -> None:
     """Draw P-O and S-O pairs of opposite charge with double bonds, and sulfinate S- with its charge on oxygen."""
-    for bond in mol.GetBonds():
-        if bond.GetBondType() != Chem.BondType.SINGLE:
-            continue
-        one, other = bond.GetBeginAtom(), bond.GetEndAtom()
-        if one.GetSymbol() == "O":
-            one, other = other, one
-        if other.GetSymbol() != "O" or other.GetFormalCharge() != -1:
-            continue
-        if one.GetSymbol() in {"P", "S"} and one.GetFormalCharge() == 1:
-            bond.SetBondType(Chem.BondType.DOUBLE)
-            one.SetFormalCharge(0)
-            other.SetFormalCharge(0)
-    for atom in mol.GetAtoms():
-        if atom.GetSymbol() != "S" or atom.GetFormalCharge() != -1:
+    for atom in atoms:
+        charge = atom.GetFormalCharge()
+        if not charge or atom.GetSymbol() not in {"P", "S"}:
             continue
         for bond in atom.GetBonds():
-            if bond.GetBondType() == Chem.BondType.DOUBLE and bond.GetOtherAtom(atom).GetSymbol() == "O":
+            oxygen = mol.GetAtomWithIdx(bond.GetOtherAtomIdx(atom.GetIdx()))
+            if oxygen.GetSymbol() != "O":
+                continue
+            single = bond.GetBondType() == Chem.BondType.SINGLE
+            if charge == 1 and single and oxygen.GetFormalCharge() == -1:
+                bond.SetBondType(Chem.BondType.DOUBLE)
+            elif charge == -1 and bond.GetBondType() == Chem.BondType.DOUBLE:
                 bond.SetBondType(Chem.BondType.SINGLE)
-                atom.SetFormalCharge(0)
-                bond.GetOtherAtom(atom).SetFormalCharge(-1)
-                break
+            else:
+                continue
+            atom.SetFormalCharge(0)
+            oxygen.SetFormalCharge(0 if charge == 1 else -1)
+            break

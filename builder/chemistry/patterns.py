@@ -3,6 +3,7 @@
 Every pattern is a row of a TSV table beside this module; a fault in a table is ours and raises ValueError.
 """
 
+from collections import Counter
 from collections.abc import Iterator
 from dataclasses import dataclass
 from enum import StrEnum
@@ -20,6 +21,7 @@ __all__ = [
     "ClassPattern",
     "Electrons",
     "LeavingGroupPattern",
+    "Query",
     "load_activations",
     "load_attack_patterns",
     "load_class_patterns",
@@ -54,6 +56,21 @@ class Electrons(StrEnum):
 
 
 @dataclass(frozen=True)
+class Query:
+    """A compiled SMARTS.
+
+    places: for each atom number written in the SMARTS, its index in a match.
+    elements: atoms of each element (by atomic number) it cannot do without.
+    signs: signs of formal charge (+1, -1) it cannot do without.
+    """
+
+    mol: Chem.Mol
+    places: dict[int, int]
+    elements: dict[int, int]
+    signs: frozenset[int]
+
+
+@dataclass(frozen=True)
 class LeavingGroupPattern:
     """One row of leaving_groups.tsv; conjugate_acid_pka is in water, None where the table gives no value."""
 
@@ -64,8 +81,7 @@ class LeavingGroupPattern:
     needs_activation: bool
     note: str
     source: str
-    query: Chem.Mol
-    places: dict[int, int]
+    query: Query
 
 
 @dataclass(frozen=True)
@@ -77,8 +93,7 @@ class ClassPattern:
     expected: bool
     meaning: str
     source: str
-    query: Chem.Mol | None
-    places: dict[int, int]
+    query: Query | None
 
 
 @dataclass(frozen=True)
@@ -91,8 +106,7 @@ class AttackPattern:
     inside_only: bool
     note: str
     source: str
-    query: Chem.Mol
-    places: dict[int, int]
+    query: Query
 
 
 @dataclass(frozen=True)
@@ -102,8 +116,7 @@ class ActivationPattern:
     group: str
     reagent_name: str
     reagent: str
-    query: Chem.Mol
-    places: dict[int, int]
+    query: Query
     source: str
 
 
@@ -125,15 +138,21 @@ def read_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
         yield row
 
 
-def _compile(name: str, smarts: str) -> tuple[Chem.Mol, dict[int, int]]:
-    """Return the query and, for each atom number written in it, its index in a match."""
-    query: Chem.Mol | None = Chem.MolFromSmarts(smarts)
-    if query is None:
+def _compile(name: str, smarts: str, numbers: set[int]) -> Query:
+    """Return the compiled SMARTS, which must mark the atoms with these numbers."""
+    mol: Chem.Mol | None = Chem.MolFromSmarts(smarts)
+    if mol is None:
         raise ValueError(f"{name}: {smarts} is no SMARTS")
-    places = {a.GetAtomMapNum(): a.GetIdx() for a in query.GetAtoms() if a.GetAtomMapNum()}
-    for atom in query.GetAtoms():
+    places = {a.GetAtomMapNum(): a.GetIdx() for a in mol.GetAtoms() if a.GetAtomMapNum()}
+    if not numbers <= places.keys():
+        raise ValueError(f"{name}: {smarts} must mark atoms {sorted(numbers)}")
+    for atom in mol.GetAtoms():
         atom.SetAtomMapNum(0)
-    return query, places
+    # RDKit gives a query atom the atomic number 0, and no charge, where it allows several.
+    elements = Counter(a.GetAtomicNum() for a in mol.GetAtoms() if a.GetAtomicNum() > 1)
+    charges = [a.GetFormalCharge() for a in mol.GetAtoms()]
+    signs = frozenset((1 if charge > 0 else -1) for charge in charges if charge)
+    return Query(mol, places, dict(elements), signs)
 
 
 def _yes_or_no(name: str, word: str) -> bool:
@@ -148,19 +167,12 @@ def _unique(name: str, keys: list[str]) -> None:
         raise ValueError(f"{name}: given twice: {', '.join(twice)}")
 
 
-def _need(name: str, smarts: str, places: dict[int, int], numbers: set[int]) -> None:
-    if not numbers <= places.keys():
-        raise ValueError(f"{name}: {smarts} must mark atoms {sorted(numbers)}")
-
-
 @cache
 def load_leaving_groups() -> tuple[LeavingGroupPattern, ...]:
     """Return the leaving groups in table order: of two rows that fit, the first names the group."""
     columns = ("name", "abbreviation", "smarts", "conjugate_acid", "conjugate_acid_pka", "needs_activation")
     found = []
     for row in read_table("leaving_groups.tsv", (*columns, "source", "note")):
-        query, places = _compile(row["name"], row["smarts"])
-        _need(row["name"], row["smarts"], places, {1, 2})
         pka = row["conjugate_acid_pka"]
         found.append(
             LeavingGroupPattern(
@@ -171,8 +183,7 @@ def load_leaving_groups() -> tuple[LeavingGroupPattern, ...]:
                 needs_activation=_yes_or_no(row["name"], row["needs_activation"]),
                 note="" if row["note"] == NOTHING else row["note"],
                 source=row["source"],
-                query=query,
-                places=places,
+                query=_compile(row["name"], row["smarts"], {1, 2}),
             )
         )
     _unique("leaving_groups.tsv", [row.name for row in found])
@@ -184,9 +195,7 @@ def load_class_patterns() -> tuple[ClassPattern, ...]:
     """Return the classes of reactive carbon in table order."""
     found = []
     for row in read_table("site_classes.tsv", ("name", "kind", "smarts", "expected", "meaning", "source")):
-        query, places = (None, {}) if row["smarts"] == "computed" else _compile(row["name"], row["smarts"])
-        if query is not None:
-            _need(row["name"], row["smarts"], places, {1})
+        computed = row["smarts"] == "computed"
         found.append(
             ClassPattern(
                 name=row["name"],
@@ -194,8 +203,7 @@ def load_class_patterns() -> tuple[ClassPattern, ...]:
                 expected=_yes_or_no(row["name"], row["expected"]),
                 meaning=row["meaning"],
                 source=row["source"],
-                query=query,
-                places=places,
+                query=None if computed else _compile(row["name"], row["smarts"], {1}),
             )
         )
     _unique("site_classes.tsv", [row.name for row in found])
@@ -217,9 +225,7 @@ def load_attack_patterns() -> tuple[AttackPattern, ...]:
     found, smarts = [], []
     columns = ("kind", "preference", "smarts", "electrons", "reach", "note", "source")
     for row in read_table("attacking_atoms.tsv", columns):
-        query, places = _compile(row["kind"], row["smarts"])
         electrons = Electrons(row["electrons"])
-        _need(row["kind"], row["smarts"], places, needed.get(electrons, {1}))
         smarts.append(row["smarts"])
         found.append(
             AttackPattern(
@@ -229,8 +235,7 @@ def load_attack_patterns() -> tuple[AttackPattern, ...]:
                 inside_only=row["reach"] == "inside",
                 note="" if row["note"] == NOTHING else row["note"],
                 source=row["source"],
-                query=query,
-                places=places,
+                query=_compile(row["kind"], row["smarts"], needed.get(electrons, {1})),
             )
         )
     _unique("attacking_atoms.tsv", smarts)
@@ -243,16 +248,13 @@ def load_activations() -> dict[str, ActivationPattern]:
     found: dict[str, ActivationPattern] = {}
     columns = ("group", "reagent_name", "reagent", "smarts", "source")
     for row in read_table("activations.tsv", columns):
-        query, places = _compile(row["group"], row["smarts"])
-        _need(row["group"], row["smarts"], places, {1, 2})
         if row["group"] in found:
             raise ValueError(f"activations.tsv: given twice: {row['group']}")
         found[row["group"]] = ActivationPattern(
             group=row["group"],
             reagent_name=row["reagent_name"],
             reagent=row["reagent"],
-            query=query,
-            places=places,
+            query=_compile(row["group"], row["smarts"], {1, 2}),
             source=row["source"],
         )
     return found

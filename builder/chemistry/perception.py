@@ -4,6 +4,7 @@ All patterns are rows of the tables that `patterns` loads. Every answer is in At
 however the author ordered the atoms.
 """
 
+from collections import Counter
 from dataclasses import dataclass, replace
 from enum import StrEnum
 from functools import cache, lru_cache
@@ -15,6 +16,7 @@ from builder.chemistry.patterns import (
     ClassPattern,
     Electrons,
     LeavingGroupPattern,
+    Query,
     load_attack_patterns,
     load_class_patterns,
     load_leaving_groups,
@@ -253,9 +255,8 @@ def perceive_sites(structure: Structure) -> tuple[ReactiveSite, ...]:
     Groups that leave without activation come first, then by place in the leaving-group table and AtomId.
     Equivalent sites are merged into the one with the lowest AtomIds. An epoxide gives one site per carbon.
     """
-    mol = structure.mol
-    pairs = _leaving_pairs(mol)
-    classes = _classes(mol)
+    pairs = _leaving_pairs(structure)
+    classes = _classes(structure) if pairs else {}
     order = {row.name: place for place, row in enumerate(load_leaving_groups())}
     groups: dict[tuple[object, ...], list[ReactiveSite]] = {}
     for (alpha, leaving), row in sorted(pairs.items()):
@@ -305,15 +306,39 @@ def _attack_order(nucleophile: Nucleophile) -> tuple[int, int, str, AtomId]:
     return (_kind_order()[n.kind], n.preference, n.species.smiles, n.atom)
 
 
-def _matches(mol: Chem.Mol, query: Chem.Mol) -> tuple[tuple[int, ...], ...]:
-    return tuple(mol.GetSubstructMatches(query, uniquify=False, maxMatches=MAX_MATCHES))
+@dataclass(frozen=True)
+class _Searched:
+    """A molecule with its elements and charges counted, so that most patterns are passed over at a glance."""
+
+    mol: Chem.Mol
+    elements: dict[int, int]
+    signs: frozenset[int]
+
+    def matches(self, query: Query) -> tuple[tuple[int, ...], ...]:
+        """Return every match, symmetric ones too; at most MAX_MATCHES, so that no polymer can stall it."""
+        if not query.signs <= self.signs:
+            return ()
+        if any(self.elements.get(element, 0) < number for element, number in query.elements.items()):
+            return ()
+        return tuple(self.mol.GetSubstructMatches(query.mol, uniquify=False, maxMatches=MAX_MATCHES))
 
 
-def _leaving_pairs(mol: Chem.Mol) -> dict[tuple[int, int], LeavingGroupPattern]:
+@lru_cache(maxsize=1024)
+def _searched(structure: Structure) -> _Searched:
+    mol = structure.mol
+    atoms = [mol.GetAtomWithIdx(at) for at in range(mol.GetNumAtoms())]
+    charges = {atom.GetFormalCharge() for atom in atoms}
+    signs = frozenset((1 if charge > 0 else -1) for charge in charges if charge)
+    return _Searched(mol, Counter(atom.GetAtomicNum() for atom in atoms), signs)
+
+
+def _leaving_pairs(structure: Structure) -> dict[tuple[int, int], LeavingGroupPattern]:
+    searched = _searched(structure)
     pairs: dict[tuple[int, int], LeavingGroupPattern] = {}
     for row in load_leaving_groups():
-        for match in _matches(mol, row.query):
-            pairs.setdefault((match[row.places[1]], match[row.places[2]]), row)
+        places = row.query.places
+        for match in searched.matches(row.query):
+            pairs.setdefault((match[places[1]], match[places[2]]), row)
     return pairs
 
 
@@ -321,14 +346,16 @@ _Classes = dict[int, list[tuple[ClassPattern, int | None]]]
 """For each alpha carbon, the class rows that match there, each with the atom that must not be the leaving one."""
 
 
-def _classes(mol: Chem.Mol) -> _Classes:
+def _classes(structure: Structure) -> _Classes:
+    searched = _searched(structure)
     found: _Classes = {}
     for row in load_class_patterns():
         if row.query is None or row.kind is not ClassKind.SITE:
             continue
-        for match in _matches(mol, row.query):
-            other = match[row.places[3]] if 3 in row.places else None
-            found.setdefault(match[row.places[1]], []).append((row, other))
+        places = row.query.places
+        for match in searched.matches(row.query):
+            other = match[places[3]] if 3 in places else None
+            found.setdefault(match[places[1]], []).append((row, other))
     return found
 
 
@@ -444,7 +471,7 @@ def _addition_sites(structure: Structure) -> list[ReactiveSite]:
     for row in load_class_patterns():
         if row.kind is not ClassKind.ADDITION or row.query is None:
             continue
-        for match in _matches(mol, row.query):
+        for match in _searched(structure).matches(row.query):
             for alpha, partner in ((match[0], match[1]), (match[1], match[0])):
                 atom = mol.GetAtomWithIdx(alpha)
                 words = {row.name} | ({"bridgehead"} if alpha in caged else set())
@@ -482,8 +509,8 @@ def _attacking_atoms_of(species: Structure) -> tuple[Nucleophile, ...]:
     taken: set[object] = set()
     found = []
     for row in load_attack_patterns():
-        for match in sorted(_matches(mol, row.query)):
-            spots = {number: match[place] for number, place in row.places.items()}
+        for match in sorted(_searched(species).matches(row.query)):
+            spots = {number: match[place] for number, place in row.query.places.items()}
             hydride = row.electrons is Electrons.HYDRIDE_TRANSFER
             atom = spots[4] if hydride else spots[1]
             symbol = "H" if hydride else mol.GetAtomWithIdx(atom).GetSymbol()

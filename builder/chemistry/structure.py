@@ -27,6 +27,7 @@ __all__ = [
     "StructureError",
     "bridgeheads_of",
     "name_atom",
+    "output_order",
     "parse_inchi",
     "parse_rxn",
     "parse_smiles",
@@ -369,7 +370,10 @@ def parse_smiles(text: str) -> Structure:
         raw = _unsanitised(text)
         if raw is None:
             raise _explain_syntax(text, complaints)
-        _refuse_excess(raw)
+        _refuse_excess(raw, _stereo_in_text(text))
+        if ":" in text:
+            for atom in raw.GetAtoms():
+                atom.SetAtomMapNum(0)
         _sanitise(raw, text)
     return _from_mol(raw, text)
 
@@ -388,9 +392,8 @@ def parse_inchi(text: str) -> Structure:
         raw = rdinchi.InchiToMol(stripped, False, False)[0]
         if raw is None:
             raise StructureError("InChI that cannot be read", "copy it again, or give the structure as SMILES")
-        _refuse_excess(raw)
+        _refuse_excess(raw, _stereo_in_file(raw))
         _sanitise(raw, None)
-        Chem.AssignStereochemistry(raw, cleanIt=True, force=True)
     return _from_mol(raw, stripped)
 
 
@@ -435,7 +438,7 @@ def _from_molblock(block: str) -> Structure:
             raw = None
         if raw is None:
             raise StructureError("molecule in the RXN block that cannot be read", "write the file again")
-        _refuse_excess(raw)
+        _refuse_excess(raw, _stereo_in_file(raw))
         _sanitise(raw, None)
         if raw.GetNumConformers():
             Chem.AssignChiralTypesFromBondDirs(raw)
@@ -446,27 +449,34 @@ def _from_molblock(block: str) -> Structure:
 
 def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
     """Return the Structure of a sanitised molecule, its atoms put into canonical order."""
-    written = [a.GetIdx() for a in raw.GetAtoms()]
-    for atom in raw.GetAtoms():
-        atom.SetAtomMapNum(0)
-        atom.SetIntProp("_written", atom.GetIdx())
-    mol = Chem.RemoveHs(raw, sanitize=False) if any(a.GetAtomicNum() == 1 for a in raw.GetAtoms()) else raw
-    Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
-    place = {a.GetIntProp("_written"): a.GetIdx() for a in mol.GetAtoms()}
-    canonical = mol
+    atoms = [raw.GetAtomWithIdx(at) for at in range(raw.GetNumAtoms())]
+    if any(atom.GetAtomicNum() == 0 for atom in atoms):
+        raise StructureError("wildcard atom", "write a definite atom in its place")
+    mol = raw
+    place = {at: at for at in range(len(atoms))}
+    if any(atom.GetAtomicNum() == 1 for atom in atoms):
+        for atom in atoms:
+            atom.SetIntProp("_written", atom.GetIdx())
+        mol = Chem.RemoveHs(raw, sanitize=False)
+        Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
+        place = {a.GetIntProp("_written"): a.GetIdx() for a in mol.GetAtoms()}
     # RDKit's canonical SMILES is not always a fixed point of reading and writing; another round makes it one.
-    smiles = ""
+    canonical, smiles = mol, ""
     for _ in range(4):
         again = Chem.MolToSmiles(canonical)
         if again == smiles:
             break
         smiles = again
-        order = {
-            int(old): new for new, old in enumerate(canonical.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"])
-        }
+        order = {old: new for new, old in enumerate(output_order(canonical))}
         place = {key: order[at] for key, at in place.items()}
         canonical = Chem.MolFromSmiles(smiles)
-    return Structure(smiles, typed or smiles, tuple(place[i] for i in written if i in place), canonical)
+    written = tuple(place[at] for at in range(len(atoms)) if at in place)
+    return Structure(smiles, typed or smiles, written, canonical)
+
+
+def output_order(mol: Chem.Mol) -> list[int]:
+    """Return the atoms of a molecule in the order of the SMILES just written of it; for this room only."""
+    return [int(at) for at in mol.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"]]
 
 
 def _restore(smiles: str, typed: str, typed_order: tuple[AtomId, ...]) -> Structure:
@@ -509,22 +519,31 @@ def _refuse_what_is_no_smiles(text: str) -> None:
             raise StructureError(f"search pattern {bracket.group()} in a SMILES", mend, bracket.start())
 
 
-def _refuse_excess(raw: Chem.Mol) -> None:
+def _refuse_excess(raw: Chem.Mol, stereo_elements: int) -> None:
     """Refuse, before any costly step, what is beyond the bounds; counting atoms and bonds is linear."""
-    heavy = raw.GetNumHeavyAtoms()
     if raw.GetNumAtoms() == 0:
         raise StructureError("no structure", _WRITE_SMILES)
-    if any(atom.GetAtomicNum() == 0 for atom in raw.GetAtoms()):
-        raise StructureError("wildcard atom", "write a definite atom in its place")
-    if heavy > MAX_HEAVY_ATOMS or raw.GetNumAtoms() > 3 * MAX_HEAVY_ATOMS:
+    if raw.GetNumHeavyAtoms() > MAX_HEAVY_ATOMS or raw.GetNumAtoms() > 3 * MAX_HEAVY_ATOMS:
         raise StructureError(f"more than {MAX_HEAVY_ATOMS} heavy atoms", "write only the species that reacts")
     pieces = len(Chem.GetMolFrags(raw))
     if raw.GetNumBonds() - raw.GetNumAtoms() + pieces > MAX_RINGS:
         raise StructureError(f"more than {MAX_RINGS} rings", "this handbook does not cover such cages")
-    stereo = sum(atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED for atom in raw.GetAtoms())
-    stereo += sum(bond.GetBondDir() != Chem.BondDir.NONE for bond in raw.GetBonds()) // 2
-    if stereo > MAX_STEREO_ELEMENTS:
-        raise StructureError(f"more than {MAX_STEREO_ELEMENTS} stereo elements", "this handbook does not cover such")
+    if stereo_elements > MAX_STEREO_ELEMENTS:
+        mend = "this handbook does not cover such"
+        raise StructureError(f"more than {MAX_STEREO_ELEMENTS} stereo elements", mend)
+
+
+def _stereo_in_text(smiles: str) -> int:
+    """Return stereocentres and half the direction marks of a SMILES, an upper bound of its stereo elements."""
+    return len(re.findall(r"@+", smiles)) + (smiles.count("/") + smiles.count("\\")) // 2
+
+
+def _stereo_in_file(raw: Chem.Mol) -> int:
+    """Return the wedged and double bonds of a molecule from a file, an upper bound of its stereo elements."""
+    wedged = sum(1 for bond in raw.GetBonds() if bond.GetBondDir() != Chem.BondDir.NONE)
+    double = sum(1 for bond in raw.GetBonds() if bond.GetBondType() == Chem.BondType.DOUBLE)
+    chiral = sum(1 for a in raw.GetAtoms() if a.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED)
+    return wedged + double + chiral
 
 
 def _sanitise(raw: Chem.Mol, text: str | None) -> None:

@@ -483,9 +483,9 @@ def activate_hydroxyl(substrate: Structure, site: ReactiveSite, group: str) -> E
     if row is None:
         raise ValueError(f"{group} is made from no hydroxyl group here; known: {', '.join(activation_groups())}")
     reagent = parse_smiles(row.reagent)
-    match = reagent.mol.GetSubstructMatch(row.query)
+    match = reagent.mol.GetSubstructMatch(row.query.mol)
     bench = Workbench(substrate, reagent)
-    kept, lost = (bench.place(match[row.places[n]], 1) for n in (1, 2))
+    kept, lost = (bench.place(match[row.query.places[n]], 1) for n in (1, 2))
     bench.cut(kept, lost)
     bench.add_charge(lost, -1)
     bench.release_proton(oxygen)
