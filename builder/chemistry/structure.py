@@ -7,13 +7,14 @@ drawing speak of the same atom. `Structure.typed_order` leads back to the author
 
 import logging
 import re
+from collections import Counter
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
 
 from rdkit import Chem, rdBase
-from rdkit.Chem import rdinchi, rdMolDescriptors
+from rdkit.Chem import rdinchi
 
 __all__ = [
     "MAX_CHARACTERS",
@@ -183,8 +184,18 @@ class Structure:
 
     @cached_property
     def formula(self) -> str:
-        """Return the molecular formula in Hill order, charge last; isotopes are not separated."""
-        return str(rdMolDescriptors.CalcMolFormula(self.mol))
+        """Return the molecular formula in Hill order, charge last ("C2H3O2-"); isotopes are not separated.
+
+        Source: Hill, J. Am. Chem. Soc. 1900, 22, 478 (from memory): carbon, hydrogen, then the alphabet; without
+        carbon all by the alphabet. (RDKit puts hydrogen first even then.)
+        """
+        count = Counter(atom.symbol for atom in self.atoms)
+        count["H"] += sum(atom.hydrogens for atom in self.atoms)
+        first = ["C", "H"] if count["C"] else []
+        order = [*first, *sorted(count.keys() - set(first))]
+        size = abs(self.charge)
+        sign = ("-" if self.charge < 0 else "+") + (str(size) if size > 1 else "") if size else ""
+        return "".join(f"{e}{count[e] if count[e] > 1 else ''}" for e in order if count[e]) + sign
 
     @cached_property
     def mass(self) -> float:
