@@ -1,17 +1,30 @@
 """open_book(folder) -> Book: records, verdicts, findings. The one place where the parts are wired up."""
 
 import datetime as dt
-from collections.abc import Mapping
+import re
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from enum import StrEnum
 from pathlib import Path
 
-from builder.checks.case import Case
-from builder.finding import Finding, Level
+from builder.checks.agreement import CONTRARY_RULES, is_covered
+from builder.checks.case import Case, open_case
+from builder.checks.group import Member
+from builder.checks.run import check_group, check_record, settle
+from builder.finding import Finding, Level, Place
+from builder.records.digest import digest
 from builder.records.model import Record
-from builder.records.settings import Settings
+from builder.records.reader import Reading, read_record, read_settings
+from builder.records.rules import reading_rule
+from builder.records.settings import SETTINGS_FILE, Settings
+from builder.rule import Fault
 
-__all__ = ["Book", "Entry", "Verdict"]
+__all__ = ["Book", "Entry", "Verdict", "open_book", "record_files"]
+
+Progress = Callable[[tuple[Path, ...]], Iterable[Path]]
+
+_RECORD_NAME = re.compile(r"NS[^/]*\.yml")
+_ASIDE = {"archive", "schema"}  # folders that hold frozen revisions and the JSON Schema, no current records
 
 
 class Verdict(StrEnum):
@@ -72,3 +85,88 @@ class Book:
     def count(self, level: Level) -> int:
         """Return how many open findings of this level the book has."""
         return sum(finding.level is level and finding.accepted is None for finding in self.findings)
+
+
+def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Book:
+    """Read, check and judge every record below `folder`.
+
+    today: the date of the build; nothing here asks the clock.
+    progress: wraps the files to be read, for a progress bar.
+    Nothing a file holds raises; OSError passes for a folder that cannot be read.
+    """
+    settings, findings = _open_settings(folder)
+    files, misnamed = record_files(folder)
+    findings += misnamed
+    readings = [read_record(path, _shown(path, folder)) for path in progress(files)]
+    members: list[tuple[Reading, Member]] = []
+    found: dict[str, list[Finding]] = {reading.file: list(reading.findings) for reading in readings}
+    for reading in readings:
+        if reading.record is not None:
+            case = open_case(reading.record, reading.file, settings, today)
+            members.append((reading, Member(case, reading.places)))
+            found[reading.file] += check_record(case, reading.places)
+    for file, more in check_group([member for _, member in members]).items():
+        found[file] += more
+    for _, member in members:
+        found[member.case.file] = list(settle(member.case, member.places, found[member.case.file]))
+    entries = [_entry(reading, member.case, tuple(found[reading.file])) for reading, member in members]
+    publishable = [entry for entry in entries if not _has_error(entry.findings)]
+    everything = [*findings, *(finding for each in found.values() for finding in each)]
+    return Book(
+        folder=folder,
+        settings=settings,
+        today=today,
+        entries=tuple(sorted(publishable, key=lambda entry: entry.id)),
+        findings=tuple(sorted(everything, key=lambda finding: finding.sort_key)),
+        files=len(files),
+    )
+
+
+def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:
+    """Return the record files below `folder` in order, and a finding for each YAML file that is none."""
+    files: list[Path] = []
+    findings: list[Finding] = []
+    for path in sorted(folder.rglob("*")):
+        inside = path.relative_to(folder)
+        hidden = any(part.startswith(".") for part in inside.parts)
+        if hidden or _ASIDE & set(inside.parts[:-1]) or not path.is_file() or path.suffix not in {".yml", ".yaml"}:
+            continue
+        if _RECORD_NAME.fullmatch(path.name):
+            files.append(path)
+        elif str(inside) != SETTINGS_FILE:
+            fault = Fault(
+                at=(), message=f"{path.name} is not read: no record's name", mend="call it after its entry, NS….yml"
+            )
+            findings.append(reading_rule("file-misnamed").finding(fault, Place(_shown(path, folder), 1, 1, 2)))
+    return tuple(files), findings
+
+
+def _shown(path: Path, folder: Path) -> str:
+    return (Path(folder.name) / path.relative_to(folder)).as_posix()
+
+
+def _open_settings(folder: Path) -> tuple[Settings, list[Finding]]:
+    path = folder / SETTINGS_FILE
+    plain = Settings(format=1, title="Condition handbook")
+    if not path.is_file():
+        fault = Fault(at=(), message=f"the book has no {SETTINGS_FILE}", mend="start it with format: 1 and title: …")
+        return plain, [reading_rule("key-missing").finding(fault, Place(_shown(path, folder), 1, 1, 2))]
+    settings, findings = read_settings(path, _shown(path, folder))
+    return settings or plain, list(findings)
+
+
+def _entry(reading: Reading, case: Case, findings: tuple[Finding, ...]) -> Entry:
+    return Entry(case, reading.file, reading.text, digest(case.record), findings, _verdict(case, findings))
+
+
+def _verdict(case: Case, findings: tuple[Finding, ...]) -> Verdict:
+    contrary = [finding for finding in findings if finding.rule in CONTRARY_RULES]
+    if any(finding.accepted is None for finding in contrary):
+        return Verdict.CONTRARY
+    if contrary:
+        return Verdict.EXPLAINED
+    return Verdict.IN_LINE if is_covered(case) else Verdict.NOT_COVERED
+
+
+def _has_error(findings: tuple[Finding, ...]) -> bool:
+    return any(finding.level is Level.ERROR for finding in findings)

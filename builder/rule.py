@@ -14,8 +14,8 @@ from builder.finding import Finding, Level, Place
 
 __all__ = ["Fault", "Path", "Rule", "card", "rule"]
 
-Subject = TypeVar("Subject", contravariant=True)
-Answer = TypeVar("Answer", covariant=True)
+Subject_contra = TypeVar("Subject_contra", contravariant=True)
+Answer_co = TypeVar("Answer_co", covariant=True)
 
 Path = tuple[str | int, ...]
 """The way to a value inside a record: ("stages", 0, "temperature"); () is the record itself."""
@@ -39,7 +39,7 @@ class Fault:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Rule(Generic[Subject, Answer]):
+class Rule(Generic[Subject_contra, Answer_co]):
     """One rule of the handbook.
 
     level: of the findings it makes; a gate reports at the level of the check that consults it.
@@ -59,7 +59,7 @@ class Rule(Generic[Subject, Answer]):
     silent_on: tuple[str, ...]
     needs: tuple[str, ...] = ()
     effect: str = ""
-    look: Callable[[Subject], Answer] | None = None
+    look: Callable[[Subject_contra], Answer_co] | None = None
 
     def finding(self, fault: Fault, place: Place) -> Finding:
         """Return the finding for `fault` at `place`, with this rule's reason and source."""
@@ -113,13 +113,13 @@ def rule(
     level: Level = Level.ERROR,
     needs: tuple[str, ...] = (),
     effect: str = "",
-) -> Callable[[Callable[[Subject], Answer]], Rule[Subject, Answer]]:
+) -> Callable[[Callable[[Subject_contra], Answer_co]], Rule[Subject_contra, Answer_co]]:
     """Turn a function into a rule; its docstring is the statement (first paragraph) and the reason (the rest).
 
     Nothing is registered: the list of rules is a tuple one can read.
     """
 
-    def make(look: Callable[[Subject], Answer]) -> Rule[Subject, Answer]:
+    def make(look: Callable[[Subject_contra], Answer_co]) -> Rule[Subject_contra, Answer_co]:
         statement, reason = _statement_and_reason(look.__doc__ or "")
         return Rule(
             id=id,

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from enum import StrEnum
 
 from builder.chemistry.structure import Structure
-from builder.records.model import Charged, Record, Solvent
+from builder.records.model import Charged, Record
 from builder.records.quantities import Dimension
 from builder.rule import Path
 
@@ -175,7 +175,5 @@ def _content(substance: Charged) -> float:
 
 
 def _solvent_volume(record: Record) -> float | None:
-    volumes = [
-        solvent.volume.magnitude for solvent in record.solvents if isinstance(solvent, Solvent) and solvent.volume
-    ]
+    volumes = [solvent.volume.magnitude for solvent in record.solvents if solvent.volume]
     return sum(volumes) if volumes and len(volumes) == len(record.solvents) else None

@@ -78,7 +78,7 @@ _CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f]")
 def faulty(rule: str, message: str, mend: str, fix: str | None = None) -> PydanticCustomError:
     """Return the error by which a field names the reading rule it broke, with its exact mend."""
     context: dict[str, Any] = {"mend": mend, "fix": fix, "message": message}
-    return PydanticCustomError(rule, "{message}", context)  # type: ignore[arg-type]  # ids are data, not literals
+    return PydanticCustomError(rule, "{message}", context)
 
 
 # --- quantities -------------------------------------------------------------------------------------------
@@ -91,14 +91,19 @@ def _quantity(
         quantity = parse(value)
     except QuantityError as error:
         raise faulty(error.rule, error.message, error.mend, error.fix) from None
-    low = quantity.lowest_c if isinstance(quantity, Temperature) else quantity.magnitude
-    high = quantity.highest_c if isinstance(quantity, Temperature) else quantity.magnitude
+    low, high = _bounds(quantity)
     if least is not None and (low < least or (open_below and low == least)):
         bound = "above" if open_below else "at least"
         raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"a value {bound} {least:g} is wanted")
     if most is not None and high > most:
         raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"a value up to {most:g} is wanted")
     return quantity
+
+
+def _bounds(quantity: Quantity | Percent | Temperature) -> tuple[float, float]:
+    if isinstance(quantity, Temperature):
+        return quantity.lowest_c, quantity.highest_c
+    return quantity.magnitude, quantity.magnitude
 
 
 def _schema(pattern_units: Dimension, *, prefix: str = "", example: str) -> WithJsonSchema:

@@ -59,8 +59,8 @@ from builder.records.vocabulary import (
 
 __all__ = [
     "Acceptance",
-    "Claim",
     "Charged",
+    "Claim",
     "EvidenceFile",
     "Failure",
     "Measurement",

@@ -14,11 +14,12 @@ from pydantic_core import ErrorDetails
 from builder.finding import Finding, Level, Place
 from builder.records.model import Record
 from builder.records.rules import reading_rule
+from builder.records.settings import Settings
 from builder.records.yaml_text import Places, Plain, quoted, read_plain
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["Reading", "read_bytes", "read_into", "read_record"]
+__all__ = ["Reading", "read_bytes", "read_into", "read_record", "read_settings"]
 
 MAX_BYTES = 256 * 1024
 _FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\x80-\x84\x86-\x9f\ufffe\uffff]")
@@ -58,6 +59,15 @@ def read_bytes(data: bytes, shown_as: str) -> Reading:
     return Reading(shown_as, text, record, findings, places)
 
 
+def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Finding, ...]]:
+    """Read the settings of a book by the same rules as a record."""
+    text = _decode(path.read_bytes(), shown_as)
+    if isinstance(text, Finding):
+        return None, (text,)
+    settings, findings, _ = read_into(Settings, text, shown_as)
+    return settings, findings
+
+
 def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:
     """Read YAML text into `model`: the value (None where any error was found), findings, and places."""
     plainly = read_plain(text, shown_as)
@@ -68,7 +78,11 @@ def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | Non
             made = model.model_validate(plainly.value)
         except ValidationError as error:
             details = error.errors(include_url=False)
-            findings += [_form_finding(detail, plainly.value, plainly.places, model) for detail in details]
+            findings += [
+                _form_finding(detail, plainly.value, plainly.places, model)
+                for detail in details
+                if not _is_echo(detail)
+            ]
     elif plainly.value is not None:
         fault = Fault(at=(), message="the file is not a mapping of keys", mend="write key: value lines")
         findings.append(reading_rule("value-wrong-type").finding(fault, plainly.places.of(())))
@@ -147,6 +161,11 @@ _WRONG_TYPES = {
     "list_type": "a list is wanted here",
     "string_type": "a text is wanted here",
 }
+
+
+def _is_echo(detail: ErrorDetails) -> bool:
+    """Say whether pydantic calls a list too short only because an item of it is faulty."""
+    return detail["type"] == "too_short" and bool(detail.get("input"))
 
 
 def _found(rule_id: str, fault: Fault, places: Places) -> Finding:

@@ -5,6 +5,7 @@ like every other rule. An example is YAML text that replaces whole top-level key
 """
 
 from builder.finding import Level
+from builder.records.specimen import TWO_PRODUCTS, outcome_example
 from builder.rule import Rule, card
 
 __all__ = ["READING_RULES", "reading_rule"]
@@ -61,6 +62,16 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         silent_on=("notebook: '#112'",),
     ),
     card(
+        id="file-misnamed",
+        title="A YAML file that is no record's",
+        level=Level.ERROR,
+        source="record-format",
+        text="""Below entries/ a YAML file is a record called NS….yml, the settings, or stands in archive/ or schema/.
+
+        A record under another name, or with the ending .yaml, would be left out of the book without a word.""",
+        fires_on=(),
+    ),
+    card(
         id="file-not-text",
         title="The file is not UTF-8 text",
         level=Level.ERROR,
@@ -113,14 +124,8 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         text="""Each line of `measured` holds exactly one of yield, conversion, recovered, ee, er, dr and ratio.
 
         Otherwise nobody can say which of them the method, the spread and the label belong to.""",
-        fires_on=(
-            "outcome:\n  result: [substitution]\n  products: [{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]'}]\n"
-            "  measured:\n    - {yield: 81 %, ee: 97 %, of: A, kind: isolated}",
-        ),
-        silent_on=(
-            "outcome:\n  result: [substitution]\n  products: [{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]'}]\n"
-            "  measured:\n    - {yield: 81 %, of: A, kind: isolated}",
-        ),
+        fires_on=(outcome_example("{yield: 81 %, ee: 97 %, of: A, kind: isolated}"),),
+        silent_on=(outcome_example("{yield: 81 %, of: A, kind: isolated}"),),
     ),
     card(
         id="name-split-at-comma",
@@ -257,15 +262,8 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         text="""A ratio is written 'A:B = 65:35'; parts may be sums of labels, er and dr are numbers only.
 
         Labels are the ones given to the products, as many parts as numbers.""",
-        fires_on=(
-            "outcome:\n  result: [substitution]\n  products: [{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]'}]\n"
-            "  measured:\n    - {ratio: '65/35', by: GC}",
-        ),
-        silent_on=(
-            "outcome:\n  result: [substitution]\n  products:\n    - {label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]'}\n"
-            "    - {label: B, name: but-1-ene, smiles: 'C=CCC'}\n  measured:\n    - {ratio: 'A:B = 90:10', by: GC, calibrated: true}\n"
-            "    - {yield: 81 %, of: A, kind: isolated}",
-        ),
+        fires_on=(outcome_example("{ratio: '65/35', by: GC}"),),
+        silent_on=(outcome_example("{ratio: 'A:B = 90:10', by: GC, calibrated: true}", products=TWO_PRODUCTS),),
     ),
     card(
         id="smiles-unquoted",

@@ -4,11 +4,22 @@ import re
 from functools import cache
 from importlib import resources
 
-__all__ = ["SPECIMEN_FILE", "specimen_text", "with_example"]
+__all__ = ["SPECIMEN_FILE", "outcome_example", "specimen_text", "with_example"]
 
 SPECIMEN_FILE = "NS4T9XQ2N.yml"
 _BLOCK = re.compile(r"^(?P<key>[A-Za-z_]+):.*(?:\n(?:[ \-].*|$))*", re.MULTILINE)
 _WITHOUT = re.compile(r"^# without (?P<key>[a-z_]+)$", re.MULTILINE)
+
+
+ONE_PRODUCT = "{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]', use: desired}"
+TWO_PRODUCTS = f"{ONE_PRODUCT}, {{label: B, name: but-1-ene, smiles: 'C=CCC', use: by-product}}"
+
+
+def outcome_example(*lines: str, products: str = ONE_PRODUCT, more: str = "") -> str:
+    """Return an example outcome of the specimen: measurement lines, products, and further keys of the outcome."""
+    extra = "".join(f"  {line}\n" for line in more.splitlines())
+    measured = f"  measured: [{', '.join(lines)}]" if lines else ""
+    return f"outcome:\n  result: [substitution]\n{extra}  products: [{products}]\n{measured}".rstrip("\n")
 
 
 @cache

@@ -12,7 +12,7 @@ from dataclasses import dataclass, field
 from decimal import Decimal
 
 import yaml
-from yaml.cyaml import CParser
+from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave out the re-export
 from yaml.resolver import BaseResolver
 
 from builder.finding import Finding, Place
@@ -170,6 +170,7 @@ class _Constructor:
                 self._joined(run, (*path, index)) if len(run) > 1 else self.construct(run[0], (*path, index))
                 for index, run in enumerate(self._whole_names(node))
             ]
+        assert isinstance(node, yaml.ScalarNode)  # noqa: S101 - the composer makes three kinds of node
         return self._scalar(node, path)
 
     # scalars
@@ -355,7 +356,7 @@ class _MendedText:
     def explain(self, error: yaml.MarkedYAMLError) -> tuple[Finding, bool]:
         """Return the finding for a YAML error, and whether its cause has been mended in memory."""
         mark = error.problem_mark or error.context_mark
-        if "nesting" in (error.problem or "") or "indent" in (error.problem or "") and "exceeded" in error.problem:
+        if "exceeded maximum" in (error.problem or ""):
             return self._finding(
                 "nesting-too-deep", mark, "more levels than any record needs", "close the brackets"
             ), False

@@ -1,1 +1,15 @@
 """The gates of the engine, listed by hand in id order."""
+
+from builder.mechanism.rules.elimination import ELIMINATION_GATES
+from builder.mechanism.rules.gate import Gate, Situation
+from builder.mechanism.rules.substitution import SUBSTITUTION_GATES
+from builder.records.vocabulary import Mechanism
+
+__all__ = ["GATES", "Gate", "Situation", "closing_gates"]
+
+GATES: tuple[Gate, ...] = (*ELIMINATION_GATES, *SUBSTITUTION_GATES)
+
+
+def closing_gates(mechanism: Mechanism, situation: Situation) -> tuple[Gate, ...]:
+    """Return the gates that close a mechanism in this situation; empty where it is open."""
+    return tuple(gate for gate in GATES if mechanism in gate.closes and gate.fires(situation))

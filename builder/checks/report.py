@@ -1,0 +1,99 @@
+"""Findings -> text and JSON. A message becomes text only here, at the edge."""
+
+import json
+from collections.abc import Callable, Iterable, Sequence
+from typing import Any
+
+from builder.finding import Finding, Level
+from builder.rule import Rule
+from builder.sources import source_text
+
+__all__ = ["render_json", "render_rule", "render_text", "summary"]
+
+
+def render_text(findings: Iterable[Finding], line_of: Callable[[str, int], str | None]) -> str:
+    """Return findings for a terminal, one block each.
+
+    line_of: gives the source line of a file and a line number, to quote what was written.
+    """
+    return "\n".join(_block(finding, line_of(finding.place.file, finding.place.line)) for finding in findings)
+
+
+def render_json(findings: Iterable[Finding]) -> str:
+    """Return `{"findings": [...]}`; the keys of a finding are stable."""
+    return json.dumps({"findings": [_plain(finding) for finding in findings]}, ensure_ascii=False, indent=2)
+
+
+def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
+    """Return one rule's card as text or JSON."""
+    card: dict[str, Any] = {
+        "id": rule.id,
+        "title": rule.title,
+        "level": str(rule.level),
+        "statement": rule.statement,
+        "reason": rule.reason,
+        "effect": rule.effect,
+        "source": source_text(rule.source),
+        "fires_on": list(rule.fires_on),
+        "silent_on": list(rule.silent_on),
+    }
+    if as_json:
+        return json.dumps(card, ensure_ascii=False, indent=2)
+    parts = [f"{rule.id} ({rule.level}): {rule.title}", "", rule.statement]
+    parts += ["", rule.reason] if rule.reason else []
+    parts += ["", rule.effect] if rule.effect else []
+    parts += ["", f"source: {card['source']}"]
+    for heading, examples in (("fires on:", rule.fires_on), ("silent on:", rule.silent_on)):
+        for example in examples:
+            parts += ["", heading, *(f"    {line}" for line in example.splitlines())]
+    return "\n".join(parts)
+
+
+def summary(findings: Sequence[Finding], records: int) -> str:
+    """Return one line: how many records, how many open findings of each level."""
+    open_findings = [finding for finding in findings if finding.accepted is None]
+    counts = [(level, sum(finding.level is level for finding in open_findings)) for level in Level]
+    words = [f"{count} {_plural(level, count)}" for level, count in counts if count]
+    accepted = len(findings) - len(open_findings)
+    words += [f"{accepted} accepted"] if accepted else []
+    checked = f"{records} record{'s' * (records != 1)} checked"
+    return f"{checked}: {', '.join(words) if words else 'nothing found'}"
+
+
+def _plural(level: Level, count: int) -> str:
+    many = {Level.QUERY: "queries"}.get(level, f"{level}s")
+    return str(level) if count == 1 else many
+
+
+def _block(finding: Finding, line: str | None) -> str:
+    place = finding.place
+    parts = [f"{place}: {finding.level} {finding.rule}: {finding.message}"]
+    if line is not None and line.strip():
+        marks = "^" * max(1, min(place.end_column, len(line) + 1) - place.column)
+        number = f"{place.line:>7} | "
+        parts += [number + line, " " * (len(number) - 2) + "| " + " " * (place.column - 1) + marks]
+    parts.append(f"  why:  {finding.why}")
+    if finding.accepted is not None:
+        parts.append(f"  accepted: {finding.accepted}")
+    else:
+        parts.append(f"  fix:  {finding.mend}")
+    parts.append(f"  more: handbook rule {finding.rule}")
+    return "\n".join(parts) + "\n"
+
+
+def _plain(finding: Finding) -> dict[str, Any]:
+    return {
+        "rule": finding.rule,
+        "level": str(finding.level),
+        "message": finding.message,
+        "why": finding.why,
+        "mend": finding.mend,
+        "fix": finding.fix,
+        "source": source_text(finding.source),
+        "file": finding.place.file,
+        "line": finding.place.line,
+        "column": finding.place.column,
+        "end_column": finding.place.end_column,
+        "accepted": finding.accepted,
+        "data": dict(finding.data),
+    }

@@ -1,0 +1,298 @@
+"""Declared against perceived: structures, salts, stereo, classes, leaving groups."""
+
+from collections.abc import Iterator
+from difflib import get_close_matches
+
+from builder.checks.case import Case, compounds_of
+from builder.chemistry.perception import (
+    expected_class_names,
+    leaving_group_names,
+    site_class_names,
+)
+from builder.finding import Level
+from builder.mechanism.amounts import charged_rows
+from builder.mechanism.reaction import groups_formed, sites_in_play
+from builder.records.model import Product, Substrate
+from builder.records.vocabulary import StereoKind
+from builder.rule import Fault, rule
+
+__all__ = ["STRUCTURE_CHECKS"]
+
+NO_GROUP = "none"
+
+
+def _substrate(smiles: str, classes: str = "secondary", group: str = "bromide", more: str = "") -> str:
+    return (
+        f"substrate: {{name: the substrate, smiles: '{smiles}', class: {classes}, leaving_group: {group},"
+        f" amount: 10 mmol{more}}}\nstages: [{{temperature: 60 °C, time: 16 h}}]\n"
+        "outcome: {result: [no reaction], measured: [{recovered: 96 %, of: substrate}]}"
+    )
+
+
+@rule(
+    id="structure-unreadable",
+    title="A structure that cannot be read",
+    source="opensmiles",
+    fires_on=(
+        "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-', equivalents: 1.5}",
+        "nucleophile: {name: sodium azide, smiles: 'C1CC', equivalents: 1.5}",
+    ),
+    silent_on=("nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', equivalents: 1.5}",),
+)
+def structure_is_unreadable(case: Case) -> Iterator[Fault]:
+    """Every structure can be read: a SMILES or InChI of one real molecule or salt, with sound valences.
+
+    No wildcards and no patterns: a record is about what was in the flask.
+    """
+    paths = dict(compounds_of(case.record))
+    for path, error in case.unreadable.items():
+        key = "smiles" if paths[path].smiles else "inchi"
+        where = f" at character {error.position + 1}" if error.position is not None else ""
+        yield Fault(at=(*path, key), message=f"{paths[path].name}: {error.reason}{where}", mend=error.mend)
+
+
+@rule(
+    id="salt-without-counter-ion",
+    title="An ion without its counter-ion",
+    source="common-practice",
+    fires_on=("nucleophile: {name: sodium azide, smiles: '[N-]=[N+]=[N-]', mass: 0.975 g}",),
+    silent_on=("nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', mass: 0.975 g}",),
+)
+def salt_lacks_its_counter_ion(case: Case) -> Iterator[Fault]:
+    """What was weighed is drawn as it was weighed: the ion with its counter-ion, the hydrate with its water.
+
+    Otherwise the molar mass, and every amount derived from it, is of something else. Without a mass it is a query.
+    """
+    for path, _, substance in charged_rows(case.record):
+        structure = case.structures.get(path)
+        if structure is not None and structure.charge:
+            yield Fault(
+                at=(*path, "smiles"),
+                message=f"{substance.name} is drawn with a charge of {structure.charge:+d}",
+                mend="add the counter-ion, '[Na+].' for sodium",
+                level=None if substance.mass is not None else Level.QUERY,
+            )
+
+
+@rule(
+    id="stereo-contradicts-structure",
+    title="The stereo word contradicts the drawing",
+    source="iupac-gold",
+    needs=("structure-unreadable",),
+    fires_on=(
+        _substrate("CC[C@H](C)Br", more=", stereo: achiral"),
+        _substrate("CCC(C)Br", more=", stereo: single enantiomer"),
+        _substrate("CCCCBr", "primary", more=", stereo: racemate"),
+    ),
+    silent_on=(
+        _substrate("CC[C@H](C)Br", more=", stereo: single enantiomer"),
+        _substrate("CCC(C)Br", more=", stereo: unknown enantiomer"),
+        _substrate("CCCCBr", "primary", more=", stereo: achiral"),
+    ),
+)
+def stereo_contradicts_structure(case: Case) -> Iterator[Fault]:
+    """A single enantiomer is drawn with its configuration, a racemate has something to be racemic about.
+
+    Racemate, single enantiomer, unknown enantiomer and not determined are four states: only the first may be drawn
+    flat or with relative configuration alone, and meso counts as achiral.
+    """
+    for path, compound in compounds_of(case.record):
+        stereo = compound.stereo if isinstance(compound, (Substrate, Product)) else None
+        structure = case.structures.get(path)
+        if stereo is None or structure is None:
+            continue
+        centres = structure.stereocentres
+        problem = ""
+        if stereo is StereoKind.ACHIRAL and (not structure.is_achiral or centres.unspecified):
+            problem = "the drawing is chiral, or leaves a stereocentre open"
+        elif stereo is StereoKind.SINGLE_ENANTIOMER and structure.is_achiral and not centres.unspecified:
+            problem = "the drawing is achiral"
+        elif stereo is StereoKind.SINGLE_ENANTIOMER and centres.unspecified:
+            problem = "a stereocentre is drawn without configuration"
+        elif (
+            stereo in {StereoKind.RACEMATE, StereoKind.UNKNOWN_ENANTIOMER}
+            and structure.is_achiral
+            and not centres.total
+        ):
+            problem = "the drawing has no stereocentre"
+        if problem:
+            yield Fault(
+                at=(*path, "stereo"),
+                message=f"{compound.name} is said to be {_a(stereo)}, but {problem}",
+                mend="draw the configuration, or correct the word",
+            )
+
+
+def _a(stereo: StereoKind) -> str:
+    needs_article = stereo in {StereoKind.RACEMATE, StereoKind.SINGLE_ENANTIOMER, StereoKind.MIXTURE}
+    return f"a {stereo}" if needs_article else str(stereo)
+
+
+@rule(
+    id="ee-without-chirality",
+    title="An ee of an achiral product",
+    source="iupac-gold",
+    needs=("structure-unreadable", "label-unknown"),
+    fires_on=(
+        "outcome:\n  result: [elimination]\n  products: [{label: A, name: but-1-ene, smiles: 'C=CCC'}]\n"
+        "  measured: [{yield: 81 %, of: A, kind: assay}, {ee: 40 %, of: A, by: chiral GC}]",
+    ),
+    silent_on=(
+        "substrate: {name: (S)-2-bromobutane, smiles: 'CC[C@H](C)Br', stereo: single enantiomer, class: secondary,"
+        " leaving_group: bromide, amount: 10 mmol}\nstages: [{temperature: 60 °C, time: 16 h}]\noutcome:\n"
+        "  result: [substitution]\n"
+        "  products: [{label: A, name: 2-azidobutane, smiles: 'CC[C@@H](C)N=[N+]=[N-]'}]\n"
+        "  measured: [{yield: 81 %, of: A, kind: assay}, {ee: 40 %, of: A, by: chiral GC}]",
+    ),
+)
+def ee_without_chirality(case: Case) -> Iterator[Fault]:
+    """Only a chiral product has an ee or er.
+
+    A meso compound or an alkene without stereocentre has no enantiomer to be in excess.
+    """
+    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
+    for index, line in enumerate(case.record.outcome.measured):
+        if line.what not in {"ee", "er"}:
+            continue
+        for label in line.of or ():
+            path = ("outcome", "products", positions[label]) if label in positions else ("substrate",)
+            structure = case.structures.get(path)
+            if structure is not None and structure.is_achiral and not structure.stereocentres.unspecified:
+                yield Fault(
+                    at=("outcome", "measured", index, line.what),
+                    message=f"{label} is achiral and has no {line.what}",
+                    mend="correct the label or the structure",
+                )
+
+
+@rule(
+    id="class-not-declared",
+    title="A class that the structure has and the record does not name",
+    level=Level.REMARK,
+    source="record-format",
+    needs=("structure-unreadable", "class-unknown", "leaving-group-not-found"),
+    fires_on=(_substrate("C=CCBr", "primary"),),
+    silent_on=(_substrate("C=CCBr", "[primary, allylic]"),),
+)
+def class_is_not_declared(case: Case) -> Iterator[Fault]:
+    """A class perceived at the reacting carbon is named in the record.
+
+    The lists of the book are built from these words.
+    """
+    perceived = {name for site in sites_in_play(case.record, case.structures) for name in site.classes}
+    missing = sorted((perceived & expected_class_names()) - set(case.record.substrate.classes))
+    if missing:
+        words = ", ".join([*case.record.substrate.classes, *missing])
+        yield Fault(
+            at=("substrate", "class"),
+            message=f"the carbon is {' and '.join(missing)} as well",
+            mend=f"write class: [{words}]",
+            fix=f"[{words}]",
+        )
+
+
+@rule(
+    id="class-not-found",
+    title="A declared class that the structure does not have",
+    source="record-format",
+    needs=("structure-unreadable", "class-unknown", "leaving-group-not-found"),
+    fires_on=(_substrate("CCCCBr", "secondary"),),
+    silent_on=(_substrate("CCCCBr", "primary"),),
+)
+def class_is_not_found(case: Case) -> Iterator[Fault]:
+    """Every declared class is perceived at the carbon that bears the leaving group.
+
+    If chemist and structure disagree here, the SMILES is usually of the wrong isomer.
+    """
+    perceived = {name for site in sites_in_play(case.record, case.structures) for name in site.classes}
+    for index, name in enumerate(case.record.substrate.classes):
+        if name not in perceived:
+            yield Fault(
+                at=("substrate", "class", index),
+                message=f"no reacting carbon of {case.record.substrate.name} is {name}",
+                mend=f"it is: {', '.join(sorted(perceived)) or 'without any class'}; correct the class or the SMILES",
+            )
+
+
+@rule(
+    id="class-unknown",
+    title="A class outside the closed list",
+    source="record-format",
+    fires_on=(_substrate("CCC(C)Br", "sec"),),
+    silent_on=(_substrate("CCC(C)Br", "secondary"),),
+)
+def class_is_unknown(case: Case) -> Iterator[Fault]:
+    """Substrate classes come from a closed list.
+
+    One word for one idea, so that a list of the book holds all entries it should.
+    """
+    for index, name in enumerate(case.record.substrate.classes):
+        if name not in site_class_names():
+            yield _outside_list(("substrate", "class", index), name, site_class_names())
+
+
+@rule(
+    id="leaving-group-unknown",
+    title="A leaving group outside the closed list",
+    source="record-format",
+    fires_on=(_substrate("CCC(C)Br", group="bromine"),),
+    silent_on=(_substrate("CCC(C)Br", group="bromide"),),
+)
+def leaving_group_is_unknown(case: Case) -> Iterator[Fault]:
+    """The leaving group comes from a closed list; `none` stands for an addition to an alkene or alkyne.
+
+    It is named for what leaves: a bromide, a tosylate, an epoxide that opens.
+    """
+    name = case.record.substrate.leaving_group
+    permitted = (*leaving_group_names(), NO_GROUP)
+    if name not in permitted:
+        yield _outside_list(("substrate", "leaving_group"), name, permitted)
+
+
+@rule(
+    id="leaving-group-not-found",
+    title="A leaving group that is not there",
+    source="record-format",
+    needs=("structure-unreadable", "leaving-group-unknown"),
+    fires_on=(_substrate("CCC(C)Br", group="chloride"),),
+    silent_on=(_substrate("CCC(C)Cl", group="chloride"),),
+)
+def leaving_group_is_not_found(case: Case) -> Iterator[Fault]:
+    """The leaving group is on the substrate, or a stage or an activator forms it there.
+
+    What forms it is seen in a stage's `gives`, or in a reagent with use: activator or acid.
+    """
+    name = case.record.substrate.leaving_group
+    if sites_in_play(case.record, case.structures):
+        return
+    found = groups_formed(case.record, case.structures)
+    had = f"it has {', '.join(found)}" if found else "it has no leaving group that we know"
+    yield Fault(
+        at=("substrate", "leaving_group"),
+        message=f"no {'multiple bond' if name == NO_GROUP else name} is found on {case.record.substrate.name}; {had}",
+        mend="correct the group or the SMILES, or show in a stage's gives: how it is formed",
+    )
+
+
+def _outside_list(at: tuple[str | int, ...], name: str, permitted: tuple[str, ...]) -> Fault:
+    near = get_close_matches(name, permitted, n=1, cutoff=0.5)
+    hint = f'; did you mean "{near[0]}"?' if near else ""
+    return Fault(
+        at=at,
+        message=f'"{name}" is not in the closed list{hint}',
+        mend=f"use one of: {', '.join(sorted(permitted))}",
+        fix=near[0] if near else None,
+    )
+
+
+STRUCTURE_CHECKS = (
+    class_is_not_declared,
+    class_is_not_found,
+    class_is_unknown,
+    ee_without_chirality,
+    leaving_group_is_not_found,
+    leaving_group_is_unknown,
+    salt_lacks_its_counter_ion,
+    stereo_contradicts_structure,
+    structure_is_unreadable,
+)

@@ -1,0 +1,264 @@
+"""The `handbook` command: thin edges over the rooms below.
+
+Exit 0 fine, 1 findings at the failing level, 2 misuse, 3 our fault.
+"""
+
+import datetime as dt
+import json
+import os
+import sys
+from collections.abc import Iterable, Sequence
+from difflib import get_close_matches
+from functools import cache
+from pathlib import Path
+from typing import NoReturn
+
+import click
+
+from builder.authoring.new import write_new_record
+from builder.authoring.schema import schemas, write_schemas
+from builder.book import Book, open_book
+from builder.checks.register import all_rules
+from builder.checks.report import render_json, render_rule, render_text, summary
+from builder.chemistry.structure import StructureError
+from builder.finding import Finding, Level
+from builder.publish.build import SiteBuildError, build_site, serve_site
+
+__all__ = ["main"]
+
+FINDINGS, MISUSE, OUR_FAULT = 1, 2, 3
+_BOOK = click.option(
+    "--book",
+    type=click.Path(exists=True, file_okay=False, path_type=Path),
+    default=Path("entries"),
+    show_default=True,
+    help="The folder with the records and handbook.yml.",
+)
+_JSON = click.option("--json", "as_json", is_flag=True, help="Print JSON for machines instead of text.")
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(package_name="condition-handbook")
+def handbook() -> None:
+    r"""Check, draw and publish a group's reaction conditions.
+
+    \b
+    Example:
+      handbook new 'CCC(C)Br' --nucleophile '[Na+].[N-]=[N+]=[N-]'
+      handbook check
+      handbook build
+    """
+
+
+@handbook.command()
+@click.argument("files", nargs=-1, type=click.Path(exists=True, path_type=Path))
+@_BOOK
+@_JSON
+@click.option(
+    "--fail-on",
+    type=click.Choice([level.value for level in Level]),
+    default=Level.ERROR.value,
+    show_default=True,
+    help="The lightest level that makes the command fail.",
+)
+@click.option(
+    "--only", type=click.Choice([level.value for level in Level]), help="Show this level and what is heavier."
+)
+def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, only: str | None) -> None:
+    r"""Check every record of the book, or show the findings of FILES only.
+
+    \b
+    Example:
+      handbook check
+      handbook check entries/azides/NS4T9XQ2N.yml --fail-on query
+    """
+    opened = _open(book)
+    shown = _selected(opened, files, book)
+    threshold = Level(only) if only else (Level.REMARK if as_json or files else Level.CAUTION)
+    visible = [finding for finding in shown if finding.level.weight >= threshold.weight]
+    if as_json:
+        click.echo(render_json(visible))
+    else:
+        _print_findings(visible, book)
+        click.echo(summary(shown, len(files) or opened.files))
+    _end(shown, Level(fail_on))
+
+
+@handbook.command()
+@click.option("--config", type=click.Path(exists=True, dir_okay=False, path_type=Path), default=Path("mkdocs.yml"))
+@click.option("--site", type=click.Path(file_okay=False, path_type=Path), default=Path("site"), show_default=True)
+@_BOOK
+def build(config: Path, site: Path, book: Path) -> None:
+    r"""Check the book and publish it as a static site.
+
+    A failed build leaves the last good site as it was.
+
+    \b
+    Example:
+      handbook build --site /srv/handbook
+    """
+    opened = _open(book)
+    errors = [finding for finding in opened.findings if finding.level is Level.ERROR]
+    if errors:
+        _print_findings(errors, book)
+        click.echo(summary(opened.findings, opened.files), err=True)
+        _end(errors, Level.ERROR)
+    try:
+        build_site(config, site)
+    except SiteBuildError as error:
+        click.echo(str(error), err=True)
+        sys.exit(FINDINGS)
+    click.echo(f"{len(opened.entries)} entries published in {site}/")
+
+
+@handbook.command()
+@click.option("--config", type=click.Path(exists=True, dir_okay=False, path_type=Path), default=Path("mkdocs.yml"))
+@click.option("--address", default="127.0.0.1:8000", show_default=True, help="Where to serve.")
+def serve(config: Path, address: str) -> None:
+    r"""Serve the book on this machine and rebuild it on every change.
+
+    \b
+    Example:
+      handbook serve --address 127.0.0.1:8123
+    """
+    sys.exit(serve_site(config, address))
+
+
+@handbook.command()
+@click.argument("substrate")
+@click.option("--nucleophile", help="SMILES of the nucleophile or base, counter-ion included.")
+@click.option("--by", "person", default="bench-1", show_default=True, help="Your code.")
+@_BOOK
+def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> None:
+    r"""Write a new record for SUBSTRATE (a SMILES) under a fresh identifier.
+
+    \b
+    Example:
+      handbook new 'CCC(C)Br' --nucleophile '[Na+].[N-]=[N+]=[N-]' --by bench-2
+    """
+    opened = _open(book)
+    taken = {*opened.by_id, *opened.settings.retired, *(path.stem for path in book.rglob("NS*.yml"))}
+    try:
+        path = write_new_record(book, substrate, nucleophile, date=_today(), person=person, taken=taken)
+    except StructureError as error:
+        raise click.UsageError(f"{error.reason}; {error.mend}") from error
+    click.echo(f"{path}: fill in what says TO FILL IN, then `handbook check {path}`")
+
+
+@handbook.command()
+@click.option("--print", "to_terminal", is_flag=True, help="Print the record schema instead of writing files.")
+@_BOOK
+def schema(to_terminal: bool, book: Path) -> None:
+    r"""Write the JSON Schemas of records and settings, to which editors bind.
+
+    \b
+    Example:
+      handbook schema
+      handbook schema --print
+    """
+    if to_terminal:
+        click.echo(json.dumps(schemas()["record-1.json"], ensure_ascii=False, indent=2))
+        return
+    for path in write_schemas(book):
+        click.echo(str(path))
+
+
+@handbook.command()
+@click.argument("rule_id", required=False)
+@_JSON
+def rule(rule_id: str | None, as_json: bool) -> None:
+    r"""Explain one rule, or list them all.
+
+    \b
+    Example:
+      handbook rule mechanism-contrary
+      handbook rule
+    """
+    rules = all_rules()
+    if rule_id is None:
+        listed = [{"id": each.id, "title": each.title, "level": str(each.level)} for each in rules.values()]
+        lines = [f"{each['id']:<32} {each['level']:<8} {each['title']}" for each in listed]
+        click.echo(json.dumps({"rules": listed}, ensure_ascii=False, indent=2) if as_json else "\n".join(lines))
+        return
+    if rule_id not in rules:
+        raise click.UsageError(f'no rule is called "{rule_id}"{_near(rule_id, rules)}')
+    click.echo(render_rule(rules[rule_id], as_json=as_json))
+
+
+def _open(book: Path) -> Book:
+    with click.progressbar(length=0, label="reading records", file=sys.stderr, hidden=not sys.stderr.isatty()) as bar:
+
+        def watched(files: tuple[Path, ...]) -> Iterable[Path]:
+            bar.length = len(files)
+            for path in files:
+                yield path
+                bar.update(1)
+
+        return open_book(book, today=_today(), progress=watched)
+
+
+def _today() -> dt.date:
+    """Return the date of the build: SOURCE_DATE_EPOCH where it is set, so that builds can be repeated."""
+    epoch = os.environ.get("SOURCE_DATE_EPOCH")
+    return dt.datetime.fromtimestamp(int(epoch), dt.UTC).date() if epoch else dt.datetime.now(dt.UTC).date()
+
+
+def _selected(opened: Book, files: Sequence[Path], book: Path) -> list[Finding]:
+    if not files:
+        return list(opened.findings)
+    inside = {path.resolve() for path in files}
+    return [
+        finding
+        for finding in opened.findings
+        if any(place == each or each in place.parents for each in inside for place in [_path_of(finding, book)])
+    ]
+
+
+def _path_of(finding: Finding, book: Path) -> Path:
+    """Return the file of a finding, whose place begins with the name of the book's folder."""
+    return (book.resolve().parent / finding.place.file).resolve()
+
+
+def _print_findings(findings: Iterable[Finding], book: Path) -> None:
+    @cache
+    def lines(path: Path) -> list[str]:
+        try:
+            return path.read_text("utf-8-sig", errors="replace").splitlines() if path.stat().st_size < 1 << 20 else []
+        except OSError:
+            return []
+
+    def line_of(file: str, number: int) -> str | None:
+        found = lines((book.resolve().parent / file).resolve())
+        return found[number - 1] if number <= len(found) else None
+
+    text = render_text(findings, line_of)
+    if text:
+        click.echo(text)
+
+
+def _end(findings: Iterable[Finding], failing: Level) -> None:
+    if any(finding.accepted is None and finding.level.weight >= failing.weight for finding in findings):
+        sys.exit(FINDINGS)
+
+
+def _near(word: str, known: Iterable[str]) -> str:
+    close = get_close_matches(word, list(known), n=1)
+    return f'; did you mean "{close[0]}"?' if close else "; `handbook rule` lists them"
+
+
+def main(arguments: Sequence[str] | None = None) -> NoReturn:
+    """Run the command; a crash is our fault and says so with exit code 3."""
+    try:
+        handbook.main(args=arguments, prog_name="handbook", standalone_mode=True)
+    except SystemExit:
+        raise
+    except OSError as error:
+        click.echo(f"handbook: {error.filename or ''}: {error.strerror or error}", err=True)
+        sys.exit(MISUSE)
+    except Exception as error:
+        if os.environ.get("HANDBOOK_DEBUG"):
+            raise
+        click.echo(f"handbook: our fault: {type(error).__name__}: {error}", err=True)
+        click.echo("run again with HANDBOOK_DEBUG=1 and report what it prints", err=True)
+        sys.exit(OUR_FAULT)
+    sys.exit(0)

@@ -1,0 +1,236 @@
+"""Which products follow from a substrate and what is in the flask, and by which transformations.
+
+No rates here: a route says that a product can be made by substitution, elimination, shift, transposition, ring
+closure or opening, or addition, in at most two such events after each other.
+"""
+
+from collections.abc import Iterable, Iterator
+from dataclasses import dataclass, replace
+from enum import StrEnum
+from functools import lru_cache
+from itertools import islice
+
+from builder.chemistry.neutral import neutral_form
+from builder.chemistry.perception import (
+    Nucleophile,
+    ReactiveSite,
+    attacking_atoms,
+    neighbouring_groups,
+    perceive_sites,
+)
+from builder.chemistry.structure import Structure
+from builder.chemistry.transform import (
+    Cation,
+    Edit,
+    StereoEffect,
+    add_hx,
+    add_x2,
+    allylic_forms,
+    capture,
+    cyclise,
+    eliminate,
+    ionise,
+    lose_proton,
+    migrating_groups,
+    protonate,
+    shift_12,
+    substitute,
+    transpose_allylic,
+)
+from builder.mechanism.reaction import SiteInPlay
+
+__all__ = ["Event", "Route", "routes_to"]
+
+MAX_SHIFTS = 3
+MAX_CATIONS = 60  # of one ionisation; a steroid's skeleton has no more within three shifts
+MAX_INTERMEDIATES = 40  # products of the first event that may react once more
+
+
+class Event(StrEnum):
+    """One step of a route."""
+
+    SUBSTITUTION = "substitution"
+    TRANSPOSITION = "allylic transposition"
+    RING_CLOSURE = "ring closure"
+    ELIMINATION = "elimination"
+    IONISATION = "ionisation"
+    SHIFT = "1,2-shift"
+    ADDITION = "addition"
+
+
+@dataclass(frozen=True, slots=True)
+class Route:
+    """One way to a product.
+
+    start: the molecule the first event starts from. site: where it starts.
+    effect: what the last event does to the configuration.
+    """
+
+    start: Structure
+    site: ReactiveSite
+    events: tuple[Event, ...]
+    product: Structure
+    effect: StereoEffect
+
+    @property
+    def eliminates(self) -> bool:
+        """Say whether the route ends in an elimination."""
+        return self.events[-1] is Event.ELIMINATION
+
+    @property
+    def rearranges(self) -> bool:
+        """Say whether the skeleton or the place of the new bond changes on the way."""
+        return Event.SHIFT in self.events or Event.TRANSPOSITION in self.events
+
+
+def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iterator[Iterator[Route]]:
+    """Yield the routes stage by stage, each stage longer and dearer than the one before.
+
+    flask: everything charged beside the substrate; what the first event sets free attacks in the second.
+    """
+    first = [made for each in sites for made in _from_site(each.on, each.site, flask)]
+    yield (route for route, _ in first)
+    yield (route for each in sites for route in _through_cations(each.on, each.site, flask))
+    intermediates: dict[Structure, tuple[Route, tuple[Structure, ...]]] = {}
+    for route, freed in first:
+        intermediates.setdefault(route.product, (route, freed))
+    yield (
+        further
+        for route, freed in islice(intermediates.values(), MAX_INTERMEDIATES)
+        for further in _second_events(route, (*flask, *freed), sites)
+    )
+
+
+@lru_cache(maxsize=128)
+def routes_to(
+    products: tuple[Structure, ...], sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]
+) -> tuple[tuple[Route, ...], ...]:
+    """Return, for each product, the routes of the shortest kind that give its constitution; empty where none does.
+
+    Salts and free compounds are one, configurations are left to the caller. Each of the three stages (one event,
+    through a cation, two events) is only entered while a product is still without a route.
+    """
+    wanted = [_constitutions(product) for product in products]
+    found: list[list[Route]] = [[] for _ in products]
+    for stage in _stages(sites, flask):
+        open_places = [place for place, routes in enumerate(found) if not routes]
+        if not open_places:
+            break
+        for route in stage:
+            made = _constitution(route.product)
+            for place in open_places:
+                if made in wanted[place]:
+                    found[place].append(route)
+    return tuple(tuple(routes) for routes in found)
+
+
+def _constitution(structure: Structure) -> str:
+    return neutral_form(structure).flat_smiles
+
+
+def _constitutions(product: Structure) -> set[str]:
+    """Return the flat SMILES of a recorded product and of each of its pieces."""
+    return {_constitution(piece) for piece in product.fragments} | {_constitution(product)}
+
+
+# --- one event --------------------------------------------------------------------------------------------
+
+
+def _from_site(
+    start: Structure, site: ReactiveSite, species: tuple[Structure, ...]
+) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
+    if site.is_addition:
+        yield from _additions(start, site, species)
+        return
+    for nucleophile in _attackers(species):
+        for inversion in (True, False):
+            edit = substitute(start, site, nucleophile, inversion=inversion)
+            yield _route(start, site, Event.SUBSTITUTION, edit), edit.others
+        for edit in transpose_allylic(start, site, nucleophile):
+            yield _route(start, site, Event.TRANSPOSITION, edit), edit.others
+    out_of_reach = {site.alpha_carbon, *(atom for atom, _ in start.atoms[site.alpha_carbon].neighbours)}
+    for group in neighbouring_groups(start):
+        if group.atom not in out_of_reach:
+            edit = cyclise(start, site, group)
+            yield _route(start, site, Event.RING_CLOSURE, edit), edit.others
+    for beta in site.beta_with_hydrogen:
+        for effect in (StereoEffect.ANTI, StereoEffect.SYN, StereoEffect.NOT_DETERMINED):
+            for edit in eliminate(start, site, beta.atom, effect=effect):
+                yield _route(start, site, Event.ELIMINATION, edit), edit.others
+
+
+def _additions(
+    start: Structure, site: ReactiveSite, species: tuple[Structure, ...]
+) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
+    for nucleophile in _attackers(species):
+        for edit in add_hx(start, site, nucleophile):
+            yield _route(start, site, Event.ADDITION, edit), edit.others
+    for molecule in species:
+        if molecule.smiles in {"BrBr", "ClCl", "II"}:
+            for edit in add_x2(start, site, molecule):
+                yield _route(start, site, Event.ADDITION, edit), edit.others
+
+
+def _attackers(species: Iterable[Structure]) -> Iterator[Nucleophile]:
+    seen: set[tuple[Structure, int]] = set()
+    for each in species:
+        for nucleophile in attacking_atoms(each):
+            key = (nucleophile.species, nucleophile.atom)
+            if key not in seen:
+                seen.add(key)
+                yield nucleophile
+
+
+def _route(start: Structure, site: ReactiveSite, event: Event, edit: Edit) -> Route:
+    return Route(start, site, (event,), edit.product, edit.effect)
+
+
+# --- through a cation -------------------------------------------------------------------------------------
+
+
+def _through_cations(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[Route]:
+    first = protonate(start, site) if site.is_addition else ionise(start, site)
+    attackers = tuple(_attackers(species))
+    for cation, events in _cations(first):
+        for nucleophile in attackers:
+            for edit in capture(cation, nucleophile):
+                yield Route(start, site, (*events, Event.SUBSTITUTION), edit.product, edit.effect)
+        for atom in _neighbours(cation):
+            for edit in lose_proton(cation, atom):
+                yield Route(start, site, (*events, Event.ELIMINATION), edit.product, edit.effect)
+
+
+def _cations(first: Cation) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
+    """Yield the cation and what up to three 1,2-shifts and allylic resonance make of it, breadth first."""
+    level: list[tuple[Cation, tuple[Event, ...]]] = [(first, (Event.IONISATION,))]
+    seen = {first.structure}
+    for _ in range(MAX_SHIFTS + 1):
+        following: list[tuple[Cation, tuple[Event, ...]]] = []
+        for cation, events in level:
+            yield cation, events
+            shifted = ((shift_12(cation, origin, moving), Event.SHIFT) for origin, moving in migrating_groups(cation))
+            resonant = ((form, Event.TRANSPOSITION) for form in allylic_forms(cation))
+            for made, event in (*resonant, *shifted):
+                if made.structure not in seen and len(seen) < MAX_CATIONS:
+                    seen.add(made.structure)
+                    following.append((made, (*events, event)))
+        level = following
+
+
+def _neighbours(cation: Cation) -> tuple[int, ...]:
+    return tuple(atom for atom, _ in cation.structure.atoms[cation.centre].neighbours)
+
+
+# --- a second event ---------------------------------------------------------------------------------------
+
+
+def _second_events(route: Route, species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
+    intermediate = route.product
+    for site in perceive_sites(intermediate):
+        for further, _ in _from_site(intermediate, site, species):
+            yield replace(further, start=route.start, site=route.site, events=(*route.events, *further.events))
+    for each in in_play:  # the product attacks another molecule of substrate
+        for nucleophile in attacking_atoms(intermediate):
+            if not each.site.is_addition:
+                edit = substitute(each.on, each.site, nucleophile)
+                yield Route(route.start, route.site, (*route.events, Event.SUBSTITUTION), edit.product, edit.effect)

@@ -1,0 +1,124 @@
+"""What a record says, seen as chemistry: the sites in play, the species in the flask, whether they are activated."""
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from functools import cache
+from importlib import resources
+
+from builder.chemistry.perception import ReactiveSite, attacking_atoms, perceive_sites, sites_of
+from builder.chemistry.structure import Atom, Structure, parse_smiles
+from builder.mechanism.amounts import charged_rows
+from builder.mechanism.solvents import find_solvent
+from builder.records.model import Record
+from builder.records.vocabulary import ReagentUse
+from builder.rule import Path
+
+__all__ = ["SiteInPlay", "groups_formed", "in_play", "is_activated", "sites_in_play", "species_in_flask"]
+
+_ACID_KINDS = {"hydrogen halide"}
+_ACTIVATING_USES = {ReagentUse.ACTIVATOR, ReagentUse.ACID}
+
+
+@dataclass(frozen=True, slots=True)
+class SiteInPlay:
+    """A reactive carbon that the record speaks of, on the molecule that bears the declared leaving group.
+
+    on: that molecule, the substrate or what a stage gives. formed_from: the group on it that becomes the declared
+    leaving group in the flask; None where the group is there already.
+    """
+
+    on: Structure
+    site: ReactiveSite
+    formed_from: str | None = None
+
+
+def in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[SiteInPlay, ...]:
+    """Return the sites that bear the declared leaving group, on the substrate before what the stages give.
+
+    A group formed in the flask is found on what a stage gives; else its precursor counts, where the record lists
+    a reagent that can form it.
+    """
+    group = record.substrate.leaving_group
+    bearers = _bearers(record, structures)
+    found = [SiteInPlay(structure, site) for structure in bearers for site in sites_of(structure, group)]
+    if found:
+        return tuple(found)
+    uses = {reagent.use for reagent in record.reagents}
+    return tuple(
+        SiteInPlay(structure, site, precursor)
+        for precursor, use in _precursors().get(group, ())
+        if use == "any" or uses & _ACTIVATING_USES
+        for structure in bearers
+        for site in sites_of(structure, precursor)
+    )
+
+
+def sites_in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[ReactiveSite, ...]:
+    """Return the sites of `in_play` alone."""
+    return tuple(each.site for each in in_play(record, structures))
+
+
+def groups_formed(record: Record, structures: Mapping[Path, Structure]) -> tuple[str, ...]:
+    """Return the names of all leaving groups on the substrate and on what the stages give."""
+    groups = (site.leaving_group for s in _bearers(record, structures) for site in perceive_sites(s))
+    return tuple(dict.fromkeys(group for group in groups if group != "none"))
+
+
+def is_activated(record: Record, structures: Mapping[Path, Structure]) -> bool:
+    """Say whether an acid or an activator in the flask can make a reluctant group leave."""
+    if any(reagent.use in _ACTIVATING_USES for reagent in record.reagents):
+        return True
+    return any(
+        nucleophile.kind in _ACID_KINDS
+        for path, _, _ in charged_rows(record)
+        if path in structures
+        for nucleophile in attacking_atoms(structures[path])
+    )
+
+
+def species_in_flask(record: Record, structures: Mapping[Path, Structure]) -> Iterator[Structure]:
+    """Yield the structure of everything charged but the substrate; solvents by their table row where undrawn."""
+    for path, _, substance in charged_rows(record)[1:]:
+        structure = structures.get(path)
+        if structure is None and path[0] == "solvent":
+            row = find_solvent(substance.name, None)
+            structure = parse_smiles(row.smiles) if row else None
+        if structure is not None:
+            yield structure
+            yield from _halides_set_free(structure)
+
+
+def _halides_set_free(structure: Structure) -> Iterator[Structure]:
+    """Yield the halide ions that a reagent sets free: those on anything but a carbon that is a substrate itself.
+
+    Sulfonyl, phosphorus, silicon, boron and acyl halides give them up; so chloride from methanesulfonyl chloride
+    turns up in a product.
+    """
+    for symbol in sorted({atom.symbol for atom in structure.atoms} & {"Cl", "Br", "I"}):
+        partners = {
+            structure.atoms[other] for atom in structure.atoms if atom.symbol == symbol for other, _ in atom.neighbours
+        }
+        if any(partner.symbol not in {"C", symbol} or _is_acyl(partner) for partner in partners):
+            yield parse_smiles(f"[{symbol}-]")
+
+
+def _is_acyl(atom: Atom) -> bool:
+    return atom.symbol == "C" and any(order == 2.0 for _, order in atom.neighbours) and not atom.aromatic
+
+
+def _bearers(record: Record, structures: Mapping[Path, Structure]) -> tuple[Structure, ...]:
+    paths: list[Path] = [("substrate",), *(("stages", index, "gives") for index in range(len(record.stages)))]
+    return tuple(structures[path] for path in paths if path in structures)
+
+
+@cache
+def _precursors() -> dict[str, tuple[tuple[str, str], ...]]:
+    """Load formed_groups.tsv: group -> (precursor, use)."""
+    text = resources.files("builder.mechanism").joinpath("formed_groups.tsv").read_text("utf-8")
+    rows = [line.split("\t") for line in text.splitlines() if line and not line.startswith("#")][1:]
+    found: dict[str, tuple[tuple[str, str], ...]] = {}
+    for group, precursor, use in rows:
+        if use not in {"any", "activator"} or (precursor, use) in found.get(group, ()):
+            raise ValueError(f"formed_groups.tsv: {group} from {precursor}: unknown use, or twice")
+        found[group] = (*found.get(group, ()), (precursor, use))
+    return found
