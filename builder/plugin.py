@@ -1,0 +1,112 @@
+"""MkDocs events -> open_book, build_pages. The only file that imports MkDocs; errors stop the build."""
+
+import datetime as dt
+from collections.abc import Callable
+from html import escape
+from pathlib import Path
+from urllib.parse import quote
+
+from mkdocs.config.base import Config
+from mkdocs.config.config_options import Choice
+from mkdocs.config.defaults import MkDocsConfig
+from mkdocs.exceptions import PluginError
+from mkdocs.plugins import BasePlugin
+from mkdocs.structure.files import File, Files, InclusionLevel
+from mkdocs.structure.pages import Page as MkDocsPage
+from mkdocs.structure.toc import AnchorLink, TableOfContents
+from mkdocs.utils import get_build_date
+
+from builder.book import Book, open_book
+from builder.checks.report import render_text
+from builder.finding import Level
+from builder.publish.page import Page, menu_of
+from builder.publish.pages import build_pages
+
+__all__ = ["HandbookConfig", "HandbookPlugin"]
+
+
+class HandbookConfig(Config):  # type: ignore[no-untyped-call]  # MkDocs leaves __init_subclass__ untyped
+    """Options under `- handbook:` in mkdocs.yml; what belongs to the book stands in its handbook.yml."""
+
+    fail_on = Choice([str(Level.ERROR), str(Level.QUERY)], default=str(Level.ERROR))
+
+
+class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-call]  # likewise
+    """Publishes the records below `docs_dir` as virtual pages."""
+
+    book: Book
+    pages: tuple[Page, ...] = ()
+
+    def on_pre_build(self, *, config: MkDocsConfig) -> None:
+        """Read and check the book and write its pages, before MkDocs clears the site folder."""
+        folder = Path(config.docs_dir)
+        self.book = open_book(folder, today=dt.date.fromisoformat(get_build_date()))
+        least = Level(self.config.fail_on).weight
+        failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
+        if failing:
+            raise PluginError(f"the book cannot be published\n{render_text(failing, _line_of(folder.parent))}")
+        self.pages = build_pages(self.book)
+        _configure(config, self.book, self.pages)
+
+    def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
+        """Add the pages and their downloads; of the book's own files only Markdown and the logo are published."""
+        for file in list(files):
+            is_ours = file.src_dir == config.docs_dir and file.src_uri != self.book.settings.logo
+            if is_ours and not file.is_documentation_page():
+                files.remove(file)
+        for page in self.pages:
+            if page.file not in files.src_uris:  # a group may write a page of its own in place of ours
+                files.append(_VirtualPage(page, config).file)
+                for asset in page.assets:
+                    content, included = asset.data, InclusionLevel.INCLUDED
+                    files.append(File.generated(config, asset.path, content=content, inclusion=included))
+        return files
+
+
+class _VirtualPage(MkDocsPage):
+    """A page whose HTML is ready: it never passes through Markdown. Theme templates do not escape, so we do here."""
+
+    def __init__(self, page: Page, config: MkDocsConfig) -> None:
+        place = InclusionLevel.INCLUDED if page.menu else InclusionLevel.NOT_IN_NAV
+        file = File.generated(config, page.file, content="", inclusion=place)
+        if page.source is not None:
+            file.edit_uri = quote(page.source)
+        super().__init__(escape(page.title), file, config)
+        self._page = page
+
+    def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so
+        page = self._page
+        self.markdown = ""
+        self.meta = {"description": escape(page.description), "hide": ["navigation"]}
+        if page.path:
+            self.meta["title"] = escape(page.title)
+        if len(page.headings) < 3:
+            self.meta["hide"].append("toc")
+        if page.template is not None:
+            self.meta["template"] = page.template
+        if not page.indexed:
+            self.meta |= {"robots": "noindex", "search": {"exclude": True}}
+
+    def render(self, config: MkDocsConfig, files: Files) -> None:  # noqa: ARG002 - MkDocs calls it so
+        self.content = self._page.body
+        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self._page.headings])
+        self.present_anchor_ids = set(self._page.anchors)
+
+
+def _configure(config: MkDocsConfig, book: Book, pages: tuple[Page, ...]) -> None:
+    """Take title, addresses and logo from the book's settings; the menu too, unless mkdocs.yml has one."""
+    settings = book.settings
+    config.site_name = escape(settings.title)
+    config.site_url = config.site_url or settings.site_address
+    config.edit_uri = config.edit_uri or settings.edit_address
+    config.nav = config.nav or menu_of(pages)
+    if settings.logo:
+        config.theme["logo"] = settings.logo
+
+
+def _line_of(above: Path) -> Callable[[str, int], str | None]:
+    def line_of(file: str, number: int) -> str | None:
+        lines = (above / file).read_text("utf-8", "replace").splitlines()
+        return lines[number - 1] if number <= len(lines) else None
+
+    return line_of

@@ -1,0 +1,115 @@
+"""The fields by which readers filter: substrate class, leaving group, nucleophile, solvent, mechanism, result."""
+
+import hashlib
+import re
+import unicodedata
+from collections.abc import Callable, Iterable, Mapping
+from dataclasses import dataclass
+
+from builder.book import Entry
+from builder.checks.case import Case
+from builder.chemistry.perception import attacking_atoms
+from builder.records.model import Charged
+from builder.records.vocabulary import NucleophileWord
+from builder.rule import Path
+
+__all__ = ["FACETS", "Facet", "FacetValue", "facet_values", "slug_of"]
+
+
+@dataclass(frozen=True, slots=True)
+class Facet:
+    """One field: its address and titles, and how to read the values of an entry.
+
+    key: part of the address. title: heading of its list. short: label in a menu.
+    """
+
+    key: str
+    title: str
+    short: str
+    values_of: Callable[[Entry], tuple[str, ...]]
+
+
+@dataclass(frozen=True, slots=True)
+class FacetValue:
+    """One value of a facet with the entries that have it, in the book's order; slug is its address."""
+
+    value: str
+    slug: str
+    entries: tuple[Entry, ...]
+
+
+def facet_values(facet: Facet, entries: Iterable[Entry]) -> tuple[FacetValue, ...]:
+    """Return the values that occur, in alphabetical order; spellings that differ in case alone are one value."""
+    found: dict[str, list[Entry]] = {}
+    spellings: dict[str, set[str]] = {}
+    for entry in entries:
+        for value in facet.values_of(entry):
+            key = value.casefold()
+            spellings.setdefault(key, set()).add(value)
+            if entry not in found.setdefault(key, []):
+                found[key].append(entry)
+    labels = {key: min(spellings[key]) for key in found}
+    slugs = _slugs(labels.values())
+    return tuple(FacetValue(labels[key], slugs[labels[key]], tuple(found[key])) for key in sorted(found))
+
+
+def slug_of(text: str) -> str:
+    """Return `text` as part of an address: lower-case ASCII letters and digits joined by hyphens.
+
+    Empty where nothing of the text can be kept.
+    """
+    plain = unicodedata.normalize("NFKD", text).encode("ascii", "ignore").decode()
+    return re.sub(r"[^a-z0-9]+", "-", plain.casefold()).strip("-")[:60].strip("-")
+
+
+def _slugs(values: Iterable[str]) -> Mapping[str, str]:
+    """Give each value an address of its own; those that would share one, or have none, carry a hash as well."""
+    by_slug: dict[str, list[str]] = {}
+    for value in values:
+        by_slug.setdefault(slug_of(value), []).append(value)
+    return {
+        value: slug if slug and len(sharing) == 1 else f"{slug}-{_hash(value)}".strip("-")
+        for slug, sharing in by_slug.items()
+        for value in sharing
+    }
+
+
+def _hash(value: str) -> str:
+    return hashlib.sha256(value.encode()).hexdigest()[:8]
+
+
+def _nucleophile(entry: Entry) -> tuple[str, ...]:
+    """Return the kinds of what attacks: nucleophiles, or the bases where no nucleophile is charged."""
+    record, case = entry.record, entry.case
+    if isinstance(record.nucleophile, NucleophileWord) and record.nucleophile is not NucleophileWord.NONE:
+        return (str(record.nucleophile),)
+    key, species = ("nucleophile", record.nucleophiles) if record.nucleophiles else ("base", record.bases)
+    kinds = [_kind(case, (key, index), substance) for index, substance in enumerate(species)]
+    return tuple(dict.fromkeys(kinds)) or (str(NucleophileWord.NONE),)
+
+
+def _kind(case: Case, path: Path, substance: Charged) -> str:
+    structure = case.structures.get(path)
+    attackers = attacking_atoms(structure) if structure is not None else ()
+    return attackers[0].kind if attackers else substance.name
+
+
+def _mechanism(entry: Entry) -> tuple[str, ...]:
+    claim = entry.record.outcome.claim
+    return (str(claim.mechanism),) if claim else ("no claim",)
+
+
+FACETS: tuple[Facet, ...] = (
+    Facet("class", "Substrate class", "Class", lambda entry: entry.record.substrate.classes),
+    Facet("leaving-group", "Leaving group", "Leaving group", lambda entry: (entry.record.substrate.leaving_group,)),
+    Facet("nucleophile", "Nucleophile or base", "Nucleophile", _nucleophile),
+    Facet(
+        "solvent",
+        "Solvent",
+        "Solvent",
+        lambda entry: tuple(solvent.name for solvent in entry.record.solvents) or ("neat",),
+    ),
+    Facet("mechanism", "Mechanism claimed", "Mechanism", _mechanism),
+    Facet("result", "Result", "Result", lambda entry: tuple(str(result) for result in entry.record.outcome.result)),
+    Facet("verdict", "Verdict", "Verdict", lambda entry: (str(entry.verdict),)),
+)

@@ -1,0 +1,110 @@
+"""How to add an entry, and how to cite one."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any
+
+from builder.book import Book
+from builder.chemistry.perception import leaving_group_names, site_class_meanings, site_class_names
+from builder.publish.page import Page
+from builder.publish.templating import render
+from builder.records.schema import record_schema
+from builder.records.specimen import SPECIMEN_FILE, specimen_text
+
+__all__ = ["FormatRow", "format_rows", "guide_pages"]
+
+
+@dataclass(frozen=True, slots=True)
+class FormatRow:
+    """One key of the record: where it stands ("stages.temperature"), whether it is required, what it takes."""
+
+    key: str
+    required: bool
+    takes: str
+
+
+def format_rows(schema: Mapping[str, Any]) -> tuple[FormatRow, ...]:
+    """Return the keys of the record format, those of its parts below them, from the JSON Schema."""
+    rows: list[FormatRow] = []
+    required = set(schema["required"])
+    for key, node in schema["properties"].items():
+        rows.append(FormatRow(key, key in required, _takes(node, schema)))
+        part = _part_of(node, schema)
+        if part is not None:
+            inner = set(part.get("required", ()))
+            rows += [
+                FormatRow(f"{key}.{name}", name in inner, _takes(below, schema))
+                for name, below in part["properties"].items()
+            ]
+    return tuple(rows)
+
+
+def guide_pages(book: Book) -> tuple[Page, ...]:
+    """Return the two guides."""
+    notice = book.settings.notice or ""
+    schema = record_schema(site_class_names(), leaving_group_names())
+    meanings = site_class_meanings()
+    return (
+        Page(
+            path="how-to-add/",
+            title="How to add an entry",
+            description="From the bench to the book: write the record, check it, ask for review.",
+            body=render(
+                "how_to_add.html",
+                specimen=specimen_text(),
+                specimen_file=SPECIMEN_FILE,
+                rows=format_rows(schema),
+                classes=[(name, meanings[name]) for name in site_class_names()],
+                leaving_groups=leaving_group_names(),
+                house_rules=book.settings.house_rules,
+                notice=notice,
+                root="../",
+            ),
+            menu=("How to add",),
+        ),
+        Page(
+            path="how-to-cite/",
+            title="How to cite",
+            description="Identifier, revision and digest name one experiment for good.",
+            body=render("how_to_cite.html", settings=book.settings, notice=notice, root="../"),
+            menu=("How to cite",),
+        ),
+    )
+
+
+def _resolve(node: Mapping[str, Any], schema: Mapping[str, Any]) -> Mapping[str, Any]:
+    while "$ref" in node:
+        node = schema["$defs"][node["$ref"].rsplit("/", 1)[-1]]
+    return node
+
+
+def _part_of(node: Mapping[str, Any], schema: Mapping[str, Any]) -> Mapping[str, Any] | None:
+    """Return the mapping a key takes, also where it takes a list of them."""
+    node = _resolve(node, schema)
+    if "properties" in node:
+        return node
+    below = [*node.get("anyOf", ()), *([node["items"]] if isinstance(node.get("items"), dict) else [])]
+    return next((part for choice in below if (part := _part_of(choice, schema)) is not None), None)
+
+
+def _takes(node: Mapping[str, Any], schema: Mapping[str, Any]) -> str:
+    """Return in a few words what a key takes."""
+    node = _resolve(node, schema)
+    if "const" in node:
+        return str(node["const"])
+    if "enum" in node:
+        words = [str(word) for word in node["enum"]]
+        return " | ".join(words) if len(words) <= 9 else f"one of {len(words)} words, listed below"
+    if "anyOf" in node:
+        return " or ".join(dict.fromkeys(_takes(choice, schema) for choice in node["anyOf"]))
+    if "properties" in node:
+        return "keys, see below"
+    if "examples" in node:
+        return f"such as {node['examples'][0]}"
+    if node.get("type") == "array":
+        item = node.get("items")
+        return f"a list: {_takes(item, schema)}" if isinstance(item, dict) else "a list"
+    return _PLAIN.get(node.get("format") or node.get("type", ""), "text")
+
+
+_PLAIN = {"date": "a date, 2026-03-14", "integer": "a whole number", "number": "a number", "boolean": "true | false"}

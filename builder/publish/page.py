@@ -1,0 +1,85 @@
+"""Page and Asset: what the publishing rooms hand over, and all that a site generator needs to know of it."""
+
+import re
+from collections.abc import Iterable
+from dataclasses import dataclass, field
+
+__all__ = ["Asset", "Heading", "Menu", "Page", "menu_of"]
+
+Menu = list[dict[str, "str | Menu"] | str]
+"""Entries of a menu: a label with a page's source, a label with a menu below it, or a section's own page."""
+
+_HEADING = re.compile(r'<h2 id="(?P<id>[^"]+)"[^>]*>(?P<title>[^<]+)</h2>')
+_ID = re.compile(r'\sid="([^"]+)"')
+
+
+@dataclass(frozen=True, slots=True)
+class Asset:
+    """A file to be published as it is; path below the site's root, with forward slashes."""
+
+    path: str
+    data: bytes
+
+
+@dataclass(frozen=True, slots=True)
+class Heading:
+    """A section of a page: its anchor, and its title as HTML text (already escaped)."""
+
+    anchor: str
+    title: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Page:
+    """One page of the site.
+
+    path: address below the site's root, ending in a slash; "" is the front page.
+    title, description: plain text, not escaped.
+    body: HTML that stands inside the site generator's page; every link in it is relative.
+    template: the page frame, where it is not the usual one.
+    source: file behind the page, below the book's folder, for the edit link.
+    menu: labels under which the page stands in the menu, outermost first; none keeps it out.
+    indexed: whether search engines and the site's own search may list it.
+    assets: files that belong to the page.
+    """
+
+    path: str
+    title: str
+    body: str
+    description: str
+    template: str | None = None
+    source: str | None = None
+    menu: tuple[str, ...] = ()
+    indexed: bool = True
+    assets: tuple[Asset, ...] = field(default=())
+
+    @property
+    def file(self) -> str:
+        """Return the name under which a site generator knows the page."""
+        return f"{self.path}index.md"
+
+    @property
+    def headings(self) -> tuple[Heading, ...]:
+        """Return the sections of the page in order."""
+        return tuple(Heading(match["id"], match["title"]) for match in _HEADING.finditer(self.body))
+
+    @property
+    def anchors(self) -> frozenset[str]:
+        """Return every anchor a link may point at."""
+        return frozenset(_ID.findall(self.body))
+
+
+def menu_of(pages: Iterable[Page]) -> Menu:
+    """Return the menu of the pages that want to stand in one, in the order given."""
+    menu: Menu = []
+    sections: dict[tuple[str, ...], Menu] = {(): menu}
+    listed = [page for page in pages if page.menu]
+    with_children = {page.menu[:-1] for page in listed}
+    for page in listed:
+        above = sections[page.menu[:-1]]
+        if page.menu in with_children:
+            sections[page.menu] = [page.file]
+            above.append({page.menu[-1]: sections[page.menu]})
+        else:
+            above.append({page.menu[-1]: page.file})
+    return menu

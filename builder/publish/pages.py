@@ -1,0 +1,34 @@
+"""build_pages(book) -> the whole site as text: what the plugin hands to MkDocs, and any other host could take."""
+
+from collections.abc import Sequence
+
+from builder.book import Book
+from builder.checks.register import all_rules
+from builder.publish.entry_view import surroundings_of
+from builder.publish.front_page import front_page
+from builder.publish.guide_pages import guide_pages
+from builder.publish.list_pages import list_pages
+from builder.publish.page import Page
+from builder.publish.record_page import entry_page
+from builder.publish.rule_pages import rule_pages
+from builder.publish.summary import summarise
+from builder.rule import Rule
+
+__all__ = ["build_pages"]
+
+
+def build_pages(book: Book, rules: Sequence[Rule[object, object]] | None = None) -> tuple[Page, ...]:
+    """Return every page of the site, those of the menu in its order.
+
+    rules: those that get a page; all of them unless said otherwise.
+    """
+    rules = tuple(all_rules().values()) if rules is None else rules
+    summaries = {entry.id: summarise(entry) for entry in book.entries}
+    around = surroundings_of(book, rules)
+    return (
+        front_page(book, summaries),
+        *list_pages(book, summaries),
+        *rule_pages(book, rules),
+        *guide_pages(book),
+        *(entry_page(entry, around) for entry in book.entries),
+    )

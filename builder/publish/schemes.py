@@ -1,0 +1,138 @@
+"""What the scheme of an entry shows: which compounds, which arrows, which words."""
+
+from dataclasses import dataclass
+
+from markupsafe import Markup
+
+from builder.checks.case import Case
+from builder.chemistry.perception import sites_of
+from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme, standalone
+from builder.publish.figures import equivalents_text, joined
+from builder.publish.measured import yield_caption
+from builder.records.model import Record, Stage
+from builder.records.vocabulary import NucleophileWord, Result
+from builder.rule import Path
+
+__all__ = ["Scheme", "entry_scheme"]
+
+Step = list[DrawnCompound] | Arrow
+
+
+@dataclass(frozen=True, slots=True)
+class Scheme:
+    """A drawn scheme: as rows, as one column for a phone, as a file of its own, and what it shows in words."""
+
+    wide: Markup
+    tall: Markup
+    file: bytes
+    words: str
+
+
+def entry_scheme(case: Case) -> Scheme | None:
+    """Return the scheme of a record; None where the substrate has no structure that could be read."""
+    if ("substrate",) not in case.structures:
+        return None
+    steps, words = _steps(case), scheme_words(case)
+    wide = draw_scheme(steps, name=words, ident=f"{case.record.entry}-wide", layout="wide")
+    tall = draw_scheme(steps, name=words, ident=f"{case.record.entry}-tall", layout="tall")
+    # Drawings are our own; every text in them is escaped where it is set.
+    return Scheme(Markup(wide), Markup(tall), standalone(wide).encode(), words)  # noqa: S704
+
+
+def scheme_words(case: Case) -> str:
+    """Return the reaction in one sentence, the accessible name of its scheme."""
+    record = case.record
+    partners = _partners(record)
+    start = f"{record.substrate.name} with {joined(partners, ' and ')}" if partners else record.substrate.name
+    solvents = joined((solvent.name for solvent in record.solvents), " and ") or "no solvent"
+    last = record.stages[-1]
+    products = joined((product.name for product in record.outcome.products), ", ")
+    sought = record.outcome.sought
+    ends = f"gives {products}" if products else "gives no product"
+    if not products and sought:
+        ends = f"does not give {sought.name}"
+    return f"{start} in {solvents} at {last.temperature} {ends}"
+
+
+def _partners(record: Record) -> list[str]:
+    words = {NucleophileWord.SOLVENT: ["the solvent"], NucleophileWord.INTERNAL: ["its own neighbouring group"]}
+    named = [nucleophile.name for nucleophile in record.nucleophiles]
+    if isinstance(record.nucleophile, NucleophileWord):
+        named = words.get(record.nucleophile, [])
+    return [*named, *(base.name for base in record.bases)]
+
+
+def _steps(case: Case) -> list[Step]:
+    record = case.record
+    steps: list[Step] = [[_substrate(case)]]
+    for index, stage in enumerate(record.stages):
+        path = ("stages", index, "gives")
+        last = index == len(record.stages) - 1
+        if stage.gives is not None and path in case.structures and not last:
+            steps += [_arrow(case, _stages_up_to(case, index)), [_drawn(case, path, caption=stage.gives.name)]]
+    steps.append(_arrow(case, _stages_up_to(case, len(record.stages) - 1)))
+    ends = _ends(case)
+    return [*steps, ends] if ends else steps
+
+
+def _stages_up_to(case: Case, index: int) -> tuple[int, ...]:
+    """Return the stages that share an arrow: those since the last intermediate that is drawn."""
+    first = max(
+        (
+            i + 1
+            for i, stage in enumerate(case.record.stages[:index])
+            if stage.gives is not None and ("stages", i, "gives") in case.structures
+        ),
+        default=0,
+    )
+    return tuple(range(first, index + 1))
+
+
+def _substrate(case: Case) -> DrawnCompound:
+    structure = case.structures[("substrate",)]
+    sites = sites_of(structure, case.record.substrate.leaving_group)
+    site = sites[0] if sites else None
+    return DrawnCompound(
+        structure,
+        caption=case.record.substrate.name,
+        leaves=frozenset({site.leaving_atom}) if site and site.leaving_atom is not None else frozenset(),
+        points=frozenset({site.alpha_carbon}) if site else frozenset(),
+    )
+
+
+def _drawn(case: Case, path: Path, *, label: str = "", caption: str = "") -> DrawnCompound:
+    return DrawnCompound(case.structures[path], label=label, caption=caption)
+
+
+def _ends(case: Case) -> list[DrawnCompound]:
+    outcome = case.record.outcome
+    drawn = [
+        _drawn(case, ("outcome", "products", i), label=p.label, caption=yield_caption(outcome, p.label))
+        for i, p in enumerate(outcome.products)
+        if ("outcome", "products", i) in case.structures
+    ]
+    if not drawn and ("outcome", "sought") in case.structures:
+        return [_drawn(case, ("outcome", "sought"), caption="sought, not found")]
+    return drawn
+
+
+def _arrow(case: Case, stages: tuple[int, ...]) -> Arrow:
+    record = case.record
+    whole = len(stages) == len(record.stages)
+    added = {name for i in stages for name in record.stages[i].add or ()}
+    reagents = [
+        joined((row.name, f"({equivalents_text(row.equivalents)} equiv)" if row.equivalents else ""), " ")
+        for row in case.amounts.rows
+        if row.role in {"nucleophile", "base", "reagent"} and (whole or row.name in added)
+    ]
+    solvents = [row.name for row in case.amounts.rows if row.role == "solvent" and (whole or row.name in added)]
+    failed = set(record.outcome.result) <= {Result.NO_REACTION, Result.DECOMPOSITION}
+    return Arrow(
+        above=tuple(reagents),
+        below=tuple(part for part in (joined(solvents), *(_stage_line(record.stages[i]) for i in stages)) if part),
+        failed=failed and stages[-1] == len(record.stages) - 1,
+    )
+
+
+def _stage_line(stage: Stage) -> str:
+    return f"{stage.temperature}, {stage.time}"

@@ -1,0 +1,136 @@
+"""An entry in a few facts: the conditions strip of its page, and the row that stands for it in a list."""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+from builder.book import Entry
+from builder.mechanism.amounts import AmountRow
+from builder.publish.figures import amount_text, concentration_text, equivalents_text, joined, quantity_text
+from builder.publish.measured import outcome_headline, runs_text
+from builder.records.model import Record, Stage
+from builder.records.vocabulary import NucleophileWord, Result
+
+__all__ = ["Fact", "Summary", "concentration", "conditions_strip", "scale_mol", "summarise"]
+
+
+@dataclass(frozen=True, slots=True)
+class Fact:
+    """A labelled value with a qualification below it."""
+
+    label: str
+    value: str
+    detail: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Summary:
+    """One entry as a list shows it."""
+
+    id: str
+    title: str
+    date: str
+    conditions: str
+    outcome: str
+    verdict: str
+    verdict_key: str
+    take_away: str
+    status: str
+    is_failure: bool
+
+
+def summarise(entry: Entry) -> Summary:
+    """Return an entry as a list shows it."""
+    record = entry.record
+    results = set(record.outcome.result)
+    return Summary(
+        id=entry.id,
+        title=record.title,
+        date=record.performed.date.isoformat(),
+        conditions=joined(fact.value for fact in _conditions_line(entry)),
+        outcome=outcome_headline(record, scale_mol(entry)),
+        verdict=str(entry.verdict),
+        verdict_key=entry.verdict.name.lower().replace("_", "-"),
+        take_away=record.take_away or "",
+        status=str(record.status),
+        is_failure=results <= {Result.NO_REACTION, Result.DECOMPOSITION} or record.outcome.failure is not None,
+    )
+
+
+def scale_mol(entry: Entry) -> float | None:
+    """Return the amount of substrate in mol, the scale of the entry."""
+    return entry.case.amounts.substrate.amount_mol
+
+
+def _conditions_line(entry: Entry) -> list[Fact]:
+    labels = {"Nucleophile", "Base", "Reagents", "Solvent", "Temperature", "Time"}
+    facts = [fact for fact in conditions_strip(entry) if fact.label in labels]
+    return [
+        Fact(f.label, joined((f.value, f"({f.detail})" if f.detail and f.label == "Nucleophile" else ""), " "))
+        for f in facts
+    ]
+
+
+def conditions_strip(entry: Entry) -> tuple[Fact, ...]:
+    """Return the conditions of the whole entry; a value that changes between stages lists them in order."""
+    record, amounts = entry.record, entry.case.amounts
+    stages = record.stages
+    scale = scale_mol(entry)
+    facts = [
+        *_reactants(entry),
+        _solvent(record, amounts.solvent_volume_l),
+        Fact("Temperature", _in_order(str(stage.temperature) for stage in stages), _thermometers(stages)),
+        Fact("Time", _in_order((str(stage.time) for stage in stages), fold=False)),
+        Fact("Vessel", _in_order(str(stage.vessel or "not stated") for stage in stages)),
+        Fact("Atmosphere", _in_order(stage.atmosphere or "not stated" for stage in stages)),
+        concentration(entry),
+        Fact("Scale", amount_text(scale) if scale is not None else "not known", runs_text(record.performed)),
+    ]
+    return tuple(fact for fact in facts if fact.value)
+
+
+def _reactants(entry: Entry) -> list[Fact]:
+    record = entry.record
+    facts = []
+    if isinstance(record.nucleophile, NucleophileWord):
+        facts.append(Fact("Nucleophile", str(record.nucleophile)))
+    for role, label in (("nucleophile", "Nucleophile"), ("base", "Base"), ("reagent", "Reagents")):
+        rows = [row for row in entry.case.amounts.rows if row.role == role]
+        if rows:
+            facts.append(Fact(label, joined(row.name for row in rows), joined(map(_equivalents_of, rows))))
+    return facts
+
+
+def _equivalents_of(row: AmountRow) -> str:
+    return f"{equivalents_text(row.equivalents)} equiv" if row.equivalents is not None else ""
+
+
+def _solvent(record: Record, volume_l: float | None) -> Fact:
+    if record.neat:
+        return Fact("Solvent", "none (neat)")
+    names = joined(solvent.name for solvent in record.solvents)
+    typed = [quantity for solvent in record.solvents if (quantity := solvent.volume or solvent.fraction)]
+    shares = joined(map(quantity_text, typed), " + ")
+    alone = len(record.solvents) == 1 and volume_l is not None
+    return Fact("Solvent", names, shares if alone or len(record.solvents) > 1 else "")
+
+
+def _thermometers(stages: tuple[Stage, ...]) -> str:
+    where = dict.fromkeys(str(stage.measured) if stage.measured else "not stated where" for stage in stages)
+    return joined(f"measured: {place}" if place != "not stated where" else place for place in where)
+
+
+def _in_order(values: Iterable[str], *, fold: bool = True) -> str:
+    listed = list(values)
+    if fold and len(set(listed)) == 1:
+        return listed[0]
+    return joined(listed, " → ")
+
+
+def concentration(entry: Entry) -> Fact:
+    """Return the concentration of the substrate, and whether it was typed or derived."""
+    record, amounts = entry.record, entry.case.amounts
+    if record.concentration is not None:
+        return Fact("Concentration", quantity_text(record.concentration), "per solvent volume, typed")
+    if amounts.concentration_mol_per_l is None:
+        return Fact("Concentration", "" if record.neat else "not known")
+    return Fact("Concentration", concentration_text(amounts.concentration_mol_per_l), "per solvent volume, derived")
