@@ -70,7 +70,7 @@ def wrap(text: str, size: float, width: float) -> list[str]:
 
 def _words(paragraph: str) -> list[str]:
     """Split at spaces, except between a number and what it counts."""
-    return re.sub(r"(?<=\d)\s+(?=(?:%|°|[A-Za-zµ]{1,4}(?:/|\b)))", _NO_BREAK, paragraph).split(" ")
+    return re.sub(r"(?<=\d)\s+(?=(?:%|°|[A-Za-zµ]{1,5}(?:/|\b)))", _NO_BREAK, paragraph).split(" ")
 
 
 def _cut(word: str, size: float, width: float) -> list[str]:

@@ -5,13 +5,14 @@ only, no <style> and no style="…", so that a strict Content-Security-Policy ma
 """
 
 import re
-from collections.abc import Iterable, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass
 from itertools import zip_longest
-from typing import Literal
+from typing import Literal, NamedTuple
 
-from builder.chemistry.depict import LINE, PALETTE, PAPER, Box, Fragment, Marks, depict, format_number, palette_css
+from builder.chemistry.depict import LINE_WIDTH, Fragment, Marks, depict
 from builder.chemistry.lettering import CAP_HEIGHT_EM, FONT, svg_text, text_width, wrap
+from builder.chemistry.plane import Box, svg_number
 from builder.chemistry.structure import AtomId, Structure
 
 __all__ = [
@@ -23,7 +24,6 @@ __all__ = [
     "draw_scheme",
     "draw_structure",
     "lay_out",
-    "standalone",
 ]
 
 MEANING_OF_OUTLINES = {
@@ -35,8 +35,11 @@ MEANING_OF_OUTLINES = {
 
 TEXT_SIZE = 13.0
 LINE_HEIGHT = 16.0
+_DESCENT = 0.22 * TEXT_SIZE
+_LABEL_GAP = 6.0
 _DEFAULT_WIDTH = {"wide": 760.0, "tall": 340.0}
-_ARROW_TEXT_WIDTH = 176.0  # conditions wrap here
+_ARROW_TEXT_WIDTHS = (176.0, 230.0, 290.0)  # conditions wrap at the first of these that leaves few lines
+_FEW_LINES = 4
 _CAPTION_WIDTH = 124.0  # captions wrap here, or at the structure's own width
 _SHORTEST_ARROW = 64.0
 _GAP = 16.0  # beside plus signs and arrows
@@ -44,6 +47,7 @@ _ROW_GAP = 24.0
 _PADDING = 4.0
 _SHRINK_TO_ONE_ROW = (1.0, 0.92, 0.84)
 _SMALLEST_SCALE = 0.6
+_MOST_ROWS_BESIDE_AN_ARROW = 2
 
 SchemeLayout = Literal["wide", "tall"]
 """wide: rows, arrows to the right. tall: one column for a phone, arrows downwards."""
@@ -81,7 +85,7 @@ def draw_structure(compound: DrawnCompound, *, name: str, ident: str, descriptio
     return draw_scheme([[compound]], name=name, ident=ident, description=description)
 
 
-def draw_scheme(  # noqa: PLR0913 - all but the first by keyword
+def draw_scheme(
     steps: Sequence[Sequence[DrawnCompound] | Arrow],
     *,
     name: str,
@@ -105,95 +109,82 @@ def draw_scheme(  # noqa: PLR0913 - all but the first by keyword
     described = ". ".join(filter(None, [description.rstrip(". "), _legend(steps)]))
     desc = f'<desc id="{ident}-desc">{svg_text(described)}.</desc>' if described else ""
     refers = f' aria-describedby="{ident}-desc"' if described else ""
-    width, height = format_number(area.width), format_number(area.height)
+    width, height = svg_number(area.width), svg_number(area.height)
     return (
         f'<svg xmlns="http://www.w3.org/2000/svg" id="{ident}" class="hb-drawing hb-{layout}" role="img" '
         f'aria-labelledby="{ident}-title"{refers} width="{width}" height="{height}" '
-        f'viewBox="{format_number(area.left)} {format_number(area.top)} {width} {height}" fill="none" '
-        f'stroke="currentColor" stroke-width="{LINE}" stroke-linejoin="round" stroke-linecap="round" '
+        f'viewBox="{svg_number(area.left)} {svg_number(area.top)} {width} {height}" fill="none" '
+        f'stroke="currentColor" stroke-width="{LINE_WIDTH}" stroke-linejoin="round" stroke-linecap="round" '
         f'font-family="{FONT}"><title id="{ident}-title">{svg_text(name)}</title>{desc}'
         + "".join(item.markup() for item in placed)
         + "</svg>\n"
     )
 
 
-def standalone(svg: str) -> str:
-    """Return the drawing as a file of its own, which follows the reader's preference for light or dark."""
-    ident = re.search(r' id="([^"]+)"', svg)
-    scope = f"#{ident.group(1)}" if ident else "svg"
-    dark = f"color:{PALETTE['ink'].dark};{palette_css(dark=True)}"
-    style = (
-        f"<style>{scope}{{color-scheme:light dark;color:{PALETTE['ink'].light}}}"
-        f"@media (prefers-color-scheme:dark){{{scope}{{background:{PAPER.dark};{dark}}}}}</style>"
-    )
-    return svg.replace("<title", style + "<title", 1)
-
-
 # --- what stands where ------------------------------------------------------------------------------------
 
 
-@dataclass(frozen=True, slots=True)
-class Placed:
+class Placed(NamedTuple):
     """Something drawn at (x, y): a structure, a line of words, a plus sign or an arrow.
 
-    body: for words the escaped text, else markup around the origin. box: the room it takes, in px.
+    body: markup around the origin. box: the room it takes, in px.
     """
 
     kind: Literal["structure", "words", "plus", "arrow"]
     body: str
-    x: float
-    y: float
     box: Box
+    x: float = 0.0
+    y: float = 0.0
     scale: float = 1.0
-
-    def moved(self, dx: float, dy: float) -> "Placed":
-        """Return the same thing elsewhere."""
-        return replace(self, x=self.x + dx, y=self.y + dy, box=self.box.moved(dx, dy))
 
     def markup(self) -> str:
         """Return the SVG of this thing at its place."""
-        x, y = format_number(self.x), format_number(self.y)
+        at = f"{svg_number(self.x)} {svg_number(self.y)}"
         if self.kind == "words":
-            return (
-                f'<text x="{x}" y="{y}" font-size="{format_number(TEXT_SIZE)}" fill="currentColor" stroke="none"'
-                f"{self.body}</text>"
-            )
+            x, y = at.split(" ")
+            return f'<text x="{x}" y="{y}"{self.body}</text>'
         scale = f" scale({self.scale:.2f})" if self.scale != 1 else ""
-        return f'<g transform="translate({x} {y}){scale}">{self.body}</g>'
+        return f'<g transform="translate({at}){scale}">{self.body}</g>'
 
 
-@dataclass(frozen=True, slots=True)
-class _Block:
+class _Block(NamedTuple):
     """Things laid out together; y = 0 is the line on which arrows and plus signs stand."""
 
-    items: tuple[Placed, ...]
     box: Box
+    parts: "tuple[tuple[float, float, _Block | Placed], ...]"
 
-    @staticmethod
-    def of(items: Iterable[Placed]) -> "_Block":
-        every = tuple(items)
-        return _Block(every, Box.around(item.box for item in every))
+    def items(self, dx: float = 0.0, dy: float = 0.0) -> Iterator[Placed]:
+        """Yield everything in the block, at its place on the paper."""
+        for x, y, part in self.parts:
+            if isinstance(part, _Block):
+                yield from part.items(dx + x, dy + y)
+            else:
+                right, down = dx + x, dy + y
+                yield part._replace(x=part.x + right, y=part.y + down, box=part.box.moved(right, down))
 
-    def moved(self, dx: float, dy: float) -> "_Block":
-        return _Block(tuple(item.moved(dx, dy) for item in self.items), self.box.moved(dx, dy))
+
+def _block(parts: "Iterable[tuple[float, float, _Block | Placed]]") -> _Block:
+    every = tuple(parts)
+    return _Block(Box.around(part.box.moved(x, y) for x, y, part in every), every)
 
 
 def _side_by_side(blocks: Sequence[_Block], gap: float = _GAP) -> _Block:
-    edge, items = 0.0, []
+    edge, parts = 0.0, []
     for block in blocks:
-        items.append(block.moved(edge - block.box.left, 0))
+        parts.append((edge - block.box.left, 0.0, block))
         edge += block.box.width + gap
-    return _Block.of(item for block in items for item in block.items)
+    return _block(parts)
 
 
 def _stacked(blocks: Sequence[_Block], gap: float, *, centred: bool) -> _Block:
     """Return blocks below each other; the whole stands on y = 0 by its middle."""
-    edge, moved = 0.0, []
+    edge = -(sum(block.box.height for block in blocks) + gap * (len(blocks) - 1)) / 2
+    parts = []
     for block in blocks:
-        dx = -(block.box.left + block.box.right) / 2 if centred else -block.box.left
-        moved.append(block.moved(dx, edge - block.box.top))
+        dx = -block.box.middle[0] if centred else -block.box.left
+        parts.append((dx, edge - block.box.top, block))
         edge += block.box.height + gap
-    return _Block.of(item.moved(0, -(edge - gap) / 2) for block in moved for item in block.items)
+    return _block(parts)
 
 
 def lay_out(
@@ -204,9 +195,8 @@ def lay_out(
     width = max_width or _DEFAULT_WIDTH[layout]
     model = groups[0][0].structure
     drawn = [[_drawn(compound, model) for compound in group] for group in groups]
-    if layout == "tall":
-        return _tall(drawn, arrows, width).items
-    return _wide(drawn, arrows, width).items
+    scheme = _tall(drawn, arrows, width) if layout == "tall" else _wide(drawn, arrows, width)
+    return tuple(scheme.items())
 
 
 def _alternating(
@@ -235,27 +225,49 @@ def _drawn(compound: DrawnCompound, model: Structure) -> _Drawn:
 
 
 def _wide(groups: Sequence[Sequence[_Drawn]], arrows: Sequence[Arrow], width: float) -> _Block:
-    widest = max(fragment.box.width for group in groups for _, fragment in group)
-    most = max(_SMALLEST_SCALE, min(1.0, width / widest))
+    """Return everything in one row if it fits, a little smaller if need be; else in rows.
+
+    A row is broken after an arrow if the arrow still fits, else before it. Products stay beside their arrow if two
+    rows of them fit there.
+    """
     arrow_blocks = [_arrow_to_the_right(arrow) for arrow in arrows]
     for scale in _SHRINK_TO_ONE_ROW:
         row = _in_one_row([_row(group, scale) for group in groups], arrow_blocks)
         if row.box.width <= width:
             return row
+    scale = _scale_to_fit(groups, width)
     rows: list[_Block] = []
-    current = _compounds(groups[0], most, width, centred=False)
-    for index, arrow in enumerate(arrow_blocks):
-        group = groups[index + 1] if index + 1 < len(groups) else ()
-        room = width - current.box.width - arrow.box.width - 2 * _GAP
-        if room < 0 or (group and max(_cell(d, most).box.width for d in group) > room):
-            rows.append(current)
-            current = arrow
-            room = width - arrow.box.width - _GAP
+    current = _compounds(groups[0], scale, width, centred=False)
+    for arrow, group in zip_longest(arrow_blocks, groups[1:], fillvalue=()):
+        if not isinstance(arrow, _Block):
+            raise AssertionError("more compounds than arrows")  # noqa: TRY004 - excluded by _alternating
+        with_arrow = _side_by_side([current, arrow])
+        room = width - with_arrow.box.width - _GAP
+        if group and _rows_needed(group, scale, room) <= _MOST_ROWS_BESIDE_AN_ARROW:
+            current = _side_by_side([with_arrow, _compounds(group, scale, room, centred=False)])
+            continue
+        if room > -_GAP:
+            rows.append(with_arrow)
+            current = _compounds(group, scale, width, centred=False) if group else _EMPTY
         else:
-            current = _side_by_side([current, arrow])
-        if group:
-            current = _side_by_side([current, _compounds(group, most, room, centred=False)])
-    return _stacked([*rows, current], _ROW_GAP, centred=False)
+            rows.append(current)
+            room = width - arrow.box.width - _GAP
+            current = _side_by_side([arrow, _compounds(group, scale, room, centred=False)]) if group else arrow
+    return _stacked([row for row in [*rows, current] if row.parts], _ROW_GAP, centred=False)
+
+
+_EMPTY = _Block(Box(0, 0, 0, 0), ())
+
+
+def _scale_to_fit(groups: Sequence[Sequence[_Drawn]], width: float) -> float:
+    widest = max(fragment.box.width for group in groups for _, fragment in group)
+    return max(_SMALLEST_SCALE, min(1.0, width / widest))
+
+
+def _rows_needed(group: Sequence[_Drawn], scale: float, width: float) -> int:
+    if any(_cell(drawn, scale).box.width > width for drawn in group):
+        return len(group) + _MOST_ROWS_BESIDE_AN_ARROW
+    return len(_broken_into_rows(group, scale, width))
 
 
 def _in_one_row(groups: Sequence[_Block], arrows: Sequence[_Block]) -> _Block:
@@ -263,8 +275,7 @@ def _in_one_row(groups: Sequence[_Block], arrows: Sequence[_Block]) -> _Block:
 
 
 def _tall(groups: Sequence[Sequence[_Drawn]], arrows: Sequence[Arrow], width: float) -> _Block:
-    widest = max(fragment.box.width for group in groups for _, fragment in group)
-    scale = max(_SMALLEST_SCALE, min(1.0, width / widest))
+    scale = _scale_to_fit(groups, width)
     blocks = [_compounds(group, scale, width, centred=True) for group in groups]
     downwards = [_arrow_downwards(arrow, width) for arrow in arrows]
     column = [block for pair in zip_longest(blocks, downwards) for block in pair if block]
@@ -274,46 +285,50 @@ def _tall(groups: Sequence[Sequence[_Drawn]], arrows: Sequence[Arrow], width: fl
 # --- compounds --------------------------------------------------------------------------------------------
 
 
-def _words(line: str, x: float, baseline: float, anchor: str, bold: str = "") -> Placed:
-    """Return a line of text at its anchor ("start" or "middle"); `bold` is set before it."""
-    size = TEXT_SIZE
-    wide = _line_width(line, bold)
-    left = x if anchor == "start" else x - wide / 2
-    box = Box(left, baseline - CAP_HEIGHT_EM * size, left + wide, baseline + 0.22 * size)
-    middle = ' text-anchor="middle"' if anchor == "middle" else ""
-    strong = f'<tspan font-weight="700">{svg_text(bold)}</tspan>' if bold else ""
-    between = " " if bold and line else ""
-    return Placed("words", f"{middle}>{strong}{between}{svg_text(line)}", x, baseline, box)
-
-
-def _line_width(line: str, bold: str = "") -> float:
-    between = " " if bold and line else ""
-    return text_width(bold, TEXT_SIZE, bold=True) + text_width(between + line, TEXT_SIZE)
+def _words(
+    text: str, x: float, baseline: float, anchor: Literal["start", "middle", "end"], *, bold: bool = False
+) -> Placed:
+    """Return a line of text at its anchor."""
+    width = text_width(text, TEXT_SIZE, bold=bold)
+    left = x - width * {"start": 0.0, "middle": 0.5, "end": 1.0}[anchor]
+    box = Box(left, baseline - CAP_HEIGHT_EM * TEXT_SIZE, left + width, baseline + _DESCENT)
+    style = "" if anchor == "start" else f' text-anchor="{anchor}"'
+    if bold:
+        style += ' font-weight="700"'
+    body = f' font-size="{svg_number(TEXT_SIZE)}"{style} fill="currentColor" stroke="none">{svg_text(text)}'
+    return Placed("words", body, box, x, baseline)
 
 
 def _cell(drawn: _Drawn, scale: float, captions_from: float | None = None) -> _Block:
     """Return a structure, middle on (0, 0), with label and caption below it."""
     compound, fragment = drawn
-    box = fragment.box
-    x, y = -(box.left + box.right) / 2 * scale, -(box.top + box.bottom) / 2 * scale
-    items = [Placed("structure", fragment.markup, x, y, box.moved(x, y, scale), scale)]
-    top = captions_from if captions_from is not None else box.height * scale / 2
-    items += _caption(compound, max(box.width * scale, _CAPTION_WIDTH), top + 8.0)
-    return _Block.of(items)
+    box = fragment.box.scaled(scale)
+    x, y = -box.middle[0], -box.middle[1]
+    structure = Placed("structure", fragment.markup, box.moved(x, y), x, y, scale)
+    top = captions_from if captions_from is not None else box.height / 2
+    words = _caption(compound, max(box.width, _CAPTION_WIDTH), top + 8.0)
+    return _block((0.0, 0.0, item) for item in [structure, *words])
 
 
 def _caption(compound: DrawnCompound, width: float, top: float) -> list[Placed]:
-    lines = wrap(compound.caption, TEXT_SIZE, width)
-    label = compound.label
-    if lines and label and _line_width(lines[0], label) > width:
-        lines.insert(0, "")
-    texts = [(line, label if not index else "") for index, line in enumerate(lines or [""])]
-    first = top + CAP_HEIGHT_EM * TEXT_SIZE
-    return [
-        _words(line, 0, first + index * LINE_HEIGHT, "middle", bold)
-        for index, (line, bold) in enumerate(texts)
-        if line or bold
-    ]
+    """Return the label and, beside it if there is room, the caption; each line is centred."""
+    label, lines = compound.label, wrap(compound.caption, TEXT_SIZE, width)
+    wide = text_width(label, TEXT_SIZE, bold=True)
+    between = _LABEL_GAP if label and lines else 0.0
+    words = []
+    baseline = top + CAP_HEIGHT_EM * TEXT_SIZE
+    if label and lines and wide + between + text_width(lines[0], TEXT_SIZE) <= width:
+        seam = (wide + between - text_width(lines[0], TEXT_SIZE)) / 2
+        words += [
+            _words(label, seam - between, baseline, "end", bold=True),
+            _words(lines.pop(0), seam, baseline, "start"),
+        ]
+        baseline += LINE_HEIGHT
+    elif label:
+        words.append(_words(label, 0, baseline, "middle", bold=True))
+        baseline += LINE_HEIGHT
+    words += [_words(line, 0, baseline + i * LINE_HEIGHT, "middle") for i, line in enumerate(lines)]
+    return words
 
 
 def _row(group: Sequence[_Drawn], scale: float, *, goes_on: bool = False) -> _Block:
@@ -322,24 +337,38 @@ def _row(group: Sequence[_Drawn], scale: float, *, goes_on: bool = False) -> _Bl
     blocks: list[_Block] = []
     for index, drawn in enumerate(group):
         if index or goes_on:
-            blocks.append(_Block.of([_PLUS]))
+            blocks.append(_PLUS)
         blocks.append(_cell(drawn, scale, lowest))
     return _side_by_side(blocks, _GAP * 0.75)
 
 
-def _compounds(group: Sequence[_Drawn], scale: float, width: float, *, centred: bool) -> _Block:
-    """Return compounds in as many rows as the width asks for."""
+def _broken_into_rows(group: Sequence[_Drawn], scale: float, width: float) -> list[list[_Drawn]]:
     rows: list[list[_Drawn]] = []
     for drawn in group:
         if rows and _row([*rows[-1], drawn], scale, goes_on=len(rows) > 1).box.width <= width:
             rows[-1].append(drawn)
         else:
             rows.append([drawn])
-    blocks = [_row(row, scale, goes_on=index > 0) for index, row in enumerate(rows)]
-    return blocks[0] if len(blocks) == 1 else _stacked(blocks, _ROW_GAP * 0.75, centred=centred)
+    return rows
 
 
-_PLUS = Placed("plus", '<path d="M-5 0H5M0 -5V5"/>', 0, 0, Box(-6, -6, 6, 6))
+def _compounds(group: Sequence[_Drawn], scale: float, width: float, *, centred: bool) -> _Block:
+    """Return compounds in as many rows as the width asks for, rows of about one length."""
+    rows = _broken_into_rows(group, scale, width)
+    if len(rows) == 1:
+        return _row(rows[0], scale)
+    for share in _NARROWER:
+        even = _broken_into_rows(group, scale, width * share)
+        if len(even) > len(rows):
+            break
+        rows = even
+    return _stacked(
+        [_row(row, scale, goes_on=index > 0) for index, row in enumerate(rows)], _ROW_GAP * 0.75, centred=centred
+    )
+
+
+_NARROWER = (0.9, 0.8, 0.7, 0.6, 0.5)
+_PLUS = _block([(0.0, 0.0, Placed("plus", '<path d="M-5 0H5M0 -5V5"/>', Box(-6, -6, 6, 6)))])
 
 
 # --- arrows -----------------------------------------------------------------------------------------------
@@ -348,40 +377,45 @@ _CROSS = "M{0} {1}l10 10m0 -10l-10 10"
 
 
 def _arrow_to_the_right(arrow: Arrow) -> _Block:
-    above, below = (_conditions(lines, _ARROW_TEXT_WIDTH) for lines in (arrow.above, arrow.below))
+    above, below = (_conditions(lines, _ARROW_TEXT_WIDTHS) for lines in (arrow.above, arrow.below))
     length = max([_SHORTEST_ARROW, *(text_width(line, TEXT_SIZE) + 14 for line in [*above, *below])])
     middle = length / 2
-    shaft = f'<path d="M0 0H{format_number(length - 1)}"{_dashes(arrow)}/>'
-    tip = format_number(length)
-    head = f'<path d="M{format_number(length - 8)} -4.5L{tip} 0L{format_number(length - 8)} 4.5"/>'
-    cross = f'<path d="{_CROSS.format(format_number(middle - 5), -5)}"/>' if arrow.failed else ""
-    line = Placed("arrow", shaft + head + cross, 0, 0, Box(0, -6, length, 6))
-    last_above = -9.0 - 0.22 * TEXT_SIZE
+    shaft = f'<path d="M0 0H{svg_number(length - 1)}"{_dashes(arrow)}/>'
+    tip = svg_number(length)
+    head = f'<path d="M{svg_number(length - 8)} -4.5L{tip} 0L{svg_number(length - 8)} 4.5"/>'
+    cross = f'<path d="{_CROSS.format(svg_number(middle - 5), -5)}"/>' if arrow.failed else ""
+    line = Placed("arrow", shaft + head + cross, Box(0, -6, length, 6))
+    last_above = -9.0 - _DESCENT
     first_below = 10.0 + CAP_HEIGHT_EM * TEXT_SIZE
-    return _Block.of(
-        [
-            line,
-            *(_words(t, middle, last_above - i * LINE_HEIGHT, "middle") for i, t in enumerate(reversed(above))),
-            *(_words(t, middle, first_below + i * LINE_HEIGHT, "middle") for i, t in enumerate(below)),
-        ]
-    )
+    words = [
+        *(_words(t, middle, last_above - i * LINE_HEIGHT, "middle") for i, t in enumerate(reversed(above))),
+        *(_words(t, middle, first_below + i * LINE_HEIGHT, "middle") for i, t in enumerate(below)),
+    ]
+    return _block((0.0, 0.0, item) for item in [line, *words])
 
 
 def _arrow_downwards(arrow: Arrow, width: float) -> _Block:
-    lines = _conditions((*arrow.above, *arrow.below), min(width - 30, 1.4 * _ARROW_TEXT_WIDTH))
+    lines = _conditions((*arrow.above, *arrow.below), (width - 30,))
     tall = len(lines) * LINE_HEIGHT
     length = max(44.0, tall + 8)
-    shaft = f'<path d="M0 0V{format_number(length - 1)}"{_dashes(arrow)}/>'
-    tip, barb = format_number(length), format_number(length - 8)
+    shaft = f'<path d="M0 0V{svg_number(length - 1)}"{_dashes(arrow)}/>'
+    tip, barb = svg_number(length), svg_number(length - 8)
     head = f'<path d="M-4.5 {barb}L0 {tip}L4.5 {barb}"/>'
-    cross = f'<path d="{_CROSS.format(-5, format_number(length / 2 - 5))}"/>' if arrow.failed else ""
-    line = Placed("arrow", shaft + head + cross, 0, 0, Box(-6, 0, 6, length))
+    cross = f'<path d="{_CROSS.format(-5, svg_number(length / 2 - 5))}"/>' if arrow.failed else ""
+    line = Placed("arrow", shaft + head + cross, Box(-6, 0, 6, length))
     first = (length - tall) / 2 + LINE_HEIGHT / 2 + CAP_HEIGHT_EM * TEXT_SIZE / 2
-    return _Block.of([line, *(_words(t, 16, first + i * LINE_HEIGHT, "start") for i, t in enumerate(lines))])
+    words = (_words(text, 16, first + i * LINE_HEIGHT, "start") for i, text in enumerate(lines))
+    return _block((0.0, 0.0, item) for item in [line, *words])
 
 
-def _conditions(lines: Iterable[str], width: float) -> list[str]:
-    return [piece for line in lines for piece in wrap(line, TEXT_SIZE, width)]
+def _conditions(lines: Iterable[str], widths: Sequence[float]) -> list[str]:
+    """Return the lines, wrapped at the first width that gives few enough of them, else at the last."""
+    wrapped: list[str] = []
+    for width in widths:
+        wrapped = [piece for line in lines for piece in wrap(line, TEXT_SIZE, width)]
+        if len(wrapped) <= _FEW_LINES:
+            break
+    return wrapped
 
 
 def _dashes(arrow: Arrow) -> str:

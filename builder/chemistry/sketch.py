@@ -1,0 +1,404 @@
+"""Sketch: a structure on paper as plain data: atoms, bonds, places, wedges. The only RDKit of the drawings.
+
+Only the coordinate code of RDKit is used, none of its drawing code, so no X libraries are needed. Stereo follows
+the IUPAC recommendations for graphical representation (Pure Appl. Chem. 2006, 78, 1897; 2008, 80, 277): plain
+wedges with the narrow end at the stereocentre, no stereo at other atoms, an undefined centre drawn plain, a
+double bond by its geometry, an undefined double bond with one wavy single bond.
+"""
+
+from cmath import phase
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+from enum import StrEnum
+from functools import lru_cache
+from math import pi, tau
+from typing import NamedTuple
+
+from rdkit import Chem
+from rdkit.Chem import rdDepictor
+from rdkit.Geometry import Point3D
+
+from builder.chemistry.plane import Point
+from builder.chemistry.structure import AtomId, Structure
+
+__all__ = ["Line", "Sketch", "SketchAtom", "SketchBond", "connected", "mol_block", "sketch"]
+
+_RDKIT_BOND_LENGTH = 1.5
+
+
+class Line(StrEnum):
+    """How a bond is drawn; wedges and hashes start at the first atom of the bond."""
+
+    PLAIN = "plain"
+    WEDGE = "wedge"
+    HASH = "hash"
+    WAVY = "wavy"
+
+
+class SketchAtom(NamedTuple):
+    """One atom: what its letters are made of."""
+
+    symbol: str
+    charge: int
+    isotope: int
+    hydrogens: int
+    radicals: int
+    neighbours: tuple[int, ...]
+    piece: int
+
+
+class SketchBond(NamedTuple):
+    """One bond. ring: the atoms of the ring into which a double bond leans; empty outside rings."""
+
+    a: int
+    b: int
+    order: int
+    line: Line
+    ring: tuple[int, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Sketch:
+    """A structure on paper. Atoms are in the structure's order, then the hydrogens that carry wedges.
+
+    places: in bond lengths, y upwards.
+    """
+
+    atoms: tuple[SketchAtom, ...]
+    bonds: tuple[SketchBond, ...]
+    places: tuple[Point, ...]
+
+
+@lru_cache(maxsize=4096)
+def sketch(structure: Structure, model: Structure | None = None) -> Sketch:
+    """Return the structure on paper; with a `model`, turned so that the carbon skeleton they share lies alike."""
+    mol = _laid_out(structure) if model is None or model == structure else _turned_like(structure, model)
+    places = _complex_places(mol)
+    wavy = _wavy_bonds(mol)
+    wedges = _wedges(mol, places)
+    pieces = {atom: number for number, piece in enumerate(Chem.GetMolFrags(mol)) for atom in piece}
+    rings = [(frozenset(ring), ring) for ring in mol.GetRingInfo().AtomRings()]
+    neighbours: list[list[int]] = [[] for _ in range(mol.GetNumAtoms())]
+    ends = []
+    for bond in mol.GetBonds():
+        a, b = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
+        neighbours[a].append(b)
+        neighbours[b].append(a)
+        line = Line.WAVY if bond.GetIdx() in wavy else Line.PLAIN
+        if bond.GetIdx() in wedges:
+            a, line = wedges[bond.GetIdx()]
+            b = bond.GetOtherAtomIdx(a)
+        ends.append((a, b, _ORDERS.get(bond.GetBondType(), 1), line))
+    doubles = [frozenset((a, b)) for a, b, order, _ in ends if order == 2]
+    atoms = tuple(
+        SketchAtom(
+            symbol=atom.GetSymbol(),
+            charge=atom.GetFormalCharge(),
+            isotope=atom.GetIsotope(),
+            hydrogens=atom.GetTotalNumHs(),
+            radicals=atom.GetNumRadicalElectrons(),
+            neighbours=tuple(neighbours[index]),
+            piece=pieces[index],
+        )
+        for index, atom in enumerate(mol.GetAtoms())
+    )
+    bonds = tuple(
+        SketchBond(a, b, order, line, _ring_to_lean_into(a, b, rings, doubles) if order == 2 else ())
+        for a, b, order, line in ends
+    )
+    return Sketch(atoms, bonds, tuple((z.real / _RDKIT_BOND_LENGTH, z.imag / _RDKIT_BOND_LENGTH) for z in places))
+
+
+def mol_block(drawn: Sketch, title: str = "") -> str:
+    """Return a sketch as a V2000 mol block: places in bond lengths, wedges and wavy bonds as drawn."""
+    lines = [title, "  handbook          2D", ""]
+    lines.append(f"{len(drawn.atoms):3d}{len(drawn.bonds):3d}  0  0  1  0  0  0  0  0999 V2000")
+    lines += [
+        f"{x:10.4f}{y:10.4f}{0:10.4f} {atom.symbol:<3} 0  0  0  0  0  0  0  0  0  0  0  0"
+        for atom, (x, y) in zip(drawn.atoms, drawn.places, strict=True)
+    ]
+    lines += [f"{b.a + 1:3d}{b.b + 1:3d}{b.order:3d}{_MOL_BLOCK_STEREO[b.line]:3d}" for b in drawn.bonds]
+    for tag, field in (("CHG", "charge"), ("ISO", "isotope"), ("RAD", "radicals")):
+        lines += [
+            f"M  {tag}  1 {index:3d} {getattr(atom, field) + (tag == 'RAD'):3d}"
+            for index, atom in enumerate(drawn.atoms, start=1)
+            if getattr(atom, field)
+        ]
+    return "\n".join([*lines, "M  END", ""])
+
+
+_MOL_BLOCK_STEREO = {Line.PLAIN: 0, Line.WEDGE: 1, Line.HASH: 6, Line.WAVY: 4}
+_ORDERS = {Chem.BondType.DOUBLE: 2, Chem.BondType.TRIPLE: 3}
+
+
+def _ring_to_lean_into(
+    a: int, b: int, rings: Iterable[tuple[frozenset[int], tuple[int, ...]]], doubles: Sequence[frozenset[int]]
+) -> tuple[int, ...]:
+    """Return the ring through a double bond with most double bonds, then the smallest; none of nine or more."""
+    mine = [(members, ring) for members, ring in rings if a in members and b in members and len(ring) < 9]
+    return min(
+        mine, key=lambda m: (-sum(double <= m[0] for double in doubles), len(m[1]), m[1]), default=(frozenset(), ())
+    )[1]
+
+
+# --- coordinates ------------------------------------------------------------------------------------------
+
+
+@lru_cache(maxsize=4096)
+def _laid_out(structure: Structure) -> Chem.Mol:
+    """Return a kekulised copy with 2D coordinates, bonds straightened.
+
+    A stereocentre whose three neighbours all stand in rings gets its hydrogen drawn, so that the wedge need not
+    lie in a ring.
+    """
+    mol = Chem.Mol(structure.mol)
+    fused = [
+        atom.GetIdx()
+        for atom in mol.GetAtoms()
+        if atom.GetChiralTag() != _NOT_CHIRAL
+        and atom.GetTotalNumHs() == 1
+        and atom.GetDegree() == 3
+        and all(bond.IsInRing() for bond in atom.GetBonds())
+    ]
+    if fused:
+        mol = Chem.AddHs(mol, onlyOnAtoms=fused)
+    Chem.Kekulize(mol, clearAromaticFlags=True)
+    rdDepictor.Compute2DCoords(mol, canonOrient=True, useRingTemplates=True)
+    rdDepictor.NormalizeDepiction(mol, scaleFactor=-1.0)
+    rdDepictor.StraightenDepiction(mol)
+    _turn_as_is_customary(mol)
+    return mol
+
+
+_NOT_CHIRAL = Chem.ChiralType.CHI_UNSPECIFIED
+_GONANE = Chem.MolFromSmarts(
+    "[#6]1~[#6]~[#6]~[#6]2~[#6](~[#6]~1)~[#6]~[#6]~[#6]1~[#6]~2~[#6]~[#6]~[#6]2~[#6]~[#6]~[#6]~[#6]~1~2"
+)
+_GONANE_C10, _GONANE_C5, _GONANE_C13 = 3, 4, 12
+
+
+def _turn_as_is_customary(mol: Chem.Mol) -> None:
+    """Turn a steroid skeleton so that ring A lies lower left and ring D upper right, C10 above C5."""
+    if mol.GetRingInfo().NumRings() < 4:
+        return
+    match = mol.GetSubstructMatch(_GONANE)
+    if not match:
+        return
+    at = _complex_places(mol)
+    up = at[match[_GONANE_C10]] - at[match[_GONANE_C5]]
+    along = at[match[_GONANE_C13]] - at[match[_GONANE_C10]]
+    flip = (up.conjugate() * along).imag > 0
+    _turn(mol, 0j, flip, 1j / (up.conjugate() if flip else up) * abs(up))
+
+
+def _turned_like(structure: Structure, model: Structure) -> Chem.Mol:
+    """Return the laid-out structure turned, and if need be flipped, onto the skeleton shared with `model`."""
+    mol = _laid_out(structure)
+    pairs = _shared_atoms(structure, model)
+    if not pairs:
+        return mol
+    mine, theirs = _complex_places(mol), _complex_places(_laid_out(model))
+    moved, fixed = [mine[i] for i, _ in pairs], [theirs[j] for _, j in pairs]
+    centre, goal = sum(moved) / len(moved), sum(fixed) / len(fixed)
+    fits = []
+    for flip in (False, True):
+        around = [(z - centre).conjugate() if flip else z - centre for z in moved]
+        turn = sum((g - goal) * z.conjugate() for z, g in zip(around, fixed, strict=True))
+        turn = turn / abs(turn) if abs(turn) > 1e-6 else 1 + 0j
+        error = sum(abs(z * turn - (g - goal)) ** 2 for z, g in zip(around, fixed, strict=True))
+        fits.append((round(error, 3), flip, turn))
+    _, flip, turn = min(fits, key=lambda fit: fit[:2])
+    turned = Chem.Mol(mol)
+    _turn(turned, centre, flip, turn)
+    rdDepictor.StraightenDepiction(turned)
+    return turned
+
+
+def _complex_places(mol: Chem.Mol) -> list[complex]:
+    return [complex(x, y) for x, y, _ in mol.GetConformer().GetPositions().tolist()]
+
+
+def _turn(mol: Chem.Mol, centre: complex, flip: bool, turn: complex) -> None:
+    """Move `centre` to the origin, mirror the paper about the x axis if asked, then turn."""
+    conformer = mol.GetConformer()
+    for index, place in enumerate(_complex_places(mol)):
+        z = (place - centre).conjugate() if flip else place - centre
+        z *= turn
+        conformer.SetAtomPosition(index, Point3D(z.real, z.imag, 0.0))
+
+
+@lru_cache(maxsize=4096)
+def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[AtomId, AtomId], ...]:
+    """Return pairs (atom of structure, atom of model) of the largest carbon skeleton of the model found in both."""
+    for skeleton, query, wanted in _carbon_skeletons(model):
+        matches = structure.mol.GetSubstructMatches(query, uniquify=False, maxMatches=64)
+        if matches:
+            degrees = [atom.GetDegree() for atom in structure.mol.GetAtoms()]
+            best = min(matches, key=lambda m: (sum(abs(degrees[i] - d) for i, d in zip(m, wanted, strict=True)), m))
+            return tuple(zip(best, skeleton, strict=True))
+    return ()
+
+
+@lru_cache(maxsize=1024)
+def _carbon_skeletons(structure: Structure) -> tuple[tuple[tuple[AtomId, ...], Chem.Mol, tuple[int, ...]], ...]:
+    """Return the sets of carbons joined by carbon-carbon bonds, largest first, as query, with their degrees."""
+    mol = structure.mol
+    neighbours = [[n.GetIdx() for n in atom.GetNeighbors()] for atom in mol.GetAtoms()]
+    left = {atom.GetIdx() for atom in mol.GetAtoms() if atom.GetAtomicNum() == 6}
+    found = []
+    while left:
+        piece = connected(min(left), left, neighbours)
+        left -= piece
+        if len(piece) > 1:
+            atoms = tuple(sorted(piece))
+            found.append((atoms, _skeleton_query(atoms, neighbours), tuple(len(neighbours[i]) for i in atoms)))
+    return tuple(sorted(found, key=lambda f: (-len(f[0]), f[0])))
+
+
+def _skeleton_query(atoms: Sequence[AtomId], neighbours: Sequence[Sequence[AtomId]]) -> Chem.Mol:
+    query = Chem.RWMol()
+    place = {atom: query.AddAtom(_ANY_CARBON) for atom in atoms}
+    for atom in atoms:
+        for other in neighbours[atom]:
+            if other in place and atom < other:
+                count = query.AddBond(place[atom], place[other], Chem.BondType.SINGLE)
+                query.ReplaceBond(count - 1, _ANY_BOND)
+    return query.GetMol()
+
+
+_ANY_CARBON = Chem.AtomFromSmarts("[#6]")
+_ANY_BOND = Chem.BondFromSmarts("~")
+
+
+def connected(start: int, within: Iterable[int], neighbours: Sequence[Sequence[int]]) -> set[int]:
+    """Return the atoms reached from `start` without leaving `within`."""
+    allowed, seen, waiting = set(within), {start}, [start]
+    while waiting:
+        for other in neighbours[waiting.pop()]:
+            if other in allowed and other not in seen:
+                seen.add(other)
+                waiting.append(other)
+    return seen
+
+
+# --- stereo -----------------------------------------------------------------------------------------------
+
+
+def _wedges(mol: Chem.Mol, places: Sequence[complex]) -> dict[int, tuple[int, Line]]:
+    """Return, by bond, the stereocentre at which a wedge starts, and which wedge it is."""
+    centres = {atom.GetIdx(): atom for atom in mol.GetAtoms() if atom.GetChiralTag() in _TETRAHEDRAL}
+    chosen: dict[int, tuple[int, Line]] = {}
+    options = {index: _bonds_to_wedge(atom, centres, places) for index, atom in centres.items()}
+    # Those with least choice go first, so that no centre is left without a bond.
+    for index in sorted(options, key=lambda i: (sum(cost < _POOR for cost, _ in options[i]), i)):
+        free = [option for option in options[index] if option[1] not in chosen]
+        if free:
+            bond = min(free)[1]
+            chosen[bond] = (index, _wedge_or_hash(centres[index], bond, places))
+    return chosen
+
+
+_TETRAHEDRAL = (Chem.ChiralType.CHI_TETRAHEDRAL_CW, Chem.ChiralType.CHI_TETRAHEDRAL_CCW)
+_POOR = (1, 0)
+
+
+def _bonds_to_wedge(
+    centre: Chem.Atom, centres: Iterable[int], places: Sequence[complex]
+) -> list[tuple[tuple[int, ...], int]]:
+    """Return (cost, bond) for each bond at a stereocentre.
+
+    Best is a bond to a hydrogen or a heteroatom outside rings: there the eye looks for inversion. Bad are bonds
+    to another stereocentre, and bonds between two others that leave more than half the plane empty, which
+    readers take for the opposite.
+    """
+    here = centre.GetIdx()
+    costs = []
+    for bond in centre.GetBonds():
+        other = bond.GetOtherAtom(centre)
+        rest = [places[n.GetIdx()] - places[here] for n in centre.GetNeighbors() if n.GetIdx() != other.GetIdx()]
+        ray = places[other.GetIdx()] - places[here]
+        cost = (
+            _is_ambiguous(ray, rest),
+            other.GetIdx() in centres,
+            bond.GetBondType() != Chem.BondType.SINGLE,
+            bond.IsInRing(),
+            other.GetAtomicNum() != 1 and other.GetAtomicNum() == 6,
+            other.GetDegree(),
+        )
+        costs.append((tuple(int(c) for c in cost), bond.GetIdx()))
+    return costs
+
+
+def _is_ambiguous(ray: complex, rest: Sequence[complex]) -> bool:
+    """Answer whether a wedge along `ray` reads either way, given the other bonds at the centre."""
+    angles = sorted(phase(z / ray) % tau for z in rest)
+    if len(rest) == 2:
+        # Both others within less than half a turn about the wedge, one on each side of it.
+        return angles[1] - angles[0] > pi + _SLACK and angles[0] < pi < angles[1]
+    gaps = [(b - a) % tau for a, b in zip(angles, [*angles[1:], angles[0]], strict=True)]
+    return max(gaps) > pi + _SLACK
+
+
+_SLACK = 0.05  # radian
+
+
+def _wedge_or_hash(centre: Chem.Atom, bond: int, places: Sequence[complex]) -> Line:
+    """Return the wedge that gives the centre its configuration.
+
+    The chirality tag says how the second and later neighbours turn, seen from the first; a hydrogen that is not
+    drawn counts as the last.
+    """
+    here = places[centre.GetIdx()]
+    around = [(b.GetIdx(), places[b.GetOtherAtomIdx(centre.GetIdx())] - here) for b in centre.GetBonds()]
+    ahead = next(z for index, z in around if index == bond)
+    others = [(phase(z / ahead) % tau, place) for place, (index, z) in enumerate(around) if index != bond]
+    first = next(place for place, (index, _) in enumerate(around) if index == bond)
+    turning = [place for _, place in sorted(others)]
+    # Seen from the wedge, towards the reader, the others turn anticlockwise in this order; the hydrogen that is
+    # not drawn lies in the widest gap between bonds, which a wedge from an unambiguous bond leaves behind it.
+    order = [first, *turning, 3] if len(around) == 3 else [first, *turning]
+    anticlockwise = _is_even(order)
+    wanted = centre.GetChiralTag() == Chem.ChiralType.CHI_TETRAHEDRAL_CCW
+    return Line.WEDGE if anticlockwise == wanted else Line.HASH
+
+
+def _is_even(order: Sequence[int]) -> bool:
+    return sum(a > b for i, a in enumerate(order) for b in order[i + 1 :]) % 2 == 0
+
+
+def _wavy_bonds(mol: Chem.Mol) -> set[int]:
+    """Return one single bond for each double bond that could be E or Z and is neither."""
+    if not any(_may_be_undefined(bond) for bond in mol.GetBonds()):
+        return set()
+    wavy = set()
+    for info in Chem.FindPotentialStereo(Chem.Mol(mol), cleanIt=False, flagPossible=True):
+        if info.type == Chem.StereoType.Bond_Double and info.specified != Chem.StereoSpecified.Specified:
+            bond = mol.GetBondWithIdx(info.centeredOn)
+            if _may_be_undefined(bond):
+                wavy |= _single_bond_beside(bond)
+    return wavy
+
+
+def _may_be_undefined(bond: Chem.Bond) -> bool:
+    """Answer whether a double bond has no configuration drawn and is not cumulated, as in allenes and azides."""
+    if bond.GetBondType() != Chem.BondType.DOUBLE or bond.GetStereo() not in _NOT_DRAWN:
+        return False
+    ends = (bond.GetBeginAtom(), bond.GetEndAtom())
+    return all(
+        end.GetDegree() > 1 and sum(b.GetBondType() == Chem.BondType.DOUBLE for b in end.GetBonds()) == 1
+        for end in ends
+    )
+
+
+_NOT_DRAWN = (Chem.BondStereo.STEREONONE, Chem.BondStereo.STEREOANY)
+
+
+def _single_bond_beside(double: Chem.Bond) -> set[int]:
+    """Return the single bond beside a double bond that is best drawn wavy: outside rings, to a small neighbour."""
+    candidates = [
+        (bond.IsInRing(), bond.GetOtherAtom(end).GetDegree(), bond.GetIdx())
+        for end in (double.GetBeginAtom(), double.GetEndAtom())
+        for bond in end.GetBonds()
+        if bond.GetBondType() == Chem.BondType.SINGLE and bond.GetOtherAtom(end).GetChiralTag() == _NOT_CHIRAL
+    ]
+    return {min(candidates)[-1]} if candidates else set()
