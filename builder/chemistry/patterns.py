@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from enum import StrEnum
 from functools import cache
 from importlib import resources
+from math import isfinite
 
 from rdkit import Chem
 
@@ -26,6 +27,9 @@ __all__ = [
     "load_attack_patterns",
     "load_class_patterns",
     "load_leaving_groups",
+    "parse_attack_patterns",
+    "parse_class_patterns",
+    "parse_leaving_groups",
     "read_table",
 ]
 
@@ -120,13 +124,16 @@ class ActivationPattern:
     source: str
 
 
-def read_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
-    """Yield the rows of a table beside this module, comment lines left out.
+def _text(name: str) -> str:
+    return resources.files(__package__).joinpath(name).read_text("utf-8")
 
-    Raises ValueError for a wrong header, a blank cell or an unknown source.
+
+def read_table(name: str, text: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
+    """Yield the rows of a table, comment lines left out.
+
+    Raises ValueError for a wrong header, a blank cell or an unknown source; `name` is for the message.
     """
-    lines = resources.files(__package__).joinpath(name).read_text("utf-8").splitlines()
-    rows = [line.split("\t") for line in lines if line and not line.startswith("#")]
+    rows = [line.split("\t") for line in text.splitlines() if line and not line.startswith("#")]
     if not rows or tuple(rows[0]) != columns:
         raise ValueError(f"{name}: the header must read {' '.join(columns)}")
     for cells in rows[1:]:
@@ -155,6 +162,13 @@ def _compile(name: str, smarts: str, numbers: set[int]) -> Query:
     return Query(mol, places, dict(elements), signs)
 
 
+def _finite(name: str, number: str) -> float:
+    value = float(number)
+    if not isfinite(value):
+        raise ValueError(f"{name}: {number} is no finite number")
+    return value
+
+
 def _yes_or_no(name: str, word: str) -> bool:
     if word not in {"yes", "no"}:
         raise ValueError(f"{name}: {word} is neither yes nor no")
@@ -170,16 +184,24 @@ def _unique(name: str, keys: list[str]) -> None:
 @cache
 def load_leaving_groups() -> tuple[LeavingGroupPattern, ...]:
     """Return the leaving groups in table order: of two rows that fit, the first names the group."""
+    return parse_leaving_groups(_text("leaving_groups.tsv"))
+
+
+def parse_leaving_groups(text: str) -> tuple[LeavingGroupPattern, ...]:
+    """Return the rows of a leaving-group table.
+
+    Raises ValueError for any fault in it.
+    """
     columns = ("name", "abbreviation", "smarts", "conjugate_acid", "conjugate_acid_pka", "needs_activation")
     found = []
-    for row in read_table("leaving_groups.tsv", (*columns, "source", "note")):
+    for row in read_table("leaving_groups.tsv", text, (*columns, "source", "note")):
         pka = row["conjugate_acid_pka"]
         found.append(
             LeavingGroupPattern(
                 name=row["name"],
                 abbreviation=row["abbreviation"],
                 conjugate_acid=None if row["conjugate_acid"] == NOTHING else row["conjugate_acid"],
-                conjugate_acid_pka=None if pka == NOTHING else float(pka),
+                conjugate_acid_pka=None if pka == NOTHING else _finite(row["name"], pka),
                 needs_activation=_yes_or_no(row["name"], row["needs_activation"]),
                 note="" if row["note"] == NOTHING else row["note"],
                 source=row["source"],
@@ -193,8 +215,16 @@ def load_leaving_groups() -> tuple[LeavingGroupPattern, ...]:
 @cache
 def load_class_patterns() -> tuple[ClassPattern, ...]:
     """Return the classes of reactive carbon in table order."""
+    return parse_class_patterns(_text("site_classes.tsv"))
+
+
+def parse_class_patterns(text: str) -> tuple[ClassPattern, ...]:
+    """Return the rows of a table of site classes.
+
+    Raises ValueError for any fault in it.
+    """
     found = []
-    for row in read_table("site_classes.tsv", ("name", "kind", "smarts", "expected", "meaning", "source")):
+    for row in read_table("site_classes.tsv", text, ("name", "kind", "smarts", "expected", "meaning", "source")):
         computed = row["smarts"] == "computed"
         found.append(
             ClassPattern(
@@ -213,6 +243,14 @@ def load_class_patterns() -> tuple[ClassPattern, ...]:
 @cache
 def load_attack_patterns() -> tuple[AttackPattern, ...]:
     """Return the attacking atoms in table order, which is the order in which they attack."""
+    return parse_attack_patterns(_text("attacking_atoms.tsv"))
+
+
+def parse_attack_patterns(text: str) -> tuple[AttackPattern, ...]:
+    """Return the rows of a table of attacking atoms.
+
+    Raises ValueError for any fault in it.
+    """
     needed = {
         Electrons.SHIFT: {1, 2, 3},
         Electrons.PI_BOND: {1, 2},
@@ -224,7 +262,7 @@ def load_attack_patterns() -> tuple[AttackPattern, ...]:
     }
     found, smarts = [], []
     columns = ("kind", "preference", "smarts", "electrons", "reach", "note", "source")
-    for row in read_table("attacking_atoms.tsv", columns):
+    for row in read_table("attacking_atoms.tsv", text, columns):
         electrons = Electrons(row["electrons"])
         smarts.append(row["smarts"])
         found.append(
@@ -247,7 +285,7 @@ def load_activations() -> dict[str, ActivationPattern]:
     """Return, by leaving group, the reagent that puts it on a hydroxyl oxygen."""
     found: dict[str, ActivationPattern] = {}
     columns = ("group", "reagent_name", "reagent", "smarts", "source")
-    for row in read_table("activations.tsv", columns):
+    for row in read_table("activations.tsv", _text("activations.tsv"), columns):
         if row["group"] in found:
             raise ValueError(f"activations.tsv: given twice: {row['group']}")
         found[row["group"]] = ActivationPattern(

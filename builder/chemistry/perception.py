@@ -333,12 +333,15 @@ def _searched(structure: Structure) -> _Searched:
 
 
 def _leaving_pairs(structure: Structure) -> dict[tuple[int, int], LeavingGroupPattern]:
+    """Return each pair of alpha carbon and leaving atom; a carbon that bears a charge holds on to its groups."""
     searched = _searched(structure)
     pairs: dict[tuple[int, int], LeavingGroupPattern] = {}
     for row in load_leaving_groups():
         places = row.query.places
         for match in searched.matches(row.query):
-            pairs.setdefault((match[places[1]], match[places[2]]), row)
+            alpha, leaving = match[places[1]], match[places[2]]
+            if not structure.mol.GetAtomWithIdx(alpha).GetFormalCharge():
+                pairs.setdefault((alpha, leaving), row)
     return pairs
 
 

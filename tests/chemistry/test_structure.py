@@ -3,6 +3,7 @@
 import pickle
 import random
 import time
+from contextlib import nullcontext
 
 import pytest
 from rdkit import Chem
@@ -11,6 +12,7 @@ from rdkit.Chem import rdDepictor
 from builder.chemistry import (
     StructureError,
     name_atom,
+    neighbouring_groups,
     parse_inchi,
     parse_rxn,
     parse_smiles,
@@ -101,13 +103,13 @@ HOSTILE = {
 @pytest.mark.parametrize("name", HOSTILE)
 def test_hostile_structures_are_answered_within_a_second(name: str) -> None:
     started = time.perf_counter()
-    try:
+    refused = name.startswith(("too", "open", "nested"))
+    with pytest.raises(StructureError) if refused else nullcontext():
         structure = parse_smiles(HOSTILE[name])
         assert structure.stereocentres.total >= 0
         assert structure.is_achiral in {True, False}
-        perceive_sites(structure)
-    except StructureError as refusal:
-        assert refusal.reason
+        assert len(perceive_sites(structure)) <= structure.heavy_atom_count
+        assert len(neighbouring_groups(structure)) <= structure.heavy_atom_count
     assert time.perf_counter() - started < 1.0
 
 
