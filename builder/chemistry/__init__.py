@@ -1,5 +1,15 @@
 """The chemistry room: structures, what reacts in them, and what becomes of them. The only home of RDKit."""
 
+from builder.chemistry.geometry import (
+    ArylPosition,
+    ArylSubstituent,
+    Relation,
+    Ring,
+    aryl_substituent_names,
+    aryl_substituents,
+    perceive_rings,
+)
+from builder.chemistry.likeness import similarity
 from builder.chemistry.perception import (
     NO_LEAVING_GROUP,
     BetaCarbon,
@@ -59,6 +69,8 @@ from builder.chemistry.transform import (
 
 __all__ = [
     "NO_LEAVING_GROUP",
+    "ArylPosition",
+    "ArylSubstituent",
     "Atom",
     "AtomId",
     "BetaCarbon",
@@ -69,6 +81,8 @@ __all__ = [
     "LeavingGroup",
     "Nucleophile",
     "ReactiveSite",
+    "Relation",
+    "Ring",
     "SiteStereo",
     "StereoEffect",
     "Stereocentres",
@@ -80,6 +94,8 @@ __all__ = [
     "add_hx",
     "add_x2",
     "allylic_forms",
+    "aryl_substituent_names",
+    "aryl_substituents",
     "attacking_atoms",
     "capture",
     "course_between",
@@ -98,9 +114,11 @@ __all__ = [
     "parse_inchi",
     "parse_rxn",
     "parse_smiles",
+    "perceive_rings",
     "perceive_sites",
     "protonate",
     "shift_12",
+    "similarity",
     "site_class_meanings",
     "site_class_names",
     "sites_of",

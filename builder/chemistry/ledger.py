@@ -16,7 +16,7 @@ from rdkit import Chem
 
 from builder.chemistry.structure import AtomId, Structure, output_order, parse_smiles
 
-__all__ = ["GAP", "HYDROGEN", "Alkene", "Centre", "Piece", "UnbalancedTransformation", "Workbench"]
+__all__ = ["GAP", "HYDROGEN", "Alkene", "Centre", "Piece", "UnbalancedTransformation", "Workbench", "drawn_centres"]
 
 HYDROGEN = -1
 """Place of the one implicit hydrogen among a centre's neighbours; RDKit counts it last."""
@@ -82,6 +82,11 @@ def _parity(one: tuple[int, ...], other: tuple[int, ...]) -> int:
 @lru_cache(maxsize=4096)
 def _laid_out(structure: Structure) -> tuple[Chem.Mol, dict[int, Centre], dict[frozenset[int], Alkene]]:
     return _lay_out(structure.mol)
+
+
+def drawn_centres(structure: Structure) -> dict[AtomId, Centre]:
+    """Return the ledger entries of the drawn stereocentres of a structure, by AtomId."""
+    return dict(_laid_out(structure)[1])
 
 
 def _lay_out(source: Chem.Mol) -> tuple[Chem.Mol, dict[int, Centre], dict[frozenset[int], Alkene]]:

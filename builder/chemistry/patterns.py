@@ -17,6 +17,7 @@ from builder.sources import load_sources
 
 __all__ = [
     "ActivationPattern",
+    "ArylPattern",
     "AttackPattern",
     "ClassKind",
     "ClassPattern",
@@ -24,6 +25,7 @@ __all__ = [
     "LeavingGroupPattern",
     "Query",
     "load_activations",
+    "load_aryl_substituents",
     "load_attack_patterns",
     "load_class_patterns",
     "load_leaving_groups",
@@ -126,6 +128,15 @@ class ActivationPattern:
 
 def _text(name: str) -> str:
     return resources.files(__package__).joinpath(name).read_text("utf-8")
+
+
+@dataclass(frozen=True)
+class ArylPattern:
+    """One row of aryl_substituents.tsv."""
+
+    name: str
+    source: str
+    query: Query
 
 
 def read_table(name: str, text: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
@@ -295,4 +306,16 @@ def load_activations() -> dict[str, ActivationPattern]:
             query=_compile(row["group"], row["smarts"], {1, 2}),
             source=row["source"],
         )
+    return found
+
+
+@cache
+def load_aryl_substituents() -> tuple[ArylPattern, ...]:
+    """Return the named substituents of benzene rings; of two rows that fit, the first names the substituent."""
+    table = "aryl_substituents.tsv"
+    found = tuple(
+        ArylPattern(row["name"], row["source"], _compile(row["name"], row["smarts"], {1, 2}))
+        for row in read_table(table, _text(table), ("name", "smarts", "source"))
+    )
+    _unique(table, [row.name for row in found])
     return found
