@@ -38,6 +38,7 @@ _TRIPLE_SPACING = 4.1
 _INNER_CUT = 2.9  # by which the inner line of a double bond stops short of a corner
 _WEDGE_WIDTH = 6.6
 _LABEL_MARGIN = 2.4  # between a label and a bond that meets it
+_SMALL_MARGIN = 1.0  # between a raised or lowered sign and a bond
 _SHORTEST_BOND = 3.0  # what is left of a bond between two wide labels
 _ION_GAP = 11.0
 _ABOVE, _BELOW = -12.4, 12.4  # a hydrogen over or under its atom
@@ -263,6 +264,10 @@ class _Pen:
         self.drawn = drawn
         self.places = places
         self.labels = labels
+        self.margins = {
+            atom: [box.grown(_LABEL_MARGIN if box.height > SMALL_SIZE else _SMALL_MARGIN) for box in boxes]
+            for atom, boxes in labels.items()
+        }
         self.strokes: list[str] = []
         self.areas: list[str] = []
 
@@ -277,8 +282,8 @@ class _Pen:
         return (start[0] + ux * cut_a, start[1] + uy * cut_a), (end[0] - ux * cut_b, end[1] - uy * cut_b)
 
     def _cut(self, atom: int, direction: Point) -> float:
-        boxes = self.labels.get(atom, ())
-        return max((exit_distance(b.grown(_LABEL_MARGIN), self.places[atom], direction) for b in boxes), default=0.0)
+        at = self.places[atom]
+        return max((exit_distance(b, at, direction) for b in self.margins.get(atom, ())), default=0.0)
 
     def line(self, *points: Point) -> None:
         self.strokes.append("M" + "L".join(map(svg_point, points)))

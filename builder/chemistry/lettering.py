@@ -5,6 +5,7 @@ face leaves air and nothing overlaps.
 """
 
 import re
+from functools import lru_cache
 from xml.sax.saxutils import escape
 
 __all__ = ["CAP_HEIGHT_EM", "FONT", "svg_text", "text_width", "wrap"]
@@ -40,6 +41,7 @@ def svg_text(text: str) -> str:
     return escape(_NOT_IN_XML.sub("", text))
 
 
+@lru_cache(maxsize=16384)
 def text_width(text: str, size: float, *, bold: bool = False) -> float:
     """Return the room text needs, in px; an upper bound for the usual system faces."""
     width = size * sum(_WIDTH_OF.get(letter, _WIDEST_EM) for letter in text.replace(_NO_BREAK, " "))

@@ -231,10 +231,13 @@ def _wide(groups: Sequence[Sequence[_Drawn]], arrows: Sequence[Arrow], width: fl
     rows of them fit there.
     """
     arrow_blocks = [_arrow_to_the_right(arrow) for arrow in arrows]
+    structures = sum(fragment.box.width for group in groups for _, fragment in group)
     for scale in _SHRINK_TO_ONE_ROW:
         row = _in_one_row([_row(group, scale) for group in groups], arrow_blocks)
         if row.box.width <= width:
             return row
+        if row.box.width - (1 - _SHRINK_TO_ONE_ROW[-1]) * structures > width:
+            break
     scale = _scale_to_fit(groups, width)
     rows: list[_Block] = []
     current = _compounds(groups[0], scale, width, centred=False)

@@ -11,11 +11,12 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import lru_cache
+from itertools import combinations, pairwise
 from math import pi, tau
 from typing import NamedTuple
 
 from rdkit import Chem
-from rdkit.Chem import rdDepictor
+from rdkit.Chem import rdCoordGen, rdDepictor
 from rdkit.Geometry import Point3D
 
 from builder.chemistry.plane import Point
@@ -78,12 +79,10 @@ def sketch(structure: Structure, model: Structure | None = None) -> Sketch:
     wedges = _wedges(mol, places)
     pieces = {atom: number for number, piece in enumerate(Chem.GetMolFrags(mol)) for atom in piece}
     rings = [(frozenset(ring), ring) for ring in mol.GetRingInfo().AtomRings()]
-    neighbours: list[list[int]] = [[] for _ in range(mol.GetNumAtoms())]
+    neighbours = _neighbours(mol)
     ends = []
     for bond in mol.GetBonds():
         a, b = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
-        neighbours[a].append(b)
-        neighbours[b].append(a)
         line = Line.WAVY if bond.GetIdx() in wavy else Line.PLAIN
         if bond.GetIdx() in wedges:
             a, line = wedges[bond.GetIdx()]
@@ -163,13 +162,64 @@ def _laid_out(structure: Structure) -> Chem.Mol:
     if fused:
         mol = Chem.AddHs(mol, onlyOnAtoms=fused)
     Chem.Kekulize(mol, clearAromaticFlags=True)
-    rdDepictor.Compute2DCoords(mol, canonOrient=True, useRingTemplates=True)
-    rdDepictor.NormalizeDepiction(mol, scaleFactor=-1.0)
+    _set_places(mol)
     rdDepictor.StraightenDepiction(mol)
     _turn_as_is_customary(mol)
     return mol
 
 
+def _set_places(mol: Chem.Mol) -> None:
+    """Give the molecule coordinates: the first of three methods that crowds nothing, else the least crowded."""
+    methods = (
+        lambda: rdDepictor.Compute2DCoords(mol, canonOrient=True, useRingTemplates=True),
+        lambda: rdDepictor.Compute2DCoords(mol, canonOrient=True),
+        lambda: rdCoordGen.AddCoords(mol),
+    )
+    tried: list[tuple[int, int, Chem.Conformer]] = []
+    for method in methods:
+        method()
+        rdDepictor.NormalizeDepiction(mol, scaleFactor=-1.0)
+        tried.append((_crowding(mol), len(tried), Chem.Conformer(mol.GetConformer())))
+        if not tried[-1][0]:
+            return
+    best = min(tried, key=lambda attempt: attempt[:2])[2]
+    mol.RemoveAllConformers()
+    mol.AddConformer(best)
+
+
+def _crowding(mol: Chem.Mol) -> int:
+    """Return how many atoms, labels, or bonds at one atom lie nearly on each other; a bond cut short counts too."""
+    places = _complex_places(mol)
+    numbers = [atom.GetAtomicNum() for atom in mol.GetAtoms()]
+    neighbours = _neighbours(mol)
+    crowded = 0
+    for a, b in combinations(range(len(places)), 2):
+        apart = abs(places[a] - places[b])
+        if apart < _NEAR_LETTERS:
+            if b in neighbours[a]:
+                crowded += apart < _SHORT
+            else:
+                crowded += apart < _NEAR or numbers[a] != 6 != numbers[b]
+    for here, others in zip(places, neighbours, strict=True):
+        rays = [places[other] - here for other in others]
+        crowded += sum(abs(phase(a / b)) < _NARROW for a, b in combinations(rays, 2) if b)
+    return crowded
+
+
+def _neighbours(mol: Chem.Mol) -> list[list[int]]:
+    """Return, for each atom, its neighbours in the order of its bonds, on which chirality tags rest."""
+    neighbours: list[list[int]] = [[] for _ in range(mol.GetNumAtoms())]
+    for bond in mol.GetBonds():
+        a, b = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
+        neighbours[a].append(b)
+        neighbours[b].append(a)
+    return neighbours
+
+
+_SHORT = 0.7 * _RDKIT_BOND_LENGTH
+_NEAR = 0.5 * _RDKIT_BOND_LENGTH
+_NEAR_LETTERS = 0.9 * _RDKIT_BOND_LENGTH
+_NARROW = 0.4  # radian
 _NOT_CHIRAL = Chem.ChiralType.CHI_UNSPECIFIED
 _GONANE = Chem.MolFromSmarts(
     "[#6]1~[#6]~[#6]~[#6]2~[#6](~[#6]~1)~[#6]~[#6]~[#6]1~[#6]~2~[#6]~[#6]~[#6]2~[#6]~[#6]~[#6]~[#6]~1~2"
@@ -243,7 +293,7 @@ def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[AtomId,
 def _carbon_skeletons(structure: Structure) -> tuple[tuple[tuple[AtomId, ...], Chem.Mol, tuple[int, ...]], ...]:
     """Return the sets of carbons joined by carbon-carbon bonds, largest first, as query, with their degrees."""
     mol = structure.mol
-    neighbours = [[n.GetIdx() for n in atom.GetNeighbors()] for atom in mol.GetAtoms()]
+    neighbours = _neighbours(mol)
     left = {atom.GetIdx() for atom in mol.GetAtoms() if atom.GetAtomicNum() == 6}
     found = []
     while left:
@@ -312,31 +362,35 @@ def _bonds_to_wedge(
     readers take for the opposite.
     """
     here = centre.GetIdx()
+    arms = [(bond, bond.GetOtherAtom(centre)) for bond in centre.GetBonds()]
+    rays = [places[other.GetIdx()] - places[here] for _, other in arms]
     costs = []
-    for bond in centre.GetBonds():
-        other = bond.GetOtherAtom(centre)
-        rest = [places[n.GetIdx()] - places[here] for n in centre.GetNeighbors() if n.GetIdx() != other.GetIdx()]
-        ray = places[other.GetIdx()] - places[here]
+    for place, (bond, other) in enumerate(arms):
+        ambiguity = _ambiguity(rays[place], [*rays[:place], *rays[place + 1 :]])
         cost = (
-            _is_ambiguous(ray, rest),
+            ambiguity == 2,
             other.GetIdx() in centres,
             bond.GetBondType() != Chem.BondType.SINGLE,
             bond.IsInRing(),
-            other.GetAtomicNum() != 1 and other.GetAtomicNum() == 6,
+            ambiguity,
+            other.GetAtomicNum() == 6,
             other.GetDegree(),
         )
-        costs.append((tuple(int(c) for c in cost), bond.GetIdx()))
+        costs.append((cost, bond.GetIdx()))
     return costs
 
 
-def _is_ambiguous(ray: complex, rest: Sequence[complex]) -> bool:
-    """Answer whether a wedge along `ray` reads either way, given the other bonds at the centre."""
+def _ambiguity(ray: complex, rest: Sequence[complex]) -> int:
+    """Return 0 where a wedge along `ray` reads one way, 2 where it reads either way, 1 for a poor drawing.
+
+    0: the other bonds reach round the wedge. 2: they leave half the plane empty and lie on both sides of the wedge.
+    1: they leave half the plane empty and the wedge lies there.
+    """
     angles = sorted(phase(z / ray) % tau for z in rest)
-    if len(rest) == 2:
-        # Both others within less than half a turn about the wedge, one on each side of it.
-        return angles[1] - angles[0] > pi + _SLACK and angles[0] < pi < angles[1]
-    gaps = [(b - a) % tau for a, b in zip(angles, [*angles[1:], angles[0]], strict=True)]
-    return max(gaps) > pi + _SLACK
+    beyond = tau - angles[-1] + angles[0]
+    if max(b - a for a, b in pairwise(angles)) > pi + _SLACK:
+        return 2
+    return 1 if beyond > pi + _SLACK and len(rest) == 3 else 0
 
 
 _SLACK = 0.05  # radian
