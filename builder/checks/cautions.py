@@ -1,0 +1,512 @@
+"""Cautions: hazards of single substances and of pairs that must not meet, work-up and quench included.
+
+Two tables hold the facts: substance_kinds.tsv says what counts as an azide salt or an acid, cautions.tsv which of them
+are hazardous alone or together. What is charged is judged by its structure; the work-up and the notes are free text and
+are searched for names. It is a screen, never a clearance: local rules and qualified people decide.
+"""
+
+import re
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass
+from enum import StrEnum
+from functools import cache, cached_property, lru_cache
+from importlib import resources
+
+from builder.checks.case import Case
+from builder.chemistry.fragments import Fragment
+from builder.chemistry.structure import Structure, parse_smiles
+from builder.finding import Level
+from builder.mechanism.amounts import charged_rows
+from builder.mechanism.solvents import find_solvent
+from builder.records.model import Compound
+from builder.rule import Fault, Path, rule
+from builder.sources import load_sources
+
+__all__ = [
+    "CAUTION_CHECKS",
+    "Caution",
+    "CautionKind",
+    "Hazard",
+    "Present",
+    "Role",
+    "Severity",
+    "SubstanceKind",
+    "find_hazards",
+    "load_cautions",
+    "load_substance_kinds",
+    "presents_of",
+]
+
+NOTHING = "-"
+"""Stands in a cell that holds no value, so that a forgotten cell can be told from an empty one."""
+WHO_DECIDES = "local rules and qualified people decide"
+
+
+class Severity(StrEnum):
+    """A curator's grade, heaviest first; the header of cautions.tsv explains it."""
+
+    STOP = "stop"
+    WARN = "warn"
+    NOTE = "note"
+
+    @property
+    def weight(self) -> int:
+        """Return 2 for stop down to 0 for note."""
+        return {"stop": 2, "warn": 1, "note": 0}[self.value]
+
+
+class CautionKind(StrEnum):
+    """One substance, two that meet anywhere in the sequence, or two that are charged to one flask."""
+
+    SPECIES = "species"
+    PAIR = "pair"
+    SOLUTION = "solution"
+
+
+class Measure(StrEnum):
+    """What a condition of cautions.tsv measures."""
+
+    TEMPERATURE = "temperature"
+    HEAVY_ATOMS = "heavy atoms"
+    CARBON_RATIO = "carbon ratio"
+
+
+class Role(StrEnum):
+    """Where in a record something stands: charged or formed on the way, obtained or sought, named in free text."""
+
+    FLASK = "flask"
+    PRODUCT = "product"
+    TEXT = "text"
+
+
+@dataclass(frozen=True, slots=True)
+class Present:
+    """Something in an experiment that may be hazardous: a substance with its structure or name, or a line of text."""
+
+    path: Path
+    name: str
+    role: Role
+    structure: Structure | None = None
+
+    @property
+    def shown(self) -> str:
+        """Return the name, a line of text in quotes."""
+        return f'"{self.name}"' if self.role is Role.TEXT else self.name
+
+
+@dataclass(frozen=True)
+class SubstanceKind:
+    """One row of substance_kinds.tsv."""
+
+    name: str
+    fragments: tuple[Fragment, ...]
+    words: tuple[str, ...]
+    note: str
+
+    def fits(self, present: Present) -> bool:
+        """Answer whether the substance is of this kind, or the text names one that is and does not deny it."""
+        if present.structure is not None:
+            return self.name in _kinds_of(present.structure)
+        return self.is_named_in(present.name)
+
+    def is_named_in(self, text: str) -> bool:
+        """Answer whether the text names such a substance; "no acid" and "acid-free" do not."""
+        if any(low <= value < high for low, high in self._ph_ranges for value in _stated_ph(text)):
+            return True
+        found = (match for pattern in self._patterns for match in pattern.finditer(text))
+        return any(not _is_denied(text, match.start()) for match in found)
+
+    @cached_property
+    def _patterns(self) -> tuple[re.Pattern[str], ...]:
+        return tuple(_word_pattern(word) for word in self.words if not _PH_RANGE.fullmatch(word))
+
+    @cached_property
+    def _ph_ranges(self) -> tuple[tuple[float, float], ...]:
+        found = (_PH_RANGE.fullmatch(word) for word in self.words)
+        return tuple((float(match[1]), float(match[2])) for match in found if match)
+
+
+@dataclass(frozen=True, slots=True)
+class Condition:
+    """A further demand of a caution: a measure below (or from) a limit; units in the header of cautions.tsv."""
+
+    measure: Measure
+    sign: str
+    limit: float
+
+    def holds(self, first: Present, hottest_c: float) -> bool:
+        """Answer whether it is met; a size or ratio is never met where the structure is unknown."""
+        value = hottest_c if self.measure is Measure.TEMPERATURE else _size(self.measure, first.structure)
+        if value is None:
+            return False
+        return {"<": value < self.limit, "<=": value <= self.limit, ">=": value >= self.limit}[self.sign]
+
+
+@dataclass(frozen=True, slots=True)
+class Caution:
+    """One row of cautions.tsv; second and condition are None where the row has none."""
+
+    id: str
+    kind: CautionKind
+    severity: Severity
+    first: SubstanceKind
+    second: SubstanceKind | None
+    condition: Condition | None
+    hazard: str
+    precaution: str
+    source: str
+    fires: str
+    near_miss: str
+
+    @property
+    def how(self) -> str:
+        """Return how its source is known, a word of the bibliography."""
+        return load_sources()[self.source].how
+
+
+@dataclass(frozen=True, slots=True)
+class Hazard:
+    """A caution that applies: where it shows, and what it meets there (nothing for a single substance)."""
+
+    caution: Caution
+    at: Present
+    others: tuple[Present, ...] = ()
+
+    @property
+    def message(self) -> str:
+        """Return who meets whom, and what comes of it."""
+        if not self.others:
+            return f"{self.at.shown}: {self.caution.hazard}"
+        met = " and ".join(dict.fromkeys(other.shown for other in self.others))
+        return f"{met} with {self.at.shown}: {self.caution.hazard}"
+
+    @property
+    def data(self) -> dict[str, object]:
+        """Return what stands behind the message, JSON-ready."""
+        caution = self.caution
+        return {"caution": caution.id, "severity": caution.severity.value, "source": caution.source, "how": caution.how}
+
+
+# --- what is in a record ----------------------------------------------------------------------------------------
+
+
+def presents_of(case: Case) -> tuple[Present, ...]:
+    """Return everything in a record that cautions look at, in its order.
+
+    A solvent without a structure takes it from the table of solvents; whatever has none is judged by its name.
+    """
+    record = case.record
+    charged = [_substance(case, path, compound, Role.FLASK) for path, _, compound in charged_rows(record)]
+    formed = [
+        _substance(case, ("stages", index, "gives"), stage.gives, Role.FLASK)
+        for index, stage in enumerate(record.stages)
+        if stage.gives is not None
+    ]
+    products = [
+        _substance(case, ("outcome", "products", index), product, Role.PRODUCT)
+        for index, product in enumerate(record.outcome.products)
+    ]
+    if record.outcome.sought is not None:
+        products.append(_substance(case, ("outcome", "sought"), record.outcome.sought, Role.PRODUCT))
+    return (*charged, *formed, *products, *_texts(case))
+
+
+def _texts(case: Case) -> Iterator[Present]:
+    for index, line in enumerate(case.record.work_up or ()):
+        yield Present(("work_up", index), line, Role.TEXT)
+    for index, stage in enumerate(case.record.stages):
+        if stage.note:
+            yield Present(("stages", index, "note"), stage.note, Role.TEXT)
+    if case.record.procedure:
+        yield Present(("procedure",), case.record.procedure, Role.TEXT)
+
+
+def _substance(case: Case, path: Path, compound: Compound, role: Role) -> Present:
+    structure = case.structures.get(path)
+    if structure is None:
+        solvent = find_solvent(compound.name)
+        structure = parse_smiles(solvent.smiles) if solvent else None
+    return Present(path, compound.name, role, structure)
+
+
+# --- which cautions apply ---------------------------------------------------------------------------------------
+
+
+def find_hazards(presents: Sequence[Present], hottest_c: float) -> tuple[Hazard, ...]:
+    """Return the hazards among what is present, in table order; a pair once for each place where it shows.
+
+    hottest_c: highest temperature of any stage, °C. A pair shows at the line of text that names a partner, else at
+    the second partner.
+    """
+    return tuple(hazard for caution in load_cautions() for hazard in _hazards_of(caution, presents, hottest_c))
+
+
+def _hazards_of(caution: Caution, presents: Sequence[Present], hottest_c: float) -> Iterator[Hazard]:
+    firsts = [
+        present
+        for present in presents
+        if caution.first.fits(present) and (caution.condition is None or caution.condition.holds(present, hottest_c))
+    ]
+    if caution.second is None:
+        yield from (Hazard(caution, present) for present in firsts if present.role is not Role.TEXT)
+        return
+    roles = {Role.FLASK} if caution.kind is CautionKind.SOLUTION else {Role.FLASK, Role.TEXT}
+    seconds = [present for present in presents if caution.second.fits(present)]
+    meetings: dict[Present, list[Present]] = {}
+    for first in firsts:
+        for second in seconds:
+            if first.role in roles and second.role in roles and (first is not second or first.role is Role.TEXT):
+                at, other = (
+                    (first, second) if first.role is Role.TEXT and second.role is not Role.TEXT else (second, first)
+                )
+                meetings.setdefault(at, []).append(other)
+    yield from (Hazard(caution, at, tuple(others)) for at, others in meetings.items())
+
+
+@lru_cache(maxsize=4096)
+def _kinds_of(structure: Structure) -> frozenset[str]:
+    kinds = load_substance_kinds().values()
+    return frozenset(kind.name for kind in kinds if any(fragment.is_in(structure) for fragment in kind.fragments))
+
+
+def _size(measure: Measure, structure: Structure | None) -> float | None:
+    if structure is None:
+        return None
+    plain = structure.without_counter_ions
+    if measure is Measure.HEAVY_ATOMS:
+        return float(plain.heavy_atom_count)
+    symbols = [atom.symbol for atom in plain.atoms]
+    nitrogens = symbols.count("N")
+    return (symbols.count("C") + symbols.count("O")) / nitrogens if nitrogens else None
+
+
+# --- words ------------------------------------------------------------------------------------------------------
+
+_PH_RANGE = re.compile(r"pH (\d+)-(\d+)")
+_PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
+_DENIAL = re.compile(
+    r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|instead of|rather than)\b", re.IGNORECASE
+)
+_CLAUSE_END = re.compile(r"[,;:()]|\.\s|\bbut\b|\bthen\b")
+_REACH_OF_DENIAL = 4  # words: "never let it touch copper"
+
+
+def _word_pattern(word: str) -> re.Pattern[str]:
+    flags = re.NOFLAG if re.search("[A-Z]", word) else re.IGNORECASE
+    return re.compile(rf"(?<![A-Za-z0-9]){re.escape(word)}(?![A-Za-z0-9]|-free)", flags)
+
+
+def _is_denied(text: str, start: int) -> bool:
+    clause = _CLAUSE_END.split(text[:start])[-1]
+    denials = list(_DENIAL.finditer(clause))
+    return bool(denials) and len(clause[denials[-1].end() :].split()) <= _REACH_OF_DENIAL
+
+
+def _stated_ph(text: str) -> Iterator[float]:
+    """Yield the pH values a line names; one that must not be reached ("not below pH 5") is none."""
+    for match in _PH.finditer(text):
+        if not _is_denied(text, match.start()):
+            yield float(match[1])
+
+
+# --- the tables -------------------------------------------------------------------------------------------------
+
+
+@cache
+def load_substance_kinds() -> dict[str, SubstanceKind]:
+    """Return the kinds of substance by name, in table order.
+
+    Raises ValueError for blanks, names given twice, bad SMARTS, and rows with neither SMARTS nor words.
+    """
+    found: dict[str, SubstanceKind] = {}
+    for row in _rows("substance_kinds.tsv", ("name", "smarts", "words", "note")):
+        kind = SubstanceKind(
+            name=row["name"],
+            fragments=() if row["smarts"] == NOTHING else tuple(map(Fragment.from_smarts, row["smarts"].split())),
+            words=() if row["words"] == NOTHING else tuple(row["words"].split("|")),
+            note="" if row["note"] == NOTHING else row["note"],
+        )
+        if kind.name in found or not (kind.fragments or kind.words):
+            raise ValueError(f"substance_kinds.tsv: {kind.name}: given twice, or without SMARTS and words")
+        found[kind.name] = kind
+    return found
+
+
+@cache
+def load_cautions() -> tuple[Caution, ...]:
+    """Return the cautions in table order.
+
+    Raises ValueError for blanks, ids given twice, unknown kinds, severities, conditions and sources.
+    """
+    columns = ("id", "kind", "severity", "first", "second", "condition", "hazard", "precaution", "source")
+    found = tuple(_caution(row) for row in _rows("cautions.tsv", (*columns, "fires", "near_miss")))
+    ids = [caution.id for caution in found]
+    if len(set(ids)) != len(ids):
+        raise ValueError(f"cautions.tsv: given twice: {', '.join(sorted({i for i in ids if ids.count(i) > 1}))}")
+    return found
+
+
+def _caution(row: dict[str, str]) -> Caution:
+    kind, kinds = CautionKind(row["kind"]), load_substance_kinds()
+    wanted = [row["first"]] if kind is CautionKind.SPECIES else [row["first"], row["second"]]
+    if unknown := [name for name in wanted if name not in kinds]:
+        raise ValueError(f"cautions.tsv: {row['id']}: unknown kind of substance {unknown[0]}")
+    if row["source"] not in load_sources():
+        raise ValueError(f"cautions.tsv: {row['id']}: unknown source {row['source']}")
+    return Caution(
+        id=row["id"],
+        kind=kind,
+        severity=Severity(row["severity"]),
+        first=kinds[row["first"]],
+        second=None if kind is CautionKind.SPECIES else kinds[row["second"]],
+        condition=None if row["condition"] == NOTHING else _condition(row["condition"]),
+        hazard=row["hazard"],
+        precaution=row["precaution"],
+        source=row["source"],
+        fires=row["fires"],
+        near_miss=row["near_miss"],
+    )
+
+
+def _condition(text: str) -> Condition:
+    match = re.fullmatch(r"(.+) (<=|<|>=) (\d+(?:\.\d+)?)", text)
+    if match is None:
+        raise ValueError(f"cautions.tsv: {text} is no condition; write: heavy atoms <= 9")
+    return Condition(Measure(match[1]), match[2], float(match[3]))
+
+
+def _rows(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
+    lines = resources.files("builder.checks").joinpath(name).read_text("utf-8").splitlines()
+    rows = [line.split("\t") for line in lines if line and not line.startswith("#")]
+    if not rows or tuple(rows[0]) != columns:
+        raise ValueError(f"{name}: the header must read {' '.join(columns)}")
+    for cells in rows[1:]:
+        if len(cells) != len(columns) or not all(cell.strip() for cell in cells):
+            raise ValueError(f"{name}: {cells[0]}: a cell is blank or missing; write {NOTHING} for no value")
+        yield dict(zip(columns, cells, strict=True))
+
+
+# --- the rules --------------------------------------------------------------------------------------------------
+
+
+def _hazards(case: Case) -> tuple[Hazard, ...]:
+    hottest_c = max(stage.temperature.highest_c for stage in case.record.stages)
+    return find_hazards(presents_of(case), hottest_c)
+
+
+def _is_unreviewed(case: Case, hazard: Hazard) -> bool:
+    return hazard.caution.severity is Severity.STOP and case.record.safety_review is None
+
+
+@rule(
+    id="hazard-unreviewed",
+    title="A grave hazard without a safety review",
+    source="prudent-practices-2011",
+    fires_on=(
+        "# without safety_review\nsolvent: [{name: dichloromethane, volume: 20 mL}]",
+        "# without safety_review\nwork_up: ['quench with 1 M HCl']",
+        "# without safety_review\nwork_up: ['extract with 3 × 20 mL CH2Cl2']",
+        "# without safety_review\n"
+        "reagents: [{name: ammonium chloride, smiles: '[NH4+].[Cl-]', use: buffer, amount: 20 mmol}]",
+    ),
+    silent_on=(
+        "work_up: ['extract with 3 × 20 mL CH2Cl2']",
+        "# without safety_review\nwork_up: ['quench with water, no acid', 'extract with ethyl acetate']",
+    ),
+)
+def hazard_is_unreviewed(case: Case) -> Iterator[Fault]:
+    """What can kill or destroy a laboratory is recorded only with the safety review it had.
+
+    It holds for what is charged, formed, obtained or sought, and for what the work-up names: azide with acid or with
+    dichloromethane, cyanide with acid, sodium hydride in DMF or DMSO, and so on down the table of cautions. The check
+    knows structures and names, not amounts or skill; it cannot say that anything is safe. An acid is what has a pKa of
+    up to 9.5 for azide, cyanide and sulfide, ammonium salts included, and the words that name one.
+    """
+    for hazard in _hazards(case):
+        if _is_unreviewed(case, hazard):
+            yield Fault(
+                at=hazard.at.path,
+                message=f"{hazard.message}; the record has no safety_review",
+                mend=f"{hazard.caution.precaution}; otherwise add the safety_review it had; {WHO_DECIDES}",
+                data=hazard.data,
+            )
+
+
+@rule(
+    id="hazard-pair",
+    title="Two substances that should not meet unseen",
+    level=Level.CAUTION,
+    source="bretherick-2017",
+    fires_on=(
+        "work_up: ['extract with 3 × 20 mL CH2Cl2']",
+        "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 12 mmol}]",
+        "reagents: [{name: methanesulfonyl chloride, smiles: 'CS(=O)(=O)Cl', use: activator, amount: 12 mmol}]",
+    ),
+    silent_on=("work_up: ['quench: 60 mL water, keep above pH 9', 'extract with 3 × 20 mL ethyl acetate']",),
+)
+def hazard_of_a_pair(case: Case) -> Iterator[Fault]:
+    """Two substances of this experiment are hazardous together.
+
+    Some pairs are hazardous wherever they meet, quench and cleaning included; others only in one solution. A pair
+    graded `stop` stands here once a safety review is recorded, and as `hazard-unreviewed` before.
+    """
+    for hazard in _hazards(case):
+        if hazard.caution.second is not None and not _is_unreviewed(case, hazard):
+            yield Fault(
+                at=hazard.at.path,
+                message=hazard.message,
+                mend=f"{hazard.caution.precaution}; {WHO_DECIDES}",
+                data=hazard.data,
+            )
+
+
+_HARMLESS = """\
+substrate: {name: cyclohexanol, smiles: 'OC1CCCCC1', class: secondary, leaving_group: hydroxyl, amount: 10 mmol}
+nucleophile: none
+solvent: [{name: toluene, volume: 20 mL}]
+outcome:
+  result: [elimination]
+  products: [{label: A, name: cyclohexene, smiles: 'C1CCC=CC1'}]
+  measured: [{yield: 81 %, of: A, kind: assay, by: GC}]
+"""
+
+
+@rule(
+    id="hazard-species",
+    title="A substance that is hazardous by itself",
+    level=Level.CAUTION,
+    source="prudent-practices-2011",
+    fires_on=(
+        "substrate: {name: iodomethane, smiles: CI, class: methyl, leaving_group: iodide, amount: 10 mmol}",
+        _HARMLESS + "reagents: [{name: potassium cyanide, smiles: '[K+].[C-]#N', use: additive, amount: 1 mmol}]",
+    ),
+    silent_on=(_HARMLESS,),
+)
+def hazard_of_a_species(case: Case) -> Iterator[Fault]:
+    """A substance charged, formed, obtained or sought belongs to a class with a known hazard.
+
+    Each substance has one such finding, the gravest; the others are listed in its data. Alkylating agents are named by
+    class, since every good leaving group on carbon makes one; organic azides are judged by the number of carbon and
+    oxygen atoms for each nitrogen atom. Corrosive, flammable and merely harmful substances are left to their data
+    sheets.
+    """
+    at_place: dict[Path, list[Hazard]] = {}
+    for hazard in _hazards(case):
+        if hazard.caution.second is None:
+            at_place.setdefault(hazard.at.path, []).append(hazard)
+    for path, hazards in at_place.items():
+        gravest, *others = _by_gravity(hazards)
+        if not _is_unreviewed(case, gravest):
+            yield Fault(
+                at=path,
+                message=gravest.message,
+                mend=f"{gravest.caution.precaution}; {WHO_DECIDES}",
+                data={**gravest.data, "others": [other.caution.id for other in others]},
+            )
+
+
+def _by_gravity(hazards: Iterable[Hazard]) -> list[Hazard]:
+    return sorted(hazards, key=lambda hazard: -hazard.caution.severity.weight)
+
+
+CAUTION_CHECKS = (hazard_is_unreviewed, hazard_of_a_pair, hazard_of_a_species)
