@@ -2,14 +2,14 @@
 
 import datetime as dt
 import re
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
 from pathlib import Path
 
 from builder.checks.agreement import CONTRARY_RULES, is_covered
 from builder.checks.case import Case, open_case
-from builder.checks.group import Member
+from builder.checks.group import Gathering, Member
 from builder.checks.run import check_group, check_record, settle
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
@@ -19,7 +19,7 @@ from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.rule import Fault
 
-__all__ = ["Book", "Entry", "Verdict", "open_book", "record_files"]
+__all__ = ["Book", "Entry", "Examined", "Verdict", "examine", "judge", "open_book", "record_files"]
 
 Progress = Callable[[tuple[Path, ...]], Iterable[Path]]
 
@@ -87,6 +87,15 @@ class Book:
         return sum(finding.level is level and finding.accepted is None for finding in self.findings)
 
 
+@dataclass(frozen=True, slots=True)
+class Examined:
+    """One file as read and checked on its own; case is None where no record could be made of it."""
+
+    reading: Reading
+    case: Case | None
+    findings: tuple[Finding, ...]
+
+
 def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Book:
     """Read, check and judge every record below `folder`.
 
@@ -96,22 +105,13 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
     """
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
-    findings += misnamed
-    readings = [read_record(path, _shown(path, folder)) for path in progress(files)]
-    members: list[tuple[Reading, Member]] = []
-    found: dict[str, list[Finding]] = {reading.file: list(reading.findings) for reading in readings}
-    for reading in readings:
-        if reading.record is not None:
-            case = open_case(reading.record, reading.file, settings, today)
-            members.append((reading, Member(case, reading.places)))
-            found[reading.file] += check_record(case, reading.places)
-    for file, more in check_group([member for _, member in members]).items():
-        found[file] += more
-    for _, member in members:
-        found[member.case.file] = list(settle(member.case, member.places, found[member.case.file]))
-    entries = [_entry(reading, member.case, tuple(found[reading.file])) for reading, member in members]
+    examined = [examine(read_record(path, _shown(path, folder)), settings, today) for path in progress(files)]
+    settled = judge(examined)
+    entries = [
+        _entry(each.reading, each.case, settled[each.reading.file]) for each in examined if each.case is not None
+    ]
     publishable = [entry for entry in entries if not _has_error(entry.findings)]
-    everything = [*findings, *(finding for each in found.values() for finding in each)]
+    everything = [*findings, *misnamed, *(finding for each in settled.values() for finding in each)]
     return Book(
         folder=folder,
         settings=settings,
@@ -120,6 +120,26 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
         findings=tuple(sorted(everything, key=lambda finding: finding.sort_key)),
         files=len(files),
     )
+
+
+def examine(reading: Reading, settings: Settings, today: dt.date) -> Examined:
+    """Check one record on its own."""
+    if reading.record is None:
+        return Examined(reading, None, reading.findings)
+    case = open_case(reading.record, reading.file, settings, today)
+    return Examined(reading, case, (*reading.findings, *check_record(case, reading.places)))
+
+
+def judge(examined: Sequence[Examined]) -> dict[str, tuple[Finding, ...]]:
+    """Return the final findings by file: each record's own, those against the others, acceptances applied."""
+    members = tuple(Member(each.case, each.reading.places) for each in examined if each.case is not None)
+    unread = frozenset(Path(each.reading.file).stem for each in examined if each.case is None)
+    against_others = check_group(Gathering(members, unread))
+    settled: dict[str, tuple[Finding, ...]] = {}
+    for each in examined:
+        found = (*each.findings, *against_others.get(each.reading.file, ()))
+        settled[each.reading.file] = settle(each.case, each.reading.places, found) if each.case else found
+    return settled
 
 
 def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:

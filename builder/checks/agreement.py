@@ -11,7 +11,7 @@ from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
 from builder.mechanism.products import Route, routes_to
-from builder.mechanism.reaction import in_play, is_activated, species_in_flask
+from builder.mechanism.reaction import in_play, species_in_flask
 from builder.mechanism.rules import Situation, closing_gates
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Course, Mechanism, StereoKind
@@ -202,12 +202,8 @@ def mechanism_is_contrary(case: Case) -> Iterator[Fault]:
     claim = case.record.outcome.claim
     if claim is None:
         return
-    activated = is_activated(case.record, case.structures)
-    situations = [
-        Situation(each.site, is_activated=activated or each.formed_from is not None)
-        for each in in_play(case.record, case.structures)
-    ]
-    shut = [closing_gates(claim.mechanism, situation) for situation in situations]
+    sites = in_play(case.record, case.structures)
+    shut = [closing_gates(claim.mechanism, Situation(each.site, each.is_activated)) for each in sites]
     if shut and all(shut):
         gates = {gate.rule.id: gate.rule for gates in shut for gate in gates}
         reasons = "; ".join(f"{gate.title} ({gate.id})" for gate in gates.values())

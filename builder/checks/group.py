@@ -9,7 +9,7 @@ from builder.finding import Level
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Path, rule
 
-__all__ = ["GROUP_CHECKS", "Member"]
+__all__ = ["GROUP_CHECKS", "Gathering", "Member"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -18,6 +18,14 @@ class Member:
 
     case: Case
     places: Places
+
+
+@dataclass(frozen=True, slots=True)
+class Gathering:
+    """All records of a book. unread: names of the files of which no record could be made."""
+
+    members: tuple[Member, ...]
+    unread: frozenset[str] = frozenset()
 
 
 Found = Iterator[tuple[Member, Fault]]
@@ -32,12 +40,12 @@ _SECOND = "# file: other/NS7K3QFMC.yml\nentry: NS7K3QFMC\ntitle: Another displac
     fires_on=("# retired: NS4T9XQ2N",),
     silent_on=("# retired: NS7K3QFMC",),
 )
-def entry_is_retired(members: Sequence[Member]) -> Found:
+def entry_is_retired(book: Gathering) -> Found:
     """A retired identifier never names another entry.
 
     Reports cite it; the citation must not lead to a different experiment.
     """
-    for member in members:
+    for member in book.members:
         if member.case.record.entry in member.case.settings.retired:
             yield (
                 member,
@@ -54,13 +62,13 @@ def entry_is_retired(members: Sequence[Member]) -> Found:
     fires_on=("---\n# file: other/NS4T9XQ2N.yml\ntitle: Another displacement\nnotebook: BK2/113",),
     silent_on=("---\n" + _SECOND,),
 )
-def entry_stands_twice(members: Sequence[Member]) -> Found:
+def entry_stands_twice(book: Gathering) -> Found:
     """An identifier belongs to one record.
 
     Two branches can each be right and collide when both are merged; then one of the entries takes a new identifier.
     """
     mend = "give the younger record a new one (`handbook new`)"
-    yield from _repeated(members, lambda case: case.record.entry, ("entry",), "the identifier stands in {0} too", mend)
+    yield from _repeated(book.members, lambda case: case.record.entry, ("entry",), "the identifier stands in {0} too", mend)
 
 
 @rule(
@@ -71,13 +79,13 @@ def entry_stands_twice(members: Sequence[Member]) -> Found:
     fires_on=("---\n# file: other/NS7K3QFMC.yml\nentry: NS7K3QFMC\ntitle: Another displacement",),
     silent_on=("---\n" + _SECOND,),
 )
-def notebook_page_stands_twice(members: Sequence[Member]) -> Found:
+def notebook_page_stands_twice(book: Gathering) -> Found:
     """A notebook page belongs to one record.
 
     The same page in two records is usually one experiment entered twice.
     """
     mend = "merge the two, correct the page, or accept this with the reason"
-    yield from _repeated(members, lambda case: case.record.notebook, ("notebook",), "this page stands in {0} too", mend)
+    yield from _repeated(book.members, lambda case: case.record.notebook, ("notebook",), "this page stands in {0} too", mend)
 
 
 @rule(
@@ -87,13 +95,13 @@ def notebook_page_stands_twice(members: Sequence[Member]) -> Found:
     fires_on=("related: [NS7K3QFMC]",),
     silent_on=("related: [NS7K3QFMC]\n---\n" + _SECOND,),
 )
-def reference_is_unknown(members: Sequence[Member]) -> Found:
+def reference_is_unknown(book: Gathering) -> Found:
     """What a record refers to is in the book.
 
     A link to nowhere is noticed by the reader of a report in two years, not by its writer.
     """
-    known = {member.case.record.entry for member in members}
-    for member in members:
+    known = {member.case.record.entry for member in book.members} | book.unread
+    for member in book.members:
         for path, reference in _references(member.case):
             if reference not in known:
                 yield member, Fault(at=path, message=f"{reference} is not in the book", mend="correct it, or drop it")
@@ -107,13 +115,13 @@ def reference_is_unknown(members: Sequence[Member]) -> Found:
     fires_on=("---\n# file: other/NS7K3QFMC.yml\nentry: NS7K3QFMC\nnotebook: BK2/113",),
     silent_on=("---\n" + _SECOND,),
 )
-def title_stands_twice(members: Sequence[Member]) -> Found:
+def title_stands_twice(book: Gathering) -> Found:
     """Each entry has a title of its own.
 
     In a list two equal lines cannot be told apart: the difference between the runs belongs into the title.
     """
     mend = "say in the title what is different"
-    yield from _repeated(members, lambda case: case.record.title.casefold(), ("title",), "{0} has this title too", mend)
+    yield from _repeated(book.members, lambda case: case.record.title.casefold(), ("title",), "{0} has this title too", mend)
 
 
 GROUP_CHECKS = (

@@ -1,11 +1,11 @@
 """Every check over every record -> findings in order; applies `accepted` and reports stale acceptances."""
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from dataclasses import replace
 from typing import Any
 
 from builder.checks.case import Case
-from builder.checks.group import GROUP_CHECKS, Member
+from builder.checks.group import GROUP_CHECKS, Gathering
 from builder.checks.register import ACCEPTANCE_RULES, RECORD_CHECKS, record_rules
 from builder.finding import Finding, Level
 from builder.records.yaml_text import Places
@@ -37,13 +37,13 @@ def check_record(case: Case, places: Places) -> tuple[Finding, ...]:
     return tuple(findings)
 
 
-def check_group(members: Sequence[Member]) -> dict[str, list[Finding]]:
+def check_group(book: Gathering) -> dict[str, list[Finding]]:
     """Return the findings of the checks over the whole book, by file."""
-    found: dict[str, list[Finding]] = {member.case.file: [] for member in members}
+    found: dict[str, list[Finding]] = {member.case.file: [] for member in book.members}
     for check in GROUP_CHECKS:
         if check.look is None:
             continue
-        for member, fault in check.look(members):
+        for member, fault in check.look(book):
             found[member.case.file].append(_finding(check, fault, member.places))
     return found
 

@@ -18,7 +18,7 @@ from builder.chemistry.perception import (
     neighbouring_groups,
     perceive_sites,
 )
-from builder.chemistry.structure import Structure
+from builder.chemistry.structure import Atom, Structure
 from builder.chemistry.transform import (
     Cation,
     Edit,
@@ -38,12 +38,15 @@ from builder.chemistry.transform import (
     transpose_allylic,
 )
 from builder.mechanism.reaction import SiteInPlay
+from builder.mechanism.rules import Situation, closing_gates
+from builder.records.vocabulary import Mechanism
 
 __all__ = ["Event", "Route", "routes_to"]
 
 MAX_SHIFTS = 3
 MAX_CATIONS = 60  # of one ionisation; a steroid's skeleton has no more within three shifts
 MAX_INTERMEDIATES = 40  # products of the first event that may react once more
+HALOGENS = frozenset({"BrBr", "ClCl", "II"})
 
 
 class Event(StrEnum):
@@ -90,7 +93,7 @@ def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iter
     """
     first = [made for each in sites for made in _from_site(each.on, each.site, flask)]
     yield (route for route, _ in first)
-    yield (route for each in sites for route in _through_cations(each.on, each.site, flask))
+    yield (route for each in sites if _ionises(each) for route in _through_cations(each.on, each.site, flask))
     intermediates: dict[Structure, tuple[Route, tuple[Structure, ...]]] = {}
     for route, freed in first:
         intermediates.setdefault(route.product, (route, freed))
@@ -166,9 +169,16 @@ def _additions(
         for edit in add_hx(start, site, nucleophile):
             yield _route(start, site, Event.ADDITION, edit), edit.others
     for molecule in species:
-        if molecule.smiles in {"BrBr", "ClCl", "II"}:
+        if molecule.smiles in HALOGENS:
             for edit in add_x2(start, site, molecule):
                 yield _route(start, site, Event.ADDITION, edit), edit.others
+
+
+def _can_add(species: Iterable[Structure]) -> bool:
+    """Say whether something charged adds to a multiple bond by itself: a hydrogen halide or a halogen."""
+    return any(each.smiles in HALOGENS for each in species) or any(
+        nucleophile.kind == "hydrogen halide" for nucleophile in _attackers(species)
+    )
 
 
 def _attackers(species: Iterable[Structure]) -> Iterator[Nucleophile]:
@@ -188,10 +198,16 @@ def _route(start: Structure, site: ReactiveSite, event: Event, edit: Edit) -> Ro
 # --- through a cation -------------------------------------------------------------------------------------
 
 
+def _ionises(each: SiteInPlay) -> bool:
+    return not closing_gates(Mechanism.SN1, Situation(each.site, each.is_activated))
+
+
 def _through_cations(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[Route]:
     first = protonate(start, site) if site.is_addition else ionise(start, site)
     attackers = tuple(_attackers(species))
     for cation, events in _cations(first):
+        if not _is_stable(cation):
+            continue  # a primary cation only hands its charge on
         for nucleophile in attackers:
             for edit in capture(cation, nucleophile):
                 yield Route(start, site, (*events, Event.SUBSTITUTION), edit.product, edit.effect)
@@ -211,10 +227,24 @@ def _cations(first: Cation) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
             shifted = ((shift_12(cation, origin, moving), Event.SHIFT) for origin, moving in migrating_groups(cation))
             resonant = ((form, Event.TRANSPOSITION) for form in allylic_forms(cation))
             for made, event in (*resonant, *shifted):
-                if made.structure not in seen and len(seen) < MAX_CATIONS:
+                if made.structure not in seen and len(seen) < MAX_CATIONS and _is_stable(made):
                     seen.add(made.structure)
                     following.append((made, (*events, event)))
         level = following
+
+
+def _is_stable(cation: Cation) -> bool:
+    """Say whether the centre has two carbons, or a neighbour that shares electrons with it."""
+    centre = cation.structure.atoms[cation.centre]
+    neighbours = [cation.structure.atoms[atom] for atom, _ in centre.neighbours]
+    shares = any(
+        n.aromatic or n.symbol in {"N", "O", "S"} or 3 in n.ring_sizes or _is_unsaturated(n) for n in neighbours
+    )
+    return len(neighbours) >= 2 or shares
+
+
+def _is_unsaturated(atom: Atom) -> bool:
+    return any(order > 1.0 for _, order in atom.neighbours)
 
 
 def _neighbours(cation: Cation) -> tuple[int, ...]:
@@ -227,6 +257,8 @@ def _neighbours(cation: Cation) -> tuple[int, ...]:
 def _second_events(route: Route, species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
     intermediate = route.product
     for site in perceive_sites(intermediate):
+        if site.is_addition and not _can_add(species):
+            continue
         for further, _ in _from_site(intermediate, site, species):
             yield replace(further, start=route.start, site=route.site, events=(*route.events, *further.events))
     for each in in_play:  # the product attacks another molecule of substrate

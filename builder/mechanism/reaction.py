@@ -23,13 +23,13 @@ _ACTIVATING_USES = {ReagentUse.ACTIVATOR, ReagentUse.ACID}
 class SiteInPlay:
     """A reactive carbon that the record speaks of, on the molecule that bears the declared leaving group.
 
-    on: that molecule, the substrate or what a stage gives. formed_from: the group on it that becomes the declared
-    leaving group in the flask; None where the group is there already.
+    on: that molecule, the substrate or what a stage gives. is_activated: an acid or activator in the flask helps the
+    group to leave, or makes it from the one that is drawn.
     """
 
     on: Structure
     site: ReactiveSite
-    formed_from: str | None = None
+    is_activated: bool = False
 
 
 def in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[SiteInPlay, ...]:
@@ -40,12 +40,13 @@ def in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[SiteI
     """
     group = record.substrate.leaving_group
     bearers = _bearers(record, structures)
-    found = [SiteInPlay(structure, site) for structure in bearers for site in sites_of(structure, group)]
+    activated = is_activated(record, structures)
+    found = [SiteInPlay(structure, site, activated) for structure in bearers for site in sites_of(structure, group)]
     if found:
         return tuple(found)
     uses = {reagent.use for reagent in record.reagents}
     return tuple(
-        SiteInPlay(structure, site, precursor)
+        SiteInPlay(structure, site, is_activated=True)
         for precursor, use in _precursors().get(group, ())
         if use == "any" or uses & _ACTIVATING_USES
         for structure in bearers

@@ -408,7 +408,7 @@ def _quantity_error(text: str, tidy: str, number: str | None, spelling: str, dim
 
 
 def _unit_error(text: str, number: str, spelling: str, dimension: Dimension) -> QuantityError:
-    if _ARITHMETIC.search(f"{number} {spelling}") or re.match(r"[*×+/]", spelling):
+    if _ARITHMETIC.search(f"{number} {spelling}") or re.search(r"^[*×+/]|[*×+]\s*\d", spelling):
         return QuantityError(
             "quantity-arithmetic", f'"{text}" is a sum, not a number', "write the result, with its unit"
         )

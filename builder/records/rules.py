@@ -36,7 +36,7 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         YAML 1.1 readers turn yes, no, on and off into booleans, YAML 1.2 readers keep them as words: the same file
         would mean two things.""",
         fires_on=("neat: no\n# without solvent",),
-        silent_on=("neat: true\n# without solvent",),
+        silent_on=("neat: true\n# without solvent\nstages: [{temperature: 60 °C, time: 16 h}]",),
     ),
     card(
         id="duplicate-key",
@@ -139,7 +139,7 @@ READING_RULES: tuple[Rule[object, object], ...] = (
             "related: []\nsolvent: [{name: 1,4-dioxane, volume: 20 mL}]",
             "stages: [{add: [1,4-dioxane, sodium azide], temperature: 60 °C, time: 16 h}]",
         ),
-        silent_on=("solvent: [{name: '1,4-dioxane', volume: 20 mL}]",),
+        silent_on=("solvent: [{name: '1,4-dioxane', volume: 20 mL}]\nstages: [{temperature: 60 °C, time: 16 h}]",),
     ),
     card(
         id="nesting-too-deep",
@@ -273,8 +273,8 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         text="""A SMILES stands in single quotes.
 
         [OH-] becomes a list, *CC an alias, and inside double quotes the backslash of C\\C=C\\C is an escape.""",
-        fires_on=("nucleophile: {name: hydroxide, smiles: [OH-], equivalents: 1.5}",),
-        silent_on=("nucleophile: {name: hydroxide, smiles: '[OH-]', equivalents: 1.5}",),
+        fires_on=("nucleophile: {name: sodium azide, smiles: [Na+].[N-]=[N+]=[N-], equivalents: 1.5}",),
+        silent_on=("nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', equivalents: 1.5}",),
     ),
     card(
         id="tag-refused",

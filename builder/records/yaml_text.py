@@ -50,7 +50,11 @@ class Places:
     keys: Mapping[ValuePath, Place] = field(default_factory=dict)
 
     def of(self, path: ValuePath, *, on_key: bool = False) -> Place:
-        """Return the place of the value at `path`, or of the key of its nearest existing parent."""
+        """Return the place of the value at `path`, or of the key of its nearest existing parent.
+
+        A list of one may be written without its dash, so an index that is not in the file is passed over.
+        """
+        path = self._as_written(path)
         if path in self.values and not on_key:
             return self.values[path]
         while path:
@@ -60,6 +64,13 @@ class Places:
                 return self.values[path]
             path = path[:-1]
         return Place(self.file, 1, 1, 2)
+
+    def _as_written(self, path: ValuePath) -> ValuePath:
+        written: ValuePath = ()
+        for step in path:
+            if step != 0 or (*written, step) in self.values:
+                written = (*written, step)
+        return written
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,0 +1,39 @@
+"""Examples of rules played on the specimen record, as rule tests and corpus tests need them."""
+
+import datetime as dt
+import re
+
+from builder.book import Examined, examine, judge
+from builder.finding import Finding
+from builder.records.reader import read_bytes
+from builder.records.settings import Settings
+from builder.records.specimen import SPECIMEN_FILE, with_example
+
+TODAY = dt.date(2026, 12, 1)
+
+
+def examine_text(text: str | bytes, file: str = SPECIMEN_FILE, settings: Settings | None = None) -> Examined:
+    """Read and check one record."""
+    data = text if isinstance(text, bytes) else text.encode()
+    return examine(read_bytes(data, file), settings or Settings(format=1, title="A book for tests"), TODAY)
+
+
+def findings_of(text: str | bytes, file: str = SPECIMEN_FILE) -> tuple[Finding, ...]:
+    """Return the findings of one record alone in its book."""
+    return judge([examine_text(text, file)])[file]
+
+
+def play(example: str) -> tuple[Finding, ...]:
+    """Return all findings of an example: YAML over the specimen, further records behind `---`.
+
+    `# file: PATH` names the file of a record, `# retired: ID` an identifier that the settings retire.
+    """
+    retired = re.findall(r"^# retired: (\S+)$", example, re.MULTILINE)
+    settings = Settings(format=1, title="A book for tests", retired=tuple(retired))
+    parts = [part.removeprefix("\n") for part in re.split(r"^---$", example, flags=re.MULTILINE)]
+    examined = []
+    for part in parts:
+        named = re.search(r"^# file: (\S+)$", part, re.MULTILINE)
+        file = named[1] if named else SPECIMEN_FILE
+        examined.append(examine_text(with_example(part), file, settings))
+    return tuple(finding for found in judge(examined).values() for finding in found)
