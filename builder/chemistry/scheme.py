@@ -249,13 +249,16 @@ def _wide(groups: Sequence[Sequence[_Drawn]], arrows: Sequence[Arrow], width: fl
         if group and _rows_needed(group, scale, room) <= _MOST_ROWS_BESIDE_AN_ARROW:
             current = _side_by_side([with_arrow, _compounds(group, scale, room, centred=False)])
             continue
-        if room > -_GAP:
-            rows.append(with_arrow)
-            current = _compounds(group, scale, width, centred=False) if group else _EMPTY
-        else:
+        if room <= -_GAP:
+            # The arrow goes to the next row, with its compounds if they fit there.
             rows.append(current)
             room = width - arrow.box.width - _GAP
-            current = _side_by_side([arrow, _compounds(group, scale, room, centred=False)]) if group else arrow
+            if group and _widest_cell(group, scale) <= room:
+                current = _side_by_side([arrow, _compounds(group, scale, room, centred=False)])
+                continue
+            with_arrow = arrow
+        rows.append(with_arrow)
+        current = _compounds(group, scale, width, centred=False) if group else _EMPTY
     return _stacked([row for row in [*rows, current] if row.parts], _ROW_GAP, centred=False)
 
 
@@ -267,8 +270,12 @@ def _scale_to_fit(groups: Sequence[Sequence[_Drawn]], width: float) -> float:
     return max(_SMALLEST_SCALE, min(1.0, width / widest))
 
 
+def _widest_cell(group: Sequence[_Drawn], scale: float) -> float:
+    return max(_cell(drawn, scale).box.width for drawn in group)
+
+
 def _rows_needed(group: Sequence[_Drawn], scale: float, width: float) -> int:
-    if any(_cell(drawn, scale).box.width > width for drawn in group):
+    if _widest_cell(group, scale) > width:
         return len(group) + _MOST_ROWS_BESIDE_AN_ARROW
     return len(_broken_into_rows(group, scale, width))
 

@@ -364,7 +364,7 @@ def _bonds_to_wedge(
     here = centre.GetIdx()
     arms = [(bond, bond.GetOtherAtom(centre)) for bond in centre.GetBonds()]
     rays = [places[other.GetIdx()] - places[here] for _, other in arms]
-    costs = []
+    costs: list[tuple[tuple[int, ...], int]] = []
     for place, (bond, other) in enumerate(arms):
         ambiguity = _ambiguity(rays[place], [*rays[:place], *rays[place + 1 :]])
         cost = (

@@ -1,0 +1,27 @@
+"""Options and fixtures of the whole suite."""
+
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+
+GOLDEN = Path(__file__).parent / "golden"
+
+
+def pytest_addoption(parser: pytest.Parser) -> None:
+    parser.addoption("--update-golden", action="store_true", help="write golden files anew; read the diff like code")
+
+
+@pytest.fixture
+def golden(request: pytest.FixtureRequest) -> Callable[[str, str], None]:
+    """Compare text with the file of that name under tests/golden, or write it with --update-golden."""
+
+    def compare(name: str, text: str) -> None:
+        path = GOLDEN / name
+        if request.config.getoption("--update-golden"):
+            path.parent.mkdir(parents=True, exist_ok=True)
+            path.write_text(text, encoding="utf-8", newline="\n")
+        assert path.exists(), f"no {path}; run pytest --update-golden and read what it wrote"
+        assert text == path.read_text(encoding="utf-8")
+
+    return compare
