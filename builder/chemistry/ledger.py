@@ -362,7 +362,14 @@ def _piece(mol: Chem.Mol) -> Piece:
 
 
 def _rewrite_charges(mol: Chem.RWMol, atoms: list[Chem.Atom]) -> None:
-    """Draw P-O and S-O pairs of opposite charge with double bonds, and sulfinate S- with its charge on oxygen."""
+    """Draw opposite charges that cancel as bonds, and the charge of a sulfinate on oxygen.
+
+    P-O and S-O pairs become double bonds, O- on C=O+ an ester, C- beside C+ a double bond (a phenonium ion that
+    opens to its arene).
+    """
+    for atom in atoms:
+        if atom.GetFormalCharge() == 1 and atom.GetSymbol() in {"C", "O"}:
+            _cancel_on_carbon(mol, atom)
     for atom in atoms:
         charge = atom.GetFormalCharge()
         if not charge or atom.GetSymbol() not in {"P", "S"}:
@@ -381,3 +388,24 @@ def _rewrite_charges(mol: Chem.RWMol, atoms: list[Chem.Atom]) -> None:
             atom.SetFormalCharge(0)
             oxygen.SetFormalCharge(0 if charge == 1 else -1)
             break
+
+
+def _cancel_on_carbon(mol: Chem.RWMol, cation: Chem.Atom) -> None:
+    for bond in cation.GetBonds():
+        near = mol.GetAtomWithIdx(bond.GetOtherAtomIdx(cation.GetIdx()))
+        single = bond.GetBondType() == Chem.BondType.SINGLE
+        if cation.GetSymbol() == "C" and near.GetSymbol() == "C" and near.GetFormalCharge() == -1 and single:
+            bond.SetBondType(Chem.BondType.DOUBLE)
+            cation.SetFormalCharge(0)
+            near.SetFormalCharge(0)
+            return
+        if cation.GetSymbol() != "O" or near.GetSymbol() != "C" or single:
+            continue
+        for other in near.GetBonds():
+            oxygen = mol.GetAtomWithIdx(other.GetOtherAtomIdx(near.GetIdx()))
+            if oxygen.GetSymbol() == "O" and oxygen.GetFormalCharge() == -1:
+                other.SetBondType(Chem.BondType.DOUBLE)
+                bond.SetBondType(Chem.BondType.SINGLE)
+                cation.SetFormalCharge(0)
+                oxygen.SetFormalCharge(0)
+                return

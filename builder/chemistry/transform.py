@@ -27,12 +27,15 @@ __all__ = [
     "add_x2",
     "allylic_forms",
     "capture",
+    "carbocations",
     "course_between",
     "cyclise",
+    "diazotise",
     "eliminate",
     "fragment",
     "ionise",
     "ionise_with_shift",
+    "keto_form",
     "lose_proton",
     "migrating_groups",
     "protonate",
@@ -141,14 +144,15 @@ def eliminate(
 
     effect: ANTI or SYN decides E or Z wherever both carbons have a drawn configuration, and in small rings
     whether a hydrogen is there to take; NOT_DETERMINED gives every geometry (E1cB, E1). Where the beta carbon
-    has two hydrogens, or a configuration is undrawn, E and Z come out both. Empty if no hydrogen stands right,
+    has two hydrogens, or a configuration is undrawn, E and Z come out both. An enol is written as its ketone
+    or aldehyde. Empty if no hydrogen stands right,
     if there is none, or if the double bond would break Bredt's rule.
     """
     probe = Workbench(substrate)
     labelled = [n for n in probe.neighbours(beta_carbon) if _is_hydrogen(probe, n)]
     choices = ([HYDROGEN] if probe.hydrogens(beta_carbon) else []) + labelled
     found = [e for h in choices for e in _eliminate_one(substrate, site, beta_carbon, h, effect)]
-    return _distinct(found)
+    return _distinct(map(_as_ketone, found))
 
 
 def _eliminate_one(
@@ -334,7 +338,7 @@ def lose_proton(cation: Cation, neighbour: AtomId) -> tuple[Edit, ...]:
         pair = (centre, neighbour)
         effect = StereoEffect.NOT_APPLICABLE
         found += list(_with_geometries(bench, pair, None if ring else references, None, effect))
-    return tuple(_after_cation(edit, cation) for edit in _distinct(found))
+    return tuple(_after_cation(edit, cation) for edit in _distinct(map(_as_ketone, found)))
 
 
 def transpose_allylic(substrate: Structure, site: ReactiveSite, nucleophile: Nucleophile) -> tuple[Edit, ...]:
@@ -384,8 +388,8 @@ def protonate(substrate: Structure, site: ReactiveSite) -> Cation:
 def add_hx(substrate: Structure, site: ReactiveSite, nucleophile: Nucleophile) -> tuple[Edit, ...]:
     """Return the addition of H to `site.partner` and of the nucleophile to the alpha carbon, by SMILES.
 
-    Choosing the other end's site gives the other regioisomer. Alkynes give E and Z alkenes. New stereocentres
-    stay undrawn. Raises ValueError unless the site is the end of a multiple bond.
+    Choosing the other end's site gives the other regioisomer. Alkynes give E and Z alkenes, with water the
+    ketone. New stereocentres stay undrawn. Raises ValueError unless the site is the end of a multiple bond.
     """
     alpha, partner = site.alpha_carbon, _partner(site)
     bench = Workbench(substrate, _drawn_for_attack(nucleophile))
@@ -396,7 +400,8 @@ def add_hx(substrate: Structure, site: ReactiveSite, nucleophile: Nucleophile) -
     if order == 2:
         return (_edit(bench, alpha, StereoEffect.NOT_DETERMINED),)
     references = (bench.place(nucleophile.atom, 1), _reference(bench, partner, alpha, None))
-    return _distinct(_with_geometries(bench, (alpha, partner), references, None, StereoEffect.NOT_DETERMINED))
+    edits = _with_geometries(bench, (alpha, partner), references, None, StereoEffect.NOT_DETERMINED)
+    return _distinct(map(_as_ketone, edits))
 
 
 def add_x2(substrate: Structure, site: ReactiveSite, halogen: Structure) -> tuple[Edit, ...]:
@@ -491,6 +496,87 @@ def activate_hydroxyl(substrate: Structure, site: ReactiveSite, group: str) -> E
     bench.release_proton(oxygen)
     bench.join(oxygen, kept)
     return _edit(bench, site.alpha_carbon, effect)
+
+
+def diazotise(substrate: Structure, site: ReactiveSite) -> Edit:
+    """Return the diazonium ion a primary amine gives with nitrous acid and a proton, and the two waters.
+
+    Raises ValueError unless the site bears an NH2 group.
+    """
+    nitrogen = _leaving_atom(site)
+    if site.leaving_group != "amine" or substrate.atoms[nitrogen].hydrogens != 2:
+        raise ValueError(f"a {site.leaving_group} site bears no NH2 group")
+    acid = parse_smiles("O=NO")
+    bench = Workbench(substrate, acid)
+    central = bench.place(next(a.id for a in acid.atoms if a.symbol == "N"), 1)
+    for oxygen in bench.neighbours(central):
+        bench.cut(central, oxygen)
+        while bench.hydrogens(oxygen) < 2:
+            if bench.hydrogens(nitrogen):
+                bench.take_hydrogen(nitrogen)
+                bench.give_hydrogen(oxygen)
+            else:
+                bench.accept_proton(oxygen)
+    bench.join(nitrogen, central)
+    bench.set_order(nitrogen, central, 3)
+    bench.add_charge(nitrogen, 1)
+    effect = StereoEffect.NOT_APPLICABLE
+    if site.alpha_carbon in bench.centres:
+        effect = StereoEffect.RETENTION
+    return _edit(bench, site.alpha_carbon, effect)
+
+
+def keto_form(structure: Structure) -> Structure:
+    """Return the carbonyl form of a single species that is an enol; any other as it is. Phenols stay."""
+    return structure if len(structure.fragments) > 1 else _ketonised(structure)[0]
+
+
+def _ketonised(structure: Structure) -> tuple[Structure, dict[AtomId, AtomId]]:
+    """Return the carbonyl form and where each atom of the enol went."""
+    places = {at: at for at in range(len(structure.atoms))}
+    for _ in range(len(structure.atoms)):
+        enol = _find_enol(structure)
+        if enol is None:
+            break
+        oxygen, near, far = enol
+        bench = Workbench(structure)
+        bench.take_hydrogen(oxygen)
+        bench.set_order(near, far, 1)
+        bench.set_order(oxygen, near, 2)
+        bench.give_hydrogen(far)
+        piece = next(p for p in bench.settle() if oxygen in p.atoms)
+        structure = piece.structure
+        places = {old: piece.atoms[at] for old, at in places.items() if at in piece.atoms}
+    return structure, places
+
+
+def _find_enol(structure: Structure) -> tuple[AtomId, AtomId, AtomId] | None:
+    atoms = structure.atoms
+    for oxygen in atoms:
+        if oxygen.symbol != "O" or oxygen.hydrogens != 1 or oxygen.charge:
+            continue
+        for near, _ in oxygen.neighbours:
+            for far, order in atoms[near].neighbours:
+                if order == 2.0 and atoms[near].symbol == atoms[far].symbol == "C":
+                    return oxygen.id, near, far
+    return None
+
+
+def carbocations(structure: Structure) -> tuple[Cation, ...]:
+    """Return the structure as a carbocation, once for each carbon that bears a positive charge."""
+    same = {at: at for at in range(len(structure.atoms))}
+    return tuple(
+        Cation(
+            structure=structure,
+            centre=atom.id,
+            others=(),
+            protons_released=0,
+            memory=None,
+            from_substrate=same,
+        )
+        for atom in structure.atoms
+        if atom.symbol == "C" and atom.charge == 1
+    )
 
 
 def course_between(
@@ -810,6 +896,20 @@ def _after_cation(edit: Edit, cation: Cation) -> Edit:
         others=tuple(sorted((*edit.others, *cation.others))),
         protons_released=edit.protons_released + cation.protons_released,
         from_substrate={old: through[mid] for old, mid in cation.from_substrate.items() if mid in through},
+    )
+
+
+def _as_ketone(edit: Edit) -> Edit:
+    """Return an edit whose product, if it is an enol, is written as the ketone or aldehyde it becomes."""
+    product, places = _ketonised(edit.product)
+    if product == edit.product:
+        return edit
+    return replace(
+        edit,
+        product=product,
+        geometry=None,
+        from_substrate={old: places[new] for old, new in edit.from_substrate.items()},
+        from_nucleophile={old: places[new] for old, new in edit.from_nucleophile.items()},
     )
 
 

@@ -113,6 +113,8 @@ SITES = [
     ("CC1CS1", "thiirane", "primary secondary"),
     ("CC1C[S+]1C", "episulfonium", "primary secondary"),
     ("CC1C[Br+]1", "halonium", "primary secondary"),
+    ("CC1=[O+]C2CCCCC2O1", "acyloxonium", "secondary"),
+    ("CC1CC12C=CC=C[CH+]2", "phenonium", "primary secondary"),
     ("C1COC1", "oxetane", "primary"),
     ("CC[N+](C)(C)C", "ammonium", "primary methyl"),
     ("C[N+](C)(C)c1ccccc1", "ammonium", "methyl aryl"),

@@ -18,12 +18,15 @@ from builder.chemistry import (
     allylic_forms,
     attacking_atoms,
     capture,
+    carbocations,
     course_between,
     cyclise,
+    diazotise,
     eliminate,
     fragment,
     ionise,
     ionise_with_shift,
+    keto_form,
     leaving_group_names,
     lose_proton,
     migrating_groups,
@@ -522,3 +525,98 @@ def test_wrong_kinds_of_site_are_refused() -> None:
         protonate(bromide, _site(bromide))
     with pytest.raises(ValueError, match="no halogen molecule"):
         add_x2(alkene, _site(alkene), parse_smiles("CC"))
+
+
+def _opened(ion: Structure, group: str, nucleophile: str) -> list[str]:
+    return _products(tuple(substitute(ion, s, _nucleophile(nucleophile)) for s in sites_of(ion, group)))
+
+
+# Substrate, its leaving group, the group that takes part, the bridged ion's name, nucleophile, all products.
+DOUBLE_DISPLACEMENTS = [
+    # Winstein, Hess and Buckles, J. Am. Chem. Soc. 1942, 64, 2796 (from memory): the trans diacetate, racemic.
+    (
+        "CC(=O)O[C@@H]1CCCC[C@H]1OS(C)(=O)=O",
+        ("mesylate", "ester carbonyl", "acyloxonium"),
+        "CC(=O)[O-]",
+        ["CC(=O)O[C@@H]1CCCC[C@H]1OC(C)=O", "CC(=O)O[C@H]1CCCC[C@@H]1OC(C)=O"],
+    ),
+    # Cram, J. Am. Chem. Soc. 1949, 71, 3863 (from memory): threo tosylate gives racemic threo acetate.
+    (
+        "C[C@@H](OS(C)(=O)=O)[C@@H](C)c1ccccc1",
+        ("mesylate", "arene", "phenonium"),
+        "CC(=O)O",
+        ["C[C@@H](OC(C)=O)[C@@H](C)c1ccccc1", "C[C@H](OC(C)=O)[C@H](C)c1ccccc1"],
+    ),
+    # ... and the erythro one the erythro acetate, optically active.
+    (
+        "C[C@H](OS(C)(=O)=O)[C@@H](C)c1ccccc1",
+        ("mesylate", "arene", "phenonium"),
+        "CC(=O)O",
+        ["C[C@H](OC(C)=O)[C@@H](C)c1ccccc1"],
+    ),
+    # Winstein and Lucas, J. Am. Chem. Soc. 1939, 61, 1576 and 2845: erythro-3-bromo-2-butanol gives meso dibromide,
+    # threo racemic dibromide.
+    (
+        "C[C@H]([OH2+])[C@@H](C)Br",
+        ("water", "organohalide", "halonium"),
+        "[Br-]",
+        ["C[C@H](Br)[C@@H](C)Br"],
+    ),
+    (
+        "C[C@H]([OH2+])[C@H](C)Br",
+        ("water", "organohalide", "halonium"),
+        "[Br-]",
+        ["C[C@H](Br)[C@H](C)Br", "C[C@@H](Br)[C@@H](C)Br"],
+    ),
+    # Cowdrey, Hughes and Ingold, J. Chem. Soc. 1937, 1208 (from memory): retention through the alpha-lactone.
+    ("C[C@H](Br)C(=O)[O-]", ("bromide", "carboxylate", "carboxylate"), "O", ["C[C@H](O)C(=O)[O-]"]),
+    ("CCSC[C@H](C)Cl", ("chloride", "sulfide", "episulfonium"), "O", ["CCSC[C@H](C)O", "CCS[C@H](C)CO"]),
+]
+
+
+@pytest.mark.parametrize(("smiles", "groups", "nucleophile", "products"), DOUBLE_DISPLACEMENTS)
+def test_two_inversions_or_the_symmetry_of_the_ion_decide_the_course(
+    smiles: str, groups: tuple[str, str, str], nucleophile: str, products: list[str]
+) -> None:
+    leaving, kind, bridged = groups
+    substrate = parse_smiles(smiles)
+    participant = next(n for n in neighbouring_groups(substrate) if n.kind == kind)
+    ion = cyclise(substrate, _site(substrate, leaving), participant).product
+    assert sorted(set(_opened(ion, bridged, nucleophile))) == _canonical(*products)
+
+
+def test_amines_become_diazonium_ions() -> None:
+    amine = parse_smiles("CC[C@H](C)N")
+    edit = diazotise(amine, _site(amine, "amine"))
+    assert edit.product == parse_smiles("CC[C@H](C)[N+]#N")
+    assert [s.smiles for s in edit.others] == ["O", "O"]
+    assert (edit.protons_released, edit.effect) == (-1, StereoEffect.RETENTION)
+    with pytest.raises(ValueError, match="bears no NH2"):
+        diazotise(parse_smiles("CNC"), _site(parse_smiles("CNC")))
+
+
+@pytest.mark.parametrize(
+    ("enol", "ketone"),
+    [
+        ("C=C(C)O", "CC(C)=O"),
+        ("OC=C", "CC=O"),
+        ("OC1=CCCCC1", "O=C1CCCCC1"),
+        ("Oc1ccccc1", "Oc1ccccc1"),
+        ("CCO", "CCO"),
+        ("OC=CO", "O=CCO"),
+    ],
+)
+def test_enols_are_written_as_carbonyl_compounds(enol: str, ketone: str) -> None:
+    assert keto_form(parse_smiles(enol)) == parse_smiles(ketone)
+
+
+def test_an_enol_made_by_an_edit_comes_out_as_the_ketone() -> None:
+    alkyne = parse_smiles("C#CC")
+    inner = next(s for s in sites_of(alkyne, "none") if s.carbon_neighbours == 2)
+    assert _products(add_hx(alkyne, inner, _nucleophile("O"))) == _canonical("CC(C)=O")
+
+
+def test_a_drawn_carbocation_can_be_captured() -> None:
+    (cation,) = carbocations(parse_smiles("C[C+](C)C"))
+    assert _products(capture(cation, _nucleophile("O"))) == _canonical("CC(C)(C)O")
+    assert carbocations(parse_smiles("CC")) == ()
