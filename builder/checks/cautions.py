@@ -6,11 +6,12 @@ are searched for names. It is a screen, never a clearance: local rules and quali
 """
 
 import re
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import cache, cached_property, lru_cache
 from importlib import resources
+from textwrap import shorten
 
 from builder.checks.case import Case
 from builder.chemistry.fragments import Fragment
@@ -76,7 +77,11 @@ class Role(StrEnum):
 
     FLASK = "flask"
     PRODUCT = "product"
-    TEXT = "text"
+    WORK_UP = "work-up"
+    NOTE = "note"
+
+
+_TEXT = frozenset({Role.WORK_UP, Role.NOTE})
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,8 +95,13 @@ class Present:
 
     @property
     def shown(self) -> str:
-        """Return the name, a line of text in quotes."""
-        return f'"{self.name}"' if self.role is Role.TEXT else self.name
+        """Return the name; a line of text is shortened and put in quotes."""
+        return f'"{shorten(self.name, 80, placeholder=" …")}"' if self.role in _TEXT else self.name
+
+    @property
+    def kinds(self) -> frozenset[str]:
+        """Return the names of the kinds it belongs to, or which the text names without denying them."""
+        return _kinds_of(self.structure) if self.structure is not None else _kinds_named_in(self.name)
 
 
 @dataclass(frozen=True)
@@ -102,12 +112,6 @@ class SubstanceKind:
     fragments: tuple[Fragment, ...]
     words: tuple[str, ...]
     note: str
-
-    def fits(self, present: Present) -> bool:
-        """Answer whether the substance is of this kind, or the text names one that is and does not deny it."""
-        if present.structure is not None:
-            return self.name in _kinds_of(present.structure)
-        return self.is_named_in(present.name)
 
     def is_named_in(self, text: str) -> bool:
         """Answer whether the text names such a substance; "no acid" and "acid-free" do not."""
@@ -213,12 +217,12 @@ def presents_of(case: Case) -> tuple[Present, ...]:
 
 def _texts(case: Case) -> Iterator[Present]:
     for index, line in enumerate(case.record.work_up or ()):
-        yield Present(("work_up", index), line, Role.TEXT)
+        yield Present(("work_up", index), line, Role.WORK_UP)
     for index, stage in enumerate(case.record.stages):
         if stage.note:
-            yield Present(("stages", index, "note"), stage.note, Role.TEXT)
+            yield Present(("stages", index, "note"), stage.note, Role.NOTE)
     if case.record.procedure:
-        yield Present(("procedure",), case.record.procedure, Role.TEXT)
+        yield Present(("procedure",), case.record.procedure, Role.NOTE)
 
 
 def _substance(case: Case, path: Path, compound: Compound, role: Role) -> Present:
@@ -238,35 +242,85 @@ def find_hazards(presents: Sequence[Present], hottest_c: float) -> tuple[Hazard,
     hottest_c: highest temperature of any stage, °C. A pair shows at the line of text that names a partner, else at
     the second partner.
     """
-    return tuple(hazard for caution in load_cautions() for hazard in _hazards_of(caution, presents, hottest_c))
+    by_kind: dict[str, list[Present]] = {}
+    for present in presents:
+        for kind in present.kinds:
+            by_kind.setdefault(kind, []).append(present)
+    return tuple(hazard for caution in load_cautions() for hazard in _hazards_of(caution, by_kind, hottest_c))
 
 
-def _hazards_of(caution: Caution, presents: Sequence[Present], hottest_c: float) -> Iterator[Hazard]:
+def _hazards_of(caution: Caution, by_kind: Mapping[str, Sequence[Present]], hottest_c: float) -> Iterator[Hazard]:
     firsts = [
         present
-        for present in presents
-        if caution.first.fits(present) and (caution.condition is None or caution.condition.holds(present, hottest_c))
+        for present in by_kind.get(caution.first.name, ())
+        if caution.condition is None or caution.condition.holds(present, hottest_c)
     ]
     if caution.second is None:
-        yield from (Hazard(caution, present) for present in firsts if present.role is not Role.TEXT)
+        yield from (Hazard(caution, present) for present in firsts if present.role not in _TEXT)
         return
-    roles = {Role.FLASK} if caution.kind is CautionKind.SOLUTION else {Role.FLASK, Role.TEXT}
-    seconds = [present for present in presents if caution.second.fits(present)]
+    seconds = by_kind.get(caution.second.name, ())
+    if not firsts or not seconds:
+        return
     meetings: dict[Present, list[Present]] = {}
-    for first in firsts:
-        for second in seconds:
-            if first.role in roles and second.role in roles and (first is not second or first.role is Role.TEXT):
-                at, other = (
-                    (first, second) if first.role is Role.TEXT and second.role is not Role.TEXT else (second, first)
-                )
-                meetings.setdefault(at, []).append(other)
+    for at, other in _meetings(caution, firsts, seconds):
+        meetings.setdefault(at, []).append(other)
     yield from (Hazard(caution, at, tuple(others)) for at, others in meetings.items())
+
+
+def _meetings(
+    caution: Caution, firsts: Sequence[Present], seconds: Sequence[Present]
+) -> Iterator[tuple[Present, Present]]:
+    """Yield (where it shows, what it meets there) for a pair.
+
+    What was charged counts first, then the work-up, every line of it for a `stop` and the first for others. A note
+    counts only where nothing else shows the pair; two lines of text only for a `stop` of which nothing was charged.
+    """
+    charged = [(second, first) for first in _in(firsts, Role.FLASK) for second in _in(seconds, Role.FLASK)]
+    charged = [(at, other) for at, other in charged if at is not other]
+    yield from charged
+    if caution.kind is CautionKind.SOLUTION:
+        return
+    is_grave = caution.severity is Severity.STOP
+    named = list(_named(firsts, seconds, Role.WORK_UP))
+    if not charged and not named:
+        named = list(_named(firsts, seconds, Role.NOTE))
+    if not charged and not named and is_grave:
+        named = [(at, other) for other in _in(firsts, *_TEXT) for at in _in(seconds, *_TEXT)]
+    yield from (named if is_grave else [(at, other) for at, other in named if at is named[0][0]])
+
+
+def _named(firsts: Sequence[Present], seconds: Sequence[Present], role: Role) -> Iterator[tuple[Present, Present]]:
+    """Yield the pairs of which one partner is charged and the other named in a text of this role."""
+    yield from ((at, other) for other in _in(firsts, Role.FLASK) for at in _in(seconds, role))
+    if not _in(firsts, Role.FLASK):
+        yield from ((at, other) for other in _in(seconds, Role.FLASK) for at in _in(firsts, role))
+
+
+def _in(presents: Sequence[Present], *roles: Role) -> list[Present]:
+    return [present for present in presents if present.role in roles]
+
+
+_HYDROGEN_HALIDES = frozenset({"Cl", "Br", "I"})
 
 
 @lru_cache(maxsize=4096)
 def _kinds_of(structure: Structure) -> frozenset[str]:
+    """Return the kinds a structure belongs to; an amine drawn beside HCl is its hydrochloride."""
+    pieces = {piece.smiles: _kinds_of_piece(piece) for piece in structure.fragments}
+    if _HYDROGEN_HALIDES & pieces.keys() and any("basic amine" in kinds for kinds in pieces.values()):
+        pieces = {smiles: kinds for smiles, kinds in pieces.items() if smiles not in _HYDROGEN_HALIDES}
+        pieces["hydrochloride"] = frozenset({"alkylammonium salt"})
+    return frozenset().union(*pieces.values())
+
+
+def _kinds_of_piece(piece: Structure) -> frozenset[str]:
     kinds = load_substance_kinds().values()
-    return frozenset(kind.name for kind in kinds if any(fragment.is_in(structure) for fragment in kind.fragments))
+    return frozenset(kind.name for kind in kinds if any(fragment.is_in(piece) for fragment in kind.fragments))
+
+
+@lru_cache(maxsize=4096)
+def _kinds_named_in(text: str) -> frozenset[str]:
+    return frozenset(kind.name for kind in load_substance_kinds().values() if kind.is_named_in(text))
 
 
 def _size(measure: Measure, structure: Structure | None) -> float | None:
@@ -285,7 +339,8 @@ def _size(measure: Measure, structure: Structure | None) -> float | None:
 _PH_RANGE = re.compile(r"pH (\d+)-(\d+)")
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
 _DENIAL = re.compile(
-    r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|instead of|rather than)\b", re.IGNORECASE
+    r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|apart from|away from|instead of|rather than)\b",
+    re.IGNORECASE,
 )
 _CLAUSE_END = re.compile(r"[,;:()]|\.\s|\bbut\b|\bthen\b")
 _REACH_OF_DENIAL = 4  # words: "never let it touch copper"
@@ -293,7 +348,7 @@ _REACH_OF_DENIAL = 4  # words: "never let it touch copper"
 
 def _word_pattern(word: str) -> re.Pattern[str]:
     flags = re.NOFLAG if re.search("[A-Z]", word) else re.IGNORECASE
-    return re.compile(rf"(?<![A-Za-z0-9]){re.escape(word)}(?![A-Za-z0-9]|-free)", flags)
+    return re.compile(rf"(?<![A-Za-z0-9·•]){re.escape(word)}(?![A-Za-z0-9]|-free)", flags)
 
 
 def _is_denied(text: str, start: int) -> bool:

@@ -51,7 +51,7 @@ def experiment(example: str) -> tuple[list[Present], float]:
         if part.startswith("@"):
             hottest_c = float(part[1:])
         elif part.startswith('"'):
-            presents.append(Present(("work_up", index), part.strip('"'), Role.TEXT))
+            presents.append(Present(("work_up", index), part.strip('"'), Role.WORK_UP))
         else:
             presents.append(Present(("reagents", index), part, Role.FLASK, parse_smiles(part)))
     return presents, hottest_c
@@ -81,7 +81,7 @@ def test_row_reads_well(caution: Caution) -> None:
 
 def test_every_kind_of_substance_is_used() -> None:
     used = {kind.name for caution in load_cautions() for kind in (caution.first, caution.second) if kind}
-    assert used == set(load_substance_kinds())
+    assert used | {"basic amine"} == set(load_substance_kinds())
 
 
 SODIUM_AZIDE = "[Na+].[N-]=[N+]=[N-]"
@@ -147,6 +147,7 @@ def test_pair_is_flagged_whichever_is_listed_first(first: str, second: str) -> N
         (SODIUM_AZIDE, "CCCCCC[C@H](C)OS(C)(=O)=O"),
         (SODIUM_AZIDE, "OC(=O)[O-].[Na+]"),
         (SODIUM_AZIDE, "CN(C)C=O"),
+        (SODIUM_AZIDE, "CCN(CC)CC"),
         ("CCCCN=[N+]=[N-]", "CC(=O)O"),
         ("CCC#N", "Cl"),
         ("[C-]#[N+]C(C)C", "Cl"),
@@ -191,6 +192,7 @@ def test_work_up_that_endangers_an_azide(line: str) -> None:
         "wash with water, no acid",
         "do not acidify",
         "acid-free workup",
+        "waste: azide water kept basic and apart from acid",
         "never let it touch copper",
         "extract with MTBE instead of dichloromethane",
         "not below pH 5",
@@ -199,6 +201,22 @@ def test_work_up_that_endangers_an_azide(line: str) -> None:
 )
 def test_work_up_that_suits_an_azide(line: str) -> None:
     assert not [hazard for hazard in find_hazards(*experiment(f'{SODIUM_AZIDE} ++ "{line}"')) if hazard.others]
+
+
+@pytest.mark.parametrize("drawn", ["CNC.Cl", "C[NH2+]C.[Cl-]"])
+def test_an_amine_hydrochloride_is_no_mineral_acid_however_drawn(drawn: str) -> None:
+    assert {"azide-alkylammonium"} == {
+        h.caution.id for h in find_hazards(*experiment(f"{SODIUM_AZIDE} ++ {drawn}")) if h.others
+    }
+
+
+def test_text_is_quoted_once_and_only_where_it_adds_something() -> None:
+    bleach = f'{POTASSIUM_CYANIDE} ++ "cyanide water into bleach" ++ "bleach decanted"'
+    assert [h.at.path for h in find_hazards(*experiment(bleach)) if h.others] == [("work_up", 1)]
+    only_text = 'CCO ++ "wash with NaOH" ++ "extract with chloroform"'
+    assert [h.caution.id for h in find_hazards(*experiment(only_text)) if h.others] == ["chloroform-strong-base"]
+    mild = 'CCO ++ "wash with bleach" ++ "wash with KI"'
+    assert not find_hazards(*experiment(mild))
 
 
 @pytest.mark.parametrize(
