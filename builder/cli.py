@@ -40,7 +40,7 @@ _JSON = click.option("--json", "as_json", is_flag=True, help="Print JSON for mac
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(package_name="condition-handbook")
 def handbook() -> None:
-    r"""Check, draw and publish a group's reaction conditions.
+    """Check, draw and publish a group's reaction conditions.
 
     \b
     Example:
@@ -62,10 +62,14 @@ def handbook() -> None:
     help="The lightest level that makes the command fail.",
 )
 @click.option(
-    "--only", type=click.Choice([level.value for level in Level]), help="Show this level and what is heavier."
+    "--show",
+    type=click.Choice([level.value for level in Level]),
+    help="The lightest level to show.  [default: query; remark for FILES and JSON]",
 )
-def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, only: str | None) -> None:
-    r"""Check every record of the book, or show the findings of FILES only.
+def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, show: str | None) -> None:
+    """Check every record of the book, or show the findings of FILES only.
+
+    Accepted queries are shown with the remarks.
 
     \b
     Example:
@@ -74,8 +78,12 @@ def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, only
     """
     opened = _open(book)
     shown = _selected(opened, files, book)
-    threshold = Level(only) if only else (Level.REMARK if as_json or files else Level.CAUTION)
-    visible = [finding for finding in shown if finding.level.weight >= threshold.weight]
+    threshold = Level(show) if show else (Level.REMARK if as_json or files else Level.QUERY)
+    visible = [
+        finding
+        for finding in shown
+        if finding.level.weight >= threshold.weight and (finding.accepted is None or threshold is Level.REMARK)
+    ]
     if as_json:
         click.echo(render_json(visible))
     else:
@@ -89,7 +97,7 @@ def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, only
 @click.option("--site", type=click.Path(file_okay=False, path_type=Path), default=Path("site"), show_default=True)
 @_BOOK
 def build(config: Path, site: Path, book: Path) -> None:
-    r"""Check the book and publish it as a static site.
+    """Check the book and publish it as a static site.
 
     A failed build leaves the last good site as it was.
 
@@ -115,7 +123,7 @@ def build(config: Path, site: Path, book: Path) -> None:
 @click.option("--config", type=click.Path(exists=True, dir_okay=False, path_type=Path), default=Path("mkdocs.yml"))
 @click.option("--address", default="127.0.0.1:8000", show_default=True, help="Where to serve.")
 def serve(config: Path, address: str) -> None:
-    r"""Serve the book on this machine and rebuild it on every change.
+    """Serve the book on this machine and rebuild it on every change.
 
     \b
     Example:
@@ -130,7 +138,7 @@ def serve(config: Path, address: str) -> None:
 @click.option("--by", "person", default="bench-1", show_default=True, help="Your code.")
 @_BOOK
 def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> None:
-    r"""Write a new record for SUBSTRATE (a SMILES) under a fresh identifier.
+    """Write a new record for SUBSTRATE (a SMILES) under a fresh identifier.
 
     \b
     Example:
@@ -149,7 +157,7 @@ def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> Non
 @click.option("--print", "to_terminal", is_flag=True, help="Print the record schema instead of writing files.")
 @_BOOK
 def schema(to_terminal: bool, book: Path) -> None:
-    r"""Write the JSON Schemas of records and settings, to which editors bind.
+    """Write the JSON Schemas of records and settings, to which editors bind.
 
     \b
     Example:
@@ -167,7 +175,7 @@ def schema(to_terminal: bool, book: Path) -> None:
 @click.argument("rule_id", required=False)
 @_JSON
 def rule(rule_id: str | None, as_json: bool) -> None:
-    r"""Explain one rule, or list them all.
+    """Explain one rule, or list them all.
 
     \b
     Example:

@@ -7,6 +7,7 @@ from pathlib import Path
 from builder.chemistry.perception import attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.records.identifiers import mint_identifier
+from builder.records.specimen import GAP
 from builder.records.yaml_text import quoted
 
 __all__ = ["new_record", "write_new_record"]
@@ -21,25 +22,25 @@ title: {title}
 performed:
   date: {date}
   by: [{person}]
-notebook: {todo}
+notebook: {gap}
 substrate:
-  name: {todo}
+  name: {gap}
   smiles: {substrate}
   stereo: {stereo}
   class: [{classes}]
   leaving_group: {leaving_group}
-  mass: {todo}
+  mass: {gap}
 nucleophile:
   name: {nucleophile_name}
   smiles: {nucleophile}
   equivalents: 1.5
 solvent:
-  - name: {todo}
-    volume: {todo}
+  - name: {gap}
+    volume: {gap}
 stages:
-  - temperature: {todo}
+  - temperature: {gap}
     measured: internal
-    time: {todo}
+    time: {gap}
     vessel: open
     atmosphere: nitrogen
 outcome:
@@ -50,14 +51,13 @@ outcome:
     basis: [product structure]
   products:
     - label: A
-      name: {todo}
-      smiles: {todo}
+      name: {gap}
+      smiles: {gap}
       use: desired
   measured:
-    - {{yield: {todo}, of: A, kind: isolated}}
+    - {{yield: {gap}, of: A, kind: isolated}}
 evidence: [1H NMR]
 """
-TODO = "TO FILL IN"
 
 
 def new_record(substrate: str, nucleophile: str | None, *, entry: str, date: dt.date, person: str, schema: str) -> str:
@@ -70,16 +70,16 @@ def new_record(substrate: str, nucleophile: str | None, *, entry: str, date: dt.
     return _SKELETON.format(
         schema=schema,
         entry=entry,
-        title=f"{TODO}: what was made from what",
+        title=f"{GAP} (what was made from what)",
         date=date.isoformat(),
         person=person,
-        todo=TODO,
+        gap=GAP,
         substrate=quoted(substrate),
         stereo=_stereo(structure),
-        classes=", ".join(sorted(site.classes)) if site else TODO,
+        classes=", ".join(sorted(site.classes)) if site else GAP,
         leaving_group=site.leaving_group if site else "none",
-        nucleophile_name=_kind(nucleophile) if nucleophile else TODO,
-        nucleophile=quoted(nucleophile) if nucleophile else quoted(TODO),
+        nucleophile_name=_kind(nucleophile) if nucleophile else GAP,
+        nucleophile=quoted(nucleophile) if nucleophile else quoted(GAP),
         course="not determined" if structure.stereocentres.total else "not applicable",
     )
 
@@ -108,4 +108,4 @@ def _stereo(structure: Structure) -> str:
 
 def _kind(smiles: str) -> str:
     found = attacking_atoms(parse_smiles(smiles))
-    return f"{TODO} ({found[0].kind})" if found else TODO
+    return f"{GAP} ({found[0].kind})" if found else GAP

@@ -3,12 +3,14 @@
 from collections import Counter
 from collections.abc import Iterator
 
+from pydantic import BaseModel
+
 from builder.checks.case import Case
 from builder.finding import Level
 from builder.mechanism.amounts import Role, charged_rows
 from builder.records.model import Solvent
 from builder.records.quantities import Dimension
-from builder.records.specimen import ONE_PRODUCT, TWO_PRODUCTS, outcome_example
+from builder.records.specimen import GAP, ONE_PRODUCT, TWO_PRODUCTS, outcome_example
 from builder.rule import Fault, Path, rule
 
 __all__ = ["FORM_CHECKS"]
@@ -138,6 +140,23 @@ def fractions_do_not_add_up(case: Case) -> Iterator[Fault]:
         yield Fault(
             at=("solvent",), message=f"the fractions add up to {sum(fractions):g} %", mend="correct them to 100 %"
         )
+
+
+@rule(
+    id="gap-left-open",
+    title="A gap of the skeleton is still open",
+    source="record-format",
+    fires_on=(f"notebook: {GAP}",),
+    silent_on=("notebook: BK2/112",),
+)
+def gap_is_left_open(case: Case) -> Iterator[Fault]:
+    """What `handbook new` left to fill in is filled in.
+
+    A key that nobody can fill is taken out, so that its absence is seen.
+    """
+    for path, text in _texts(case.record):
+        if GAP in text:
+            yield Fault(at=path, message="this is still to fill in", mend="write the value, or drop the key")
 
 
 @rule(
@@ -308,22 +327,32 @@ def text_says_nothing(case: Case) -> Iterator[Fault]:
 
     "Worked well", "standard work-up" and "dry solvent" mean something else to every reader.
     """
-    record = case.record
-    texts: list[tuple[Path, str]] = [(("title",), record.title)]
-    texts += [(("take_away",), record.take_away)] if record.take_away else []
-    texts += [(("work_up", i), line) for i, line in enumerate(record.work_up or ())]
-    texts += [(("stages", i, "note"), stage.note) for i, stage in enumerate(record.stages) if stage.note]
-    for path, text in texts:
-        for vague in ("worked well", "standard work-up", "standard workup", "usual work-up", "as usual"):
+    for path, text in _texts(case.record):
+        for vague in _VAGUE:
             if vague in text.casefold():
                 yield Fault(at=path, message=f'"{vague}" says nothing', mend="write what was done, with numbers")
 
+
+def _texts(part: object, path: Path = ()) -> Iterator[tuple[Path, str]]:
+    """Yield every text of a record with its path."""
+    if isinstance(part, BaseModel):
+        for name, info in type(part).model_fields.items():
+            yield from _texts(getattr(part, name), (*path, info.alias or name))
+    elif isinstance(part, tuple):
+        for index, item in enumerate(part):
+            yield from _texts(item, (*path, index))
+    elif isinstance(part, str):
+        yield path, part
+
+
+_VAGUE = ("worked well", "standard work-up", "standard workup", "usual work-up", "as usual")
 
 FORM_CHECKS = (
     course_stands_twice,
     dates_are_out_of_order,
     entry_is_not_file_name,
     fractions_do_not_add_up,
+    gap_is_left_open,
     label_stands_twice,
     label_is_unknown,
     quantity_is_missing,

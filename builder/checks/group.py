@@ -1,7 +1,7 @@
 """The record against the rest of the book."""
 
 from collections import defaultdict
-from collections.abc import Callable, Hashable, Iterator, Sequence
+from collections.abc import Callable, Hashable, Iterator
 from dataclasses import dataclass
 
 from builder.checks.case import Case
@@ -68,7 +68,7 @@ def entry_stands_twice(book: Gathering) -> Found:
     Two branches can each be right and collide when both are merged; then one of the entries takes a new identifier.
     """
     mend = "give the younger record a new one (`handbook new`)"
-    yield from _repeated(book.members, lambda case: case.record.entry, ("entry",), "the identifier stands in {0} too", mend)
+    yield from _repeated(book, lambda case: case.record.entry, ("entry",), "the identifier stands in {0} too", mend)
 
 
 @rule(
@@ -85,7 +85,7 @@ def notebook_page_stands_twice(book: Gathering) -> Found:
     The same page in two records is usually one experiment entered twice.
     """
     mend = "merge the two, correct the page, or accept this with the reason"
-    yield from _repeated(book.members, lambda case: case.record.notebook, ("notebook",), "this page stands in {0} too", mend)
+    yield from _repeated(book, lambda case: case.record.notebook, ("notebook",), "this page stands in {0} too", mend)
 
 
 @rule(
@@ -121,7 +121,7 @@ def title_stands_twice(book: Gathering) -> Found:
     In a list two equal lines cannot be told apart: the difference between the runs belongs into the title.
     """
     mend = "say in the title what is different"
-    yield from _repeated(book.members, lambda case: case.record.title.casefold(), ("title",), "{0} has this title too", mend)
+    yield from _repeated(book, lambda case: case.record.title.casefold(), ("title",), "{0} has this title too", mend)
 
 
 GROUP_CHECKS = (
@@ -133,10 +133,10 @@ GROUP_CHECKS = (
 )
 
 
-def _repeated(members: Sequence[Member], key: Callable[[Case], Hashable], at: Path, message: str, mend: str) -> Found:
+def _repeated(book: Gathering, key: Callable[[Case], Hashable], at: Path, message: str, mend: str) -> Found:
     """Yield a fault on every member whose key another member shares; message gets the other's file."""
     sharing: defaultdict[Hashable, list[Member]] = defaultdict(list)
-    for member in members:
+    for member in book.members:
         if key(member.case) is not None:
             sharing[key(member.case)].append(member)
     for group in sharing.values():

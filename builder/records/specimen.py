@@ -4,12 +4,15 @@ import re
 from functools import cache
 from importlib import resources
 
-__all__ = ["SPECIMEN_FILE", "outcome_example", "specimen_text", "with_example"]
+__all__ = ["GAP", "SPECIMEN_FILE", "outcome_example", "specimen_text", "with_example"]
 
 SPECIMEN_FILE = "NS4T9XQ2N.yml"
 _BLOCK = re.compile(r"^(?P<key>[A-Za-z_]+):.*(?:\n(?:[ \-].*|$))*", re.MULTILINE)
 _WITHOUT = re.compile(r"^# without (?P<key>[a-z_]+)$", re.MULTILINE)
 
+
+GAP = "TO FILL IN"
+"""What a skeleton leaves to the writer; a record that still holds it is not finished."""
 
 ONE_PRODUCT = "{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]', use: desired}"
 TWO_PRODUCTS = f"{ONE_PRODUCT}, {{label: B, name: but-1-ene, smiles: 'C=CCC', use: by-product}}"

@@ -57,4 +57,4 @@ def test_two_swapped_neighbours_are_seen(text: str, place: int) -> None:
 
 def test_the_alphabet_is_that_of_crockford() -> None:
     # Crockford, Base 32 (crockford.com, from memory): digits and capitals without I, L, O, U.
-    assert CROCKFORD == "".join(c for c in string.digits + string.ascii_uppercase if c not in "ILOU")
+    assert "".join(c for c in string.digits + string.ascii_uppercase if c not in "ILOU") == CROCKFORD

@@ -1,0 +1,254 @@
+"""The command at its edges: exit codes, JSON, help with examples, nothing half-written."""
+
+import json
+import shutil
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+
+import click
+import pytest
+
+from builder import cli
+from builder.records.identifiers import is_identifier
+from builder.records.reader import read_record
+from builder.records.specimen import specimen_text, with_example
+
+GOOD = Path(__file__).parent / "data" / "records" / "good"
+
+
+@dataclass(frozen=True)
+class Ran:
+    """What one call of the command did."""
+
+    code: int
+    out: str
+    err: str
+
+
+Run = Callable[..., Ran]
+
+
+@pytest.fixture
+def book(tmp_path: Path) -> Path:
+    folder = tmp_path / "entries"
+    (folder / "azides").mkdir(parents=True)
+    (folder / "handbook.yml").write_text("format: 1\ntitle: A book for tests\n", "utf-8")
+    (folder / "azides" / "NS4T9XQ2N.yml").write_text(specimen_text(), "utf-8")
+    return folder
+
+
+@pytest.fixture
+def run(capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch) -> Run:
+    monkeypatch.setenv("SOURCE_DATE_EPOCH", "1796083200")  # 2026-12-01
+
+    def call(*arguments: str | Path) -> Ran:
+        with pytest.raises(SystemExit) as stop:
+            cli.main([str(argument) for argument in arguments])
+        out, err = capsys.readouterr()
+        return Ran(int(stop.value.code or 0), out, err)
+
+    return call
+
+
+def _break(book: Path, example: str) -> None:
+    (book / "azides" / "NS4T9XQ2N.yml").write_text(with_example(example), "utf-8")
+
+
+def test_a_clean_book_is_quiet(run: Run, book: Path) -> None:
+    ran = run("check", "--book", book)
+    assert ran.out.startswith("1 record checked: ")
+    assert ran.out.count("\n") == 1
+    assert "error" not in ran.out
+    assert (ran.code, ran.err) == (0, "")
+
+
+LEVELS = [
+    # fault, --fail-on, exit code
+    ("status: finished", "error", 1),
+    ("take_away: fine", "error", 0),
+    ("accepted: [{finding: mechanism-contrary, because: 'for the test', by: bench-1}]", "error", 0),
+    ("accepted: [{finding: mechanism-contrary, because: 'for the test', by: bench-1}]", "query", 1),
+    ("take_away: fine", "caution", 1),
+]
+
+
+@pytest.mark.parametrize(("fault", "fail_on", "code"), LEVELS)
+def test_exit_code_follows_the_failing_level(run: Run, book: Path, fault: str, fail_on: str, code: int) -> None:
+    _break(book, fault)
+    assert run("check", "--book", book, "--fail-on", fail_on).code == code
+
+
+def test_one_bad_record_does_not_hide_another(run: Run, book: Path) -> None:
+    _break(book, "status: finished")
+    second = "entry: NS7K3QFMC\ntitle: Another\nnotebook: BK2/113\nstages: [{temperature: 60, time: 16 h}]"
+    (book / "NS7K3QFMC.yml").write_text(with_example(second), "utf-8")
+    ran = run("check", "--book", book)
+    assert "value-not-permitted" in ran.out
+    assert "quantity-without-unit" in ran.out
+    assert ran.code == 1
+
+
+def test_a_reference_to_an_unreadable_record_is_no_second_fault(run: Run, book: Path) -> None:
+    _break(book, "status: finished")
+    second = "entry: NS7K3QFMC\ntitle: Another\nnotebook: BK2/113\nrelated: [NS4T9XQ2N]"
+    (book / "NS7K3QFMC.yml").write_text(with_example(second), "utf-8")
+    assert "reference-unknown" not in run("check", "--book", book).out
+
+
+def test_a_typo_is_shown_with_its_line(run: Run, book: Path) -> None:
+    _break(book, "stages: [{temperature: 60, time: 16 h}]")
+    ran = run("check", "--book", book)
+    line = (
+        with_example("stages: [{temperature: 60, time: 16 h}]")
+        .splitlines()
+        .index("stages: [{temperature: 60, time: 16 h}]")
+    )
+    assert ran.out == (
+        f"entries/azides/NS4T9XQ2N.yml:{line + 1}:24: error quantity-without-unit: temperature has no unit\n"
+        f"     {line + 1} | stages: [{{temperature: 60, time: 16 h}}]\n"
+        "        |                        ^^\n"
+        "  why:  Every quantity carries its unit.\n"
+        '  fix:  write "60 °C" or "333 K"\n'
+        "  more: handbook rule quantity-without-unit\n\n"
+        "1 record checked: 1 error\n"
+    )
+
+
+def test_json_has_stable_keys(run: Run, book: Path) -> None:
+    _break(book, "status: finished")
+    ran = run("check", "--book", book, "--json")
+    (finding,) = json.loads(ran.out)["findings"]
+    wanted = {"rule", "level", "message", "why", "mend", "fix", "source", "file", "line", "column", "accepted", "data"}
+    assert wanted <= set(finding)
+    assert (finding["rule"], finding["level"], finding["column"]) == ("value-not-permitted", "error", 9)
+    assert ran.code == 1
+
+
+def test_only_the_named_files_are_shown(run: Run, book: Path) -> None:
+    _break(book, "status: finished")
+    second = book / "NS7K3QFMC.yml"
+    second.write_text(with_example("entry: NS7K3QFMC\ntitle: Another\nnotebook: BK2/113"), "utf-8")
+    ran = run("check", second, "--book", book)
+    assert "value-not-permitted" not in ran.out
+    assert ran.code == 0
+
+
+MISUSE = [
+    ("check", "--book", "nowhere"),
+    ("check", "--fail-on", "doom"),
+    ("rule", "no-such-rule"),
+    ("frobnicate",),
+]
+
+
+@pytest.mark.parametrize("arguments", MISUSE, ids=" ".join)
+def test_misuse_exits_2_with_one_message(run: Run, arguments: tuple[str, ...]) -> None:
+    ran = run(*arguments)
+    assert ran.code == 2
+    assert ran.out == ""
+    assert ran.err.count("Error:") == 1
+
+
+def test_our_fault_exits_3_without_a_traceback(run: Run, book: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def explode(*_: object, **__: object) -> None:
+        raise RuntimeError("boom")
+
+    monkeypatch.setattr(cli, "open_book", explode)
+    ran = run("check", "--book", book)
+    assert ran.code == 3
+    assert "our fault: RuntimeError: boom" in ran.err
+    assert "Traceback" not in ran.err
+
+
+@pytest.mark.parametrize("command", sorted(cli.handbook.commands))
+def test_every_command_shows_an_example(run: Run, command: str) -> None:
+    ran = run(command, "--help")
+    assert ran.code == 0
+    assert f"  Example:\n    handbook {command}" in ran.out
+
+
+def test_help_of_the_group_names_the_commands(run: Run) -> None:
+    out = run("--help").out
+    assert all(name in out for name in ("check", "build", "serve", "new", "schema", "rule"))
+    assert isinstance(cli.handbook, click.Group)
+
+
+def test_a_rule_explains_itself(run: Run) -> None:
+    out = run("rule", "sn2-closed-tertiary").out
+    assert "Three substituents block backside attack" in out
+    assert "closes SN2" in out
+    card = json.loads(run("rule", "sn2-closed-tertiary", "--json").out)
+    assert card["fires_on"][0] == "CC(C)(C)Br"
+
+
+def test_rules_can_be_listed(run: Run) -> None:
+    lines = run("rule").out.splitlines()
+    assert len(lines) == len({line.split()[0] for line in lines}) > 60
+    assert len(json.loads(run("rule", "--json").out)["rules"]) == len(lines)
+
+
+def test_a_new_record_is_a_skeleton_whose_gaps_are_found(run: Run, book: Path) -> None:
+    ran = run("new", "CC[C@H](C)Br", "--nucleophile", "[Na+].[N-]=[N+]=[N-]", "--by", "bench-2", "--book", book)
+    assert ran.code == 0
+    (path,) = book.glob("NS*.yml")
+    assert is_identifier(path.stem)
+    text = path.read_text("utf-8")
+    assert "smiles: 'CC[C@H](C)Br'" in text
+    assert "class: [secondary]" in text
+    assert "leaving_group: bromide" in text
+    assert "stereo: single enantiomer" in text
+    reading = read_record(path, path.name)
+    assert {finding.rule for finding in reading.findings} == {"quantity-unreadable"}
+
+
+def test_new_refuses_an_unreadable_substrate_and_writes_nothing(run: Run, book: Path) -> None:
+    before = sorted(book.rglob("*"))
+    ran = run("new", "C1CC", "--book", book)
+    assert ran.code == 2
+    assert "ring" in ran.err
+    assert sorted(book.rglob("*")) == before
+
+
+def test_schema_is_written_and_printed(run: Run, book: Path) -> None:
+    run("schema", "--book", book)
+    written = json.loads((book / "schema" / "record-1.json").read_text("utf-8"))
+    assert json.loads(run("schema", "--print", "--book", book).out) == written
+
+
+def test_a_failed_build_leaves_the_last_good_site(run: Run, book: Path, tmp_path: Path) -> None:
+    config = tmp_path / "mkdocs.yml"
+    config.write_text("site_name: T\ndocs_dir: entries\nplugins: [handbook]\n", "utf-8")
+    site = tmp_path / "site"
+    site.mkdir()
+    (site / "index.html").write_text("the last good one", "utf-8")
+    _break(book, "status: finished")
+    ran = run("build", "--config", config, "--site", site, "--book", book)
+    assert ran.code == 1
+    assert (site / "index.html").read_text("utf-8") == "the last good one"
+    assert sorted(each.name for each in tmp_path.iterdir()) == ["entries", "mkdocs.yml", "site"]
+
+
+def test_a_broken_site_configuration_leaves_the_last_good_site(run: Run, book: Path, tmp_path: Path) -> None:
+    config = tmp_path / "mkdocs.yml"
+    config.write_text("site_name: T\ndocs_dir: entries\nplugins: [no-such-plugin]\n", "utf-8")
+    site = tmp_path / "site"
+    site.mkdir()
+    (site / "index.html").write_text("the last good one", "utf-8")
+    ran = run("build", "--config", config, "--site", site, "--book", book)
+    assert ran.code == 1
+    assert (site / "index.html").read_text("utf-8") == "the last good one"
+
+
+def test_a_stray_yaml_file_is_not_lost(run: Run, book: Path) -> None:
+    shutil.copy(book / "azides" / "NS4T9XQ2N.yml", book / "entry17_final2.yaml")
+    ran = run("check", "--book", book)
+    assert "file-misnamed" in ran.out
+    assert ran.code == 1
+
+
+def test_a_book_without_settings_says_so(run: Run, book: Path) -> None:
+    (book / "handbook.yml").unlink()
+    ran = run("check", "--book", book)
+    assert "the book has no handbook.yml" in ran.out
+    assert ran.code == 1
