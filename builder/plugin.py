@@ -71,7 +71,7 @@ class _VirtualPage(MkDocsPage):
         file = File.generated(config, page.file, content="", inclusion=place)
         if page.source is not None:
             file.edit_uri = quote(page.source)
-        super().__init__(escape(page.title), file, config)
+        super().__init__(escape(page.menu[-1] if page.menu else page.title), file, config)
         self._page = page
 
     def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so

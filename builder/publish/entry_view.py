@@ -28,8 +28,9 @@ from builder.sources import source_text
 __all__ = ["EntryView", "Link", "Surroundings", "next_review", "surroundings_of", "view_entry"]
 
 DIGEST_SHOWN = 12
-"""Hexadecimal digits of a digest that a page prints; the whole of it stands in the title of the short one."""
+"""Hexadecimal digits of a digest that citations and printed pages carry."""
 
+_GRAVITY = ("stop", "warn", "note")
 _STANDING = {
     Verdict.IN_LINE: "What was seen and what the engine expects agree.",
     Verdict.CONTRARY: "What was seen and what the engine expects differ, and no reason has been accepted yet.",
@@ -120,9 +121,6 @@ class EntryView:
 
     summary: Summary
     revision: int
-    digest: str
-    digest_short: str
-    file: str
     tombstone: Tombstone | None
     cautions: tuple[FindingView, ...]
     scheme_wide: Markup
@@ -185,11 +183,8 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
     return EntryView(
         summary=summarise(entry),
         revision=record.revision,
-        digest=entry.digest,
-        digest_short=entry.digest[:DIGEST_SHOWN],
-        file=entry.file,
         tombstone=_tombstone(record, around),
-        cautions=of_level(Level.CAUTION),
+        cautions=tuple(_finding(finding, record, around) for finding in _gravest_first(entry.findings)),
         scheme_wide=scheme.wide if scheme else Markup(),
         scheme_tall=scheme.tall if scheme else Markup(),
         scheme_file=scheme.file if scheme else b"",
@@ -270,6 +265,12 @@ def _of_level(findings: list[FindingView], level: Level) -> tuple[FindingView, .
     return tuple(finding for finding in findings if finding.level == level)
 
 
+def _gravest_first(findings: Iterable[Finding]) -> list[Finding]:
+    """Return the cautions, those that need a safety review first; else in the order of the record."""
+    cautions = [finding for finding in findings if finding.level is Level.CAUTION]
+    return sorted(cautions, key=lambda finding: _GRAVITY.index(str(finding.data.get("severity", _GRAVITY[-1]))))
+
+
 def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingView:
     by = next((a.by for a in record.accepted if a.finding == finding.rule), "") if finding.accepted else ""
     return FindingView(
@@ -280,7 +281,7 @@ def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingV
         message=finding.message,
         why=finding.why,
         mend=finding.mend,
-        source=source_text(finding.source),
+        source=source_text(str(finding.data.get("source", finding.source))),
         accepted=finding.accepted or "",
         accepted_by=_person(by, around.settings) if by else "",
     )
@@ -345,9 +346,9 @@ def _stamp(entry: Entry, settings: Settings) -> tuple[Fact, ...]:
         Fact("Safety review", safety.date.isoformat(), f"{_person(safety.by, settings)}: {safety.scope}")
         if safety
         else Fact("Safety review", "none on file"),
-        Fact("Status", str(record.status)),
-        Fact("Disclosure", str(record.disclosure or "not stated")),
-        Fact("Digest", entry.digest, "SHA-256 of the scientific content"),
+        Fact("Review", _review(record, settings)),
+        Fact("Status", joined((str(record.status), f"disclosure: {record.disclosure}" if record.disclosure else ""))),
+        Fact("Revision", f"{record.revision}, digest {entry.digest[:DIGEST_SHOWN]}", f"SHA-256 {entry.digest}"),
     )
     return tuple(fact for fact in facts if fact.value)
 

@@ -56,7 +56,7 @@ def state_of_book(book: Book, summaries: Mapping[str, Summary]) -> StateOfBook:
 
 def front_page(book: Book, summaries: Mapping[str, Summary]) -> Page:
     """Return the front page."""
-    current = [s for s in newest_first(summaries.values()) if s.status not in {Status.SUPERSEDED, Status.WITHDRAWN}]
+    current = [summary for summary in newest_first(summaries.values()) if not summary.is_retired]
     contrary = [summary for summary in current if summary.verdict == Verdict.CONTRARY]
     return Page(
         path="",

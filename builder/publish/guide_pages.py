@@ -11,32 +11,55 @@ from builder.publish.templating import render
 from builder.records.schema import record_schema
 from builder.records.specimen import SPECIMEN_FILE, specimen_text
 
-__all__ = ["FormatRow", "format_rows", "guide_pages"]
+__all__ = ["FormatPart", "FormatRow", "format_parts", "guide_pages"]
+
+_SUBSTANCE = "Nucleophile"
+"""The part whose keys every charged substance has; the others list only what they add."""
 
 
 @dataclass(frozen=True, slots=True)
 class FormatRow:
-    """One key of the record: where it stands ("stages.temperature"), whether it is required, what it takes."""
+    """One key of a part of the record: whether it is required there, and what it takes."""
 
     key: str
     required: bool
     takes: str
 
 
-def format_rows(schema: Mapping[str, Any]) -> tuple[FormatRow, ...]:
-    """Return the keys of the record format, those of its parts below them, from the JSON Schema."""
-    rows: list[FormatRow] = []
-    required = set(schema["required"])
-    for key, node in schema["properties"].items():
-        rows.append(FormatRow(key, key in required, _takes(node, schema)))
-        part = _part_of(node, schema)
-        if part is not None:
-            inner = set(part.get("required", ()))
-            rows += [
-                FormatRow(f"{key}.{name}", name in inner, _takes(below, schema))
-                for name, below in part["properties"].items()
-            ]
-    return tuple(rows)
+@dataclass(frozen=True, slots=True)
+class FormatPart:
+    """One part of the record with its keys; key: where it stands ("stages"), empty for the record itself.
+
+    beyond: the part whose keys it has as well, not listed again.
+    """
+
+    key: str
+    meaning: str
+    beyond: str
+    rows: tuple[FormatRow, ...]
+
+
+def format_parts(schema: Mapping[str, Any]) -> tuple[FormatPart, ...]:
+    """Return the parts of the record format in the order in which a record holds them, from its JSON Schema."""
+    parts: list[FormatPart] = []
+    waiting = [("", schema)]
+    seen: set[str] = set()
+    substance = set(schema["$defs"][_SUBSTANCE]["properties"])
+    while waiting:
+        key, part = waiting.pop(0)
+        properties = part["properties"]
+        title = part.get("title", key)
+        beyond = "nucleophile" if title != _SUBSTANCE and substance <= set(properties) else ""
+        listed = {name: node for name, node in properties.items() if not beyond or name not in substance}
+        required = part.get("required", ())
+        rows = tuple(FormatRow(name, name in required, _takes(node, schema)) for name, node in listed.items())
+        parts.append(FormatPart(key, part.get("description", ""), beyond, rows))
+        for name, node in properties.items():
+            below = _part_of(node, schema)
+            if below is not None and below["title"] not in seen:
+                seen.add(below["title"])
+                waiting.append((f"{key}.{name}".strip("."), below))
+    return tuple(parts)
 
 
 def guide_pages(book: Book) -> tuple[Page, ...]:
@@ -53,7 +76,7 @@ def guide_pages(book: Book) -> tuple[Page, ...]:
                 "how_to_add.html",
                 specimen=specimen_text(),
                 specimen_file=SPECIMEN_FILE,
-                rows=format_rows(schema),
+                format_parts=format_parts(schema),
                 classes=[(name, meanings[name]) for name in site_class_names()],
                 leaving_groups=leaving_group_names(),
                 house_rules=book.settings.house_rules,
@@ -98,7 +121,7 @@ def _takes(node: Mapping[str, Any], schema: Mapping[str, Any]) -> str:
     if "anyOf" in node:
         return " or ".join(dict.fromkeys(_takes(choice, schema) for choice in node["anyOf"]))
     if "properties" in node:
-        return "keys, see below"
+        return "keys of its own"
     if "examples" in node:
         return f"such as {node['examples'][0]}"
     if node.get("type") == "array":

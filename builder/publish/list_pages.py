@@ -88,6 +88,7 @@ def _value_page(facet: Facet, value: FacetValue, summaries: Mapping[str, Summary
 
 
 def newest_first(summaries: Iterable[Summary]) -> tuple[Summary, ...]:
-    """Return the newest first; those of one day by identifier."""
+    """Return the newest first, those of one day by identifier; what no longer holds comes last."""
     by_id = sorted(summaries, key=lambda summary: summary.id)
-    return tuple(sorted(by_id, key=lambda summary: summary.date, reverse=True))
+    by_date = sorted(by_id, key=lambda summary: summary.date, reverse=True)
+    return tuple(sorted(by_date, key=lambda summary: summary.is_retired))

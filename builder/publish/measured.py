@@ -1,5 +1,6 @@
 """Measurements in words: a number never stands without its kind, its product, its scale and its runs."""
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from builder.publish.figures import amount_text, joined, quantity_text
@@ -24,7 +25,8 @@ class MeasuredLine:
     """One measurement as shown.
 
     what: yield, conversion, recovered, ee, er, dr or ratio. text: the number with its kind, "88 % isolated yield".
-    of: labels it speaks of. names: "A, (R)-2-azidooctane". basis: scale, runs, method and the like.
+    of: labels it speaks of. names: of
+    the one product, or of several with their labels. basis: scale, runs, method and the like.
     """
 
     what: str
@@ -35,8 +37,8 @@ class MeasuredLine:
 
     @property
     def brief(self) -> str:
-        """Return number, kind and labels: "88 % isolated yield of A"."""
-        return joined((self.text, f"of {' + '.join(self.of)}" if self.of else ""), " ")
+        """Return number, kind and what it is of: "88 % isolated yield of (R)-2-azidooctane"."""
+        return joined((self.text, f"of {self.names}" if self.names else ""), " ")
 
 
 def measured_lines(record: Record, scale_mol: float | None) -> tuple[MeasuredLine, ...]:
@@ -60,8 +62,7 @@ def measured_line(line: Measurement, record: Record, scale_mol: float | None) ->
             line.note or "",
         )
     )
-    named = joined(f"{label}, {names[label]}" if label in names else label for label in of) if len(of) == 1 else ""
-    return MeasuredLine(line.what, _text(line), of, named or " + ".join(of), basis)
+    return MeasuredLine(line.what, _text(line), of, _named(of, names), basis)
 
 
 def outcome_headline(record: Record, scale_mol: float | None) -> str:
@@ -109,6 +110,12 @@ def yield_caption(outcome: Outcome, label: str) -> str:
             return f"{line.value} {line.kind}"
     used = next((product.use for product in outcome.products if product.label == label), None)
     return str(ProductUse.BY_PRODUCT) if used is ProductUse.BY_PRODUCT else ""
+
+
+def _named(of: tuple[str, ...], names: Mapping[str, str]) -> str:
+    if len(of) == 1:
+        return names.get(of[0], of[0])
+    return " + ".join(f"{label} ({names[label]})" if label in names else label for label in of)
 
 
 def _scale_text(scale_mol: float | None) -> str:

@@ -56,6 +56,12 @@ class RuleView:
     touched: tuple[TouchedEntry, ...]
 
 
+_LEVEL_TITLES = {
+    Level.ERROR: "Errors",
+    Level.QUERY: "Queries",
+    Level.CAUTION: "Cautions",
+    Level.REMARK: "Remarks",
+}
 _LEVEL_WORDS = {
     Level.ERROR: "An error keeps the record out of the book until it is mended.",
     Level.QUERY: "A query wants a fix, or a reason that a reviewer accepts.",
@@ -107,7 +113,7 @@ def rule_pages(book: Book, rules: Sequence[AnyRule]) -> tuple[Page, ...]:
     groups = [
         ("Gates of the engine", "What opens or closes a mechanism at a site.", [v for v in views if v.is_gate]),
         *(
-            (f"{level.title()} rules", _LEVEL_WORDS[level], [v for v in views if not v.is_gate and v.level == level])
+            (_LEVEL_TITLES[level], _LEVEL_WORDS[level], [v for v in views if not v.is_gate and v.level == level])
             for level in Level
         ),
     ]

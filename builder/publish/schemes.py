@@ -5,8 +5,9 @@ from dataclasses import dataclass
 from markupsafe import Markup
 
 from builder.checks.case import Case
+from builder.chemistry.inks import standalone
 from builder.chemistry.perception import sites_of
-from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme, standalone
+from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme
 from builder.publish.figures import equivalents_text, joined
 from builder.publish.measured import yield_caption
 from builder.records.model import Record, Stage
@@ -64,12 +65,12 @@ def _partners(record: Record) -> list[str]:
 
 def _steps(case: Case) -> list[Step]:
     record = case.record
-    steps: list[Step] = [[_substrate(case)]]
+    steps: list[Step] = [[_leaver(case, ("substrate",), record.substrate.name)]]
     for index, stage in enumerate(record.stages):
         path = ("stages", index, "gives")
         last = index == len(record.stages) - 1
         if stage.gives is not None and path in case.structures and not last:
-            steps += [_arrow(case, _stages_up_to(case, index)), [_drawn(case, path, caption=stage.gives.name)]]
+            steps += [_arrow(case, _stages_up_to(case, index)), [_leaver(case, path, stage.gives.name)]]
     steps.append(_arrow(case, _stages_up_to(case, len(record.stages) - 1)))
     ends = _ends(case)
     return [*steps, ends] if ends else steps
@@ -88,16 +89,14 @@ def _stages_up_to(case: Case, index: int) -> tuple[int, ...]:
     return tuple(range(first, index + 1))
 
 
-def _substrate(case: Case) -> DrawnCompound:
-    structure = case.structures[("substrate",)]
-    sites = sites_of(structure, case.record.substrate.leaving_group)
-    site = sites[0] if sites else None
-    return DrawnCompound(
-        structure,
-        caption=case.record.substrate.name,
-        leaves=frozenset({site.leaving_atom}) if site and site.leaving_atom is not None else frozenset(),
-        points=frozenset({site.alpha_carbon}) if site else frozenset(),
-    )
+def _leaver(case: Case, path: Path, name: str) -> DrawnCompound:
+    """Return a compound with its leaving atom and reacting carbon outlined, where it bears the group that leaves."""
+    structure = case.structures[path]
+    site = next(iter(sites_of(structure, case.record.substrate.leaving_group)), None)
+    if site is None:
+        return DrawnCompound(structure, caption=name)
+    leaving = frozenset() if site.leaving_atom is None else frozenset({site.leaving_atom})
+    return DrawnCompound(structure, caption=name, leaves=leaving, points=frozenset({site.alpha_carbon}))
 
 
 def _drawn(case: Case, path: Path, *, label: str = "", caption: str = "") -> DrawnCompound:

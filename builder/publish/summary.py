@@ -8,7 +8,7 @@ from builder.mechanism.amounts import AmountRow
 from builder.publish.figures import amount_text, concentration_text, equivalents_text, joined, quantity_text
 from builder.publish.measured import outcome_headline, runs_text
 from builder.records.model import Record, Stage
-from builder.records.vocabulary import NucleophileWord, Result
+from builder.records.vocabulary import NucleophileWord, Result, Status
 
 __all__ = ["Fact", "Summary", "concentration", "conditions_strip", "scale_mol", "summarise"]
 
@@ -36,6 +36,11 @@ class Summary:
     take_away: str
     status: str
     is_failure: bool
+
+    @property
+    def is_retired(self) -> bool:
+        """Say whether the entry is superseded or withdrawn."""
+        return self.status in {Status.SUPERSEDED, Status.WITHDRAWN}
 
 
 def summarise(entry: Entry) -> Summary:
