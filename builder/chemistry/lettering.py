@@ -32,7 +32,6 @@ _WIDTH_OF = {letter: width for width, letters in _WIDTHS_EM.items() for letter i
 _WIDEST_EM = 1.0
 _BOLD = 1.13
 _NOT_IN_XML = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\ud800-\udfff\ufffe\uffff]")
-# A break may follow these; never inside a number with its unit or a locant.
 _NO_BREAK = "\u00a0"
 
 
@@ -49,7 +48,7 @@ def text_width(text: str, size: float, *, bold: bool = False) -> float:
 
 
 def wrap(text: str, size: float, width: float) -> list[str]:
-    """Return text in lines no wider than `width` px, broken at spaces; too long a word is cut after a hyphen or comma.
+    """Return text in lines no wider than `width` px, broken at spaces, and within a word that is too long.
 
     A number stays with its unit: "60 °C" is never torn.
     """
@@ -76,10 +75,14 @@ def _words(paragraph: str) -> list[str]:
 
 
 def _cut(word: str, size: float, width: float) -> list[str]:
+    """Cut a name where a chemist would: before a locant or after a bracket, not between a locant and what it places."""
     pieces = [""]
-    for part in re.findall(r"[^-,)\]]*[-,)\]]?", word):
+    for part in _JOINT.split(word):
         for bit in [part] if text_width(part, size) <= width else list(part):
             if pieces[-1] and text_width(pieces[-1] + bit, size) > width:
                 pieces.append("")
             pieces[-1] += bit
     return pieces
+
+
+_JOINT = re.compile(r"(?<=[A-Za-z)\]]-)|(?<=[)\]])(?![-),\]])")
