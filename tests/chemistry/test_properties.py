@@ -325,3 +325,16 @@ def test_retained_and_activated_alcohols_are_superimposable_in_space() -> None:
         old = _signed_volume(before, (*heavy, site.alpha_carbon))
         new = _signed_volume(after, (*(edit.from_substrate[n] for n in (*heavy, site.alpha_carbon)),))
         assert old * new > 0
+
+
+def test_a_phosphine_keeps_its_configuration_when_it_is_alkylated() -> None:
+    # The lone pair becomes the new bond: Horner, Pure Appl. Chem. 1964, 9, 225 (from memory).
+    phosphine = attacking_atoms(parse_smiles("C[P@](CC)c1ccccc1"))[0]
+    bromide = parse_smiles("BrCc1ccccc1")
+    edit = substitute(bromide, perceive_sites(bromide)[0], phosphine)
+    before, after = _embedded(phosphine.species), _embedded(edit.product)
+    around = _all_neighbours(before, phosphine.atom)
+    image = [edit.from_nucleophile[n] for n in (*around, phosphine.atom)]
+    old = _signed_volume(before, (*around, phosphine.atom))
+    assert edit.product.stereocentres.specified == 1
+    assert old * _signed_volume(after, tuple(image)) > 0
