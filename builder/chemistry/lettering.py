@@ -70,8 +70,11 @@ def wrap(text: str, size: float, width: float) -> list[str]:
 
 
 def _words(paragraph: str) -> list[str]:
-    """Split at spaces, except between a number and what it counts."""
-    return re.sub(r"(?<=\d)\s+(?=(?:%|°|[A-Za-zµ]{1,5}(?:/|\b)))", _NO_BREAK, paragraph).split(" ")
+    """Split at spaces, except between a number and its unit or the sign before it."""
+    return _TIGHT.sub(_NO_BREAK, paragraph).split(" ")
+
+
+_TIGHT = re.compile(r"(?<=\d)\s+(?=(?:%|°|[A-Za-zµ]{1,5}(?:/|\b)))|(?<=[<>≤≥≈±~])\s+(?=\d)")
 
 
 def _cut(word: str, size: float, width: float) -> list[str]:
