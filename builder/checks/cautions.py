@@ -518,7 +518,10 @@ def hazard_of_a_pair(case: Case) -> Iterator[Fault]:
 _HARMLESS = """\
 substrate: {name: cyclohexanol, smiles: 'OC1CCCCC1', class: secondary, leaving_group: hydroxyl, amount: 10 mmol}
 nucleophile: none
+reagents: [{name: phosphoric acid, smiles: 'OP(O)(O)=O', use: acid, amount: 2 mmol}]
 solvent: [{name: toluene, volume: 20 mL}]
+stages: [{temperature: 100 °C, time: 6 h}]
+work_up: [wash with 10 mL water]
 outcome:
   result: [elimination]
   products: [{label: A, name: cyclohexene, smiles: 'C1CCC=CC1'}]
@@ -533,7 +536,7 @@ outcome:
     source="prudent-practices-2011",
     fires_on=(
         "substrate: {name: iodomethane, smiles: CI, class: methyl, leaving_group: iodide, amount: 10 mmol}",
-        _HARMLESS + "reagents: [{name: potassium cyanide, smiles: '[K+].[C-]#N', use: additive, amount: 1 mmol}]",
+        "base: [{name: potassium cyanide, smiles: '[K+].[C-]#N', amount: 1 mmol}]",
     ),
     silent_on=(_HARMLESS,),
 )
