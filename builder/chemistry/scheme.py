@@ -41,6 +41,7 @@ _DEFAULT_WIDTH = {"wide": 760.0, "tall": 340.0}
 _ARROW_TEXT_WIDTHS = (176.0, 230.0, 290.0)  # conditions wrap at the first of these that leaves few lines
 _FEW_LINES = 4
 _CAPTION_WIDTH = 140.0  # captions wrap here, or at the structure's own width
+_WIDEST_WORD = 190.0  # a caption makes room for a word up to this
 _SHORTEST_ARROW = 64.0
 _GAP = 16.0  # beside plus signs and arrows
 _ROW_GAP = 24.0
@@ -316,7 +317,9 @@ def _cell(drawn: _Drawn, scale: float, captions_from: float | None = None) -> _B
     x, y = -box.middle[0], -box.middle[1]
     structure = Placed("structure", fragment.markup, box.moved(x, y), x, y, scale)
     top = captions_from if captions_from is not None else box.height / 2
-    words = _caption(compound, max(box.width, _CAPTION_WIDTH), top + 8.0)
+    longest = max((text_width(word, TEXT_SIZE) for word in compound.caption.split()), default=0.0)
+    width = max(box.width, _CAPTION_WIDTH, min(longest, _WIDEST_WORD))
+    words = _caption(compound, width, top + 8.0)
     return _block((0.0, 0.0, item) for item in [structure, *words])
 
 

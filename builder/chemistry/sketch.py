@@ -7,7 +7,7 @@ double bond by its geometry, an undefined double bond with one wavy single bond.
 """
 
 from cmath import phase
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import lru_cache
@@ -242,26 +242,59 @@ def _turn_as_is_customary(mol: Chem.Mol) -> None:
 
 
 def _turned_like(structure: Structure, model: Structure) -> Chem.Mol:
-    """Return the laid-out structure turned, and if need be flipped, onto the skeleton shared with `model`."""
-    mol = _laid_out(structure)
-    pairs = _shared_atoms(structure, model)
-    if not pairs:
+    """Return the laid-out structure turned, and if need be flipped, onto the skeleton shared with `model`.
+
+    Of ways that fit equally well, as in a ring with a mirror plane, the one whose bystanding wedges are those of the
+    model: what changes, say from cis to trans, then shows where it happens.
+    """
+    mol, ideal = _laid_out(structure), _laid_out(model)
+    mine, theirs = _complex_places(mol), _complex_places(ideal)
+    fits = [
+        (*_fit([mine[i] for i, _ in pairs], [theirs[j] for _, j in pairs], flip), flip, pairs)
+        for pairs in _shared_atoms(structure, model)
+        for flip in (False, True)
+    ]
+    if not fits:
         return mol
-    mine, theirs = _complex_places(mol), _complex_places(_laid_out(model))
-    moved, fixed = [mine[i] for i, _ in pairs], [theirs[j] for _, j in pairs]
+    least = min(fit[0] for fit in fits)
+    ways = []
+    for _, turn, centre, flip, pairs in [fit for fit in fits if fit[0] < least + _EQUALLY_WELL]:
+        turned = Chem.Mol(mol)
+        _turn(turned, centre, flip, turn)
+        ways.append((turned, pairs))
+    best = ways[0][0]
+    if len(ways) > 1 and _has_stereocentre(mol) and _has_stereocentre(ideal):
+        wanted = _wedges_within(ideal, {j: j for j in range(len(theirs))})
+        best = max(ways, key=lambda way: len(_wedges_within(way[0], dict(way[1])) & wanted))[0]
+    rdDepictor.StraightenDepiction(best)
+    return best
+
+
+_EQUALLY_WELL = 0.05  # sum of squared distances, in RDKit's units
+
+
+def _fit(moved: Sequence[complex], fixed: Sequence[complex], flip: bool) -> tuple[float, complex, complex]:
+    """Return error, turn and centre of the rotation that brings `moved` best onto `fixed`."""
     centre, goal = sum(moved) / len(moved), sum(fixed) / len(fixed)
-    fits = []
-    for flip in (False, True):
-        around = [(z - centre).conjugate() if flip else z - centre for z in moved]
-        turn = sum((g - goal) * z.conjugate() for z, g in zip(around, fixed, strict=True))
-        turn = turn / abs(turn) if abs(turn) > 1e-6 else 1 + 0j
-        error = sum(abs(z * turn - (g - goal)) ** 2 for z, g in zip(around, fixed, strict=True))
-        fits.append((round(error, 3), flip, turn))
-    _, flip, turn = min(fits, key=lambda fit: fit[:2])
-    turned = Chem.Mol(mol)
-    _turn(turned, centre, flip, turn)
-    rdDepictor.StraightenDepiction(turned)
-    return turned
+    around = [(z - centre).conjugate() if flip else z - centre for z in moved]
+    turn = sum((g - goal) * z.conjugate() for z, g in zip(around, fixed, strict=True))
+    turn = turn / abs(turn) if abs(turn) > 1e-6 else 1 + 0j
+    error = sum(abs(z * turn - (g - goal)) ** 2 for z, g in zip(around, fixed, strict=True))
+    return round(error, 3), turn, centre
+
+
+def _has_stereocentre(mol: Chem.Mol) -> bool:
+    return any(atom.GetChiralTag() in _TETRAHEDRAL for atom in mol.GetAtoms())
+
+
+def _wedges_within(mol: Chem.Mol, name: Mapping[int, int]) -> set[tuple[int, int, Line]]:
+    """Return the wedges between named atoms, under those names."""
+    found = set()
+    for index, (start, line) in _wedges(mol, _complex_places(mol)).items():
+        end = mol.GetBondWithIdx(index).GetOtherAtomIdx(start)
+        if start in name and end in name:
+            found.add((name[start], name[end], line))
+    return found
 
 
 def _complex_places(mol: Chem.Mol) -> list[complex]:
@@ -278,15 +311,22 @@ def _turn(mol: Chem.Mol, centre: complex, flip: bool, turn: complex) -> None:
 
 
 @lru_cache(maxsize=4096)
-def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[AtomId, AtomId], ...]:
-    """Return pairs (atom of structure, atom of model) of the largest carbon skeleton of the model found in both."""
+def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[tuple[AtomId, AtomId], ...], ...]:
+    """Return ways to pair atoms of both over the largest carbon skeleton of the model that the structure has too.
+
+    Only those pairings that keep most branches where they are; several where the skeleton is symmetric.
+    """
     for skeleton, query, wanted in _carbon_skeletons(model):
         matches = structure.mol.GetSubstructMatches(query, uniquify=False, maxMatches=64)
         if matches:
             degrees = [atom.GetDegree() for atom in structure.mol.GetAtoms()]
-            best = min(matches, key=lambda m: (sum(abs(degrees[i] - d) for i, d in zip(m, wanted, strict=True)), m))
-            return tuple(zip(best, skeleton, strict=True))
+            scored = sorted((sum(abs(degrees[i] - d) for i, d in zip(m, wanted, strict=True)), m) for m in matches)
+            best = [match for score, match in scored if score == scored[0][0]]
+            return tuple(tuple(zip(match, skeleton, strict=True)) for match in best[:_MOST_PAIRINGS])
     return ()
+
+
+_MOST_PAIRINGS = 12
 
 
 @lru_cache(maxsize=1024)

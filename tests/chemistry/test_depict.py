@@ -279,6 +279,20 @@ def test_inversion_is_seen_at_a_glance() -> None:
     assert leaving[1] == pytest.approx(entering[1], abs=0.1)
 
 
+def test_bystanding_centre_keeps_its_wedge() -> None:
+    # cis-4-tert-butylcyclohexyl bromide gives the trans azide: only the bond that reacts changes sides.
+    substrate = parse_smiles("CC(C)(C)[C@H]1CC[C@@H](Br)CC1")
+    for smiles in ("CC(C)(C)[C@H]1CC[C@H](N=[N+]=[N-])CC1", "CC(C)(C)[C@@H]1CC[C@@H](N=[N+]=[N-])CC1"):
+        before, after = sketch(substrate), sketch(parse_smiles(smiles), substrate)
+        assert arm_to(before, "C") == arm_to(after, "C")
+        assert {arm_to(before, "Br"), arm_to(after, "N")} == {Line.HASH, Line.WEDGE}
+
+
+def arm_to(seen: Sketch, symbol: str) -> Line:
+    (line,) = [b.line for b in seen.bonds if b.line is not Line.PLAIN and seen.atoms[b.b].symbol == symbol]
+    return line
+
+
 def stereo_arm(seen: Sketch) -> tuple[Line, complex]:
     (bond,) = [bond for bond in seen.bonds if bond.line is not Line.PLAIN]
     assert seen.atoms[bond.b].symbol in {"O", "N"}
