@@ -257,13 +257,16 @@ def _turned_like(structure: Structure, model: Structure) -> Chem.Mol:
     if not fits:
         return mol
     least = min(fit[0] for fit in fits)
+    equal = [fit for fit in fits if fit[0] < least + _EQUALLY_WELL]
+    if not (_has_stereocentre(mol) and _has_stereocentre(ideal)):
+        del equal[1:]
     ways = []
-    for _, turn, centre, flip, pairs in [fit for fit in fits if fit[0] < least + _EQUALLY_WELL]:
+    for _, turn, centre, flip, pairs in equal:
         turned = Chem.Mol(mol)
         _turn(turned, centre, flip, turn)
         ways.append((turned, pairs))
     best = ways[0][0]
-    if len(ways) > 1 and _has_stereocentre(mol) and _has_stereocentre(ideal):
+    if len(ways) > 1:
         wanted = _wedges_within(ideal, {j: j for j in range(len(theirs))})
         best = max(ways, key=lambda way: len(_wedges_within(way[0], dict(way[1])) & wanted))[0]
     rdDepictor.StraightenDepiction(best)
