@@ -190,20 +190,28 @@ def _set_places(mol: Chem.Mol) -> None:
 def _crowding(mol: Chem.Mol) -> int:
     """Return how many atoms, labels, or bonds at one atom lie nearly on each other; a bond cut short counts too."""
     places = _complex_places(mol)
-    numbers = [atom.GetAtomicNum() for atom in mol.GetAtoms()]
     neighbours = _neighbours(mol)
     crowded = 0
-    for a, b in combinations(range(len(places)), 2):
+    for a, b in _close_pairs(mol):
         apart = abs(places[a] - places[b])
-        if apart < _NEAR_LETTERS:
-            if b in neighbours[a]:
-                crowded += apart < _SHORT
-            else:
-                crowded += apart < _NEAR or numbers[a] != 6 != numbers[b]
+        if b in neighbours[a]:
+            crowded += apart < _SHORT
+        else:
+            lettered = all(mol.GetAtomWithIdx(i).GetAtomicNum() != 6 for i in (a, b))
+            crowded += apart < _NEAR or lettered
     for here, others in zip(places, neighbours, strict=True):
         rays = [places[other] - here for other in others]
         crowded += sum(abs(phase(a / b)) < _NARROW for a, b in combinations(rays, 2) if b)
     return crowded
+
+
+def _close_pairs(mol: Chem.Mol) -> list[tuple[int, int]]:
+    """Return the pairs of atoms nearer than `_NEAR_LETTERS`, found in one step over all pairs."""
+    places = mol.GetConformer().GetPositions()
+    apart = ((places[:, None] - places[None]) ** 2).sum(axis=-1)
+    return [
+        (a, b) for a, b in zip(*(side.tolist() for side in (apart < _NEAR_LETTERS**2).nonzero()), strict=True) if a < b
+    ]
 
 
 def _neighbours(mol: Chem.Mol) -> list[list[int]]:
