@@ -27,6 +27,7 @@ class Fault:
 
     at: path of the value. Where it is missing from the file, its nearest existing parent is shown.
     on_key: point at the key rather than at the value.
+    level, source: where they differ from the rule's own.
     """
 
     at: Path
@@ -36,6 +37,7 @@ class Fault:
     fix: str | None = None
     data: Mapping[str, object] = field(default_factory=dict)
     level: Level | None = None
+    source: str | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -69,7 +71,7 @@ class Rule(Generic[Subject_contra, Answer_co]):
             message=fault.message,
             why=self.statement,
             mend=fault.mend,
-            source=self.source,
+            source=fault.source or self.source,
             place=place,
             fix=fault.fix,
             data=fault.data,

@@ -22,6 +22,9 @@ __all__ = ["AGREEMENT_CHECKS", "CONTRARY_RULES", "is_covered"]
 CONTRARY_RULES = frozenset({"claim-against-product", "mechanism-contrary", "product-not-reachable"})
 """Rules whose findings mean that record and engine disagree; the verdict of an entry follows from them."""
 
+MEET_IN_ONE_PRODUCT = 4
+"""How many molecules of one reagent at most end up in one molecule of product: a quaternary ammonium takes four."""
+
 _READABLE = ("structure-unreadable", "leaving-group-not-found", "leaving-group-unknown")
 _ELIMINATIONS = {Mechanism.E1, Mechanism.E2, Mechanism.E1CB}
 _SUBSTITUTIONS = {Mechanism.SN1, Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.NGP}
@@ -164,8 +167,9 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
     if len(flask) + 1 < len(charged):
         return  # something has no structure, so nothing can be said
     have: Counter[str] = Counter()
-    for structure in (*flask, *[case.substrate] * 3):  # up to three substrates meet in one product
-        have += _elements(structure)
+    for structure in (*flask, case.substrate):
+        for _ in range(MEET_IN_ONE_PRODUCT):
+            have += _elements(structure)
     for path in _product_paths(case):
         extra = _elements(case.structures[path]) - have
         if extra:

@@ -10,7 +10,6 @@ from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import cache, cached_property, lru_cache
-from importlib import resources
 from textwrap import shorten
 
 from builder.checks.case import Case
@@ -22,6 +21,7 @@ from builder.mechanism.solvents import find_solvent
 from builder.records.model import Compound
 from builder.rule import Fault, Path, rule
 from builder.sources import load_sources
+from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
     "CAUTION_CHECKS",
@@ -38,8 +38,6 @@ __all__ = [
     "presents_of",
 ]
 
-NOTHING = "-"
-"""Stands in a cell that holds no value, so that a forgotten cell can be told from an empty one."""
 WHO_DECIDES = "local rules and qualified people decide"
 
 
@@ -236,7 +234,8 @@ def _substance(case: Case, path: Path, compound: Compound, role: Role) -> Presen
 # --- which cautions apply ---------------------------------------------------------------------------------------
 
 
-def find_hazards(presents: Sequence[Present], hottest_c: float) -> tuple[Hazard, ...]:
+@lru_cache(maxsize=256)
+def find_hazards(presents: tuple[Present, ...], hottest_c: float) -> tuple[Hazard, ...]:
     """Return the hazards among what is present, in table order; a pair once for each place where it shows.
 
     hottest_c: highest temperature of any stage, °C. A pair shows at the line of text that names a partner, else at
@@ -374,7 +373,7 @@ def load_substance_kinds() -> dict[str, SubstanceKind]:
     Raises ValueError for blanks, names given twice, bad SMARTS, and rows with neither SMARTS nor words.
     """
     found: dict[str, SubstanceKind] = {}
-    for row in _rows("substance_kinds.tsv", ("name", "smarts", "words", "note")):
+    for row in _table("substance_kinds.tsv", ("name", "smarts", "words", "note")):
         kind = SubstanceKind(
             name=row["name"],
             fragments=() if row["smarts"] == NOTHING else tuple(map(Fragment.from_smarts, row["smarts"].split())),
@@ -394,10 +393,8 @@ def load_cautions() -> tuple[Caution, ...]:
     Raises ValueError for blanks, ids given twice, unknown kinds, severities, conditions and sources.
     """
     columns = ("id", "kind", "severity", "first", "second", "condition", "hazard", "precaution", "source")
-    found = tuple(_caution(row) for row in _rows("cautions.tsv", (*columns, "fires", "near_miss")))
-    ids = [caution.id for caution in found]
-    if len(set(ids)) != len(ids):
-        raise ValueError(f"cautions.tsv: given twice: {', '.join(sorted({i for i in ids if ids.count(i) > 1}))}")
+    found = tuple(_caution(row) for row in _table("cautions.tsv", (*columns, "fires", "near_miss")))
+    refuse_twice("cautions.tsv", "id", [caution.id for caution in found])
     return found
 
 
@@ -406,8 +403,6 @@ def _caution(row: dict[str, str]) -> Caution:
     wanted = [row["first"]] if kind is CautionKind.SPECIES else [row["first"], row["second"]]
     if unknown := [name for name in wanted if name not in kinds]:
         raise ValueError(f"cautions.tsv: {row['id']}: unknown kind of substance {unknown[0]}")
-    if row["source"] not in load_sources():
-        raise ValueError(f"cautions.tsv: {row['id']}: unknown source {row['source']}")
     return Caution(
         id=row["id"],
         kind=kind,
@@ -430,15 +425,8 @@ def _condition(text: str) -> Condition:
     return Condition(Measure(match[1]), match[2], float(match[3]))
 
 
-def _rows(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
-    lines = resources.files("builder.checks").joinpath(name).read_text("utf-8").splitlines()
-    rows = [line.split("\t") for line in lines if line and not line.startswith("#")]
-    if not rows or tuple(rows[0]) != columns:
-        raise ValueError(f"{name}: the header must read {' '.join(columns)}")
-    for cells in rows[1:]:
-        if len(cells) != len(columns) or not all(cell.strip() for cell in cells):
-            raise ValueError(f"{name}: {cells[0]}: a cell is blank or missing; write {NOTHING} for no value")
-        yield dict(zip(columns, cells, strict=True))
+def _table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
+    return rows_of(name, table_text("builder.checks", name), columns)
 
 
 # --- the rules --------------------------------------------------------------------------------------------------
@@ -484,6 +472,7 @@ def hazard_is_unreviewed(case: Case) -> Iterator[Fault]:
                 message=f"{hazard.message}; the record has no safety_review",
                 mend=f"{hazard.caution.precaution}; otherwise add the safety_review it had; {WHO_DECIDES}",
                 data=hazard.data,
+                source=hazard.caution.source,
             )
 
 
@@ -512,6 +501,7 @@ def hazard_of_a_pair(case: Case) -> Iterator[Fault]:
                 message=hazard.message,
                 mend=f"{hazard.caution.precaution}; {WHO_DECIDES}",
                 data=hazard.data,
+                source=hazard.caution.source,
             )
 
 
@@ -560,6 +550,7 @@ def hazard_of_a_species(case: Case) -> Iterator[Fault]:
                 message=gravest.message,
                 mend=f"{gravest.caution.precaution}; {WHO_DECIDES}",
                 data={**gravest.data, "others": [other.caution.id for other in others]},
+                source=gravest.caution.source,
             )
 
 

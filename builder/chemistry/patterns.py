@@ -4,16 +4,14 @@ Every pattern is a row of a TSV table beside this module; a fault in a table is 
 """
 
 from collections import Counter
-from collections.abc import Iterator
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import cache
-from importlib import resources
 from math import isfinite
 
 from rdkit import Chem
 
-from builder.sources import load_sources
+from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
     "ActivationPattern",
@@ -32,11 +30,7 @@ __all__ = [
     "parse_attack_patterns",
     "parse_class_patterns",
     "parse_leaving_groups",
-    "read_table",
 ]
-
-NOTHING = "-"
-"""Stands in a cell that holds no value, so that a forgotten cell can be told from an empty one."""
 
 
 class ClassKind(StrEnum):
@@ -126,10 +120,6 @@ class ActivationPattern:
     source: str
 
 
-def _text(name: str) -> str:
-    return resources.files(__package__).joinpath(name).read_text("utf-8")
-
-
 @dataclass(frozen=True)
 class ArylPattern:
     """One row of aryl_substituents.tsv."""
@@ -137,23 +127,6 @@ class ArylPattern:
     name: str
     source: str
     query: Query
-
-
-def read_table(name: str, text: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
-    """Yield the rows of a table, comment lines left out.
-
-    Raises ValueError for a wrong header, a blank cell or an unknown source; `name` is for the message.
-    """
-    rows = [line.split("\t") for line in text.splitlines() if line and not line.startswith("#")]
-    if not rows or tuple(rows[0]) != columns:
-        raise ValueError(f"{name}: the header must read {' '.join(columns)}")
-    for cells in rows[1:]:
-        if len(cells) != len(columns) or not all(cell.strip() for cell in cells):
-            raise ValueError(f"{name}: {cells[0]}: a cell is blank or missing; write {NOTHING} for no value")
-        row = dict(zip(columns, cells, strict=True))
-        if row["source"] not in load_sources():
-            raise ValueError(f"{name}: {cells[0]}: unknown source {row['source']}")
-        yield row
 
 
 def _compile(name: str, smarts: str, numbers: set[int]) -> Query:
@@ -186,16 +159,10 @@ def _yes_or_no(name: str, word: str) -> bool:
     return word == "yes"
 
 
-def _unique(name: str, keys: list[str]) -> None:
-    twice = sorted({key for key in keys if keys.count(key) > 1})
-    if twice:
-        raise ValueError(f"{name}: given twice: {', '.join(twice)}")
-
-
 @cache
 def load_leaving_groups() -> tuple[LeavingGroupPattern, ...]:
     """Return the leaving groups in table order: of two rows that fit, the first names the group."""
-    return parse_leaving_groups(_text("leaving_groups.tsv"))
+    return parse_leaving_groups(table_text("builder.chemistry", "leaving_groups.tsv"))
 
 
 def parse_leaving_groups(text: str) -> tuple[LeavingGroupPattern, ...]:
@@ -205,7 +172,7 @@ def parse_leaving_groups(text: str) -> tuple[LeavingGroupPattern, ...]:
     """
     columns = ("name", "abbreviation", "smarts", "conjugate_acid", "conjugate_acid_pka", "needs_activation")
     found = []
-    for row in read_table("leaving_groups.tsv", text, (*columns, "source", "note")):
+    for row in rows_of("leaving_groups.tsv", text, (*columns, "source", "note")):
         pka = row["conjugate_acid_pka"]
         found.append(
             LeavingGroupPattern(
@@ -219,14 +186,14 @@ def parse_leaving_groups(text: str) -> tuple[LeavingGroupPattern, ...]:
                 query=_compile(row["name"], row["smarts"], {1, 2}),
             )
         )
-    _unique("leaving_groups.tsv", [row.name for row in found])
+    refuse_twice("leaving_groups.tsv", "name", [row.name for row in found])
     return tuple(found)
 
 
 @cache
 def load_class_patterns() -> tuple[ClassPattern, ...]:
     """Return the classes of reactive carbon in table order."""
-    return parse_class_patterns(_text("site_classes.tsv"))
+    return parse_class_patterns(table_text("builder.chemistry", "site_classes.tsv"))
 
 
 def parse_class_patterns(text: str) -> tuple[ClassPattern, ...]:
@@ -235,7 +202,7 @@ def parse_class_patterns(text: str) -> tuple[ClassPattern, ...]:
     Raises ValueError for any fault in it.
     """
     found = []
-    for row in read_table("site_classes.tsv", text, ("name", "kind", "smarts", "expected", "meaning", "source")):
+    for row in rows_of("site_classes.tsv", text, ("name", "kind", "smarts", "expected", "meaning", "source")):
         computed = row["smarts"] == "computed"
         found.append(
             ClassPattern(
@@ -247,14 +214,14 @@ def parse_class_patterns(text: str) -> tuple[ClassPattern, ...]:
                 query=None if computed else _compile(row["name"], row["smarts"], {1}),
             )
         )
-    _unique("site_classes.tsv", [row.name for row in found])
+    refuse_twice("site_classes.tsv", "name", [row.name for row in found])
     return tuple(found)
 
 
 @cache
 def load_attack_patterns() -> tuple[AttackPattern, ...]:
     """Return the attacking atoms in table order, which is the order in which they attack."""
-    return parse_attack_patterns(_text("attacking_atoms.tsv"))
+    return parse_attack_patterns(table_text("builder.chemistry", "attacking_atoms.tsv"))
 
 
 def parse_attack_patterns(text: str) -> tuple[AttackPattern, ...]:
@@ -273,7 +240,7 @@ def parse_attack_patterns(text: str) -> tuple[AttackPattern, ...]:
     }
     found, smarts = [], []
     columns = ("kind", "preference", "smarts", "electrons", "reach", "note", "source")
-    for row in read_table("attacking_atoms.tsv", text, columns):
+    for row in rows_of("attacking_atoms.tsv", text, columns):
         electrons = Electrons(row["electrons"])
         smarts.append(row["smarts"])
         found.append(
@@ -287,7 +254,7 @@ def parse_attack_patterns(text: str) -> tuple[AttackPattern, ...]:
                 query=_compile(row["kind"], row["smarts"], needed.get(electrons, {1})),
             )
         )
-    _unique("attacking_atoms.tsv", smarts)
+    refuse_twice("attacking_atoms.tsv", "SMARTS", smarts)
     return tuple(found)
 
 
@@ -296,7 +263,7 @@ def load_activations() -> dict[str, ActivationPattern]:
     """Return, by leaving group, the reagent that puts it on a hydroxyl oxygen."""
     found: dict[str, ActivationPattern] = {}
     columns = ("group", "reagent_name", "reagent", "smarts", "source")
-    for row in read_table("activations.tsv", _text("activations.tsv"), columns):
+    for row in rows_of("activations.tsv", table_text("builder.chemistry", "activations.tsv"), columns):
         if row["group"] in found:
             raise ValueError(f"activations.tsv: given twice: {row['group']}")
         found[row["group"]] = ActivationPattern(
@@ -315,7 +282,7 @@ def load_aryl_substituents() -> tuple[ArylPattern, ...]:
     table = "aryl_substituents.tsv"
     found = tuple(
         ArylPattern(row["name"], row["source"], _compile(row["name"], row["smarts"], {1, 2}))
-        for row in read_table(table, _text(table), ("name", "smarts", "source"))
+        for row in rows_of(table, table_text("builder.chemistry", table), ("name", "smarts", "source"))
     )
-    _unique(table, [row.name for row in found])
+    refuse_twice(table, "name", [row.name for row in found])
     return found

@@ -3,7 +3,6 @@
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cache
-from importlib import resources
 
 from builder.chemistry.perception import ReactiveSite, attacking_atoms, perceive_sites, sites_of
 from builder.chemistry.structure import Atom, Structure, parse_smiles
@@ -12,6 +11,7 @@ from builder.mechanism.solvents import find_solvent
 from builder.records.model import Record
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Path
+from builder.table import rows_of, table_text
 
 __all__ = ["SiteInPlay", "groups_formed", "in_play", "is_activated", "sites_in_play", "species_in_flask"]
 
@@ -115,11 +115,11 @@ def _bearers(record: Record, structures: Mapping[Path, Structure]) -> tuple[Stru
 @cache
 def _precursors() -> dict[str, tuple[tuple[str, str], ...]]:
     """Load formed_groups.tsv: group -> (precursor, use)."""
-    text = resources.files("builder.mechanism").joinpath("formed_groups.tsv").read_text("utf-8")
-    rows = [line.split("\t") for line in text.splitlines() if line and not line.startswith("#")][1:]
+    name = "formed_groups.tsv"
     found: dict[str, tuple[tuple[str, str], ...]] = {}
-    for group, precursor, use in rows:
-        if use not in {"any", "activator"} or (precursor, use) in found.get(group, ()):
-            raise ValueError(f"formed_groups.tsv: {group} from {precursor}: unknown use, or twice")
-        found[group] = (*found.get(group, ()), (precursor, use))
+    for row in rows_of(name, table_text("builder.mechanism", name), ("group", "precursor", "use", "source")):
+        group, pair = row["group"], (row["precursor"], row["use"])
+        if row["use"] not in {"any", "activator"} or pair in found.get(group, ()):
+            raise ValueError(f"{name}: {group} from {row['precursor']}: unknown use, or given twice")
+        found[group] = (*found.get(group, ()), pair)
     return found

@@ -6,15 +6,15 @@ source), a line in `_RANGES` and a field of `Solvent`.
 
 import math
 import re
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from difflib import get_close_matches
 from enum import StrEnum
 from functools import cache
-from importlib import resources
 
 from builder.chemistry.structure import parse_smiles
 from builder.sources import load_sources
+from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
     "Solvent",
@@ -25,9 +25,6 @@ __all__ = [
     "load_solvents",
     "nearest_solvents",
 ]
-
-NOTHING = "-"
-"""Stands in a cell that holds no value, so that a forgotten cell can be told from an empty one."""
 
 TRACE = 0.01
 """Share by volume below which a component does not decide where a mixture boils or freezes."""
@@ -109,8 +106,7 @@ def load_solvents() -> tuple[Solvent, ...]:
     Raises ValueError for a wrong header, blank cells, numbers that are not finite or out of range, unknown sources,
     and names, structures or CAS numbers given twice.
     """
-    text = resources.files("builder.mechanism").joinpath("solvents.tsv").read_text("utf-8")
-    return _read_solvents(text)
+    return _read_solvents(table_text("builder.mechanism", "solvents.tsv"))
 
 
 def find_solvent(name: str, smiles: str | None = None) -> Solvent | None:
@@ -204,21 +200,11 @@ def _by_smiles() -> dict[str, Solvent]:
 
 
 def _read_solvents(text: str) -> tuple[Solvent, ...]:
-    found = tuple(_solvent(row) for row in _rows(text))
-    _refuse_twice("structure", [solvent.smiles for solvent in found])
-    _refuse_twice("CAS number", [solvent.cas for solvent in found])
-    _refuse_twice("name", [_key(name) for solvent in found for name in solvent.names])
+    found = tuple(_solvent(row) for row in rows_of("solvents.tsv", text, _COLUMNS))
+    refuse_twice("solvents.tsv", "structure", [solvent.smiles for solvent in found])
+    refuse_twice("solvents.tsv", "CAS number", [solvent.cas for solvent in found])
+    refuse_twice("solvents.tsv", "name", [_key(name) for solvent in found for name in solvent.names])
     return found
-
-
-def _rows(text: str) -> Iterator[dict[str, str]]:
-    lines = [line.split("\t") for line in text.splitlines() if line and not line.startswith("#")]
-    if not lines or tuple(lines[0]) != _COLUMNS:
-        raise ValueError(f"solvents.tsv: the header must read {' '.join(_COLUMNS)}")
-    for cells in lines[1:]:
-        if len(cells) != len(_COLUMNS) or not all(cell.strip() for cell in cells):
-            raise ValueError(f"solvents.tsv: {cells[0]}: a cell is blank or missing; write {NOTHING} for no value")
-        yield dict(zip(_COLUMNS, cells, strict=True))
 
 
 def _solvent(row: Mapping[str, str]) -> Solvent:
@@ -259,9 +245,3 @@ def _source(row: Mapping[str, str], quantity: str) -> str:
     if key not in load_sources():
         raise ValueError(f"solvents.tsv: {row['name']}: unknown source {key} of {quantity}")
     return key
-
-
-def _refuse_twice(what: str, values: list[str]) -> None:
-    twice = sorted({value for value in values if values.count(value) > 1})
-    if twice:
-        raise ValueError(f"solvents.tsv: {what} given twice: {', '.join(twice)}")

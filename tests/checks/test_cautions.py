@@ -44,9 +44,10 @@ def faults(rule_id: str, text: str) -> list[Fault]:
     return list(look(case_of(text)))
 
 
-def experiment(example: str) -> tuple[list[Present], float]:
+def experiment(example: str) -> tuple[tuple[Present, ...], float]:
     """Read an example of the table: SMILES, "lines of the work-up" and @temperature, joined by ++."""
-    presents, hottest_c = [], ROOM_TEMPERATURE_C
+    presents: list[Present] = []
+    hottest_c = ROOM_TEMPERATURE_C
     for index, part in enumerate(example.split(" ++ ")):
         if part.startswith("@"):
             hottest_c = float(part[1:])
@@ -54,7 +55,7 @@ def experiment(example: str) -> tuple[list[Present], float]:
             presents.append(Present(("work_up", index), part.strip('"'), Role.WORK_UP))
         else:
             presents.append(Present(("reagents", index), part, Role.FLASK, parse_smiles(part)))
-    return presents, hottest_c
+    return tuple(presents), hottest_c
 
 
 def ids_of(example: str) -> set[str]:

@@ -22,17 +22,18 @@ def test_good_records_have_no_error_and_no_query(path: Path) -> None:
 
 @pytest.mark.parametrize("path", BAD, ids=lambda path: f"{path.parent.name}-{path.stem}")
 def test_bad_records_are_found_where_they_are_marked(path: Path) -> None:
-    text = path.read_text("utf-8")
+    data = path.read_bytes()
+    text = data.decode("utf-8", errors="replace")
     expected = set()
     for number, line in enumerate(text.splitlines(), start=1):
         for mark in _MARK.finditer(line):
             expected.add((mark["rule"], int(mark["line"] or number), int(mark["column"])))
     assert expected, "the file marks nothing"
-    assert {rule for rule, _, _ in expected} == {path.parent.name}
+    assert path.parent.name in {rule for rule, _, _ in expected}
     levels = {Level.ERROR, Level.QUERY}
     if path.parent.name in {"solvent-unknown", "class-not-declared", "yaml-1-1-reads-otherwise", "text-vague"}:
         levels = {Level.REMARK}
-    found = findings_of(text, f"bad/{path.name}")
+    found = findings_of(data, f"bad/{path.name}")
     shown = {
         (f.rule, f.place.line, f.place.column) for f in found if f.level in levels and f.rule != "record-incomplete"
     }
