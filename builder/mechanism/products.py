@@ -46,6 +46,7 @@ __all__ = ["Event", "Route", "routes_to"]
 MAX_SHIFTS = 3
 MAX_CATIONS = 60  # of one ionisation; a steroid's skeleton has no more within three shifts
 MAX_INTERMEDIATES = 40  # products of the first event that may react once more
+_ELIMINATIONS = (StereoEffect.ANTI, StereoEffect.SYN, StereoEffect.NOT_DETERMINED)
 HALOGENS = frozenset({"BrBr", "ClCl", "II"})
 
 
@@ -145,8 +146,9 @@ def _from_site(
     if site.is_addition:
         yield from _additions(start, site, species)
         return
+    has_stereo = start.stereocentres.specified > 0
     for nucleophile in _attackers(species):
-        for inversion in (True, False):
+        for inversion in (True, False) if has_stereo else (True,):
             edit = substitute(start, site, nucleophile, inversion=inversion)
             yield _route(start, site, Event.SUBSTITUTION, edit), edit.others
         for edit in transpose_allylic(start, site, nucleophile):
@@ -157,7 +159,7 @@ def _from_site(
             edit = cyclise(start, site, group)
             yield _route(start, site, Event.RING_CLOSURE, edit), edit.others
     for beta in site.beta_with_hydrogen:
-        for effect in (StereoEffect.ANTI, StereoEffect.SYN, StereoEffect.NOT_DETERMINED):
+        for effect in _ELIMINATIONS if has_stereo or site.ring_sizes else _ELIMINATIONS[:1]:
             for edit in eliminate(start, site, beta.atom, effect=effect):
                 yield _route(start, site, Event.ELIMINATION, edit), edit.others
 
