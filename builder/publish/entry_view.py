@@ -52,10 +52,12 @@ class Link:
 class Surroundings:
     """What an entry's page needs to know of the rest of the book; plain data, so that pages can be made apart.
 
+    folder: name of the book's folder, with which the files of its entries begin.
     titles: of every entry by identifier. rules: title by id, of those that have a page.
     links: to the entries that name this one, by its identifier.
     """
 
+    folder: str
     settings: Settings
     today: dt.date
     titles: Mapping[str, str]
@@ -132,6 +134,7 @@ class EntryView:
     failure: tuple[Fact, ...]
     sought: str
     products: tuple[ProductView, ...]
+    has_courses: bool
     other_measurements: tuple[MeasuredLine, ...]
     rate_constant: str
     time_course_title: str
@@ -162,6 +165,7 @@ def surroundings_of(book: Book, rules: Iterable[Rule[object, object]]) -> Surrou
         for other, relation in _backward(entry.record):
             links.setdefault(other, []).append(Link(entry.id, entry.record.title, relation))
     return Surroundings(
+        folder=book.folder.name,
         settings=book.settings,
         today=book.today,
         titles={entry.id: entry.record.title for entry in book.entries},
@@ -204,6 +208,7 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
             )
             for product in record.outcome.products
         ),
+        has_courses=any(product.course for product in record.outcome.products),
         other_measurements=tuple(line for line in lines if id(line) not in shown),
         rate_constant=rate_constant_text(rate) if rate else "",
         time_course_title=joined((course.follows, f"by {course.by}" if course.by else ""), " ") if course else "",

@@ -35,13 +35,14 @@ _RATE_UNITS = {
 def significant(value: float, digits: int = 3) -> str:
     """Return `value` with that many significant digits: plain from 0.001 to 99999, else with a power of ten.
 
-    >>> significant(10.0), significant(0.05), significant(12345.6), significant(9.2e-6, 2)
-    ('10.0', '0.0500', '12346', '9.2 × 10⁻⁶')
+    >>> significant(9.996), significant(0.05), significant(12345.6), significant(9.2e-6, 2)
+    ('10.0', '0.0500', '12300', '9.2 × 10⁻⁶')
     """
     if not isfinite(value):
         raise ValueError(f"{value} is no number to print")
     if value == 0:
         return "0"
+    value = float(f"{value:.{digits - 1}e}")  # rounded first: 9.996 is 10.0, not 10.00
     exponent = floor(log10(abs(value)))
     if -3 <= exponent <= 4:
         return f"{value:.{max(digits - 1 - exponent, 0)}f}"

@@ -20,7 +20,7 @@ def entry_page(entry: Entry, around: Surroundings) -> Page:
         title=view.summary.title,
         body=render_entry(view, around),
         description=view.summary.take_away or f"{view.summary.conditions}. {view.summary.outcome}",
-        source=entry.file,
+        source=entry.file.removeprefix(f"{around.folder}/"),
         indexed=view.tombstone is None,
         assets=tuple(assets),
     )

@@ -1,0 +1,63 @@
+"""A small book, built into a site by the real plugin in a child process."""
+
+import os
+import shutil
+import subprocess
+import sys
+from collections.abc import Iterable
+from dataclasses import dataclass
+from pathlib import Path
+
+ROOT = Path(__file__).parents[2]
+GOOD = ROOT / "tests" / "data" / "records" / "good"
+RECORDS = ("NS2H8WDRW", "NS3V6TDMZ", "NS7K3QFMC", "NS9PZ4GK7", "NSC0W7N51")
+SETTINGS = """\
+format: 1
+title: A book <b>for</b> tests
+notice: Every entry is invented.
+site_address: https://handbook.example/group/book/
+edit_address: https://forge.example/book/edit/main/entries/
+"""
+DAY = "1796083200"  # 2026-12-01
+
+
+@dataclass(frozen=True)
+class Build:
+    """What a build left: its exit code, what it printed, the folder of the site."""
+
+    code: int
+    out: str
+    site: Path
+
+
+def write_book(folder: Path, texts: Iterable[tuple[str, str]]) -> Path:
+    """Write mkdocs.yml, overrides and records (path below entries, text) into `folder`; return the config's path."""
+    shutil.copytree(ROOT / "site_overrides", folder / "site_overrides")
+    shutil.copy(ROOT / "mkdocs.yml", folder)
+    (folder / "entries").mkdir()
+    (folder / "entries" / "handbook.yml").write_text(SETTINGS, "utf-8")
+    for path, text in texts:
+        place = folder / "entries" / path
+        place.parent.mkdir(parents=True, exist_ok=True)
+        place.write_text(text, "utf-8")
+    return folder / "mkdocs.yml"
+
+
+def good_texts() -> list[tuple[str, str]]:
+    """Return five good records with their file names."""
+    return [(f"{name}.yml", (GOOD / f"{name}.yml").read_text("utf-8")) for name in RECORDS]
+
+
+def build(config: Path, *, seed: str = "0") -> Build:
+    """Run `mkdocs build --strict` as a user would."""
+    site = config.parent / "site"
+    environment = {
+        **os.environ,
+        "NO_MKDOCS_2_WARNING": "1",
+        "PYTHONHASHSEED": seed,
+        "PYTHONUTF8": "1",
+        "SOURCE_DATE_EPOCH": DAY,
+    }
+    command = [sys.executable, "-m", "mkdocs", "build", "--strict", "-f", str(config), "-d", str(site)]
+    ran = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)
+    return Build(ran.returncode, ran.stdout + ran.stderr, site)

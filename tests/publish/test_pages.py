@@ -1,0 +1,176 @@
+"""Every page of a small book: sound HTML, live links, no bare numbers, nothing from a record taken as HTML."""
+
+import pickle
+import re
+from collections.abc import Callable
+from itertools import pairwise
+from urllib.parse import urldefrag, urljoin
+
+import pytest
+
+from builder.book import Book
+from builder.checks.register import all_rules
+from builder.publish.entry_view import surroundings_of, view_entry
+from builder.publish.page import Page, menu_of
+from builder.publish.pages import build_pages
+from builder.records.settings import Settings
+from tests.publish.handmade import GOOD, Markup, book_of, entry_of, text_of
+
+EVIL = "<img src=x onerror=alert(1)>"
+GOLDEN_PAGES = {
+    "front.html": "",
+    "entry-two-stages.html": "e/NSC0W7N51/",
+    "entry-failure.html": "e/NS2H8WDRW/",
+    "list-by-solvent.html": "lists/solvent/ethanol/",
+    "rule-gate.html": "rules/sn1-closed-methyl/",
+}
+_DRAWING = re.compile(r'<svg [^>]*class="hb-drawing.*?</svg>', re.DOTALL)
+
+
+@pytest.mark.parametrize("name", GOLDEN_PAGES)
+def test_pages_are_as_they_were_read_last(
+    name: str, pages: dict[str, Page], golden: Callable[[str, str], None]
+) -> None:
+    # Drawings have golden files of their own.
+    golden(f"pages/{name}", _DRAWING.sub("<svg>drawing</svg>", pages[GOLDEN_PAGES[name]].body))
+
+
+def test_html_is_sound(markup: dict[str, Markup]) -> None:
+    for path, page in markup.items():
+        assert not page.open, f"{path} leaves {page.open} open"
+        ids = page.values("id")
+        assert len(ids) == len(set(ids)), f"{path} has ids twice"
+
+
+def test_headings_come_in_order(markup: dict[str, Markup]) -> None:
+    for path, page in markup.items():
+        levels = [int(tag[1]) for tag, _ in page.elements if re.fullmatch(r"h[1-6]", tag)]
+        assert levels.count(1) == 1, path
+        steps = [after - before for before, after in pairwise(levels)]
+        assert levels[0] == 1, path
+        assert max(steps, default=0) <= 1, f"{path} skips a level"
+
+
+def test_tables_say_what_their_headers_head(markup: dict[str, Markup]) -> None:
+    for path, page in markup.items():
+        tags = [tag for tag, _ in page.elements]
+        assert tags.count("table") == tags.count("caption"), path
+        assert all(attributes.get("scope") in {"row", "col"} for tag, attributes in page.elements if tag == "th"), path
+
+
+def test_no_inline_style_script_or_handler(markup: dict[str, Markup]) -> None:
+    for path, page in markup.items():
+        assert not page.values("style"), path
+        assert not {tag for tag, _ in page.elements} & {"script", "style", "iframe", "object", "embed"}, path
+        assert not [name for _, attributes in page.elements for name in attributes if name.startswith("on")], path
+
+
+def test_links_lead_to_pages_and_files_of_the_book(pages: dict[str, Page], markup: dict[str, Markup]) -> None:
+    root = "https://handbook.example/sub/"
+    anchors = {urljoin(root, path): set(page.values("id")) for path, page in markup.items()}
+    files = {urljoin(root, asset.path) for page in pages.values() for asset in page.assets}
+    for path, page in markup.items():
+        for href in page.values("href"):
+            target, anchor = urldefrag(urljoin(urljoin(root, path), href))
+            assert target in anchors.keys() | files, f"{path} links to {href}"
+            assert not anchor or anchor in anchors[target], f"{path} links to {href}"
+
+
+def test_no_percentage_stands_alone(markup: dict[str, Markup]) -> None:
+    for path, page in markup.items():
+        bare = [text for text in page.texts if re.fullmatch(r"[<>≤≥]?\s*\d+(\.\d+)?\s*%", text)]
+        assert not bare, f"{path} shows {bare}"
+
+
+def test_every_yield_has_kind_scale_and_runs(book: Book, markup: dict[str, Markup]) -> None:
+    typed = [(e.id, line) for e in book.entries for line in e.record.outcome.measured if line.what == "yield"]
+    assert typed
+    for entry_id, line in typed:
+        text = " ".join(markup[f"e/{entry_id}/"].texts)
+        assert re.search(rf"{line.value} {line.kind} yield [^%]*mmol scale, n (= \d+|not stated)", text)
+
+
+def test_an_entry_shows_cautions_before_its_scheme_and_says_who_decides(pages: dict[str, Page]) -> None:
+    body = pages["e/NSC0W7N51/"].body
+    assert body.index("sodium azide: very toxic") < body.index("hb-drawing") < body.index("hb-strip")
+    assert "Local rules and qualified people decide" in pages["e/NS7K3QFMC/"].body
+
+
+def test_derived_amounts_are_told_from_typed_ones(pages: dict[str, Page]) -> None:
+    body = pages["e/NSC0W7N51/"].body
+    # By hand: 1.302 g of C8H18O (130.23 g/mol) are 9.998 mmol; 1.2 equivalents of that, 12.0 mmol.
+    assert '<span class="hb-typed">1.302 g</span>' in body
+    assert '<span class="hb-derived">10.0 mmol</span>' in body
+    assert '<span class="hb-derived">12.0 mmol</span>' in body
+    assert "Solvent in all 40.0 mL, substrate 0.250 mol/L in it" in body
+
+
+def test_the_record_can_be_taken_away_as_written(pages: dict[str, Page]) -> None:
+    files = {asset.path: asset.data for asset in pages["e/NSC0W7N51/"].assets}
+    assert files["e/NSC0W7N51/NSC0W7N51.yml"] == (GOOD / "NSC0W7N51.yml").read_bytes()
+    assert files["e/NSC0W7N51/NSC0W7N51.svg"].startswith(b"<svg ")
+
+
+def test_nothing_of_a_record_is_taken_as_html() -> None:
+    text = text_of("NSC0W7N51")
+    for plain in ("One-pot mesylation and azidation of (S)-octan-2-ol", "2-chlorooctane", "DMF", "BK2/121"):
+        text = text.replace(plain, f"'{EVIL}'")
+    text = text.replace("time: 16 h", f"time: 16 h\n    note: '{EVIL}'")
+    text += f"take_away: '{EVIL}'\nwork_up: ['{EVIL}']\nprocedure: '{EVIL}'\nevidence: ['{EVIL}']\n"
+    assert text.count(EVIL) >= 9
+    settings = Settings(format=1, title=EVIL, group=EVIL, notice=EVIL, contact=EVIL, house_rules=(EVIL,))
+    book = book_of(entry_of(text, settings=settings), settings=settings)
+    for page in build_pages(book):
+        assert "<img" not in page.body, page.path
+        assert "img" not in {tag for tag, _ in Markup(page.body).elements}, page.path
+        assert not [asset for asset in page.assets if asset.path.endswith("svg") and b"<img" in asset.data]
+
+
+def test_hostile_names_get_harmless_addresses() -> None:
+    text = text_of("NS7K3QFMC").replace("name: water", "name: ../../Ω water?#")
+    paths = [page.path for page in build_pages(book_of(entry_of(text)))]
+    assert "lists/solvent/water/" in paths
+    assert all(re.fullmatch(r"([A-Za-z0-9-]+/)*", path) for path in paths)
+
+
+def test_a_withdrawn_entry_keeps_its_page_and_says_why() -> None:
+    text = text_of("NS7K3QFMC").replace("status: current", "status: superseded")
+    text += "superseded: {by: NS2H8WDRW, date: 2026-06-01, because: the water was not degassed}\n"
+    successor = entry_of(text_of("NS2H8WDRW"))
+    pages = {page.path: page for page in build_pages(book_of(entry_of(text), successor))}
+    old, new = pages["e/NS7K3QFMC/"], pages["e/NS2H8WDRW/"]
+    assert not old.indexed
+    assert "Superseded on 2026-06-01" in old.body
+    assert "the water was not degassed" in old.body
+    assert 'href="../../e/NS2H8WDRW/"' in old.body
+    assert "takes the place of" in new.body
+    assert "Solvolysis rate" not in pages[""].body
+
+
+def test_an_empty_book_has_a_site() -> None:
+    front = build_pages(book_of())[0]
+    assert "The book is empty" in front.body
+
+
+def test_views_are_plain_data(book: Book) -> None:
+    around = surroundings_of(book, all_rules().values())
+    for entry in book.entries:
+        view = view_entry(entry, around)
+        assert pickle.loads(pickle.dumps(view)) == view
+    assert pickle.loads(pickle.dumps(around)) == around
+
+
+def test_the_menu_nests_lists_below_entries(pages: dict[str, Page]) -> None:
+    menu = menu_of(pages.values())
+    assert [next(iter(item)) for item in menu if isinstance(item, dict)] == [
+        "State of the book",
+        "Entries",
+        "Rules",
+        "How to add",
+        "How to cite",
+    ]
+    entries = menu[1]
+    assert isinstance(entries, dict)
+    below = entries["Entries"]
+    assert below[0] == "lists/index.md"
+    assert {"Solvent": "lists/solvent/index.md"} in below
