@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 
 from builder.chemistry.inks import palette_css
-from tests.browser.built import Build, build, good_texts, write_book
+from tests.browser.built import RECORDS, ROOT, Build, build, good_texts, write_book
 from tests.publish.handmade import Markup
 
 EVIL = '"><img src=x onerror=alert(1)>'
