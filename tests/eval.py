@@ -22,8 +22,11 @@ from builder.mechanism.solvents import find_solvent
 from builder.records.vocabulary import Mechanism
 
 CASES = Path(__file__).parent / "data" / "cases-open.jsonl"
-_ACIDS = ("H2SO4", "H3PO4", "HCl", "HBr", "HI", "BF3", "TsOH", "HClO4", "ZnCl2", "sulfuric", "Ag", "acid", "Cl3", "PBr3")
-_ACIDS = (*_ACIDS, "SOCl2", "PPh3", "chloride", "HNO2", "Tf2O", "anhydride", "Br2", "DEAD", "DIAD")
+# Parts of additive names that stand for an acid or an activator; the engine's reagents table will know them.
+_ACTIVATING = (
+    *("H2SO4", "H3PO4", "HCl", "HBr", "HI", "HClO4", "TsOH", "acid", "BF3", "ZnCl2", "AlCl3", "Ag", "HNO2"),
+    *("SOCl2", "PBr3", "PCl3", "POCl3", "PPh3", "chloride", "Tf2O", "anhydride", "DEAD", "DIAD", "Br2"),
+)
 
 
 @dataclass(frozen=True)
@@ -39,7 +42,7 @@ class Judged:
 def judge(case: dict[str, Any]) -> Judged:
     """Judge one case by structures alone."""
     substrate = parse_smiles(case["substrate"])
-    activated = any(word in additive for additive in case["additives"] for word in _ACIDS)
+    activated = any(word in additive for additive in case["additives"] for word in _ACTIVATING)
     sites = tuple(SiteInPlay(substrate, site, activated) for site in perceive_sites(substrate))
     flask = tuple(_species(case))
     activated = activated or any(n.kind == "hydrogen halide" for each in flask for n in attacking_atoms(each))
@@ -48,7 +51,8 @@ def judge(case: dict[str, Any]) -> Judged:
     if expected.get("major_product") and expected["dominant"] != "none":
         follows = bool(routes_to((parse_smiles(expected["major_product"]),), sites, flask)[0])
     if expected["dominant"] != "none":
-        mechanisms = [Mechanism(word) for word in (expected["dominant"], *expected.get("acceptable", [])) if word != "none"]
+        words = {expected["dominant"], *expected.get("acceptable", [])} - {"none"}
+        mechanisms = [Mechanism(word) for word in words]
         situations = [Situation(each.site, activated) for each in sites]
         is_open = any(not closing_gates(mechanism, s) for mechanism in mechanisms for s in situations)
     return Judged(case["id"], case["title"], follows, is_open)

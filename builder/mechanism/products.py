@@ -29,6 +29,7 @@ from builder.chemistry.transform import (
     capture,
     cyclise,
     eliminate,
+    fragment,
     ionise,
     lose_proton,
     migrating_groups,
@@ -150,18 +151,18 @@ def _from_site(
     for nucleophile in _attackers(species):
         for inversion in (True, False) if has_stereo else (True,):
             edit = substitute(start, site, nucleophile, inversion=inversion)
-            yield _route(start, site, Event.SUBSTITUTION, edit), edit.others
+            yield from _products_of(start, site, (Event.SUBSTITUTION,), edit)
         for edit in transpose_allylic(start, site, nucleophile):
-            yield _route(start, site, Event.TRANSPOSITION, edit), edit.others
+            yield from _products_of(start, site, (Event.TRANSPOSITION,), edit)
     out_of_reach = {site.alpha_carbon, *(atom for atom, _ in start.atoms[site.alpha_carbon].neighbours)}
     for group in neighbouring_groups(start):
         if group.atom not in out_of_reach:
             edit = cyclise(start, site, group)
-            yield _route(start, site, Event.RING_CLOSURE, edit), edit.others
+            yield from _products_of(start, site, (Event.RING_CLOSURE,), edit)
     for beta in site.beta_with_hydrogen:
         for effect in _ELIMINATIONS if has_stereo or site.ring_sizes else _ELIMINATIONS[:1]:
             for edit in eliminate(start, site, beta.atom, effect=effect):
-                yield _route(start, site, Event.ELIMINATION, edit), edit.others
+                yield from _products_of(start, site, (Event.ELIMINATION,), edit)
 
 
 def _additions(
@@ -169,11 +170,11 @@ def _additions(
 ) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
     for nucleophile in _attackers(species):
         for edit in add_hx(start, site, nucleophile):
-            yield _route(start, site, Event.ADDITION, edit), edit.others
+            yield from _products_of(start, site, (Event.ADDITION,), edit)
     for molecule in species:
         if molecule.smiles in HALOGENS:
             for edit in add_x2(start, site, molecule):
-                yield _route(start, site, Event.ADDITION, edit), edit.others
+                yield from _products_of(start, site, (Event.ADDITION,), edit)
 
 
 def _can_add(species: Iterable[Structure]) -> bool:
@@ -193,8 +194,17 @@ def _attackers(species: Iterable[Structure]) -> Iterator[Nucleophile]:
                 yield nucleophile
 
 
-def _route(start: Structure, site: ReactiveSite, event: Event, edit: Edit) -> Route:
-    return Route(start, site, (event,), edit.product, edit.effect)
+def _products_of(
+    start: Structure, site: ReactiveSite, events: tuple[Event, ...], edit: Edit
+) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
+    """Yield the route to the product of an edit, and those to the carbon-bearing pieces that leave.
+
+    A leaving piece can be the product sought: the phenol of an ether cleavage, the acid of an ester.
+    """
+    yield Route(start, site, events, edit.product, edit.effect), edit.others
+    for piece in edit.others:
+        if any(atom.symbol == "C" for atom in piece.atoms):
+            yield Route(start, site, events, piece, StereoEffect.NOT_APPLICABLE), (edit.product,)
 
 
 # --- through a cation -------------------------------------------------------------------------------------
@@ -212,10 +222,10 @@ def _through_cations(start: Structure, site: ReactiveSite, species: tuple[Struct
             continue  # a primary cation only hands its charge on
         for nucleophile in attackers:
             for edit in capture(cation, nucleophile):
-                yield Route(start, site, (*events, Event.SUBSTITUTION), edit.product, edit.effect)
+                yield from (route for route, _ in _products_of(start, site, (*events, Event.SUBSTITUTION), edit))
         for atom in _neighbours(cation):
             for edit in lose_proton(cation, atom):
-                yield Route(start, site, (*events, Event.ELIMINATION), edit.product, edit.effect)
+                yield from (route for route, _ in _products_of(start, site, (*events, Event.ELIMINATION), edit))
 
 
 def _cations(first: Cation) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
@@ -228,7 +238,8 @@ def _cations(first: Cation) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
             yield cation, events
             shifted = ((shift_12(cation, origin, moving), Event.SHIFT) for origin, moving in migrating_groups(cation))
             resonant = ((form, Event.TRANSPOSITION) for form in allylic_forms(cation))
-            for made, event in (*resonant, *shifted):
+            opened = ((fragment(cation, near, far), Event.SHIFT) for near, far in _small_ring_bonds(cation))
+            for made, event in (*resonant, *shifted, *opened):
                 if made.structure not in seen and len(seen) < MAX_CATIONS and _is_stable(made):
                     seen.add(made.structure)
                     following.append((made, (*events, event)))
@@ -243,6 +254,16 @@ def _is_stable(cation: Cation) -> bool:
         n.aromatic or n.symbol in {"N", "O", "S"} or 3 in n.ring_sizes or _is_unsaturated(n) for n in neighbours
     )
     return len(neighbours) >= 2 or shares
+
+
+def _small_ring_bonds(cation: Cation) -> Iterator[tuple[int, int]]:
+    """Yield the bonds of a three-membered ring next to the centre: cyclopropylmethyl opens to homoallyl."""
+    atoms = cation.structure.atoms
+    around = {atom for atom, _ in atoms[cation.centre].neighbours}
+    for near in sorted(around):
+        if 3 in atoms[near].ring_sizes:
+            beyond = {atom for atom, _ in atoms[near].neighbours if 3 in atoms[atom].ring_sizes}
+            yield from ((near, far) for far in sorted(beyond - around - {cation.centre}))
 
 
 def _is_unsaturated(atom: Atom) -> bool:

@@ -4,14 +4,15 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cache
 
+from builder.chemistry.fragments import Fragment
 from builder.chemistry.perception import ReactiveSite, attacking_atoms, perceive_sites, sites_of
-from builder.chemistry.structure import Atom, Structure, parse_smiles
+from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.amounts import charged_rows
 from builder.mechanism.solvents import find_solvent
 from builder.records.model import Record
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Path
-from builder.table import rows_of, table_text
+from builder.table import refuse_twice, rows_of, table_text
 
 __all__ = ["SiteInPlay", "groups_formed", "in_play", "is_activated", "sites_in_play", "species_in_flask"]
 
@@ -44,14 +45,21 @@ def in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[SiteI
     found = [SiteInPlay(structure, site, activated) for structure in bearers for site in sites_of(structure, group)]
     if found:
         return tuple(found)
-    uses = {reagent.use for reagent in record.reagents}
     return tuple(
         SiteInPlay(structure, site, is_activated=True)
-        for precursor, use in _precursors().get(group, ())
-        if use == "any" or uses & _ACTIVATING_USES
+        for precursor, agent in _precursors().get(group, ())
+        if _has_agent(agent, record, structures)
         for structure in bearers
         for site in sites_of(structure, precursor)
     )
+
+
+def _has_agent(agent: str, record: Record, structures: Mapping[Path, Structure]) -> bool:
+    """Say whether something in the flask can form the group: an activator, a nucleophile of that kind, anything."""
+    if agent == "activator":
+        return is_activated(record, structures)
+    kinds = (n.kind for species in species_in_flask(record, structures) for n in attacking_atoms(species))
+    return agent == "any" or agent in kinds
 
 
 def sites_in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[ReactiveSite, ...]:
@@ -69,12 +77,13 @@ def is_activated(record: Record, structures: Mapping[Path, Structure]) -> bool:
     """Say whether an acid or an activator in the flask can make a reluctant group leave."""
     if any(reagent.use in _ACTIVATING_USES for reagent in record.reagents):
         return True
-    return any(
-        nucleophile.kind in _ACID_KINDS
-        for path, _, _ in charged_rows(record)
-        if path in structures
-        for nucleophile in attacking_atoms(structures[path])
-    )
+    return any(_activates(structures[path]) for path, _, _ in charged_rows(record)[1:] if path in structures)
+
+
+def _activates(structure: Structure) -> bool:
+    if any(nucleophile.kind in _ACID_KINDS for nucleophile in attacking_atoms(structure)):
+        return True
+    return any(donor.activates and donor.fragment.is_in(structure) for donor in _halide_donors())
 
 
 def species_in_flask(record: Record, structures: Mapping[Path, Structure]) -> Iterator[Structure]:
@@ -90,21 +99,28 @@ def species_in_flask(record: Record, structures: Mapping[Path, Structure]) -> It
 
 
 def _halides_set_free(structure: Structure) -> Iterator[Structure]:
-    """Yield the halide ions that a reagent sets free: those on anything but a carbon that is a substrate itself.
-
-    Sulfonyl, phosphorus, silicon, boron and acyl halides give them up; so chloride from methanesulfonyl chloride
-    turns up in a product.
-    """
-    for symbol in sorted({atom.symbol for atom in structure.atoms} & {"Cl", "Br", "I"}):
-        partners = {
-            structure.atoms[other] for atom in structure.atoms if atom.symbol == symbol for other, _ in atom.neighbours
-        }
-        if any(partner.symbol not in {"C", symbol} or _is_acyl(partner) for partner in partners):
-            yield parse_smiles(f"[{symbol}-]")
+    """Yield the halide ions a reagent sets free: methanesulfonyl chloride gives chloride, seen in a by-product."""
+    for ion in dict.fromkeys(donor.ion for donor in _halide_donors() if donor.fragment.is_in(structure)):
+        yield parse_smiles(ion)
 
 
-def _is_acyl(atom: Atom) -> bool:
-    return atom.symbol == "C" and any(order == 2.0 for _, order in atom.neighbours) and not atom.aromatic
+@dataclass(frozen=True, slots=True)
+class _HalideDonor:
+    """One row of halide_donors.tsv."""
+
+    ion: str
+    fragment: Fragment
+    activates: bool
+
+
+@cache
+def _halide_donors() -> tuple[_HalideDonor, ...]:
+    name = "halide_donors.tsv"
+    rows = rows_of(name, table_text("builder.mechanism", name), ("ion", "smarts", "activates", "note", "source"))
+    return tuple(
+        _HalideDonor(row["ion"], Fragment.from_smarts(row["smarts"]), activates=row["activates"] == "yes")
+        for row in rows
+    )
 
 
 def _bearers(record: Record, structures: Mapping[Path, Structure]) -> tuple[Structure, ...]:
@@ -114,12 +130,11 @@ def _bearers(record: Record, structures: Mapping[Path, Structure]) -> tuple[Stru
 
 @cache
 def _precursors() -> dict[str, tuple[tuple[str, str], ...]]:
-    """Load formed_groups.tsv: group -> (precursor, use)."""
+    """Load formed_groups.tsv: group -> (precursor, agent)."""
     name = "formed_groups.tsv"
     found: dict[str, tuple[tuple[str, str], ...]] = {}
-    for row in rows_of(name, table_text("builder.mechanism", name), ("group", "precursor", "use", "source")):
-        group, pair = row["group"], (row["precursor"], row["use"])
-        if row["use"] not in {"any", "activator"} or pair in found.get(group, ()):
-            raise ValueError(f"{name}: {group} from {row['precursor']}: unknown use, or given twice")
-        found[group] = (*found.get(group, ()), pair)
+    for row in rows_of(name, table_text("builder.mechanism", name), ("group", "precursor", "agent", "source")):
+        found[row["group"]] = (*found.get(row["group"], ()), (row["precursor"], row["agent"]))
+    for group, pairs in found.items():
+        refuse_twice(name, f"{group} from", [precursor for precursor, _ in pairs])
     return found

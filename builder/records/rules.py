@@ -128,11 +128,11 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         silent_on=(outcome_example("{yield: 81 %, of: A, kind: isolated}"),),
     ),
     card(
-        id="name-split-at-comma",
-        title="A name is split at its comma",
+        id="text-split-at-comma",
+        title="A text is split at its comma",
         level=Level.ERROR,
         source="yaml-1-2",
-        text="""A name with a comma inside [ ] or { } stands in quotes.
+        text="""A name or text with a comma inside [ ] or { } stands in quotes.
 
         There the comma ends a value: {name: 2,2-dimethylpropane} reads as the name 2 and a key without value.""",
         fires_on=(

@@ -31,7 +31,7 @@ Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 _STRUCTURE_KEYS = {"smiles", "inchi", "sought"}
 _INTEGER = re.compile(r"[-+]?\d+")
 _FLOAT = re.compile(r"[-+]?(\.\d+|\d+(\.\d*)?)([eE][-+]?\d+)?")
-_ALTERED_NUMBER = re.compile(r"[-+]?0\d[\d.]*|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
+_ALTERED_NUMBER = re.compile(r"[-+]?0\d+(\.\d*)?|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
 # What a YAML 1.1 reader takes for a boolean, a number to base 60, a number with underscores, or (1e-4) for text.
 _OTHERWISE_IN_1_1 = re.compile(
     r"y|Y|yes|Yes|YES|n|N|no|No|NO|on|On|ON|off|Off|OFF|=|[-+]?\d[\d_]*(:[0-5]?\d)+(\.\d*)?|[-+]?\d+_[\d_]*"
@@ -253,7 +253,7 @@ class _Constructor:
                 self.report("value-wrong-type", key_node, "a key is a word", "write one word and a colon")
                 continue
             key: str = key_node.value
-            if self._is_rest_of_a_name(node, key_node, value_node, last):
+            if self._is_rest_of_a_text(node, key_node, value_node, last):
                 self._join(made, last, key_node, path)
                 continue
             key_path = (*path, key)
@@ -271,20 +271,23 @@ class _Constructor:
             last = key
         return made
 
-    def _is_rest_of_a_name(self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node, last: str) -> bool:
-        """Say whether a flow mapping split "2,2-dimethyl…" at its comma: a key without value right behind it."""
+    def _is_rest_of_a_text(self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node, last: str) -> bool:
+        """Say whether a flow mapping split a text at its comma: a "key" without colon behind a value."""
         is_bare = (
             isinstance(value, yaml.ScalarNode) and value.start_mark.index == value.end_mark.index and not value.style
         )
-        return bool(node.flow_style and last and is_bare and self.text[key.start_mark.index - 1] == ",")
+        if not (node.flow_style and last and is_bare) or key.style:
+            return False
+        return not self.text[key.end_mark.index :].lstrip().startswith(":")
 
     def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
         place = self.values[(*path, last)]
-        whole = f"{made[last]},{rest.value}"
+        space = self.text[rest.start_mark.index - 1]
+        whole = f"{made[last]},{space if space.isspace() else ''}{rest.value}"
         made[last] = whole
-        self.findings = [f for f in self.findings if not (f.rule == "name-split-at-comma" and f.place == place)]
+        self.findings = [f for f in self.findings if not (f.rule == "text-split-at-comma" and f.place == place)]
         fault = Fault(at=(), message=f"{last} is split at its comma", mend=f"write {quoted(whole)}", fix=quoted(whole))
-        self.findings.append(reading_rule("name-split-at-comma").finding(fault, place))
+        self.findings.append(reading_rule("text-split-at-comma").finding(fault, place))
 
     def _whole_names(self, node: yaml.SequenceNode) -> Iterator[list[yaml.Node]]:
         """Group the items of a flow sequence so that a name split at its commas is one group."""
@@ -305,7 +308,7 @@ class _Constructor:
         whole = ",".join(str(item.value) for item in run)
         self.values[path] = self._place(run[0], run[-1])
         message = f"{whole} is read as {len(run)} values"
-        self.report("name-split-at-comma", run[0], message, f"write {quoted(whole)}", quoted(whole), until=run[-1])
+        self.report("text-split-at-comma", run[0], message, f"write {quoted(whole)}", quoted(whole), until=run[-1])
         return whole
 
     def _refuse_tag(self, node: yaml.Node) -> None:

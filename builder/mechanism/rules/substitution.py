@@ -15,15 +15,16 @@ _IONISING = (Mechanism.SN1, Mechanism.E1)
     closes=(Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.SN1, Mechanism.E2, Mechanism.E1),
     source="march-2013",
     fires_on=("CCCCO", "CCOCC", "CCCCF"),
-    silent_on=("CCCCBr", "CC1CO1", "CCCC[OH2+]"),
+    silent_on=("CCCCBr", "CC1CO1", "CCCC[OH2+]", "COC(=O)c1ccccc1"),
 )
 def leaving_group_stays(situation: Situation) -> bool:
     """Hydroxide, alkoxides, amides and fluoride do not leave an unactivated carbon.
 
     Their conjugate acids are too weak. Protonation, a sulfonyl chloride, a phosphorus reagent or the strain of a
-    small ring helps; so does E1cB, which this gate leaves open.
+    small ring helps; so does E1cB, which this gate leaves open. Esters pass: a carboxylate leaves when iodide or
+    thiolate takes the alkyl group, or when that ionises.
     """
-    return not situation.group_leaves_unaided
+    return not situation.group_leaves_unaided and situation.site.leaving_group != "carboxylate"
 
 
 @gate(
