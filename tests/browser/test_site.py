@@ -126,3 +126,14 @@ def test_a_page_opened_from_a_folder_leads_on(tab: "sync_api.Page", site: Path) 
     tab.goto((site / "index.html").as_uri())
     tab.locator(".hb-row__title a", has_text="Neopentyl bromide").first.click()
     assert tab.locator("h1").text_content() == "Neopentyl bromide and sodium azide in aqueous ethanol, no reaction"
+
+
+def test_a_printed_page_says_which_revision_it_is(tab: "sync_api.Page", address: str) -> None:
+    tab.goto(address + "e/NSC0W7N51/")
+    tab.emulate_media(media="print")
+    assert not tab.locator(".md-header").is_visible()
+    assert tab.locator(".hb-printed").is_visible()
+    printed = tab.locator(".hb-printed").text_content()
+    assert printed is not None
+    assert printed.startswith("NSC0W7N51 · revision 1 · ")
+    tab.emulate_media(media="screen")
