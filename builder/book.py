@@ -14,7 +14,7 @@ from builder.checks.run import check_group, check_record, settle
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
 from builder.records.model import Record
-from builder.records.reader import Reading, read_record, read_settings
+from builder.records.reader import MAX_BYTES, Reading, read_record, read_settings
 from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.rule import Fault
@@ -105,7 +105,7 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
     """
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
-    examined = [examine(read_record(path, _shown(path, folder)), settings, today) for path in progress(files)]
+    examined = [_examine_file(path, folder, settings, today) for path in progress(files)]
     settled = judge(examined)
     entries = [
         _entry(each.reading, each.case, settled[each.reading.file]) for each in examined if each.case is not None
@@ -122,11 +122,28 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
     )
 
 
-def examine(reading: Reading, settings: Settings, today: dt.date) -> Examined:
-    """Check one record on its own."""
+def _examine_file(path: Path, folder: Path, settings: Settings, today: dt.date) -> Examined:
+    reading = read_record(path, _shown(path, folder))
+    named = reading.record.rxn_file if reading.record else None
+    return examine(reading, settings, today, _attachment(path.parent / named.path, folder) if named else None)
+
+
+def _attachment(path: Path, folder: Path) -> bytes | None:
+    """Return the content of a file that a record names; None unless it is a small file inside the book."""
+    real = path.resolve()
+    if not real.is_relative_to(folder.resolve()) or not real.is_file() or real.stat().st_size > MAX_BYTES:
+        return None
+    return real.read_bytes()
+
+
+def examine(reading: Reading, settings: Settings, today: dt.date, rxn: bytes | None = None) -> Examined:
+    """Check one record on its own.
+
+    rxn: content of the RXN file that the record names.
+    """
     if reading.record is None:
         return Examined(reading, None, reading.findings)
-    case = open_case(reading.record, reading.file, settings, today)
+    case = open_case(reading.record, reading.file, settings, today, rxn)
     return Examined(reading, case, (*reading.findings, *check_record(case, reading.places)))
 
 

@@ -1,10 +1,11 @@
 """Case: a record with everything the checks look at, computed once."""
 
 import datetime as dt
+import hashlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
-from builder.chemistry.structure import Structure, StructureError, parse_inchi, parse_smiles
+from builder.chemistry.structure import Structure, StructureError, parse_inchi, parse_rxn, parse_smiles
 from builder.mechanism.amounts import Amounts, charged_rows, derive_amounts
 from builder.records.model import Compound, Record
 from builder.records.settings import Settings
@@ -19,6 +20,7 @@ class Case:
 
     file: as findings show it. today: the date of the build, from which "in the future" is judged.
     structures: by path of the compound, for all that could be read; unreadable holds the rest with the reason.
+    rxn_fault: why the RXN file that the record names cannot be used; None where it can, or none is named.
     """
 
     record: Record
@@ -28,6 +30,7 @@ class Case:
     structures: Mapping[Path, Structure]
     unreadable: Mapping[Path, StructureError]
     amounts: Amounts
+    rxn_fault: StructureError | None = None
 
     @property
     def substrate(self) -> Structure:
@@ -38,8 +41,12 @@ class Case:
         return self.structures[("substrate",)]
 
 
-def open_case(record: Record, file: str, settings: Settings, today: dt.date) -> Case:
-    """Read the structures of a record and derive its amounts."""
+def open_case(record: Record, file: str, settings: Settings, today: dt.date, rxn: bytes | None = None) -> Case:
+    """Read the structures of a record and derive its amounts.
+
+    rxn: content of the RXN file that the record names; None where there is none inside the book.
+    """
+    drawn, rxn_fault = _components(record, rxn)
     structures: dict[Path, Structure] = {}
     unreadable: dict[Path, StructureError] = {}
     for path, compound in compounds_of(record):
@@ -48,9 +55,36 @@ def open_case(record: Record, file: str, settings: Settings, today: dt.date) -> 
                 structures[path] = parse_smiles(compound.smiles)
             elif compound.inchi:
                 structures[path] = parse_inchi(compound.inchi)
+            elif compound.from_rxn and rxn_fault is None:
+                structures[path] = _component(compound.from_rxn, drawn)
         except StructureError as error:
             unreadable[path] = error
-    return Case(record, file, settings, today, structures, unreadable, derive_amounts(record, structures))
+    amounts = derive_amounts(record, structures)
+    return Case(record, file, settings, today, structures, unreadable, amounts, rxn_fault)
+
+
+def _components(record: Record, rxn: bytes | None) -> tuple[dict[str, Structure], StructureError | None]:
+    """Return the components of the record's RXN file by name ("reactant 1"), or why there are none."""
+    if record.rxn_file is None:
+        asks = any(compound.from_rxn for _, compound in compounds_of(record))
+        return {}, StructureError("no rxn_file is named", "add rxn_file: with path and sha256") if asks else None
+    if rxn is None:
+        return {}, StructureError("this file is not beside the record", "put it there; it may not lie outside the book")
+    found = hashlib.sha256(rxn).hexdigest()
+    if found != record.rxn_file.sha256:
+        return {}, StructureError("the file is not the one whose SHA-256 is given", f"its SHA-256 is {found}")
+    try:
+        reactants, products = parse_rxn(rxn.decode("utf-8", errors="replace"))
+    except StructureError as error:
+        return {}, error
+    sides = {"reactant": reactants, "product": products}
+    return {f"{side} {n}": each for side, all_of in sides.items() for n, each in enumerate(all_of, start=1)}, None
+
+
+def _component(name: str, drawn: Mapping[str, Structure]) -> Structure:
+    if name not in drawn:
+        raise StructureError(f"the RXN file has no {name}", f"it has {', '.join(drawn)}")
+    return drawn[name]
 
 
 def compounds_of(record: Record) -> Iterator[tuple[Path, Compound]]:

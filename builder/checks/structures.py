@@ -30,9 +30,27 @@ def _substrate(smiles: str, classes: str = "secondary", group: str = "bromide", 
 
 
 @rule(
+    id="rxn-file-unusable",
+    title="An RXN file that cannot be used",
+    source="ctfile",
+    fires_on=(f"rxn_file: {{path: scheme.rxn, sha256: {'f' * 64}}}",),
+    silent_on=("notebook: BK2/112",),
+)
+def rxn_file_is_unusable(case: Case) -> Iterator[Fault]:
+    """The RXN file that a record names lies beside it, has the SHA-256 that is given, and can be read.
+
+    It is never looked for outside the book, and its hash keeps a changed drawing from changing an entry unseen.
+    """
+    if case.rxn_fault is not None:
+        at = ("rxn_file", "path") if case.record.rxn_file is not None else ()
+        yield Fault(at=at, message=case.rxn_fault.reason, mend=case.rxn_fault.mend)
+
+
+@rule(
     id="structure-unreadable",
     title="A structure that cannot be read",
     source="opensmiles",
+    needs=("rxn-file-unusable",),
     fires_on=(
         "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-', equivalents: 1.5}",
         "nucleophile: {name: sodium azide, smiles: 'C1CC', equivalents: 1.5}",
@@ -46,9 +64,10 @@ def structure_is_unreadable(case: Case) -> Iterator[Fault]:
     """
     paths = dict(compounds_of(case.record))
     for path, error in case.unreadable.items():
-        key = "smiles" if paths[path].smiles else "inchi"
+        compound = paths[path]
+        key = "smiles" if compound.smiles else "inchi" if compound.inchi else "from_rxn"
         where = f" at character {error.position + 1}" if error.position is not None else ""
-        yield Fault(at=(*path, key), message=f"{paths[path].name}: {error.reason}{where}", mend=error.mend)
+        yield Fault(at=(*path, key), message=f"{compound.name}: {error.reason}{where}", mend=error.mend)
 
 
 @rule(
@@ -292,6 +311,7 @@ STRUCTURE_CHECKS = (
     ee_without_chirality,
     leaving_group_is_not_found,
     leaving_group_is_unknown,
+    rxn_file_is_unusable,
     salt_lacks_its_counter_ion,
     stereo_contradicts_structure,
     structure_is_unreadable,

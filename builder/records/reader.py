@@ -19,9 +19,10 @@ from builder.records.yaml_text import Places, Plain, quoted, read_plain
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["Reading", "read_bytes", "read_into", "read_record", "read_settings"]
+__all__ = ["MAX_BYTES", "Reading", "read_bytes", "read_into", "read_record", "read_settings"]
 
 MAX_BYTES = 256 * 1024
+"""Largest file that is read: a record, or an RXN file beside it."""
 _FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\x80-\x84\x86-\x9f\ufffe\uffff]")
 _UNION_TAGS = {"word", "substance"}
 
