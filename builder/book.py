@@ -40,7 +40,7 @@ class Verdict(StrEnum):
 class Entry:
     """One publishable record with all that is known about it.
 
-    file: path below the book's folder, with forward slashes. text: its YAML as written.
+    file: as findings show it, the name of the book's folder first, with forward slashes. text: its YAML as written.
     digest: SHA-256 of its scientific content, hexadecimal.
     """
 

@@ -5,12 +5,13 @@ from collections.abc import Iterator, Sequence
 from functools import lru_cache
 
 from builder.checks.case import Case
+from builder.checks.derivation import SOUGHT, is_desired, product_paths, routes_by_product
 from builder.chemistry.neutral import neutral_form
 from builder.chemistry.structure import Structure
 from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
-from builder.mechanism.products import Route, routes_to
+from builder.mechanism.products import Route
 from builder.mechanism.reaction import in_play, species_in_flask
 from builder.mechanism.rules import Situation, closing_gates
 from builder.records.specimen import outcome_example
@@ -67,7 +68,7 @@ def claim_is_against_the_product(case: Case) -> Iterator[Fault]:
     another reaction.
     """
     claim = case.record.outcome.claim
-    wanted = [routes for path, routes in _routes_by_product(case).items() if _is_desired(case, path) and routes]
+    wanted = [routes for path, routes in routes_by_product(case).items() if is_desired(case, path) and routes]
     if claim is None or not wanted:
         return
     endings = {route.eliminates for routes in wanted for route in routes[:1]}
@@ -98,10 +99,10 @@ def course_contradicts_structure(case: Case) -> Iterator[Fault]:
     """
     for path, course in _claimed_courses(case):
         structure = case.structures.get(path)
-        product = case.record.outcome.products[_index(path)]
+        product = case.record.outcome.products[int(path[-1])]
         if structure is None or product.stereo in {StereoKind.RACEMATE, StereoKind.NOT_DETERMINED}:
             continue
-        shown = _shown_effects(structure, _routes_by_product(case).get(path, ()))
+        shown = _shown_effects(structure, routes_by_product(case).get(path, ()))
         if shown and course in _NET and not shown & _NET[course]:
             words = " or ".join(sorted(shown))
             yield Fault(
@@ -170,7 +171,7 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
     for structure in (*flask, case.substrate):
         for _ in range(MEET_IN_ONE_PRODUCT):
             have += _elements(structure)
-    for path in _product_paths(case):
+    for path in product_paths(case):
         extra = _elements(case.structures[path]) - have
         if extra:
             element = min(extra)
@@ -236,7 +237,7 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
     """
     if case.record.substrate.leaving_group == "none" and not _has_partner(case):
         return
-    for path, routes in _routes_by_product(case).items():
+    for path, routes in routes_by_product(case).items():
         if not routes:
             yield Fault(
                 at=(*path, "smiles"),
@@ -260,45 +261,21 @@ def is_covered(case: Case) -> bool:
     return case.record.outcome.claim is not None and bool(in_play(case.record, case.structures))
 
 
-def _product_paths(case: Case) -> tuple[Path, ...]:
-    """Return the paths of products and of what was sought, where their structure could be read."""
-    paths: list[Path] = [("outcome", "products", index) for index in range(len(case.record.outcome.products))]
-    return tuple(path for path in (*paths, ("outcome", "sought")) if path in case.structures)
-
-
-def _routes_by_product(case: Case) -> dict[Path, tuple[Route, ...]]:
-    paths = _product_paths(case)
-    sites = in_play(case.record, case.structures)
-    flask = tuple(species_in_flask(case.record, case.structures))
-    return dict(zip(paths, routes_to(tuple(case.structures[path] for path in paths), sites, flask), strict=True))
-
-
-def _is_desired(case: Case, path: Path) -> bool:
-    outcome = case.record.outcome
-    return path == ("outcome", "sought") or outcome.products[_index(path)] in case.record.desired
-
-
-def _index(path: Path) -> int:
-    index = path[-1]
-    assert isinstance(index, int)  # noqa: S101 - a path of _product_paths, never ("outcome", "sought")
-    return index
-
-
 def _claimed_courses(case: Case) -> Iterator[tuple[Path, Course]]:
     """Yield the claimed course of each product that one is claimed for: its own, or the claim's if it is desired."""
     claim = case.record.outcome.claim
-    for path in _product_paths(case):
-        if path == ("outcome", "sought"):
+    for path in product_paths(case):
+        if path == SOUGHT:
             continue
-        course = case.record.outcome.products[_index(path)].course
-        if course is None and claim is not None and _is_desired(case, path):
+        course = case.record.outcome.products[int(path[-1])].course
+        if course is None and claim is not None and is_desired(case, path):
             course = claim.course
         if course is not None:
             yield path, course
 
 
 def _course_path(case: Case, path: Path) -> Path:
-    own = case.record.outcome.products[_index(path)].course is not None
+    own = case.record.outcome.products[int(path[-1])].course is not None
     return (*path, "course") if own else ("outcome", "claim", "course")
 
 

@@ -18,7 +18,7 @@ from builder.chemistry.perception import (
     neighbouring_groups,
     perceive_sites,
 )
-from builder.chemistry.structure import Atom, Structure
+from builder.chemistry.structure import Atom, AtomId, Structure
 from builder.chemistry.transform import (
     Cation,
     Edit,
@@ -69,6 +69,7 @@ class Route:
 
     start: the molecule the first event starts from. site: where it starts.
     effect: what the last event does to the configuration.
+    arrives: atoms of the product that came with the nucleophile of the last event.
     """
 
     start: Structure
@@ -76,6 +77,7 @@ class Route:
     events: tuple[Event, ...]
     product: Structure
     effect: StereoEffect
+    arrives: frozenset[AtomId] = frozenset()
 
     @property
     def eliminates(self) -> bool:
@@ -201,7 +203,8 @@ def _products_of(
 
     A leaving piece can be the product sought: the phenol of an ether cleavage, the acid of an ester.
     """
-    yield Route(start, site, events, edit.product, edit.effect), edit.others
+    arrives = frozenset(edit.from_nucleophile.values())
+    yield Route(start, site, events, edit.product, edit.effect, arrives), edit.others
     for piece in edit.others:
         if any(atom.symbol == "C" for atom in piece.atoms):
             yield Route(start, site, events, piece, StereoEffect.NOT_APPLICABLE), (edit.product,)

@@ -5,9 +5,11 @@ from dataclasses import dataclass
 from markupsafe import Markup
 
 from builder.checks.case import Case
+from builder.checks.derivation import main_route, routes_by_product
 from builder.chemistry.inks import standalone
-from builder.chemistry.perception import sites_of
+from builder.chemistry.perception import ReactiveSite, sites_of
 from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme
+from builder.chemistry.structure import AtomId, Structure
 from builder.publish.figures import equivalents_text, joined
 from builder.publish.measured import yield_caption
 from builder.records.model import Record, Stage
@@ -15,6 +17,9 @@ from builder.records.vocabulary import NucleophileWord, Result
 from builder.rule import Path
 
 __all__ = ["Scheme", "entry_scheme"]
+
+LARGEST_OUTLINED_GROUP = 12
+"""Heavy atoms of a leaving group that still gets one outline; a tosylate has eleven."""
 
 Step = list[DrawnCompound] | Arrow
 
@@ -90,17 +95,41 @@ def _stages_up_to(case: Case, index: int) -> tuple[int, ...]:
 
 
 def _leaver(case: Case, path: Path, name: str) -> DrawnCompound:
-    """Return a compound with its leaving atom and reacting carbon outlined, where it bears the group that leaves."""
+    """Return a compound with leaving group and reacting carbon outlined, where it bears the group that leaves.
+
+    Of several such carbons it is the one from which the wanted product follows.
+    """
     structure = case.structures[path]
-    site = next(iter(sites_of(structure, case.record.substrate.leaving_group)), None)
+    route = main_route(case)
+    chosen = (route.site,) if route is not None and route.start == structure else ()
+    site = next(iter((*chosen, *sites_of(structure, case.record.substrate.leaving_group))), None)
     if site is None:
         return DrawnCompound(structure, caption=name)
-    leaving = frozenset() if site.leaving_atom is None else frozenset({site.leaving_atom})
-    return DrawnCompound(structure, caption=name, leaves=leaving, points=frozenset({site.alpha_carbon}))
+    return DrawnCompound(
+        structure, caption=name, leaves=_leaving_group(structure, site), points=frozenset({site.alpha_carbon})
+    )
+
+
+def _leaving_group(structure: Structure, site: ReactiveSite) -> frozenset[AtomId]:
+    """Return the atoms that leave; the leaving atom alone where it stays bonded, or drags a large piece along."""
+    if site.leaving_atom is None:
+        return frozenset()
+    alone = frozenset({site.leaving_atom})
+    if site.leaving_ring_size is not None:
+        return alone
+    group, waiting = set(alone), [site.leaving_atom]
+    while waiting:
+        around = {atom for atom, _ in structure.atoms[waiting.pop()].neighbours} - group - {site.alpha_carbon}
+        group |= around
+        waiting += around
+    return frozenset(group) if len(group) <= LARGEST_OUTLINED_GROUP else alone
 
 
 def _drawn(case: Case, path: Path, *, label: str = "", caption: str = "") -> DrawnCompound:
-    return DrawnCompound(case.structures[path], label=label, caption=caption)
+    structure = case.structures[path]
+    routes = routes_by_product(case).get(path, ())
+    arrives = next((route.arrives for route in routes if route.product == structure), frozenset())
+    return DrawnCompound(structure, label=label, caption=caption, arrives=arrives)
 
 
 def _ends(case: Case) -> list[DrawnCompound]:

@@ -1,0 +1,40 @@
+"""How the products of a case follow from what was charged; asked once, for the checks and for the drawing."""
+
+from builder.checks.case import Case
+from builder.mechanism.products import Route, routes_to
+from builder.mechanism.reaction import in_play, species_in_flask
+from builder.records.vocabulary import ProductUse
+from builder.rule import Path
+
+__all__ = ["SOUGHT", "is_desired", "main_route", "product_paths", "routes_by_product"]
+
+SOUGHT: Path = ("outcome", "sought")
+
+
+def product_paths(case: Case) -> tuple[Path, ...]:
+    """Return the paths of products and of what was sought, where their structure could be read."""
+    paths: list[Path] = [("outcome", "products", index) for index in range(len(case.record.outcome.products))]
+    return tuple(path for path in (*paths, SOUGHT) if path in case.structures)
+
+
+def routes_by_product(case: Case) -> dict[Path, tuple[Route, ...]]:
+    """Return the routes to each product and to what was sought; empty where none is found."""
+    paths = product_paths(case)
+    sites = in_play(case.record, case.structures)
+    flask = tuple(species_in_flask(case.record, case.structures))
+    return dict(zip(paths, routes_to(tuple(case.structures[path] for path in paths), sites, flask), strict=True))
+
+
+def is_desired(case: Case, path: Path) -> bool:
+    """Say whether the product at `path` was wanted: marked so, sought, or one of several none of which is marked."""
+    if path == SOUGHT:
+        return True
+    products = case.record.outcome.products
+    marked = any(product.use is ProductUse.DESIRED for product in products)
+    return not marked or products[int(path[-1])].use is ProductUse.DESIRED
+
+
+def main_route(case: Case) -> Route | None:
+    """Return the shortest route to the first wanted product that has one."""
+    routes = (each[0] for path, each in routes_by_product(case).items() if each and is_desired(case, path))
+    return next(routes, None)
