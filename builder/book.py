@@ -66,8 +66,8 @@ class Entry:
 class Book:
     """A whole book, read and checked.
 
-    entries: in order of identifier; only records without errors are among them.
-    findings: of all files, sorted by place.
+    folder: absolute. entries: in order of identifier; only records without errors are among them.
+    findings: of all files, sorted by place. files: absolute paths of every record read.
     """
 
     folder: Path
@@ -75,7 +75,7 @@ class Book:
     today: dt.date
     entries: tuple[Entry, ...]
     findings: tuple[Finding, ...]
-    files: int
+    files: tuple[Path, ...]
 
     @property
     def by_id(self) -> Mapping[str, Entry]:
@@ -103,6 +103,7 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
     progress: wraps the files to be read, for a progress bar.
     Nothing a file holds raises; OSError passes for a folder that cannot be read.
     """
+    folder = folder.resolve()
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
     examined = [_examine_file(path, folder, settings, today) for path in progress(files)]
@@ -118,7 +119,7 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
         today=today,
         entries=tuple(sorted(publishable, key=lambda entry: entry.id)),
         findings=tuple(sorted(everything, key=lambda finding: finding.sort_key)),
-        files=len(files),
+        files=files,
     )
 
 
@@ -131,7 +132,7 @@ def _examine_file(path: Path, folder: Path, settings: Settings, today: dt.date) 
 def _attachment(path: Path, folder: Path) -> bytes | None:
     """Return the content of a file that a record names; None unless it is a small file inside the book."""
     real = path.resolve()
-    if not real.is_relative_to(folder.resolve()) or not real.is_file() or real.stat().st_size > MAX_BYTES:
+    if not real.is_relative_to(folder) or not real.is_file() or real.stat().st_size > MAX_BYTES:
         return None
     return real.read_bytes()
 
@@ -160,21 +161,24 @@ def judge(examined: Sequence[Examined]) -> dict[str, tuple[Finding, ...]]:
 
 
 def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:
-    """Return the record files below `folder` in order, and a finding for each YAML file that is none."""
+    """Return the record files below `folder` in order, and a finding for each YAML file that is not read as one."""
     files: list[Path] = []
     findings: list[Finding] = []
     for path in sorted(folder.rglob("*")):
         inside = path.relative_to(folder)
         hidden = any(part.startswith(".") for part in inside.parts)
-        if hidden or _ASIDE & set(inside.parts[:-1]) or not path.is_file() or path.suffix not in {".yml", ".yaml"}:
+        if hidden or _ASIDE & set(inside.parts[:-1]) or path.suffix.lower() not in {".yml", ".yaml"}:
             continue
-        if _RECORD_NAME.fullmatch(path.name):
-            files.append(path)
-        elif str(inside) != SETTINGS_FILE:
-            fault = Fault(
-                at=(), message=f"{path.name} is not read: no record's name", mend="call it after its entry, NS….yml"
-            )
+        if str(inside) == SETTINGS_FILE:
+            continue
+        if not _RECORD_NAME.fullmatch(path.name):
+            fault = Fault(at=(), message="this is no record's name", mend="call it after its entry, NS….yml")
             findings.append(reading_rule("file-misnamed").finding(fault, Place(_shown(path, folder), 1, 1, 2)))
+        elif not path.is_file() or not path.resolve().is_relative_to(folder):
+            fault = Fault(at=(), message="this is no plain file of the book", mend="put the record itself here")
+            findings.append(reading_rule("file-unreachable").finding(fault, Place(_shown(path, folder), 1, 1, 2)))
+        else:
+            files.append(path)
     return tuple(files), findings
 
 

@@ -6,10 +6,10 @@ Exit 0 fine, 1 findings at the failing level, 2 misuse, 3 our fault.
 import datetime as dt
 import json
 import os
+import re
 import sys
 from collections.abc import Iterable, Sequence
 from difflib import get_close_matches
-from functools import cache
 from pathlib import Path
 from typing import NoReturn
 
@@ -22,7 +22,9 @@ from builder.checks.register import all_rules
 from builder.checks.report import render_json, render_rule, render_text, summary
 from builder.chemistry.structure import StructureError
 from builder.finding import Finding, Level
-from builder.publish.build import SiteBuildError, build_site, serve_site
+from builder.publish.build import NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
+from builder.publish.progress import watched
+from builder.records.settings import SETTINGS_FILE
 
 __all__ = ["main"]
 
@@ -77,7 +79,7 @@ def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, show
       handbook check entries/azides/NS4T9XQ2N.yml --fail-on query
     """
     opened = _open(book)
-    shown = _selected(opened, files, book)
+    shown = _selected(opened, files)
     threshold = Level(show) if show else (Level.REMARK if as_json or files else Level.QUERY)
     visible = [
         finding
@@ -87,17 +89,17 @@ def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, show
     if as_json:
         click.echo(render_json(visible))
     else:
-        _print_findings(visible, book)
-        click.echo(summary(shown, len(files) or opened.files))
+        if visible:
+            click.echo(render_text(visible, book))
+        click.echo(summary(shown, len(files) or len(opened.files)))
     _end(shown, Level(fail_on))
 
 
 @handbook.command()
 @click.option("--config", type=click.Path(exists=True, dir_okay=False, path_type=Path), default=Path("mkdocs.yml"))
 @click.option("--site", type=click.Path(file_okay=False, path_type=Path), default=Path("site"), show_default=True)
-@_BOOK
-def build(config: Path, site: Path, book: Path) -> None:
-    """Check the book and publish it as a static site.
+def build(config: Path, site: Path) -> None:
+    """Check the book of a mkdocs.yml and publish it as a static site.
 
     A failed build leaves the last good site as it was.
 
@@ -105,18 +107,15 @@ def build(config: Path, site: Path, book: Path) -> None:
     Example:
       handbook build --site /srv/handbook
     """
-    opened = _open(book)
-    errors = [finding for finding in opened.findings if finding.level is Level.ERROR]
-    if errors:
-        _print_findings(errors, book)
-        click.echo(summary(opened.findings, opened.files), err=True)
-        _end(errors, Level.ERROR)
+    _today()  # a wrong SOURCE_DATE_EPOCH is misuse, and said here rather than by the child
     try:
-        build_site(config, site)
+        report = build_site(config, site)
+    except NotOurSiteError as error:
+        raise click.UsageError(str(error)) from error
     except SiteBuildError as error:
         click.echo(str(error), err=True)
-        sys.exit(FINDINGS)
-    click.echo(f"{len(opened.entries)} entries published in {site}/")
+        sys.exit(FINDINGS if error.report is not None and error.report.failing else MISUSE)
+    click.echo(f"{report.entries} entries published in {site}/")
 
 
 @handbook.command()
@@ -144,10 +143,10 @@ def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> Non
     Example:
       handbook new 'CCC(C)Br' --nucleophile '[Na+].[N-]=[N+]=[N-]' --by bench-2
     """
-    opened = _open(book)
-    taken = {*opened.by_id, *opened.settings.retired, *(path.stem for path in book.rglob("NS*.yml"))}
+    if not re.fullmatch(r"[\w.-]{1,40}", person):
+        raise click.UsageError(f'"{person}" is no person code: letters, digits, dot and hyphen')
     try:
-        path = write_new_record(book, substrate, nucleophile, date=_today(), person=person, taken=taken)
+        path = write_new_record(book, substrate, nucleophile, date=_today(), person=person)
     except StructureError as error:
         raise click.UsageError(f"{error.reason}; {error.mend}") from error
     click.echo(f"{path}: fill in what says TO FILL IN, then `handbook check {path}`")
@@ -194,54 +193,31 @@ def rule(rule_id: str | None, as_json: bool) -> None:
 
 
 def _open(book: Path) -> Book:
-    with click.progressbar(length=0, label="reading records", file=sys.stderr, hidden=not sys.stderr.isatty()) as bar:
-
-        def watched(files: tuple[Path, ...]) -> Iterable[Path]:
-            bar.length = len(files)
-            for path in files:
-                yield path
-                bar.update(1)
-
-        return open_book(book, today=_today(), progress=watched)
+    return open_book(book, today=_today(), progress=watched)
 
 
 def _today() -> dt.date:
-    """Return the date of the build: SOURCE_DATE_EPOCH where it is set, so that builds can be repeated."""
-    epoch = os.environ.get("SOURCE_DATE_EPOCH")
-    return dt.datetime.fromtimestamp(int(epoch), dt.UTC).date() if epoch else dt.datetime.now(dt.UTC).date()
+    try:
+        return build_date()
+    except ValueError as error:
+        raise click.UsageError(f"SOURCE_DATE_EPOCH: {error}") from error
 
 
-def _selected(opened: Book, files: Sequence[Path], book: Path) -> list[Finding]:
+def _selected(opened: Book, files: Sequence[Path]) -> list[Finding]:
+    """Return the findings in the named files and folders, all of them if none is named."""
     if not files:
         return list(opened.findings)
-    inside = {path.resolve() for path in files}
+    wanted = [path.resolve() for path in files]
+    known = (*opened.files, opened.folder / SETTINGS_FILE)
+    for path, real in zip(files, wanted, strict=True):
+        if not any(real == each or real in each.parents for each in known):
+            raise click.UsageError(f"{path} is no file of the book {opened.folder}")
+    above = opened.folder.parent
     return [
         finding
         for finding in opened.findings
-        if any(place == each or each in place.parents for each in inside for place in [_path_of(finding, book)])
+        if any(real == above / finding.place.file or real in (above / finding.place.file).parents for real in wanted)
     ]
-
-
-def _path_of(finding: Finding, book: Path) -> Path:
-    """Return the file of a finding, whose place begins with the name of the book's folder."""
-    return (book.resolve().parent / finding.place.file).resolve()
-
-
-def _print_findings(findings: Iterable[Finding], book: Path) -> None:
-    @cache
-    def lines(path: Path) -> list[str]:
-        try:
-            return path.read_text("utf-8-sig", errors="replace").splitlines() if path.stat().st_size < 1 << 20 else []
-        except OSError:
-            return []
-
-    def line_of(file: str, number: int) -> str | None:
-        found = lines((book.resolve().parent / file).resolve())
-        return found[number - 1] if number <= len(found) else None
-
-    text = render_text(findings, line_of)
-    if text:
-        click.echo(text)
 
 
 def _end(findings: Iterable[Finding], failing: Level) -> None:

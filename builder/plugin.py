@@ -1,7 +1,5 @@
 """MkDocs events -> open_book, build_pages. The only file that imports MkDocs; errors stop the build."""
 
-import datetime as dt
-from collections.abc import Callable
 from html import escape
 from pathlib import Path
 from urllib.parse import quote
@@ -14,13 +12,14 @@ from mkdocs.plugins import BasePlugin
 from mkdocs.structure.files import File, Files, InclusionLevel
 from mkdocs.structure.pages import Page as MkDocsPage
 from mkdocs.structure.toc import AnchorLink, TableOfContents
-from mkdocs.utils import get_build_date
 
 from builder.book import Book, open_book
 from builder.checks.report import render_text
 from builder.finding import Level
+from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
+from builder.publish.progress import watched
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
@@ -40,11 +39,12 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Read and check the book and write its pages, before MkDocs clears the site folder."""
         folder = Path(config.docs_dir)
-        self.book = open_book(folder, today=dt.date.fromisoformat(get_build_date()))
+        self.book = open_book(folder, today=build_date(), progress=watched)
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
+        write_report(BuildReport(len(self.book.entries), len(failing)))
         if failing:
-            raise PluginError(f"the book cannot be published\n{render_text(failing, _line_of(folder.parent))}")
+            raise PluginError(f"the book cannot be published\n{render_text(failing, folder)}")
         self.pages = build_pages(self.book)
         _configure(config, self.book, self.pages)
 
@@ -102,11 +102,3 @@ def _configure(config: MkDocsConfig, book: Book, pages: tuple[Page, ...]) -> Non
     config.nav = config.nav or menu_of(pages)
     if settings.logo:
         config.theme["logo"] = settings.logo
-
-
-def _line_of(above: Path) -> Callable[[str, int], str | None]:
-    def line_of(file: str, number: int) -> str | None:
-        lines = (above / file).read_text("utf-8", "replace").splitlines()
-        return lines[number - 1] if number <= len(lines) else None
-
-    return line_of

@@ -40,7 +40,7 @@ def test_it_has_no_error_and_no_open_query() -> None:
 
 
 def test_every_file_is_an_entry() -> None:
-    assert len(_book().entries) == _book().files >= 20
+    assert len(_book().entries) == len(_book().files) >= 20
 
 
 def test_it_is_marked_as_invented() -> None:

@@ -1,13 +1,16 @@
 """`handbook new`: mint an identifier and lay down a record to fill in."""
 
 import datetime as dt
-from collections.abc import Collection
+from enum import StrEnum
 from pathlib import Path
 
 from builder.chemistry.perception import attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.records.identifiers import mint_identifier
+from builder.records.reader import read_settings
+from builder.records.settings import SETTINGS_FILE
 from builder.records.specimen import GAP
+from builder.records.vocabulary import Course, Mechanism, Result, StereoKind, Thermometer, Vessel
 from builder.records.yaml_text import quoted
 
 __all__ = ["new_record", "write_new_record"]
@@ -18,10 +21,11 @@ format: 1
 entry: {entry}
 revision: 1
 status: draft
-title: {title}
+title: {gap}
 performed:
   date: {date}
   by: [{person}]
+  runs: 1
 notebook: {gap}
 substrate:
   name: {gap}
@@ -29,26 +33,30 @@ substrate:
   stereo: {stereo}
   class: [{classes}]
   leaving_group: {leaving_group}
-  mass: {gap}
-nucleophile:
+  mass: {gap}                  # or amount, or volume with density
+nucleophile:                         # or one of the words solvent, internal, none; a base goes under base:
   name: {nucleophile_name}
   smiles: {nucleophile}
-  equivalents: 1.5
+  equivalents: {gap}           # or mass, amount, volume
 solvent:
   - name: {gap}
     volume: {gap}
 stages:
-  - temperature: {gap}
-    measured: internal
+  - add: [{gap}]               # names of the substances above, in the order they went in
+    temperature: {gap}
+    measured: {gap}            # {thermometers}
     time: {gap}
-    vessel: open
-    atmosphere: nitrogen
+    vessel: {gap}              # {vessels}
+    atmosphere: {gap}
+    end_point: {gap}
+work_up:
+  - {gap}                      # the quench first
 outcome:
-  result: [substitution]
-  claim:
-    mechanism: SN2
-    course: {course}
-    basis: [product structure]
+  result: [{gap}]              # {results}
+  # claim:                           # what you hold happened, and the evidence
+  #   mechanism: {mechanisms}
+  #   course: {courses}
+  #   basis: []
   products:
     - label: A
       name: {gap}
@@ -56,7 +64,8 @@ outcome:
       use: desired
   measured:
     - {{yield: {gap}, of: A, kind: isolated}}
-evidence: [1H NMR]
+evidence: [{gap}]
+# take_away: one sentence a colleague reads in a list
 """
 
 
@@ -70,7 +79,6 @@ def new_record(substrate: str, nucleophile: str | None, *, entry: str, date: dt.
     return _SKELETON.format(
         schema=schema,
         entry=entry,
-        title=f"{GAP} (what was made from what)",
         date=date.isoformat(),
         person=person,
         gap=GAP,
@@ -80,18 +88,20 @@ def new_record(substrate: str, nucleophile: str | None, *, entry: str, date: dt.
         leaving_group=site.leaving_group if site else "none",
         nucleophile_name=_kind(nucleophile) if nucleophile else GAP,
         nucleophile=quoted(nucleophile) if nucleophile else quoted(GAP),
-        course="not determined" if structure.stereocentres.total else "not applicable",
+        thermometers=_words(Thermometer),
+        vessels=_words(Vessel),
+        results=_words(Result),
+        mechanisms=_words(Mechanism),
+        courses=_words(Course),
     )
 
 
-def write_new_record(
-    book: Path, substrate: str, nucleophile: str | None, *, date: dt.date, person: str, taken: Collection[str]
-) -> Path:
+def write_new_record(book: Path, substrate: str, nucleophile: str | None, *, date: dt.date, person: str) -> Path:
     """Write a new record below `book` under a fresh identifier; return its path.
 
-    taken: identifiers in use or retired. Raises StructureError as `new_record` does; nothing is written then.
+    Raises StructureError as `new_record` does; nothing is written then.
     """
-    entry = next(minted for minted in iter(mint_identifier, "") if minted not in taken)
+    entry = _free_identifier(book)
     text = new_record(substrate, nucleophile, entry=entry, date=date, person=person, schema="schema/record-1.json")
     path = book / f"{entry}.yml"
     with path.open("x", encoding="utf-8", newline="\n") as file:
@@ -99,11 +109,23 @@ def write_new_record(
     return path
 
 
+def _free_identifier(book: Path) -> str:
+    """Return an identifier that no file of the book bears and that its settings do not retire."""
+    files = {path.name.split(".", 1)[0] for path in book.rglob("NS*")}
+    settings = book / SETTINGS_FILE
+    retired = read_settings(settings, settings.name)[0] if settings.is_file() else None
+    taken = files | set(retired.retired if retired else ())
+    return next(minted for minted in iter(mint_identifier, "") if minted not in taken)
+
+
 def _stereo(structure: Structure) -> str:
-    centres = structure.stereocentres
-    if structure.is_achiral:
-        return "achiral"
-    return "single enantiomer" if centres.total and not centres.unspecified else "racemate"
+    """Return what follows from the drawing; whether a chiral one is a racemate, only the chemist knows."""
+    kinds = (kind for kind in StereoKind if kind is not StereoKind.ACHIRAL)
+    return str(StereoKind.ACHIRAL) if structure.is_achiral else f"{GAP}                # {' | '.join(kinds)}"
+
+
+def _words(words: type[StrEnum]) -> str:
+    return " | ".join(words)
 
 
 def _kind(smiles: str) -> str:

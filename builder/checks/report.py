@@ -2,21 +2,43 @@
 
 import json
 from collections.abc import Callable, Iterable, Sequence
+from functools import cache
+from pathlib import Path
 from typing import Any
 
 from builder.finding import Finding, Level
+from builder.records.reader import MAX_BYTES
 from builder.rule import Rule
 from builder.sources import source_text
 
 __all__ = ["render_json", "render_rule", "render_text", "summary"]
 
 
-def render_text(findings: Iterable[Finding], line_of: Callable[[str, int], str | None]) -> str:
-    """Return findings for a terminal, one block each.
+def render_text(findings: Iterable[Finding], folder: Path) -> str:
+    """Return findings for a terminal, one block each, quoting the lines they speak of.
 
-    line_of: gives the source line of a file and a line number, to quote what was written.
+    folder: the book's, below which the files of the findings lie.
     """
+    line_of = _quoting(folder)
     return "\n".join(_block(finding, line_of(finding.place.file, finding.place.line)) for finding in findings)
+
+
+def _quoting(folder: Path) -> Callable[[str, int], str | None]:
+    above = folder.resolve().parent
+
+    @cache
+    def lines(file: str) -> list[str]:
+        path = above / file
+        try:
+            return path.read_text("utf-8-sig", "replace").splitlines() if path.stat().st_size <= MAX_BYTES else []
+        except OSError:
+            return []
+
+    def line_of(file: str, number: int) -> str | None:
+        found = lines(file)
+        return found[number - 1] if number <= len(found) else None
+
+    return line_of
 
 
 def render_json(findings: Iterable[Finding]) -> str:

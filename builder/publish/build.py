@@ -1,35 +1,73 @@
-"""Run MkDocs as a child process: build beside the site and swap on success, or serve."""
+"""Run MkDocs as a child process: build beside the site and swap on success, or serve.
 
+The child reads, checks and publishes the book once; what came of it returns in a small file, so that findings can be
+told from a broken configuration.
+"""
+
+import datetime as dt
+import json
 import os
 import shutil
 import subprocess
 import sys
+import tempfile
+from dataclasses import asdict, dataclass
 from pathlib import Path
 
-__all__ = ["SiteBuildError", "build_site", "serve_site"]
+__all__ = ["BuildReport", "NotOurSiteError", "SiteBuildError", "build_date", "build_site", "serve_site", "write_report"]
+
+REPORT_VARIABLE = "HANDBOOK_BUILD_REPORT"
+"""Names the file in which the plugin leaves its BuildReport for `build_site`."""
+MARKER = ".handbook-site"
+"""Lies in every folder that `build_site` made, so that no other folder is ever replaced."""
+
+
+@dataclass(frozen=True, slots=True)
+class BuildReport:
+    """What became of the book in a build: entries published, findings that kept it from being published."""
+
+    entries: int
+    failing: int
 
 
 class SiteBuildError(Exception):
-    """MkDocs did not build the site; its output has said why, and the last good site stands."""
+    """MkDocs did not build the site; its output has said why, and the last good site stands.
+
+    report: what the plugin said of the book, None if it was not even reached.
+    """
+
+    def __init__(self, message: str, report: BuildReport | None) -> None:
+        super().__init__(message)
+        self.report = report
 
 
-def build_site(config: Path, site: Path) -> None:
+class NotOurSiteError(Exception):
+    """The folder to publish into holds something that `build_site` did not make."""
+
+
+def build_site(config: Path, site: Path) -> BuildReport:
     """Build the site of the book that `config` (its mkdocs.yml) describes into `site`.
 
-    The new site is made beside the old one and takes its place only when all of it is there.
-    Raises SiteBuildError if MkDocs fails.
+    The new site is made beside the old one and takes its place only when all of it is there; a link is followed.
+    Raises NotOurSiteError before anything is done, SiteBuildError if MkDocs fails.
     """
+    site = site.resolve()
+    if site.exists() and not _is_ours(site):
+        raise NotOurSiteError(f"{site} holds files that are no handbook site; name another folder, or empty it")
     fresh, former = site.with_name(f".{site.name}-new"), site.with_name(f".{site.name}-old")
     for leftover in (fresh, former):
         shutil.rmtree(leftover, ignore_errors=True)
-    code = _mkdocs("build", "--strict", "--clean", "--quiet", "-f", str(config), "-d", str(fresh.resolve()))
-    if code:
+    with tempfile.TemporaryDirectory() as scratch:
+        report_file = Path(scratch) / "report.json"
+        arguments = ("build", "--strict", "--clean", "--quiet", "-f", str(config), "-d", str(fresh))
+        code = _mkdocs(*arguments, report=report_file)
+        report = BuildReport(**json.loads(report_file.read_text("utf-8"))) if report_file.exists() else None
+    if code or report is None:
         shutil.rmtree(fresh, ignore_errors=True)
-        raise SiteBuildError(f"MkDocs ended with code {code}; {site.name}/ is as it was")
-    if site.exists():
-        site.rename(former)
-    fresh.rename(site)
-    shutil.rmtree(former, ignore_errors=True)
+        raise SiteBuildError(f"no site was built; {site.name}/ is as it was", report)
+    (fresh / MARKER).touch()
+    _swap(fresh, site, former)
+    return report
 
 
 def serve_site(config: Path, address: str) -> int:
@@ -37,7 +75,46 @@ def serve_site(config: Path, address: str) -> int:
     return _mkdocs("serve", "-f", str(config), "-a", address)
 
 
-def _mkdocs(*arguments: str) -> int:
+def write_report(report: BuildReport) -> None:
+    """Leave the report for the `build_site` that started this process, if one did."""
+    wanted = os.environ.get(REPORT_VARIABLE)
+    if wanted:
+        Path(wanted).write_text(json.dumps(asdict(report)), "utf-8")
+
+
+def build_date() -> dt.date:
+    """Return the date of the build: SOURCE_DATE_EPOCH where it is set, so that builds can be repeated, else today.
+
+    Raises ValueError if SOURCE_DATE_EPOCH is no number of seconds.
+    """
+    epoch = os.environ.get("SOURCE_DATE_EPOCH")
+    if epoch is None:
+        return dt.datetime.now().astimezone().date()
+    return dt.datetime.fromtimestamp(int(epoch), dt.UTC).date()
+
+
+def _is_ours(site: Path) -> bool:
+    if not site.is_dir():
+        return False
+    made_by_mkdocs = (site / "sitemap.xml").is_file() and (site / "assets" / "handbook.css").is_file()
+    return (site / MARKER).is_file() or made_by_mkdocs or not any(site.iterdir())
+
+
+def _swap(fresh: Path, site: Path, former: Path) -> None:
+    if site.exists():
+        site.rename(former)
+    try:
+        fresh.rename(site)
+    except OSError:
+        if former.exists():
+            former.rename(site)
+        raise
+    shutil.rmtree(former, ignore_errors=True)
+
+
+def _mkdocs(*arguments: str, report: Path | None = None) -> int:
     environment = {**os.environ, "NO_MKDOCS_2_WARNING": "1", "PYTHONUTF8": "1"}
+    if report is not None:
+        environment[REPORT_VARIABLE] = str(report)
     command = [sys.executable, "-m", "mkdocs", *arguments]
     return subprocess.run(command, env=environment, check=False).returncode  # noqa: S603 - our own arguments

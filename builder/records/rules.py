@@ -94,6 +94,16 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         fires_on=(),
     ),
     card(
+        id="file-unreachable",
+        title="A record that is no plain file of the book",
+        level=Level.ERROR,
+        source="record-format",
+        text="""A record is a plain file inside the book that can be read.
+
+        A link to somewhere else would let a change outside the book change it, and a folder or a pipe holds no record.""",
+        fires_on=(),
+    ),
+    card(
         id="key-missing",
         title="A required key is missing",
         level=Level.ERROR,
