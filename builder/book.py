@@ -89,11 +89,15 @@ class Book:
 
 @dataclass(frozen=True, slots=True)
 class Examined:
-    """One file as read and checked on its own; case is None where no record could be made of it."""
+    """One file as read and checked on its own; case is None where no record could be made of it.
+
+    unasked: ids of the checks that could not be asked.
+    """
 
     reading: Reading
     case: Case | None
     findings: tuple[Finding, ...]
+    unasked: frozenset[str] = frozenset()
 
 
 def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Book:
@@ -145,7 +149,8 @@ def examine(reading: Reading, settings: Settings, today: dt.date, rxn: bytes | N
     if reading.record is None:
         return Examined(reading, None, reading.findings)
     case = open_case(reading.record, reading.file, settings, today, rxn)
-    return Examined(reading, case, (*reading.findings, *check_record(case, reading.places)))
+    checked = check_record(case, reading.places)
+    return Examined(reading, case, (*reading.findings, *checked.findings), checked.unasked)
 
 
 def judge(examined: Sequence[Examined]) -> dict[str, tuple[Finding, ...]]:
@@ -156,7 +161,7 @@ def judge(examined: Sequence[Examined]) -> dict[str, tuple[Finding, ...]]:
     settled: dict[str, tuple[Finding, ...]] = {}
     for each in examined:
         found = (*each.findings, *against_others.get(each.reading.file, ()))
-        settled[each.reading.file] = settle(each.case, each.reading.places, found) if each.case else found
+        settled[each.reading.file] = settle(each.case, each.reading.places, found, each.unasked) if each.case else found
     return settled
 
 

@@ -4,7 +4,7 @@ import datetime as dt
 from enum import StrEnum
 from pathlib import Path
 
-from builder.chemistry.perception import attacking_atoms, perceive_sites
+from builder.chemistry.perception import NO_LEAVING_GROUP, attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.records.identifiers import mint_identifier
 from builder.records.reader import read_settings
@@ -85,7 +85,7 @@ def new_record(substrate: str, nucleophile: str | None, *, entry: str, date: dt.
         substrate=quoted(substrate),
         stereo=_stereo(structure),
         classes=", ".join(sorted(site.classes)) if site else GAP,
-        leaving_group=site.leaving_group if site else "none",
+        leaving_group=site.leaving_group if site else NO_LEAVING_GROUP,
         nucleophile_name=_kind(nucleophile) if nucleophile else GAP,
         nucleophile=quoted(nucleophile) if nucleophile else quoted(GAP),
         thermometers=_words(Thermometer),

@@ -7,12 +7,12 @@ from functools import lru_cache
 from builder.checks.case import Case
 from builder.checks.derivation import SOUGHT, is_desired, product_paths, routes_by_product
 from builder.chemistry.neutral import neutral_form
+from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.chemistry.structure import Structure
 from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
-from builder.mechanism.amounts import charged_rows
 from builder.mechanism.products import Route
-from builder.mechanism.reaction import in_play, species_in_flask
+from builder.mechanism.reaction import has_undrawn_species, in_play, species_in_flask
 from builder.mechanism.rules import Situation, closing_gates
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Course, Mechanism, StereoKind
@@ -71,7 +71,7 @@ def claim_is_against_the_product(case: Case) -> Iterator[Fault]:
     wanted = [routes for path, routes in routes_by_product(case).items() if is_desired(case, path) and routes]
     if claim is None or not wanted:
         return
-    endings = {route.eliminates for routes in wanted for route in routes[:1]}
+    endings = {route.eliminates for routes in wanted for route in routes}
     kinds = {True: _ELIMINATIONS, False: _SUBSTITUTIONS}
     for eliminates, mechanisms in kinds.items():
         if claim.mechanism in mechanisms and endings == {not eliminates}:
@@ -163,10 +163,9 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
     Atoms are conserved: a chlorine in the product was in the flask. Hydrogen is not counted, air and moisture
     are no reagents.
     """
-    charged = [path for path, _, _ in charged_rows(case.record)]
-    flask = tuple(species_in_flask(case.record, case.structures))
-    if len(flask) + 1 < len(charged):
-        return  # something has no structure, so nothing can be said
+    if has_undrawn_species(case.record, case.structures):
+        return
+    flask = species_in_flask(case.record, case.structures)
     have: Counter[str] = Counter()
     for structure in (*flask, case.substrate):
         for _ in range(MEET_IN_ONE_PRODUCT):
@@ -235,7 +234,7 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
     Sought in one or two events: substitution at the declared group, elimination, up to three shifts of a cation,
     allylic transposition, ring closure and opening, addition. A product beyond that is usually a slip in a SMILES.
     """
-    if case.record.substrate.leaving_group == "none" and not _has_partner(case):
+    if has_undrawn_species(case.record, case.structures) or not _has_partner(case):
         return
     for path, routes in routes_by_product(case).items():
         if not routes:
@@ -299,5 +298,7 @@ def _elements(structure: Structure) -> Counter[str]:
 
 
 def _has_partner(case: Case) -> bool:
-    """Say whether an addition partner that the transformations know was charged: a nucleophile, or a halogen."""
-    return bool(case.record.nucleophiles or case.record.bases or case.record.reagents)
+    """Say whether an addition to a multiple bond has a partner among what was charged."""
+    record = case.record
+    is_addition = record.substrate.leaving_group == NO_LEAVING_GROUP
+    return not is_addition or bool(record.nucleophiles or record.bases or record.reagents)

@@ -4,6 +4,7 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 from builder.checks.case import Case
+from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.finding import Level
 from builder.records.model import Record
 from builder.records.vocabulary import Result
@@ -74,7 +75,7 @@ COMPLETENESS_CHECKS = (record_is_incomplete,)
 
 
 def _is_covered(record: Record) -> bool:
-    return record.substrate.leaving_group != "none"
+    return record.substrate.leaving_group != NO_LEAVING_GROUP
 
 
 def _is_failure(record: Record) -> bool:

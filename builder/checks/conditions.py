@@ -4,6 +4,7 @@ from collections.abc import Iterator
 
 from builder.checks.case import Case
 from builder.finding import Level
+from builder.mechanism.amounts import present_solvents
 from builder.mechanism.solvents import (
     Solvent,
     boiling_point_c,
@@ -172,18 +173,13 @@ def _row(case: Case, index: int) -> Solvent | None:
 
 
 def _parts(case: Case, stage: int) -> list[tuple[Solvent, float]] | None:
-    """Return the solvents present in a stage with their volumes; None where one is unknown.
-
-    A solvent that only a later stage adds is not there yet.
-    """
-    later = {name for each in case.record.stages[stage + 1 :] for name in each.add or ()}
+    """Return the solvents present in a stage with their volumes; None where one is unknown."""
     parts: list[tuple[Solvent, float]] = []
-    for index, solvent in enumerate(case.record.solvents):
-        if solvent.name in later:
-            continue
+    for index in present_solvents(case.record, stage):
         row = _row(case, index)
         if row is None:
             return None
+        solvent = case.record.solvents[index]
         quantity = solvent.volume or solvent.fraction
         parts.append((row, quantity.magnitude if quantity else 1.0))
     return parts or None

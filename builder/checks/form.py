@@ -210,7 +210,7 @@ def _labels_used(case: Case) -> Iterator[tuple[Path, str]]:
         path: Path = ("outcome", "measured", index)
         if line.ratio is not None:
             yield from (((*path, "ratio"), label) for part in line.ratio.parts for label in part)
-        allowed = {"substrate"} if line.what in {"recovered", "ee", "er", "conversion"} else set()
+        allowed = {"substrate"} if line.what in {"recovered", "ee", "er", "dr", "conversion"} else set()
         yield from (((*path, "of"), label) for label in line.of or () if label not in allowed)
     if outcome.time_course is not None:
         yield from ((("outcome", "time_course", "of"), label) for label in outcome.time_course.of or ())

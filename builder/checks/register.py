@@ -6,13 +6,16 @@ from functools import cache
 from typing import Any
 
 from builder.checks.agreement import AGREEMENT_CHECKS
+from builder.checks.balance import BALANCE_CHECKS
 from builder.checks.case import Case
 from builder.checks.cautions import CAUTION_CHECKS
+from builder.checks.charged import CHARGED_CHECKS
 from builder.checks.completeness import COMPLETENESS_CHECKS
 from builder.checks.conditions import CONDITION_CHECKS
+from builder.checks.excess import EXCESS_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
-from builder.checks.numbers import NUMBER_CHECKS
+from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
 from builder.finding import Level
 from builder.mechanism.rules import GATES
@@ -25,11 +28,14 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
     sorted(
         (
             *AGREEMENT_CHECKS,
+            *BALANCE_CHECKS,
             *CAUTION_CHECKS,
+            *CHARGED_CHECKS,
             *COMPLETENESS_CHECKS,
             *CONDITION_CHECKS,
+            *EXCESS_CHECKS,
             *FORM_CHECKS,
-            *NUMBER_CHECKS,
+            *KINETIC_CHECKS,
             *STRUCTURE_CHECKS,
         ),
         key=lambda rule: rule.id,

@@ -24,15 +24,14 @@ def render_text(findings: Iterable[Finding], folder: Path) -> str:
 
 
 def _quoting(folder: Path) -> Callable[[str, int], str | None]:
-    above = folder.resolve().parent
+    inside = folder.resolve()
 
     @cache
     def lines(file: str) -> list[str]:
-        path = above / file
-        try:
-            return path.read_text("utf-8-sig", "replace").splitlines() if path.stat().st_size <= MAX_BYTES else []
-        except OSError:
+        path = (inside.parent / file).resolve()
+        if not (path.is_relative_to(inside) and path.is_file() and path.stat().st_size <= MAX_BYTES):
             return []
+        return path.read_text("utf-8-sig", "replace").splitlines()
 
     def line_of(file: str, number: int) -> str | None:
         found = lines(file)

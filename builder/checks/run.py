@@ -1,40 +1,66 @@
 """Every check over every record -> findings in order; applies `accepted` and reports stale acceptances."""
 
-from collections.abc import Iterable
-from dataclasses import replace
+from collections.abc import Collection, Iterable, Sequence
+from dataclasses import dataclass, replace
+from functools import cache
 from typing import Any
 
 from builder.checks.case import Case
 from builder.checks.group import GROUP_CHECKS, Gathering
 from builder.checks.register import ACCEPTANCE_RULES, RECORD_CHECKS, record_rules
 from builder.finding import Finding, Level
+from builder.records.model import Acceptance
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Rule
 
-__all__ = ["check_group", "check_record", "settle"]
+__all__ = ["Checked", "check_group", "check_record", "settle"]
 
 _ACCEPTANCE = {rule.id: rule for rule in ACCEPTANCE_RULES}
 
 
-def check_record(case: Case, places: Places) -> tuple[Finding, ...]:
-    """Return the findings of every check over one record; acceptances are applied in `settle`."""
+@dataclass(frozen=True, slots=True)
+class Checked:
+    """What the checks of one record found, and the ids of those that could not be asked."""
+
+    findings: tuple[Finding, ...]
+    unasked: frozenset[str]
+
+
+def check_record(case: Case, places: Places) -> Checked:
+    """Ask every check over one record; acceptances are applied in `settle`.
+
+    A check is asked only where every rule it needs was asked and stayed silent.
+    """
     findings: list[Finding] = []
     fired: set[str] = set()
+    unasked: set[str] = set()
+    for check in _in_order_of_need():
+        if check.look is None or not (fired | unasked).isdisjoint(check.needs):
+            unasked.add(check.id)
+            continue
+        found = [_finding(check, fault, places) for fault in check.look(case)]
+        findings += found
+        if found:
+            fired.add(check.id)
+    return Checked(tuple(findings), frozenset(unasked))
+
+
+@cache
+def _in_order_of_need() -> tuple[Rule[Case, Iterable[Fault]], ...]:
+    """Return the checks so that each comes after those it needs.
+
+    Raises ValueError if some need each other in a circle: our fault.
+    """
+    ordered: list[Rule[Case, Iterable[Fault]]] = []
     pending = list(RECORD_CHECKS)
     while pending:
-        ready = [check for check in pending if not any(other.id in check.needs for other in pending)]
+        waiting = {check.id for check in pending}
+        ready = [check for check in pending if waiting.isdisjoint(check.needs)]
         if not ready:
-            raise ValueError(f"rules need each other in a circle: {', '.join(check.id for check in pending)}")
-        for check in ready:
-            pending.remove(check)
-            if fired.isdisjoint(check.needs) and check.look is not None:
-                found = [_finding(check, fault, places) for fault in check.look(case)]
-                findings += found
-                if found:
-                    fired.add(check.id)
-            else:
-                fired.add(check.id)  # what stands on an unasked rule is not asked either
-    return tuple(findings)
+            raise ValueError(f"rules need each other in a circle: {', '.join(sorted(waiting))}")
+        ordered += ready
+        pending = [check for check in pending if check not in ready]
+    return tuple(ordered)
 
 
 def check_group(book: Gathering) -> dict[str, list[Finding]]:
@@ -48,31 +74,47 @@ def check_group(book: Gathering) -> dict[str, list[Finding]]:
     return found
 
 
-def settle(case: Case, places: Places, findings: Iterable[Finding]) -> tuple[Finding, ...]:
-    """Apply the record's acceptances to its findings and report those that are stale, unknown or out of place."""
-    settled = list(findings)
-    known = {rule.id for rule in record_rules()}
+def settle(
+    case: Case, places: Places, findings: Sequence[Finding], unasked: frozenset[str] = frozenset()
+) -> tuple[Finding, ...]:
+    """Apply the record's acceptances to its findings and report those that are stale, unknown or out of place.
+
+    unasked: rules that could not be asked; an acceptance of one of them may still be needed.
+    """
+    reasons: dict[str, str] = {}
+    settled: list[Finding] = []
     for index, acceptance in enumerate(case.record.accepted):
-        at = ("accepted", index, "finding")
-        touched = [finding for finding in settled if finding.rule == acceptance.finding]
-        queries = [finding for finding in touched if finding.level is Level.QUERY]
-        for finding in queries:
-            settled[settled.index(finding)] = replace(finding, accepted=acceptance.because)
-        if acceptance.finding not in known:
-            message, mend = f'no rule is called "{acceptance.finding}"', "`handbook rule` lists the ids"
-            settled.append(
-                _finding(_ACCEPTANCE["acceptance-unknown"], Fault(at=at, message=message, mend=mend), places)
-            )
-        elif touched and not queries:
-            message = f"{acceptance.finding} is no query here but {touched[0].level}"
-            mend = "mend what it says, and drop the acceptance"
-            settled.append(
-                _finding(_ACCEPTANCE["acceptance-of-error"], Fault(at=at, message=message, mend=mend), places)
-            )
-        elif not touched:
-            message, mend = f"{acceptance.finding} is not raised any more", "drop the acceptance"
-            settled.append(_finding(_ACCEPTANCE["acceptance-stale"], Fault(at=at, message=message, mend=mend), places))
+        fault = _acceptance_fault(acceptance, findings, unasked)
+        if fault is None:
+            reasons.setdefault(acceptance.finding, acceptance.because)
+        else:
+            rule_id, message, mend = fault
+            at = ("accepted", index, "finding")
+            settled.append(_finding(_ACCEPTANCE[rule_id], Fault(at=at, message=message, mend=mend), places))
+    settled += [
+        replace(finding, accepted=reasons[finding.rule])
+        if finding.rule in reasons and finding.level is Level.QUERY
+        else finding
+        for finding in findings
+    ]
     return tuple(sorted(settled, key=lambda finding: finding.sort_key))
+
+
+def _acceptance_fault(
+    acceptance: Acceptance, findings: Sequence[Finding], unasked: Collection[str]
+) -> tuple[str, str, str] | None:
+    """Return rule, message and mend for an acceptance that does not stand; None for one that does."""
+    wanted = acceptance.finding
+    if wanted not in {rule.id for rule in record_rules()}:
+        return "acceptance-unknown", f'no rule is called "{wanted}"', "`handbook rule` lists the ids"
+    levels = {finding.level for finding in findings if finding.rule == wanted}
+    if Level.QUERY in levels or wanted in unasked:
+        return None
+    if Level.ERROR in levels:
+        return "acceptance-of-error", f"{wanted} is an error here", "mend what it says, and drop the acceptance"
+    if levels:
+        return "acceptance-stale", f"{wanted} is a {min(levels)}, which needs no answer", "drop the acceptance"
+    return "acceptance-stale", f"{wanted} is not raised any more", "drop the acceptance"
 
 
 def _finding(check: Rule[Any, Any], fault: Fault, places: Places) -> Finding:

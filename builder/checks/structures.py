@@ -5,20 +5,20 @@ from difflib import get_close_matches
 
 from builder.checks.case import Case, compounds_of
 from builder.chemistry.perception import (
+    NO_LEAVING_GROUP,
     expected_class_names,
     leaving_group_names,
     site_class_names,
 )
+from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
 from builder.mechanism.reaction import groups_formed, sites_in_play
-from builder.records.model import Product, Substrate
+from builder.records.model import Formed, Product, Substrate
 from builder.records.vocabulary import StereoKind
 from builder.rule import Fault, rule
 
 __all__ = ["STRUCTURE_CHECKS"]
-
-NO_GROUP = "none"
 
 
 def _substrate(smiles: str, classes: str = "secondary", group: str = "bromide", more: str = "") -> str:
@@ -102,44 +102,54 @@ def salt_lacks_its_counter_ion(case: Case) -> Iterator[Fault]:
         _substrate("CC[C@H](C)Br", more=", stereo: achiral"),
         _substrate("CCC(C)Br", more=", stereo: single enantiomer"),
         _substrate("CCCCBr", "primary", more=", stereo: racemate"),
+        _substrate("CC[C@H](C)Br", more=", stereo: mixture"),
     ),
     silent_on=(
         _substrate("CC[C@H](C)Br", more=", stereo: single enantiomer"),
         _substrate("CCC(C)Br", more=", stereo: unknown enantiomer"),
         _substrate("CCCCBr", "primary", more=", stereo: achiral"),
+        _substrate("CC[C@H](C)Br", more=", stereo: mixture, er: '80:20'"),
     ),
 )
 def stereo_contradicts_structure(case: Case) -> Iterator[Fault]:
     """A single enantiomer is drawn with its configuration, a racemate has something to be racemic about.
 
-    Racemate, single enantiomer, unknown enantiomer and not determined are four states: only the first may be drawn
-    flat or with relative configuration alone, and meso counts as achiral.
+    Racemate, single enantiomer, unknown enantiomer and not determined are four states. A single enantiomer is drawn
+    in full; a racemate or an unknown enantiomer may be drawn flat or with its relative configuration; meso counts as
+    achiral; a mixture of the substrate is stated by its ee, er or dr.
     """
     for path, compound in compounds_of(case.record):
-        stereo = compound.stereo if isinstance(compound, (Substrate, Product)) else None
+        stereo = compound.stereo if isinstance(compound, (Substrate, Product, Formed)) else None
         structure = case.structures.get(path)
         if stereo is None or structure is None:
             continue
-        centres = structure.stereocentres
-        problem = ""
-        if stereo is StereoKind.ACHIRAL and (not structure.is_achiral or centres.unspecified):
-            problem = "the drawing is chiral, or leaves a stereocentre open"
-        elif stereo is StereoKind.SINGLE_ENANTIOMER and structure.is_achiral and not centres.unspecified:
-            problem = "the drawing is achiral"
-        elif stereo is StereoKind.SINGLE_ENANTIOMER and centres.unspecified:
-            problem = "a stereocentre is drawn without configuration"
-        elif (
-            stereo in {StereoKind.RACEMATE, StereoKind.UNKNOWN_ENANTIOMER}
-            and structure.is_achiral
-            and not centres.total
-        ):
-            problem = "the drawing has no stereocentre"
+        problem = _stereo_problem(stereo, structure)
+        if stereo is StereoKind.MIXTURE and isinstance(compound, Substrate) and not _is_stated(compound):
+            problem = "neither ee, er nor dr says which"
         if problem:
             yield Fault(
                 at=(*path, "stereo"),
                 message=f"{compound.name} is said to be {_a(stereo)}, but {problem}",
                 mend="draw the configuration, or correct the word",
             )
+
+
+def _stereo_problem(stereo: StereoKind, structure: Structure) -> str:
+    centres = structure.stereocentres
+    match stereo:
+        case StereoKind.ACHIRAL if not structure.is_achiral:
+            return "the drawing is chiral, or leaves a stereocentre open"
+        case StereoKind.SINGLE_ENANTIOMER if centres.unspecified:
+            return "a stereocentre is drawn without configuration"
+        case StereoKind.SINGLE_ENANTIOMER if structure.is_achiral:
+            return "the drawing is achiral"
+        case StereoKind.RACEMATE | StereoKind.UNKNOWN_ENANTIOMER if not centres.total:
+            return "the drawing has no stereocentre"
+    return ""
+
+
+def _is_stated(substrate: Substrate) -> bool:
+    return any(number is not None for number in (substrate.ee, substrate.er, substrate.dr))
 
 
 def _a(stereo: StereoKind) -> str:
@@ -263,9 +273,8 @@ def leaving_group_is_unknown(case: Case) -> Iterator[Fault]:
     It is named for what leaves: a bromide, a tosylate, an epoxide that opens.
     """
     name = case.record.substrate.leaving_group
-    permitted = (*leaving_group_names(), NO_GROUP)
-    if name not in permitted:
-        yield _outside_list(("substrate", "leaving_group"), name, permitted)
+    if name not in leaving_group_names():
+        yield _outside_list(("substrate", "leaving_group"), name, leaving_group_names())
 
 
 @rule(
@@ -286,9 +295,10 @@ def leaving_group_is_not_found(case: Case) -> Iterator[Fault]:
         return
     found = groups_formed(case.record, case.structures)
     had = f"it has {', '.join(found)}" if found else "it has no leaving group that we know"
+    sought = "multiple bond" if name == NO_LEAVING_GROUP else name
     yield Fault(
         at=("substrate", "leaving_group"),
-        message=f"no {'multiple bond' if name == NO_GROUP else name} is found on {case.record.substrate.name}; {had}",
+        message=f"no {sought} is found on {case.record.substrate.name}; {had}",
         mend="correct the group or the SMILES, or show in a stage's gives: how it is formed",
     )
 

@@ -9,9 +9,19 @@ from builder.records.model import Charged, Record
 from builder.records.quantities import Dimension
 from builder.rule import Path
 
-__all__ = ["AmountRow", "Amounts", "Role", "charged_rows", "derive_amounts", "moles_from"]
+__all__ = [
+    "QUANTITY_ORDER",
+    "AmountRow",
+    "Amounts",
+    "Role",
+    "charged_rows",
+    "derive_amounts",
+    "moles_from",
+    "present_solvents",
+]
 
-_QUANTITY_ORDER = ("mass", "amount", "volume", "equivalents")
+QUANTITY_ORDER = ("mass", "amount", "volume", "equivalents")
+"""The first of these that is typed is used; the others check it."""
 
 
 class Role(StrEnum):
@@ -82,6 +92,13 @@ def charged_rows(record: Record) -> tuple[tuple[Path, Role, Charged], ...]:
     )
 
 
+def present_solvents(record: Record, stage: int) -> tuple[int, ...]:
+    """Return the positions of the solvents that are in the flask during a stage: all but those that go in later."""
+    so_far = {name for each in record.stages[: stage + 1] for name in each.add or ()}
+    later = {name for each in record.stages[stage + 1 :] for name in each.add or ()}
+    return tuple(i for i, solvent in enumerate(record.solvents) if solvent.name not in later - so_far)
+
+
 def derive_amounts(record: Record, structures: Mapping[Path, Structure]) -> Amounts:
     """Return the amounts of everything charged.
 
@@ -147,7 +164,7 @@ def _row(
 
 
 def _typed(substance: Charged) -> str:
-    return next((kind for kind in _QUANTITY_ORDER if getattr(substance, kind) is not None), "")
+    return next((kind for kind in QUANTITY_ORDER if getattr(substance, kind) is not None), "")
 
 
 def _mass_of(kind: str, substance: Charged) -> float | None:

@@ -14,7 +14,15 @@ from builder.records.vocabulary import ReagentUse
 from builder.rule import Path
 from builder.table import refuse_twice, rows_of, table_text
 
-__all__ = ["SiteInPlay", "groups_formed", "in_play", "is_activated", "sites_in_play", "species_in_flask"]
+__all__ = [
+    "SiteInPlay",
+    "groups_formed",
+    "has_undrawn_species",
+    "in_play",
+    "is_activated",
+    "sites_in_play",
+    "species_in_flask",
+]
 
 _ACID_KINDS = {"hydrogen halide"}
 _ACTIVATING_USES = {ReagentUse.ACTIVATOR, ReagentUse.ACID}
@@ -84,6 +92,14 @@ def _activates(structure: Structure) -> bool:
     if any(nucleophile.kind in _ACID_KINDS for nucleophile in attacking_atoms(structure)):
         return True
     return any(donor.activates and donor.fragment.is_in(structure) for donor in _halide_donors())
+
+
+def has_undrawn_species(record: Record, structures: Mapping[Path, Structure]) -> bool:
+    """Say whether something was charged whose structure nobody knows, so that what follows from it cannot be told."""
+    return any(
+        path not in structures and (path[0] != "solvent" or find_solvent(substance.name) is None)
+        for path, _, substance in charged_rows(record)
+    )
 
 
 def species_in_flask(record: Record, structures: Mapping[Path, Structure]) -> Iterator[Structure]:
