@@ -6,7 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from decimal import Decimal
 from functools import partial
-from typing import Annotated, Any, TypeVar
+from typing import Annotated, Any, Literal, TypeVar
 
 from pydantic import (
     AfterValidator,
@@ -25,11 +25,15 @@ from builder.records.quantities import (
     Quantity,
     QuantityError,
     Temperature,
+    is_beyond_measure,
     parse_percent,
     parse_quantity,
     parse_temperature,
-    unit_spellings,
+    quantity_pattern,
+    temperature_pattern,
+    units_of,
 )
+from builder.rule import Path
 
 __all__ = [
     "Amount",
@@ -41,19 +45,25 @@ __all__ = [
     "EntryId",
     "Equivalents",
     "Flag",
+    "FormatNumber",
     "Label",
     "LabelledRatio",
+    "Labels",
     "Line",
     "Mass",
-    "Number",
     "NumberRatio",
     "OneOrMany",
+    "Order",
     "PersonCode",
+    "Point",
     "Pressure",
     "Purity",
     "RateConstantValue",
     "Ratio",
     "RelativePath",
+    "RxnComponent",
+    "Sha256",
+    "Shape",
     "Share",
     "SmilesText",
     "Strength",
@@ -67,17 +77,25 @@ __all__ = [
 T = TypeVar("T")
 Q = TypeVar("Q", Quantity, Percent, Temperature)
 
-_NUMBER_SHAPE = r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?"
-_DAY = re.compile(r"\d{4}-\d{2}-\d{2}")
-_LABEL = r"[A-Za-z0-9]+"
-_RATIO = re.compile(rf"(?P<parts>{_LABEL}(?:\+{_LABEL})*(?::{_LABEL}(?:\+{_LABEL})*)+) = (?P<numbers>[\d.:]+)")
-_CAS = re.compile(r"(\d{2,7})-(\d{2})-(\d)")
-_CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f]")
+_NUMBER_WITH_EQUIV = re.compile(
+    r"([+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)\s*(?:equiv\.?|eq\.?|equivalents?)"
+)
+_DAY = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}")
+_LABEL = r"[A-Za-z0-9]"
+_PART = rf"{_LABEL}+(?:\+{_LABEL}+)*"
+_RATIO_LABELS = rf"{_PART}(?::{_PART})+"
+_RATIO_NUMBERS = r"(?=.*[1-9])[0-9]+(?:\.[0-9]+)?(?::[0-9]+(?:\.[0-9]+)?)+"
+_RATIO_OF_TWO = r"(?=.*[1-9])[0-9]+(?:\.[0-9]+)?:[0-9]+(?:\.[0-9]+)?"
+_CAS = re.compile(r"([0-9]{2,7})-([0-9]{2})-([0-9])")
+_CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029]")
 
 
-def faulty(rule: str, message: str, mend: str, fix: str | None = None) -> PydanticCustomError:
-    """Return the error by which a field names the reading rule it broke, with its exact mend."""
-    context: dict[str, Any] = {"mend": mend, "fix": fix, "message": message}
+def faulty(rule: str, message: str, mend: str, fix: str | None = None, *, at: Path = ()) -> PydanticCustomError:
+    """Return the error by which a field names the reading rule it broke, with its exact mend.
+
+    at: the way from the value that is validated to the one at fault.
+    """
+    context: dict[str, Any] = {"mend": mend, "fix": fix, "message": message, "at": at}
     return PydanticCustomError(rule, "{message}", context)
 
 
@@ -91,41 +109,48 @@ def _quantity(
         quantity = parse(value)
     except QuantityError as error:
         raise faulty(error.rule, error.message, error.mend, error.fix) from None
-    low, high = _bounds(quantity)
+    low, high, unit = _bounds(quantity)
     if least is not None and (low < least or (open_below and low == least)):
-        bound = "above" if open_below else "at least"
-        raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"a value {bound} {least:g} is wanted")
+        bound = "more than" if open_below else "at least"
+        raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"write {bound} {least:g} {unit}")
     if most is not None and high > most:
-        raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"a value up to {most:g} is wanted")
+        raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"write at most {most:,.10g} {unit}")
     return quantity
 
 
-def _bounds(quantity: Quantity | Percent | Temperature) -> tuple[float, float]:
+def _bounds(quantity: Quantity | Percent | Temperature) -> tuple[float, float, str]:
+    """Return the lowest and the highest value, and the canonical unit they are in."""
     if isinstance(quantity, Temperature):
-        return quantity.lowest_c, quantity.highest_c
-    return quantity.magnitude, quantity.magnitude
+        return quantity.lowest_c, quantity.highest_c, "°C"
+    one = quantity.quantity if isinstance(quantity, Percent) else quantity
+    return one.magnitude, one.magnitude, units_of(one.dimension)[0]
 
 
-def _schema(pattern_units: Dimension, *, prefix: str = "", example: str) -> WithJsonSchema:
-    units = "|".join(re.escape(unit) for unit in unit_spellings(pattern_units))
-    number = r"[+\-\u2212\u2013]?(\d+(\.\d*)?|\.\d+)([eE][+\-\u2212]?\d+)?"
-    one = rf"{number}\s*({units})"
-    if pattern_units is Dimension.TEMPERATURE:
-        one = rf"{one}|{number}\s*({units})?\s+to\s+{one}|{number}\s*[-\u2013]\s*{one}"
-    return WithJsonSchema({"type": "string", "pattern": rf"^\s*{prefix}({one})\s*$", "examples": [example]})
+def _schema(pattern: str, *examples: str) -> WithJsonSchema:
+    return WithJsonSchema({"type": "string", "pattern": rf"^\s*({pattern})\s*$", "examples": list(examples)})
 
 
-def _measure(
-    dimension: Dimension,
-    example: str,
-    *,
-    least: float | None = 0.0,
-    most: float | None = None,
-    open_below: bool = True,
-) -> tuple[BeforeValidator, WithJsonSchema]:
+_MOST = {
+    Dimension.MASS: 1e7,
+    Dimension.AMOUNT: 1e6,
+    Dimension.VOLUME: 1e5,
+    Dimension.TIME: 3.2e8,
+    Dimension.CONCENTRATION: 150.0,
+    Dimension.DENSITY: 25.0,
+    Dimension.PRESSURE: 1e5,
+    Dimension.FRACTION: 100.0,
+    Dimension.RATE_CONSTANT_1: 1e15,
+    Dimension.RATE_CONSTANT_2: 1e15,
+}
+"""In canonical units: ten tonnes, ten years, just above the densest metal (22.6 g/mL), faster than any vibration.
+
+Wide of anything real, so that only slips and hostile numbers meet them; from memory."""
+
+
+def _measure(dimension: Dimension, example: str) -> tuple[BeforeValidator, WithJsonSchema]:
     parse = partial(parse_quantity, dimension=dimension)
-    check = partial(_reader, parse, least, most, open_below)
-    return BeforeValidator(check), _schema(dimension, example=example)
+    check = partial(_reader, parse, 0.0, _MOST[dimension], True)
+    return BeforeValidator(check), _schema(quantity_pattern(dimension, is_positive=True), example)
 
 
 def _reader(
@@ -147,8 +172,8 @@ _time, _pressure, _density = (
     _measure(Dimension.DENSITY, "1.26 g/mL"),
 )
 _concentration = _measure(Dimension.CONCENTRATION, "0.5 mol/L")
-_share = _measure(Dimension.FRACTION, "80 %", most=100.0)
-_purity = _measure(Dimension.FRACTION, "98 %", most=100.0)
+_share = _measure(Dimension.FRACTION, "80 %")
+_purity = _measure(Dimension.FRACTION, "98 %")
 
 Mass = Annotated[Quantity, *_mass]
 Amount = Annotated[Quantity, *_amount]
@@ -162,12 +187,12 @@ Purity = Annotated[Quantity, *_purity]
 TypedTemperature = Annotated[
     Temperature,
     BeforeValidator(partial(_reader, parse_temperature, -273.15, 1500.0, True)),
-    _schema(Dimension.TEMPERATURE, example="60 °C"),
+    _schema(temperature_pattern(), "60 °C"),
 ]
 TypedPercent = Annotated[
     Percent,
     BeforeValidator(partial(_reader, parse_percent, -100.0, 1000.0, False)),
-    _schema(Dimension.FRACTION, prefix=r"([<>≤≥]\s*)?", example="88 %"),
+    _schema(rf"([<>≤≥]\s*)?{quantity_pattern(Dimension.FRACTION, is_positive=False)}", "88 %"),
 ]
 
 
@@ -175,7 +200,7 @@ def _first_that_reads(value: object, *dimensions: Dimension) -> Quantity:
     errors = []
     for dimension in dimensions:
         try:
-            return _reader(partial(parse_quantity, dimension=dimension), 0.0, None, True, value)
+            return _reader(partial(parse_quantity, dimension=dimension), 0.0, _MOST[dimension], True, value)
         except PydanticCustomError as error:
             errors.append(error)
     # "20 g" is of the wrong dimension for one and for the other; a slip within one of them says more.
@@ -190,17 +215,22 @@ def _rate_constant(value: object) -> Quantity:
     return _first_that_reads(value, Dimension.RATE_CONSTANT_1, Dimension.RATE_CONSTANT_2)
 
 
+def _either(first: Dimension, second: Dimension, *examples: str) -> WithJsonSchema:
+    patterns = (quantity_pattern(dimension, is_positive=True) for dimension in (first, second))
+    return _schema("|".join(patterns), *examples)
+
+
 Strength = Annotated[
     Quantity,
     BeforeValidator(_strength),
-    WithJsonSchema({"type": "string", "examples": ["2.5 mol/L", "48 %"]}),
+    _either(Dimension.CONCENTRATION, Dimension.FRACTION, "2.5 mol/L", "48 %"),
 ]
 """Of a solution: concentration, or percentage by mass."""
 
 RateConstantValue = Annotated[
     Quantity,
     BeforeValidator(_rate_constant),
-    WithJsonSchema({"type": "string", "examples": ["9.2e-6 1/s", "1.4e-3 L/(mol s)"]}),
+    _either(Dimension.RATE_CONSTANT_1, Dimension.RATE_CONSTANT_2, "9.2e-6 1/s", "1.4e-3 L/(mol s)"),
 ]
 
 
@@ -242,6 +272,51 @@ Line = Annotated[
 SmilesText = Annotated[str, BeforeValidator(_smiles), AfterValidator(_line), Field(min_length=1, max_length=2000)]
 
 
+@dataclass(frozen=True, slots=True)
+class Shape:
+    """A text of one shape: refused in the writer's words, and the same pattern in the JSON Schema.
+
+    pattern: of the whole text, in what Python and ECMAScript share. what: completes "… is not".
+    """
+
+    pattern: str
+    what: str
+    mend: str
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
+        return core_schema.no_info_before_validator_function(self._read, handler(source))
+
+    def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
+        return {"type": "string", "pattern": self.pattern}
+
+    def _read(self, value: object) -> str:
+        text = _text(value)
+        if re.fullmatch(self.pattern, text):
+            return text
+        likely = (text.strip(), text.strip().lower())
+        fix = next((f"'{tidy}'" for tidy in likely if re.fullmatch(self.pattern, tidy)), None)
+        mend = f"write {fix}" if fix else self.mend
+        raise faulty("value-not-permitted", f'"{text:.80}" is not {self.what}', mend, fix)
+
+
+Sha256 = Annotated[
+    str, Shape(r"^[0-9a-f]{64}$", "a SHA-256", "copy the 64 characters 0-9 and a-f that `sha256sum FILE` prints")
+]
+RxnComponent = Annotated[
+    str,
+    Shape(r"^(reactant|product) [1-9][0-9]?$", "a component of the RXN file", "write reactant 1, or product 2"),
+]
+RelativePath = Annotated[
+    str,
+    Shape(
+        r"^(?!~)(?!\.\.([/\\]|$))[^:/\\]+([/\\](?!\.\.([/\\]|$))[^:/\\]+)*$",
+        "a path inside the book",
+        "name a file beside the record, such as data/spectrum.zip",
+    ),
+]
+Label = Annotated[str, Shape(rf"^{_LABEL}{{1,12}}$", "a label", "write at most 12 letters and digits, such as A")]
+
+
 def _date(value: object) -> dt.date:
     if isinstance(value, dt.date):
         return value
@@ -258,7 +333,11 @@ def _iso_date(text: str) -> str | None:
     return f"{match[3]}-{int(match[2]):02}-{int(match[1]):02}" if match else None
 
 
-Date = Annotated[dt.date, BeforeValidator(_date), WithJsonSchema({"type": "string", "format": "date"})]
+Date = Annotated[
+    dt.date,
+    BeforeValidator(_date),
+    WithJsonSchema({"type": "string", "format": "date", "pattern": f"^{_DAY.pattern}$"}),
+]
 
 
 def _entry_id(value: object) -> str:
@@ -276,23 +355,26 @@ EntryId = Annotated[str, BeforeValidator(_entry_id), WithJsonSchema({"type": "st
 def _cas(value: object) -> str:
     text = _text(value)
     match = _CAS.fullmatch(text)
-    if match:
-        digits = [int(digit) for digit in reversed(match[1] + match[2])]
-        if sum(place * digit for place, digit in enumerate(digits, start=1)) % 10 == int(match[3]):
-            return text
-    raise faulty("value-not-permitted", f'"{text}" is not a CAS number: its check digit fails', "correct or drop it")
+    if match is None:
+        raise faulty("value-not-permitted", f'"{text:.80}" is not a CAS number', "write it like 75-26-3")
+    digits = [int(digit) for digit in reversed(match[1] + match[2])]
+    if sum(place * digit for place, digit in enumerate(digits, start=1)) % 10 != int(match[3]):
+        raise faulty("value-not-permitted", f"the check digit of CAS number {text} is wrong", "correct it, or drop it")
+    return text
 
 
-CasNumber = Annotated[str, BeforeValidator(_cas), WithJsonSchema({"type": "string", "pattern": r"^\d{2,7}-\d{2}-\d$"})]
+CasNumber = Annotated[str, BeforeValidator(_cas), WithJsonSchema({"type": "string", "pattern": f"^{_CAS.pattern}$"})]
 
 
 def _whole(value: object) -> int:
     if isinstance(value, int) and not isinstance(value, bool):
         return value
-    raise faulty("value-wrong-type", f'"{value}" is not a whole number', "write digits only")
+    raise faulty("value-wrong-type", f'"{value}" is not a whole number', "write one, such as 1")
 
 
 Count = Annotated[int, Field(ge=1, le=10_000), BeforeValidator(_whole)]
+FormatNumber = Annotated[Literal[1], BeforeValidator(_whole)]
+Order = Annotated[Literal[1, 2], BeforeValidator(_whole)]
 
 
 def _flag(value: object) -> bool:
@@ -310,12 +392,11 @@ Flag = Annotated[bool, BeforeValidator(_flag)]
 
 def _number(value: object) -> Decimal:
     if isinstance(value, bool) or not isinstance(value, (int, Decimal)):
-        mend = "write the bare number"
-        fix = None
-        if isinstance(value, str) and re.fullmatch(rf"({_NUMBER_SHAPE})\s*(equiv\.?|eq\.?|equivalents?)", value):
-            fix = value.split("e", 1)[0].strip()
+        mend, fix = "write the bare number", None
+        if isinstance(value, str) and (with_word := _NUMBER_WITH_EQUIV.fullmatch(value)):
+            fix = with_word[1]
             mend = f"write {fix}"
-        elif isinstance(value, str) and re.fullmatch(r"\d+,\d+", value):
+        elif isinstance(value, str) and re.fullmatch(r"[0-9]+,[0-9]+", value):
             fix = value.replace(",", ".")
             raise faulty("quantity-decimal-comma", f'"{value}" has a decimal comma', f"write {fix}", fix)
         raise faulty("value-wrong-type", f'"{value}" is not a number', mend, fix)
@@ -328,20 +409,26 @@ Equivalents = Annotated[
     Field(gt=0, le=1000),
     WithJsonSchema({"type": "number", "exclusiveMinimum": 0, "maximum": 1000}),
 ]
-Number = Annotated[Decimal, BeforeValidator(_number), WithJsonSchema({"type": "number"})]
+
+
+def _pair(value: object) -> object:
+    if isinstance(value, (list, tuple)) and len(value) == 2:
+        return value
+    raise faulty("value-wrong-type", "a point is a time and a percentage", "write it like [4, 12.4]")
+
+
+Point = Annotated[
+    tuple[
+        Annotated[Decimal, BeforeValidator(_number), WithJsonSchema({"type": "number", "minimum": 0})],
+        Annotated[
+            Decimal, BeforeValidator(_number), WithJsonSchema({"type": "number", "minimum": -100, "maximum": 100})
+        ],
+    ],
+    BeforeValidator(_pair),
+]
+"""Of a time course: time in its unit, and percent."""
 
 PersonCode = Annotated[Line, Field(max_length=40)]
-
-
-def _relative_path(value: object) -> str:
-    text = _text(value)
-    parts = re.split(r"[/\\]", text)
-    if text.startswith(("/", "\\", "~")) or ":" in text or ".." in parts or "" in parts:
-        raise faulty("value-not-permitted", f'"{text}" leads out of the book', "name a file beside the record")
-    return text
-
-
-RelativePath = Annotated[str, BeforeValidator(_relative_path), WithJsonSchema({"type": "string"})]
 
 
 # --- ratios -----------------------------------------------------------------------------------------------
@@ -360,77 +447,81 @@ class Ratio:
         total = float(sum(self.numbers))
         return tuple(100.0 * float(number) / total for number in self.numbers)
 
+    @property
+    def excess_percent(self) -> float:
+        """Return how far one of two parts outweighs the other, |a − b|/(a + b), in percent: the ee of an er.
+
+        Raises ValueError where there are not two.
+        """
+        first, second = self.numbers
+        return float(100 * abs(first - second) / (first + second))
+
     def __str__(self) -> str:
         labels = ":".join("+".join(part) for part in self.parts)
         numbers = ":".join(format(number, "f") for number in self.numbers)
         return f"{labels} = {numbers}" if labels else numbers
 
 
-def _ratio_numbers(text: str) -> tuple[Decimal, ...] | None:
-    pieces = text.split(":")
-    if len(pieces) < 2 or not all(re.fullmatch(r"\d+(\.\d+)?", piece) for piece in pieces):
-        return None
-    numbers = tuple(Decimal(piece) for piece in pieces)
-    return numbers if sum(numbers) > 0 else None
+def _ratio(value: object, pattern: str, refusal: str, example: str) -> Ratio:
+    """Read labels and numbers of a ratio, or numbers alone."""
+    if isinstance(value, Ratio):
+        return value
+    text = _text(value)
+    if not re.fullmatch(pattern, text):
+        tidy = re.sub(r"\s*=\s*", " = ", re.sub(r"\s*[:/]\s*", ":", text.strip()))
+        fix = f"'{tidy}'" if re.fullmatch(pattern, tidy) else None
+        raise faulty("ratio-unreadable", f'"{text:.80}" is not {refusal}', f"write {fix or example}", fix)
+    labels, _, typed = text.rpartition(" = ")
+    parts = tuple(tuple(part.split("+")) for part in labels.split(":")) if labels else ()
+    if any(is_beyond_measure(number) for number in typed.split(":")):
+        raise faulty("ratio-unreadable", f'"{text:.80}" has a number beyond any measure', "write what was measured")
+    return Ratio(parts, tuple(Decimal(number) for number in typed.split(":")))
 
 
 def _labelled_ratio(value: object) -> Ratio:
-    if isinstance(value, Ratio):
-        return value
-    text = _text(value)
-    match = _RATIO.fullmatch(text)
-    if match:
-        parts = tuple(tuple(part.split("+")) for part in match["parts"].split(":"))
-        numbers = _ratio_numbers(match["numbers"])
-        if numbers and len(numbers) == len(parts):
-            return Ratio(parts, numbers)
-        if numbers:
-            raise faulty(
-                "ratio-unreadable",
-                f'"{text}" has {len(parts)} labels and {len(numbers)} numbers',
-                "give one number a part",
-            )
-    raise faulty(
-        "ratio-unreadable",
-        f'"{text}" is not a ratio of labels',
-        "write it like 'A:B = 65:35' or 'A+B:C = 82:18'",
+    ratio = _ratio(
+        value, f"{_RATIO_LABELS} = {_RATIO_NUMBERS}", "a ratio of labels", "'A:B = 65:35' or 'A+B:C = 82:18'"
     )
+    if len(ratio.parts) != len(ratio.numbers):
+        count = f"{len(ratio.parts)} labels and {len(ratio.numbers)} numbers"
+        raise faulty("ratio-unreadable", f'"{value:.80}" has {count}', "give each label one number")
+    labels = [label for part in ratio.parts for label in part]
+    if twice := next((label for place, label in enumerate(labels) if label in labels[:place]), None):
+        raise faulty("ratio-unreadable", f'"{value:.80}" names {twice} twice', "name each label once")
+    return ratio
 
 
 def _number_ratio(value: object) -> Ratio:
-    if isinstance(value, Ratio):
-        return value
-    text = _text(value)
-    numbers = _ratio_numbers(text)
-    if numbers is None or len(numbers) != 2:
-        raise faulty("ratio-unreadable", f'"{text}" is not a ratio of two numbers', "write it like '97:3'")
-    return Ratio((), numbers)
+    return _ratio(value, _RATIO_OF_TWO, "a ratio of two numbers", "'97:3'")
 
 
 LabelledRatio = Annotated[
     Ratio,
     BeforeValidator(_labelled_ratio),
-    WithJsonSchema({"type": "string", "pattern": r"^[A-Za-z0-9+:]+ = [\d.:]+$", "examples": ["A:B = 65:35"]}),
+    WithJsonSchema({"type": "string", "pattern": f"^{_RATIO_LABELS} = {_RATIO_NUMBERS}$", "examples": ["A:B = 65:35"]}),
 ]
 NumberRatio = Annotated[
     Ratio,
     BeforeValidator(_number_ratio),
-    WithJsonSchema({"type": "string", "pattern": r"^[\d.]+:[\d.]+$", "examples": ["97:3"]}),
+    WithJsonSchema({"type": "string", "pattern": f"^{_RATIO_OF_TWO}$", "examples": ["97:3"]}),
 ]
-Label = Annotated[str, BeforeValidator(_text), Field(pattern=rf"^{_LABEL}$", max_length=12)]
 
 
 # --- one or many ------------------------------------------------------------------------------------------
 
 
+@dataclass(frozen=True, slots=True)
 class _Listed:
     """Reads one value as a list of one, and says so in the JSON Schema."""
 
+    is_distinct: bool = False
+
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
-        return core_schema.no_info_before_validator_function(self._as_list, handler(source))
+        listed = core_schema.no_info_before_validator_function(self._as_list, handler(source))
+        return core_schema.no_info_after_validator_function(_distinct, listed) if self.is_distinct else listed
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
-        many = handler(schema)
+        many = handler(schema) | ({"uniqueItems": True} if self.is_distinct else {})
         return {"anyOf": [many["items"], many]}
 
     @staticmethod
@@ -438,4 +529,12 @@ class _Listed:
         return value if isinstance(value, (list, tuple)) else [value]
 
 
+def _distinct(values: tuple[str, ...]) -> tuple[str, ...]:
+    for place, value in enumerate(values):
+        if value in values[:place]:
+            raise faulty("value-not-permitted", f"{value} stands twice", "name each once", at=(place,))
+    return values
+
+
 OneOrMany = Annotated[tuple[T, ...], Field(min_length=1), _Listed()]
+Labels = Annotated[tuple[Label, ...], Field(min_length=1), _Listed(is_distinct=True)]

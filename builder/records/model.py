@@ -5,7 +5,7 @@ is text, a class is a word. Absent keys are None or empty, and never enter the d
 """
 
 import datetime as dt
-from typing import Annotated, Any, ClassVar, Literal, Self
+from typing import Annotated, ClassVar, Literal, Self
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Discriminator, Field, Tag, model_validator
 
@@ -19,19 +19,24 @@ from builder.records.fields import (
     EntryId,
     Equivalents,
     Flag,
+    FormatNumber,
     Label,
     LabelledRatio,
+    Labels,
     Line,
     Mass,
-    Number,
     NumberRatio,
     OneOrMany,
+    Order,
     PersonCode,
+    Point,
     Pressure,
     Purity,
     RateConstantValue,
     Ratio,
     RelativePath,
+    RxnComponent,
+    Sha256,
     Share,
     SmilesText,
     Strength,
@@ -56,8 +61,10 @@ from builder.records.vocabulary import (
     Vessel,
     YieldKind,
 )
+from builder.rule import Path
 
 __all__ = [
+    "UNION_TAGS",
     "Acceptance",
     "Charged",
     "Claim",
@@ -91,7 +98,6 @@ class Part(BaseModel):
         frozen=True,
         extra="forbid",
         arbitrary_types_allowed=True,
-        populate_by_name=True,
         hide_input_in_errors=True,
     )
 
@@ -156,7 +162,7 @@ class Compound(Part):
     name: Line
     smiles: SmilesText | None = None
     inchi: SmilesText | None = None
-    from_rxn: Annotated[str, Field(pattern=r"^(reactant|product) [1-9]\d?$")] | None = None
+    from_rxn: RxnComponent | None = None
     cas: CasNumber | None = None
 
     @property
@@ -222,7 +228,7 @@ class RxnFile(Part):
     """A CTfile RXN beside the record that holds the structures; named with its SHA-256, never followed outside."""
 
     path: RelativePath
-    sha256: Annotated[str, Field(pattern=r"^[0-9a-f]{64}$")]
+    sha256: Sha256
 
 
 # --- how it was run ---------------------------------------------------------------------------------------
@@ -301,7 +307,7 @@ class Measurement(Part):
     er: NumberRatio | None = None
     dr: NumberRatio | None = None
     ratio: LabelledRatio | None = None
-    of: OneOrMany[Label] | None = None
+    of: Labels | None = None
     kind: YieldKind | None = None
     by: Line | None = None
     mass: Mass | None = None
@@ -343,16 +349,39 @@ class TimeCourse(Part):
     """Points of (time, percent) followed during the reaction."""
 
     follows: Literal["conversion", "yield", "recovered", "ee"]
-    of: OneOrMany[Label] | None = None
+    of: Labels | None = None
     by: Line | None = None
     time_unit: Literal["s", "min", "h", "d"]
-    points: Annotated[tuple[tuple[Number, Number], ...], Field(min_length=2, max_length=1000)]
+    points: Annotated[tuple[Point, ...], Field(min_length=2, max_length=1000)]
+
+    @model_validator(mode="after")
+    def _goes_forward_within_bounds(self) -> Self:
+        least = -100 if self.follows == "ee" else 0
+        earlier = None
+        for index, (time, percent) in enumerate(self.points):
+            if time < 0 or (earlier is not None and time <= earlier):
+                follows = "the start" if earlier is None else f"{earlier} {self.time_unit}"
+                raise faulty(
+                    "value-not-permitted",
+                    f"{time} {self.time_unit} does not come after {follows}",
+                    "start at 0 or later, and list the points in the order of time",
+                    at=("points", index, 0),
+                )
+            if not least <= percent <= 100:
+                raise faulty(
+                    "quantity-out-of-range",
+                    f"{percent} % is impossible",
+                    f"write a percentage from {least} to 100",
+                    at=("points", index, 1),
+                )
+            earlier = time
+        return self
 
 
 class RateConstant(Part):
     """A measured rate constant with its order, spread, number of runs and temperature."""
 
-    order: Literal[1, 2]
+    order: Order
     value: RateConstantValue
     spread: RateConstantValue | None = None
     n: Count | None = None
@@ -401,26 +430,39 @@ class EvidenceFile(Part):
 
     what: Line
     file: RelativePath
-    sha256: Annotated[str, Field(pattern=r"^[0-9a-f]{64}$")]
+    sha256: Sha256
 
 
 # --- the record -------------------------------------------------------------------------------------------
 
 
-def _word_or_substance(value: Any) -> str:
-    return "word" if isinstance(value, str) else "substance"
+def _text_or_more(value: object) -> str:
+    return "<text>" if isinstance(value, str) else "<more>"
 
 
+# Told apart before they are read, so that a fault is reported once, against what was meant.
 NucleophileField = Annotated[
-    Annotated[NucleophileWord, Tag("word")] | Annotated[OneOrMany[Nucleophile], Tag("substance")],
-    Discriminator(_word_or_substance),
+    Annotated[NucleophileWord, Tag("<text>")] | Annotated[OneOrMany[Nucleophile], Tag("<more>")],
+    Discriminator(_text_or_more),
 ]
+
+
+def _file_or_text(value: object) -> str:
+    return "<more>" if isinstance(value, (dict, EvidenceFile)) else "<text>"
+
+
+Evidence = Annotated[
+    Annotated[Line, Tag("<text>")] | Annotated[EvidenceFile, Tag("<more>")],
+    Discriminator(_file_or_text),
+]
+UNION_TAGS = frozenset({"<text>", "<more>"})
+"""What pydantic puts into the place of a fault for a choice between two forms."""
 
 
 class Record(Part):
     """One experiment, as its file holds it."""
 
-    format: Literal[1]
+    format: FormatNumber
     entry: EntryId
     revision: Count
     status: Status
@@ -439,7 +481,7 @@ class Record(Part):
     stages: OneOrMany[Stage]
     work_up: OneOrMany[Line] | None = None
     outcome: Outcome
-    evidence: tuple[Line | EvidenceFile, ...] = ()
+    evidence: tuple[Evidence, ...] = ()
     procedure: Line | None = None
     take_away: Line | None = None
     scale_limit: Line | None = None
@@ -487,6 +529,13 @@ class Record(Part):
         """Return the products that were wanted; all of them where none is marked."""
         wanted = tuple(product for product in self.outcome.products if product.use is ProductUse.DESIRED)
         return wanted or self.outcome.products
+
+    @property
+    def references(self) -> tuple[tuple[Path, str], ...]:
+        """Return the entries this one names, each with the path to where it does."""
+        listed = (("related", self.related), ("preceded_by", self.preceded_by))
+        named: list[tuple[Path, str]] = [((key, i), entry) for key, ids in listed for i, entry in enumerate(ids or ())]
+        return (*named, *([(("superseded", "by"), self.superseded.by)] if self.superseded else []))
 
     @property
     def latest_date(self) -> dt.date:

@@ -12,7 +12,7 @@ from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
 
 from builder.finding import Finding, Level, Place
-from builder.records.model import Record
+from builder.records.model import UNION_TAGS, Record
 from builder.records.rules import reading_rule
 from builder.records.settings import Settings
 from builder.records.yaml_text import Places, Plain, quoted, read_plain
@@ -23,8 +23,8 @@ __all__ = ["MAX_BYTES", "Reading", "read_bytes", "read_into", "read_record", "re
 
 MAX_BYTES = 256 * 1024
 """Largest file that is read: a record, or an RXN file beside it."""
-_FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\x80-\x84\x86-\x9f\ufffe\uffff]")
-_UNION_TAGS = {"word", "substance"}
+# Control characters, and the line ends that libyaml counts and editors do not: U+0085, U+2028, U+2029.
+_FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029\ufffe\uffff]")
 
 Model = TypeVar("Model", bound=BaseModel)
 
@@ -45,24 +45,17 @@ def read_record(path: Path, shown_as: str) -> Reading:
 
     Never raises for what the file holds; OSError passes for a file that cannot be opened.
     """
-    size = path.stat().st_size
-    return read_bytes(path.read_bytes(), shown_as) if size <= MAX_BYTES else _too_large(size, shown_as)
+    return _reading(_text_of(path, shown_as), shown_as)
 
 
 def read_bytes(data: bytes, shown_as: str) -> Reading:
     """Read a record from bytes, as `read_record` does."""
-    if len(data) > MAX_BYTES:
-        return _too_large(len(data), shown_as)
-    text = _decode(data, shown_as)
-    if isinstance(text, Finding):
-        return Reading(shown_as, "", None, (text,), Places(shown_as))
-    record, findings, places = read_into(Record, text, shown_as)
-    return Reading(shown_as, text, record, findings, places)
+    return _reading(_decode(data, shown_as), shown_as)
 
 
 def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Finding, ...]]:
     """Read the settings of a book by the same rules as a record."""
-    text = _decode(path.read_bytes(), shown_as)
+    text = _text_of(path, shown_as)
     if isinstance(text, Finding):
         return None, (text,)
     settings, findings, _ = read_into(Settings, text, shown_as)
@@ -91,13 +84,26 @@ def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | Non
     return (None if any(f.level is Level.ERROR for f in kept) else made), kept, plainly.places
 
 
-def _too_large(size: int, file: str) -> Reading:
+def _reading(text: str | Finding, file: str) -> Reading:
+    if isinstance(text, Finding):
+        return Reading(file, "", None, (text,), Places(file))
+    record, findings, places = read_into(Record, text, file)
+    return Reading(file, text, record, findings, places)
+
+
+def _text_of(path: Path, file: str) -> str | Finding:
+    size = path.stat().st_size
+    return _decode(path.read_bytes(), file) if size <= MAX_BYTES else _too_large(size, file)
+
+
+def _too_large(size: int, file: str) -> Finding:
     fault = Fault(at=(), message=f"the file has {size / 1e6:.1f} MB", mend="keep data files outside the record")
-    finding = reading_rule("file-too-large").finding(fault, Place(file, 1, 1, 2))
-    return Reading(file, "", None, (finding,), Places(file))
+    return reading_rule("file-too-large").finding(fault, Place(file, 1, 1, 2))
 
 
 def _decode(data: bytes, file: str) -> str | Finding:
+    if len(data) > MAX_BYTES:
+        return _too_large(len(data), file)
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
@@ -106,7 +112,7 @@ def _decode(data: bytes, file: str) -> str | Finding:
         return _not_text(message, "save the file as UTF-8", before, len(before), file)
     bad = _FORBIDDEN.search(text)
     if bad:
-        return _not_text(f"control character U+{ord(bad[0]):04X}", "delete it", text, bad.start(), file)
+        return _not_text(f"invisible control character U+{ord(bad[0]):04X}", "delete it", text, bad.start(), file)
     return text.replace("\r\n", "\n").replace("\r", "\n")
 
 
@@ -131,26 +137,28 @@ def _one_per_place(findings: list[Finding]) -> Iterator[Finding]:
 
 
 def _form_finding(detail: ErrorDetails, plain: Plain, places: Places, model: type[BaseModel]) -> Finding:
+    kind, context = detail["type"], detail.get("ctx", {})
     path = _value_path(detail["loc"])
-    kind = detail["type"]
-    context: Mapping[str, Any] = detail.get("ctx", {})
+    value = _value_at(plain, path)
     if kind == "missing":
         fault = Fault(at=path[:-1], on_key=True, message=f"{path[-1]} is missing", mend=f"add {path[-1]}: …")
         return _found("key-missing", fault, places)
     if kind == "extra_forbidden":
-        return _found("key-unknown", _unknown_key(path, model), places)
+        # The key is the writer's, so it may read like a tag.
+        return _found("key-unknown", _unknown_key((*_value_path(detail["loc"][:-1]), detail["loc"][-1]), model), places)
     if "mend" in context:
-        fault = Fault(at=path, message=context["message"], mend=context["mend"], fix=context["fix"])
+        at = (*path, *context["at"])
+        fault = Fault(at=at, message=context["message"], mend=context["mend"], fix=context["fix"])
         return _found(kind, fault, places)
     if kind in {"enum", "literal_error"}:
-        return _found("value-not-permitted", _not_permitted(path, plain, context), places)
+        return _found("value-not-permitted", _not_permitted(path, value, context), places)
     if kind in _WRONG_TYPES:
-        return _found(
-            "value-wrong-type",
-            Fault(at=path, message=_WRONG_TYPES[kind], mend=_type_mend(path, model)),
-            places,
-        )
-    fault = Fault(at=path, message=detail["msg"][:1].lower() + detail["msg"][1:], mend="see How to add")
+        fault = Fault(at=path, message=_WRONG_TYPES[kind], mend=_type_mend(path, model))
+        return _found("value-wrong-type", fault, places)
+    message, mend = _BOUNDS.get(kind, ("this value does not fit here", "compare it with the specimen in How to add"))
+    length = len(value) if isinstance(value, (str, list)) else 0
+    known = {"value": value, "length": length, **context}
+    fault = Fault(at=path, message=message.format(**known), mend=mend.format(**known))
     return _found("value-not-permitted", fault, places)
 
 
@@ -161,6 +169,17 @@ _WRONG_TYPES = {
     "tuple_type": "a list is wanted here",
     "list_type": "a list is wanted here",
     "string_type": "a text is wanted here",
+}
+
+_BOUNDS = {
+    "too_short": ("the list has {length} items", "list {min_length} or more, or leave the key out"),
+    "too_long": ("the list has {length} items", "keep at most {max_length}"),
+    "string_too_short": ("the text is empty", "write it, or leave the key out"),
+    "string_too_long": ("the text has {length:,} characters", "shorten it to {max_length:,}"),
+    "greater_than": ("{value} is too small", "write a number above {gt}"),
+    "greater_than_equal": ("{value} is too small", "write {ge} or more"),
+    "less_than": ("{value} is too large", "write a number below {lt}"),
+    "less_than_equal": ("{value} is too large", "write {le:,} at most"),
 }
 
 
@@ -174,7 +193,7 @@ def _found(rule_id: str, fault: Fault, places: Places) -> Finding:
 
 
 def _value_path(loc: tuple[int | str, ...]) -> ValuePath:
-    return tuple(step for step in loc if step not in _UNION_TAGS)
+    return tuple(step for step in loc if step not in UNION_TAGS)
 
 
 def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
@@ -193,10 +212,9 @@ def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
     return Fault(at=path, on_key=True, message=f'unknown key "{key}"', mend=mend)
 
 
-def _not_permitted(path: ValuePath, plain: Plain, context: Mapping[str, Any]) -> Fault:
+def _not_permitted(path: ValuePath, value: Plain, context: Mapping[str, Any]) -> Fault:
     permitted = re.findall(r"'((?:[^'\\]|\\.)*)'|\"((?:[^\"\\]|\\.)*)\"|(\d+)", str(context.get("expected", "")))
     words = [next(word for word in found if word) for found in permitted]
-    value = _value_at(plain, path)
     near = get_close_matches(str(value), words, n=1, cutoff=0.6)
     hint = f'; did you mean "{near[0]}"?' if near else ""
     fix = quoted(near[0]) if near and not re.fullmatch(r"[A-Za-z0-9' -]+", near[0]) else (near[0] if near else None)

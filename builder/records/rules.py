@@ -100,7 +100,7 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         source="record-format",
         text="""A record is a plain file inside the book that can be read.
 
-        A link to somewhere else would let a change outside the book change it, and a folder or a pipe holds no record.""",
+        A link to somewhere else would let a change outside the book change it; a folder or a pipe holds no record.""",
         fires_on=(),
     ),
     card(
@@ -175,13 +175,16 @@ READING_RULES: tuple[Rule[object, object], ...] = (
     ),
     card(
         id="quantity-arithmetic",
-        title="A sum in place of a number",
+        title="A sum or a range in place of a number",
         level=Level.ERROR,
         source="record-format",
         text="""A quantity is one number with one unit.
 
         The record holds what was weighed; sums are done once, by the builder.""",
-        fires_on=("stages: [{temperature: 60 °C, time: 2*8 h}]",),
+        fires_on=(
+            "stages: [{temperature: 60 °C, time: 2*8 h}]",
+            "stages: [{temperature: 60 °C, time: 1–2 h}]",
+        ),
         silent_on=("stages: [{temperature: 60 °C, time: 16 h}]",),
     ),
     card(

@@ -1,10 +1,10 @@
 """The settings of one book, `entries/handbook.yml`: everything book-specific stands there."""
 
-from typing import Annotated, Literal
+from typing import Annotated
 
 from pydantic import Field
 
-from builder.records.fields import Count, EntryId, Flag, Line, RelativePath
+from builder.records.fields import Count, EntryId, Flag, FormatNumber, Line, RelativePath, Shape
 from builder.records.model import Part
 
 __all__ = ["SETTINGS_FILE", "Person", "Settings"]
@@ -12,12 +12,26 @@ __all__ = ["SETTINGS_FILE", "Person", "Settings"]
 SETTINGS_FILE = "handbook.yml"
 
 
+Address = Annotated[
+    str,
+    Shape(r"^https?://\S+/$", "a web address with a slash at its end", "write it like https://book.example.org/"),
+]
+Orcid = Annotated[
+    str,
+    Shape(
+        r"^https://orcid\.org/[0-9]{4}-[0-9]{4}-[0-9]{4}-[0-9]{3}[0-9X]$",
+        "an ORCID address",
+        "write it like https://orcid.org/0000-0000-0000-0000",
+    ),
+]
+
+
 class Person(Part):
     """A code that records use for a person, and what may be shown for it."""
 
     code: Line
     shown_as: Line
-    orcid: Annotated[str, Field(pattern=r"^https://orcid\.org/\d{4}-\d{4}-\d{4}-\d{3}[\dX]$")] | None = None
+    orcid: Orcid | None = None
 
 
 class Settings(Part):
@@ -29,13 +43,13 @@ class Settings(Part):
     retired: identifiers that must never come back.
     """
 
-    format: Literal[1]
+    format: FormatNumber
     title: Annotated[Line, Field(max_length=80)]
     group: Annotated[Line, Field(max_length=80)] | None = None
     notice: Annotated[Line, Field(max_length=400)] | None = None
     invented: Flag = False
-    site_address: Annotated[str, Field(pattern=r"^https?://\S+/$")] | None = None
-    edit_address: Annotated[str, Field(pattern=r"^https?://\S+/$")] | None = None
+    site_address: Address | None = None
+    edit_address: Address | None = None
     logo: RelativePath | None = None
     people: tuple[Person, ...] = ()
     house_rules: tuple[Line, ...] = ()

@@ -16,6 +16,7 @@ from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave 
 from yaml.resolver import BaseResolver
 
 from builder.finding import Finding, Place
+from builder.records.quantities import is_beyond_measure
 from builder.records.rules import reading_rule
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
@@ -29,8 +30,8 @@ MAX_MENDS = 60
 Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 
 _STRUCTURE_KEYS = {"smiles", "inchi", "sought"}
-_INTEGER = re.compile(r"[-+]?\d+")
-_FLOAT = re.compile(r"[-+]?(\.\d+|\d+(\.\d*)?)([eE][-+]?\d+)?")
+_INTEGER = re.compile(r"[-+]?[0-9]+")
+_FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _ALTERED_NUMBER = re.compile(r"[-+]?0\d+(\.\d*)?|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
 # What a YAML 1.1 reader takes for a boolean, a number to base 60, a number with underscores, or (1e-4) for text.
 _OTHERWISE_IN_1_1 = re.compile(
@@ -203,6 +204,10 @@ class _Constructor:
             return None
         if text in _BOOLEANS:
             return _BOOLEANS[text]
+        if _FLOAT.fullmatch(text) and is_beyond_measure(text):
+            message = f"{_named(path)} is read as a number beyond any measurement"
+            self.report("number-altered", node, message, f"write {quoted(text)} if it is none", quoted(text))
+            return text
         if _ALTERED_NUMBER.fullmatch(text):
             self.report(
                 "number-altered",
@@ -249,6 +254,7 @@ class _Constructor:
         made: dict[str, Plain] = {}
         last = ""
         for key_node, value_node in node.value:
+            self._refuse_tag(key_node)
             if not isinstance(key_node, yaml.ScalarNode):
                 self.report("value-wrong-type", key_node, "a key is a word", "write one word and a colon")
                 continue
@@ -312,7 +318,10 @@ class _Constructor:
         return whole
 
     def _refuse_tag(self, node: yaml.Node) -> None:
-        head = self.text[node.start_mark.index : node.start_mark.index + 200]
+        start = node.start_mark.index
+        if self.text[start : start + 1] not in {"!", "&"}:
+            return
+        head = self.text[start : start + 200]
         if re.match(r"(&\S+\s+)?!", head):
             self.report(
                 "tag-refused",
@@ -363,6 +372,8 @@ class _MendedText:
 
     def place(self, line: int, column: int, end_column: int) -> Place:
         """Return the place in the file as written of a 0-based position in the mended text."""
+        if not self._shifts:
+            return Place(self.file, line + 1, column + 1, end_column + 1)
         shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
         end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
         return Place(self.file, line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1)
