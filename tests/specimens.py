@@ -6,7 +6,7 @@ import re
 from builder.book import Examined, examine, judge
 from builder.finding import Finding
 from builder.records.reader import read_bytes
-from builder.records.settings import Settings
+from builder.records.settings import Person, Settings
 from builder.records.specimen import SPECIMEN_FILE, with_example
 
 TODAY = dt.date(2026, 12, 1)
@@ -26,10 +26,17 @@ def findings_of(text: str | bytes, file: str = SPECIMEN_FILE) -> tuple[Finding, 
 def play(example: str) -> tuple[Finding, ...]:
     """Return all findings of an example: YAML over the specimen, further records behind `---`.
 
-    `# file: PATH` names the file of a record, `# retired: ID` an identifier that the settings retire.
+    `# file: PATH` names the file of a record, `# retired: ID` an identifier that the settings retire, `# people: CODES`
+    the people they list.
     """
     retired = re.findall(r"^# retired: (\S+)$", example, re.MULTILINE)
-    settings = Settings(format=1, title="A book for tests", retired=tuple(retired))
+    people = re.search(r"^# people: (.+)$", example, re.MULTILINE)
+    settings = Settings(
+        format=1,
+        title="A book for tests",
+        retired=tuple(retired),
+        people=tuple(Person(code=code, shown_as=code) for code in people[1].split()) if people else (),
+    )
     parts = [part.removeprefix("\n") for part in re.split(r"^---$", example, flags=re.MULTILINE)]
     examined = []
     for part in parts:

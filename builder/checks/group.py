@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from builder.checks.case import Case
 from builder.finding import Level
+from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Path, rule
 
@@ -85,25 +86,66 @@ def notebook_page_stands_twice(book: Gathering) -> Found:
     The same page in two records is usually one experiment entered twice.
     """
     mend = "merge the two, correct the page, or accept this with the reason"
-    yield from _repeated(book, lambda case: case.record.notebook, ("notebook",), "this page stands in {0} too", mend)
+    yield from _repeated(
+        book,
+        lambda case: case.record.notebook if _is_in_force(case) else None,
+        ("notebook",),
+        "this page stands in {0} too",
+        mend,
+    )
+
+
+@rule(
+    id="person-unknown",
+    title="A person code that the book does not know",
+    level=Level.REMARK,
+    source="record-format",
+    fires_on=("# people: bench-1 bench-2 bench-3\nreviewed: {by: bench-9, date: 2026-03-20}",),
+    silent_on=("# people: bench-1 bench-2 safety-1",),
+)
+def person_is_unknown(book: Gathering) -> Found:
+    """Where the settings list the people of a group, every code in a record is among them.
+
+    Asked only of books that list people; a code stands for a person in citations and reviews.
+    """
+    for member in book.members:
+        known = {person.code for person in member.case.settings.people}
+        for path, code in _person_codes(member.case) if known else ():
+            if code not in known:
+                fault = Fault(at=path, message=f"{code} is not among the people of this book", mend=_add_person(code))
+                yield member, fault
+
+
+def _person_codes(case: Case) -> Iterator[tuple[Path, str]]:
+    record = case.record
+    yield from ((("performed", "by", index), code) for index, code in enumerate(record.performed.by))
+    stamps = {"reviewed": record.reviewed, "safety_review": record.safety_review, "withdrawn": record.withdrawn}
+    yield from (((key, "by"), stamp.by) for key, stamp in stamps.items() if stamp is not None)
+    yield from ((("accepted", index, "by"), each.by) for index, each in enumerate(record.accepted))
+
+
+def _add_person(code: str) -> str:
+    return f"correct it, or add it to people: in handbook.yml with code: {code}"
 
 
 @rule(
     id="reference-unknown",
-    title="A reference to an entry that does not exist",
+    title="A reference that leads nowhere",
     source="record-format",
-    fires_on=("related: [NS7K3QFMC]",),
+    fires_on=("related: [NS7K3QFMC]", "related: [NS4T9XQ2N]"),
     silent_on=("related: [NS7K3QFMC]\n---\n" + _SECOND,),
 )
 def reference_is_unknown(book: Gathering) -> Found:
-    """What a record refers to is in the book.
+    """What a record refers to is another entry of the book.
 
     A link to nowhere is noticed by the reader of a report in two years, not by its writer.
     """
     known = {member.case.record.entry for member in book.members} | book.unread
     for member in book.members:
-        for path, reference in _references(member.case):
-            if reference not in known:
+        for path, reference in member.case.record.references:
+            if reference == member.case.record.entry:
+                yield member, Fault(at=path, message=f"{reference} refers to itself", mend="name the other entry")
+            elif reference not in known:
                 yield member, Fault(at=path, message=f"{reference} is not in the book", mend="correct it, or drop it")
 
 
@@ -121,16 +163,36 @@ def title_stands_twice(book: Gathering) -> Found:
     In a list two equal lines cannot be told apart: the difference between the runs belongs into the title.
     """
     mend = "say in the title what is different"
-    yield from _repeated(book, lambda case: case.record.title.casefold(), ("title",), "{0} has this title too", mend)
+    yield from _repeated(
+        book,
+        lambda case: case.record.title.casefold() if _is_in_force(case) else None,
+        ("title",),
+        "{0} has this title too",
+        mend,
+    )
 
 
 GROUP_CHECKS = (
     entry_is_retired,
     entry_stands_twice,
     notebook_page_stands_twice,
+    person_is_unknown,
     reference_is_unknown,
     title_stands_twice,
 )
+
+
+def _notebook_page(case: Case) -> str | None:
+    return case.record.notebook if _is_in_force(case) else None
+
+
+def _title(case: Case) -> str | None:
+    return case.record.title.casefold() if _is_in_force(case) else None
+
+
+def _is_in_force(case: Case) -> bool:
+    """Say whether an entry still holds: its successor may well bear its title and speak of its notebook page."""
+    return case.record.status not in {Status.SUPERSEDED, Status.WITHDRAWN}
 
 
 def _repeated(book: Gathering, key: Callable[[Case], Hashable], at: Path, message: str, mend: str) -> Found:
@@ -144,11 +206,3 @@ def _repeated(book: Gathering, key: Callable[[Case], Hashable], at: Path, messag
             others = [other.case.file for other in group if other is not member]
             if others:
                 yield member, Fault(at=at, message=message.format(others[0]), mend=mend)
-
-
-def _references(case: Case) -> Iterator[tuple[Path, str]]:
-    record = case.record
-    for key, ids in (("related", record.related), ("preceded_by", record.preceded_by)):
-        yield from (((key, index), reference) for index, reference in enumerate(ids or ()))
-    if record.superseded is not None:
-        yield ("superseded", "by"), record.superseded.by
