@@ -276,11 +276,11 @@ SmilesText = Annotated[str, BeforeValidator(_smiles), AfterValidator(_line), Fie
 class Shape:
     """A text of one shape: refused in the writer's words, and the same pattern in the JSON Schema.
 
-    pattern: of the whole text, in what Python and ECMAScript share. what: completes "… is not".
+    pattern: of the whole text, in what Python and ECMAScript share. refusal: completes a sentence that begins with the text.
     """
 
     pattern: str
-    what: str
+    refusal: str
     mend: str
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
@@ -296,25 +296,27 @@ class Shape:
         likely = (text.strip(), text.strip().lower())
         fix = next((f"'{tidy}'" for tidy in likely if re.fullmatch(self.pattern, tidy)), None)
         mend = f"write {fix}" if fix else self.mend
-        raise faulty("value-not-permitted", f'"{text:.80}" is not {self.what}', mend, fix)
+        raise faulty("value-not-permitted", f'"{text:.80}" {self.refusal}', mend, fix)
 
 
 Sha256 = Annotated[
-    str, Shape(r"^[0-9a-f]{64}$", "a SHA-256", "copy the 64 characters 0-9 and a-f that `sha256sum FILE` prints")
+    str, Shape(r"^[0-9a-f]{64}$", "is not a SHA-256", "copy the 64 characters 0-9 and a-f that `sha256sum FILE` prints")
 ]
 RxnComponent = Annotated[
     str,
-    Shape(r"^(reactant|product) [1-9][0-9]?$", "a component of the RXN file", "write reactant 1, or product 2"),
+    Shape(r"^(reactant|product) [1-9][0-9]?$", "is not a component of the RXN file", "write reactant 1, or product 2"),
 ]
 RelativePath = Annotated[
     str,
     Shape(
         r"^(?!~)(?!\.\.([/\\]|$))[^:/\\]+([/\\](?!\.\.([/\\]|$))[^:/\\]+)*$",
-        "a path inside the book",
+        "leads out of the book",
         "name a file beside the record, such as data/spectrum.zip",
     ),
 ]
-Label = Annotated[str, Shape(rf"^{_LABEL}{{1,12}}$", "a label", "write at most 12 letters and digits, such as A")]
+Label = Annotated[
+    str, Shape(rf"^{_LABEL}{{1,12}}$", "is not a label", "write at most 12 letters and digits, such as A")
+]
 
 
 def _date(value: object) -> dt.date:

@@ -64,6 +64,9 @@ from builder.records.vocabulary import (
 from builder.rule import Path
 
 __all__ = [
+    "KINDS_OF_MEASUREMENT",
+    "QUANTITIES_OF_SUBSTRATE",
+    "STRUCTURES",
     "UNION_TAGS",
     "Acceptance",
     "Charged",
@@ -156,6 +159,10 @@ class Acceptance(Part):
 # --- what was charged -------------------------------------------------------------------------------------
 
 
+STRUCTURES = ("smiles", "inchi", "from_rxn")
+QUANTITIES_OF_SUBSTRATE = ("mass", "amount", "volume")
+
+
 class Compound(Part):
     """A named structure: from SMILES, InChI or a component of the record's RXN file."""
 
@@ -168,7 +175,7 @@ class Compound(Part):
     @property
     def has_structure(self) -> bool:
         """Say whether the record gives a structure for this compound."""
-        return bool(self.smiles or self.inchi or self.from_rxn)
+        return any(getattr(self, key) is not None for key in STRUCTURES)
 
 
 class Charged(Compound):
@@ -203,7 +210,7 @@ class Substrate(Charged):
     def _needs_structure_and_quantity(self) -> Self:
         if not self.has_structure:
             raise faulty("key-missing", "the substrate has no structure", "add smiles: '…'")
-        if self.mass is None and self.amount is None and self.volume is None:
+        if all(getattr(self, key) is None for key in QUANTITIES_OF_SUBSTRATE):
             raise faulty("key-missing", "the substrate has no quantity", "add mass, amount or volume")
         return self
 
@@ -399,7 +406,7 @@ class Failure(Part):
 
 
 def _require_products(outcome: "Outcome") -> None:
-    if set(outcome.result) <= {Result.NO_REACTION, Result.DECOMPOSITION}:
+    if not any(result.gives_products for result in outcome.result):
         return
     if not outcome.products:
         raise faulty("key-missing", "a reaction that went has products", "add products: with label, name, smiles")

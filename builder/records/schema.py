@@ -1,4 +1,9 @@
-"""JSON Schema 2020-12 of the record format, generated from the models for editors and forms."""
+"""JSON Schema 2020-12 of the record format, generated from the models for editors and forms.
+
+What the models say by validators rather than by types is added here by hand. Two things hold, and a test plays
+both: the schema refuses nothing that the reader reads, and it refuses what the reader refuses, but for what no
+schema can see (a check digit, the days of the calendar, the order of points).
+"""
 
 from collections.abc import Iterable
 from typing import Any
@@ -6,8 +11,9 @@ from typing import Any
 from pydantic import BaseModel
 from pydantic.json_schema import GenerateJsonSchema, JsonSchemaValue
 
-from builder.records.model import Record
+from builder.records.model import KINDS_OF_MEASUREMENT, QUANTITIES_OF_SUBSTRATE, STRUCTURES, Record
 from builder.records.settings import Settings
+from builder.records.vocabulary import Result, Status
 
 __all__ = ["record_schema", "settings_schema"]
 
@@ -20,6 +26,9 @@ class _Generator(GenerateJsonSchema):
     def nullable_schema(self, schema: Any) -> JsonSchemaValue:
         return self.generate_inner(schema["schema"])
 
+    def tagged_union_schema(self, schema: Any) -> JsonSchemaValue:
+        return {"anyOf": [self.generate_inner(choice) for choice in schema["choices"].values()]}
+
     def field_title_should_be_set(self, schema: Any) -> bool:  # noqa: ARG002 - the signature is pydantic's
         return False
 
@@ -27,18 +36,61 @@ class _Generator(GenerateJsonSchema):
 def record_schema(classes: Iterable[str], leaving_groups: Iterable[str]) -> dict[str, Any]:
     """Return the schema of a record; the two closed lists come from the pattern tables."""
     schema = _schema_of(Record, "A record of the condition handbook, format 1")
-    substrate = schema["$defs"]["Substrate"]["properties"]
+    parts = schema["$defs"]
+    substrate = parts["Substrate"]["properties"]
     one_class = {"type": "string", "enum": sorted(classes)}
     substrate["class"] = {"anyOf": [one_class, {"type": "array", "items": one_class, "minItems": 1}]}
     substrate["leaving_group"] = {"type": "string", "enum": sorted({*leaving_groups, "none"})}
-    schema["anyOf"] = [{"required": ["nucleophile"]}, {"required": ["base"]}]
-    schema["oneOf"] = [{"required": ["solvent"]}, {"required": ["neat"]}]
+    schema["allOf"] = [_one_of("nucleophile", "base"), _SOLVENT_OR_NEAT, *map(_with_status, _STATUS_KEYS)]
+    parts["Substrate"]["allOf"] = [_one_of(*STRUCTURES), _one_of(*QUANTITIES_OF_SUBSTRATE)]
+    parts["Product"]["allOf"] = [_one_of(*STRUCTURES)]
+    parts["Measurement"]["allOf"] = [{"oneOf": [_has(kind) for kind in KINDS_OF_MEASUREMENT]}, _YIELD_OF_A_KIND]
+    parts["Outcome"]["allOf"] = [_WHAT_WENT_IS_SHOWN]
     return schema
 
 
 def settings_schema() -> dict[str, Any]:
     """Return the schema of `entries/handbook.yml`."""
     return _schema_of(Settings, "Settings of a condition handbook")
+
+
+def _has(*keys: str) -> dict[str, Any]:
+    return {"required": list(keys)}
+
+
+def _one_of(*keys: str) -> dict[str, Any]:
+    """Say that one or more of these keys are given."""
+    return {"anyOf": [_has(key) for key in keys]}
+
+
+def _filled(key: str) -> dict[str, Any]:
+    return {**_has(key), "properties": {key: {"minItems": 1}}}
+
+
+def _with_status(status: Status) -> dict[str, Any]:
+    """Say that a status and the key of its name go together."""
+    return {
+        "if": {"properties": {"status": {"const": status.value}}},
+        "then": _has(status.value),
+        "else": {"not": _has(status.value)},
+    }
+
+
+_STATUS_KEYS = (Status.SUPERSEDED, Status.WITHDRAWN)
+_SOLVENT_OR_NEAT = {
+    "if": {"properties": {"neat": {"const": True}}, **_has("neat")},
+    "then": {"not": _has("solvent")},
+    "else": _has("solvent"),
+}
+_YIELD_OF_A_KIND = {"if": _has("yield"), "then": _has("kind", "of")}
+_WENT = {"enum": [result.value for result in Result if result.gives_products]}
+_WHAT_WENT_IS_SHOWN = {
+    "if": {
+        **_has("result"),
+        "properties": {"result": {"anyOf": [_WENT, {"type": "array", "contains": _WENT}]}},
+    },
+    "then": {**_filled("products"), "anyOf": [_filled("measured"), _has("time_course"), _has("rate_constant")]},
+}
 
 
 def _schema_of(model: type[BaseModel], title: str) -> dict[str, Any]:

@@ -14,13 +14,15 @@ SETTINGS_FILE = "handbook.yml"
 
 Address = Annotated[
     str,
-    Shape(r"^https?://\S+/$", "a web address with a slash at its end", "write it like https://book.example.org/"),
+    Shape(
+        r"^https?://\S+/$", "is not a web address with a slash at its end", "write it like https://book.example.org/"
+    ),
 ]
 Orcid = Annotated[
     str,
     Shape(
         r"^https://orcid\.org/[0-9]{4}-[0-9]{4}-[0-9]{4}-[0-9]{3}[0-9X]$",
-        "an ORCID address",
+        "is not an ORCID address",
         "write it like https://orcid.org/0000-0000-0000-0000",
     ),
 ]
@@ -37,7 +39,7 @@ class Person(Part):
 class Settings(Part):
     """Title, address, people, house rules of a book.
 
-    notice: shown on every page; a demonstration says here that its data are invented.
+    notice: shown on every page. invented: the book is a demonstration, and every page says so.
     site_address: full address under which the site is published, for citations.
     review_interval_months: after how long an entry without its own due date wants another look.
     retired: identifiers that must never come back.
@@ -57,3 +59,8 @@ class Settings(Part):
     licence: Line = "LicenseRef-Internal"
     contact: Line | None = None
     retired: tuple[EntryId, ...] = ()
+
+    @property
+    def standing_notice(self) -> str:
+        """Return what every page says: the book's notice; of an invented book at least that it is."""
+        return self.notice or ("Demonstration book: every entry is invented." if self.invented else "")

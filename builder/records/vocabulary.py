@@ -81,6 +81,11 @@ class Result(StrEnum):
     DECOMPOSITION = "decomposition"
     NO_REACTION = "no reaction"
 
+    @property
+    def gives_products(self) -> bool:
+        """Say whether it gives products that can be named and measured."""
+        return self not in {Result.DECOMPOSITION, Result.NO_REACTION}
+
 
 class NucleophileWord(StrEnum):
     """Words that stand in place of a charged nucleophile."""
