@@ -23,6 +23,7 @@ __all__ = [
     "SchemeLayout",
     "draw_scheme",
     "draw_structure",
+    "legend",
     "lay_out",
 ]
 
@@ -107,7 +108,7 @@ def draw_scheme(
         raise ValueError(f"{ident!r} cannot stand in an id")
     placed = lay_out(steps, layout=layout, max_width=max_width)
     area = Box.around(item.box for item in placed).grown(_PADDING)
-    described = ". ".join(filter(None, [description.rstrip(". "), _legend(steps)]))
+    described = ". ".join(filter(None, [description.rstrip(". "), legend(steps)]))
     desc = f'<desc id="{ident}-desc">{svg_text(described)}.</desc>' if described else ""
     refers = f' aria-describedby="{ident}-desc"' if described else ""
     width, height = svg_number(area.width), svg_number(area.height)
@@ -435,7 +436,8 @@ def _dashes(arrow: Arrow) -> str:
     return ' stroke-dasharray="6 4"' if arrow.forecast else ""
 
 
-def _legend(steps: Sequence[Sequence[DrawnCompound] | Arrow]) -> str:
+def legend(steps: Sequence[Sequence[DrawnCompound] | Arrow]) -> str:
+    """Return in one sentence what the outlines of a scheme mean; empty where it has none."""
     compounds = [compound for step in steps if not isinstance(step, Arrow) for compound in step]
     used = [words for mark, words in MEANING_OF_OUTLINES.items() if any(getattr(c, mark) for c in compounds)]
     text = ", ".join(used)

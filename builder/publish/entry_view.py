@@ -127,6 +127,7 @@ class EntryView:
     cautions: tuple[FindingView, ...]
     scheme_wide: Markup
     scheme_tall: Markup
+    scheme_legend: str
     scheme_file: bytes
     strip: tuple[Fact, ...]
     claim: tuple[Fact, ...]
@@ -191,6 +192,7 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         cautions=tuple(_finding(finding, record, around) for finding in _gravest_first(entry.findings)),
         scheme_wide=scheme.wide if scheme else Markup(),
         scheme_tall=scheme.tall if scheme else Markup(),
+        scheme_legend=scheme.legend if scheme else "",
         scheme_file=scheme.file if scheme else b"",
         strip=conditions_strip(entry),
         claim=_claim(record),

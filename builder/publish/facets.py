@@ -40,17 +40,16 @@ class FacetValue:
 
 def facet_values(facet: Facet, entries: Iterable[Entry]) -> tuple[FacetValue, ...]:
     """Return the values that occur, in alphabetical order; spellings that differ in case alone are one value."""
-    found: dict[str, list[Entry]] = {}
+    found: dict[str, dict[str, Entry]] = {}
     spellings: dict[str, set[str]] = {}
     for entry in entries:
         for value in facet.values_of(entry):
             key = value.casefold()
             spellings.setdefault(key, set()).add(value)
-            if entry not in found.setdefault(key, []):
-                found[key].append(entry)
+            found.setdefault(key, {})[entry.id] = entry
     labels = {key: min(spellings[key]) for key in found}
     slugs = _slugs(labels.values())
-    return tuple(FacetValue(labels[key], slugs[labels[key]], tuple(found[key])) for key in sorted(found))
+    return tuple(FacetValue(labels[key], slugs[labels[key]], tuple(found[key].values())) for key in sorted(found))
 
 
 def slug_of(text: str) -> str:

@@ -70,7 +70,7 @@ def front_page(book: Book, summaries: Mapping[str, Summary]) -> Page:
             contrary=contrary,
             failures=[summary for summary in current if summary.is_failure],
             facets=facet_counts(book),
-            notice=book.settings.notice or "",
+            notice=book.settings.standing_notice,
             root="",
         ),
         menu=("State of the book",),

@@ -64,7 +64,7 @@ def format_parts(schema: Mapping[str, Any]) -> tuple[FormatPart, ...]:
 
 def guide_pages(book: Book) -> tuple[Page, ...]:
     """Return the two guides."""
-    notice = book.settings.notice or ""
+    notice = book.settings.standing_notice
     schema = record_schema(site_class_names(), leaving_group_names())
     meanings = site_class_meanings()
     return (

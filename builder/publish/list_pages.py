@@ -46,7 +46,7 @@ def facet_counts(book: Book) -> tuple[FacetCounts, ...]:
 
 def list_pages(book: Book, summaries: Mapping[str, Summary]) -> tuple[Page, ...]:
     """Return the page of all entries, and per facet an index and a page per value."""
-    notice = book.settings.notice or ""
+    notice = book.settings.standing_notice
     counts = facet_counts(book)
     pages = [
         Page(

@@ -28,4 +28,4 @@ def entry_page(entry: Entry, around: Surroundings) -> Page:
 
 def render_entry(view: EntryView, around: Surroundings) -> str:
     """Return the HTML body of an entry's page."""
-    return render("entry.html", view=view, notice=around.settings.notice or "", root="../../")
+    return render("entry.html", view=view, notice=around.settings.standing_notice, root="../../")

@@ -108,7 +108,7 @@ def _drawing(smiles: str, ident: str) -> Markup:
 
 def rule_pages(book: Book, rules: Sequence[AnyRule]) -> tuple[Page, ...]:
     """Return the index of rules and a page for each."""
-    notice = book.settings.notice or ""
+    notice = book.settings.standing_notice
     views = [view_rule(rule, book) for rule in sorted(rules, key=lambda rule: rule.id)]
     groups = [
         ("Gates of the engine", "What opens or closes a mechanism at a site.", [v for v in views if v.is_gate]),

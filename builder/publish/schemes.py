@@ -8,7 +8,7 @@ from builder.checks.case import Case
 from builder.checks.derivation import main_route, routes_by_product
 from builder.chemistry.inks import standalone
 from builder.chemistry.perception import ReactiveSite, sites_of
-from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme
+from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme, legend
 from builder.chemistry.structure import AtomId, Structure
 from builder.publish.figures import equivalents_text, joined
 from builder.publish.measured import yield_caption
@@ -26,12 +26,16 @@ Step = list[DrawnCompound] | Arrow
 
 @dataclass(frozen=True, slots=True)
 class Scheme:
-    """A drawn scheme: as rows, as one column for a phone, as a file of its own, and what it shows in words."""
+    """A drawn scheme: as rows, as one column for a phone, as a file of its own.
+
+    words: what it shows. legend: what its outlines mean.
+    """
 
     wide: Markup
     tall: Markup
     file: bytes
     words: str
+    legend: str
 
 
 def entry_scheme(case: Case) -> Scheme | None:
@@ -42,7 +46,7 @@ def entry_scheme(case: Case) -> Scheme | None:
     wide = draw_scheme(steps, name=words, ident=f"{case.record.entry}-wide", layout="wide")
     tall = draw_scheme(steps, name=words, ident=f"{case.record.entry}-tall", layout="tall")
     # Drawings are our own; every text in them is escaped where it is set.
-    return Scheme(Markup(wide), Markup(tall), standalone(wide).encode(), words)  # noqa: S704
+    return Scheme(Markup(wide), Markup(tall), standalone(wide).encode(), words, legend(steps))  # noqa: S704
 
 
 def scheme_words(case: Case) -> str:
