@@ -463,6 +463,8 @@ def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
     atoms = [raw.GetAtomWithIdx(at) for at in range(raw.GetNumAtoms())]
     if any(atom.GetAtomicNum() == 0 for atom in atoms):
         raise StructureError("wildcard atom", "write a definite atom in its place")
+    if any(bond.GetBondType() == Chem.BondType.AROMATIC and not bond.IsInRing() for bond in raw.GetBonds()):
+        raise StructureError("aromatic bond outside a ring", "write a single or double bond in place of :")
     mol = raw
     place = {at: at for at in range(len(atoms))}
     if any(atom.GetAtomicNum() == 1 for atom in atoms):
@@ -515,6 +517,10 @@ def _refuse_what_is_no_smiles(text: str) -> None:
     space = re.search(r"\s", text)
     if space:
         raise StructureError("space in a SMILES", "write the SMILES alone, its name under `name`", space.start())
+    foreign = re.search(r"[^\x20-\x7e]", text)
+    if foreign:  # RDKit would pass over one at either end, and a carbon typed in Cyrillic with it
+        mend = "type it again in plain letters; quotes and dashes of a text processor are none"
+        raise StructureError(f"character {foreign.group()!r} in a SMILES", mend, foreign.start())
     arrow = re.search(r"(?<!-)>", text)
     if arrow:
         mend = "write one structure; substrate, nucleophile and products have their own keys"

@@ -35,6 +35,10 @@ REFUSED = [
     ("CCN(C)(C)(C)C", "valence of N at atom 3 exceeded", 2),
     ("Cc1cccc1", "aromatic ring without alternating double bonds", 1),
     ("CC*", "wildcard atom", 2),
+    ("\u0421CCBr", "character 'С' in a SMILES", 0),  # Cyrillic
+    ("‘CCBr’", "character '‘' in a SMILES", 0),
+    ("CCBr\ufeff", "character '\\ufeff' in a SMILES", 4),
+    ("C:C(C)Br", "aromatic bond outside a ring", None),
     ("C[*]", "wildcard atom", 2),
     ("CBr>>CI", "reaction arrow", 3),
     ("C~C", "bond of any order", 1),
