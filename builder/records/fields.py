@@ -276,7 +276,8 @@ SmilesText = Annotated[str, BeforeValidator(_smiles), AfterValidator(_line), Fie
 class Shape:
     """A text of one shape: refused in the writer's words, and the same pattern in the JSON Schema.
 
-    pattern: of the whole text, in what Python and ECMAScript share. refusal: completes a sentence that begins with the text.
+    pattern: of the whole text, in what Python and ECMAScript share.
+    refusal: goes on where the quoted text stops.
     """
 
     pattern: str

@@ -155,7 +155,9 @@ def _form_finding(detail: ErrorDetails, plain: Plain, places: Places, model: typ
     if kind in _WRONG_TYPES:
         fault = Fault(at=path, message=_WRONG_TYPES[kind], mend=_type_mend(path, model))
         return _found("value-wrong-type", fault, places)
-    message, mend = _BOUNDS.get(kind, ("this value does not fit here", "compare it with the specimen in How to add"))
+    # Behind a validator of ours pydantic no longer knows that it measures a text.
+    known_kind = f"string_{kind}" if isinstance(value, str) and kind in {"too_short", "too_long"} else kind
+    message, mend = _BOUNDS.get(known_kind, ("this value does not fit here", "compare it with the specimen record"))
     length = len(value) if isinstance(value, (str, list)) else 0
     known = {"value": value, "length": length, **context}
     fault = Fault(at=path, message=message.format(**known), mend=mend.format(**known))

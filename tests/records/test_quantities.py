@@ -56,6 +56,10 @@ TEMPERATURES = [
     ("0 to 25 °C", 0.0, 25.0),
     ("-78 °C to -20 °C", -78.0, -20.0),
     ("20–25 °C", 20.0, 25.0),
+    ("0 °C TO 25 °C", 0.0, 25.0),
+    ("0 °C – 25 °C", 0.0, 25.0),
+    ("273.15 K–25 °C", 0.0, 25.0),
+    ("-78–-20 °C", -78.0, -20.0),
 ]
 
 
@@ -63,6 +67,16 @@ TEMPERATURES = [
 def test_reads_temperatures(typed: str, low: float, high: float) -> None:
     temperature = parse_temperature(typed)
     assert (temperature.lowest_c, temperature.highest_c) == pytest.approx((low, high))
+
+
+@pytest.mark.parametrize("typed", ["60 °C", "0 °C to 25 °C", "20–25 °C", "273.15 K – 25 °C"])
+def test_temperatures_are_shown_as_typed(typed: str) -> None:
+    assert str(parse_temperature(typed)) == typed
+
+
+def test_kelvin_agrees_with_pint(registry: pint.UnitRegistry) -> None:
+    expected = registry.Quantity(Decimal("333.15"), "kelvin").to("degC").magnitude
+    assert parse_quantity("333.15 K", Dimension.TEMPERATURE).value == expected
 
 
 def test_a_limit_of_detection_is_no_number() -> None:
@@ -88,13 +102,25 @@ REFUSED = [
     (Dimension.TEMPERATURE, "rt", "quantity-vague", "20 °C to 25 °C"),
     (Dimension.TIME, "overnight", "quantity-vague", "16 h"),
     (Dimension.TEMPERATURE, "~60 °C", "quantity-vague", "60 °C"),
+    (Dimension.TEMPERATURE, "0 °C -25 °C", "quantity-arithmetic", '"0–25 °C" for a band, "0 °C to 25 °C" for a ramp'),
+    (Dimension.FRACTION, "80–85 %", "quantity-arithmetic", '"80 %" or "85 %"'),
+    (Dimension.TIME, "1 h - 2 h", "quantity-arithmetic", '"1 h" or "2 h"'),
+    (Dimension.RATE_CONSTANT_1, "9.2 × 10⁻⁶ 1/s", "quantity-unreadable", '"9.2e-6 1/s"'),
+    (Dimension.RATE_CONSTANT_2, "1.4*10^-3 M-1 s-1", "quantity-unreadable", '"1.4e-3 M-1 s-1"'),
+    (Dimension.MASS, "9" * 41 + " g", "quantity-out-of-range", "measured"),
+    (Dimension.MASS, "1e31 g", "quantity-out-of-range", "measured"),
+    (Dimension.MASS, "1e" + "9" * 5000, "quantity-out-of-range", "measured"),
     (Dimension.MASS, "some", "quantity-unreadable", "1.5 g"),
     (Dimension.MASS, ["2 g"], "quantity-unreadable", "1.5 g"),
     (Dimension.MASS, True, "quantity-unreadable", "1.5 g"),
 ]
 
 
-@pytest.mark.parametrize(("dimension", "typed", "rule", "mend"), REFUSED, ids=[str(row[1]) for row in REFUSED])
+@pytest.mark.parametrize(
+    ("dimension", "typed", "rule", "mend"),
+    REFUSED,
+    ids=[f"{row[1]:.40}" if isinstance(row[1], str) else str(row[1]) for row in REFUSED],
+)
 def test_refuses_with_a_mend(dimension: Dimension, typed: object, rule: str, mend: str) -> None:
     read = parse_temperature if dimension is Dimension.TEMPERATURE else lambda text: parse_quantity(text, dimension)
     with pytest.raises(QuantityError) as caught:
@@ -125,14 +151,14 @@ CONVERTED = [
 
 @pytest.fixture(scope="module")
 def registry() -> pint.UnitRegistry:
-    return pint.UnitRegistry()
+    return pint.UnitRegistry(non_int_type=Decimal)  # with its own file of definitions, where the builder has ours
 
 
 @pytest.mark.parametrize(("dimension", "unit"), CONVERTED, ids=[unit for _, unit in CONVERTED])
 def test_factors_agree_with_pint(dimension: Dimension, unit: str, registry: pint.UnitRegistry) -> None:
     canonical = units_of(dimension)[0]
-    expected = registry.Quantity(2.5, PINT_NAMES.get(unit, unit)).to(PINT_NAMES.get(canonical, canonical)).magnitude
-    assert parse_quantity(f"2.5 {unit}", dimension).magnitude == pytest.approx(expected, rel=1e-12)
+    typed = registry.Quantity(Decimal("2.5"), PINT_NAMES.get(unit, unit))
+    assert parse_quantity(f"2.5 {unit}", dimension).value == typed.to(PINT_NAMES.get(canonical, canonical)).magnitude
 
 
 @given(st.decimals(min_value="0.0001", max_value="9999", places=4), st.sampled_from(["g", "mg", "kg"]))

@@ -6,8 +6,8 @@ from pathlib import Path
 import pytest
 
 from builder.finding import Finding, Level
-from builder.records.reader import Reading, read_bytes, read_record
-from builder.records.specimen import specimen_text, with_example
+from builder.records.reader import Reading, read_bytes, read_record, read_settings
+from builder.records.specimen import outcome_example, specimen_text, with_example
 
 
 def _read(text: str | bytes) -> Reading:
@@ -73,6 +73,18 @@ TRAPS = [
         "1.5",
     ),
     ("nucleophile: {name: x, smiles: '[OH-]', equivalents: 1.5 equiv}", "value-wrong-type", "1.5 equiv", "1.5"),
+    ("nucleophile: {name: x, smiles: '[OH-]', equivalents: 1e-2 equiv}", "value-wrong-type", "1e-2 equiv", "1e-2"),
+    ("stages: [{temperature: 60 °C, time: 9 × 10² s}]", "quantity-unreadable", "9 × 10² s", "9e2 s"),
+    (f"rxn_file: {{path: a.rxn, sha256: {'1234' * 16}}}", "number-altered", "1234" * 16, f"'{'1234' * 16}'"),
+    (
+        f"rxn_file: {{path: a.rxn, sha256: 1e{'1234567' * 8}123456}}",
+        "number-altered",
+        f"1e{'1234567' * 8}123456",
+        f"'1e{'1234567' * 8}123456'",
+    ),
+    (f"rxn_file: {{path: a.rxn, sha256: {'AB' * 32}}}", "value-not-permitted", "AB" * 32, f"'{'ab' * 32}'"),
+    (outcome_example("{er: '97/3'}"), "ratio-unreadable", "'97/3'", "'97:3'"),
+    (outcome_example("{ratio: 'A:B=65:35'}"), "ratio-unreadable", "'A:B=65:35'", "'A:B = 65:35'"),
 ]
 
 
@@ -137,6 +149,12 @@ def _aliases() -> bytes:
     return "\n".join(rows).encode()
 
 
+def _substrate(more: str) -> bytes:
+    return with_example(
+        f"substrate: {{name: x, smiles: CCBr, amount: 1 mmol, leaving_group: bromide, {more}}}"
+    ).encode()
+
+
 HOSTILE: dict[str, tuple[Callable[[], bytes], str]] = {
     "nothing": (lambda: b"", "yaml-unreadable"),
     "a list": (lambda: b"- a\n- b", "value-wrong-type"),
@@ -157,6 +175,24 @@ HOSTILE: dict[str, tuple[Callable[[], bytes], str]] = {
     "an open quote": (lambda: with_example("title: 'never closed").encode(), "yaml-unreadable"),
     "a merge key": (lambda: with_example("<<: {title: merged}").encode(), "key-unknown"),
     "a list as key": (lambda: with_example("? [a, b]\n: c").encode(), "value-wrong-type"),
+    "a tag on a key": (lambda: with_example("# without notebook\n!!str notebook: BK2/112").encode(), "tag-refused"),
+    "a key like pydantic's tag": (lambda: with_example("<text>: x").encode(), "key-unknown"),
+    "a key like a word": (lambda: with_example("word: x").encode(), "key-unknown"),
+    "a Python name for a key": (lambda: _substrate("class: primary, classes: primary"), "key-unknown"),
+    "a count of 5,000 digits": (lambda: with_example("revision: " + "9" * 5000).encode(), "number-altered"),
+    "a count beyond decimals": (lambda: with_example("revision: 1e9999999999999999999999").encode(), "number-altered"),
+    "a mass beyond floats": (lambda: _substrate("class: secondary, mass: 1e400 g"), "quantity-out-of-range"),
+    "a mass of 30 MB": (lambda: _substrate("class: secondary, mass: 1e30000000 g"), "quantity-out-of-range"),
+    "a mass of 11 t": (lambda: _substrate("class: secondary, mass: 11000 kg"), "quantity-out-of-range"),
+    "a ratio of 5,000 digits": (
+        lambda: with_example(outcome_example(f"{{er: '{'9' * 5000}:1'}}")).encode(),
+        "ratio-unreadable",
+    ),
+    "a line end that editors do not count": (lambda: with_example("title: a\u2028b").encode(), "file-not-text"),
+    "the next-line character": (lambda: with_example("title: a\u0085b").encode(), "file-not-text"),
+    "an escaped line end": (lambda: with_example('title: "a\\u2029b"').encode(), "file-not-text"),
+    "true for a number": (lambda: with_example("format: true").encode(), "value-wrong-type"),
+    "a fraction for a whole number": (lambda: with_example("format: 1.0").encode(), "value-wrong-type"),
     "a path as identifier": (lambda: with_example("entry: ../../etc/passwd").encode(), "value-not-permitted"),
 }
 
@@ -174,6 +210,7 @@ def test_a_large_file_is_not_even_read(tmp_path: Path) -> None:
     with path.open("wb") as file:
         file.truncate(3_000_000_000)  # sparse: reading it would be noticed
     assert [finding.rule for finding in read_record(path, path.name).findings] == ["file-too-large"]
+    assert [finding.rule for finding in read_settings(path, path.name)[1]] == ["file-too-large"]
 
 
 TOLERATED = {
@@ -229,3 +266,98 @@ def test_unknown_keys_propose_the_nearest(example: str, key: str, near: str | No
 def test_required_keys(left_out: str) -> None:
     finding = _one_error(_read(with_example(f"# without {left_out}")))
     assert (finding.rule, finding.message) == ("key-missing", f"{left_out} is missing")
+
+
+COURSE = "time_course: {follows: %s, time_unit: h, points: %s}"
+IN_WORDS = [
+    # example, what the finding points at, message, mend
+    ("work_up: []", "[]", "the list has 0 items", "list 1 or more, or leave the key out"),
+    ("title: ''", "''", "the text is empty", "write it, or leave the key out"),
+    (f"title: {'x' * 170}", "x" * 170, "the text has 170 characters", "shorten it to 160"),
+    ("revision: 0", "0", "0 is too small", "write 1 or more"),
+    ("revision: 10001", "10001", "10001 is too large", "write 10,000 at most"),
+    ("nucleophile: {name: x, equivalents: 0}", "0", "0 is too small", "write a number above 0"),
+    ("nucleophile: {name: x, equivalents: 1001}", "1001", "1001 is too large", "write 1,000 at most"),
+    (
+        "stages: [{temperature: 60 °C, time: 0 h}]",
+        "0 h",
+        '"0 h" is impossible',
+        "write more than 0 s",
+    ),
+    (
+        outcome_example("{yield: 81 %, of: [A, A], kind: assay}"),
+        "A]",
+        "A stands twice",
+        "name each once",
+    ),
+    (
+        outcome_example("{ratio: 'A:A = 50:50', by: GC}"),
+        "'A:A = 50:50'",
+        '"A:A = 50:50" names A twice',
+        "name each label once",
+    ),
+    (
+        outcome_example(more=COURSE % ("conversion", "[[0, 0], [4, 104]]")),
+        "104",
+        "104 % is impossible",
+        "write a percentage from 0 to 100",
+    ),
+    (
+        outcome_example(more=COURSE % ("ee", "[[0, -99], [4, -101]]")),
+        "-101",
+        "-101 % is impossible",
+        "write a percentage from -100 to 100",
+    ),
+    (
+        outcome_example(more=COURSE % ("yield", "[[0, 0], [4, 10], [4, 12]]")),
+        "4, 12",
+        "4 h does not come after 4 h",
+        "start at 0 or later, and list the points in the order of time",
+    ),
+    (
+        outcome_example(more=COURSE % ("yield", "[[-1, 0], [4, 10]]")),
+        "-1",
+        "-1 h does not come after the start",
+        "start at 0 or later, and list the points in the order of time",
+    ),
+    (
+        outcome_example(more=COURSE % ("yield", "[[0, 0], [4]]")),
+        "[4]",
+        "a point is a time and a percentage",
+        "write it like [4, 12.4]",
+    ),
+    ("evidence: [1H NMR, {what: x}]", "{what", "file is missing", "add file: …"),
+    ("evidence: [1H NMR, 7]", "7", "7 is read as a number", "write '7'"),
+]
+
+
+@pytest.mark.parametrize(("example", "at", "message", "mend"), IN_WORDS, ids=[row[2] for row in IN_WORDS])
+def test_faults_are_told_in_the_words_of_the_bench(example: str, at: str, message: str, mend: str) -> None:
+    text = with_example(example)
+    finding = next(finding for finding in _read(text).findings if finding.level is Level.ERROR)
+    assert (finding.message, finding.mend) == (message, mend)
+    line = text.splitlines()[finding.place.line - 1]
+    assert line[finding.place.column - 1 :].startswith(at)
+
+
+def test_an_entry_names_its_references_with_their_paths() -> None:
+    example = (
+        "status: superseded\nsuperseded: {by: NS2H8WDRW, date: 2026-03-14, because: better data}\n"
+        "related: [NS7K3QFMC, NS2H8WDRW]\npreceded_by: NS7K3QFMC"
+    )
+    record = _read(with_example(example)).record
+    assert record is not None
+    assert record.references == (
+        (("related", 0), "NS7K3QFMC"),
+        (("related", 1), "NS2H8WDRW"),
+        (("preceded_by", 0), "NS7K3QFMC"),
+        (("superseded", "by"), "NS2H8WDRW"),
+    )
+
+
+def test_the_excess_of_one_part_over_the_other() -> None:
+    record = _read(with_example(outcome_example("{er: '97.5:2.5'}"))).record
+    assert record is not None
+    er = record.outcome.measured[0].er
+    assert er is not None
+    assert er.excess_percent == 95.0  # IUPAC Gold Book E02070: ee = |F(+) - F(-)|
