@@ -16,6 +16,7 @@ from builder.checks.excess import EXCESS_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
+from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
 from builder.finding import Level
 from builder.mechanism.rules import GATES
@@ -36,6 +37,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *EXCESS_CHECKS,
             *FORM_CHECKS,
             *KINETIC_CHECKS,
+            *STAGE_CHECKS,
             *STRUCTURE_CHECKS,
         ),
         key=lambda rule: rule.id,

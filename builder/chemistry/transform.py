@@ -30,6 +30,7 @@ __all__ = [
     "carbocations",
     "course_between",
     "cyclise",
+    "derivatise_hydroxyl",
     "diazotise",
     "eliminate",
     "fragment",
@@ -473,29 +474,52 @@ def activate_hydroxyl(substrate: Structure, site: ReactiveSite, group: str) -> E
 
     group: one of `activation_groups()`. Raises ValueError for any other, or unless the site bears a hydroxyl.
     """
-    oxygen = _leaving_atom(site)
     if site.leaving_group != "hydroxyl":
         raise ValueError(f"a {site.leaving_group} site bears no hydroxyl group")
-    effect = StereoEffect.NOT_APPLICABLE
-    if site.alpha_carbon in Workbench(substrate).centres:
-        effect = StereoEffect.RETENTION
     if group == "water":
+        oxygen = _leaving_atom(site)
         bench = Workbench(substrate)
         bench.accept_proton(oxygen)
         bench.add_charge(oxygen, 1)
-        return _edit(bench, site.alpha_carbon, effect)
+        return _edit(bench, site.alpha_carbon, _kept(substrate, site))
     row = load_activations().get(group)
     if row is None:
         raise ValueError(f"{group} is made from no hydroxyl group here; known: {', '.join(activation_groups())}")
     reagent = parse_smiles(row.reagent)
     match = reagent.mol.GetSubstructMatch(row.query.mol)
+    return _put_on_oxygen(substrate, site, reagent, match[row.query.places[1]], match[row.query.places[2]])
+
+
+def derivatise_hydroxyl(substrate: Structure, site: ReactiveSite, reagent: Structure) -> tuple[Edit, ...]:
+    """Return what a reagent makes of an alcohol: its sulfonyl, phosphorus, silyl or acyl piece on the oxygen.
+
+    The bonds that break are those of the table of activations, whatever else the reagent bears; by SMILES. Empty if
+    it has none. Raises ValueError unless the site bears a hydroxyl.
+    """
+    if site.leaving_group != "hydroxyl":
+        raise ValueError(f"a {site.leaving_group} site bears no hydroxyl group")
+    breaking = {
+        (match[row.query.places[1]], match[row.query.places[2]])
+        for row in load_activations().values()
+        for match in reagent.mol.GetSubstructMatches(row.query.mol)
+    }
+    return _distinct(_put_on_oxygen(substrate, site, reagent, kept, lost) for kept, lost in sorted(breaking))
+
+
+def _put_on_oxygen(substrate: Structure, site: ReactiveSite, reagent: Structure, kept: AtomId, lost: AtomId) -> Edit:
+    oxygen = _leaving_atom(site)
     bench = Workbench(substrate, reagent)
-    kept, lost = (bench.place(match[row.query.places[n]], 1) for n in (1, 2))
-    bench.cut(kept, lost)
-    bench.add_charge(lost, -1)
+    piece, departing = bench.place(kept, 1), bench.place(lost, 1)
+    bench.cut(piece, departing)
+    bench.add_charge(departing, -1)
     bench.release_proton(oxygen)
-    bench.join(oxygen, kept)
-    return _edit(bench, site.alpha_carbon, effect)
+    bench.join(oxygen, piece)
+    return _edit(bench, site.alpha_carbon, _kept(substrate, site))
+
+
+def _kept(substrate: Structure, site: ReactiveSite) -> StereoEffect:
+    has_centre = site.alpha_carbon in Workbench(substrate).centres
+    return StereoEffect.RETENTION if has_centre else StereoEffect.NOT_APPLICABLE
 
 
 def diazotise(substrate: Structure, site: ReactiveSite) -> Edit:
