@@ -108,6 +108,7 @@ def build(config: Path, site: Path) -> None:
       handbook build --site /srv/handbook
     """
     _today()  # a wrong SOURCE_DATE_EPOCH is misuse, and said here rather than by the child
+    click.echo(f"building {site}/ ...", err=True)
     try:
         report = build_site(config, site)
     except NotOurSiteError as error:
@@ -115,7 +116,8 @@ def build(config: Path, site: Path) -> None:
     except SiteBuildError as error:
         click.echo(str(error), err=True)
         sys.exit(FINDINGS if error.report is not None and error.report.failing else MISUSE)
-    click.echo(f"{report.entries} entries published in {site}/")
+    entries = "1 entry" if report.entries == 1 else f"{report.entries} entries"
+    click.echo(f"{entries} published in {site}/")
 
 
 @handbook.command()

@@ -105,7 +105,7 @@ def test_a_typo_is_shown_with_its_line(run: Run, book: Path) -> None:
         .index("stages: [{temperature: 60, time: 16 h}]")
     )
     assert ran.out == (
-        f"entries/azides/NS4T9XQ2N.yml:{line + 1}:24: error quantity-without-unit: temperature has no unit\n"
+        f"entries/azides/NS4T9XQ2N.yml:{line + 1}:24: error quantity-without-unit: the temperature has no unit\n"
         f"     {line + 1} | stages: [{{temperature: 60, time: 16 h}}]\n"
         "        |                        ^^\n"
         "  why:  Every quantity carries its unit.\n"
@@ -204,10 +204,16 @@ def test_a_new_record_is_a_skeleton_whose_gaps_are_found(run: Run, book: Path) -
     assert all("TO FILL IN" in line for line in lines)
 
 
+def test_a_new_record_in_a_folder_of_the_book_finds_its_schema(run: Run, book: Path) -> None:
+    run("schema", "--book", book)
+    run("new", "CCBr", "--book", book / "azides")
+    (path,) = set((book / "azides").glob("NS*.yml")) - {book / "azides" / "NS4T9XQ2N.yml"}
+    schema = path.read_text("utf-8").splitlines()[0].partition("$schema=")[2]
+    assert (path.parent / schema).resolve() == (book / "schema" / "record-1.json").resolve()
+
+
 @pytest.mark.parametrize("arguments", [("C1CC",), ("CCBr", "--by", "a: b, c]")], ids=["SMILES", "person"])
-def test_new_refuses_what_it_cannot_read_and_writes_nothing(
-    run: Run, book: Path, arguments: tuple[str, ...]
-) -> None:
+def test_new_refuses_what_it_cannot_read_and_writes_nothing(run: Run, book: Path, arguments: tuple[str, ...]) -> None:
     before = sorted(book.rglob("*"))
     ran = run("new", *arguments, "--book", book)
     assert ran.code == 2
@@ -238,7 +244,7 @@ def _config(tmp_path: Path, plugins: str = "[handbook]") -> Path:
 
 def test_a_build_publishes_the_book(run: Run, book: Path, tmp_path: Path, built: Path) -> None:
     ran = run("build", "--config", _config(tmp_path), "--site", built)
-    assert (ran.code, ran.out) == (0, f"1 entries published in {built}/\n")
+    assert (ran.code, ran.out) == (0, f"1 entry published in {built}/\n")
     assert "2-azidobutane" in (built / "e" / "NS4T9XQ2N" / "index.html").read_text("utf-8")
     assert sorted(each.name for each in tmp_path.iterdir()) == ["entries", "mkdocs.yml", "site"]
 
@@ -268,6 +274,12 @@ def test_a_folder_that_is_no_site_is_never_replaced(run: Run, book: Path, tmp_pa
     assert ran.code == 2
     assert "no handbook site" in ran.err
     assert (precious / "report.txt").read_text("utf-8") == "years of work"
+
+
+def test_a_site_left_aside_by_a_killed_build_comes_back(run: Run, book: Path, tmp_path: Path, built: Path) -> None:
+    built.rename(tmp_path / ".site-old")
+    assert run("build", "--config", _config(tmp_path, "[no-such-plugin]"), "--site", built).code == 2
+    assert (built / "index.html").read_text("utf-8") == "the last good one"
 
 
 def test_a_link_to_the_site_is_followed(run: Run, book: Path, tmp_path: Path, built: Path) -> None:

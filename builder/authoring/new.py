@@ -1,6 +1,7 @@
 """`handbook new`: mint an identifier and lay down a record to fill in."""
 
 import datetime as dt
+import os
 from enum import StrEnum
 from pathlib import Path
 
@@ -96,17 +97,25 @@ def new_record(substrate: str, nucleophile: str | None, *, entry: str, date: dt.
     )
 
 
-def write_new_record(book: Path, substrate: str, nucleophile: str | None, *, date: dt.date, person: str) -> Path:
-    """Write a new record below `book` under a fresh identifier; return its path.
+def write_new_record(folder: Path, substrate: str, nucleophile: str | None, *, date: dt.date, person: str) -> Path:
+    """Write a new record into `folder`, a book or a folder of one, under a fresh identifier; return its path.
 
     Raises StructureError as `new_record` does; nothing is written then.
     """
+    book = _book_around(folder)
+    schema = Path(os.path.relpath(book / "schema" / "record-1.json", folder)).as_posix()
     entry = _free_identifier(book)
-    text = new_record(substrate, nucleophile, entry=entry, date=date, person=person, schema="schema/record-1.json")
-    path = book / f"{entry}.yml"
+    text = new_record(substrate, nucleophile, entry=entry, date=date, person=person, schema=schema)
+    path = folder / f"{entry}.yml"
     with path.open("x", encoding="utf-8", newline="\n") as file:
         file.write(text)
     return path
+
+
+def _book_around(folder: Path) -> Path:
+    """Return the nearest folder upwards that holds the settings of a book; the folder itself if none does."""
+    upwards = (folder.resolve(), *folder.resolve().parents)
+    return next((each for each in upwards if (each / SETTINGS_FILE).is_file()), folder.resolve())
 
 
 def _free_identifier(book: Path) -> str:

@@ -3,6 +3,7 @@
 import json
 from collections.abc import Callable, Iterable, Sequence
 from functools import cache
+from itertools import groupby
 from pathlib import Path
 from typing import Any
 
@@ -13,6 +14,9 @@ from builder.sources import source_text
 
 __all__ = ["render_json", "render_rule", "render_text", "summary"]
 
+MOST_SHOWN = 50
+"""Findings of one file that a terminal is shown; beyond that a file needs mending as a whole."""
+
 
 def render_text(findings: Iterable[Finding], folder: Path) -> str:
     """Return findings for a terminal, one block each, quoting the lines they speak of.
@@ -20,7 +24,13 @@ def render_text(findings: Iterable[Finding], folder: Path) -> str:
     folder: the book's, below which the files of the findings lie.
     """
     line_of = _quoting(folder)
-    return "\n".join(_block(finding, line_of(finding.place.file, finding.place.line)) for finding in findings)
+    blocks: list[str] = []
+    for file, found in groupby(findings, key=lambda finding: finding.place.file):
+        shown = list(found)
+        blocks += [_block(each, line_of(file, each.place.line)) for each in shown[:MOST_SHOWN]]
+        if len(shown) > MOST_SHOWN:
+            blocks.append(f"{file}: {len(shown) - MOST_SHOWN} more; mend these first, or see --json\n")
+    return "\n".join(blocks)
 
 
 def _quoting(folder: Path) -> Callable[[str, int], str | None]:

@@ -59,7 +59,7 @@ def stage_gives_is_inverted(case: Case) -> Iterator[Fault]:
     title="A stage gives what does not follow",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=("structure-unreadable", "solvent-unknown"),
+    needs=("structure-unreadable",),
     fires_on=(_TWO_STAGES.format(gives="CCC[C@H](C)OS(C)(=O)=O"),),
     silent_on=(_TWO_STAGES.format(gives=MESYLATE),),
 )

@@ -55,8 +55,9 @@ def build_site(config: Path, site: Path) -> BuildReport:
     if site.exists() and not _is_ours(site):
         raise NotOurSiteError(f"{site} holds files that are no handbook site; name another folder, or empty it")
     fresh, former = site.with_name(f".{site.name}-new"), site.with_name(f".{site.name}-old")
-    for leftover in (fresh, former):
-        shutil.rmtree(leftover, ignore_errors=True)
+    if former.exists() and not site.exists():  # a build was killed between its two renames
+        former.rename(site)
+    shutil.rmtree(fresh, ignore_errors=True)
     with tempfile.TemporaryDirectory() as scratch:
         report_file = Path(scratch) / "report.json"
         arguments = ("build", "--strict", "--clean", "--quiet", "-f", str(config), "-d", str(fresh))
@@ -101,6 +102,7 @@ def _is_ours(site: Path) -> bool:
 
 
 def _swap(fresh: Path, site: Path, former: Path) -> None:
+    shutil.rmtree(former, ignore_errors=True)
     if site.exists():
         site.rename(former)
     try:
