@@ -78,7 +78,7 @@ T = TypeVar("T")
 Q = TypeVar("Q", Quantity, Percent, Temperature)
 
 _NUMBER_WITH_EQUIV = re.compile(
-    r"([+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)\s*(?:equiv\.?|eq\.?|equivalents?)"
+    r"([+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)\s*(?:equiv\.?|eq\.?|equivalents?)?"
 )
 _DAY = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}")
 _LABEL = r"[A-Za-z0-9]"
@@ -112,7 +112,8 @@ def _quantity(
     low, high, unit = _bounds(quantity)
     if least is not None and (low < least or (open_below and low == least)):
         bound = "more than" if open_below else "at least"
-        raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"write {bound} {least:g} {unit}")
+        mend = f"write {bound} {least:g} {unit}" if least else "write a value above zero"
+        raise faulty("quantity-out-of-range", f'"{value}" is impossible', mend)
     if most is not None and high > most:
         raise faulty("quantity-out-of-range", f'"{value}" is impossible', f"write at most {most:,.10g} {unit}")
     return quantity
@@ -328,7 +329,8 @@ def _date(value: object) -> dt.date:
             return dt.date.fromisoformat(value)
         except ValueError:
             raise faulty("value-not-permitted", f"{value} is no day of the calendar", "correct the date") from None
-    raise faulty("value-not-permitted", f'"{value}" is not a date', "write it as 2026-03-14", _iso_date(str(value)))
+    fix = _iso_date(str(value))
+    raise faulty("value-not-permitted", f'"{value}" is not a date', f"write {fix or 'it like 2026-03-14'}", fix)
 
 
 def _iso_date(text: str) -> str | None:
@@ -372,7 +374,10 @@ CasNumber = Annotated[str, BeforeValidator(_cas), WithJsonSchema({"type": "strin
 def _whole(value: object) -> int:
     if isinstance(value, int) and not isinstance(value, bool):
         return value
-    raise faulty("value-wrong-type", f'"{value}" is not a whole number', "write one, such as 1")
+    digits = re.fullmatch(r"([0-9]{1,9})(?:\.0*)?", str(value))
+    fix = digits[1] if digits else None
+    typed = str(value).lower() if isinstance(value, bool) else value
+    raise faulty("value-wrong-type", f'"{typed}" is not a whole number', f"write {fix or 'one, such as 2'}", fix)
 
 
 Count = Annotated[int, Field(ge=1, le=10_000), BeforeValidator(_whole)]
@@ -398,7 +403,7 @@ def _number(value: object) -> Decimal:
         mend, fix = "write the bare number", None
         if isinstance(value, str) and (with_word := _NUMBER_WITH_EQUIV.fullmatch(value)):
             fix = with_word[1]
-            mend = f"write {fix}"
+            mend = f"write {fix}, without quotes or unit"
         elif isinstance(value, str) and re.fullmatch(r"[0-9]+,[0-9]+", value):
             fix = value.replace(",", ".")
             raise faulty("quantity-decimal-comma", f'"{value}" has a decimal comma', f"write {fix}", fix)
@@ -483,7 +488,7 @@ def _ratio(value: object, pattern: str, refusal: str, example: str) -> Ratio:
 
 def _labelled_ratio(value: object) -> Ratio:
     ratio = _ratio(
-        value, f"{_RATIO_LABELS} = {_RATIO_NUMBERS}", "a ratio of labels", "'A:B = 65:35' or 'A+B:C = 82:18'"
+        value, f"{_RATIO_LABELS} = {_RATIO_NUMBERS}", "a ratio of labels", "it like 'A:B = 65:35' or 'A+B:C = 82:18'"
     )
     if len(ratio.parts) != len(ratio.numbers):
         count = f"{len(ratio.parts)} labels and {len(ratio.numbers)} numbers"
@@ -495,7 +500,7 @@ def _labelled_ratio(value: object) -> Ratio:
 
 
 def _number_ratio(value: object) -> Ratio:
-    return _ratio(value, _RATIO_OF_TWO, "a ratio of two numbers", "'97:3'")
+    return _ratio(value, _RATIO_OF_TWO, "a ratio of two numbers", "it like '97:3'")
 
 
 LabelledRatio = Annotated[

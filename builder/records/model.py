@@ -331,8 +331,9 @@ class Measurement(Part):
             held = " and ".join(given) or "none"
             raise faulty("measurement-not-one", f"one measurement a line; this one has {held}", "split the line")
         if self.yield_ is not None and (self.kind is None or self.of is None):
-            lacking = "kind: isolated, assay or area" if self.kind is None else "of: the product's label"
-            raise faulty("key-missing", "a yield needs its kind and its product", f"add {lacking}")
+            lacking = ["kind: isolated, assay or area"] if self.kind is None else []
+            lacking += ["of: the product's label"] if self.of is None else []
+            raise faulty("key-missing", "a yield needs its kind and its product", f"add {' and '.join(lacking)}")
         return self
 
     @property
@@ -508,11 +509,14 @@ class Record(Part):
                 "neither nucleophile nor base is given",
                 "add one, or a word: solvent, internal, none",
             )
-        if bool(self.neat) == bool(self.solvent):
-            raise faulty("key-missing", "a record has a solvent, or neat: true, and never both", "keep one of them")
+        if not self.neat and not self.solvent:
+            raise faulty("key-missing", "no solvent is given", "add solvent: with name and volume, or neat: true")
+        if self.neat and self.solvent:
+            raise faulty("key-missing", "a reaction in a solvent is not neat", "keep solvent, or neat: true")
         for state, given in ((Status.SUPERSEDED, self.superseded), (Status.WITHDRAWN, self.withdrawn)):
             if (self.status is state) != (given is not None):
-                mend = f"add {state}:" if given is None else f"write status: {state}, or drop {state}:"
+                add = f"add {state}: with date, because and by"
+                mend = add if given is None else f"write status: {state}, or drop {state}:"
                 raise faulty("key-missing", f"status and the key {state} go together", mend)
         return self
 

@@ -2,7 +2,7 @@
 
 import re
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from difflib import get_close_matches
 from functools import cache
 from pathlib import Path
@@ -25,6 +25,8 @@ MAX_BYTES = 256 * 1024
 """Largest file that is read: a record, or an RXN file beside it."""
 # Control characters, and the line ends that libyaml counts and editors do not: U+0085, U+2028, U+2029.
 _FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029\ufffe\uffff]")
+
+_LONGEST_MESSAGE = 200
 
 Model = TypeVar("Model", bound=BaseModel)
 
@@ -78,7 +80,7 @@ def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | Non
                 if not _is_echo(detail)
             ]
     elif plainly.value is not None:
-        fault = Fault(at=(), message="the file is not a mapping of keys", mend="write key: value lines")
+        fault = Fault(at=(), message="the file holds no keys", mend="write lines like title: …")
         findings.append(reading_rule("value-wrong-type").finding(fault, plainly.places.of(())))
     kept = tuple(sorted(_one_per_place(findings), key=lambda finding: finding.sort_key))
     return (None if any(f.level is Level.ERROR for f in kept) else made), kept, plainly.places
@@ -174,8 +176,8 @@ _WRONG_TYPES = {
 }
 
 _BOUNDS = {
-    "too_short": ("the list has {length} items", "list {min_length} or more, or leave the key out"),
-    "too_long": ("the list has {length} items", "keep at most {max_length}"),
+    "too_short": ("too few items: {length}", "list {min_length} or more, or leave the key out"),
+    "too_long": ("too many items: {length:,}", "keep at most {max_length:,}"),
     "string_too_short": ("the text is empty", "write it, or leave the key out"),
     "string_too_long": ("the text has {length:,} characters", "shorten it to {max_length:,}"),
     "greater_than": ("{value} is too small", "write a number above {gt}"),
@@ -191,6 +193,8 @@ def _is_echo(detail: ErrorDetails) -> bool:
 
 
 def _found(rule_id: str, fault: Fault, places: Places) -> Finding:
+    if len(fault.message) > _LONGEST_MESSAGE:
+        fault = replace(fault, message=fault.message[: _LONGEST_MESSAGE - 1] + "…")
     return reading_rule(rule_id).finding(fault, places.of(fault.at, on_key=fault.on_key))
 
 
@@ -202,16 +206,10 @@ def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
     key = str(path[-1])
     known = sorted({name for owner in _models_at(model, path[:-1]) for name in _keys_of(owner)})
     near = get_close_matches(key, known, n=1, cutoff=0.6)
-    mend = f"known keys here: {', '.join(known)}"
     if near:
-        return Fault(
-            at=path,
-            on_key=True,
-            message=f'unknown key "{key}"; did you mean "{near[0]}"?',
-            mend=mend,
-            fix=near[0],
-        )
-    return Fault(at=path, on_key=True, message=f'unknown key "{key}"', mend=mend)
+        message, mend = f'unknown key "{key}"; did you mean "{near[0]}"?', f"write {near[0]}"
+        return Fault(at=path, on_key=True, message=message, mend=mend, fix=near[0])
+    return Fault(at=path, on_key=True, message=f'unknown key "{key}"', mend=f"known keys here: {', '.join(known)}")
 
 
 def _not_permitted(path: ValuePath, value: Plain, context: Mapping[str, Any]) -> Fault:
@@ -223,7 +221,7 @@ def _not_permitted(path: ValuePath, value: Plain, context: Mapping[str, Any]) ->
     return Fault(
         at=path,
         message=f'"{value}" is not permitted here{hint}',
-        mend=f"use one of: {', '.join(words)}",
+        mend=f"use one of: {', '.join(words)}" if len(words) > 1 else f"write {words[0]}",
         fix=fix,
     )
 

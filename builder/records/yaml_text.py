@@ -206,7 +206,7 @@ class _Constructor:
             return _BOOLEANS[text]
         if _FLOAT.fullmatch(text) and is_beyond_measure(text):
             message = f"{_named(path)} is read as a number beyond any measurement"
-            self.report("number-altered", node, message, f"write {quoted(text)} if it is none", quoted(text))
+            self.report("number-altered", node, message, "put it in quotes if it is none", quoted(text))
             return text
         if _ALTERED_NUMBER.fullmatch(text):
             self.report(
@@ -391,8 +391,11 @@ class _MendedText:
                 return finding, True
         if error.context_mark is not None and "quoted scalar" in (error.context or ""):
             return self._finding("yaml-unreadable", error.context_mark, "this quote is never closed", "close it"), False
-        said = "more than one document" if "single document" in (error.context or "") else (error.problem or "not YAML")
-        return self._finding("yaml-unreadable", mark, said, "indent with spaces, quote texts with : or #"), False
+        if "single document" in (error.context or ""):
+            mend = "keep one record a file, without lines of ---"
+            return self._finding("yaml-unreadable", mark, "more than one document", mend), False
+        said, mend = error.problem or "not YAML", "indent with spaces, quote texts with : or #"
+        return self._finding("yaml-unreadable", mark, said, mend), False
 
     def _mend_line(self, number: int) -> Finding | None:
         lines = self.text.split("\n")

@@ -271,7 +271,7 @@ def test_required_keys(left_out: str) -> None:
 COURSE = "time_course: {follows: %s, time_unit: h, points: %s}"
 IN_WORDS = [
     # example, what the finding points at, message, mend
-    ("work_up: []", "[]", "the list has 0 items", "list 1 or more, or leave the key out"),
+    ("work_up: []", "[]", "too few items: 0", "list 1 or more, or leave the key out"),
     ("title: ''", "''", "the text is empty", "write it, or leave the key out"),
     (f"title: {'x' * 170}", "x" * 170, "the text has 170 characters", "shorten it to 160"),
     ("revision: 0", "0", "0 is too small", "write 1 or more"),
@@ -282,7 +282,7 @@ IN_WORDS = [
         "stages: [{temperature: 60 °C, time: 0 h}]",
         "0 h",
         '"0 h" is impossible',
-        "write more than 0 s",
+        "write a value above zero",
     ),
     (
         outcome_example("{yield: 81 %, of: [A, A], kind: assay}"),
@@ -327,11 +327,22 @@ IN_WORDS = [
         "write it like [4, 12.4]",
     ),
     ("evidence: [1H NMR, {what: x}]", "{what", "file is missing", "add file: …"),
+    (
+        "nucleophile: {name: x, equivalents: '1.5'}",
+        "'1.5'",
+        '"1.5" is not a number',
+        "write 1.5, without quotes or unit",
+    ),
+    ("format: 2", "2", '"2" is not permitted here', "write 1"),
+    ("revision: 1.0", "1.0", '"1.0" is not a whole number', "write 1"),
+    ("revision: true", "true", '"true" is not a whole number', "write one, such as 2"),
+    ("neat: true", "format", "a reaction in a solvent is not neat", "keep solvent, or neat: true"),
+    (f"status: {'x' * 999}", "xxx", '"' + "x" * 198 + "…", "use one of: draft, current, superseded, withdrawn"),
     ("evidence: [1H NMR, 7]", "7", "7 is read as a number", "write '7'"),
 ]
 
 
-@pytest.mark.parametrize(("example", "at", "message", "mend"), IN_WORDS, ids=[row[2] for row in IN_WORDS])
+@pytest.mark.parametrize(("example", "at", "message", "mend"), IN_WORDS, ids=[row[2][:50] for row in IN_WORDS])
 def test_faults_are_told_in_the_words_of_the_bench(example: str, at: str, message: str, mend: str) -> None:
     text = with_example(example)
     finding = next(finding for finding in _read(text).findings if finding.level is Level.ERROR)
