@@ -456,7 +456,7 @@ def _no_unit(number: str, dimension: Dimension) -> QuantityError:
     fix = offers[0] if dimension is Dimension.FRACTION else None
     return QuantityError(
         "quantity-without-unit",
-        f"{dimension} has no unit",
+        f"the {dimension} has no unit",
         f"write {' or '.join(offers)}",
         fix=fix.strip('"') if fix else None,
     )

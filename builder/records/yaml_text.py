@@ -13,7 +13,6 @@ from decimal import Decimal
 
 import yaml
 from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave out the re-export
-from yaml.resolver import BaseResolver
 
 from builder.finding import Finding, Place
 from builder.records.quantities import is_beyond_measure
@@ -120,12 +119,18 @@ def _construct(node: yaml.Node | None, mended: "_MendedText", findings: list[Fin
     return Plainly(value, places, (*findings, *constructor.findings))
 
 
-class _Loader(CParser, BaseResolver):
+class _Loader(CParser):
     """libyaml's composer without implicit types: every plain scalar stays text for our own constructor."""
 
-    def __init__(self, text: str) -> None:
-        CParser.__init__(self, text)
-        BaseResolver.__init__(self)
+    def resolve(self, kind: type[yaml.Node], value: str | None, implicit: object) -> str:  # noqa: ARG002
+        """Give every node without a tag the same one; nobody reads it."""
+        return ""
+
+    def descend_resolver(self, parent: yaml.Node | None, index: object) -> None:
+        """Do nothing: no type depends on where a node stands."""
+
+    def ascend_resolver(self) -> None:
+        """Do nothing, as above."""
 
 
 class _TooMuchError(Exception):
