@@ -334,8 +334,11 @@ def _date(value: object) -> dt.date:
 
 
 def _iso_date(text: str) -> str | None:
-    match = re.fullmatch(r"(\d{1,2})\.(\d{1,2})\.(\d{4})", text)
-    return f"{match[3]}-{int(match[2]):02}-{int(match[1]):02}" if match else None
+    try:
+        day, month, year = (int(number) for number in text.split("."))
+        return dt.date(year, month, day).isoformat()
+    except (ValueError, OverflowError):
+        return None
 
 
 Date = Annotated[
@@ -492,10 +495,10 @@ def _labelled_ratio(value: object) -> Ratio:
     )
     if len(ratio.parts) != len(ratio.numbers):
         count = f"{len(ratio.parts)} labels and {len(ratio.numbers)} numbers"
-        raise faulty("ratio-unreadable", f'"{value:.80}" has {count}', "give each label one number")
+        raise faulty("ratio-unreadable", f'"{ratio}" has {count}', "give each label one number")
     labels = [label for part in ratio.parts for label in part]
     if twice := next((label for place, label in enumerate(labels) if label in labels[:place]), None):
-        raise faulty("ratio-unreadable", f'"{value:.80}" names {twice} twice', "name each label once")
+        raise faulty("ratio-unreadable", f'"{ratio}" names {twice} twice', "name each label once")
     return ratio
 
 

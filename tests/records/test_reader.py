@@ -338,6 +338,8 @@ IN_WORDS = [
     ("revision: true", "true", '"true" is not a whole number', "write one, such as 2"),
     ("neat: true", "format", "a reaction in a solvent is not neat", "keep solvent, or neat: true"),
     (f"status: {'x' * 999}", "xxx", '"' + "x" * 198 + "…", "use one of: draft, current, superseded, withdrawn"),
+    ("performed: {date: 31.02.2026, by: x}", "31.02", '"31.02.2026" is not a date', "write it like 2026-03-14"),
+    ("performed: {date: 5.3.2026, by: x}", "5.3", '"5.3.2026" is not a date', "write 2026-03-05"),
     ("evidence: [1H NMR, 7]", "7", "7 is read as a number", "write '7'"),
 ]
 
