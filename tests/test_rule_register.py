@@ -13,7 +13,8 @@ from builder.rule import Rule
 from builder.sources import load_sources
 from tests.specimens import play
 
-WITHOUT_EXAMPLE = {"file-too-large", "file-misnamed", "file-unreachable"}  # a matter of the file, tested with the reader and the book
+# A matter of the file itself: tested with the reader and the command.
+WITHOUT_EXAMPLE = {"file-too-large", "file-misnamed", "file-unreachable"}
 
 AnyRule = Rule[object, object]
 FIRING = [(rule, example) for rule in record_rules() for example in rule.fires_on]
@@ -70,9 +71,10 @@ def test_is_silent_on_its_near_misses(rule: AnyRule, example: str) -> None:
 
 
 def _shut(gate: Gate, smiles: str) -> bool:
-    sites = [site for site in perceive_sites(parse_smiles(smiles)) if not site.is_addition]
+    structure = parse_smiles(smiles)
+    sites = [site for site in perceive_sites(structure) if not site.is_addition]
     assert sites, f"{smiles} has no site to judge"
-    return all(gate.fires(Situation(site)) for site in sites)
+    return all(gate.fires(Situation(structure, site)) for site in sites)
 
 
 @pytest.mark.parametrize("gate", GATES, ids=lambda gate: gate.rule.id)

@@ -5,16 +5,10 @@ from rdkit import Chem
 from rdkit.Chem import rdDistGeom
 from rdkit.Geometry import Point3D
 
-from builder.chemistry import (
-    ArylPosition,
-    Relation,
-    aryl_substituent_names,
-    aryl_substituents,
-    parse_smiles,
-    perceive_rings,
-    perceive_sites,
-    similarity,
-)
+from builder.chemistry.geometry import ArylPosition, Relation, aryl_substituent_names, aryl_substituents, perceive_rings
+from builder.chemistry.likeness import similarity
+from builder.chemistry.perception import perceive_sites
+from builder.chemistry.structure import parse_smiles
 
 
 @pytest.mark.parametrize(

@@ -11,27 +11,22 @@ from indigo.inchi import IndigoInchi
 from rdkit import Chem
 from rdkit.Chem import rdDistGeom, rdMolTransforms
 
-from builder.chemistry import (
+from builder.chemistry.perception import Nucleophile, ReactiveSite, attacking_atoms, neighbouring_groups, perceive_sites
+from builder.chemistry.structure import Structure, parse_smiles
+from builder.chemistry.transform import (
     Cation,
     Edit,
-    Nucleophile,
-    ReactiveSite,
-    Structure,
     activate_hydroxyl,
     activation_groups,
     add_hx,
     add_x2,
     allylic_forms,
-    attacking_atoms,
     capture,
     cyclise,
     eliminate,
     ionise,
     lose_proton,
     migrating_groups,
-    neighbouring_groups,
-    parse_smiles,
-    perceive_sites,
     protonate,
     shift_12,
     substitute,

@@ -9,17 +9,16 @@ import pytest
 from rdkit import Chem
 from rdkit.Chem import rdDepictor
 
-from builder.chemistry import (
+from builder.chemistry.perception import neighbouring_groups, perceive_sites
+from builder.chemistry.structure import (
+    MAX_HEAVY_ATOMS,
     StructureError,
     name_atom,
-    neighbouring_groups,
     parse_inchi,
     parse_rxn,
     parse_smiles,
-    perceive_sites,
     stereo_key,
 )
-from builder.chemistry.structure import MAX_HEAVY_ATOMS
 
 REFUSED = [
     ("", "no structure", None),

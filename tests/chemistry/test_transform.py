@@ -4,19 +4,25 @@ import pytest
 from rdkit import Chem
 from rdkit.Chem import rdCIPLabeler
 
-from builder.chemistry import (
-    Cation,
-    Edit,
+from builder.chemistry.perception import (
     Nucleophile,
     ReactiveSite,
+    attacking_atoms,
+    leaving_group_names,
+    neighbouring_groups,
+    perceive_sites,
+    sites_of,
+)
+from builder.chemistry.structure import Structure, parse_smiles
+from builder.chemistry.transform import (
+    Cation,
+    Edit,
     StereoEffect,
-    Structure,
     activate_hydroxyl,
     activation_groups,
     add_hx,
     add_x2,
     allylic_forms,
-    attacking_atoms,
     capture,
     carbocations,
     course_between,
@@ -27,15 +33,10 @@ from builder.chemistry import (
     ionise,
     ionise_with_shift,
     keto_form,
-    leaving_group_names,
     lose_proton,
     migrating_groups,
-    neighbouring_groups,
-    parse_smiles,
-    perceive_sites,
     protonate,
     shift_12,
-    sites_of,
     substitute,
     transpose_allylic,
     violates_bredt,
