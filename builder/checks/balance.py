@@ -278,12 +278,17 @@ def yield_disagrees_with_mass(case: Case) -> Iterator[Fault]:
         expected = 100.0 * line.mass.magnitude * purity / (molar_mass * substrate_mol)
         rounding = expected * (line.mass.half_digit + _substrate_rounding(case))
         if abs(expected - bounds.low) > YIELD_MASS_POINTS + rounding:
+            factor = expected / bounds.low if bounds.low else 1.0
+            slipped = any(abs(factor / each - 1.0) < 0.1 for each in (1000.0, 0.001))
             yield Fault(
                 at=(*path, "mass"),
-                message=f"{line.mass} is {expected:.1f} % of the theory, not {line.value}",
-                mend="correct mass, yield or purity",
+                message=f"{line.mass} is {expected:.3g} % of the theory, not {line.value}",
+                mend="a factor of 1000: look for mg against g, here and at the substrate" if slipped else _MEND_MASS,
                 data={"expected_percent": round(expected, 1)},
             )
+
+
+_MEND_MASS = "correct mass, yield or purity"
 
 
 def _molar_mass(case: Case, line: Measurement) -> float | None:

@@ -7,7 +7,6 @@ from builder.checks.case import Case
 from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.finding import Level
 from builder.records.model import Record
-from builder.records.vocabulary import Result
 from builder.rule import Fault, rule
 
 __all__ = ["COMPLETENESS_CHECKS", "Completeness", "completeness"]
@@ -79,4 +78,4 @@ def _is_covered(record: Record) -> bool:
 
 
 def _is_failure(record: Record) -> bool:
-    return bool({Result.NO_REACTION, Result.DECOMPOSITION} & set(record.outcome.result))
+    return any(not result.gives_products for result in record.outcome.result)

@@ -144,7 +144,8 @@ def temperature_looks_like_kelvin(case: Case) -> Iterator[Fault]:
 def solvent_is_unknown(case: Case) -> Iterator[Fault]:
     """A solvent is found in the solvent table, by name, synonym or structure.
 
-    Otherwise neither its boiling point nor its effect on the rate can be checked.
+    Otherwise neither its boiling point nor its effect on the rate can be checked. A near miss is a slip of the pen and
+    a query; a solvent the table does not have is a remark.
     """
     for index, solvent in enumerate(case.record.solvents):
         if _row(case, index) is None:
@@ -152,6 +153,7 @@ def solvent_is_unknown(case: Case) -> Iterator[Fault]:
             hint = f'; did you mean "{near[0]}"?' if near else ""
             yield Fault(
                 at=("solvent", index, "name"),
+                level=Level.QUERY if near else None,
                 message=f'unknown solvent "{solvent.name}"{hint}',
                 mend="correct the name, add its smiles, or add it to the solvent table with sources",
                 fix=near[0] if near else None,

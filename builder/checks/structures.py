@@ -8,6 +8,7 @@ from builder.chemistry.perception import (
     NO_LEAVING_GROUP,
     expected_class_names,
     leaving_group_names,
+    leaving_groups,
     site_class_names,
 )
 from builder.chemistry.structure import Structure
@@ -16,7 +17,7 @@ from builder.mechanism.amounts import charged_rows
 from builder.mechanism.reaction import groups_formed, sites_in_play
 from builder.records.model import Formed, Product, Substrate
 from builder.records.vocabulary import StereoKind
-from builder.rule import Fault, rule
+from builder.rule import Fault, Path, rule
 
 __all__ = ["STRUCTURE_CHECKS"]
 
@@ -199,7 +200,7 @@ def ee_without_chirality(case: Case) -> Iterator[Fault]:
     title="A class that the structure has and the record does not name",
     level=Level.REMARK,
     source="record-format",
-    needs=("structure-unreadable", "class-unknown", "leaving-group-not-found"),
+    needs=("structure-unreadable", "class-unknown", "class-not-found", "leaving-group-not-found"),
     fires_on=(_substrate("C=CCBr", "primary"),),
     silent_on=(_substrate("C=CCBr", "[primary, allylic]"),),
 )
@@ -274,7 +275,9 @@ def leaving_group_is_unknown(case: Case) -> Iterator[Fault]:
     """
     name = case.record.substrate.leaving_group
     if name not in leaving_group_names():
-        yield _outside_list(("substrate", "leaving_group"), name, leaving_group_names())
+        short = {group.abbreviation.casefold(): group.name for group in leaving_groups().values()}
+        at: Path = ("substrate", "leaving_group")
+        yield _outside_list(at, name, leaving_group_names(), meant=short.get(name.casefold().lstrip("-")))
 
 
 @rule(
@@ -303,8 +306,8 @@ def leaving_group_is_not_found(case: Case) -> Iterator[Fault]:
     )
 
 
-def _outside_list(at: tuple[str | int, ...], name: str, permitted: tuple[str, ...]) -> Fault:
-    near = get_close_matches(name, permitted, n=1, cutoff=0.5)
+def _outside_list(at: Path, name: str, permitted: tuple[str, ...], meant: str | None = None) -> Fault:
+    near = [meant] if meant else get_close_matches(name, permitted, n=1, cutoff=0.5)
     hint = f'; did you mean "{near[0]}"?' if near else ""
     return Fault(
         at=at,

@@ -386,15 +386,16 @@ def _is_overdue(record: Record, settings: Settings, today: dt.date) -> bool:
 
 def _backward(record: Record) -> list[tuple[str, str]]:
     """Return the entries a record names, and what the record is to each of them."""
-    named = [(entry_id, "leads to") for entry_id in record.preceded_by or ()]
-    named += [(entry_id, "related") for entry_id in record.related or ()]
-    return named + ([(record.superseded.by, "takes the place of")] if record.superseded else [])
+    return [(entry_id, _INWARD[path[0]]) for path, entry_id in record.references]
+
+
+_INWARD: Mapping[str | int, str] = {"preceded_by": "leads to", "related": "related", "superseded": "takes the place of"}
+_OUTWARD: Mapping[str | int, str] = {"preceded_by": "made from the product of", "related": "related"}
 
 
 def _links(record: Record, around: Surroundings) -> tuple[Link, ...]:
     """Return the links to other entries, each once: those the record names, then those that name it."""
-    named = [(entry_id, "made from the product of") for entry_id in record.preceded_by or ()]
-    named += [(entry_id, "related") for entry_id in record.related or ()]
+    named = [(entry_id, _OUTWARD[path[0]]) for path, entry_id in record.references if path[0] in _OUTWARD]
     forward = [_link(entry_id, relation, around) for entry_id, relation in named]
     return tuple(dict.fromkeys([*forward, *around.links.get(record.entry, ())]))
 

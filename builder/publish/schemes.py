@@ -13,7 +13,7 @@ from builder.chemistry.structure import AtomId, Structure
 from builder.publish.figures import equivalents_text, joined
 from builder.publish.measured import yield_caption
 from builder.records.model import Record, Stage
-from builder.records.vocabulary import NucleophileWord, Result
+from builder.records.vocabulary import NucleophileWord
 from builder.rule import Path
 
 __all__ = ["Scheme", "entry_scheme"]
@@ -158,7 +158,7 @@ def _arrow(case: Case, stages: tuple[int, ...]) -> Arrow:
         if row.role in {"nucleophile", "base", "reagent"} and (whole or row.name in added)
     ]
     solvents = [row.name for row in case.amounts.rows if row.role == "solvent" and (whole or row.name in added)]
-    failed = set(record.outcome.result) <= {Result.NO_REACTION, Result.DECOMPOSITION}
+    failed = not any(result.gives_products for result in record.outcome.result)
     return Arrow(
         above=tuple(reagents),
         below=tuple(part for part in (joined(solvents), *(_stage_line(record.stages[i]) for i in stages)) if part),

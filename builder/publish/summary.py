@@ -8,7 +8,7 @@ from builder.mechanism.amounts import AmountRow
 from builder.publish.figures import amount_text, concentration_text, equivalents_text, joined, quantity_text
 from builder.publish.measured import outcome_headline, runs_text
 from builder.records.model import Record, Stage
-from builder.records.vocabulary import NucleophileWord, Result, Status
+from builder.records.vocabulary import NucleophileWord, Status
 
 __all__ = ["Fact", "Summary", "concentration", "conditions_strip", "scale_mol", "summarise"]
 
@@ -57,7 +57,7 @@ def summarise(entry: Entry) -> Summary:
         verdict_key=entry.verdict.name.lower().replace("_", "-"),
         take_away=record.take_away or "",
         status=str(record.status),
-        is_failure=results <= {Result.NO_REACTION, Result.DECOMPOSITION} or record.outcome.failure is not None,
+        is_failure=not any(result.gives_products for result in results) or record.outcome.failure is not None,
     )
 
 
