@@ -9,7 +9,7 @@ import re
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
-from functools import cache, cached_property, lru_cache
+from functools import cache, lru_cache
 from textwrap import shorten
 
 from builder.checks.case import Case
@@ -53,13 +53,23 @@ class Severity(StrEnum):
         """Return 2 for stop down to 0 for note."""
         return {"stop": 2, "warn": 1, "note": 0}[self.value]
 
+    @property
+    def level(self) -> Level:
+        """Return the level at which it is reported once a `stop` has its safety review."""
+        return Level.REMARK if self is Severity.NOTE else Level.CAUTION
+
 
 class CautionKind(StrEnum):
-    """One substance, two that meet anywhere in the sequence, or two that are charged to one flask."""
+    """Whether one substance is meant or two, and where; the header of cautions.tsv explains each."""
 
     SPECIES = "species"
+    CHARGED = "charged"
     PAIR = "pair"
     SOLUTION = "solution"
+    QUENCH = "quench"
+
+
+_OF_ONE = frozenset({CautionKind.SPECIES, CautionKind.CHARGED})
 
 
 class Measure(StrEnum):
@@ -102,30 +112,16 @@ class Present:
         return _kinds_of(self.structure) if self.structure is not None else _kinds_named_in(self.name)
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, slots=True)
 class SubstanceKind:
-    """One row of substance_kinds.tsv."""
+    """One row of substance_kinds.tsv; other_things are names inside which its words do not count."""
 
     name: str
     fragments: tuple[Fragment, ...]
     words: tuple[str, ...]
+    other_things: tuple[str, ...]
+    ph_ranges: tuple[tuple[float, float], ...]
     note: str
-
-    def is_named_in(self, text: str) -> bool:
-        """Answer whether the text names such a substance; "no acid" and "acid-free" do not."""
-        if any(low <= value < high for low, high in self._ph_ranges for value in _stated_ph(text)):
-            return True
-        found = (match for pattern in self._patterns for match in pattern.finditer(text))
-        return any(not _is_denied(text, match.start()) for match in found)
-
-    @cached_property
-    def _patterns(self) -> tuple[re.Pattern[str], ...]:
-        return tuple(_word_pattern(word) for word in self.words if not _PH_RANGE.fullmatch(word))
-
-    @cached_property
-    def _ph_ranges(self) -> tuple[tuple[float, float], ...]:
-        found = (_PH_RANGE.fullmatch(word) for word in self.words)
-        return tuple((float(match[1]), float(match[2])) for match in found if match)
 
 
 @dataclass(frozen=True, slots=True)
@@ -146,7 +142,10 @@ class Condition:
 
 @dataclass(frozen=True, slots=True)
 class Caution:
-    """One row of cautions.tsv; second and condition are None where the row has none."""
+    """One row of cautions.tsv; second, condition and company are None where the row has none.
+
+    company: a kind that must be there too.
+    """
 
     id: str
     kind: CautionKind
@@ -154,6 +153,7 @@ class Caution:
     first: SubstanceKind
     second: SubstanceKind | None
     condition: Condition | None
+    company: SubstanceKind | None
     hazard: str
     precaution: str
     source: str
@@ -249,15 +249,20 @@ def find_hazards(presents: tuple[Present, ...], hottest_c: float) -> tuple[Hazar
 
 
 def _hazards_of(caution: Caution, by_kind: Mapping[str, Sequence[Present]], hottest_c: float) -> Iterator[Hazard]:
+    if caution.company is not None and caution.company.name not in by_kind:
+        return
     firsts = [
         present
         for present in by_kind.get(caution.first.name, ())
         if caution.condition is None or caution.condition.holds(present, hottest_c)
     ]
     if caution.second is None:
-        yield from (Hazard(caution, present) for present in firsts if present.role not in _TEXT)
+        roles = (Role.FLASK,) if caution.kind is CautionKind.CHARGED else (Role.FLASK, Role.PRODUCT)
+        yield from (Hazard(caution, present) for present in _in(firsts, *roles))
         return
-    seconds = by_kind.get(caution.second.name, ())
+    seconds: Sequence[Present] = by_kind.get(caution.second.name, ())
+    if caution.kind is CautionKind.QUENCH:
+        seconds = _before_it_is_destroyed(seconds, by_kind)
     if not firsts or not seconds:
         return
     meetings: dict[Present, list[Present]] = {}
@@ -288,6 +293,13 @@ def _meetings(
     yield from (named if is_grave else [(at, other) for at, other in named if at is named[0][0]])
 
 
+def _before_it_is_destroyed(presents: Sequence[Present], by_kind: Mapping[str, Sequence[Present]]) -> list[Present]:
+    """Leave out the lines of the work-up below the first that names water, an alcohol or an acid."""
+    destroying = [*by_kind.get("water or alcohol", ()), *by_kind.get("acid", ())]
+    last = min((present.path for present in _in(destroying, Role.WORK_UP)), default=None)
+    return [p for p in presents if p.role is not Role.WORK_UP or last is None or p.path <= last]
+
+
 def _named(firsts: Sequence[Present], seconds: Sequence[Present], role: Role) -> Iterator[tuple[Present, Present]]:
     """Yield the pairs of which one partner is charged and the other named in a text of this role."""
     yield from ((at, other) for other in _in(firsts, Role.FLASK) for at in _in(seconds, role))
@@ -312,14 +324,19 @@ def _kinds_of(structure: Structure) -> frozenset[str]:
     return frozenset().union(*pieces.values())
 
 
-def _kinds_of_piece(piece: Structure) -> frozenset[str]:
-    kinds = load_substance_kinds().values()
-    return frozenset(kind.name for kind in kinds if any(fragment.is_in(piece) for fragment in kind.fragments))
-
-
 @lru_cache(maxsize=4096)
-def _kinds_named_in(text: str) -> frozenset[str]:
-    return frozenset(kind.name for kind in load_substance_kinds().values() if kind.is_named_in(text))
+def _kinds_of_piece(piece: Structure) -> frozenset[str]:
+    return frozenset().union(*(kinds for fragment, kinds in _kinds_by_fragment().items() if fragment.is_in(piece)))
+
+
+@cache
+def _kinds_by_fragment() -> dict[Fragment, frozenset[str]]:
+    """Return the kinds that ask for a fragment, so that each is looked for once though several ask for it."""
+    found: dict[Fragment, set[str]] = {}
+    for kind in load_substance_kinds().values():
+        for fragment in kind.fragments:
+            found.setdefault(fragment, set()).add(kind.name)
+    return {fragment: frozenset(kinds) for fragment, kinds in found.items()}
 
 
 def _size(measure: Measure, structure: Structure | None) -> float | None:
@@ -338,22 +355,95 @@ def _size(measure: Measure, structure: Structure | None) -> float | None:
 _PH_RANGE = re.compile(r"pH (\d+)-(\d+)")
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
 _DENIAL = re.compile(
-    r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|apart from|away from|instead of|rather than)\b",
-    re.IGNORECASE,
+    r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|instead of|rather than)\b", re.IGNORECASE
 )
 _CLAUSE_END = re.compile(r"[,;:()]|\.\s|\bbut\b|\bthen\b")
 _REACH_OF_DENIAL = 4  # words: "never let it touch copper"
+_PARTING = re.compile(
+    r"\b(?:apart|away) from(?:(?:\s[\w-]+){0,4}|(?:\s[\w-]+){1,3}(?:,(?:\s[\w-]+){1,3})+\s(?:and|or))\s$", re.IGNORECASE
+)
+"""Text before a name that is to be kept apart, the last of a list too: "apart from amines, amide solvents and acid"."""
+_DEED = re.compile(r"acidif|pH|.*\b(?:with|into|to|then)\b", re.IGNORECASE)  # "kept away from light and acidified"
+_START_OF_NAME = re.compile(r"(?<![A-Za-z0-9·•])[A-Za-z0-9]+")
+_END_OF_NAME = re.compile(r"(?![A-Za-z0-9]|-free)")
 
 
-def _word_pattern(word: str) -> re.Pattern[str]:
-    flags = re.NOFLAG if re.search("[A-Z]", word) else re.IGNORECASE
-    return re.compile(rf"(?<![A-Za-z0-9·•]){re.escape(word)}(?![A-Za-z0-9]|-free)", flags)
+@lru_cache(maxsize=4096)
+def _kinds_named_in(text: str) -> frozenset[str]:
+    """Return the kinds a text names; "no acid", "acid-free" and "Lewis acid" name no acid."""
+    named: set[str] = set()
+    found = list(_names_in(text))
+    for name, start, end in found:
+        kinds = _vocabulary().kinds_by_word.get(name, frozenset()) - named
+        if kinds and not _is_denied(text, start):
+            inside = [other for other, low, high in found if low <= start and end <= high]
+            masked = frozenset().union(*(_vocabulary().kinds_masked.get(other, frozenset()) for other in inside))
+            named |= kinds - masked
+    values = list(_stated_ph(text))
+    for kind in load_substance_kinds().values() if values else ():
+        if any(low <= value < high for low, high in kind.ph_ranges for value in values):
+            named.add(kind.name)
+    return frozenset(named)
+
+
+def _names_in(text: str) -> Iterator[tuple[str, int, int]]:
+    """Yield (word of the table, start, end) for every name in a text, names inside longer ones too."""
+    for token in _START_OF_NAME.finditer(text):
+        start = token.start()
+        for word in _vocabulary().by_first_token.get(token[0].lower(), ()):
+            end = start + len(word)
+            typed = text[start:end]
+            if (typed == word or (word.islower() and typed.lower() == word)) and _END_OF_NAME.match(text, end):
+                yield word, start, end
+
+
+@dataclass(frozen=True, slots=True)
+class _Vocabulary:
+    """The words of all kinds, laid out so that a text is read once.
+
+    by_first_token: words by the letters and digits they begin with, in lower case.
+    kinds_by_word, kinds_masked: the kinds a word names, and those of which it is another thing.
+    """
+
+    by_first_token: Mapping[str, tuple[str, ...]]
+    kinds_by_word: Mapping[str, frozenset[str]]
+    kinds_masked: Mapping[str, frozenset[str]]
+
+
+@cache
+def _vocabulary() -> _Vocabulary:
+    kinds = load_substance_kinds().values()
+    named = [(word, kind.name) for kind in kinds for word in kind.words]
+    masked = [(word, kind.name) for kind in kinds for word in kind.other_things]
+    by_first_token: dict[str, dict[str, None]] = {}
+    for word, _ in (*named, *masked):
+        token = _START_OF_NAME.match(word)
+        if token is None:
+            raise ValueError(f"substance_kinds.tsv: {word} must begin with a letter or a digit")
+        by_first_token.setdefault(token[0].lower(), {})[word] = None
+    return _Vocabulary(
+        by_first_token={token: tuple(words) for token, words in by_first_token.items()},
+        kinds_by_word=_gathered(named),
+        kinds_masked=_gathered(masked),
+    )
+
+
+def _gathered(pairs: Iterable[tuple[str, str]]) -> dict[str, frozenset[str]]:
+    found: dict[str, set[str]] = {}
+    for key, value in pairs:
+        found.setdefault(key, set()).add(value)
+    return {key: frozenset(values) for key, values in found.items()}
 
 
 def _is_denied(text: str, start: int) -> bool:
-    clause = _CLAUSE_END.split(text[:start])[-1]
+    """Answer whether what is named at `start` is said to be absent or kept apart."""
+    before = text[:start]
+    clause = _CLAUSE_END.split(before)[-1]
     denials = list(_DENIAL.finditer(clause))
-    return bool(denials) and len(clause[denials[-1].end() :].split()) <= _REACH_OF_DENIAL
+    if denials and len(clause[denials[-1].end() :].split()) <= _REACH_OF_DENIAL:
+        return True
+    parting = _PARTING.search(before)
+    return parting is not None and not _DEED.match(text, start) and not _DEED.match(parting[0])
 
 
 def _stated_ph(text: str) -> Iterator[float]:
@@ -374,10 +464,14 @@ def load_substance_kinds() -> dict[str, SubstanceKind]:
     """
     found: dict[str, SubstanceKind] = {}
     for row in _table("substance_kinds.tsv", ("name", "smarts", "words", "note")):
+        words = () if row["words"] == NOTHING else tuple(row["words"].split("|"))
+        ranges = [match for word in words if (match := _PH_RANGE.fullmatch(word))]
         kind = SubstanceKind(
             name=row["name"],
             fragments=() if row["smarts"] == NOTHING else tuple(map(Fragment.from_smarts, row["smarts"].split())),
-            words=() if row["words"] == NOTHING else tuple(row["words"].split("|")),
+            words=tuple(word for word in words if not word.startswith("!") and not _PH_RANGE.fullmatch(word)),
+            other_things=tuple(word[1:] for word in words if word.startswith("!")),
+            ph_ranges=tuple((float(match[1]), float(match[2])) for match in ranges),
             note="" if row["note"] == NOTHING else row["note"],
         )
         if kind.name in found or not (kind.fragments or kind.words):
@@ -400,7 +494,9 @@ def load_cautions() -> tuple[Caution, ...]:
 
 def _caution(row: dict[str, str]) -> Caution:
     kind, kinds = CautionKind(row["kind"]), load_substance_kinds()
-    wanted = [row["first"]] if kind is CautionKind.SPECIES else [row["first"], row["second"]]
+    is_of_one = kind in _OF_ONE
+    company = row["condition"].removeprefix("with ") if row["condition"].startswith("with ") else None
+    wanted = [row["first"], *([] if is_of_one else [row["second"]]), *([company] if company else [])]
     if unknown := [name for name in wanted if name not in kinds]:
         raise ValueError(f"cautions.tsv: {row['id']}: unknown kind of substance {unknown[0]}")
     return Caution(
@@ -408,8 +504,9 @@ def _caution(row: dict[str, str]) -> Caution:
         kind=kind,
         severity=Severity(row["severity"]),
         first=kinds[row["first"]],
-        second=None if kind is CautionKind.SPECIES else kinds[row["second"]],
-        condition=None if row["condition"] == NOTHING else _condition(row["condition"]),
+        second=None if is_of_one else kinds[row["second"]],
+        condition=None if company or row["condition"] == NOTHING else _condition(row["condition"]),
+        company=kinds[company] if company else None,
         hazard=row["hazard"],
         precaution=row["precaution"],
         source=row["source"],
@@ -492,17 +589,18 @@ def hazard_of_a_pair(case: Case) -> Iterator[Fault]:
     """Two substances of this experiment are hazardous together.
 
     Some pairs are hazardous wherever they meet, quench and cleaning included; others only in one solution. A pair
-    graded `stop` stands here once a safety review is recorded, and as `hazard-unreviewed` before.
+    graded `stop` stands here once a safety review is recorded, and as `hazard-unreviewed` before. Of several milder
+    hazards of the same substances in one place the gravest is shown and the others are listed in its data; one graded
+    `note` is a remark.
     """
+    meetings: dict[tuple[Path, frozenset[Path]], list[Hazard]] = {}
     for hazard in _hazards(case):
-        if hazard.caution.second is not None and not _is_unreviewed(case, hazard):
-            yield Fault(
-                at=hazard.at.path,
-                message=hazard.message,
-                mend=f"{hazard.caution.precaution}; {WHO_DECIDES}",
-                data=hazard.data,
-                source=hazard.caution.source,
-            )
+        if hazard.caution.second is not None and hazard.caution.severity is not Severity.STOP:
+            partners = frozenset(other.path for other in hazard.others)
+            meetings.setdefault((hazard.at.path, partners), []).append(hazard)
+        elif hazard.caution.second is not None and not _is_unreviewed(case, hazard):
+            yield _fault([hazard])
+    yield from map(_fault, meetings.values())
 
 
 _HARMLESS = """\
@@ -534,28 +632,32 @@ def hazard_of_a_species(case: Case) -> Iterator[Fault]:
     """A substance charged, formed, obtained or sought belongs to a class with a known hazard.
 
     Each substance has one such finding, the gravest; the others are listed in its data. Alkylating agents are named by
-    class, since every good leaving group on carbon makes one; organic azides are judged by the number of carbon and
-    oxygen atoms for each nitrogen atom. Corrosive, flammable and merely harmful substances are left to their data
-    sheets.
+    class where they are charged or formed on the way, since every good leaving group on carbon makes one; as products
+    only those that are a known danger. Organic azides are judged by the number of carbon and oxygen atoms for each
+    nitrogen atom. What is only good to know is a remark. Corrosive, flammable and merely harmful substances are left to
+    their data sheets.
     """
     at_place: dict[Path, list[Hazard]] = {}
     for hazard in _hazards(case):
         if hazard.caution.second is None:
             at_place.setdefault(hazard.at.path, []).append(hazard)
-    for path, hazards in at_place.items():
-        gravest, *others = _by_gravity(hazards)
-        if not _is_unreviewed(case, gravest):
-            yield Fault(
-                at=path,
-                message=gravest.message,
-                mend=f"{gravest.caution.precaution}; {WHO_DECIDES}",
-                data={**gravest.data, "others": [other.caution.id for other in others]},
-                source=gravest.caution.source,
-            )
+    for hazards in at_place.values():
+        if not any(_is_unreviewed(case, hazard) for hazard in hazards):
+            yield _fault(hazards)
 
 
-def _by_gravity(hazards: Iterable[Hazard]) -> list[Hazard]:
-    return sorted(hazards, key=lambda hazard: -hazard.caution.severity.weight)
+def _fault(hazards: Iterable[Hazard]) -> Fault:
+    """Return the fault for the gravest of several hazards in one place; the others are listed in its data."""
+    gravest, *others = sorted(hazards, key=lambda hazard: -hazard.caution.severity.weight)
+    caution = gravest.caution
+    return Fault(
+        at=gravest.at.path,
+        message=gravest.message,
+        mend=f"{caution.precaution}; {WHO_DECIDES}",
+        data={**gravest.data, "others": [other.caution.id for other in others]},
+        level=caution.severity.level,
+        source=caution.source,
+    )
 
 
 CAUTION_CHECKS = (hazard_is_unreviewed, hazard_of_a_pair, hazard_of_a_species)

@@ -5,6 +5,7 @@ import re
 from pathlib import Path
 
 import pytest
+from chemicals import Carcinogen
 
 from builder.checks.case import Case, open_case
 from builder.checks.cautions import (
@@ -77,12 +78,13 @@ def test_row_reads_well(caution: Caution) -> None:
     assert re.fullmatch(r"[a-z0-9]+(-[a-z0-9]+)*", caution.id)
     assert caution.hazard.rstrip(".") == caution.hazard
     assert caution.how in {"looked up", "from memory", "common practice"}
-    assert (caution.second is None) == (caution.kind is CautionKind.SPECIES)
+    assert (caution.second is None) == (caution.kind in {CautionKind.SPECIES, CautionKind.CHARGED})
+    assert "local rules" not in caution.precaution  # the finding adds it, once
 
 
 def test_every_kind_of_substance_is_used() -> None:
-    used = {kind.name for caution in load_cautions() for kind in (caution.first, caution.second) if kind}
-    assert used | {"basic amine"} == set(load_substance_kinds())
+    used = {kind for caution in load_cautions() for kind in (caution.first, caution.second, caution.company)}
+    assert {kind.name for kind in used if kind} | {"basic amine"} == set(load_substance_kinds())
 
 
 SODIUM_AZIDE = "[Na+].[N-]=[N+]=[N-]"
@@ -129,6 +131,31 @@ MUST_FLAG = [
     ("CC#N", "[Na+].[NH2-]"),
     ("C1CCNC1", "ClCCl"),
     ("[K+].[I-]", "OO"),
+    # After a chemist's review: as Bretherick and Prudent Practices have them (from memory).
+    (SODIUM_AZIDE, "B(F)(F)F"),
+    (SODIUM_AZIDE, "CC[O+](CC)[B-](F)(F)F"),
+    (SODIUM_AZIDE, "Cl[Ti](Cl)(Cl)Cl"),
+    (SODIUM_AZIDE, "[Zn+2].[Cl-].[Cl-]"),
+    (SODIUM_AZIDE, "Cl[Zn]Cl"),
+    (SODIUM_AZIDE, "Cl[Si](Cl)(Cl)Cl"),
+    ("C[Si](C)(C)N=[N+]=[N-]", "FB(F)F"),
+    (SODIUM_AZIDE, "ClP(Cl)Cl"),
+    (SODIUM_AZIDE, "O=P(Cl)(Cl)Cl"),
+    ("OO", "CC(C)=O"),
+    ("NC(N)=O.OO", "CC(C)=O"),
+    ("ON(=O)=O", "CC(C)O"),
+    ("[Ag+].[O-][N+](=O)[O-]", "C#CC"),
+    ("[Cu]Br", "[Na+].[C-]#C"),
+    ("CS(C)=O", "CC(=O)OC(C)=O"),
+    ("CS(C)=O", "Clc1nc(Cl)nc(Cl)n1"),
+    ("CS(C)=O", "O=P12OP3(=O)OP(=O)(O1)OP(=O)(O2)O3"),
+    ("CS(C)=O", "O=P(=O)OP(=O)=O"),
+    ("[Na+].[O-]N=O", "CC(=O)[O-].[NH4+]"),
+    ("[Na+].[O-]Cl", "Cl"),
+    ("BrBr", "N"),
+    ("CC[N+](=O)[O-]", "[K+].CC(C)(C)[O-]"),
+    ("CC(C)[N+](=O)[O-]", "[Na+].[H-]"),
+    ("C[Mg]Br", "CC(=O)O"),
 ]
 
 
@@ -157,6 +184,14 @@ def test_pair_is_flagged_whichever_is_listed_first(first: str, second: str) -> N
         ("[O-][N+](=O)c1ccccc1", "CCNCC"),
         ("CC(C)(C)Cl", "O"),
         ("[Na+].[I-]", "CC(C)=O"),
+        (SODIUM_AZIDE, "C[Si](C)(C)Cl"),
+        (SODIUM_AZIDE, "[Na+].F[B-](F)(F)F"),
+        (SODIUM_AZIDE, "CCCC[Sn](Cl)(CCCC)CCCC"),
+        (SODIUM_AZIDE, "[Mg+2].[O-]S(=O)(=O)[O-]"),
+        ("[Cu]I", "CC#CC"),
+        ("CC(C)(C)OO", "CC(C)=O"),
+        ("[Na+].[O-][N+](=O)[O-]", "CCO"),
+        ("[O-][N+](=O)c1ccccc1", "[Na+].[OH-]"),
     ],
 )
 def test_ordinary_pair_is_not_flagged(first: str, second: str) -> None:
@@ -177,6 +212,12 @@ def test_ordinary_pair_is_not_flagged(first: str, second: str) -> None:
         "chromatography, DCM/hexane",
         "pour into water; acidify",
         "no base was used, then acidified",
+        "kept apart from metal, then acidified",
+        "kept away from light, acidified",
+        "kept away from light and acidified",
+        "kept away from light, washed with water and acid",
+        "wash with vinegar",
+        "Lewis acid filtered off, quench with dilute acid",
     ],
 )
 def test_work_up_that_endangers_an_azide(line: str) -> None:
@@ -197,6 +238,11 @@ def test_work_up_that_endangers_an_azide(line: str) -> None:
         "never let it touch copper",
         "extract with MTBE instead of dichloromethane",
         "not below pH 5",
+        "kept apart from heavy metals, amines and acid",
+        "azide water, never into acid",
+        "amino acid stays in the aqueous layer",
+        "filtered through acid-washed sand",
+        "fatty acid esters stay behind",
         "extract with THF and ethyl acetate, wash with NaHCO3 and brine, dry over Na2SO4",
     ],
 )
@@ -209,6 +255,34 @@ def test_an_amine_hydrochloride_is_no_mineral_acid_however_drawn(drawn: str) -> 
     assert {"azide-alkylammonium"} == {
         h.caution.id for h in find_hazards(*experiment(f"{SODIUM_AZIDE} ++ {drawn}")) if h.others
     }
+
+
+@pytest.mark.parametrize(
+    ("line", "kind"),
+    [
+        ("the Lewis acid goes in last", "Lewis acid"),
+        ("LEWIS ACID removed", None),
+        ("excess acid chloride destroyed", "acid chloride"),
+        ("cooled in an acetone bath", None),
+        ("iodide water apart from bleach and other oxidisers", None),
+        ("nitrite water apart from amines, amide solvents and acid (nitrosamines)", None),
+    ],
+)
+def test_longer_names_and_denied_names_are_no_acid_acetone_or_bleach(line: str, kind: str | None) -> None:
+    kinds = Present(("work_up", 0), line, Role.WORK_UP).kinds
+    assert not kinds & {"acid", "acetone", "hypochlorite"}
+    assert kind is None or kind in kinds
+
+
+def test_bleach_in_the_work_up_meets_cyanide_and_its_solvent() -> None:
+    for solvent, caution in [("CS(C)=O", "dmso-oxidant"), ("CN(C)C=O", "dmf-oxidant")]:
+        assert {caution, "cyanide-hypochlorite"} <= ids_of(f'{POTASSIUM_CYANIDE} ++ {solvent} ++ "bleach, pH 12"')
+
+
+def test_an_organometallic_is_seen_at_its_quench() -> None:
+    lines = '"quench: 20 mL half-saturated ammonium chloride" ++ "layer washed with 3 × 20 mL water"'
+    at = {h.caution.id: h.at.path for h in find_hazards(*experiment(f"[Li]CCCC ++ {lines}")) if h.others}
+    assert at["organometallic-protic"] == ("work_up", 1)
 
 
 def test_text_is_quoted_once_and_only_where_it_adds_something() -> None:
@@ -228,7 +302,7 @@ def test_text_is_quoted_once_and_only_where_it_adds_something() -> None:
         ("[N-]=[N+]=NCCN=[N+]=[N-]", Severity.STOP),  # 2/6
         ("CCN=[N+]=[N-]", Severity.STOP),  # 2/3
         ("CCCN=[N+]=[N-]", Severity.WARN),  # 3/3
-        ("OCC(c1ccccc1)N=[N+]=[N-]", Severity.NOTE),  # 9/3
+        ("OCC(c1ccccc1)N=[N+]=[N-]", Severity.WARN),  # 9/3
         ("c1ccccc1CN=[N+]=[N-]", Severity.WARN),  # 7/3
     ],
 )
@@ -278,16 +352,58 @@ def test_one_finding_for_each_substance() -> None:
 def test_alkylating_agents_are_graded() -> None:
     graded = {
         smiles: max((h.caution.severity for h in find_hazards(*experiment(smiles))), key=lambda s: s.weight)
-        for smiles in ("CCC(C)Br", "CI", "COS(=O)(=O)OC", "CCOS(=O)(=O)C(F)(F)F", "CCCCCC[C@H](C)OS(C)(=O)=O", "COCCl")
+        for smiles in ("CCC(C)Br", "CI", "CCOS(=O)(=O)C(F)(F)F", "ClCC1CO1", "COCCl")
     }
-    assert graded == {
-        "CCC(C)Br": Severity.NOTE,
-        "CCCCCC[C@H](C)OS(C)(=O)=O": Severity.NOTE,
-        "CI": Severity.WARN,
-        "COS(=O)(=O)OC": Severity.WARN,
-        "CCOS(=O)(=O)C(F)(F)F": Severity.WARN,
-        "COCCl": Severity.STOP,
-    }
+    assert graded.pop("COCCl") is Severity.STOP
+    assert set(graded.values()) == {Severity.WARN}
+
+
+def test_a_plain_alkylating_agent_counts_where_it_is_charged_and_not_as_product() -> None:
+    bromide = parse_smiles("CCC(C)Br")
+    for role, ids in [(Role.FLASK, ["alkylating-agent"]), (Role.PRODUCT, [])]:
+        hazards = find_hazards((Present(("x",), "2-bromobutane", role, bromide),), ROOM_TEMPERATURE_C)
+        assert [hazard.caution.id for hazard in hazards] == ids
+
+
+def test_what_is_only_good_to_know_is_a_remark() -> None:
+    found = faults("hazard-species", with_example("solvent: [{name: THF, volume: 20 mL}]"))
+    levels = {str(fault.data["caution"]): fault.level for fault in found}
+    assert levels["peroxide-former"] is Level.REMARK
+    assert levels["azide-salt"] is levels["alkylating-agent"] is Level.CAUTION
+
+
+# Outside reference: the IARC classes carried by the Python package chemicals 1.5.2, by CAS number.
+@pytest.mark.parametrize(
+    ("cas", "smiles", "caution"),
+    [
+        ("68-12-2", "CN(C)C=O", "dmf"),
+        ("100-44-7", "ClCc1ccccc1", "benzyl-chloride"),
+        ("106-93-4", "BrCCBr", "dibromoethane"),
+        ("75-01-4", "C=CCl", "vinyl-chloride"),
+        ("593-60-2", "C=CBr", "vinyl-bromide"),
+        ("106-99-0", "C=CC=C", "butadiene"),
+        ("78-79-5", "C=CC(C)=C", "isoprene"),
+        ("106-94-5", "CCCBr", "bromopropane"),
+        ("75-09-2", "ClCCl", "dichloromethane"),
+        ("67-66-3", "ClC(Cl)Cl", "chloroform"),
+        ("75-52-5", "C[N+](=O)[O-]", "nitromethane"),
+        ("79-46-9", "CC(C)[N+](=O)[O-]", "nitropropane"),
+        ("680-31-9", "CN(C)P(=O)(N(C)C)N(C)C", "hmpa"),
+        ("77-78-1", "COS(=O)(=O)OC", "dialkyl-sulfate"),
+        ("107-30-2", "COCCl", "halomethyl-methyl-ether"),
+    ],
+)
+def test_classes_of_carcinogens_are_those_of_iarc(cas: str, smiles: str, caution: str) -> None:
+    listed = Carcinogen(cas)["International Agency for Research on Cancer"]
+    group = re.search(r"\((1|2A|2B)\)", listed)
+    assert group
+    hazard = next(h.caution.hazard for h in find_hazards(*experiment(smiles)) if h.caution.id == caution)
+    assert re.search(rf"IARC {group[1]}\b", hazard), (listed, hazard)
+
+
+def test_only_benzyl_chloride_is_said_to_be_benzyl_chloride() -> None:
+    for smiles in ("C=CC(C)Cl", "BrCc1ccccc1", "CC(Cl)c1ccccc1", "C#CCBr", "CCOC(=O)CBr"):
+        assert "IARC" not in " ".join(h.message for h in find_hazards(*experiment(smiles)))
 
 
 def test_solvents_are_judged_by_structure_though_the_record_names_them_only() -> None:
