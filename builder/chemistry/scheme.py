@@ -23,8 +23,8 @@ __all__ = [
     "SchemeLayout",
     "draw_scheme",
     "draw_structure",
-    "legend",
     "lay_out",
+    "legend",
 ]
 
 MEANING_OF_OUTLINES = {
