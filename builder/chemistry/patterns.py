@@ -14,6 +14,7 @@ from rdkit import Chem
 from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
+    "Activation",
     "ActivationPattern",
     "ArylPattern",
     "AttackPattern",
@@ -22,6 +23,7 @@ __all__ = [
     "Electrons",
     "LeavingGroupPattern",
     "Query",
+    "Reach",
     "load_activations",
     "load_aryl_substituents",
     "load_attack_patterns",
@@ -55,6 +57,21 @@ class Electrons(StrEnum):
     HYDRIDE_TRANSFER = "hydride transfer"
 
 
+class Activation(StrEnum):
+    """What helps a leaving group to go as it stands; the table's header explains each."""
+
+    ACID = "acid"
+    SILVER = "silver"
+
+
+class Reach(StrEnum):
+    """Which carbon an attacking atom can reach, and when; the table's header explains each."""
+
+    ANY = "any"
+    INSIDE = "inside"
+    STRONG_BASE = "strong base"
+
+
 @dataclass(frozen=True)
 class Query:
     """A compiled SMARTS.
@@ -79,6 +96,7 @@ class LeavingGroupPattern:
     conjugate_acid: str | None
     conjugate_acid_pka: float | None
     needs_activation: bool
+    activated_by: frozenset[Activation]
     note: str
     source: str
     query: Query
@@ -103,7 +121,7 @@ class AttackPattern:
     kind: str
     preference: int
     electrons: Electrons
-    inside_only: bool
+    reach: Reach
     note: str
     source: str
     query: Query
@@ -172,8 +190,9 @@ def parse_leaving_groups(text: str) -> tuple[LeavingGroupPattern, ...]:
     """
     columns = ("name", "abbreviation", "smarts", "conjugate_acid", "conjugate_acid_pka", "needs_activation")
     found = []
-    for row in rows_of("leaving_groups.tsv", text, (*columns, "source", "note")):
+    for row in rows_of("leaving_groups.tsv", text, (*columns, "activated_by", "source", "note")):
         pka = row["conjugate_acid_pka"]
+        activated_by = () if row["activated_by"] == NOTHING else row["activated_by"].split(", ")
         found.append(
             LeavingGroupPattern(
                 name=row["name"],
@@ -181,6 +200,7 @@ def parse_leaving_groups(text: str) -> tuple[LeavingGroupPattern, ...]:
                 conjugate_acid=None if row["conjugate_acid"] == NOTHING else row["conjugate_acid"],
                 conjugate_acid_pka=None if pka == NOTHING else _finite(row["name"], pka),
                 needs_activation=_yes_or_no(row["name"], row["needs_activation"]),
+                activated_by=frozenset(map(Activation, activated_by)),
                 note="" if row["note"] == NOTHING else row["note"],
                 source=row["source"],
                 query=_compile(row["name"], row["smarts"], {1, 2}),
@@ -248,7 +268,7 @@ def parse_attack_patterns(text: str) -> tuple[AttackPattern, ...]:
                 kind=row["kind"],
                 preference=int(row["preference"]),
                 electrons=electrons,
-                inside_only=row["reach"] == "inside",
+                reach=Reach(row["reach"]),
                 note="" if row["note"] == NOTHING else row["note"],
                 source=row["source"],
                 query=_compile(row["kind"], row["smarts"], needed.get(electrons, {1})),

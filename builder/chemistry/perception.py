@@ -12,11 +12,13 @@ from functools import cache, lru_cache
 from rdkit import Chem
 
 from builder.chemistry.patterns import (
+    Activation,
     ClassKind,
     ClassPattern,
     Electrons,
     LeavingGroupPattern,
     Query,
+    Reach,
     load_attack_patterns,
     load_class_patterns,
     load_leaving_groups,
@@ -25,6 +27,7 @@ from builder.chemistry.structure import AtomId, Structure
 
 __all__ = [
     "NO_LEAVING_GROUP",
+    "Activation",
     "BetaCarbon",
     "Degree",
     "Hybridisation",
@@ -87,6 +90,7 @@ class LeavingGroup:
     conjugate_acid: str | None
     conjugate_acid_pka: float | None
     needs_activation: bool
+    activated_by: frozenset[Activation]
     note: str
     source: str
 
@@ -181,7 +185,7 @@ class Nucleophile:
     charge: of the species, which decides its nature, not that of the atom.
     preference: 1 for the usual atom of an ambident nucleophile, more for its alternatives.
     via: further atoms the electrons pass through, as the table numbers them: (2, 3, 4), None where unused.
-    inside_only: whether it attacks only a carbon of its own molecule, as a neighbouring group.
+    reach: which carbons it attacks, and whether it needs a strong base for those of another molecule.
     loses_proton: whether the product is written without the proton it sheds.
     """
 
@@ -193,8 +197,18 @@ class Nucleophile:
     preference: int
     electrons: Electrons
     via: tuple[AtomId | None, AtomId | None, AtomId | None]
-    inside_only: bool
+    reach: Reach
     note: str
+
+    @property
+    def inside_only(self) -> bool:
+        """Answer whether it attacks only a carbon of its own molecule, as a neighbouring group."""
+        return self.reach is Reach.INSIDE
+
+    @property
+    def needs_strong_base(self) -> bool:
+        """Answer whether another molecule is attacked only where a strong base has taken the proton first."""
+        return self.reach is Reach.STRONG_BASE
 
     @property
     def is_usual(self) -> bool:
@@ -217,6 +231,7 @@ def leaving_groups() -> dict[str, LeavingGroup]:
             row.conjugate_acid,
             row.conjugate_acid_pka,
             row.needs_activation,
+            row.activated_by,
             row.note,
             row.source,
         )
@@ -537,7 +552,7 @@ def _attacking_atoms_of(species: Structure) -> tuple[Nucleophile, ...]:
                     preference=row.preference,
                     electrons=row.electrons,
                     via=(spots.get(2), spots.get(3), spots.get(4)),
-                    inside_only=row.inside_only,
+                    reach=row.reach,
                     note=row.note,
                 )
             )

@@ -13,8 +13,8 @@ from builder.chemistry.patterns import (
     parse_leaving_groups,
 )
 
-HEAD = "name\tabbreviation\tsmarts\tconjugate_acid\tconjugate_acid_pka\tneeds_activation\tsource\tnote\n"
-ROW = "iodide\tI\t[C:1]-[I:2]\tHI\t-10\tno\tmarch-2013\t-\n"
+HEAD = "name\tabbreviation\tsmarts\tconjugate_acid\tconjugate_acid_pka\tneeds_activation\tactivated_by\tsource\tnote\n"
+ROW = "iodide\tI\t[C:1]-[I:2]\tHI\t-10\tno\tsilver\tmarch-2013\t-\n"
 
 
 @pytest.mark.parametrize(
@@ -29,6 +29,7 @@ ROW = "iodide\tI\t[C:1]-[I:2]\tHI\t-10\tno\tmarch-2013\t-\n"
         (HEAD + ROW.replace("[I:2]", "[I]"), "must mark atoms"),
         (HEAD + ROW.replace("march-2013", "hearsay"), "unknown source hearsay"),
         (HEAD + ROW.replace("\tno\t", "\tmaybe\t"), "neither yes nor no"),
+        (HEAD + ROW.replace("silver", "hope"), "hope"),
         (HEAD + ROW.replace("-10", "nan"), "no finite number"),
         (HEAD + ROW.replace("-10", "low"), "could not convert"),
     ],

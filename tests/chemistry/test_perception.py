@@ -2,21 +2,20 @@
 
 import pytest
 
-from builder.chemistry import (
+from builder.chemistry.perception import (
     Hybridisation,
     SiteStereo,
     attacking_atoms,
     expected_class_names,
     leaving_group_names,
     leaving_groups,
-    name_atom,
     neighbouring_groups,
-    parse_smiles,
     perceive_sites,
     site_class_meanings,
     site_class_names,
     sites_of,
 )
+from builder.chemistry.structure import name_atom, parse_smiles
 
 # substrate, leaving group, the class words a careful writer would give for all its sites
 SITES = [
@@ -164,8 +163,9 @@ def test_the_closed_lists_agree_with_what_is_perceived() -> None:
 
 def test_every_leaving_group_of_the_list_is_perceived_somewhere() -> None:
     groups = {group for _, group, _ in SITES if group} | {"perchlorate", "phosphonium", "sulfoxide"}
-    groups |= {"fluorosulfonate", "iodonium", "cyclic sulfate"}
+    groups |= {"fluorosulfonate", "iodonium", "cyclic sulfate", "selenoxide", "xanthate"}
     extra = {"CCOCl(=O)(=O)=O": "perchlorate", "CC[P+](C)(C)C": "phosphonium"}
+    extra |= {"CC[Se](=O)c1ccccc1": "selenoxide", "CCC(C)OC(=S)SC": "xanthate"}
     extra |= {"CCS(C)=O": "sulfoxide", "CCOS(=O)(=O)F": "fluorosulfonate"}
     for smiles, group in extra.items():
         if group != "perchlorate":
