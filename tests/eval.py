@@ -49,11 +49,12 @@ def judge(case: dict[str, Any]) -> Judged:
     expected = case["expected"]
     follows = is_open = None
     if expected.get("major_product") and expected["dominant"] != "none":
-        follows = bool(routes_to((parse_smiles(expected["major_product"]),), sites, flask)[0])
+        (routes,) = routes_to((parse_smiles(expected["major_product"]),), sites, flask)
+        follows = any(not route.closed_by for route in routes)
     if expected["dominant"] != "none":
         words = {expected["dominant"], *expected.get("acceptable", [])} - {"none"}
         mechanisms = [Mechanism(word) for word in words]
-        situations = [Situation(each.site, activated) for each in sites]
+        situations = [Situation(substrate, each.site, activated) for each in sites]
         is_open = any(not closing_gates(mechanism, s) for mechanism in mechanisms for s in situations)
     return Judged(case["id"], case["title"], follows, is_open)
 

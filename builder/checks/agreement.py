@@ -11,9 +11,9 @@ from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.chemistry.structure import Structure
 from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
-from builder.mechanism.products import Route
+from builder.mechanism.products import MEET_IN_ONE_PRODUCT, Route
 from builder.mechanism.reaction import has_undrawn_species, in_play, species_in_flask
-from builder.mechanism.rules import Situation, closing_gates
+from builder.mechanism.rules import Gate, closing_gates
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Course, Mechanism, StereoKind
 from builder.rule import Fault, Path, rule
@@ -22,9 +22,6 @@ __all__ = ["AGREEMENT_CHECKS", "CONTRARY_RULES", "is_covered"]
 
 CONTRARY_RULES = frozenset({"claim-against-product", "mechanism-contrary", "product-not-reachable"})
 """Rules whose findings mean that record and engine disagree; the verdict of an entry follows from them."""
-
-MEET_IN_ONE_PRODUCT = 4
-"""How many molecules of one reagent at most end up in one molecule of product: a quaternary ammonium takes four."""
 
 _READABLE = ("structure-unreadable", "leaving-group-not-found", "leaving-group-unknown")
 _ELIMINATIONS = {Mechanism.E1, Mechanism.E2, Mechanism.E1CB}
@@ -49,6 +46,12 @@ def _product(smiles: str, more: str = "") -> str:
 _PRIMARY = (
     "substrate: {name: 1-bromobutane, smiles: CCCCBr, class: primary, leaving_group: bromide, amount: 10 mmol}\n"
     "stages: [{temperature: 60 °C, time: 16 h}]\n"
+)
+
+
+_ARYL = (
+    "substrate: {name: chlorobenzene, smiles: Clc1ccccc1, class: aryl, leaving_group: chloride, amount: 10 mmol}\n"
+    "stages: [{temperature: 60 °C, time: 16 h}]\n" + _product("[N-]=[N+]=Nc1ccccc1")
 )
 
 
@@ -81,6 +84,51 @@ def claim_is_against_the_product(case: Case) -> Iterator[Fault]:
                 message=f"{claim.mechanism} is claimed, but the desired product comes of {found}",
                 mend="correct the mechanism or the product, or accept claim-against-product with a reason",
             )
+
+
+@rule(
+    id="course-against-mechanism",
+    title="A course that the claimed mechanism does not take",
+    level=Level.QUERY,
+    source="iupac-gold",
+    needs=(*_READABLE, "course-twice", "course-contradicts-structure", "course-without-stereocentre"),
+    fires_on=(
+        _chiral("CC[C@H](C)N=[N+]=[N-]", "retention"),
+        _chiral("CC[C@@H](C)N=[N+]=[N-]", "partial inversion"),
+        _chiral("CCC(C)N=[N+]=[N-]", "racemisation"),
+    ),
+    silent_on=(
+        _chiral("CC[C@@H](C)N=[N+]=[N-]", "inversion"),
+        _chiral("CC[C@H](C)N=[N+]=[N-]", "retention", "NGP"),
+        _chiral("CC[C@@H](C)N=[N+]=[N-]", "partial inversion, basis: ee falls as bromide exchanges"),
+    ),
+)
+def course_is_against_the_mechanism(case: Case) -> Iterator[Fault]:
+    """SN2 inverts.
+
+    Retention needs two inversions (NGP), ion pairs (SN1) or a second exchange. Racemisation is SN1, exchange or
+    epimerisation afterwards. Partial inversion under SN2 needs its cause in the basis.
+    """
+    claim = case.record.outcome.claim
+    if claim is None or claim.mechanism is not Mechanism.SN2 or claim.course not in _NOT_BY_SN2:
+        return
+    basis = " ".join(claim.basis or ()).lower()
+    if claim.course is Course.PARTIAL_INVERSION and any(cause in basis for cause in _CAUSES_OF_LOSS):
+        return
+    yield Fault(
+        at=("outcome", "claim", "course"),
+        message=f"{claim.course} is claimed under SN2, {_NOT_BY_SN2[claim.course]}",
+        mend="correct the mechanism or the course, or accept course-against-mechanism with a reason",
+    )
+
+
+_NOT_BY_SN2 = {
+    Course.RETENTION: "which inverts: two inversions are NGP or two exchanges, an ion pair is SN1",
+    Course.RACEMISATION: "which inverts: racemisation is SN1, exchange or epimerisation afterwards",
+    Course.PARTIAL_INVERSION: "and the basis does not say where the rest was lost",
+}
+_CAUSES_OF_LOSS = ("exchang", "epimer", "racemi", "ionis", "ion pair", "conversion", "ee ", "return")
+"""Words by which a basis names what took the configuration: the cause, or that the ee falls as the reaction runs."""
 
 
 @rule(
@@ -204,19 +252,27 @@ def mechanism_is_contrary(case: Case) -> Iterator[Fault]:
     evidence the entry accepts this query, says why, and becomes one of the most valuable of the book.
     """
     claim = case.record.outcome.claim
-    if claim is None:
-        return
-    sites = in_play(case.record, case.structures)
-    shut = [closing_gates(claim.mechanism, Situation(each.site, each.is_activated)) for each in sites]
-    if shut and all(shut):
-        gates = {gate.rule.id: gate.rule for gates in shut for gate in gates}
-        reasons = "; ".join(f"{gate.title} ({gate.id})" for gate in gates.values())
+    gates = _gates_against_the_claim(case)
+    if claim is not None and gates:
         yield Fault(
             at=("outcome", "claim", "mechanism"),
-            message=f"{claim.mechanism} is claimed, and the engine holds it closed: {reasons}",
+            message=f"{claim.mechanism} is claimed, and the engine holds it closed: {_named(gates)}",
             mend="correct the claim or the structure, or accept mechanism-contrary with a reason",
-            data={"gates": sorted(gates)},
+            data={"gates": sorted(gate.rule.id for gate in gates)},
         )
+
+
+def _gates_against_the_claim(case: Case) -> tuple[Gate, ...]:
+    """Return the gates that close the claimed mechanism at every site in play; empty where it is open at one."""
+    claim = case.record.outcome.claim
+    if claim is None:
+        return ()
+    shut = [closing_gates(claim.mechanism, each.situation) for each in in_play(case.record, case.structures)]
+    return tuple(dict.fromkeys(gate for gates in shut for gate in gates)) if all(shut) else ()
+
+
+def _named(gates: Sequence[Gate]) -> str:
+    return "; ".join(f"{gate.rule.title} ({gate.rule.id})" for gate in gates)
 
 
 @rule(
@@ -225,17 +281,24 @@ def mechanism_is_contrary(case: Case) -> Iterator[Fault]:
     level=Level.QUERY,
     source="iupac-gold",
     needs=(*_READABLE, "element-from-nowhere"),
-    fires_on=(_product("CCCN=[N+]=[N-]"),),
+    fires_on=(_product("CCCN=[N+]=[N-]"), _ARYL),
     silent_on=(_product("CCC(C)N=[N+]=[N-]"), _product("C=CCC")),
 )
 def product_is_not_reachable(case: Case) -> Iterator[Fault]:
-    """A product follows from the substrate and what was charged.
+    """A product follows from the substrate and what was charged, by a way that no gate closes.
 
     Sought in one or two events: substitution at the declared group, elimination, up to three shifts of a cation,
-    allylic transposition, ring closure and opening, addition. A product beyond that is usually a slip in a SMILES.
+    allylic transposition, ring closure and opening, addition, fragmentation. A product beyond that is usually a slip
+    in a SMILES.
+
+    Known limits, to be accepted with a reason: hydrolysis, oxidation or loss of carbon dioxide as the last event
+    (acetals, thioesters and imidates opened in the flask or the work-up, Kornblum, Delépine, Krapcho); attack on a
+    carbonyl group (Darzens, Favorskii, acylation); attack by an arene or alkene of another molecule (Friedel–Crafts)
+    and cation–olefin cyclisation; attack of carbon, oxygen or halogen on two molecules of substrate beyond the second.
     """
     if has_undrawn_species(case.record, case.structures) or not _has_partner(case):
         return
+    is_contrary = bool(_gates_against_the_claim(case))
     for path, routes in routes_by_product(case).items():
         if not routes:
             yield Fault(
@@ -243,10 +306,18 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
                 message="this product does not follow from the substrate and what was charged",
                 mend="correct the SMILES, list what is missing, or accept product-not-reachable with a reason",
             )
+        elif routes[0].closed_by and path != SOUGHT and not is_contrary:
+            yield Fault(
+                at=(*path, "smiles"),
+                message=f"the only way to this product is closed: {_named(routes[0].closed_by)}",
+                mend="correct the SMILES or the substrate, or accept product-not-reachable with a reason",
+                data={"gates": sorted(gate.rule.id for gate in routes[0].closed_by)},
+            )
 
 
 AGREEMENT_CHECKS = (
     claim_is_against_the_product,
+    course_is_against_the_mechanism,
     course_contradicts_structure,
     course_has_no_stereocentre,
     element_comes_from_nowhere,

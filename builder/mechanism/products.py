@@ -1,14 +1,16 @@
 """Which products follow from a substrate and what is in the flask, and by which transformations.
 
 No rates here: a route says that a product can be made by substitution, elimination, shift, transposition, ring
-closure or opening, or addition, in at most two such events after each other.
+closure or opening, addition or fragmentation, in at most two such events after each other; nitrogen, sulfur and
+phosphorus are alkylated up to four times.
 """
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, replace
 from enum import StrEnum
-from functools import lru_cache
+from functools import lru_cache, partial
 from itertools import islice
+from typing import TypeVar
 
 from builder.chemistry.neutral import neutral_form
 from builder.chemistry.perception import (
@@ -18,11 +20,13 @@ from builder.chemistry.perception import (
     neighbouring_groups,
     perceive_sites,
 )
+from builder.chemistry.rewrites import Stage, load_rewrites, rewritten
 from builder.chemistry.structure import Atom, AtomId, Structure
 from builder.chemistry.transform import (
     Cation,
     Edit,
     StereoEffect,
+    UnbalancedTransformation,
     add_hx,
     add_x2,
     allylic_forms,
@@ -38,17 +42,23 @@ from builder.chemistry.transform import (
     substitute,
     transpose_allylic,
 )
+from builder.mechanism.flask import Role, roles_in
 from builder.mechanism.reaction import SiteInPlay
-from builder.mechanism.rules import Situation, closing_gates
+from builder.mechanism.rules import Gate, closing_gates
 from builder.records.vocabulary import Mechanism
 
-__all__ = ["Event", "Route", "routes_to"]
+__all__ = ["MEET_IN_ONE_PRODUCT", "Event", "Route", "routes_to"]
+
+MEET_IN_ONE_PRODUCT = 4
+"""How many molecules of one reagent at most end up in one molecule of product: a quaternary ammonium takes four."""
 
 MAX_SHIFTS = 3
 MAX_CATIONS = 60  # of one ionisation; a steroid's skeleton has no more within three shifts
 MAX_INTERMEDIATES = 40  # products of the first event that may react once more
 _ELIMINATIONS = (StereoEffect.ANTI, StereoEffect.SYN, StereoEffect.NOT_DETERMINED)
 HALOGENS = frozenset({"BrBr", "ClCl", "II"})
+
+T = TypeVar("T")
 
 
 class Event(StrEnum):
@@ -61,6 +71,18 @@ class Event(StrEnum):
     IONISATION = "ionisation"
     SHIFT = "1,2-shift"
     ADDITION = "addition"
+    FRAGMENTATION = "fragmentation"
+    HYDRATION = "hydration"
+
+
+_MECHANISMS = {
+    Event.SUBSTITUTION: (Mechanism.SN2, Mechanism.SN1),
+    Event.TRANSPOSITION: (Mechanism.SN2_PRIME, Mechanism.SN1),
+    Event.RING_CLOSURE: (Mechanism.NGP, Mechanism.SN1),
+    Event.ELIMINATION: (Mechanism.E2, Mechanism.E1, Mechanism.E1CB),
+    Event.ADDITION: (Mechanism.ADE,),
+}
+"""The mechanisms by which a first event can go; it is closed where the gates close them all."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,6 +92,7 @@ class Route:
     start: the molecule the first event starts from. site: where it starts.
     effect: what the last event does to the configuration.
     arrives: atoms of the product that came with the nucleophile of the last event.
+    closed_by: gates that close every mechanism of one of its events; empty for a route that is open.
     """
 
     start: Structure
@@ -78,6 +101,7 @@ class Route:
     product: Structure
     effect: StereoEffect
     arrives: frozenset[AtomId] = frozenset()
+    closed_by: tuple[Gate, ...] = ()
 
     @property
     def eliminates(self) -> bool:
@@ -90,17 +114,22 @@ class Route:
         return Event.SHIFT in self.events or Event.TRANSPOSITION in self.events
 
 
+_Step = tuple[Route, tuple[Structure, ...]]
+"""A route, and what its last event sets free."""
+
+
 def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iterator[Iterator[Route]]:
     """Yield the routes stage by stage, each stage longer and dearer than the one before.
 
     flask: everything charged beside the substrate; what the first event sets free attacks in the second.
     """
-    first = [made for each in sites for made in _from_site(each.on, each.site, flask)]
+    first = [made for each in sites for made in _from_site(each, flask)]
     yield (route for route, _ in first)
     yield (route for each in sites if _ionises(each) for route in _through_cations(each.on, each.site, flask))
-    intermediates: dict[Structure, tuple[Route, tuple[Structure, ...]]] = {}
+    intermediates: dict[Structure, _Step] = {}
     for route, freed in first:
-        intermediates.setdefault(route.product, (route, freed))
+        if not route.closed_by:
+            intermediates.setdefault(route.product, (route, freed))
     yield (
         further
         for route, freed in islice(intermediates.values(), MAX_INTERMEDIATES)
@@ -115,12 +144,13 @@ def routes_to(
     """Return, for each product, the routes of the shortest kind that give its constitution; empty where none does.
 
     Salts and free compounds are one, configurations are left to the caller. Each of the three stages (one event,
-    through a cation, two events) is only entered while a product is still without a route.
+    through a cation, two events) is only entered while a product is still without an open route; closed ones are
+    given only where there is no open one.
     """
     wanted = [_constitutions(product) for product in products]
     found: list[list[Route]] = [[] for _ in products]
     for stage in _stages(sites, flask):
-        open_places = [place for place, routes in enumerate(found) if not routes]
+        open_places = [place for place, routes in enumerate(found) if all(route.closed_by for route in routes)]
         if not open_places:
             break
         for route in stage:
@@ -128,7 +158,7 @@ def routes_to(
             for place in open_places:
                 if made in wanted[place]:
                     found[place].append(route)
-    return tuple(tuple(routes) for routes in found)
+    return tuple(tuple(r for r in routes if not r.closed_by) or tuple(routes) for routes in found)
 
 
 def _constitution(structure: Structure) -> str:
@@ -143,40 +173,106 @@ def _constitutions(product: Structure) -> set[str]:
 # --- one event --------------------------------------------------------------------------------------------
 
 
-def _from_site(
-    start: Structure, site: ReactiveSite, species: tuple[Structure, ...]
-) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
+def _one(edit: Callable[[], T]) -> tuple[T, ...]:
+    """Return what an edit makes; nothing where it would lose atoms or charge, for then it is no way at all."""
+    try:
+        return (edit(),)
+    except UnbalancedTransformation:
+        return ()
+
+
+def _several(edits: Callable[[], Iterable[T]]) -> tuple[T, ...]:
+    """Return what a family of edits makes, as `_one` does."""
+    return tuple(each for made in _one(lambda: tuple(edits())) for each in made)
+
+
+def _from_site(each: SiteInPlay, species: tuple[Structure, ...]) -> Iterator[_Step]:
+    shut: dict[Event, tuple[Gate, ...]] = {}
+    for route, others in _events_at(each.on, each.site, species):
+        event = route.events[-1]
+        if event not in shut:
+            shut[event] = _closing(each, event)
+        yield replace(route, closed_by=shut[event]) if shut[event] else route, others
+
+
+def _closing(each: SiteInPlay, event: Event) -> tuple[Gate, ...]:
+    """Return the gates that close an event at a site; empty where one of its mechanisms is open."""
+    gates = [closing_gates(mechanism, each.situation) for mechanism in _MECHANISMS.get(event, ())]
+    return tuple(dict.fromkeys(gate for some in gates for gate in some)) if all(gates) else ()
+
+
+def _events_at(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[_Step]:
     if site.is_addition:
         yield from _additions(start, site, species)
         return
     has_stereo = start.stereocentres.specified > 0
     for nucleophile in _attackers(species):
         for inversion in (True, False) if has_stereo else (True,):
-            edit = substitute(start, site, nucleophile, inversion=inversion)
-            yield from _products_of(start, site, (Event.SUBSTITUTION,), edit)
-        for edit in transpose_allylic(start, site, nucleophile):
+            for edit in _one(partial(substitute, start, site, nucleophile, inversion=inversion)):
+                yield from _products_of(start, site, (Event.SUBSTITUTION,), edit)
+        for edit in _several(partial(transpose_allylic, start, site, nucleophile)):
             yield from _products_of(start, site, (Event.TRANSPOSITION,), edit)
     out_of_reach = {site.alpha_carbon, *(atom for atom, _ in start.atoms[site.alpha_carbon].neighbours)}
     for group in neighbouring_groups(start):
         if group.atom not in out_of_reach:
-            edit = cyclise(start, site, group)
-            yield from _products_of(start, site, (Event.RING_CLOSURE,), edit)
+            for edit in _one(partial(cyclise, start, site, group)):
+                yield from _products_of(start, site, (Event.RING_CLOSURE,), edit)
     for beta in site.beta_with_hydrogen:
         for effect in _ELIMINATIONS if has_stereo or site.ring_sizes else _ELIMINATIONS[:1]:
-            for edit in eliminate(start, site, beta.atom, effect=effect):
+            for edit in _several(partial(eliminate, start, site, beta.atom, effect=effect)):
                 yield from _products_of(start, site, (Event.ELIMINATION,), edit)
+    yield from ((route, ()) for route in _rewrites(start, site, (), start, Stage.SUBSTRATE, species))
 
 
-def _additions(
-    start: Structure, site: ReactiveSite, species: tuple[Structure, ...]
-) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
-    for nucleophile in _attackers(species):
-        for edit in add_hx(start, site, nucleophile):
-            yield from _products_of(start, site, (Event.ADDITION,), edit)
+def _rewrites(
+    start: Structure,
+    site: ReactiveSite,
+    events: tuple[Event, ...],
+    reached: Structure,
+    stage: Stage,
+    species: tuple[Structure, ...],
+) -> Iterator[Route]:
+    """Yield the routes that end in a row of rewrites.tsv, where the flask holds what it takes."""
+    for row in load_rewrites():
+        if row.stage is stage and (row.role is None or row.role in roles_in(species)):
+            for product in rewritten(reached, row):
+                yield Route(start, site, (*events, Event(row.kind)), product, StereoEffect.NOT_DETERMINED)
+
+
+def _additions(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[_Step]:
+    if _is_better_cation(start, site) or Role.RADICAL_INITIATOR in roles_in(species):
+        for nucleophile in _attackers(species):
+            for edit in _several(partial(add_hx, start, site, nucleophile)):
+                yield from _products_of(start, site, (Event.ADDITION,), edit)
     for molecule in species:
         if molecule.smiles in HALOGENS:
-            for edit in add_x2(start, site, molecule):
+            for edit in _several(partial(add_x2, start, site, molecule)):
                 yield from _products_of(start, site, (Event.ADDITION,), edit)
+
+
+def _is_better_cation(start: Structure, site: ReactiveSite) -> bool:
+    """Say whether this end of a multiple bond bears the positive charge at least as well as the other: Markovnikov."""
+    partner = site.partner
+    return partner is None or _support(start, site.alpha_carbon, partner) >= _support(start, partner, site.alpha_carbon)
+
+
+def _support(structure: Structure, end: AtomId, other: AtomId) -> int:
+    """Return how well the neighbours of one end support a charge: donors 2, carbon 1, an acceptor -1 each."""
+    atoms = structure.atoms
+    return sum(_support_by(structure, atoms[near], end) for near, _ in atoms[end].neighbours if near != other)
+
+
+def _support_by(structure: Structure, near: Atom, end: AtomId) -> int:
+    beyond = [(structure.atoms[far].symbol, order) for far, order in near.neighbours if far != end]
+    if near.symbol in {"N", "O", "S"}:
+        return 2 if not near.charge else -1
+    if near.symbol != "C":
+        return 0
+    if any(order >= 2.0 and symbol in {"O", "N"} for symbol, order in beyond) and not near.aromatic:
+        return -1
+    if sum(symbol in {"F", "Cl", "Br", "I"} for symbol, _ in beyond) >= 2:
+        return -1
+    return 2 if near.aromatic or any(order > 1.0 for _, order in beyond) else 1
 
 
 def _can_add(species: Iterable[Structure]) -> bool:
@@ -187,18 +283,19 @@ def _can_add(species: Iterable[Structure]) -> bool:
 
 
 def _attackers(species: Iterable[Structure]) -> Iterator[Nucleophile]:
+    """Yield each attacking atom in the flask once; weak carbon acids only where a strong base is there."""
+    species = tuple(species)
+    has_strong_base = Role.STRONG_BASE in roles_in(species)
     seen: set[tuple[Structure, int]] = set()
     for each in species:
         for nucleophile in attacking_atoms(each):
             key = (nucleophile.species, nucleophile.atom)
-            if key not in seen:
+            if key not in seen and (has_strong_base or not nucleophile.needs_strong_base):
                 seen.add(key)
                 yield nucleophile
 
 
-def _products_of(
-    start: Structure, site: ReactiveSite, events: tuple[Event, ...], edit: Edit
-) -> Iterator[tuple[Route, tuple[Structure, ...]]]:
+def _products_of(start: Structure, site: ReactiveSite, events: tuple[Event, ...], edit: Edit) -> Iterator[_Step]:
     """Yield the route to the product of an edit, and those to the carbon-bearing pieces that leave.
 
     A leaving piece can be the product sought: the phenol of an ether cleavage, the acid of an ester.
@@ -214,34 +311,35 @@ def _products_of(
 
 
 def _ionises(each: SiteInPlay) -> bool:
-    return not closing_gates(Mechanism.SN1, Situation(each.site, each.is_activated))
+    return not closing_gates(Mechanism.SN1, each.situation)
 
 
 def _through_cations(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[Route]:
-    first = protonate(start, site) if site.is_addition else ionise(start, site)
     attackers = tuple(_attackers(species))
-    for cation, events in _cations(first):
+    for cation, events in _cations(_one(partial(protonate if site.is_addition else ionise, start, site))):
+        yield from _rewrites(start, site, events, cation.structure, Stage.CATION, species)
         if not _is_stable(cation):
             continue  # a primary cation only hands its charge on
         for nucleophile in attackers:
-            for edit in capture(cation, nucleophile):
+            for edit in _several(partial(capture, cation, nucleophile)):
                 yield from (route for route, _ in _products_of(start, site, (*events, Event.SUBSTITUTION), edit))
         for atom in _neighbours(cation):
-            for edit in lose_proton(cation, atom):
+            for edit in _several(partial(lose_proton, cation, atom)):
                 yield from (route for route, _ in _products_of(start, site, (*events, Event.ELIMINATION), edit))
 
 
-def _cations(first: Cation) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
+def _cations(first: tuple[Cation, ...]) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
     """Yield the cation and what up to three 1,2-shifts and allylic resonance make of it, breadth first."""
-    level: list[tuple[Cation, tuple[Event, ...]]] = [(first, (Event.IONISATION,))]
-    seen = {first.structure}
+    level: list[tuple[Cation, tuple[Event, ...]]] = [(cation, (Event.IONISATION,)) for cation in first]
+    seen = {cation.structure for cation in first}
     for _ in range(MAX_SHIFTS + 1):
         following: list[tuple[Cation, tuple[Event, ...]]] = []
         for cation, events in level:
             yield cation, events
-            shifted = ((shift_12(cation, origin, moving), Event.SHIFT) for origin, moving in migrating_groups(cation))
-            resonant = ((form, Event.TRANSPOSITION) for form in allylic_forms(cation))
-            opened = ((fragment(cation, near, far), Event.SHIFT) for near, far in _small_ring_bonds(cation))
+            groups, bonds = migrating_groups(cation), _small_ring_bonds(cation)
+            shifted = ((made, Event.SHIFT) for pair in groups for made in _one(partial(shift_12, cation, *pair)))
+            opened = ((made, Event.SHIFT) for pair in bonds for made in _one(partial(fragment, cation, *pair)))
+            resonant = ((form, Event.TRANSPOSITION) for form in _several(partial(allylic_forms, cation)))
             for made, event in (*resonant, *shifted, *opened):
                 if made.structure not in seen and len(seen) < MAX_CATIONS and _is_stable(made):
                     seen.add(made.structure)
@@ -250,23 +348,40 @@ def _cations(first: Cation) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
 
 
 def _is_stable(cation: Cation) -> bool:
-    """Say whether the centre has two carbons, or a neighbour that shares electrons with it."""
-    centre = cation.structure.atoms[cation.centre]
-    neighbours = [cation.structure.atoms[atom] for atom, _ in centre.neighbours]
+    """Say whether the centre has two carbons, or shares electrons with a neighbour or a double bond next to that.
+
+    The last is homoallyl, another drawing of the cyclopropylmethyl cation. A centre in a three-membered ring only
+    opens it.
+    """
+    atoms = cation.structure.atoms
+    centre = atoms[cation.centre]
+    if 3 in centre.ring_sizes:
+        return False
+    neighbours = [atoms[atom] for atom, _ in centre.neighbours]
     shares = any(
         n.aromatic or n.symbol in {"N", "O", "S"} or 3 in n.ring_sizes or _is_unsaturated(n) for n in neighbours
     )
-    return len(neighbours) >= 2 or shares
+    homoallyl = any(
+        any(order == 2.0 and atoms[end].symbol == "C" for end, order in atoms[far].neighbours)
+        for n in neighbours
+        for far, _ in n.neighbours
+    )
+    return len(neighbours) >= 2 or shares or homoallyl
 
 
 def _small_ring_bonds(cation: Cation) -> Iterator[tuple[int, int]]:
-    """Yield the bonds of a three-membered ring next to the centre: cyclopropylmethyl opens to homoallyl."""
+    """Yield the bonds of a three-membered ring beside or opposite the centre.
+
+    Cyclopropylmethyl opens to homoallyl, cyclopropyl to allyl.
+    """
     atoms = cation.structure.atoms
     around = {atom for atom, _ in atoms[cation.centre].neighbours}
     for near in sorted(around):
         if 3 in atoms[near].ring_sizes:
             beyond = {atom for atom, _ in atoms[near].neighbours if 3 in atoms[atom].ring_sizes}
-            yield from ((near, far) for far in sorted(beyond - around - {cation.centre}))
+            opposite = 3 in atoms[cation.centre].ring_sizes
+            ends = beyond & around if opposite else beyond - around
+            yield from ((near, far) for far in sorted(ends - {cation.centre}))
 
 
 def _is_unsaturated(atom: Atom) -> bool:
@@ -282,13 +397,29 @@ def _neighbours(cation: Cation) -> tuple[int, ...]:
 
 def _second_events(route: Route, species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
     intermediate = route.product
+    activated = any(each.is_activated for each in in_play)
     for site in perceive_sites(intermediate):
         if site.is_addition and not _can_add(species):
             continue
-        for further, _ in _from_site(intermediate, site, species):
+        for further, _ in _from_site(SiteInPlay(intermediate, site, activated), species):
             yield replace(further, start=route.start, site=route.site, events=(*route.events, *further.events))
-    for each in in_play:  # the product attacks another molecule of substrate
-        for nucleophile in attacking_atoms(intermediate):
-            if not each.site.is_addition:
-                edit = substitute(each.on, each.site, nucleophile)
-                yield Route(route.start, route.site, (*route.events, Event.SUBSTITUTION), edit.product, edit.effect)
+    yield from _rewrites(route.start, route.site, route.events, intermediate, Stage.PRODUCT, species)
+    yield from _alkylated_again(route, species, in_play)
+
+
+def _alkylated_again(route: Route, species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
+    """Yield what the product gives with further molecules of substrate; N, S and P take up to four in all."""
+    has_strong_base = Role.STRONG_BASE in roles_in(species)
+    level, seen = [route], {route.product}
+    for taken in range(2, MEET_IN_ONE_PRODUCT + 1):
+        following: list[Route] = []
+        for reached, each in ((r, e) for r in level for e in in_play if not e.site.is_addition):
+            for nucleophile in attacking_atoms(reached.product):
+                repeats = taken == 2 or nucleophile.symbol in {"N", "S", "P"}
+                if repeats and (has_strong_base or not nucleophile.needs_strong_base):
+                    for edit in _one(partial(substitute, each.on, each.site, nucleophile)):
+                        events = (*reached.events, Event.SUBSTITUTION)
+                        following.append(Route(route.start, route.site, events, edit.product, edit.effect))
+        level = [r for r in following if r.product not in seen]
+        seen |= {r.product for r in level}
+        yield from following

@@ -1,6 +1,6 @@
 """What a record says, seen as chemistry: the sites in play, the species in the flask, whether they are activated."""
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
 
@@ -8,11 +8,12 @@ from builder.chemistry.fragments import Fragment
 from builder.chemistry.perception import ReactiveSite, attacking_atoms, perceive_sites, sites_of
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.amounts import charged_rows
+from builder.mechanism.rules import Situation
 from builder.mechanism.solvents import find_solvent
 from builder.records.model import Record
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Path
-from builder.table import refuse_twice, rows_of, table_text
+from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
     "SiteInPlay",
@@ -22,6 +23,7 @@ __all__ = [
     "is_activated",
     "sites_in_play",
     "species_in_flask",
+    "with_halides_set_free",
 ]
 
 _ACID_KINDS = {"hydrogen halide"}
@@ -32,13 +34,19 @@ _ACTIVATING_USES = {ReagentUse.ACTIVATOR, ReagentUse.ACID}
 class SiteInPlay:
     """A reactive carbon that the record speaks of, on the molecule that bears the declared leaving group.
 
-    on: that molecule, the substrate or what a stage gives. is_activated: an acid or activator in the flask helps the
-    group to leave, or makes it from the one that is drawn.
+    on: that molecule, the substrate or what a stage gives. is_activated: an acid or activator is in the flask.
+    formed_group: the group that leaves, where it is made in the flask from the one that is drawn.
     """
 
     on: Structure
     site: ReactiveSite
     is_activated: bool = False
+    formed_group: str | None = None
+
+    @property
+    def situation(self) -> Situation:
+        """Return the site as the gates look at it."""
+        return Situation(self.on, self.site, self.is_activated, self.formed_group)
 
 
 def in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[SiteInPlay, ...]:
@@ -54,7 +62,7 @@ def in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[SiteI
     if found:
         return tuple(found)
     return tuple(
-        SiteInPlay(structure, site, is_activated=True)
+        SiteInPlay(structure, site, is_activated=True, formed_group=group)
         for precursor, agent in _precursors().get(group, ())
         if _has_agent(agent, record, structures)
         for structure in bearers
@@ -85,13 +93,14 @@ def is_activated(record: Record, structures: Mapping[Path, Structure]) -> bool:
     """Say whether an acid or an activator in the flask can make a reluctant group leave."""
     if any(reagent.use in _ACTIVATING_USES for reagent in record.reagents):
         return True
-    return any(_activates(structures[path]) for path, _, _ in charged_rows(record)[1:] if path in structures)
+    charged = [structures[path] for path, _, _ in charged_rows(record)[1:] if path in structures]
+    kinds = _kinds_of(charged)
+    acting = [donor for donor in _halide_donors() if donor.activates and donor.acts_beside(kinds)]
+    return bool(kinds & _ACID_KINDS) or any(donor.fragment.is_in(each) for donor in acting for each in charged)
 
 
-def _activates(structure: Structure) -> bool:
-    if any(nucleophile.kind in _ACID_KINDS for nucleophile in attacking_atoms(structure)):
-        return True
-    return any(donor.activates and donor.fragment.is_in(structure) for donor in _halide_donors())
+def _kinds_of(species: Iterable[Structure]) -> frozenset[str]:
+    return frozenset(nucleophile.kind for each in species for nucleophile in attacking_atoms(each))
 
 
 def has_undrawn_species(record: Record, structures: Mapping[Path, Structure]) -> bool:
@@ -104,37 +113,56 @@ def has_undrawn_species(record: Record, structures: Mapping[Path, Structure]) ->
 
 def species_in_flask(record: Record, structures: Mapping[Path, Structure]) -> Iterator[Structure]:
     """Yield the structure of everything charged but the substrate; solvents by their table row where undrawn."""
+    charged = []
     for path, _, substance in charged_rows(record)[1:]:
         structure = structures.get(path)
         if structure is None and path[0] == "solvent":
             row = find_solvent(substance.name, None)
             structure = parse_smiles(row.smiles) if row else None
         if structure is not None:
-            yield structure
-            yield from _halides_set_free(structure)
+            charged.append(structure)
+    yield from with_halides_set_free(charged)
 
 
-def _halides_set_free(structure: Structure) -> Iterator[Structure]:
-    """Yield the halide ions a reagent sets free: methanesulfonyl chloride gives chloride, seen in a by-product."""
-    for ion in dict.fromkeys(donor.ion for donor in _halide_donors() if donor.fragment.is_in(structure)):
-        yield parse_smiles(ion)
+def with_halides_set_free(charged: Sequence[Structure]) -> Iterator[Structure]:
+    """Yield what is charged, each followed by the halide ions it sets free.
+
+    Methanesulfonyl chloride gives chloride, seen in a by-product.
+    """
+    kinds = _kinds_of(charged)
+    donors = [donor for donor in _halide_donors() if donor.acts_beside(kinds)]
+    for structure in charged:
+        yield structure
+        for ion in dict.fromkeys(donor.ion for donor in donors if donor.fragment.is_in(structure)):
+            yield parse_smiles(ion)
 
 
 @dataclass(frozen=True, slots=True)
 class _HalideDonor:
-    """One row of halide_donors.tsv."""
+    """One row of halide_donors.tsv; beside: the kind of nucleophile it acts with, None where it acts alone."""
 
     ion: str
     fragment: Fragment
     activates: bool
+    beside: str | None
+
+    def acts_beside(self, kinds: frozenset[str]) -> bool:
+        """Say whether it sets its halide free in a flask with nucleophiles of these kinds."""
+        return self.beside is None or self.beside in kinds
 
 
 @cache
 def _halide_donors() -> tuple[_HalideDonor, ...]:
     name = "halide_donors.tsv"
-    rows = rows_of(name, table_text("builder.mechanism", name), ("ion", "smarts", "activates", "note", "source"))
+    columns = ("ion", "smarts", "activates", "beside", "note", "source")
+    rows = rows_of(name, table_text("builder.mechanism", name), columns)
     return tuple(
-        _HalideDonor(row["ion"], Fragment.from_smarts(row["smarts"]), activates=row["activates"] == "yes")
+        _HalideDonor(
+            ion=row["ion"],
+            fragment=Fragment.from_smarts(row["smarts"]),
+            activates=row["activates"] == "yes",
+            beside=None if row["beside"] == NOTHING else row["beside"],
+        )
         for row in rows
     )
 

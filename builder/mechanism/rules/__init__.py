@@ -1,5 +1,6 @@
 """The gates of the engine, listed by hand in id order."""
 
+from builder.mechanism.rules.addition import ADDITION_GATES
 from builder.mechanism.rules.elimination import ELIMINATION_GATES
 from builder.mechanism.rules.gate import Gate, Situation
 from builder.mechanism.rules.substitution import SUBSTITUTION_GATES
@@ -7,7 +8,7 @@ from builder.records.vocabulary import Mechanism
 
 __all__ = ["GATES", "Gate", "Situation", "closing_gates"]
 
-GATES: tuple[Gate, ...] = (*ELIMINATION_GATES, *SUBSTITUTION_GATES)
+GATES: tuple[Gate, ...] = (*ADDITION_GATES, *ELIMINATION_GATES, *SUBSTITUTION_GATES)
 
 
 def closing_gates(mechanism: Mechanism, situation: Situation) -> tuple[Gate, ...]:
