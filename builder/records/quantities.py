@@ -18,6 +18,7 @@ __all__ = [
     "Quantity",
     "QuantityError",
     "Temperature",
+    "comma_error",
     "decimal_text",
     "is_beyond_measure",
     "number_text",
@@ -160,6 +161,12 @@ _POWER_OF_TEN = re.compile(
 )
 _RAISED = str.maketrans("⁺⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "+-0123456789")
 _COMMA = re.compile(r"\d,\d")
+_GROUPS_OF_THREE = re.compile(
+    r"(?P<digits>[+-]?[1-9][0-9]{0,2}(?:(?P<sign>[,' ’])[0-9]{3})+)(?P<rest>(?:\.[0-9]+)? ?[^\s\d].*|)"
+)
+_COMMA_AND_UNIT = re.compile(r"[+-]?\d+(?:,\d+)+(?P<unit> ?[^\s\d,].*|)")
+_ONE_OF_SEVERAL = re.compile(rf"(?P<number>(?>{_UNSIGNED})) ?(?P<unit>[^\s\d.,+-]+)")
+_SEVERAL = re.compile(rf"(?:(?>{_UNSIGNED}) ?[^\s\d.,+-]+ ?){{2,}}")  # atomic: a hostile "1e1e1e1…" stays linear
 _ARITHMETIC = re.compile(r"\d\s*[*×x/+]\s*\d|\d\s+-\s+\d")
 _ABOUT = re.compile(r"^(~|≈|ca\.?|circa|about|approx\.?)\s*", re.IGNORECASE)
 _VAGUE = {
@@ -198,6 +205,12 @@ class QuantityError(ValueError):
     def __init__(self, rule: str, message: str, mend: str, fix: str | None = None) -> None:
         super().__init__(message)
         self.rule, self.message, self.mend, self.fix = rule, message, mend, fix
+
+    def within(self, before: str, after: str) -> "QuantityError":
+        """Return the same error of a longer text: what it offers keeps what stands before and after."""
+        mend = re.sub(r'"(?:[^"]+ to )?([^"]*)"', lambda offer: f'"{before}{offer[1]}{after}"', self.mend)
+        fix = None if self.fix is None else f"{before}{self.fix}{after}"
+        return QuantityError(self.rule, self.message, mend, fix)
 
 
 @dataclass(frozen=True, slots=True)
@@ -371,19 +384,26 @@ def parse_temperature(text: object) -> Temperature:
         tidy = _tidy(text)
         start, *rest = _RAMP.split(tidy)
         if len(rest) == 1:
-            return _span(start, rest[0], is_band=False)
+            return _span(start, " to ", rest[0])
         band = _BAND.fullmatch(tidy)
         if band:
-            return _span(band["low"] + (band["low_unit"] or ""), band["high"], is_band=True)
+            return _span(band["low"] + (band["low_unit"] or ""), "–", band["high"])
     value = parse_quantity(text, Dimension.TEMPERATURE)
     return Temperature(value, value)
 
 
-def _span(start: str, end: str, *, is_band: bool) -> Temperature:
+def _span(start: str, joint: str, end: str) -> Temperature:
     """Return the temperature between two texts, the first of which may leave its unit to the second."""
-    last = parse_quantity(end, Dimension.TEMPERATURE)
+    last = _part_of(f"{start}{joint}", end, "", Dimension.TEMPERATURE)
     first = f"{start} {last.unit}" if re.fullmatch(_NUMBER, start) else start
-    return Temperature(parse_quantity(first, Dimension.TEMPERATURE), last, is_band)
+    return Temperature(_part_of("", first, f"{joint}{end}", Dimension.TEMPERATURE), last, is_band=joint == "–")
+
+
+def _part_of(before: str, text: str, after: str, dimension: Dimension) -> Quantity:
+    try:
+        return parse_quantity(text, dimension)
+    except QuantityError as error:
+        raise error.within(before, after) from None
 
 
 def parse_percent(text: object) -> Percent:
@@ -394,7 +414,8 @@ def parse_percent(text: object) -> Percent:
     if isinstance(text, str):
         match = re.fullmatch(r"\s*(?P<relation>[<>≤≥])\s*(?P<rest>.*)", text)
         if match:
-            return Percent(parse_quantity(match["rest"], Dimension.FRACTION), match["relation"])
+            relation = match["relation"]
+            return Percent(_part_of(f"{relation} ", match["rest"], "", Dimension.FRACTION), relation)
     return Percent(parse_quantity(text, Dimension.FRACTION))
 
 
@@ -449,11 +470,15 @@ def _example(dimension: Dimension) -> str:
 def _no_unit(number: str, dimension: Dimension) -> QuantityError:
     units = units_of(dimension)
     offers = [f'"{number} {units[0]}"']
-    if dimension is Dimension.TEMPERATURE:
+    # 0.98 is as likely a share of one as a percentage, so both are offered and neither is put in.
+    is_share = dimension is Dimension.FRACTION and 0 < abs(Decimal(number)) <= 1
+    if is_share:
+        offers.insert(0, f'"{format(Decimal(number).scaleb(2), "f")} %"')
+    elif dimension is Dimension.TEMPERATURE:
         offers.append(f'"{round(Decimal(number) + 273)} K"')
     elif len(units) > 1:
         offers.append(f'"{number} {units[1]}"')
-    fix = offers[0] if dimension is Dimension.FRACTION else None
+    fix = offers[0] if dimension is Dimension.FRACTION and not is_share else None
     return QuantityError(
         "quantity-without-unit",
         f"the {dimension} has no unit",
@@ -469,16 +494,14 @@ def _quantity_error(text: str, tidy: str, number: str | None, spelling: str, dim
     if _ABOUT.match(tidy):
         rest = _ABOUT.sub("", tidy)
         return QuantityError("quantity-vague", f'"{text}" says "about"', f'write "{rest}"', fix=rest)
-    if _COMMA.search(tidy):
-        point = tidy.replace(",", ".")
-        return QuantityError(
-            "quantity-decimal-comma", f'"{text}" has a comma inside the number', f'write "{point}"', fix=point
-        )
+    if _COMMA.search(tidy) or _GROUPS_OF_THREE.fullmatch(tidy):
+        return _grouped_error(text, tidy)
     if number is not None and not spelling:
         return _no_unit(number, dimension)
-    mended = _power_of_ten_error(text, tidy, dimension) or _range_error(text, tidy, dimension)
-    if mended:
-        return mended
+    for find in (_power_of_ten_error, _range_error, _several_error):
+        mended = find(text, tidy, dimension)
+        if mended:
+            return mended
     if number is not None:
         return _unit_error(text, number, spelling, dimension)
     if _ARITHMETIC.search(tidy):
@@ -488,6 +511,48 @@ def _quantity_error(text: str, tidy: str, number: str | None, spelling: str, dim
     return QuantityError(
         "quantity-unreadable", f'"{text}" is not {_a(dimension)}', f'write one like "{_example(dimension)}"'
     )
+
+
+def comma_error(text: str) -> QuantityError | None:
+    """Return the error of a number with a decimal comma and a unit we know; None for any other text."""
+    tidy = _tidy(text)
+    match = _COMMA_AND_UNIT.fullmatch(tidy)
+    is_quantity = match and any(match["unit"].strip() in spellings for spellings in _BY_SPELLING.values())
+    return _grouped_error(text, tidy) if is_quantity else None
+
+
+def _grouped_error(text: str, tidy: str) -> QuantityError:
+    """Return the error of a number with a comma inside, or with its thousands set apart."""
+    groups = _GROUPS_OF_THREE.fullmatch(tidy)
+    said = f'"{text}" has a comma inside the number'
+    offers = [tidy.replace(",", ".")]
+    if groups and groups["sign"] == ",":
+        whole = re.sub(",", "", groups["digits"]) + groups["rest"]
+        offers = [*offers, whole] if tidy.count(",") == 1 and "." not in tidy else [whole]
+    elif groups:
+        said = f'"{text}" has its thousands set apart'
+        offers = [re.sub(r"[^+\-0-9]", "", groups["digits"]) + groups["rest"].replace(",", ".")]
+    mend = "write " + " or ".join(f'"{offer}"' for offer in offers)
+    return QuantityError("quantity-decimal-comma", said, mend, fix=offers[0] if len(offers) == 1 else None)
+
+
+def _several_error(text: str, tidy: str, dimension: Dimension) -> QuantityError | None:
+    """Return the error of a quantity in several units, "16 h 30 min", with its exact sum."""
+    if dimension is Dimension.TEMPERATURE or not _SEVERAL.fullmatch(tidy):
+        return None
+    parts = [(part["number"], part["unit"]) for part in _ONE_OF_SEVERAL.finditer(tidy)]
+    known = _BY_SPELLING[dimension]
+    if any(unit not in known or is_beyond_measure(number) for number, unit in parts):
+        return None
+    total = sum(_quantity(Decimal(number), known[unit], dimension).value for number, unit in parts)
+    symbols = dict.fromkeys(known[unit] for _, unit in parts)
+    sums = [(total / _factor(unit.pint, _UNITS[dimension][0].pint), unit.symbol) for unit in symbols]
+    exact = [(number, symbol) for number, symbol in sums if number == round(number, 2)]
+    if not exact:
+        return None
+    number, symbol = exact[0]
+    fix = f"{format(number.normalize(), 'f')} {symbol}"
+    return QuantityError("quantity-arithmetic", f'"{text}" is a sum, not a number', f'write "{fix}"', fix)
 
 
 def _power_of_ten_error(text: str, tidy: str, dimension: Dimension) -> QuantityError | None:

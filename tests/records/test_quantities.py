@@ -116,6 +116,47 @@ REFUSED = [
 ]
 
 
+EXACTLY = [
+    # dimension, typed, mend, fix
+    (Dimension.FRACTION, Decimal("0.98"), 'write "98 %" or "0.98 %"', None),
+    (Dimension.FRACTION, "0.880", 'write "88.0 %" or "0.880 %"', None),
+    (Dimension.FRACTION, 88, 'write "88 %"', "88 %"),
+    (Dimension.FRACTION, "88,5 %", 'write "88.5 %"', "88.5 %"),
+    (Dimension.FRACTION, "85-90 %", 'write the one that was measured, "85 %" or "90 %"', None),
+    (Dimension.TIME, "16 h 30 min", 'write "16.5 h"', "16.5 h"),
+    (Dimension.TIME, "16h20min", 'write "980 min"', "980 min"),
+    (Dimension.TIME, "1 d 4 h", 'write "28 h"', "28 h"),
+    (Dimension.MASS, "2 083 mg", 'write "2083 mg"', "2083 mg"),
+    (Dimension.MASS, "1 234,5 mg", 'write "1234.5 mg"', "1234.5 mg"),
+    (Dimension.MASS, "1'234 mg", 'write "1234 mg"', "1234 mg"),
+    (Dimension.MASS, "2,083 mg", 'write "2.083 mg" or "2083 mg"', None),
+    (Dimension.MASS, "1,234,567 g", 'write "1234567 g"', "1234567 g"),
+    (Dimension.MASS, "1,234.5 g", 'write "1234.5 g"', "1234.5 g"),
+    (Dimension.TEMPERATURE, "0 °C to rt", 'write what the thermometer showed, such as "0 °C to 25 °C"', None),
+    (Dimension.TEMPERATURE, "rt to 60 °C", 'write what the thermometer showed, such as "25 °C to 60 °C"', None),
+    (Dimension.TEMPERATURE, "0 °C to 25", 'write "0 °C to 25 °C" or "0 °C to 298 K"', None),
+    (Dimension.TEMPERATURE, "0 °C to 25,5 °C", 'write "0 °C to 25.5 °C"', "0 °C to 25.5 °C"),
+]
+
+
+@pytest.mark.parametrize(("dimension", "typed", "mend", "fix"), EXACTLY, ids=[str(row[1]) for row in EXACTLY])
+def test_offers_what_can_be_meant_and_puts_in_what_must_be(
+    dimension: Dimension, typed: object, mend: str, fix: str | None
+) -> None:
+    read = parse_temperature if dimension is Dimension.TEMPERATURE else lambda text: parse_quantity(text, dimension)
+    with pytest.raises(QuantityError) as caught:
+        read(typed)
+    assert (caught.value.mend, caught.value.fix) == (mend, fix)
+    if fix is not None:
+        read(fix)
+
+
+def test_a_mended_limit_stays_a_limit() -> None:
+    with pytest.raises(QuantityError) as caught:
+        parse_percent("< 2")
+    assert caught.value.fix == "< 2 %"
+
+
 @pytest.mark.parametrize(
     ("dimension", "typed", "rule", "mend"),
     REFUSED,
