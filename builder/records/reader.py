@@ -1,7 +1,7 @@
 """A record file -> Record, with the place of every value and every fault of the file at once."""
 
 import re
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, replace
 from difflib import get_close_matches
 from functools import cache
@@ -15,7 +15,7 @@ from builder.finding import Finding, Level, Place
 from builder.records.model import UNION_TAGS, Record
 from builder.records.rules import reading_rule
 from builder.records.settings import Settings
-from builder.records.yaml_text import Places, Plain, quoted, read_plain
+from builder.records.yaml_text import Places, Plain, read_plain
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
@@ -73,11 +73,12 @@ def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | Non
         try:
             made = model.model_validate(plainly.value)
         except ValidationError as error:
-            details = error.errors(include_url=False)
+            details = [detail for detail in error.errors(include_url=False) if not _is_echo(detail)]
+            meant = {_meant(detail, model) for detail in details if detail["type"] == "extra_forbidden"}
             findings += [
                 _form_finding(detail, plainly.value, plainly.places, model)
                 for detail in details
-                if not _is_echo(detail)
+                if not (detail["type"] == "missing" and _value_path(detail["loc"]) in meant)
             ]
     elif plainly.value is not None:
         fault = Fault(at=(), message="the file holds no keys", mend="write lines like title: …")
@@ -146,8 +147,7 @@ def _form_finding(detail: ErrorDetails, plain: Plain, places: Places, model: typ
         fault = Fault(at=path[:-1], on_key=True, message=f"{path[-1]} is missing", mend=f"add {path[-1]}: …")
         return _found("key-missing", fault, places)
     if kind == "extra_forbidden":
-        # The key is the writer's, so it may read like a tag.
-        return _found("key-unknown", _unknown_key((*_value_path(detail["loc"][:-1]), detail["loc"][-1]), model), places)
+        return _found("key-unknown", _unknown_key(_key_path(detail), model), places)
     if "mend" in context:
         at = (*path, *context["at"])
         fault = Fault(at=at, message=context["message"], mend=context["mend"], fix=context["fix"])
@@ -202,22 +202,39 @@ def _value_path(loc: tuple[int | str, ...]) -> ValuePath:
     return tuple(step for step in loc if step not in UNION_TAGS)
 
 
+def _key_path(detail: ErrorDetails) -> ValuePath:
+    """Return the way to a key of the writer's, which may read like a tag."""
+    return (*_value_path(detail["loc"][:-1]), detail["loc"][-1])
+
+
+def _meant(detail: ErrorDetails, model: type[BaseModel]) -> ValuePath:
+    """Return the way to the key that was mistyped: were it missing, the slip would be told twice."""
+    path = _key_path(detail)
+    return (*path[:-1], _unknown_key(path, model).fix or "")
+
+
+def _nearest(typed: str, known: Iterable[str]) -> str | None:
+    """Return the known word that was most likely meant, whatever its capitals."""
+    folded = {word.casefold(): word for word in known}
+    near = get_close_matches(typed.casefold(), folded, n=1, cutoff=0.6)
+    return folded[near[0]] if near else None
+
+
 def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
     key = str(path[-1])
     known = sorted({name for owner in _models_at(model, path[:-1]) for name in _keys_of(owner)})
-    near = get_close_matches(key, known, n=1, cutoff=0.6)
+    near = _nearest(key, known)
     if near:
-        message, mend = f'unknown key "{key}"; did you mean "{near[0]}"?', f"write {near[0]}"
-        return Fault(at=path, on_key=True, message=message, mend=mend, fix=near[0])
+        message, mend = f'unknown key "{key}"; did you mean "{near}"?', f"write {near}"
+        return Fault(at=path, on_key=True, message=message, mend=mend, fix=near)
     return Fault(at=path, on_key=True, message=f'unknown key "{key}"', mend=f"known keys here: {', '.join(known)}")
 
 
 def _not_permitted(path: ValuePath, value: Plain, context: Mapping[str, Any]) -> Fault:
     permitted = re.findall(r"'((?:[^'\\]|\\.)*)'|\"((?:[^\"\\]|\\.)*)\"|(\d+)", str(context.get("expected", "")))
     words = [next(word for word in found if word) for found in permitted]
-    near = get_close_matches(str(value), words, n=1, cutoff=0.6)
-    hint = f'; did you mean "{near[0]}"?' if near else ""
-    fix = quoted(near[0]) if near and not re.fullmatch(r"[A-Za-z0-9' -]+", near[0]) else (near[0] if near else None)
+    fix = _nearest(str(value), words)
+    hint = f'; did you mean "{fix}"?' if fix else ""
     return Fault(
         at=path,
         message=f'"{value}" is not permitted here{hint}',

@@ -64,6 +64,9 @@ TRAPS = [
     ("performed: {date: 05.03.2026, by: [bench-2]}", "value-not-permitted", "05.03.2026", "2026-03-05"),
     ("performed: {date: 14.03.2026, by: [bench-2]}", "value-not-permitted", "14.03.2026", "2026-03-14"),
     ("status: curent", "value-not-permitted", "curent", "current"),
+    ("status: Draft", "value-not-permitted", "Draft", "draft"),
+    (outcome_example("{conversion: 5 %}", more="claim: {mechanism: sn2'}"), "value-not-permitted", "sn2'", "SN2'"),
+    (outcome_example("{conversion: 5 %}", more="claim: {mechanism: e1CB}"), "value-not-permitted", "e1CB", "E1cB"),
     ("related: [ns7k3qfmc]", "value-not-permitted", "ns7k3qfmc", "NS7K3QFMC"),
     ("title: 42", "value-wrong-type", "42", "'42'"),
     (
@@ -246,6 +249,9 @@ def test_every_value_has_its_place() -> None:
 UNKNOWN_KEYS = [
     ("sovent: x", "sovent", "solvent"),
     ("stages: [{temprature: 60 °C, temperature: 60 °C, time: 16 h}]", "temprature", "temperature"),
+    ("stages: [{temprature: 60 °C, time: 16 h}]", "temprature", "temperature"),
+    ("Titel: Azide\n# without title", "Titel", "title"),
+    ("STAGES: {temperature: 60 °C, time: 16 h}\n# without stages", "STAGES", "stages"),
     ("performed: {date: 2026-03-14, by: [bench-2], run: 2}", "run", "runs"),
     ("reviewed: {by: bench-1, date: 2026-03-20, quux: 1}", "quux", None),
 ]
