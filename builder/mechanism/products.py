@@ -235,8 +235,10 @@ def _rewrites(
     """Yield the routes that end in a row of rewrites.tsv, where the flask holds what it takes."""
     for row in load_rewrites():
         if row.stage is stage and (row.role is None or row.role in roles_in(species)):
-            for product in rewritten(reached, row):
-                yield Route(start, site, (*events, Event(row.kind)), product, StereoEffect.NOT_DETERMINED)
+            pieces = (piece for made in rewritten(reached, row) for piece in made.fragments if _has_carbon(piece))
+            yield from (
+                Route(start, site, (*events, Event(row.kind)), each, StereoEffect.NOT_DETERMINED) for each in pieces
+            )
 
 
 def _additions(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[_Step]:
@@ -303,8 +305,12 @@ def _products_of(start: Structure, site: ReactiveSite, events: tuple[Event, ...]
     arrives = frozenset(edit.from_nucleophile.values())
     yield Route(start, site, events, edit.product, edit.effect, arrives), edit.others
     for piece in edit.others:
-        if any(atom.symbol == "C" for atom in piece.atoms):
+        if _has_carbon(piece):
             yield Route(start, site, events, piece, StereoEffect.NOT_APPLICABLE), (edit.product,)
+
+
+def _has_carbon(piece: Structure) -> bool:
+    return any(atom.symbol == "C" for atom in piece.atoms)
 
 
 # --- through a cation -------------------------------------------------------------------------------------

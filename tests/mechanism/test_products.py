@@ -4,11 +4,15 @@ import pytest
 
 from builder.chemistry.perception import sites_of
 from builder.chemistry.structure import parse_smiles
-from builder.mechanism.products import Event, routes_to
-from builder.mechanism.reaction import SiteInPlay
+from builder.chemistry.transform import UnbalancedTransformation
+from builder.mechanism import products
+from builder.mechanism.products import Event, Route, routes_to
+from builder.mechanism.reaction import SiteInPlay, with_halides_set_free
 
 AZIDE = "[Na+].[N-]=[N+]=[N-]"
 ETHOXIDE = "[Na+].CC[O-]"
+LDA = "[Li+].CC(C)[N-]C(C)C"
+SILVER = "[Ag+].[O-][N+](=O)[O-]"
 
 # substrate, leaving group, flask, product, last event. Textbook chemistry (March's Advanced Organic Chemistry,
 # 7th ed., ch. 10, 15, 17 and 18, from memory).
@@ -34,6 +38,27 @@ FOLLOWS = [
     ("CCCCCl", "chloride", ["CCOC(=O)CC(=O)OCC", ETHOXIDE], "CCCCC(C(=O)OCC)C(=O)OCC", Event.SUBSTITUTION),
     ("CI", "iodide", ["[Na+].[O-]N=O"], "C[N+](=O)[O-]", Event.SUBSTITUTION),
     ("CI", "iodide", ["[Na+].[O-]N=O"], "CON=O", Event.SUBSTITUTION),
+    ("BrCc1ccccc1", "bromide", ["N"], "C(N(Cc1ccccc1)Cc1ccccc1)c1ccccc1", Event.SUBSTITUTION),  # three times
+    ("CI", "iodide", ["NCc1ccccc1"], "C[N+](C)(C)Cc1ccccc1.[I-]", Event.SUBSTITUTION),  # exhaustive methylation
+    ("CI", "iodide", ["N"], "C[N+](C)(C)C.[I-]", Event.SUBSTITUTION),  # four times
+    ("BrCC1CC1", "bromide", ["O"], "OCCC=C", Event.SUBSTITUTION),  # cyclopropylmethyl to homoallyl
+    ("BrCC1CC1", "bromide", ["O"], "OC1CCC1", Event.SUBSTITUTION),
+    ("BrC1CCC1", "bromide", ["O"], "OCC1CC1", Event.SUBSTITUTION),
+    ("BrC1CC1", "bromide", ["O", SILVER], "C=CCO", Event.SUBSTITUTION),  # cyclopropyl to allyl
+    ("CC(O)C1CC1", "hydroxyl", ["Br"], "CC=CCCBr", Event.SUBSTITUTION),
+    ("CN1CCC(Cl)CC1", "chloride", ["O"], "C=CCC[N+](C)=C", Event.FRAGMENTATION),  # Grob
+    ("CC(Br)CC(C)(C)O", "bromide", ["O"], "CC(C)=O", Event.FRAGMENTATION),
+    ("CC(Br)C(C)Br", "bromide", ["[Zn]"], "CC=CC", Event.ELIMINATION),
+    ("BrC(c1ccccc1)C(Br)c1ccccc1", "bromide", ["[Na+].[I-]"], "C(=Cc1ccccc1)c1ccccc1", Event.ELIMINATION),
+    ("CC(C)(C)O", "hydroxyl", ["CC#N", "O=S(=O)(O)O", "O"], "CC(=O)NC(C)(C)C", Event.HYDRATION),  # Ritter
+    ("CI", "iodide", ["O=C1CCCCC1", LDA], "CC1CCCCC1=O", Event.SUBSTITUTION),
+    ("CI", "iodide", ["CS(C)(=O)=O", "[Li]CCCC"], "CCS(C)(=O)=O", Event.SUBSTITUTION),
+    ("C=CCCC", "none", ["Br"], "CCCC(C)Br", Event.ADDITION),
+    ("C=CCCC", "none", ["Br", "CC(C)(C)OOC(C)(C)C"], "CCCCCBr", Event.ADDITION),  # peroxide turns it round
+    ("CCC=CC", "none", ["Br"], "CCCC(C)Br", Event.ADDITION),  # either end of a like pair
+    ("CCC=CC", "none", ["Br"], "CCC(Br)CC", Event.ADDITION),
+    ("C=CC(=O)OC", "none", ["Br"], "BrCCC(=O)OC", Event.ADDITION),  # away from the acceptor
+    ("ClCCCC(C)=O", "chloride", ["[Na+].[OH-]"], "CC(=O)C1CC1", Event.RING_CLOSURE),
 ]
 DOES_NOT_FOLLOW = [
     ("CCC(C)Br", "bromide", [AZIDE], "CCCCN=[N+]=[N-]"),
@@ -42,15 +67,38 @@ DOES_NOT_FOLLOW = [
     ("CCCCBr", "bromide", [AZIDE], "CCC(C)N=[N+]=[N-]"),
     ("OCCCCBr", "bromide", ["[Na+].[OH-]"], "CC1CCO1"),
     ("ClC12CCC(CC1)C2", "chloride", ["O"], "C1CC2CCC1C2"),
+    ("CCCCBr", "bromide", [AZIDE, "CC(C)=O"], "CCCCCC(C)=O"),  # acetone as a mere solvent
+    ("CCCCBr", "bromide", [AZIDE, "CC#N"], "CCCCCC#N"),
+    ("CCCCBr", "bromide", [ETHOXIDE, "CCOC(C)=O"], "CCCCCC(=O)OCC"),
+    ("CCCCBr", "bromide", [AZIDE, "C1CCOC1"], "CCCCOCCCCN=[N+]=[N-]"),  # THF opened
+    ("C=CCCC", "none", ["Br"], "CCCCCBr"),
+    ("C=CCCC", "none", ["SCc1ccccc1"], "CCCCCSCc1ccccc1"),
+    ("CC(Br)C(C)Br", "bromide", [AZIDE], "CC=CC"),
+    ("CC(C)(C)Br", "bromide", ["CC#N"], "CC(=O)NC(C)(C)C"),  # no water yet
+]
+# substrate, group, flask, product, a gate that stands on every way to it
+CLOSED = [
+    ("Clc1ccccc1", "chloride", [AZIDE], "[N-]=[N+]=Nc1ccccc1", "sn2-closed-unsaturated"),
+    ("CCCCF", "fluoride", [AZIDE], "CCCCN=[N+]=[N-]", "leaving-group-stays"),
+    ("CCCCO", "hydroxyl", [AZIDE], "CCCCN=[N+]=[N-]", "leaving-group-stays"),
+    ("ClC12CCC(CC1)C2", "chloride", ["O"], "OC12CCC(CC1)C2", "sn2-closed-bridgehead"),
+    ("ClC(Cl)Cl", "chloride", [AZIDE], "ClC(Cl)N=[N+]=[N-]", "sn2-closed-trihalomethyl"),
+    ("OCCCCF", "fluoride", ["[Na+].[OH-]"], "C1CCOC1", "leaving-group-stays"),
+    ("CCCCF", "fluoride", [ETHOXIDE], "C=CCC", "leaving-group-stays"),
 ]
 
 
-def _routes(substrate: str, group: str, flask: list[str], product: str) -> tuple[Event, ...]:
+def _found(substrate: str, group: str, flask: list[str], product: str) -> tuple[Route, ...]:
     structure = parse_smiles(substrate)
-    sites = tuple(SiteInPlay(structure, site) for site in sites_of(structure, group))
     species = tuple(parse_smiles(each) for each in flask)
+    activated = any(each in {"Br", "O=S(=O)(O)O", SILVER} for each in flask)
+    sites = tuple(SiteInPlay(structure, site, activated) for site in sites_of(structure, group))
     (routes,) = routes_to((parse_smiles(product),), sites, species)
-    return tuple(route.events[-1] for route in routes)
+    return routes
+
+
+def _routes(substrate: str, group: str, flask: list[str], product: str) -> tuple[Event, ...]:
+    return tuple(r.events[-1] for r in _found(substrate, group, flask, product) if not r.closed_by)
 
 
 @pytest.mark.parametrize(
@@ -65,3 +113,31 @@ def test_follows(substrate: str, group: str, flask: list[str], product: str, eve
 )
 def test_does_not_follow(substrate: str, group: str, flask: list[str], product: str) -> None:
     assert _routes(substrate, group, flask, product) == ()
+
+
+@pytest.mark.parametrize(("substrate", "group", "flask", "product", "gate"), CLOSED, ids=[row[3] for row in CLOSED])
+def test_a_way_that_a_gate_closes_is_shown_as_closed(
+    substrate: str, group: str, flask: list[str], product: str, gate: str
+) -> None:
+    found = _found(substrate, group, flask, product)
+    assert found
+    assert all(gate in {each.rule.id for each in route.closed_by} for route in found)
+
+
+def test_an_edit_that_cannot_balance_is_no_way_and_stops_nothing(monkeypatch: pytest.MonkeyPatch) -> None:
+    def refuse(*_: object, **__: object) -> object:
+        raise UnbalancedTransformation("nothing balances here")
+
+    monkeypatch.setattr(products, "substitute", refuse)
+    monkeypatch.setattr(products, "shift_12", refuse)
+    routes_to.cache_clear()
+    assert _routes("CCC(C)Br", "bromide", [AZIDE], "CC=CC")
+    assert _routes("CC(C)(C)Cl", "chloride", [AZIDE], "CC(C)(C)N=[N+]=[N-]")  # by capture
+    assert not _routes("CCCCBr", "bromide", [AZIDE], "CCCCN=[N+]=[N-]")
+    routes_to.cache_clear()
+
+
+def test_tetrahalomethanes_act_only_beside_a_phosphine() -> None:
+    bromine_source, phosphine = parse_smiles("BrC(Br)(Br)Br"), parse_smiles("c1ccc(P(c2ccccc2)c2ccccc2)cc1")
+    assert list(with_halides_set_free([bromine_source])) == [bromine_source]
+    assert parse_smiles("[Br-]") in set(with_halides_set_free([bromine_source, phosphine]))

@@ -1,0 +1,35 @@
+"""Roles of species in the flask; the pKaH values are from memory (Bordwell's DMSO scale, and water for alkoxides)."""
+
+import pytest
+
+from builder.chemistry.structure import parse_smiles
+from builder.mechanism.flask import Role, roles_in
+
+ROLES = [
+    ("[Na+].[H-]", "strong base"),  # pKaH 35
+    ("[Li+].CC(C)[N-]C(C)C", "strong base"),  # 36
+    ("[Na+].C[Si](C)(C)[N-][Si](C)(C)C", "strong base"),  # 26
+    ("[Li]CCCC", "strong base"),  # 50
+    ("C[Mg]Br", "strong base"),  # 48
+    ("[K+].CC(C)(C)[O-]", "strong base"),  # 19 in water
+    ("[Na+].C[S](=O)[CH2-]", "strong base"),  # 35
+    ("[Na+].CC[O-]", ""),  # 16 in water
+    ("[K+].[K+].[O-]C([O-])=O", ""),  # 10
+    ("[Na+].[C-]#N", ""),
+    ("[Na+].O=C1[N-]C(=O)c2ccccc21", ""),  # phthalimide, 8
+    ("[Na+].[N-]=[N+]=[N-]", ""),
+    ("[Na+].[BH4-]", ""),
+    ("[Na+].[OH-]", "water"),
+    ("O", "water"),
+    ("[Zn]", "two-electron donor"),
+    ("CC(C)(C)OOC(C)(C)C", "radical initiator"),
+    ("CC(C)(C#N)N=NC(C)(C)C#N", "radical initiator"),
+    ("CC(C)=O", ""),
+    ("C1CCOC1", ""),
+]
+
+
+@pytest.mark.parametrize(("smiles", "word"), ROLES, ids=[row[0] for row in ROLES])
+def test_roles(smiles: str, word: str) -> None:
+    expected = {Role(word)} if word else set()
+    assert roles_in([parse_smiles(smiles)]) == expected
