@@ -533,7 +533,8 @@ class _Listed:
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
         many = handler(schema) | ({"uniqueItems": True} if self.is_distinct else {})
-        return {"anyOf": [many["items"], many]}
+        # Not anyOf: an editor would then complain of the whole list where one value in it is mistyped.
+        return {"if": {"type": "array"}, "then": many, "else": many["items"]}
 
     @staticmethod
     def _as_list(value: object) -> object:

@@ -27,7 +27,8 @@ class _Generator(GenerateJsonSchema):
         return self.generate_inner(schema["schema"])
 
     def tagged_union_schema(self, schema: Any) -> JsonSchemaValue:
-        return {"anyOf": [self.generate_inner(choice) for choice in schema["choices"].values()]}
+        text, more = (self.generate_inner(schema["choices"][tag]) for tag in ("<text>", "<more>"))
+        return _text_or(text, more)
 
     def field_title_should_be_set(self, schema: Any) -> bool:  # noqa: ARG002 - the signature is pydantic's
         return False
@@ -39,12 +40,14 @@ def record_schema(classes: Iterable[str], leaving_groups: Iterable[str]) -> dict
     parts = schema["$defs"]
     substrate = parts["Substrate"]["properties"]
     one_class = {"type": "string", "enum": sorted(classes)}
-    substrate["class"] = {"anyOf": [one_class, {"type": "array", "items": one_class, "minItems": 1}]}
+    many_classes = {"type": "array", "items": one_class, "minItems": 1}
+    substrate["class"] = {"if": {"type": "array"}, "then": many_classes, "else": one_class}
     substrate["leaving_group"] = {"type": "string", "enum": sorted({*leaving_groups, "none"})}
     schema["allOf"] = [_one_of("nucleophile", "base"), _SOLVENT_OR_NEAT, *map(_with_status, _STATUS_KEYS)]
     parts["Substrate"]["allOf"] = [_one_of(*STRUCTURES), _one_of(*QUANTITIES_OF_SUBSTRATE)]
     parts["Product"]["allOf"] = [_one_of(*STRUCTURES)]
     parts["Measurement"]["allOf"] = [{"oneOf": [_has(kind) for kind in KINDS_OF_MEASUREMENT]}, _YIELD_OF_A_KIND]
+    parts["Outcome"]["properties"]["sought"] = _text_or({"type": "string"}, {"$ref": "#/$defs/Sought"})
     parts["Outcome"]["allOf"] = [_WHAT_WENT_IS_SHOWN]
     return schema
 
@@ -52,6 +55,11 @@ def record_schema(classes: Iterable[str], leaving_groups: Iterable[str]) -> dict
 def settings_schema() -> dict[str, Any]:
     """Return the schema of `entries/handbook.yml`."""
     return _schema_of(Settings, "Settings of a condition handbook")
+
+
+def _text_or(text: JsonSchemaValue, more: JsonSchemaValue) -> JsonSchemaValue:
+    """Say what a text must be and what anything else; with anyOf an editor could not point into `more`."""
+    return {"if": {"type": "string"}, "then": text, "else": more}
 
 
 def _has(*keys: str) -> dict[str, Any]:

@@ -241,6 +241,32 @@ def test_what_the_schema_knows_from_the_tables(example: str, validator: jsonsche
     assert not validator.is_valid(_plain(with_example(example)))
 
 
+POINTED_AT = [
+    # example, where an editor draws its line, a word of what it says
+    ("stages: [{temperature: 60 °C, time: 16 h, vesel: open}]", ("stages", 0), "vesel"),
+    ("stages: [{temperature: 60 °C, time: 16}]", ("stages", 0, "time"), "16"),
+    ("stages: {temperature: 60 °C, time: 16}", ("stages", "time"), "16"),
+    ("solvent: [{name: DMF, volum: 20 mL}]", ("solvent", 0), "volum"),
+    ("solvent: {name: DMF, volume: 20 g}", ("solvent", "volume"), "20 g"),
+    ("nucleophile: [{name: x, smile: '[OH-]'}]", ("nucleophile", 0), "smile"),
+    ("nucleophile: {name: x, equivalents: 1.5 equiv}", ("nucleophile", "equivalents"), "1.5 equiv"),
+    ("nucleophile: water", ("nucleophile",), "water"),
+    ("performed: {date: 14.03.2026, by: bench-2}", ("performed", "date"), "14.03.2026"),
+    ("evidence: [1H NMR, {what: x, fil: y}]", ("evidence", 1), "fil"),
+    ("outcome: {result: [no reaction], sought: {name: x, smile: CC}}", ("outcome", "sought"), "smile"),
+    (SUBSTRATE.replace("secondary", "[secondary, prim]") % "smiles: CC, mass: 1 g", ("substrate", "class", 1), "prim"),
+]
+
+
+@pytest.mark.parametrize(("example", "path", "word"), POINTED_AT, ids=[row[0][:50] for row in POINTED_AT])
+def test_an_editor_points_at_the_slip_itself(
+    example: str, path: tuple[str | int, ...], word: str, validator: jsonschema.Draft202012Validator
+) -> None:
+    errors = list(validator.iter_errors(_plain(with_example(example))))
+    assert {tuple(error.absolute_path) for error in errors} == {path}
+    assert any(word in error.message for error in errors)
+
+
 def test_every_key_is_described() -> None:
     schema = schemas()["record-1.json"]
     described = [name for name, part in schema["$defs"].items() if part.get("description")]
