@@ -197,7 +197,10 @@ def _from_site(each: SiteInPlay, species: tuple[Structure, ...]) -> Iterator[_St
 
 def _closing(each: SiteInPlay, event: Event) -> tuple[Gate, ...]:
     """Return the gates that close an event at a site; empty where one of its mechanisms is open."""
-    gates = [closing_gates(mechanism, each.situation) for mechanism in _MECHANISMS.get(event, ())]
+    ways = _MECHANISMS.get(event, ())
+    if 3 in each.site.ring_sizes:  # a cyclopropyl cation opens before anything is captured, seen among the cations
+        ways = tuple(mechanism for mechanism in ways if mechanism is not Mechanism.SN1)
+    gates = [closing_gates(mechanism, each.situation) for mechanism in ways]
     return tuple(dict.fromkeys(gate for some in gates for gate in some)) if all(gates) else ()
 
 

@@ -83,6 +83,7 @@ CLOSED = [
     ("CCCCO", "hydroxyl", [AZIDE], "CCCCN=[N+]=[N-]", "leaving-group-stays"),
     ("ClC12CCC(CC1)C2", "chloride", ["O"], "OC12CCC(CC1)C2", "sn2-closed-bridgehead"),
     ("ClC(Cl)Cl", "chloride", [AZIDE], "ClC(Cl)N=[N+]=[N-]", "sn2-closed-trihalomethyl"),
+    ("BrC1CC1", "bromide", [AZIDE], "[N-]=[N+]=NC1CC1", "sn2-closed-cyclopropyl"),
     ("OCCCCF", "fluoride", ["[Na+].[OH-]"], "C1CCOC1", "leaving-group-stays"),
     ("CCCCF", "fluoride", [ETHOXIDE], "C=CCC", "leaving-group-stays"),
 ]
