@@ -55,6 +55,7 @@ MEET_IN_ONE_PRODUCT = 4
 MAX_SHIFTS = 3
 MAX_CATIONS = 60  # of one ionisation; a steroid's skeleton has no more within three shifts
 MAX_INTERMEDIATES = 40  # products of the first event that may react once more
+MAX_REPEATED = 12  # products of the second alkylation, and of the third, that may be alkylated once more
 _ELIMINATIONS = (StereoEffect.ANTI, StereoEffect.SYN, StereoEffect.NOT_DETERMINED)
 HALOGENS = frozenset({"BrBr", "ClCl", "II"})
 
@@ -130,11 +131,9 @@ def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iter
     for route, freed in first:
         if not route.closed_by:
             intermediates.setdefault(route.product, (route, freed))
-    yield (
-        further
-        for route, freed in islice(intermediates.values(), MAX_INTERMEDIATES)
-        for further in _second_events(route, (*flask, *freed), sites)
-    )
+    kept = list(islice(intermediates.values(), MAX_INTERMEDIATES))
+    yield (further for route, freed in kept for further in _second_events(route, (*flask, *freed), sites))
+    yield _alkylated_again([route for route, _ in kept], flask, sites)
 
 
 @lru_cache(maxsize=128)
@@ -143,9 +142,9 @@ def routes_to(
 ) -> tuple[tuple[Route, ...], ...]:
     """Return, for each product, the routes of the shortest kind that give its constitution; empty where none does.
 
-    Salts and free compounds are one, configurations are left to the caller. Each of the three stages (one event,
-    through a cation, two events) is only entered while a product is still without an open route; closed ones are
-    given only where there is no open one.
+    Salts and free compounds are one, configurations are left to the caller. Each stage (one event, through a
+    cation, two events) is only entered while a product is still without an open route; closed ones are
+    given only where there is no open one. Last of all the product attacks further molecules of substrate.
     """
     wanted = [_constitutions(product) for product in products]
     found: list[list[Route]] = [[] for _ in products]
@@ -413,22 +412,26 @@ def _second_events(route: Route, species: tuple[Structure, ...], in_play: tuple[
         for further, _ in _from_site(SiteInPlay(intermediate, site, activated), species):
             yield replace(further, start=route.start, site=route.site, events=(*route.events, *further.events))
     yield from _rewrites(route.start, route.site, route.events, intermediate, Stage.PRODUCT, species)
-    yield from _alkylated_again(route, species, in_play)
 
 
-def _alkylated_again(route: Route, species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
-    """Yield what the product gives with further molecules of substrate; N, S and P take up to four in all."""
+def _alkylated_again(
+    level: list[Route], species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]
+) -> Iterator[Route]:
+    """Yield what products give with further molecules of substrate; N, S and P take up to four in all."""
     has_strong_base = Role.STRONG_BASE in roles_in(species)
-    level, seen = [route], {route.product}
+    partners = [each for each in in_play if not each.site.is_addition]
+    seen = {route.product for route in level}
     for taken in range(2, MEET_IN_ONE_PRODUCT + 1):
-        following: list[Route] = []
-        for reached, each in ((r, e) for r in level for e in in_play if not e.site.is_addition):
+        following: dict[Structure, Route] = {}
+        for reached, each in ((route, each) for route in level for each in partners):
             for nucleophile in attacking_atoms(reached.product):
                 repeats = taken == 2 or nucleophile.symbol in {"N", "S", "P"}
                 if repeats and (has_strong_base or not nucleophile.needs_strong_base):
                     for edit in _one(partial(substitute, each.on, each.site, nucleophile)):
                         events = (*reached.events, Event.SUBSTITUTION)
-                        following.append(Route(route.start, route.site, events, edit.product, edit.effect))
-        level = [r for r in following if r.product not in seen]
-        seen |= {r.product for r in level}
-        yield from following
+                        route = Route(reached.start, reached.site, events, edit.product, edit.effect)
+                        following.setdefault(edit.product, route)
+        made = [route for product, route in following.items() if product not in seen]
+        yield from made
+        seen |= following.keys()
+        level = made[:MAX_REPEATED]
