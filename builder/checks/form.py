@@ -11,7 +11,7 @@ from builder.finding import Level
 from builder.mechanism.amounts import Role, charged_rows
 from builder.records.model import Record, Solvent
 from builder.records.quantities import Dimension
-from builder.records.specimen import GAP, ONE_PRODUCT, TWO_PRODUCTS, outcome_example
+from builder.records.specimen import ONE_PRODUCT, TWO_PRODUCTS, outcome_example
 from builder.rule import Fault, Path, rule
 
 __all__ = ["FORM_CHECKS"]
@@ -144,23 +144,6 @@ def fractions_do_not_add_up(case: Case) -> Iterator[Fault]:
         yield Fault(
             at=("solvent",), message=f"the fractions add up to {sum(fractions):g} %", mend="correct them to 100 %"
         )
-
-
-@rule(
-    id="gap-left-open",
-    title="A gap of the skeleton is still open",
-    source="record-format",
-    fires_on=(f"notebook: {GAP}",),
-    silent_on=("notebook: BK2/112",),
-)
-def gap_is_left_open(case: Case) -> Iterator[Fault]:
-    """What `handbook new` left to fill in is filled in.
-
-    A key that nobody can fill is taken out, so that its absence is seen.
-    """
-    for path, text in _texts(case.record):
-        if GAP in text:
-            yield Fault(at=path, message="this is still to fill in", mend="write the value, or drop the key")
 
 
 @rule(
@@ -356,7 +339,6 @@ FORM_CHECKS = (
     dates_are_out_of_order,
     entry_is_not_file_name,
     fractions_do_not_add_up,
-    gap_is_left_open,
     label_stands_twice,
     label_is_unknown,
     quantity_is_missing,

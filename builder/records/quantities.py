@@ -513,12 +513,18 @@ def _quantity_error(text: str, tidy: str, number: str | None, spelling: str, dim
     )
 
 
-def comma_error(text: str) -> QuantityError | None:
-    """Return the error of a number with a decimal comma and a unit we know; None for any other text."""
+def comma_error(text: str, *, is_bare: bool) -> QuantityError | None:
+    """Return the error of a number with a comma and a unit we know; None for any other text.
+
+    is_bare: the number stands without a unit.
+    """
     tidy = _tidy(text)
     match = _COMMA_AND_UNIT.fullmatch(tidy)
-    is_quantity = match and any(match["unit"].strip() in spellings for spellings in _BY_SPELLING.values())
-    return _grouped_error(text, tidy) if is_quantity else None
+    if match is None:
+        return None
+    unit = match["unit"].strip()
+    is_known = any(unit in spellings for spellings in _BY_SPELLING.values())
+    return _grouped_error(text, tidy) if is_known or (is_bare and not unit) else None
 
 
 def _grouped_error(text: str, tidy: str) -> QuantityError:

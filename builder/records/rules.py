@@ -5,7 +5,7 @@ like every other rule. An example is YAML text that replaces whole top-level key
 """
 
 from builder.finding import Level
-from builder.records.specimen import TWO_PRODUCTS, outcome_example
+from builder.records.specimen import GAP, TWO_PRODUCTS, outcome_example
 from builder.rule import Rule, card
 
 __all__ = ["READING_RULES", "reading_rule"]
@@ -13,10 +13,10 @@ __all__ = ["READING_RULES", "reading_rule"]
 READING_RULES: tuple[Rule[object, object], ...] = (
     card(
         id="alias-overgrown",
-        title="An alias repeats too much",
+        title="More values than a record may hold",
         level=Level.ERROR,
         source="record-format",
-        text="""Aliases may repeat a value, but the record as read must stay below 20,000 values.
+        text="""A record as read holds at most 20,000 values, each alias counted as what it repeats.
 
         A handful of nested aliases can stand for millions of values and would stall every reader of the book.""",
         fires_on=(
@@ -104,6 +104,17 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         fires_on=(),
     ),
     card(
+        id="gap-left-open",
+        title="A gap of the skeleton is still open",
+        level=Level.ERROR,
+        source="record-format",
+        text="""What `handbook new` left to fill in is filled in.
+
+        A key that nobody can fill is taken out, so that its absence is seen.""",
+        fires_on=(f"notebook: {GAP}", f"stages: [{{temperature: {GAP}, time: 16 h}}]"),
+        silent_on=("notebook: BK2/112",),
+    ),
+    card(
         id="key-missing",
         title="A required key is missing",
         level=Level.ERROR,
@@ -136,6 +147,17 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         Otherwise nobody can say which of them the method, the spread and the label belong to.""",
         fires_on=(outcome_example("{yield: 81 %, ee: 97 %, of: A, kind: isolated}"),),
         silent_on=(outcome_example("{yield: 81 %, of: A, kind: isolated}"),),
+    ),
+    card(
+        id="text-cut-by-comment",
+        title="A text ends where YAML sees a comment",
+        level=Level.REMARK,
+        source="yaml-1-2",
+        text="""A text with a # behind a space stands in quotes.
+
+        There a comment begins: Run #3 of azide is read as Run. A remark of one's own is set apart, # like this.""",
+        fires_on=("title: Run #3 of azide", "work_up: [brine]\nnotebook: BK2 #112  # copied"),
+        silent_on=("title: 'Run #3 of azide'", "title: Azide of stage 1  # formed there"),
     ),
     card(
         id="text-split-at-comma",

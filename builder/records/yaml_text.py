@@ -1,22 +1,24 @@
-"""YAML text -> plain values, with the place of every one. The only home of the YAML library.
+"""YAML text -> plain values, with the place of every one.
 
 libyaml composes the node graph; our own constructor gives it YAML 1.2 core meaning (PyYAML's is 1.1), keeps the
 typed digits of numbers, refuses tags and repeated keys, bounds depth and aliases, and notes line and column of
-every key and value. Where the text is no YAML for a reason with one exact mend (an unquoted SMILES, say), the mend
-is applied in memory and reading goes on, so that one run reports everything.
+every key and value. Where the text is no YAML for a reason with one exact mend (an unquoted SMILES, say),
+`mended_text` applies it in memory and reading goes on, so that one run reports everything.
 """
 
 import re
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from decimal import Decimal
 
 import yaml
 from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave out the re-export
 
 from builder.finding import Finding, Place
-from builder.records.quantities import is_beyond_measure
+from builder.records.mended_text import STRUCTURE_KEYS, MendedText, quoted
+from builder.records.quantities import comma_error, is_beyond_measure
 from builder.records.rules import reading_rule
+from builder.records.specimen import GAP
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
@@ -28,7 +30,11 @@ MAX_MENDS = 60
 
 Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 
-_STRUCTURE_KEYS = {"smiles", "inchi", "sought"}
+_TEXT_KEYS = frozenset(
+    {"add", "atmosphere", "basis", "because", "by", "cause", "end_point", "evidence", "finding", "form", "name"}
+    | {"note", "notebook", "procedure", "scale_limit", "scope", "take_away", "title", "what", "work_up"}
+)
+_KEY_WITHOUT_SPACE = re.compile(r"(?P<key>[a-z_]{2,}):(?P<value>[^\s:/].*)")
 _INTEGER = re.compile(r"[-+]?[0-9]+")
 _FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _ALTERED_NUMBER = re.compile(r"[-+]?0\d+(\.\d*)?|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
@@ -82,15 +88,10 @@ class Plainly:
     findings: tuple[Finding, ...]
 
 
-def quoted(text: str) -> str:
-    """Return `text` as a single-quoted YAML scalar."""
-    return "'" + text.replace("'", "''") + "'"
-
-
 def read_plain(text: str, file: str) -> Plainly:
     """Read one YAML document; faults are returned, never raised."""
-    mended = _MendedText(text, file)
-    findings: list[Finding] = []
+    mended = MendedText(text, file)
+    findings = mended.mend_margins()
     for _ in range(MAX_MENDS):
         try:
             node = _Loader(mended.text).get_single_node()
@@ -104,7 +105,7 @@ def read_plain(text: str, file: str) -> Plainly:
     return Plainly(None, Places(file), tuple(findings))
 
 
-def _construct(node: yaml.Node | None, mended: "_MendedText", findings: list[Finding]) -> Plainly:
+def _construct(node: yaml.Node | None, mended: MendedText, findings: list[Finding]) -> Plainly:
     if node is None:
         fault = Fault(at=(), message="the file is empty", mend="start one with `handbook new`")
         findings.append(reading_rule("yaml-unreadable").finding(fault, Place(mended.file, 1, 1, 2)))
@@ -144,7 +145,7 @@ class _TooMuchError(Exception):
 class _Constructor:
     """Builds plain values from nodes, noting places and lexical faults on the way."""
 
-    def __init__(self, mended: "_MendedText") -> None:
+    def __init__(self, mended: MendedText) -> None:
         self.mended = mended
         self.text = mended.text
         self.values: dict[ValuePath, Place] = {}
@@ -172,13 +173,13 @@ class _Constructor:
         """
         self._count += 1
         if self._count > MAX_VALUES:
-            message = f"aliases blow this file up beyond {MAX_VALUES:,} values"
-            raise _TooMuchError("alias-overgrown", message, "write the values out", None)
+            message, mend = f"more than {MAX_VALUES:,} values", "keep data in a file beside the record, and name it"
+            raise _TooMuchError("alias-overgrown", message, mend, None)
         if len(path) > MAX_DEPTH:
             raise _TooMuchError("nesting-too-deep", f"more than {MAX_DEPTH} levels", "close the brackets earlier", node)
         self.values[path] = self._place(node)
         self._refuse_tag(node)
-        if path and path[-1] in _STRUCTURE_KEYS and self._is_bare_collection(node, path):
+        if path and path[-1] in STRUCTURE_KEYS and self._is_bare_collection(node, path):
             return self._unquoted_smiles(node)
         if isinstance(node, yaml.MappingNode):
             return self._mapping(node, path)
@@ -194,6 +195,9 @@ class _Constructor:
 
     def _scalar(self, node: yaml.ScalarNode, path: ValuePath) -> Plain:
         text: str = node.value
+        if GAP in text:
+            self.report("gap-left-open", node, "this is still to fill in", "write the value, or drop the key")
+            return text
         if node.style in {"'", '"', "|", ">"}:
             return text
         if text in _WORDS:
@@ -226,7 +230,23 @@ class _Constructor:
             return self._otherwise(node, text)
         if _INTEGER.fullmatch(text):
             return int(text)
-        return Decimal(text) if _FLOAT.fullmatch(text) else text
+        if _FLOAT.fullmatch(text):
+            return Decimal(text)
+        self._remark_on_comment(node, path)
+        return text
+
+    def _remark_on_comment(self, node: yaml.ScalarNode, path: ValuePath) -> None:
+        """Remark on a text that goes on behind " #3", where YAML reads a comment; "# so" is one."""
+        cut = self._rest_of_line(node).partition(" # ")[0].rstrip()
+        key = next((step for step in reversed(path) if isinstance(step, str)), "")
+        start, end = node.start_mark, node.end_mark
+        if not re.match(r" +#[^\s#]", cut) or key not in _TEXT_KEYS or start.line != end.line:
+            return
+        whole = quoted(node.value + cut)
+        message = f'{key} is read as "{node.value}", and what follows # as a comment'
+        fault = Fault(at=(), message=message, mend=f"write {whole}", fix=whole)
+        place = self.mended.place(start.line, start.column, end.column + len(cut))
+        self.findings.append(reading_rule("text-cut-by-comment").finding(fault, place))
 
     def _otherwise(self, node: yaml.ScalarNode, text: str) -> Plain:
         number = Decimal(text) if _FLOAT.fullmatch(text) else None
@@ -258,15 +278,20 @@ class _Constructor:
     def _mapping(self, node: yaml.MappingNode, path: ValuePath) -> Plain:
         made: dict[str, Plain] = {}
         last = ""
-        for key_node, value_node in node.value:
+        for key_node, typed_node in node.value:
+            value_node = typed_node
             self._refuse_tag(key_node)
             if not isinstance(key_node, yaml.ScalarNode):
                 self.report("value-wrong-type", key_node, "a key is a word", "write one word and a colon")
                 continue
             key: str = key_node.value
-            if self._is_rest_of_a_text(node, key_node, value_node, last):
-                self._join(made, last, key_node, path)
-                continue
+            if self._is_without_colon(node, key_node, value_node):
+                glued = _KEY_WITHOUT_SPACE.fullmatch(key)
+                if glued is None and last:
+                    self._join(made, last, key_node, path)
+                    continue
+                if glued:
+                    key, value_node = self._taken_apart(glued, key_node)
             key_path = (*path, key)
             if key in made:
                 first = self.keys[key_path].line
@@ -282,21 +307,33 @@ class _Constructor:
             last = key
         return made
 
-    def _is_rest_of_a_text(self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node, last: str) -> bool:
-        """Say whether a flow mapping split a text at its comma: a "key" without colon behind a value."""
+    def _is_without_colon(self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node) -> bool:
+        """Say whether a "key" of a flow mapping is none: the rest of a text split at its comma, or "class:primary"."""
         is_bare = (
             isinstance(value, yaml.ScalarNode) and value.start_mark.index == value.end_mark.index and not value.style
         )
-        if not (node.flow_style and last and is_bare) or key.style:
+        if not (node.flow_style and is_bare) or key.style:
             return False
         return not self.text[key.end_mark.index :].lstrip().startswith(":")
 
+    def _taken_apart(self, glued: re.Match[str], node: yaml.ScalarNode) -> tuple[str, yaml.Node]:
+        fix = f"{glued['key']}: {glued['value']}"
+        self.report("yaml-unreadable", node, f"a space is missing after {glued['key']}:", f"write {fix}", fix)
+        return glued["key"], yaml.ScalarNode("", glued["value"], node.start_mark, node.end_mark)
+
     def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
-        place = self.values[(*path, last)]
+        begun, end = self.values[(*path, last)], self._place(rest)
+        place = replace(begun, end_column=end.end_column) if end.line == begun.line else begun
+        self.values[(*path, last)] = place
         space = self.text[rest.start_mark.index - 1]
         whole = f"{made[last]},{space if space.isspace() else ''}{rest.value}"
         made[last] = whole
-        self.findings = [f for f in self.findings if not (f.rule == "text-split-at-comma" and f.place == place)]
+        self.findings = [f for f in self.findings if f.place != begun]
+        comma = comma_error(whole, is_bare=last == "equivalents")
+        if comma:
+            fault = Fault(at=(), message=comma.message, mend=comma.mend, fix=comma.fix)
+            self.findings.append(reading_rule(comma.rule).finding(fault, place))
+            return
         fault = Fault(at=(), message=f"{last} is split at its comma", mend=f"write {quoted(whole)}", fix=quoted(whole))
         self.findings.append(reading_rule("text-split-at-comma").finding(fault, place))
 
@@ -360,108 +397,3 @@ def _is_locant(node: yaml.Node) -> bool:
 
 def _begins_with_locant(node: yaml.Node) -> bool:
     return bool(re.match(r"(\d+'?|[NOSP])-\S", str(node.value)))
-
-
-# --- text that is no YAML ---------------------------------------------------------------------------------
-
-_KEY_AND_VALUE = re.compile(r"^(?P<head>\s*(?:- +)*(?P<key>[A-Za-z_]+): +)(?P<value>\S.*?)(?P<tail>\s+#.*)?\s*$")
-_FLOW_SMILES = re.compile(r"(?P<key>smiles|inchi|sought): +(?P<value>[^\s'\"{,][^\s,}]*|\"[^\"]*\")")
-
-
-class _MendedText:
-    """A file's text with in-memory mends, able to say where something stood before them."""
-
-    def __init__(self, text: str, file: str) -> None:
-        self.text, self.file = text, file
-        self._shifts: list[tuple[int, int, int]] = []  # line, column, characters put in before it
-
-    def place(self, line: int, column: int, end_column: int) -> Place:
-        """Return the place in the file as written of a 0-based position in the mended text."""
-        if not self._shifts:
-            return Place(self.file, line + 1, column + 1, end_column + 1)
-        shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
-        end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
-        return Place(self.file, line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1)
-
-    def explain(self, error: yaml.MarkedYAMLError) -> tuple[Finding, bool]:
-        """Return the finding for a YAML error, and whether its cause has been mended in memory."""
-        mark = error.problem_mark or error.context_mark
-        if "exceeded maximum" in (error.problem or ""):
-            return self._finding(
-                "nesting-too-deep", mark, "more levels than any record needs", "close the brackets"
-            ), False
-        for candidate in (error.problem_mark, error.context_mark):
-            finding = self._mend_line(candidate.line) if candidate is not None else None
-            if finding is not None:
-                return finding, True
-        if error.context_mark is not None and "quoted scalar" in (error.context or ""):
-            return self._finding("yaml-unreadable", error.context_mark, "this quote is never closed", "close it"), False
-        if "single document" in (error.context or ""):
-            mend = "keep one record a file, without lines of ---"
-            return self._finding("yaml-unreadable", mark, "more than one document", mend), False
-        said, mend = error.problem or "not YAML", "indent with spaces, quote texts with : or #"
-        return self._finding("yaml-unreadable", mark, said, mend), False
-
-    def _mend_line(self, number: int) -> Finding | None:
-        lines = self.text.split("\n")
-        if number >= len(lines):
-            return None
-        line = lines[number]
-        margin = re.match(r"\s*", line)
-        if margin and "\t" in margin[0]:
-            fixed = margin[0].replace("\t", "  ") + line.lstrip()
-            column = margin[0].index("\t")
-            self._replace(lines, number, fixed)
-            return self._at(
-                number,
-                column,
-                column + 1,
-                "yaml-unreadable",
-                "a tab in the margin",
-                "indent with spaces",
-                None,
-            )
-        flow = self._flow_smiles(line)
-        if flow is not None:
-            return self._quote(lines, number, flow.start("value"), flow["value"], "smiles-unquoted")
-        whole = _KEY_AND_VALUE.match(line)
-        if whole and _needs_quotes(whole["value"]):
-            rule = "smiles-unquoted" if whole["key"] in _STRUCTURE_KEYS else "yaml-unreadable"
-            return self._quote(lines, number, whole.start("value"), whole["value"], rule)
-        return None
-
-    def _flow_smiles(self, line: str) -> re.Match[str] | None:
-        return next((match for match in _FLOW_SMILES.finditer(line) if _needs_quotes(match["value"])), None)
-
-    def _quote(self, lines: list[str], number: int, column: int, value: str, rule: str) -> Finding:
-        bare = value[1:-1] if value.startswith('"') and value.endswith('"') and len(value) > 1 else value
-        fix = quoted(bare)
-        line = lines[number]
-        self._replace(lines, number, line[:column] + fix + line[column + len(value) :])
-        finding = self._at(number, column, column + len(value), rule, f"YAML cannot read {value}", f"write {fix}", fix)
-        self._shifts.append((number, column, len(fix) - len(value)))
-        return finding
-
-    def _replace(self, lines: list[str], number: int, line: str) -> None:
-        lines[number] = line
-        self.text = "\n".join(lines)
-
-    def _at(self, line: int, column: int, end: int, rule: str, message: str, mend: str, fix: str | None) -> Finding:
-        return reading_rule(rule).finding(
-            Fault(at=(), message=message, mend=mend, fix=fix), self.place(line, column, end)
-        )
-
-    def _finding(self, rule: str, mark: yaml.Mark | None, message: str, mend: str) -> Finding:
-        line, column = (mark.line, mark.column) if mark is not None else (0, 0)
-        return self._at(line, column, column + 1, rule, message, mend, None)
-
-
-def _needs_quotes(value: str) -> bool:
-    """Say whether a value without quotes is one that YAML cannot read as text."""
-    if value.startswith("'"):
-        return False
-    if value.startswith('"'):
-        return value.endswith('"') and len(value) > 1 and "\\" in value
-    if value[0] in "[{" and value.endswith({"[": "]", "{": "}"}[value[0]]):
-        return "][" in value or bool(re.search(r"\][^\s,\]}]", value))
-    return value[0] in "@`%&*!|>[{" or ": " in value or value.endswith(":")

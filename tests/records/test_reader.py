@@ -47,7 +47,7 @@ TRAPS = [
     ("title: @home", "yaml-unreadable", "@home", "'@home'"),
     ("take_away: >20:1 selectivity", "yaml-unreadable", ">20:1 selectivity", "'>20:1 selectivity'"),
     ("notebook: 0042", "number-altered", "0042", "'0042'"),
-    ("solvent: [{name: 1,4-dioxane, volume: 20 mL}]", "text-split-at-comma", "1", "'1,4-dioxane'"),
+    ("solvent: [{name: 1,4-dioxane, volume: 20 mL}]", "text-split-at-comma", "1,4-dioxane", "'1,4-dioxane'"),
     (
         "stages: [{add: [2,2-dimethylpropan-1-ol, DMF], temperature: 60 °C, time: 1 h}]",
         "text-split-at-comma",
@@ -57,9 +57,13 @@ TRAPS = [
     (
         "safety_review: {by: safety-1, date: 2026-03-12, scope: azide at 15 mmol, no acid, no metal}",
         "text-split-at-comma",
-        "azide at 15 mmol",
+        "azide at 15 mmol, no acid, no metal",
         "'azide at 15 mmol, no acid, no metal'",
     ),
+    (outcome_example("{yield: 88,5 %, of: A, kind: assay}"), "quantity-decimal-comma", "88,5 %", "88.5 %"),
+    ("nucleophile: {name: x, smiles: '[OH-]', equivalents: 1,5}", "quantity-decimal-comma", "1,5", "1.5"),
+    ("nucleophile: {name: x, smiles: '[OH-]', mass: 2,083 mg}", "quantity-decimal-comma", "2,083 mg", None),
+    ("nucleophile: {name: x, smiles: '[OH-]', form: 1,5 x 2 cm}", "text-split-at-comma", "1,5 x 2 cm", "'1,5 x 2 cm'"),
     ("neat: no\n# without solvent", "boolean-word", "no", "false"),
     ("performed: {date: 05.03.2026, by: [bench-2]}", "value-not-permitted", "05.03.2026", "2026-03-05"),
     ("performed: {date: 14.03.2026, by: [bench-2]}", "value-not-permitted", "14.03.2026", "2026-03-14"),
@@ -89,6 +93,130 @@ TRAPS = [
     (outcome_example("{er: '97/3'}"), "ratio-unreadable", "'97/3'", "'97:3'"),
     (outcome_example("{ratio: 'A:B=65:35'}"), "ratio-unreadable", "'A:B=65:35'", "'A:B = 65:35'"),
 ]
+
+
+SITE = "class: secondary\n  leaving_group: bromide\n  amount: 10 mmol"
+SUBSTRATE = f"substrate:\n  name: 2-bromobutane\n  smiles: 'CCC(C)Br'\n  {SITE}"
+LAYOUT = [
+    # example, what the finding points at, exact fix; the cause is mended in memory and nothing else is wrong
+    ("title: 'fast' azide", "'fast' azide", "'''fast'' azide'"),
+    ('title: "fast" azide', '"fast" azide', "'\"fast\" azide'"),
+    ("title: 'it's late'", "'it's late'", "'it''s late'"),
+    ("work_up:\n  - 'fast' filtration\n  - brine", "'fast' filtration", "'''fast'' filtration'"),
+    ("solvent: [{name: 'dry' DMF, volume: 20 mL}]", "'dry' DMF", "'''dry'' DMF'"),
+    ("solvent: [{name: DMF #3, volume: 20 mL}]", "DMF #3", "'DMF #3'"),
+    ("solvent: [{name: 'chemist''s', form: a #1 b, volume: 20 mL}]", "a #1 b", "'a #1 b'"),
+    ("title: - azide", "- azide", "'- azide'"),
+    ("title: [2.2.1]bicycle", "[2.2.1]bicycle", "'[2.2.1]bicycle'"),
+    (SUBSTRATE.replace("class: s", "class:s"), "class:secondary", "class: secondary"),
+    (SUBSTRATE.replace("name: 2", "name:2"), "name:2-bromobutane", "name: 2-bromobutane"),
+    (SUBSTRATE.replace("class: s", "class:\u00a0s"), "class:\u00a0secondary", "class: secondary"),
+    (
+        "substrate: {name: x, smiles: 'CCC(C)Br', class:secondary, leaving_group: bromide, amount: 10 mmol}",
+        "class:secondary",
+        "class: secondary",
+    ),
+    ("title:azide", "title:azide", "title: azide"),
+    (SUBSTRATE.replace("  smiles", "\u00a0\u00a0smiles"), "\u00a0\u00a0", "  "),
+    (SUBSTRATE.replace("  smiles", " \u202fsmiles"), "\u202f", " "),
+    (SUBSTRATE.replace("  smiles", "\t\tsmiles"), "\t\t", "  "),
+    ("stages:\n  - temperature: 60 °C\n\ttime: 16 h", "\t", "    "),
+]
+
+
+@pytest.mark.parametrize(("example", "pointed_at", "fix"), LAYOUT, ids=[row[2] for row in LAYOUT])
+def test_slips_of_layout_are_mended(example: str, pointed_at: str, fix: str) -> None:
+    text = with_example(example)
+    finding = _one_error(_read(text))
+    lines = text.split("\n")
+    line = lines[finding.place.line - 1]
+    assert (finding.rule, finding.fix) == ("yaml-unreadable", fix)
+    assert line[finding.place.column - 1 : finding.place.end_column - 1] == pointed_at
+    lines[finding.place.line - 1] = line[: finding.place.column - 1] + fix + line[finding.place.end_column - 1 :]
+    assert _read("\n".join(lines)).record is not None
+
+
+UNMENDED = [
+    # example, what the finding points at, message, mend
+    ("title: 'open\nnotebook: 'BK2'", "'open", "this quote is never closed", "close it with '"),
+    ('title: "open', '"open', "this quote is never closed", 'close it with "'),
+    ("solvent: [{name: DMF}\ntitle: x", "[{name", "this bracket is never closed", "close it with ]"),
+    ("solvent: [{name: DMF\ntitle: x", "{name", "this bracket is never closed", "close it with }"),
+    ("evidence: [1H NMR\nrelated: [NS7K3QFMC]", "[1H", "this bracket is never closed", "close it with ]"),
+    (
+        SUBSTRATE.replace("  class", " class"),
+        "class",
+        "indented by 1; the lines above go on at 0 or 2",
+        "indent it by 2",
+    ),
+    (
+        SUBSTRATE.replace("  class", "   class"),
+        "class",
+        "indented by 3; the lines above go on at 0 or 2",
+        "indent it by 2",
+    ),
+    (
+        "solvent:\n  - name: DMF\n    volume: 20 mL\n   - name: water",
+        "- name: water",
+        "indented by 3; the lines above go on at 2",
+        "indent it by 2",
+    ),
+    (
+        "stages:\n  - temperature: 60 °C\n  time: 16 h",
+        "time",
+        "indented by 2; the lines above go on at 0 or 4",
+        "indent it by 4",
+    ),
+    (
+        "evidence: [\n  1H NMR,\n  {what: x}\n  {what: y}]",
+        "{what: y",
+        "a comma or ] is wanted here",
+        "set it, or put the text in quotes",
+    ),
+    ("title: x\nfoo bar\nnotebook: z", "foo bar", "a line without key and colon", "write key: value"),
+]
+
+
+@pytest.mark.parametrize(("example", "at", "message", "mend"), UNMENDED, ids=[row[0][:40] for row in UNMENDED])
+def test_other_faults_of_layout_are_told_where_they_begin(example: str, at: str, message: str, mend: str) -> None:
+    text = with_example(example)
+    finding = _one_error(_read(text))
+    assert (finding.rule, finding.message, finding.mend) == ("yaml-unreadable", message, mend)
+    assert text.split("\n")[finding.place.line - 1][finding.place.column - 1 :].startswith(at)
+
+
+CUT = [
+    # example, what the finding points at
+    ("title: Run #3 of azide", "Run #3 of azide"),
+    ("notebook: BK2 #112  # copied", "BK2 #112"),
+    ("take_away: 81 % in lot #3, less in #4", "81 % in lot #3, less in #4"),
+    ("work_up:\n  - filter #2\n  - brine", "filter #2"),
+]
+
+
+@pytest.mark.parametrize(("example", "whole"), CUT, ids=[row[1] for row in CUT])
+def test_a_text_cut_by_a_comment_is_remarked_on(example: str, whole: str) -> None:
+    text = with_example(example)
+    reading = _read(text)
+    assert reading.record is not None
+    (finding,) = reading.findings
+    line = text.split("\n")[finding.place.line - 1]
+    assert (finding.rule, finding.level, finding.fix) == ("text-cut-by-comment", Level.REMARK, f"'{whole}'")
+    assert line[finding.place.column - 1 : finding.place.end_column - 1] == whole
+
+
+@pytest.mark.parametrize("comment", ["# formed in stage 1", "#", "## formed", "#### 3"])
+def test_a_comment_set_apart_is_one(comment: str) -> None:
+    assert _read(with_example(f"title: Azide {comment}")).findings == ()
+
+
+def test_one_run_shows_every_gap_and_nothing_else_on_it() -> None:
+    text = with_example(
+        "title: TO FILL IN\nnotebook: 'TO FILL IN'\nsolvent: TO FILL IN\nevidence: [TO FILL IN]\n"
+        "stages: [{temperature: TO FILL IN, time: 16, vessel: TO FILL IN (which)}]"
+    )
+    rules = [finding.rule for finding in _read(text).findings]
+    assert sorted(rules) == ["gap-left-open"] * 6 + ["quantity-without-unit"]
 
 
 @pytest.mark.parametrize(("example", "rule", "quoted", "fix"), TRAPS, ids=[row[0][:40] for row in TRAPS])
@@ -168,6 +296,9 @@ HOSTILE: dict[str, tuple[Callable[[], bytes], str]] = {
     "100,000 levels": (lambda: b"[" * 100_000, "nesting-too-deep"),
     "3,000 indents": (lambda: b"\n".join(b" " * n + b"a:" for n in range(700)), "nesting-too-deep"),
     "an alias bomb": (_aliases, "alias-overgrown"),
+    "20,001 plain values": (lambda: b"a: [" + b"x," * 20_001 + b"]", "alias-overgrown"),
+    "a line of 200,000 colons": (lambda: b"a: {" + b"a: " * 66_000, "yaml-unreadable"),
+    "a comment behind 200,000 blanks": (lambda: b"title: a #b" + b" " * 200_000 + b"c\n- x", "yaml-unreadable"),
     "an alias of itself": (lambda: b"a: &a [*a]", "nesting-too-deep"),
     "a tag": (lambda: with_example("title: !!python/object/apply:os.system ['true']").encode(), "tag-refused"),
     "a standard tag": (lambda: with_example("title: !!str text").encode(), "tag-refused"),
