@@ -739,10 +739,13 @@ def _ring_carbon(bench: Workbench, atom: int, _: int | None, third: int | None, 
     bench.add_charge(oxygen, 1)
 
 
-def _metal_bond(bench: Workbench, atom: int, _: int | None, __: int | None, fourth: int | None) -> None:
+def _metal_bond(bench: Workbench, atom: int, second: int | None, _: int | None, fourth: int | None) -> None:
     metal = _need(fourth)
-    bench.cut(atom, metal)
+    bench.cut(atom if second is None else second, metal)
     bench.add_charge(metal, 1)
+    if second is not None:
+        bench.add_charge(second, -1)
+        bench.add_charge(atom, 1)
 
 
 def _hydride_transfer(bench: Workbench, atom: int, *_: int | None) -> None:

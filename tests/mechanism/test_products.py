@@ -38,6 +38,8 @@ FOLLOWS = [
     ("CCCCCl", "chloride", ["CCOC(=O)CC(=O)OCC", ETHOXIDE], "CCCCC(C(=O)OCC)C(=O)OCC", Event.SUBSTITUTION),
     ("CI", "iodide", ["[Na+].[O-]N=O"], "C[N+](=O)[O-]", Event.SUBSTITUTION),
     ("CI", "iodide", ["[Na+].[O-]N=O"], "CON=O", Event.SUBSTITUTION),
+    ("CI", "iodide", ["[Ag]C#N"], "C[N+]#[C-]", Event.SUBSTITUTION),
+    ("CI", "iodide", ["[Ag]C#N"], "CC#N", Event.SUBSTITUTION),
     ("BrCc1ccccc1", "bromide", ["N"], "C(N(Cc1ccccc1)Cc1ccccc1)c1ccccc1", Event.SUBSTITUTION),  # three times
     ("CI", "iodide", ["NCc1ccccc1"], "C[N+](C)(C)Cc1ccccc1.[I-]", Event.SUBSTITUTION),  # exhaustive methylation
     ("CI", "iodide", ["N"], "C[N+](C)(C)C.[I-]", Event.SUBSTITUTION),  # four times
