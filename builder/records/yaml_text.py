@@ -26,7 +26,7 @@ __all__ = ["Places", "Plain", "Plainly", "quoted", "read_plain"]
 
 MAX_DEPTH = 16
 MAX_VALUES = 20_000
-MAX_MENDS = 60
+MAX_MENDS = 25
 
 Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 
