@@ -291,10 +291,11 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
     allylic transposition, ring closure and opening, addition, fragmentation. A product beyond that is usually a slip
     in a SMILES.
 
-    Known limits, to be accepted with a reason: hydrolysis, oxidation or loss of carbon dioxide as the last event
-    (acetals, thioesters and imidates opened in the flask or the work-up, Kornblum, Delépine, Krapcho); attack on a
-    carbonyl group (Darzens, Favorskii, acylation); attack by an arene or alkene of another molecule (Friedel–Crafts)
-    and cation–olefin cyclisation; attack of carbon, oxygen or halogen on two molecules of substrate beyond the second.
+    Some last steps are known besides: Ritter, Kornblum and Hass–Bender, the hydrolysis of iminium and isothiouronium
+    salts, loss of carbon dioxide. Known limits, to be accepted with a reason: any other hydrolysis or oxidation as the
+    last event (acetals, orthoesters, Delépine); attack on a carbonyl group (Darzens, Favorskii, acylation); attack by
+    an arene or alkene of another molecule (Friedel–Crafts) and cation–olefin cyclisation; three reagents that meet in
+    one product; silyl groups that move.
     """
     if has_undrawn_species(case.record, case.structures) or not _has_partner(case):
         return

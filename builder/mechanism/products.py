@@ -73,7 +73,7 @@ class Event(StrEnum):
     SHIFT = "1,2-shift"
     ADDITION = "addition"
     FRAGMENTATION = "fragmentation"
-    HYDRATION = "hydration"
+    HYDROLYSIS = "hydrolysis"
 
 
 _MECHANISMS = {
@@ -132,8 +132,8 @@ def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iter
         if not route.closed_by:
             intermediates.setdefault(route.product, (route, freed))
     kept = list(islice(intermediates.values(), MAX_INTERMEDIATES))
-    yield (further for route, freed in kept for further in _second_events(route, (*flask, *freed), sites))
     yield _alkylated_again([route for route, _ in kept], flask, sites)
+    yield (further for route, freed in kept for further in _second_events(route, (*flask, *freed), sites))
 
 
 @lru_cache(maxsize=128)
@@ -143,8 +143,8 @@ def routes_to(
     """Return, for each product, the routes of the shortest kind that give its constitution; empty where none does.
 
     Salts and free compounds are one, configurations are left to the caller. Each stage (one event, through a
-    cation, two events) is only entered while a product is still without an open route; closed ones are
-    given only where there is no open one. Last of all the product attacks further molecules of substrate.
+    cation, alkylation over again, two events) is only entered while a product is still without an open route; closed
+    ones are given only where there is no open one.
     """
     wanted = [_constitutions(product) for product in products]
     found: list[list[Route]] = [[] for _ in products]

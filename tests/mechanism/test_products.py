@@ -52,7 +52,14 @@ FOLLOWS = [
     ("CC(Br)CC(C)(C)O", "bromide", ["O"], "CC(C)=O", Event.FRAGMENTATION),
     ("CC(Br)C(C)Br", "bromide", ["[Zn]"], "CC=CC", Event.ELIMINATION),
     ("BrC(c1ccccc1)C(Br)c1ccccc1", "bromide", ["[Na+].[I-]"], "C(=Cc1ccccc1)c1ccccc1", Event.ELIMINATION),
-    ("CC(C)(C)O", "hydroxyl", ["CC#N", "O=S(=O)(O)O", "O"], "CC(=O)NC(C)(C)C", Event.HYDRATION),  # Ritter
+    ("CC(C)(C)O", "hydroxyl", ["CC#N", "O=S(=O)(O)O", "O"], "CC(=O)NC(C)(C)C", Event.HYDROLYSIS),  # Ritter
+    ("C=CCBr", "bromide", ["C1CCN(C1)C1=CCCCC1", "O"], "C=CCC1CCCCC1=O", Event.HYDROLYSIS),  # Stork
+    ("CCCCBr", "bromide", ["NC(N)=S", "[Na+].[OH-]"], "CCCCS", Event.HYDROLYSIS),
+    ("CCCCBr", "bromide", ["CN(C)C=O"], "CCCCOC=O", Event.HYDROLYSIS),
+    ("ClC(Cl)c1ccccc1", "chloride", ["O"], "O=Cc1ccccc1", Event.FRAGMENTATION),
+    ("BrCC(=O)c1ccccc1", "bromide", ["CS(C)=O"], "O=CC(=O)c1ccccc1", Event.FRAGMENTATION),  # Kornblum
+    ("BrCc1ccccc1", "bromide", ["[Na+].CC(C)=[N+]([O-])[O-]"], "O=Cc1ccccc1", Event.FRAGMENTATION),  # Hass-Bender
+    ("CCOC(=O)C(CC)C(=O)OCC", "carboxylate", ["[Na+].[Cl-]", "O"], "CCCC(=O)OCC", Event.FRAGMENTATION),  # Krapcho
     ("CI", "iodide", ["O=C1CCCCC1", LDA], "CC1CCCCC1=O", Event.SUBSTITUTION),
     ("CI", "iodide", ["CS(C)(=O)=O", "[Li]CCCC"], "CCS(C)(=O)=O", Event.SUBSTITUTION),
     ("C=CCCC", "none", ["Br"], "CCCC(C)Br", Event.ADDITION),
