@@ -8,7 +8,7 @@ from markupsafe import Markup
 from builder.book import Book
 from builder.chemistry.scheme import DrawnCompound, draw_structure
 from builder.chemistry.structure import parse_smiles
-from builder.finding import Level
+from builder.finding import Finding, Level
 from builder.publish.page import Page
 from builder.publish.templating import render
 from builder.rule import Rule
@@ -89,9 +89,15 @@ def view_rule(rule: AnyRule, book: Book) -> RuleView:
             TouchedEntry(entry.id, entry.record.title, finding.message, finding.accepted or "")
             for entry in book.entries
             for finding in entry.findings
-            if finding.rule == rule.id
+            if _speaks_of(finding, rule.id)
         ),
     )
+
+
+def _speaks_of(finding: Finding, rule_id: str) -> bool:
+    """Say whether a finding is one of the rule's, or was made because the gate of that name is shut."""
+    gates = finding.data.get("gates", ())
+    return finding.rule == rule_id or (isinstance(gates, list) and rule_id in gates)
 
 
 def _examples(examples: tuple[str, ...], ident: str, *, is_gate: bool) -> tuple[ExampleView, ...]:

@@ -4,15 +4,16 @@ import functools
 import http.server
 import shutil
 import threading
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from pathlib import Path
 
 import pytest
 
-from tests.browser.built import build, good_texts, write_book
+from tests.browser.built import ROOT, build, good_texts, write_book
 
 sync_api = pytest.importorskip("playwright.sync_api")
-CHROMIUM = shutil.which("chromium")
+CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
 
 pytestmark = [
     pytest.mark.browser,
@@ -63,10 +64,15 @@ def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.fixture(scope="module")
 def address(site: Path) -> Iterator[str]:
     """Serve the site below its sub-path, from this machine."""
-    handler = functools.partial(_Quiet, directory=str(site.parents[1]))
-    server = http.server.ThreadingHTTPServer(("127.0.0.1", 0), handler)
+    with _served(site.parents[1]) as address:
+        yield address + SUB_PATH
+
+
+@contextmanager
+def _served(folder: Path) -> Iterator[str]:
+    server = http.server.ThreadingHTTPServer(("127.0.0.1", 0), functools.partial(_Quiet, directory=str(folder)))
     threading.Thread(target=server.serve_forever, daemon=True).start()
-    yield f"http://127.0.0.1:{server.server_port}/{SUB_PATH}"
+    yield f"http://127.0.0.1:{server.server_port}/"
     server.shutdown()
     server.server_close()
 
@@ -87,12 +93,31 @@ def tab(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory
 
 
 def test_pages_are_quiet_local_and_fit(tab: "sync_api.Page", address: str) -> None:
+    _visit(tab, address, PAGES)
+
+
+@pytest.mark.slow
+def test_every_entry_of_the_demonstration_book_fits(
+    tab: "sync_api.Page", tmp_path_factory: pytest.TempPathFactory
+) -> None:
+    folder = tmp_path_factory.mktemp("demo")
+    entries = ROOT / "entries"
+    texts = [(path.relative_to(entries).as_posix(), path.read_text("utf-8")) for path in entries.rglob("NS*.yml")]
+    built = build(write_book(folder, texts))
+    assert built.code == 0, built.out
+    pages = sorted(path.parent.relative_to(built.site).as_posix() + "/" for path in built.site.glob("e/*/index.html"))
+    with _served(built.site) as address:
+        _visit(tab, address, pages)
+
+
+def _visit(tab: "sync_api.Page", address: str, pages: Sequence[str]) -> None:
+    """Open pages; none may complain, call another host, scroll sideways or use an id twice."""
     said: list[str] = []
     asked: list[str] = []
     tab.on("console", lambda message: said.append(message.text) if message.type in {"error", "warning"} else None)
     tab.on("pageerror", lambda error: said.append(str(error)))
     tab.on("request", lambda request: asked.append(request.url))
-    for path in PAGES:
+    for path in pages:
         tab.goto(address + path)
         assert not said, f"{path} says {said}"
         wide = tab.evaluate("document.documentElement.scrollWidth - document.documentElement.clientWidth")
