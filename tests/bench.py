@@ -15,7 +15,7 @@ import yaml
 
 from builder.book import Book, examine, open_book
 from builder.checks.cautions import find_hazards
-from builder.mechanism.products import routes_to
+from builder.mechanism.products import search_routes
 from builder.publish.pages import build_pages
 from builder.publish.schemes import entry_scheme
 from builder.records.reader import Reading, read_record
@@ -37,7 +37,7 @@ def _cpu_ms(work: Callable[[], object], entries: int, forget: Callable[[], None]
 
 
 def _forget() -> None:
-    routes_to.cache_clear()
+    search_routes.cache_clear()
     find_hazards.cache_clear()
 
 

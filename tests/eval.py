@@ -15,7 +15,7 @@ from typing import Any
 
 from builder.chemistry.perception import attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure, StructureError, parse_smiles
-from builder.mechanism.products import routes_to
+from builder.mechanism.products import search_routes
 from builder.mechanism.reaction import SiteInPlay
 from builder.mechanism.rules import Situation, closing_gates
 from builder.mechanism.solvents import find_solvent
@@ -49,7 +49,7 @@ def judge(case: dict[str, Any]) -> Judged:
     expected = case["expected"]
     follows = is_open = None
     if expected.get("major_product") and expected["dominant"] != "none":
-        (routes,) = routes_to((parse_smiles(expected["major_product"]),), sites, flask)
+        (routes,) = search_routes((parse_smiles(expected["major_product"]),), sites, flask).routes
         follows = any(not route.closed_by for route in routes)
     if expected["dominant"] != "none":
         words = {expected["dominant"], *expected.get("acceptable", [])} - {"none"}

@@ -5,22 +5,30 @@ from collections.abc import Iterator, Sequence
 from functools import lru_cache
 
 from builder.checks.case import Case
-from builder.checks.derivation import SOUGHT, is_desired, product_paths, routes_by_product
+from builder.checks.derivation import SOUGHT, is_desired, product_paths, routes_by_product, search
 from builder.chemistry.neutral import neutral_form
 from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.chemistry.structure import Structure
 from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
-from builder.mechanism.products import MEET_IN_ONE_PRODUCT, Route
+from builder.mechanism.products import MEET_IN_ONE_PRODUCT, Event, Route
 from builder.mechanism.reaction import has_undrawn_species, in_play, species_in_flask
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.specimen import outcome_example
-from builder.records.vocabulary import Course, Mechanism, StereoKind
+from builder.records.vocabulary import Course, Mechanism, Result, StereoKind
 from builder.rule import Fault, Path, rule
 
 __all__ = ["AGREEMENT_CHECKS", "CONTRARY_RULES", "is_covered"]
 
-CONTRARY_RULES = frozenset({"claim-against-product", "mechanism-contrary", "product-not-reachable"})
+CONTRARY_RULES = frozenset(
+    {
+        "claim-against-product",
+        "course-against-mechanism",
+        "mechanism-contrary",
+        "product-not-reachable",
+        "rearrangement-not-named",
+    }
+)
 """Rules whose findings mean that record and engine disagree; the verdict of an entry follows from them."""
 
 _READABLE = ("structure-unreadable", "leaving-group-not-found", "leaving-group-unknown")
@@ -43,6 +51,10 @@ def _product(smiles: str, more: str = "") -> str:
     return outcome_example("{yield: 81 %, of: A, kind: assay}", products=product, more=more)
 
 
+_PENTYL = (
+    "substrate: {name: 2-bromopentane, smiles: 'CCCC(C)Br', class: secondary, leaving_group: bromide, mass: 1.51 g}\n"
+    "stages: [{temperature: 60 °C, time: 16 h}]\n"
+)
 _PRIMARY = (
     "substrate: {name: 1-bromobutane, smiles: CCCCBr, class: primary, leaving_group: bromide, amount: 10 mmol}\n"
     "stages: [{temperature: 60 °C, time: 16 h}]\n"
@@ -300,8 +312,16 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
     if has_undrawn_species(case.record, case.structures) or not _has_partner(case):
         return
     is_contrary = bool(_gates_against_the_claim(case))
+    was_cut = search(case).was_cut
     for path, routes in routes_by_product(case).items():
-        if not routes:
+        if not routes and was_cut:
+            yield Fault(
+                at=(*path, "smiles"),
+                message="too many ways to try them all: whether this product follows is not known",
+                mend="draw smaller models of large groups, or leave it as it is",
+                level=Level.REMARK,
+            )
+        elif not routes:
             yield Fault(
                 at=(*path, "smiles"),
                 message="this product does not follow from the substrate and what was charged",
@@ -316,6 +336,36 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
             )
 
 
+@rule(
+    id="rearrangement-not-named",
+    title="A rearrangement that the result does not name",
+    level=Level.QUERY,
+    source="iupac-gold",
+    needs=(*_READABLE, "product-not-reachable", "element-from-nowhere"),
+    fires_on=(_product("CCC(CC)N=[N+]=[N-]").replace("outcome:", _PENTYL + "outcome:"),),
+    silent_on=(
+        _product("CCCC(C)N=[N+]=[N-]").replace("outcome:", _PENTYL + "outcome:"),
+        _product("CCC(CC)N=[N+]=[N-]")
+        .replace("outcome:", _PENTYL + "outcome:")
+        .replace("[substitution]", "[rearrangement, substitution]"),
+    ),
+)
+def rearrangement_is_not_named(case: Case) -> Iterator[Fault]:
+    """Where a product is reached only by a 1,2-shift, the result says rearrangement.
+
+    A regioisomer drawn by mistake looks just like that: one carbon further on, and reached through a cation only.
+    """
+    if Result.REARRANGEMENT in case.record.outcome.result:
+        return
+    for path, routes in routes_by_product(case).items():
+        if path != SOUGHT and routes and all(Event.SHIFT in route.events for route in routes):
+            yield Fault(
+                at=(*path, "smiles"),
+                message="this product is reached only by a 1,2-shift of a cation",
+                mend="correct the SMILES, or add rearrangement to result:",
+            )
+
+
 AGREEMENT_CHECKS = (
     claim_is_against_the_product,
     course_is_against_the_mechanism,
@@ -324,6 +374,7 @@ AGREEMENT_CHECKS = (
     element_comes_from_nowhere,
     mechanism_is_contrary,
     product_is_not_reachable,
+    rearrangement_is_not_named,
 )
 
 

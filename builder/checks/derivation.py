@@ -1,12 +1,12 @@
 """How the products of a case follow from what was charged; asked once, for the checks and for the drawing."""
 
 from builder.checks.case import Case
-from builder.mechanism.products import Route, routes_to
+from builder.mechanism.products import Route, Search, search_routes
 from builder.mechanism.reaction import in_play, species_in_flask
 from builder.records.vocabulary import ProductUse
 from builder.rule import Path
 
-__all__ = ["SOUGHT", "is_desired", "main_route", "product_paths", "routes_by_product"]
+__all__ = ["SOUGHT", "is_desired", "main_route", "product_paths", "routes_by_product", "search"]
 
 SOUGHT: Path = ("outcome", "sought")
 
@@ -19,10 +19,14 @@ def product_paths(case: Case) -> tuple[Path, ...]:
 
 def routes_by_product(case: Case) -> dict[Path, tuple[Route, ...]]:
     """Return the routes to each product and to what was sought; empty where none is found."""
-    paths = product_paths(case)
+    return dict(zip(product_paths(case), search(case).routes, strict=True))
+
+
+def search(case: Case) -> Search:
+    """Return the search for every product of the case; asked again, it is remembered."""
     sites = in_play(case.record, case.structures)
     flask = tuple(species_in_flask(case.record, case.structures))
-    return dict(zip(paths, routes_to(tuple(case.structures[path] for path in paths), sites, flask), strict=True))
+    return search_routes(tuple(case.structures[path] for path in product_paths(case)), sites, flask)
 
 
 def is_desired(case: Case, path: Path) -> bool:

@@ -8,7 +8,7 @@ from builder.chemistry.perception import perceive_sites, sites_of
 from builder.chemistry.structure import Structure
 from builder.chemistry.transform import activate_hydroxyl, derivatise_hydroxyl
 from builder.finding import Level
-from builder.mechanism.products import routes_to
+from builder.mechanism.products import search_routes
 from builder.mechanism.reaction import SiteInPlay, has_undrawn_species, species_in_flask
 from builder.rule import Fault, Path, rule
 
@@ -75,7 +75,10 @@ def stage_gives_what_does_not_follow(case: Case) -> Iterator[Fault]:
         known = {neutral_form(species).flat for species in (*starts, *flask)}
         activated = {product.flat for product in _activated(starts, flask)}
         sites = tuple(SiteInPlay(start, site, is_activated=True) for start in starts for site in perceive_sites(start))
-        if neutral_form(given).flat in known or given.flat in activated or routes_to((given,), sites, flask)[0]:
+        if neutral_form(given).flat in known or given.flat in activated:
+            continue
+        search = search_routes((given,), sites, flask)
+        if search.routes[0] or search.was_cut:
             continue
         yield Fault(
             at=(*path, "smiles"),

@@ -5,7 +5,7 @@ closure or opening, addition or fragmentation, in at most two such events after 
 phosphorus are alkylated up to four times.
 """
 
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass, replace
 from enum import StrEnum
 from functools import lru_cache, partial
@@ -21,7 +21,7 @@ from builder.chemistry.perception import (
     perceive_sites,
 )
 from builder.chemistry.rewrites import Stage, load_rewrites, rewritten
-from builder.chemistry.structure import Atom, AtomId, Structure
+from builder.chemistry.structure import Atom, AtomId, Structure, StructureError
 from builder.chemistry.transform import (
     Cation,
     Edit,
@@ -47,7 +47,7 @@ from builder.mechanism.reaction import SiteInPlay
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.vocabulary import Mechanism
 
-__all__ = ["MEET_IN_ONE_PRODUCT", "Event", "Route", "routes_to"]
+__all__ = ["MEET_IN_ONE_PRODUCT", "Event", "Route", "Search", "search_routes"]
 
 MEET_IN_ONE_PRODUCT = 4
 """How many molecules of one reagent at most end up in one molecule of product: a quaternary ammonium takes four."""
@@ -60,6 +60,9 @@ _ELIMINATIONS = (StereoEffect.ANTI, StereoEffect.SYN, StereoEffect.NOT_DETERMINE
 HALOGENS = frozenset({"BrBr", "ClCl", "II"})
 
 T = TypeVar("T")
+
+BUDGET = 20_000
+"""Heavy atoms that the edits of one search may touch: about a second, or 1,000 edits of an ordinary molecule."""
 
 
 class Event(StrEnum):
@@ -115,17 +118,62 @@ class Route:
         return Event.SHIFT in self.events or Event.TRANSPOSITION in self.events
 
 
+class _BudgetSpentError(Exception):
+    """The search has cost what a search may cost."""
+
+
+@dataclass(slots=True)
+class _Budget:
+    """Work that a search may still do, in heavy atoms edited."""
+
+    left: int
+
+    def spend(self, cost: int) -> None:
+        """Take off what an edit costs.
+
+        Raises _BudgetSpentError once nothing is left.
+        """
+        self.left -= cost
+        if self.left < 0:
+            raise _BudgetSpentError
+
+
+@dataclass(frozen=True, slots=True)
+class _Flask:
+    """Everything charged beside the substrate, and the budget of the search that carries out edits with it."""
+
+    species: tuple[Structure, ...]
+    budget: _Budget
+
+    def with_more(self, freed: Iterable[Structure]) -> "_Flask":
+        """Return the flask after something has been set free in it; the budget is shared."""
+        return _Flask((*self.species, *freed), self.budget)
+
+    def one(self, edit: "partial[T]") -> tuple[T, ...]:
+        """Return what an edit makes; nothing where it would lose atoms or outgrow all bounds: that is no way at all."""
+        changed = edit.args[0]
+        self.budget.spend((changed.structure if isinstance(changed, Cation) else changed).heavy_atom_count)
+        try:
+            return (edit(),)
+        except (UnbalancedTransformation, StructureError):
+            return ()
+
+    def several(self, edits: "partial[tuple[T, ...]]") -> tuple[T, ...]:
+        """Return what a family of edits makes, as `one` does."""
+        return tuple(each for made in self.one(edits) for each in made)
+
+
 _Step = tuple[Route, tuple[Structure, ...]]
 """A route, and what its last event sets free."""
 
 
-def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iterator[Iterator[Route]]:
+def _stages(sites: tuple[SiteInPlay, ...], flask: _Flask) -> Iterator[Iterator[Route]]:
     """Yield the routes stage by stage, each stage longer and dearer than the one before.
 
-    flask: everything charged beside the substrate; what the first event sets free attacks in the second.
+    What the first event sets free attacks in the second.
     """
-    first = [made for each in sites for made in _from_site(each, flask)]
-    yield (route for route, _ in first)
+    first: list[_Step] = []
+    yield _kept(first, (made for each in sites for made in _from_site(each, flask)))
     yield (route for each in sites if _ionises(each) for route in _through_cations(each.on, each.site, flask))
     intermediates: dict[Structure, _Step] = {}
     for route, freed in first:
@@ -133,31 +181,52 @@ def _stages(sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]) -> Iter
             intermediates.setdefault(route.product, (route, freed))
     kept = list(islice(intermediates.values(), MAX_INTERMEDIATES))
     yield _alkylated_again([route for route, _ in kept], flask, sites)
-    yield (further for route, freed in kept for further in _second_events(route, (*flask, *freed), sites))
+    yield (further for route, freed in kept for further in _second_events(route, flask.with_more(freed), sites))
+
+
+def _kept(steps: list[_Step], made: Iterable[_Step]) -> Iterator[Route]:
+    """Yield routes as they are made, and keep them with what they set free."""
+    for step in made:
+        steps.append(step)
+        yield step[0]
+
+
+@dataclass(frozen=True, slots=True)
+class Search:
+    """The routes found to each product; was_cut says that the budget ended before every way had been tried."""
+
+    routes: tuple[tuple[Route, ...], ...]
+    was_cut: bool
 
 
 @lru_cache(maxsize=128)
-def routes_to(
-    products: tuple[Structure, ...], sites: tuple[SiteInPlay, ...], flask: tuple[Structure, ...]
-) -> tuple[tuple[Route, ...], ...]:
+def search_routes(
+    products: tuple[Structure, ...], sites: tuple[SiteInPlay, ...], species: tuple[Structure, ...]
+) -> Search:
     """Return, for each product, the routes of the shortest kind that give its constitution; empty where none does.
 
-    Salts and free compounds are one, configurations are left to the caller. Each stage (one event, through a
-    cation, alkylation over again, two events) is only entered while a product is still without an open route; closed
-    ones are given only where there is no open one.
+    species: everything charged beside the substrate. Salts and free compounds are one, configurations are left to
+    the caller. Each stage (one event, through a cation, alkylation over again, two events) is only entered while a
+    product is still without an open route; closed ones are given only where there is no open one. The budget counts
+    work, not time, so that a search ends alike on every machine.
     """
     wanted = [_constitutions(product) for product in products]
     found: list[list[Route]] = [[] for _ in products]
-    for stage in _stages(sites, flask):
-        open_places = [place for place, routes in enumerate(found) if all(route.closed_by for route in routes)]
-        if not open_places:
-            break
-        for route in stage:
-            made = _constitution(route.product)
-            for place in open_places:
-                if made in wanted[place]:
-                    found[place].append(route)
-    return tuple(tuple(r for r in routes if not r.closed_by) or tuple(routes) for routes in found)
+    flask = _Flask(species, _Budget(BUDGET))
+    was_cut = False
+    try:
+        for stage in _stages(sites, flask):
+            open_places = [place for place, routes in enumerate(found) if all(route.closed_by for route in routes)]
+            if not open_places:
+                break
+            for route in stage:
+                made = _constitution(route.product)
+                for place in open_places:
+                    if made in wanted[place]:
+                        found[place].append(route)
+    except _BudgetSpentError:
+        was_cut = True
+    return Search(tuple(tuple(r for r in routes if not r.closed_by) or tuple(routes) for routes in found), was_cut)
 
 
 def _constitution(structure: Structure) -> str:
@@ -172,22 +241,9 @@ def _constitutions(product: Structure) -> set[str]:
 # --- one event --------------------------------------------------------------------------------------------
 
 
-def _one(edit: Callable[[], T]) -> tuple[T, ...]:
-    """Return what an edit makes; nothing where it would lose atoms or charge, for then it is no way at all."""
-    try:
-        return (edit(),)
-    except UnbalancedTransformation:
-        return ()
-
-
-def _several(edits: Callable[[], Iterable[T]]) -> tuple[T, ...]:
-    """Return what a family of edits makes, as `_one` does."""
-    return tuple(each for made in _one(lambda: tuple(edits())) for each in made)
-
-
-def _from_site(each: SiteInPlay, species: tuple[Structure, ...]) -> Iterator[_Step]:
+def _from_site(each: SiteInPlay, flask: _Flask) -> Iterator[_Step]:
     shut: dict[Event, tuple[Gate, ...]] = {}
-    for route, others in _events_at(each.on, each.site, species):
+    for route, others in _events_at(each.on, each.site, flask):
         event = route.events[-1]
         if event not in shut:
             shut[event] = _closing(each, event)
@@ -203,27 +259,27 @@ def _closing(each: SiteInPlay, event: Event) -> tuple[Gate, ...]:
     return tuple(dict.fromkeys(gate for some in gates for gate in some)) if all(gates) else ()
 
 
-def _events_at(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[_Step]:
+def _events_at(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[_Step]:
     if site.is_addition:
-        yield from _additions(start, site, species)
+        yield from _additions(start, site, flask)
         return
     has_stereo = start.stereocentres.specified > 0
-    for nucleophile in _attackers(species):
+    for nucleophile in _attackers(flask):
         for inversion in (True, False) if has_stereo else (True,):
-            for edit in _one(partial(substitute, start, site, nucleophile, inversion=inversion)):
+            for edit in flask.one(partial(substitute, start, site, nucleophile, inversion=inversion)):
                 yield from _products_of(start, site, (Event.SUBSTITUTION,), edit)
-        for edit in _several(partial(transpose_allylic, start, site, nucleophile)):
+        for edit in flask.several(partial(transpose_allylic, start, site, nucleophile)):
             yield from _products_of(start, site, (Event.TRANSPOSITION,), edit)
     out_of_reach = {site.alpha_carbon, *(atom for atom, _ in start.atoms[site.alpha_carbon].neighbours)}
     for group in neighbouring_groups(start):
         if group.atom not in out_of_reach:
-            for edit in _one(partial(cyclise, start, site, group)):
+            for edit in flask.one(partial(cyclise, start, site, group)):
                 yield from _products_of(start, site, (Event.RING_CLOSURE,), edit)
     for beta in site.beta_with_hydrogen:
         for effect in _ELIMINATIONS if has_stereo or site.ring_sizes else _ELIMINATIONS[:1]:
-            for edit in _several(partial(eliminate, start, site, beta.atom, effect=effect)):
+            for edit in flask.several(partial(eliminate, start, site, beta.atom, effect=effect)):
                 yield from _products_of(start, site, (Event.ELIMINATION,), edit)
-    yield from ((route, ()) for route in _rewrites(start, site, (), start, Stage.SUBSTRATE, species))
+    yield from ((route, ()) for route in _rewrites(start, site, (), start, Stage.SUBSTRATE, flask))
 
 
 def _rewrites(
@@ -232,25 +288,25 @@ def _rewrites(
     events: tuple[Event, ...],
     reached: Structure,
     stage: Stage,
-    species: tuple[Structure, ...],
+    flask: _Flask,
 ) -> Iterator[Route]:
     """Yield the routes that end in a row of rewrites.tsv, where the flask holds what it takes."""
     for row in load_rewrites():
-        if row.stage is stage and (row.role is None or row.role in roles_in(species)):
+        if row.stage is stage and (row.role is None or row.role in roles_in(flask.species)):
             pieces = (piece for made in rewritten(reached, row) for piece in made.fragments if _has_carbon(piece))
             yield from (
                 Route(start, site, (*events, Event(row.kind)), each, StereoEffect.NOT_DETERMINED) for each in pieces
             )
 
 
-def _additions(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[_Step]:
-    if _is_better_cation(start, site) or Role.RADICAL_INITIATOR in roles_in(species):
-        for nucleophile in _attackers(species):
-            for edit in _several(partial(add_hx, start, site, nucleophile)):
+def _additions(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[_Step]:
+    if _is_better_cation(start, site) or Role.RADICAL_INITIATOR in roles_in(flask.species):
+        for nucleophile in _attackers(flask):
+            for edit in flask.several(partial(add_hx, start, site, nucleophile)):
                 yield from _products_of(start, site, (Event.ADDITION,), edit)
-    for molecule in species:
+    for molecule in flask.species:
         if molecule.smiles in HALOGENS:
-            for edit in _several(partial(add_x2, start, site, molecule)):
+            for edit in flask.several(partial(add_x2, start, site, molecule)):
                 yield from _products_of(start, site, (Event.ADDITION,), edit)
 
 
@@ -279,19 +335,18 @@ def _support_by(structure: Structure, near: Atom, end: AtomId) -> int:
     return 2 if near.aromatic or any(order > 1.0 for _, order in beyond) else 1
 
 
-def _can_add(species: Iterable[Structure]) -> bool:
+def _can_add(flask: _Flask) -> bool:
     """Say whether something charged adds to a multiple bond by itself: a hydrogen halide or a halogen."""
-    return any(each.smiles in HALOGENS for each in species) or any(
-        nucleophile.kind == "hydrogen halide" for nucleophile in _attackers(species)
+    return any(each.smiles in HALOGENS for each in flask.species) or any(
+        nucleophile.kind == "hydrogen halide" for nucleophile in _attackers(flask)
     )
 
 
-def _attackers(species: Iterable[Structure]) -> Iterator[Nucleophile]:
+def _attackers(flask: _Flask) -> Iterator[Nucleophile]:
     """Yield each attacking atom in the flask once; weak carbon acids only where a strong base is there."""
-    species = tuple(species)
-    has_strong_base = Role.STRONG_BASE in roles_in(species)
+    has_strong_base = Role.STRONG_BASE in roles_in(flask.species)
     seen: set[tuple[Structure, int]] = set()
-    for each in species:
+    for each in flask.species:
         for nucleophile in attacking_atoms(each):
             key = (nucleophile.species, nucleophile.atom)
             if key not in seen and (has_strong_base or not nucleophile.needs_strong_base):
@@ -322,21 +377,21 @@ def _ionises(each: SiteInPlay) -> bool:
     return not closing_gates(Mechanism.SN1, each.situation)
 
 
-def _through_cations(start: Structure, site: ReactiveSite, species: tuple[Structure, ...]) -> Iterator[Route]:
-    attackers = tuple(_attackers(species))
-    for cation, events in _cations(_one(partial(protonate if site.is_addition else ionise, start, site))):
-        yield from _rewrites(start, site, events, cation.structure, Stage.CATION, species)
+def _through_cations(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[Route]:
+    attackers = tuple(_attackers(flask))
+    for cation, events in _cations(flask.one(partial(protonate if site.is_addition else ionise, start, site)), flask):
+        yield from _rewrites(start, site, events, cation.structure, Stage.CATION, flask)
         if not _is_stable(cation):
             continue  # a primary cation only hands its charge on
         for nucleophile in attackers:
-            for edit in _several(partial(capture, cation, nucleophile)):
+            for edit in flask.several(partial(capture, cation, nucleophile)):
                 yield from (route for route, _ in _products_of(start, site, (*events, Event.SUBSTITUTION), edit))
         for atom in _neighbours(cation):
-            for edit in _several(partial(lose_proton, cation, atom)):
+            for edit in flask.several(partial(lose_proton, cation, atom)):
                 yield from (route for route, _ in _products_of(start, site, (*events, Event.ELIMINATION), edit))
 
 
-def _cations(first: tuple[Cation, ...]) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
+def _cations(first: tuple[Cation, ...], flask: _Flask) -> Iterator[tuple[Cation, tuple[Event, ...]]]:
     """Yield the cation and what up to three 1,2-shifts and allylic resonance make of it, breadth first."""
     level: list[tuple[Cation, tuple[Event, ...]]] = [(cation, (Event.IONISATION,)) for cation in first]
     seen = {cation.structure for cation in first}
@@ -345,9 +400,9 @@ def _cations(first: tuple[Cation, ...]) -> Iterator[tuple[Cation, tuple[Event, .
         for cation, events in level:
             yield cation, events
             groups, bonds = migrating_groups(cation), _small_ring_bonds(cation)
-            shifted = ((made, Event.SHIFT) for pair in groups for made in _one(partial(shift_12, cation, *pair)))
-            opened = ((made, Event.SHIFT) for pair in bonds for made in _one(partial(fragment, cation, *pair)))
-            resonant = ((form, Event.TRANSPOSITION) for form in _several(partial(allylic_forms, cation)))
+            shifted = ((made, Event.SHIFT) for pair in groups for made in flask.one(partial(shift_12, cation, *pair)))
+            opened = ((made, Event.SHIFT) for pair in bonds for made in flask.one(partial(fragment, cation, *pair)))
+            resonant = ((form, Event.TRANSPOSITION) for form in flask.several(partial(allylic_forms, cation)))
             for made, event in (*resonant, *shifted, *opened):
                 if made.structure not in seen and len(seen) < MAX_CATIONS and _is_stable(made):
                     seen.add(made.structure)
@@ -403,22 +458,20 @@ def _neighbours(cation: Cation) -> tuple[int, ...]:
 # --- a second event ---------------------------------------------------------------------------------------
 
 
-def _second_events(route: Route, species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
+def _second_events(route: Route, flask: _Flask, in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
     intermediate = route.product
     activated = any(each.is_activated for each in in_play)
     for site in perceive_sites(intermediate):
-        if site.is_addition and not _can_add(species):
+        if site.is_addition and not _can_add(flask):
             continue
-        for further, _ in _from_site(SiteInPlay(intermediate, site, activated), species):
+        for further, _ in _from_site(SiteInPlay(intermediate, site, activated), flask):
             yield replace(further, start=route.start, site=route.site, events=(*route.events, *further.events))
-    yield from _rewrites(route.start, route.site, route.events, intermediate, Stage.PRODUCT, species)
+    yield from _rewrites(route.start, route.site, route.events, intermediate, Stage.PRODUCT, flask)
 
 
-def _alkylated_again(
-    level: list[Route], species: tuple[Structure, ...], in_play: tuple[SiteInPlay, ...]
-) -> Iterator[Route]:
+def _alkylated_again(level: list[Route], flask: _Flask, in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
     """Yield what products give with further molecules of substrate; N, S and P take up to four in all."""
-    has_strong_base = Role.STRONG_BASE in roles_in(species)
+    has_strong_base = Role.STRONG_BASE in roles_in(flask.species)
     partners = [each for each in in_play if not each.site.is_addition]
     seen = {route.product for route in level}
     for taken in range(2, MEET_IN_ONE_PRODUCT + 1):
@@ -427,7 +480,7 @@ def _alkylated_again(
             for nucleophile in attacking_atoms(reached.product):
                 repeats = taken == 2 or nucleophile.symbol in {"N", "S", "P"}
                 if repeats and (has_strong_base or not nucleophile.needs_strong_base):
-                    for edit in _one(partial(substitute, each.on, each.site, nucleophile)):
+                    for edit in flask.one(partial(substitute, each.on, each.site, nucleophile)):
                         events = (*reached.events, Event.SUBSTITUTION)
                         route = Route(reached.start, reached.site, events, edit.product, edit.effect)
                         following.setdefault(edit.product, route)

@@ -6,7 +6,7 @@ from builder.chemistry.perception import sites_of
 from builder.chemistry.structure import parse_smiles
 from builder.chemistry.transform import UnbalancedTransformation
 from builder.mechanism import products
-from builder.mechanism.products import Event, Route, routes_to
+from builder.mechanism.products import Event, Route, search_routes
 from builder.mechanism.reaction import SiteInPlay, with_halides_set_free
 
 AZIDE = "[Na+].[N-]=[N+]=[N-]"
@@ -103,7 +103,7 @@ def _found(substrate: str, group: str, flask: list[str], product: str) -> tuple[
     species = tuple(parse_smiles(each) for each in flask)
     activated = any(each in {"Br", "O=S(=O)(O)O", SILVER} for each in flask)
     sites = tuple(SiteInPlay(structure, site, activated) for site in sites_of(structure, group))
-    (routes,) = routes_to((parse_smiles(product),), sites, species)
+    (routes,) = search_routes((parse_smiles(product),), sites, species).routes
     return routes
 
 
@@ -140,14 +140,33 @@ def test_an_edit_that_cannot_balance_is_no_way_and_stops_nothing(monkeypatch: py
 
     monkeypatch.setattr(products, "substitute", refuse)
     monkeypatch.setattr(products, "shift_12", refuse)
-    routes_to.cache_clear()
+    search_routes.cache_clear()
     assert _routes("CCC(C)Br", "bromide", [AZIDE], "CC=CC")
     assert _routes("CC(C)(C)Cl", "chloride", [AZIDE], "CC(C)(C)N=[N+]=[N-]")  # by capture
     assert not _routes("CCCCBr", "bromide", [AZIDE], "CCCCN=[N+]=[N-]")
-    routes_to.cache_clear()
+    search_routes.cache_clear()
 
 
 def test_tetrahalomethanes_act_only_beside_a_phosphine() -> None:
     bromine_source, phosphine = parse_smiles("BrC(Br)(Br)Br"), parse_smiles("c1ccc(P(c2ccccc2)c2ccccc2)cc1")
     assert list(with_halides_set_free([bromine_source])) == [bromine_source]
     assert parse_smiles("[Br-]") in set(with_halides_set_free([bromine_source, phosphine]))
+
+
+HOSTILE = {
+    # Found by a tester whose checks ran for more than twenty seconds: every atom of it can react.
+    "a polyol": ("CCC(C)Br", "OC" + "C(O)" * 20 + "C"),
+    "sucrose": ("CCC(C)Br", "OC[C@H]1OC(OC2(CO)OC(CO)C(O)C2O)C(O)C(O)C1O"),
+    "forty bromides": ("C" + "CC(Br)" * 40, AZIDE),
+    "a polyether": ("BrCC" + "OCC" * 50 + "Br", AZIDE),
+    "a long amine": ("C" * 60 + "Br", "C" * 180 + "N"),
+}
+
+
+@pytest.mark.parametrize(("substrate", "nucleophile"), HOSTILE.values(), ids=HOSTILE.keys())
+def test_a_search_ends_within_its_budget_and_says_so(substrate: str, nucleophile: str) -> None:
+    structure = parse_smiles(substrate)
+    sites = tuple(SiteInPlay(structure, site) for site in sites_of(structure, "bromide"))
+    found = search_routes((parse_smiles("CCCCCCCCCCCCP"),), sites, (parse_smiles(nucleophile),))
+    assert found.routes == ((),)
+    assert found.was_cut == (nucleophile != "C" * 180 + "N")  # its products outgrow all bounds at once
