@@ -1,14 +1,18 @@
 """Drawings: what they show, that they can be read, and that the same structure gives the same bytes."""
 
 import os
+import re
 import subprocess
 import sys
 import xml.etree.ElementTree as ET
 from collections.abc import Callable
+from io import BytesIO
 from itertools import combinations
 
+import cairosvg
 import pytest
 from indigo import Indigo
+from PIL import Image
 from rdkit import Chem
 
 from builder.chemistry.depict import Marks, depict
@@ -360,6 +364,20 @@ def test_resolved_drawing_needs_no_page(dark: bool) -> None:
     assert "var(" not in svg
     assert "currentColor" not in svg
     assert (PALETTE["n"].dark if dark else PALETTE["n"].light) in svg
+
+
+@every_scheme
+def test_a_second_renderer_draws_it(steps: Steps) -> None:
+    # cairosvg, an SVG renderer of its own, refuses what is no sound SVG and CSS variables that are left.
+    svg = drawn(steps)
+    pictures = (cairosvg.svg2png(resolve_colours(svg, dark=dark).encode()) for dark in (False, True))
+    light, dark = (Image.open(BytesIO(picture)) for picture in pictures)
+    width, height = (float(number) for number in re.findall(r' (?:width|height)="([\d.]+)"', svg)[:2])
+    assert light.size == dark.size == (pytest.approx(width, abs=1.5), pytest.approx(height, abs=1.5))
+    covered = light.getchannel("A").getbbox()
+    assert covered is not None
+    assert covered[2] - covered[0] > 0.9 * light.width
+    assert light.tobytes() != dark.tobytes()
 
 
 def test_palette_names_every_variable_of_a_drawing() -> None:
