@@ -22,7 +22,7 @@ from builder.mechanism.solvents import find_solvent
 from builder.records.vocabulary import Mechanism
 
 CASES = Path(__file__).parent / "data" / "cases-open.jsonl"
-# Parts of additive names that stand for an acid or an activator; the engine's reagents table will know them.
+# Parts of additive names that stand for an acid or an activator: the cases give many additives as words.
 _ACTIVATING = (
     *("H2SO4", "H3PO4", "HCl", "HBr", "HI", "HClO4", "TsOH", "acid", "BF3", "ZnCl2", "AlCl3", "Ag", "HNO2"),
     *("SOCl2", "PBr3", "PCl3", "POCl3", "PPh3", "chloride", "Tf2O", "anhydride", "DEAD", "DIAD", "Br2"),
@@ -42,10 +42,11 @@ class Judged:
 def judge(case: dict[str, Any]) -> Judged:
     """Judge one case by structures alone."""
     substrate = parse_smiles(case["substrate"])
-    activated = any(word in additive for additive in case["additives"] for word in _ACTIVATING)
-    sites = tuple(SiteInPlay(substrate, site, activated) for site in perceive_sites(substrate))
     flask = tuple(_species(case))
-    activated = activated or any(n.kind == "hydrogen halide" for each in flask for n in attacking_atoms(each))
+    activated = any(word in additive for additive in case["additives"] for word in _ACTIVATING) or any(
+        nucleophile.kind == "hydrogen halide" for each in flask for nucleophile in attacking_atoms(each)
+    )
+    sites = tuple(SiteInPlay(substrate, site, activated) for site in perceive_sites(substrate))
     expected = case["expected"]
     follows = is_open = None
     if expected.get("major_product") and expected["dominant"] != "none":
@@ -67,7 +68,7 @@ def _species(case: dict[str, Any]) -> Iterator[Structure]:
             if name:
                 yield parse_smiles(row.smiles if row else name)
         except StructureError:
-            continue  # a name without structure ("Ag2O", "heat"): the next issue's reagents table reads those
+            continue  # a word without a structure ("Ag2O", "heat") attacks nothing
 
 
 def main() -> int:
