@@ -9,7 +9,7 @@ from builder.book import Book, open_book
 from builder.records.specimen import with_example
 from tests.specimens import TODAY
 
-# CTfile RXN V2000, written by hand: 1-bromobutane without hydrogens -> 1-azidobutane drawn neutral at the chain.
+# CTfile RXN V2000, written by hand: iodomethane -> methanol, without hydrogens.
 MOLECULE = """$MOL
 
 
@@ -61,8 +61,9 @@ def test_structures_are_taken_from_the_file(tmp_path: Path) -> None:
 
 
 FAULTS = [
-    ({"path": "missing.rxn"}, "rxn-file-unusable", "not beside the record"),
-    ({"path": "link.rxn"}, "rxn-file-unusable", "not beside the record"),
+    ({"path": "missing.rxn"}, "rxn-file-unusable", "missing, outside the book, or too large"),
+    ({"path": "link.rxn"}, "rxn-file-unusable", "missing, outside the book, or too large"),
+    ({"rxn": RXN + " " * 300_000}, "rxn-file-unusable", "missing, outside the book, or too large"),
     ({"path": "../outside.rxn"}, "value-not-permitted", "leads out of the book"),
     ({"path": "/etc/passwd"}, "value-not-permitted", "leads out of the book"),
     ({"sha": "f" * 64}, "rxn-file-unusable", "not the one whose SHA-256"),
