@@ -211,11 +211,6 @@ class Nucleophile:
         return self.reach is Reach.STRONG_BASE
 
     @property
-    def is_usual(self) -> bool:
-        """Answer whether this is the atom that attacks under ordinary conditions."""
-        return self.preference == 1
-
-    @property
     def loses_proton(self) -> bool:
         """Answer whether the attacking species gives up a proton on the way to the product."""
         return self.electrons in {Electrons.PROTON_LOST, Electrons.PROTON_MOVES}

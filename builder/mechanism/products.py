@@ -112,11 +112,6 @@ class Route:
         """Say whether the route ends in an elimination."""
         return self.events[-1] is Event.ELIMINATION
 
-    @property
-    def rearranges(self) -> bool:
-        """Say whether the skeleton or the place of the new bond changes on the way."""
-        return Event.SHIFT in self.events or Event.TRANSPOSITION in self.events
-
 
 class _BudgetSpentError(Exception):
     """The search has cost what a search may cost."""

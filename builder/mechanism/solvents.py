@@ -89,11 +89,6 @@ class Solvent:
     sources: Mapping[str, str] = field(compare=False)
 
     @property
-    def is_protic(self) -> bool:
-        """Answer whether it bears O-H or N-H."""
-        return self.kind is SolventKind.PROTIC
-
-    @property
     def names(self) -> tuple[str, ...]:
         """Return the name and all synonyms."""
         return (self.name, *self.synonyms)
