@@ -36,6 +36,13 @@ _BOOK = click.option(
     show_default=True,
     help="The folder with the records and handbook.yml.",
 )
+_CONFIG = click.option(
+    "--config",
+    type=click.Path(exists=True, dir_okay=False, path_type=Path),
+    default=Path("mkdocs.yml"),
+    show_default=True,
+    help="The book's mkdocs.yml.",
+)
 _JSON = click.option("--json", "as_json", is_flag=True, help="Print JSON for machines instead of text.")
 
 
@@ -79,7 +86,7 @@ def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, show
       handbook check entries/azides/NS4T9XQ2N.yml --fail-on query
     """
     opened = _open(book)
-    shown = _selected(opened, files)
+    shown, records = _selected(opened, files)
     threshold = Level(show) if show else (Level.REMARK if as_json or files else Level.QUERY)
     visible = [
         finding
@@ -91,13 +98,19 @@ def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, show
     else:
         if visible:
             click.echo(render_text(visible, book))
-        click.echo(summary(shown, len(files) or len(opened.files)))
+        click.echo(summary(shown, records))
     _end(shown, Level(fail_on))
 
 
 @handbook.command()
-@click.option("--config", type=click.Path(exists=True, dir_okay=False, path_type=Path), default=Path("mkdocs.yml"))
-@click.option("--site", type=click.Path(file_okay=False, path_type=Path), default=Path("site"), show_default=True)
+@_CONFIG
+@click.option(
+    "--site",
+    type=click.Path(file_okay=False, path_type=Path),
+    default=Path("site"),
+    show_default=True,
+    help="Where the site goes; a folder that this command made, or an empty one.",
+)
 def build(config: Path, site: Path) -> None:
     """Check the book of a mkdocs.yml and publish it as a static site.
 
@@ -121,7 +134,7 @@ def build(config: Path, site: Path) -> None:
 
 
 @handbook.command()
-@click.option("--config", type=click.Path(exists=True, dir_okay=False, path_type=Path), default=Path("mkdocs.yml"))
+@_CONFIG
 @click.option("--address", default="127.0.0.1:8000", show_default=True, help="Where to serve.")
 def serve(config: Path, address: str) -> None:
     """Serve the book on this machine and rebuild it on every change.
@@ -145,7 +158,7 @@ def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> Non
     Example:
       handbook new 'CCC(C)Br' --nucleophile '[Na+].[N-]=[N+]=[N-]' --by bench-2
     """
-    if not re.fullmatch(r"[\w.-]{1,40}", person):
+    if not re.fullmatch(r"[A-Za-z0-9.-]{1,40}", person):
         raise click.UsageError(f'"{person}" is no person code: letters, digits, dot and hyphen')
     try:
         path = write_new_record(book, substrate, nucleophile, date=_today(), person=person)
@@ -205,21 +218,22 @@ def _today() -> dt.date:
         raise click.UsageError(f"SOURCE_DATE_EPOCH: {error}") from error
 
 
-def _selected(opened: Book, files: Sequence[Path]) -> list[Finding]:
-    """Return the findings in the named files and folders, all of them if none is named."""
+def _selected(opened: Book, files: Sequence[Path]) -> tuple[list[Finding], int]:
+    """Return the findings in the named files and folders, and how many records these hold; all if none is named."""
     if not files:
-        return list(opened.findings)
-    wanted = [path.resolve() for path in files]
-    known = (*opened.files, opened.folder / SETTINGS_FILE)
-    for path, real in zip(files, wanted, strict=True):
-        if not any(real == each or real in each.parents for each in known):
-            raise click.UsageError(f"{path} is no file of the book {opened.folder}")
+        return list(opened.findings), len(opened.files)
     above = opened.folder.parent
-    return [
-        finding
-        for finding in opened.findings
-        if any(real == above / finding.place.file or real in (above / finding.place.file).parents for real in wanted)
-    ]
+    known = {*opened.files, *(above / finding.place.file for finding in opened.findings), opened.folder / SETTINGS_FILE}
+    wanted = [path.resolve() for path in files]
+    for path, real in zip(files, wanted, strict=True):
+        if not any(_is_in(each, [real]) for each in known):
+            raise click.UsageError(f"{path} is no file of the book {opened.folder}")
+    found = [finding for finding in opened.findings if _is_in(above / finding.place.file, wanted)]
+    return found, sum(_is_in(path, wanted) for path in opened.files)
+
+
+def _is_in(path: Path, wanted: Sequence[Path]) -> bool:
+    return any(path == each or each in path.parents for each in wanted)
 
 
 def _end(findings: Iterable[Finding], failing: Level) -> None:

@@ -125,6 +125,22 @@ def test_json_has_stable_keys(run: Run, book: Path) -> None:
     assert ran.code == 1
 
 
+def test_a_folder_counts_its_records(run: Run, book: Path) -> None:
+    (book / "NS7K3QFMC.yml").write_text(with_example("entry: NS7K3QFMC\ntitle: Another\nnotebook: BK2/113"), "utf-8")
+    (book / "azides" / "NS3V6TDMZ.yml").write_text(
+        with_example("entry: NS3V6TDMZ\ntitle: Third\nnotebook: BK2/114"), "utf-8"
+    )
+    assert run("check", book / "azides", "--book", book).out.splitlines()[-1].startswith("2 records checked")
+    assert run("check", book / "handbook.yml", "--book", book).out == "0 records checked: nothing found\n"
+
+
+def test_a_misnamed_record_can_be_asked_by_name(run: Run, book: Path) -> None:
+    (book / "foo.yml").write_text(specimen_text(), "utf-8")
+    ran = run("check", book / "foo.yml", "--book", book)
+    assert ran.code == 1
+    assert "file-misnamed" in ran.out
+
+
 def test_only_the_named_files_are_shown(run: Run, book: Path) -> None:
     _break(book, "status: finished")
     second = book / "NS7K3QFMC.yml"
@@ -291,8 +307,9 @@ def test_a_link_to_the_site_is_followed(run: Run, book: Path, tmp_path: Path, bu
     assert (built / "e" / "NS4T9XQ2N" / "index.html").is_file()
 
 
-def test_a_wrong_build_date_is_misuse(run: Run, book: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setenv("SOURCE_DATE_EPOCH", "yesterday")
+@pytest.mark.parametrize("epoch", ["yesterday", "9" * 40])
+def test_a_wrong_build_date_is_misuse(run: Run, book: Path, monkeypatch: pytest.MonkeyPatch, epoch: str) -> None:
+    monkeypatch.setenv("SOURCE_DATE_EPOCH", epoch)
     assert run("check", "--book", book).code == 2
 
 

@@ -69,7 +69,8 @@ def _components(record: Record, rxn: bytes | None) -> tuple[dict[str, Structure]
         asks = any(compound.from_rxn for _, compound in compounds_of(record))
         return {}, StructureError("no rxn_file is named", "add rxn_file: with path and sha256") if asks else None
     if rxn is None:
-        return {}, StructureError("this file is not beside the record", "put it there; it may not lie outside the book")
+        mend = "put it beside the record; it may not lie outside the book nor have more than 256 kB"
+        return {}, StructureError("this file is missing, outside the book, or too large", mend)
     found = hashlib.sha256(rxn).hexdigest()
     if found != record.rxn_file.sha256:
         return {}, StructureError("the file is not the one whose SHA-256 is given", f"its SHA-256 is {found}")

@@ -4,9 +4,8 @@ from collections.abc import Iterator
 
 from builder.checks.case import Case
 from builder.finding import Level
-from builder.mechanism.amounts import QUANTITY_ORDER, Role, charged_rows, moles_from, present_solvents
+from builder.mechanism.amounts import QUANTITY_ORDER, Role, charged_rows, moles_from, present_solvents, rounding_of
 from builder.records.model import Charged
-from builder.records.quantities import Quantity
 from builder.records.vocabulary import Vessel
 from builder.rule import Fault, Path, rule
 
@@ -56,6 +55,8 @@ def amount_cannot_be_derived(case: Case) -> Iterator[Fault]:
     silent_on=(
         "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', mass: 0.975 g, equivalents: 1.5}",
         "concentration: 0.5 mol/L",
+        "concentration: 0.530 mol/L\n"
+        "substrate: {name: 2-bromobutane, smiles: 'CCC(C)Br', class: secondary, leaving_group: bromide, mass: 1.4 g}",
     ),
 )
 def quantities_disagree(case: Case) -> Iterator[Fault]:
@@ -83,25 +84,23 @@ def quantities_disagree(case: Case) -> Iterator[Fault]:
 
 
 def _disagreement(path: Path, substance: Charged, used: str, kind: str, ratio: float) -> Iterator[Fault]:
-    rounding = sum(_rounding(substance, each) for each in (used, kind))
+    level = _level_of(ratio, rounding_of(substance, used) + rounding_of(substance, kind))
+    if level is not None:
+        yield Fault(
+            at=(*path, kind),
+            message=f"{kind} and {used} of {substance.name} differ by {_factor_words(ratio)}",
+            mend=_factor_mend(ratio, substance),
+            level=level,
+            data={"ratio": round(ratio, 4)},
+        )
+
+
+def _level_of(ratio: float, rounding: float) -> Level | None:
+    """Return how much a disagreement weighs; None if honest rounding, or the tolerance, explains it."""
     off = abs(ratio - 1.0)
     if off <= max(QUERY_ABOVE, rounding):
-        return
-    yield Fault(
-        at=(*path, kind),
-        message=f"{kind} and {used} of {substance.name} differ by {_factor_words(ratio)}",
-        mend=_factor_mend(ratio, substance),
-        level=Level.ERROR if off > max(ERROR_ABOVE, rounding) else None,
-        data={"ratio": round(ratio, 4)},
-    )
-
-
-def _rounding(substance: Charged, kind: str) -> float:
-    typed = getattr(substance, kind)
-    if isinstance(typed, Quantity):
-        return typed.half_digit
-    exponent = typed.as_tuple().exponent if typed is not None else 0
-    return 0.5 * 10.0**exponent / float(typed) if typed and isinstance(exponent, int) else 0.0
+        return None
+    return Level.ERROR if off > max(ERROR_ABOVE, rounding) else Level.QUERY
 
 
 def _factor_words(ratio: float) -> str:
@@ -122,13 +121,15 @@ def _concentration_disagreement(case: Case) -> Iterator[Fault]:
     moles = case.amounts.substrate.amount_mol
     if typed is None or volume is None or moles is None:
         return
-    ratio = typed.magnitude / (moles / volume)
-    if abs(ratio - 1.0) > max(QUERY_ABOVE, typed.half_digit):
+    volumes = [solvent.volume for solvent in case.record.solvents if solvent.volume is not None]
+    rounding = typed.half_digit + rounding_of(case.record.substrate) + max(each.half_digit for each in volumes)
+    level = _level_of(typed.magnitude / (moles / volume), rounding)
+    if level is not None:
         yield Fault(
             at=("concentration",),
             message=f"{typed} typed, {moles / volume:.3g} mol/L from amount and solvent volume",
             mend="correct it, or drop it: with volumes given it is derived",
-            level=Level.ERROR if abs(ratio - 1.0) > ERROR_ABOVE else None,
+            level=level,
         )
 
 

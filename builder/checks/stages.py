@@ -25,7 +25,7 @@ outcome:
   products: [{{label: A, name: 2-azidobutane, smiles: 'CC[C@@H](C)N=[N+]=[N-]', use: desired}}]
   measured: [{{yield: 81 %, of: A, kind: assay}}]
 """
-MESYLATE = "CC[C@H](C)OS(C)(=O)=O"
+_MESYLATE = "CC[C@H](C)OS(C)(=O)=O"
 
 
 @rule(
@@ -34,7 +34,7 @@ MESYLATE = "CC[C@H](C)OS(C)(=O)=O"
     source="march-2013",
     needs=("structure-unreadable",),
     fires_on=(_TWO_STAGES.format(gives="CC[C@@H](C)OS(C)(=O)=O"),),
-    silent_on=(_TWO_STAGES.format(gives=MESYLATE),),
+    silent_on=(_TWO_STAGES.format(gives=_MESYLATE),),
 )
 def stage_gives_is_inverted(case: Case) -> Iterator[Fault]:
     """Making a leaving group of a hydroxyl group leaves its carbon alone: the configuration stays.
@@ -61,7 +61,7 @@ def stage_gives_is_inverted(case: Case) -> Iterator[Fault]:
     source="iupac-gold",
     needs=("structure-unreadable",),
     fires_on=(_TWO_STAGES.format(gives="CCC[C@H](C)OS(C)(=O)=O"),),
-    silent_on=(_TWO_STAGES.format(gives=MESYLATE),),
+    silent_on=(_TWO_STAGES.format(gives=_MESYLATE),),
 )
 def stage_gives_what_does_not_follow(case: Case) -> Iterator[Fault]:
     """What a stage gives follows from the substrate, from what an earlier stage gave, or from a reagent and a base.

@@ -6,7 +6,7 @@ from enum import StrEnum
 
 from builder.chemistry.structure import Structure
 from builder.records.model import Charged, Record
-from builder.records.quantities import Dimension
+from builder.records.quantities import Dimension, Quantity
 from builder.rule import Path
 
 __all__ = [
@@ -18,6 +18,7 @@ __all__ = [
     "derive_amounts",
     "moles_from",
     "present_solvents",
+    "rounding_of",
 ]
 
 QUANTITY_ORDER = ("mass", "amount", "volume", "equivalents")
@@ -137,6 +138,15 @@ def moles_from(kind: str, substance: Charged, structure: Structure | None, subst
     if mass_g is None or structure is None:
         return None
     return mass_g * _content(substance) / structure.mass
+
+
+def rounding_of(substance: Charged, kind: str | None = None) -> float:
+    """Return half a unit in the last typed digit, relative: of the quantity of this kind, else of the one in use."""
+    typed = getattr(substance, kind or _typed(substance) or "mass")
+    if isinstance(typed, Quantity):
+        return typed.half_digit
+    exponent = typed.as_tuple().exponent if typed is not None else 0
+    return 0.5 * 10.0**exponent / float(typed) if typed and isinstance(exponent, int) else 0.0
 
 
 def _moles(substance: Charged, structure: Structure | None, substrate_mol: float | None) -> float | None:

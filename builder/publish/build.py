@@ -65,7 +65,8 @@ def build_site(config: Path, site: Path) -> BuildReport:
         report = BuildReport(**json.loads(report_file.read_text("utf-8"))) if report_file.exists() else None
     if code or report is None:
         shutil.rmtree(fresh, ignore_errors=True)
-        raise SiteBuildError(f"no site was built; {site.name}/ is as it was", report)
+        former_stands = f"; {site.name}/ is as it was" if site.exists() else ""
+        raise SiteBuildError(f"no site was built{former_stands}", report)
     (fresh / MARKER).touch()
     _swap(fresh, site, former)
     return report
@@ -86,12 +87,15 @@ def write_report(report: BuildReport) -> None:
 def build_date() -> dt.date:
     """Return the date of the build: SOURCE_DATE_EPOCH where it is set, so that builds can be repeated, else today.
 
-    Raises ValueError if SOURCE_DATE_EPOCH is no number of seconds.
+    Raises ValueError if SOURCE_DATE_EPOCH is no number of seconds that a calendar has.
     """
     epoch = os.environ.get("SOURCE_DATE_EPOCH")
     if epoch is None:
         return dt.datetime.now().astimezone().date()
-    return dt.datetime.fromtimestamp(int(epoch), dt.UTC).date()
+    try:
+        return dt.datetime.fromtimestamp(int(epoch), dt.UTC).date()
+    except (OverflowError, OSError) as error:
+        raise ValueError(f"{epoch} seconds are in no calendar") from error
 
 
 def _is_ours(site: Path) -> bool:

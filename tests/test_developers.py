@@ -1,0 +1,18 @@
+"""The map in DEVELOPERS.md names every module, and nothing that does not exist."""
+
+import re
+from pathlib import Path
+
+ROOT = Path(__file__).parents[1]
+MAP = (ROOT / "DEVELOPERS.md").read_text("utf-8").split("```")[1]
+
+
+def test_the_map_is_true() -> None:
+    modules = {path.name for path in (ROOT / "builder").rglob("*.py") if path.parent.name != "rules"}
+    named = set(re.findall(r"\b[a-z_]+\.py\b", MAP))
+    assert named == modules - {"__init__.py"}
+
+
+def test_the_tables_it_names_exist() -> None:
+    tables = {path.name for path in (ROOT / "builder").rglob("*.t*") if path.suffix in {".tsv", ".toml"}}
+    assert set(re.findall(r"\b[a-z_]+\.(?:tsv|toml)\b", MAP)) <= tables
