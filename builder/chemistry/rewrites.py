@@ -11,12 +11,12 @@ from rdkit.Chem import rdChemReactions
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.table import NOTHING, rows_of, table_text
 
-__all__ = ["Rewrite", "Stage", "load_rewrites", "rewritten"]
+__all__ = ["ActsOn", "Rewrite", "load_rewrites", "rewritten"]
 
 MAX_RESULTS = 40
 
 
-class Stage(StrEnum):
+class ActsOn(StrEnum):
     """What a rewrite acts on."""
 
     SUBSTRATE = "substrate"
@@ -33,7 +33,7 @@ class Rewrite:
     """
 
     name: str
-    stage: Stage
+    acts_on: ActsOn
     reaction: rdChemReactions.ChemicalReaction
     adds: Structure | None
     role: str | None
@@ -44,11 +44,11 @@ class Rewrite:
 def load_rewrites() -> tuple[Rewrite, ...]:
     """Return the rows of the table; ValueError for a faulty one."""
     table = "rewrites.tsv"
-    columns = ("name", "stage", "smarts", "adds", "with", "kind", "note", "source")
+    columns = ("name", "acts_on", "smarts", "adds", "with", "kind", "note", "source")
     return tuple(
         Rewrite(
             name=row["name"],
-            stage=Stage(row["stage"]),
+            acts_on=ActsOn(row["acts_on"]),
             reaction=_compiled(row["name"], row["smarts"]),
             adds=None if row["adds"] == NOTHING else parse_smiles(row["adds"]),
             role=None if row["with"] == NOTHING else row["with"],

@@ -20,7 +20,7 @@ from builder.chemistry.perception import (
     neighbouring_groups,
     perceive_sites,
 )
-from builder.chemistry.rewrites import Stage, load_rewrites, rewritten
+from builder.chemistry.rewrites import ActsOn, load_rewrites, rewritten
 from builder.chemistry.structure import Atom, AtomId, Structure, StructureError
 from builder.chemistry.transform import (
     Cation,
@@ -42,7 +42,7 @@ from builder.chemistry.transform import (
     substitute,
     transpose_allylic,
 )
-from builder.mechanism.flask import Role, roles_in
+from builder.mechanism.flask import FlaskRole, roles_in
 from builder.mechanism.reaction import SiteInPlay
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.vocabulary import Mechanism
@@ -162,8 +162,8 @@ _Step = tuple[Route, tuple[Structure, ...]]
 """A route, and what its last event sets free."""
 
 
-def _stages(sites: tuple[SiteInPlay, ...], flask: _Flask) -> Iterator[Iterator[Route]]:
-    """Yield the routes stage by stage, each stage longer and dearer than the one before.
+def _rounds(sites: tuple[SiteInPlay, ...], flask: _Flask) -> Iterator[Iterator[Route]]:
+    """Yield the routes round by round, each round longer and dearer than the one before.
 
     What the first event sets free attacks in the second.
     """
@@ -201,7 +201,7 @@ def search_routes(
     """Return, for each product, the routes of the shortest kind that give its constitution; empty where none does.
 
     species: everything charged beside the substrate. Salts and free compounds are one, configurations are left to
-    the caller. Each stage (one event, through a cation, alkylation over again, two events) is only entered while a
+    the caller. Each round (one event, through a cation, alkylation over again, two events) is only entered while a
     product is still without an open route; closed ones are given only where there is no open one. The budget counts
     work, not time, so that a search ends alike on every machine.
     """
@@ -210,11 +210,11 @@ def search_routes(
     flask = _Flask(species, _Budget(BUDGET))
     was_cut = False
     try:
-        for stage in _stages(sites, flask):
+        for one_round in _rounds(sites, flask):
             open_places = [place for place, routes in enumerate(found) if all(route.closed_by for route in routes)]
             if not open_places:
                 break
-            for route in stage:
+            for route in one_round:
                 made = _constitution(route.product)
                 for place in open_places:
                     if made in wanted[place]:
@@ -274,7 +274,7 @@ def _events_at(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[
         for effect in _ELIMINATIONS if has_stereo or site.ring_sizes else _ELIMINATIONS[:1]:
             for edit in flask.several(partial(eliminate, start, site, beta.atom, effect=effect)):
                 yield from _products_of(start, site, (Event.ELIMINATION,), edit)
-    yield from ((route, ()) for route in _rewrites(start, site, (), start, Stage.SUBSTRATE, flask))
+    yield from ((route, ()) for route in _rewrites(start, site, (), start, ActsOn.SUBSTRATE, flask))
 
 
 def _rewrites(
@@ -282,12 +282,12 @@ def _rewrites(
     site: ReactiveSite,
     events: tuple[Event, ...],
     reached: Structure,
-    stage: Stage,
+    acts_on: ActsOn,
     flask: _Flask,
 ) -> Iterator[Route]:
     """Yield the routes that end in a row of rewrites.tsv, where the flask holds what it takes."""
     for row in load_rewrites():
-        if row.stage is stage and (row.role is None or row.role in roles_in(flask.species)):
+        if row.acts_on is acts_on and (row.role is None or row.role in roles_in(flask.species)):
             pieces = (piece for made in rewritten(reached, row) for piece in made.fragments if _has_carbon(piece))
             yield from (
                 Route(start, site, (*events, Event(row.kind)), each, StereoEffect.NOT_DETERMINED) for each in pieces
@@ -295,7 +295,7 @@ def _rewrites(
 
 
 def _additions(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[_Step]:
-    if _is_better_cation(start, site) or Role.RADICAL_INITIATOR in roles_in(flask.species):
+    if _is_better_cation(start, site) or FlaskRole.RADICAL_INITIATOR in roles_in(flask.species):
         for nucleophile in _attackers(flask):
             for edit in flask.several(partial(add_hx, start, site, nucleophile)):
                 yield from _products_of(start, site, (Event.ADDITION,), edit)
@@ -339,7 +339,7 @@ def _can_add(flask: _Flask) -> bool:
 
 def _attackers(flask: _Flask) -> Iterator[Nucleophile]:
     """Yield each attacking atom in the flask once; weak carbon acids only where a strong base is there."""
-    has_strong_base = Role.STRONG_BASE in roles_in(flask.species)
+    has_strong_base = FlaskRole.STRONG_BASE in roles_in(flask.species)
     seen: set[tuple[Structure, int]] = set()
     for each in flask.species:
         for nucleophile in attacking_atoms(each):
@@ -375,7 +375,7 @@ def _ionises(each: SiteInPlay) -> bool:
 def _through_cations(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[Route]:
     attackers = tuple(_attackers(flask))
     for cation, events in _cations(flask.one(partial(protonate if site.is_addition else ionise, start, site)), flask):
-        yield from _rewrites(start, site, events, cation.structure, Stage.CATION, flask)
+        yield from _rewrites(start, site, events, cation.structure, ActsOn.CATION, flask)
         if not _is_stable(cation):
             continue  # a primary cation only hands its charge on
         for nucleophile in attackers:
@@ -461,12 +461,12 @@ def _second_events(route: Route, flask: _Flask, in_play: tuple[SiteInPlay, ...])
             continue
         for further, _ in _from_site(SiteInPlay(intermediate, site, activated), flask):
             yield replace(further, start=route.start, site=route.site, events=(*route.events, *further.events))
-    yield from _rewrites(route.start, route.site, route.events, intermediate, Stage.PRODUCT, flask)
+    yield from _rewrites(route.start, route.site, route.events, intermediate, ActsOn.PRODUCT, flask)
 
 
 def _alkylated_again(level: list[Route], flask: _Flask, in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
     """Yield what products give with further molecules of substrate; N, S and P take up to four in all."""
-    has_strong_base = Role.STRONG_BASE in roles_in(flask.species)
+    has_strong_base = FlaskRole.STRONG_BASE in roles_in(flask.species)
     partners = [each for each in in_play if not each.site.is_addition]
     seen = {route.product for route in level}
     for taken in range(2, MEET_IN_ONE_PRODUCT + 1):

@@ -3,7 +3,7 @@
 import pytest
 
 from builder.chemistry.structure import parse_smiles
-from builder.mechanism.flask import Role, roles_in
+from builder.mechanism.flask import FlaskRole, roles_in
 
 ROLES = [
     ("[Na+].[H-]", "strong base"),  # pKaH 35
@@ -31,5 +31,5 @@ ROLES = [
 
 @pytest.mark.parametrize(("smiles", "word"), ROLES, ids=[row[0] for row in ROLES])
 def test_roles(smiles: str, word: str) -> None:
-    expected = {Role(word)} if word else set()
+    expected = {FlaskRole(word)} if word else set()
     assert roles_in([parse_smiles(smiles)]) == expected
