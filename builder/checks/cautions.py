@@ -29,9 +29,9 @@ __all__ = [
     "CautionKind",
     "Hazard",
     "Present",
-    "Role",
     "Severity",
     "SubstanceKind",
+    "Whereabouts",
     "find_hazards",
     "load_cautions",
     "load_substance_kinds",
@@ -80,7 +80,7 @@ class Measure(StrEnum):
     CARBON_RATIO = "carbon ratio"
 
 
-class Role(StrEnum):
+class Whereabouts(StrEnum):
     """Where in a record something stands: charged or formed on the way, obtained or sought, named in free text."""
 
     FLASK = "flask"
@@ -89,7 +89,7 @@ class Role(StrEnum):
     NOTE = "note"
 
 
-_TEXT = frozenset({Role.WORK_UP, Role.NOTE})
+_TEXT = frozenset({Whereabouts.WORK_UP, Whereabouts.NOTE})
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,13 +98,13 @@ class Present:
 
     path: Path
     name: str
-    role: Role
+    whereabouts: Whereabouts
     structure: Structure | None = None
 
     @property
     def shown(self) -> str:
         """Return the name; a line of text is shortened and put in quotes."""
-        return f'"{shorten(self.name, 80, placeholder=" …")}"' if self.role in _TEXT else self.name
+        return f'"{shorten(self.name, 80, placeholder=" …")}"' if self.whereabouts in _TEXT else self.name
 
     @property
     def kinds(self) -> frozenset[str]:
@@ -198,37 +198,37 @@ def presents_of(case: Case) -> tuple[Present, ...]:
     A solvent without a structure takes it from the table of solvents; whatever has none is judged by its name.
     """
     record = case.record
-    charged = [_substance(case, path, compound, Role.FLASK) for path, _, compound in charged_rows(record)]
+    charged = [_substance(case, path, compound, Whereabouts.FLASK) for path, _, compound in charged_rows(record)]
     formed = [
-        _substance(case, ("stages", index, "gives"), stage.gives, Role.FLASK)
+        _substance(case, ("stages", index, "gives"), stage.gives, Whereabouts.FLASK)
         for index, stage in enumerate(record.stages)
         if stage.gives is not None
     ]
     products = [
-        _substance(case, ("outcome", "products", index), product, Role.PRODUCT)
+        _substance(case, ("outcome", "products", index), product, Whereabouts.PRODUCT)
         for index, product in enumerate(record.outcome.products)
     ]
     if record.outcome.sought is not None:
-        products.append(_substance(case, ("outcome", "sought"), record.outcome.sought, Role.PRODUCT))
+        products.append(_substance(case, ("outcome", "sought"), record.outcome.sought, Whereabouts.PRODUCT))
     return (*charged, *formed, *products, *_texts(case))
 
 
 def _texts(case: Case) -> Iterator[Present]:
     for index, line in enumerate(case.record.work_up or ()):
-        yield Present(("work_up", index), line, Role.WORK_UP)
+        yield Present(("work_up", index), line, Whereabouts.WORK_UP)
     for index, stage in enumerate(case.record.stages):
         if stage.note:
-            yield Present(("stages", index, "note"), stage.note, Role.NOTE)
+            yield Present(("stages", index, "note"), stage.note, Whereabouts.NOTE)
     if case.record.procedure:
-        yield Present(("procedure",), case.record.procedure, Role.NOTE)
+        yield Present(("procedure",), case.record.procedure, Whereabouts.NOTE)
 
 
-def _substance(case: Case, path: Path, compound: Compound, role: Role) -> Present:
+def _substance(case: Case, path: Path, compound: Compound, whereabouts: Whereabouts) -> Present:
     structure = case.structures.get(path)
     if structure is None:
         solvent = find_solvent(compound.name)
         structure = parse_smiles(solvent.smiles) if solvent else None
-    return Present(path, compound.name, role, structure)
+    return Present(path, compound.name, whereabouts, structure)
 
 
 # --- which cautions apply ---------------------------------------------------------------------------------------
@@ -257,8 +257,10 @@ def _hazards_of(caution: Caution, by_kind: Mapping[str, Sequence[Present]], hott
         if caution.condition is None or caution.condition.holds(present, hottest_c)
     ]
     if caution.second is None:
-        roles = (Role.FLASK,) if caution.kind is CautionKind.CHARGED else (Role.FLASK, Role.PRODUCT)
-        yield from (Hazard(caution, present) for present in _in(firsts, *roles))
+        places = (
+            (Whereabouts.FLASK,) if caution.kind is CautionKind.CHARGED else (Whereabouts.FLASK, Whereabouts.PRODUCT)
+        )
+        yield from (Hazard(caution, present) for present in _in(firsts, *places))
         return
     seconds: Sequence[Present] = by_kind.get(caution.second.name, ())
     if caution.kind is CautionKind.QUENCH:
@@ -279,15 +281,17 @@ def _meetings(
     What was charged counts first, then the work-up, every line of it for a `stop` and the first for others. A note
     counts only where nothing else shows the pair; two lines of text only for a `stop` of which nothing was charged.
     """
-    charged = [(second, first) for first in _in(firsts, Role.FLASK) for second in _in(seconds, Role.FLASK)]
+    charged = [
+        (second, first) for first in _in(firsts, Whereabouts.FLASK) for second in _in(seconds, Whereabouts.FLASK)
+    ]
     charged = [(at, other) for at, other in charged if at is not other]
     yield from charged
     if caution.kind is CautionKind.SOLUTION:
         return
     is_grave = caution.severity is Severity.STOP
-    named = list(_named(firsts, seconds, Role.WORK_UP))
+    named = list(_named(firsts, seconds, Whereabouts.WORK_UP))
     if not charged and not named:
-        named = list(_named(firsts, seconds, Role.NOTE))
+        named = list(_named(firsts, seconds, Whereabouts.NOTE))
     if not charged and not named and is_grave:
         named = [(at, other) for other in _in(firsts, *_TEXT) for at in _in(seconds, *_TEXT)]
     yield from (named if is_grave else [(at, other) for at, other in named if at is named[0][0]])
@@ -296,19 +300,21 @@ def _meetings(
 def _before_it_is_destroyed(presents: Sequence[Present], by_kind: Mapping[str, Sequence[Present]]) -> list[Present]:
     """Leave out the lines of the work-up below the first that names water, an alcohol or an acid."""
     destroying = [*by_kind.get("water or alcohol", ()), *by_kind.get("acid", ())]
-    last = min((present.path for present in _in(destroying, Role.WORK_UP)), default=None)
-    return [p for p in presents if p.role is not Role.WORK_UP or last is None or p.path <= last]
+    last = min((present.path for present in _in(destroying, Whereabouts.WORK_UP)), default=None)
+    return [p for p in presents if p.whereabouts is not Whereabouts.WORK_UP or last is None or p.path <= last]
 
 
-def _named(firsts: Sequence[Present], seconds: Sequence[Present], role: Role) -> Iterator[tuple[Present, Present]]:
-    """Yield the pairs of which one partner is charged and the other named in a text of this role."""
-    yield from ((at, other) for other in _in(firsts, Role.FLASK) for at in _in(seconds, role))
-    if not _in(firsts, Role.FLASK):
-        yield from ((at, other) for other in _in(seconds, Role.FLASK) for at in _in(firsts, role))
+def _named(
+    firsts: Sequence[Present], seconds: Sequence[Present], whereabouts: Whereabouts
+) -> Iterator[tuple[Present, Present]]:
+    """Yield the pairs of which one partner is charged and the other named in a text that stands there."""
+    yield from ((at, other) for other in _in(firsts, Whereabouts.FLASK) for at in _in(seconds, whereabouts))
+    if not _in(firsts, Whereabouts.FLASK):
+        yield from ((at, other) for other in _in(seconds, Whereabouts.FLASK) for at in _in(firsts, whereabouts))
 
 
-def _in(presents: Sequence[Present], *roles: Role) -> list[Present]:
-    return [present for present in presents if present.role in roles]
+def _in(presents: Sequence[Present], *places: Whereabouts) -> list[Present]:
+    return [present for present in presents if present.whereabouts in places]
 
 
 _HYDROGEN_HALIDES = frozenset({"Cl", "Br", "I"})

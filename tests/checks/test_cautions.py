@@ -13,8 +13,8 @@ from builder.checks.cautions import (
     Caution,
     CautionKind,
     Present,
-    Role,
     Severity,
+    Whereabouts,
     find_hazards,
     load_cautions,
     load_substance_kinds,
@@ -53,9 +53,9 @@ def experiment(example: str) -> tuple[tuple[Present, ...], float]:
         if part.startswith("@"):
             hottest_c = float(part[1:])
         elif part.startswith('"'):
-            presents.append(Present(("work_up", index), part.strip('"'), Role.WORK_UP))
+            presents.append(Present(("work_up", index), part.strip('"'), Whereabouts.WORK_UP))
         else:
-            presents.append(Present(("reagents", index), part, Role.FLASK, parse_smiles(part)))
+            presents.append(Present(("reagents", index), part, Whereabouts.FLASK, parse_smiles(part)))
     return tuple(presents), hottest_c
 
 
@@ -269,7 +269,7 @@ def test_an_amine_hydrochloride_is_no_mineral_acid_however_drawn(drawn: str) -> 
     ],
 )
 def test_longer_names_and_denied_names_are_no_acid_acetone_or_bleach(line: str, kind: str | None) -> None:
-    kinds = Present(("work_up", 0), line, Role.WORK_UP).kinds
+    kinds = Present(("work_up", 0), line, Whereabouts.WORK_UP).kinds
     assert not kinds & {"acid", "acetone", "hypochlorite"}
     assert kind is None or kind in kinds
 
@@ -360,8 +360,8 @@ def test_alkylating_agents_are_graded() -> None:
 
 def test_a_plain_alkylating_agent_counts_where_it_is_charged_and_not_as_product() -> None:
     bromide = parse_smiles("CCC(C)Br")
-    for role, ids in [(Role.FLASK, ["alkylating-agent"]), (Role.PRODUCT, [])]:
-        hazards = find_hazards((Present(("x",), "2-bromobutane", role, bromide),), ROOM_TEMPERATURE_C)
+    for whereabouts, ids in [(Whereabouts.FLASK, ["alkylating-agent"]), (Whereabouts.PRODUCT, [])]:
+        hazards = find_hazards((Present(("x",), "2-bromobutane", whereabouts, bromide),), ROOM_TEMPERATURE_C)
         assert [hazard.caution.id for hazard in hazards] == ids
 
 
