@@ -144,6 +144,10 @@ class _Flask:
         """Return the flask after something has been set free in it; the budget is shared."""
         return _Flask((*self.species, *freed), self.budget)
 
+    def lets_attack(self, nucleophile: Nucleophile) -> bool:
+        """Say whether a nucleophile acts in this flask: a weak carbon acid only does beside a strong base."""
+        return not nucleophile.needs_strong_base or FlaskRole.STRONG_BASE in roles_in(self.species)
+
     def one(self, edit: "partial[T]") -> tuple[T, ...]:
         """Return what an edit makes; nothing where it would lose atoms or outgrow all bounds: that is no way at all."""
         changed = edit.args[0]
@@ -338,13 +342,12 @@ def _can_add(flask: _Flask) -> bool:
 
 
 def _attackers(flask: _Flask) -> Iterator[Nucleophile]:
-    """Yield each attacking atom in the flask once; weak carbon acids only where a strong base is there."""
-    has_strong_base = FlaskRole.STRONG_BASE in roles_in(flask.species)
+    """Yield each atom that attacks in the flask once."""
     seen: set[tuple[Structure, int]] = set()
     for each in flask.species:
         for nucleophile in attacking_atoms(each):
             key = (nucleophile.species, nucleophile.atom)
-            if key not in seen and (has_strong_base or not nucleophile.needs_strong_base):
+            if key not in seen and flask.lets_attack(nucleophile):
                 seen.add(key)
                 yield nucleophile
 
@@ -466,7 +469,6 @@ def _second_events(route: Route, flask: _Flask, in_play: tuple[SiteInPlay, ...])
 
 def _alkylated_again(level: list[Route], flask: _Flask, in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
     """Yield what products give with further molecules of substrate; N, S and P take up to four in all."""
-    has_strong_base = FlaskRole.STRONG_BASE in roles_in(flask.species)
     partners = [each for each in in_play if not each.site.is_addition]
     seen = {route.product for route in level}
     for taken in range(2, MEET_IN_ONE_PRODUCT + 1):
@@ -474,7 +476,7 @@ def _alkylated_again(level: list[Route], flask: _Flask, in_play: tuple[SiteInPla
         for reached, each in ((route, each) for route in level for each in partners):
             for nucleophile in attacking_atoms(reached.product):
                 repeats = taken == 2 or nucleophile.symbol in {"N", "S", "P"}
-                if repeats and (has_strong_base or not nucleophile.needs_strong_base):
+                if repeats and flask.lets_attack(nucleophile):
                     for edit in flask.one(partial(substitute, each.on, each.site, nucleophile)):
                         events = (*reached.events, Event.SUBSTITUTION)
                         route = Route(reached.start, reached.site, events, edit.product, edit.effect)
