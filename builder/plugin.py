@@ -38,6 +38,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
 
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Read and check the book and write its pages, before MkDocs clears the site folder."""
+        _refuse_a_talking_theme(config)
         folder = Path(config.docs_dir)
         self.book = open_book(folder, today=build_date(), progress=watched)
         least = Level(self.config.fail_on).weight
@@ -91,6 +92,17 @@ class _VirtualPage(MkDocsPage):
         self.content = self._page.body
         self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self._page.headings])
         self.present_anchor_ids = set(self._page.anchors)
+
+
+def _refuse_a_talking_theme(config: MkDocsConfig) -> None:
+    """Stop where the theme would ask other hosts for fonts or scripts: what a reader looks up is nobody's business."""
+    theme = config.theme
+    ours = any((Path(folder) / "assets" / "handbook.css").is_file() for folder in theme.dirs)
+    if theme.name != "material" or theme.get("font") is not False or not ours:
+        raise PluginError(
+            "this theme would call other hosts; mkdocs.yml needs theme: with name: material, font: false and"
+            " custom_dir: the folder site_overrides of the handbook"
+        )
 
 
 def _configure(config: MkDocsConfig, book: Book, pages: tuple[Page, ...]) -> None:

@@ -254,7 +254,8 @@ def built(tmp_path: Path) -> Path:
 
 def _config(tmp_path: Path, plugins: str = "[handbook]") -> Path:
     config = tmp_path / "mkdocs.yml"
-    config.write_text(f"site_name: T\ndocs_dir: entries\nplugins: {plugins}\n", "utf-8")
+    theme = f"{{name: material, font: false, custom_dir: {Path(__file__).parents[1] / 'site_overrides'}}}"
+    config.write_text(f"site_name: T\ndocs_dir: entries\ntheme: {theme}\nplugins: {plugins}\n", "utf-8")
     return config
 
 
@@ -263,6 +264,13 @@ def test_a_build_publishes_the_book(run: Run, book: Path, tmp_path: Path, built:
     assert (ran.code, ran.out) == (0, f"1 entry published in {built}/\n")
     assert "2-azidobutane" in (built / "e" / "NS4T9XQ2N" / "index.html").read_text("utf-8")
     assert sorted(each.name for each in tmp_path.iterdir()) == ["entries", "mkdocs.yml", "site"]
+
+
+def test_a_theme_that_calls_other_hosts_is_refused(run: Run, book: Path, tmp_path: Path, built: Path) -> None:
+    config = tmp_path / "mkdocs.yml"
+    config.write_text("site_name: T\ndocs_dir: entries\nplugins: [handbook]\n", "utf-8")
+    assert run("build", "--config", config, "--site", built).code == 2
+    assert (built / "index.html").read_text("utf-8") == "the last good one"
 
 
 BROKEN = [
