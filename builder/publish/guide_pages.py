@@ -1,6 +1,6 @@
 """How to add an entry, and how to cite one."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -28,12 +28,13 @@ class FormatRow:
 
 @dataclass(frozen=True, slots=True)
 class FormatPart:
-    """One part of the record with its keys; key: where it stands ("stages"), empty for the record itself.
+    """One part of the record with its keys.
 
+    places: the keys under which it stands ("nucleophile", "base"); empty for the record itself.
     beyond: the part whose keys it has as well, not listed again.
     """
 
-    key: str
+    places: tuple[str, ...]
     meaning: str
     beyond: str
     rows: tuple[FormatRow, ...]
@@ -41,25 +42,21 @@ class FormatPart:
 
 def format_parts(schema: Mapping[str, Any]) -> tuple[FormatPart, ...]:
     """Return the parts of the record format in the order in which a record holds them, from its JSON Schema."""
-    parts: list[FormatPart] = []
+    places: dict[str, list[str]] = {}
+    parts: dict[str, Mapping[str, Any]] = {}
     waiting = [("", schema)]
-    seen: set[str] = set()
-    substance = set(schema["$defs"][_SUBSTANCE]["properties"])
     while waiting:
         key, part = waiting.pop(0)
-        properties = part["properties"]
-        title = part.get("title", key)
-        beyond = "nucleophile" if title != _SUBSTANCE and substance <= set(properties) else ""
-        listed = {name: node for name, node in properties.items() if not beyond or name not in substance}
-        required = part.get("required", ())
-        rows = tuple(FormatRow(name, name in required, _takes(node, schema)) for name, node in listed.items())
-        parts.append(FormatPart(key, part.get("description", ""), beyond, rows))
-        for name, node in properties.items():
-            below = _part_of(node, schema)
-            if below is not None and below["title"] not in seen:
-                seen.add(below["title"])
-                waiting.append((f"{key}.{name}".strip("."), below))
-    return tuple(parts)
+        places.setdefault(part["title"], []).append(key)
+        if part["title"] in parts:
+            continue
+        parts[part["title"]] = part
+        waiting.extend(
+            (f"{key}.{name}".strip("."), below)
+            for name, node in part["properties"].items()
+            if (below := _part_of(node, schema)) is not None
+        )
+    return tuple(_format_part(part, places[title], schema) for title, part in parts.items())
 
 
 def guide_pages(book: Book) -> tuple[Page, ...]:
@@ -95,10 +92,28 @@ def guide_pages(book: Book) -> tuple[Page, ...]:
     )
 
 
+def _format_part(part: Mapping[str, Any], places: Sequence[str], schema: Mapping[str, Any]) -> FormatPart:
+    properties = part["properties"]
+    substance = set(schema["$defs"][_SUBSTANCE]["properties"])
+    beyond = "nucleophile" if part["title"] != _SUBSTANCE and substance <= set(properties) else ""
+    required = part.get("required", ())
+    rows = tuple(
+        FormatRow(name, name in required, _takes(node, schema))
+        for name, node in properties.items()
+        if not beyond or name not in substance
+    )
+    return FormatPart(tuple(filter(None, places)), part.get("description", ""), beyond, rows)
+
+
 def _resolve(node: Mapping[str, Any], schema: Mapping[str, Any]) -> Mapping[str, Any]:
     while "$ref" in node:
         node = schema["$defs"][node["$ref"].rsplit("/", 1)[-1]]
     return node
+
+
+def _choices(node: Mapping[str, Any]) -> tuple[Mapping[str, Any], ...]:
+    """Return what a key may take instead: the schemas of anyOf, or the two branches of if/then/else."""
+    return (*node.get("anyOf", ()), *(node[branch] for branch in ("then", "else") if branch in node))
 
 
 def _part_of(node: Mapping[str, Any], schema: Mapping[str, Any]) -> Mapping[str, Any] | None:
@@ -106,7 +121,7 @@ def _part_of(node: Mapping[str, Any], schema: Mapping[str, Any]) -> Mapping[str,
     node = _resolve(node, schema)
     if "properties" in node:
         return node
-    below = [*node.get("anyOf", ()), *([node["items"]] if isinstance(node.get("items"), dict) else [])]
+    below = [*_choices(node), *([node["items"]] if isinstance(node.get("items"), dict) else [])]
     return next((part for choice in below if (part := _part_of(choice, schema)) is not None), None)
 
 
@@ -118,12 +133,17 @@ def _takes(node: Mapping[str, Any], schema: Mapping[str, Any]) -> str:
     if "enum" in node:
         words = [str(word) for word in node["enum"]]
         return " | ".join(words) if len(words) <= 9 else f"one of {len(words)} words, listed below"
-    if "anyOf" in node:
-        return " or ".join(dict.fromkeys(_takes(choice, schema) for choice in node["anyOf"]))
     if "properties" in node:
         return "keys of its own"
+    one = node.get("else")
+    if one is not None and node["then"].get("items") == one:
+        return f"{_takes(one, schema)}, or a list"
+    if choices := _choices(node):
+        return " or ".join(dict.fromkeys(_takes(choice, schema) for choice in choices))
     if "examples" in node:
         return f"such as {node['examples'][0]}"
+    if "prefixItems" in node:
+        return f"[{', '.join(_takes(item, schema) for item in node['prefixItems'])}]"
     if node.get("type") == "array":
         item = node.get("items")
         return f"a list: {_takes(item, schema)}" if isinstance(item, dict) else "a list"
