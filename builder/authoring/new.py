@@ -8,11 +8,11 @@ from pathlib import Path
 from builder.chemistry.perception import NO_LEAVING_GROUP, attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.records.identifiers import mint_identifier
+from builder.records.mended_text import quoted
 from builder.records.reader import read_settings
 from builder.records.settings import SETTINGS_FILE
 from builder.records.specimen import GAP
 from builder.records.vocabulary import Course, Mechanism, Result, StereoKind, Thermometer, Vessel
-from builder.records.yaml_text import quoted
 
 __all__ = ["new_record", "write_new_record"]
 

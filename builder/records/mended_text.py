@@ -4,7 +4,9 @@ Reading goes on with the mended text, so that one run reports everything; places
 """
 
 import re
+from dataclasses import dataclass
 from itertools import takewhile
+from typing import Self
 
 import yaml
 
@@ -12,7 +14,7 @@ from builder.finding import Finding, Place
 from builder.records.rules import reading_rule
 from builder.rule import Fault
 
-__all__ = ["STRUCTURE_KEYS", "MendedText", "quoted"]
+__all__ = ["STRUCTURE_KEYS", "GluedPair", "MendedText", "quoted"]
 
 _LONGEST_LINE = 8_000
 """Twice the longest text a record may hold; beyond it no slip of a writer is looked for."""
@@ -33,9 +35,8 @@ _FLOW_TEXTS = (
     re.compile(rf"{_KEY}: +(?P<value>[^\s'\"\[{{,#][^'\"\[\]{{}},#]* #[^\s#][^,\]}}]*)(?=[,\]}}])"),
 )
 _WIDE_SPACES = "\u00a0\u1680\u2000-\u200a\u202f\u205f\u3000"
-_WITHOUT_SPACE = re.compile(
-    rf"^\s*(?:- +)*(?P<pair>(?P<key>[a-z_]{{2,}}):[{_WIDE_SPACES}]*(?P<value>[^\s:/].*?))(?:\s+#.*)?\s*$"
-)
+_GLUED = re.compile(rf"(?P<key>[a-z_]{{2,}}):[{_WIDE_SPACES}]*(?P<value>[^\s:/].*)")
+_CONTENT = re.compile(r"^\s*(?:- +)*(?P<content>\S.*?)(?:\s+#.*)?\s*$")
 _WIDE_MARGIN = re.compile(rf"^ *(?P<wide>[{_WIDE_SPACES}][ {_WIDE_SPACES}]*)(?=- |{_KEY}:(?: |$))")
 
 _SAID = {
@@ -58,6 +59,30 @@ _SAID = {
 def quoted(text: str) -> str:
     """Return `text` as a single-quoted YAML scalar."""
     return "'" + text.replace("'", "''") + "'"
+
+
+@dataclass(frozen=True, slots=True)
+class GluedPair:
+    """A key and its value without the plain space between them that YAML wants."""
+
+    key: str
+    value: str
+
+    @classmethod
+    def of(cls, text: str) -> Self | None:
+        """Return the pair that `text` as a whole is, such as class:primary; None for any other text."""
+        glued = _GLUED.fullmatch(text)
+        return cls(glued["key"], glued["value"]) if glued else None
+
+    @property
+    def message(self) -> str:
+        """Return what is wrong with it."""
+        return f"a space is missing after {self.key}:"
+
+    @property
+    def fix(self) -> str:
+        """Return it as YAML reads it."""
+        return f"{self.key}: {self.value}"
 
 
 class MendedText:
@@ -152,12 +177,12 @@ class MendedText:
         return self._mend_missing_space(number)
 
     def _mend_missing_space(self, number: int) -> Finding | None:
-        glued = _WITHOUT_SPACE.match(self._line(number))
-        if glued is None:
+        written = _CONTENT.match(self._line(number))
+        glued = GluedPair.of(written["content"]) if written else None
+        if written is None or glued is None:
             return None
-        fix = f"{glued['key']}: {glued['value']}"
-        said = f"a space is missing after {glued['key']}:"
-        return self._replace(number, glued.start("pair"), glued["pair"], fix, "yaml-unreadable", said, f"write {fix}")
+        column, mend = written.start("content"), f"write {glued.fix}"
+        return self._replace(number, column, written["content"], glued.fix, "yaml-unreadable", glued.message, mend)
 
     def _line(self, number: int) -> str:
         """Return a line to look for slips in; nothing for one that is too long to be a writer's."""

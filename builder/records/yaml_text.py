@@ -15,14 +15,14 @@ import yaml
 from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave out the re-export
 
 from builder.finding import Finding, Place
-from builder.records.mended_text import STRUCTURE_KEYS, MendedText, quoted
+from builder.records.mended_text import STRUCTURE_KEYS, GluedPair, MendedText, quoted
 from builder.records.quantities import comma_error, is_beyond_measure
 from builder.records.rules import reading_rule
 from builder.records.specimen import GAP
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["Places", "Plain", "Plainly", "quoted", "read_plain"]
+__all__ = ["Places", "Plain", "Plainly", "read_plain"]
 
 MAX_DEPTH = 16
 MAX_VALUES = 20_000
@@ -34,7 +34,6 @@ _TEXT_KEYS = frozenset(
     {"add", "atmosphere", "basis", "because", "by", "cause", "end_point", "evidence", "finding", "form", "name"}
     | {"note", "notebook", "procedure", "scale_limit", "scope", "take_away", "title", "what", "work_up"}
 )
-_KEY_WITHOUT_SPACE = re.compile(r"(?P<key>[a-z_]{2,}):(?P<value>[^\s:/].*)")
 _INTEGER = re.compile(r"[-+]?[0-9]+")
 _FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _ALTERED_NUMBER = re.compile(r"[-+]?0\d+(\.\d*)?|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")
@@ -286,7 +285,7 @@ class _Constructor:
                 continue
             key: str = key_node.value
             if self._is_without_colon(node, key_node, value_node):
-                glued = _KEY_WITHOUT_SPACE.fullmatch(key)
+                glued = GluedPair.of(key)
                 if glued is None and last:
                     self._join(made, last, key_node, path)
                     continue
@@ -316,10 +315,9 @@ class _Constructor:
             return False
         return not self.text[key.end_mark.index :].lstrip().startswith(":")
 
-    def _taken_apart(self, glued: re.Match[str], node: yaml.ScalarNode) -> tuple[str, yaml.Node]:
-        fix = f"{glued['key']}: {glued['value']}"
-        self.report("yaml-unreadable", node, f"a space is missing after {glued['key']}:", f"write {fix}", fix)
-        return glued["key"], yaml.ScalarNode("", glued["value"], node.start_mark, node.end_mark)
+    def _taken_apart(self, glued: GluedPair, node: yaml.ScalarNode) -> tuple[str, yaml.Node]:
+        self.report("yaml-unreadable", node, glued.message, f"write {glued.fix}", glued.fix)
+        return glued.key, yaml.ScalarNode("", glued.value, node.start_mark, node.end_mark)
 
     def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
         begun, end = self.values[(*path, last)], self._place(rest)

@@ -116,6 +116,7 @@ LAYOUT = [
         "class:secondary",
         "class: secondary",
     ),
+    ("nucleophile: {name: x, smiles: '[OH-]', form:\u00a0oil, equivalents: 1}", "form:\u00a0oil", "form: oil"),
     ("title:azide", "title:azide", "title: azide"),
     (SUBSTRATE.replace("  smiles", "\u00a0\u00a0smiles"), "\u00a0\u00a0", "  "),
     (SUBSTRATE.replace("  smiles", " \u202fsmiles"), "\u202f", " "),
