@@ -468,20 +468,24 @@ def _second_events(route: Route, flask: _Flask, in_play: tuple[SiteInPlay, ...])
 
 
 def _alkylated_again(level: list[Route], flask: _Flask, in_play: tuple[SiteInPlay, ...]) -> Iterator[Route]:
-    """Yield what products give with further molecules of substrate; N, S and P take up to four in all."""
-    partners = [each for each in in_play if not each.site.is_addition]
+    """Yield what products give with further molecules of substrate; N, S and P take up to four in all.
+
+    A product of a closed way only is yielded, but not alkylated further.
+    """
+    partners = [(each, _closing(each, Event.SUBSTITUTION)) for each in in_play if not each.site.is_addition]
     seen = {route.product for route in level}
     for taken in range(2, MEET_IN_ONE_PRODUCT + 1):
         following: dict[Structure, Route] = {}
-        for reached, each in ((route, each) for route in level for each in partners):
+        for reached, (each, gates) in ((route, partner) for route in level for partner in partners):
             for nucleophile in attacking_atoms(reached.product):
                 repeats = taken == 2 or nucleophile.symbol in {"N", "S", "P"}
                 if repeats and flask.lets_attack(nucleophile):
                     for edit in flask.one(partial(substitute, each.on, each.site, nucleophile)):
                         events = (*reached.events, Event.SUBSTITUTION)
-                        route = Route(reached.start, reached.site, events, edit.product, edit.effect)
-                        following.setdefault(edit.product, route)
+                        route = Route(reached.start, reached.site, events, edit.product, edit.effect, closed_by=gates)
+                        if following.setdefault(edit.product, route).closed_by:
+                            following[edit.product] = route
         made = [route for product, route in following.items() if product not in seen]
         yield from made
         seen |= following.keys()
-        level = made[:MAX_REPEATED]
+        level = [route for route in made if not route.closed_by][:MAX_REPEATED]

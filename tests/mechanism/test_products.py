@@ -95,6 +95,9 @@ CLOSED = [
     ("BrC1CC1", "bromide", [AZIDE], "[N-]=[N+]=NC1CC1", "sn2-closed-cyclopropyl"),
     ("OCCCCF", "fluoride", ["[Na+].[OH-]"], "C1CCOC1", "leaving-group-stays"),
     ("CCCCF", "fluoride", [ETHOXIDE], "C=CCC", "leaving-group-stays"),
+    # ammonia takes up side chains but no ring, whether that comes last or between them
+    ("BrCCc1ccc(Br)cc1", "bromide", ["N"], "BrCCc1ccc(NCCc2ccc(Br)cc2)cc1", "sn2-closed-unsaturated"),
+    ("BrCc1ccc(Br)cc1", "bromide", ["N"], "BrCc1ccc(N(Cc2ccc(Br)cc2)Cc2ccc(Br)cc2)cc1", "sn2-closed-unsaturated"),
 ]
 
 
