@@ -33,7 +33,10 @@ Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 _TEXT_KEYS = frozenset(
     {"add", "atmosphere", "basis", "because", "by", "cause", "end_point", "evidence", "finding", "form", "name"}
     | {"note", "notebook", "procedure", "scale_limit", "scope", "take_away", "title", "what", "work_up"}
+    | {"code", "contact", "group", "house_rules", "licence", "notice", "shown_as"}
 )
+"""Of record and settings; a test holds them to the models, which the text is read without."""
+
 _INTEGER = re.compile(r"[-+]?[0-9]+")
 _FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _ALTERED_NUMBER = re.compile(r"[-+]?0\d+(\.\d*)?|0o[0-7]+|0x[0-9a-fA-F]+|[-+]?\.(inf|Inf|INF)|\.(nan|NaN|NAN)")

@@ -1,13 +1,19 @@
 """Reading a file: the traps of YAML with their exact mends, hostile files, and the place of every value."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from pathlib import Path
+from typing import Any, get_args, get_origin, get_type_hints
 
 import pytest
+from pydantic import AfterValidator, BaseModel, BeforeValidator
 
 from builder.finding import Finding, Level
+from builder.records.fields import Line
+from builder.records.model import Record
 from builder.records.reader import Reading, read_bytes, read_record, read_settings
+from builder.records.settings import Settings
 from builder.records.specimen import outcome_example, specimen_text, with_example
+from builder.records.yaml_text import read_plain
 
 
 def _read(text: str | bytes) -> Reading:
@@ -204,6 +210,41 @@ def test_a_text_cut_by_a_comment_is_remarked_on(example: str, whole: str) -> Non
     line = text.split("\n")[finding.place.line - 1]
     assert (finding.rule, finding.level, finding.fix) == ("text-cut-by-comment", Level.REMARK, f"'{whole}'")
     assert line[finding.place.column - 1 : finding.place.end_column - 1] == whole
+
+
+WORDS_AND_LABELS = {"class", "leaving_group", "of"}
+"""Texts to the form, but from a closed list, or the label of a product: what follows # is no part of them."""
+
+
+def _fields_below(model: type[BaseModel]) -> Iterator[tuple[str, Any]]:
+    for name, annotation in get_type_hints(model, include_extras=True).items():
+        if name in model.model_fields:
+            yield model.model_fields[name].alias or name, annotation
+            for below in _annotations_in(annotation):
+                if get_origin(below) is None and isinstance(below, type) and issubclass(below, BaseModel):
+                    yield from _fields_below(below)
+
+
+def _annotations_in(annotation: Any) -> Iterator[Any]:
+    yield annotation
+    for below in get_args(annotation):
+        yield from _annotations_in(below)
+
+
+def _is_free_text(annotation: Any) -> bool:
+    """Say whether a field takes Line, bounded to some length or not."""
+    as_text = [each for each in get_args(Line) if isinstance(each, (BeforeValidator, AfterValidator))]
+    return any(as_text == list(get_args(each))[1 : len(as_text) + 1] for each in _annotations_in(annotation))
+
+
+def test_every_free_text_is_watched_for_comments() -> None:
+    fields = [*_fields_below(Record), *_fields_below(Settings)]
+    watched = {
+        key
+        for key, _ in fields
+        if "text-cut-by-comment" in {finding.rule for finding in read_plain(f"{key}: Run #3 of azide", "x").findings}
+    }
+    assert watched == {key for key, annotation in fields if _is_free_text(annotation)} - WORDS_AND_LABELS
 
 
 @pytest.mark.parametrize("comment", ["# formed in stage 1", "#", "## formed", "#### 3"])
