@@ -1,6 +1,7 @@
 """The register of rules guards itself, and every rule plays its own examples."""
 
 import re
+from pathlib import Path
 
 import pytest
 
@@ -11,6 +12,7 @@ from builder.finding import Level
 from builder.mechanism.rules import GATES, Gate, Situation
 from builder.rule import Rule
 from builder.sources import load_sources
+from builder.table import NOTHING
 from tests.specimens import play
 
 # A matter of the file itself: tested with the reader and the command.
@@ -47,10 +49,19 @@ def test_needs_name_rules_that_exist() -> None:
         assert set(check.needs) <= set(all_rules()), check.id
 
 
-def test_every_source_is_used_somewhere() -> None:
-    used = {rule.source for rule in all_rules().values()}
-    assert "common-practice" in used
-    assert "iupac-gold" in used
+def _sources_of(table: Path) -> set[str]:
+    """Return the keys in a table's columns of sources: one a row, or one a value as with the solvents."""
+    lines = table.read_text("utf-8").splitlines()
+    header, *rows = (line.split("\t") for line in lines if line and not line.startswith("#"))
+    columns = [number for number, name in enumerate(header) if name.endswith("source")]
+    return {row[column] for row in rows for column in columns} - {NOTHING}
+
+
+def test_every_source_is_used_and_every_use_has_its_source() -> None:
+    tables = sorted((Path(__file__).parents[1] / "builder").rglob("*.tsv"))
+    assert {"solvents.tsv", "cautions.tsv", "leaving_groups.tsv"} <= {table.name for table in tables}
+    used = {rule.source for rule in all_rules().values()}.union(*map(_sources_of, tables))
+    assert used == load_sources().keys()
 
 
 @pytest.mark.parametrize(("rule", "example"), FIRING, ids=_label)
