@@ -254,11 +254,24 @@ def _smiles(value: object) -> str:
     return _text(value)
 
 
+_MARKUP = re.compile(
+    r"</?(?:a|audio|b|base|body|br|button|code|div|em|embed|font|form|frame|h[1-6]|head|hr|html|i|iframe|img|input|link|math"
+    r"|meta|object|p|pre|script|select|small|span|strong|style|sub|sup|svg|table|td|template|textarea|tr|u|video)\b[^<>]*>?"
+    r"|\bjavascript:",
+    re.IGNORECASE,
+)
+"""Elements of HTML, and addresses that run a script. Pages escape every text; this asks what was meant."""
+
+
 def _line(text: str) -> str:
     if not text.strip():
         raise faulty("empty-value", "the text is empty", "write it, or leave the key out")
     if _CONTROL.search(text):
         raise faulty("file-not-text", "the text holds a control character", "delete it")
+    markup = _MARKUP.search(text)
+    if markup:
+        mend = "write plain text: ¹³C, H₂O, 5 < 7 with spaces; it is shown as it is typed"
+        raise faulty("markup-in-text", f"{markup[0]} looks like HTML", mend)
     return text
 
 

@@ -138,6 +138,18 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         silent_on=("notebook: BK2/112",),
     ),
     card(
+        id="markup-in-text",
+        title="HTML in a text",
+        level=Level.ERROR,
+        source="record-format",
+        text="""Names and notes are plain text, without HTML.
+
+        The site shows every text as it is typed, so a tag would stand there as letters; and what asks a browser to load
+        or run something has no place in a record.""",
+        fires_on=("title: Azide <img src=x onerror=alert(1)>", "take_away: the <sup>13</sup>C signal is enough"),
+        silent_on=("take_away: 'at < 5 % water, A > B'",),
+    ),
+    card(
         id="measurement-not-one",
         title="A measurement line without exactly one measurement",
         level=Level.ERROR,

@@ -13,7 +13,7 @@ GOOD = ROOT / "tests" / "data" / "records" / "good"
 RECORDS = ("NS2H8WDRW", "NS3V6TDMZ", "NS7K3QFMC", "NS9PZ4GK7", "NSC0W7N51")
 SETTINGS = """\
 format: 1
-title: A book <b>for</b> tests
+title: A book <bx>for</bx> tests
 notice: Every entry is invented.
 site_address: https://handbook.example/group/book/
 edit_address: https://forge.example/book/edit/main/entries/

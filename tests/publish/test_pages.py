@@ -16,7 +16,7 @@ from builder.publish.pages import build_pages
 from builder.records.settings import Settings
 from tests.publish.handmade import GOOD, Markup, book_of, entry_of, text_of
 
-EVIL = "<img src=x onerror=alert(1)>"
+EVIL = "<imgx src=x onerror=alert(1)>"  # no element that the reader knows and refuses
 GOLDEN_PAGES = {
     "front.html": "",
     "entry-two-stages.html": "e/NSC0W7N51/",
@@ -122,7 +122,7 @@ def test_nothing_of_a_record_is_taken_as_html() -> None:
     book = book_of(entry_of(text, settings=settings), settings=settings)
     for page in build_pages(book):
         assert "<img" not in page.body, page.path
-        assert "img" not in {tag for tag, _ in Markup(page.body).elements}, page.path
+        assert "imgx" not in {tag for tag, _ in Markup(page.body).elements}, page.path
         assert not [asset for asset in page.assets if asset.path.endswith("svg") and b"<img" in asset.data]
 
 
