@@ -255,8 +255,8 @@ def _smiles(value: object) -> str:
 
 
 _MARKUP = re.compile(
-    r"</?(?:a|audio|b|base|body|br|button|code|div|em|embed|font|form|frame|h[1-6]|head|hr|html|i|iframe|img|input|link|math"
-    r"|meta|object|p|pre|script|select|small|span|strong|style|sub|sup|svg|table|td|template|textarea|tr|u|video)\b[^<>]*>?"
+    r"</?(?:a|b|base|body|br|button|code|div|em|embed|font|form|frame|h[1-6]|head|hr|html|i|iframe|img|input|link|math"
+    r"|meta|object|p|pre|script|select|small|span|strong|style|sub|sup|svg|table|td|template|textarea|tr|u)\b[^<>]*>?"
     r"|\bjavascript:",
     re.IGNORECASE,
 )
