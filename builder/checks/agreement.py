@@ -13,7 +13,6 @@ from builder.chemistry.structure import Structure
 from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
 from builder.mechanism.products import MEET_IN_ONE_PRODUCT, Event, Route
-from builder.mechanism.reaction import has_undrawn_species, in_play, species_in_flask
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Course, Mechanism, Result, StereoKind
@@ -198,7 +197,7 @@ def course_has_no_stereocentre(case: Case) -> Iterator[Fault]:
 
     Elsewhere the course is `not applicable`, or `not determined` where a racemate hides it.
     """
-    marks = {each.site.alpha_carbon in each.on.stereocentre_marks for each in in_play(case.record, case.structures)}
+    marks = {each.site.alpha_carbon in each.on.stereocentre_marks for each in case.sites}
     if not marks or True in marks:
         return
     told = {Course.INVERSION, Course.RETENTION, Course.RACEMISATION, Course.PARTIAL_INVERSION, Course.DOUBLE_INVERSION}
@@ -226,11 +225,10 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
     Atoms are conserved: a chlorine in the product was in the flask. Hydrogen is not counted, air and moisture
     are no reagents.
     """
-    if has_undrawn_species(case.record, case.structures):
+    if case.has_undrawn_species:
         return
-    flask = species_in_flask(case.record, case.structures)
     have: Counter[str] = Counter()
-    for structure in (*flask, case.substrate):
+    for structure in (*case.flask, case.substrate):
         for _ in range(MEET_IN_ONE_PRODUCT):
             have += _elements(structure)
     for path in product_paths(case):
@@ -282,7 +280,7 @@ def _gates_against_the_claim(case: Case) -> tuple[Gate, ...]:
     claim = case.record.outcome.claim
     if claim is None:
         return ()
-    shut = [closing_gates(claim.mechanism, each.situation) for each in in_play(case.record, case.structures)]
+    shut = [closing_gates(claim.mechanism, each.situation) for each in case.sites]
     return tuple(dict.fromkeys(gate for gates in shut for gate in gates)) if all(shut) else ()
 
 
@@ -312,7 +310,7 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
     an arene or alkene of another molecule (Friedel–Crafts) and cation–olefin cyclisation; three reagents that meet in
     one product; silyl groups that move.
     """
-    if has_undrawn_species(case.record, case.structures) or not _has_partner(case):
+    if case.has_undrawn_species or not _has_partner(case):
         return
     is_contrary = bool(_gates_against_the_claim(case))
     was_cut = search(case).was_cut
@@ -383,7 +381,7 @@ AGREEMENT_CHECKS = (
 
 def is_covered(case: Case) -> bool:
     """Say whether the engine has anything to say about this record: it claims a mechanism at a known site."""
-    return case.record.outcome.claim is not None and bool(in_play(case.record, case.structures))
+    return case.record.outcome.claim is not None and bool(case.sites)
 
 
 def _claimed_courses(case: Case) -> Iterator[tuple[Path, Course]]:

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from builder.chemistry.structure import Structure, StructureError, parse_inchi, parse_rxn, parse_smiles
 from builder.mechanism.amounts import Amounts, charged_rows, derive_amounts
+from builder.mechanism.reaction import SiteInPlay, has_undrawn_species, in_play, species_in_flask
 from builder.records.model import Compound, Record
 from builder.records.settings import Settings
 from builder.rule import Path
@@ -20,6 +21,8 @@ class Case:
 
     file: as findings show it. today: the date of the build, from which "in the future" is judged.
     structures: by path of the compound, for all that could be read; unreadable holds the rest with the reason.
+    sites: that bear the declared leaving group; empty where it or the substrate could not be read.
+    flask: everything charged but the substrate, as far as has_undrawn_species leaves it known.
     rxn_fault: why the RXN file that the record names cannot be used; None where it can, or none is named.
     """
 
@@ -30,6 +33,9 @@ class Case:
     structures: Mapping[Path, Structure]
     unreadable: Mapping[Path, StructureError]
     amounts: Amounts
+    sites: tuple[SiteInPlay, ...]
+    flask: tuple[Structure, ...]
+    has_undrawn_species: bool
     rxn_fault: StructureError | None = None
 
     @property
@@ -42,7 +48,7 @@ class Case:
 
 
 def open_case(record: Record, file: str, settings: Settings, today: dt.date, rxn: bytes | None = None) -> Case:
-    """Read the structures of a record and derive its amounts.
+    """Read the structures of a record and derive its amounts, the sites in play and what is in the flask.
 
     rxn: content of the RXN file that the record names; None where there is none inside the book.
     """
@@ -59,8 +65,19 @@ def open_case(record: Record, file: str, settings: Settings, today: dt.date, rxn
                 structures[path] = _component(compound.from_rxn, drawn)
         except StructureError as error:
             unreadable[path] = error
-    amounts = derive_amounts(record, structures)
-    return Case(record, file, settings, today, structures, unreadable, amounts, rxn_fault)
+    return Case(
+        record=record,
+        file=file,
+        settings=settings,
+        today=today,
+        structures=structures,
+        unreadable=unreadable,
+        amounts=derive_amounts(record, structures),
+        sites=in_play(record, structures),
+        flask=tuple(species_in_flask(record, structures)),
+        has_undrawn_species=has_undrawn_species(record, structures),
+        rxn_fault=rxn_fault,
+    )
 
 
 def _components(record: Record, rxn: bytes | None) -> tuple[dict[str, Structure], StructureError | None]:

@@ -2,7 +2,6 @@
 
 from builder.checks.case import Case
 from builder.mechanism.products import Route, Search, search_routes
-from builder.mechanism.reaction import in_play, species_in_flask
 from builder.records.vocabulary import ProductUse
 from builder.rule import Path
 
@@ -24,9 +23,7 @@ def routes_by_product(case: Case) -> dict[Path, tuple[Route, ...]]:
 
 def search(case: Case) -> Search:
     """Return the search for every product of the case; asked again, it is remembered."""
-    sites = in_play(case.record, case.structures)
-    flask = tuple(species_in_flask(case.record, case.structures))
-    return search_routes(tuple(case.structures[path] for path in product_paths(case)), sites, flask)
+    return search_routes(tuple(case.structures[path] for path in product_paths(case)), case.sites, case.flask)
 
 
 def is_desired(case: Case, path: Path) -> bool:

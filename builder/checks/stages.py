@@ -1,6 +1,6 @@
 """What the stages of a procedure give, against what went into them."""
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 
 from builder.checks.case import Case
 from builder.chemistry.neutral import neutral_form
@@ -9,7 +9,7 @@ from builder.chemistry.structure import Structure
 from builder.chemistry.transform import activate_hydroxyl, derivatise_hydroxyl
 from builder.finding import Level
 from builder.mechanism.products import search_routes
-from builder.mechanism.reaction import SiteInPlay, has_undrawn_species, species_in_flask
+from builder.mechanism.reaction import SiteInPlay
 from builder.rule import Fault, Path, rule
 
 __all__ = ["STAGE_CHECKS"]
@@ -42,9 +42,8 @@ def stage_gives_is_inverted(case: Case) -> Iterator[Fault]:
     The oxygen keeps its bond to carbon and takes a new one to sulfur, phosphorus or an acyl group. Drawn otherwise,
     the course of the stage that follows would be read the wrong way round.
     """
-    flask = tuple(species_in_flask(case.record, case.structures))
     for path, given, starts in _given(case):
-        made = [product for product in _activated(starts, flask) if product.flat == given.flat]
+        made = [product for product in _activated(starts, case.flask) if product.flat == given.flat]
         drawn = given.stereocentres.specified
         if made and drawn and given not in made and all(product.stereocentres.specified == drawn for product in made):
             yield Fault(
@@ -68,16 +67,15 @@ def stage_gives_what_does_not_follow(case: Case) -> Iterator[Fault]:
 
     Sought are the activation of a hydroxyl group, deprotonation, and what `product-not-reachable` seeks.
     """
-    if has_undrawn_species(case.record, case.structures):
+    if case.has_undrawn_species:
         return
-    flask = tuple(species_in_flask(case.record, case.structures))
     for path, given, starts in _given(case):
-        known = {neutral_form(species).flat for species in (*starts, *flask)}
-        activated = {product.flat for product in _activated(starts, flask)}
-        sites = tuple(SiteInPlay(start, site, is_activated=True) for start in starts for site in perceive_sites(start))
+        known = {neutral_form(species).flat for species in (*starts, *case.flask)}
+        activated = {product.flat for product in _activated(starts, case.flask)}
         if neutral_form(given).flat in known or given.flat in activated:
             continue
-        search = search_routes((given,), sites, flask)
+        sites = tuple(SiteInPlay(start, site, is_activated=True) for start in starts for site in perceive_sites(start))
+        search = search_routes((given,), sites, case.flask)
         if search.routes[0] or search.was_cut:
             continue
         yield Fault(
@@ -100,11 +98,10 @@ def _given(case: Case) -> Iterator[tuple[Path, Structure, tuple[Structure, ...]]
             starts = (*starts, case.structures[path])
 
 
-def _activated(alcohols: Iterable[Structure], flask: Iterable[Structure]) -> Iterator[Structure]:
+def _activated(alcohols: Iterable[Structure], flask: Sequence[Structure]) -> Iterator[Structure]:
     """Yield what the reagents in the flask make of hydroxyl groups, and the protonated alcohols."""
-    reagents = tuple(flask)
     for alcohol in alcohols:
         for site in sites_of(alcohol, "hydroxyl"):
             yield activate_hydroxyl(alcohol, site, "water").product
-            for reagent in reagents:
+            for reagent in flask:
                 yield from (edit.product for edit in derivatise_hydroxyl(alcohol, site, reagent))

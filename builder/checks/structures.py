@@ -14,7 +14,7 @@ from builder.chemistry.perception import (
 from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
-from builder.mechanism.reaction import groups_formed, sites_in_play
+from builder.mechanism.reaction import groups_formed
 from builder.records.model import Formed, Product, Substrate
 from builder.records.vocabulary import StereoKind
 from builder.rule import Fault, Path, rule
@@ -209,7 +209,7 @@ def class_is_not_declared(case: Case) -> Iterator[Fault]:
 
     The lists of the book are built from these words.
     """
-    perceived = {name for site in sites_in_play(case.record, case.structures) for name in site.classes}
+    perceived = {name for each in case.sites for name in each.site.classes}
     missing = sorted((perceived & expected_class_names()) - set(case.record.substrate.classes))
     if missing:
         words = ", ".join([*case.record.substrate.classes, *missing])
@@ -234,7 +234,7 @@ def class_is_not_found(case: Case) -> Iterator[Fault]:
 
     If chemist and structure disagree here, the SMILES is usually of the wrong isomer.
     """
-    perceived = {name for site in sites_in_play(case.record, case.structures) for name in site.classes}
+    perceived = {name for each in case.sites for name in each.site.classes}
     for index, name in enumerate(case.record.substrate.classes):
         if name not in perceived:
             yield Fault(
@@ -294,7 +294,7 @@ def leaving_group_is_not_found(case: Case) -> Iterator[Fault]:
     What forms it is seen in a stage's `gives`, or in a reagent with use: activator or acid.
     """
     name = case.record.substrate.leaving_group
-    if sites_in_play(case.record, case.structures):
+    if case.sites:
         return
     found = groups_formed(case.record, case.structures)
     had = f"it has {', '.join(found)}" if found else "it has no leaving group that we know"

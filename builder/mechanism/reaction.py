@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from functools import cache
 
 from builder.chemistry.fragments import Fragment
-from builder.chemistry.perception import ReactiveSite, attacking_atoms, perceive_sites, sites_of
+from builder.chemistry.perception import NO_LEAVING_GROUP, ReactiveSite, attacking_atoms, perceive_sites, sites_of
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.amounts import charged_rows
 from builder.mechanism.rules import Situation
@@ -21,7 +21,6 @@ __all__ = [
     "has_undrawn_species",
     "in_play",
     "is_activated",
-    "sites_in_play",
     "species_in_flask",
     "with_halides_set_free",
 ]
@@ -78,15 +77,10 @@ def _has_agent(agent: str, record: Record, structures: Mapping[Path, Structure])
     return agent == "any" or agent in kinds
 
 
-def sites_in_play(record: Record, structures: Mapping[Path, Structure]) -> tuple[ReactiveSite, ...]:
-    """Return the sites of `in_play` alone."""
-    return tuple(each.site for each in in_play(record, structures))
-
-
 def groups_formed(record: Record, structures: Mapping[Path, Structure]) -> tuple[str, ...]:
     """Return the names of all leaving groups on the substrate and on what the stages give."""
     groups = (site.leaving_group for s in _bearers(record, structures) for site in perceive_sites(s))
-    return tuple(dict.fromkeys(group for group in groups if group != "none"))
+    return tuple(dict.fromkeys(group for group in groups if group != NO_LEAVING_GROUP))
 
 
 def is_activated(record: Record, structures: Mapping[Path, Structure]) -> bool:
