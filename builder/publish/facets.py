@@ -3,7 +3,7 @@
 import hashlib
 import re
 import unicodedata
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 from builder.book import Entry
@@ -13,7 +13,7 @@ from builder.records.model import Charged
 from builder.records.vocabulary import NucleophileWord
 from builder.rule import Path
 
-__all__ = ["FACETS", "Facet", "FacetValue", "facet_values", "slug_of"]
+__all__ = ["FACETS", "Facet", "FacetIndex", "FacetValue", "facet_indexes", "facet_values", "slug_of"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,6 +36,19 @@ class FacetValue:
     value: str
     slug: str
     entries: tuple[Entry, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class FacetIndex:
+    """A facet over all entries of a book, with its values in alphabetical order."""
+
+    facet: Facet
+    values: tuple[FacetValue, ...]
+
+
+def facet_indexes(entries: Sequence[Entry]) -> tuple[FacetIndex, ...]:
+    """Return every facet with the values that occur."""
+    return tuple(FacetIndex(facet, facet_values(facet, entries)) for facet in FACETS)
 
 
 def facet_values(facet: Facet, entries: Iterable[Entry]) -> tuple[FacetValue, ...]:

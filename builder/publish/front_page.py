@@ -1,12 +1,13 @@
 """The front page: the state of the book, and the ways in."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from builder.book import Book, Verdict
 from builder.finding import Level
 from builder.publish.entry_view import next_review
-from builder.publish.list_pages import facet_counts, newest_first
+from builder.publish.facets import FacetIndex
+from builder.publish.list_pages import newest_first
 from builder.publish.page import Page
 from builder.publish.summary import Summary
 from builder.publish.templating import render
@@ -54,7 +55,7 @@ def state_of_book(book: Book, summaries: Mapping[str, Summary]) -> StateOfBook:
     )
 
 
-def front_page(book: Book, summaries: Mapping[str, Summary]) -> Page:
+def front_page(book: Book, summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> Page:
     """Return the front page."""
     current = [summary for summary in newest_first(summaries.values()) if not summary.is_retired]
     contrary = [summary for summary in current if summary.verdict == Verdict.CONTRARY]
@@ -69,7 +70,7 @@ def front_page(book: Book, summaries: Mapping[str, Summary]) -> Page:
             newest=current[:NEWEST_SHOWN],
             contrary=contrary,
             failures=[summary for summary in current if summary.is_failure],
-            facets=facet_counts(book),
+            indexes=indexes,
             notice=book.settings.standing_notice,
             root="",
         ),

@@ -1,76 +1,43 @@
 """Lists of entries: all of them, and by each value of each facet."""
 
-from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from collections.abc import Iterable, Mapping, Sequence
 
 from builder.book import Book
-from builder.publish.facets import FACETS, Facet, FacetValue, facet_values
+from builder.publish.facets import Facet, FacetIndex, FacetValue
 from builder.publish.page import Page
 from builder.publish.summary import Summary
 from builder.publish.templating import render
 
-__all__ = ["FacetCount", "FacetCounts", "facet_counts", "list_pages", "newest_first"]
+__all__ = ["list_pages", "newest_first"]
 
 
-@dataclass(frozen=True, slots=True)
-class FacetCount:
-    """One value of a facet: its address below the facet's, and how many entries have it."""
-
-    value: str
-    slug: str
-    count: int
-
-
-@dataclass(frozen=True, slots=True)
-class FacetCounts:
-    """One facet with its values, in alphabetical order."""
-
-    key: str
-    title: str
-    short: str
-    values: tuple[FacetCount, ...]
-
-
-def facet_counts(book: Book) -> tuple[FacetCounts, ...]:
-    """Return every facet with the count of each of its values."""
-    return tuple(
-        FacetCounts(
-            facet.key,
-            facet.title,
-            facet.short,
-            tuple(FacetCount(v.value, v.slug, len(v.entries)) for v in facet_values(facet, book.entries)),
-        )
-        for facet in FACETS
-    )
-
-
-def list_pages(book: Book, summaries: Mapping[str, Summary]) -> tuple[Page, ...]:
+def list_pages(book: Book, summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> tuple[Page, ...]:
     """Return the page of all entries, and per facet an index and a page per value."""
     notice = book.settings.standing_notice
-    counts = facet_counts(book)
     pages = [
         Page(
             path="lists/",
             title="Entries",
             description=f"All {len(summaries)} entries, and the lists by which to find them.",
             body=render(
-                "lists.html", facets=counts, summaries=newest_first(summaries.values()), notice=notice, root="../"
+                "lists.html", indexes=indexes, summaries=newest_first(summaries.values()), notice=notice, root="../"
             ),
             menu=("Entries",),
         )
     ]
-    for facet, facet_count in zip(FACETS, counts, strict=True):
-        pages.append(_index_page(facet_count, notice))
-        pages += [_value_page(facet, value, summaries, notice) for value in facet_values(facet, book.entries)]
+    for index in indexes:
+        pages.append(_index_page(index, notice))
+        pages += [_value_page(index.facet, value, summaries, notice) for value in index.values]
     return tuple(pages)
 
 
-def _index_page(facet: FacetCounts, notice: str) -> Page:
+def _index_page(index: FacetIndex, notice: str) -> Page:
+    facet = index.facet
     return Page(
         path=f"lists/{facet.key}/",
         title=f"By {facet.title.lower()}",
         description=f"Entries by {facet.title.lower()}, with the number of each.",
-        body=render("facet.html", facet=facet, notice=notice, root="../../"),
+        body=render("facet.html", facet=facet, values=index.values, notice=notice, root="../../"),
         menu=("Entries", facet.short),
     )
 

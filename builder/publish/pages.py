@@ -5,6 +5,7 @@ from collections.abc import Sequence
 from builder.book import Book
 from builder.checks.register import all_rules
 from builder.publish.entry_view import surroundings_of
+from builder.publish.facets import facet_indexes
 from builder.publish.front_page import front_page
 from builder.publish.guide_pages import guide_pages
 from builder.publish.list_pages import list_pages
@@ -24,10 +25,11 @@ def build_pages(book: Book, rules: Sequence[Rule[object, object]] | None = None)
     """
     rules = tuple(all_rules().values()) if rules is None else rules
     summaries = {entry.id: summarise(entry) for entry in book.entries}
+    indexes = facet_indexes(book.entries)
     around = surroundings_of(book, rules)
     return (
-        front_page(book, summaries),
-        *list_pages(book, summaries),
+        front_page(book, summaries, indexes),
+        *list_pages(book, summaries, indexes),
         *rule_pages(book, rules),
         *guide_pages(book),
         *(entry_page(entry, around) for entry in book.entries),
