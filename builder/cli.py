@@ -250,8 +250,6 @@ def main(arguments: Sequence[str] | None = None) -> NoReturn:
     """Run the command; a crash is our fault and says so with exit code 3."""
     try:
         handbook.main(args=arguments, prog_name="handbook", standalone_mode=True)
-    except SystemExit:
-        raise
     except OSError as error:
         click.echo(f"handbook: {error.filename or ''}: {error.strerror or error}", err=True)
         sys.exit(MISUSE)
