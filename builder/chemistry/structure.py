@@ -244,6 +244,14 @@ class Structure:
         return tuple(Chem.CanonicalRankAtoms(self.mol, breakTies=False))
 
     @cached_property
+    def without_stereocentres(self) -> "Structure":
+        """Return the structure with no tetrahedral configuration drawn; double bonds keep theirs."""
+        plain = Chem.Mol(self.mol)
+        for atom in plain.GetAtoms():
+            atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
+        return parse_smiles(Chem.MolToSmiles(plain))
+
+    @cached_property
     def fragments(self) -> tuple["Structure", ...]:
         """Return the separate species, carbon-bearing ones first, then larger first, then by SMILES."""
         pieces = [parse_smiles(piece) for piece in self.smiles.split(".")]

@@ -42,7 +42,7 @@ from builder.chemistry.transform import (
     substitute,
     transpose_allylic,
 )
-from builder.mechanism.flask import FlaskRole, roles_in
+from builder.mechanism.flask_roles import FlaskRole, roles_in
 from builder.mechanism.reaction import SiteInPlay
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.vocabulary import Mechanism

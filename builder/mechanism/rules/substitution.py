@@ -26,9 +26,11 @@ def leaving_group_stays(situation: Situation) -> bool:
     Protonation, a sulfonyl chloride, a phosphorus reagent or the strain of a small ring helps oxygen and fluoride.
     Acid does not help cyanide, nitro, a sulfone, an amine, a sulfide, a thiol or phosphonium; an amine leaves once it
     is diazotised or quaternised, a sulfide once it is alkylated. E1cB stays open. Esters pass: a carboxylate leaves
-    when iodide or thiolate takes the alkyl group, or when that ionises.
+    when iodide or thiolate takes the alkyl group, or when that ionises; so do aryl methyl ethers, which thiolates
+    demethylate.
     """
-    return not situation.group_leaves and situation.leaving_group != "carboxylate"
+    dealkylated = situation.leaving_group == "phenoxide" and situation.site.degree is Degree.METHYL
+    return not situation.group_leaves and situation.leaving_group != "carboxylate" and not dealkylated
 
 
 @gate(

@@ -3,7 +3,7 @@
 import pytest
 
 from builder.chemistry.structure import parse_smiles
-from builder.mechanism.flask import FlaskRole, roles_in
+from builder.mechanism.flask_roles import FlaskRole, roles_in
 
 ROLES = [
     ("[Na+].[H-]", "strong base"),  # pKaH 35

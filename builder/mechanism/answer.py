@@ -1,0 +1,54 @@
+"""A forecast as the plain values of the `predict` contract (design: command line)."""
+
+import math
+from typing import Any
+
+from builder.mechanism.forecast import Forecast
+
+__all__ = ["answer_of"]
+
+
+def answer_of(forecast: Forecast, cautions: tuple[dict[str, str], ...] = ()) -> dict[str, Any]:
+    """Return a forecast as JSON-ready values; infinite and unknown times are null."""
+    return {
+        "mechanism": forecast.mechanism.value,
+        "shares": {m.value: round(share, 4) for m, share in forecast.shares.items()},
+        "share_intervals": {m.value: [round(low, 4), round(high, 4)] for m, (low, high) in forecast.intervals.items()},
+        "log_k": {label: round(value, 3) for label, value in forecast.log_k.items()},
+        "log_k_errors": {label: round(value, 2) for label, value in forecast.log_k_errors.items()},
+        "half_life_s": _finite(forecast.half_life_s),
+        "t95_s": _finite(forecast.t95_s),
+        "t99_s": _finite(forecast.t99_s),
+        "conversion": round(forecast.conversion, 4),
+        "conversion_interval": [round(c, 4) for c in forecast.conversion_interval],
+        "products": [
+            {
+                "smiles": p.structure.smiles,
+                "share": round(p.share, 4),
+                "mechanism": p.mechanism.value,
+                "course": p.course.value,
+                "rearranged": p.rearranged,
+                "path": list(p.path),
+            }
+            for p in forecast.products
+        ],
+        "course": forecast.course.value,
+        "stereo": forecast.course.value.replace(" ", "_"),
+        "rearranged": forecast.rearranged,
+        "covered": forecast.is_covered,
+        "reasons": [
+            {
+                "rule": r.rule,
+                "text": r.text,
+                "value": None if r.value is None else round(r.value, 3),
+                "error": None if r.error is None else round(r.error, 3),
+                "source": r.source,
+            }
+            for r in forecast.reasons
+        ],
+        "cautions": list(cautions),
+    }
+
+
+def _finite(value: float | None) -> float | None:
+    return None if value is None or not math.isfinite(value) else float(f"{value:.5g}")

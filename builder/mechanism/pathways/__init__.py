@@ -1,0 +1,1 @@
+"""The pathways that compete at a site, one module for each family of mechanisms."""

@@ -1,0 +1,67 @@
+"""A pathway: one mechanism at one site, its rate, and the products it leads to, built only when asked for."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+from builder.chemistry.perception import ReactiveSite
+from builder.chemistry.structure import Structure
+from builder.mechanism.log_rate import LogRate
+from builder.records.vocabulary import Course, Mechanism
+
+__all__ = ["Outcome", "Pathway", "merged_outcomes"]
+
+
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """One product of a pathway.
+
+    share: of the pathway. rearranged: skeleton changed, or the new bond is not at the carbon that bore the group.
+    path: the events that led there, in words.
+    """
+
+    product: Structure
+    share: float
+    course: Course
+    rearranged: bool
+    path: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Pathway:
+    """One mechanism at one site with one partner.
+
+    label: the name of its rate constant in an answer ("SN2", "SN2 solvent", ...).
+    partner: name of the species that attacks or takes the proton; None for a unimolecular pathway.
+    pool: what the partner is drawn from; None where the rate constant is of first order (solvent, unimolecular).
+    leaving_group: as it leaves, activation counted. event: what happens, in a few words.
+    """
+
+    mechanism: Mechanism
+    label: str
+    site: ReactiveSite
+    leaving_group: str
+    partner: str | None
+    pool: str | None
+    rate: LogRate
+    event: str
+    outcomes: Callable[[], tuple[Outcome, ...]]
+
+
+def merged_outcomes(outcomes: list[Outcome]) -> tuple[Outcome, ...]:
+    """Return the outcomes with shares added up product by product and scaled to one, largest first.
+
+    A product counts as rearranged only where every way to it is.
+    """
+    total = sum(o.share for o in outcomes)
+    found: dict[str, Outcome] = {}
+    for o in outcomes:
+        known = found.get(o.product.smiles)
+        if known is None:
+            found[o.product.smiles] = o
+            continue
+        direct = known if not known.rearranged or o.rearranged else o
+        found[o.product.smiles] = Outcome(
+            direct.product, known.share + o.share, direct.course, known.rearranged and o.rearranged, direct.path
+        )
+    scaled = [Outcome(o.product, o.share / total, o.course, o.rearranged, o.path) for o in found.values()]
+    return tuple(sorted(scaled, key=lambda o: (-o.share, o.product.smiles)))
