@@ -1,19 +1,21 @@
 """A forecast as the plain values of the `predict` contract (design: command line)."""
 
 import math
+from collections.abc import Sequence
 from typing import Any
 
+from builder.mechanism.asking import Read
 from builder.mechanism.forecast import Forecast
 
-__all__ = ["answer_of"]
+__all__ = ["answer_of", "how_read"]
 
 
-def answer_of(forecast: Forecast, cautions: tuple[dict[str, str], ...] = ()) -> dict[str, Any]:
+def answer_of(forecast: Forecast, cautions: Sequence[dict[str, str]] = ()) -> dict[str, Any]:
     """Return a forecast as JSON-ready values; infinite and unknown times are null."""
     return {
         "mechanism": forecast.mechanism.value,
-        "shares": {m.value: round(share, 4) for m, share in forecast.shares.items()},
-        "share_intervals": {m.value: [round(low, 4), round(high, 4)] for m, (low, high) in forecast.intervals.items()},
+        "shares": {m.value: round(share, 6) for m, share in forecast.shares.items()},
+        "share_intervals": {m.value: [round(low, 6), round(high, 6)] for m, (low, high) in forecast.intervals.items()},
         "log_k": {label: round(value, 3) for label, value in forecast.log_k.items()},
         "log_k_errors": {label: round(value, 2) for label, value in forecast.log_k_errors.items()},
         "half_life_s": _finite(forecast.half_life_s),
@@ -48,6 +50,11 @@ def answer_of(forecast: Forecast, cautions: tuple[dict[str, str], ...] = ()) -> 
         ],
         "cautions": list(cautions),
     }
+
+
+def how_read(read: Read) -> dict[str, Any]:
+    """Return how the words of a question were taken and what was assumed, JSON-ready."""
+    return {"read": [reading._asdict() for reading in read.readings], "assumed": sorted(read.assumed)}
 
 
 def _finite(value: float | None) -> float | None:

@@ -1,22 +1,47 @@
 """From names and SMILES to a question: what chemists type, read exactly or refused with the nearest known name."""
 
 import math
+import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from textwrap import shorten
+from typing import Any, NamedTuple
 
 from builder.chemistry.structure import Structure, StructureError, parse_smiles
-from builder.mechanism.nucleophiles import find_nucleophile_and_counter_ion, nearest_nucleophiles
-from builder.mechanism.question import CONCENTRATION_M, TIME_S, Ingredient, Question
+from builder.mechanism.nucleophiles import (
+    find_nucleophile_and_counter_ion,
+    nearest_nucleophiles,
+    nucleophile_by_structure,
+)
+from builder.mechanism.question import CONCENTRATION_M, EQUIVALENTS, TIME_S, Ingredient, Question
 from builder.mechanism.reagents import Dose, Reagent, Role, find_reagent, nearest_reagents, reagent_by_structure
 from builder.mechanism.solvents import Solvent, find_solvent, nearest_solvents
+from builder.records.quantities import Dimension, QuantityError, parse_quantity, parse_temperature
 
-__all__ = ["INTERNAL", "AskingError", "Read", "question_from_line", "read_question"]
+__all__ = [
+    "INTERNAL",
+    "MOST_TEMPERATURE_C",
+    "AskingError",
+    "Read",
+    "Reading",
+    "question_from_line",
+    "question_from_words",
+    "read_question",
+]
 
 INTERNAL = "none (internal nucleophile)"
 _INTERNAL_WORDS = frozenset({INTERNAL, "none", "internal", "none (intramolecular)"})
+_SOLVENT_WORDS = frozenset({"solvent", "none (solvent)", "none (solvolysis)"})
 NEAT = "neat"
 ABSOLUTE_ZERO_C = -273.15
+MOST_TEMPERATURE_C = 500.0
+"""Above it no organic liquid is left to speak of; a larger number is a slip."""
+MOST_MOLAR = 100.0
+"""No liquid holds more of anything: water is 55 mol/L."""
+MOST_EQUIVALENTS = 1e4
+MOST_TIME_H = 24 * 366 * 10.0
+LEAST = 1e-9
+"""Smallest concentration, number of equivalents or time (h) that is taken at its word."""
 
 
 class AskingError(ValueError):
@@ -28,15 +53,24 @@ class AskingError(ValueError):
         self.mend = mend
 
 
+class Reading(NamedTuple):
+    """A word of a question: what it stands for (substrate, nucleophile, ...), as typed, and what it was taken for."""
+
+    role: str
+    typed: str
+    taken: str
+
+
 @dataclass(frozen=True, slots=True)
 class Read:
-    """A question, and how each of its words was read: (word as typed, what it was taken for)."""
+    """A question, how each of its words was read, and what nobody stated: concentration, equivalents, time."""
 
     question: Question
-    readings: tuple[tuple[str, str], ...]
+    readings: tuple[Reading, ...]
+    assumed: frozenset[str] = frozenset()
 
 
-def read_question(
+def read_question(  # noqa: PLR0913 - a keyword for each thing a chemist states
     *,
     substrate: str,
     nucleophile: str | None,
@@ -55,25 +89,82 @@ def read_question(
     cannot be: an unknown name, a broken structure, a temperature below absolute zero, a concentration that is not
     positive.
     """
-    readings: list[tuple[str, str]] = []
-    doses, left_over = _doses(additives, readings)
+    structure = _structure(substrate, "substrate")
+    readings = [Reading("substrate", substrate, structure.smiles)]
     ingredient = _nucleophile(nucleophile, nucleophile_smiles, readings)
+    doses = _doses(additives, readings)
     added_base = None if base is None else _base(base, readings, doses)
     parts = _solvents(solvent, readings)
-    if left_over and ingredient is None and nucleophile is None:
-        raise AskingError("no nucleophile", "name one, or say none (internal nucleophile)")
     question = Question(
-        substrate=_structure(substrate, "substrate"),
+        substrate=structure,
         nucleophile=ingredient,
         base=added_base,
         additives=tuple(doses),
         solvent=parts,
-        temperature_k=_above_zero(temperature_c),
-        concentration_m=_positive(concentration_m, "concentration", CONCENTRATION_M),
-        equivalents=None if equivalents is None else _positive(equivalents, "equivalents", 1.0),
-        time_s=_positive(time_h, "time", TIME_S / 3600) * 3600,
+        temperature_k=_kelvin(temperature_c),
+        concentration_m=_positive(concentration_m, "concentration", CONCENTRATION_M, MOST_MOLAR),
+        equivalents=None
+        if equivalents is None
+        else _positive(equivalents, "equivalents", EQUIVALENTS, MOST_EQUIVALENTS),
+        time_s=_positive(time_h, "time", TIME_S / 3600, MOST_TIME_H) * 3600,
     )
-    return Read(question, tuple(readings))
+    stated = {"concentration": concentration_m, "equivalents": equivalents, "time": time_h}
+    return Read(question, tuple(readings), frozenset(what for what, value in stated.items() if value is None))
+
+
+def question_from_words(  # noqa: PLR0913 - a keyword for each thing a chemist states
+    *,
+    substrate: str,
+    nucleophile: str | None = None,
+    base: str | None = None,
+    additives: Iterable[str] = (),
+    solvent: Iterable[str] = (),
+    temperature: str,
+    concentration: str | None = None,
+    equivalents: float | None = None,
+    time: str | None = None,
+) -> Read:
+    """Return the question of what stands on a command line: quantities with their units, "DMF" or "ethanol:0.8".
+
+    Raises AskingError as `read_question` does, for a quantity that cannot be read, and for a ramp of temperature.
+    """
+    try:
+        warm = parse_temperature(temperature)
+        molar = None if concentration is None else parse_quantity(concentration, Dimension.CONCENTRATION).magnitude
+        seconds = None if time is None else parse_quantity(time, Dimension.TIME).magnitude
+    except QuantityError as fault:
+        raise AskingError(fault.message, fault.mend) from fault
+    if warm.start != warm.end:
+        raise AskingError(f"{warm} is more than one temperature", "ask for each by itself")
+    return read_question(
+        substrate=substrate,
+        nucleophile=nucleophile,
+        base=base,
+        additives=additives,
+        solvent=_with_fractions(solvent),
+        temperature_c=warm.start.magnitude,
+        concentration_m=molar,
+        equivalents=equivalents,
+        time_h=None if seconds is None else seconds / 3600,
+    )
+
+
+def _with_fractions(texts: Iterable[str]) -> list[tuple[str, float]]:
+    """Return (name, fraction by volume) for "ethanol:0.8", "ethanol:80%" or "ethanol"; equal parts where none says."""
+    parts = [_name_and_fraction(text) for text in texts]
+    if len({fraction is None for _, fraction in parts}) > 1:
+        raise AskingError("some solvents have a fraction and others have none", "give each its fraction, or none")
+    return [(name, 1.0 / len(parts) if fraction is None else fraction) for name, fraction in parts]
+
+
+def _name_and_fraction(text: str) -> tuple[str, float | None]:
+    match = _FRACTION.fullmatch(text)
+    if match is None:
+        return text, None
+    return match["name"], float(match["number"]) / (100.0 if match["percent"] else 1.0)
+
+
+_FRACTION = re.compile(r"(?P<name>.*\S)\s*:\s*(?P<number>[+-]?\d+(?:\.\d*)?|[+-]?\.\d+)\s*(?P<percent>%?)\s*")
 
 
 def question_from_line(line: Mapping[str, Any]) -> Read:
@@ -85,20 +176,27 @@ def question_from_line(line: Mapping[str, Any]) -> Read:
         if line.get(key) is None:
             raise AskingError(f"no {key}", "every line needs substrate, solvent and temperature_C")
     solvent = line["solvent"]
-    if not isinstance(solvent, list) or not all(isinstance(p, list) and len(p) == 2 for p in solvent):
+    if not isinstance(solvent, list) or not all(_is_pair(part) for part in solvent):
         raise AskingError("solvent is no list of [name, fraction]", 'write [["ethanol", 0.8], ["water", 0.2]]')
+    additives = line.get("additives") or []
+    if not isinstance(additives, list) or not all(isinstance(additive, str) for additive in additives):
+        raise AskingError("additives is no list of names", 'write ["H2SO4"], or leave additives out')
     return read_question(
         substrate=_text(line, "substrate") or "",
         nucleophile=_text(line, "nucleophile"),
         nucleophile_smiles=_text(line, "nucleophile_smiles"),
         base=_text(line, "base"),
-        additives=[str(a) for a in line.get("additives") or ()],
-        solvent=[(str(name), _number(fraction, "solvent fraction")) for name, fraction in solvent],
+        additives=additives,
+        solvent=[(name, _number(fraction, "solvent fraction")) for name, fraction in solvent],
         temperature_c=_number(line["temperature_C"], "temperature_C"),
         concentration_m=_optional_number(line, "concentration"),
         equivalents=_optional_number(line, "equivalents"),
         time_h=_optional_number(line, "time_h"),
     )
+
+
+def _is_pair(part: object) -> bool:
+    return isinstance(part, list) and len(part) == 2 and isinstance(part[0], str)
 
 
 def _text(line: Mapping[str, Any], key: str) -> str | None:
@@ -115,22 +213,40 @@ def _optional_number(line: Mapping[str, Any], key: str) -> float | None:
 
 
 def _number(value: object, what: str) -> float:
-    if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
-        raise AskingError(f"{what} {value!r} is no number", "write a plain number")
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise AskingError(f"{what} {_shown(value)} is no number", "write a plain number")
+    if not -_BEYOND < value < _BEYOND:  # not-a-number too, and whole numbers that no float holds
+        raise AskingError(f"{what} is beyond any number that was measured", "write a plain number")
     return float(value)
 
 
-def _above_zero(temperature_c: float) -> float:
-    if temperature_c <= ABSOLUTE_ZERO_C:
-        raise AskingError(f"{temperature_c:g} °C is not above absolute zero", "give the temperature in °C")
+_BEYOND = 1e30
+
+
+def _shown(value: object) -> str:
+    """Return a value as it is quoted in a message, not longer than a name."""
+    return shorten(repr(value), 60, placeholder=" ...")
+
+
+def _kelvin(temperature_c: float) -> float:
+    if not temperature_c > ABSOLUTE_ZERO_C:
+        raise AskingError(f"{temperature_c:g} °C is not above absolute zero", "give the temperature it was run at")
+    if temperature_c > MOST_TEMPERATURE_C:
+        raise AskingError(f"{temperature_c:g} °C is beyond any flask", "give the temperature in °C; is it in kelvin?")
     return temperature_c - ABSOLUTE_ZERO_C
 
 
-def _positive(value: float | None, what: str, default: float) -> float:
+def _equivalents(value: float) -> float:
+    return _positive(value, "equivalents", EQUIVALENTS, MOST_EQUIVALENTS)
+
+
+def _positive(value: float | None, what: str, default: float, most: float) -> float:
     if value is None:
         return default
-    if not value > 0 or not math.isfinite(value):
+    if not value > 0:
         raise AskingError(f"{what} {value:g} is not positive", f"leave {what} out, or give a positive number")
+    if not LEAST <= value <= most:
+        raise AskingError(f"{what} {value:g} is out of range", f"give one from {LEAST:g} to {most:g}")
     return value
 
 
@@ -138,76 +254,97 @@ def _structure(text: str, what: str) -> Structure:
     try:
         return parse_smiles(text.strip())
     except StructureError as fault:
-        raise AskingError(f"{what} {text!r}: {fault.reason}", fault.mend) from fault
+        raise AskingError(f"{what} {_shown(text)}: {fault.reason}", fault.mend) from fault
 
 
-def _nucleophile(name: str | None, smiles: str | None, readings: list[tuple[str, str]]) -> Ingredient | None:
-    if name is not None and name.strip().lower() in _INTERNAL_WORDS:
-        readings.append((name, "a group of the substrate"))
+def _nucleophile(name: str | None, smiles: str | None, readings: list[Reading]) -> Ingredient | None:
+    word = "" if name is None else name.strip().lower()
+    if word in _INTERNAL_WORDS:
+        readings.append(Reading("nucleophile", name or "", "a group of the substrate"))
+        return None
+    if word in _SOLVENT_WORDS:
+        readings.append(Reading("nucleophile", name or "", "the solvent"))
         return None
     if name is None and smiles is None:
         return None
     return _ingredient(name, smiles, readings, "nucleophile")
 
 
-def _ingredient(name: str | None, smiles: str | None, readings: list[tuple[str, str]], what: str) -> Ingredient:
+def _ingredient(name: str | None, smiles: str | None, readings: list[Reading], what: str) -> Ingredient:
     found = None if name is None else find_nucleophile_and_counter_ion(name)
     if smiles is not None:
         structure = _structure(smiles, what)
         counter_ion = found[1] if found is not None else None
-        readings.append((name or smiles, structure.smiles))
+        readings.append(Reading(what, name or smiles, structure.smiles))
         return Ingredient(name or structure.smiles, structure, counter_ion)
-    assert name is not None
+    assert name is not None  # noqa: S101 - one of the two is given
     if found is not None:
         row, counter_ion = found
-        readings.append((name, row.name if counter_ion is None else f"{row.name} with {counter_ion}"))
+        readings.append(Reading(what, name, row.name if counter_ion is None else f"{row.name} with {counter_ion}"))
         return Ingredient(row.name, parse_smiles(row.smiles), counter_ion)
     solvent = find_solvent(name)
     if solvent is not None:
-        readings.append((name, solvent.name))
+        readings.append(Reading(what, name, solvent.name))
         return Ingredient(solvent.name, parse_smiles(solvent.smiles))
     dose = find_reagent(name)
     if dose is not None and (dose.reagent.smiles or dose.reagent.supplies):
-        readings.append((name, dose.reagent.name))
+        readings.append(Reading(what, name, dose.reagent.name))
         return Ingredient(dose.reagent.name, parse_smiles(dose.reagent.smiles or dose.reagent.supplies or ""))
     try:
         structure = parse_smiles(name.strip())
     except StructureError as fault:
         near = (*nearest_nucleophiles(name), *nearest_reagents(name))
         mend = f'did you mean "{near[0]}"?' if near else "give a known name or a SMILES"
-        raise AskingError(f"unknown {what} {name!r}", mend) from fault
-    readings.append((name, f"SMILES {structure.smiles}"))
+        raise AskingError(f"unknown {what} {_shown(name)}", mend) from fault
+    readings.append(Reading(what, name, f"SMILES {structure.smiles}"))
     return Ingredient(structure.smiles, structure)
 
 
-def _base(name: str, readings: list[tuple[str, str]], doses: list[Dose]) -> Ingredient | None:
-    """Return the base as an ingredient; a reagent that is no base but was named as one joins the additives."""
+def _base(name: str, readings: list[Reading], doses: list[Dose]) -> Ingredient | None:
+    """Return the base as an ingredient; silver salts named as one join the additives too."""
+    if name.strip().lower() == "none":
+        return None
     dose = find_reagent(name)
-    if dose is not None and dose.reagent.role in {Role.SILVER}:
+    if dose is not None and dose.reagent.role is Role.SILVER:
         doses.append(dose)
     return _ingredient(name, None, readings, "base")
 
 
-def _doses(additives: Iterable[str], readings: list[tuple[str, str]]) -> tuple[list[Dose], list[str]]:
+def _doses(additives: Iterable[str], readings: list[Reading]) -> list[Dose]:
     found: list[Dose] = []
-    unread: list[str] = []
     for text in additives:
         dose = find_reagent(text)
         if dose is None:
             reagent = _reagent_by_smiles(text)
             if reagent is None:
-                nucleophile = find_nucleophile_and_counter_ion(text)
-                if nucleophile is None:
-                    near = nearest_reagents(text)
-                    mend = f'did you mean "{near[0]}"?' if near else "leave it out, or name what it does"
-                    raise AskingError(f"unknown additive {text!r}", mend)
-                unread.append(text)
-                readings.append((text, f"{nucleophile[0].name}, taken as without effect"))
+                readings.append(Reading("additive", text, f"{_bystander(text)}, {WITHOUT_EFFECT}"))
                 continue
             dose = Dose(reagent, None, is_aqueous=False, is_catalytic=False, is_concentrated=False)
         found.append(dose)
-        readings.append((text, f"{dose.reagent.name} ({dose.reagent.role})"))
-    return found, unread
+        readings.append(Reading("additive", text, f"{dose.reagent.name} ({dose.reagent.role})"))
+    return found
+
+
+WITHOUT_EFFECT = "taken as without effect"
+"""Ends the reading of an additive that is known but does nothing to the flask."""
+
+
+def _bystander(text: str) -> str:
+    """Return what an additive is that is no reagent of the table. Raises AskingError for what is nothing known."""
+    named = find_nucleophile_and_counter_ion(text)
+    if named is not None:
+        return named[0].name
+    solvent = find_solvent(text)
+    if solvent is not None:
+        return solvent.name
+    try:
+        structure = parse_smiles(text.strip())
+    except StructureError as fault:
+        near = nearest_reagents(text)
+        mend = f'did you mean "{near[0]}"?' if near else "leave it out, or give its SMILES"
+        raise AskingError(f"unknown additive {_shown(text)}", mend) from fault
+    row = nucleophile_by_structure(structure.smiles)
+    return f"SMILES {structure.smiles}" if row is None else row.name
 
 
 def _reagent_by_smiles(text: str) -> Reagent | None:
@@ -217,24 +354,32 @@ def _reagent_by_smiles(text: str) -> Reagent | None:
         return None
 
 
-def _solvents(parts: Sequence[tuple[str, float]], readings: list[tuple[str, str]]) -> tuple[tuple[Solvent, float], ...]:
-    found: list[tuple[Solvent, float]] = []
-    for name, fraction in parts:
-        if name.strip().lower() == NEAT:
-            continue
+def _solvents(parts: Sequence[tuple[str, float]], readings: list[Reading]) -> tuple[tuple[Solvent, float], ...]:
+    found = [(name, _solvent(name), fraction) for name, fraction in parts if name.strip().lower() != NEAT]
+    for _, _, fraction in found:
         if fraction <= 0:
             raise AskingError(f"solvent fraction {fraction:g} is not positive", "leave that solvent out")
-        solvent = find_solvent(name)
-        if solvent is None:
-            try:
-                solvent = find_solvent(name, parse_smiles(name).smiles)
-            except StructureError:
-                solvent = None
-        if solvent is None:
-            near = nearest_solvents(name)
-            raise AskingError(
-                f"unknown solvent {name!r}", f'did you mean "{near[0]}"?' if near else "give a solvent of the table"
-            )
-        readings.append((name, solvent.name))
-        found.append((solvent, fraction))
-    return tuple(found)
+    total = math.fsum(fraction for _, _, fraction in found)
+    scaled = "" if abs(total - 1) <= ROUNDING or not found else f"; fractions add up to {total:g} and are scaled to 1"
+    for name, solvent, fraction in found:
+        share = "" if fraction == total else f", {100 * fraction / total:.3g} % by volume"
+        readings.append(Reading("solvent", name, f"{solvent.name}{share}{scaled}"))
+    return tuple((solvent, fraction) for _, solvent, fraction in found)
+
+
+ROUNDING = 0.02
+"""How far fractions of solvents may be from adding up to 1 by rounding."""
+
+
+def _solvent(name: str) -> Solvent:
+    solvent = find_solvent(name)
+    if solvent is None:
+        try:
+            solvent = find_solvent(name, parse_smiles(name.strip()).smiles)
+        except StructureError:
+            solvent = None
+    if solvent is None:
+        near = nearest_solvents(name)
+        mend = f'did you mean "{near[0]}"?' if near else "give a solvent of the table of solvents, by name or SMILES"
+        raise AskingError(f"unknown solvent {_shown(name)}", mend)
+    return solvent
