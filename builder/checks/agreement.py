@@ -12,26 +12,42 @@ from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.chemistry.structure import Structure
 from builder.chemistry.transform import StereoEffect
 from builder.finding import Level
+from builder.mechanism.outlook import OUT_OF_QUESTION, expected_text
 from builder.mechanism.products import MEET_IN_ONE_PRODUCT, Event, Route
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Course, Mechanism, Result, StereoKind
 from builder.rule import Fault, Path, rule
 
-__all__ = ["AGREEMENT_CHECKS", "CONTRARY_RULES", "is_covered"]
+__all__ = [
+    "AGREEMENT_CHECKS",
+    "AGREEMENT_READS",
+    "CONTRARY_RULES",
+    "claimed_courses",
+    "course_path",
+    "is_covered",
+]
 
 CONTRARY_RULES = frozenset(
     {
+        "by-product-outside-forecast",
         "claim-against-product",
+        "conversion-above-forecast",
         "course-against-mechanism",
+        "course-not-forecast",
         "mechanism-contrary",
+        "no-reaction-against-forecast",
+        "product-not-forecast",
         "product-not-reachable",
+        "ratio-against-forecast",
         "rearrangement-not-named",
+        "yield-above-forecast",
     }
 )
 """Rules whose findings mean that record and engine disagree; the verdict of an entry follows from them."""
 
-_READABLE = ("structure-unreadable", "leaving-group-not-found", "leaving-group-unknown")
+AGREEMENT_READS = ("structure-unreadable", "leaving-group-not-found", "leaving-group-unknown")
+"""Rules that must be silent before a record is compared with what its structures allow."""
 _ELIMINATIONS = {Mechanism.E1, Mechanism.E2, Mechanism.E1CB}
 _SUBSTITUTIONS = {Mechanism.SN1, Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.NGP}
 
@@ -91,7 +107,7 @@ _ARYL = (
     title="The claim is of another kind than the product",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=(*_READABLE, "product-not-reachable", "element-from-nowhere"),
+    needs=(*AGREEMENT_READS, "product-not-reachable", "element-from-nowhere"),
     fires_on=(_product("C=CCC", "claim: {mechanism: SN2}"),),
     silent_on=(_product("CCC(C)N=[N+]=[N-]", "claim: {mechanism: SN2}"),),
 )
@@ -122,7 +138,7 @@ def claim_is_against_the_product(case: Case) -> Iterator[Fault]:
     title="A course that the claimed mechanism does not take",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=(*_READABLE, "course-twice", "course-contradicts-structure", "course-without-stereocentre"),
+    needs=(*AGREEMENT_READS, "course-twice", "course-contradicts-structure", "course-without-stereocentre"),
     fires_on=(
         _chiral("CC[C@H](C)N=[N+]=[N-]", "retention"),
         _chiral("CC[C@@H](C)N=[N+]=[N-]", "partial inversion"),
@@ -158,7 +174,7 @@ def course_is_against_the_mechanism(case: Case) -> Iterator[Fault]:
     id="course-contradicts-structure",
     title="The drawings show another course than the claim",
     source="iupac-gold",
-    needs=(*_READABLE, "course-twice", "stereo-contradicts-structure"),
+    needs=(*AGREEMENT_READS, "course-twice", "stereo-contradicts-structure"),
     fires_on=(_chiral("CC[C@H](C)N=[N+]=[N-]", "inversion"), _chiral("CC[C@@H](C)N=[N+]=[N-]", "retention")),
     silent_on=(_chiral("CC[C@@H](C)N=[N+]=[N-]", "inversion"), _chiral("CC[C@H](C)N=[N+]=[N-]", "retention", "NGP")),
 )
@@ -168,7 +184,7 @@ def course_contradicts_structure(case: Case) -> Iterator[Fault]:
     Judged by mapped atoms and the parity of their neighbours, never by R and S: those letters depend on priorities
     and may stay the same through an inversion. Double inversion counts as retention.
     """
-    for path, course in _claimed_courses(case):
+    for path, course in claimed_courses(case):
         structure = case.structures.get(path)
         product = case.record.outcome.products[int(path[-1])]
         if structure is None or product.stereo in {StereoKind.RACEMATE, StereoKind.NOT_DETERMINED}:
@@ -177,7 +193,7 @@ def course_contradicts_structure(case: Case) -> Iterator[Fault]:
         if shown and course in _NET and not shown & _NET[course]:
             words = " or ".join(sorted(shown))
             yield Fault(
-                at=_course_path(case, path),
+                at=course_path(case, path),
                 message=f"{course} is claimed, but the drawings of substrate and product {product.label} show {words}",
                 mend="correct the drawing of the product, or the course",
             )
@@ -188,7 +204,7 @@ def course_contradicts_structure(case: Case) -> Iterator[Fault]:
     title="A course where nothing could show it",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=(*_READABLE, "course-twice"),
+    needs=(*AGREEMENT_READS, "course-twice"),
     fires_on=(_PRIMARY + _product("CCCCN=[N+]=[N-]", "claim: {mechanism: SN2, course: inversion}"),),
     silent_on=(_chiral("CC[C@@H](C)N=[N+]=[N-]", "inversion"),),
 )
@@ -247,32 +263,50 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
 
 @rule(
     id="mechanism-contrary",
-    title="A claimed mechanism that is closed here",
+    title="A claimed mechanism that the engine cannot defend",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=_READABLE,
+    needs=(*AGREEMENT_READS, "claim-against-product"),
     fires_on=(
         "substrate: {name: tert-butyl bromide, smiles: 'CC(C)(C)Br', class: tertiary, leaving_group: bromide,"
         " amount: 10 mmol}\nstages: [{temperature: 60 °C, time: 16 h}]\n"
         + _product("CC(C)(C)N=[N+]=[N-]", "claim: {mechanism: SN2}"),
+        _product("CCC(C)N=[N+]=[N-]", "claim: {mechanism: SN1}"),
     ),
     silent_on=(_product("CCC(C)N=[N+]=[N-]", "claim: {mechanism: SN2}"),),
 )
 def mechanism_is_contrary(case: Case) -> Iterator[Fault]:
-    """The claimed mechanism is open at a carbon that bears the leaving group.
+    """The claimed mechanism is open at a carbon that bears the leaving group, and fast enough to take part.
 
-    A closed gate is a statement about what is possible at all, not about rates. Observation outranks it: with good
-    evidence the entry accepts this query, says why, and becomes one of the most valuable of the book.
+    A closed gate is a statement about what is possible at all. Where all are open, the share that the engine forecasts
+    decides: the claim is questioned if even the upper end of its 90 % interval is below 5 %. Observation outranks both:
+    with good evidence the entry accepts this query, says why, and becomes one of the most valuable of the book.
     """
     claim = case.record.outcome.claim
     gates = _gates_against_the_claim(case)
+    mend = "correct the claim or the structure, or accept mechanism-contrary with a reason"
+    at = ("outcome", "claim", "mechanism")
     if claim is not None and gates:
         yield Fault(
-            at=("outcome", "claim", "mechanism"),
+            at=at,
             message=f"{claim.mechanism} is claimed, and the engine holds it closed: {_named(gates)}",
-            mend="correct the claim or the structure, or accept mechanism-contrary with a reason",
+            mend=mend,
             data={"gates": sorted(gate.rule.id for gate in gates)},
         )
+    elif claim is not None and claim.mechanism is not Mechanism.NONE and case.forecast is not None:
+        shares = case.forecast.shares
+        share = shares.get(claim.mechanism, 0.0)
+        low, high = case.forecast.intervals.get(claim.mechanism, (0.0, 0.0))
+        if shares and high < OUT_OF_QUESTION:
+            main = max(shares, key=lambda mechanism: shares[mechanism])
+            yield Fault(
+                at=at,
+                message=f"the record claims {claim.mechanism}; the engine expects"
+                f" {main} for {expected_text(shares[main], case.forecast.intervals[main])}"
+                f" and {claim.mechanism} for {expected_text(share, (low, high))}",
+                mend=mend,
+                data={"share": share, "expected": str(main)},
+            )
 
 
 def _gates_against_the_claim(case: Case) -> tuple[Gate, ...]:
@@ -293,7 +327,7 @@ def _named(gates: Sequence[Gate]) -> str:
     title="A product that does not follow",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=(*_READABLE, "element-from-nowhere"),
+    needs=(*AGREEMENT_READS, "element-from-nowhere"),
     fires_on=(_product("CCCN=[N+]=[N-]"), _ARYL),
     silent_on=(_product("CCC(C)N=[N+]=[N-]"), _product("C=CCC")),
 )
@@ -342,7 +376,7 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
     title="A rearrangement that the result does not name",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=(*_READABLE, "product-not-reachable", "element-from-nowhere"),
+    needs=(*AGREEMENT_READS, "product-not-reachable", "element-from-nowhere"),
     fires_on=(_product("CCC(CC)N=[N+]=[N-]").replace("outcome:", _PENTYL + "outcome:"),),
     silent_on=(
         _product("CCCC(C)N=[N+]=[N-]").replace("outcome:", _PENTYL + "outcome:"),
@@ -380,11 +414,11 @@ AGREEMENT_CHECKS = (
 
 
 def is_covered(case: Case) -> bool:
-    """Say whether the engine has anything to say about this record: it claims a mechanism at a known site."""
-    return case.record.outcome.claim is not None and bool(case.sites)
+    """Say whether the engine has anything to say about this record: it makes a claim, and a forecast can be made."""
+    return case.record.outcome.claim is not None and case.forecast is not None
 
 
-def _claimed_courses(case: Case) -> Iterator[tuple[Path, Course]]:
+def claimed_courses(case: Case) -> Iterator[tuple[Path, Course]]:
     """Yield the claimed course of each product that one is claimed for: its own, or the claim's if it is desired."""
     claim = case.record.outcome.claim
     for path in product_paths(case):
@@ -397,7 +431,8 @@ def _claimed_courses(case: Case) -> Iterator[tuple[Path, Course]]:
             yield path, course
 
 
-def _course_path(case: Case, path: Path) -> Path:
+def course_path(case: Case, path: Path) -> Path:
+    """Return where the course of the product at `path` is claimed."""
     own = case.record.outcome.products[int(path[-1])].course is not None
     return (*path, "course") if own else ("outcome", "claim", "course")
 

@@ -4,15 +4,21 @@ import datetime as dt
 import hashlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 
 from builder.chemistry.structure import Structure, StructureError, parse_inchi, parse_rxn, parse_smiles
 from builder.mechanism.amounts import Amounts, charged_rows, derive_amounts
+from builder.mechanism.asking import AskingError
+from builder.mechanism.engine import predict
+from builder.mechanism.forecast import Forecast
+from builder.mechanism.from_record import question_from_record
+from builder.mechanism.question import Question
 from builder.mechanism.reaction import SiteInPlay, has_undrawn_species, in_play, species_in_flask
 from builder.records.model import Compound, Record
 from builder.records.settings import Settings
 from builder.rule import Path
 
-__all__ = ["Case", "compounds_of", "open_case"]
+__all__ = ["Case", "compounds_of", "forecast_for", "open_case"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -23,6 +29,7 @@ class Case:
     structures: by path of the compound, for all that could be read; unreadable holds the rest with the reason.
     sites: that bear the declared leaving group; empty where it or the substrate could not be read.
     flask: everything charged but the substrate, as far as has_undrawn_species leaves it known.
+    question: what the record asks of the engine; None where it cannot be asked, and then unasked says why.
     rxn_fault: why the RXN file that the record names cannot be used; None where it can, or none is named.
     """
 
@@ -36,6 +43,8 @@ class Case:
     sites: tuple[SiteInPlay, ...]
     flask: tuple[Structure, ...]
     has_undrawn_species: bool
+    question: Question | None
+    unasked: str = ""
     rxn_fault: StructureError | None = None
 
     @property
@@ -45,6 +54,18 @@ class Case:
         Raises KeyError where it could not be read; checks that use it need `structure-unreadable` to be silent.
         """
         return self.structures[("substrate",)]
+
+    @property
+    def forecast(self) -> Forecast | None:
+        """Return what the engine forecasts, asked once; None where it cannot be asked or has no say."""
+        forecast = None if self.question is None else forecast_for(self.question)
+        return forecast if forecast is not None and forecast.is_covered else None
+
+
+@lru_cache(maxsize=4096)
+def forecast_for(question: Question) -> Forecast:
+    """Return the forecast for a question; asked again, it is remembered."""
+    return predict(question)
 
 
 def open_case(record: Record, file: str, settings: Settings, today: dt.date, rxn: bytes | None = None) -> Case:
@@ -65,6 +86,8 @@ def open_case(record: Record, file: str, settings: Settings, today: dt.date, rxn
                 structures[path] = _component(compound.from_rxn, drawn)
         except StructureError as error:
             unreadable[path] = error
+    amounts, sites = derive_amounts(record, structures), in_play(record, structures)
+    question, unasked = _question(record, structures, amounts, sites)
     return Case(
         record=record,
         file=file,
@@ -72,12 +95,24 @@ def open_case(record: Record, file: str, settings: Settings, today: dt.date, rxn
         today=today,
         structures=structures,
         unreadable=unreadable,
-        amounts=derive_amounts(record, structures),
-        sites=in_play(record, structures),
+        amounts=amounts,
+        sites=sites,
         flask=tuple(species_in_flask(record, structures)),
         has_undrawn_species=has_undrawn_species(record, structures),
+        question=question,
+        unasked=unasked,
         rxn_fault=rxn_fault,
     )
+
+
+def _question(
+    record: Record, structures: Mapping[Path, Structure], amounts: Amounts, sites: tuple[SiteInPlay, ...]
+) -> tuple[Question | None, str]:
+    """Return the question of a record, or why there is none."""
+    try:
+        return question_from_record(record, structures, amounts, sites), ""
+    except AskingError as error:
+        return None, error.what
 
 
 def _components(record: Record, rxn: bytes | None) -> tuple[dict[str, Structure], StructureError | None]:

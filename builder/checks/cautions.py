@@ -25,6 +25,7 @@ from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
     "CAUTION_CHECKS",
+    "WHO_DECIDES",
     "Caution",
     "CautionKind",
     "Hazard",
@@ -32,6 +33,7 @@ __all__ = [
     "Severity",
     "SubstanceKind",
     "Whereabouts",
+    "by_meeting",
     "find_hazards",
     "load_cautions",
     "load_substance_kinds",
@@ -246,6 +248,15 @@ def find_hazards(presents: tuple[Present, ...], hottest_c: float) -> tuple[Hazar
         for kind in present.kinds:
             by_kind.setdefault(kind, []).append(present)
     return tuple(hazard for caution in load_cautions() for hazard in _hazards_of(caution, by_kind, hottest_c))
+
+
+def by_meeting(hazards: Iterable[Hazard]) -> tuple[tuple[Hazard, ...], ...]:
+    """Return the hazards of the same substances in the same place together, the gravest first."""
+    meetings: dict[tuple[Path, frozenset[Path]], list[Hazard]] = {}
+    for hazard in hazards:
+        partners = frozenset(other.path for other in hazard.others)
+        meetings.setdefault((hazard.at.path, partners), []).append(hazard)
+    return tuple(tuple(sorted(each, key=lambda h: -h.caution.severity.weight)) for each in meetings.values())
 
 
 def _hazards_of(caution: Caution, by_kind: Mapping[str, Sequence[Present]], hottest_c: float) -> Iterator[Hazard]:
@@ -599,14 +610,12 @@ def hazard_of_a_pair(case: Case) -> Iterator[Fault]:
     hazards of the same substances in one place the gravest is shown and the others are listed in its data; one graded
     `note` is a remark.
     """
-    meetings: dict[tuple[Path, frozenset[Path]], list[Hazard]] = {}
-    for hazard in _hazards(case):
-        if hazard.caution.second is not None and hazard.caution.severity is not Severity.STOP:
-            partners = frozenset(other.path for other in hazard.others)
-            meetings.setdefault((hazard.at.path, partners), []).append(hazard)
-        elif hazard.caution.second is not None and not _is_unreviewed(case, hazard):
+    pairs = [hazard for hazard in _hazards(case) if hazard.caution.second is not None]
+    for hazard in pairs:
+        if hazard.caution.severity is Severity.STOP and not _is_unreviewed(case, hazard):
             yield _fault([hazard])
-    yield from map(_fault, meetings.values())
+    milder = (hazard for hazard in pairs if hazard.caution.severity is not Severity.STOP)
+    yield from map(_fault, by_meeting(milder))
 
 
 _HARMLESS = """\
@@ -643,18 +652,15 @@ def hazard_of_a_species(case: Case) -> Iterator[Fault]:
     nitrogen atom. What is only good to know is a remark. Corrosive, flammable and merely harmful substances are left to
     their data sheets.
     """
-    at_place: dict[Path, list[Hazard]] = {}
-    for hazard in _hazards(case):
-        if hazard.caution.second is None:
-            at_place.setdefault(hazard.at.path, []).append(hazard)
-    for hazards in at_place.values():
+    of_one = (hazard for hazard in _hazards(case) if hazard.caution.second is None)
+    for hazards in by_meeting(of_one):
         if not any(_is_unreviewed(case, hazard) for hazard in hazards):
             yield _fault(hazards)
 
 
 def _fault(hazards: Iterable[Hazard]) -> Fault:
-    """Return the fault for the gravest of several hazards in one place; the others are listed in its data."""
-    gravest, *others = sorted(hazards, key=lambda hazard: -hazard.caution.severity.weight)
+    """Return the fault for the first and gravest of several hazards in one place; the others are listed in its data."""
+    gravest, *others = hazards
     caution = gravest.caution
     return Fault(
         at=gravest.at.path,

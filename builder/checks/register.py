@@ -13,6 +13,7 @@ from builder.checks.charged import CHARGED_CHECKS
 from builder.checks.completeness import COMPLETENESS_CHECKS
 from builder.checks.conditions import CONDITION_CHECKS
 from builder.checks.excess import EXCESS_CHECKS
+from builder.checks.forecasts import FORECAST_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
@@ -35,6 +36,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *COMPLETENESS_CHECKS,
             *CONDITION_CHECKS,
             *EXCESS_CHECKS,
+            *FORECAST_CHECKS,
             *FORM_CHECKS,
             *KINETIC_CHECKS,
             *STAGE_CHECKS,

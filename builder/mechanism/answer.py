@@ -6,8 +6,9 @@ from typing import Any
 
 from builder.mechanism.asking import Read
 from builder.mechanism.forecast import Forecast
+from builder.mechanism.improve import Improvement
 
-__all__ = ["answer_of", "how_read"]
+__all__ = ["answer_of", "change_of", "how_read"]
 
 
 def answer_of(forecast: Forecast, cautions: Sequence[dict[str, str]] = ()) -> dict[str, Any]:
@@ -55,6 +56,21 @@ def answer_of(forecast: Forecast, cautions: Sequence[dict[str, str]] = ()) -> di
 def how_read(read: Read) -> dict[str, Any]:
     """Return how the words of a question were taken and what was assumed, JSON-ready."""
     return {"read": [reading._asdict() for reading in read.readings], "assumed": sorted(read.assumed)}
+
+
+def change_of(improvement: Improvement) -> dict[str, Any]:
+    """Return a change that would help, JSON-ready."""
+    return {
+        "what": [kind.value for kind in (improvement.what, *improvement.also)],
+        "change": improvement.change,
+        "effort": improvement.effort,
+        "share_before": round(improvement.share_before, 4),
+        "share_after": round(improvement.share_after, 4),
+        "conversion_before": round(improvement.conversion_before, 4),
+        "conversion_after": round(improvement.conversion_after, 4),
+        "reaches": improvement.reaches,
+        "mechanism": improvement.forecast.mechanism.value,
+    }
 
 
 def _finite(value: float | None) -> float | None:

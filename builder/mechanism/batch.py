@@ -1,7 +1,7 @@
 """Many questions at once: lines of JSON in, lines of JSON out, in the same order, over several processes.
 
 A line that cannot be answered gives an error in its place and the rest goes on, whatever is wrong with it: no JSON, a
-word nobody knows, a fault of ours, even a process that dies over it. Only a few chunks of lines are in memory at a time.
+word nobody knows, a fault of ours, even a process that dies over it. Only a few chunks of lines are in memory at once.
 """
 
 import json

@@ -1,5 +1,7 @@
 """The two chairs of a six-membered ring, weighed by the A values of its drawn substituents."""
 
+from collections.abc import Callable
+
 from builder.chemistry.geometry import Ring
 from builder.chemistry.structure import AtomId, Structure
 from builder.mechanism.constants import conformational_energy_kj
@@ -25,13 +27,27 @@ def is_axial(structure: Structure, ring: Ring, atom: AtomId, substituent: AtomId
     Its two ring neighbours' own exocyclic heteroatoms are left out: after the opening of an epoxide they are what
     is asked about.
     """
-    energies, place = _chairs(structure, ring, atom, substituent, counted=lambda symbol: symbol == "C")
+    energies, place = _chairs(structure, ring, atom, substituent, _is_carbon)
     if place is None or abs(energies[True] - energies[False]) < _NO_CHOICE_KJ:
         return None
     return energies[place] < energies[not place]
 
 
-def _chairs(structure, ring, atom, substituent, counted=lambda _: True):  # type: ignore[no-untyped-def]
+def _any_element(_: str) -> bool:
+    return True
+
+
+def _is_carbon(symbol: str) -> bool:
+    return symbol == "C"
+
+
+def _chairs(
+    structure: Structure,
+    ring: Ring,
+    atom: AtomId,
+    substituent: AtomId,
+    counted: Callable[[str], bool] = _any_element,
+) -> tuple[dict[bool, float], bool | None]:
     """Return the energy of axial substituents in each chair, and in which one the substituent asked about is axial."""
     place = {each: i for i, each in enumerate(ring.atoms)}
     energies = {True: 0.0, False: 0.0}

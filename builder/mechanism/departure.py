@@ -42,6 +42,8 @@ _PROTONATED = {
     "oxetane": ("protonated oxetane", "acid.epoxide"),
     "aziridine": ("protonated aziridine", "acid.amine"),
 }
+_FOLLOWS_ACIDITY = frozenset({"acid.alcohol", "acid.ether"})
+"""Groups whose loss keeps pace with the acidity even where nearly all of them bear a proton."""
 _ACTIVE_NITROGEN = ("[NX3;r3]S(=O)=O", "[NX3;r3]C=[O,S]", "[NX3;r3]P=O")
 
 
@@ -104,8 +106,8 @@ def departures(structure: Structure, flask: Flask, parameters: Parameters) -> tu
 def _of_site(structure: Structure, site: ReactiveSite, flask: Flask, parameters: Parameters) -> Iterator[Departure]:
     group = site.leaving_group
     if group == "hydroxyl" and flask.activators:
-        for made in flask.activators:
-            made = "activated phosphate" if made == "phosphate" else made
+        for activator in flask.activators:
+            made = "activated phosphate" if activator == "phosphate" else activator
             yield Departure(structure, site, made, how=f"hydroxyl made into {made}")
         return
     if group == "amine" and flask.nitrosates and _is_primary_amine(structure, site):
@@ -135,9 +137,10 @@ def _of_site(structure: Structure, site: ReactiveSite, flask: Flask, parameters:
 
 
 def _cost_of_proton(basicity: str, flask: Flask, parameters: Parameters) -> tuple[Term, ...]:
-    """Return log10 of the share that is protonated, at most 0: pKa of the protonated group less acidity."""
-    assert flask.acidity is not None and flask.acidity_key is not None
-    if parameters.value(basicity) >= flask.acidity:
+    """Return log10 of what the proton does: pKa of the protonated group less acidity, for most groups at most 0."""
+    if flask.acidity is None or flask.acidity_key is None:
+        raise ValueError("a flask without acid protonates nothing")
+    if basicity not in _FOLLOWS_ACIDITY and parameters.value(basicity) >= flask.acidity:
         return ()
     return (parameters.term(basicity), parameters.term(flask.acidity_key, -1.0))
 

@@ -8,7 +8,7 @@ import math
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import replace
 
-from builder.chemistry.perception import Hybridisation, attacking_atoms, perceive_sites
+from builder.chemistry.perception import Hybridisation, ReactiveSite, attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure
 from builder.mechanism.departure import Departure, departures
 from builder.mechanism.flask import Flask, fill_flask
@@ -77,13 +77,13 @@ def _why_not_covered(structure: Structure, flask: Flask) -> Reason | None:
     leaving = [s for s in sites if not s.is_addition]
     adds = any(s.is_addition for s in sites)
     convention = "record-format"
-    if not leaving and not (adds and flask.is_brønsted_acid):
+    if not leaving and not (adds and flask.is_bronsted_acid):
         what = "no leaving group, and no multiple bond beside an acid" if adds else "no leaving group"
         return Reason("not-covered", f"not covered: the substrate has {what}", None, None, convention)
     if leaving and all("acyl" in s.classes for s in leaving) and not adds:
         text = "not covered: substitution at an acyl carbon goes by addition and loss, outside this book"
         return Reason("not-covered", text, None, None, convention)
-    if flask.has_peroxide and adds and flask.is_brønsted_acid and not leaving:
+    if flask.has_peroxide and adds and flask.is_bronsted_acid and not leaving:
         text = "not covered: with a peroxide hydrogen bromide adds by a radical chain, outside this book"
         return Reason("not-covered", text, None, None, convention)
     return None
@@ -158,7 +158,7 @@ def _weighed(question: Question, flask: Flask, pathways: list[Pathway], paramete
     drawn_as = question.substrate if flask.is_achiral else None
     products = () if mechanism is Mechanism.NONE else _products(drawn_as, chosen, weights, mechanism)
     if products:
-        products = _second_steps(products, question, flask, parameters, kinetics)
+        products = _second_steps(products, question, flask, parameters)
     return Forecast(
         is_covered=True,
         mechanism=mechanism,
@@ -275,7 +275,7 @@ def _add(found: dict[tuple[str, Mechanism], Forecasted], outcome: Outcome, weigh
 
 
 def _second_steps(
-    products: tuple[Forecasted, ...], question: Question, flask: Flask, parameters: Parameters, kinetics: Kinetics
+    products: tuple[Forecasted, ...], question: Question, flask: Flask, parameters: Parameters
 ) -> tuple[Forecasted, ...]:
     """Return the products after a second elimination or addition, where reagent is left and it runs in the time."""
     left = question.equivalents - 1.0 if question.equivalents is not None else 1.0
@@ -304,15 +304,20 @@ def _second_steps(
 def _next_pathways(product: Forecasted, flask: Flask, parameters: Parameters, temperature_k: float) -> list[Pathway]:
     if product.mechanism is Mechanism.E2:
         sites = perceive_sites(product.structure)
-        if not any(not s.is_addition and s.hybridisation is Hybridisation.SP2 and s.beta_with_hydrogen for s in sites):
+        if not any(_loses_again(site) for site in sites):
             return []
         found = departures(product.structure, flask, parameters)
-        return [
-            p for d in found if d.site.hybridisation is Hybridisation.SP2 for p in e2_pathways(d, flask, parameters)
-        ]
+        return [p for d in found if _loses_again(d.site) for p in e2_pathways(d, flask, parameters)]
     if product.mechanism is Mechanism.ADE:
         return list(addition_pathways(product.structure, flask, parameters, temperature_k))
     return []
+
+
+def _loses_again(site: ReactiveSite) -> bool:
+    """Say whether a second elimination starts here: at a vinylic halide, or at an allylic one, to a diene."""
+    if site.is_addition or not site.beta_with_hydrogen:
+        return False
+    return site.hybridisation is Hybridisation.SP2 or "allylic" in site.classes
 
 
 def _gone_on(
@@ -371,9 +376,10 @@ def _reasons(
     question: Question, flask: Flask, pathways: Sequence[Pathway], weights: Sequence[float], parameters: Parameters
 ) -> tuple[Reason, ...]:
     """Return what an answer rests on: how the flask was read, the main pathways, the gates, what is only estimated."""
-    found: list[Reason] = []
-    for name in flask.spent:
-        found.append(Reason("acid-spends-nucleophile", f"the acid has taken {name}", None, None, "march-2013"))
+    found = [
+        Reason("acid-spends-nucleophile", f"the acid has taken {name}", None, None, "march-2013")
+        for name in flask.spent
+    ]
     for departure in departures(question.substrate, flask, parameters):
         if departure.how:
             text = f"{departure.site.leaving_group}: {departure.how}"

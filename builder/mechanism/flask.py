@@ -5,7 +5,7 @@ nucleophiles, a Lewis acid does not. Solvents attack at their own molarity and a
 """
 
 import math
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import lru_cache
 
@@ -33,7 +33,8 @@ class Attacker:
     """One attacking atom of one species, at its concentration.
 
     kind: what it is like as it attacks; of a phenol whose proton a base has taken, a phenoxide.
-    n, n_error: Swain-Scott n(CH3I) in methanol of the usual atom of the species. is_usual_atom: the one that attacks first.
+    n, n_error: Swain-Scott n(CH3I) in methanol of the usual atom of the species.
+    is_usual_atom: the one that attacks first.
     molar: mol/L. pool: what it is drawn from; None for a solvent, which does not run out.
     """
 
@@ -108,7 +109,7 @@ class Flask:
         return tuple(a for a in self.attackers if a.is_solvent)
 
     @property
-    def is_brønsted_acid(self) -> bool:
+    def is_bronsted_acid(self) -> bool:
         """Say whether a proton, not a Lewis acid, makes it acid."""
         return self.acidity is not None and not self.is_lewis and self.acidity <= MOST_ACIDITY
 
@@ -184,26 +185,18 @@ def _charge(
     if question.base is not None:
         bases += _attackers_of(question.base, molar, medium, helped=helped)
     for dose in doses:
-        bases += _from_dose(dose, molar, medium, parameters, helped=helped)
-        found += _supplied(dose, molar, medium, parameters)
+        bases += _from_dose(dose, molar, medium, helped=helped)
+        found += _supplied(dose, molar, parameters)
     taken = _solvent_names(medium)
     found = [a for a in found if a.name not in taken]
     if "alkoxyphosphonium" in groups and any(dose.reagent.needs for dose in doses):
-        base_pka = parameters.value("flask.betaine")
-        found = [each for a in found for each in _shared_proton(a, base_pka, base_pka, molar)[0]]
+        found, _ = _deprotonated(found, parameters.value("flask.betaine"), molar)
     left = []
     for base in bases:
-        remaining = base
-        converted: list[Attacker] = []
-        for a in found:
-            if base.is_usual_atom and a.is_usual_atom and not a.is_anion:
-                pair, remaining_molar = _shared_proton(a, base.pka, base.pka_dmso, remaining.molar, medium)
-                converted += pair
-                remaining = replace(remaining, molar=remaining_molar)
-            else:
-                converted.append(a)
-        found = converted
-        left.append(remaining)
+        remaining = base.molar
+        if base.is_usual_atom:
+            found, remaining = _deprotonated(found, base.pka, base.molar)
+        left.append(replace(base, molar=remaining))
     merged = _merged([*found, *(b for b in left if b.name not in taken)])
     levelled = [_levelled(a, medium) for a in merged]
     pools: dict[str, float] = {}
@@ -275,7 +268,11 @@ def is_hindered(nucleophile: Nucleophile) -> bool:
     """Say whether branching beside the attacking atom gets in its way, as in tert-butoxide or triethylamine."""
     atoms = nucleophile.species.atoms
     atom = atoms[nucleophile.atom]
-    around = [n for n, _ in atom.neighbours if atoms[n].symbol == "C"]
+    around = [
+        n
+        for n, _ in atom.neighbours
+        if atoms[n].symbol == "C" and all(order == 1.0 for _, order in atoms[n].neighbours)
+    ]
     branched = [sum(atoms[m].symbol != "H" for m, _ in atoms[n].neighbours) - 1 for n in around]
     if atom.symbol in {"O", "S"}:
         return any(b >= 3 for b in branched)
@@ -284,12 +281,12 @@ def is_hindered(nucleophile: Nucleophile) -> bool:
         crowded = sum(b >= 2 for b in branched)
         return not tied and (crowded >= 2 or (len(around) == 3 and sum(branched) >= 3) or any(b >= 3 for b in branched))
     if atom.aromatic and atom.symbol == "N":  # substituents beside a pyridine nitrogen
-        beside = [m for n in around for m, _ in atoms[n].neighbours if m != nucleophile.atom]
+        beside = [m for n, _ in atom.neighbours for m, _ in atoms[n].neighbours if m != nucleophile.atom]
         return sum(not atoms[m].aromatic for m in beside) >= 2
     return False
 
 
-def _from_dose(dose: Dose, molar: float, medium: Medium, parameters: Parameters, *, helped: bool) -> list[Attacker]:
+def _from_dose(dose: Dose, molar: float, medium: Medium, *, helped: bool) -> list[Attacker]:
     """Return what a reagent listed as base brings."""
     if dose.reagent.role is not Role.BASE or dose.reagent.smiles is None:
         return []
@@ -297,7 +294,7 @@ def _from_dose(dose: Dose, molar: float, medium: Medium, parameters: Parameters,
     return _attackers_of(ingredient, molar, medium, helped=helped)
 
 
-def _supplied(dose: Dose, molar: float, medium: Medium, parameters: Parameters) -> list[Attacker]:
+def _supplied(dose: Dose, molar: float, parameters: Parameters) -> list[Attacker]:
     """Return the anion a reagent brings; concentrated hydrogen halide brings it in mol/L by its strength."""
     weak = (
         dose.reagent.role is Role.LEWIS_ACID
@@ -323,19 +320,42 @@ def _merged(attackers: Iterable[Attacker]) -> list[Attacker]:
     return list(found.values())
 
 
-def _shared_proton(
-    acid: Attacker, base_pka: float, base_pka_dmso: float, base_molar: float, medium: Medium | None = None
-) -> tuple[list[Attacker], float]:
+def _deprotonated(attackers: Sequence[Attacker], base_pka: float, base_molar: float) -> tuple[list[Attacker], float]:
+    """Return the attackers after a base has taken protons, the most acidic atom of each species first.
+
+    A species gives one proton; the atom that has lost it is the one that attacks first from then on.
+    """
+    most_acidic: dict[str, Attacker] = {}
+    for a in attackers:
+        pka = _acid_pka_of(a)
+        known = most_acidic.get(a.nucleophile.species.smiles)
+        if pka is not None and not a.is_anion and (known is None or pka < (_acid_pka_of(known) or 99.0)):
+            most_acidic[a.nucleophile.species.smiles] = a
+    found: list[Attacker] = []
+    for a in attackers:
+        if most_acidic.get(a.nucleophile.species.smiles) is a:
+            pair, base_molar = _shared_proton(a, base_pka, base_molar)
+            found += pair
+        else:
+            found.append(a)
+    return found, base_molar
+
+
+def _acid_pka_of(attacker: Attacker) -> float | None:
+    """Return the pKa of the proton on an attacking atom; the row of a species speaks of its usual atom."""
+    if attacker.kind.anion is None:
+        return None
+    row = _row_of(attacker.nucleophile.species.smiles) if attacker.is_usual_atom else None
+    return attacker.kind.acid_pka if row is None or row.pka_acid is None else row.pka_acid
+
+
+def _shared_proton(acid: Attacker, base_pka: float, base_molar: float) -> tuple[list[Attacker], float]:
     """Return the acid and its anion at equilibrium with a base, and what is left of the base, mol/L.
 
-    The equilibrium constant is ten to the difference of pKa, in water's scale; in dipolar aprotic solvents the anion
-    of an oxygen acid is given no extra strength, for both sides are anions.
+    The equilibrium constant is ten to the difference of pKa in water, in every solvent: both sides hold an anion.
     """
-    if acid.kind.anion is None:
-        return [acid], base_molar
-    row = _row_of(acid.nucleophile.species.smiles) if acid.is_usual_atom else None
-    acid_pka = acid.kind.acid_pka if row is None or row.pka_acid is None else row.pka_acid
-    if acid_pka is None:
+    acid_pka = _acid_pka_of(acid)
+    if acid.kind.anion is None or acid_pka is None:
         return [acid], base_molar
     constant = 10 ** min(9.0, base_pka - acid_pka)
     ionised = _shared(acid.molar, base_molar, constant)
@@ -352,6 +372,7 @@ def _shared_proton(
         pka=acid_pka,
         pka_dmso=acid_pka + kind.pka_dmso - kind.pka,
         is_anion=True,
+        is_usual_atom=True,
         molar=ionised,
     )
     return [anion, replace(acid, molar=acid.molar - ionised)], base_molar - ionised

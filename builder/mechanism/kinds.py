@@ -1,4 +1,4 @@
-"""What a kind of nucleophile or base is like, from nucleophile_kinds.tsv; used where no row names the species itself."""
+"""What a kind of nucleophile or base is like, from nucleophile_kinds.tsv; used where no row names the species."""
 
 from dataclasses import dataclass
 from enum import StrEnum
@@ -18,6 +18,7 @@ class BaseFamily(StrEnum):
     AMIDINE = "amidine"
     AMIDE = "amide"
     SOFT = "soft"
+    CARBON = "carbon"
     HALIDE = "halide"
     CARBOXYLATE = "carboxylate"
 

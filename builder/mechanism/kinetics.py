@@ -6,7 +6,7 @@ for each, which are used up one to one. With τ = ∫ S dt each reagent is N_j(�
     S(τ) = S0 - k1 τ - Σ N_j0 (1 - exp(-k_j τ))
 
 so the yield of every pathway is a closed form in τ. With y = -ln(S/S0) time is ∫ dy / (k1 + Σ k_j N_j(τ(y))), a smooth
-integrand: Simpson's rule over steps of STEP in y up to DEPTH, and over the rest of a step where a time falls within one.
+integrand: Simpson's rule over steps of STEP in y up to DEPTH, and over the rest of a step where a time falls within.
 τ(y) is found by Newton's method from below, which converges because S(τ) is convex and falls. With pathways of first
 order only, t = y / k1 exactly. Another program gets the same numbers to better than 1e-6.
 Source: the time transformation of competing second-order reactions, as in Frost and Pearson, Kinetics and Mechanism

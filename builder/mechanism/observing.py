@@ -1,4 +1,4 @@
-"""What the engine says where an observation speaks: its value and its slope on every term, one observation at a time."""
+"""What the engine says where an observation speaks: its value and its slope on every term."""
 
 import math
 from collections.abc import Callable, Iterable, Sequence
@@ -19,7 +19,7 @@ __all__ = ["Seen", "SilentError", "see_channel", "see_rate", "see_share", "see_s
 LABELS = {
     Channel.SN2: ("SN2",),
     Channel.SN2_SOLVENT: ("SN2 solvent",),
-    Channel.IONISATION: ("SN1", "E1"),
+    Channel.IONISATION: ("SN1", "E1", "NGP"),
     Channel.E2: ("E2",),
     Channel.SOLVOLYSIS: ("SN2 solvent", "SN1", "E1", "NGP", "E2 solvent", "SN2' solvent"),
     Channel.NGP: ("NGP",),

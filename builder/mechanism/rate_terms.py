@@ -5,7 +5,7 @@ raises. `Parameters` can be varied, so that fitting, perturbing and leaving out 
 """
 
 import math
-from collections.abc import Iterable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from functools import cache
 from importlib import resources
@@ -58,9 +58,6 @@ class Parameters:
 
     def __contains__(self, key: str) -> bool:
         return key in self._terms
-
-    def __iter__(self) -> Iterable[str]:  # type: ignore[override]
-        return iter(self._terms)
 
     def __getitem__(self, key: str) -> RateTerm:
         return self._terms[key]

@@ -1,4 +1,4 @@
-"""Electrophilic addition through a carbocation: alkenes and alkynes with a Brønsted acid and what captures the cation."""
+"""Electrophilic addition through a carbocation: a Brønsted acid, an alkene or alkyne, and what captures the cation."""
 
 import math
 from collections.abc import Iterator
@@ -6,7 +6,7 @@ from dataclasses import replace
 from functools import partial
 
 from builder.chemistry.perception import ReactiveSite, perceive_sites
-from builder.chemistry.structure import Structure
+from builder.chemistry.structure import AtomId, Structure
 from builder.chemistry.transform import Cation, add_hx, protonate
 from builder.mechanism.cations import Shift, cation_terms, stations
 from builder.mechanism.flask import Flask
@@ -25,7 +25,7 @@ def addition_pathways(
     structure: Structure, flask: Flask, parameters: Parameters, temperature_k: float
 ) -> Iterator[Pathway]:
     """Yield the addition to each end of each multiple bond, in a flask that holds a strong acid and its captor."""
-    if not flask.is_brønsted_acid or flask.has_peroxide:
+    if not flask.is_bronsted_acid or flask.has_peroxide:
         return
     for site in perceive_sites(structure):
         if site.is_addition and site.partner is not None:
@@ -58,9 +58,7 @@ def _addition(
         ):
             terms.append(parameters.term("ade.vinyl halide"))
         reached = stations(structure, skeleton, site.alpha_carbon, parameters)
-        reception = receive(
-            structure, site, reached, flask, parameters, temperature_k, group="none", can_eliminate=False
-        )
+        reception = receive(reached, flask, parameters, temperature_k, group="none", can_eliminate=False)
         if not reception.attackers:
             return
         kept = tuple(replace(f, loses_proton=0.0) for f in reception.fates)
@@ -79,11 +77,20 @@ def _addition(
     )
 
 
+def ends_of(site: ReactiveSite) -> tuple[AtomId, AtomId]:
+    """Return the carbon that becomes cationic and the one that takes the proton.
+
+    Raises ValueError unless the site is the end of a multiple bond.
+    """
+    if site.partner is None:
+        raise ValueError("the site is no end of a multiple bond")
+    return site.alpha_carbon, site.partner
+
+
 def protonated_skeleton(structure: Structure, site: ReactiveSite) -> Skeleton:
     """Return the adjacency of the cation left when a proton adds to the partner of a site."""
     skeleton = skeleton_of(structure)
-    assert site.partner is not None
-    alpha, partner = site.alpha_carbon, site.partner
+    alpha, partner = ends_of(site)
     bonds = list(skeleton.bonds)
     order = bonds[alpha][partner] - 1.0
     bonds[alpha] = bonds[alpha] | {partner: order}
@@ -95,10 +102,10 @@ def protonated_skeleton(structure: Structure, site: ReactiveSite) -> Skeleton:
 
 def _saturated(skeleton: Skeleton, site: ReactiveSite) -> Skeleton:
     """Return a vinylic cation drawn as its saturated likeness, to rank the ends of an alkyne by."""
-    assert site.partner is not None
+    alpha, partner = ends_of(site)
     bonds = list(skeleton.bonds)
-    bonds[site.alpha_carbon] = bonds[site.alpha_carbon] | {site.partner: 1.0}
-    bonds[site.partner] = bonds[site.partner] | {site.alpha_carbon: 1.0}
+    bonds[alpha] = bonds[alpha] | {partner: 1.0}
+    bonds[partner] = bonds[partner] | {alpha: 1.0}
     return Skeleton(skeleton.fixed, bonds, skeleton.hydrogens)
 
 
@@ -111,8 +118,9 @@ def _alkene_outcomes(structure: Structure, site: ReactiveSite, reception: Recept
 
 def _alkyne_outcomes(structure: Structure, site: ReactiveSite, flask: Flask) -> tuple[Outcome, ...]:
     captors = [a for a in flask.attackers if a.is_usual_atom and a.is_anion] or list(flask.attackers)
-    found = []
-    for attacker in captors[:1]:
-        for edit in add_hx(structure, site, attacker.nucleophile):
-            found.append(Outcome(edit.product, 1.0, Course.NOT_APPLICABLE, False, ("addition",)))
+    found = [
+        Outcome(edit.product, 1.0, Course.NOT_APPLICABLE, False, ("addition",))
+        for attacker in captors[:1]
+        for edit in add_hx(structure, site, attacker.nucleophile)
+    ]
     return merged_outcomes(found) if found else ()

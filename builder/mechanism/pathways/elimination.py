@@ -25,10 +25,13 @@ from builder.mechanism.pathways.substitution import hydrogen_bonding, log10
 from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
+from builder.mechanism.skeleton import LARGE_RING
 from builder.records.vocabulary import Course, Mechanism
 
 __all__ = ["e1cb_pathways", "e2_pathways", "trans_weight"]
 
+SMALLEST_ALKYNE_RING = 8
+"""Members of the smallest ring that holds a triple bond: cyclooctyne. Arynes are outside this book."""
 _REFERENCE_PKA = 15.9
 _STRONGEST_PKA = 32.0
 """Beyond it a stronger base is not faster: encounter and aggregates decide."""
@@ -88,6 +91,8 @@ class BetaWay:
 def beta_ways(structure: Structure, site: ReactiveSite) -> tuple[BetaWay, ...]:
     """Return the ways to the beta hydrogens of a site; ring carbons without a hydrogen in reach are left out."""
     found = []
+    if site.hybridisation is not Hybridisation.SP3 and min(site.ring_sizes, default=LARGE_RING) < SMALLEST_ALKYNE_RING:
+        return ()
     for beta in site.beta_with_hydrogen:
         stands = _stands(structure, site, beta)
         if stands is None:
@@ -143,7 +148,12 @@ def _way_terms(departure: Departure, way: BetaWay, parameters: Parameters) -> It
         yield parameters.term("e2.vinylic")
         for key, factor in way.keys:
             if key == "e2.beta.aryl":
-                yield parameters.term(key, factor)
+                yield parameters.term("e2.vinylic.aryl", factor)
+        if any(
+            a.aromatic
+            for a in (departure.structure.atoms[n] for n, _ in departure.structure.atoms[site.alpha_carbon].neighbours)
+        ):
+            yield parameters.term("e2.vinylic.aryl")
         return
     if site.degree in {Degree.SECONDARY, Degree.TERTIARY}:
         yield parameters.term(f"e2.alpha.{site.degree.value}")
@@ -263,9 +273,7 @@ def _stands(structure: Structure, site: ReactiveSite, beta: BetaCarbon) -> tuple
     In six-membered rings the leaving group must be axial and a hydrogen on the other face; in smaller and larger rings
     a hydrogen on the other face counts as anti, one on the same face as syn.
     """
-    if site.hybridisation is not Hybridisation.SP3:
-        return _vinylic_stands(structure, site, beta)
-    if not beta.in_common_ring or site.leaving_atom is None:
+    if site.hybridisation is not Hybridisation.SP3 or not beta.in_common_ring or site.leaving_atom is None:
         return True, 0.0
     ring = next((r for r in perceive_rings(structure) if site.alpha_carbon in r.atoms and beta.atom in r.atoms), None)
     if ring is None:
@@ -282,10 +290,6 @@ def _stands(structure: Structure, site: ReactiveSite, beta: BetaCarbon) -> tuple
             return None if not site.is_bridgehead and not _is_caged(structure, ring) else (False, 0.0)
         return True, cost
     return Relation.TRANS in faces, 0.0
-
-
-def _vinylic_stands(structure: Structure, site: ReactiveSite, beta: BetaCarbon) -> tuple[bool, float] | None:
-    return True, 0.0
 
 
 def _is_caged(structure: Structure, ring: Ring) -> bool:

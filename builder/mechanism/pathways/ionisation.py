@@ -52,19 +52,19 @@ def ionisation_pathways(
     departure: Departure, flask: Flask, parameters: Parameters, temperature_k: float
 ) -> Iterator[Pathway]:
     """Yield SN1 and E1 of a site, which share one ionisation; nothing where the cation cannot form."""
-    if closing_gates(Mechanism.SN1, departure.situation) or departure.site.leaving_atom is None:
+    site, structure, leaving = departure.site, departure.structure, departure.site.leaving_atom
+    if leaving is None or closing_gates(Mechanism.SN1, departure.situation):
         return
-    site, structure = departure.site, departure.structure
     if departure.group == "chlorosulfite" and not flask.has_base:
         return
-    bare = skeleton_of(structure).without_bond(site.alpha_carbon, site.leaving_atom)
+    bare = skeleton_of(structure).without_bond(site.alpha_carbon, leaving)
     if site.in_strained_ring:  # the group stays beside the cation but is no acceptor to it: it has only just left
-        for near in list(bare.neighbours(site.leaving_atom)):
-            bare = bare.without_bond(near, site.leaving_atom)
+        for near in list(bare.neighbours(leaving)):
+            bare = bare.without_bond(near, leaving)
     stability = cation_terms(structure, bare, site.alpha_carbon, parameters)
     terms = [parameters.term("sn1.zero"), *stability, *departure.terms, *departure.pull]
     terms.append(parameters.term(f"sn1.leave.{departure.group}"))
-    terms += _power_terms(departure, flask, parameters)
+    terms += _power_terms(departure, flask, parameters, is_held=nature_of(bare, site.alpha_carbon).is_stabilised)
     if site.leaving_ring_size is not None and not site.in_strained_ring:
         terms.append(parameters.term("sn1.returns"))
     terms.append(parameters.term("model.ionisation"))
@@ -72,15 +72,13 @@ def ionisation_pathways(
         return
     inverts = departure.group.startswith("protonated") and site.in_strained_ring and bool(flask.attackers)
     if site.in_strained_ring and not inverts:
-        bare = skeleton_of(structure).without_bond(site.alpha_carbon, site.leaving_atom)
+        bare = skeleton_of(structure).without_bond(site.alpha_carbon, leaving)
     reached = stations(structure, bare, site.alpha_carbon, parameters, 0 if inverts else MAX_SHIFTS)
     assistance = _assistance(reached, parameters)
     terms += assistance
     if math.fsum(t.contribution for t in terms) < HOPELESS:
         return
     reception = receive(
-        structure,
-        site,
         reached,
         flask,
         parameters,
@@ -116,17 +114,23 @@ def ionisation_pathways(
         )
 
 
-def _power_terms(departure: Departure, flask: Flask, parameters: Parameters) -> Iterator[Term]:
-    """Yield m times the ionising power; nothing for a group that leaves as a neutral molecule."""
+def _power_terms(departure: Departure, flask: Flask, parameters: Parameters, *, is_held: bool) -> Iterator[Term]:
+    """Yield m times the ionising power, on the scale of the leaving group; nothing for one that leaves uncharged.
+
+    Halides at a carbon that aryl, vinyl or a lone pair holds are on the scale of 1-adamantyl chloride (YCl), where no
+    solvent pushes from behind; alkyl halides are on that of tert-butyl chloride. The scales are never mixed.
+    """
     family = departure.family
     if family == "onium":
         return
-    power = flask.medium.power(Scale.YOTS if family == "sulfonate" else Scale.Y)
-    sensitivity = parameters.term(f"sn1.power.{family}", power.value)
-    yield sensitivity
-    yield Term(
-        "ionising power", parameters.value(f"sn1.power.{family}"), 0.0, power.error, "Y of the solvent", power.source
-    )
+    scale, key = Scale.Y, f"sn1.power.{family}"
+    if family == "sulfonate":
+        scale = Scale.YOTS
+    elif family == "halide" and is_held:
+        scale, key = Scale.YCL, "sn1.power.halide.stabilised"
+    power = flask.medium.power(scale)
+    yield parameters.term(key, power.value)
+    yield Term("ionising power", parameters.value(key), 0.0, power.error, f"{scale} of the solvent", power.source)
 
 
 def _assistance(reached: list[Station], parameters: Parameters) -> tuple[Term, ...]:
@@ -134,13 +138,19 @@ def _assistance(reached: list[Station], parameters: Parameters) -> tuple[Term, .
     first = reached[0]
     if not first.nature.is_plain or first.nature.alkyl >= 3:
         return ()
-    best = max((s for s in reached if len(s.path) == 1), key=lambda s: s.energy, default=None)
+    one_step = (s for s in reached if len(s.path) == 1 and not _moves_aryl(s, first))  # aryl: see participation
+    best = max(one_step, key=lambda s: s.energy, default=None)
     if best is None or best.energy <= first.energy + 0.5:
         return ()
     degree = "primary" if first.nature.alkyl < 2 else "secondary"
     if best.path[0].opens is not None:
         degree = "opening"
     return (parameters.term(f"cation.assistance.{degree}", best.energy - first.energy),)
+
+
+def _moves_aryl(station: Station, first: Station) -> bool:
+    moved = station.path[0].migrating
+    return moved is not None and first.skeleton.is_aromatic(moved)
 
 
 # --- what becomes of the cation -------------------------------------------------------------------------------
@@ -189,8 +199,6 @@ class Reception:
 
 
 def receive(
-    structure: Structure,
-    site: ReactiveSite,
     reached: list[Station],
     flask: Flask,
     parameters: Parameters,
@@ -204,8 +212,7 @@ def receive(
 
     group: what left, for a protonated alcohol is not remade by water. is_concerted: the first cation never exists.
     """
-    is_water = group in {"water"}
-    attackers = [a for a in flask.attackers if not (is_water and a.kind.name == "water")]
+    attackers = [a for a in flask.attackers if not (group == "water" and a.kind.name == "water")]
     returning = _RETURNING | _HALIDES if _is_held_for_long(reached[0]) else _RETURNING
     lasting = [a for a in attackers if a.kind.name not in returning]
     weighted = [
@@ -233,7 +240,7 @@ def receive(
         if _hydroxyl_beside(station) is not None:
             loses = 1.0
         fates.append(Fate(station, weight / whole, loses, terms))
-    reversible = flask.is_brønsted_acid and any(a.kind.name in _HALIDES for a, _ in shares)
+    reversible = flask.is_bronsted_acid and any(a.kind.name in _HALIDES for a, _ in shares)
     kept = sum(f.weight for f in fates)
     scaled = tuple(Fate(f.station, f.weight / kept, f.loses_proton, f.terms) for f in fates)
     if not shares:
@@ -253,7 +260,7 @@ def capture_weight(attacker: Attacker, flask: Flask, parameters: Parameters, *, 
     """
     ambident = math.fsum(t.contribution for t in ambident_terms(attacker, None, flask, parameters, on_cation=True))
     word = "stabilised" if is_stabilised else "plain"
-    if flask.is_brønsted_acid and attacker.kind.name in _HALIDES:
+    if flask.is_bronsted_acid and attacker.kind.name in _HALIDES:
         word = "reversible"
     return attacker.molar * float(10 ** (parameters.value(f"capture.sensitivity.{word}") * attacker.n + ambident))
 
@@ -297,14 +304,24 @@ def _shift_log(
         found += value("shift.ion pair")
     if before.nature.is_stabilised or before.nature.alkyl >= 3:
         found += value("shift.tertiary")
+    if _opens_small_ring(station.path[-1], before):
+        found += value("shift.small ring")
     if is_persistent and change > 0:
         found += value("shift.persistent")
     return found
 
 
+def _opens_small_ring(step: Shift, before: Station) -> bool:
+    """Say whether a bond of a ring of three or four moves, so that its strain is let go."""
+    if step.migrating is None or step.opens is not None:
+        return False
+    rings = before.skeleton.rings_through(step.origin)
+    return any(len(ring) <= 4 and step.migrating in ring for ring in rings)
+
+
 def _is_hot_acid(flask: Flask, group: str, temperature_k: float) -> bool:
     """Say whether a strong acid holds no nucleophile that keeps the cation, at a heat that drives the alkene out."""
-    if not (flask.is_brønsted_acid or flask.is_lewis) or group == "diazonium":
+    if not (flask.is_bronsted_acid or flask.is_lewis) or group == "diazonium":
         return False
     keeps = [
         a
@@ -351,6 +368,8 @@ def _proton_loss_terms(
         yield term("e1.anion")
     elif any(a.is_anion and a.pka > 7.0 and a.molar >= 0.1 for a in flask.attackers):
         yield term("e1.basic anion")
+    if any(a.is_solvent and a.kind.base is not None for a in flask.attackers):
+        yield term("e1.basic solvent")
     yield term("model.capture")
 
 
@@ -598,7 +617,7 @@ def _proton_losses(cation: Cation, parameters: Parameters) -> Iterator[tuple[Edi
 
 
 def sni_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> Iterator[Pathway]:
-    """Yield the collapse of a chlorosulfite within its ion pair, which keeps the configuration; base puts an end to it."""
+    """Yield the collapse of a chlorosulfite within its ion pair, which keeps the configuration; not beside a base."""
     if departure.group != "chlorosulfite" or flask.has_base or departure.site.leaving_atom is None:
         return
     if departure.site.degree in {Degree.METHYL, Degree.PRIMARY} and not departure.site.classes & {

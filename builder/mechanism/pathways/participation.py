@@ -1,4 +1,4 @@
-"""Neighbouring groups: one displaces the leaving group from within, and the bridged ion or the ring is the product's source."""
+"""Neighbouring groups: one displaces the leaving group from within; a ring stays, a bridged ion opens again."""
 
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -51,7 +51,8 @@ _OPENED_FIRST = (
     "carboxylate",
 )
 _HALIDES = frozenset({"chloride", "bromide", "iodide"})
-_CARBON_BRIDGE = frozenset({"arene", "alkene"})
+_BRIDGES = frozenset({"arene", "alkene", "organohalide"})
+"""Neighbours between which and the other carbon nothing is left to tell: with a symmetrical ion the product is racemic."""
 
 
 def participation_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> Iterator[Pathway]:
@@ -103,6 +104,8 @@ def reachable_groups(structure: Structure, site: ReactiveSite) -> tuple[tuple[Nu
             and group.kind != "carboxylate"
             and any(b.hybridisation != "sp3" for b in site.beta if b.atom in _beside(structure, group))
         ):
+            continue
+        if group.kind == "ether" and size not in {5, 6}:
             continue
         if group.kind == "organohalide" and size not in {3, 5}:
             continue
@@ -172,18 +175,18 @@ def _rate_terms(
     kind = load_kinds()[group.kind]
     cost: list[Term] = []
     if kind.anion is not None and group.charge >= 0:
-        made = _ionised(group, kind, flask, parameters)
+        made = _ionised(group, kind, flask)
         if made is not None:
             kind, cost = made
-        elif group.kind in {"carbon acid", "carbon acid, weak", "alkyne", "imide", "sulfonamide", "dithioacetal"} or (group.kind == "amide" and group.symbol == "N"):
+        elif group.kind in {"carbon acid", "carbon acid, weak", "alkyne", "imide", "sulfonamide", "dithioacetal"} or (
+            group.kind == "amide" and group.symbol == "N"
+        ):
             return None
-    if flask.is_brønsted_acid and kind.pka > 2.0:
+    if flask.is_bronsted_acid and kind.pka > 2.0:
         return None  # a proton has taken its lone pair
     if kind.element is None:
         return None
     element = kind.element
-    if element == "carboxylate" and size not in {3}:
-        element = "carboxylate"
     terms = [parameters.term(key, factor) for key, factor in site_features(departure.structure, site) if not _own(key)]
     terms += departure.terms
     terms.append(parameters.term(f"sn2.leave.{departure.group}"))
@@ -267,15 +270,15 @@ def _bridging_terms(
     return terms
 
 
-def _ionised(group: Nucleophile, kind: Kind, flask: Flask, parameters: Parameters) -> tuple[Kind, list[Term]] | None:
-    """Return the anion a base of the flask makes of a group, with log10 of the share ionised; None without such a base."""
+def _ionised(group: Nucleophile, kind: Kind, flask: Flask) -> tuple[Kind, list[Term]] | None:
+    """Return the anion a base of the flask makes of a group, with log10 of the share ionised; None without one."""
     if kind.anion is None or kind.acid_pka is None:
         return None
     row = nucleophile_by_structure(group.species.smiles)
     acid_pka = kind.acid_pka if row is None or row.pka_acid is None else row.pka_acid
     best: float | None = None
     for base in flask.attackers:
-        if base.base is None or not base.is_usual_atom or base.pka < 7.0:
+        if not base.is_usual_atom or base.pka < 7.0:
             continue
         share = min(0.0, base.pka - acid_pka + log10(max(base.molar, 1e-6)))
         best = share if best is None else max(best, share)
@@ -349,7 +352,7 @@ def _outcomes(departure: Departure, group: Nucleophile, flask: Flask, parameters
         course = Course.NOT_APPLICABLE
         if is_specified:
             mirrored = any(o.product in {p.mirror_image for p in kept} and o.product not in kept for o in openings)
-            racemic = group.kind in _CARBON_BRIDGE and mirrored
+            racemic = group.kind in _BRIDGES and mirrored
             course = Course.RACEMISATION if racemic else Course.RETENTION
         elif not opening.at_alpha and opening.is_specified:
             course = Course.INVERSION
@@ -374,7 +377,7 @@ def _is_transient(ring: Structure, centre: AtomId) -> bool:
         small = site.leaving_ring_size == 3
         if site.leaving_group == "carboxylate" and not small:
             continue
-        if site.leaving_group == "trialkyloxonium" or small or site.leaving_group == "acyloxonium":
+        if small or site.leaving_group in {"trialkyloxonium", "acyloxonium"}:
             return True
     return False
 
@@ -394,7 +397,7 @@ def _openings(ring: Structure, centre: AtomId, flask: Flask, parameters: Paramet
             if weight < 0.02 * total:
                 continue
             reversible = attacker.kind.name in _HALIDES or site.leaving_group == "halonium"
-            log = _opening_log(ring, site, attacker, parameters, reversible=reversible)
+            log = _opening_log(site, attacker, parameters, reversible=reversible)
             edit = substitute(ring, site, attacker.nucleophile)
             yield _Opening(
                 edit.product,
@@ -404,9 +407,7 @@ def _openings(ring: Structure, centre: AtomId, flask: Flask, parameters: Paramet
             )
 
 
-def _opening_log(
-    ring: Structure, site: ReactiveSite, attacker: Attacker, parameters: Parameters, *, reversible: bool
-) -> float:
+def _opening_log(site: ReactiveSite, attacker: Attacker, parameters: Parameters, *, reversible: bool) -> float:
     degree = (site.degree or Degree.TERTIARY).value
     charged = site.leaving_group in {"phenonium", "halonium", "episulfonium"}
     if reversible or (attacker.is_solvent and charged) or site.leaving_group in {"phenonium", "halonium"}:

@@ -1,5 +1,6 @@
-"""Bimolecular substitution: SN2 at the carbon that bears the leaving group, and SN2' at the far end of a double bond."""
+"""Bimolecular substitution: SN2 at the carbon that bears the leaving group, SN2' at the far end of a double bond."""
 
+import math
 from collections.abc import Iterator
 from functools import lru_cache, partial
 
@@ -17,6 +18,7 @@ from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
 from builder.mechanism.skeleton import LARGE_RING
+from builder.mechanism.solvents import SolventKind
 from builder.records.vocabulary import Course, Mechanism
 
 __all__ = ["ambident_terms", "nucleophile_terms", "sn2_pathways", "substitution_course"]
@@ -43,7 +45,7 @@ def sn2_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> 
         if open_sn2 and not _is_cation_like_epoxide(departure):
             yield _sn2(departure, attacker, flask, parameters, features)
         if open_prime and attacker.is_usual_atom:
-            yield from _sn2_prime(departure, attacker, flask, parameters, features)
+            yield from _sn2_prime(departure, attacker, flask, parameters)
 
 
 def _collapses_by_itself(departure: Departure, flask: Flask) -> bool:
@@ -78,7 +80,8 @@ def _sn2(
     if flask.has_silver and departure.family == "halide":
         terms.append(parameters.term("sn2.metal.silver"))
     site = departure.site
-    if departure.group in {"epoxide", "activated aziridine", "aziridine"} and not flask.medium.is_protic:
+    brings_metal = attacker.kind.name in {"hydride", "organometallic"}
+    if departure.group in {"epoxide", "aziridine"} and not flask.medium.is_protic and not brings_metal:
         terms.append(parameters.term("sn2.leave.ring.aprotic"))
     if departure.site.in_strained_ring and 6 in site.ring_sizes:
         diaxial = opens_diaxially(departure.structure, site, attacker)
@@ -111,8 +114,6 @@ def rate_of(
 @lru_cache(maxsize=256)
 def log10(value: float) -> float:
     """Return the logarithm to base ten of a positive number."""
-    import math
-
     return math.log10(value)
 
 
@@ -121,7 +122,8 @@ def _sn2_outcomes(
 ) -> tuple[Outcome, ...]:
     edit = substitute(structure, site, attacker.nucleophile)
     course = substitution_course(site, edit.effect)
-    product, path = edit.product, ("substitution",)
+    product = edit.product
+    path: tuple[str, ...] = ("substitution",)
     if attacker.kind.name == "phosphite" and halide is not None:
         product, path = dealkylated_phosphonium(product, parse_smiles(halide)), ("substitution", "Arbuzov dealkylation")
     return (Outcome(product, 1.0, course, False, path),)
@@ -161,11 +163,24 @@ def site_features(structure: Structure, site: ReactiveSite) -> tuple[tuple[str, 
         if branches > 0:
             found.append((f"sn2.beta.{branches}", 1.0))
         around = {structure.atoms[n].symbol for n, _ in structure.atoms[beta.atom].neighbours if n != site.leaving_atom}
+        if any(_activating_name(structure, n, beta.atom) == "ketone" for n, _ in structure.atoms[beta.atom].neighbours):
+            found.append(("sn2.beta.ketone", 1.0))
         if around & {"F", "Cl", "Br", "I"}:
             found.append(("sn2.beta.halogen", 1.0))
         elif "O" in around:
             found.append(("sn2.beta.oxygen", 1.0))
     return tuple(found)
+
+
+@lru_cache(maxsize=2048)
+def beta_acceptors(structure: Structure, site: ReactiveSite) -> int:
+    """Return how many saturated beta carbons bear an electronegative atom, the leaving one left out."""
+    atoms = structure.atoms
+    found = 0
+    for beta in site.beta:
+        around = {atoms[n].symbol for n, _ in atoms[beta.atom].neighbours if n != site.leaving_atom}
+        found += beta.hybridisation == "sp3" and not around.isdisjoint({"O", "N", "F", "Cl", "Br", "I"})
+    return found
 
 
 def _activating(structure: Structure, site: ReactiveSite) -> Iterator[str]:
@@ -232,11 +247,10 @@ def nucleophile_terms(attacker: Attacker, flask: Flask, parameters: Parameters) 
         return
     given_up = methanol.alpha - hydrogen_bonding(flask, parameters)
     yield parameters.term("sn2.transfer.anion", attacker.kind.desolvation * given_up)
-    if not medium.is_protic:
-        for solvent, share in medium.parts:
-            key = f"sn2.transfer.solvent.{solvent.name}"
-            if key in parameters:
-                yield parameters.term(key, share)
+    for solvent, share in medium.parts:
+        key = f"sn2.transfer.solvent.{solvent.name}"
+        if key in parameters and (solvent.kind is SolventKind.PROTIC or not medium.is_protic):
+            yield parameters.term(key, share)
     if medium.is_apolar:
         yield parameters.term("sn2.transfer.apolar")
     if attacker.is_sparingly_soluble:
@@ -249,7 +263,7 @@ def hydrogen_bonding(flask: Flask, parameters: Parameters) -> float:
     Interpolated with the share of protic solvents to the power of `sn2.transfer.preference`; an approximation.
     """
     medium = flask.medium
-    if flask.is_brønsted_acid:  # the acid itself holds the anion
+    if flask.is_bronsted_acid:  # the acid itself holds the anion
         return max(medium.polarity.alpha, polarity_of("methanol").alpha)
     protic = [(s, share) for s, share in medium.parts if s.kind.value == "protic"]
     share = sum(part for _, part in protic)
@@ -313,6 +327,11 @@ def _borderline_terms(departure: Departure, attacker: Attacker, flask: Flask, pa
     if key not in parameters or site.in_strained_ring:
         return
     yield parameters.term(key)
+    if attacker.nucleophile.kind == "carboxylic acid" and degree == "secondary":
+        yield parameters.term("sn2.borderline.carboxylic acid")
+    acceptors = beta_acceptors(departure.structure, site)
+    if acceptors:
+        yield parameters.term("sn2.borderline.acceptor", acceptors)
     if f"{key}.power" in parameters:
         yield parameters.term(f"{key}.power", max(0.0, flask.medium.power().value - _POWER_ZERO))
 
@@ -344,7 +363,6 @@ def _sn2_prime(
     attacker: Attacker,
     flask: Flask,
     parameters: Parameters,
-    features: tuple[tuple[str, float], ...],
 ) -> Iterator[Pathway]:
     structure, site = departure.structure, departure.site
     far = _far_end(structure, site)
@@ -404,7 +422,7 @@ def _far_end(structure: Structure, site: ReactiveSite) -> AtomId | None:
 
 
 def _has_acceptor_on_near_end(structure: Structure, site: ReactiveSite) -> bool:
-    """Say whether the double bond is that of an acrylate or the like, so that attack at its far end is conjugate addition."""
+    """Say whether the double bond is that of an acrylate or the like, so that attack at its far end is conjugate."""
     atoms = structure.atoms
     return any(
         _activating_name(structure, n, near) in _ACCEPTORS
