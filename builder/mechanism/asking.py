@@ -17,6 +17,7 @@ from builder.mechanism.question import CONCENTRATION_M, EQUIVALENTS, TIME_S, Ing
 from builder.mechanism.reagents import Dose, Reagent, Role, find_reagent, nearest_reagents, reagent_by_structure
 from builder.mechanism.solvents import Solvent, find_solvent, nearest_solvents
 from builder.records.quantities import Dimension, QuantityError, parse_quantity, parse_temperature
+from builder.records.vocabulary import Mechanism
 
 __all__ = [
     "INTERNAL",
@@ -24,9 +25,11 @@ __all__ = [
     "AskingError",
     "Read",
     "Reading",
+    "Wish",
     "question_from_line",
     "question_from_words",
     "read_question",
+    "read_wish",
 ]
 
 INTERNAL = "none (internal nucleophile)"
@@ -165,6 +168,38 @@ def _name_and_fraction(text: str) -> tuple[str, float | None]:
 
 
 _FRACTION = re.compile(r"(?P<name>.*\S)\s*:\s*(?P<number>[+-]?\d+(?:\.\d*)?|[+-]?\.\d+)\s*(?P<percent>%?)\s*")
+
+
+@dataclass(frozen=True, slots=True)
+class Wish:
+    """What somebody wants of a reaction: a product or a mechanism, and the share it is to have, above 0 and up to 1."""
+
+    product: Structure | None
+    mechanism: Mechanism | None
+    share: float
+
+
+USUAL_SHARE = 0.9
+
+
+def read_wish(text: str) -> Wish:
+    """Return the wish that "E2", "E2:0.95" or "CCC=C:80%" stands for.
+
+    Raises AskingError for what is neither mechanism nor SMILES, and for a share that is none.
+    """
+    what, fraction = _name_and_fraction(text)
+    share = USUAL_SHARE if fraction is None else fraction
+    if not 0 < share <= 1:
+        raise AskingError(f"a share of {share:g} is not above 0 and up to 1", "write one like E2:0.9")
+    by_name = {mechanism.value.lower(): mechanism for mechanism in Mechanism if mechanism is not Mechanism.NONE}
+    mechanism = by_name.get(what.strip().lower())
+    if mechanism is not None:
+        return Wish(None, mechanism, share)
+    try:
+        return Wish(parse_smiles(what.strip()), None, share)
+    except StructureError as fault:
+        mend = f"give the SMILES of the product, or one of {', '.join(m.value for m in by_name.values())}"
+        raise AskingError(f"{_shown(what)} is no mechanism and no structure", mend) from fault
 
 
 def question_from_line(line: Mapping[str, Any]) -> Read:

@@ -7,7 +7,7 @@ from typing import TypeVar
 
 import click
 
-__all__ = ["counted", "watched"]
+__all__ = ["counted", "stepped", "watched"]
 
 T = TypeVar("T")
 
@@ -25,3 +25,15 @@ def counted(label: str, length: int) -> Iterator[Callable[[int], None]]:
         length=length, label=label, file=sys.stderr, hidden=not sys.stderr.isatty(), show_pos=False
     ) as bar:
         yield bar.update
+
+
+@contextmanager
+def stepped(label: str) -> Iterator[Callable[[int, int], None]]:
+    """Give a function to call with (steps done, steps in all), with a bar on the terminal."""
+    with click.progressbar(length=1, label=label, file=sys.stderr, hidden=not sys.stderr.isatty()) as bar:
+
+        def told(done: int, in_all: int) -> None:
+            bar.length = in_all
+            bar.update(done - bar.pos)
+
+        yield told
