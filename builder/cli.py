@@ -10,20 +10,33 @@ import re
 import sys
 from collections.abc import Iterable, Sequence
 from difflib import get_close_matches
+from importlib.resources import files
 from pathlib import Path
-from typing import NoReturn
+from typing import Any, NoReturn
 
 import click
 
 from builder.authoring.new import write_new_record
 from builder.authoring.schema import schemas, write_schemas
+from builder.authoring.whole_file import written_whole
 from builder.book import Book, open_book
+from builder.checks.forecast_cautions import forecast_cautions
 from builder.checks.register import all_rules
 from builder.checks.report import render_json, render_rule, render_text, summary
 from builder.chemistry.structure import StructureError
 from builder.finding import Finding, Level
+from builder.mechanism.answer import answer_of, change_of, how_read
+from builder.mechanism.asking import AskingError, question_from_words, read_wish
+from builder.mechanism.batch import answers, lines_of, usual_processes
+from builder.mechanism.calibration import calibrate as calibration_of
+from builder.mechanism.engine import predict as forecast_of
+from builder.mechanism.fit_report import RESIDUALS_TABLE, fit_report, fitted_table, residuals_table
+from builder.mechanism.improve import Improvement, improvements
+from builder.mechanism.question import Question
+from builder.mechanism.rate_terms import FITTED_TABLE
 from builder.publish.build import NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
-from builder.publish.progress import watched
+from builder.publish.forecast_text import render_forecast
+from builder.publish.progress import counted, stepped, watched
 from builder.records.settings import SETTINGS_FILE
 
 __all__ = ["main"]
@@ -205,6 +218,127 @@ def rule(rule_id: str | None, as_json: bool) -> None:
     if rule_id not in rules:
         raise click.UsageError(f'no rule is called "{rule_id}"{_near(rule_id, rules)}')
     click.echo(render_rule(rules[rule_id], as_json=as_json))
+
+
+@handbook.command()
+@click.option("--substrate", help="SMILES of the substrate.")
+@click.option("--nucleophile", help='Name or SMILES; "none (internal nucleophile)" where the substrate has its own.')
+@click.option("--base", help="Name or SMILES of an added base.")
+@click.option(
+    "--additive", "additives", multiple=True, help='Acid, activator, silver salt, ...: "HBr (48% aq)". Repeat it.'
+)
+@click.option("--solvent", multiple=True, metavar="NAME[:FRACTION]", help='By volume, or "neat". Repeat it.')
+@click.option("--temperature", help='With its unit: "25 °C".')
+@click.option("--concentration", help='Of the substrate.  [default: "0.5 mol/L"]')
+@click.option("--equivalents", type=float, help="Of nucleophile and base.  [default: 1.5]")
+@click.option("--time", help='How long it is run.  [default: "24 h"]')
+@click.option(
+    "--want", metavar="SMILES|MECHANISM[:SHARE]", help="Say what would bring this about, to 0.9 or the share."
+)
+@_JSON
+@click.option(
+    "--batch",
+    type=click.Path(exists=True, dir_okay=False, path_type=Path),
+    help="A file with one question as JSON in each line.",
+)
+@click.option("--output", type=click.Path(dir_okay=False, path_type=Path), help="Where the answers to a batch go.")
+@click.option("--processes", type=click.IntRange(min=1), help="For a batch.  [default: one for each processor]")
+def predict(
+    *, want: str | None, as_json: bool, batch: Path | None, output: Path | None, processes: int | None, **words: Any
+) -> None:
+    """Forecast mechanism, products and rate of a reaction, or of each line of a batch.
+
+    Keys of a batch line: id, substrate, nucleophile, nucleophile_smiles, base, additives, solvent as [[name, fraction],
+    ...], temperature_C, and if wanted concentration (mol/L), equivalents, time_h. A bad line gives {"id", "error"}, the
+    others go on, and the command ends with 1.
+
+    \b
+    Example:
+      handbook predict --substrate 'CCC(C)Br' --nucleophile 'sodium azide' --solvent DMF --temperature '25 °C'
+      handbook predict --substrate 'CC(C)(C)Cl' --solvent ethanol:0.8 --solvent water:0.2 --temperature '25 °C'
+      handbook predict --substrate 'CCC(C)Br' --nucleophile NaOEt --solvent ethanol --temperature '55 °C' --want E2:0.95
+      handbook predict --batch cases.jsonl --output results.jsonl
+    """
+    stated = [name for name, value in {**words, "want": want}.items() if value not in (None, ())]
+    if batch is not None:
+        if stated:
+            raise click.UsageError(f"--{stated[0]} belongs to a single question, not to --batch")
+        if output is None:
+            raise click.UsageError("--batch needs --output, the file for the answers")
+        _predict_batch(batch, output, processes or usual_processes())
+        return
+    if output is not None or processes is not None:
+        raise click.UsageError("--output and --processes go with --batch")
+    if missing := [name for name in ("substrate", "solvent", "temperature") if not words[name]]:
+        raise click.UsageError(f"--{missing[0]} is missing, or give --batch")
+    try:
+        read = question_from_words(**words)
+        changes = None if want is None else _changes(read.question, want)
+    except AskingError as error:
+        raise click.UsageError(str(error)) from error
+    forecast = forecast_of(read.question)
+    cautions = forecast_cautions(read.question, forecast)
+    if not as_json:
+        click.echo(render_forecast(read, forecast, cautions, changes), nl=False)
+        return
+    plain = {**answer_of(forecast, cautions), **how_read(read)}
+    if changes is not None:
+        plain["changes"] = [change_of(change) for change in changes]
+    click.echo(json.dumps(plain, ensure_ascii=False, indent=2, allow_nan=False))
+
+
+def _changes(question: Question, want: str) -> tuple[Improvement, ...]:
+    wanted = read_wish(want)
+    return improvements(question, product=wanted.product, mechanism=wanted.mechanism, share=wanted.share)
+
+
+def _predict_batch(batch: Path, output: Path, processes: int) -> None:
+    if output.resolve() == batch.resolve():
+        raise click.UsageError("--output is the batch itself; give another file")
+    done = bad = 0
+    with (
+        batch.open("rb") as questions,
+        written_whole(output) as results,
+        counted("forecasting", batch.stat().st_size) as advance,
+    ):
+        for answer in answers(lines_of(questions), processes, forecast_cautions):
+            results.write(f"{answer.text}\n")
+            done, bad = done + 1, bad + answer.is_error
+            advance(answer.size)
+    click.echo(f"{done} line{'' if done == 1 else 's'} answered in {output}, {bad} of them with an error", err=True)
+    if bad:
+        sys.exit(FINDINGS)
+
+
+@handbook.command()
+@click.option("--write", is_flag=True, help="Write the fitted terms and the residuals into the package.")
+@click.option("--report", type=click.Path(dir_okay=False, path_type=Path), help="Write the table of residuals here.")
+def calibrate(write: bool, report: Path | None) -> None:
+    """Fit the terms of the rate model to the tables of observations, and say how good the fit is.
+
+    It takes some minutes. Without --write nothing in the package changes.
+
+    \b
+    Example:
+      handbook calibrate --report residuals.tsv
+      handbook calibrate --write
+    """
+    folder = Path(str(files("builder.mechanism")))
+    if write and not os.access(folder, os.W_OK):
+        raise click.UsageError(f"{folder} cannot be written: --write needs a checkout of the sources")
+    with stepped("fitting") as told:
+        found = calibration_of(told)
+    texts = (
+        {folder / FITTED_TABLE: fitted_table(found), folder / RESIDUALS_TABLE: residuals_table(found)} if write else {}
+    )
+    if report is not None:
+        texts[report] = residuals_table(found)
+    for path, text in texts.items():
+        with written_whole(path) as file:
+            file.write(text)
+    click.echo(fit_report(found), nl=False)
+    for path in texts:
+        click.echo(f"wrote {path}", err=True)
 
 
 def _open(book: Path) -> Book:

@@ -26,7 +26,7 @@ RESIDUALS_TABLE = "fit_residuals.tsv"
 _FITTED_COLUMNS = ("key", "value", "error", "rows")
 _RESIDUAL_COLUMNS = ("id", "kind", "observed", "fitted", "leave_one_out", "error", "is_supported", "is_inside")
 MOST_MOVED = 10
-_FITTED_HEADER = f"""\
+_FITTED_HEADER = """\
 # quantity: terms of the log-rate model as the observations make them; those no observation bears on stand in
 #   rate_terms.tsv only
 # unit: as in rate_terms.tsv, mostly log10 of a rate constant; error is one standard error; rows: observations that bear
@@ -38,8 +38,8 @@ _RESIDUALS_HEADER = """\
 # quantity: every observation beside the fit of all, and beside a fit without it
 # unit: log10 of a rate constant or of a ratio for rates, logit (base e) for shares; leave_one_out: observed less
 #   predicted without the row; error: one standard error of that difference
-# is_supported: yes where at least two rows bear on every term the row rests on. is_inside: yes where the row lies within
-#   the 90 % interval of the prediction made without it
+# is_supported: yes where at least two rows bear on every term the row rests on
+# is_inside: yes where the row lies within the 90 % interval of the prediction made without it
 # made: by `handbook calibrate --write`, with rate_terms_fitted.tsv; not to be edited by hand
 # range: ids are those of rates.tsv and shares.tsv; rows the engine has no pathway for are left out
 """
