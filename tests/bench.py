@@ -28,6 +28,7 @@ from outcomes import CaseSet, answer_to, load_cases
 from rdkit import Chem
 
 from builder.book import Book, examine, open_book
+from builder.checks.case import forecast_for
 from builder.checks.cautions import find_hazards
 from builder.mechanism.batch import Answer, answers, lines_of
 from builder.mechanism.products import search_routes
@@ -59,6 +60,7 @@ def _cpu_ms(work: Callable[[], object], entries: int, forget: Callable[[], None]
 def _forget() -> None:
     search_routes.cache_clear()
     find_hazards.cache_clear()
+    forecast_for.cache_clear()
 
 
 def _verdict(words: str, *, is_met: bool) -> str:

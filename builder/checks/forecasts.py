@@ -24,7 +24,7 @@ from builder.records.specimen import TWO_PRODUCTS, outcome_example
 from builder.records.vocabulary import Course, Mechanism, Result, YieldKind
 from builder.rule import Fault, Path, rule
 
-__all__ = ["FORECAST_CHECKS", "Bounds", "share_bounds"]
+__all__ = ["FORECAST_CHECKS", "Bounds", "is_same_product", "share_bounds"]
 
 PARTITION_ODDS = 5.0
 """Factor in the odds of its products by which the division of one mechanism among them may be off; estimated here."""
@@ -44,10 +44,8 @@ _COMES_FROM = (
 _READ = (*AGREEMENT_READS, *_COMES_FROM, "mechanism-contrary")
 _MEASURED = (
     *_READ,
-    "claim-against-product",
-    "product-not-reachable",
-    "product-not-forecast",
-    "conversion-above-forecast",
+    *("claim-against-product", "product-not-reachable", "product-not-forecast", "conversion-above-forecast"),
+    *("yield-above-100", "yield-above-conversion", "yield-mass-disagrees"),
 )
 
 
@@ -106,7 +104,7 @@ def _is_isomer(drawn: Structure, forecasted: Structure) -> bool:
     return any(form.flat_smiles == flat for form in _forms(drawn))
 
 
-def _is_same(drawn: Structure, forecasted: Structure) -> bool:
+def is_same_product(drawn: Structure, forecasted: Structure) -> bool:
     """Say whether two structures agree, mirror images taken as one and what is not drawn as standing for all."""
     other = neutral_form(forecasted)
     return any(_agree(form, other) for form in _forms(drawn))
@@ -226,7 +224,7 @@ def course_is_not_forecast(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=course_path(case, path),
                 message=f"the record gives {course}; the engine expects {main.course} by {main.mechanism}"
-                f" ({_text(bounds)} of what reacts)",
+                f" for {_text(bounds)} of what reacts",
                 mend=_mend("course-not-forecast"),
             )
 
@@ -420,7 +418,7 @@ def _yields_above(case: Case, rule_id: str, *, wanted: bool) -> Iterator[Fault]:
             yield Fault(
                 at=("outcome", "measured", index, "yield"),
                 message=f"the record gives {line.yield_} of {'+'.join(line.of or ())}; the engine expects"
-                f" {_text(bounds)} of what reacts, and {_conversion(forecast)}",
+                f" {f'{_text(bounds)} of what reacts, and ' if forecast.products else ''}{_conversion(forecast)}",
                 mend=_mend(rule_id),
                 data={"at_most_percent": round(most, 1)},
             )
@@ -445,7 +443,9 @@ def _bounds_of(case: Case, forecast: Forecast, paths: Iterable[Path]) -> Bounds:
     drawn = {path: case.structures[path] for path in paths}
     routes = routes_by_product(case)
     may_give = {mechanism for path in drawn for route in routes[path] for mechanism in _BY_EVENT[route.events[-1]]}
-    return share_bounds(forecast, lambda each: any(_is_same(one, each.structure) for one in drawn.values()), may_give)
+    return share_bounds(
+        forecast, lambda each: any(is_same_product(one, each.structure) for one in drawn.values()), may_give
+    )
 
 
 _SUBSTITUTIONS = (Mechanism.SN1, Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.NGP)

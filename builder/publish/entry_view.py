@@ -15,6 +15,7 @@ from builder.book import Book, Entry, Verdict
 from builder.checks.case import compounds_of
 from builder.finding import Finding, Level
 from builder.publish.charges import AmountView, StageView, amounts_note, view_amounts, view_stages
+from builder.publish.expected import expected_facts, why_nothing_is_expected
 from builder.publish.figures import formula_parts, joined, molar_mass_text
 from builder.publish.measured import MeasuredLine, measured_lines, rate_constant_text
 from builder.publish.schemes import entry_scheme
@@ -132,6 +133,8 @@ class EntryView:
     strip: tuple[Fact, ...]
     claim: tuple[Fact, ...]
     standing: str
+    expected: tuple[Fact, ...]
+    nothing_expected: str
     failure: tuple[Fact, ...]
     sought: str
     products: tuple[ProductView, ...]
@@ -197,6 +200,8 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         strip=conditions_strip(entry),
         claim=_claim(record),
         standing=_STANDING[entry.verdict],
+        expected=expected_facts(entry.case),
+        nothing_expected=why_nothing_is_expected(entry.case),
         failure=_failure(record),
         sought=record.outcome.sought.name if record.outcome.sought else "",
         products=tuple(

@@ -9,6 +9,7 @@ from builder.records.quantities import Quantity
 __all__ = [
     "amount_text",
     "concentration_text",
+    "duration_text",
     "equivalents_text",
     "formula_parts",
     "joined",
@@ -22,6 +23,8 @@ __all__ = [
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _POWER = re.compile(r"^(?P<mantissa>[^e ]+)e(?P<exponent>-?\d+)")
 _FORMULA = re.compile(r"(?P<atoms>(?:[A-Z][a-z]?\d*)+)(?P<charge>[+-]\d*)?")
+_YEAR_S = 3.156e7
+_SECONDS = {"years": _YEAR_S, "d": 86400.0, "h": 3600.0, "min": 60.0, "s": 1.0}
 _RATE_UNITS = {
     "1/s": "s⁻¹",
     "1/min": "min⁻¹",
@@ -82,6 +85,21 @@ def concentration_text(mol_per_l: float) -> str:
 def equivalents_text(equivalents: float) -> str:
     """Return derived equivalents with two decimals, three digits below 0.1."""
     return f"{equivalents:.2f}" if equivalents >= 0.1 else significant(equivalents)
+
+
+def duration_text(seconds: float) -> str:
+    """Return a derived duration with two digits, in s, min, h, d or years.
+
+    >>> duration_text(0.2), duration_text(5400), duration_text(3e9)
+    ('< 1 s', '1.5 h', '95 years')
+    """
+    if seconds < 1:
+        return "< 1 s"
+    steps = ((1e4 * _YEAR_S, ""), (_YEAR_S, "years"), (2 * 86400.0, "d"), (5400.0, "h"), (120.0, "min"), (0.0, "s"))
+    unit = next(unit for least, unit in steps if seconds >= least)
+    if not unit:
+        return "> 10000 years"
+    return f"{significant(seconds / _SECONDS[unit], 2)} {unit}"
 
 
 def molar_mass_text(g_per_mol: float) -> str:

@@ -25,14 +25,16 @@ GOLDEN_PAGES = {
     "rule-gate.html": "rules/sn1-closed-methyl/",
 }
 _DRAWING = re.compile(r'<svg [^>]*class="hb-drawing.*?</svg>', re.DOTALL)
+_FORECAST = re.compile(r'(<h3 id="forecast">(?:(?!<h3).)*?<dl[^>]*>).*?(</dl>)', re.DOTALL)
 
 
 @pytest.mark.parametrize("name", GOLDEN_PAGES)
 def test_pages_are_as_they_were_read_last(
     name: str, pages: dict[str, Page], golden: Callable[[str, str], None]
 ) -> None:
-    # Drawings have golden files of their own.
-    golden(f"pages/{name}", _DRAWING.sub("<svg>drawing</svg>", pages[GOLDEN_PAGES[name]].body))
+    # Drawings have golden files of their own, and the numbers of a forecast move with each calibration.
+    body = _DRAWING.sub("<svg>drawing</svg>", pages[GOLDEN_PAGES[name]].body)
+    golden(f"pages/{name}", _FORECAST.sub(r"\1forecast\2", body))
 
 
 def test_html_is_sound(markup: dict[str, Markup]) -> None:
