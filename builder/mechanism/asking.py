@@ -4,7 +4,6 @@ import math
 import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from textwrap import shorten
 from typing import Any, NamedTuple
 
 from builder.chemistry.structure import Structure, StructureError, parse_smiles
@@ -260,7 +259,11 @@ _BEYOND = 1e30
 
 def _shown(value: object) -> str:
     """Return a value as it is quoted in a message, not longer than a name."""
-    return shorten(repr(value), 60, placeholder=" ...")
+    text = repr(value)
+    return text if len(text) <= LONGEST_QUOTED else f"{text[: LONGEST_QUOTED - 1]}…"
+
+
+LONGEST_QUOTED = 60
 
 
 def _kelvin(temperature_c: float) -> float:

@@ -114,6 +114,13 @@ class Flask:
         return self.acidity is not None and not self.is_lewis and self.acidity <= MOST_ACIDITY
 
 
+LEVELLING = 1.2
+"""How much weaker, in pKa, a base may be than the anion of a solvent that still takes its place: log10 of 17 M."""
+_MAIN_SHARE = 0.6
+_LEVELLED = frozenset({BaseFamily.OXYGEN, BaseFamily.BULKY_ALKOXIDE, BaseFamily.AMIDE})
+_SOLVENT_ANIONS = {"O": "[OH-]", "CO": "C[O-]", "CCO": "CC[O-]", "CC(C)O": "CC(C)[O-]", "CC(C)(C)O": "CC(C)(C)[O-]"}
+UNCHARGED_PENALTY = 4.0
+"""How much a neutral base loses, in pKa, where two ions must be made of two molecules without a protic solvent."""
 MOST_ACIDITY = 1.5
 """Acidity up to which a Brønsted acid counts as strong: weaker ones help only what forms a very stable cation."""
 
@@ -195,7 +202,8 @@ def _charge(
     for base in bases:
         remaining = base.molar
         if base.is_usual_atom:
-            found, remaining = _deprotonated(found, base.pka, base.molar)
+            strength = base.pka - (0.0 if base.is_anion or medium.is_protic else UNCHARGED_PENALTY)
+            found, remaining = _deprotonated(found, strength, base.molar)
         left.append(replace(base, molar=remaining))
     merged = _merged([*found, *(b for b in left if b.name not in taken)])
     levelled = [_levelled(a, medium) for a in merged]
@@ -388,25 +396,37 @@ def _shared(acid: float, base: float, constant: float) -> float:
 
 
 def _levelled(attacker: Attacker, medium: Medium) -> Attacker:
-    """Return hydroxide in an alcohol as the alkoxide it becomes there; anything else as it is."""
-    if attacker.kind.name != "hydroxide":
+    """Return a strong base in water or an alcohol as the hydroxide or alkoxide it makes of it; any other as it is.
+
+    The solvent is there in tenfold excess or more, so a base up to LEVELLING weaker than its anion is levelled too.
+    """
+    if not attacker.is_anion or attacker.kind.base not in _LEVELLED:
         return attacker
     for solvent, share in medium.parts:
-        if share > 0.6 and solvent.smiles != "O":
-            for nucleophile in attacking_atoms(parse_smiles(solvent.smiles)):
-                if nucleophile.kind == "alcohol":
-                    kind = load_kinds()["alkoxide"]
-                    alkoxide = replace(_attacker(nucleophile, attacker.molar, attacker.pool), kind=kind)
-                    return replace(
-                        alkoxide,
-                        name=f"{attacker.name} as alkoxide of {solvent.name}",
-                        n=kind.n,
-                        n_error=kind.error,
-                        n_source=kind.source,
-                        pka=kind.pka,
-                        pka_dmso=kind.pka_dmso,
-                        is_anion=True,
-                    )
+        for nucleophile in attacking_atoms(parse_smiles(solvent.smiles)) if share > _MAIN_SHARE else ():
+            kind = load_kinds()[nucleophile.kind]
+            if nucleophile.kind not in {"water", "alcohol"} or kind.anion is None:
+                continue
+            acid = _row_of(solvent.smiles)
+            acid_pka = kind.acid_pka if acid is None or acid.pka_acid is None else acid.pka_acid
+            anion = load_kinds()[kind.anion]
+            conjugate = _SOLVENT_ANIONS.get(solvent.smiles)
+            row = None if conjugate is None else _row_of(conjugate)
+            same = row is not None and row.name == attacker.name
+            if acid_pka is None or same or attacker.pka < acid_pka - LEVELLING:
+                continue
+            made = _attacker(nucleophile, attacker.molar, attacker.pool)
+            return replace(
+                made,
+                kind=anion,
+                name=f"{attacker.name} as anion of {solvent.name}",
+                n=anion.n if row is None or row.n is None else row.n,
+                n_error=anion.error,
+                n_source=anion.source,
+                pka=acid_pka,
+                pka_dmso=acid_pka + anion.pka_dmso - anion.pka,
+                is_anion=True,
+            )
     return attacker
 
 

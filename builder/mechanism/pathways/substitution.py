@@ -27,7 +27,7 @@ _HARD_LEAVING_GROUP = 1.5
 """Second term of a leaving group from which it counts as hard for ambident nucleophiles."""
 _STRONGLY_SOLVATING = frozenset({"DMSO", "HMPA", "DMPU", "NMP", "DMF", "DMAc"})
 _PROTIC_ATTACK = frozenset({"water", "alcohol", "carboxylic acid", "phenol"})
-_ACCEPTORS = frozenset({"ketone", "nitrile", "ester", "amide"})
+_ACCEPTORS = frozenset({"ketone", "nitrile", "ester", "amide", "carboxylate"})
 _HALIDE_IONS = {"iodide": "[I-]", "bromide": "[Br-]", "chloride": "[Cl-]"}
 _POWER_ZERO = -2.0
 """Ionising power from which the borderline terms grow: about that of ethanol."""
