@@ -308,7 +308,7 @@ def ratio_is_against_the_forecast(case: Case) -> Iterator[Fault]:
     forecast = case.forecast
     if forecast is None or not forecast.products:
         return
-    paths = {case.record.outcome.products[int(path[-1])].label: path for path in _weighable(case)}
+    paths = {case.record.outcome.products[int(path[-1])].label: path for path in _weighable(case, forecast)}
     for index, line in enumerate(case.record.outcome.measured):
         if line.ratio is None or not all(label in paths for part in line.ratio.parts for label in part):
             continue
@@ -403,7 +403,7 @@ def _yields_above(case: Case, rule_id: str, *, wanted: bool) -> Iterator[Fault]:
     forecast = case.forecast
     if forecast is None:
         return
-    by_label = {case.record.outcome.products[int(path[-1])].label: path for path in _weighable(case)}
+    by_label = {case.record.outcome.products[int(path[-1])].label: path for path in _weighable(case, forecast)}
     for index, line in enumerate(case.record.outcome.measured):
         if not _is_a_yield(line) or not all(label in by_label for label in line.of or ()):
             continue
@@ -414,7 +414,8 @@ def _yields_above(case: Case, rule_id: str, *, wanted: bool) -> Iterator[Fault]:
         most = 100 * bounds.high * forecast.conversion_interval[1]
         seen = line.yield_.magnitude if line.yield_ is not None else 0.0
         spread = line.spread.magnitude if line.spread is not None else 0.0
-        if seen - max(MARGIN_PERCENT, spread) > max(most, 0.0 if wanted else 100 * OUT_OF_QUESTION):
+        is_little = not wanted and seen <= 100 * OUT_OF_QUESTION
+        if not is_little and seen - max(MARGIN_PERCENT, spread) > most:
             yield Fault(
                 at=("outcome", "measured", index, "yield"),
                 message=f"the record gives {line.yield_} of {'+'.join(line.of or ())}; the engine expects"
@@ -429,10 +430,13 @@ def _is_a_yield(line: Measurement) -> bool:
     return seen is not None and line.kind is not YieldKind.AREA and not seen.relation.startswith(("<", "≤"))
 
 
-def _weighable(case: Case) -> Iterator[Path]:
-    """Yield the paths of the products that the engine could have among its own."""
+def _weighable(case: Case, forecast: Forecast) -> Iterator[Path]:
+    """Yield the paths of the products that the engine has, or could have, among its own."""
     for path, routes in routes_by_product(case).items():
-        if path != SOUGHT and _is_in_reach(routes):
+        drawn = case.structures[path]
+        if path != SOUGHT and (
+            _is_in_reach(routes) or any(is_same_product(drawn, each.structure) for each in forecast.products)
+        ):
             yield path
 
 
@@ -465,12 +469,16 @@ _DISPLACEMENTS = frozenset(
 
 def _is_in_reach(routes: tuple[Route, ...]) -> bool:
     """Say whether a product forms in one displacement, elimination or addition and is not the group that leaves."""
-    return any(
-        sum(event in _DISPLACEMENTS for event in route.events) == 1
-        and _FURTHER_STEPS.isdisjoint(route.events)
-        and (route.arrives or route.effect is not StereoEffect.NOT_APPLICABLE or Event.IONISATION in route.events)
-        for route in routes
-    )
+    return any(map(_is_one_step, routes))
+
+
+def _is_one_step(route: Route) -> bool:
+    is_cationic = Event.IONISATION in route.events
+    steps = [event for event in route.events if event in _DISPLACEMENTS]
+    if is_cationic:  # the other end of an allyl cation is no further step
+        steps = [event for event in steps if event is not Event.TRANSPOSITION] or steps[:1]
+    is_product = is_cationic or bool(route.arrives) or route.effect is not StereoEffect.NOT_APPLICABLE
+    return len(steps) == 1 and _FURTHER_STEPS.isdisjoint(route.events) and is_product
 
 
 # --- words ----------------------------------------------------------------------------------------------------
