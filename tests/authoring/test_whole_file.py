@@ -1,0 +1,46 @@
+"""A file is written whole or not at all."""
+
+from pathlib import Path
+
+import pytest
+
+from builder.authoring.whole_file import written_whole
+
+
+def test_the_file_changes_at_the_end_only(tmp_path: Path) -> None:
+    path = tmp_path / "table.tsv"
+    path.write_text("old", "utf-8")
+    with written_whole(path) as file:
+        file.write("α\n")
+        file.flush()
+        assert path.read_text("utf-8") == "old"
+    assert path.read_bytes() == "α\n".encode()
+    assert list(tmp_path.iterdir()) == [path]
+
+
+@pytest.mark.parametrize("fault", [ValueError, KeyboardInterrupt])
+def test_what_fails_leaves_nothing_behind(tmp_path: Path, fault: type[BaseException]) -> None:
+    def write_half() -> None:
+        with written_whole(tmp_path / "table.tsv") as file:
+            file.write("half a ta")
+            raise fault
+
+    with pytest.raises(fault):
+        write_half()
+    assert list(tmp_path.iterdir()) == []
+
+
+def test_a_link_stays_a_link(tmp_path: Path) -> None:
+    target, link = tmp_path / "there.tsv", tmp_path / "here.tsv"
+    target.write_text("old", "utf-8")
+    link.symlink_to(target)
+    with written_whole(link) as file:
+        file.write("new")
+    assert link.is_symlink()
+    assert target.read_text("utf-8") == "new"
+
+
+def test_what_is_no_file_is_not_replaced(tmp_path: Path) -> None:
+    with pytest.raises(OSError, match="is not a file"), written_whole(tmp_path):
+        pass
+    assert tmp_path.is_dir()
