@@ -6,6 +6,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, NamedTuple
 
+from builder.chemistry.perception import attacking_atoms
 from builder.chemistry.structure import Structure, StructureError, parse_smiles
 from builder.mechanism.nucleophiles import (
     find_nucleophile_and_counter_ion,
@@ -93,8 +94,9 @@ def read_question(  # noqa: PLR0913 - a keyword for each thing a chemist states
     """
     structure = _structure(substrate, "substrate")
     readings = [Reading("substrate", substrate, structure.smiles)]
-    ingredient = _nucleophile(nucleophile, nucleophile_smiles, readings)
-    doses = _doses(additives, readings)
+    brought: list[Dose] = []
+    ingredient = _nucleophile(nucleophile, nucleophile_smiles, readings, brought)
+    doses = [*brought, *_doses(additives, readings)]
     added_base = None if base is None else _base(base, readings, doses)
     parts = _solvents(solvent, readings)
     question = Question(
@@ -295,7 +297,8 @@ def _structure(text: str, what: str) -> Structure:
         raise AskingError(f"{what} {_shown(text)}: {fault.reason}", fault.mend) from fault
 
 
-def _nucleophile(name: str | None, smiles: str | None, readings: list[Reading]) -> Ingredient | None:
+def _nucleophile(name: str | None, smiles: str | None, readings: list[Reading], doses: list[Dose]) -> Ingredient | None:
+    """Return the nucleophile; one that is an acid or activator joins the doses, and what it supplies attacks."""
     word = "" if name is None else name.strip().lower()
     if word in _INTERNAL_WORDS:
         readings.append(Reading("nucleophile", name or "", "a group of the substrate"))
@@ -305,7 +308,39 @@ def _nucleophile(name: str | None, smiles: str | None, readings: list[Reading]) 
         return None
     if name is None and smiles is None:
         return None
-    return _ingredient(name, smiles, readings, "nucleophile")
+    dose = _flask_maker(name, smiles)
+    if dose is None:
+        return _ingredient(name, smiles, readings, "nucleophile")
+    doses.append(dose)
+    reagent = dose.reagent
+    supplied = None if reagent.supplies is None else Ingredient(reagent.supplies, parse_smiles(reagent.supplies))
+    brings = "" if supplied is None else f", which brings {supplied.name}"
+    readings.append(Reading("nucleophile", name or smiles or "", f"{reagent.name} ({reagent.role}){brings}"))
+    return supplied
+
+
+_MAKES_THE_FLASK = frozenset({Role.BRONSTED_ACID, Role.LEWIS_ACID, Role.ACTIVATOR, Role.NITROSATION})
+
+
+def _flask_maker(name: str | None, smiles: str | None) -> Dose | None:
+    """Return the dose of a nucleophile such as "HBr (48% aq)" or SOCl2; None for one that attacks as it stands.
+
+    Carboxylic acids attack as they stand, and so does whatever the tables of nucleophiles and solvents know.
+    """
+    typed = name if smiles is None else None
+    if typed is not None and (find_nucleophile_and_counter_ion(typed) or find_solvent(typed)):
+        return None
+    dose = None if typed is None else find_reagent(typed)
+    if dose is None:
+        reagent = _reagent_by_smiles(smiles or typed or "")
+        dose = None if reagent is None else _undiluted(reagent)
+    if dose is None or dose.reagent.role not in _MAKES_THE_FLASK:
+        return None
+    drawn = dose.reagent.smiles
+    if drawn is not None and (nucleophile_by_structure(drawn) is not None or find_solvent("", drawn) is not None):
+        return None
+    is_acid = drawn is not None and any(a.kind == "carboxylic acid" for a in attacking_atoms(parse_smiles(drawn)))
+    return None if is_acid else dose
 
 
 def _ingredient(name: str | None, smiles: str | None, readings: list[Reading], what: str) -> Ingredient:
@@ -357,7 +392,7 @@ def _doses(additives: Iterable[str], readings: list[Reading]) -> list[Dose]:
             if reagent is None:
                 readings.append(Reading("additive", text, f"{_bystander(text)}, {WITHOUT_EFFECT}"))
                 continue
-            dose = Dose(reagent, None, is_aqueous=False, is_catalytic=False, is_concentrated=False)
+            dose = _undiluted(reagent)
         found.append(dose)
         readings.append(Reading("additive", text, f"{dose.reagent.name} ({dose.reagent.role})"))
     return found
@@ -383,6 +418,10 @@ def _bystander(text: str) -> str:
         raise AskingError(f"unknown additive {_shown(text)}", mend) from fault
     row = nucleophile_by_structure(structure.smiles)
     return f"SMILES {structure.smiles}" if row is None else row.name
+
+
+def _undiluted(reagent: Reagent) -> Dose:
+    return Dose(reagent, None, is_aqueous=False, is_catalytic=False, is_concentrated=False)
 
 
 def _reagent_by_smiles(text: str) -> Reagent | None:

@@ -175,6 +175,28 @@ def test_a_structure_beside_a_name_decides() -> None:
     assert read.question.nucleophile.structure.smiles == "CC[S-]"
 
 
+MAKES_THE_FLASK = [
+    # as typed, what attacks, what it does to the flask
+    ({"nucleophile": "HBr (48% aq)"}, "[Br-]", Role.BRONSTED_ACID),
+    ({"nucleophile": None, "nucleophile_smiles": "Br"}, "[Br-]", Role.BRONSTED_ACID),
+    ({"nucleophile": "conc. H2SO4"}, None, Role.BRONSTED_ACID),
+    ({"nucleophile": "SOCl2"}, "[Cl-]", Role.ACTIVATOR),
+    ({"nucleophile": "BBr3"}, "[Br-]", Role.LEWIS_ACID),
+    ({"nucleophile": "benzoic acid"}, "O=C(O)c1ccccc1", None),
+    ({"nucleophile": "acetic acid"}, "CC(=O)O", None),
+    ({"nucleophile": "triphenylphosphine"}, "c1ccc(P(c2ccccc2)c2ccccc2)cc1", None),
+]
+
+
+@pytest.mark.parametrize(("changed", "attacks", "role"), MAKES_THE_FLASK, ids=lambda value: str(value)[:45])
+def test_an_acid_named_as_nucleophile_makes_the_flask_acid(
+    changed: dict[str, Any], attacks: str | None, role: Role | None
+) -> None:
+    question = question_from_line({**LINE, **changed}).question
+    assert (question.nucleophile and question.nucleophile.structure.smiles) == attacks
+    assert [dose.reagent.role for dose in question.additives] == ([] if role is None else [role])
+
+
 def test_additives_are_read_by_name_strength_and_structure() -> None:
     read = question_from_line({**LINE, "additives": ["HBr (48% aq)", "OS(=O)(=O)O", "CCCCCC"]})
     first, second = read.question.additives
