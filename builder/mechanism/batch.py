@@ -19,6 +19,7 @@ from builder.mechanism.asking import AskingError, question_from_line
 from builder.mechanism.engine import predict
 from builder.mechanism.forecast import Forecast
 from builder.mechanism.question import Question
+from builder.mechanism.rate_terms import fitted_parameters
 
 __all__ = ["MAX_LINE_BYTES", "Answer", "Line", "answer_line", "answers", "lines_of", "usual_processes"]
 
@@ -71,7 +72,11 @@ def lines_of(file: BinaryIO) -> Iterator[Line]:
 
 
 def answers(lines: Iterable[Line], processes: int, cautions_of: CautionsOf) -> Iterator[Answer]:
-    """Yield the answer to every line, in order; the same whatever the number of processes."""
+    """Yield the answer to every line, in order; the same whatever the number of processes.
+
+    Raises ValueError, before any answer, where a table of the package is broken: that is no fault of a line.
+    """
+    fitted_parameters()
     chunks = _chunks(lines)
     first = list(islice(chunks, 2))
     if processes == 1 or len(first) < 2:
