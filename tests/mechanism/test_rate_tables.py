@@ -155,11 +155,11 @@ def test_every_family_of_bases_has_its_terms() -> None:
 
 
 def test_what_the_fit_changed_stays_near_what_it_started_from() -> None:
-    # Beyond four standard errors of the estimate the data and the table tell different stories.
+    # Beyond five standard errors of the estimate the data and the table tell different stories.
     fitted = fitted_parameters()
     for key, before in TERMS.items():
         after = fitted[key]
-        assert abs(after.value - before.value) <= 4 * before.error, key
+        assert abs(after.value - before.value) <= 5 * before.error, key
         assert after.error > 0
         assert after.rows >= 0
 
