@@ -28,7 +28,7 @@ def expected_facts(case: Case) -> tuple[Fact, ...]:
     facts = (
         Fact("Mechanism", joined(shares) or "none is open"),
         Fact("Main product", _main_product(case, forecast)),
-        Fact("Conversion", expected_text(forecast.conversion, forecast.conversion_interval), "in the stated time"),
+        Fact("Conversion", f"{expected_text(forecast.conversion, forecast.conversion_interval)} in the stated time"),
         Fact("Half-life", _half_life(forecast)),
     )
     return tuple(fact for fact in facts if fact.value)
