@@ -46,6 +46,7 @@ _MEASURED = (
     *_READ,
     *("claim-against-product", "product-not-reachable", "product-not-forecast", "conversion-above-forecast"),
     *("yield-above-100", "yield-above-conversion", "yield-mass-disagrees"),
+    *("course-contradicts-structure", "course-not-forecast", "stereo-contradicts-structure"),
 )
 
 
