@@ -149,8 +149,8 @@ def _one(smiles: str, *measured: str) -> str:
     level=Level.QUERY,
     source="estimated-here",
     needs=(*_READ, "claim-against-product", "product-not-reachable"),
-    fires_on=(_AT_60 + _one("C=CCC"),),
-    silent_on=(_AT_60 + _one("CCC(C)N=[N+]=[N-]"),),
+    fires_on=(_AT_60 + _BUTYL + _one("C=CCC"),),
+    silent_on=(_AT_60 + _BUTYL + _one("CCCCN=[N+]=[N-]"),),
 )
 def product_is_not_forecast(case: Case) -> Iterator[Fault]:
     """Each wanted product is among those the engine expects, however small its share.
