@@ -1,9 +1,9 @@
-"""What an ion formed in the flask becomes with what is there, configurations kept: Arbuzov and acyloxonium ions."""
+"""What an ion formed in the flask becomes, configurations kept: phosphonium of Arbuzov, acyloxonium, nitrilium."""
 
 from builder.chemistry.ledger import Workbench
 from builder.chemistry.structure import AtomId, Structure, parse_smiles
 
-__all__ = ["dealkylated_phosphonium", "hydrated_acyloxonium"]
+__all__ = ["dealkylated_phosphonium", "hydrated_acyloxonium", "hydrated_nitrilium"]
 
 
 def dealkylated_phosphonium(structure: Structure, halide: Structure) -> Structure:
@@ -66,3 +66,24 @@ def _opened(structure: Structure, carbon: AtomId, leaving: AtomId, oxygens: list
     bench.join(carbon, water)
     bench.set_order(carbon, water, 2)
     return next(piece.structure for piece in bench.settle() if carbon in piece.atoms)
+
+
+def hydrated_nitrilium(structure: Structure) -> Structure:
+    """Return the amide that water makes of a nitrilium ion, the last step of the Ritter reaction; others as they are."""
+    for nitrogen in structure.atoms:
+        if nitrogen.symbol != "N" or nitrogen.charge != 1:
+            continue
+        for carbon, order in nitrogen.neighbours:
+            if order != 3.0:
+                continue
+            bench = Workbench(structure, parse_smiles("O"))
+            water = bench.place(0, 1)
+            bench.set_order(nitrogen.id, carbon, 1)
+            bench.add_charge(nitrogen.id, -1)
+            bench.release_proton(water)
+            bench.take_hydrogen(water)
+            bench.give_hydrogen(nitrogen.id)
+            bench.join(carbon, water)
+            bench.set_order(carbon, water, 2)
+            return next(piece.structure for piece in bench.settle() if carbon in piece.atoms)
+    return structure

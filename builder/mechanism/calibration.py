@@ -146,8 +146,16 @@ def _answered(rows: Sequence[_Row], parameters: Parameters) -> tuple[list[_Row],
     return kept, silent
 
 
-SHARE_SCATTER = 0.45
-"""Standard error of a logit that the terms leave unexplained in a share."""
+SHARE_SCATTER = {ShareKind.ALKENE: 0.15, ShareKind.TRANS_CIS: 0.15}
+"""Standard error of a logit that the terms leave unexplained, for shares that only the site decides."""
+OTHER_SHARE_SCATTER = 0.4
+"""The same for shares that the flask decides too."""
+TYPICAL = 0.5
+"""Part of the scatter that a typical row has: the scatter itself is set by the poorest tenth, weights are not."""
+
+
+def _share_scatter(kind: str) -> float:
+    return SHARE_SCATTER.get(ShareKind(kind), OTHER_SHARE_SCATTER)
 
 
 class _Fit:
@@ -173,14 +181,15 @@ class _Fit:
                 elif not key.startswith(_MODEL):
                     foreign[i] += (slope * error) ** 2
         own = np.array([row.error for row in rows])
-        model = np.array([scatter[row.model] if row.model else SHARE_SCATTER for row in rows])
+        model = np.array([scatter[row.model] if row.model else _share_scatter(row.kind) for row in rows])
         self._noise = np.sqrt(own**2 + model**2 + foreign)
+        typical = np.sqrt(own**2 + (TYPICAL * model) ** 2 + foreign)
         self._measured = np.sqrt(own**2 + foreign)
         now = np.array([at.value(key) for key in keys])
         before = np.array([prior[key].value for key in keys])
         spread = np.array([prior[key].error for key in keys])
         residual = np.array([row.observed - s.value for row, s in zip(rows, seen, strict=True)])
-        weight = 1.0 / self._noise**2 * np.minimum(1.0, HUBER / np.maximum(1e-9, np.abs(residual) / self._noise))
+        weight = 1.0 / typical**2 * np.minimum(1.0, HUBER / np.maximum(1e-9, np.abs(residual) / typical))
         normal = self._slopes.T @ (weight[:, None] * self._slopes) + np.diag(1.0 / spread**2)
         self._covariance: NDArray[np.float64] = np.linalg.inv(normal)
         step = self._covariance @ (self._slopes.T @ (weight * residual) + (before - now) / spread**2)

@@ -413,6 +413,7 @@ class Station:
     energy: stability with the strain released since the first cation, log10 units.
     lowest: lowest energy on the way, itself and the first cation included.
     aptitude: migratory aptitude of the last shift. parent: place of the cation before it; -1 for the first.
+    released: what the strain let go since the first cation is worth, log10 units.
     """
 
     skeleton: Skeleton
@@ -422,6 +423,7 @@ class Station:
     path: tuple[Shift, ...]
     aptitude: float
     parent: int
+    released: float
     nature: Nature = field(repr=False)
 
 
@@ -434,7 +436,7 @@ def stations(
     """
     start_energy = _energy(structure, first, centre, parameters)
     strain = None
-    found = [Station(first, centre, start_energy, start_energy, (), 0.0, -1, nature_of(first, centre))]
+    found = [Station(first, centre, start_energy, start_energy, (), 0.0, -1, 0.0, nature_of(first, centre))]
     seen = {_identity(first, centre, first)}
     worst = parameters.value("cation.secondary") - 1.5
     frontier = [0]
@@ -451,9 +453,10 @@ def stations(
                 if _changes_rings(step, station.skeleton):
                     if strain is None:
                         strain = _strain(first)
-                    energy += parameters.value("cation.strain") * (strain - _strain(skeleton))
-                elif station.path:
-                    energy += _strain_so_far(structure, station, parameters)
+                    released = parameters.value("cation.strain") * (strain - _strain(skeleton))
+                else:
+                    released = station.released
+                energy += released
                 if energy < min(start_energy, worst) - 0.01 and energy < start_energy + worst:
                     continue
                 following.append(
@@ -465,16 +468,13 @@ def stations(
                         (*station.path, step),
                         _aptitude(step, station.skeleton, parameters),
                         place,
+                        released,
                         nature_of(skeleton, new_centre),
                     )
                 )
         frontier = list(range(len(found), len(found) + len(following)))
         found += following
     return found
-
-
-def _strain_so_far(structure: Structure, station: Station, parameters: Parameters) -> float:
-    return station.energy - _energy(structure, station.skeleton, station.centre, parameters)
 
 
 def _energy(structure: Structure, skeleton: Skeleton, centre: AtomId, parameters: Parameters) -> float:
@@ -525,7 +525,7 @@ def _steps(skeleton: Skeleton, centre: AtomId) -> Iterator[tuple[Shift, Skeleton
             continue
         if skeleton.is_aromatic(origin):
             continue
-        if skeleton.hydrogens[origin]:
+        if skeleton.hydrogens[origin] and is_bridgehead(skeleton, origin) is None:
             yield Shift(origin, None), skeleton.shifted(origin, centre, None), origin
         for moved in skeleton.neighbours(origin):
             if moved == centre:

@@ -32,6 +32,10 @@ SLOWEST_CONVERSION = 0.05
 """Conversion in the stated time below which the answer is `none`."""
 NEGLIGIBLE = 3e-3
 """Share of converted substrate below which a pathway's products are not built."""
+HALF_USED = 0.5
+"""Part of a reagent that a second step finds on average, where the first has used the other."""
+TOO_SLOW = 4.0
+"""log10 units below the fastest pathway at which an ionisation is not worth the search for its cation's shifts."""
 _NO_FLOW = 1e-9
 """Share of all flow below which a pathway is dropped before the kinetics."""
 Z90 = 1.6448536269514722
@@ -47,26 +51,41 @@ def predict(question: Question, parameters: Parameters | None = None) -> Forecas
     reason = _why_not_covered(structure, flask)
     if reason is not None:
         return _not_covered(reason)
-    pathways = list(open_pathways(structure, flask, terms, question.temperature_k))
+    pathways = list(open_pathways(structure, flask, terms, question.temperature_k, all_of_them=False))
     if not pathways:
         return _closed(structure, flask, terms)
     return _weighed(question, flask, pathways, terms)
 
 
 def open_pathways(
-    structure: Structure, flask: Flask, parameters: Parameters, temperature_k: float
+    structure: Structure, flask: Flask, parameters: Parameters, temperature_k: float, *, all_of_them: bool = True
 ) -> Iterator[Pathway]:
-    """Yield every pathway that no gate closes."""
-    for departure in departures(structure, flask, parameters):
-        if "acyl" in departure.site.classes:
-            continue
-        yield from sn2_pathways(departure, flask, parameters)
-        yield from e2_pathways(departure, flask, parameters)
-        yield from e1cb_pathways(departure, flask, parameters)
-        yield from ionisation_pathways(departure, flask, parameters, temperature_k)
-        yield from sni_pathways(departure, flask, parameters)
-        yield from participation_pathways(departure, flask, parameters)
-    yield from addition_pathways(structure, flask, parameters, temperature_k)
+    """Yield every pathway that no gate closes.
+
+    all_of_them: False leaves out ionisations that are too slow to matter beside what has been found at any site.
+    """
+    found: list[Pathway] = []
+    ways = [d for d in departures(structure, flask, parameters) if "acyl" not in d.site.classes]
+    for departure in ways:
+        found += sn2_pathways(departure, flask, parameters)
+        found += e2_pathways(departure, flask, parameters)
+        found += e1cb_pathways(departure, flask, parameters)
+        found += sni_pathways(departure, flask, parameters)
+        found += participation_pathways(departure, flask, parameters)
+    floor = None if all_of_them else _floor(found, flask, temperature_k)
+    for departure in ways:
+        found += ionisation_pathways(departure, flask, parameters, temperature_k, floor)
+    found += addition_pathways(structure, flask, parameters, temperature_k)
+    yield from found
+
+
+def _floor(pathways: Sequence[Pathway], flask: Flask, temperature_k: float) -> float | None:
+    """Return log10 of the flow, 1/s, below which a further pathway would not matter; None without any flow."""
+    flows = [
+        p.rate.log10_k(temperature_k) + math.log10(max(1e-30, flask.pools.get(p.pool, 0.0) if p.pool else 1.0))
+        for p in pathways
+    ]
+    return max(flows) - TOO_SLOW if flows else None
 
 
 # --- what is not covered, and what is closed ------------------------------------------------------------------
@@ -325,7 +344,7 @@ def _gone_on(
 ) -> Iterator[Forecasted]:
     """Yield a product and what it goes on to: as much as runs in the time and as reagent is left for."""
     rates = [
-        10 ** p.rate.log10_k(question.temperature_k) * (flask.pools.get(p.pool, 0.0) * 0.5 if p.pool else 1.0)
+        10 ** p.rate.log10_k(question.temperature_k) * (flask.pools.get(p.pool, 0.0) * HALF_USED if p.pool else 1.0)
         for p in steps
     ]
     total = math.fsum(rates)

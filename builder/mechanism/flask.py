@@ -121,6 +121,12 @@ _LEVELLED = frozenset({BaseFamily.OXYGEN, BaseFamily.BULKY_ALKOXIDE, BaseFamily.
 _SOLVENT_ANIONS = {"O": "[OH-]", "CO": "C[O-]", "CCO": "CC[O-]", "CC(C)O": "CC(C)[O-]", "CC(C)(C)O": "CC(C)(C)[O-]"}
 UNCHARGED_PENALTY = 4.0
 """How much a neutral base loses, in pKa, where two ions must be made of two molecules without a protic solvent."""
+NEUTRAL_PKA = 7.0
+"""pKa of the conjugate acid from which a species counts as a base that takes weakly acidic protons."""
+BASIC_PKA = 4.0
+"""The same for proton catchers such as pyridine."""
+ENOUGH_M = 0.1
+"""Concentration, mol/L, from which an ion beside a cation counts."""
 MOST_ACIDITY = 1.5
 """Acidity up to which a Brønsted acid counts as strong: weaker ones help only what forms a very stable cation."""
 
@@ -158,7 +164,8 @@ def fill_flask(question: Question, parameters: Parameters) -> Flask:
         nitrosates=Role.NITROSATION in roles,
         has_peroxide=Role.PEROXIDE in roles,
         activators=groups,
-        has_base=question.base is not None or any(a.base is not None and a.pka > 4.0 for a in (*charged, *solvents)),
+        has_base=question.base is not None
+        or any(a.base is not None and a.pka > BASIC_PKA for a in (*charged, *solvents)),
         spent=spent,
     )
 
@@ -294,6 +301,17 @@ def is_hindered(nucleophile: Nucleophile) -> bool:
     return False
 
 
+@lru_cache(maxsize=256)
+def has_long_branches(nucleophile: Nucleophile) -> bool:
+    """Say whether all branches beside the attacking atom are longer than methyl, as in 3-ethyl-3-pentoxide."""
+    atoms = nucleophile.species.atoms
+    for near, _ in atoms[nucleophile.atom].neighbours:
+        branches = [n for n, _ in atoms[near].neighbours if n != nucleophile.atom and atoms[n].symbol == "C"]
+        if len(branches) == 3:
+            return all(len(atoms[n].neighbours) >= 2 for n in branches)
+    return False
+
+
 def _from_dose(dose: Dose, molar: float, medium: Medium, *, helped: bool) -> list[Attacker]:
     """Return what a reagent listed as base brings."""
     if dose.reagent.role is not Role.BASE or dose.reagent.smiles is None:
@@ -314,6 +332,8 @@ def _supplied(dose: Dose, molar: float, parameters: Parameters) -> list[Attacker
     amount = molar
     if dose.mass_percent is not None:
         amount = max(molar, dose.mass_percent * parameters.value("acid.molarity"))
+    if dose.reagent.role is Role.SILVER:
+        amount = parameters.value("flask.silver oxide")
     anion = parse_smiles(dose.reagent.supplies)
     return [_attacker(n, amount, n.species.smiles) for n in attacking_atoms(anion)]
 
@@ -374,7 +394,7 @@ def _shared_proton(acid: Attacker, base_pka: float, base_molar: float) -> tuple[
         acid,
         kind=kind,
         name=f"{acid.name}, deprotonated",
-        n=kind.n + 0.2 * (acid_pka - kind.pka) if abs(acid_pka - kind.pka) < 8 else kind.n,
+        n=kind.n,
         n_error=kind.error,
         n_source=kind.source,
         pka=acid_pka,
@@ -518,7 +538,8 @@ def _acid_pka(doses: Iterable[Dose], medium: Medium) -> float | None:
     for solvent, share in medium.parts:
         if share >= 0.2 and any(n.kind == "carboxylic acid" for n in attacking_atoms(parse_smiles(solvent.smiles))):
             row = _row_of(solvent.smiles)
-            found.append(4.76 if row is None or row.pka_acid is None else row.pka_acid)
+            if row is not None and row.pka_acid is not None:
+                found.append(row.pka_acid)
     return min(found, default=None)
 
 

@@ -28,7 +28,7 @@ __all__ = [
 
 _TABLE = "nucleophiles.tsv"
 _RANGES: Ranges = {
-    "n": (0.0, 12.0),
+    "n": (-6.0, 12.0),
     "pka_water": (-12.0, 55.0),
     "pka_dmso": (-2.0, 57.0),
     "pka_acid": (-12.0, 55.0),

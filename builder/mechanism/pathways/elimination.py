@@ -17,7 +17,7 @@ from builder.chemistry.structure import AtomId, Structure
 from builder.chemistry.transform import Edit, StereoEffect, eliminate
 from builder.mechanism.chairs import axial_cost_kj
 from builder.mechanism.departure import Departure
-from builder.mechanism.flask import Attacker, Flask
+from builder.mechanism.flask import NEUTRAL_PKA, Attacker, Flask, has_long_branches
 from builder.mechanism.kinds import BaseFamily
 from builder.mechanism.log_rate import LogRate
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
@@ -36,7 +36,6 @@ _REFERENCE_PKA = 15.9
 _STRONGEST_PKA = 32.0
 """Beyond it a stronger base is not faster: encounter and aggregates decide."""
 _WEAKEST_PKA = 0.0
-_KETONE_PKA = 20.0
 _SULFONATE_LIKE = frozenset(
     {"tosylate", "mesylate", "brosylate", "nosylate", "benzenesulfonate", "triflate", "sulfonate"}
 )
@@ -104,9 +103,12 @@ def beta_ways(structure: Structure, site: ReactiveSite) -> tuple[BetaWay, ...]:
 
 def _beta_keys(structure: Structure, site: ReactiveSite, beta: BetaCarbon) -> Iterator[tuple[str, float]]:
     atoms = structure.atoms
-    hydrogens = log10(float(beta.hydrogens)) - log10(3.0)
+    in_reach = 1.0 if beta.in_common_ring else float(beta.hydrogens)  # of two on a ring carbon one is anti
+    hydrogens = log10(in_reach) - log10(3.0)
     if hydrogens:
         yield "e2.hydrogens", hydrogens
+    if beta.hydrogens == len(beta.hydrogen_isotopes):
+        yield "e2.deuterium", 1.0
     seen = set()
     for near, order in atoms[beta.atom].neighbours:
         if near == site.alpha_carbon or atoms[near].symbol == "H" or order != 1.0:
@@ -182,8 +184,9 @@ def _base_terms(
     pka = min(base.pka, _STRONGEST_PKA)
     yield parameters.term("e2.base", pka - _REFERENCE_PKA)
     medium = flask.medium
-    if not medium.is_protic and base.is_anion:
-        yield parameters.term("e2.base.aprotic", max(0.0, min(base.pka_dmso, _STRONGEST_PKA) - pka))
+    if base.is_anion:
+        bare = max(0.0, 1.0 - hydrogen_bonding(flask, parameters) / polarity_of("methanol").alpha)
+        yield parameters.term("e2.base.aprotic", bare * max(0.0, min(base.pka_dmso, _STRONGEST_PKA) - pka))
     if base.is_anion:
         yield parameters.term(
             "e2.medium", hydrogen_bonding(flask, parameters) - polarity_of("ethanol").alpha if medium.is_protic else 0.0
@@ -210,6 +213,8 @@ def _base_terms(
     alkyl = sum(factor for key, factor in way.keys if key == "e2.alkyl")
     if not alkyl or departure.site.hybridisation is not Hybridisation.SP3:
         return
+    if departure.site.degree is Degree.TERTIARY:
+        yield parameters.term("e2.alkyl.tertiary", alkyl)
     group = "sulfonate" if departure.group in _SULFONATE_LIKE else departure.group
     if f"e2.alkyl.{group}" in parameters:
         yield parameters.term(f"e2.alkyl.{group}", alkyl)
@@ -217,6 +222,8 @@ def _base_terms(
         yield parameters.term("e2.alkyl.bulky" if not medium.is_dipolar_aprotic else "e2.alkyl.bulky.aprotic", alkyl)
         if departure.site.degree is Degree.TERTIARY:
             yield parameters.term("e2.alkyl.bulky.tertiary", alkyl)
+        if has_long_branches(base.nucleophile):
+            yield parameters.term("e2.alkyl.bulky.more", alkyl)
 
 
 # --- products -------------------------------------------------------------------------------------------------
@@ -310,23 +317,26 @@ def _hydrogen_faces(structure: Structure, ring: Ring, site: ReactiveSite, beta: 
 def e1cb_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> Iterator[Pathway]:
     """Yield E1cB for a poor leaving group beta to an acceptor; good groups go by E2 there."""
     group = leaving_groups().get(departure.group)
-    if group is None or not (group.needs_activation or departure.group in {"ammonium", "2,4-dinitrophenoxide"}):
+    if group is None or group.conjugate_acid_pka is None:
+        return
+    if not (group.needs_activation or departure.group in {"ammonium", "2,4-dinitrophenoxide"}):
         return
     if closing_gates(Mechanism.E1CB, departure.situation):
         return
     acidity = _acidic_betas(departure.structure)
     for base in flask.attackers:
-        if base.base is None or not base.is_usual_atom or base.pka < 7.0:
+        if base.base is None or not base.is_usual_atom or base.pka < NEUTRAL_PKA:
             continue
         for way in beta_ways(departure.structure, departure.site):
-            pka = acidity.get(departure.structure.symmetry_classes[way.beta.atom])
-            if pka is None:
+            word = acidity.get(departure.structure.symmetry_classes[way.beta.atom])
+            if word is None:
                 continue
-            leaving_pka = group.conjugate_acid_pka if group.conjugate_acid_pka is not None else 15.0
             terms = [
                 parameters.term("e1cb.zero"),
-                parameters.term("e1cb.acidity", pka - _KETONE_PKA),
-                parameters.term("e1cb.leave", max(0.0, leaving_pka)),
+                parameters.term(
+                    "e1cb.acidity", parameters.value(f"e1cb.pka.{word}") - parameters.value("e1cb.pka.ketone")
+                ),
+                parameters.term("e1cb.leave", max(0.0, group.conjugate_acid_pka)),
                 parameters.term("e2.base", min(base.pka, _STRONGEST_PKA) - _REFERENCE_PKA),
                 parameters.term("model.E1cB"),
             ]
@@ -365,21 +375,21 @@ def _e1cb_outcomes(
 
 
 @lru_cache(maxsize=2048)
-def _acidic_betas(structure: Structure) -> dict[int, float]:
-    """Return the pKa of acidic carbons by symmetry class: 10 beside nitro or two acceptors, 20 to 25 beside one."""
+def _acidic_betas(structure: Structure) -> dict[int, str]:
+    """Return what makes a carbon acid, by symmetry class: two acceptors or nitro, a ketone, another acceptor."""
     ranks = structure.symmetry_classes
-    found: dict[int, float] = {}
+    found: dict[int, str] = {}
     for group in neighbouring_groups(structure):
         if group.kind == "carbon acid":
-            found[ranks[group.atom]] = 12.0
+            found[ranks[group.atom]] = "doubly"
         elif group.kind == "carbon acid, weak":
-            found[ranks[group.atom]] = _weak_acid_pka(structure, group.atom)
+            found[ranks[group.atom]] = _acceptor_word(structure, group.atom)
     return found
 
 
-def _weak_acid_pka(structure: Structure, atom: AtomId) -> float:
+def _acceptor_word(structure: Structure, atom: AtomId) -> str:
     words = {_beta_ketone(structure, n) for n, _ in structure.atoms[atom].neighbours}
-    return 20.0 if "ketone" in words else 25.0
+    return "ketone" if "ketone" in words else "other"
 
 
 def _beta_ketone(structure: Structure, near: AtomId) -> str:

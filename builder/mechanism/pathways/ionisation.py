@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from functools import cached_property, partial
 
 from builder.chemistry.perception import Degree, ReactiveSite, SiteStereo
+from builder.chemistry.settling import hydrated_nitrilium
 from builder.chemistry.structure import AtomId, Structure
 from builder.chemistry.transform import (
     Cation,
@@ -22,7 +23,7 @@ from builder.chemistry.transform import (
 from builder.mechanism.cations import MAX_SHIFTS, Nature, Shift, Station, cation_terms, nature_of, stations
 from builder.mechanism.departure import Departure
 from builder.mechanism.faces import exo_only, trans_to_acyloxy
-from builder.mechanism.flask import Attacker, Flask
+from builder.mechanism.flask import ENOUGH_M, NEUTRAL_PKA, Attacker, Flask
 from builder.mechanism.ionising_power import Scale
 from builder.mechanism.log_rate import LogRate
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
@@ -43,15 +44,30 @@ _HALIDES = frozenset({"chloride", "bromide", "iodide", "fluoride"})
 _RETURNING = frozenset({"pyridine", "amine, tertiary", "amidine", "azole, N-substituted", "sulfide"})
 """Kinds whose capture of a cation gives an onium ion that gives it back; they count where nothing else is there."""
 _NEUTRAL_GROUPS = frozenset({"sulfonium", "ammonium", "diazonium", "water", "protonated ether", "trialkyloxonium"})
+_CARBOXYLIC = ("acetic acid", "formic acid", "trifluoroacetic acid")
+_BRANCHES = ("primary", "secondary", "tertiary")
+_LEAVES_BY_ACID = frozenset(
+    {"water", "protonated ether", "protonated ester", "protonated epoxide", "protonated oxetane", "none"}
+)
+"""Groups whose loss acid undoes as well, so that the alkene is the way out in the heat; none: a protonated alkene."""
 _MOST_GAIN = 10.0
+_ALL = 12.0
+"""log10 of a ratio beyond which all goes one way."""
 _RACEMISED = 0.1
 """Net inversion below which the course is called racemisation."""
 
 
 def ionisation_pathways(
-    departure: Departure, flask: Flask, parameters: Parameters, temperature_k: float
+    departure: Departure,
+    flask: Flask,
+    parameters: Parameters,
+    temperature_k: float,
+    floor: float | None = None,
 ) -> Iterator[Pathway]:
-    """Yield SN1 and E1 of a site, which share one ionisation; nothing where the cation cannot form."""
+    """Yield SN1 and E1 of a site, which share one ionisation; nothing where the cation cannot form.
+
+    floor: log10 k, 1/s, that even with the help of a shift must be reached; None asks for every ionisation.
+    """
     site, structure, leaving = departure.site, departure.structure, departure.site.leaving_atom
     if leaving is None or closing_gates(Mechanism.SN1, departure.situation):
         return
@@ -70,6 +86,10 @@ def ionisation_pathways(
     terms.append(parameters.term("model.ionisation"))
     if math.fsum(t.contribution for t in terms) < HOPELESS - _BEST_ASSISTANCE:
         return
+    power = max(0.0, flask.medium.power().value)
+    entropy = (parameters.term("sn1.entropy"), parameters.term("sn1.entropy.power", power))
+    if floor is not None and LogRate(tuple(terms), entropy).log10_k(temperature_k) + _BEST_ASSISTANCE < floor:
+        return
     inverts = departure.group.startswith("protonated") and site.in_strained_ring and bool(flask.attackers)
     if site.in_strained_ring and not inverts:
         bare = skeleton_of(structure).without_bond(site.alpha_carbon, leaving)
@@ -87,8 +107,6 @@ def ionisation_pathways(
         is_concerted=bool(assistance) and site.degree is Degree.PRIMARY,
         can_eliminate=not closing_gates(Mechanism.E1, departure.situation),
     )
-    power = max(0.0, flask.medium.power().value)
-    entropy = (parameters.term("sn1.entropy"), parameters.term("sn1.entropy.power", power))
     for mechanism, share, outcomes in (
         (Mechanism.SN1, reception.captured, partial(_captured, reception, departure, inverts=inverts)),
         (Mechanism.E1, reception.eliminated, partial(_eliminated, reception, departure)),
@@ -230,7 +248,7 @@ def receive(
         if weight / whole < _LEAST_WEIGHT:
             continue
         terms = tuple(_proton_loss_terms(station, flask, parameters, temperature_k, group, is_hot_acid=is_hot_acid))
-        ratio = 10 ** min(12.0, math.fsum(t.contribution for t in terms))
+        ratio = 10 ** min(_ALL, math.fsum(t.contribution for t in terms))
         loses = ratio / (1 + ratio)
         protons = _has_proton_to_lose(station) and (can_eliminate or bool(station.path))
         if not protons:
@@ -321,7 +339,7 @@ def _opens_small_ring(step: Shift, before: Station) -> bool:
 
 def _is_hot_acid(flask: Flask, group: str, temperature_k: float) -> bool:
     """Say whether a strong acid holds no nucleophile that keeps the cation, at a heat that drives the alkene out."""
-    if not (flask.is_bronsted_acid or flask.is_lewis) or group == "diazonium":
+    if not (flask.is_bronsted_acid or flask.is_lewis) or group not in _LEAVES_BY_ACID:
         return False
     keeps = [
         a
@@ -352,7 +370,7 @@ def _proton_loss_terms(
         yield term("e1.branched")
     if branched > 1:
         yield term("e1.branched.second", branched - 1)
-    if not bare and medium.parts[0][0].name in {"acetic acid", "formic acid", "trifluoroacetic acid"}:
+    if not bare and sum(medium.share(name) for name in _CARBOXYLIC) > 0.5:
         yield term("e1.carboxylic acid")
     if nature.aryl:
         yield term("e1.aryl", nature.aryl)
@@ -364,9 +382,9 @@ def _proton_loss_terms(
         yield term("e1.secondary")
     if is_hot_acid:
         yield term("e1.hot acid")
-    elif any(a.kind.name in _HALIDES and a.molar >= 0.3 and not a.is_solvent for a in flask.attackers):
+    elif any(a.kind.name in _HALIDES and a.molar >= ENOUGH_M and not a.is_solvent for a in flask.attackers):
         yield term("e1.anion")
-    elif any(a.is_anion and a.pka > 7.0 and a.molar >= 0.1 for a in flask.attackers):
+    elif any(a.is_anion and a.pka > NEUTRAL_PKA and a.molar >= ENOUGH_M for a in flask.attackers):
         yield term("e1.basic anion")
     if any(a.is_solvent and a.kind.base is not None for a in flask.attackers):
         yield term("e1.basic solvent")
@@ -473,7 +491,10 @@ def captured_outcomes(
                 for edit, face in zip(edits, faces, strict=True):
                     course = _course(site, fate.station, edits, faces, is_transposed=is_transposed)
                     told = (*words, "capture at the far end" if is_transposed else "capture")
-                    found.append(Outcome(edit.product, share * form_share * part * face, course, rearranged, told))
+                    product = edit.product
+                    if attacker.kind.name == "nitrile":
+                        product, told = hydrated_nitrilium(product), (*told, "water on the nitrilium ion")
+                    found.append(Outcome(product, share * form_share * part * face, course, rearranged, told))
     return merged_outcomes(found) if found else ()
 
 
@@ -488,12 +509,15 @@ def _forms(cation: Cation, station: Station, reception: Reception) -> Iterator[t
         return
     forms = [(cation, False), *((form, True) for form in others)]
     parameters = reception.parameters
-    key = "capture.allyl.stable" if reception.is_reversible else "capture.allyl.substituted"
     trans = parameters.value("e1.trans")
     logs = []
     for form, _ in forms:
         nature = nature_of(skeleton_of(form.structure), form.centre)
-        log = parameters.value(key) * (nature.alkyl + nature.cyclopropyl)
+        branches = nature.alkyl + nature.cyclopropyl
+        if reception.is_reversible:
+            log = parameters.value("capture.allyl.stable") * branches
+        else:
+            log = parameters.value(f"capture.allyl.{_BRANCHES[min(branches, 2)]}") if branches else 0.0
         if nature.aryl:
             log += parameters.value("capture.allyl.conjugated")
         if "/C=C\\" in form.structure.smiles or "\\C=C/" in form.structure.smiles:
@@ -535,7 +559,7 @@ def _face_shares(
     effects = [edit.effect for edit in edits]
     if len(edits) != 2 or StereoEffect.INVERSION not in effects:
         return (1.0 / len(edits),) * len(edits)
-    net = 0.98 if inverts else _net_inversion(nature, parameters)
+    net = parameters.value("capture.inversion.opening") if inverts else _net_inversion(nature, parameters)
     return tuple((1 + net) / 2 if effect is StereoEffect.INVERSION else (1 - net) / 2 for effect in effects)
 
 

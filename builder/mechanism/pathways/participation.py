@@ -21,7 +21,7 @@ from builder.chemistry.transform import UnbalancedTransformation, capture, cycli
 from builder.mechanism.cations import aryl_character
 from builder.mechanism.departure import Departure
 from builder.mechanism.faces import exo_face, exo_only, shifting_bond
-from builder.mechanism.flask import Attacker, Flask
+from builder.mechanism.flask import NEUTRAL_PKA, Attacker, Flask
 from builder.mechanism.ionising_power import Scale
 from builder.mechanism.kinds import Kind, load_kinds
 from builder.mechanism.log_rate import LogRate
@@ -101,7 +101,7 @@ def reachable_groups(structure: Structure, site: ReactiveSite) -> tuple[tuple[Nu
             continue
         if (
             size <= 4
-            and group.kind != "carboxylate"
+            and group.kind not in {"carboxylate", "carboxylic acid"}
             and any(b.hybridisation != "sp3" for b in site.beta if b.atom in _beside(structure, group))
         ):
             continue
@@ -175,13 +175,17 @@ def _rate_terms(
     kind = load_kinds()[group.kind]
     cost: list[Term] = []
     if kind.anion is not None and group.charge >= 0:
-        made = _ionised(group, kind, flask)
+        made = _ionised(group, kind, flask, parameters)
         if made is not None:
             kind, cost = made
         elif group.kind in {"carbon acid", "carbon acid, weak", "alkyne", "imide", "sulfonamide", "dithioacetal"} or (
             group.kind == "amide" and group.symbol == "N"
         ):
             return None
+        elif group.kind == "carboxylic acid" and departure.group == "diazonium":
+            cost = [parameters.term("ngp.carboxyl.diazonium")]
+        elif group.loses_proton and size <= 4:
+            cost = [parameters.term("ngp.uncharged")]
     if flask.is_bronsted_acid and kind.pka > 2.0:
         return None  # a proton has taken its lone pair
     if kind.element is None:
@@ -205,7 +209,7 @@ def _rate_terms(
         given_up = polarity_of("methanol").alpha - hydrogen_bonding(flask, parameters)
         terms.append(parameters.term("sn2.transfer.anion", kind.desolvation * given_up))
     if flask.has_silver and departure.family == "halide":
-        terms.append(parameters.term("sn1.silver", 0.7))
+        terms.append(parameters.term("ngp.silver"))
     return terms
 
 
@@ -270,7 +274,7 @@ def _bridging_terms(
     return terms
 
 
-def _ionised(group: Nucleophile, kind: Kind, flask: Flask) -> tuple[Kind, list[Term]] | None:
+def _ionised(group: Nucleophile, kind: Kind, flask: Flask, parameters: Parameters) -> tuple[Kind, list[Term]] | None:
     """Return the anion a base of the flask makes of a group, with log10 of the share ionised; None without one."""
     if kind.anion is None or kind.acid_pka is None:
         return None
@@ -278,14 +282,21 @@ def _ionised(group: Nucleophile, kind: Kind, flask: Flask) -> tuple[Kind, list[T
     acid_pka = kind.acid_pka if row is None or row.pka_acid is None else row.pka_acid
     best: float | None = None
     for base in flask.attackers:
-        if not base.is_usual_atom or base.pka < 7.0:
+        if not base.is_usual_atom or base.pka < NEUTRAL_PKA:
             continue
         share = min(0.0, base.pka - acid_pka + log10(max(base.molar, 1e-6)))
         best = share if best is None else max(best, share)
     if best is None or best < -9.0:
         return None
     anion = load_kinds()[kind.anion]
-    term = Term("share of the anion", 1.0, best, 0.3, "ionised by the base, by difference of pKa", kind.source)
+    term = Term(
+        "share of the anion",
+        1.0,
+        best,
+        parameters["ngp.ionised"].error,
+        "ionised by the base, by difference of pKa",
+        kind.source,
+    )
     return anion, [term]
 
 
@@ -352,7 +363,7 @@ def _outcomes(departure: Departure, group: Nucleophile, flask: Flask, parameters
         course = Course.NOT_APPLICABLE
         if is_specified:
             mirrored = any(o.product in {p.mirror_image for p in kept} and o.product not in kept for o in openings)
-            racemic = group.kind in _BRIDGES and mirrored
+            racemic = group.kind in _BRIDGES and mirrored and not (site.ring_sizes and group.kind == "organohalide")
             course = Course.RACEMISATION if racemic else Course.RETENTION
         elif not opening.at_alpha and opening.is_specified:
             course = Course.INVERSION
@@ -411,7 +422,7 @@ def _opening_log(site: ReactiveSite, attacker: Attacker, parameters: Parameters,
     degree = (site.degree or Degree.TERTIARY).value
     charged = site.leaving_group in {"phenonium", "halonium", "episulfonium"}
     if reversible or (attacker.is_solvent and charged) or site.leaving_group in {"phenonium", "halonium"}:
-        return {"methyl": 0.0, "primary": 0.0, "secondary": 1.2, "tertiary": 2.5}[degree]
+        return parameters.value(f"ngp.opening.{degree}") if degree in {"secondary", "tertiary"} else 0.0
     if degree == "methyl":
         return 0.0
     return parameters.value(f"sn2.alpha.strained.{degree}")

@@ -12,6 +12,7 @@ from builder.chemistry.transform import StereoEffect, substitute, transpose_ally
 from builder.mechanism.chairs import is_axial
 from builder.mechanism.departure import Departure
 from builder.mechanism.flask import Attacker, Flask
+from builder.mechanism.kinds import BaseFamily
 from builder.mechanism.log_rate import LogRate
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
 from builder.mechanism.polarity import polarity_of
@@ -27,7 +28,8 @@ _HARD_LEAVING_GROUP = 1.5
 """Second term of a leaving group from which it counts as hard for ambident nucleophiles."""
 _STRONGLY_SOLVATING = frozenset({"DMSO", "HMPA", "DMPU", "NMP", "DMF", "DMAc"})
 _PROTIC_ATTACK = frozenset({"water", "alcohol", "carboxylic acid", "phenol"})
-_ACCEPTORS = frozenset({"ketone", "nitrile", "ester", "amide", "carboxylate"})
+_BRINGS_METAL = frozenset({"hydride", "organometallic", "carbanion"})
+_ACCEPTORS = frozenset({"ketone", "nitrile", "ester", "amide", "acid", "carboxylate"})
 _HALIDE_IONS = {"iodide": "[I-]", "bromide": "[Br-]", "chloride": "[Cl-]"}
 _POWER_ZERO = -2.0
 """Ionising power from which the borderline terms grow: about that of ethanol."""
@@ -80,8 +82,10 @@ def _sn2(
     if flask.has_silver and departure.family == "halide":
         terms.append(parameters.term("sn2.metal.silver"))
     site = departure.site
-    brings_metal = attacker.kind.name in {"hydride", "organometallic"}
-    if departure.group in {"epoxide", "aziridine"} and not flask.medium.is_protic and not brings_metal:
+    brings_metal = attacker.kind.name in _BRINGS_METAL
+    if departure.group == "epoxide" and brings_metal:
+        terms.append(parameters.term("sn2.leave.epoxide.metal"))
+    elif departure.group in {"epoxide", "aziridine"} and not flask.medium.is_protic:
         terms.append(parameters.term("sn2.leave.ring.aprotic"))
     if departure.site.in_strained_ring and 6 in site.ring_sizes:
         diaxial = opens_diaxially(departure.structure, site, attacker)
@@ -154,7 +158,7 @@ def site_features(structure: Structure, site: ReactiveSite) -> tuple[tuple[str, 
     place = "primary" if degree in {"methyl", "primary"} else "secondary"
     found += [(f"sn2.activation.{name}.{place}", 1.0) for name in _activating(structure, site)]
     ring = min(site.ring_sizes, default=None)
-    if ring is not None:
+    if ring is not None and not site.in_strained_ring:
         found.append((f"sn2.ring.{min(ring, LARGE_RING)}", 1.0))
     for beta in site.beta:
         if beta.hybridisation != "sp3":
@@ -210,6 +214,8 @@ def _activating_name(structure: Structure, near: AtomId, alpha: AtomId) -> str |
             others = {a.symbol for a, o in far if o == 1.0}
             if any(a.charge < 0 for a, _ in far):
                 return "carboxylate"
+            if any(a.symbol == "O" and a.hydrogens for a, o in far if o == 1.0):
+                return "acid"
             return "ester" if "O" in others else "amide" if "N" in others else "ketone"
         return "vinyl" if "C" in double else None
     acylated = any(any(o == 2.0 and atoms[m].symbol in {"O", "S", "N"} for m, o in a.neighbours) for a, _ in far)
@@ -275,7 +281,8 @@ def hydrogen_bonding(flask: Flask, parameters: Parameters) -> float:
 
 
 def _bulk_terms(attacker: Attacker, site: ReactiveSite, parameters: Parameters) -> Iterator[Term]:
-    key = f"sn2.bulk.hindered.{(site.degree or Degree.TERTIARY).value}"
+    family = "alkoxide" if attacker.base is BaseFamily.BULKY_ALKOXIDE else "hindered"
+    key = f"sn2.bulk.{family}.{(site.degree or Degree.TERTIARY).value}"
     if attacker.is_hindered and key in parameters:
         yield parameters.term(key)
 
@@ -376,6 +383,8 @@ def _sn2_prime(
         terms.append(parameters.term("sn2prime.far alkyl", alkyl))
     if blocked:
         terms.append(parameters.term("sn2prime.blocked"))
+    if departure.group == "epoxide" and attacker.kind.name in _BRINGS_METAL:
+        terms.append(parameters.term("sn2.leave.epoxide.metal"))
     if attacker.kind.name in {"amine, secondary", "amine, primary"}:
         terms.append(parameters.term("sn2prime.amine"))
     if "Cu" in attacker.nucleophile.species.smiles:

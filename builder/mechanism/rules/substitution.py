@@ -12,17 +12,34 @@ _FROM_BEHIND = (Mechanism.SN2, Mechanism.NGP)
 
 
 @gate(
+    id="fluoride-stays",
+    title="Fluoride stays in substitution",
+    closes=(Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.SN1, Mechanism.E1, Mechanism.NGP),
+    source="march-2013",
+    fires_on=("CCCCF", "CC(C)(C)F"),
+    silent_on=("CCCCBr", "CCCCO"),
+)
+def fluoride_stays(situation: Situation) -> bool:
+    """The bond to fluorine holds it against nucleophiles and ionising solvents.
+
+    Acid, a silylium ion or a Lewis acid takes it away. A strong base still gives the alkene when heated: E2 stays open.
+    """
+    return situation.leaving_group == "fluoride" and not situation.group_leaves
+
+
+@gate(
     id="leaving-group-stays",
     title="A leaving group that stays put",
     closes=(Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.SN1, Mechanism.E2, Mechanism.E1, Mechanism.NGP),
     source="march-2013",
-    fires_on=("CCCCO", "CCOCC", "CCCCF", "CCCC#N", "CCCCN"),
-    silent_on=("CCCCBr", "CC1CO1", "CCCC[OH2+]", "COC(=O)c1ccccc1"),
+    fires_on=("CCCCO", "CCOCC", "CCCC#N", "CCCCN"),
+    silent_on=("CCCCBr", "CCCCF", "CC1CO1", "CCCC[OH2+]", "COC(=O)c1ccccc1"),
 )
 def leaving_group_stays(situation: Situation) -> bool:
     """Hydroxide, alkoxide and amide are too basic to leave.
 
-    Fluoride, cyanide, nitro and azide stay although their acids are stronger: the bond to carbon holds them.
+    Cyanide, nitro and azide stay although their acids are stronger: the bond to carbon holds them. Fluoride has a rule
+    of its own.
     Protonation, a sulfonyl chloride, a phosphorus reagent or the strain of a small ring helps oxygen and fluoride.
     Acid does not help cyanide, nitro, a sulfone, an amine, a sulfide, a thiol or phosphonium; an amine leaves once it
     is diazotised or quaternised, a sulfide once it is alkylated. E1cB stays open. Esters pass: a carboxylate leaves
@@ -30,7 +47,8 @@ def leaving_group_stays(situation: Situation) -> bool:
     demethylate.
     """
     dealkylated = situation.leaving_group == "phenoxide" and situation.site.degree is Degree.METHYL
-    return not situation.group_leaves and situation.leaving_group != "carboxylate" and not dealkylated
+    passed = dealkylated or situation.leaving_group in {"carboxylate", "fluoride"}
+    return not situation.group_leaves and not passed
 
 
 @gate(
@@ -225,6 +243,7 @@ def allylic_shift_has_no_multiple_bond(situation: Situation) -> bool:
 
 
 SUBSTITUTION_GATES = (
+    fluoride_stays,
     leaving_group_stays,
     neighbour_is_lacking,
     bridgehead_cation_is_impossible,
