@@ -69,7 +69,7 @@ def _opened(structure: Structure, carbon: AtomId, leaving: AtomId, oxygens: list
 
 
 def hydrated_nitrilium(structure: Structure) -> Structure:
-    """Return the amide that water makes of a nitrilium ion, the last step of the Ritter reaction; others as they are."""
+    """Return the amide that water makes of a nitrilium ion, last step of the Ritter reaction; others as they are."""
     for nitrogen in structure.atoms:
         if nitrogen.symbol != "N" or nitrogen.charge != 1:
             continue

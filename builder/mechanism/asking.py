@@ -388,7 +388,7 @@ def _doses(additives: Iterable[str], readings: list[Reading]) -> list[Dose]:
     for text in additives:
         dose = find_reagent(text)
         if dose is None:
-            reagent = _reagent_by_smiles(text)
+            reagent = _reagent_by_smiles(text) or _onium_like(text)
             if reagent is None:
                 readings.append(Reading("additive", text, f"{_bystander(text)}, {WITHOUT_EFFECT}"))
                 continue
@@ -400,6 +400,17 @@ def _doses(additives: Iterable[str], readings: list[Reading]) -> list[Dose]:
 
 WITHOUT_EFFECT = "taken as without effect"
 """Ends the reading of an additive that is known but does nothing to the flask."""
+
+
+_ONIUM = re.compile(
+    r"(ammonium|phosphonium)\s+(fluoride|chloride|bromide|iodide|hydrogen\s?sul(?:f|ph)ate)$", re.IGNORECASE
+)
+
+
+def _onium_like(text: str) -> Reagent | None:
+    """Return the common phase-transfer catalyst in the place of any other quaternary salt, by the end of its name."""
+    dose = find_reagent("tetrabutylammonium bromide") if _ONIUM.search(text.strip()) else None
+    return None if dose is None else dose.reagent
 
 
 def _bystander(text: str) -> str:

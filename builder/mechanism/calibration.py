@@ -1,11 +1,11 @@
 """Calibration: the terms of the model fitted to the observations by regularised least squares.
 
-Each observation is a rate (log10) or a share (logit). The terms are moved by Gauss-Newton steps from where they stand in
-rate_terms.tsv, each held there by its own standard error as by one more observation (ridge, or a Gaussian prior);
+Each observation is a rate (log10) or a share (logit). The terms are moved by Gauss-Newton steps from where they stand
+in rate_terms.tsv, each held there by its own standard error as by one more observation (ridge, or a Gaussian prior);
 residuals beyond HUBER standard errors count less (Huber 1964). Leave-one-out residuals come from the leverage of each
 row, r / (1 - h), with no second fit. What the terms leave unexplained in a family of pathways is estimated from those
-residuals and enters the errors of every forecast. Order of rows and of terms is that of the tables, so the result is the
-same on every machine to the digits written.
+residuals and enters the errors of every forecast. Order of rows and of terms is that of the tables, so the result is
+the same on every machine to the digits written.
 Sources: Hoerl and Kennard, Technometrics 1970, 12, 55; Huber, Ann. Math. Stat. 1964, 35, 73 (from memory).
 """
 
@@ -92,20 +92,24 @@ def calibrate(progress: Callable[[int, int], None] | None = None) -> Calibration
     rows, silent = _answered(list(_rows(tuple(k for k in prior if k.startswith(_PARTITION)))), parameters)
     scatter = {key: term.error for key, term in prior.items() if key.startswith(_MODEL)}
     keys: list[str] = []
-    for turn in range(ROUNDS):
+
+    def look(turn: int) -> list[Seen]:
         seen = []
         for place, row in enumerate(rows):
             seen.append(row.see(parameters))
             if progress is not None:
-                progress(turn * len(rows) + place + 1, ROUNDS * len(rows))
+                progress(turn * len(rows) + place + 1, (ROUNDS + 1) * len(rows))
+        return seen
+
+    for turn in range(ROUNDS):
+        seen = look(turn)
         keys = [k for k in prior if not k.startswith(_MODEL) and any(k in s.slopes and s.slopes[k][0] for s in seen)]
         fit = _Fit(rows, seen, keys, prior, parameters, scatter)
         scatter = scatter | fit.scatter()
         fit = _Fit(rows, seen, keys, prior, parameters, scatter)
         parameters = parameters.with_values(dict(zip(keys, fit.values, strict=True)))
-    seen = [row.see(parameters) for row in rows]
-    fit = _Fit(rows, seen, keys, prior, parameters, scatter)
-    return Calibration(tuple(_terms(fit, prior, parameters, scatter)), tuple(fit.residuals()), tuple(silent))
+    fit = _Fit(rows, look(ROUNDS), keys, prior, parameters, scatter)
+    return Calibration(tuple(_terms(fit, prior, scatter)), tuple(fit.residuals()), tuple(silent))
 
 
 def _rows(partition: tuple[str, ...]) -> Iterator[_Row]:
@@ -170,7 +174,7 @@ class _Fit:
         at: Parameters,
         scatter: dict[str, float],
     ) -> None:
-        self._rows, self._seen, self._keys = rows, seen, keys
+        self._rows, self._seen, self.keys = rows, seen, keys
         place = {key: i for i, key in enumerate(keys)}
         self._slopes = np.zeros((len(rows), len(keys)))
         foreign = np.zeros(len(rows))
@@ -238,12 +242,10 @@ class _Fit:
         return found
 
 
-def _terms(
-    fit: _Fit, prior: dict[str, RateTerm], parameters: Parameters, scatter: dict[str, float]
-) -> Iterator[RateTerm]:
-    support = dict(zip(fit._keys, fit.support(), strict=True))
-    errors = dict(zip(fit._keys, fit.errors, strict=True))
-    values = dict(zip(fit._keys, fit.values, strict=True))
+def _terms(fit: _Fit, prior: dict[str, RateTerm], scatter: dict[str, float]) -> Iterator[RateTerm]:
+    support = dict(zip(fit.keys, fit.support(), strict=True))
+    errors = dict(zip(fit.keys, fit.errors, strict=True))
+    values = dict(zip(fit.keys, fit.values, strict=True))
     for key, term in prior.items():
         if key in values and support[key]:
             value, error = round(float(values[key]), _DIGITS), max(0.001, round(float(errors[key]), _DIGITS))

@@ -183,18 +183,23 @@ def cation_terms(structure: Structure, skeleton: Skeleton, centre: AtomId, param
         terms.append(term("cation.beta.acceptor", beta))
     if _has_beta_silicon(skeleton, centre):
         terms.append(term("cation.silicon beta"))
+    return (*terms, *_frame_terms(skeleton, centre, nature, parameters))
+
+
+def _frame_terms(skeleton: Skeleton, centre: AtomId, nature: Nature, parameters: Parameters) -> Iterator[Term]:
+    """Yield what the ring, the bridge or the crowd around the centre costs or gains."""
+    term = parameters.term
     bridgehead = is_bridgehead(skeleton, centre)
     if bridgehead is not None:
-        terms.append(term(f"cation.bridgehead.{bridgehead}"))
+        yield term(f"cation.bridgehead.{bridgehead}")
     elif nature.is_plain:
         ring = skeleton.smallest_ring(centre)
         if ring is not None:
-            terms.append(term(f"cation.ring.{ring}"))
+            yield term(f"cation.ring.{ring}")
             if _bears_tert_butyl(skeleton, centre):
-                terms.append(term("cation.crowded.ring"))
+                yield term("cation.crowded.ring")
         elif nature.alkyl == 3 and _is_crowded(skeleton, centre):
-            terms.append(term("cation.crowded"))
-    return tuple(terms)
+            yield term("cation.crowded")
 
 
 def _core_terms(

@@ -399,10 +399,12 @@ def _reasons(
         Reason("acid-spends-nucleophile", f"the acid has taken {name}", None, None, "march-2013")
         for name in flask.spent
     ]
-    for departure in departures(question.substrate, flask, parameters):
-        if departure.how:
-            text = f"{departure.site.leaving_group}: {departure.how}"
-            found.append(Reason("group-activated", text, None, None, "march-2013"))
+    left = departures(question.substrate, flask, parameters)
+    found += [
+        Reason("group-activated", f"{departure.site.leaving_group}: {departure.how}", None, None, "march-2013")
+        for departure in left
+        if departure.how
+    ]
     ranked = sorted(zip(pathways, weights, strict=True), key=lambda pair: -pair[1])
     for pathway, weight in ranked[:4]:
         if weight >= 0.01:
@@ -414,7 +416,7 @@ def _reasons(
     for term in sorted(main.rate.terms, key=lambda t: -abs(t.contribution))[:6]:
         if abs(term.contribution) >= 0.05:
             found.append(Reason(term.key, term.meaning, term.contribution, abs(term.factor) * term.error, term.source))
-    found += list(_gate_reasons(departures(question.substrate, flask, parameters)))[:6]
+    found += list(_gate_reasons(left))[:6]
     for attacker in flask.nucleophiles:
         if attacker.n_error > 0.35 and attacker.name == main.partner:
             text = f"{attacker.name} is placed by its class ({attacker.kind.name}), so the error is wide"

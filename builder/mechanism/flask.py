@@ -70,8 +70,8 @@ class Attacker:
 class Flask:
     """Everything beside the substrate.
 
-    acidity: Hammett acidity function, or for a Lewis acid the acidity that would help oxygen as much; None without acid.
-    acidity_key: the term the acidity comes from. activators: leaving groups they make of a hydroxyl group.
+    acidity: Hammett acidity function, or for a Lewis acid the acidity that would help oxygen as much; None without
+    acid. acidity_key: the term the acidity comes from. activators: leaving groups they make of a hydroxyl group.
     pools: mol/L of what can run out, by name.
     """
 

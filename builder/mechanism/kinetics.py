@@ -5,10 +5,11 @@ for each, which are used up one to one. With τ = ∫ S dt each reagent is N_j(�
 
     S(τ) = S0 - k1 τ - Σ N_j0 (1 - exp(-k_j τ))
 
-so the yield of every pathway is a closed form in τ, and time is t = ∫ dτ / S(τ). The integral is taken by Simpson's rule
-over steps of τ in which neither the substrate nor a reagent that still counts falls by more than exp(-STEP); a reagent
-counts until k_j τ passes SPENT. A time or a conversion within a step is found by Newton's method on the same rule. With
-pathways of first order only, S = S0 exp(-k1 t) exactly. Another program gets the same numbers to better than 1e-6.
+so the yield of every pathway is a closed form in τ, and time is t = ∫ dτ / S(τ). The integral is taken by Simpson's
+rule over steps of τ in which neither the substrate nor a reagent that still counts falls by more than exp(-STEP); a
+reagent counts until k_j τ passes SPENT. A time or a conversion within a step is found by Newton's method on the same
+rule. With pathways of first order only, S = S0 exp(-k1 t) exactly. Another program gets the same numbers to better
+than 1e-6.
 Source: the time transformation of competing second-order reactions, as in Frost and Pearson, Kinetics and Mechanism
 (from memory).
 """

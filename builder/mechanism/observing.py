@@ -177,7 +177,7 @@ def _uncatalysed(nucleophile: str | None) -> str | None:
     return None if nucleophile is None else nucleophile.split(".")[0]
 
 
-def _elimination(share: Share, pathway: Pathway) -> tuple[float, float]:
+def _elimination(_: Share, pathway: Pathway) -> tuple[float, float]:
     is_elimination = pathway.mechanism in _ELIMINATIONS
     return (1.0, 0.0) if is_elimination else (0.0, 1.0)
 

@@ -67,7 +67,6 @@ def test_second_order_with_unlike_amounts(equivalents: float, half_lives: float)
     assert Kinetics(S0, {"Nu": b0}, (Flow(k, "Nu"),)).conversion_at(time) == pytest.approx(expected, abs=REPRODUCIBLE)
 
 
-@SHORT_REAGENT
 @pytest.mark.parametrize("equivalents", [0.25, 0.4])
 def test_second_order_with_a_reagent_in_short_supply(equivalents: float) -> None:
     b0, time = equivalents * S0, 2.5
@@ -138,7 +137,6 @@ def test_competing_pathways_agree_with_an_integrator(reaction: Kinetics, lifetim
     assert_integrates(reaction, lifetimes)
 
 
-@SHORT_REAGENT
 @SAME_EACH_TIME
 @given(mixtures(), st.floats(0.05, 6.0))
 def test_reagents_that_run_out_agree_with_an_integrator(reaction: Kinetics, lifetimes: float) -> None:

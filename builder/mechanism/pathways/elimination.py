@@ -20,6 +20,7 @@ from builder.mechanism.departure import Departure
 from builder.mechanism.flask import NEUTRAL_PKA, Attacker, Flask, has_long_branches
 from builder.mechanism.kinds import BaseFamily
 from builder.mechanism.log_rate import LogRate
+from builder.mechanism.medium import Medium
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
 from builder.mechanism.pathways.substitution import hydrogen_bonding, log10
 from builder.mechanism.polarity import polarity_of
@@ -147,15 +148,7 @@ def _way_terms(departure: Departure, way: BetaWay, parameters: Parameters) -> It
     yield parameters.term("e2.zero")
     yield parameters.term(f"e2.leave.{departure.group}")
     if site.hybridisation is not Hybridisation.SP3:
-        yield parameters.term("e2.vinylic")
-        for key, factor in way.keys:
-            if key == "e2.beta.aryl":
-                yield parameters.term("e2.vinylic.aryl", factor)
-        if any(
-            a.aromatic
-            for a in (departure.structure.atoms[n] for n, _ in departure.structure.atoms[site.alpha_carbon].neighbours)
-        ):
-            yield parameters.term("e2.vinylic.aryl")
+        yield from _vinylic_terms(departure, way, parameters)
         return
     if site.degree in {Degree.SECONDARY, Degree.TERTIARY}:
         yield parameters.term(f"e2.alpha.{site.degree.value}")
@@ -178,27 +171,44 @@ def _way_terms(departure: Departure, way: BetaWay, parameters: Parameters) -> It
         yield parameters.term("e2.axial", -way.axial_cost_kj)
 
 
+def _vinylic_terms(departure: Departure, way: BetaWay, parameters: Parameters) -> Iterator[Term]:
+    """Yield the terms of a leaving group on a double bond, on the way to an alkyne or an allene."""
+    yield parameters.term("e2.vinylic")
+    for key, factor in way.keys:
+        if key == "e2.beta.aryl":
+            yield parameters.term("e2.vinylic.aryl", factor)
+    atoms = departure.structure.atoms
+    if any(atoms[near].aromatic for near, _ in atoms[departure.site.alpha_carbon].neighbours):
+        yield parameters.term("e2.vinylic.aryl")
+
+
 def _base_terms(
     departure: Departure, way: BetaWay, base: Attacker, flask: Flask, parameters: Parameters
 ) -> Iterator[Term]:
     pka = min(base.pka, _STRONGEST_PKA)
     yield parameters.term("e2.base", pka - _REFERENCE_PKA)
-    medium = flask.medium
     if base.is_anion:
-        bare = max(0.0, 1.0 - hydrogen_bonding(flask, parameters) / polarity_of("methanol").alpha)
+        bonding = hydrogen_bonding(flask, parameters)
+        bare = max(0.0, 1.0 - bonding / polarity_of("methanol").alpha)
         yield parameters.term("e2.base.aprotic", bare * max(0.0, min(base.pka_dmso, _STRONGEST_PKA) - pka))
-    if base.is_anion:
-        yield parameters.term(
-            "e2.medium", hydrogen_bonding(flask, parameters) - polarity_of("ethanol").alpha if medium.is_protic else 0.0
-        )
+        yield parameters.term("e2.medium", bonding - polarity_of("ethanol").alpha if flask.medium.is_protic else 0.0)
+    yield from _family_terms(departure.site, base, flask.medium, parameters)
+    if base.is_solvent:
+        yield parameters.term("e2.family.solvent")
+    if base.is_sparingly_soluble:
+        yield parameters.term("sn2.solid salt")
+    if departure.site.hybridisation is Hybridisation.SP3:
+        yield from _orientation_terms(departure, way, base, flask.medium, parameters)
+
+
+def _family_terms(site: ReactiveSite, base: Attacker, medium: Medium, parameters: Parameters) -> Iterator[Term]:
+    """Yield what a family of bases adds beyond its basicity."""
     family = base.base
-    is_bulky = base.is_hindered
     if family is BaseFamily.BULKY_ALKOXIDE:
         if medium.is_protic or medium.is_apolar:
             yield parameters.term("e2.family.bulky alkoxide")
     elif family in {BaseFamily.HALIDE, BaseFamily.CARBOXYLATE}:
-        branched = departure.site.degree in {Degree.SECONDARY, Degree.TERTIARY}
-        if branched and not medium.is_protic:
+        if site.degree in {Degree.SECONDARY, Degree.TERTIARY} and not medium.is_protic:
             yield parameters.term("e2.family.halide")
     elif family is BaseFamily.AMIDE:
         yield parameters.term("e2.family.amide" if base.is_hindered else "e2.family.amide.small")
@@ -206,21 +216,24 @@ def _base_terms(
         yield parameters.term("e2.family.soft" if medium.is_protic else "e2.family.soft.aprotic")
     elif family not in {BaseFamily.OXYGEN, None}:
         yield parameters.term(f"e2.family.{family}")
-    if base.is_solvent:
-        yield parameters.term("e2.family.solvent")
-    if base.is_sparingly_soluble:
-        yield parameters.term("sn2.solid salt")
+
+
+def _orientation_terms(
+    departure: Departure, way: BetaWay, base: Attacker, medium: Medium, parameters: Parameters
+) -> Iterator[Term]:
+    """Yield how the alkyl groups on the beta carbon count with this leaving group and this base (Saytzeff, Hofmann)."""
     alkyl = sum(factor for key, factor in way.keys if key == "e2.alkyl")
-    if not alkyl or departure.site.hybridisation is not Hybridisation.SP3:
+    if not alkyl:
         return
-    if departure.site.degree is Degree.TERTIARY:
+    is_tertiary = departure.site.degree is Degree.TERTIARY
+    if is_tertiary:
         yield parameters.term("e2.alkyl.tertiary", alkyl)
     group = "sulfonate" if departure.group in _SULFONATE_LIKE else departure.group
     if f"e2.alkyl.{group}" in parameters:
         yield parameters.term(f"e2.alkyl.{group}", alkyl)
-    if is_bulky:
-        yield parameters.term("e2.alkyl.bulky" if not medium.is_dipolar_aprotic else "e2.alkyl.bulky.aprotic", alkyl)
-        if departure.site.degree is Degree.TERTIARY:
+    if base.is_hindered:
+        yield parameters.term("e2.alkyl.bulky.aprotic" if medium.is_dipolar_aprotic else "e2.alkyl.bulky", alkyl)
+        if is_tertiary:
             yield parameters.term("e2.alkyl.bulky.tertiary", alkyl)
         if has_long_branches(base.nucleophile):
             yield parameters.term("e2.alkyl.bulky.more", alkyl)
@@ -285,7 +298,7 @@ def _stands(structure: Structure, site: ReactiveSite, beta: BetaCarbon) -> tuple
     ring = next((r for r in perceive_rings(structure) if site.alpha_carbon in r.atoms and beta.atom in r.atoms), None)
     if ring is None:
         return True, 0.0
-    faces = _hydrogen_faces(structure, ring, site, beta)
+    faces = _hydrogen_faces(ring, site, beta)
     if faces is None:
         return True, 0.0
     cost = 0.0
@@ -303,7 +316,7 @@ def _is_caged(structure: Structure, ring: Ring) -> bool:
     return bool(structure.bridgeheads & set(ring.atoms))
 
 
-def _hydrogen_faces(structure: Structure, ring: Ring, site: ReactiveSite, beta: BetaCarbon) -> set[Relation] | None:
+def _hydrogen_faces(ring: Ring, site: ReactiveSite, beta: BetaCarbon) -> set[Relation] | None:
     """Return how the hydrogens of a ring carbon stand to the leaving group; None where nothing is drawn."""
     if beta.hydrogens >= 2:
         return {Relation.CIS, Relation.TRANS}

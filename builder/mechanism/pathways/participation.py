@@ -1,12 +1,11 @@
 """Neighbouring groups: one displaces the leaving group from within; a ring stays, a bridged ion opens again."""
 
-from collections.abc import Iterator
-from dataclasses import dataclass
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, replace
 from functools import lru_cache, partial
 
 from builder.chemistry.geometry import Relation, perceive_rings
 from builder.chemistry.neutral import neutral_form
-from builder.chemistry.patterns import Electrons
 from builder.chemistry.perception import (
     Degree,
     Nucleophile,
@@ -38,9 +37,6 @@ from builder.records.vocabulary import Course, Mechanism
 __all__ = ["participation_pathways"]
 
 LARGEST_RING = 8
-_TRANSIENT = frozenset(
-    {"aziridinium", "episulfonium", "acyloxonium", "phenonium", "halonium", "trialkyloxonium", "carboxylate"}
-)
 _OPENED_FIRST = (
     "aziridinium",
     "episulfonium",
@@ -50,9 +46,11 @@ _OPENED_FIRST = (
     "trialkyloxonium",
     "carboxylate",
 )
+_TRANSIENT = frozenset(_OPENED_FIRST)
+_ONLY_AS_ANIONS = frozenset({"carbon acid", "carbon acid, weak", "alkyne", "imide", "sulfonamide", "dithioacetal"})
 _HALIDES = frozenset({"chloride", "bromide", "iodide"})
 _BRIDGES = frozenset({"arene", "alkene", "organohalide"})
-"""Neighbours between which and the other carbon nothing is left to tell: with a symmetrical ion the product is racemic."""
+"""Neighbours whose bridged ion, if it is symmetrical, has forgotten from where it came."""
 
 
 def participation_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> Iterator[Pathway]:
@@ -92,27 +90,27 @@ def reachable_groups(structure: Structure, site: ReactiveSite) -> tuple[tuple[Nu
     found = []
     for group in neighbouring_groups(structure):
         distance = distances.get(group.atom)
-        if distance is None or group.atom == site.leaving_atom or group.atom == site.alpha_carbon:
+        if distance is None or group.atom in {site.leaving_atom, site.alpha_carbon}:
             continue
         size = distance + 1
-        if not 3 <= size <= LARGEST_RING or not _can_stand_behind(structure, site, group, size):
-            continue
-        if group.kind in {"arene", "alkene"} and size != 3:
-            continue
-        if (
-            size <= 4
-            and group.kind not in {"carboxylate", "carboxylic acid"}
-            and any(b.hybridisation != "sp3" for b in site.beta if b.atom in _beside(structure, group))
-        ):
-            continue
-        if group.kind == "ether" and size not in {5, 6}:
-            continue
-        if group.kind == "organohalide" and size not in {3, 5}:
-            continue
-        if group.electrons is Electrons.SHIFT and group.kind == "ester carbonyl" and size not in {5, 6}:
+        if not _closes(structure, site, group, size) or not _can_stand_behind(structure, site, group):
             continue
         found.append((group, size))
     return tuple(found)
+
+
+_RINGS = {"arene": {3}, "alkene": {3}, "ether": {5, 6}, "organohalide": {3, 5}, "ester carbonyl": {5, 6}}
+"""Rings that some kinds of neighbour close at all; any other kind closes those of three to LARGEST_RING."""
+
+
+def _closes(structure: Structure, site: ReactiveSite, group: Nucleophile, size: int) -> bool:
+    """Say whether a group closes a ring of this size; rings of three and four need a saturated carbon between."""
+    if not 3 <= size <= LARGEST_RING or size not in _RINGS.get(group.kind, {size}):
+        return False
+    if size > 4 or group.kind in {"carboxylate", "carboxylic acid"}:
+        return True
+    beside = _beside(structure, group)
+    return all(b.hybridisation == "sp3" for b in site.beta if b.atom in beside)
 
 
 def _beside(structure: Structure, group: Nucleophile) -> set[AtomId]:
@@ -130,7 +128,7 @@ def _distances(structure: Structure, site: ReactiveSite) -> dict[AtomId, int]:
     return found
 
 
-def _can_stand_behind(structure: Structure, site: ReactiveSite, group: Nucleophile, size: int) -> bool:
+def _can_stand_behind(structure: Structure, site: ReactiveSite, group: Nucleophile) -> bool:
     """Say whether the group can stand anti to the leaving group: in a common ring, on the other face."""
     for ring in perceive_rings(structure):
         if site.alpha_carbon not in ring.atoms or len(ring.atoms) < 5:
@@ -172,23 +170,11 @@ def _rate_terms(
     site = departure.site
     if group.kind in {"arene", "alkene", "organohalide"}:
         return _bridging_terms(departure, group, flask, parameters)
-    kind = load_kinds()[group.kind]
-    cost: list[Term] = []
-    if kind.anion is not None and group.charge >= 0:
-        made = _ionised(group, kind, flask, parameters)
-        if made is not None:
-            kind, cost = made
-        elif group.kind in {"carbon acid", "carbon acid, weak", "alkyne", "imide", "sulfonamide", "dithioacetal"} or (
-            group.kind == "amide" and group.symbol == "N"
-        ):
-            return None
-        elif group.kind == "carboxylic acid" and departure.group == "diazonium":
-            cost = [parameters.term("ngp.carboxyl.diazonium")]
-        elif group.loses_proton and size <= 4:
-            cost = [parameters.term("ngp.uncharged")]
-    if flask.is_bronsted_acid and kind.pka > 2.0:
-        return None  # a proton has taken its lone pair
-    if kind.element is None:
+    acting = _acting(departure, group, size, flask, parameters)
+    if acting is None:
+        return None
+    kind, cost = acting
+    if kind.element is None or (flask.is_bronsted_acid and kind.pka > 2.0):  # a proton has taken its lone pair
         return None
     element = kind.element
     terms = [parameters.term(key, factor) for key, factor in site_features(departure.structure, site) if not _own(key)]
@@ -211,6 +197,23 @@ def _rate_terms(
     if flask.has_silver and departure.family == "halide":
         terms.append(parameters.term("ngp.silver"))
     return terms
+
+
+def _acting(
+    departure: Departure, group: Nucleophile, size: int, flask: Flask, parameters: Parameters
+) -> tuple[Kind, list[Term]] | None:
+    """Return the kind a group acts as, its anion where the flask makes one, and what that costs; None if it cannot."""
+    kind = load_kinds()[group.kind]
+    if kind.anion is None or group.charge < 0:
+        return kind, []
+    made = _ionised(group, kind, flask, parameters)
+    if made is not None:
+        return made
+    if group.kind in _ONLY_AS_ANIONS or (group.kind == "amide" and group.symbol == "N"):
+        return None
+    if group.kind == "carboxylic acid" and departure.group == "diazonium":
+        return kind, [parameters.term("ngp.carboxyl.diazonium")]
+    return kind, [parameters.term("ngp.uncharged")] if group.loses_proton and size <= 4 else []
 
 
 def _carbonyl_in_ring(structure: Structure, site: ReactiveSite, group: Nucleophile) -> bool:
@@ -334,50 +337,47 @@ def _outcomes(departure: Departure, group: Nucleophile, flask: Flask, parameters
         closed = cyclise(structure, site, group)
     except UnbalancedTransformation:
         return ()
-    ring = closed.product
     centre = closed.from_substrate.get(site.alpha_carbon)
     if centre is None:
         return ()
-    is_specified = site.stereo is SiteStereo.SPECIFIED
-    if group.kind == "amide":
-        ring = neutral_form(ring)
-        course = Course.INVERSION if is_specified else Course.NOT_APPLICABLE
-        return (Outcome(ring, 1.0, course, False, ("ring closure by the neighbouring group",)),)
-    if not _is_transient(ring, centre):
-        course = Course.INVERSION if is_specified else Course.NOT_APPLICABLE
-        return (Outcome(ring, 1.0, course, False, ("ring closure by the neighbouring group",)),)
-    wet = flask.medium.share("water") > 0 or any(a.kind.name == "water" for a in flask.attackers)
-    if group.kind == "ester carbonyl" and wet:
-        course = Course.INVERSION if is_specified else Course.NOT_APPLICABLE
-        words = (f"{group.kind} displaces {departure.group}", "water attacks the acyl carbon of the ion")
+    ring = neutral_form(closed.product) if group.kind == "amide" else closed.product
+    inverted = Course.INVERSION if site.stereo is SiteStereo.SPECIFIED else Course.NOT_APPLICABLE
+    stays = (Outcome(ring, 1.0, inverted, False, ("ring closure by the neighbouring group",)),)
+    if group.kind == "amide" or not _is_transient(ring, centre):
+        return stays
+    told = f"{group.kind} displaces {departure.group}"
+    if group.kind == "ester carbonyl" and any(a.kind.name == "water" for a in flask.attackers):
         opened = hydrated_acyloxonium(ring)
-        if opened:
-            return merged_outcomes([Outcome(p, 1.0, course, False, words) for p in opened])
+        words = (told, "water attacks the acyl carbon of the ion")
+        return merged_outcomes([Outcome(p, 1.0, inverted, False, words) for p in opened]) if opened else stays
     openings = list(_openings(ring, centre, flask, parameters))
-    if not openings:
-        course = Course.INVERSION if is_specified else Course.NOT_APPLICABLE
-        return (Outcome(ring, 1.0, course, False, ("ring closure by the neighbouring group",)),)
+    if group.kind == "carboxylic acid" and flask.is_bronsted_acid:
+        openings = [replace(o, product=neutral_form(o.product)) for o in openings]
+    found = _opened_outcomes(site, group, openings, (told, "opening of the bridged ion"))
+    return merged_outcomes(found) if found else stays
+
+
+def _opened_outcomes(
+    site: ReactiveSite, group: Nucleophile, openings: Sequence[_Opening], words: tuple[str, ...]
+) -> list[Outcome]:
+    """Return the openings of a bridged ion as outcomes: two inversions at the carbon of the group, one beside it.
+
+    A carbon or halogen bridge with two like ends makes a racemate; in a ring the relation to the rest is kept.
+    """
     kept = {o.product for o in openings if o.at_alpha}
+    mirrors = {product.mirror_image for product in kept} - kept
+    in_ring_by_halogen = bool(site.ring_sizes) and group.kind == "organohalide"
+    racemic = group.kind in _BRIDGES and not in_ring_by_halogen and any(o.product in mirrors for o in openings)
     found = []
     for opening in openings:
         course = Course.NOT_APPLICABLE
-        if is_specified:
-            mirrored = any(o.product in {p.mirror_image for p in kept} and o.product not in kept for o in openings)
-            racemic = group.kind in _BRIDGES and mirrored and not (site.ring_sizes and group.kind == "organohalide")
+        if site.stereo is SiteStereo.SPECIFIED:
             course = Course.RACEMISATION if racemic else Course.RETENTION
         elif not opening.at_alpha and opening.is_specified:
             course = Course.INVERSION
-        same = any(opening.product in (p, p.mirror_image) for p in kept)
-        found.append(
-            Outcome(
-                opening.product,
-                opening.weight,
-                course,
-                not opening.at_alpha and not same,
-                (f"{group.kind} displaces {departure.group}", "opening of the bridged ion"),
-            )
-        )
-    return merged_outcomes(found)
+        moved = not opening.at_alpha and opening.product not in kept | mirrors
+        found.append(Outcome(opening.product, opening.weight, course, moved, words))
+    return found
 
 
 def _is_transient(ring: Structure, centre: AtomId) -> bool:

@@ -315,7 +315,7 @@ def ambident_terms(
         "cation": on_cation,
         "hard": hard,
         "polar": polar,
-        "protic": flask.medium.share("water") + flask.medium.share("2,2,2-trifluoroethanol") > 0.5,
+        "protic": flask.medium.share("water") + flask.medium.share("trifluoroethanol") > 0.5,
         "branched": branched,
     }
     for word, holds in conditions.items():
@@ -375,7 +375,7 @@ def _sn2_prime(
     far = _far_end(structure, site)
     if far is None:
         return
-    alkyl, blocked = _substituents(structure, far), _is_blocked(structure, site)
+    alkyl, blocked = _substituents(structure, far), _is_blocked(site)
     terms = [parameters.term(key) for key in ("sn2.zero", "sn2.alpha.primary", "sn2.activation.vinyl.primary")]
     terms += [parameters.term("sn2prime.against"), *departure.terms, *_leaving_terms(departure, attacker, parameters)]
     terms += nucleophile_terms(attacker, flask, parameters)
@@ -447,6 +447,6 @@ def _substituents(structure: Structure, carbon: AtomId) -> int:
     return sum(1 for n, o in atoms[carbon].neighbours if o == 1.0 and atoms[n].symbol != "H")
 
 
-def _is_blocked(structure: Structure, site: ReactiveSite) -> bool:
+def _is_blocked(site: ReactiveSite) -> bool:
     """Say whether the near carbon is crowded: tertiary, or beside a quaternary carbon."""
     return site.degree is Degree.TERTIARY or any(b.branches >= 3 for b in site.beta if b.hybridisation == "sp3")
