@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from functools import lru_cache, partial
 
 from builder.chemistry.geometry import perceive_rings
-from builder.chemistry.perception import Degree, ReactiveSite, SiteStereo
+from builder.chemistry.perception import Degree, Nucleophile, ReactiveSite, SiteStereo
 from builder.chemistry.settling import dealkylated_phosphonium
 from builder.chemistry.structure import AtomId, Structure, parse_smiles
 from builder.chemistry.transform import StereoEffect, substitute, transpose_allylic
@@ -18,7 +18,7 @@ from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
 from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
-from builder.mechanism.skeleton import LARGE_RING
+from builder.mechanism.skeleton import LARGE_RING, skeleton_of
 from builder.mechanism.solvents import SolventKind
 from builder.records.vocabulary import Course, Mechanism
 
@@ -317,10 +317,26 @@ def ambident_terms(
         "polar": polar,
         "protic": flask.medium.share("water") + flask.medium.share("trifluoroethanol") > 0.5,
         "branched": branched,
+        "fused": _spares_fused_ring(attacker.nucleophile),
     }
     for word, holds in conditions.items():
         if holds and f"{key}.{word}" in parameters:
             yield parameters.term(f"{key}.{word}")
+
+
+def _spares_fused_ring(nucleophile: Nucleophile) -> bool:
+    """Say whether a ring carbon attacks in a way that leaves a fused ring aromatic: C1 of 2-naphthoxide, not C3.
+
+    So it does where the two ring atoms that are neither fused nor part of the new C-C=O are neighbours.
+    """
+    oxygen_bearing = nucleophile.via[0]
+    if oxygen_bearing is None:
+        return False
+    skeleton = skeleton_of(nucleophile.species)
+    ring = next((r for r in skeleton.rings_through(nucleophile.atom) if oxygen_bearing in r), frozenset())
+    fused = {a for a in ring if sum(skeleton.is_aromatic(n) for n in skeleton.neighbours(a)) == 3}
+    rest = sorted(ring - fused - {nucleophile.atom, oxygen_bearing})
+    return bool(fused) and len(rest) == 2 and rest[1] in skeleton.neighbours(rest[0])
 
 
 def _borderline_terms(departure: Departure, attacker: Attacker, flask: Flask, parameters: Parameters) -> Iterator[Term]:
