@@ -38,11 +38,12 @@ Answer = Mapping[str, Any]
 
 
 class CaseSet(StrEnum):
-    """The sets, by when they were written: fresh and held-out before the engine saw them."""
+    """The sets, by when they were written: all but the open ones before the engine saw them."""
 
     OPEN = "open"
     FRESH = "fresh"
     HELD_OUT = "held-out"
+    THIRD = "third"
 
 
 class Asked(StrEnum):

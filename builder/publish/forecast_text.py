@@ -224,18 +224,35 @@ def _shares(forecast: Forecast) -> list[str]:
 def _products(forecast: Forecast) -> list[str]:
     if not forecast.products:
         return []
-    shown = [p for p in forecast.products if p.share >= 0.005][:MOST_PRODUCTS] or list(forecast.products[:1])
-    rest = len(forecast.products) - len(shown)
-    lines = [line for product in shown for line in _product_lines(product)]
+    ways: dict[str, list[Forecasted]] = {}
+    for product in forecast.products:
+        ways.setdefault(product.structure.smiles, []).append(product)
+    ranked = sorted(ways.values(), key=lambda ways: -_share(ways))
+    shown = [ways for ways in ranked if _share(ways) >= 0.005][:MOST_PRODUCTS] or ranked[:1]
+    rest = len(ranked) - len(shown)
+    lines = [line for ways in shown for line in _product_lines(ways)]
     return ["Products, share of what reacts", *lines, *([f"  {rest} more, see --json"] if rest else [])]
 
 
-def _product_lines(product: Forecasted) -> list[str]:
-    course = "" if product.course is Course.NOT_APPLICABLE else product.course.value
-    how = joined((product.mechanism.value, course, "rearranged" if product.rearranged else ""))
-    said = f"{how}; {' > '.join(product.path)}"
-    line = f"  {percent_text(product.share):>8}  {product.structure.smiles}"
-    return [f"{line}  {said}"] if len(line) + len(said) < WIDTH else [line, f"            {said}"]
+def _share(ways: Sequence[Forecasted]) -> float:
+    return math.fsum(way.share for way in ways)
+
+
+def _product_lines(ways: Sequence[Forecasted]) -> list[str]:
+    """Return the lines of one product; ways: one for each mechanism that leads to it."""
+    line = f"  {percent_text(_share(ways)):>8}  {ways[0].structure.smiles}"
+    told = [way for way in ways if way.share >= 0.0005] or ways[:1]
+    said = [_way_text(way, shared=len(told) > 1) for way in told]
+    if len(said) == 1 and len(line) + len(said[0]) < WIDTH:
+        return [f"{line}  {said[0]}"]
+    return [line, *(f"            {each}" for each in said)]
+
+
+def _way_text(way: Forecasted, *, shared: bool) -> str:
+    mechanism = f"{way.mechanism.value} {percent_text(way.share)}" if shared else way.mechanism.value
+    course = "" if way.course is Course.NOT_APPLICABLE else way.course.value
+    how = joined((mechanism, course, "rearranged" if way.rearranged else ""))
+    return f"{how}; {' > '.join(way.path)}"
 
 
 def _rate(question: Question, forecast: Forecast) -> list[str]:

@@ -69,7 +69,6 @@ def test_renumbering_and_rewriting_the_smiles_changes_nothing() -> None:
     assert changed > 80
 
 
-@pytest.mark.xfail(strict=True, reason="engine: proton loss asks whether the first solvent named is a carboxylic acid")
 def test_the_order_of_solvents_and_additives_changes_nothing() -> None:
     several = [c for c, _ in asked() if len(c["solvent"]) > 1 or len(c["additives"]) > 1]
     assert len(several) > 10

@@ -47,7 +47,7 @@ OPEN = [
     ("CC(Cl)CC(=O)OC", "chloride", False, "SN2 SN1 E2 E1 E1cB"),
     ("OCC[N+](=O)[O-]", "hydroxyl", False, "E1cB"),
     ("OCC1c2ccccc2-c2ccccc21", "hydroxyl", False, "E1cB"),  # 9-fluorenylmethyl
-    ("CC(F)(F)C(F)F", "fluoride", False, "E1cB"),  # several halogens beside the hydrogen
+    ("CC(F)(F)C(F)F", "fluoride", False, "E2 E1cB"),  # several halogens beside the hydrogen
     ("OCCBr", "bromide", False, "SN2 E2 NGP"),
     ("CC(Br)C(=O)[O-]", "bromide", False, "SN2 SN1 E2 E1 NGP"),  # α-lactone
     ("CCOC(=O)CBr", "bromide", False, "SN2"),

@@ -16,10 +16,6 @@ from builder.mechanism.rate_terms import Term
 REPRODUCIBLE = 1e-4  # what another program must agree with
 
 SAME_EACH_TIME = settings(derandomize=True, deadline=None, max_examples=60)
-SHORT_REAGENT = pytest.mark.xfail(
-    strict=True,
-    reason="engine: a step of the grid straddles the end of a reagent in short supply, conversion 0.002 off",
-)
 
 S0 = 0.5  # mol/L
 TIMES_IN_HALF_LIVES = (0.01, 0.3, 1.0, 2.5, 6.0)

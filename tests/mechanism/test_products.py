@@ -88,13 +88,12 @@ DOES_NOT_FOLLOW = [
 # substrate, group, flask, product, a gate that stands on every way to it
 CLOSED = [
     ("Clc1ccccc1", "chloride", [AZIDE], "[N-]=[N+]=Nc1ccccc1", "sn2-closed-unsaturated"),
-    ("CCCCF", "fluoride", [AZIDE], "CCCCN=[N+]=[N-]", "leaving-group-stays"),
+    ("CCCCF", "fluoride", [AZIDE], "CCCCN=[N+]=[N-]", "fluoride-stays"),
     ("CCCCO", "hydroxyl", [AZIDE], "CCCCN=[N+]=[N-]", "leaving-group-stays"),
     ("ClC12CCC(CC1)C2", "chloride", ["O"], "OC12CCC(CC1)C2", "sn2-closed-bridgehead"),
     ("ClC(Cl)Cl", "chloride", [AZIDE], "ClC(Cl)N=[N+]=[N-]", "sn2-closed-trihalomethyl"),
     ("BrC1CC1", "bromide", [AZIDE], "[N-]=[N+]=NC1CC1", "sn2-closed-cyclopropyl"),
-    ("OCCCCF", "fluoride", ["[Na+].[OH-]"], "C1CCOC1", "leaving-group-stays"),
-    ("CCCCF", "fluoride", [ETHOXIDE], "C=CCC", "leaving-group-stays"),
+    ("OCCCCF", "fluoride", ["[Na+].[OH-]"], "C1CCOC1", "fluoride-stays"),
     # ammonia takes up side chains but no ring, whether that comes last or between them
     ("BrCCc1ccc(Br)cc1", "bromide", ["N"], "BrCCc1ccc(NCCc2ccc(Br)cc2)cc1", "sn2-closed-unsaturated"),
     ("BrCc1ccc(Br)cc1", "bromide", ["N"], "BrCc1ccc(N(Cc2ccc(Br)cc2)Cc2ccc(Br)cc2)cc1", "sn2-closed-unsaturated"),

@@ -25,7 +25,7 @@ from builder.mechanism.departure import Departure
 from builder.mechanism.faces import exo_only, trans_to_acyloxy
 from builder.mechanism.flask import ENOUGH_M, NEUTRAL_PKA, Attacker, Flask
 from builder.mechanism.ionising_power import Scale
-from builder.mechanism.log_rate import LogRate
+from builder.mechanism.log_rate import REFERENCE_K, LogRate
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
 from builder.mechanism.pathways.substitution import ambident_terms, log10
 from builder.mechanism.rate_terms import Parameters, Term
@@ -55,6 +55,8 @@ _ALL = 12.0
 """log10 of a ratio beyond which all goes one way."""
 _RACEMISED = 0.1
 """Net inversion below which the course is called racemisation."""
+_INVERTED = 0.9
+"""Net inversion above which it is called inversion."""
 
 
 def ionisation_pathways(
@@ -358,7 +360,7 @@ def _proton_loss_terms(
     term = parameters.term
     nature, medium = station.nature, flask.medium
     yield term("e1.zero")
-    yield term("e1.temperature", 1 / 298.15 - 1 / temperature_k)
+    yield term("e1.temperature", 1 / REFERENCE_K - 1 / temperature_k)
     bare = group in _NEUTRAL_GROUPS  # no counter-ion beside the cation to take the proton
     yield term("e1.power.neutral" if bare else "e1.power", medium.power().value)
     branched = sum(
@@ -577,7 +579,7 @@ def _course(
     net = abs(faces[0] - faces[1])
     if edits[0].effect is edits[1].effect:
         return Course.NOT_DETERMINED
-    if net > 0.9:
+    if net > _INVERTED:
         return Course.INVERSION
     return Course.RACEMISATION if net < _RACEMISED else Course.PARTIAL_INVERSION
 

@@ -37,6 +37,10 @@ from builder.records.vocabulary import Course, Mechanism
 __all__ = ["participation_pathways"]
 
 LARGEST_RING = 8
+_LEAST_WEIGHT = 0.02
+"""Share of the capture of a bridged ion below which a nucleophile is left out."""
+_LEAST_IONISED = -9.0
+"""log10 of the share of the anion below which a neighbour counts as not ionised."""
 _OPENED_FIRST = (
     "aziridinium",
     "episulfonium",
@@ -289,7 +293,7 @@ def _ionised(group: Nucleophile, kind: Kind, flask: Flask, parameters: Parameter
             continue
         share = min(0.0, base.pka - acid_pka + log10(max(base.molar, 1e-6)))
         best = share if best is None else max(best, share)
-    if best is None or best < -9.0:
+    if best is None or best < _LEAST_IONISED:
         return None
     anion = load_kinds()[kind.anion]
     term = Term(
@@ -405,7 +409,7 @@ def _openings(ring: Structure, centre: AtomId, flask: Flask, parameters: Paramet
     for site in sites:
         at_alpha = ranks[site.alpha_carbon] == ranks[centre]
         for attacker, weight in weighted:
-            if weight < 0.02 * total:
+            if weight < _LEAST_WEIGHT * total:
                 continue
             reversible = attacker.kind.name in _HALIDES or site.leaving_group == "halonium"
             log = _opening_log(site, attacker, parameters, reversible=reversible)
@@ -469,7 +473,7 @@ def _sigma_outcomes(
     total = sum(w for _, w in weighted)
     found = []
     for attacker, weight in weighted:
-        if weight < 0.02 * total:
+        if weight < _LEAST_WEIGHT * total:
             continue
         direct = substitute(structure, site, attacker.nucleophile, inversion=False)
         shifted = capture(ionise_with_shift(structure, site, *bond), attacker.nucleophile)
