@@ -24,8 +24,11 @@ _NEUTRAL_STAND_IN = "1,2-dichloroethane"
 _PROTIC_STAND_IN = "ethanol"
 _SILVER = "[Ag+]"
 _SPARINGLY_SOLUBLE = frozenset({"[Na+]", "[K+]", "[Ca+2]", "[Mg+2]"})
+_NEXT_TO_NOTHING = 1e-12
 _FEW_ATOMS = 4
 """Heavy atoms up to which an anion counts as inorganic, so that its salt hardly dissolves in ether or toluene."""
+_HELD_BY_SALT = 3.8
+"""Desolvation term of an anion from which its sodium salt hardly dissolves in acetone or acetonitrile either."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -35,7 +38,8 @@ class Attacker:
     kind: what it is like as it attacks; of a phenol whose proton a base has taken, a phenoxide.
     n, n_error: Swain-Scott n(CH3I) in methanol of the usual atom of the species.
     is_usual_atom: the one that attacks first.
-    molar: mol/L. pool: what it is drawn from; None for a solvent, which does not run out.
+    molar: mol/L. pool: what it is drawn from; None for a solvent, which does not run out. portion: of the pool, what
+    is in this form, acid or anion; protons move faster than carbon reacts, so it stays the same as the pool shrinks.
     """
 
     nucleophile: Nucleophile
@@ -52,6 +56,12 @@ class Attacker:
     pool: str | None
     is_sparingly_soluble: bool = False
     is_usual_atom: bool = True
+    portion: float = 1.0
+
+    @property
+    def log_activity(self) -> float:
+        """Return log10 of what a rate constant is multiplied by: mol/L of a solvent, else the portion of its pool."""
+        return math.log10(max(_NEXT_TO_NOTHING, self.molar if self.is_solvent else self.portion))
 
     @property
     def is_solvent(self) -> bool:
@@ -214,11 +224,21 @@ def _charge(
         left.append(replace(base, molar=remaining))
     merged = _merged([*found, *(b for b in left if b.name not in taken)])
     levelled = [_levelled(a, medium) for a in merged]
+    pools = _pools(levelled, math.fsum(b.molar for b in left))
+    return [a if a.pool is None else replace(a, portion=a.molar / pools[a.pool]) for a in levelled], pools
+
+
+def _pools(attackers: Sequence[Attacker], base_molar: float) -> dict[str, float]:
+    """Return what can be used up, mol/L by name; an anion is made again from its acid as long as base is left."""
     pools: dict[str, float] = {}
-    for a in levelled:
+    for a in attackers:
         if a.pool is not None:
             pools[a.pool] = max(pools.get(a.pool, 0.0), a.molar)
-    return levelled, pools
+    for anion in attackers:
+        acid = next((a for a in attackers if a.pool == anion.pool and a.is_anion < anion.is_anion), None)
+        if anion.pool is not None and acid is not None:
+            pools[anion.pool] = max(pools[anion.pool], anion.molar + min(acid.molar, base_molar))
+    return pools
 
 
 def _is_water_set_free(question: Question, medium: Medium) -> bool:
@@ -230,18 +250,14 @@ def _is_water_set_free(question: Question, medium: Medium) -> bool:
 
 def _attackers_of(ingredient: Ingredient, molar: float, medium: Medium, *, helped: bool) -> list[Attacker]:
     counter = {ingredient.counter_ion} | {s.smiles for s in ingredient.structure.fragments}
-    sparing = medium.is_apolar and not helped and bool(counter & _SPARINGLY_SOLUBLE)
+    is_salt = not helped and bool(counter & _SPARINGLY_SOLUBLE)
     found = []
     able = attacking_atoms(ingredient.structure)
     for place, nucleophile in enumerate(able):
         small = nucleophile.species.heavy_atom_count <= _FEW_ATOMS and nucleophile.charge < 0
-        found.append(
-            replace(
-                _attacker(nucleophile, molar, nucleophile.species.smiles, able[0].kind),
-                is_sparingly_soluble=sparing and small,
-                is_usual_atom=place == 0,
-            )
-        )
+        attacker = _attacker(nucleophile, molar, nucleophile.species.smiles, able[0].kind)
+        held = medium.is_apolar or (medium.is_weak_donor and attacker.kind.desolvation >= _HELD_BY_SALT)
+        found.append(replace(attacker, is_sparingly_soluble=is_salt and small and held, is_usual_atom=place == 0))
     return found
 
 

@@ -12,6 +12,8 @@ __all__ = ["Medium", "medium_of"]
 
 PROTIC_SHARE = 0.05
 """Share by volume of a protic solvent from which anions are held by hydrogen bonds as in it."""
+WEAK_DONOR = 20.0
+"""Donor number below which an aprotic solvent hardly takes alkali cations up, kcal/mol."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,6 +38,12 @@ class Medium:
     def is_apolar(self) -> bool:
         """Say whether it is neither protic nor mostly dipolar."""
         return not self.is_protic and not self.is_dipolar_aprotic
+
+    @property
+    def is_weak_donor(self) -> bool:
+        """Say whether it is aprotic and binds alkali cations too weakly to dissolve most of their salts."""
+        donor = self.polarity.donor_number
+        return not self.is_protic and donor is not None and donor < WEAK_DONOR
 
     def share_of(self, kind: SolventKind) -> float:
         """Return the share by volume of solvents of a kind."""

@@ -65,7 +65,7 @@ def e2_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> I
                 rate=LogRate(
                     terms=(*terms, parameters.term("model.E2")),
                     entropy=(parameters.term("e2.entropy"),),
-                    split=log10(departure.site.multiplicity) + (log10(base.molar) if base.is_solvent else 0.0),
+                    split=log10(departure.site.multiplicity) + base.log_activity,
                 ),
                 event=f"{base.name} takes a proton as {departure.group} leaves",
                 outcomes=partial(_outcomes, departure.structure, departure.site, way, base, parameters),
@@ -363,7 +363,7 @@ def e1cb_pathways(departure: Departure, flask: Flask, parameters: Parameters) ->
                 rate=LogRate(
                     tuple(terms),
                     (parameters.term("e1cb.entropy"),),
-                    log10(departure.site.multiplicity) + (log10(base.molar) if base.is_solvent else 0.0),
+                    log10(departure.site.multiplicity) + base.log_activity,
                 ),
                 event=f"{base.name} takes the acidic proton, {departure.group} leaves from the carbanion",
                 outcomes=partial(_e1cb_outcomes, departure.structure, departure.site, way, parameters),

@@ -111,7 +111,7 @@ def rate_of(
     return LogRate(
         terms=(*terms, parameters.term(model)),
         entropy=(parameters.term(entropy),),
-        split=log10(site.multiplicity) + (log10(attacker.molar) if attacker.is_solvent else 0.0),
+        split=log10(site.multiplicity) + attacker.log_activity,
     )
 
 
