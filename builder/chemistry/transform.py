@@ -267,11 +267,12 @@ def allylic_forms(cation: Cation) -> tuple[Cation, ...]:
     return tuple(sorted(kept, key=lambda f: f.structure.smiles))
 
 
-def fragment(cation: Cation, near: AtomId, far: AtomId) -> Cation:
+def fragment(cation: Cation, near: AtomId, far: AtomId, *, cis: bool | None = None) -> Cation:
     """Return the cation after the bond between a neighbour of the centre and the next atom has broken.
 
     centre(+)-near-far becomes centre=near and far(+): cyclopropyl to allyl, cyclopropylmethyl to homoallyl.
-    The new double bond has no drawn geometry. Raises ValueError if the atoms do not lie in that order.
+    The new double bond is drawn cis or trans where it is asked for and can be either, else without geometry.
+    Raises ValueError if the atoms do not lie in that order.
     """
     bench = Workbench(cation.structure)
     if bench.order(cation.centre, near) != 1 or bench.order(near, far) != 1:
@@ -280,6 +281,8 @@ def fragment(cation: Cation, near: AtomId, far: AtomId) -> Cation:
     bench.set_order(cation.centre, near, 2)
     bench.add_charge(cation.centre, -1)
     bench.add_charge(far, 1)
+    if cis is not None:
+        _set_geometry(bench, (cation.centre, near), cis)
     return _cation(bench, far, cation)
 
 

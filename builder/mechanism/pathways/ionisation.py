@@ -503,7 +503,7 @@ def captured_outcomes(
 def _forms(cation: Cation, station: Station, reception: Reception) -> Iterator[tuple[Cation, float, bool]]:
     """Yield the cation drawn at each of its allylic ends with its share of capture, and whether it is the far one."""
     if reception.is_reversible and station.nature.cyclopropyl and station.nature.alkyl:
-        yield from _opened_cyclopropanes(cation)
+        yield from _opened_cyclopropanes(cation, reception.parameters)
         return
     others = allylic_forms(cation) if station.nature.vinyl else ()
     if not others:
@@ -530,7 +530,7 @@ def _forms(cation: Cation, station: Station, reception: Reception) -> Iterator[t
         yield form, 10**log / total, is_far
 
 
-def _opened_cyclopropanes(cation: Cation) -> Iterator[tuple[Cation, float, bool]]:
+def _opened_cyclopropanes(cation: Cation, parameters: Parameters) -> Iterator[tuple[Cation, float, bool]]:
     """Yield the homoallylic ions of a cyclopropylmethyl cation: halide that comes and goes ends at the open chain."""
     atoms = cation.structure.atoms
     found = []
@@ -539,11 +539,17 @@ def _opened_cyclopropanes(cation: Cation) -> Iterator[tuple[Cation, float, bool]
             continue
         for far, far_order in atoms[near].neighbours:
             if far != cation.centre and far_order == 1.0 and 3 in atoms[far].ring_sizes:
-                found.append((len(atoms[far].neighbours), fragment(cation, near, far)))
-    least = min((degree for degree, _ in found), default=0)
-    open_chains = {form.structure.smiles: form for degree, form in found if degree == least}
-    for form in open_chains.values():
-        yield form, 1.0 / len(open_chains), True
+                found.append((len(atoms[far].neighbours), near, far))
+    least = min((degree for degree, _, _ in found), default=0)
+    open_chains: dict[str, tuple[Cation, float]] = {}
+    for cis, weight in ((False, 10 ** parameters.value("e1.trans")), (True, 1.0)):
+        for degree, near, far in found:
+            if degree == least:
+                form = fragment(cation, near, far, cis=cis)
+                open_chains.setdefault(form.structure.smiles, (form, weight))
+    total = math.fsum(weight for _, weight in open_chains.values())
+    for form, weight in open_chains.values():
+        yield form, weight / total, True
     if not open_chains:
         yield cation, 1.0, False
 
