@@ -328,8 +328,9 @@ class _Searched:
         """Return every match, symmetric ones too; at most MAX_MATCHES, so that no polymer can stall it."""
         if not query.signs <= self.signs:
             return ()
-        if any(self.elements.get(element, 0) < number for element, number in query.elements.items()):
-            return ()
+        for element, number in query.elements.items():
+            if self.elements.get(element, 0) < number:
+                return ()
         return tuple(self.mol.GetSubstructMatches(query.mol, uniquify=False, maxMatches=MAX_MATCHES))
 
 

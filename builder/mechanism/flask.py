@@ -144,8 +144,8 @@ MOST_ACIDITY = 1.5
 def fill_flask(question: Question, parameters: Parameters) -> Flask:
     """Return the flask of a question."""
     doses = list(question.additives)
-    stand_in = _PROTIC_STAND_IN if _is_protic_when_neat(question) else _NEUTRAL_STAND_IN
-    medium = medium_of(question.solvent, stand_in)
+    is_protic = not question.solvent and _is_protic_when_neat(question)
+    medium = medium_of(question.solvent, _PROTIC_STAND_IN if is_protic else _NEUTRAL_STAND_IN)
     roles = {dose.reagent.role for dose in doses}
     counter_ions = {i.counter_ion for i in (question.nucleophile, question.base) if i is not None}
     counter_ions |= {s.smiles for i in (question.nucleophile, question.base) if i for s in i.structure.fragments}

@@ -405,6 +405,7 @@ def test_cyclopropyl_cations_open() -> None:
     cation = _cation("Cc1ccc(S(=O)(=O)OC2CC2)cc1", "tosylate")
     near, far = (n for n, _ in cation.structure.atoms[cation.centre].neighbours)
     assert fragment(cation, near, far).structure == parse_smiles("C=C[CH2+]")
+    assert fragment(cation, near, far, cis=True).structure == parse_smiles("C=C[CH2+]")  # neither cis nor trans
     with pytest.raises(ValueError, match="fragment"):
         fragment(_cation("C=CCBr"), *_chain(_cation("C=CCBr")))
 

@@ -8,6 +8,9 @@ import math
 
 import pytest
 
+from builder.chemistry.structure import parse_smiles
+from builder.mechanism.asking import read_question
+from builder.mechanism.engine import predict
 from builder.mechanism.observations.tables import Channel, Known, Mixture, Share, ShareKind
 from builder.mechanism.observing import see_channel, see_share_value
 from builder.mechanism.rate_terms import fitted_parameters
@@ -236,3 +239,36 @@ def test_heat_turns_a_cation_towards_the_alkene() -> None:
     assert found == sorted(found)
     assert found[0] == pytest.approx(0.17, abs=0.08)
     assert found[-1] == pytest.approx(0.36, abs=0.15)
+
+
+# Kornblum, Seltzer and Haberfield, J. Am. Chem. Soc. 1963, 85, 1148 (from memory): sodium 2-naphthoxide and benzyl
+# bromide, share of attack by carbon 1.
+@pytest.mark.parametrize(("solvent", "percent"), [("DMF", 0), ("DMSO", 0), ("trifluoroethanol", 85), ("water", 84)])
+def test_carbon_attack_of_naphthoxide(solvent: str, percent: float) -> None:
+    asked = read_question(
+        substrate="BrCc1ccccc1",
+        nucleophile="[Na+].[O-]c1ccc2ccccc2c1",
+        solvent=[(solvent, 1.0)],
+        temperature_c=25,
+        time_h=1000.0,
+    )
+    products = predict(asked.question).products
+    ether, carbon = (
+        sum(p.share for p in products if p.structure == parse_smiles(smiles))
+        for smiles in ("c1ccc(COc2ccc3ccccc3c2)cc1", "Oc1ccc2ccccc2c1Cc1ccccc1")
+    )
+    assert 100 * carbon / (ether + carbon) == pytest.approx(percent, abs=10)
+
+
+# Julia, Julia and Guegan, Bull. Soc. Chim. Fr. 1960, 1072 (from memory): homoallylic bromides, mostly E.
+def test_a_cyclopropylmethanol_opens_to_the_e_homoallylic_bromide() -> None:
+    asked = read_question(
+        substrate="CC(O)C1CC1",
+        nucleophile="none",
+        additives=["HBr (48% aq)"],
+        solvent=[("water", 1.0)],
+        temperature_c=25,
+    )
+    products = {p.structure.smiles: p.share for p in predict(asked.question).products}
+    trans, cis = (products[parse_smiles(s).smiles] for s in ("C/C=C/CCBr", "C/C=C\\CCBr"))
+    assert trans > 3 * cis > 0

@@ -195,6 +195,34 @@ def test_two_equivalents_of_hydrogen_halide_and_an_alkyne_give_the_gem_dihalide(
     assert smiles_of(forecast)[0] == same(f"CC(C)({halogen}){halogen}")
 
 
+# --- in the flask ---------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("base", ["potassium carbonate", "caesium carbonate", "triethylamine"])
+def test_a_base_goes_on_taking_the_proton_of_a_phenol(base: str) -> None:
+    # The phenoxide there at any time is a part of the phenol only; all of it is used in the end.
+    forecast = ask("CI", "4-methoxyphenol", "acetone", 50, base=base, equivalents=1.2, time_h=1000.0)
+    assert forecast.conversion > 0.95
+
+
+def test_a_phenol_reacts_no_further_than_its_base_lasts() -> None:
+    forecast = ask("CCCCBr", "4-methoxyphenol", "DMF", 50, base="sodium hydride", equivalents=0.4, time_h=100.0)
+    assert forecast.conversion == pytest.approx(0.4, abs=0.02)
+
+
+@pytest.mark.parametrize(("salt", "solvent"), [("KCN", "acetonitrile"), ("potassium fluoride", "acetonitrile")])
+def test_a_crown_brings_the_salt_of_a_hard_anion_into_a_weak_donor(salt: str, solvent: str) -> None:
+    alone = ask("CCCCBr", salt, solvent, 60)
+    helped = ask("CCCCBr", salt, solvent, 60, additives=["18-crown-6"])
+    assert helped.log_k["SN2"] - alone.log_k["SN2"] > 1
+
+
+def test_sodium_iodide_dissolves_in_acetone() -> None:
+    assert (
+        ask("CCCCCl", "NaI", "acetone", 56).log_k == ask("CCCCCl", "NaI", "acetone", 56, additives=["18-crown-6"]).log_k
+    )
+
+
 # --- gates ----------------------------------------------------------------------------------------------------
 
 

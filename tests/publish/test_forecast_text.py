@@ -174,6 +174,20 @@ def test_the_whole_answer_reads_as_a_chemist_needs_it() -> None:
     )
 
 
+def test_a_product_of_two_mechanisms_is_one_product() -> None:
+    one = SN2.products[0]
+    other = replace(
+        one, share=0.05, mechanism=Mechanism.SN1, course=Course.RACEMISATION, path=("ionisation", "capture")
+    )
+    text = render_forecast(READ, of(products=(replace(one, share=0.88), other)), ())
+    products = text.split("Products")[1].split("\n\n")[0].splitlines()[1:]
+    assert products == [
+        f"      93 %  {one.structure.smiles}",
+        "            SN2 88 %, inversion; substitution",
+        "            SN1 5 %, racemisation; ionisation > capture",
+    ]
+
+
 def test_every_stop_is_shown_and_the_milder_ones_up_to_four() -> None:
     many = [{**STOP, "text": f"stop {n}"} for n in range(6)]
     many += [{**STOP, "id": f"mild-{n}", "severity": "note", "text": f"note {n}"} for n in range(6)]
