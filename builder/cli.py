@@ -31,8 +31,7 @@ from builder.mechanism.batch import answers, lines_of, usual_processes
 from builder.mechanism.calibration import calibrate as calibration_of
 from builder.mechanism.engine import predict as forecast_of
 from builder.mechanism.fit_report import RESIDUALS_TABLE, fit_report, fitted_table, residuals_table
-from builder.mechanism.improve import Improvement, improvements
-from builder.mechanism.question import Question
+from builder.mechanism.improve import improvements, is_as_wanted
 from builder.mechanism.rate_terms import FITTED_TABLE
 from builder.publish.build import NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
 from builder.publish.forecast_text import render_forecast
@@ -273,23 +272,23 @@ def predict(
         raise click.UsageError(f"--{missing[0]} is missing, or give --batch")
     try:
         read = question_from_words(**words)
-        changes = None if want is None else _changes(read.question, want)
+        wish = None if want is None else read_wish(want)
     except AskingError as error:
         raise click.UsageError(str(error)) from error
     forecast = forecast_of(read.question)
     cautions = forecast_cautions(read.question, forecast)
+    changes, is_met = None, False
+    if wish is not None:
+        wanted: dict[str, Any] = {"product": wish.product, "mechanism": wish.mechanism, "share": wish.share}
+        changes, is_met = improvements(read.question, **wanted), is_as_wanted(forecast, **wanted)
     if not as_json:
-        click.echo(render_forecast(read, forecast, cautions, changes), nl=False)
+        click.echo(render_forecast(read, forecast, cautions, changes, is_met=is_met), nl=False)
         return
     plain = {**answer_of(forecast, cautions), **how_read(read)}
     if changes is not None:
+        plain["as_wanted"] = is_met
         plain["changes"] = [change_of(change) for change in changes]
     click.echo(json.dumps(plain, ensure_ascii=False, indent=2, allow_nan=False))
-
-
-def _changes(question: Question, want: str) -> tuple[Improvement, ...]:
-    wanted = read_wish(want)
-    return improvements(question, product=wanted.product, mechanism=wanted.mechanism, share=wanted.share)
 
 
 def _predict_batch(batch: Path, output: Path, processes: int) -> None:

@@ -62,6 +62,13 @@ def test_a_wish_is_answered_with_changes(run: Run) -> None:
     assert "What would bring it about" in run(*SINGLE, *words).out
 
 
+def test_a_wish_that_is_met_already_is_told_from_one_that_nothing_meets(run: Run) -> None:
+    azide = ("--substrate", "CCCCBr", "--nucleophile", "NaN3", "--want")
+    assert "nothing needs to change" in run(*SINGLE, *azide, "SN2").out
+    assert json.loads(run(*SINGLE, *azide, "SN2", "--json").out)["as_wanted"] is True
+    assert "nothing that was tried helps" in run(*SINGLE, *azide, "E1").out
+
+
 MISUSE = [
     # arguments, what the message says
     (("--temperature", "25 °C", "--solvent", "DMF"), "--substrate is missing"),

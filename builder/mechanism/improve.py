@@ -27,7 +27,7 @@ from builder.mechanism.solvents import Solvent, SolventKind, boiling_point_c, fi
 from builder.records.vocabulary import Mechanism
 from builder.table import refuse_twice, rows_of, table_text
 
-__all__ = ["BUDGET", "EFFORT", "LEAST_CONVERSION", "ChangeKind", "Improvement", "improvements"]
+__all__ = ["BUDGET", "EFFORT", "LEAST_CONVERSION", "ChangeKind", "Improvement", "improvements", "is_as_wanted"]
 
 BUDGET = 60
 """Forecasts one call may make, that of the question itself included."""
@@ -154,6 +154,13 @@ def improvements(
     return tuple(
         each.improvement(wanted, before) for each in _chosen(found, wanted.promise(before) + LEAST_GAIN, limit)
     )
+
+
+def is_as_wanted(
+    forecast: Forecast, *, product: Structure | None = None, mechanism: Mechanism | None = None, share: float = 0.9
+) -> bool:
+    """Say whether a forecast gives what `improvements` is asked for as it is."""
+    return _Wanted(product, mechanism, share, needs_nucleophile=False).is_met_by(forecast)
 
 
 def _chosen(found: Sequence["_Trial"], least: float, limit: int) -> Sequence["_Trial"]:

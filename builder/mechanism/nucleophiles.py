@@ -119,14 +119,17 @@ def nucleophile_by_structure(smiles: str) -> Reactivity | None:
 def nearest_nucleophiles(name: str) -> tuple[str, ...]:
     """Return known names that `name` may be a slip of, nearest first; empty if it is known.
 
-    A salt keeps its counter-ion: "sodium azid" gives "sodium azide".
+    A salt keeps its counter-ion: "sodium azid" gives "sodium azide". A slip may be in the counter-ion too.
     """
     if find_nucleophile(name) is not None:
         return ()
     cation, _, rest = name.strip().partition(" ")
-    if rest and _counter_ions().find(cation) is not None:
-        return tuple(f"{cation} {anion}" for anion in _anions().nearest(rest))
-    return _names().nearest(name)
+    if not rest:
+        return _names().nearest(name)
+    if _counter_ions().find(cation) is None:
+        cation = next(iter(_counter_ions().nearest(cation)), "")
+    anions = (rest,) if _anions().find(rest) is not None else _anions().nearest(rest)
+    return tuple(f"{cation} {anion}" for anion in anions) if cation else _names().nearest(name)
 
 
 # --- names of salts ---------------------------------------------------------------------------------------------------

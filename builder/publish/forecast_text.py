@@ -44,11 +44,17 @@ _SELDOM = ("SN2' ", "E1cB ", "NGP ", "AdE ")
 
 
 def render_forecast(
-    read: Read, forecast: Forecast, cautions: Sequence[dict[str, str]], changes: Sequence[Improvement] | None = None
+    read: Read,
+    forecast: Forecast,
+    cautions: Sequence[dict[str, str]],
+    changes: Sequence[Improvement] | None = None,
+    *,
+    is_met: bool = False,
 ) -> str:
     """Return a forecast for a terminal: verdict first, then what it rests on.
 
     cautions: as `answer_of` takes them. changes: what would bring about what is wanted; None where nobody asked.
+    is_met: whether the forecast is as wanted already.
     """
     question = read.question
     blocks = [
@@ -57,7 +63,7 @@ def render_forecast(
         _shares(forecast),
         _products(forecast),
         _rate(question, forecast),
-        [] if changes is None else _changes(changes),
+        [] if changes is None else _changes(changes, is_met=is_met),
         _why(question, forecast),
         _closed(forecast),
         _notes(read, forecast),
@@ -268,9 +274,10 @@ def _rate(question: Question, forecast: Forecast) -> list[str]:
     return ["Rate", f"  {times}", f"  conversion in {duration_text(question.time_s)}: {conversion}"]
 
 
-def _changes(changes: Sequence[Improvement]) -> list[str]:
+def _changes(changes: Sequence[Improvement], *, is_met: bool) -> list[str]:
     lines = [line for change in changes for line in _hanging(_change_text(change))]
-    return ["What would bring it about", *(lines or ["  nothing is needed, or nothing that was tried helps"])]
+    nothing = "  nothing needs to change: it is forecast as wanted" if is_met else "  nothing that was tried helps"
+    return ["What would bring it about", *(lines or [nothing])]
 
 
 def _change_text(change: Improvement) -> str:

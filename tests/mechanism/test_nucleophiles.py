@@ -178,6 +178,7 @@ def test_any_text_may_be_looked_up(text: str) -> None:
     [
         *[("LAD", "LDA"), ("sodium azid", "sodium azide"), ("triethylamin", "triethylamine"), ("thiourae", "thiourea")],
         *[("potassium cyanid", "potassium cyanide"), ("pyridin", "pyridine")],
+        *[("sodum azide", "sodium azide"), ("potasium cyanid", "potassium cyanide"), ("benzil amine", "benzylamine")],
     ],
 )
 def test_near_misses(typed: str, first: str) -> None:
