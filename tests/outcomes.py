@@ -44,6 +44,7 @@ class CaseSet(StrEnum):
     FRESH = "fresh"
     HELD_OUT = "held-out"
     THIRD = "third"
+    FOURTH = "fourth"
 
 
 class Asked(StrEnum):

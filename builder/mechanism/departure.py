@@ -115,6 +115,11 @@ def _of_site(structure: Structure, site: ReactiveSite, flask: Flask, parameters:
         return
     if group == "aziridine" and any(Fragment.from_smarts(text).is_in(structure) for text in _ACTIVE_NITROGEN):
         yield Departure(structure, site, "activated aziridine")
+        if flask.acidity is not None:
+            how = "helped by a Lewis acid" if flask.is_lewis else "protonated"
+            yield Departure(
+                structure, site, "protonated aziridine", _cost_of_proton("acid.sulfonamide", flask, parameters), how=how
+            )
         return
     if flask.acidity is not None and group in _PROTONATED:
         made, basicity = _PROTONATED[group]

@@ -232,7 +232,7 @@ NAMED = {
         "_INVERTED",
     },
     "participation.py": {"LARGEST_RING", "_LEAST_WEIGHT", "_LEAST_IONISED"},
-    "substitution.py": {"_HARD_LEAVING_GROUP", "_POWER_ZERO"},
+    "substitution.py": {"_HARD_LEAVING_GROUP", "_POWER_ZERO", "_ALL_WATER", "_OILY", "_CARRIED"},
 }
 """Constants that set bounds and zeros of scales, not the size of an effect."""
 PLAIN = {0.0, 1.0, 2.0, 3.0, 1.5, 10.0, 0.5}

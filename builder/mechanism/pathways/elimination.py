@@ -22,7 +22,7 @@ from builder.mechanism.kinds import BaseFamily
 from builder.mechanism.log_rate import LogRate
 from builder.mechanism.medium import Medium
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
-from builder.mechanism.pathways.substitution import hydrogen_bonding, log10
+from builder.mechanism.pathways.substitution import hydrogen_bonding, log10, two_phase_terms
 from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
@@ -37,6 +37,8 @@ _REFERENCE_PKA = 15.9
 _STRONGEST_PKA = 32.0
 """Beyond it a stronger base is not faster: encounter and aggregates decide."""
 _WEAKEST_PKA = 0.0
+_WEAK_BASES = frozenset({BaseFamily.HALIDE, BaseFamily.CARBOXYLATE})
+"""Families that eliminate late, towards the more stable alkene, in aprotic solvents (E2C)."""
 _SULFONATE_LIKE = frozenset(
     {"tosylate", "mesylate", "brosylate", "nosylate", "benzenesulfonate", "triflate", "sulfonate"}
 )
@@ -55,6 +57,7 @@ def e2_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> I
         for way in ways:
             terms = [*departure.terms, *_way_terms(departure, way, parameters)]
             terms += _base_terms(departure, way, base, flask, parameters)
+            terms += two_phase_terms(departure.structure, base, flask, parameters)
             yield Pathway(
                 mechanism=Mechanism.E2,
                 label="E2 solvent" if base.is_solvent else "E2",
@@ -207,13 +210,14 @@ def _family_terms(site: ReactiveSite, base: Attacker, medium: Medium, parameters
     if family is BaseFamily.BULKY_ALKOXIDE:
         if medium.is_protic or medium.is_apolar:
             yield parameters.term("e2.family.bulky alkoxide")
-    elif family in {BaseFamily.HALIDE, BaseFamily.CARBOXYLATE}:
+    elif family in _WEAK_BASES:
         if site.degree in {Degree.SECONDARY, Degree.TERTIARY} and not medium.is_protic:
             yield parameters.term("e2.family.halide")
     elif family is BaseFamily.AMIDE:
         yield parameters.term("e2.family.amide" if base.is_hindered else "e2.family.amide.small")
     elif family is BaseFamily.SOFT:
-        yield parameters.term("e2.family.soft" if medium.is_protic else "e2.family.soft.aprotic")
+        bare = "cyanide" if base.kind.name == "cyanide" else "soft"
+        yield parameters.term("e2.family.soft" if medium.is_protic else f"e2.family.{bare}.aprotic")
     elif family not in {BaseFamily.OXYGEN, None}:
         yield parameters.term(f"e2.family.{family}")
 
@@ -231,6 +235,8 @@ def _orientation_terms(
     group = "sulfonate" if departure.group in _SULFONATE_LIKE else departure.group
     if f"e2.alkyl.{group}" in parameters:
         yield parameters.term(f"e2.alkyl.{group}", alkyl)
+    if base.base in _WEAK_BASES and not medium.is_protic:
+        yield parameters.term("e2.alkyl.weak base", alkyl)
     if base.is_hindered:
         yield parameters.term("e2.alkyl.bulky.aprotic" if medium.is_dipolar_aprotic else "e2.alkyl.bulky", alkyl)
         if is_tertiary:

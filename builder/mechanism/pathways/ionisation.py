@@ -154,11 +154,14 @@ def _power_terms(departure: Departure, flask: Flask, parameters: Parameters, *, 
 
 
 def _assistance(reached: list[Station], parameters: Parameters) -> tuple[Term, ...]:
-    """Return what a shift that goes with the ionisation lowers its barrier by: a part of what the shift gains."""
+    """Return what a shift that goes with the ionisation lowers its barrier by: a part of what the shift gains.
+
+    Aryl groups bridge instead (see participation), unless a lone pair awaits them: that shift ends at a carbonyl group.
+    """
     first = reached[0]
     if not first.nature.is_plain or first.nature.alkyl >= 3:
         return ()
-    one_step = (s for s in reached if len(s.path) == 1 and not _moves_aryl(s, first))  # aryl: see participation
+    one_step = (s for s in reached if len(s.path) == 1 and (s.nature.has_donor or not _moves_aryl(s, first)))
     best = max(one_step, key=lambda s: s.energy, default=None)
     if best is None or best.energy <= first.energy + 0.5:
         return ()
@@ -236,7 +239,7 @@ def receive(
     returning = _RETURNING | _HALIDES if _is_held_for_long(reached[0]) else _RETURNING
     lasting = [a for a in attackers if a.kind.name not in returning]
     weighted = [
-        (a, capture_weight(a, flask, parameters, is_stabilised=reached[0].nature.is_stabilised))
+        (a, capture_weight(a, flask, parameters, "stabilised" if reached[0].nature.is_stabilised else "plain"))
         for a in lasting or attackers
         if a.molar > 0
     ]
@@ -273,15 +276,14 @@ def _is_held_for_long(first: Station) -> bool:
     return bool(first.nature.oxygen or first.nature.nitrogen or first.nature.aryl >= 3)
 
 
-def capture_weight(attacker: Attacker, flask: Flask, parameters: Parameters, *, is_stabilised: bool) -> float:
+def capture_weight(attacker: Attacker, flask: Flask, parameters: Parameters, life: str) -> float:
     """Return the relative rate of capture of a cation: concentration times ten to a slope on n.
 
-    The longer the cation lives, the more it chooses; where halide returns in acid, it wins in the end.
+    life: plain, stabilised or onium; the longer the cation lives, the more it chooses. Where halide returns in acid,
+    it wins in the end.
     """
     ambident = math.fsum(t.contribution for t in ambident_terms(attacker, None, flask, parameters, on_cation=True))
-    word = "stabilised" if is_stabilised else "plain"
-    if flask.is_bronsted_acid and attacker.kind.name in _HALIDES:
-        word = "reversible"
+    word = "reversible" if flask.is_bronsted_acid and attacker.kind.name in _HALIDES else life
     return attacker.molar * float(10 ** (parameters.value(f"capture.sensitivity.{word}") * attacker.n + ambident))
 
 
@@ -488,7 +490,7 @@ def captured_outcomes(
                 edits = trans_to_acyloxy(edits, fate.station, site.alpha_carbon)
                 if not edits:
                     continue
-                rearranged = bool(fate.station.path) or is_transposed
+                rearranged = bool(fate.station.path) or (is_transposed and not site.is_addition)
                 faces = _face_shares(edits, fate.station.nature, reception.parameters, inverts=inverts)
                 for edit, face in zip(edits, faces, strict=True):
                     course = _course(site, fate.station, edits, faces, is_transposed=is_transposed)

@@ -51,6 +51,8 @@ _OPENED_FIRST = (
     "carboxylate",
 )
 _TRANSIENT = frozenset(_OPENED_FIRST)
+_ONIUM_RINGS = frozenset({"aziridinium", "episulfonium", "trialkyloxonium"})
+"""Rings opened by attack from behind alone, which choose among nucleophiles as an alkyl halide does."""
 _ONLY_AS_ANIONS = frozenset({"carbon acid", "carbon acid, weak", "alkyne", "imide", "sulfonamide", "dithioacetal"})
 _HALIDES = frozenset({"chloride", "bromide", "iodide"})
 _BRIDGES = frozenset({"arene", "alkene", "organohalide"})
@@ -181,7 +183,7 @@ def _rate_terms(
     if kind.element is None or (flask.is_bronsted_acid and kind.pka > 2.0):  # a proton has taken its lone pair
         return None
     element = kind.element
-    terms = [parameters.term(key, factor) for key, factor in site_features(departure.structure, site) if not _own(key)]
+    terms = [parameters.term(key, factor) for key, factor in _features_within(departure.structure, site, size)]
     terms += departure.terms
     terms.append(parameters.term(f"sn2.leave.{departure.group}"))
     hard = f"sn2.hard.{departure.group}"
@@ -217,6 +219,8 @@ def _acting(
         return None
     if group.kind == "carboxylic acid" and departure.group == "diazonium":
         return kind, [parameters.term("ngp.carboxyl.diazonium")]
+    if group.loses_proton and departure.group == "diazonium" and size == 3:
+        return None  # a shift to the carbonyl compound is faster
     return kind, [parameters.term("ngp.uncharged")] if group.loses_proton and size <= 4 else []
 
 
@@ -230,9 +234,21 @@ def _carbonyl_in_ring(structure: Structure, site: ReactiveSite, group: Nucleophi
     )
 
 
-def _own(key: str) -> bool:
-    """Say whether a term of the site is about the neighbour itself, which acts here instead of being in the way."""
-    return key in {"sn2.beta.oxygen", "sn2.beta.halogen", "sn2.beta.1"} or key.startswith("sn2.ring.")
+def _features_within(structure: Structure, site: ReactiveSite, size: int) -> Iterator[tuple[str, float]]:
+    """Yield key and weight of the terms of a site attacked from within.
+
+    The neighbour itself acts instead of being in the way, so that a beta carbon counts one branch less. Alkyl groups
+    on the carbon between hold the ends of a three-membered ring together and help.
+    """
+    for key, factor in site_features(structure, site):
+        if key in {"sn2.beta.oxygen", "sn2.beta.halogen"} or key.startswith("sn2.ring."):
+            continue
+        branches = key.removeprefix("sn2.beta.")
+        if not branches.isdigit():
+            yield key, factor
+        elif int(branches) > 1:
+            further = int(branches) - 1
+            yield ("ngp.beta alkyl", factor * further) if size == 3 else (f"sn2.beta.{further}", factor)
 
 
 def _bridging_terms(
@@ -261,8 +277,8 @@ def _bridging_terms(
         if sigma:
             terms.append(parameters.term("ngp.aryl.rho", sigma))
         beta = next((b for b in site.beta if any(n == group.atom for n, _ in structure.atoms[b.atom].neighbours)), None)
-        if beta is None:
-            return None
+        if beta is None or any(structure.atoms[n].symbol == "O" for n, _ in structure.atoms[beta.atom].neighbours):
+            return None  # beside oxygen the aryl group moves over and leaves a carbonyl group (semipinacol)
         if beta.branches > 1:
             terms.append(parameters.term("ngp.aryl.beta alkyl", beta.branches - 1))
         return terms
@@ -316,7 +332,7 @@ def _kept_by_alkene(departure: Departure, flask: Flask, parameters: Parameters) 
     course = Course.RETENTION if site.stereo is SiteStereo.SPECIFIED else Course.NOT_APPLICABLE
     found = []
     for attacker in flask.attackers:
-        weight = capture_weight(attacker, flask, parameters, is_stabilised=True)
+        weight = capture_weight(attacker, flask, parameters, "stabilised")
         if attacker.is_usual_atom:
             edit = substitute(departure.structure, site, attacker.nucleophile, inversion=False)
             found.append(Outcome(edit.product, weight, course, False, ("double bond takes part", "capture")))
@@ -399,11 +415,10 @@ def _is_transient(ring: Structure, centre: AtomId) -> bool:
 
 def _openings(ring: Structure, centre: AtomId, flask: Flask, parameters: Parameters) -> Iterator[_Opening]:
     """Yield every opening of a bridged ion; halide in acid, which returns, ends at the more substituted carbon."""
-    weighted = [
-        (a, capture_weight(a, flask, parameters, is_stabilised=True)) for a in flask.attackers if a.is_usual_atom
-    ]
-    total = sum(w for _, w in weighted)
     sites = [s for s in perceive_sites(ring) if s.leaving_group in _TRANSIENT and s.leaving_ring_size is not None]
+    life = "onium" if any(s.leaving_group in _ONIUM_RINGS for s in sites) else "stabilised"
+    weighted = [(a, capture_weight(a, flask, parameters, life)) for a in flask.attackers if a.is_usual_atom]
+    total = sum(w for _, w in weighted)
     sites = [s for s in sites if s.leaving_ring_size == 3 or s.leaving_group != "carboxylate"]
     ranks = ring.symmetry_classes
     for site in sites:
@@ -467,9 +482,7 @@ def _sigma_outcomes(
     departure: Departure, bond: tuple[AtomId, AtomId], flask: Flask, parameters: Parameters
 ) -> tuple[Outcome, ...]:
     structure, site = departure.structure, departure.site
-    weighted = [
-        (a, capture_weight(a, flask, parameters, is_stabilised=True)) for a in flask.attackers if a.is_usual_atom
-    ]
+    weighted = [(a, capture_weight(a, flask, parameters, "stabilised")) for a in flask.attackers if a.is_usual_atom]
     total = sum(w for _, w in weighted)
     found = []
     for attacker, weight in weighted:

@@ -24,6 +24,11 @@ from builder.records.vocabulary import Course, Mechanism
 
 __all__ = ["ambident_terms", "nucleophile_terms", "sn2_pathways", "substitution_course"]
 
+_ALL_WATER = 0.95
+"""Share of water above which nothing else in it dissolves an oil."""
+_OILY = 8
+_CARRIED = 4
+"""Carbons that one oxygen or nitrogen carries into water."""
 _HARD_LEAVING_GROUP = 1.5
 """Second term of a leaving group from which it counts as hard for ambident nucleophiles."""
 _STRONGLY_SOLVATING = frozenset({"DMSO", "HMPA", "DMPU", "NMP", "DMF", "DMAc"})
@@ -79,6 +84,7 @@ def _sn2(
     terms += _bulk_terms(attacker, departure.site, parameters)
     terms += ambident_terms(attacker, departure.group, flask, parameters, departure.site)
     terms += _borderline_terms(departure, attacker, flask, parameters)
+    terms += two_phase_terms(departure.structure, attacker, flask, parameters)
     if flask.has_silver and departure.family == "halide":
         terms.append(parameters.term("sn2.metal.silver"))
     site = departure.site
@@ -322,6 +328,25 @@ def ambident_terms(
     for word, holds in conditions.items():
         if holds and f"{key}.{word}" in parameters:
             yield parameters.term(f"{key}.{word}")
+
+
+def two_phase_terms(structure: Structure, attacker: Attacker, flask: Flask, parameters: Parameters) -> Iterator[Term]:
+    """Yield what it costs that an oil and an anion in water hardly meet, without a salt that carries it over."""
+    if (
+        (attacker.is_anion or attacker.is_solvent)
+        and not flask.has_phase_helper
+        and flask.medium.share("water") > _ALL_WATER
+        and _is_oil(structure)
+    ):
+        yield parameters.term("flask.two phases")
+
+
+@lru_cache(maxsize=1024)
+def _is_oil(structure: Structure) -> bool:
+    """Say whether a molecule hardly dissolves in water: eight carbons more than its polar atoms carry with them."""
+    symbols = [atom.symbol for atom in structure.atoms]
+    polar = symbols.count("O") + symbols.count("N")
+    return structure.charge == 0 and symbols.count("C") - _CARRIED * polar >= _OILY
 
 
 def _spares_fused_ring(nucleophile: Nucleophile) -> bool:
