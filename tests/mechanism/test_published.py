@@ -15,6 +15,7 @@ from builder.mechanism.observations.tables import Channel, Known, Mixture, Share
 from builder.mechanism.observing import see_channel, see_share_value
 from builder.mechanism.rate_terms import fitted_parameters
 from builder.mechanism.solvents import find_solvent
+from builder.records.vocabulary import Mechanism
 from tests.anchors import CUMYL_SIGMA_PLUS, rho_plus
 
 PARAMETERS = fitted_parameters()
@@ -272,3 +273,28 @@ def test_a_cyclopropylmethanol_opens_to_the_e_homoallylic_bromide() -> None:
     products = {p.structure.smiles: p.share for p in predict(asked.question).products}
     trans, cis = (products[parse_smiles(s).smiles] for s in ("C/C=C/CCBr", "C/C=C\\CCBr"))
     assert trans > 3 * cis > 0
+
+
+# Biale, Cook, Lloyd, Parker, Stevens, Takahashi and Winstein, J. Am. Chem. Soc. 1971, 93, 4735 (from memory):
+# tetrabutylammonium acetate in acetone, % alkene.
+@pytest.mark.parametrize(("substrate", "percent"), [("CC(C)Br", 0), ("CC(C)C(C)Br", 89), ("CC(C)(C)Br", 100)])
+def test_weak_bases_eliminate_where_the_alkene_is_branched(substrate: str, percent: float) -> None:
+    asked = read_question(
+        substrate=substrate, nucleophile="Bu4NOAc", solvent=[("acetone", 1.0)], temperature_c=50
+    ).question
+    shares = predict(asked).shares
+    assert 100 * (shares.get(Mechanism.E2, 0.0) + shares.get(Mechanism.E1, 0.0)) == pytest.approx(percent, abs=12)
+
+
+# Nilsson and Smith, Z. Phys. Chem. A 1933, 166, 136 (from memory): closure of chlorohydrins by hydroxide in water,
+# relative rates 1 : 5.5 : 250.
+def test_methyl_groups_help_a_chlorohydrin_to_close() -> None:
+    logs = [
+        predict(
+            read_question(
+                substrate=substrate, nucleophile="sodium hydroxide", solvent=[("water", 1.0)], temperature_c=18
+            ).question
+        ).log_k["NGP"]
+        for substrate in ("OCCCl", "CC(O)CCl", "CC(C)(O)CCl")
+    ]
+    assert [log - logs[0] for log in logs[1:]] == pytest.approx([0.74, 2.4], abs=0.8)

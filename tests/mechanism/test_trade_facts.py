@@ -223,6 +223,32 @@ def test_sodium_iodide_dissolves_in_acetone() -> None:
     )
 
 
+def test_an_oil_over_aqueous_cyanide_needs_a_salt_that_carries_it() -> None:
+    alone = ask("CCCCCCCCCCCl", "NaCN", "water", 100)
+    carried = ask("CCCCCCCCCCCl", "NaCN", "water", 100, additives=["tetrabutylammonium bromide"])
+    assert alone.mechanism is Mechanism.NONE
+    assert smiles_of(carried)[0] == same("CCCCCCCCCCC#N")
+
+
+def test_azide_opens_an_aziridinium_ion_before_water_does() -> None:
+    forecast = ask("ClCCN(C)C", "NaN3", "water", 25)
+    assert forecast.mechanism is Mechanism.NGP
+    assert smiles_of(forecast)[0] == same("CN(C)CCN=[N+]=[N-]")
+
+
+def test_a_lewis_acid_opens_a_sulfonylaziridine_where_it_ionises() -> None:
+    forecast = ask(
+        "Cc1ccc(S(=O)(=O)N2CC2c2ccc(C)cc2)cc1", "methanol", "methanol", 20, additives=["BF3 etherate"], time_h=24
+    )
+    assert smiles_of(forecast)[0] == same("COC(CNS(=O)(=O)c1ccc(C)cc1)c1ccc(C)cc1")
+
+
+def test_a_carbinol_beside_a_diazonium_ion_becomes_the_ketone() -> None:
+    forecast = ask("N#[N+]CC(O)(c1ccc(C)cc1)c1ccc(C)cc1", "water", "water", 5)
+    assert smiles_of(forecast)[0] == same("O=C(Cc1ccc(C)cc1)c1ccc(C)cc1")
+    assert forecast.products[0].rearranged
+
+
 # --- gates ----------------------------------------------------------------------------------------------------
 
 
