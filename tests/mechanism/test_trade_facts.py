@@ -249,6 +249,11 @@ def test_a_carbinol_beside_a_diazonium_ion_becomes_the_ketone() -> None:
     assert forecast.products[0].rearranged
 
 
+@pytest.mark.parametrize("alcohol", ["OCc1ccccc1", "CCO"])
+def test_water_in_place_of_water_is_no_reaction(alcohol: str) -> None:
+    assert ask(alcohol, "none", "water", 60, additives=["H2SO4"]).mechanism is Mechanism.NONE
+
+
 # --- gates ----------------------------------------------------------------------------------------------------
 
 

@@ -201,7 +201,9 @@ class Reception:
 
     @cached_property
     def captured(self) -> float:
-        """Return the share that is captured."""
+        """Return the share that is captured; none where only what has left could capture it."""
+        if not self.attackers:
+            return 0.0
         return sum(f.weight * (1 - f.loses_proton) for f in self.fates)
 
     @cached_property

@@ -49,6 +49,8 @@ def sn2_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> 
         return
     features = site_features(departure.structure, departure.site)
     for attacker in flask.attackers:
+        if departure.group == "water" == attacker.kind.name:
+            continue  # water for water
         if open_sn2 and not _is_cation_like_epoxide(departure):
             yield _sn2(departure, attacker, flask, parameters, features)
         if open_prime and attacker.is_usual_atom:
