@@ -51,7 +51,8 @@ def predict(question: Question, parameters: Parameters | None = None) -> Forecas
     reason = _why_not_covered(structure, flask)
     if reason is not None:
         return _not_covered(reason)
-    pathways = list(open_pathways(structure, flask, terms, question.temperature_k, all_of_them=False))
+    found = open_pathways(structure, flask, terms, question.temperature_k, all_of_them=False)
+    pathways = [pathway for pathway in found if not pathway.returns]
     if not pathways:
         return _closed(structure, flask, terms)
     return _weighed(question, flask, pathways, terms)

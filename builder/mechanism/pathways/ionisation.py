@@ -131,6 +131,7 @@ def ionisation_pathways(
             event=f"{departure.group} leaves, "
             + ("the cation is captured" if mechanism is Mechanism.SN1 else "the cation loses a proton"),
             outcomes=outcomes,
+            returns=mechanism is Mechanism.SN1 and not reception.attackers,
         )
 
 
@@ -201,9 +202,7 @@ class Reception:
 
     @cached_property
     def captured(self) -> float:
-        """Return the share that is captured; none where only what has left could capture it."""
-        if not self.attackers:
-            return 0.0
+        """Return the share that is captured, by what has left where there is nothing else."""
         return sum(f.weight * (1 - f.loses_proton) for f in self.fates)
 
     @cached_property

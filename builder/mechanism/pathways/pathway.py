@@ -34,6 +34,7 @@ class Pathway:
     partner: name of the species that attacks or takes the proton; None for a unimolecular pathway.
     pool: what the partner is drawn from; None where the rate constant is of first order (solvent, unimolecular).
     leaving_group: as it leaves, activation counted. event: what happens, in a few words.
+    returns: whether only the group that left can come back, so that nothing is formed.
     """
 
     mechanism: Mechanism
@@ -45,6 +46,7 @@ class Pathway:
     rate: LogRate
     event: str
     outcomes: Callable[[], tuple[Outcome, ...]]
+    returns: bool = False
 
 
 def merged_outcomes(outcomes: list[Outcome]) -> tuple[Outcome, ...]:
