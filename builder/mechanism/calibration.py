@@ -16,7 +16,6 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from builder.mechanism.log_rate import root_of_squares
 from builder.mechanism.observations.tables import Rate, Share, ShareKind, load_rates, load_shares
 from builder.mechanism.observing import Seen, SilentError, observed_logit, see_rate, see_share
 from builder.mechanism.rate_terms import Parameters, RateTerm, load_rate_terms
@@ -174,7 +173,7 @@ class _Fit:
         at: Parameters,
         scatter: dict[str, float],
     ) -> None:
-        self._rows, self._seen, self.keys = rows, seen, keys
+        self._rows, self.keys = rows, keys
         place = {key: i for i, key in enumerate(keys)}
         self._slopes = np.zeros((len(rows), len(keys)))
         foreign = np.zeros(len(rows))
@@ -252,8 +251,3 @@ def _terms(fit: _Fit, prior: dict[str, RateTerm], scatter: dict[str, float]) -> 
             yield replace(term, value=value, error=error, rows=int(support[key]))
         elif key in scatter and abs(scatter[key] - term.error) > 1e-9:
             yield replace(term, error=round(scatter[key], _DIGITS), rows=1)
-
-
-def spread_of(seen: Seen) -> float:
-    """Return the standard error of a value from the errors of its terms."""
-    return root_of_squares(slope * error for slope, error in seen.slopes.values())

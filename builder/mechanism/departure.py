@@ -41,6 +41,7 @@ _PROTONATED = {
     "epoxide": ("protonated epoxide", "acid.epoxide"),
     "oxetane": ("protonated oxetane", "acid.epoxide"),
     "aziridine": ("protonated aziridine", "acid.amine"),
+    "activated aziridine": ("protonated aziridine", "acid.sulfonamide"),
 }
 _FOLLOWS_ACIDITY = frozenset({"acid.alcohol", "acid.ether"})
 """Groups whose loss keeps pace with the acidity even where nearly all of them bear a proton."""
@@ -115,16 +116,10 @@ def _of_site(structure: Structure, site: ReactiveSite, flask: Flask, parameters:
         return
     if group == "aziridine" and any(Fragment.from_smarts(text).is_in(structure) for text in _ACTIVE_NITROGEN):
         yield Departure(structure, site, "activated aziridine")
-        if flask.acidity is not None:
-            how = "helped by a Lewis acid" if flask.is_lewis else "protonated"
-            yield Departure(
-                structure, site, "protonated aziridine", _cost_of_proton("acid.sulfonamide", flask, parameters), how=how
-            )
+        yield from _helped(structure, site, "activated aziridine", flask, parameters)
         return
     if flask.acidity is not None and group in _PROTONATED:
-        made, basicity = _PROTONATED[group]
-        how = "helped by a Lewis acid" if flask.is_lewis else "protonated"
-        yield Departure(structure, site, made, _cost_of_proton(basicity, flask, parameters), how=how)
+        yield from _helped(structure, site, group, flask, parameters)
         if group not in {"epoxide", "trifluoroacetate"}:
             return
     pull: list[Term] = []
@@ -139,6 +134,16 @@ def _of_site(structure: Structure, site: ReactiveSite, flask: Flask, parameters:
         pull.append(parameters.term("sn1.lewis acid", min(3.0, -flask.acidity / 2)))
         how = "fluoride helped by acid"
     yield Departure(structure, site, group, (), tuple(pull), how)
+
+
+def _helped(
+    structure: Structure, site: ReactiveSite, group: str, flask: Flask, parameters: Parameters
+) -> Iterator[Departure]:
+    """Yield the departure of a group that the acid of the flask, if there is one, protonates or holds."""
+    if flask.acidity is not None:
+        made, basicity = _PROTONATED[group]
+        how = "helped by a Lewis acid" if flask.is_lewis else "protonated"
+        yield Departure(structure, site, made, _cost_of_proton(basicity, flask, parameters), how=how)
 
 
 def _cost_of_proton(basicity: str, flask: Flask, parameters: Parameters) -> tuple[Term, ...]:

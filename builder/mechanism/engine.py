@@ -7,8 +7,9 @@ formed in the stated time. Products are built for the pathways that matter only.
 import math
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import replace
+from itertools import islice
 
-from builder.chemistry.perception import Hybridisation, ReactiveSite, attacking_atoms, perceive_sites
+from builder.chemistry.perception import Hybridisation, ReactiveSite, perceive_sites
 from builder.chemistry.structure import Structure
 from builder.mechanism.departure import Departure, departures
 from builder.mechanism.flask import Flask, fill_flask
@@ -82,10 +83,7 @@ def open_pathways(
 
 def _floor(pathways: Sequence[Pathway], flask: Flask, temperature_k: float) -> float | None:
     """Return log10 of the flow, 1/s, below which a further pathway would not matter; None without any flow."""
-    flows = [
-        p.rate.log10_k(temperature_k) + math.log10(max(1e-30, flask.pools.get(p.pool, 0.0) if p.pool else 1.0))
-        for p in pathways
-    ]
+    flows = [p.rate.log10_k(temperature_k) + math.log10(max(1e-30, flask.on_hand(p.pool))) for p in pathways]
     return max(flows) - TOO_SLOW if flows else None
 
 
@@ -153,7 +151,7 @@ def _gate_reasons(found: Iterable[Departure]) -> Iterator[Reason]:
 def _weighed(question: Question, flask: Flask, pathways: list[Pathway], parameters: Parameters) -> Forecast:
     temperature = question.temperature_k
     constants = [10 ** max(-300.0, min(60.0, p.rate.log10_k(temperature))) for p in pathways]
-    flows = [k * (flask.pools.get(p.pool, 0.0) if p.pool else 1.0) for p, k in zip(pathways, constants, strict=True)]
+    flows = [k * flask.on_hand(p.pool) for p, k in zip(pathways, constants, strict=True)]
     total = math.fsum(flows)
     kept = [place for place, flow in enumerate(flows) if total > 0 and flow > _NO_FLOW * total]
     if not kept:
@@ -345,7 +343,7 @@ def _gone_on(
 ) -> Iterator[Forecasted]:
     """Yield a product and what it goes on to: as much as runs in the time and as reagent is left for."""
     rates = [
-        10 ** p.rate.log10_k(question.temperature_k) * (flask.pools.get(p.pool, 0.0) * HALF_USED if p.pool else 1.0)
+        10 ** p.rate.log10_k(question.temperature_k) * flask.on_hand(p.pool) * (HALF_USED if p.pool else 1.0)
         for p in steps
     ]
     total = math.fsum(rates)
@@ -417,14 +415,9 @@ def _reasons(
     for term in sorted(main.rate.terms, key=lambda t: -abs(t.contribution))[:6]:
         if abs(term.contribution) >= 0.05:
             found.append(Reason(term.key, term.meaning, term.contribution, abs(term.factor) * term.error, term.source))
-    found += list(_gate_reasons(left))[:6]
+    found += islice(_gate_reasons(left), 6)
     for attacker in flask.nucleophiles:
         if attacker.n_error > 0.35 and attacker.name == main.partner:
             text = f"{attacker.name} is placed by its class ({attacker.kind.name}), so the error is wide"
             found.append(Reason("placed-by-class", text, attacker.n, attacker.n_error, attacker.n_source))
     return tuple(found)
-
-
-def has_nucleophile(structure: Structure) -> bool:
-    """Say whether a species can attack at all."""
-    return bool(attacking_atoms(structure))

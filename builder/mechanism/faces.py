@@ -52,11 +52,9 @@ def exo_only(edits: Iterable[Edit], carbon: AtomId) -> tuple[Edit, ...]:
     edits = tuple(edits)
     kept = []
     for edit in edits:
-        place = edit.from_substrate.get(carbon)
-        new = set(edit.from_nucleophile.values())
+        place, bound = _new_bond(edit, carbon)
         if place is None:
             return edits
-        bound = next((n for n, _ in edit.product.atoms[place].neighbours if n in new), None)
         if bound is None or exo_face(edit.product, place, bound) is not False:
             kept.append(edit)
     return tuple(kept) or edits
@@ -72,24 +70,30 @@ def trans_to_acyloxy(edits: tuple[Edit, ...], station: Station, carbon: AtomId) 
         return edits
     kept = []
     for edit in edits:
-        place = edit.from_substrate.get(carbon)
-        new = set(edit.from_nucleophile.values())
+        place, bound = _new_bond(edit, carbon)
         if place is None:
             return edits
-        relation = _relation_to_acyloxy(edit.product, place, new)
-        if relation is Relation.TRANS:
+        if bound is not None and _relation_to_acyloxy(edit.product, place, bound) is Relation.TRANS:
             kept.append(edit)
     return tuple(kept) or edits
 
 
-def _relation_to_acyloxy(product: Structure, place: AtomId, new: set[AtomId]) -> Relation | None:
+def _new_bond(edit: Edit, carbon: AtomId) -> tuple[AtomId | None, AtomId | None]:
+    """Return where a carbon of the substrate is in a product, and the atom of the nucleophile it is bound to now."""
+    place = edit.from_substrate.get(carbon)
+    if place is None:
+        return None, None
+    new = set(edit.from_nucleophile.values())
+    return place, next((n for n, _ in edit.product.atoms[place].neighbours if n in new), None)
+
+
+def _relation_to_acyloxy(product: Structure, place: AtomId, bound: AtomId) -> Relation | None:
     atoms = product.atoms
     for ring in perceive_rings(product):
         if place not in ring.atoms:
             continue
-        bound = next((n for n, _ in atoms[place].neighbours if n in new), None)
         for near, _ in atoms[place].neighbours:
-            if near not in ring.atoms or bound is None:
+            if near not in ring.atoms:
                 continue
             for oxygen, _ in atoms[near].neighbours:
                 if atoms[oxygen].symbol == "O" and oxygen not in ring.atoms and _bears_acyl(product, oxygen, near):

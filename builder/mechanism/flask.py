@@ -10,7 +10,7 @@ from dataclasses import dataclass, replace
 from functools import lru_cache
 
 from builder.chemistry.perception import Nucleophile, attacking_atoms
-from builder.chemistry.structure import Structure, parse_smiles
+from builder.chemistry.structure import parse_smiles
 from builder.mechanism.kinds import BaseFamily, Kind, load_kinds
 from builder.mechanism.medium import Medium, medium_of
 from builder.mechanism.nucleophiles import Bulk, Reactivity, nucleophile_by_structure
@@ -113,10 +113,9 @@ class Flask:
             for a in self.attackers
         )
 
-    @property
-    def solvents(self) -> tuple[Attacker, ...]:
-        """Return the attackers among the solvents."""
-        return tuple(a for a in self.attackers if a.is_solvent)
+    def on_hand(self, pool: str | None) -> float:
+        """Return what a rate constant is multiplied by at the start: mol/L of a pool, one for first order."""
+        return 1.0 if pool is None else self.pools.get(pool, 0.0)
 
     @property
     def is_bronsted_acid(self) -> bool:
@@ -264,7 +263,7 @@ def _attackers_of(ingredient: Ingredient, molar: float, medium: Medium, *, helpe
 def _attacker(nucleophile: Nucleophile, molar: float, pool: str | None, usual_kind: str | None = None) -> Attacker:
     """Return an attacker; the row of its species counts for atoms of the kind that usually attacks only."""
     kind = load_kinds()[nucleophile.kind]
-    row = _row_of(nucleophile.species.smiles) if usual_kind in {None, nucleophile.kind} else None
+    row = nucleophile_by_structure(nucleophile.species.smiles) if usual_kind in {None, nucleophile.kind} else None
     hindered = is_hindered(nucleophile)
     return Attacker(
         nucleophile=nucleophile,
@@ -280,10 +279,6 @@ def _attacker(nucleophile: Nucleophile, molar: float, pool: str | None, usual_ki
         molar=molar,
         pool=pool,
     )
-
-
-def _row_of(smiles: str) -> Reactivity | None:
-    return nucleophile_by_structure(smiles)
 
 
 def _pka_dmso(kind: Kind, row: Reactivity | None) -> float:
@@ -389,7 +384,7 @@ def _acid_pka_of(attacker: Attacker) -> float | None:
     """Return the pKa of the proton on an attacking atom; the row of a species speaks of its usual atom."""
     if attacker.kind.anion is None:
         return None
-    row = _row_of(attacker.nucleophile.species.smiles) if attacker.is_usual_atom else None
+    row = nucleophile_by_structure(attacker.nucleophile.species.smiles) if attacker.is_usual_atom else None
     return attacker.kind.acid_pka if row is None or row.pka_acid is None else row.pka_acid
 
 
@@ -443,11 +438,11 @@ def _levelled(attacker: Attacker, medium: Medium) -> Attacker:
             kind = load_kinds()[nucleophile.kind]
             if nucleophile.kind not in {"water", "alcohol"} or kind.anion is None:
                 continue
-            acid = _row_of(solvent.smiles)
+            acid = nucleophile_by_structure(solvent.smiles)
             acid_pka = kind.acid_pka if acid is None or acid.pka_acid is None else acid.pka_acid
             anion = load_kinds()[kind.anion]
             conjugate = _SOLVENT_ANIONS.get(solvent.smiles)
-            row = None if conjugate is None else _row_of(conjugate)
+            row = None if conjugate is None else nucleophile_by_structure(conjugate)
             same = row is not None and row.name == attacker.name
             if acid_pka is None or same or attacker.pka < acid_pka - LEVELLING:
                 continue
@@ -553,7 +548,7 @@ def _acid_pka(doses: Iterable[Dose], medium: Medium) -> float | None:
     ]
     for solvent, share in medium.parts:
         if share >= 0.2 and any(n.kind == "carboxylic acid" for n in attacking_atoms(parse_smiles(solvent.smiles))):
-            row = _row_of(solvent.smiles)
+            row = nucleophile_by_structure(solvent.smiles)
             if row is not None and row.pka_acid is not None:
                 found.append(row.pka_acid)
     return min(found, default=None)
@@ -577,8 +572,3 @@ def _activated_groups(doses: Iterable[Dose]) -> tuple[str, ...]:
         if dose.reagent.activates and (not dose.reagent.needs or present & set(dose.reagent.needs))
     )
     return tuple(dict.fromkeys(found))
-
-
-def carries(structure: Structure, *kinds: str) -> bool:
-    """Say whether a species attacks as one of these kinds."""
-    return any(n.kind in kinds for n in attacking_atoms(structure))

@@ -3,6 +3,7 @@
 import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from itertools import chain
 
 from builder.mechanism.rate_terms import Term
 
@@ -63,17 +64,14 @@ class LogRate:
     def slopes(self, temperature_k: float) -> dict[str, tuple[float, float]]:
         """Return, for each term, the slope of log10 k at this temperature on it and its standard error."""
         ratio = REFERENCE_K / temperature_k
+        per_j = (1 - ratio) / (GAS_CONSTANT * _LN10)
         found: dict[str, tuple[float, float]] = {}
-        for term in self.terms:
-            known = found.get(term.key, (0.0, 0.0))[0]
-            found[term.key] = (known + ratio * term.factor, term.error)
-        for term in self.entropy:
-            known = found.get(term.key, (0.0, 0.0))[0]
-            slope = term.factor * (1 - ratio) / (GAS_CONSTANT * _LN10)
-            found[term.key] = (known + slope, term.error)
-        for key, slope, error in self.spreads:
-            known = found.get(key, (0.0, 0.0))[0]
-            found[key] = (known + slope, error)
+        for key, slope, error in chain(
+            ((term.key, ratio * term.factor, term.error) for term in self.terms),
+            ((term.key, per_j * term.factor, term.error) for term in self.entropy),
+            self.spreads,
+        ):
+            found[key] = (found.get(key, (0.0, 0.0))[0] + slope, error)
         return found
 
     def error(self, temperature_k: float) -> float:

@@ -1,7 +1,7 @@
 """What the engine says where an observation speaks: its value and its slope on every term."""
 
 import math
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
 
 from builder.chemistry.structure import Structure, parse_smiles
@@ -154,10 +154,7 @@ def _flows(share: Share, parameters: Parameters) -> tuple[list[float], list[floa
     pathways = list(open_pathways(question.substrate, flask, parameters, question.temperature_k))
     if share.note.startswith(SECOND_ORDER_ONLY):
         pathways = [p for p in pathways if p.pool is not None]
-    rates = [
-        10 ** p.rate.log10_k(question.temperature_k) * (flask.pools.get(p.pool, 0.0) if p.pool else 1.0)
-        for p in pathways
-    ]
+    rates = [10 ** p.rate.log10_k(question.temperature_k) * flask.on_hand(p.pool) for p in pathways]
     total = math.fsum(rates)
     kept = [(p, r) for p, r in zip(pathways, rates, strict=True) if total and r > 1e-6 * total]
     part, rest, used = [], [], []
@@ -246,17 +243,13 @@ def _is_inverted(share: Share, outcome: Outcome) -> bool | None:
     return outcome.product == wanted
 
 
-def _is_site(share: Share, outcome: Outcome) -> bool:
-    return _is_product(share, outcome)
-
-
 _COUNTS: dict[ShareKind, Callable[[Share, Pathway], tuple[float, float]]] = {
     ShareKind.ELIMINATION: _elimination,
     ShareKind.ALKENE: _among(_is_elimination, _is_product),
     ShareKind.TRANS_CIS: _among(_is_elimination, _is_trans),
     ShareKind.REARRANGED: _among(_is_substitution, _is_rearranged),
     ShareKind.TRANSPOSED: _among(_is_substitution, _is_transposed),
-    ShareKind.SITE: _among(_any, _is_site),
+    ShareKind.SITE: _among(_any, _is_product),
     ShareKind.INVERSION: _among(_is_substitution, _is_inverted),
 }
 
@@ -265,8 +258,3 @@ def observed_logit(share: Share) -> tuple[float, float]:
     """Return the logit of an observed share and its standard error."""
     held = min(1 - 2 * FLOOR, max(2 * FLOOR, share.value))
     return logit(held), max(0.15, share.error / (held * (1 - held)))
-
-
-def matching(shares: Sequence[Share], kind: ShareKind) -> tuple[Share, ...]:
-    """Return the shares of one kind."""
-    return tuple(s for s in shares if s.kind is kind)

@@ -13,7 +13,6 @@ from builder.mechanism.flask import Flask
 from builder.mechanism.log_rate import LogRate
 from builder.mechanism.pathways.ionisation import Reception, after_steps, captured_outcomes, receive
 from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
-from builder.mechanism.pathways.substitution import log10
 from builder.mechanism.rate_terms import Parameters
 from builder.mechanism.skeleton import Skeleton, skeleton_of
 from builder.records.vocabulary import Course, Mechanism
@@ -71,7 +70,7 @@ def _addition(
         leaving_group="none",
         partner=None,
         pool=None,
-        rate=LogRate(tuple(terms), (parameters.term("ade.entropy"),), log10(site.multiplicity)),
+        rate=LogRate(tuple(terms), (parameters.term("ade.entropy"),), math.log10(site.multiplicity)),
         event="a proton adds and the cation is captured",
         outcomes=outcomes,
     )
@@ -113,7 +112,7 @@ def _alkene_outcomes(structure: Structure, site: ReactiveSite, reception: Recept
     def start(path: tuple[Shift, ...]) -> Cation:
         return after_steps(protonate(structure, site), path)
 
-    return captured_outcomes(reception, partial(start), site, skeleton_of(structure))
+    return captured_outcomes(reception, start, site, skeleton_of(structure))
 
 
 def _alkyne_outcomes(structure: Structure, site: ReactiveSite, flask: Flask) -> tuple[Outcome, ...]:

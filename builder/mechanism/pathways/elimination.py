@@ -1,5 +1,6 @@
 """Bimolecular elimination: E2 along every path to a beta hydrogen, and E1cB beside an acceptor."""
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import lru_cache, partial
@@ -19,10 +20,9 @@ from builder.mechanism.chairs import axial_cost_kj
 from builder.mechanism.departure import Departure
 from builder.mechanism.flask import NEUTRAL_PKA, Attacker, Flask, has_long_branches
 from builder.mechanism.kinds import BaseFamily
-from builder.mechanism.log_rate import LogRate
 from builder.mechanism.medium import Medium
-from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
-from builder.mechanism.pathways.substitution import hydrogen_bonding, log10, two_phase_terms
+from builder.mechanism.pathways.pathway import Outcome, Pathway, attack, merged_outcomes
+from builder.mechanism.pathways.substitution import hydrogen_bonding, two_phase_terms
 from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
@@ -58,21 +58,9 @@ def e2_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> I
             terms = [*departure.terms, *_way_terms(departure, way, parameters)]
             terms += _base_terms(departure, way, base, flask, parameters)
             terms += two_phase_terms(departure.structure, base, flask, parameters)
-            yield Pathway(
-                mechanism=Mechanism.E2,
-                label="E2 solvent" if base.is_solvent else "E2",
-                site=departure.site,
-                leaving_group=departure.group,
-                partner=base.name,
-                pool=base.pool,
-                rate=LogRate(
-                    terms=(*terms, parameters.term("model.E2")),
-                    entropy=(parameters.term("e2.entropy"),),
-                    split=log10(departure.site.multiplicity) + base.log_activity,
-                ),
-                event=f"{base.name} takes a proton as {departure.group} leaves",
-                outcomes=partial(_outcomes, departure.structure, departure.site, way, base, parameters),
-            )
+            event = f"{base.name} takes a proton as {departure.group} leaves"
+            outcomes = partial(_outcomes, departure.structure, departure.site, way, base, parameters)
+            yield attack(Mechanism.E2, departure, base, terms, parameters, event, outcomes)
 
 
 @dataclass(frozen=True, slots=True)
@@ -108,7 +96,7 @@ def beta_ways(structure: Structure, site: ReactiveSite) -> tuple[BetaWay, ...]:
 def _beta_keys(structure: Structure, site: ReactiveSite, beta: BetaCarbon) -> Iterator[tuple[str, float]]:
     atoms = structure.atoms
     in_reach = 1.0 if beta.in_common_ring else float(beta.hydrogens)  # of two on a ring carbon one is anti
-    hydrogens = log10(in_reach) - log10(3.0)
+    hydrogens = math.log10(in_reach) - math.log10(3.0)
     if hydrogens:
         yield "e2.hydrogens", hydrogens
     if beta.hydrogens == len(beta.hydrogen_isotopes):
@@ -357,23 +345,10 @@ def e1cb_pathways(departure: Departure, flask: Flask, parameters: Parameters) ->
                 ),
                 parameters.term("e1cb.leave", max(0.0, group.conjugate_acid_pka)),
                 parameters.term("e2.base", min(base.pka, _STRONGEST_PKA) - _REFERENCE_PKA),
-                parameters.term("model.E1cB"),
             ]
-            yield Pathway(
-                mechanism=Mechanism.E1CB,
-                label="E1cB solvent" if base.is_solvent else "E1cB",
-                site=departure.site,
-                leaving_group=departure.group,
-                partner=base.name,
-                pool=base.pool,
-                rate=LogRate(
-                    tuple(terms),
-                    (parameters.term("e1cb.entropy"),),
-                    log10(departure.site.multiplicity) + base.log_activity,
-                ),
-                event=f"{base.name} takes the acidic proton, {departure.group} leaves from the carbanion",
-                outcomes=partial(_e1cb_outcomes, departure.structure, departure.site, way, parameters),
-            )
+            event = f"{base.name} takes the acidic proton, {departure.group} leaves from the carbanion"
+            outcomes = partial(_e1cb_outcomes, departure.structure, departure.site, way, parameters)
+            yield attack(Mechanism.E1CB, departure, base, terms, parameters, event, outcomes)
 
 
 def _e1cb_outcomes(

@@ -1,7 +1,7 @@
 """Ionisation, and what becomes of the cation: capture (SN1) or loss of a proton (E1), before or after 1,2-shifts."""
 
 import math
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from functools import cached_property, partial
 
@@ -26,8 +26,8 @@ from builder.mechanism.faces import exo_only, trans_to_acyloxy
 from builder.mechanism.flask import ENOUGH_M, NEUTRAL_PKA, Attacker, Flask
 from builder.mechanism.ionising_power import Scale
 from builder.mechanism.log_rate import REFERENCE_K, LogRate
-from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
-from builder.mechanism.pathways.substitution import ambident_terms, log10
+from builder.mechanism.pathways.pathway import Outcome, Pathway, alone, merged_outcomes
+from builder.mechanism.pathways.substitution import ambident_terms
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
 from builder.mechanism.skeleton import Skeleton, skeleton_of
@@ -115,23 +115,15 @@ def ionisation_pathways(
     ):
         if share < 1e-6:
             continue
-        yield Pathway(
-            mechanism=mechanism,
-            label=mechanism.value,
-            site=site,
-            leaving_group=departure.group,
-            partner=None,
-            pool=None,
-            rate=LogRate(
-                tuple(terms),
-                entropy,
-                math.log10(share) + log10(site.multiplicity),
-                reception.spreads(mechanism is Mechanism.E1),
-            ),
-            event=f"{departure.group} leaves, "
-            + ("the cation is captured" if mechanism is Mechanism.SN1 else "the cation loses a proton"),
-            outcomes=outcomes,
-            returns=mechanism is Mechanism.SN1 and not reception.attackers,
+        is_captured = mechanism is Mechanism.SN1
+        split = math.log10(share) + math.log10(site.multiplicity)
+        yield alone(
+            mechanism,
+            departure,
+            LogRate(tuple(terms), entropy, split, reception.spreads(not is_captured)),
+            f"{departure.group} leaves, the cation {'is captured' if is_captured else 'loses a proton'}",
+            outcomes,
+            returns=is_captured and not reception.attackers,
         )
 
 
@@ -471,7 +463,7 @@ def _captured(reception: Reception, departure: Departure, *, inverts: bool) -> t
 
 def captured_outcomes(
     reception: Reception,
-    start: "partial[Cation]",
+    start: Callable[[tuple[Shift, ...]], Cation],
     site: ReactiveSite,
     skeleton: Skeleton,
     *,
@@ -599,7 +591,7 @@ def _eliminated(reception: Reception, departure: Departure) -> tuple[Outcome, ..
 
 
 def eliminated_outcomes(
-    reception: Reception, start: "partial[Cation]", site: ReactiveSite, skeleton: Skeleton
+    reception: Reception, start: Callable[[tuple[Shift, ...]], Cation], site: ReactiveSite, skeleton: Skeleton
 ) -> tuple[Outcome, ...]:
     """Return the alkenes, and from a hydroxyl group beside the cation the carbonyl compound, over all stations."""
     found: list[Outcome] = []
@@ -640,12 +632,9 @@ def _proton_losses(cation: Cation, parameters: Parameters) -> Iterator[tuple[Edi
         count = atoms[n].hydrogens or 1
         trans = 10 ** parameters.value("e1.trans")
         weights = [trans if edit.geometry == "E" else 1.0 for edit in edits]
+        whole = sum(weights) if len(edits) > 1 else 1.0
         for edit, weight in zip(edits, weights, strict=True):
-            yield (
-                edit,
-                n,
-                count * 10**log * weight / (sum(weights) / len(weights) if len(edits) > 1 else 1.0) / len(edits),
-            )
+            yield edit, n, count * 10**log * weight / whole
 
 
 # --- chlorosulfites without a base ----------------------------------------------------------------------------
@@ -668,17 +657,9 @@ def sni_pathways(departure: Departure, flask: Flask, parameters: Parameters) -> 
     lean = parameters.value("sni.cation")
     terms = [parameters.term("sni.zero")]
     terms += [Term(t.key, t.factor * lean, t.value, t.error, t.meaning, t.source) for t in stability]
-    yield Pathway(
-        mechanism=Mechanism.SN1,
-        label="SN1",
-        site=departure.site,
-        leaving_group=departure.group,
-        partner=None,
-        pool=None,
-        rate=LogRate((*terms, parameters.term("model.ionisation")), (parameters.term("sn1.entropy"),)),
-        event="the chlorosulfite collapses within its ion pair",
-        outcomes=partial(_kept, departure, chloride),
-    )
+    rate = LogRate((*terms, parameters.term("model.ionisation")), (parameters.term("sn1.entropy"),))
+    event = "the chlorosulfite collapses within its ion pair"
+    yield alone(Mechanism.SN1, departure, rate, event, partial(_kept, departure, chloride))
 
 
 def _kept(departure: Departure, chloride: Attacker) -> tuple[Outcome, ...]:

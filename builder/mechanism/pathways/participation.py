@@ -1,6 +1,7 @@
 """Neighbouring groups: one displaces the leaving group from within; a ring stays, a bridged ion opens again."""
 
-from collections.abc import Iterator, Sequence
+import math
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import lru_cache, partial
 
@@ -26,8 +27,8 @@ from builder.mechanism.kinds import Kind, load_kinds
 from builder.mechanism.log_rate import LogRate
 from builder.mechanism.nucleophiles import nucleophile_by_structure
 from builder.mechanism.pathways.ionisation import capture_weight
-from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
-from builder.mechanism.pathways.substitution import hydrogen_bonding, log10, site_features
+from builder.mechanism.pathways.pathway import Outcome, Pathway, alone, merged_outcomes
+from builder.mechanism.pathways.substitution import hydrogen_bonding, site_features
 from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
@@ -71,19 +72,22 @@ def participation_pathways(departure: Departure, flask: Flask, parameters: Param
         terms = _rate_terms(departure, group, size, flask, parameters)
         if terms is None:
             continue
-        yield Pathway(
-            mechanism=Mechanism.NGP,
-            label="NGP",
-            site=site,
-            leaving_group=departure.group,
-            partner=None,
-            pool=None,
-            rate=LogRate(
-                (*terms, parameters.term("model.NGP")), (parameters.term("ngp.entropy"),), log10(site.multiplicity)
-            ),
-            event=f"{group.kind} of the same molecule displaces {departure.group}",
-            outcomes=partial(_outcomes, departure, group, flask, parameters),
-        )
+        event = f"{group.kind} of the same molecule displaces {departure.group}"
+        outcomes = partial(_outcomes, departure, group, flask, parameters)
+        yield _pathway(departure, terms, "ngp.entropy", parameters, event, outcomes)
+
+
+def _pathway(
+    departure: Departure,
+    terms: Iterable[Term],
+    entropy: str,
+    parameters: Parameters,
+    event: str,
+    outcomes: Callable[[], tuple[Outcome, ...]],
+) -> Pathway:
+    split = math.log10(departure.site.multiplicity)
+    rate = LogRate((*terms, parameters.term("model.NGP")), (parameters.term(entropy),), split)
+    return alone(Mechanism.NGP, departure, rate, event, outcomes)
 
 
 # --- which groups reach the carbon ----------------------------------------------------------------------------
@@ -261,15 +265,7 @@ def _bridging_terms(
         {"benzylic", "allylic", "alpha-carbonyl", "alpha-alkoxy"}
     ):
         return None
-    terms = [
-        parameters.term("sn1.zero"),
-        parameters.term(f"sn1.leave.{departure.group}"),
-        *departure.terms,
-        *departure.pull,
-    ]
-    if departure.family != "onium":
-        scale = Scale.YOTS if departure.family == "sulfonate" else Scale.Y
-        terms.append(parameters.term(f"sn1.power.{departure.family}", flask.medium.power(scale).value))
+    terms = list(_ionising_terms(departure, flask, parameters))
     structure = departure.structure
     if group.kind == "arene":
         terms.append(parameters.term(f"ngp.aryl.{degree.value}"))
@@ -297,6 +293,17 @@ def _bridging_terms(
     return terms
 
 
+def _ionising_terms(departure: Departure, flask: Flask, parameters: Parameters) -> Iterator[Term]:
+    """Yield what a bridged ion shares with an open cation: the leaving group, its help, the ionising power."""
+    yield parameters.term("sn1.zero")
+    yield parameters.term(f"sn1.leave.{departure.group}")
+    yield from departure.terms
+    yield from departure.pull
+    if departure.family != "onium":
+        scale = Scale.YOTS if departure.family == "sulfonate" else Scale.Y
+        yield parameters.term(f"sn1.power.{departure.family}", flask.medium.power(scale).value)
+
+
 def _ionised(group: Nucleophile, kind: Kind, flask: Flask, parameters: Parameters) -> tuple[Kind, list[Term]] | None:
     """Return the anion a base of the flask makes of a group, with log10 of the share ionised; None without one."""
     if kind.anion is None or kind.acid_pka is None:
@@ -307,7 +314,7 @@ def _ionised(group: Nucleophile, kind: Kind, flask: Flask, parameters: Parameter
     for base in flask.attackers:
         if not base.is_usual_atom or base.pka < NEUTRAL_PKA:
             continue
-        share = min(0.0, base.pka - acid_pka + log10(max(base.molar, 1e-6)))
+        share = min(0.0, base.pka - acid_pka + math.log10(max(base.molar, 1e-6)))
         best = share if best is None else max(best, share)
     if best is None or best < _LEAST_IONISED:
         return None
@@ -458,24 +465,11 @@ def _sigma(departure: Departure, flask: Flask, parameters: Parameters) -> Iterat
     bond = shifting_bond(structure, site.alpha_carbon)
     if bond is None or exo_face(structure, site.alpha_carbon, site.leaving_atom) is not True:
         return
-    terms = [parameters.term(key) for key in ("sn1.zero", "cation.secondary", "cation.ring.5", "cation.norbornyl")]
-    terms += [parameters.term(f"sn1.leave.{departure.group}"), *departure.terms, *departure.pull]
-    if departure.family != "onium":
-        scale = Scale.YOTS if departure.family == "sulfonate" else Scale.Y
-        terms.append(parameters.term(f"sn1.power.{departure.family}", flask.medium.power(scale).value))
-    yield Pathway(
-        mechanism=Mechanism.NGP,
-        label="NGP",
-        site=site,
-        leaving_group=departure.group,
-        partner=None,
-        pool=None,
-        rate=LogRate(
-            (*terms, parameters.term("model.NGP")), (parameters.term("sn1.entropy"),), log10(site.multiplicity)
-        ),
-        event=f"the bond behind {departure.group} takes part as it leaves",
-        outcomes=partial(_sigma_outcomes, departure, bond, flask, parameters),
-    )
+    terms = list(_ionising_terms(departure, flask, parameters))
+    terms += [parameters.term(f"cation.{word}") for word in ("secondary", "ring.5", "norbornyl")]
+    event = f"the bond behind {departure.group} takes part as it leaves"
+    outcomes = partial(_sigma_outcomes, departure, bond, flask, parameters)
+    yield _pathway(departure, terms, "sn1.entropy", parameters, event, outcomes)
 
 
 def _sigma_outcomes(

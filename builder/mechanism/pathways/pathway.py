@@ -1,14 +1,18 @@
 """A pathway: one mechanism at one site, its rate, and the products it leads to, built only when asked for."""
 
-from collections.abc import Callable
+import math
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
 from builder.chemistry.perception import ReactiveSite
 from builder.chemistry.structure import Structure
+from builder.mechanism.departure import Departure
+from builder.mechanism.flask import Attacker
 from builder.mechanism.log_rate import LogRate
+from builder.mechanism.rate_terms import Parameters, Term
 from builder.records.vocabulary import Course, Mechanism
 
-__all__ = ["Outcome", "Pathway", "merged_outcomes"]
+__all__ = ["Outcome", "Pathway", "alone", "attack", "merged_outcomes"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -47,6 +51,61 @@ class Pathway:
     event: str
     outcomes: Callable[[], tuple[Outcome, ...]]
     returns: bool = False
+
+
+def attack(
+    mechanism: Mechanism,
+    departure: Departure,
+    attacker: Attacker,
+    terms: Iterable[Term],
+    parameters: Parameters,
+    event: str,
+    outcomes: Callable[[], tuple[Outcome, ...]],
+) -> Pathway:
+    """Return a bimolecular pathway: by its partner, solvents at their molarity, equivalent sites counted.
+
+    Its entropy is that of the family, SN2 for SN2' too.
+    """
+    family = Mechanism.SN2 if mechanism is Mechanism.SN2_PRIME else mechanism
+    return Pathway(
+        mechanism=mechanism,
+        label=f"{mechanism.value} solvent" if attacker.is_solvent else mechanism.value,
+        site=departure.site,
+        leaving_group=departure.group,
+        partner=attacker.name,
+        pool=attacker.pool,
+        rate=LogRate(
+            terms=(*terms, parameters.term(f"model.{mechanism.value}")),
+            entropy=(parameters.term(f"{family.value.lower()}.entropy"),),
+            split=math.log10(departure.site.multiplicity) + attacker.log_activity,
+        ),
+        event=event,
+        outcomes=outcomes,
+    )
+
+
+def alone(
+    mechanism: Mechanism,
+    departure: Departure,
+    rate: LogRate,
+    event: str,
+    outcomes: Callable[[], tuple[Outcome, ...]],
+    *,
+    returns: bool = False,
+) -> Pathway:
+    """Return a pathway of first order, by the substrate alone."""
+    return Pathway(
+        mechanism=mechanism,
+        label=mechanism.value,
+        site=departure.site,
+        leaving_group=departure.group,
+        partner=None,
+        pool=None,
+        rate=rate,
+        event=event,
+        outcomes=outcomes,
+        returns=returns,
+    )
 
 
 def merged_outcomes(outcomes: list[Outcome]) -> tuple[Outcome, ...]:

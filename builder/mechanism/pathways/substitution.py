@@ -1,6 +1,5 @@
 """Bimolecular substitution: SN2 at the carbon that bears the leaving group, SN2' at the far end of a double bond."""
 
-import math
 from collections.abc import Iterator
 from functools import lru_cache, partial
 
@@ -13,8 +12,7 @@ from builder.mechanism.chairs import is_axial
 from builder.mechanism.departure import Departure
 from builder.mechanism.flask import Attacker, Flask
 from builder.mechanism.kinds import BaseFamily
-from builder.mechanism.log_rate import LogRate
-from builder.mechanism.pathways.pathway import Outcome, Pathway, merged_outcomes
+from builder.mechanism.pathways.pathway import Outcome, Pathway, attack, merged_outcomes
 from builder.mechanism.polarity import polarity_of
 from builder.mechanism.rate_terms import Parameters, Term
 from builder.mechanism.rules import closing_gates
@@ -99,34 +97,9 @@ def _sn2(
         diaxial = opens_diaxially(departure.structure, site, attacker)
         if diaxial is not None:
             terms.append(parameters.term("sn2.diaxial", 1.0 if diaxial else -1.0))
-    return Pathway(
-        mechanism=Mechanism.SN2,
-        label="SN2 solvent" if attacker.is_solvent else "SN2",
-        site=site,
-        leaving_group=departure.group,
-        partner=attacker.name,
-        pool=attacker.pool,
-        rate=rate_of(terms, "sn2.entropy", attacker, site, parameters, "model.SN2"),
-        event=f"{attacker.name} displaces {departure.group} with inversion",
-        outcomes=partial(_sn2_outcomes, departure.structure, site, attacker, _HALIDE_IONS.get(departure.group)),
-    )
-
-
-def rate_of(
-    terms: list[Term], entropy: str, attacker: Attacker, site: ReactiveSite, parameters: Parameters, model: str
-) -> LogRate:
-    """Return the rate of a bimolecular pathway; solvents at their molarity, equivalent sites counted."""
-    return LogRate(
-        terms=(*terms, parameters.term(model)),
-        entropy=(parameters.term(entropy),),
-        split=log10(site.multiplicity) + attacker.log_activity,
-    )
-
-
-@lru_cache(maxsize=256)
-def log10(value: float) -> float:
-    """Return the logarithm to base ten of a positive number."""
-    return math.log10(value)
+    event = f"{attacker.name} displaces {departure.group} with inversion"
+    outcomes = partial(_sn2_outcomes, departure.structure, site, attacker, _HALIDE_IONS.get(departure.group))
+    return attack(Mechanism.SN2, departure, attacker, terms, parameters, event, outcomes)
 
 
 def _sn2_outcomes(
@@ -436,17 +409,9 @@ def _sn2_prime(
             terms.append(parameters.term("sn2prime.cuprate.ester"))
     if _has_acceptor_on_near_end(structure, site):
         terms.append(parameters.term("sn2prime.acceptor"))
-    yield Pathway(
-        mechanism=Mechanism.SN2_PRIME,
-        label="SN2' solvent" if attacker.is_solvent else "SN2'",
-        site=site,
-        leaving_group=departure.group,
-        partner=attacker.name,
-        pool=attacker.pool,
-        rate=rate_of(terms, "sn2.entropy", attacker, site, parameters, "model.SN2'"),
-        event=f"{attacker.name} attacks the far end of the double bond",
-        outcomes=partial(_prime_outcomes, structure, site, attacker, parameters),
-    )
+    event = f"{attacker.name} attacks the far end of the double bond"
+    outcomes = partial(_prime_outcomes, structure, site, attacker, parameters)
+    yield attack(Mechanism.SN2_PRIME, departure, attacker, terms, parameters, event, outcomes)
 
 
 def _prime_outcomes(
