@@ -16,7 +16,7 @@ from builder.mechanism.outlook import OUT_OF_QUESTION, expected_text
 from builder.mechanism.products import MEET_IN_ONE_PRODUCT, Event, Route
 from builder.mechanism.rules import Gate, closing_gates
 from builder.records.specimen import outcome_example
-from builder.records.vocabulary import Course, Mechanism, Result, StereoKind
+from builder.records.vocabulary import ELIMINATIONS, SUBSTITUTIONS, Course, Mechanism, Result, StereoKind
 from builder.rule import Fault, Path, rule
 
 __all__ = [
@@ -48,8 +48,6 @@ CONTRARY_RULES = frozenset(
 
 AGREEMENT_READS = ("structure-unreadable", "leaving-group-not-found", "leaving-group-unknown")
 """Rules that must be silent before a record is compared with what its structures allow."""
-_ELIMINATIONS = {Mechanism.E1, Mechanism.E2, Mechanism.E1CB}
-_SUBSTITUTIONS = {Mechanism.SN1, Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.NGP}
 
 
 _NOT_BY_SN2 = {
@@ -122,7 +120,7 @@ def claim_is_against_the_product(case: Case) -> Iterator[Fault]:
     if claim is None or not wanted:
         return
     endings = {route.eliminates for routes in wanted for route in routes}
-    kinds = {True: _ELIMINATIONS, False: _SUBSTITUTIONS}
+    kinds = {True: ELIMINATIONS, False: SUBSTITUTIONS}
     for eliminates, mechanisms in kinds.items():
         if claim.mechanism in mechanisms and endings == {not eliminates}:
             found = "an elimination" if not eliminates else "a substitution"

@@ -33,7 +33,7 @@ class Bounds:
     @classmethod
     def of(cls, percent: Percent) -> "Bounds":
         """Return the bounds of "88 %", "< 2 %" (from 0) or "> 98 %" (without upper end)."""
-        if percent.relation in {"<", "≤"}:
+        if percent.is_upper_limit:
             return cls(0.0, percent.magnitude)
         return cls(percent.magnitude, math.inf if percent.relation else percent.magnitude)
 

@@ -12,11 +12,10 @@ from enum import StrEnum
 from functools import cache, lru_cache
 from textwrap import shorten
 
-from builder.checks.case import Case
+from builder.checks.case import Case, compounds_of
 from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.finding import Level
-from builder.mechanism.amounts import charged_rows
 from builder.mechanism.solvents import find_solvent
 from builder.records.model import Compound
 from builder.rule import Fault, Path, rule
@@ -199,20 +198,11 @@ def presents_of(case: Case) -> tuple[Present, ...]:
 
     A solvent without a structure takes it from the table of solvents; whatever has none is judged by its name.
     """
-    record = case.record
-    charged = [_substance(case, path, compound, Whereabouts.FLASK) for path, _, compound in charged_rows(record)]
-    formed = [
-        _substance(case, ("stages", index, "gives"), stage.gives, Whereabouts.FLASK)
-        for index, stage in enumerate(record.stages)
-        if stage.gives is not None
-    ]
-    products = [
-        _substance(case, ("outcome", "products", index), product, Whereabouts.PRODUCT)
-        for index, product in enumerate(record.outcome.products)
-    ]
-    if record.outcome.sought is not None:
-        products.append(_substance(case, ("outcome", "sought"), record.outcome.sought, Whereabouts.PRODUCT))
-    return (*charged, *formed, *products, *_texts(case))
+    substances = (
+        _substance(case, path, compound, Whereabouts.PRODUCT if path[0] == "outcome" else Whereabouts.FLASK)
+        for path, compound in compounds_of(case.record)
+    )
+    return (*substances, *_texts(case))
 
 
 def _texts(case: Case) -> Iterator[Present]:

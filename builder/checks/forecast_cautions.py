@@ -7,14 +7,13 @@ from collections.abc import Iterator
 
 from builder.checks.cautions import WHO_DECIDES, Hazard, Present, Severity, Whereabouts, by_meeting, find_hazards
 from builder.chemistry.structure import Structure, parse_smiles
+from builder.mechanism.asking import ABSOLUTE_ZERO_C
 from builder.mechanism.forecast import Forecast
 from builder.mechanism.question import Ingredient, Question
 from builder.mechanism.reagents import Dose
 from builder.sources import source_text
 
 __all__ = ["forecast_cautions"]
-
-ABSOLUTE_ZERO_C = -273.15
 
 
 def forecast_cautions(question: Question, forecast: Forecast) -> tuple[dict[str, str], ...]:

@@ -21,7 +21,7 @@ from builder.mechanism.outlook import OUT_OF_QUESTION, expected_text
 from builder.mechanism.products import Event, Route
 from builder.records.model import Measurement
 from builder.records.specimen import TWO_PRODUCTS, outcome_example
-from builder.records.vocabulary import Course, Mechanism, Result, YieldKind
+from builder.records.vocabulary import ELIMINATIONS, SUBSTITUTIONS, Course, Mechanism, Result, YieldKind
 from builder.rule import Fault, Path, rule
 
 __all__ = ["FORECAST_CHECKS", "Bounds", "is_same_product", "share_bounds"]
@@ -218,10 +218,10 @@ def course_is_not_forecast(case: Case) -> Iterator[Fault]:
             continue
         drawn = case.structures[path]
         made = [each for each in forecast.products if _is_isomer(drawn, each.structure) and each.course in _TOLD]
-        defended = share_bounds(forecast, lambda each: each in made and each.course in _TOLD[course], ())  # noqa: B023
+        defended = _share_by(forecast, made, _TOLD[course])
         if made and defended.high < OUT_OF_QUESTION:
             main = max(made, key=lambda each: each.share)
-            bounds = share_bounds(forecast, lambda each: each in made and each.course is main.course, ())  # noqa: B023
+            bounds = _share_by(forecast, made, {main.course})
             yield Fault(
                 at=course_path(case, path),
                 message=f"the record gives {course}; the engine expects {main.course} by {main.mechanism}"
@@ -309,7 +309,7 @@ def ratio_is_against_the_forecast(case: Case) -> Iterator[Fault]:
     forecast = case.forecast
     if forecast is None or not forecast.products:
         return
-    paths = {case.record.outcome.products[int(path[-1])].label: path for path in _weighable(case, forecast)}
+    paths = _weighable(case, forecast)
     for index, line in enumerate(case.record.outcome.measured):
         if line.ratio is None or not all(label in paths for part in line.ratio.parts for label in part):
             continue
@@ -377,7 +377,7 @@ def conversion_is_above_the_forecast(case: Case) -> Iterator[Fault]:
         return
     for index, line in enumerate(case.record.outcome.measured):
         seen = line.conversion
-        if seen is not None and not seen.relation.startswith(("<", "≤")) and seen.magnitude >= FULL_CONVERSION_PERCENT:
+        if seen is not None and not seen.is_upper_limit and seen.magnitude >= FULL_CONVERSION_PERCENT:
             yield Fault(
                 at=("outcome", "measured", index, "conversion"),
                 message=f"the record gives {seen} conversion; the engine expects {_conversion(forecast)}",
@@ -404,7 +404,7 @@ def _yields_above(case: Case, rule_id: str, *, wanted: bool) -> Iterator[Fault]:
     forecast = case.forecast
     if forecast is None:
         return
-    by_label = {case.record.outcome.products[int(path[-1])].label: path for path in _weighable(case, forecast)}
+    by_label = _weighable(case, forecast)
     for index, line in enumerate(case.record.outcome.measured):
         if not _is_a_yield(line) or not all(label in by_label for label in line.of or ()):
             continue
@@ -428,17 +428,24 @@ def _yields_above(case: Case, rule_id: str, *, wanted: bool) -> Iterator[Fault]:
 
 def _is_a_yield(line: Measurement) -> bool:
     seen = line.yield_
-    return seen is not None and line.kind is not YieldKind.AREA and not seen.relation.startswith(("<", "≤"))
+    return seen is not None and line.kind is not YieldKind.AREA and not seen.is_upper_limit
 
 
-def _weighable(case: Case, forecast: Forecast) -> Iterator[Path]:
-    """Yield the paths of the products that the engine has, or could have, among its own."""
+def _weighable(case: Case, forecast: Forecast) -> dict[str, Path]:
+    """Return the paths of the products that the engine has, or could have, among its own, by label."""
+    found = {}
     for path, routes in routes_by_product(case).items():
         drawn = case.structures[path]
         if path != SOUGHT and (
             _is_in_reach(routes) or any(is_same_product(drawn, each.structure) for each in forecast.products)
         ):
-            yield path
+            found[case.record.outcome.products[int(path[-1])].label] = path
+    return found
+
+
+def _share_by(forecast: Forecast, made: Container[Forecasted], courses: Container[Course]) -> Bounds:
+    """Return the share of some products that form by one of these courses."""
+    return share_bounds(forecast, lambda each: each in made and each.course in courses, ())
 
 
 def _bounds_of(case: Case, forecast: Forecast, paths: Iterable[Path]) -> Bounds:
@@ -453,12 +460,8 @@ def _bounds_of(case: Case, forecast: Forecast, paths: Iterable[Path]) -> Bounds:
     )
 
 
-_SUBSTITUTIONS = (Mechanism.SN1, Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.NGP)
-_BY_EVENT: dict[Event, tuple[Mechanism, ...]] = {
-    event: {
-        Event.ELIMINATION: (Mechanism.E1, Mechanism.E2, Mechanism.E1CB),
-        Event.ADDITION: (Mechanism.ADE,),
-    }.get(event, _SUBSTITUTIONS)
+_BY_EVENT: dict[Event, frozenset[Mechanism]] = {
+    event: {Event.ELIMINATION: ELIMINATIONS, Event.ADDITION: frozenset({Mechanism.ADE})}.get(event, SUBSTITUTIONS)
     for event in Event
 }
 """The mechanisms that may lie behind the last event of a route."""

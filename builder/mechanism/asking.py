@@ -107,9 +107,7 @@ def read_question(  # noqa: PLR0913 - a keyword for each thing a chemist states
         solvent=parts,
         temperature_k=_kelvin(temperature_c),
         concentration_m=_positive(concentration_m, "concentration", CONCENTRATION_M, MOST_MOLAR),
-        equivalents=None
-        if equivalents is None
-        else _positive(equivalents, "equivalents", EQUIVALENTS, MOST_EQUIVALENTS),
+        equivalents=None if equivalents is None else _equivalents(equivalents),
         time_s=_positive(time_h, "time", TIME_S / 3600, MOST_TIME_H) * 3600,
     )
     stated = {"concentration": concentration_m, "equivalents": equivalents, "time": time_h}
@@ -367,8 +365,7 @@ def _ingredient(name: str | None, smiles: str | None, readings: list[Reading], w
         structure = parse_smiles(name.strip())
     except StructureError as fault:
         near = (*nearest_nucleophiles(name), *nearest_reagents(name))
-        mend = f'did you mean "{near[0]}"?' if near else "give a known name or a SMILES"
-        raise AskingError(f"unknown {what} {_shown(name)}", mend) from fault
+        raise _unknown(what, name, near, "give a known name or a SMILES") from fault
     readings.append(Reading(what, name, f"SMILES {structure.smiles}"))
     return Ingredient(structure.smiles, structure)
 
@@ -424,9 +421,7 @@ def _bystander(text: str) -> str:
     try:
         structure = parse_smiles(text.strip())
     except StructureError as fault:
-        near = nearest_reagents(text)
-        mend = f'did you mean "{near[0]}"?' if near else "leave it out, or give its SMILES"
-        raise AskingError(f"unknown additive {_shown(text)}", mend) from fault
+        raise _unknown("additive", text, nearest_reagents(text), "leave it out, or give its SMILES") from fault
     row = nucleophile_by_structure(structure.smiles)
     return f"SMILES {structure.smiles}" if row is None else row.name
 
@@ -467,7 +462,10 @@ def _solvent(name: str) -> Solvent:
         except StructureError:
             solvent = None
     if solvent is None:
-        near = nearest_solvents(name)
-        mend = f'did you mean "{near[0]}"?' if near else "give a solvent of the table of solvents, by name or SMILES"
-        raise AskingError(f"unknown solvent {_shown(name)}", mend)
+        otherwise = "give a solvent of the table of solvents, by name or SMILES"
+        raise _unknown("solvent", name, nearest_solvents(name), otherwise)
     return solvent
+
+
+def _unknown(what: str, name: str, near: Sequence[str], otherwise: str) -> AskingError:
+    return AskingError(f"unknown {what} {_shown(name)}", f'did you mean "{near[0]}"?' if near else otherwise)

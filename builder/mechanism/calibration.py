@@ -4,19 +4,21 @@ Each observation is a rate (log10) or a share (logit). The terms are moved by Ga
 in rate_terms.tsv, each held there by its own standard error as by one more observation (ridge, or a Gaussian prior);
 residuals beyond HUBER standard errors count less (Huber 1964). Leave-one-out residuals come from the leverage of each
 row, r / (1 - h), with no second fit. What the terms leave unexplained in a family of pathways is estimated from those
-residuals and enters the errors of every forecast. Order of rows and of terms is that of the tables, so the result is
-the same on every machine to the digits written.
+residuals and enters the errors of every forecast. Order of rows and of terms is that of the tables, so one machine
+always writes the same. A sum taken in another order may change the last digit written: what a pathway leaves out below
+its least weight comes and goes in steps.
 Sources: Hoerl and Kennard, Technometrics 1970, 12, 55; Huber, Ann. Math. Stat. 1964, 35, 73 (from memory).
 """
 
 import math
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
 
-from builder.mechanism.observations.tables import Rate, Share, ShareKind, load_rates, load_shares
+from builder.mechanism.observations.tables import ShareKind, load_rates, load_shares
 from builder.mechanism.observing import Seen, SilentError, observed_logit, see_rate, see_share
 from builder.mechanism.rate_terms import Parameters, RateTerm, load_rate_terms
 
@@ -117,23 +119,14 @@ def _rows(partition: tuple[str, ...]) -> Iterator[_Row]:
         if rate.is_reference or "+]" in (rate.nucleophile or ""):
             continue
         reference = rates[rate.relative_to] if rate.relative_to else None
-        yield _Row(
-            rate.id, rate.channel.value, rate.value, rate.error, _MODEL_OF_CHANNEL[rate.channel], _seer(rate, reference)
-        )
+        see = partial(see_rate, rate, reference=reference)
+        yield _Row(rate.id, rate.channel.value, rate.value, rate.error, _MODEL_OF_CHANNEL[rate.channel], see)
     for share in load_shares():
         if "+]" in (share.nucleophile or ""):
             continue
         observed, error = observed_logit(share)
         keys = () if share.kind is ShareKind.ELIMINATION and share.nucleophile is not None else partition
-        yield _Row(share.id, share.kind.value, observed, error, None, _share_seer(share, keys))
-
-
-def _seer(rate: Rate, reference: Rate | None) -> Callable[[Parameters], Seen]:
-    return lambda parameters: see_rate(rate, parameters, reference)
-
-
-def _share_seer(share: Share, keys: tuple[str, ...]) -> Callable[[Parameters], Seen]:
-    return lambda parameters: see_share(share, parameters, keys)
+        yield _Row(share.id, share.kind.value, observed, error, None, partial(see_share, share, partition_keys=keys))
 
 
 def _answered(rows: Sequence[_Row], parameters: Parameters) -> tuple[list[_Row], list[str]]:

@@ -1,4 +1,4 @@
-"""Small tables of constants: σ+ of aryl substituents, strain of rings, conformational energies; one reader each."""
+"""Small tables of constants: σ+ of aryl substituents, strain of rings, conformational energies."""
 
 from dataclasses import dataclass
 from functools import cache
@@ -27,28 +27,33 @@ def sigma_plus(substituent: ArylSubstituent) -> float:
 
 @cache
 def _sigmas() -> dict[str, Sigma]:
-    name = "aryl_constants.tsv"
-    rows = list(rows_of(name, table_text("builder.mechanism", name), ("name", "meta", "para", "source")))
-    refuse_twice(name, "name", [row["name"] for row in rows])
+    rows = _rows("aryl_constants.tsv", ("name", "meta", "para"))
     return {row["name"]: Sigma(float(row["meta"]), float(row["para"])) for row in rows}
 
 
-@cache
 def ring_strain_kj(size: int) -> float:
     """Return the strain of a carbocycle, kJ/mol; sizes above 9 as 9."""
-    name = "ring_strain.tsv"
-    rows = list(rows_of(name, table_text("builder.mechanism", name), ("size", "strain_kj_mol", "source")))
-    refuse_twice(name, "size", [row["size"] for row in rows])
-    strain = {int(row["size"]): float(row["strain_kj_mol"]) for row in rows}
+    strain = _ring_strains()
     return strain[min(size, max(strain))]
 
 
 @cache
+def _ring_strains() -> dict[int, float]:
+    rows = _rows("ring_strain.tsv", ("size", "strain_kj_mol"))
+    return {int(row["size"]): float(row["strain_kj_mol"]) for row in rows}
+
+
+@cache
 def _conformational_energies() -> dict[str, float]:
-    name = "conformational_energies.tsv"
-    rows = list(rows_of(name, table_text("builder.mechanism", name), ("group", "a_value_kj_mol", "source")))
-    refuse_twice(name, "group", [row["group"] for row in rows])
+    rows = _rows("conformational_energies.tsv", ("group", "a_value_kj_mol"))
     return {row["group"]: float(row["a_value_kj_mol"]) for row in rows}
+
+
+def _rows(name: str, columns: tuple[str, ...]) -> list[dict[str, str]]:
+    """Return the rows of a table, the first of whose columns is its key."""
+    rows = list(rows_of(name, table_text("builder.mechanism", name), (*columns, "source")))
+    refuse_twice(name, columns[0], [row[columns[0]] for row in rows])
+    return rows
 
 
 def conformational_energy_kj(symbol: str, branches: int) -> float:

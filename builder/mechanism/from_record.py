@@ -185,9 +185,13 @@ class _Asker:
         present = {d.reagent.name for d in (self._dose(p) for p, _ in self._reagents()) if d is not None}
         return dose.reagent.role is Role.ACTIVATOR and dose.reagent.works_beside(present)
 
+    def _bases_left(self) -> list[Path]:
+        """Return the bases that did not go into making the molecule asked about."""
+        return [("base", i) for i, base in enumerate(self.record.bases) if not self._is_used_up(base)]
+
     def _base(self) -> tuple[Ingredient | None, list[Dose]]:
         """Return the first base, and all others as reagents; silver oxide is both."""
-        paths = [("base", i) for i, base in enumerate(self.record.bases) if not self._is_used_up(base)]
+        paths = self._bases_left()
         if not paths:
             return None, []
         first, *others = paths
@@ -211,8 +215,7 @@ class _Asker:
 
     def _equivalents(self) -> float | None:
         """Return the equivalents of what attacks; where a base must first take its proton, no more than of the base."""
-        left = (("base", i) for i, base in enumerate(self.record.bases) if not self._is_used_up(base))
-        base = next((self._ratio(path) for path in left), None)
+        base = next(map(self._ratio, self._bases_left()), None)
         if not self.record.nucleophiles:
             return base
         charged = self._ratio(("nucleophile", 0))

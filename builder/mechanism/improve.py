@@ -15,6 +15,7 @@ from builder.chemistry.neutral import neutral_form
 from builder.chemistry.perception import Degree, Hybridisation, ReactiveSite, attacking_atoms, perceive_sites
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.chemistry.transform import substitute
+from builder.mechanism.asking import ABSOLUTE_ZERO_C
 from builder.mechanism.departure import HALIDES
 from builder.mechanism.engine import predict
 from builder.mechanism.forecast import Forecast
@@ -24,7 +25,7 @@ from builder.mechanism.question import Ingredient, Question
 from builder.mechanism.rate_terms import Parameters
 from builder.mechanism.reagents import Role
 from builder.mechanism.solvents import Solvent, SolventKind, boiling_point_c, find_solvent, freezing_point_c
-from builder.records.vocabulary import Mechanism
+from builder.records.vocabulary import ELIMINATIONS, Mechanism
 from builder.table import refuse_twice, rows_of, table_text
 
 __all__ = ["BUDGET", "EFFORT", "LEAST_CONVERSION", "ChangeKind", "Improvement", "improvements", "is_as_wanted"]
@@ -38,7 +39,6 @@ LEAST_GAIN = 0.05
 FEW = 3
 """Changes named of one kind, and of all kinds where none suffices; also how many of a kind are tried in pairs."""
 
-_ABSOLUTE_ZERO_C = -273.15
 _TEMPERATURES_C = (-78, -40, -20, 0, 25, 40, 60, 80, 100, 120)
 _TIMES_H = (1.0, 2.0, 4.0, 8.0, 16.0, 24.0, 48.0, 72.0)
 _EQUIVALENTS = (1.1, 2.0, 3.0, 5.0)
@@ -55,7 +55,6 @@ _STEP_K = 5.0
 _WEAK_BASE = "potassium carbonate"
 _NO_POISON_GAS = 3
 """Heavy atoms up to which the acid of a nucleophile (HCN, HN3, H2S) is a poisonous gas, and so not proposed."""
-_ELIMINATIONS = frozenset({Mechanism.E2, Mechanism.E1, Mechanism.E1CB})
 _OTHER_SULFONATES = frozenset({"benzenesulfonate", "brosylate", "nosylate", "triflate"})
 
 
@@ -138,7 +137,7 @@ def improvements(
     if not 0 < share <= 1 or mechanism is Mechanism.NONE:
         raise ValueError("a wanted share lies above 0 and up to 1, and no reaction is no wanted mechanism")
     structure = parse_smiles(product) if isinstance(product, str) else product
-    needs_nucleophile = structure is None and mechanism not in _ELIMINATIONS
+    needs_nucleophile = structure is None and mechanism not in ELIMINATIONS
     before = predict(question, parameters)
     if structure is None and mechanism is None:
         mechanism, share = max(before.shares, key=lambda m: before.shares[m], default=None), min(share, _FOREMOST)
@@ -325,7 +324,7 @@ def _is_alike(change: _Change, other: _Change) -> bool:
 
 
 def _temperatures(question: Question, _: _Wanted) -> Iterator[Ladder]:
-    now = question.temperature_k + _ABSOLUTE_ZERO_C
+    now = question.temperature_k + ABSOLUTE_ZERO_C
     low, high = _liquid_c(question.solvent)
     allowed = [float(t) for t in _TEMPERATURES_C if low <= t <= high]
     if high < max(_TEMPERATURES_C) and not any(abs(t - high) < _STEP_K for t in allowed):
@@ -335,7 +334,7 @@ def _temperatures(question: Question, _: _Wanted) -> Iterator[Ladder]:
             _step(
                 ChangeKind.TEMPERATURE,
                 f"{t:g} °C in place of {now:.4g} °C",
-                replace(question, temperature_k=t - _ABSOLUTE_ZERO_C),
+                replace(question, temperature_k=t - ABSOLUTE_ZERO_C),
                 way,
             )
             for t in steps
@@ -489,7 +488,7 @@ def _is_sensible(changed: Question, asked: Question) -> bool:
     """Say whether a flask is liquid and holds nothing that must not meet; what was asked for is not held against it."""
     if (changed.solvent, changed.temperature_k) != (asked.solvent, asked.temperature_k):
         low, high = _liquid_c(changed.solvent)
-        if not low <= changed.temperature_k + _ABSOLUTE_ZERO_C <= high:
+        if not low <= changed.temperature_k + ABSOLUTE_ZERO_C <= high:
             return False
     already = set(_bad_pairs(asked))
     return not any(pair.is_never or (pair, solvent) not in already for pair, solvent in _bad_pairs(changed))

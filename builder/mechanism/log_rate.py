@@ -64,11 +64,10 @@ class LogRate:
     def slopes(self, temperature_k: float) -> dict[str, tuple[float, float]]:
         """Return, for each term, the slope of log10 k at this temperature on it and its standard error."""
         ratio = REFERENCE_K / temperature_k
-        per_j = (1 - ratio) / (GAS_CONSTANT * _LN10)
         found: dict[str, tuple[float, float]] = {}
         for key, slope, error in chain(
-            ((term.key, ratio * term.factor, term.error) for term in self.terms),
-            ((term.key, per_j * term.factor, term.error) for term in self.entropy),
+            ((t.key, ratio * t.factor, t.error) for t in self.terms),
+            ((t.key, t.factor * (1 - ratio) / (GAS_CONSTANT * _LN10), t.error) for t in self.entropy),
             self.spreads,
         ):
             found[key] = (found.get(key, (0.0, 0.0))[0] + slope, error)

@@ -12,9 +12,9 @@ from builder.mechanism.observations.tables import Channel, Mixture, Rate, Share,
 from builder.mechanism.pathways.pathway import Outcome, Pathway
 from builder.mechanism.question import Ingredient, Question
 from builder.mechanism.rate_terms import Parameters
-from builder.records.vocabulary import Course, Mechanism
+from builder.records.vocabulary import ELIMINATIONS, Course
 
-__all__ = ["Seen", "SilentError", "see_channel", "see_rate", "see_share", "see_share_value"]
+__all__ = ["Seen", "SilentError", "observed_logit", "see_channel", "see_rate", "see_share", "see_share_value"]
 
 LABELS = {
     Channel.SN2: ("SN2",),
@@ -25,7 +25,6 @@ LABELS = {
     Channel.NGP: ("NGP",),
     Channel.OPENING: ("SN2", "SN2 solvent", "SN1"),
 }
-_ELIMINATIONS = frozenset({Mechanism.E2, Mechanism.E1, Mechanism.E1CB})
 SECOND_ORDER_ONLY = "second-order part only"
 FLOOR = 0.005
 """Share below which, and above one minus which, a share is taken as this: no more can be measured."""
@@ -174,12 +173,15 @@ def _uncatalysed(nucleophile: str | None) -> str | None:
     return None if nucleophile is None else nucleophile.split(".")[0]
 
 
-def _elimination(_: Share, pathway: Pathway) -> tuple[float, float]:
-    is_elimination = pathway.mechanism in _ELIMINATIONS
-    return (1.0, 0.0) if is_elimination else (0.0, 1.0)
+_Count = Callable[[Share, Pathway], tuple[float, float]]
+"""How much of what a pathway gives lies inside a share, and how much in the rest it is a share of."""
 
 
-def _among(keep: Callable[[Share, Pathway], bool], test: Callable[[Share, Outcome], bool | None]):  # type: ignore[no-untyped-def]
+def _elimination(share: Share, pathway: Pathway) -> tuple[float, float]:
+    return (1.0, 0.0) if _is_elimination(share, pathway) else (0.0, 1.0)
+
+
+def _among(keep: Callable[[Share, Pathway], bool], test: Callable[[Share, Outcome], bool | None]) -> _Count:
     def count(share: Share, pathway: Pathway) -> tuple[float, float]:
         if not keep(share, pathway):
             return 0.0, 0.0
@@ -196,11 +198,11 @@ def _among(keep: Callable[[Share, Pathway], bool], test: Callable[[Share, Outcom
 
 
 def _is_elimination(_: Share, pathway: Pathway) -> bool:
-    return pathway.mechanism in _ELIMINATIONS
+    return pathway.mechanism in ELIMINATIONS
 
 
-def _is_substitution(_: Share, pathway: Pathway) -> bool:
-    return pathway.mechanism not in _ELIMINATIONS
+def _is_substitution(share: Share, pathway: Pathway) -> bool:
+    return not _is_elimination(share, pathway)
 
 
 def _any(_: Share, __: Pathway) -> bool:
@@ -243,7 +245,7 @@ def _is_inverted(share: Share, outcome: Outcome) -> bool | None:
     return outcome.product == wanted
 
 
-_COUNTS: dict[ShareKind, Callable[[Share, Pathway], tuple[float, float]]] = {
+_COUNTS: dict[ShareKind, _Count] = {
     ShareKind.ELIMINATION: _elimination,
     ShareKind.ALKENE: _among(_is_elimination, _is_product),
     ShareKind.TRANS_CIS: _among(_is_elimination, _is_trans),

@@ -13,7 +13,7 @@ from typing import NamedTuple
 
 from builder.table import refuse_twice, rows_of, table_text
 
-__all__ = ["FITTED_TABLE", "Parameters", "RateTerm", "Term", "fitted_parameters", "load_rate_terms", "prior_parameters"]
+__all__ = ["FITTED_TABLE", "Parameters", "RateTerm", "Term", "fitted_parameters", "load_rate_terms"]
 
 FITTED_TABLE = "rate_terms_fitted.tsv"
 
@@ -62,10 +62,6 @@ class Parameters:
     def __getitem__(self, key: str) -> RateTerm:
         return self._terms[key]
 
-    def keys(self) -> tuple[str, ...]:
-        """Return every key, in table order."""
-        return tuple(self._terms)
-
     def value(self, key: str) -> float:
         """Return the value of a term. Raises KeyError if the table lacks it."""
         return self._terms[key].value
@@ -102,12 +98,6 @@ def load_rate_terms() -> dict[str, RateTerm]:
         if not math.isfinite(term.value) or not 0 < term.error < math.inf:
             raise ValueError(f"{name}: {term.key}: needs a finite value and a positive error")
     return terms
-
-
-@cache
-def prior_parameters() -> Parameters:
-    """Return the parameters before the fit."""
-    return Parameters(load_rate_terms())
 
 
 @cache

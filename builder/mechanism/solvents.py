@@ -8,11 +8,11 @@ import math
 import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
-from difflib import get_close_matches
 from enum import StrEnum
 from functools import cache
 
 from builder.chemistry.structure import parse_smiles
+from builder.mechanism.naming import NameIndex, names_in
 from builder.sources import load_sources
 from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
@@ -48,10 +48,6 @@ _COLUMNS = (
     *("permittivity", "permittivity_t_c", "permittivity_source", "note"),
 )
 
-_LETTERS = str.maketrans(
-    {"α": "alpha", "β": "beta", "γ": "gamma", "δ": "delta", "ü": "u", "₂": "2", "₃": "3", "₄": "4", "₆": "6"}
-)
-_NO_MATTER = re.compile(r"[\s\-‐‑‒–—−,.'’′ʹ`()\[\]]+")
 _GRADES = re.compile(
     r"^(?:absolute|anhydrous|dry|glacial|degassed|distilled|deionised|deionized)\s+|\s*\((?:dry|anhydrous)\)$"
 )
@@ -112,7 +108,7 @@ def find_solvent(name: str, smiles: str | None = None) -> Solvent | None:
     """
     if smiles is not None:
         return _by_smiles().get(smiles)
-    return _by_key().get(_key(name)) or _by_key().get(_key(_GRADES.sub("", name.strip().lower())))
+    return _index().find(name) or _index().find(_GRADES.sub("", name.strip().lower()))
 
 
 def nearest_solvents(name: str) -> tuple[str, ...]:
@@ -120,13 +116,7 @@ def nearest_solvents(name: str) -> tuple[str, ...]:
 
     Letters in the wrong order ("DFM") come first, then spellings that differ by little.
     """
-    if find_solvent(name) is not None:
-        return ()
-    key, known = _key(name), _spelling_by_key()
-    swapped = [other for other in known if sorted(other) == sorted(key)]
-    close = get_close_matches(key, known, n=3, cutoff=0.8)
-    solvents = {_by_key()[other].name: known[other] for other in reversed([*swapped, *close])}
-    return tuple(reversed(solvents.values()))
+    return () if find_solvent(name) is not None else _index().nearest(name)
 
 
 def boiling_point_c(parts: Sequence[tuple[Solvent, float]]) -> tuple[float, float]:
@@ -172,18 +162,13 @@ def _main_parts(parts: Sequence[tuple[Solvent, float]]) -> list[Solvent]:
 # --- names ----------------------------------------------------------------------------------------------------
 
 
-def _key(name: str) -> str:
-    return _NO_MATTER.sub("", name.casefold().translate(_LETTERS))
-
-
 @cache
-def _by_key() -> dict[str, Solvent]:
-    return {_key(name): solvent for solvent in load_solvents() for name in solvent.names}
+def _index() -> NameIndex[Solvent]:
+    return _index_of(load_solvents())
 
 
-@cache
-def _spelling_by_key() -> dict[str, str]:
-    return {_key(name): name for solvent in load_solvents() for name in solvent.names}
+def _index_of(solvents: Sequence[Solvent]) -> NameIndex[Solvent]:
+    return NameIndex("solvents.tsv", [(solvent, solvent.names) for solvent in solvents])
 
 
 @cache
@@ -198,7 +183,7 @@ def _read_solvents(text: str) -> tuple[Solvent, ...]:
     found = tuple(_solvent(row) for row in rows_of("solvents.tsv", text, _COLUMNS))
     refuse_twice("solvents.tsv", "structure", [solvent.smiles for solvent in found])
     refuse_twice("solvents.tsv", "CAS number", [solvent.cas for solvent in found])
-    refuse_twice("solvents.tsv", "name", [_key(name) for solvent in found for name in solvent.names])
+    _index_of(found)  # refuses names given twice
     return found
 
 
@@ -210,7 +195,7 @@ def _solvent(row: Mapping[str, str]) -> Solvent:
         raise ValueError(f"solvents.tsv: {row['name']}: a boiling point and a melting point are needed")
     return Solvent(
         name=row["name"],
-        synonyms=() if row["synonyms"] == NOTHING else tuple(row["synonyms"].split("|")),
+        synonyms=names_in(row["synonyms"]),
         smiles=parse_smiles(row["smiles"]).smiles,
         cas=row["cas"],
         kind=SolventKind(row["kind"]),

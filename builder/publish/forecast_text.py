@@ -13,7 +13,7 @@ from builder.mechanism.question import Question
 from builder.mechanism.rate_terms import fitted_parameters
 from builder.mechanism.rules import GATES
 from builder.publish.figures import equivalents_text, joined, significant
-from builder.records.vocabulary import Course, Mechanism
+from builder.records.vocabulary import ELIMINATIONS, Course, Mechanism
 from builder.sources import load_sources
 
 __all__ = ["duration_text", "percent_text", "render_forecast", "verdict_sentence"]
@@ -25,7 +25,6 @@ MOST_TERMS = 7
 MOST_PRODUCTS = 6
 MOST_CAUTIONS = 4
 """Cautions shown besides those graded stop, which are all shown."""
-_ELIMINATIONS = frozenset({Mechanism.E2, Mechanism.E1, Mechanism.E1CB})
 _FIRST_ORDER = frozenset({Mechanism.SN1, Mechanism.E1, Mechanism.NGP, Mechanism.ADE})
 _COURSES = {
     Course.INVERSION: "with inversion",
@@ -178,7 +177,7 @@ def _carbon(site: ReactiveSite) -> str:
 def _composition(forecast: Forecast) -> str:
     parts = {"substitution": 0.0, "elimination": 0.0, "addition": 0.0}
     for mechanism, share in forecast.shares.items():
-        kind = "elimination" if mechanism in _ELIMINATIONS else "substitution"
+        kind = "elimination" if mechanism in ELIMINATIONS else "substitution"
         parts["addition" if mechanism is Mechanism.ADE else kind] += share
     shown = [(kind, share) for kind, share in parts.items() if share >= 0.0005]
     return ", ".join(f"{percent_text(share)} {kind}" for kind, share in sorted(shown, key=lambda part: -part[1]))

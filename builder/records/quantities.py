@@ -302,6 +302,11 @@ class Percent:
         return bool(self.relation)
 
     @property
+    def is_upper_limit(self) -> bool:
+        """Say whether no more than this was found, as in "< 2 %"."""
+        return self.relation in {"<", "≤"}
+
+    @property
     def canonical(self) -> str:
         """Return the text that enters the digest."""
         return f"{self.relation} {self.quantity.canonical}".strip()

@@ -3,6 +3,8 @@
 from enum import StrEnum
 
 __all__ = [
+    "ELIMINATIONS",
+    "SUBSTITUTIONS",
     "Course",
     "Disclosure",
     "Mechanism",
@@ -30,6 +32,10 @@ class Mechanism(StrEnum):
     NGP = "NGP"
     ADE = "AdE"
     NONE = "none"
+
+
+ELIMINATIONS = frozenset({Mechanism.E1, Mechanism.E2, Mechanism.E1CB})
+SUBSTITUTIONS = frozenset({Mechanism.SN1, Mechanism.SN2, Mechanism.SN2_PRIME, Mechanism.NGP})
 
 
 class Course(StrEnum):

@@ -25,6 +25,7 @@ from builder.mechanism.observations.tables import (
 )
 from builder.sources import load_sources
 from builder.table import table_text
+from tests.anchors import CUMYL_SIGMA_PLUS
 
 PACKAGE = "builder.mechanism.observations"
 RATES, SHARES, ANCHORS = load_rates(), load_shares(), load_anchors()
@@ -67,23 +68,13 @@ def test_tert_butyl_chloride_ionises_as_its_activation_parameters_say(solvent, e
     assert rate("CC(C)(C)Cl", Channel.IONISATION, solvent) == pytest.approx(expected, abs=0.05)
 
 
-# σ+: Brown and Okamoto, J. Am. Chem. Soc. 1958, 80, 4979; ρ+ -4.54: Okamoto, Inukai and Brown, 4972 (from memory).
+# ρ+ -4.54: Okamoto, Inukai and Brown, J. Am. Chem. Soc. 1958, 80, 4972 (from memory).
 def test_cumyl_chlorides_lie_on_the_published_line():
-    sigma_plus = {
-        "COc1ccc(C(C)(C)Cl)cc1": -0.778,
-        "Cc1ccc(C(C)(C)Cl)cc1": -0.311,
-        "CC(C)(Cl)c1ccc(F)cc1": -0.073,
-        "CC(C)(Cl)c1ccccc1": 0.0,
-        "CC(C)(Cl)c1ccc(Cl)cc1": 0.114,
-        "CC(C)(Cl)c1ccc(Br)cc1": 0.150,
-        "Cc1cccc(C(C)(C)Cl)c1": -0.066,
-        "COc1cccc(C(C)(C)Cl)c1": 0.047,
-        "CC(C)(Cl)c1cccc(Cl)c1": 0.399,
-        "CC(C)(Cl)c1ccc([N+](=O)[O-])cc1": 0.790,
-    }
     found = {row.substrate: row.value for row in RATES if row.set == "cumyl chlorides"}
-    assert found.keys() == sigma_plus.keys()
-    slope, intercept = linear_regression(list(sigma_plus.values()), [found[smiles] for smiles in sigma_plus])
+    assert found.keys() == CUMYL_SIGMA_PLUS.keys()
+    slope, intercept = linear_regression(
+        list(CUMYL_SIGMA_PLUS.values()), [found[smiles] for smiles in CUMYL_SIGMA_PLUS]
+    )
     assert slope == pytest.approx(-4.54, abs=0.1)
     assert intercept == pytest.approx(0, abs=0.05)
 

@@ -28,7 +28,7 @@ TERMS = load_rate_terms()
 TABLES: dict[str, tuple[Callable[[], object], str]] = {
     "rate_terms.tsv": (rate_terms.load_rate_terms.__wrapped__, "builder.mechanism.rate_terms"),
     "nucleophile_kinds.tsv": (kinds.load_kinds.__wrapped__, "builder.mechanism.kinds"),
-    "ring_strain.tsv": (lambda: constants.ring_strain_kj.__wrapped__(5), "builder.mechanism.constants"),
+    "ring_strain.tsv": (constants._ring_strains.__wrapped__, "builder.mechanism.constants"),
     "aryl_constants.tsv": (constants._sigmas.__wrapped__, "builder.mechanism.constants"),
     "conformational_energies.tsv": (constants._conformational_energies.__wrapped__, "builder.mechanism.constants"),
 }
