@@ -1,7 +1,9 @@
 """MkDocs events -> open_book, build_pages. The only file that imports MkDocs; errors stop the build."""
 
+import re
 from html import escape
 from pathlib import Path
+from typing import Any, Literal
 from urllib.parse import quote
 
 from mkdocs.config.base import Config
@@ -10,6 +12,7 @@ from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
 from mkdocs.plugins import BasePlugin
 from mkdocs.structure.files import File, Files, InclusionLevel
+from mkdocs.structure.nav import Navigation
 from mkdocs.structure.pages import Page as MkDocsPage
 from mkdocs.structure.toc import AnchorLink, TableOfContents
 
@@ -17,11 +20,16 @@ from builder.book import Book, open_book
 from builder.checks.report import render_text
 from builder.finding import Level
 from builder.publish.build import BuildReport, build_date, write_report
+from builder.publish.frame import INKS_STYLE, Furniture, MenuItem, content_policy, inks_style
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.progress import watched
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
+
+
+_UNUSED = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
+"""What the theme brings and no page of ours loads."""
 
 
 class HandbookConfig(Config):  # type: ignore[no-untyped-call]  # MkDocs leaves __init_subclass__ untyped
@@ -35,6 +43,11 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
 
     book: Book
     pages: tuple[Page, ...] = ()
+    is_live = False
+
+    def on_startup(self, *, command: Literal["build", "gh-deploy", "serve"], dirty: bool) -> None:  # noqa: ARG002
+        """Note whether pages are built to be published, or served to their author; keeps the plugin between edits."""
+        self.is_live = command == "serve"
 
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Read and check the book and write its pages, before MkDocs clears the site folder."""
@@ -53,15 +66,44 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         """Add the pages and their downloads; of the book's own files only Markdown and the logo are published."""
         for file in list(files):
             is_ours = file.src_dir == config.docs_dir and file.src_uri != self.book.settings.logo
-            if is_ours and not file.is_documentation_page():
+            if (is_ours and not file.is_documentation_page()) or file.src_uri.startswith(_UNUSED):
                 files.remove(file)
+        assets = [inks_style()]
         for page in self.pages:
             if page.file not in files.src_uris:  # a group may write a page of its own in place of ours
                 files.append(_VirtualPage(page, config).file)
-                for asset in page.assets:
-                    content, included = asset.data, InclusionLevel.INCLUDED
-                    files.append(File.generated(config, asset.path, content=content, inclusion=included))
+                assets += page.assets
+        for asset in assets:
+            included = InclusionLevel.INCLUDED
+            files.append(File.generated(config, asset.path, content=asset.data, inclusion=included))
         return files
+
+    def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:
+        """Give the templates of the frame what they show."""
+        styles = (uri for uri in files.src_uris if re.fullmatch(r"assets/stylesheets/main\.\w+\.min\.css", uri))
+        settings = self.book.settings
+        env.globals |= {
+            "book": settings,
+            "built_on": self.book.today.isoformat(),
+            "furniture": Furniture(),
+            "inks_style": INKS_STYLE,
+            "menu": _menu,
+            "notice": settings.standing_notice,
+            "policy": content_policy(live=self.is_live),
+            "theme_style": next(styles),
+        }
+        return env
+
+
+def _menu(nav: Navigation, section: str) -> tuple[MenuItem, ...]:
+    """Return the top of the menu, an item of which leads to its first page; section: path of the one to mark."""
+    items = []
+    for item in nav.items:
+        first = item
+        while first.children:
+            first = first.children[0]
+        items.append(MenuItem(str(item.title), first.url or "", bool(item.active) or first.url == (section or None)))
+    return tuple(items)
 
 
 class _VirtualPage(MkDocsPage):
@@ -78,15 +120,15 @@ class _VirtualPage(MkDocsPage):
     def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so
         page = self._page
         self.markdown = ""
-        self.meta = {"description": escape(page.description), "hide": ["navigation"]}
-        if page.path:
-            self.meta["title"] = escape(page.title)
-        if len(page.headings) < 3:
-            self.meta["hide"].append("toc")
-        if page.template is not None:
-            self.meta["template"] = page.template
+        self.meta = {
+            "title": escape(page.title),
+            "description": escape(page.description),
+            "kind": page.kind,
+            "rail": page.rail,
+            "section": page.section,
+        }
         if not page.indexed:
-            self.meta |= {"robots": "noindex", "search": {"exclude": True}}
+            self.meta["robots"] = "noindex"
 
     def render(self, config: MkDocsConfig, files: Files) -> None:  # noqa: ARG002 - MkDocs calls it so
         self.content = self._page.body

@@ -48,9 +48,10 @@ def element_paint(symbol: str) -> str:
     return paint(name) if name in PALETTE else "currentColor"
 
 
-def palette_css(*, dark: bool = False) -> str:
-    """Return the custom properties of one palette, as declarations for a style sheet."""
-    return "".join(f"--hb-{name}:{c.dark if dark else c.light};" for name, c in PALETTE.items() if name != "ink")
+def palette_css() -> str:
+    """Return the inks as custom properties, each for both papers, for the style sheet of a page."""
+    inks = ((name, ink) for name, ink in PALETTE.items() if name != "ink")
+    return "".join(f"--hb-{name}:light-dark({ink.light},{ink.dark});" for name, ink in inks)
 
 
 def resolve_colours(svg: str, *, dark: bool = False) -> str:
@@ -68,9 +69,10 @@ def standalone(svg: str) -> str:
     Only a file gets a <style>; a drawing inside a page takes its colours from the page.
     """
     ink = PALETTE["ink"]
+    dark = "".join(f"--hb-{name}:{other.dark};" for name, other in PALETTE.items() if other is not ink)
     style = (
         f"<style>:root{{color-scheme:light dark;color:{ink.light}}}@media (prefers-color-scheme:dark)"
-        f"{{:root{{background:{PAPER.dark};color:{ink.dark};{palette_css(dark=True)}}}}}</style>"
+        f"{{:root{{background:{PAPER.dark};color:{ink.dark};{dark}}}}}</style>"
     )
     return svg.replace("<title", style + "<title", 1)
 

@@ -40,6 +40,7 @@ __all__ = [
     "leaving_group_names",
     "leaving_groups",
     "neighbouring_groups",
+    "nucleophile_kinds",
     "perceive_sites",
     "site_class_meanings",
     "site_class_names",
@@ -303,6 +304,11 @@ def _all_attacking_atoms(structure: Structure) -> tuple[Nucleophile, ...]:
     if not found:
         found = [n for s in species if s.charge >= 0 for n in _attacking_atoms_of(s)]
     return tuple(sorted(found, key=_attack_order))
+
+
+def nucleophile_kinds() -> tuple[str, ...]:
+    """Return the kinds of attacking atoms that can be told apart, in the order of their table."""
+    return tuple(_kind_order())
 
 
 @cache

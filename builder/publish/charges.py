@@ -1,6 +1,6 @@
 """What went in, and in which order: rows of the amounts table and stages of the procedure, typed apart from derived."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
 from builder.book import Entry
@@ -18,7 +18,7 @@ from builder.publish.summary import Fact, concentration
 from builder.records.model import Charged, Record, Stage
 from builder.rule import Path
 
-__all__ = ["AmountView", "Cell", "StageView", "amounts_note", "view_amounts", "view_stages"]
+__all__ = ["AmountView", "Cell", "StageView", "amounts_as_tsv", "amounts_note", "view_amounts", "view_stages"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -63,6 +63,16 @@ def view_amounts(entry: Entry) -> tuple[AmountView, ...]:
 def view_stages(entry: Entry) -> tuple[StageView, ...]:
     """Return the stages of the procedure in order, additions with what is weighed or measured for them."""
     return tuple(_stage(number, stage, entry) for number, stage in enumerate(entry.record.stages, start=1))
+
+
+def amounts_as_tsv(rows: Iterable[AmountView]) -> str:
+    """Return the amounts table as tab-separated text, for a spreadsheet."""
+    head = ("Substance", "Role", "Equivalents", "Amount", "Mass", "Volume", "Molar mass")
+    lines = [
+        (row.name, row.role, row.equivalents.text, row.amount.text, row.mass.text, row.volume.text, row.molar_mass)
+        for row in rows
+    ]
+    return "\n".join("\t".join(line) for line in (head, *lines))
 
 
 def _charged(record: Record, path: Path) -> Charged:

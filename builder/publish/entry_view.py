@@ -5,21 +5,30 @@ rendered in another process. Texts are plain, not escaped; the templates escape.
 """
 
 import datetime as dt
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import partial
+from urllib.parse import quote
 
 from markupsafe import Markup
 
 from builder.book import Book, Entry, Verdict
 from builder.checks.case import compounds_of
 from builder.finding import Finding, Level
-from builder.publish.charges import AmountView, StageView, amounts_note, view_amounts, view_stages
-from builder.publish.expected import expected_facts, why_nothing_is_expected
+from builder.publish.charges import (
+    AmountView,
+    StageView,
+    amounts_as_tsv,
+    amounts_note,
+    view_amounts,
+    view_stages,
+)
+from builder.publish.expected import ExpectedView, expected_view, why_nothing_is_expected
 from builder.publish.figures import formula_parts, joined, molar_mass_text
 from builder.publish.measured import MeasuredLine, measured_lines, rate_constant_text
+from builder.publish.neighbours import SequenceView, Variant, same_product, sequences, variant_of, view_sequence
 from builder.publish.schemes import entry_scheme
-from builder.publish.summary import Fact, Summary, conditions_strip, scale_mol, summarise
+from builder.publish.summary import Fact, Summary, conditions_strip, newest_first, scale_mol
 from builder.records.model import Compound, EvidenceFile, Record
 from builder.records.settings import Settings
 from builder.records.vocabulary import Status
@@ -30,6 +39,9 @@ __all__ = ["EntryView", "Link", "Surroundings", "next_review", "surroundings_of"
 
 DIGEST_SHOWN = 12
 """Hexadecimal digits of a digest that citations and printed pages carry."""
+
+MOST_VARIANTS = 7
+"""Other ways to the same product that a page lists."""
 
 _GRAVITY = ("stop", "warn", "note")
 _STANDING = {
@@ -54,27 +66,30 @@ class Surroundings:
     """What an entry's page needs to know of the rest of the book; plain data, so that pages can be made apart.
 
     folder: name of the book's folder, with which the files of its entries begin.
-    titles: of every entry by identifier. rules: title by id, of those that have a page.
+    summaries: of every entry by identifier. rules: title by id, of those that have a page.
     links: to the entries that name this one, by its identifier.
+    sequences: those an entry is a step of. variants: every entry as a row; others: identifiers of those that were after
+    the same product, newest first.
     """
 
     folder: str
     settings: Settings
     today: dt.date
-    titles: Mapping[str, str]
+    summaries: Mapping[str, Summary]
     rules: Mapping[str, str]
     links: Mapping[str, tuple[Link, ...]]
+    sequences: Mapping[str, tuple[SequenceView, ...]]
+    variants: Mapping[str, Variant]
+    others: Mapping[str, tuple[str, ...]]
 
 
 @dataclass(frozen=True, slots=True)
 class ProductView:
-    """One product with its measurements that speak of it alone."""
+    """One product with the measurements that speak of it alone; qualities: use, stereochemistry, course."""
 
     label: str
     name: str
-    use: str
-    stereo: str
-    course: str
+    qualities: str
     measured: tuple[MeasuredLine, ...]
 
 
@@ -133,12 +148,12 @@ class EntryView:
     strip: tuple[Fact, ...]
     claim: tuple[Fact, ...]
     standing: str
-    expected: tuple[Fact, ...]
+    expected: ExpectedView | None
     nothing_expected: str
+    results: str
     failure: tuple[Fact, ...]
     sought: str
     products: tuple[ProductView, ...]
-    has_courses: bool
     other_measurements: tuple[MeasuredLine, ...]
     rate_constant: str
     time_course_title: str
@@ -158,11 +173,20 @@ class EntryView:
     review: str
     review_overdue: bool
     links: tuple[Link, ...]
+    sequences: tuple[SequenceView, ...]
+    variants: tuple[Variant, ...]
+    further_variants: int
+    amounts_table: str
+    file: str
+    edit_address: str
+    address: str
     citation: str
     printed: str
 
 
-def surroundings_of(book: Book, rules: Iterable[Rule[object, object]]) -> Surroundings:
+def surroundings_of(
+    book: Book, summaries: Mapping[str, Summary], rules: Iterable[Rule[object, object]]
+) -> Surroundings:
     """Return what every entry's page needs to know of the book."""
     links: dict[str, list[Link]] = {}
     for entry in book.entries:
@@ -172,10 +196,27 @@ def surroundings_of(book: Book, rules: Iterable[Rule[object, object]]) -> Surrou
         folder=book.folder.name,
         settings=book.settings,
         today=book.today,
-        titles={entry.id: entry.record.title for entry in book.entries},
+        summaries=summaries,
         rules={rule.id: rule.title for rule in rules},
         links={other: tuple(found) for other, found in links.items()},
+        sequences=_sequences(book.entries, summaries),
+        variants={entry.id: variant_of(entry, summaries[entry.id]) for entry in book.entries},
+        others={
+            entry_id: tuple(summary.id for summary in newest_first(summaries[other.id] for other in others))
+            for entry_id, others in same_product(book.entries).items()
+        },
     )
+
+
+def _sequences(entries: Sequence[Entry], summaries: Mapping[str, Summary]) -> dict[str, tuple[SequenceView, ...]]:
+    """Return by identifier the sequences an entry is a step of; each is drawn once."""
+    found: dict[str, tuple[SequenceView, ...]] = {}
+    for run in sequences(entries):
+        view = view_sequence(run, summaries)
+        if view is not None:
+            for entry in run:
+                found[entry.id] = (*found.get(entry.id, ()), view)
+    return found
 
 
 def view_entry(entry: Entry, around: Surroundings) -> EntryView:
@@ -187,9 +228,12 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
     findings = [_finding(finding, record, around) for finding in entry.findings]
     of_level = partial(_of_level, findings)
     scheme = entry_scheme(entry.case)
+    amounts = view_amounts(entry)
+    others = around.others.get(entry.id, ())
+    file = entry.file.removeprefix(f"{around.folder}/")
     rate, course = record.outcome.rate_constant, record.outcome.time_course
     return EntryView(
-        summary=summarise(entry),
+        summary=around.summaries[entry.id],
         revision=record.revision,
         tombstone=_tombstone(record, around),
         cautions=tuple(_finding(finding, record, around) for finding in _gravest_first(entry.findings)),
@@ -200,22 +244,20 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         strip=conditions_strip(entry),
         claim=_claim(record),
         standing=_STANDING[entry.verdict],
-        expected=expected_facts(entry.case),
+        expected=expected_view(entry.case),
         nothing_expected=why_nothing_is_expected(entry.case),
+        results=_in_words(record),
         failure=_failure(record),
         sought=record.outcome.sought.name if record.outcome.sought else "",
         products=tuple(
             ProductView(
                 label=product.label,
                 name=product.name,
-                use=str(product.use or "not stated"),
-                stereo=str(product.stereo or "not stated"),
-                course=str(product.course or ""),
+                qualities=joined(str(each or "") for each in (product.use, product.stereo, product.course)),
                 measured=own[product.label],
             )
             for product in record.outcome.products
         ),
-        has_courses=any(product.course for product in record.outcome.products),
         other_measurements=tuple(line for line in lines if id(line) not in shown),
         rate_constant=rate_constant_text(rate) if rate else "",
         time_course_title=joined((course.follows, f"by {course.by}" if course.by else ""), " ") if course else "",
@@ -225,7 +267,7 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         queries=tuple(finding for finding in of_level(Level.QUERY) if not finding.accepted),
         accepted=tuple(finding for finding in findings if finding.accepted),
         remarks=of_level(Level.REMARK),
-        amounts=view_amounts(entry),
+        amounts=amounts,
         amounts_note=amounts_note(entry),
         stages=view_stages(entry),
         work_up=record.work_up or (),
@@ -237,6 +279,13 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         review=_review(record, settings),
         review_overdue=_is_overdue(record, settings, around.today),
         links=_links(record, around),
+        sequences=around.sequences.get(entry.id, ()),
+        variants=tuple(around.variants[each] for each in (entry.id, *others[:MOST_VARIANTS])) if others else (),
+        further_variants=max(len(others) - MOST_VARIANTS, 0),
+        amounts_table=amounts_as_tsv(amounts),
+        file=entry.file,
+        edit_address=f"{settings.edit_address}{quote(file)}" if settings.edit_address else "",
+        address=f"{settings.site_address}e/{entry.id}/" if settings.site_address else "",
         citation=_citation(entry, settings),
         printed=f"{entry.id} · revision {record.revision} · {entry.digest[:DIGEST_SHOWN]} · {around.today.isoformat()}",
     )
@@ -259,6 +308,11 @@ def _claim(record: Record) -> tuple[Fact, ...]:
         Fact("Course", str(claim.course) if claim.course else courses or "not stated"),
         Fact("Basis", joined(claim.basis or ()) or "not stated"),
     )
+
+
+def _in_words(record: Record) -> str:
+    results = joined(map(str, record.outcome.result), " and ")
+    return f"{results[:1].upper()}{results[1:]}."
 
 
 def _failure(record: Record) -> tuple[Fact, ...]:
@@ -406,7 +460,8 @@ def _links(record: Record, around: Surroundings) -> tuple[Link, ...]:
 
 
 def _link(entry_id: str, relation: str, around: Surroundings) -> Link:
-    return Link(entry_id, around.titles.get(entry_id, ""), relation)
+    known = around.summaries.get(entry_id)
+    return Link(entry_id, known.title if known else "", relation)
 
 
 def _tombstone(record: Record, around: Surroundings) -> Tombstone | None:

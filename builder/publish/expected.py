@@ -1,37 +1,67 @@
-"""The forecast of an entry in words, beside what was seen."""
+"""The forecast of an entry, to stand beside what was seen."""
 
 import math
+from dataclasses import dataclass
 
 from builder.checks.case import Case
 from builder.checks.forecasts import is_same_product, share_bounds
 from builder.mechanism.forecast import Forecast
 from builder.mechanism.outlook import expected_text, percent_text
-from builder.publish.figures import duration_text, joined
+from builder.publish.figures import duration_text
+from builder.publish.forecast_parts import Closed, Why, closed_gates, verdict_sentence, why
 from builder.publish.summary import Fact
 
-__all__ = ["expected_facts", "why_nothing_is_expected"]
+__all__ = ["ExpectedView", "ShareView", "expected_view", "why_nothing_is_expected"]
 
 SHOWN = 0.01
 """Share of converted substrate from which a mechanism is named."""
 
 
-def expected_facts(case: Case) -> tuple[Fact, ...]:
-    """Return what the engine expects under the conditions of a record; empty where it has no say."""
-    forecast = case.forecast
-    if forecast is None:
-        return ()
-    shares = (
-        f"{mechanism} {expected_text(share, forecast.intervals[mechanism])}"
-        for mechanism, share in forecast.shares.items()
-        if share >= SHOWN
-    )
+@dataclass(frozen=True, slots=True)
+class ShareView:
+    """The share of one mechanism: in words, and as percent with the ends of its 90 % interval for a bar."""
+
+    mechanism: str
+    text: str
+    percent: float
+    low: float
+    high: float
+
+
+@dataclass(frozen=True, slots=True)
+class ExpectedView:
+    """What the engine expects under the conditions of a record, and why.
+
+    needless: pathways for which the substrate lacks what they need.
+    """
+
+    sentence: str
+    shares: tuple[ShareView, ...]
+    facts: tuple[Fact, ...]
+    why: Why | None
+    closed: tuple[Closed, ...]
+    needless: tuple[str, ...]
+
+
+def expected_view(case: Case) -> ExpectedView | None:
+    """Return what the engine expects under the conditions of a record; None where it has no say."""
+    question, forecast = case.question, case.forecast
+    if question is None or forecast is None:
+        return None
     facts = (
-        Fact("Mechanism", joined(shares) or "none is open"),
         Fact("Main product", _main_product(case, forecast)),
-        Fact("Conversion", f"{expected_text(forecast.conversion, forecast.conversion_interval)} in the stated time"),
+        Fact("Conversion", expected_text(forecast.conversion, forecast.conversion_interval), "in the stated time"),
         Fact("Half-life", _half_life(forecast)),
     )
-    return tuple(fact for fact in facts if fact.value)
+    closed, needless = closed_gates(forecast)
+    return ExpectedView(
+        sentence=verdict_sentence(question, forecast),
+        shares=_shares(forecast),
+        facts=tuple(fact for fact in facts if fact.value),
+        why=why(question, forecast),
+        closed=closed,
+        needless=needless,
+    )
 
 
 def why_nothing_is_expected(case: Case) -> str:
@@ -39,19 +69,29 @@ def why_nothing_is_expected(case: Case) -> str:
     return "" if case.forecast is not None else case.unasked or "this reaction lies outside what the engine covers"
 
 
+def _shares(forecast: Forecast) -> tuple[ShareView, ...]:
+    found = []
+    for mechanism, share in forecast.shares.items():
+        low, high = forecast.intervals[mechanism]
+        if share >= SHOWN:
+            text = expected_text(share, (low, high))
+            found.append(ShareView(str(mechanism), text, *(round(100 * each, 1) for each in (share, low, high))))
+    return tuple(found)
+
+
 def _main_product(case: Case, forecast: Forecast) -> str:
     if not forecast.products:
         return ""
     main = max(forecast.products, key=lambda each: each.share)
     bounds = share_bounds(forecast, lambda each: each.structure == main.structure)
-    labels = [
-        product.label
-        for index, product in enumerate(case.record.outcome.products)
+    products = case.record.outcome.products
+    names = [
+        f"{product.name} ({product.label})"
+        for index, product in enumerate(products)
         if is_same_product(case.structures[("outcome", "products", index)], main.structure)
     ]
-    named = f"{labels[0]} of the record" if labels else main.structure.smiles
     share = expected_text(bounds.share, (bounds.low, bounds.high))
-    return f"{named}, {share} of what reacts"
+    return f"{names[0] if names else main.structure.smiles}, {share} of what reacts"
 
 
 def _half_life(forecast: Forecast) -> str:

@@ -8,9 +8,9 @@ from dataclasses import dataclass
 
 from builder.book import Entry
 from builder.checks.case import Case
-from builder.chemistry.perception import attacking_atoms
+from builder.chemistry.perception import attacking_atoms, leaving_group_names, nucleophile_kinds, site_class_names
 from builder.records.model import Charged
-from builder.records.vocabulary import NucleophileWord
+from builder.records.vocabulary import Mechanism, NucleophileWord, Result
 from builder.rule import Path
 
 __all__ = ["FACETS", "Facet", "FacetIndex", "FacetValue", "facet_indexes", "facet_values", "slug_of"]
@@ -20,13 +20,13 @@ __all__ = ["FACETS", "Facet", "FacetIndex", "FacetValue", "facet_indexes", "face
 class Facet:
     """One field: its address and titles, and how to read the values of an entry.
 
-    key: part of the address. title: heading of its list. short: label in a menu.
+    key: part of the address. title: heading of its list. known: the closed list its values come from, if there is one.
     """
 
     key: str
     title: str
-    short: str
     values_of: Callable[[Entry], tuple[str, ...]]
+    known: Callable[[], tuple[str, ...]] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,16 +112,17 @@ def _mechanism(entry: Entry) -> tuple[str, ...]:
 
 
 FACETS: tuple[Facet, ...] = (
-    Facet("class", "Substrate class", "Class", lambda entry: entry.record.substrate.classes),
-    Facet("leaving-group", "Leaving group", "Leaving group", lambda entry: (entry.record.substrate.leaving_group,)),
-    Facet("nucleophile", "Nucleophile or base", "Nucleophile", _nucleophile),
+    Facet("class", "Substrate class", lambda entry: entry.record.substrate.classes, site_class_names),
+    Facet("leaving-group", "Leaving group", lambda entry: (entry.record.substrate.leaving_group,), leaving_group_names),
+    Facet("nucleophile", "Nucleophile or base", _nucleophile, nucleophile_kinds),
     Facet(
         "solvent",
         "Solvent",
-        "Solvent",
         lambda entry: tuple(solvent.name for solvent in entry.record.solvents) or ("neat",),
     ),
-    Facet("mechanism", "Mechanism claimed", "Mechanism", _mechanism),
-    Facet("result", "Result", "Result", lambda entry: tuple(str(result) for result in entry.record.outcome.result)),
-    Facet("verdict", "Verdict", "Verdict", lambda entry: (str(entry.verdict),)),
+    Facet("mechanism", "Mechanism claimed", _mechanism, lambda: tuple(map(str, Mechanism))),
+    Facet(
+        "result", "Result", lambda entry: tuple(map(str, entry.record.outcome.result)), lambda: tuple(map(str, Result))
+    ),
+    Facet("verdict", "Verdict", lambda entry: (str(entry.verdict),)),
 )

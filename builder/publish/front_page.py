@@ -1,5 +1,6 @@
-"""The front page: the state of the book, and the ways in."""
+"""The front page: the state of the book, where it is thin, and the ways in."""
 
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -7,15 +8,16 @@ from builder.book import Book, Verdict
 from builder.finding import Level
 from builder.publish.entry_view import next_review
 from builder.publish.facets import FacetIndex
-from builder.publish.list_pages import newest_first
 from builder.publish.page import Page
-from builder.publish.summary import Summary
+from builder.publish.summary import Summary, newest_first
 from builder.publish.templating import render
 from builder.records.vocabulary import Status
 
-__all__ = ["StateOfBook", "front_page", "state_of_book"]
+__all__ = ["StateOfBook", "ThinSpot", "front_page", "state_of_book", "thin_spots"]
 
-NEWEST_SHOWN = 5
+NEWEST_SHOWN = 6
+SHOWN_OF_A_KIND = 6
+"""Entries that the front page lists as contrary, explained or failed; the lists hold all."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,37 +31,72 @@ class StateOfBook:
     retired: int
     unreviewed: int
     overdue: int
+    single_runs: int
     open_queries: int
     cautions: int
     on: str
+
+
+@dataclass(frozen=True, slots=True)
+class ThinSpot:
+    """Values of one facet on which the book has little to say: those with one entry, with its identifier, and none."""
+
+    title: str
+    once: tuple[tuple[str, str], ...]
+    never: tuple[str, ...]
 
 
 def state_of_book(book: Book, summaries: Mapping[str, Summary]) -> StateOfBook:
     """Return the counts of the front page; by_verdict holds word, key and number."""
     reviews = [next_review(entry.record, book.settings) for entry in book.entries]
     statuses = [entry.record.status for entry in book.entries]
-    verdicts = [entry.verdict for entry in book.entries]
+    verdicts = Counter(entry.verdict for entry in book.entries)
     return StateOfBook(
         entries=len(book.entries),
         by_verdict=tuple(
-            (str(verdict), verdict.name.lower().replace("_", "-"), verdicts.count(verdict)) for verdict in Verdict
+            (str(verdict), verdict.name.lower().replace("_", "-"), verdicts[verdict]) for verdict in Verdict
         ),
         failures=sum(summary.is_failure for summary in summaries.values()),
         drafts=statuses.count(Status.DRAFT),
         retired=statuses.count(Status.SUPERSEDED) + statuses.count(Status.WITHDRAWN),
         unreviewed=reviews.count(None),
         overdue=sum(due is not None and due < book.today for due in reviews),
+        single_runs=sum((entry.record.performed.runs or 1) == 1 for entry in book.entries),
         open_queries=book.count(Level.QUERY),
         cautions=book.count(Level.CAUTION),
         on=book.today.isoformat(),
     )
 
 
+def thin_spots(indexes: Sequence[FacetIndex], summaries: Mapping[str, Summary]) -> tuple[ThinSpot, ...]:
+    """Return the facets with a closed list of values of which some have one entry in force, or none."""
+    found = []
+    for index in indexes:
+        if index.facet.known is None:
+            continue
+        in_force = {
+            value.value: [entry.id for entry in value.entries if not summaries[entry.id].is_retired]
+            for value in index.values
+        }
+        found.append(
+            ThinSpot(
+                index.facet.title,
+                once=tuple((value, ids[0]) for value, ids in in_force.items() if len(ids) == 1),
+                never=tuple(value for value in index.facet.known() if not in_force.get(value)),
+            )
+        )
+    return tuple(spot for spot in found if spot.once or spot.never)
+
+
 def front_page(book: Book, summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> Page:
     """Return the front page."""
     current = [summary for summary in newest_first(summaries.values()) if not summary.is_retired]
-    contrary = [summary for summary in current if summary.verdict == Verdict.CONTRARY]
+    by_verdict = {
+        verdict: [summary for summary in current if summary.verdict == verdict]
+        for verdict in (Verdict.CONTRARY, Verdict.EXPLAINED)
+    }
     return Page(
+        kind="front",
         path="",
         title=book.settings.title,
         description=f"{book.settings.title}: {len(book.entries)} entries of conditions, each checked and cited.",
@@ -68,11 +105,12 @@ def front_page(book: Book, summaries: Mapping[str, Summary], indexes: Sequence[F
             settings=book.settings,
             state=state_of_book(book, summaries),
             newest=current[:NEWEST_SHOWN],
-            contrary=contrary,
-            failures=[summary for summary in current if summary.is_failure],
+            contrary=by_verdict[Verdict.CONTRARY][:SHOWN_OF_A_KIND],
+            explained=by_verdict[Verdict.EXPLAINED][:SHOWN_OF_A_KIND],
+            failures=[summary for summary in current if summary.is_failure][:SHOWN_OF_A_KIND],
+            thin=thin_spots(indexes, summaries),
             indexes=indexes,
-            notice=book.settings.standing_notice,
             root="",
         ),
-        menu=("State of the book",),
+        menu=("State",),
     )

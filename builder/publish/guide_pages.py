@@ -61,11 +61,11 @@ def format_parts(schema: Mapping[str, Any]) -> tuple[FormatPart, ...]:
 
 def guide_pages(book: Book) -> tuple[Page, ...]:
     """Return the two guides."""
-    notice = book.settings.standing_notice
     schema = record_schema(site_class_names(), leaving_group_names())
     meanings = site_class_meanings()
     return (
         Page(
+            kind="guide",
             path="how-to-add/",
             title="How to add an entry",
             description="From the bench to the book: write the record, check it, ask for review.",
@@ -77,17 +77,17 @@ def guide_pages(book: Book) -> tuple[Page, ...]:
                 classes=[(name, meanings[name]) for name in site_class_names()],
                 leaving_groups=leaving_group_names(),
                 house_rules=book.settings.house_rules,
-                notice=notice,
                 root="../",
             ),
-            menu=("How to add",),
+            menu=("Add",),
         ),
         Page(
+            kind="guide",
             path="how-to-cite/",
             title="How to cite",
             description="Identifier, revision and digest name one experiment for good.",
-            body=render("how_to_cite.html", settings=book.settings, notice=notice, root="../"),
-            menu=("How to cite",),
+            body=render("how_to_cite.html", settings=book.settings, root="../"),
+            menu=("Cite",),
         ),
     )
 

@@ -1,61 +1,113 @@
-"""Lists of entries: all of them, and by each value of each facet."""
+"""Lists of entries: all of them, by each value of each facet, and the sequences they make."""
 
 from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
 
-from builder.book import Book
+from builder.book import Book, Verdict
 from builder.publish.facets import Facet, FacetIndex, FacetValue
+from builder.publish.neighbours import SequenceView
 from builder.publish.page import Page
-from builder.publish.summary import Summary
+from builder.publish.summary import Summary, newest_first
 from builder.publish.templating import render
 
-__all__ = ["list_pages", "newest_first"]
+__all__ = ["Tally", "list_pages", "tally"]
 
 
-def list_pages(book: Book, summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> tuple[Page, ...]:
-    """Return the page of all entries, and per facet an index and a page per value."""
-    notice = book.settings.standing_notice
-    pages = [
-        Page(
-            path="lists/",
-            title="Entries",
-            description=f"All {len(summaries)} entries, and the lists by which to find them.",
-            body=render(
-                "lists.html", indexes=indexes, summaries=newest_first(summaries.values()), notice=notice, root="../"
-            ),
-            menu=("Entries",),
-        )
-    ]
-    for index in indexes:
-        pages.append(_index_page(index, notice))
-        pages += [_value_page(index.facet, value, summaries, notice) for value in index.values]
-    return tuple(pages)
+@dataclass(frozen=True, slots=True)
+class Tally:
+    """What a list holds, in numbers of entries; lately is the take-away of the newest that has one."""
+
+    entries: int
+    in_line: int
+    differ: int
+    failed: int
+    retired: int
+    lately: str
 
 
-def _index_page(index: FacetIndex, notice: str) -> Page:
-    facet = index.facet
-    return Page(
-        path=f"lists/{facet.key}/",
-        title=f"By {facet.title.lower()}",
-        description=f"Entries by {facet.title.lower()}, with the number of each.",
-        body=render("facet.html", facet=facet, values=index.values, notice=notice, root="../../"),
-        menu=("Entries", facet.short),
+@dataclass(frozen=True, slots=True)
+class _Row:
+    """A value of a facet as its index lists it."""
+
+    value: FacetValue
+    tally: Tally
+
+
+def tally(summaries: Iterable[Summary]) -> Tally:
+    """Return the numbers of a list; what is contrary or explained counts as differing."""
+    listed = newest_first(summaries)
+    verdicts = [summary.verdict for summary in listed]
+    return Tally(
+        entries=len(listed),
+        in_line=verdicts.count(Verdict.IN_LINE),
+        differ=verdicts.count(Verdict.CONTRARY) + verdicts.count(Verdict.EXPLAINED),
+        failed=sum(summary.is_failure for summary in listed),
+        retired=sum(summary.is_retired for summary in listed),
+        lately=next((summary.take_away for summary in listed if summary.take_away), ""),
     )
 
 
-def _value_page(facet: Facet, value: FacetValue, summaries: Mapping[str, Summary], notice: str) -> Page:
+def list_pages(
+    book: Book,
+    summaries: Mapping[str, Summary],
+    indexes: Sequence[FacetIndex],
+    sequences: Sequence[SequenceView],
+) -> tuple[Page, ...]:
+    """Return the page of all entries, the page of sequences, and per facet an index and a page per value."""
+    everything = newest_first(summaries.values())
+    pages = [
+        Page(
+            kind="list",
+            path="lists/",
+            title="Entries",
+            description=f"All {len(book.entries)} entries, and the lists by which to find them.",
+            body=render(
+                "lists.html",
+                indexes=indexes,
+                summaries=everything,
+                tally=tally(everything),
+                sequences=len(sequences),
+                root="../",
+            ),
+            menu=("Entries",),
+        ),
+        Page(
+            kind="list",
+            path="lists/sequences/",
+            title="Sequences",
+            description=f"{len(sequences)} sequences in which the product of one entry is the substrate of the next.",
+            body=render("sequences.html", sequences=sequences, root="../../"),
+            section="lists/",
+        ),
+    ]
+    for index in indexes:
+        pages.append(_index_page(index, summaries))
+        pages += [_value_page(index.facet, value, summaries) for value in index.values]
+    return tuple(pages)
+
+
+def _index_page(index: FacetIndex, summaries: Mapping[str, Summary]) -> Page:
+    facet = index.facet
+    rows = [_Row(value, tally(summaries[entry.id] for entry in value.entries)) for value in index.values]
+    return Page(
+        kind="list",
+        path=f"lists/{facet.key}/",
+        title=f"By {facet.title.lower()}",
+        description=f"Entries by {facet.title.lower()}, with the number of each.",
+        body=render("facet.html", facet=facet, rows=rows, root="../../"),
+        section="lists/",
+    )
+
+
+def _value_page(facet: Facet, value: FacetValue, summaries: Mapping[str, Summary]) -> Page:
     rows = newest_first([summaries[entry.id] for entry in value.entries])
     return Page(
+        kind="list",
         path=f"lists/{facet.key}/{value.slug}/",
         title=f"{facet.title}: {value.value}",
         description=f"{len(rows)} entries with {facet.title.lower()} {value.value}.",
         body=render(
-            "facet_value.html", facet=facet, value=value.value, summaries=rows, notice=notice, root="../../../"
+            "facet_value.html", facet=facet, value=value.value, summaries=rows, tally=tally(rows), root="../../../"
         ),
+        section="lists/",
     )
-
-
-def newest_first(summaries: Iterable[Summary]) -> tuple[Summary, ...]:
-    """Return the newest first, those of one day by identifier; what no longer holds comes last."""
-    by_id = sorted(summaries, key=lambda summary: summary.id)
-    by_date = sorted(by_id, key=lambda summary: summary.date, reverse=True)
-    return tuple(sorted(by_date, key=lambda summary: summary.is_retired))

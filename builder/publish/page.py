@@ -36,7 +36,9 @@ class Page:
     path: address below the site's root, ending in a slash; "" is the front page.
     title, description: plain text, not escaped.
     body: HTML that stands inside the site generator's page; every link in it is relative.
-    template: the page frame, where it is not the usual one.
+    kind: what the page is (entry, list, rule, guide, front), for its style.
+    rail: HTML that stands beside the body.
+    section: path of the page in the menu under which this one belongs, where that is another.
     source: file behind the page, below the book's folder, for the edit link.
     menu: labels under which the page stands in the menu, outermost first; none keeps it out.
     indexed: whether search engines and the site's own search may list it.
@@ -47,7 +49,9 @@ class Page:
     title: str
     body: str
     description: str
-    template: str | None = None
+    kind: str
+    rail: str = ""
+    section: str = ""
     source: str | None = None
     menu: tuple[str, ...] = ()
     indexed: bool = True

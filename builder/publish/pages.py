@@ -26,10 +26,11 @@ def build_pages(book: Book, rules: Sequence[Rule[object, object]] | None = None)
     rules = tuple(all_rules().values()) if rules is None else rules
     summaries = {entry.id: summarise(entry) for entry in book.entries}
     indexes = facet_indexes(book.entries)
-    around = surroundings_of(book, rules)
+    around = surroundings_of(book, summaries, rules)
+    runs = dict.fromkeys(run for entry in book.entries for run in around.sequences.get(entry.id, ()))
     return (
         front_page(book, summaries, indexes),
-        *list_pages(book, summaries, indexes),
+        *list_pages(book, summaries, indexes, tuple(runs)),
         *rule_pages(book, rules),
         *guide_pages(book),
         *(entry_page(entry, around) for entry in book.entries),

@@ -8,6 +8,10 @@ from builder.publish.templating import render
 __all__ = ["entry_page", "render_entry"]
 
 
+ROOT = "../../"
+"""From an entry's page to the site's root."""
+
+
 def entry_page(entry: Entry, around: Surroundings) -> Page:
     """Return the page of an entry with its downloads: the record as written, the scheme as drawn."""
     view = view_entry(entry, around)
@@ -16,9 +20,12 @@ def entry_page(entry: Entry, around: Surroundings) -> Page:
     if view.scheme_file:
         assets.append(Asset(f"{path}{entry.id}.svg", view.scheme_file))
     return Page(
+        kind="entry",
         path=path,
         title=view.summary.title,
-        body=render_entry(view, around),
+        body=render_entry(view),
+        rail=render("entry_rail.html", view=view, root=ROOT),
+        section="lists/",
         description=view.summary.take_away or f"{view.summary.conditions}. {view.summary.outcome}",
         source=entry.file.removeprefix(f"{around.folder}/"),
         indexed=view.tombstone is None,
@@ -26,6 +33,6 @@ def entry_page(entry: Entry, around: Surroundings) -> Page:
     )
 
 
-def render_entry(view: EntryView, around: Surroundings) -> str:
+def render_entry(view: EntryView) -> str:
     """Return the HTML body of an entry's page."""
-    return render("entry.html", view=view, notice=around.settings.standing_notice, root="../../")
+    return render("entry.html", view=view, root=ROOT)

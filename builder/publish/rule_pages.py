@@ -1,11 +1,11 @@
 """Rules -> their pages: statement, reason, source, examples, and the entries each one touches."""
 
-from collections.abc import Sequence
+from collections.abc import Container, Sequence
 from dataclasses import dataclass
 
 from markupsafe import Markup
 
-from builder.book import Book
+from builder.book import Book, Verdict
 from builder.chemistry.scheme import DrawnCompound, draw_structure
 from builder.chemistry.structure import parse_smiles
 from builder.finding import Finding, Level
@@ -21,12 +21,12 @@ AnyRule = Rule[object, object]
 
 @dataclass(frozen=True, slots=True)
 class TouchedEntry:
-    """An entry that a rule has a finding on; accepted holds the reviewer's reason, where there is one."""
+    """An entry that a rule bears on; said is what it says of it, accepted the reviewer's reason, where there is one."""
 
     id: str
     title: str
-    message: str
-    accepted: str
+    said: str
+    accepted: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,7 +39,11 @@ class ExampleView:
 
 @dataclass(frozen=True, slots=True)
 class RuleView:
-    """Everything a rule's page shows; reason is in paragraphs."""
+    """Everything a rule's page shows.
+
+    reason: in paragraphs. touched: entries with a finding of the rule, or contrary to a gate. in_line: for a gate, those
+    that it bears on and that agree with it.
+    """
 
     id: str
     title: str
@@ -54,6 +58,7 @@ class RuleView:
     silent_on: tuple[ExampleView, ...]
     is_gate: bool
     touched: tuple[TouchedEntry, ...]
+    in_line: tuple[TouchedEntry, ...]
 
 
 _LEVEL_TITLES = {
@@ -72,6 +77,12 @@ _LEVEL_WORDS = {
 
 def view_rule(rule: AnyRule, book: Book) -> RuleView:
     """Return everything the page of `rule` shows."""
+    touched = tuple(
+        TouchedEntry(entry.id, entry.record.title, finding.message, finding.accepted or "")
+        for entry in book.entries
+        for finding in entry.findings
+        if _speaks_of(finding, rule.id)
+    )
     return RuleView(
         id=rule.id,
         title=rule.title,
@@ -85,12 +96,19 @@ def view_rule(rule: AnyRule, book: Book) -> RuleView:
         fires_on=_examples(rule.fires_on, f"{rule.id}-fires", is_gate=bool(rule.effect)),
         silent_on=_examples(rule.silent_on, f"{rule.id}-silent", is_gate=bool(rule.effect)),
         is_gate=bool(rule.effect),
-        touched=tuple(
-            TouchedEntry(entry.id, entry.record.title, finding.message, finding.accepted or "")
-            for entry in book.entries
-            for finding in entry.findings
-            if _speaks_of(finding, rule.id)
-        ),
+        touched=touched,
+        in_line=_in_line(rule, book, {each.id for each in touched}) if rule.effect else (),
+    )
+
+
+def _in_line(gate: AnyRule, book: Book, contrary: Container[str]) -> tuple[TouchedEntry, ...]:
+    """Return the entries in whose forecast the gate closes a pathway, and which show nothing against it."""
+    return tuple(
+        TouchedEntry(entry.id, entry.record.title, reason.text)
+        for entry in book.entries
+        if entry.case.forecast is not None and entry.verdict is not Verdict.CONTRARY and entry.id not in contrary
+        for reason in entry.case.forecast.reasons
+        if reason.rule == gate.id
     )
 
 
@@ -114,7 +132,6 @@ def _drawing(smiles: str, ident: str) -> Markup:
 
 def rule_pages(book: Book, rules: Sequence[AnyRule]) -> tuple[Page, ...]:
     """Return the index of rules and a page for each."""
-    notice = book.settings.standing_notice
     views = [view_rule(rule, book) for rule in sorted(rules, key=lambda rule: rule.id)]
     groups = [
         ("Gates of the engine", "What opens or closes a mechanism at a site.", [v for v in views if v.is_gate]),
@@ -124,20 +141,23 @@ def rule_pages(book: Book, rules: Sequence[AnyRule]) -> tuple[Page, ...]:
         ),
     ]
     index = Page(
+        kind="rule",
         path="rules/",
         title="Rules",
         description=f"The {len(views)} rules by which records are checked, each with its reason and source.",
-        body=render("rules.html", groups=[group for group in groups if group[2]], notice=notice, root="../"),
+        body=render("rules.html", groups=[group for group in groups if group[2]], root="../"),
         menu=("Rules",),
     )
     known = {view.id for view in views}
-    return (index, *(_rule_page(view, known, notice) for view in views))
+    return (index, *(_rule_page(view, known) for view in views))
 
 
-def _rule_page(view: RuleView, known: set[str], notice: str) -> Page:
+def _rule_page(view: RuleView, known: set[str]) -> Page:
     return Page(
+        kind="rule",
         path=f"rules/{view.id}/",
         title=view.title,
         description=view.statement,
-        body=render("rule.html", rule=view, known=known, notice=notice, root="../../"),
+        body=render("rule.html", rule=view, known=known, root="../../"),
+        section="rules/",
     )

@@ -1,6 +1,6 @@
 """What the scheme of an entry shows: which compounds, which arrows, which words."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from markupsafe import Markup
 
@@ -16,7 +16,7 @@ from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord
 from builder.rule import Path
 
-__all__ = ["Scheme", "entry_scheme"]
+__all__ = ["Scheme", "arrow_of", "entry_scheme"]
 
 LARGEST_OUTLINED_GROUP = 12
 """Heavy atoms of a leaving group that still gets one outline; a tosylate has eleven."""
@@ -146,6 +146,12 @@ def _ends(case: Case) -> list[DrawnCompound]:
     if not drawn and ("outcome", "sought") in case.structures:
         return [_drawn(case, ("outcome", "sought"), caption="sought, not found")]
     return drawn
+
+
+def arrow_of(case: Case, above: tuple[str, ...] = ()) -> Arrow:
+    """Return the whole reaction of a record as one arrow; above: lines that come before its reagents."""
+    arrow = _arrow(case, tuple(range(len(case.record.stages))))
+    return replace(arrow, above=(*above, *arrow.above))
 
 
 def _arrow(case: Case, stages: tuple[int, ...]) -> Arrow:

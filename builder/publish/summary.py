@@ -10,7 +10,7 @@ from builder.publish.measured import outcome_headline, runs_text
 from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord, Status
 
-__all__ = ["Fact", "Summary", "concentration", "conditions_strip", "scale_mol", "summarise"]
+__all__ = ["Fact", "Summary", "concentration", "conditions_strip", "newest_first", "scale_mol", "summarise"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,6 +59,13 @@ def summarise(entry: Entry) -> Summary:
         status=str(record.status),
         is_failure=not any(result.gives_products for result in results) or record.outcome.failure is not None,
     )
+
+
+def newest_first(summaries: Iterable[Summary]) -> tuple[Summary, ...]:
+    """Return the newest first, those of one day by identifier; what no longer holds comes last."""
+    by_id = sorted(summaries, key=lambda summary: summary.id)
+    by_date = sorted(by_id, key=lambda summary: summary.date, reverse=True)
+    return tuple(sorted(by_date, key=lambda summary: summary.is_retired))
 
 
 def scale_mol(entry: Entry) -> float | None:

@@ -3,8 +3,9 @@
 import pytest
 
 from builder.mechanism.outlook import expected_text, percent_text
-from builder.publish.expected import expected_facts, why_nothing_is_expected
+from builder.publish.expected import ExpectedView, expected_view, why_nothing_is_expected
 from builder.publish.figures import duration_text
+from builder.publish.forecast_parts import GATE_IDS
 from tests.publish.handmade import entry_of, text_of
 
 
@@ -36,20 +37,47 @@ def test_an_interval_is_shown_where_it_says_more() -> None:
     assert expected_text(1.0, (1.0, 1.0)) == "> 99.9 %"
 
 
-def test_the_main_product_is_named_by_its_label() -> None:
-    facts = {fact.label: fact.value for fact in expected_facts(entry_of(text_of("NSC0W7N51")).case)}
-    assert facts["Mechanism"].startswith("SN2 ")
-    assert facts["Main product"].startswith("A of the record, ")
-    assert set(facts) == {"Mechanism", "Main product", "Conversion", "Half-life"}
+def _expected(name: str) -> ExpectedView:
+    expected = expected_view(entry_of(text_of(name)).case)
+    assert expected is not None
+    return expected
+
+
+def test_the_main_product_is_named_as_the_record_names_it() -> None:
+    expected = _expected("NSC0W7N51")
+    facts = {fact.label: fact.value for fact in expected.facts}
+    assert expected.sentence.startswith("SN2 at the secondary carbon, with inversion; ")
+    assert facts["Main product"].startswith("(R)-2-azidooctane (A), ")
+    assert set(facts) == {"Main product", "Conversion", "Half-life"}
+
+
+def test_the_bar_of_a_share_lies_within_its_interval() -> None:
+    shares = _expected("NSC0W7N51").shares
+    assert shares[0].mechanism == "SN2"
+    assert all(0 <= share.low <= share.percent <= share.high <= 100 for share in shares)
+
+
+def test_the_terms_add_up_to_the_rate_constant() -> None:
+    why = _expected("NSC0W7N51").why
+    assert why is not None
+    stated = float(why.log_k.split(" = ")[1].split(" ± ")[0].replace("−", "-"))
+    terms = [float(term.value.replace("−", "-")) for term in why.terms]
+    assert sum(terms) == pytest.approx(stated, abs=0.005 * (len(terms) + 1))  # each is rounded to two decimals
+
+
+def test_what_is_closed_names_the_gate_that_says_why() -> None:
+    expected = _expected("NS2H8WDRW")
+    assert expected.closed
+    assert {gate.rule for gate in expected.closed} <= GATE_IDS
 
 
 def test_where_hardly_anything_reacts_no_product_is_named() -> None:
-    facts = {fact.label for fact in expected_facts(entry_of(text_of("NS2H8WDRW")).case)}
+    facts = {fact.label for fact in _expected("NS2H8WDRW").facts}
     assert "Main product" not in facts
     assert "Half-life" in facts
 
 
 def test_why_nothing_is_expected() -> None:
     case = entry_of(text_of("NSDP0MTDW")).case
-    assert expected_facts(case) == ()
+    assert expected_view(case) is None
     assert why_nothing_is_expected(case) == "several nucleophiles compete"
