@@ -2,10 +2,12 @@
 
 import datetime as dt
 import re
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
+from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 from enum import StrEnum
 from pathlib import Path
+from typing import Any, Generic, TypeVar, overload
 
 from builder.checks.agreement import CONTRARY_RULES, is_covered
 from builder.checks.case import Case, open_case
@@ -19,9 +21,19 @@ from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.rule import Fault
 
-__all__ = ["Book", "Entry", "Examined", "Verdict", "examine", "judge", "open_book", "record_files"]
+__all__ = ["Book", "Entry", "Examined", "Verdict", "examine", "judge", "open_book", "record_files", "whole"]
 
-Progress = Callable[[tuple[Path, ...]], Iterable[Path]]
+Kept = TypeVar("Kept")
+Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
+"""Passes on what is done, given how much there will be."""
+
+LEAST_SHARE = 32
+"""Records for which starting a process of their own pays."""
+
+
+def _unwatched(done: Iterator["Examined[Any]"], _: int) -> Iterable["Examined[Any]"]:
+    return done
+
 
 _RECORD_NAME = re.compile(r"NS[^/]*\.yml")
 _ASIDE = {"archive", "schema"}  # folders that hold frozen revisions and the JSON Schema, no current records
@@ -36,25 +48,26 @@ class Verdict(StrEnum):
     NOT_COVERED = "not covered"
 
 
+def whole(case: Case) -> Case:
+    """Keep a case as it is."""
+    return case
+
+
 @dataclass(frozen=True, slots=True)
-class Entry:
+class Entry(Generic[Kept]):
     """One publishable record with all that is known about it.
 
     file: as findings show it, the name of the book's folder first, with forward slashes. text: its YAML as written.
-    digest: SHA-256 of its scientific content, hexadecimal.
+    digest: SHA-256 of its scientific content, hexadecimal. kept: what `open_book` was asked to keep of its case.
     """
 
-    case: Case
+    record: Record
     file: str
     text: str
     digest: str
     findings: tuple[Finding, ...]
     verdict: Verdict
-
-    @property
-    def record(self) -> Record:
-        """Return the record itself."""
-        return self.case.record
+    kept: Kept
 
     @property
     def id(self) -> str:
@@ -63,7 +76,7 @@ class Entry:
 
 
 @dataclass(frozen=True, slots=True)
-class Book:
+class Book(Generic[Kept]):
     """A whole book, read and checked.
 
     folder: absolute. entries: in order of identifier; only records without errors are among them.
@@ -73,12 +86,12 @@ class Book:
     folder: Path
     settings: Settings
     today: dt.date
-    entries: tuple[Entry, ...]
+    entries: tuple[Entry[Kept], ...]
     findings: tuple[Finding, ...]
     files: tuple[Path, ...]
 
     @property
-    def by_id(self) -> Mapping[str, Entry]:
+    def by_id(self) -> Mapping[str, Entry[Kept]]:
         """Return the entries by identifier."""
         return {entry.id: entry for entry in self.entries}
 
@@ -88,32 +101,81 @@ class Book:
 
 
 @dataclass(frozen=True, slots=True)
-class Examined:
-    """One file as read and checked on its own; case is None where no record could be made of it.
+class Examined(Generic[Kept]):
+    """One file as read and checked on its own, and what was kept of its case; None where no record could be made of it.
 
-    unasked: ids of the checks that could not be asked.
+    unasked: ids of the checks that could not be asked. is_covered: whether the engine has a say in it.
     """
 
     reading: Reading
-    case: Case | None
     findings: tuple[Finding, ...]
     unasked: frozenset[str] = frozenset()
+    is_covered: bool = False
+    kept: Kept | None = None
 
 
-def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Book:
+@dataclass(frozen=True, slots=True)
+class _Desk(Generic[Kept]):
+    """Where the records of one book are examined; can be sent to another process if `keep` can."""
+
+    folder: Path
+    settings: Settings
+    today: dt.date
+    keep: Callable[[Case], Kept]
+
+    def examine(self, path: Path) -> Examined[Kept]:
+        """Read and check one file on its own."""
+        reading = read_record(path, _shown(path, self.folder))
+        named = reading.record.rxn_file if reading.record else None
+        rxn = _attachment(path.parent / named.path, self.folder) if named else None
+        return examine(reading, self.settings, self.today, rxn, keep=self.keep)
+
+
+@overload
+def open_book(folder: Path, *, today: dt.date, progress: Progress = ..., processes: int = ...) -> Book[Case]: ...
+@overload
+def open_book(
+    folder: Path,
+    *,
+    today: dt.date,
+    keep: Callable[[Case], Kept],
+    progress: Progress = ...,
+    processes: int = ...,
+) -> Book[Kept]: ...
+def open_book(
+    folder: Path,
+    *,
+    today: dt.date,
+    keep: Callable[[Case], Any] = whole,
+    progress: Progress = _unwatched,
+    processes: int = 1,
+) -> Book[Any]:
     """Read, check and judge every record below `folder`.
 
     today: the date of the build; nothing here asks the clock.
-    progress: wraps the files to be read, for a progress bar.
+    keep: what to keep of each case, for whoever needs more of an entry than its record and findings.
+    progress: wraps the files as they are done, for a progress bar.
+    processes: over how many the records are spread; what `keep` returns must then be plain data.
     Nothing a file holds raises; OSError passes for a folder that cannot be read.
     """
     folder = folder.resolve()
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
-    examined = [_examine_file(path, folder, settings, today) for path in progress(files)]
-    settled = judge(examined)
+    desk = _Desk(folder, settings, today, keep)
+    examined = list(progress(_in_order(desk, files, processes), len(files)))
+    settled = judge(examined, settings)
     entries = [
-        _entry(each.reading, each.case, settled[each.reading.file]) for each in examined if each.case is not None
+        Entry(
+            record=each.reading.record,
+            file=each.reading.file,
+            text=each.reading.text,
+            digest=digest(each.reading.record),
+            findings=settled[each.reading.file],
+            verdict=_verdict(settled[each.reading.file], is_covered=each.is_covered),
+            kept=each.kept,
+        )
+        for each in examined
+        if each.reading.record is not None
     ]
     publishable = [entry for entry in entries if not _has_error(entry.findings)]
     everything = [*findings, *misnamed, *(finding for each in settled.values() for finding in each)]
@@ -127,10 +189,14 @@ def open_book(folder: Path, *, today: dt.date, progress: Progress = tuple) -> Bo
     )
 
 
-def _examine_file(path: Path, folder: Path, settings: Settings, today: dt.date) -> Examined:
-    reading = read_record(path, _shown(path, folder))
-    named = reading.record.rxn_file if reading.record else None
-    return examine(reading, settings, today, _attachment(path.parent / named.path, folder) if named else None)
+def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:
+    """Yield what becomes of each file, in the order of the files."""
+    processes = min(processes, len(files) // LEAST_SHARE)
+    if processes < 2:
+        yield from map(desk.examine, files)
+        return
+    with ProcessPoolExecutor(processes) as pool:
+        yield from pool.map(desk.examine, files, chunksize=LEAST_SHARE // 4)
 
 
 def _attachment(path: Path, folder: Path) -> bytes | None:
@@ -141,27 +207,44 @@ def _attachment(path: Path, folder: Path) -> bytes | None:
     return real.read_bytes()
 
 
-def examine(reading: Reading, settings: Settings, today: dt.date, rxn: bytes | None = None) -> Examined:
+@overload
+def examine(reading: Reading, settings: Settings, today: dt.date, rxn: bytes | None = ...) -> Examined[Case]: ...
+@overload
+def examine(
+    reading: Reading, settings: Settings, today: dt.date, rxn: bytes | None = ..., *, keep: Callable[[Case], Kept]
+) -> Examined[Kept]: ...
+def examine(
+    reading: Reading,
+    settings: Settings,
+    today: dt.date,
+    rxn: bytes | None = None,
+    *,
+    keep: Callable[[Case], Any] = whole,
+) -> Examined[Any]:
     """Check one record on its own.
 
-    rxn: content of the RXN file that the record names.
+    rxn: content of the RXN file that the record names. keep: what to keep of its case.
     """
     if reading.record is None:
-        return Examined(reading, None, reading.findings)
+        return Examined(reading, reading.findings)
     case = open_case(reading.record, reading.file, settings, today, rxn)
     checked = check_record(case, reading.places)
-    return Examined(reading, case, (*reading.findings, *checked.findings), checked.unasked)
+    found = (*reading.findings, *checked.findings)
+    return Examined(reading, found, checked.unasked, is_covered(case), keep(case))
 
 
-def judge(examined: Sequence[Examined]) -> dict[str, tuple[Finding, ...]]:
+def judge(examined: Sequence[Examined[Any]], settings: Settings) -> dict[str, tuple[Finding, ...]]:
     """Return the final findings by file: each record's own, those against the others, acceptances applied."""
-    members = tuple(Member(each.case, each.reading.places) for each in examined if each.case is not None)
-    unread = frozenset(Path(each.reading.file).stem for each in examined if each.case is None)
+    readings = [each.reading for each in examined]
+    members = tuple(Member(r.file, r.record, settings, r.places) for r in readings if r.record is not None)
+    unread = frozenset(Path(reading.file).stem for reading in readings if reading.record is None)
     against_others = check_group(Gathering(members, unread))
     settled: dict[str, tuple[Finding, ...]] = {}
     for each in examined:
-        found = (*each.findings, *against_others.get(each.reading.file, ()))
-        settled[each.reading.file] = settle(each.case, each.reading.places, found, each.unasked) if each.case else found
+        reading = each.reading
+        found = (*each.findings, *against_others.get(reading.file, ()))
+        accepted = reading.record.accepted if reading.record is not None else None
+        settled[reading.file] = found if accepted is None else settle(accepted, reading.places, found, each.unasked)
     return settled
 
 
@@ -201,17 +284,13 @@ def _open_settings(folder: Path) -> tuple[Settings, list[Finding]]:
     return settings or plain, list(findings)
 
 
-def _entry(reading: Reading, case: Case, findings: tuple[Finding, ...]) -> Entry:
-    return Entry(case, reading.file, reading.text, digest(case.record), findings, _verdict(case, findings))
-
-
-def _verdict(case: Case, findings: tuple[Finding, ...]) -> Verdict:
+def _verdict(findings: tuple[Finding, ...], *, is_covered: bool) -> Verdict:
     contrary = [finding for finding in findings if finding.rule in CONTRARY_RULES]
     if any(finding.accepted is None for finding in contrary):
         return Verdict.CONTRARY
     if contrary:
         return Verdict.EXPLAINED
-    return Verdict.IN_LINE if is_covered(case) else Verdict.NOT_COVERED
+    return Verdict.IN_LINE if is_covered else Verdict.NOT_COVERED
 
 
 def _has_error(findings: tuple[Finding, ...]) -> bool:

@@ -20,6 +20,7 @@ from builder.authoring.new import write_new_record
 from builder.authoring.schema import schemas, write_schemas
 from builder.authoring.whole_file import written_whole
 from builder.book import Book, open_book
+from builder.checks.case import Case
 from builder.checks.forecast_cautions import forecast_cautions
 from builder.checks.register import all_rules
 from builder.checks.report import render_json, render_rule, render_text, summary
@@ -340,8 +341,12 @@ def calibrate(write: bool, report: Path | None) -> None:
         click.echo(f"wrote {path}", err=True)
 
 
-def _open(book: Path) -> Book:
-    return open_book(book, today=_today(), progress=watched)
+def _nothing(_: Case) -> None:
+    """Keep nothing of a case: its findings are all that is asked for."""
+
+
+def _open(book: Path) -> Book[None]:
+    return open_book(book, today=_today(), keep=_nothing, progress=watched)
 
 
 def _today() -> dt.date:
@@ -351,7 +356,7 @@ def _today() -> dt.date:
         raise click.UsageError(f"SOURCE_DATE_EPOCH: {error}") from error
 
 
-def _selected(opened: Book, files: Sequence[Path]) -> tuple[list[Finding], int]:
+def _selected(opened: Book[None], files: Sequence[Path]) -> tuple[list[Finding], int]:
     """Return the findings in the named files and folders, and how many records these hold; all if none is named."""
     if not files:
         return list(opened.findings), len(opened.files)

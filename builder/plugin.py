@@ -19,10 +19,12 @@ from mkdocs.structure.toc import AnchorLink, TableOfContents
 from builder.book import Book, open_book
 from builder.checks.report import render_text
 from builder.finding import Level
+from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.frame import INKS_STYLE, Furniture, MenuItem, content_policy, inks_style
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
+from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.progress import watched
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
@@ -41,7 +43,7 @@ class HandbookConfig(Config):  # type: ignore[no-untyped-call]  # MkDocs leaves 
 class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-call]  # likewise
     """Publishes the records below `docs_dir` as virtual pages."""
 
-    book: Book
+    book: Book[Portrait]
     pages: tuple[Page, ...] = ()
     is_live = False
 
@@ -53,7 +55,8 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         """Read and check the book and write its pages, before MkDocs clears the site folder."""
         _refuse_a_talking_theme(config)
         folder = Path(config.docs_dir)
-        self.book = open_book(folder, today=build_date(), progress=watched)
+        processes = 1 if self.is_live else usual_processes()
+        self.book = open_book(folder, today=build_date(), keep=portrait_of, progress=watched, processes=processes)
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
         write_report(BuildReport(len(self.book.entries), len(failing)))
@@ -78,7 +81,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
             files.append(File.generated(config, asset.path, content=asset.data, inclusion=included))
         return files
 
-    def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:
+    def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:  # noqa: ARG002 - MkDocs calls it so
         """Give the templates of the frame what they show."""
         styles = (uri for uri in files.src_uris if re.fullmatch(r"assets/stylesheets/main\.\w+\.min\.css", uri))
         settings = self.book.settings
@@ -147,7 +150,7 @@ def _refuse_a_talking_theme(config: MkDocsConfig) -> None:
         )
 
 
-def _configure(config: MkDocsConfig, book: Book, pages: tuple[Page, ...]) -> None:
+def _configure(config: MkDocsConfig, book: Book[Portrait], pages: tuple[Page, ...]) -> None:
     """Take title, addresses and logo from the book's settings; the menu too, unless mkdocs.yml has one."""
     settings = book.settings
     config.site_name = escape(settings.title)

@@ -4,23 +4,25 @@ import datetime as dt
 import re
 
 from builder.book import Examined, examine, judge
+from builder.checks.case import Case
 from builder.finding import Finding
 from builder.records.reader import read_bytes
 from builder.records.settings import Person, Settings
 from builder.records.specimen import SPECIMEN_FILE, with_example
 
 TODAY = dt.date(2026, 12, 1)
+PLAIN = Settings(format=1, title="A book for tests")
 
 
-def examine_text(text: str | bytes, file: str = SPECIMEN_FILE, settings: Settings | None = None) -> Examined:
+def examine_text(text: str | bytes, file: str = SPECIMEN_FILE, settings: Settings | None = None) -> Examined[Case]:
     """Read and check one record."""
     data = text if isinstance(text, bytes) else text.encode()
-    return examine(read_bytes(data, file), settings or Settings(format=1, title="A book for tests"), TODAY)
+    return examine(read_bytes(data, file), settings or PLAIN, TODAY)
 
 
 def findings_of(text: str | bytes, file: str = SPECIMEN_FILE) -> tuple[Finding, ...]:
     """Return the findings of one record alone in its book."""
-    return judge([examine_text(text, file)])[file]
+    return judge([examine_text(text, file)], PLAIN)[file]
 
 
 def play(example: str) -> tuple[Finding, ...]:
@@ -43,4 +45,4 @@ def play(example: str) -> tuple[Finding, ...]:
         named = re.search(r"^# file: (\S+)$", part, re.MULTILINE)
         file = named[1] if named else SPECIMEN_FILE
         examined.append(examine_text(with_example(part), file, settings))
-    return tuple(finding for found in judge(examined).values() for finding in found)
+    return tuple(finding for found in judge(examined, settings).values() for finding in found)

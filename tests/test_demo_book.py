@@ -8,6 +8,7 @@ from indigo import Indigo
 from indigo.inchi import IndigoInchi
 
 from builder.book import Book, Entry, Verdict, open_book
+from builder.checks.case import Case
 from builder.chemistry.perception import attacking_atoms
 from builder.chemistry.structure import Structure
 from builder.finding import Level
@@ -18,7 +19,7 @@ ENTRIES = Path(__file__).parents[1] / "entries"
 
 
 @cache
-def _book() -> Book:
+def _book() -> Book[Case]:
     return open_book(ENTRIES, today=TODAY)
 
 
@@ -28,9 +29,9 @@ def _indigo() -> tuple[Indigo, IndigoInchi]:
     return indigo, IndigoInchi(indigo)
 
 
-def _products(entry: Entry) -> list[Structure]:
+def _products(entry: Entry[Case]) -> list[Structure]:
     return [
-        entry.case.structures[("outcome", "products", index)] for index in range(len(entry.record.outcome.products))
+        entry.kept.structures[("outcome", "products", index)] for index in range(len(entry.record.outcome.products))
     ]
 
 
@@ -59,7 +60,7 @@ def test_it_spans_the_field() -> None:
         nucleophile.kind
         for entry in _book().entries
         for index in range(len(entry.record.nucleophiles))
-        for nucleophile in attacking_atoms(entry.case.structures[("nucleophile", index)])[:1]
+        for nucleophile in attacking_atoms(entry.kept.structures[("nucleophile", index)])[:1]
     }
     assert mechanisms >= set(Mechanism)
     assert results >= set(Result) - {Result.DECOMPOSITION}
@@ -78,7 +79,7 @@ def test_an_explained_contrary_entry_shows_that_observation_outranks_theory() ->
 
 # Outside reference: epam-indigo (PyPI), an independent toolkit with its own stereo perception and InChI binding.
 @pytest.mark.parametrize("entry", _book().entries, ids=lambda entry: entry.id)
-def test_a_second_toolkit_reads_every_product_alike(entry: Entry) -> None:
+def test_a_second_toolkit_reads_every_product_alike(entry: Entry[Case]) -> None:
     indigo, inchi = _indigo()
     for product in _products(entry):
         read = indigo.loadMolecule(product.typed)

@@ -4,8 +4,9 @@ from collections import defaultdict
 from collections.abc import Callable, Hashable, Iterator
 from dataclasses import dataclass
 
-from builder.checks.case import Case
 from builder.finding import Level
+from builder.records.model import Record
+from builder.records.settings import Settings
 from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Path, rule
@@ -15,9 +16,11 @@ __all__ = ["GROUP_CHECKS", "Gathering", "Member"]
 
 @dataclass(frozen=True, slots=True)
 class Member:
-    """One record of the book, with the places of its values."""
+    """One record of the book, with its file as findings show it and the places of its values."""
 
-    case: Case
+    file: str
+    record: Record
+    settings: Settings
     places: Places
 
 
@@ -47,12 +50,10 @@ def entry_is_retired(book: Gathering) -> Found:
     Reports cite it; the citation must not lead to a different experiment.
     """
     for member in book.members:
-        if member.case.record.entry in member.case.settings.retired:
+        if member.record.entry in member.settings.retired:
             yield (
                 member,
-                Fault(
-                    at=("entry",), message=f"{member.case.record.entry} is retired", mend="take one from `handbook new`"
-                ),
+                Fault(at=("entry",), message=f"{member.record.entry} is retired", mend="take one from `handbook new`"),
             )
 
 
@@ -69,7 +70,7 @@ def entry_stands_twice(book: Gathering) -> Found:
     Two branches can each be right and collide when both are merged; then one of the entries takes a new identifier.
     """
     mend = "give the younger record a new one (`handbook new`)"
-    yield from _repeated(book, lambda case: case.record.entry, ("entry",), "the identifier stands in {0} too", mend)
+    yield from _repeated(book, lambda record: record.entry, ("entry",), "the identifier stands in {0} too", mend)
 
 
 @rule(
@@ -88,7 +89,7 @@ def notebook_page_stands_twice(book: Gathering) -> Found:
     mend = "merge the two, correct the page, or accept this with the reason"
     yield from _repeated(
         book,
-        lambda case: case.record.notebook if _is_in_force(case) else None,
+        _notebook_page,
         ("notebook",),
         "this page stands in {0} too",
         mend,
@@ -109,15 +110,14 @@ def person_is_unknown(book: Gathering) -> Found:
     Asked only of books that list people; a code stands for a person in citations and reviews.
     """
     for member in book.members:
-        known = {person.code for person in member.case.settings.people}
-        for path, code in _person_codes(member.case) if known else ():
+        known = {person.code for person in member.settings.people}
+        for path, code in _person_codes(member.record) if known else ():
             if code not in known:
                 fault = Fault(at=path, message=f"{code} is not among the people of this book", mend=_add_person(code))
                 yield member, fault
 
 
-def _person_codes(case: Case) -> Iterator[tuple[Path, str]]:
-    record = case.record
+def _person_codes(record: Record) -> Iterator[tuple[Path, str]]:
     yield from ((("performed", "by", index), code) for index, code in enumerate(record.performed.by))
     stamps = {"reviewed": record.reviewed, "safety_review": record.safety_review, "withdrawn": record.withdrawn}
     yield from (((key, "by"), stamp.by) for key, stamp in stamps.items() if stamp is not None)
@@ -140,10 +140,10 @@ def reference_is_unknown(book: Gathering) -> Found:
 
     A link to nowhere is noticed by the reader of a report in two years, not by its writer.
     """
-    known = {member.case.record.entry for member in book.members} | book.unread
+    known = {member.record.entry for member in book.members} | book.unread
     for member in book.members:
-        for path, reference in member.case.record.references:
-            if reference == member.case.record.entry:
+        for path, reference in member.record.references:
+            if reference == member.record.entry:
                 yield member, Fault(at=path, message=f"{reference} refers to itself", mend="name the other entry")
             elif reference not in known:
                 yield member, Fault(at=path, message=f"{reference} is not in the book", mend="correct it, or drop it")
@@ -165,7 +165,7 @@ def title_stands_twice(book: Gathering) -> Found:
     mend = "say in the title what is different"
     yield from _repeated(
         book,
-        lambda case: case.record.title.casefold() if _is_in_force(case) else None,
+        _title,
         ("title",),
         "{0} has this title too",
         mend,
@@ -182,27 +182,27 @@ GROUP_CHECKS = (
 )
 
 
-def _notebook_page(case: Case) -> str | None:
-    return case.record.notebook if _is_in_force(case) else None
+def _notebook_page(record: Record) -> str | None:
+    return record.notebook if _is_in_force(record) else None
 
 
-def _title(case: Case) -> str | None:
-    return case.record.title.casefold() if _is_in_force(case) else None
+def _title(record: Record) -> str | None:
+    return record.title.casefold() if _is_in_force(record) else None
 
 
-def _is_in_force(case: Case) -> bool:
+def _is_in_force(record: Record) -> bool:
     """Say whether an entry still holds: its successor may well bear its title and speak of its notebook page."""
-    return case.record.status not in {Status.SUPERSEDED, Status.WITHDRAWN}
+    return record.status not in {Status.SUPERSEDED, Status.WITHDRAWN}
 
 
-def _repeated(book: Gathering, key: Callable[[Case], Hashable], at: Path, message: str, mend: str) -> Found:
+def _repeated(book: Gathering, key: Callable[[Record], Hashable], at: Path, message: str, mend: str) -> Found:
     """Yield a fault on every member whose key another member shares; message gets the other's file."""
     sharing: defaultdict[Hashable, list[Member]] = defaultdict(list)
     for member in book.members:
-        if key(member.case) is not None:
-            sharing[key(member.case)].append(member)
+        if key(member.record) is not None:
+            sharing[key(member.record)].append(member)
     for group in sharing.values():
         for member in group:
-            others = [other.case.file for other in group if other is not member]
+            others = [other.file for other in group if other is not member]
             if others:
                 yield member, Fault(at=at, message=message.format(others[0]), mend=mend)

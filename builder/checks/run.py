@@ -65,25 +65,28 @@ def _in_order_of_need() -> tuple[Rule[Case, Iterable[Fault]], ...]:
 
 def check_group(book: Gathering) -> dict[str, list[Finding]]:
     """Return the findings of the checks over the whole book, by file."""
-    found: dict[str, list[Finding]] = {member.case.file: [] for member in book.members}
+    found: dict[str, list[Finding]] = {member.file: [] for member in book.members}
     for check in GROUP_CHECKS:
         if check.look is None:
             continue
         for member, fault in check.look(book):
-            found[member.case.file].append(_finding(check, fault, member.places))
+            found[member.file].append(_finding(check, fault, member.places))
     return found
 
 
 def settle(
-    case: Case, places: Places, findings: Sequence[Finding], unasked: frozenset[str] = frozenset()
+    accepted: Sequence[Acceptance],
+    places: Places,
+    findings: Sequence[Finding],
+    unasked: frozenset[str] = frozenset(),
 ) -> tuple[Finding, ...]:
-    """Apply the record's acceptances to its findings and report those that are stale, unknown or out of place.
+    """Apply what a record accepts to its findings and report those that are stale, unknown or out of place.
 
     unasked: rules that could not be asked; an acceptance of one of them may still be needed.
     """
     reasons: dict[str, str] = {}
     settled: list[Finding] = []
-    for index, acceptance in enumerate(case.record.accepted):
+    for index, acceptance in enumerate(accepted):
         fault = _acceptance_fault(acceptance, findings, unasked)
         if fault is None:
             reasons.setdefault(acceptance.finding, acceptance.because)

@@ -3,7 +3,7 @@
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
-from builder.book import Entry
+from builder.checks.case import Case
 from builder.mechanism.amounts import AmountRow
 from builder.publish.figures import (
     amount_text,
@@ -55,14 +55,14 @@ class StageView:
     note: str
 
 
-def view_amounts(entry: Entry) -> tuple[AmountView, ...]:
+def view_amounts(case: Case) -> tuple[AmountView, ...]:
     """Return the rows of the amounts table in the order of the record."""
-    return tuple(_amount(row, _charged(entry.record, row.path)) for row in entry.case.amounts.rows)
+    return tuple(_amount(row, _charged(case.record, row.path)) for row in case.amounts.rows)
 
 
-def view_stages(entry: Entry) -> tuple[StageView, ...]:
+def view_stages(case: Case) -> tuple[StageView, ...]:
     """Return the stages of the procedure in order, additions with what is weighed or measured for them."""
-    return tuple(_stage(number, stage, entry) for number, stage in enumerate(entry.record.stages, start=1))
+    return tuple(_stage(number, stage, case) for number, stage in enumerate(case.record.stages, start=1))
 
 
 def amounts_as_tsv(rows: Iterable[AmountView]) -> str:
@@ -119,20 +119,20 @@ def _cell(typed: str, derived: float | None, text_of: Callable[[float], str]) ->
     return Cell(text_of(derived) if derived is not None else "", typed=False)
 
 
-def amounts_note(entry: Entry) -> str:
+def amounts_note(case: Case) -> str:
     """Return the solvent volume in all, and the concentration in it."""
-    amounts = entry.case.amounts
+    amounts = case.amounts
     volume = amounts.solvent_volume_l
     return joined(
         (
             f"Solvent in all {volume_text(volume)}" if volume else "",
-            f"substrate {concentration(entry).value} in it" if amounts.concentration_mol_per_l is not None else "",
+            f"substrate {concentration(case).value} in it" if amounts.concentration_mol_per_l is not None else "",
         )
     )
 
 
-def _stage(number: int, stage: Stage, entry: Entry) -> StageView:
-    by_name: dict[str, AmountRow] = {row.name: row for row in entry.case.amounts.rows}
+def _stage(number: int, stage: Stage, case: Case) -> StageView:
+    by_name: dict[str, AmountRow] = {row.name: row for row in case.amounts.rows}
     facts = (
         Fact(
             "Temperature",
@@ -155,7 +155,7 @@ def _stage(number: int, stage: Stage, entry: Entry) -> StageView:
     return StageView(
         number=number,
         facts=tuple(fact for fact in facts if fact.value),
-        additions=tuple(Fact(name, _charge_of(by_name.get(name), entry.record)) for name in stage.add or ()),
+        additions=tuple(Fact(name, _charge_of(by_name.get(name), case.record)) for name in stage.add or ()),
         over=str(stage.over) if stage.over else "",
         gives=joined((gives.name, isolated)) if gives else "",
         note=stage.note or "",

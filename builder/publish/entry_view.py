@@ -1,7 +1,6 @@
-"""EntryView: everything an entry's page shows, computed once into plain text and numbers.
+"""EntryView: everything an entry's page shows: its portrait, what the checks say, and what the rest of the book adds.
 
-Views hold no record, no structure and no path: they can be pickled, cached by the digest of what they came from, and
-rendered in another process. Texts are plain, not escaped; the templates escape.
+Plain text and numbers, not escaped; the templates escape.
 """
 
 import datetime as dt
@@ -10,29 +9,24 @@ from dataclasses import dataclass
 from functools import partial
 from urllib.parse import quote
 
-from markupsafe import Markup
-
 from builder.book import Book, Entry, Verdict
-from builder.checks.case import compounds_of
 from builder.finding import Finding, Level
 from builder.publish.charges import (
     AmountView,
     StageView,
     amounts_as_tsv,
-    amounts_note,
-    view_amounts,
-    view_stages,
 )
-from builder.publish.expected import ExpectedView, expected_view, why_nothing_is_expected
-from builder.publish.figures import formula_parts, joined, molar_mass_text
-from builder.publish.measured import MeasuredLine, measured_lines, rate_constant_text
+from builder.publish.expected import ExpectedView
+from builder.publish.figures import joined
+from builder.publish.measured import MeasuredLine, rate_constant_text
 from builder.publish.neighbours import SequenceView, Variant, same_product, sequences, variant_of, view_sequence
-from builder.publish.schemes import entry_scheme
-from builder.publish.summary import Fact, Summary, conditions_strip, newest_first, scale_mol
-from builder.records.model import Compound, EvidenceFile, Record
+from builder.publish.portrait import CompoundView, Portrait
+from builder.publish.schemes import Scheme
+from builder.publish.summary import Fact, Summary, newest_first
+from builder.records.model import EvidenceFile, Record
 from builder.records.settings import Settings
 from builder.records.vocabulary import Status
-from builder.rule import Path, Rule
+from builder.rule import Rule
 from builder.sources import source_text
 
 __all__ = ["EntryView", "Link", "Surroundings", "next_review", "surroundings_of", "view_entry"]
@@ -94,19 +88,6 @@ class ProductView:
 
 
 @dataclass(frozen=True, slots=True)
-class CompoundView:
-    """Identifiers of one compound."""
-
-    name: str
-    role: str
-    formula: tuple[tuple[str, str], ...]
-    molar_mass: str
-    cas: str
-    inchikey: str
-    smiles: str
-
-
-@dataclass(frozen=True, slots=True)
 class FindingView:
     """One finding; rule_page says whether the book has a page for its rule."""
 
@@ -141,10 +122,7 @@ class EntryView:
     revision: int
     tombstone: Tombstone | None
     cautions: tuple[FindingView, ...]
-    scheme_wide: Markup
-    scheme_tall: Markup
-    scheme_legend: str
-    scheme_file: bytes
+    scheme: Scheme | None
     strip: tuple[Fact, ...]
     claim: tuple[Fact, ...]
     standing: str
@@ -185,7 +163,7 @@ class EntryView:
 
 
 def surroundings_of(
-    book: Book, summaries: Mapping[str, Summary], rules: Iterable[Rule[object, object]]
+    book: Book[Portrait], summaries: Mapping[str, Summary], rules: Iterable[Rule[object, object]]
 ) -> Surroundings:
     """Return what every entry's page needs to know of the book."""
     links: dict[str, list[Link]] = {}
@@ -208,7 +186,9 @@ def surroundings_of(
     )
 
 
-def _sequences(entries: Sequence[Entry], summaries: Mapping[str, Summary]) -> dict[str, tuple[SequenceView, ...]]:
+def _sequences(
+    entries: Sequence[Entry[Portrait]], summaries: Mapping[str, Summary]
+) -> dict[str, tuple[SequenceView, ...]]:
     """Return by identifier the sequences an entry is a step of; each is drawn once."""
     found: dict[str, tuple[SequenceView, ...]] = {}
     for run in sequences(entries):
@@ -219,16 +199,14 @@ def _sequences(entries: Sequence[Entry], summaries: Mapping[str, Summary]) -> di
     return found
 
 
-def view_entry(entry: Entry, around: Surroundings) -> EntryView:
+def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
     """Return everything the page of `entry` shows."""
-    record, settings = entry.record, around.settings
-    lines = measured_lines(record, scale_mol(entry))
+    record, settings, portrait = entry.record, around.settings, entry.kept
+    lines = portrait.lines
     own = {product.label: _own_lines(product.label, lines) for product in record.outcome.products}
     shown = {id(line) for product_lines in own.values() for line in product_lines}
     findings = [_finding(finding, record, around) for finding in entry.findings]
     of_level = partial(_of_level, findings)
-    scheme = entry_scheme(entry.case)
-    amounts = view_amounts(entry)
     others = around.others.get(entry.id, ())
     file = entry.file.removeprefix(f"{around.folder}/")
     rate, course = record.outcome.rate_constant, record.outcome.time_course
@@ -237,15 +215,12 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         revision=record.revision,
         tombstone=_tombstone(record, around),
         cautions=tuple(_finding(finding, record, around) for finding in _gravest_first(entry.findings)),
-        scheme_wide=scheme.wide if scheme else Markup(),
-        scheme_tall=scheme.tall if scheme else Markup(),
-        scheme_legend=scheme.legend if scheme else "",
-        scheme_file=scheme.file if scheme else b"",
-        strip=conditions_strip(entry),
+        scheme=portrait.scheme,
+        strip=portrait.strip,
         claim=_claim(record),
         standing=_STANDING[entry.verdict],
-        expected=expected_view(entry.case),
-        nothing_expected=why_nothing_is_expected(entry.case),
+        expected=portrait.expected,
+        nothing_expected=portrait.nothing_expected,
         results=_in_words(record),
         failure=_failure(record),
         sought=record.outcome.sought.name if record.outcome.sought else "",
@@ -267,14 +242,14 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         queries=tuple(finding for finding in of_level(Level.QUERY) if not finding.accepted),
         accepted=tuple(finding for finding in findings if finding.accepted),
         remarks=of_level(Level.REMARK),
-        amounts=amounts,
-        amounts_note=amounts_note(entry),
-        stages=view_stages(entry),
+        amounts=portrait.amounts,
+        amounts_note=portrait.amounts_note,
+        stages=portrait.stages,
         work_up=record.work_up or (),
         procedure=record.procedure or "",
         scale_limit=record.scale_limit or "",
         evidence=tuple(_evidence(item) for item in record.evidence),
-        compounds=_compounds(entry),
+        compounds=portrait.compounds,
         stamp=_stamp(entry, settings),
         review=_review(record, settings),
         review_overdue=_is_overdue(record, settings, around.today),
@@ -282,7 +257,7 @@ def view_entry(entry: Entry, around: Surroundings) -> EntryView:
         sequences=around.sequences.get(entry.id, ()),
         variants=tuple(around.variants[each] for each in (entry.id, *others[:MOST_VARIANTS])) if others else (),
         further_variants=max(len(others) - MOST_VARIANTS, 0),
-        amounts_table=amounts_as_tsv(amounts),
+        amounts_table=amounts_as_tsv(portrait.amounts),
         file=entry.file,
         edit_address=f"{settings.edit_address}{quote(file)}" if settings.edit_address else "",
         address=f"{settings.site_address}e/{entry.id}/" if settings.site_address else "",
@@ -360,49 +335,11 @@ def _evidence(item: str | EvidenceFile) -> Fact:
     return Fact(item.what, item.file, f"SHA-256 {item.sha256}") if isinstance(item, EvidenceFile) else Fact(item, "")
 
 
-def _compounds(entry: Entry) -> tuple[CompoundView, ...]:
-    """Return the identifiers of every compound with a structure, each once."""
-    seen: dict[tuple[str, str], CompoundView] = {}
-    for path, compound in compounds_of(entry.record):
-        structure = entry.case.structures.get(path)
-        if structure is None:
-            continue
-        key = (compound.name, structure.smiles)
-        seen.setdefault(
-            key,
-            CompoundView(
-                name=compound.name,
-                role=_role_of(path, compound, entry.record),
-                formula=formula_parts(structure.formula),
-                molar_mass=molar_mass_text(structure.mass),
-                cas=compound.cas or "",
-                inchikey=structure.inchikey,
-                smiles=compound.smiles or structure.smiles,
-            ),
-        )
-    return tuple(seen.values())
-
-
-def _role_of(path: Path, compound: Compound, record: Record) -> str:
-    match path:
-        case ("outcome", "products", int(i)):
-            return f"product {record.outcome.products[i].label}"
-        case ("outcome", "sought"):
-            return "product sought"
-        case ("stages", int(i), "gives"):
-            return f"formed in stage {i + 1}"
-        case ("reagents", _):
-            return str(getattr(compound, "use", "reagent"))
-        case (str(role), *_):
-            return role
-    raise KeyError(path)
-
-
 def _person(code: str, settings: Settings) -> str:
     return next((person.shown_as for person in settings.people if person.code == code), code)
 
 
-def _stamp(entry: Entry, settings: Settings) -> tuple[Fact, ...]:
+def _stamp(entry: Entry[Portrait], settings: Settings) -> tuple[Fact, ...]:
     record = entry.record
     performed = record.performed
     safety = record.safety_review
@@ -474,7 +411,7 @@ def _tombstone(record: Record, around: Surroundings) -> Tombstone | None:
     return None
 
 
-def _citation(entry: Entry, settings: Settings) -> str:
+def _citation(entry: Entry[Portrait], settings: Settings) -> str:
     record = entry.record
     return joined(
         (

@@ -7,11 +7,9 @@ from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 from builder.book import Entry
-from builder.checks.case import Case
-from builder.chemistry.perception import attacking_atoms, leaving_group_names, nucleophile_kinds, site_class_names
-from builder.records.model import Charged
-from builder.records.vocabulary import Mechanism, NucleophileWord, Result
-from builder.rule import Path
+from builder.chemistry.perception import leaving_group_names, nucleophile_kinds, site_class_names
+from builder.publish.portrait import Portrait
+from builder.records.vocabulary import Mechanism, Result
 
 __all__ = ["FACETS", "Facet", "FacetIndex", "FacetValue", "facet_indexes", "facet_values", "slug_of"]
 
@@ -25,7 +23,7 @@ class Facet:
 
     key: str
     title: str
-    values_of: Callable[[Entry], tuple[str, ...]]
+    values_of: Callable[[Entry[Portrait]], tuple[str, ...]]
     known: Callable[[], tuple[str, ...]] | None = None
 
 
@@ -35,7 +33,7 @@ class FacetValue:
 
     value: str
     slug: str
-    entries: tuple[Entry, ...]
+    entries: tuple[Entry[Portrait], ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,14 +44,14 @@ class FacetIndex:
     values: tuple[FacetValue, ...]
 
 
-def facet_indexes(entries: Sequence[Entry]) -> tuple[FacetIndex, ...]:
+def facet_indexes(entries: Sequence[Entry[Portrait]]) -> tuple[FacetIndex, ...]:
     """Return every facet with the values that occur."""
     return tuple(FacetIndex(facet, facet_values(facet, entries)) for facet in FACETS)
 
 
-def facet_values(facet: Facet, entries: Iterable[Entry]) -> tuple[FacetValue, ...]:
+def facet_values(facet: Facet, entries: Iterable[Entry[Portrait]]) -> tuple[FacetValue, ...]:
     """Return the values that occur, in alphabetical order; spellings that differ in case alone are one value."""
-    found: dict[str, dict[str, Entry]] = {}
+    found: dict[str, dict[str, Entry[Portrait]]] = {}
     spellings: dict[str, set[str]] = {}
     for entry in entries:
         for value in facet.values_of(entry):
@@ -90,23 +88,7 @@ def _hash(value: str) -> str:
     return hashlib.sha256(value.encode()).hexdigest()[:8]
 
 
-def _nucleophile(entry: Entry) -> tuple[str, ...]:
-    """Return the kinds of what attacks: nucleophiles, or the bases where no nucleophile is charged."""
-    record, case = entry.record, entry.case
-    if isinstance(record.nucleophile, NucleophileWord) and record.nucleophile is not NucleophileWord.NONE:
-        return (str(record.nucleophile),)
-    key, species = ("nucleophile", record.nucleophiles) if record.nucleophiles else ("base", record.bases)
-    kinds = [_kind(case, (key, index), substance) for index, substance in enumerate(species)]
-    return tuple(dict.fromkeys(kinds)) or (str(NucleophileWord.NONE),)
-
-
-def _kind(case: Case, path: Path, substance: Charged) -> str:
-    structure = case.structures.get(path)
-    attackers = attacking_atoms(structure) if structure is not None else ()
-    return attackers[0].kind if attackers else substance.name
-
-
-def _mechanism(entry: Entry) -> tuple[str, ...]:
+def _mechanism(entry: Entry[Portrait]) -> tuple[str, ...]:
     claim = entry.record.outcome.claim
     return (str(claim.mechanism),) if claim else ("no claim",)
 
@@ -114,7 +96,7 @@ def _mechanism(entry: Entry) -> tuple[str, ...]:
 FACETS: tuple[Facet, ...] = (
     Facet("class", "Substrate class", lambda entry: entry.record.substrate.classes, site_class_names),
     Facet("leaving-group", "Leaving group", lambda entry: (entry.record.substrate.leaving_group,), leaving_group_names),
-    Facet("nucleophile", "Nucleophile or base", _nucleophile, nucleophile_kinds),
+    Facet("nucleophile", "Nucleophile or base", lambda entry: entry.kept.attackers, nucleophile_kinds),
     Facet(
         "solvent",
         "Solvent",

@@ -9,6 +9,7 @@ from builder.finding import Level
 from builder.publish.entry_view import next_review
 from builder.publish.facets import FacetIndex
 from builder.publish.page import Page
+from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary, newest_first
 from builder.publish.templating import render
 from builder.records.vocabulary import Status
@@ -46,7 +47,7 @@ class ThinSpot:
     never: tuple[str, ...]
 
 
-def state_of_book(book: Book, summaries: Mapping[str, Summary]) -> StateOfBook:
+def state_of_book(book: Book[Portrait], summaries: Mapping[str, Summary]) -> StateOfBook:
     """Return the counts of the front page; by_verdict holds word, key and number."""
     reviews = [next_review(entry.record, book.settings) for entry in book.entries]
     statuses = [entry.record.status for entry in book.entries]
@@ -88,7 +89,7 @@ def thin_spots(indexes: Sequence[FacetIndex], summaries: Mapping[str, Summary]) 
     return tuple(spot for spot in found if spot.once or spot.never)
 
 
-def front_page(book: Book, summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> Page:
+def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> Page:
     """Return the front page."""
     current = [summary for summary in newest_first(summaries.values()) if not summary.is_retired]
     by_verdict = {

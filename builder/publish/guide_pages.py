@@ -7,6 +7,7 @@ from typing import Any
 from builder.book import Book
 from builder.chemistry.perception import leaving_group_names, site_class_meanings, site_class_names
 from builder.publish.page import Page
+from builder.publish.portrait import Portrait
 from builder.publish.templating import render
 from builder.records.schema import record_schema
 from builder.records.specimen import SPECIMEN_FILE, specimen_text
@@ -59,7 +60,7 @@ def format_parts(schema: Mapping[str, Any]) -> tuple[FormatPart, ...]:
     return tuple(_format_part(part, places[title], schema) for title, part in parts.items())
 
 
-def guide_pages(book: Book) -> tuple[Page, ...]:
+def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
     """Return the two guides."""
     schema = record_schema(site_class_names(), leaving_group_names())
     meanings = site_class_meanings()

@@ -7,6 +7,7 @@ from builder.book import Book, Verdict
 from builder.publish.facets import Facet, FacetIndex, FacetValue
 from builder.publish.neighbours import SequenceView
 from builder.publish.page import Page
+from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary, newest_first
 from builder.publish.templating import render
 
@@ -48,7 +49,7 @@ def tally(summaries: Iterable[Summary]) -> Tally:
 
 
 def list_pages(
-    book: Book,
+    book: Book[Portrait],
     summaries: Mapping[str, Summary],
     indexes: Sequence[FacetIndex],
     sequences: Sequence[SequenceView],

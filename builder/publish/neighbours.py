@@ -1,18 +1,16 @@
 """Which entries belong together: sequences of steps, and runs towards the same product under other conditions."""
 
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from markupsafe import Markup
 
 from builder.book import Entry
 from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme
-from builder.chemistry.structure import Structure
+from builder.chemistry.structure import parse_smiles
 from builder.publish.figures import joined
-from builder.publish.measured import yield_caption
-from builder.publish.schemes import arrow_of
-from builder.publish.summary import Summary, conditions_strip
-from builder.rule import Path
+from builder.publish.portrait import Portrait
+from builder.publish.summary import Summary
 
 __all__ = ["SequenceView", "Step", "Variant", "same_product", "sequences", "variant_of", "view_sequence"]
 
@@ -51,9 +49,9 @@ class Variant:
     scale: str
 
 
-def variant_of(entry: Entry, summary: Summary) -> Variant:
+def variant_of(entry: Entry[Portrait], summary: Summary) -> Variant:
     """Return an entry as a row beside others that were after the same product."""
-    facts = {fact.label: fact.value for fact in conditions_strip(entry)}
+    facts = {fact.label: fact.value for fact in entry.kept.strip}
     return Variant(
         summary=summary,
         leaving_group=entry.record.substrate.leaving_group,
@@ -65,23 +63,17 @@ def variant_of(entry: Entry, summary: Summary) -> Variant:
     )
 
 
-def _main_product(entry: Entry) -> Structure | None:
-    """Return the structure of the first desired product, or what was sought; None where neither is drawn."""
-    outcome, wanted = entry.record.outcome, entry.record.desired
-    paths: list[Path] = [("outcome", "products", outcome.products.index(product)) for product in wanted[:1]]
-    found = (entry.case.structures.get(path) for path in (*paths, ("outcome", "sought")))
-    return next((structure for structure in found if structure is not None), None)
-
-
-def sequences(entries: Iterable[Entry]) -> tuple[tuple[Entry, ...], ...]:
+def sequences(entries: Iterable[Entry[Portrait]]) -> tuple[tuple[Entry[Portrait], ...], ...]:
     """Return every run of entries that make each other's substrate, from its first step to each of its last ones."""
     by_id = {entry.id: entry for entry in entries}
-    after: dict[str, list[Entry]] = {}
+    after: dict[str, list[Entry[Portrait]]] = {}
     for entry in by_id.values():
         for before in (entry.record.preceded_by or ())[:1]:
             after.setdefault(before, []).append(entry)
-    found: list[tuple[Entry, ...]] = []
-    waiting: list[tuple[Entry, ...]] = [(entry,) for entry in by_id.values() if entry.id in after and not entry.record.preceded_by]
+    found: list[tuple[Entry[Portrait], ...]] = []
+    waiting: list[tuple[Entry[Portrait], ...]] = [
+        (entry,) for entry in by_id.values() if entry.id in after and not entry.record.preceded_by
+    ]
     while waiting:
         run = waiting.pop(0)
         further = [entry for entry in after.get(run[-1].id, ()) if entry not in run and len(run) < LONGEST]
@@ -91,41 +83,30 @@ def sequences(entries: Iterable[Entry]) -> tuple[tuple[Entry, ...], ...]:
     return tuple(found)
 
 
-def same_product(entries: Iterable[Entry]) -> Mapping[str, tuple[Entry, ...]]:
+def same_product(entries: Iterable[Entry[Portrait]]) -> Mapping[str, tuple[Entry[Portrait], ...]]:
     """Return by identifier the other entries that were after the same product, whatever its stereochemistry."""
-    groups: dict[str, list[Entry]] = {}
+    groups: dict[str, list[Entry[Portrait]]] = {}
     for entry in entries:
-        product = _main_product(entry)
-        if product is not None:
-            groups.setdefault(product.flat_smiles, []).append(entry)
+        if entry.kept.goal is not None:
+            groups.setdefault(entry.kept.goal.flat_smiles, []).append(entry)
     return {entry.id: tuple(e for e in group if e is not entry) for group in groups.values() for entry in group}
 
 
-def view_sequence(run: Sequence[Entry], summaries: Mapping[str, Summary]) -> SequenceView | None:
+def view_sequence(run: Sequence[Entry[Portrait]], summaries: Mapping[str, Summary]) -> SequenceView | None:
     """Return a sequence as shown; None where a structure is missing."""
-    drawn: list[list[DrawnCompound] | Arrow] = []
+    start, names = run[0].record.substrate.name, []
+    if not run[0].kept.start:
+        return None
+    drawn: list[list[DrawnCompound] | Arrow] = [[DrawnCompound(parse_smiles(run[0].kept.start), caption=start)]]
     for number, entry in enumerate(run, start=1):
-        product, substrate = _main_product(entry), entry.case.structures.get(("substrate",))
-        if product is None or substrate is None:
+        goal, arrow = entry.kept.goal, entry.kept.arrow
+        if goal is None:
             return None
-        if not drawn:
-            drawn.append([DrawnCompound(substrate, caption=entry.record.substrate.name)])
-        name, label = _name_of_product(entry)
-        drawn += [
-            arrow_of(entry.case, above=(f"step {number}",)),
-            [DrawnCompound(product, caption=joined((name, yield_caption(entry.record.outcome, label)), "\n"))],
-        ]
-    words = joined((run[0].record.substrate.name, *(_name_of_product(entry)[0] for entry in run)), " to ")
-    ident = f"sequence-{run[-1].id}"
+        product = DrawnCompound(parse_smiles(goal.smiles), caption=joined((goal.name, goal.caption), "\n"))
+        drawn += [replace(arrow, above=(f"step {number}", *arrow.above)), [product]]
+        names.append(goal.name)
+    words, ident = joined((start, *names), " to "), f"sequence-{run[-1].id}"
     wide = draw_scheme(drawn, name=words, ident=f"{ident}-wide", layout="wide")
     tall = draw_scheme(drawn, name=words, ident=f"{ident}-tall", layout="tall")
-    steps = tuple(Step(i, summaries[entry.id]) for i, entry in enumerate(run, start=1))
+    steps = tuple(Step(number, summaries[entry.id]) for number, entry in enumerate(run, start=1))
     return SequenceView(words, Markup(wide), Markup(tall), steps)  # noqa: S704 - our own drawings, as in schemes
-
-
-def _name_of_product(entry: Entry) -> tuple[str, str]:
-    """Return name and label of what a step leads to; no label for what was only sought."""
-    outcome = entry.record.outcome
-    if entry.record.desired:
-        return entry.record.desired[0].name, entry.record.desired[0].label
-    return (outcome.sought.name if outcome.sought else "", "")

@@ -10,15 +10,15 @@ from builder.publish.front_page import front_page
 from builder.publish.guide_pages import guide_pages
 from builder.publish.list_pages import list_pages
 from builder.publish.page import Page
+from builder.publish.portrait import Portrait, summarise
 from builder.publish.record_page import entry_page
 from builder.publish.rule_pages import rule_pages
-from builder.publish.summary import summarise
 from builder.rule import Rule
 
 __all__ = ["build_pages"]
 
 
-def build_pages(book: Book, rules: Sequence[Rule[object, object]] | None = None) -> tuple[Page, ...]:
+def build_pages(book: Book[Portrait], rules: Sequence[Rule[object, object]] | None = None) -> tuple[Page, ...]:
     """Return every page of the site, those of the menu in its order.
 
     rules: those that get a page; all of them unless said otherwise.

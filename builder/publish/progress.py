@@ -12,9 +12,11 @@ __all__ = ["counted", "stepped", "watched"]
 T = TypeVar("T")
 
 
-def watched(items: tuple[T, ...]) -> Iterable[T]:
-    """Yield the items, with a bar on the terminal while they are worked on."""
-    with click.progressbar(items, label="reading records", file=sys.stderr, hidden=not sys.stderr.isatty()) as bar:
+def watched(done: Iterator[T], length: int) -> Iterable[T]:
+    """Yield what is done, of `length` in all, with a bar on the terminal meanwhile."""
+    with click.progressbar(
+        done, length=length, label="reading records", file=sys.stderr, hidden=not sys.stderr.isatty()
+    ) as bar:
         yield from bar
 
 

@@ -3,6 +3,7 @@
 from builder.book import Entry
 from builder.publish.entry_view import EntryView, Surroundings, view_entry
 from builder.publish.page import Asset, Page
+from builder.publish.portrait import Portrait
 from builder.publish.templating import render
 
 __all__ = ["entry_page", "render_entry"]
@@ -12,13 +13,13 @@ ROOT = "../../"
 """From an entry's page to the site's root."""
 
 
-def entry_page(entry: Entry, around: Surroundings) -> Page:
+def entry_page(entry: Entry[Portrait], around: Surroundings) -> Page:
     """Return the page of an entry with its downloads: the record as written, the scheme as drawn."""
     view = view_entry(entry, around)
     path = f"e/{entry.id}/"
     assets = [Asset(f"{path}{entry.id}.yml", entry.text.encode())]
-    if view.scheme_file:
-        assets.append(Asset(f"{path}{entry.id}.svg", view.scheme_file))
+    if view.scheme:
+        assets.append(Asset(f"{path}{entry.id}.svg", view.scheme.file))
     return Page(
         kind="entry",
         path=path,

@@ -10,6 +10,7 @@ from builder.chemistry.scheme import DrawnCompound, draw_structure
 from builder.chemistry.structure import parse_smiles
 from builder.finding import Finding, Level
 from builder.publish.page import Page
+from builder.publish.portrait import Portrait
 from builder.publish.templating import render
 from builder.rule import Rule
 from builder.sources import source_text
@@ -41,8 +42,8 @@ class ExampleView:
 class RuleView:
     """Everything a rule's page shows.
 
-    reason: in paragraphs. touched: entries with a finding of the rule, or contrary to a gate. in_line: for a gate, those
-    that it bears on and that agree with it.
+    reason: in paragraphs. touched: entries with a finding of the rule, or contrary to a gate. in_line: for a gate,
+    those that it bears on and that agree with it.
     """
 
     id: str
@@ -75,7 +76,7 @@ _LEVEL_WORDS = {
 }
 
 
-def view_rule(rule: AnyRule, book: Book) -> RuleView:
+def view_rule(rule: AnyRule, book: Book[Portrait]) -> RuleView:
     """Return everything the page of `rule` shows."""
     touched = tuple(
         TouchedEntry(entry.id, entry.record.title, finding.message, finding.accepted or "")
@@ -101,14 +102,14 @@ def view_rule(rule: AnyRule, book: Book) -> RuleView:
     )
 
 
-def _in_line(gate: AnyRule, book: Book, contrary: Container[str]) -> tuple[TouchedEntry, ...]:
+def _in_line(gate: AnyRule, book: Book[Portrait], contrary: Container[str]) -> tuple[TouchedEntry, ...]:
     """Return the entries in whose forecast the gate closes a pathway, and which show nothing against it."""
     return tuple(
-        TouchedEntry(entry.id, entry.record.title, reason.text)
+        TouchedEntry(entry.id, entry.record.title, closed.text)
         for entry in book.entries
-        if entry.case.forecast is not None and entry.verdict is not Verdict.CONTRARY and entry.id not in contrary
-        for reason in entry.case.forecast.reasons
-        if reason.rule == gate.id
+        if entry.verdict is not Verdict.CONTRARY and entry.id not in contrary
+        for closed in entry.kept.gates
+        if closed.rule == gate.id
     )
 
 
@@ -130,7 +131,7 @@ def _drawing(smiles: str, ident: str) -> Markup:
     return Markup(draw_structure(DrawnCompound(parse_smiles(smiles)), name=smiles, ident=ident))  # noqa: S704 - as in schemes
 
 
-def rule_pages(book: Book, rules: Sequence[AnyRule]) -> tuple[Page, ...]:
+def rule_pages(book: Book[Portrait], rules: Sequence[AnyRule]) -> tuple[Page, ...]:
     """Return the index of rules and a page for each."""
     views = [view_rule(rule, book) for rule in sorted(rules, key=lambda rule: rule.id)]
     groups = [

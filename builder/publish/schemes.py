@@ -1,6 +1,6 @@
 """What the scheme of an entry shows: which compounds, which arrows, which words."""
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 from markupsafe import Markup
 
@@ -26,16 +26,20 @@ Step = list[DrawnCompound] | Arrow
 
 @dataclass(frozen=True, slots=True)
 class Scheme:
-    """A drawn scheme: as rows, as one column for a phone, as a file of its own.
+    """A drawn scheme: as rows, and as one column for a phone.
 
     words: what it shows. legend: what its outlines mean.
     """
 
     wide: Markup
     tall: Markup
-    file: bytes
     words: str
     legend: str
+
+    @property
+    def file(self) -> bytes:
+        """Return the drawing in rows as an SVG file."""
+        return standalone(str(self.wide)).encode()
 
 
 def entry_scheme(case: Case) -> Scheme | None:
@@ -46,7 +50,7 @@ def entry_scheme(case: Case) -> Scheme | None:
     wide = draw_scheme(steps, name=words, ident=f"{case.record.entry}-wide", layout="wide")
     tall = draw_scheme(steps, name=words, ident=f"{case.record.entry}-tall", layout="tall")
     # Drawings are our own; every text in them is escaped where it is set.
-    return Scheme(Markup(wide), Markup(tall), standalone(wide).encode(), words, legend(steps))  # noqa: S704
+    return Scheme(Markup(wide), Markup(tall), words, legend(steps))  # noqa: S704
 
 
 def scheme_words(case: Case) -> str:
@@ -148,10 +152,9 @@ def _ends(case: Case) -> list[DrawnCompound]:
     return drawn
 
 
-def arrow_of(case: Case, above: tuple[str, ...] = ()) -> Arrow:
-    """Return the whole reaction of a record as one arrow; above: lines that come before its reagents."""
-    arrow = _arrow(case, tuple(range(len(case.record.stages))))
-    return replace(arrow, above=(*above, *arrow.above))
+def arrow_of(case: Case) -> Arrow:
+    """Return the whole reaction of a record as one arrow."""
+    return _arrow(case, tuple(range(len(case.record.stages))))
 
 
 def _arrow(case: Case, stages: tuple[int, ...]) -> Arrow:

@@ -3,14 +3,14 @@
 from collections.abc import Iterable
 from dataclasses import dataclass
 
-from builder.book import Entry
+from builder.checks.case import Case
 from builder.mechanism.amounts import AmountRow
 from builder.publish.figures import amount_text, concentration_text, equivalents_text, joined, quantity_text
-from builder.publish.measured import outcome_headline, runs_text
+from builder.publish.measured import runs_text
 from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord, Status
 
-__all__ = ["Fact", "Summary", "concentration", "conditions_strip", "newest_first", "scale_mol", "summarise"]
+__all__ = ["Fact", "Summary", "concentration", "conditions_line", "conditions_strip", "newest_first", "scale_mol"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,24 +43,6 @@ class Summary:
         return self.status in {Status.SUPERSEDED, Status.WITHDRAWN}
 
 
-def summarise(entry: Entry) -> Summary:
-    """Return an entry as a list shows it."""
-    record = entry.record
-    results = set(record.outcome.result)
-    return Summary(
-        id=entry.id,
-        title=record.title,
-        date=record.performed.date.isoformat(),
-        conditions=joined(fact.value for fact in _conditions_line(entry)),
-        outcome=outcome_headline(record, scale_mol(entry)),
-        verdict=str(entry.verdict),
-        verdict_key=entry.verdict.name.lower().replace("_", "-"),
-        take_away=record.take_away or "",
-        status=str(record.status),
-        is_failure=not any(result.gives_products for result in results) or record.outcome.failure is not None,
-    )
-
-
 def newest_first(summaries: Iterable[Summary]) -> tuple[Summary, ...]:
     """Return the newest first, those of one day by identifier; what no longer holds comes last."""
     by_id = sorted(summaries, key=lambda summary: summary.id)
@@ -68,45 +50,45 @@ def newest_first(summaries: Iterable[Summary]) -> tuple[Summary, ...]:
     return tuple(sorted(by_date, key=lambda summary: summary.is_retired))
 
 
-def scale_mol(entry: Entry) -> float | None:
+def scale_mol(case: Case) -> float | None:
     """Return the amount of substrate in mol, the scale of the entry."""
-    return entry.case.amounts.substrate.amount_mol
+    return case.amounts.substrate.amount_mol
 
 
-def _conditions_line(entry: Entry) -> list[Fact]:
+def conditions_line(case: Case) -> str:
+    """Return the conditions in one line."""
     labels = {"Nucleophile", "Base", "Reagents", "Solvent", "Temperature", "Time"}
-    facts = [fact for fact in conditions_strip(entry) if fact.label in labels]
-    return [
-        Fact(f.label, joined((f.value, f"({f.detail})" if f.detail and f.label == "Nucleophile" else ""), " "))
-        for f in facts
-    ]
+    facts = [fact for fact in conditions_strip(case) if fact.label in labels]
+    return joined(
+        joined((f.value, f"({f.detail})" if f.detail and f.label == "Nucleophile" else ""), " ") for f in facts
+    )
 
 
-def conditions_strip(entry: Entry) -> tuple[Fact, ...]:
+def conditions_strip(case: Case) -> tuple[Fact, ...]:
     """Return the conditions of the whole entry; a value that changes between stages lists them in order."""
-    record, amounts = entry.record, entry.case.amounts
+    record, amounts = case.record, case.amounts
     stages = record.stages
-    scale = scale_mol(entry)
+    scale = scale_mol(case)
     facts = [
-        *_reactants(entry),
+        *_reactants(case),
         _solvent(record, amounts.solvent_volume_l),
         Fact("Temperature", _in_order(str(stage.temperature) for stage in stages), _thermometers(stages)),
         Fact("Time", _in_order((str(stage.time) for stage in stages), fold=False)),
         Fact("Vessel", _in_order(str(stage.vessel or "not stated") for stage in stages)),
         Fact("Atmosphere", _in_order(stage.atmosphere or "not stated" for stage in stages)),
-        concentration(entry),
+        concentration(case),
         Fact("Scale", amount_text(scale) if scale is not None else "not known", runs_text(record.performed)),
     ]
     return tuple(fact for fact in facts if fact.value)
 
 
-def _reactants(entry: Entry) -> list[Fact]:
-    record = entry.record
+def _reactants(case: Case) -> list[Fact]:
+    record = case.record
     facts = []
     if isinstance(record.nucleophile, NucleophileWord):
         facts.append(Fact("Nucleophile", str(record.nucleophile)))
     for role, label in (("nucleophile", "Nucleophile"), ("base", "Base"), ("reagent", "Reagents")):
-        rows = [row for row in entry.case.amounts.rows if row.role == role]
+        rows = [row for row in case.amounts.rows if row.role == role]
         if rows:
             facts.append(Fact(label, joined(row.name for row in rows), joined(map(_equivalents_of, rows))))
     return facts
@@ -138,9 +120,9 @@ def _in_order(values: Iterable[str], *, fold: bool = True) -> str:
     return joined(listed, " → ")
 
 
-def concentration(entry: Entry) -> Fact:
+def concentration(case: Case) -> Fact:
     """Return the concentration of the substrate, and whether it was typed or derived."""
-    record, amounts = entry.record, entry.case.amounts
+    record, amounts = case.record, case.amounts
     if record.concentration is not None:
         return Fact("Concentration", quantity_text(record.concentration), "per solvent volume, typed")
     if amounts.concentration_mol_per_l is None:

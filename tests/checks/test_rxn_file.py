@@ -6,6 +6,7 @@ from pathlib import Path
 import pytest
 
 from builder.book import Book, open_book
+from builder.checks.case import Case
 from builder.records.specimen import with_example
 from tests.specimens import TODAY
 
@@ -39,7 +40,7 @@ outcome:
 
 def _book(
     tmp_path: Path, *, path: str = "scheme.rxn", sha: str = "", product: str = "product 1", rxn: str = RXN
-) -> Book:
+) -> Book[Case]:
     folder = tmp_path / "entries"
     folder.mkdir()
     (folder / "handbook.yml").write_text("format: 1\ntitle: A book for tests\n", "utf-8")
@@ -55,8 +56,8 @@ def _book(
 def test_structures_are_taken_from_the_file(tmp_path: Path) -> None:
     book = _book(tmp_path)
     (entry,) = book.entries
-    assert entry.case.substrate.smiles == "CI"
-    assert entry.case.structures[("outcome", "products", 0)].smiles == "CO"
+    assert entry.kept.substrate.smiles == "CI"
+    assert entry.kept.structures[("outcome", "products", 0)].smiles == "CO"
     assert [finding.rule for finding in entry.findings if finding.level == "error"] == []
 
 

@@ -12,7 +12,7 @@ SECONDARY = "class: secondary, leaving_group: bromide"
 
 
 def _case(example: str) -> Case:
-    case = examine_text(with_example(example + "\nstages: [{temperature: 60 °C, time: 16 h}]")).case
+    case = examine_text(with_example(example + "\nstages: [{temperature: 60 °C, time: 16 h}]")).kept
     assert case is not None
     return case
 

@@ -38,7 +38,7 @@ base: {name: potassium carbonate, smiles: '[K+].[K+].[O-]C([O-])=O', equivalents
 
 
 def _question(example: str) -> Question:
-    case = examine_text(with_example(example)).case
+    case = examine_text(with_example(example)).kept
     assert case is not None
     assert case.question is not None, case.unasked
     return case.question
@@ -134,7 +134,7 @@ def test_little_acid_is_a_catalyst() -> None:
     ids=["two nucleophiles", "shares of solvents", "added later", "unknown activator"],
 )
 def test_what_is_more_than_one_question_is_not_asked(example: str, reason: str) -> None:
-    case = examine_text(with_example(example)).case
+    case = examine_text(with_example(example)).kept
     assert case is not None
     assert case.question is None
     assert case.unasked == reason

@@ -27,7 +27,7 @@ def test_a_group_formed_in_the_flask_leaves(smiles: str, group: str, name: str, 
         f"nucleophile: {{name: {name} itself, smiles: '{reagent}', equivalents: 1.1}}\n"
         f"reagents: [{{name: {name}, smiles: '{reagent}', use: {use}, equivalents: 1.1}}]\n"
     )
-    case = examine_text(with_example(example)).case
+    case = examine_text(with_example(example)).kept
     assert case is not None
     sites = in_play(case.record, case.structures)
     assert [each.formed_group for each in sites] == [group]

@@ -8,11 +8,12 @@ from builder.book import Book, Verdict
 from builder.checks.register import all_rules
 from builder.publish.page import Page
 from builder.publish.pages import build_pages
+from builder.publish.portrait import Portrait
 from tests.publish.handmade import CAUTION, QUERY, REMARK, Markup, book_of, entry_of, text_of
 
 
 @pytest.fixture(scope="session")
-def book() -> Book:
+def book() -> Book[Portrait]:
     return book_of(
         entry_of(text_of("NS2H8WDRW"), CAUTION),
         entry_of(text_of("NS3V6TDMZ")),
@@ -23,7 +24,7 @@ def book() -> Book:
 
 
 @pytest.fixture(scope="session")
-def pages(book: Book) -> dict[str, Page]:
+def pages(book: Book[Portrait]) -> dict[str, Page]:
     return {page.path: page for page in build_pages(book, tuple(all_rules().values()))}
 
 

@@ -5,8 +5,9 @@ from html.parser import HTMLParser
 from pathlib import Path
 
 from builder.book import Book, Entry, Verdict
-from builder.checks.case import open_case
+from builder.checks.case import Case, open_case
 from builder.finding import Finding, Level, Place
+from builder.publish.portrait import Portrait, portrait_of
 from builder.records.digest import digest
 from builder.records.reader import read_bytes
 from builder.records.settings import Person, Settings
@@ -56,19 +57,27 @@ def text_of(name: str) -> str:
     return (GOOD / f"{name}.yml").read_text("utf-8")
 
 
-def entry_of(text: str, *findings: Finding, verdict: Verdict = Verdict.IN_LINE, settings: Settings = SETTINGS) -> Entry:
-    """Return the entry of a record, with these findings and no others."""
+def case_of(text: str, settings: Settings = SETTINGS) -> Case:
+    """Return the case of a record."""
     record = read_bytes(text.encode(), "entries/x.yml").record
     assert record is not None
-    case = open_case(record, f"{record.entry}.yml", settings, TODAY)
-    return Entry(case, f"{record.entry}.yml", text, digest(record), findings, verdict)
+    return open_case(record, f"{record.entry}.yml", settings, TODAY)
 
 
-def book_of(*entries: Entry, settings: Settings = SETTINGS) -> Book:
+def entry_of(
+    text: str, *findings: Finding, verdict: Verdict = Verdict.IN_LINE, settings: Settings = SETTINGS
+) -> Entry[Portrait]:
+    """Return the entry of a record, with these findings and no others."""
+    case = case_of(text, settings)
+    record = case.record
+    return Entry(record, case.file, text, digest(record), findings, verdict, portrait_of(case))
+
+
+def book_of(*entries: Entry[Portrait], settings: Settings = SETTINGS) -> Book[Portrait]:
     """Return a book of these entries."""
     findings = tuple(finding for entry in entries for finding in entry.findings)
     in_order = tuple(sorted(entries, key=lambda entry: entry.id))
-    return Book(Path("entries"), settings, TODAY, in_order, findings, len(entries))
+    return Book(Path("entries"), settings, TODAY, in_order, findings, tuple(Path(entry.file) for entry in entries))
 
 
 class Markup(HTMLParser):

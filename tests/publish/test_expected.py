@@ -6,7 +6,7 @@ from builder.mechanism.outlook import expected_text, percent_text
 from builder.publish.expected import ExpectedView, expected_view, why_nothing_is_expected
 from builder.publish.figures import duration_text
 from builder.publish.forecast_parts import GATE_IDS
-from tests.publish.handmade import entry_of, text_of
+from tests.publish.handmade import case_of, text_of
 
 
 @pytest.mark.parametrize(
@@ -26,19 +26,19 @@ def test_durations(seconds: float, text: str) -> None:
 
 @pytest.mark.parametrize(
     ("fraction", "text"),
-    [(0.0, "< 0.1 %"), (0.00051, "0.1 %"), (0.034, "3.4 %"), (0.996, "99.6 %"), (0.9996, "> 99.9 %"), (0.5, "50 %")],
+    [(0.0, "< 0.1 %"), (0.00051, "0.1 %"), (0.034, "3 %"), (0.996, "99.6 %"), (0.9996, "> 99.9 %"), (0.5, "50 %")],
 )
 def test_percentages_near_none_and_all(fraction: float, text: str) -> None:
     assert percent_text(fraction) == text
 
 
 def test_an_interval_is_shown_where_it_says_more() -> None:
-    assert expected_text(0.97, (0.9, 0.985)) == "97 % (90 % to 98 %)"
+    assert expected_text(0.97, (0.9, 0.985)) == "97 % (90 to 98 %)"
     assert expected_text(1.0, (1.0, 1.0)) == "> 99.9 %"
 
 
 def _expected(name: str) -> ExpectedView:
-    expected = expected_view(entry_of(text_of(name)).case)
+    expected = expected_view(case_of(text_of(name)))
     assert expected is not None
     return expected
 
@@ -78,6 +78,6 @@ def test_where_hardly_anything_reacts_no_product_is_named() -> None:
 
 
 def test_why_nothing_is_expected() -> None:
-    case = entry_of(text_of("NSDP0MTDW")).case
+    case = case_of(text_of("NSDP0MTDW"))
     assert expected_view(case) is None
     assert why_nothing_is_expected(case) == "several nucleophiles compete"

@@ -6,7 +6,8 @@ from pathlib import Path
 import pytest
 
 from builder.chemistry.inks import palette_css
-from tests.browser.built import RECORDS, ROOT, Build, build, good_texts, write_book
+from builder.publish.frame import CONTENT_POLICY, content_policy
+from tests.browser.built import RECORDS, Build, build, good_texts, write_book
 from tests.publish.handmade import Markup
 
 EVIL = '"><imgx src=x onerror=alert(1)>'
@@ -44,7 +45,7 @@ def test_no_page_asks_another_host_for_anything(built: Build) -> None:
     loads = {"script": "src", "img": "src", "link": "href", "iframe": "src", "source": "src"}
     for path in built.site.rglob("*.html"):
         for tag, attributes in Markup(path.read_text("utf-8")).elements:
-            if attributes.get("rel") == "canonical":  # names the page's own address, and is never fetched
+            if attributes.get("rel") in {"canonical", "edit"}:  # name an address, and are never fetched
                 continue
             assert not re.match(r"(https?:)?//", attributes.get(loads.get(tag, ""), "")), (path, attributes)
 
@@ -80,8 +81,27 @@ def test_the_same_book_gives_the_same_bytes(tmp_path: Path) -> None:
     assert _files(first.site) == _files(second.site)
 
 
-def test_the_style_sheet_has_the_inks_of_the_drawings() -> None:
-    style = (ROOT / "site_overrides" / "assets" / "handbook.css").read_text("utf-8")
-    light, dark = style.split('[data-md-color-scheme="slate"]', 1)
-    assert palette_css() in light
-    assert palette_css(dark=True) in dark
+def test_the_inks_of_the_drawings_reach_the_pages(built: Build) -> None:
+    assert palette_css() in (built.site / "assets" / "inks.css").read_text("utf-8")
+    for path in built.site.rglob("*.html"):
+        styles = [a["href"] for tag, a in Markup(path.read_text("utf-8")).elements if a.get("rel") == "stylesheet"]
+        assert any(style.endswith("assets/inks.css") for style in styles), path
+
+
+def test_every_page_carries_the_policy_and_nothing_runs_inline(built: Build) -> None:
+    for path in built.site.rglob("*.html"):
+        elements = Markup(path.read_text("utf-8")).elements
+        policies = [a["content"] for _, a in elements if a.get("http-equiv") == "Content-Security-Policy"]
+        assert policies == [content_policy()], path
+        scripts = [a for tag, a in elements if tag == "script"]
+        assert scripts, path
+        assert all(a.get("src") for a in scripts), path
+        assert not [a for tag, a in elements if tag == "style" or "style" in a or any(n.startswith("on") for n in a)], (
+            path
+        )
+
+
+def test_the_policy_names_no_other_host_and_allows_nothing_inline() -> None:
+    sources = {source for sources in CONTENT_POLICY.values() for source in sources.split()}
+    assert sources == {"'none'", "'self'", "data:"}
+    assert CONTENT_POLICY["default-src"] == CONTENT_POLICY["base-uri"] == "'none'"
