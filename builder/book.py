@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 from enum import StrEnum
+from multiprocessing import get_start_method
 from pathlib import Path
 from typing import Any, Generic, TypeVar, overload
 
@@ -27,8 +28,8 @@ Kept = TypeVar("Kept")
 Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
 """Passes on what is done, given how much there will be."""
 
-LEAST_SHARE = 32
-"""Records for which starting a process of their own pays."""
+SHARE = 64
+"""Records that one process reads; fewer are not worth starting one."""
 
 
 def _unwatched(done: Iterator["Examined[Any]"], _: int) -> Iterable["Examined[Any]"]:
@@ -190,13 +191,21 @@ def open_book(
 
 
 def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:
-    """Yield what becomes of each file, in the order of the files."""
-    processes = min(processes, len(files) // LEAST_SHARE)
+    """Yield what becomes of each file, in the order of the files.
+
+    Where processes are forked, the first file is read here, with all tables it takes, and each process is given up
+    after its share: a book of any length takes the memory of a short one.
+    """
+    processes = min(processes, len(files) // SHARE)
     if processes < 2:
         yield from map(desk.examine, files)
         return
-    with ProcessPoolExecutor(processes) as pool:
-        yield from pool.map(desk.examine, files, chunksize=LEAST_SHARE // 4)
+    is_forked = get_start_method() == "fork"
+    yield desk.examine(files[0])
+    step = processes * SHARE if is_forked else len(files)
+    for start in range(1, len(files), step):
+        with ProcessPoolExecutor(processes) as pool:
+            yield from pool.map(desk.examine, files[start : start + step], chunksize=SHARE // 8)
 
 
 def _attachment(path: Path, folder: Path) -> bytes | None:

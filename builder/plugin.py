@@ -15,6 +15,7 @@ from mkdocs.structure.files import File, Files, InclusionLevel
 from mkdocs.structure.nav import Navigation
 from mkdocs.structure.pages import Page as MkDocsPage
 from mkdocs.structure.toc import AnchorLink, TableOfContents
+from mkdocs.utils.templates import TemplateContext
 
 from builder.book import Book, open_book
 from builder.checks.report import render_text
@@ -22,7 +23,7 @@ from builder.finding import Level
 from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.frame import INKS_STYLE, Furniture, MenuItem, content_policy, inks_style
-from builder.publish.page import Page, menu_of
+from builder.publish.page import Page, headings_of, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.progress import watched
@@ -81,6 +82,25 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
             files.append(File.generated(config, asset.path, content=asset.data, inclusion=included))
         return files
 
+    def on_page_context(
+        self,
+        context: TemplateContext,
+        *,
+        page: MkDocsPage,
+        config: MkDocsConfig,
+        nav: Navigation,  # noqa: ARG002
+    ) -> TemplateContext:
+        """Write a page of ours just before the frame is put around it."""
+        if isinstance(page, _VirtualPage):
+            page.open()
+        return context
+
+    def on_post_page(self, output: str, *, page: MkDocsPage, config: MkDocsConfig) -> str:  # noqa: ARG002
+        """Let go of what the page holds."""
+        if isinstance(page, _VirtualPage):
+            page.close()
+        return output
+
     def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:  # noqa: ARG002 - MkDocs calls it so
         """Give the templates of the frame what they show."""
         styles = (uri for uri in files.src_uris if re.fullmatch(r"assets/stylesheets/main\.\w+\.min\.css", uri))
@@ -127,16 +147,25 @@ class _VirtualPage(MkDocsPage):
             "title": escape(page.title),
             "description": escape(page.description),
             "kind": page.kind,
-            "rail": page.rail,
             "section": page.section,
         }
         if not page.indexed:
             self.meta["robots"] = "noindex"
 
     def render(self, config: MkDocsConfig, files: Files) -> None:  # noqa: ARG002 - MkDocs calls it so
-        self.content = self._page.body
-        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self._page.headings])
-        self.present_anchor_ids = set(self._page.anchors)
+        """Leave the HTML to `open`; without anchors, links to them from Markdown are taken on trust."""
+        self.close()
+
+    def open(self) -> None:
+        """Write the HTML, for the time that the frame is put around it."""
+        written = self._page.write()
+        self.content, self.meta["rail"] = written.body, written.rail
+        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in headings_of(written.body)])
+
+    def close(self) -> None:
+        """Let go of the HTML: all pages together would fill the memory."""
+        self.content, self.meta["rail"] = "", ""
+        self.toc = TableOfContents([])
 
 
 def _refuse_a_talking_theme(config: MkDocsConfig) -> None:

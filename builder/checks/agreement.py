@@ -445,7 +445,7 @@ def _shown_effects(product: Structure, routes: Sequence[Route]) -> set[str]:
     return {str(effect) for effect in effects} if effects <= told else set()
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _elements_of(structure: Structure) -> tuple[tuple[str, int], ...]:
     return tuple(sorted(Counter(atom.symbol for atom in structure.atoms if atom.symbol != "H").items()))
 

@@ -62,7 +62,7 @@ class Case:
         return forecast if forecast is not None and forecast.is_covered else None
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=64)
 def forecast_for(question: Question) -> Forecast:
     """Return the forecast for a question; asked again, it is remembered."""
     return predict(question)

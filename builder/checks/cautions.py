@@ -321,7 +321,7 @@ def _in(presents: Sequence[Present], *places: Whereabouts) -> list[Present]:
 _HYDROGEN_HALIDES = frozenset({"Cl", "Br", "I"})
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _kinds_of(structure: Structure) -> frozenset[str]:
     """Return the kinds a structure belongs to; an amine drawn beside HCl is its hydrochloride."""
     pieces = {piece.smiles: _kinds_of_piece(piece) for piece in structure.fragments}
@@ -331,7 +331,7 @@ def _kinds_of(structure: Structure) -> frozenset[str]:
     return frozenset().union(*pieces.values())
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _kinds_of_piece(piece: Structure) -> frozenset[str]:
     return frozenset().union(*(kinds for fragment, kinds in _kinds_by_fragment().items() if fragment.is_in(piece)))
 
@@ -375,7 +375,7 @@ _START_OF_NAME = re.compile(r"(?<![A-Za-z0-9·•])[A-Za-z0-9]+")
 _END_OF_NAME = re.compile(r"(?![A-Za-z0-9]|-free)")
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _kinds_named_in(text: str) -> frozenset[str]:
     """Return the kinds a text names; "no acid", "acid-free" and "Lewis acid" name no acid."""
     named: set[str] = set()

@@ -93,7 +93,7 @@ def _moved(fraction: float, odds: float) -> float:
     return fraction * odds / (fraction * odds + 1 - fraction)
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _forms(structure: Structure) -> tuple[Structure, ...]:
     """Return the uncharged pieces of a drawn product, itself as a whole first."""
     return tuple(dict.fromkeys((neutral_form(structure), *map(neutral_form, structure.fragments))))
@@ -111,7 +111,7 @@ def is_same_product(drawn: Structure, forecasted: Structure) -> bool:
     return any(_agree(form, other) for form in _forms(drawn))
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _agree(one: Structure, other: Structure) -> bool:
     if one.flat_smiles != other.flat_smiles:
         return False

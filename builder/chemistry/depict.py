@@ -64,7 +64,7 @@ class Fragment(NamedTuple):
 _NO_MARKS = Marks()
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=128)
 def depict(structure: Structure, marks: Marks = _NO_MARKS, model: Structure | None = None) -> Fragment:
     """Return the drawing of a structure; with a `model`, turned so that the skeleton they share lies alike."""
     drawn = sketch(structure, model)

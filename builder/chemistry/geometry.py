@@ -75,7 +75,7 @@ class ArylSubstituent:
     atom: AtomId
 
 
-@lru_cache(maxsize=2048)
+@lru_cache(maxsize=512)
 def perceive_rings(structure: Structure) -> tuple[Ring, ...]:
     """Return the smallest rings, smaller first, with the faces of their drawn substituents."""
     centres = drawn_centres(structure)
@@ -102,7 +102,7 @@ def aryl_substituent_names() -> tuple[str, ...]:
     return tuple(row.name for row in load_aryl_substituents())
 
 
-@lru_cache(maxsize=2048)
+@lru_cache(maxsize=512)
 def aryl_substituents(structure: Structure, ipso: AtomId) -> tuple[ArylSubstituent, ...]:
     """Return the substituents of the six-membered aromatic ring of a carbon, by position and AtomId.
 
@@ -139,7 +139,7 @@ def _is_benzene(mol: Chem.Mol, ring: tuple[int, ...]) -> bool:
     return len(ring) == 6 and all(a.GetIsAromatic() and a.GetAtomicNum() == 6 for a in atoms)
 
 
-@lru_cache(maxsize=2048)
+@lru_cache(maxsize=512)
 def _substituent_names(structure: Structure) -> dict[tuple[AtomId, AtomId], str]:
     """Return the name of each named substituent by ring carbon and its own atom."""
     found: dict[tuple[AtomId, AtomId], str] = {}

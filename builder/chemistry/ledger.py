@@ -79,7 +79,7 @@ def _parity(one: tuple[int, ...], other: tuple[int, ...]) -> int:
     return -1 if swaps % 2 else 1
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _laid_out(structure: Structure) -> tuple[Chem.Mol, dict[int, Centre], dict[frozenset[int], Alkene]]:
     return _lay_out(structure.mol)
 
@@ -342,7 +342,7 @@ def _inventory(structures: Iterable[Structure]) -> Counter[str]:
     return total
 
 
-@lru_cache(maxsize=8192)
+@lru_cache(maxsize=512)
 def _composition(structure: Structure) -> tuple[tuple[str, int], ...]:
     """Return the atoms by element and isotope, with charge and unpaired electrons, of one structure."""
     count: Counter[str] = Counter()

@@ -40,7 +40,7 @@ def svg_text(text: str) -> str:
     return escape(_NOT_IN_XML.sub("", text))
 
 
-@lru_cache(maxsize=16384)
+@lru_cache(maxsize=4096)
 def text_width(text: str, size: float, *, bold: bool = False) -> float:
     """Return the room text needs, in px; an upper bound for the usual system faces."""
     width = size * sum(_WIDTH_OF.get(letter, _WIDEST_EM) for letter in text.replace(_NO_BREAK, " "))

@@ -19,7 +19,7 @@ def _fingerprints() -> rdFingerprintGenerator.FingerprintGenerator64:
     return rdFingerprintGenerator.GetMorganGenerator(radius=FINGERPRINT_RADIUS, fpSize=FINGERPRINT_BITS)
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _fingerprint(structure: Structure) -> DataStructs.ExplicitBitVect:
     found: DataStructs.ExplicitBitVect = _fingerprints().GetFingerprint(structure.mol)
     return found

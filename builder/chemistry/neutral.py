@@ -10,7 +10,7 @@ from builder.chemistry.structure import Structure, parse_smiles
 __all__ = ["neutral_form"]
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def neutral_form(structure: Structure) -> Structure:
     """Return the structure without counter-ions, each acid and base in its uncharged form.
 

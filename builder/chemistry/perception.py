@@ -259,7 +259,7 @@ def site_class_meanings() -> dict[str, str]:
     return {row.name: row.meaning for row in load_class_patterns()}
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def perceive_sites(structure: Structure) -> tuple[ReactiveSite, ...]:
     """Return every reactive carbon: those with a leaving group first, then the ends of multiple bonds.
 
@@ -297,7 +297,7 @@ def neighbouring_groups(structure: Structure) -> tuple[Nucleophile, ...]:
     return tuple(sorted(_attacking_atoms_of(structure), key=_attack_order))
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _all_attacking_atoms(structure: Structure) -> tuple[Nucleophile, ...]:
     species = structure.fragments
     found = [n for s in species if s.charge < 0 for n in _attacking_atoms_of(s)]
@@ -340,7 +340,7 @@ class _Searched:
         return tuple(self.mol.GetSubstructMatches(query.mol, uniquify=False, maxMatches=MAX_MATCHES))
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=512)
 def _searched(structure: Structure) -> _Searched:
     mol = structure.mol
     atoms = [mol.GetAtomWithIdx(at) for at in range(mol.GetNumAtoms())]
@@ -522,7 +522,7 @@ def _addition_sites(structure: Structure) -> list[ReactiveSite]:
     return sorted(merged, key=lambda s: ("alkyne" in s.classes, s.alpha_carbon, s.partner or 0))
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _attacking_atoms_of(species: Structure) -> tuple[Nucleophile, ...]:
     mol = species.mol
     ranks = species.symmetry_classes

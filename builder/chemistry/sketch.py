@@ -70,7 +70,7 @@ class Sketch:
     places: tuple[Point, ...]
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=128)
 def sketch(structure: Structure, model: Structure | None = None) -> Sketch:
     """Return the structure on paper; with a `model`, turned so that the carbon skeleton they share lies alike."""
     mol = _laid_out(structure) if model is None or model == structure else _turned_like(structure, model)
@@ -143,7 +143,7 @@ def _ring_to_lean_into(
 # --- coordinates ------------------------------------------------------------------------------------------
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=128)
 def _laid_out(structure: Structure) -> Chem.Mol:
     """Return a kekulised copy with 2D coordinates, bonds straightened.
 
@@ -321,7 +321,7 @@ def _turn(mol: Chem.Mol, centre: complex, flip: bool, turn: complex) -> None:
         conformer.SetAtomPosition(index, Point3D(z.real, z.imag, 0.0))
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=128)
 def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[tuple[AtomId, AtomId], ...], ...]:
     """Return ways to pair atoms of both over the largest carbon skeleton of the model that the structure has too.
 
@@ -340,7 +340,7 @@ def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[tuple[A
 _MOST_PAIRINGS = 12
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=128)
 def _carbon_skeletons(structure: Structure) -> tuple[tuple[tuple[AtomId, ...], Chem.Mol, tuple[int, ...]], ...]:
     """Return the sets of carbons joined by carbon-carbon bonds, largest first, as query, with their degrees."""
     mol = structure.mol

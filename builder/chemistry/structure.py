@@ -377,7 +377,7 @@ def _key_or_smiles(structure: Structure) -> str:
     return structure.inchikey or structure.smiles
 
 
-@lru_cache(maxsize=8192)
+@lru_cache(maxsize=1024)
 def parse_smiles(text: str) -> Structure:
     """Return the structure a SMILES describes. Atom-map numbers are read and dropped.
 

@@ -292,7 +292,7 @@ def _ring_terms(
         yield parameters.term(rho, total)
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def aryl_character(structure: Structure, ipso: AtomId) -> tuple[str, float]:
     """Return what ring an aryl carbon belongs to (phenyl, naphthyl, heteroaryl ...) and the sum of σ+ on it."""
     atoms = structure.atoms

@@ -11,7 +11,7 @@ from builder.mechanism.cations import Station
 __all__ = ["exo_face", "exo_only", "shifting_bond", "trans_to_acyloxy"]
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=512)
 def shifting_bond(structure: Structure, carbon: AtomId) -> tuple[AtomId, AtomId] | None:
     """Return the bridgehead beside a norbornyl C2, and the carbon beyond it whose bond can take part (C1 and C6).
 

@@ -25,7 +25,7 @@ def roles_in(species: Iterable[Structure]) -> frozenset[FlaskRole]:
     return frozenset().union(*(_roles_of(each) for each in species))
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _roles_of(structure: Structure) -> frozenset[FlaskRole]:
     return frozenset(role for role, fragment in _patterns() if fragment.is_in(structure))
 

@@ -148,7 +148,7 @@ class Skeleton:
         return pieces
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=512)
 def skeleton_of(structure: Structure) -> Skeleton:
     """Return a structure as adjacency; not to be changed in place."""
     atoms = structure.atoms

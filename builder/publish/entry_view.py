@@ -29,7 +29,7 @@ from builder.records.vocabulary import Status
 from builder.rule import Rule
 from builder.sources import source_text
 
-__all__ = ["EntryView", "Link", "Surroundings", "next_review", "surroundings_of", "view_entry"]
+__all__ = ["EntryView", "Link", "Surroundings", "edit_path", "next_review", "surroundings_of", "view_entry"]
 
 DIGEST_SHOWN = 12
 """Hexadecimal digits of a digest that citations and printed pages carry."""
@@ -199,6 +199,11 @@ def _sequences(
     return found
 
 
+def edit_path(entry: Entry[Portrait], around: Surroundings) -> str:
+    """Return where the record of an entry stands below the book's folder."""
+    return entry.file.removeprefix(f"{around.folder}/")
+
+
 def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
     """Return everything the page of `entry` shows."""
     record, settings, portrait = entry.record, around.settings, entry.kept
@@ -208,7 +213,6 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
     findings = [_finding(finding, record, around) for finding in entry.findings]
     of_level = partial(_of_level, findings)
     others = around.others.get(entry.id, ())
-    file = entry.file.removeprefix(f"{around.folder}/")
     rate, course = record.outcome.rate_constant, record.outcome.time_course
     return EntryView(
         summary=around.summaries[entry.id],
@@ -259,7 +263,7 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
         further_variants=max(len(others) - MOST_VARIANTS, 0),
         amounts_table=amounts_as_tsv(portrait.amounts),
         file=entry.file,
-        edit_address=f"{settings.edit_address}{quote(file)}" if settings.edit_address else "",
+        edit_address=f"{settings.edit_address}{quote(edit_path(entry, around))}" if settings.edit_address else "",
         address=f"{settings.site_address}e/{entry.id}/" if settings.site_address else "",
         citation=_citation(entry, settings),
         printed=f"{entry.id} · revision {record.revision} · {entry.digest[:DIGEST_SHOWN]} · {around.today.isoformat()}",

@@ -11,7 +11,7 @@ from builder.publish.facets import FacetIndex
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary, newest_first
-from builder.publish.templating import render
+from builder.publish.templating import deferred
 from builder.records.vocabulary import Status
 
 __all__ = ["StateOfBook", "ThinSpot", "front_page", "state_of_book", "thin_spots"]
@@ -101,7 +101,7 @@ def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: 
         path="",
         title=book.settings.title,
         description=f"{book.settings.title}: {len(book.entries)} entries of conditions, each checked and cited.",
-        body=render(
+        write=deferred(
             "front.html",
             settings=book.settings,
             state=state_of_book(book, summaries),

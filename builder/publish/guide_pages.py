@@ -8,7 +8,7 @@ from builder.book import Book
 from builder.chemistry.perception import leaving_group_names, site_class_meanings, site_class_names
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
-from builder.publish.templating import render
+from builder.publish.templating import deferred
 from builder.records.schema import record_schema
 from builder.records.specimen import SPECIMEN_FILE, specimen_text
 
@@ -70,7 +70,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
             path="how-to-add/",
             title="How to add an entry",
             description="From the bench to the book: write the record, check it, ask for review.",
-            body=render(
+            write=deferred(
                 "how_to_add.html",
                 specimen=specimen_text(),
                 specimen_file=SPECIMEN_FILE,
@@ -87,7 +87,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
             path="how-to-cite/",
             title="How to cite",
             description="Identifier, revision and digest name one experiment for good.",
-            body=render("how_to_cite.html", settings=book.settings, root="../"),
+            write=deferred("how_to_cite.html", settings=book.settings, root="../"),
             menu=("Cite",),
         ),
     )

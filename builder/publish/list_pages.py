@@ -9,7 +9,7 @@ from builder.publish.neighbours import SequenceView
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary, newest_first
-from builder.publish.templating import render
+from builder.publish.templating import deferred
 
 __all__ = ["Tally", "list_pages", "tally"]
 
@@ -62,7 +62,7 @@ def list_pages(
             path="lists/",
             title="Entries",
             description=f"All {len(book.entries)} entries, and the lists by which to find them.",
-            body=render(
+            write=deferred(
                 "lists.html",
                 indexes=indexes,
                 summaries=everything,
@@ -77,7 +77,7 @@ def list_pages(
             path="lists/sequences/",
             title="Sequences",
             description=f"{len(sequences)} sequences in which the product of one entry is the substrate of the next.",
-            body=render("sequences.html", sequences=sequences, root="../../"),
+            write=deferred("sequences.html", sequences=sequences, root="../../"),
             section="lists/",
         ),
     ]
@@ -95,7 +95,7 @@ def _index_page(index: FacetIndex, summaries: Mapping[str, Summary]) -> Page:
         path=f"lists/{facet.key}/",
         title=f"By {facet.title.lower()}",
         description=f"Entries by {facet.title.lower()}, with the number of each.",
-        body=render("facet.html", facet=facet, rows=rows, root="../../"),
+        write=deferred("facet.html", facet=facet, rows=rows, root="../../"),
         section="lists/",
     )
 
@@ -107,7 +107,7 @@ def _value_page(facet: Facet, value: FacetValue, summaries: Mapping[str, Summary
         path=f"lists/{facet.key}/{value.slug}/",
         title=f"{facet.title}: {value.value}",
         description=f"{len(rows)} entries with {facet.title.lower()} {value.value}.",
-        body=render(
+        write=deferred(
             "facet_value.html", facet=facet, value=value.value, summaries=rows, tally=tally(rows), root="../../../"
         ),
         section="lists/",

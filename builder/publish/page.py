@@ -1,16 +1,15 @@
 """Page and Asset: what the publishing rooms hand over, and all that a site generator needs to know of it."""
 
 import re
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
-__all__ = ["Asset", "Heading", "Menu", "Page", "menu_of"]
+__all__ = ["Asset", "Heading", "Menu", "Page", "Written", "headings_of", "menu_of"]
 
 Menu = list[dict[str, "str | Menu"] | str]
 """Entries of a menu: a label with a page's source, a label with a menu below it, or a section's own page."""
 
 _HEADING = re.compile(r'<h2 id="(?P<id>[^"]+)"[^>]*>(?P<title>[^<]+)</h2>')
-_ID = re.compile(r'\sid="([^"]+)"')
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,15 +28,23 @@ class Heading:
     title: str
 
 
+@dataclass(frozen=True, slots=True)
+class Written:
+    """The HTML of a page: its body, and what stands beside it."""
+
+    body: str
+    rail: str = ""
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Page:
     """One page of the site.
 
     path: address below the site's root, ending in a slash; "" is the front page.
     title, description: plain text, not escaped.
-    body: HTML that stands inside the site generator's page; every link in it is relative.
+    write: gives the HTML of the page, anew on every call, so that a large site need not be held at once; every link in
+        it is relative.
     kind: what the page is (entry, list, rule, guide, front), for its style.
-    rail: HTML that stands beside the body.
     section: path of the page in the menu under which this one belongs, where that is another.
     source: file behind the page, below the book's folder, for the edit link.
     menu: labels under which the page stands in the menu, outermost first; none keeps it out.
@@ -47,10 +54,9 @@ class Page:
 
     path: str
     title: str
-    body: str
+    write: Callable[[], Written]
     description: str
     kind: str
-    rail: str = ""
     section: str = ""
     source: str | None = None
     menu: tuple[str, ...] = ()
@@ -63,14 +69,14 @@ class Page:
         return f"{self.path}index.md"
 
     @property
-    def headings(self) -> tuple[Heading, ...]:
-        """Return the sections of the page in order."""
-        return tuple(Heading(match["id"], match["title"]) for match in _HEADING.finditer(self.body))
+    def body(self) -> str:
+        """Return the HTML that stands inside the site generator's page."""
+        return self.write().body
 
-    @property
-    def anchors(self) -> frozenset[str]:
-        """Return every anchor a link may point at."""
-        return frozenset(_ID.findall(self.body))
+
+def headings_of(body: str) -> tuple[Heading, ...]:
+    """Return the sections of a page in order."""
+    return tuple(Heading(match["id"], match["title"]) for match in _HEADING.finditer(body))
 
 
 def menu_of(pages: Iterable[Page]) -> Menu:

@@ -1,39 +1,43 @@
 """One entry -> its page: the view rendered as HTML, with the files a reader may take away."""
 
+from collections.abc import Iterator
+from functools import partial
+
 from builder.book import Entry
-from builder.publish.entry_view import EntryView, Surroundings, view_entry
-from builder.publish.page import Asset, Page
+from builder.publish.entry_view import Surroundings, edit_path, view_entry
+from builder.publish.page import Asset, Page, Written
 from builder.publish.portrait import Portrait
 from builder.publish.templating import render
 
-__all__ = ["entry_page", "render_entry"]
-
+__all__ = ["entry_page"]
 
 ROOT = "../../"
 """From an entry's page to the site's root."""
 
 
 def entry_page(entry: Entry[Portrait], around: Surroundings) -> Page:
-    """Return the page of an entry with its downloads: the record as written, the scheme as drawn."""
-    view = view_entry(entry, around)
-    path = f"e/{entry.id}/"
-    assets = [Asset(f"{path}{entry.id}.yml", entry.text.encode())]
-    if view.scheme:
-        assets.append(Asset(f"{path}{entry.id}.svg", view.scheme.file))
+    """Return the page of an entry with its downloads."""
+    summary, path = around.summaries[entry.id], f"e/{entry.id}/"
     return Page(
         kind="entry",
         path=path,
-        title=view.summary.title,
-        body=render_entry(view),
-        rail=render("entry_rail.html", view=view, root=ROOT),
+        title=summary.title,
+        write=partial(_write, entry, around),
         section="lists/",
-        description=view.summary.take_away or f"{view.summary.conditions}. {view.summary.outcome}",
-        source=entry.file.removeprefix(f"{around.folder}/"),
-        indexed=view.tombstone is None,
-        assets=tuple(assets),
+        description=summary.take_away or f"{summary.conditions}. {summary.outcome}",
+        source=edit_path(entry, around),
+        indexed=not summary.is_retired,
+        assets=tuple(_downloads(entry, path)),
     )
 
 
-def render_entry(view: EntryView) -> str:
-    """Return the HTML body of an entry's page."""
-    return render("entry.html", view=view, root=ROOT)
+def _write(entry: Entry[Portrait], around: Surroundings) -> Written:
+    view = view_entry(entry, around)
+    return Written(render("entry.html", view=view, root=ROOT), rail=render("entry_rail.html", view=view, root=ROOT))
+
+
+def _downloads(entry: Entry[Portrait], path: str) -> Iterator[Asset]:
+    """Yield what a reader may take away: the record as written, the scheme as drawn."""
+    yield Asset(f"{path}{entry.id}.yml", entry.text.encode())
+    if entry.kept.scheme is not None:
+        yield Asset(f"{path}{entry.id}.svg", entry.kept.scheme.file)

@@ -11,7 +11,7 @@ from builder.chemistry.structure import parse_smiles
 from builder.finding import Finding, Level
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
-from builder.publish.templating import render
+from builder.publish.templating import deferred
 from builder.rule import Rule
 from builder.sources import source_text
 
@@ -146,7 +146,7 @@ def rule_pages(book: Book[Portrait], rules: Sequence[AnyRule]) -> tuple[Page, ..
         path="rules/",
         title="Rules",
         description=f"The {len(views)} rules by which records are checked, each with its reason and source.",
-        body=render("rules.html", groups=[group for group in groups if group[2]], root="../"),
+        write=deferred("rules.html", groups=[group for group in groups if group[2]], root="../"),
         menu=("Rules",),
     )
     known = {view.id for view in views}
@@ -159,6 +159,6 @@ def _rule_page(view: RuleView, known: set[str]) -> Page:
         path=f"rules/{view.id}/",
         title=view.title,
         description=view.statement,
-        body=render("rule.html", rule=view, known=known, root="../../"),
+        write=deferred("rule.html", rule=view, known=known, root="../../"),
         section="rules/",
     )

@@ -1,10 +1,13 @@
 """The one Jinja environment: every value is escaped, an unknown name is an error."""
 
+from collections.abc import Callable
 from functools import cache
 
 from jinja2 import Environment, PackageLoader, StrictUndefined
 
-__all__ = ["render"]
+from builder.publish.page import Written
+
+__all__ = ["deferred", "render"]
 
 
 def render(template: str, /, **values: object) -> str:
@@ -13,6 +16,11 @@ def render(template: str, /, **values: object) -> str:
     Raises jinja2.UndefinedError for a name the caller did not give: our fault, never the record's.
     """
     return _environment().get_template(template).render(**values)
+
+
+def deferred(template: str, /, **values: object) -> Callable[[], Written]:
+    """Return a function that renders a template beside this module as the body of a page."""
+    return lambda: Written(render(template, **values))
 
 
 @cache

@@ -78,7 +78,7 @@ class BetaWay:
     keys: tuple[tuple[str, float], ...]
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def beta_ways(structure: Structure, site: ReactiveSite) -> tuple[BetaWay, ...]:
     """Return the ways to the beta hydrogens of a site; ring carbons without a hydrogen in reach are left out."""
     found = []
@@ -368,7 +368,7 @@ def _e1cb_outcomes(
     return merged_outcomes(found) if found else ()
 
 
-@lru_cache(maxsize=2048)
+@lru_cache(maxsize=512)
 def _acidic_betas(structure: Structure) -> dict[int, str]:
     """Return what makes a carbon acid, by symmetry class: two acceptors or nitro, a ketone, another acceptor."""
     ranks = structure.symmetry_classes

@@ -93,7 +93,7 @@ def _pathway(
 # --- which groups reach the carbon ----------------------------------------------------------------------------
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def reachable_groups(structure: Structure, site: ReactiveSite) -> tuple[tuple[Nucleophile, int], ...]:
     """Return the groups that can come round to the back of the carbon, each with the ring they close."""
     distances = _distances(structure, site)

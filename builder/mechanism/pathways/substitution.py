@@ -127,7 +127,7 @@ def substitution_course(site: ReactiveSite, effect: StereoEffect) -> Course:
 # --- terms of the site ----------------------------------------------------------------------------------------
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def site_features(structure: Structure, site: ReactiveSite) -> tuple[tuple[str, float], ...]:
     """Return key and weight of the terms of a site in SN2: substitution, branching, neighbours, ring."""
     degree = (site.degree or Degree.TERTIARY).value
@@ -157,7 +157,7 @@ def site_features(structure: Structure, site: ReactiveSite) -> tuple[tuple[str, 
     return tuple(found)
 
 
-@lru_cache(maxsize=2048)
+@lru_cache(maxsize=512)
 def beta_acceptors(structure: Structure, site: ReactiveSite) -> int:
     """Return how many saturated beta carbons bear an electronegative atom, the leaving one left out."""
     atoms = structure.atoms
@@ -316,7 +316,7 @@ def two_phase_terms(structure: Structure, attacker: Attacker, flask: Flask, para
         yield parameters.term("flask.two phases")
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=512)
 def _is_oil(structure: Structure) -> bool:
     """Say whether a molecule hardly dissolves in water: eight carbons more than its polar atoms carry with them."""
     symbols = [atom.symbol for atom in structure.atoms]
@@ -359,7 +359,7 @@ def _borderline_terms(departure: Departure, attacker: Attacker, flask: Flask, pa
         yield parameters.term(f"{key}.power", max(0.0, flask.medium.power().value - _POWER_ZERO))
 
 
-@lru_cache(maxsize=1024)
+@lru_cache(maxsize=512)
 def opens_diaxially(structure: Structure, site: ReactiveSite, attacker: Attacker) -> bool | None:
     """Say whether opening of a ring on a six-membered ring at this carbon gives the diaxial product (Fürst-Plattner).
 
