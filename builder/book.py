@@ -1,6 +1,7 @@
 """open_book(folder) -> Book: records, verdicts, findings. The one place where the parts are wired up."""
 
 import datetime as dt
+import gc
 import re
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
@@ -204,8 +205,10 @@ def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Itera
     yield desk.examine(files[0])
     step = processes * SHARE if is_forked else len(files)
     for start in range(1, len(files), step):
+        gc.freeze()  # what the collector leaves alone stays shared with the processes
         with ProcessPoolExecutor(processes) as pool:
             yield from pool.map(desk.examine, files[start : start + step], chunksize=SHARE // 8)
+        gc.unfreeze()
 
 
 def _attachment(path: Path, folder: Path) -> bytes | None:

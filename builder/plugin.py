@@ -19,6 +19,7 @@ from mkdocs.utils.templates import TemplateContext
 
 from builder.book import Book, open_book
 from builder.checks.report import render_text
+from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Level
 from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
@@ -57,6 +58,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         _refuse_a_talking_theme(config)
         folder = Path(config.docs_dir)
         processes = 1 if self.is_live else usual_processes()
+        load_ring_templates()
         self.book = open_book(folder, today=build_date(), keep=portrait_of, progress=watched, processes=processes)
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]

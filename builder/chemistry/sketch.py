@@ -20,9 +20,9 @@ from rdkit.Chem import rdCoordGen, rdDepictor
 from rdkit.Geometry import Point3D
 
 from builder.chemistry.plane import Point
-from builder.chemistry.structure import AtomId, Structure
+from builder.chemistry.structure import AtomId, Structure, parse_smiles
 
-__all__ = ["Line", "Sketch", "SketchAtom", "SketchBond", "connected", "mol_block", "sketch"]
+__all__ = ["Line", "Sketch", "SketchAtom", "SketchBond", "connected", "load_ring_templates", "mol_block", "sketch"]
 
 _RDKIT_BOND_LENGTH = 1.5
 
@@ -141,6 +141,11 @@ def _ring_to_lean_into(
 
 
 # --- coordinates ------------------------------------------------------------------------------------------
+
+
+def load_ring_templates() -> None:
+    """Let RDKit load its layouts of ring systems: some 50 MB, which processes forked afterwards share."""
+    sketch(parse_smiles("C1CC2CCC1C2"))
 
 
 @lru_cache(maxsize=128)
