@@ -37,6 +37,7 @@ from builder.mechanism.rate_terms import FITTED_TABLE
 from builder.publish.build import NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
 from builder.publish.forecast_text import render_forecast
 from builder.publish.progress import counted, stepped, watched
+from builder.publish.console import put_up_with_any_console
 from builder.records.settings import SETTINGS_FILE
 
 __all__ = ["main"]
@@ -192,7 +193,7 @@ def schema(to_terminal: bool, book: Path) -> None:
       handbook schema --print
     """
     if to_terminal:
-        click.echo(json.dumps(schemas()["record-1.json"], ensure_ascii=False, indent=2))
+        click.echo(json.dumps(schemas()["record-1.json"], indent=2))
         return
     for path in write_schemas(book):
         click.echo(str(path))
@@ -213,7 +214,7 @@ def rule(rule_id: str | None, as_json: bool) -> None:
     if rule_id is None:
         listed = [{"id": each.id, "title": each.title, "level": str(each.level)} for each in rules.values()]
         lines = [f"{each['id']:<32} {each['level']:<8} {each['title']}" for each in listed]
-        click.echo(json.dumps({"rules": listed}, ensure_ascii=False, indent=2) if as_json else "\n".join(lines))
+        click.echo(json.dumps({"rules": listed}, indent=2) if as_json else "\n".join(lines))
         return
     if rule_id not in rules:
         raise click.UsageError(f'no rule is called "{rule_id}"{_near(rule_id, rules)}')
@@ -289,7 +290,7 @@ def predict(
     if changes is not None:
         plain["as_wanted"] = is_met
         plain["changes"] = [change_of(change) for change in changes]
-    click.echo(json.dumps(plain, ensure_ascii=False, indent=2, allow_nan=False))
+    click.echo(json.dumps(plain, indent=2, allow_nan=False))
 
 
 def _predict_batch(batch: Path, output: Path, processes: int) -> None:
@@ -398,3 +399,4 @@ def main(arguments: Sequence[str] | None = None) -> NoReturn:
         click.echo("run again with HANDBOOK_DEBUG=1 and report what it prints", err=True)
         sys.exit(OUR_FAULT)
     sys.exit(0)
+    put_up_with_any_console()

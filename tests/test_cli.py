@@ -2,6 +2,8 @@
 
 import json
 import shutil
+import subprocess
+import sys
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
@@ -148,6 +150,12 @@ def test_only_the_named_files_are_shown(run: Run, book: Path) -> None:
     ran = run("check", second, "--book", book)
     assert "value-not-permitted" not in ran.out
     assert ran.code == 0
+
+
+def test_nothing_but_export_needs_cairo() -> None:
+    program = "import sys, builder.cli, builder.plugin; print([m for m in sys.modules if m.startswith('cairo')])"
+    said = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True)
+    assert said.stdout == "[]\n"
 
 
 MISUSE = [
