@@ -194,7 +194,7 @@ def test_every_command_shows_an_example(run: Run, command: str) -> None:
 
 def test_help_of_the_group_names_the_commands(run: Run) -> None:
     out = run("--help").out
-    assert all(name in out for name in ("check", "build", "serve", "new", "schema", "rule"))
+    assert all(name in out for name in ("check", "build", "serve", "new", "start", "schema", "rule"))
     assert isinstance(cli.handbook, click.Group)
 
 
