@@ -195,7 +195,7 @@ def start(folder: Path, title: str, group: str | None) -> None:
 
     \b
     Example:
-      handbook start our-book --title 'Conditions that worked' --group 'Building blocks'
+      handbook start our-book --title 'Conditions that worked' --group 'Building-block group'
     """
     try:
         started = start_book(folder, title=title, group=group, date=_today())
