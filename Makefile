@@ -44,6 +44,7 @@ eval: .venv/.ready ## the engine against published reactions
 	$(BIN)/python tests/eval.py
 
 wheel: .venv/.ready ## build the package for pipx into dist/
+	@rm -rf build  # setuptools packs whatever a former build left there
 	$(PIP) wheel --no-deps --no-build-isolation --wheel-dir dist .
 	@ls dist/*.whl
 

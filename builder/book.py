@@ -14,7 +14,8 @@ from typing import Any, Generic, TypeVar, overload
 from builder.checks.agreement import CONTRARY_RULES, is_covered
 from builder.checks.case import Case, open_case
 from builder.checks.group import Gathering, Member
-from builder.checks.run import check_group, check_record, settle
+from builder.checks.house import House, tool_version
+from builder.checks.run import check_group, check_record, check_settings, settle
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
 from builder.records.model import Record
@@ -292,8 +293,10 @@ def _open_settings(folder: Path) -> tuple[Settings, list[Finding]]:
     if not path.is_file():
         fault = Fault(at=(), message=f"the book has no {SETTINGS_FILE}", mend="start it with format: 1 and title: …")
         return plain, [reading_rule("key-missing").finding(fault, Place(_shown(path, folder), 1, 1, 2))]
-    settings, findings = read_settings(path, _shown(path, folder))
-    return settings or plain, list(findings)
+    settings, findings, places = read_settings(path, _shown(path, folder))
+    if settings is None:
+        return plain, list(findings)
+    return settings, [*findings, *check_settings(House(settings, tool_version()), places)]
 
 
 def _verdict(findings: tuple[Finding, ...], *, is_covered: bool) -> Verdict:

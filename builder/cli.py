@@ -18,10 +18,12 @@ import click
 
 from builder.authoring.new import write_new_record
 from builder.authoring.schema import schemas, write_schemas
+from builder.authoring.start import StartError, start_book
 from builder.authoring.whole_file import written_whole
 from builder.book import Book, open_book
 from builder.checks.case import Case
 from builder.checks.forecast_cautions import forecast_cautions
+from builder.checks.house import DISTRIBUTION
 from builder.checks.register import all_rules
 from builder.checks.report import render_json, render_rule, render_text, summary
 from builder.chemistry.structure import StructureError
@@ -35,6 +37,7 @@ from builder.mechanism.fit_report import RESIDUALS_TABLE, fit_report, fitted_tab
 from builder.mechanism.improve import improvements, is_as_wanted
 from builder.mechanism.rate_terms import FITTED_TABLE
 from builder.publish.build import NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
+from builder.publish.console import put_up_with_any_console
 from builder.publish.forecast_text import render_forecast
 from builder.publish.progress import counted, stepped, watched
 from builder.records.settings import SETTINGS_FILE
@@ -60,7 +63,7 @@ _JSON = click.option("--json", "as_json", is_flag=True, help="Print JSON for mac
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
-@click.version_option(package_name="condition-handbook")
+@click.version_option(package_name=DISTRIBUTION)
 def handbook() -> None:
     """Check, draw and publish a group's reaction conditions.
 
@@ -181,6 +184,35 @@ def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> Non
 
 
 @handbook.command()
+@click.argument("folder", metavar="DIR", type=click.Path(path_type=Path))
+@click.option("--title", default="Condition handbook", show_default=True, help="Of the book.")
+@click.option("--group", help="Whose book it is.")
+def start(folder: Path, title: str, group: str | None) -> None:
+    """Start a book of your own in DIR, a new folder or an empty one.
+
+    It gets settings, schemas, one sample entry to be deleted, mkdocs.yml, a CI workflow, settings for editors and git,
+    a pull-request template and a README: all plain files, yours from then on.
+
+    \b
+    Example:
+      handbook start our-book --title 'Conditions that worked' --group 'Building-block group'
+    """
+    try:
+        started = start_book(folder, title=title, group=group, date=_today())
+    except StartError as error:
+        raise click.UsageError(str(error)) from error
+    wheel = f"tools/{started.wheel.name}{', which is there' if started.wheel.data else ': put it there'}"
+    click.echo(
+        f"{folder}: a new book. Its sample entry, to be deleted, is entries/{started.sample}.yml. Next:\n"
+        f'  cd "{folder}"\n'
+        "  handbook check\n"
+        "  handbook build     then open site/index.html\n"
+        "People, house rules and licence stand in entries/handbook.yml; how to add an entry, in README.md.\n"
+        f"CI installs {wheel}."
+    )
+
+
+@handbook.command()
 @click.option("--print", "to_terminal", is_flag=True, help="Print the record schema instead of writing files.")
 @_BOOK
 def schema(to_terminal: bool, book: Path) -> None:
@@ -192,7 +224,7 @@ def schema(to_terminal: bool, book: Path) -> None:
       handbook schema --print
     """
     if to_terminal:
-        click.echo(json.dumps(schemas()["record-1.json"], ensure_ascii=False, indent=2))
+        click.echo(json.dumps(schemas()["record-1.json"], indent=2))
         return
     for path in write_schemas(book):
         click.echo(str(path))
@@ -213,7 +245,7 @@ def rule(rule_id: str | None, as_json: bool) -> None:
     if rule_id is None:
         listed = [{"id": each.id, "title": each.title, "level": str(each.level)} for each in rules.values()]
         lines = [f"{each['id']:<32} {each['level']:<8} {each['title']}" for each in listed]
-        click.echo(json.dumps({"rules": listed}, ensure_ascii=False, indent=2) if as_json else "\n".join(lines))
+        click.echo(json.dumps({"rules": listed}, indent=2) if as_json else "\n".join(lines))
         return
     if rule_id not in rules:
         raise click.UsageError(f'no rule is called "{rule_id}"{_near(rule_id, rules)}')
@@ -289,7 +321,7 @@ def predict(
     if changes is not None:
         plain["as_wanted"] = is_met
         plain["changes"] = [change_of(change) for change in changes]
-    click.echo(json.dumps(plain, ensure_ascii=False, indent=2, allow_nan=False))
+    click.echo(json.dumps(plain, indent=2, allow_nan=False))
 
 
 def _predict_batch(batch: Path, output: Path, processes: int) -> None:
@@ -386,6 +418,7 @@ def _near(word: str, known: Iterable[str]) -> str:
 
 def main(arguments: Sequence[str] | None = None) -> NoReturn:
     """Run the command; a crash is our fault and says so with exit code 3."""
+    put_up_with_any_console()
     try:
         handbook.main(args=arguments, prog_name="handbook", standalone_mode=True)
     except OSError as error:

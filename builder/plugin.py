@@ -31,7 +31,7 @@ from builder.publish.progress import watched
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
-
+_FAVICON_OF_MATERIAL = "assets/images/favicon.png"
 _UNUSED = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
 """What the theme brings and no page of ours loads."""
 
@@ -56,6 +56,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Read and check the book and write its pages, before MkDocs clears the site folder."""
         _refuse_a_talking_theme(config)
+        _add_our_theme(config)
         folder = Path(config.docs_dir)
         processes = 1 if self.is_live else usual_processes()
         load_ring_templates()
@@ -172,13 +173,26 @@ class _VirtualPage(MkDocsPage):
 
 def _refuse_a_talking_theme(config: MkDocsConfig) -> None:
     """Stop where the theme would ask other hosts for fonts or scripts: what a reader looks up is nobody's business."""
-    theme = config.theme
-    ours = any((Path(folder) / "assets" / "handbook.css").is_file() for folder in theme.dirs)
-    if theme.name != "material" or theme.get("font") is not False or not ours:
+    if config.theme.name != "material" or config.theme.get("font") is not False:
         raise PluginError(
-            "this theme would call other hosts; mkdocs.yml needs theme: with name: material, font: false and"
-            " custom_dir: the folder site_overrides of the handbook"
+            "this theme would call other hosts; mkdocs.yml needs theme: with name: material and font: false"
         )
+
+
+def _add_our_theme(config: MkDocsConfig) -> None:
+    """Lay our templates and assets over the theme, below a folder of the group's own."""
+    theme, ours = config.theme, _theme_folder()
+    theme.dirs.insert(0 if theme.custom_dir is None else 1, str(ours))
+    config.watch.append(str(ours))  # `serve` follows edits of it
+    if theme["favicon"] == _FAVICON_OF_MATERIAL:
+        theme["favicon"] = "assets/mark.svg"
+
+
+def _theme_folder() -> Path:
+    """Return the folder site_overrides: inside the package where a wheel was installed, in a checkout beside it."""
+    package = Path(__file__).parent
+    inside = package / "site_overrides"
+    return inside if inside.is_dir() else package.with_name(inside.name)
 
 
 def _configure(config: MkDocsConfig, book: Book[Portrait], pages: tuple[Page, ...]) -> None:

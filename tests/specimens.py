@@ -5,13 +5,17 @@ import re
 
 from builder.book import Examined, examine, judge
 from builder.checks.case import Case
+from builder.checks.house import House
+from builder.checks.run import check_settings
 from builder.finding import Finding
-from builder.records.reader import read_bytes
+from builder.records.reader import read_bytes, read_into
 from builder.records.settings import Person, Settings
 from builder.records.specimen import SPECIMEN_FILE, with_example
 
 TODAY = dt.date(2026, 12, 1)
 PLAIN = Settings(format=1, title="A book for tests")
+TOOL = "1.4.0"
+"""The version of the tool in examples of settings."""
 
 
 def examine_text(text: str | bytes, file: str = SPECIMEN_FILE, settings: Settings | None = None) -> Examined[Case]:
@@ -29,8 +33,10 @@ def play(example: str) -> tuple[Finding, ...]:
     """Return all findings of an example: YAML over the specimen, further records behind `---`.
 
     `# file: PATH` names the file of a record, `# retired: ID` an identifier that the settings retire, `# people: CODES`
-    the people they list.
+    the people they list. An example that begins with `# handbook.yml` is keys of the settings instead.
     """
+    if example.startswith("# handbook.yml"):
+        return _play_settings(example)
     retired = re.findall(r"^# retired: (\S+)$", example, re.MULTILINE)
     people = re.search(r"^# people: (.+)$", example, re.MULTILINE)
     settings = Settings(
@@ -46,3 +52,8 @@ def play(example: str) -> tuple[Finding, ...]:
         file = named[1] if named else SPECIMEN_FILE
         examined.append(examine_text(with_example(part), file, settings))
     return tuple(finding for found in judge(examined, settings).values() for finding in found)
+
+
+def _play_settings(example: str) -> tuple[Finding, ...]:
+    settings, findings, places = read_into(Settings, f"format: 1\ntitle: A book for tests\n{example}\n", "handbook.yml")
+    return (*findings, *check_settings(House(settings, TOOL), places)) if settings else findings

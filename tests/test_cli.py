@@ -2,6 +2,8 @@
 
 import json
 import shutil
+import subprocess
+import sys
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
@@ -150,6 +152,12 @@ def test_only_the_named_files_are_shown(run: Run, book: Path) -> None:
     assert ran.code == 0
 
 
+def test_nothing_but_export_needs_cairo() -> None:
+    program = "import sys, builder.cli, builder.plugin; print([m for m in sys.modules if m.startswith('cairo')])"
+    said = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True)
+    assert said.stdout == "[]\n"
+
+
 MISUSE = [
     ("check", "--book", "nowhere"),
     ("check", "--fail-on", "doom"),
@@ -186,7 +194,7 @@ def test_every_command_shows_an_example(run: Run, command: str) -> None:
 
 def test_help_of_the_group_names_the_commands(run: Run) -> None:
     out = run("--help").out
-    assert all(name in out for name in ("check", "build", "serve", "new", "schema", "rule"))
+    assert all(name in out for name in ("check", "build", "serve", "new", "start", "schema", "rule"))
     assert isinstance(cli.handbook, click.Group)
 
 
@@ -254,7 +262,7 @@ def built(tmp_path: Path) -> Path:
 
 def _config(tmp_path: Path, plugins: str = "[handbook]") -> Path:
     config = tmp_path / "mkdocs.yml"
-    theme = f"{{name: material, font: false, custom_dir: {Path(__file__).parents[1] / 'site_overrides'}}}"
+    theme = "{name: material, font: false}"
     config.write_text(f"site_name: T\ndocs_dir: entries\ntheme: {theme}\nplugins: {plugins}\n", "utf-8")
     return config
 

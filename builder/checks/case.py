@@ -127,7 +127,7 @@ def _components(record: Record, rxn: bytes | None) -> tuple[dict[str, Structure]
     if found != record.rxn_file.sha256:
         return {}, StructureError("the file is not the one whose SHA-256 is given", f"its SHA-256 is {found}")
     try:
-        reactants, products = parse_rxn(rxn.decode("utf-8", errors="replace"))
+        reactants, products = parse_rxn(rxn.decode("utf-8-sig", errors="replace"))
     except StructureError as error:
         return {}, error
     sides = {"reactant": reactants, "product": products}

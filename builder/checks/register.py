@@ -16,6 +16,7 @@ from builder.checks.excess import EXCESS_CHECKS
 from builder.checks.forecasts import FORECAST_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
+from builder.checks.house import HOUSE_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
@@ -104,8 +105,8 @@ ACCEPTANCE_RULES = (
 
 @cache
 def record_rules() -> tuple[Rule[object, object], ...]:
-    """Return the cards of every rule that speaks about records, in order of id."""
-    checks: tuple[Rule[Any, object], ...] = (*RECORD_CHECKS, *GROUP_CHECKS)
+    """Return the cards of every rule that speaks about records and settings, in order of id."""
+    checks: tuple[Rule[Any, object], ...] = (*RECORD_CHECKS, *GROUP_CHECKS, *HOUSE_CHECKS)
     cards = [*READING_RULES, *ACCEPTANCE_RULES, *(_card_of(check) for check in checks)]
     return tuple(sorted(cards, key=lambda rule: rule.id))
 

@@ -52,7 +52,7 @@ def _quoting(folder: Path) -> Callable[[str, int], str | None]:
 
 def render_json(findings: Iterable[Finding]) -> str:
     """Return `{"findings": [...]}`; the keys of a finding are stable."""
-    return json.dumps({"findings": [_plain(finding) for finding in findings]}, ensure_ascii=False, indent=2)
+    return json.dumps({"findings": [_plain(finding) for finding in findings]}, indent=2)
 
 
 def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
@@ -69,7 +69,7 @@ def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
         "silent_on": list(rule.silent_on),
     }
     if as_json:
-        return json.dumps(card, ensure_ascii=False, indent=2)
+        return json.dumps(card, indent=2)
     parts = [f"{rule.id} ({rule.level}): {rule.title}", "", rule.statement]
     parts += ["", rule.reason] if rule.reason else []
     parts += ["", rule.effect] if rule.effect else []

@@ -7,13 +7,14 @@ from typing import Any
 
 from builder.checks.case import Case
 from builder.checks.group import GROUP_CHECKS, Gathering
+from builder.checks.house import HOUSE_CHECKS, House
 from builder.checks.register import ACCEPTANCE_RULES, RECORD_CHECKS, record_rules
 from builder.finding import Finding, Level
 from builder.records.model import Acceptance
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Rule
 
-__all__ = ["Checked", "check_group", "check_record", "settle"]
+__all__ = ["Checked", "check_group", "check_record", "check_settings", "settle"]
 
 _ACCEPTANCE = {rule.id: rule for rule in ACCEPTANCE_RULES}
 
@@ -61,6 +62,16 @@ def _in_order_of_need() -> tuple[Rule[Case, Iterable[Fault]], ...]:
         ordered += ready
         pending = [check for check in pending if check not in ready]
     return tuple(ordered)
+
+
+def check_settings(house: House, places: Places) -> list[Finding]:
+    """Return the findings of the checks over the settings of a book."""
+    return [
+        _finding(check, fault, places)
+        for check in HOUSE_CHECKS
+        if check.look is not None
+        for fault in check.look(house)
+    ]
 
 
 def check_group(book: Gathering) -> dict[str, list[Finding]]:

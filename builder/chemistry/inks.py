@@ -4,7 +4,19 @@ import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-__all__ = ["PALETTE", "PAPER", "Ink", "element_paint", "paint", "palette_css", "resolve_colours", "standalone"]
+__all__ = [
+    "LEAST_CONTRAST",
+    "PALETTE",
+    "PAPER",
+    "Ink",
+    "contrast",
+    "element_paint",
+    "legible",
+    "paint",
+    "palette_css",
+    "resolve_colours",
+    "standalone",
+]
 
 
 @dataclass(frozen=True, slots=True)
@@ -15,6 +27,8 @@ class Ink:
     dark: str
 
 
+LEAST_CONTRAST = 4.5
+"""Of text on its paper (WCAG 2.2, 1.4.3)."""
 PAPER = Ink("#ffffff", "#1b1e24")
 PALETTE: Mapping[str, Ink] = {
     "ink": Ink("#1c2024", "#e6e8eb"),
@@ -32,8 +46,10 @@ PALETTE: Mapping[str, Ink] = {
     "arrives": Ink("#1b6a52", "#62cfa8"),
     "points": Ink("#5b4aa8", "#b3a6ff"),
 }
-"""Our own inks; each has the contrast that text needs, 4.5:1, on its paper (WCAG 2.2, 1.4.3)."""
+"""Our own inks; each has the contrast that text needs on its paper."""
 
+_MIDDLE_GREY = 0.18
+"""Luminance at which black and white have the same contrast, about."""
 _VARIABLE = re.compile(r"var\(--hb-([a-z]+), *#[0-9a-f]{6}\)")
 
 
@@ -75,6 +91,38 @@ def standalone(svg: str) -> str:
         f"{{:root{{background:{PAPER.dark};color:{ink.dark};{dark}}}}}</style>"
     )
     return svg.replace("<title", style + "<title", 1)
+
+
+def contrast(one: str, other: str) -> float:
+    """Return the contrast ratio of two colours as #rrggbb, from 1 to 21.
+
+    Source: WCAG 2.2, definitions of contrast ratio and of relative luminance.
+
+    >>> contrast("#ffffff", "#000000")
+    21.0
+    """
+    low, high = sorted((_luminance(one), _luminance(other)))
+    return (high + 0.05) / (low + 0.05)
+
+
+def legible(colour: str, paper: str) -> str:
+    """Return the colour, mixed with just as much black or white as makes it text on this paper; all as #rrggbb."""
+    end = 0 if _luminance(paper) > _MIDDLE_GREY else 255
+    mixed = (
+        "#" + "".join(f"{channel + (end - channel) * share // 100:02x}" for channel in _channels(colour))
+        for share in range(101)
+    )
+    return next(each for each in mixed if contrast(each, paper) >= LEAST_CONTRAST)
+
+
+def _channels(colour: str) -> tuple[int, int, int]:
+    red, green, blue = bytes.fromhex(colour.removeprefix("#"))
+    return red, green, blue
+
+
+def _luminance(colour: str) -> float:
+    linear = (c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4 for c in (n / 255 for n in _channels(colour)))
+    return sum(weight * channel for weight, channel in zip((0.2126, 0.7152, 0.0722), linear, strict=True))
 
 
 def _shade(ink: Ink, dark: bool) -> str:

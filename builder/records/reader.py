@@ -55,13 +55,12 @@ def read_bytes(data: bytes, shown_as: str) -> Reading:
     return _reading(_decode(data, shown_as), shown_as)
 
 
-def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Finding, ...]]:
+def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Finding, ...], Places]:
     """Read the settings of a book by the same rules as a record."""
     text = _text_of(path, shown_as)
     if isinstance(text, Finding):
-        return None, (text,)
-    settings, findings, _ = read_into(Settings, text, shown_as)
-    return settings, findings
+        return None, (text,), Places(shown_as)
+    return read_into(Settings, text, shown_as)
 
 
 def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:

@@ -7,7 +7,7 @@ from pydantic import Field
 from builder.records.fields import Count, EntryId, Flag, FormatNumber, Line, RelativePath, Shape
 from builder.records.model import Part
 
-__all__ = ["SETTINGS_FILE", "Person", "Settings"]
+__all__ = ["SETTINGS_FILE", "Accent", "Person", "Settings"]
 
 SETTINGS_FILE = "handbook.yml"
 
@@ -26,6 +26,20 @@ Orcid = Annotated[
         "write it like https://orcid.org/0000-0000-0000-0000",
     ),
 ]
+Colour = Annotated[
+    str,
+    Shape(r"^#[0-9a-f]{6}$", "is not a colour", "write it like '#1b6a52', in quotes: red, green, blue from 00 to ff"),
+]
+Version = Annotated[
+    str, Shape(r"^[0-9]+\.[0-9a-z.+]*[0-9a-z]$", "is not a version", "write it as `handbook --version` prints it")
+]
+
+
+class Accent(Part):
+    """The colour of links and marks, for light and for dark paper, as #rrggbb."""
+
+    light: Colour
+    dark: Colour
 
 
 class Person(Part):
@@ -43,6 +57,7 @@ class Settings(Part):
     site_address: full address under which the site is published, for citations.
     review_interval_months: after how long an entry without its own due date wants another look.
     retired: identifiers that must never come back.
+    engine: version of the handbook that the book was last checked with, so that an upgrade is a decision.
     """
 
     format: FormatNumber
@@ -53,10 +68,12 @@ class Settings(Part):
     site_address: Address | None = None
     edit_address: Address | None = None
     logo: RelativePath | None = None
+    accent: Accent | None = None
     people: tuple[Person, ...] = ()
     house_rules: tuple[Line, ...] = ()
     review_interval_months: Count = 24
     licence: Line = "LicenseRef-Internal"
+    engine: Version | None = None
     contact: Line | None = None
     retired: tuple[EntryId, ...] = ()
 

@@ -31,8 +31,7 @@ class Build:
 
 
 def write_book(folder: Path, texts: Iterable[tuple[str, str]]) -> Path:
-    """Write mkdocs.yml, overrides and records (path below entries, text) into `folder`; return the config's path."""
-    shutil.copytree(ROOT / "site_overrides", folder / "site_overrides")
+    """Write mkdocs.yml, settings and records (path below entries, text) into `folder`; return the config's path."""
     shutil.copy(ROOT / "mkdocs.yml", folder)
     (folder / "entries").mkdir()
     (folder / "entries" / "handbook.yml").write_text(SETTINGS, "utf-8")

@@ -53,8 +53,9 @@ def _book(
     return open_book(folder, today=TODAY)
 
 
-def test_structures_are_taken_from_the_file(tmp_path: Path) -> None:
-    book = _book(tmp_path)
+@pytest.mark.parametrize("rxn", [RXN, "\ufeff" + RXN.replace("\n", "\r\n")], ids=["plain", "written by Windows"])
+def test_structures_are_taken_from_the_file(tmp_path: Path, rxn: str) -> None:
+    book = _book(tmp_path, rxn=rxn)
     (entry,) = book.entries
     assert entry.kept.substrate.smiles == "CI"
     assert entry.kept.structures[("outcome", "products", 0)].smiles == "CO"

@@ -1,6 +1,7 @@
 """A book made by hand, so that pages are tested for what publishing does and not for what the checks find today."""
 
 import datetime as dt
+import re
 from html.parser import HTMLParser
 from pathlib import Path
 
@@ -113,3 +114,17 @@ class Markup(HTMLParser):
     def values(self, attribute: str) -> list[str]:
         """Return the values of an attribute wherever it stands."""
         return [attributes[attribute] for _, attributes in self.elements if attribute in attributes]
+
+
+_LOADS = {"script": "src", "img": "src", "link": "href", "iframe": "src", "source": "src"}
+
+
+def asked_of_other_hosts(site: Path) -> list[tuple[str, str]]:
+    """Return what the pages of a built site make a browser load from elsewhere: the page, and the address."""
+    return [
+        (path.relative_to(site).as_posix(), address)
+        for path in sorted(site.rglob("*.html"))
+        for tag, attributes in Markup(path.read_text("utf-8")).elements
+        if attributes.get("rel") not in {"canonical", "edit"}  # name an address, and are never fetched
+        and re.match(r"(https?:)?//", address := attributes.get(_LOADS.get(tag, ""), ""))
+    ]

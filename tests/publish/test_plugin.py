@@ -1,14 +1,13 @@
 """The site as MkDocs builds it: strict, safe in the parts we do not write, and the same bytes every time."""
 
-import re
 from pathlib import Path
 
 import pytest
 
 from builder.chemistry.inks import palette_css
 from builder.publish.frame import CONTENT_POLICY, content_policy
-from tests.browser.built import RECORDS, Build, build, good_texts, write_book
-from tests.publish.handmade import Markup
+from tests.browser.built import RECORDS, ROOT, Build, build, good_texts, write_book
+from tests.publish.handmade import Markup, asked_of_other_hosts
 
 EVIL = '"><imgx src=x onerror=alert(1)>'
 HOSTILE_FOLDER = 'a" onclick="alert(1)'
@@ -42,17 +41,27 @@ def test_nothing_of_a_record_is_html_in_the_frame_either(built: Build) -> None:
 
 
 def test_no_page_asks_another_host_for_anything(built: Build) -> None:
-    loads = {"script": "src", "img": "src", "link": "href", "iframe": "src", "source": "src"}
-    for path in built.site.rglob("*.html"):
-        for tag, attributes in Markup(path.read_text("utf-8")).elements:
-            if attributes.get("rel") in {"canonical", "edit"}:  # name an address, and are never fetched
-                continue
-            assert not re.match(r"(https?:)?//", attributes.get(loads.get(tag, ""), "")), (path, attributes)
+    assert asked_of_other_hosts(built.site) == []
 
 
 def test_records_reach_the_site_only_as_downloads(built: Build) -> None:
     yaml = sorted(path.relative_to(built.site).as_posix() for path in built.site.rglob("*.yml"))
     assert yaml == [f"e/{name}/{name}.yml" for name in RECORDS]
+
+
+def test_a_folder_of_the_groups_own_goes_before_our_theme(tmp_path: Path) -> None:
+    config = write_book(tmp_path, good_texts())
+    text = config.read_text("utf-8")
+    config.write_text(text.replace("  name: material\n", "  name: material\n  custom_dir: own\n", 1), "utf-8")
+    own = tmp_path / "own" / "assets" / "mark.svg"
+    own.parent.mkdir(parents=True)
+    own.write_text("<svg/>", "utf-8")
+    built = build(config)
+    assert built.code == 0, built.out
+    ours = ROOT / "site_overrides" / "assets" / "handbook.css"
+    assert (built.site / "assets" / "mark.svg").read_text("utf-8") == "<svg/>"
+    assert (built.site / "assets" / "handbook.css").read_bytes() == ours.read_bytes()
+    assert 'rel="icon" href="assets/mark.svg"' in (built.site / "index.html").read_text("utf-8")
 
 
 def test_an_error_stops_the_build_and_leaves_the_last_site(tmp_path: Path) -> None:

@@ -406,6 +406,17 @@ def test_tolerates(change: Callable[[str], str]) -> None:
     assert reading.record == _read(specimen_text()).record
 
 
+@pytest.mark.parametrize("change", TOLERATED.values(), ids=TOLERATED.keys())
+def test_tolerates_it_in_settings_too(tmp_path: Path, change: Callable[[str], str]) -> None:
+    path = tmp_path / "handbook.yml"
+    text = "format: 1\ntitle: Bücher\nhouse_rules:\n  - One rule.\n"
+    path.write_bytes(change(text).encode())
+    settings, findings, _ = read_settings(path, path.name)
+    assert findings == ()
+    assert settings is not None
+    assert (settings.title, settings.house_rules) == ("Bücher", ("One rule.",))
+
+
 def test_every_value_has_its_place() -> None:
     text = specimen_text()
     reading = _read(text)
