@@ -75,7 +75,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
             is_ours = file.src_dir == config.docs_dir and file.src_uri != self.book.settings.logo
             if (is_ours and not file.is_documentation_page()) or file.src_uri.startswith(_UNUSED):
                 files.remove(file)
-        assets = [inks_style()]
+        assets = [inks_style(self.book.settings.accent)]
         for page in self.pages:
             if page.file not in files.src_uris:  # a group may write a page of its own in place of ours
                 files.append(_VirtualPage(page, config).file)
@@ -90,16 +90,16 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         context: TemplateContext,
         *,
         page: MkDocsPage,
-        config: MkDocsConfig,
+        config: MkDocsConfig,  # noqa: ARG002 - MkDocs calls it so
         nav: Navigation,  # noqa: ARG002
     ) -> TemplateContext:
-        """Write a page of ours just before the frame is put around it."""
+        """Write a page's HTML just before the frame is put around it."""
         if isinstance(page, _VirtualPage):
             page.open()
         return context
 
     def on_post_page(self, output: str, *, page: MkDocsPage, config: MkDocsConfig) -> str:  # noqa: ARG002
-        """Let go of what the page holds."""
+        """Let go of it again."""
         if isinstance(page, _VirtualPage):
             page.close()
         return output

@@ -7,6 +7,7 @@ from markupsafe import Markup
 
 from builder.chemistry.inks import palette_css
 from builder.publish.page import Asset
+from builder.records.settings import Accent
 
 __all__ = ["CONTENT_POLICY", "INKS_STYLE", "Furniture", "MenuItem", "content_policy", "inks_style"]
 
@@ -34,12 +35,13 @@ def content_policy(*, live: bool = False) -> str:
 
 
 INKS_STYLE = "assets/inks.css"
-"""Address of the style sheet with the inks of the drawings."""
+"""Address of the style sheet with the inks of the drawings and the accent of the book."""
 
 
-def inks_style() -> Asset:
-    """Return the style sheet from which drawings inside pages take their colours."""
-    return Asset(INKS_STYLE, f":root{{{palette_css()}}}\n".encode())
+def inks_style(accent: Accent | None) -> Asset:
+    """Return the style sheet from which drawings inside pages take their colours, and links the accent of the book."""
+    own = f"--hb-accent:light-dark({accent.light},{accent.dark});" if accent is not None else ""
+    return Asset(INKS_STYLE, f":root{{{palette_css()}{own}}}\n".encode())
 
 
 @dataclass(frozen=True, slots=True)
