@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 from enum import StrEnum
+from functools import partial
 from multiprocessing import get_start_method
 from pathlib import Path
 from typing import Any, Generic, TypeVar, overload
@@ -24,11 +25,12 @@ from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.rule import Fault
 
-__all__ = ["Book", "Entry", "Examined", "Verdict", "examine", "judge", "open_book", "record_files", "whole"]
+__all__ = ["Book", "Entry", "Examined", "Memory", "Verdict", "examine", "judge", "open_book", "record_files", "whole"]
 
 Kept = TypeVar("Kept")
 Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
 """Passes on what is done, given how much there will be."""
+Memory = dict[Path, tuple[object, "Examined[Any]"]]
 
 SHARE = 64
 """Records that one process reads; fewer are not worth starting one."""
@@ -135,7 +137,7 @@ class _Desk(Generic[Kept]):
 
 
 @overload
-def open_book(folder: Path, *, today: dt.date, progress: Progress = ..., processes: int = ...) -> Book[Case]: ...
+def open_book(folder: Path, *, today: dt.date, progress: Progress = ...) -> Book[Case]: ...
 @overload
 def open_book(
     folder: Path,
@@ -144,6 +146,7 @@ def open_book(
     keep: Callable[[Case], Kept],
     progress: Progress = ...,
     processes: int = ...,
+    memory: Memory | None = ...,
 ) -> Book[Kept]: ...
 def open_book(
     folder: Path,
@@ -152,6 +155,7 @@ def open_book(
     keep: Callable[[Case], Any] = whole,
     progress: Progress = _unwatched,
     processes: int = 1,
+    memory: Memory | None = None,
 ) -> Book[Any]:
     """Read, check and judge every record below `folder`.
 
@@ -159,13 +163,15 @@ def open_book(
     keep: what to keep of each case, for whoever needs more of an entry than its record and findings.
     progress: wraps the files as they are done, for a progress bar.
     processes: over how many the records are spread; what `keep` returns must then be plain data.
+    memory: what came of each file the last time; a file that is as it was is not read again. One process does it then.
     Nothing a file holds raises; OSError passes for a folder that cannot be read.
     """
     folder = folder.resolve()
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
     desk = _Desk(folder, settings, today, keep)
-    examined = list(progress(_in_order(desk, files, processes), len(files)))
+    done = _in_order(desk, files, processes) if memory is None else map(partial(_recall, desk, memory), files)
+    examined = list(progress(done, len(files)))
     settled = judge(examined, settings)
     entries = [
         Entry(
@@ -190,6 +196,17 @@ def open_book(
         findings=tuple(sorted(everything, key=lambda finding: finding.sort_key)),
         files=files,
     )
+
+
+def _recall(desk: _Desk[Kept], memory: Memory, path: Path) -> Examined[Kept]:
+    """Return what becomes of a file, from memory where neither it nor what it is examined by has changed."""
+    key = (desk, path.read_bytes())
+    if path not in memory or memory[path][0] != key:
+        memory[path] = (key, desk.examine(path))
+        record = memory[path][1].reading.record
+        if record is not None and record.rxn_file is not None:  # another file has a say as well
+            return memory.pop(path)[1]
+    return memory[path][1]
 
 
 def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:

@@ -17,7 +17,7 @@ from mkdocs.structure.pages import Page as MkDocsPage
 from mkdocs.structure.toc import AnchorLink, TableOfContents
 from mkdocs.utils.templates import TemplateContext
 
-from builder.book import Book, open_book
+from builder.book import Book, Memory, open_book
 from builder.checks.report import render_text
 from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Level
@@ -49,6 +49,11 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
     pages: tuple[Page, ...] = ()
     is_live = False
 
+    def __init__(self) -> None:
+        """Start with nothing remembered of an earlier build."""
+        super().__init__()
+        self.memory: Memory = {}
+
     def on_startup(self, *, command: Literal["build", "gh-deploy", "serve"], dirty: bool) -> None:  # noqa: ARG002
         """Note whether pages are built to be published, or served to their author; keeps the plugin between edits."""
         self.is_live = command == "serve"
@@ -58,9 +63,15 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         _refuse_a_talking_theme(config)
         _add_our_theme(config)
         folder = Path(config.docs_dir)
-        processes = 1 if self.is_live else usual_processes()
         load_ring_templates()
-        self.book = open_book(folder, today=build_date(), keep=portrait_of, progress=watched, processes=processes)
+        self.book = open_book(
+            folder,
+            today=build_date(),
+            keep=portrait_of,
+            progress=watched,
+            processes=usual_processes(),
+            memory=self.memory if self.is_live else None,
+        )
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
         write_report(BuildReport(len(self.book.entries), len(failing)))
