@@ -397,7 +397,11 @@ def _links(record: Record, around: Surroundings) -> tuple[Link, ...]:
     """Return the links to other entries, each once: those the record names, then those that name it."""
     named = [(entry_id, _OUTWARD[path[0]]) for path, entry_id in record.references if path[0] in _OUTWARD]
     forward = [_link(entry_id, relation, around) for entry_id, relation in named]
-    return tuple(dict.fromkeys([*forward, *around.links.get(record.entry, ())]))
+    found: dict[str, Link] = {}
+    for link in (*forward, *around.links.get(record.entry, ())):
+        if link.id not in found or found[link.id].relation == "related":  # anything else says more
+            found[link.id] = link
+    return tuple(found.values())
 
 
 def _link(entry_id: str, relation: str, around: Surroundings) -> Link:

@@ -67,6 +67,20 @@ for (const button of document.querySelectorAll("button[data-copy]")) {
   });
 }
 
+// --- paper that is printed on -----------------------------------------------------------------------------------
+
+// A printed page shows what to do about each caution; what was closed is closed again afterwards.
+const closed = [];
+addEventListener("beforeprint", () => {
+  for (const details of document.querySelectorAll(".hb-cautions details:not([open])")) {
+    details.open = true;
+    closed.push(details);
+  }
+});
+addEventListener("afterprint", () => {
+  for (const details of closed.splice(0)) details.open = false;
+});
+
 // --- addresses ------------------------------------------------------------------------------------------------
 
 // Opened from a folder instead of a server, a link to "e/NS…/" finds no page: name the file in it.
