@@ -314,7 +314,18 @@ class Structure:
     @cached_property
     def _stereo(self) -> tuple[Chem.StereoInfo, ...]:
         found = Chem.FindPotentialStereo(Chem.Mol(self.mol), cleanIt=False, flagPossible=True)
-        return tuple(s for s in found if not self._is_held_by_a_cage(s))
+        return tuple(s for s in found if not (self._is_held_by_a_cage(s) or self._inverts(s)))
+
+    def _inverts(self, info: Chem.StereoInfo) -> bool:
+        """Answer whether a centre is an amine nitrogen that turns inside out, and is drawn without configuration.
+
+        RDKit takes the nitrogen of an aziridine for a possible stereocentre.
+        """
+        if info.type != Chem.StereoType.Atom_Tetrahedral or info.specified != Chem.StereoSpecified.Unspecified:
+            return False
+        atom = self.mol.GetAtomWithIdx(info.centeredOn)
+        is_amine = atom.GetAtomicNum() == _NITROGEN and atom.GetFormalCharge() == 0
+        return is_amine and self.mol.GetRingInfo().NumAtomRings(info.centeredOn) == 1
 
     def _is_held_by_a_cage(self, info: Chem.StereoInfo) -> bool:
         """Answer whether a centre has like neighbours that rings tie together, so that it has no second form.
@@ -345,6 +356,7 @@ def _ring_bonds(mol: Chem.Mol, atom: int) -> int:
 
 
 _MASS_OF_H = Chem.GetPeriodicTable().GetAtomicWeight(1)
+_NITROGEN = 7
 _TETRAHEDRAL = (Chem.ChiralType.CHI_TETRAHEDRAL_CW, Chem.ChiralType.CHI_TETRAHEDRAL_CCW)
 
 

@@ -268,6 +268,7 @@ NUCLEOPHILES = [
     ("CCNCC", [("amine, secondary", "N", 1)], 0),
     ("CCN(CC)CC", [("amine, tertiary", "N", 1)], 0),
     ("c1ccncc1", [("pyridine", "N", 1)], 0),
+    ("O=c1cccc[nH]1", [("pyridone", "N", 1), ("pyridone", "O", 2)], 0),
     ("NC(N)=S", [("thioamide", "S", 1)], 0),
     ("CSC", [("sulfide", "S", 1)], 0),
     ("CP(C)C", [("phosphine", "P", 1)], 0),

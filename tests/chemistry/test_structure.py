@@ -187,6 +187,8 @@ def test_mirror_images_mirror_twice() -> None:
         ("BrC12CC3CC(CC(C3)C1)C2", 0, 0),
         ("CC1(C)C2CCC1(Cl)CC2", 0, 0),
         ("CCBr", 0, 0),
+        ("CC1CN1S(C)(=O)=O", 0, 1),  # the nitrogen of an aziridine turns inside out,
+        ("C1CN2CC12", 0, 2),  # that of a bicycle cannot
     ],
 )
 def test_stereocentres_are_counted(smiles: str, specified: int, unspecified: int) -> None:
