@@ -2,6 +2,7 @@
 
 from html import escape
 from pathlib import Path
+from typing import Any
 from urllib.parse import quote
 
 from mkdocs.config.base import Config
@@ -20,6 +21,7 @@ from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.progress import watched
+from builder.publish.search_index import Listed, listed_of, search_asset
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
@@ -63,6 +65,13 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
                     files.append(File.generated(config, asset.path, content=content, inclusion=included))
         return files
 
+    def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:
+        """Add what the search looks in: only now do the pages that a group wrote have their titles."""
+        listed = filter(None, map(_listed, files.documentation_pages()))
+        asset = search_asset(self.book.entries, listed)
+        files.append(File.generated(config, asset.path, content=asset.data, inclusion=InclusionLevel.INCLUDED))
+        return env
+
 
 class _VirtualPage(MkDocsPage):
     """A page whose HTML is ready: it never passes through Markdown. Theme templates do not escape, so we do here."""
@@ -73,10 +82,10 @@ class _VirtualPage(MkDocsPage):
         if page.source is not None:
             file.edit_uri = quote(page.source)
         super().__init__(escape(page.menu[-1] if page.menu else page.title), file, config)
-        self._page = page
+        self.page = page
 
     def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so
-        page = self._page
+        page = self.page
         self.markdown = ""
         self.meta = {"description": escape(page.description), "hide": ["navigation"]}
         if page.path:
@@ -86,12 +95,20 @@ class _VirtualPage(MkDocsPage):
         if page.template is not None:
             self.meta["template"] = page.template
         if not page.indexed:
-            self.meta |= {"robots": "noindex", "search": {"exclude": True}}
+            self.meta["robots"] = "noindex"
 
     def render(self, config: MkDocsConfig, files: Files) -> None:  # noqa: ARG002 - MkDocs calls it so
-        self.content = self._page.body
-        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self._page.headings])
-        self.present_anchor_ids = set(self._page.anchors)
+        self.content = self.page.body
+        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self.page.headings])
+        self.present_anchor_ids = set(self.page.anchors)
+
+
+def _listed(file: File) -> Listed | None:
+    """Return a page as the search offers it; those of a group by their titles."""
+    page = file.page
+    if isinstance(page, _VirtualPage):
+        return listed_of(page.page)
+    return Listed(page.url, str(page.title), str(page.meta.get("description", ""))) if page else None
 
 
 def _refuse_a_talking_theme(config: MkDocsConfig) -> None:

@@ -26,7 +26,7 @@ from builder.records.vocabulary import Status
 from builder.rule import Path, Rule
 from builder.sources import source_text
 
-__all__ = ["EntryView", "Link", "Surroundings", "next_review", "surroundings_of", "view_entry"]
+__all__ = ["EntryView", "Link", "Surroundings", "next_review", "role_of", "surroundings_of", "view_entry"]
 
 DIGEST_SHOWN = 12
 """Hexadecimal digits of a digest that citations and printed pages carry."""
@@ -318,7 +318,7 @@ def _compounds(entry: Entry) -> tuple[CompoundView, ...]:
             key,
             CompoundView(
                 name=compound.name,
-                role=_role_of(path, compound, entry.record),
+                role=role_of(path, compound, entry.record),
                 formula=formula_parts(structure.formula),
                 molar_mass=molar_mass_text(structure.mass),
                 cas=compound.cas or "",
@@ -329,7 +329,8 @@ def _compounds(entry: Entry) -> tuple[CompoundView, ...]:
     return tuple(seen.values())
 
 
-def _role_of(path: Path, compound: Compound, record: Record) -> str:
+def role_of(path: Path, compound: Compound, record: Record) -> str:
+    """Return in words what the compound at `path` is in a record: "product A", "formed in stage 1", "solvent"."""
     match path:
         case ("outcome", "products", int(i)):
             return f"product {record.outcome.products[i].label}"
