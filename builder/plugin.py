@@ -21,7 +21,7 @@ from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.progress import watched
-from builder.publish.search_index import Listed, listed_of, search_asset
+from builder.publish.search_index import Listed, listed_of, search_assets
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
@@ -68,8 +68,8 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
     def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:
         """Add what the search looks in: only now do the pages that a group wrote have their titles."""
         listed = filter(None, map(_listed, files.documentation_pages()))
-        asset = search_asset(self.book.entries, listed)
-        files.append(File.generated(config, asset.path, content=asset.data, inclusion=InclusionLevel.INCLUDED))
+        for asset in search_assets(self.book.entries, listed):
+            files.append(File.generated(config, asset.path, content=asset.data, inclusion=InclusionLevel.INCLUDED))
         return env
 
 

@@ -1,4 +1,4 @@
-"""What the search box looks in, as one script of plain data: compounds under all their names, entries, other pages.
+"""What the search box looks in, as scripts of plain data: compounds under all their names, entries, other pages.
 
 A compound stands there once, and entries refer to it by the role it plays in them. Names stay as they were typed:
 `site_overrides/assets/search.js` alone knows which spellings are the same. Columns in place of objects keep the file
@@ -24,12 +24,7 @@ from builder.records.model import Compound, Record
 from builder.records.vocabulary import ProductUse, Status
 from builder.rule import Path
 
-__all__ = ["SEARCH_DATA", "Listed", "as_script", "listed_of", "search_asset", "search_data"]
-
-SEARCH_DATA = "assets/search-data.js"
-"""Where the script lies, below the site's root."""
-GLOBAL = "handbookSearch"
-"""The name under which a page finds the data."""
+__all__ = ["Listed", "as_script", "listed_of", "search_assets", "search_data", "search_notes"]
 
 _BY_COMPOUND = {"solvent"}
 """Facets left to the compounds, which know every synonym."""
@@ -86,17 +81,23 @@ def listed_of(page: Page) -> Listed | None:
     return Listed(page.path, page.title, page.description, rest.rstrip("/") if section == "rules" else "")
 
 
-def search_asset(entries: Sequence[Entry], listed: Iterable[Listed]) -> Asset:
-    """Return the script that holds what `search_data` returns; the same book gives the same bytes."""
-    return Asset(SEARCH_DATA, as_script(search_data(entries, listed)).encode())
+def search_assets(entries: Sequence[Entry], listed: Iterable[Listed]) -> tuple[Asset, Asset]:
+    """Return the script the search needs, and the one with long texts, which may come later.
+
+    The same book gives the same bytes.
+    """
+    return (
+        Asset("assets/search-data.js", as_script("handbookSearch", search_data(entries, listed)).encode()),
+        Asset("assets/search-notes.js", as_script("handbookNotes", search_notes(entries)).encode()),
+    )
 
 
-def as_script(data: object) -> str:
+def as_script(name: str, data: object) -> str:
     """Return a classic script that puts plain data into a global variable; pages opened from a folder may load it."""
     text = json.dumps(data, ensure_ascii=False, separators=(",", ":"))
     for character, escaped in _UNSAFE.items():
         text = text.replace(character, escaped)
-    return f"globalThis.{GLOBAL}={text};\n"
+    return f"globalThis.{name}={text};\n"
 
 
 def search_data(entries: Sequence[Entry], listed: Iterable[Listed]) -> dict[str, object]:
@@ -122,7 +123,6 @@ def search_data(entries: Sequence[Entry], listed: Iterable[Listed]) -> dict[str,
             "conditions": [summary.conditions for summary in shown],
             "outcome": [summary.outcome for summary in shown],
             "take_away": [summary.take_away for summary in shown],
-            "notes": [_notes(entry.record) for entry in entries],
             "verdict": [verdicts.place(summary.verdict) for summary in shown],
             "status": [statuses.place(summary.status) for summary in shown],
             "facets": [_facets(entry, facets) for entry in entries],
@@ -236,8 +236,12 @@ def _abbreviations() -> Mapping[str, str]:
     return {group.name: group.abbreviation for group in load_leaving_groups()}
 
 
+def search_notes(entries: Sequence[Entry]) -> list[str]:
+    """Return, for each entry, what else its record says in words: procedure, work-up, evidence, cause of failure."""
+    return [_notes(entry.record) for entry in entries]
+
+
 def _notes(record: Record) -> str:
-    """Return what else a record says in words, for a search that nothing shorter answers."""
     outcome = record.outcome
     said = (
         *(text for stage in record.stages for text in (stage.end_point, stage.note, stage.atmosphere)),

@@ -29,10 +29,16 @@
   }
 
   function load() {
+    if (finder) return;
     loading ??= Promise.all(form.dataset.scripts.split(" ").map(loaded)).then(() => {
       finder = handbookFinder(handbookSearch);
       show();
+      return loaded(form.dataset.notes);
+    }).then(() => {
+      finder.addNotes(handbookNotes);
+      if (active < 0) show();
     }).catch(() => {
+      if (finder) return;
       loading = null;
       count.textContent = "The index of the book could not be read; try again, or take the lists.";
     });

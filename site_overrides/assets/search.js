@@ -7,6 +7,7 @@
 "use strict";
 globalThis.handbookFinder = (() => {
   const ENTRY = 9, KEY = 8, NAME = 7, LOOSE = 6, FILED = 5, START = 4, INSIDE = 3, TITLE = 2, TEXT = 1;
+  const KEYS = ["formulas", "cas", "inchikey", "smiles", "variants"];
   const MOST_WORDS = 10;
   /** Weight of a query that was found as it stands; more than its words can weigh apart. */
   const WHOLE = 1000;
@@ -90,15 +91,15 @@ globalThis.handbookFinder = (() => {
       this.ends.push(text.length);
     }
 
-    /** Call `visit` once with the number of each line that holds `needle`, anywhere or as a word or its beginning. */
-    each(needle, visit, { opens = false, closes = false } = {}) {
+    /** Call `visit` with the number of each line that holds `needle`, and whether a word begins with it there. */
+    each(needle, visit) {
       const { text, ends } = this;
       let line = 0;
       for (let at = text.indexOf(needle); at >= 0;) {
-        const isApart = !(opens && OF_WORD.test(text[at - 1])) && !(closes && OF_WORD.test(text[at + needle.length]));
+        const opens = !OF_WORD.test(text[at - 1]);
         while (ends[line] <= at) line++;
-        if (isApart) visit(line);
-        at = text.indexOf(needle, isApart ? ends[line] : at + 1);
+        visit(line, opens);
+        at = text.indexOf(needle, opens ? ends[line] : at + 1);
       }
     }
   }
@@ -109,7 +110,8 @@ globalThis.handbookFinder = (() => {
   /** Names, several to a cell and parted by tabs: folded, and their letters alone for exact look-up. */
   function spelled(column, how) {
     const folded = fold(`\t${column.join("\t\n\t")}\t`);
-    return { how, column, folded: new Lines(folded), bare: new Lines(bare(folded)) };
+    const letters = bare(folded);
+    return { how, column, folded: new Lines(folded), bare: new Lines(letters), known: new Set(letters.split("\t")) };
   }
 
   /** Lists, one for each entry -> by value, the entries it occurs in; what comes with it stands after each entry. */
@@ -135,7 +137,7 @@ globalThis.handbookFinder = (() => {
     const { entries, compounds, pages, roles, facets } = data;
     const count = entries.id.length;
     const names = [spelled(compounds.names, ""), spelled(compounds.synonyms, "synonym")];
-    const keys = Object.fromEntries(Object.entries(compounds).map(([field, column]) => [field, typed(column)]));
+    const keys = Object.fromEntries(KEYS.map((field) => [field, typed(compounds[field])]));
     const takenPart = occurrences(entries.participants, compounds.names.length, 2);
     const filed = occurrences(entries.facets, facets.length, 1);
     const facetWords = facets.map(([, value]) => fold(value));
@@ -145,7 +147,6 @@ globalThis.handbookFinder = (() => {
       [TEXT, "take-away", said([...entries.take_away, ...pages.text])],
       [TEXT, "conditions", said(entries.conditions)],
       [TEXT, "outcome", said(entries.outcome)],
-      [TEXT, "notes", said(entries.notes)],
     ];
     const rank = ranks(entries.date, count + pages.path.length);
     const holds = entries.status.map((status) => !data.retired.includes(data.statuses[status]));
@@ -196,8 +197,8 @@ globalThis.handbookFinder = (() => {
         }
       }
       const exact = key(folded), joined = solid(folded), loose = key(flat(folded));
-      for (const { how, column, bare: lines } of letters ? names : []) {
-        lines.each(`\t${letters}\t`, (compound) => {
+      for (const { how, column, bare: lines, known } of letters ? names : []) {
+        if (known.has(letters)) lines.each(`\t${letters}\t`, (compound) => {
           for (const name of fold(column[compound]).split("\t")) {
             if (key(name) === exact || solid(name) === joined) add(compound, NAME, how);
             else if (key(flat(name)) === loose) add(compound, LOOSE, "stereo left aside");
@@ -216,30 +217,36 @@ globalThis.handbookFinder = (() => {
     /** Entries and pages by every reading of the text as one thing; only those that are `within`, where that is given. */
     function unit(text, within) {
       const found = new Map();
-      const add = (doc, tier, weight, why) => {
-        if (within && !within.has(doc)) return;
+      const isBest = (doc, tier, weight) => {
+        if (within && !within.has(doc)) return false;
         const known = found.get(doc);
-        if (!known || known.tier < tier || (known.tier === tier && known.weight < weight)) found.set(doc, { tier, weight, why });
+        return !known || known.tier < tier || (known.tier === tier && known.weight < weight);
       };
       const takesPart = (compound, tier, how, bonus = 0) => {
         const list = takenPart[compound];
         for (let i = 0; i < list.length; i += 2) {
-          add(list[i], tier, roles[list[i + 1]][1] + bonus, { role: list[i + 1], how, compound });
+          const [entry, role] = [list[i], list[i + 1]], weight = roles[role][1] + bonus;
+          if (isBest(entry, tier, weight)) found.set(entry, { tier, weight, why: { role, how, compound } });
         }
       };
-      const isFiled = (facet, tier) => filed[facet].forEach((entry) => add(entry, tier, 0, { facet }));
+      const holdsWord = (docs, tier, why) => {
+        for (const doc of docs) if (isBest(doc, tier, 0)) found.set(doc, { tier, weight: 0, why });
+      };
       for (const [compound, { tier, how }] of named(text)) takesPart(compound, tier, how);
-      for (const facet of facetsNamed(text)) isFiled(facet, FILED);
-      const folded = fold(text), isShort = folded.length < 3;
+      for (const facet of facetsNamed(text)) holdsWord(filed[facet], FILED, { facet });
+      const folded = fold(text);
       if (folded.length < 2) return found;
       for (const { how, folded: lines } of names) {
         const part = how ? "part of a synonym" : "part of the name";
-        lines.each(folded, (compound) => takesPart(compound, START, part, how ? 0 : 0.5), { opens: true });
-        if (!isShort) lines.each(folded, (compound) => takesPart(compound, INSIDE, part));
+        lines.each(folded, (compound, opens) => {
+          if (opens) takesPart(compound, START, part, how ? 0 : 0.5);
+          else if (folded.length > 2) takesPart(compound, INSIDE, part);
+        });
       }
-      facetLines.each(folded, (facet) => isFiled(facet, INSIDE), { opens: true });
+      facetLines.each(folded, (facet, opens) => { if (opens) holdsWord(filed[facet], INSIDE, { facet }); });
       for (const [tier, where, lines] of texts) {
-        lines.each(folded, (doc) => add(doc, tier, 0, { where }), { opens: true, closes: isShort });
+        const why = { where };
+        lines.each(folded, (doc, opens) => { if (opens) holdsWord([doc], tier, why); });
       }
       return found;
     }
@@ -291,9 +298,10 @@ globalThis.handbookFinder = (() => {
     function mended(text) {
       vocabulary ??= [...new Set([...names.map((each) => each.folded.text), facetLines.text].flatMap(wordsOf))]
         .filter((word) => word.length > 3);
+      const everything = [...names.map((each) => each.folded), facetLines, ...texts.map(([, , lines]) => lines)];
       const words = wordsOf(fold(text));
       const better = words.map((word) => {
-        if (word.length < 4 || unit(word).size) return word;
+        if (word.length < 4 || everything.some((lines) => lines.text.includes(word))) return word;
         let least = word.length < 8 ? 1 : 2, nearest = "";
         for (const other of vocabulary) {
           const steps = distance(word, other, least);
@@ -327,7 +335,17 @@ globalThis.handbookFinder = (() => {
     const merit = (doc, { tier, weight }) =>
       (((tier * 2 + (doc < count)) * 2 + (holds[doc] ?? true)) * 4096 + 2 * weight) * 2 ** 20 + rank[doc];
 
+    /** The `most` that come first; sorting all of a thousand would take longer than finding them. */
+    function best(found, most) {
+      const merits = Float64Array.from(found, ([doc, hit]) => merit(doc, hit)).sort();
+      const least = merits[Math.max(0, merits.length - most)];
+      return [...found].filter(([doc, hit]) => merit(doc, hit) >= least).sort((one, other) => merit(...other) - merit(...one));
+    }
+
     return {
+      /** Look in longer texts too, one for each entry; they come later, because the rest answers without them. */
+      addNotes(notes) { texts.push([TEXT, "notes", said(notes)]); },
+
       /** Return how much a query finds, the first `most` of it, and what was looked up instead where it had a slip. */
       find(query, most) {
         const text = query.trim();
@@ -336,9 +354,7 @@ globalThis.handbookFinder = (() => {
           instead = mended(text);
           if (instead) found = lookUp(instead);
         }
-        const best = Array.from(found, ([doc, hit]) => ({ doc, hit, merit: merit(doc, hit) }));
-        best.sort((one, other) => other.merit - one.merit);
-        return { total: found.size, instead, hits: best.slice(0, most).map(({ doc, hit }) => shown(doc, hit)) };
+        return { total: found.size, instead, hits: best(found, most).map(([doc, hit]) => shown(doc, hit)) };
       },
     };
   };

@@ -127,7 +127,7 @@ def test_each_query_lists_first_what_it_means(tab: "sync_api.Page", site: Path, 
         tab.goto(address)
         tab.keyboard.press("/")
         tab.keyboard.type("a")
-        tab.wait_for_function("globalThis.handbookFinder && document.querySelector('.hb-search__count').textContent")
+        _wait_for_count(tab, "found")
         start = time.monotonic()
         for row in rows:
             acceptable = _acceptable(row["first"], demo)
@@ -185,7 +185,7 @@ def _handmade() -> dict[str, Any]:
             "verdict": [0] * len(ENTRIES),
             "facets": [[0]] * len(ENTRIES),
             "take_away": [EVIL, *blank[1:]],
-            **dict.fromkeys(("notebook", "conditions", "outcome", "notes"), blank),
+            **dict.fromkeys(("notebook", "conditions", "outcome"), blank),
         },
         "compounds": {"names": compounds}
         | {
@@ -211,7 +211,9 @@ def alone(tmp_path_factory: pytest.TempPathFactory) -> Path:
     (folder / "assets").mkdir()
     for path in (ROOT / "site_overrides" / "assets").glob("*.*"):
         (folder / "assets" / path.name).write_bytes(path.read_bytes())
-    (folder / "assets" / "search-data.js").write_text(as_script(_handmade()), "utf-8")
+    (folder / "assets" / "search-data.js").write_text(as_script("handbookSearch", _handmade()), "utf-8")
+    notes = ["stirred with Celite", *[""] * (len(ENTRIES) - 1)]
+    (folder / "assets" / "search-notes.js").write_text(as_script("handbookNotes", notes), "utf-8")
     (folder / "e" / "NS0000003").mkdir(parents=True)
     (folder / "e" / "NS0000003" / "index.html").write_text("<title>Newer menthol</title>", "utf-8")
     for scheme in ("default", "slate"):
@@ -234,10 +236,14 @@ def opened(tab: "sync_api.Page", alone: Path) -> Iterator["sync_api.Page"]:
     assert all(url.startswith(alone.as_uri()) for url in asked)
 
 
+def _wait_for_count(tab: "sync_api.Page", words: str) -> None:
+    sync_api.expect(tab.locator(".hb-search__count")).to_have_text(re.compile(words))
+
+
 def _search(tab: "sync_api.Page", query: str) -> None:
     tab.locator("#hb-query").focus()
     tab.keyboard.type(query)
-    tab.wait_for_function("document.querySelector('.hb-search__count').textContent.endsWith('found')")
+    _wait_for_count(tab, "found$")
 
 
 def _ids(tab: "sync_api.Page") -> list[str]:
@@ -313,7 +319,7 @@ def test_a_missing_index_is_said_and_asked_for_again(tab: "sync_api.Page", alone
         tab.route("**/search-data.js", lambda route: route.abort())
         tab.goto(f"{address}default.html")
         tab.locator("#hb-query").focus()
-        tab.wait_for_function("document.querySelector('.hb-search__count').textContent.includes('could not be read')")
+        _wait_for_count(tab, "could not be read")
         tab.unroute("**/search-data.js")
         _search(tab, "menthol oxide")
         assert _ids(tab) == ["NS0000008"]
@@ -325,7 +331,7 @@ def test_keys_and_what_assistive_technology_hears(opened: "sync_api.Page") -> No
     opened.keyboard.press("/")
     assert box.evaluate("box => box === document.activeElement")
     opened.keyboard.type("menthol")
-    opened.wait_for_function("!document.querySelector('#hb-hits').hidden")
+    _wait_for_count(opened, "found")
     assert box.get_attribute("aria-expanded") == "true"
     assert opened.locator("[role=status]").text_content() == "9 found"
     hits = opened.locator("[role=option]")
