@@ -117,12 +117,12 @@ def search_data(entries: Sequence[Entry], listed: Iterable[Listed]) -> dict[str,
         "format": 1,
         "entries": {
             "id": [entry.id for entry in entries],
-            "title": [summary.title for summary in shown],
+            "title": [_line(summary.title) for summary in shown],
             "date": [summary.date for summary in shown],
-            "notebook": [entry.record.notebook or "" for entry in entries],
-            "conditions": [summary.conditions for summary in shown],
-            "outcome": [summary.outcome for summary in shown],
-            "take_away": [summary.take_away for summary in shown],
+            "notebook": [_line(entry.record.notebook or "") for entry in entries],
+            "conditions": [_line(summary.conditions) for summary in shown],
+            "outcome": [_line(summary.outcome) for summary in shown],
+            "take_away": [_line(summary.take_away) for summary in shown],
             "verdict": [verdicts.place(summary.verdict) for summary in shown],
             "status": [statuses.place(summary.status) for summary in shown],
             "facets": [_facets(entry, facets) for entry in entries],
@@ -135,9 +135,9 @@ def search_data(entries: Sequence[Entry], listed: Iterable[Listed]) -> dict[str,
         "statuses": [status for (status,) in statuses.listed],
         "retired": [Status.SUPERSEDED, Status.WITHDRAWN],
         "pages": {
-            "title": [page.title for page in others],
+            "title": [_line(page.title) for page in others],
             "path": [page.path for page in others],
-            "text": [page.text for page in others],
+            "text": [_line(page.text) for page in others],
             "key": [page.key for page in others],
         },
     }
@@ -153,7 +153,7 @@ def _participants(entry: Entry, compounds: dict[str, _Names], roles: _Words) -> 
         structure = entry.case.structures.get(path) or structure_named(compound.name)
         key = structure.smiles if structure is not None else name_key(compound.name)
         names = compounds.setdefault(key, _Names(len(compounds), structure))
-        names.typed[compound.name] = None
+        names.typed[_line(compound.name)] = None
         if compound.cas:
             names.cas[compound.cas] = None
         if compound.smiles:
@@ -251,4 +251,9 @@ def _notes(record: Record) -> str:
         *((outcome.failure.cause, outcome.failure.basis) if outcome.failure else ()),
         record.scale_limit,
     )
-    return " · ".join(dict.fromkeys(text for text in said if text))
+    return " · ".join(dict.fromkeys(_line(text) for text in said if text))
+
+
+def _line(text: str) -> str:
+    """Return a text on one line and without tabs: the search counts lines, and tabs part names."""
+    return " ".join(text.split())

@@ -96,7 +96,7 @@ globalThis.handbookFinder = (() => {
       const { text, ends } = this;
       let line = 0;
       for (let at = text.indexOf(needle); at >= 0;) {
-        const opens = !OF_WORD.test(text[at - 1]);
+        const opens = at === 0 || !OF_WORD.test(text[at - 1]);
         while (ends[line] <= at) line++;
         visit(line, opens);
         at = text.indexOf(needle, opens ? ends[line] : at + 1);
@@ -140,6 +140,7 @@ globalThis.handbookFinder = (() => {
     const keys = Object.fromEntries(KEYS.map((field) => [field, typed(compounds[field])]));
     const takenPart = occurrences(entries.participants, compounds.names.length, 2);
     const filed = occurrences(entries.facets, facets.length, 1);
+    const notebooks = fold(entries.notebook.join("\n")).split("\n").map(solid);
     const facetWords = facets.map(([, value]) => fold(value));
     const facetLines = new Lines(facetWords.join("\n"));
     const texts = [
@@ -162,9 +163,11 @@ globalThis.handbookFinder = (() => {
       if (id.startsWith("NS") && entry >= 0) return new Map([[entry, { tier: ENTRY, weight: 0, why: "identifier" }]]);
       const page = pages.key.indexOf(text.toLowerCase());
       if (page >= 0) return new Map([[count + page, { tier: ENTRY, weight: 0, why: "" }]]);
-      const reference = solid(fold(text));
-      const places = entries.notebook.flatMap((each, place) => (reference && solid(fold(each)) === reference ? [place] : []));
-      return new Map(places.map((place) => [place, { tier: ENTRY, weight: 0, why: "notebook reference" }]));
+      const reference = solid(fold(text)), found = new Map();
+      notebooks.forEach((each, place) => {
+        if (each && each === reference) found.set(place, { tier: ENTRY, weight: 0, why: "notebook reference" });
+      });
+      return found;
     }
 
     /** Compounds that the text names: by compound, the best reading and what it went by. */
@@ -184,7 +187,7 @@ globalThis.handbookFinder = (() => {
       }
       if (!/\s/.test(text)) {
         scan("smiles", ` ${text} `, KEY, "SMILES");
-        scan("variants", ` ${text} `, NAME, "SMILES in part");
+        scan("variants", ` ${text} `, NAME, "SMILES, stereo or other ions left aside");
         for (const formula of new Set([hill(plain), hill(plain.replace(/(\d)([+-])$/, "^$1$2"))])) {
           if (formula) scan("formulas", ` ${formula} `, NAME, "formula");
         }
@@ -287,9 +290,9 @@ globalThis.handbookFinder = (() => {
       const words = text.split(/\s+|\/(?=\p{L})/u).map((word) => word.replace(/[,;]$/, ""));
       const telling = words.filter((word) => !FILLERS.has(word.toLowerCase()) && /[\p{L}\d]/u.test(word));
       for (const hit of whole.values()) hit.weight += WHOLE;
-      if (words.length > 1 && telling.length) {
-        const apart = together(stretches(telling.slice(0, MOST_WORDS)));
-        for (const [doc, hit] of apart) if (!(whole.get(doc)?.tier >= hit.tier)) whole.set(doc, hit);
+      const cut = words.length > 1 ? stretches(telling.slice(0, MOST_WORDS)) : [];
+      if (cut.length > 1 || (cut.length && cut[0] !== text)) {
+        for (const [doc, hit] of together(cut)) if (!(whole.get(doc)?.tier >= hit.tier)) whole.set(doc, hit);
       }
       return whole;
     }
