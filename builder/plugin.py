@@ -24,10 +24,11 @@ from builder.finding import Level
 from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.frame import INKS_STYLE, Furniture, MenuItem, content_policy, inks_style
-from builder.publish.page import Page, headings_of, menu_of
+from builder.publish.page import Asset, Page, headings_of, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.progress import watched
+from builder.publish.search_index import Listed, listed_of, search_assets
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
@@ -92,8 +93,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
                 files.append(_VirtualPage(page, config).file)
                 assets += page.assets
         for asset in assets:
-            included = InclusionLevel.INCLUDED
-            files.append(File.generated(config, asset.path, content=asset.data, inclusion=included))
+            files.append(_published(asset, config))
         return files
 
     def on_page_context(
@@ -115,8 +115,11 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
             page.close()
         return output
 
-    def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:  # noqa: ARG002 - MkDocs calls it so
-        """Give the templates of the frame what they show."""
+    def on_env(self, env: Any, *, config: MkDocsConfig, files: Files) -> Any:
+        """Give frame and search what they show: only now do the pages that a group wrote have their titles."""
+        listed = filter(None, map(_listed, files.documentation_pages()))
+        for asset in search_assets(self.book.entries, listed):
+            files.append(_published(asset, config))
         styles = (uri for uri in files.src_uris if re.fullmatch(r"assets/stylesheets/main\.\w+\.min\.css", uri))
         settings = self.book.settings
         env.globals |= {
@@ -130,6 +133,18 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
             "theme_style": next(styles),
         }
         return env
+
+
+def _published(asset: Asset, config: MkDocsConfig) -> File:
+    return File.generated(config, asset.path, content=asset.data, inclusion=InclusionLevel.INCLUDED)
+
+
+def _listed(file: File) -> Listed | None:
+    """Return a page as the search offers it; those of a group by their titles."""
+    page = file.page
+    if isinstance(page, _VirtualPage):
+        return listed_of(page.page)
+    return Listed(page.url, str(page.title), str(page.meta.get("description", ""))) if page else None
 
 
 def _menu(nav: Navigation, section: str) -> tuple[MenuItem, ...]:
@@ -152,10 +167,10 @@ class _VirtualPage(MkDocsPage):
         if page.source is not None:
             file.edit_uri = quote(page.source)
         super().__init__(escape(page.menu[-1] if page.menu else page.title), file, config)
-        self._page = page
+        self.page = page
 
     def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so
-        page = self._page
+        page = self.page
         self.markdown = ""
         self.meta = {
             "title": escape(page.title),
@@ -172,7 +187,7 @@ class _VirtualPage(MkDocsPage):
 
     def open(self) -> None:
         """Write the HTML, for the time that the frame is put around it."""
-        written = self._page.write()
+        written = self.page.write()
         self.content, self.meta["rail"] = written.body, written.rail
         self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in headings_of(written.body)])
 

@@ -4,6 +4,7 @@ Every value carries a key into the bibliography. The tables' headers define the 
 """
 
 import re
+from collections import Counter
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from enum import StrEnum
@@ -24,6 +25,7 @@ __all__ = [
     "load_nucleophiles",
     "nearest_nucleophiles",
     "nucleophile_by_structure",
+    "salt_names",
 ]
 
 _TABLE = "nucleophiles.tsv"
@@ -114,6 +116,52 @@ def nucleophile_by_structure(smiles: str) -> Reactivity | None:
         return by_smiles[smiles]
     pieces = set(smiles.split(".")) - _cations()
     return by_smiles.get(pieces.pop()) if len(pieces) == 1 else None
+
+
+def salt_names(smiles: str) -> tuple[str, ...]:
+    """Return what chemists call a salt of one known cation and one known anion; empty for anything else.
+
+    "sodium azide" and "NaN3"; both orders of a line formula ("KOtBu", "tBuOK"), numbers where the charges ask for them
+    ("K2CO3", "Ba(OH)2"), and the names that do not spell out the cation ("LDA").
+    smiles: canonical (`Structure.smiles`).
+    """
+    pieces = Counter(smiles.split("."))
+    cations = [piece for piece in pieces if piece in _cations()]
+    anions = [piece for piece in pieces if piece not in _cations()]
+    species = _table().by_smiles.get(anions[0]) if len(cations) == len(anions) == 1 else None
+    if species is None or species.charge >= 0:
+        return ()
+    cation, anion = cations[0], anions[0]
+    names = next(_cation_names(row) for row in _counter_ion_rows() if row["smiles"] == cation)
+    spelled = [name for name in (species.name, *species.synonyms) if not name.endswith(("-", " ion"))]
+    symbols = [name.removesuffix("-") for name in species.synonyms if name.endswith("-")]
+    return (
+        *(f"{name} {other}" for name in names if _is_word(name) for other in spelled),
+        *(
+            formula
+            for name in names
+            if name[0].isupper()
+            for symbol in symbols
+            for formula in _line_formulas((name, pieces[cation]), (symbol, pieces[anion]))
+        ),
+        *(name for name, ion in _table().salts[species.name] if ion == cation),
+    )
+
+
+def _is_word(name: str) -> bool:
+    return name[0].islower() and not name.startswith(("mono", "di"))
+
+
+def _line_formulas(cation: tuple[str, int], anion: tuple[str, int]) -> tuple[str, str]:
+    first, second = _repeated(*cation), _repeated(*anion)
+    return f"{first}{second}", f"{second}{first}"
+
+
+def _repeated(symbol: str, count: int) -> str:
+    if count == 1:
+        return symbol
+    is_one_element = re.fullmatch(r"[A-Z][a-z]?", symbol) is not None
+    return f"{symbol}{count}" if is_one_element else f"({symbol}){count}"
 
 
 def nearest_nucleophiles(name: str) -> tuple[str, ...]:

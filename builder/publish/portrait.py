@@ -15,9 +15,10 @@ from builder.publish.expected import ExpectedView, expected_view, why_nothing_is
 from builder.publish.figures import formula_parts, molar_mass_text
 from builder.publish.forecast_parts import GATE_IDS, Closed
 from builder.publish.measured import MeasuredLine, measured_lines, outcome_headline, yield_caption
+from builder.publish.participants import Participant, participants_of, role_of
 from builder.publish.schemes import Scheme, arrow_of, entry_scheme
 from builder.publish.summary import Fact, Summary, conditions_line, conditions_strip, scale_mol
-from builder.records.model import Charged, Compound, Record
+from builder.records.model import Charged
 from builder.records.vocabulary import NucleophileWord
 from builder.rule import Path
 
@@ -69,6 +70,7 @@ class Portrait:
     amounts_note: str
     stages: tuple[StageView, ...]
     compounds: tuple[CompoundView, ...]
+    participants: tuple[Participant, ...]
     attackers: tuple[str, ...]
     gates: tuple[Closed, ...]
     start: str
@@ -92,6 +94,7 @@ def portrait_of(case: Case) -> Portrait:
         amounts_note=amounts_note(case),
         stages=view_stages(case),
         compounds=_compounds(case),
+        participants=participants_of(case),
         attackers=_attackers(case),
         gates=tuple(Closed(r.text, r.rule) for r in forecast.reasons if r.rule in GATE_IDS) if forecast else (),
         start=substrate.typed if substrate is not None else "",
@@ -162,7 +165,7 @@ def _compounds(case: Case) -> tuple[CompoundView, ...]:
             key,
             CompoundView(
                 name=compound.name,
-                role=_role_of(path, compound, case.record),
+                role=role_of(path, compound, case.record),
                 formula=formula_parts(structure.formula),
                 molar_mass=molar_mass_text(structure.mass),
                 cas=compound.cas or "",
@@ -171,18 +174,3 @@ def _compounds(case: Case) -> tuple[CompoundView, ...]:
             ),
         )
     return tuple(seen.values())
-
-
-def _role_of(path: Path, compound: Compound, record: Record) -> str:
-    match path:
-        case ("outcome", "products", int(i)):
-            return f"product {record.outcome.products[i].label}"
-        case ("outcome", "sought"):
-            return "product sought"
-        case ("stages", int(i), "gives"):
-            return f"formed in stage {i + 1}"
-        case ("reagents", _):
-            return str(getattr(compound, "use", "reagent"))
-        case (str(role), *_):
-            return role
-    raise KeyError(path)

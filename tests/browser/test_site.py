@@ -1,35 +1,20 @@
 """The built site in a browser, at desk and phone width and in both palettes."""
 
-import functools
-import http.server
-import shutil
-import threading
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
 from pathlib import Path
 
 import pytest
 
 from tests.browser.built import ROOT, build, good_texts, write_book
+from tests.browser.chromium import ARGUMENTS, CHROMIUM, served
 
 sync_api = pytest.importorskip("playwright.sync_api")
-CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
 
 pytestmark = [
     pytest.mark.browser,
     pytest.mark.skipif(CHROMIUM is None, reason="no chromium on this machine"),
 ]
 
-ARGUMENTS = [
-    "--headless",
-    "--no-sandbox",
-    "--disable-gpu",
-    "--disable-quic",
-    "--no-first-run",
-    "--disable-background-networking",
-    "--disable-component-update",
-    "--disable-sync",
-]
 PAGES = [
     "",
     "e/NSC0W7N51/",
@@ -46,11 +31,6 @@ PAGES = [
 SUB_PATH = "group/book/"
 
 
-class _Quiet(http.server.SimpleHTTPRequestHandler):
-    def log_message(self, format: str, *args: object) -> None:  # noqa: A002 - as inherited
-        pass
-
-
 @pytest.fixture(scope="module")
 def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """Build the site, in a folder below which it may be served at a sub-path."""
@@ -64,17 +44,8 @@ def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.fixture(scope="module")
 def address(site: Path) -> Iterator[str]:
     """Serve the site below its sub-path, from this machine."""
-    with _served(site.parents[1]) as address:
+    with served(site.parents[1]) as address:
         yield address + SUB_PATH
-
-
-@contextmanager
-def _served(folder: Path) -> Iterator[str]:
-    server = http.server.ThreadingHTTPServer(("127.0.0.1", 0), functools.partial(_Quiet, directory=str(folder)))
-    threading.Thread(target=server.serve_forever, daemon=True).start()
-    yield f"http://127.0.0.1:{server.server_port}/"
-    server.shutdown()
-    server.server_close()
 
 
 @pytest.fixture(scope="module", params=["light-1280", "light-360", "dark-1280", "dark-360"])
@@ -106,7 +77,7 @@ def test_every_entry_of_the_demonstration_book_fits(
     built = build(write_book(folder, texts))
     assert built.code == 0, built.out
     pages = sorted(path.parent.relative_to(built.site).as_posix() + "/" for path in built.site.glob("e/*/index.html"))
-    with _served(built.site) as address:
+    with served(built.site) as address:
         _visit(tab, address, pages)
 
 
