@@ -82,10 +82,10 @@ class _VirtualPage(MkDocsPage):
         if page.source is not None:
             file.edit_uri = quote(page.source)
         super().__init__(escape(page.menu[-1] if page.menu else page.title), file, config)
-        self.page = page
+        self._page = page
 
     def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so
-        page = self.page
+        page = self._page
         self.markdown = ""
         self.meta = {"description": escape(page.description), "hide": ["navigation"]}
         if page.path:
@@ -98,16 +98,16 @@ class _VirtualPage(MkDocsPage):
             self.meta["robots"] = "noindex"
 
     def render(self, config: MkDocsConfig, files: Files) -> None:  # noqa: ARG002 - MkDocs calls it so
-        self.content = self.page.body
-        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self.page.headings])
-        self.present_anchor_ids = set(self.page.anchors)
+        self.content = self._page.body
+        self.toc = TableOfContents([AnchorLink(h.title, h.anchor, level=2) for h in self._page.headings])
+        self.present_anchor_ids = set(self._page.anchors)
 
 
 def _listed(file: File) -> Listed | None:
     """Return a page as the search offers it; those of a group by their titles."""
     page = file.page
     if isinstance(page, _VirtualPage):
-        return listed_of(page.page)
+        return listed_of(page._page)
     return Listed(page.url, str(page.title), str(page.meta.get("description", ""))) if page else None
 
 
