@@ -1,11 +1,10 @@
 """The search box: what it lists first, by keyboard alone, over http and from a folder, under the site's policy."""
 
-import datetime as dt
 import json
 import re
 import shutil
-import time
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Mapping, Sequence
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -13,16 +12,20 @@ import pytest
 from jinja2 import Environment, FileSystemLoader
 
 from builder.book import Book, Entry, open_book
-from builder.chemistry.structure import parse_smiles
+from builder.checks.case import compounds_of, open_case
+from builder.chemistry.structure import Structure, parse_smiles
+from builder.mechanism.synonyms import structure_named
 from builder.publish.frame import content_policy
 from builder.publish.page import Asset
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.search_index import as_script, listed_of, search_assets
 from builder.records.vocabulary import Status
+from builder.rule import Path as ValuePath
 from builder.table import rows_of
 from tests.browser.built import ROOT, build, good_texts, write_book
 from tests.browser.chromium import ARGUMENTS, CHROMIUM, served
+from tests.specimens import PLAIN, TODAY
 
 sync_api = pytest.importorskip("playwright.sync_api")
 
@@ -32,7 +35,8 @@ pytestmark = [
 ]
 
 QUERIES = ROOT / "tests" / "data" / "search_queries.tsv"
-MOST_SECONDS = 15
+IN_PART = {"part of a name", "slip", "text", "several"}
+"""Kinds of queries that other entries may answer as well."""
 PAGE = """\
 <!doctype html><html lang="en" data-paper="{paper}"><head><meta charset="utf-8">
 <meta http-equiv="Content-Security-Policy" content="{policy}"><title>Search alone</title>
@@ -48,7 +52,7 @@ PAGE = """\
 
 @pytest.fixture(scope="module")
 def demo() -> Book[Portrait]:
-    return open_book(ROOT / "entries", today=dt.date(2026, 12, 1), keep=portrait_of, processes=2)
+    return open_book(ROOT / "entries", today=TODAY, keep=portrait_of, processes=2)
 
 
 def _bare_site(folder: Path, index: Iterable[Asset]) -> Path:
@@ -95,34 +99,76 @@ def tab(browser: "sync_api.Browser") -> Iterator["sync_api.Page"]:
     page.close()
 
 
-def _fits(rule: str, entry: Entry[Portrait]) -> bool:
+@dataclass(frozen=True)
+class Asked:
+    """An entry as the table of queries asks for it: its compounds by canonical SMILES, else by name."""
+
+    entry: Entry[Portrait]
+    drawn: Mapping[ValuePath, Structure]
+    about: frozenset[str]
+    used: frozenset[str]
+    structures: tuple[Structure, ...]
+    names: tuple[str, ...]
+
+
+def _asked(entry: Entry[Portrait]) -> Asked:
+    drawn = open_case(entry.record, entry.file, PLAIN, TODAY).structures
+    about: set[str] = set()
+    used: set[str] = set()
+    structures, names = [], []
+    for path, compound in compounds_of(entry.record):
+        structure = drawn.get(path) or structure_named(compound.name)
+        is_about = path[0] in {"substrate", "outcome", "stages"}
+        (about if is_about else used).add(structure.smiles if structure else compound.name)
+        structures += [structure] if structure else []
+        names.append(compound.name)
+    return Asked(entry, drawn, frozenset(about), frozenset(used), tuple(structures), tuple(names))
+
+
+def _keys(name: str, book: Sequence[Asked]) -> frozenset[str]:
+    """Return how the compound that some record of the book calls so is known."""
+    found = set()
+    for asked in book:
+        for path, compound in compounds_of(asked.entry.record):
+            if compound.name == name:
+                structure = asked.drawn.get(path) or structure_named(name)
+                found.add(structure.smiles if structure else name)
+    return frozenset(found)
+
+
+def _fits(rule: str, asked: Asked, book: Sequence[Asked]) -> bool:
     """Say whether an entry is what a cell of the table asks for, by what its record says."""
     kind, _, value = rule.partition(":")
-    record = entry.record
-    outcome = record.outcome
-    about = [record.substrate, *outcome.products, *filter(None, [outcome.sought, *(s.gives for s in record.stages)])]
-    used = [*record.nucleophiles, *record.bases, *record.reagents, *record.solvents]
+    outcome = asked.entry.record.outcome
     match kind:
-        case "any":
-            return value.casefold() in {compound.name.casefold() for compound in (*about, *used)}
+        case "any" | "all":
+            everything = asked.about | asked.used
+            return all(_keys(name, book) & everything for name in value.split(" + "))
         case "about":
-            return value.casefold() in {compound.name.casefold() for compound in about}
+            return bool(_keys(value, book) & asked.about)
+        case "skeleton":
+            flat = {parse_smiles(smiles).flat_smiles for smiles in _keys(value, book)}
+            return bool(flat & {s.flat_smiles for s in asked.structures if s.smiles in asked.about})
+        case "ion":
+            return any(value in structure.smiles.split(".") for structure in asked.structures)
         case "formula":
-            return value in {p.identity.formulas[0] for p in entry.kept.participants if p.identity}
+            return value in {structure.formula for structure in asked.structures}
+        case "part":
+            return any(value in name for name in asked.names)
         case "claims":
             return outcome.claim is not None and outcome.claim.mechanism == value
         case "leaves":
-            return record.substrate.leaving_group == value
+            return asked.entry.record.substrate.leaving_group == value
         case "result":
             return value in outcome.result
-    return entry.id == rule
+    return asked.entry.id == rule
 
 
-def _acceptable(first: str, book: Book[Portrait]) -> frozenset[str]:
+def _acceptable(first: str, book: Sequence[Asked]) -> frozenset[str]:
     """Return the addresses that may come first; retired entries only where no other fits."""
     rules = first.split(" | ")
     pages = {rule.removeprefix("page:") for rule in rules if rule.startswith("page:")}
-    fitting = [entry for entry in book.entries if any(_fits(rule, entry) for rule in rules)]
+    fitting = [each.entry for each in book if any(_fits(rule, each, book) for rule in rules)]
     holding = [entry for entry in fitting if entry.record.status in {Status.CURRENT, Status.DRAFT}]
     return frozenset(pages | {f"e/{entry.id}/" for entry in holding or fitting})
 
@@ -150,17 +196,17 @@ def test_each_query_lists_first_what_it_means(tab: "sync_api.Page", demo_alone: 
     tab.keyboard.press("/")
     tab.keyboard.type("xx")
     _wait_for_count(tab, "found")
+    book = [_asked(entry) for entry in demo.entries]
     wrong = []
-    start = time.monotonic()
     for row in rows:
-        acceptable = _acceptable(row["first"], demo)
+        acceptable = _acceptable(row["first"], book)
         assert acceptable, f"{row['query']}: nothing in the book fits {row['first']}"
         hits = _type(tab, row["query"])
         fitting = [hit in acceptable for hit in hits]
-        if fitting[:1] != [True] or fitting != sorted(fitting, reverse=True):
+        is_sorted = row["kind"] in IN_PART or fitting == sorted(fitting, reverse=True)
+        if fitting[:1] != [True] or not is_sorted:
             wrong.append((row["query"], hits[:3]))
     assert wrong == []
-    assert time.monotonic() - start < MOST_SECONDS
 
 
 # --- in the site as it is built ---------------------------------------------------------------------------------
@@ -343,7 +389,7 @@ def test_enter_waits_for_the_index(tab: "sync_api.Page", alone: Path) -> None:
             held.append(route)
 
         tab.route("**/search-data.js", hold)
-        tab.goto(f"{address}default.html")
+        tab.goto(f"{address}light.html")
         tab.keyboard.press("/")
         tab.keyboard.type("NS0000003")
         assert tab.locator(".hb-search__count").text_content() == "Reading the index …"
@@ -355,7 +401,7 @@ def test_enter_waits_for_the_index(tab: "sync_api.Page", alone: Path) -> None:
 def test_a_missing_index_is_said_and_asked_for_again(tab: "sync_api.Page", alone: Path) -> None:
     with served(alone) as address:
         tab.route("**/search-data.js", lambda route: route.abort())
-        tab.goto(f"{address}default.html")
+        tab.goto(f"{address}light.html")
         tab.locator("#hb-query").focus()
         _wait_for_count(tab, "could not be read")
         tab.unroute("**/search-data.js")
@@ -437,8 +483,7 @@ def _luminance(colour: str) -> float:
 
 def test_formulas_and_smiles_are_read_as_the_toolkit_reads_them(opened: "sync_api.Page", demo: Book[Portrait]) -> None:
     _search(opened, "menthol")
-    typed = {p.smiles for entry in demo.entries for p in entry.kept.participants if p.smiles}
-    drawn = {s.smiles: s for s in map(parse_smiles, sorted(typed))}
+    drawn = {s.smiles: s for entry in demo.entries for s in _asked(entry).structures}
     asked = json.dumps([[s.smiles, s.flat_smiles, s.typed] for s in drawn.values()])
     read = opened.evaluate(f"{asked}.map(forms => forms.map(handbookChemistry.outline))")
     for structure, forms in zip(drawn.values(), read, strict=True):
