@@ -10,7 +10,7 @@ export PYTHONUTF8 := 1
 
 .DEFAULT_GOAL := help
 .NOTPARALLEL:
-.PHONY: help site test serve lint test-all bench eval wheel lock clean system-site system-test
+.PHONY: help site test serve lint test-all bench eval screenshots wheel lock clean system-site system-test
 
 help: ## list these targets
 	@sed -n 's/^\([a-z-]*\):.*## /\1\t/p' Makefile | expand -t 12
@@ -42,6 +42,9 @@ bench: .venv/.ready ## milliseconds per entry to read, check, draw and emit
 
 eval: .venv/.ready ## the engine against published reactions
 	$(BIN)/python tests/eval.py
+
+screenshots: system-test .venv/.ready ## pictures of every template on both papers at two widths, into build/screenshots/
+	$(BIN)/pytest -n $(WORKERS) -q tests/browser/test_site.py -k every_template --screenshots build/screenshots
 
 wheel: .venv/.ready ## build the package for pipx into dist/
 	@rm -rf build  # setuptools packs whatever a former build left there

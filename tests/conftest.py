@@ -10,6 +10,7 @@ GOLDEN = Path(__file__).parent / "golden"
 
 def pytest_addoption(parser: pytest.Parser) -> None:
     parser.addoption("--update-golden", action="store_true", help="write golden files anew; read the diff like code")
+    parser.addoption("--screenshots", metavar="DIR", help="write a picture of every template, paper and width there")
 
 
 @pytest.fixture
