@@ -9,8 +9,6 @@ import random
 import sys
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from functools import cache
-from itertools import product
 from pathlib import Path
 from typing import Any
 
@@ -26,6 +24,8 @@ SEED = 20261201
 FIRST_DAY, LAST_DAY = dt.date(2024, 1, 8), dt.date(2026, 10, 30)
 SUPERSEDED_IN = 40
 """One of so many entries is superseded, where the book holds another run of the same transformation."""
+MOVING_ON = 0.4
+"""Chance that, after a run, the next one of this kind is on another skeleton."""
 SCALES_MMOL = (5, 8, 10, 12, 15, 20, 25, 30)
 PEOPLE = tuple(f"bench-{number}" for number in range(1, 7))
 SAFETY = "safety-1"
@@ -33,7 +33,7 @@ SETTINGS: dict[str, Any] = {
     "format": 1,
     "title": "Generated book for measurements",
     "group": "No group (generated)",
-    "notice": "Generated to measure the tool: every entry is invented, nothing was run; not for the bench, not to be cited.",
+    "notice": "Generated to measure the tool: every entry is invented and nothing was run; not for use, not to be cited.",
     "invented": True,
     "people": [{"code": code, "shown_as": f"{code} (invented)"} for code in (*PEOPLE, SAFETY)],
 }
@@ -87,14 +87,21 @@ class Run:
 # --- drawing experiments ------------------------------------------------------------------------------------
 
 
-def _plans(method: Method) -> list[Plan]:
-    return [
-        Plan(skeleton, group, method, flask, celsius, hours)
+def _campaigns(method: Method, rng: random.Random) -> list[list[Plan]]:
+    """Return every plan of a method, those of one skeleton together, in random order within and among them."""
+    campaigns = [
+        [
+            Plan(skeleton, group, method, flask, celsius, hours)
+            for group in method.on.get(skeleton.kind, ())
+            for flask in method.flasks
+            for celsius, hours in flask.runs
+        ]
         for skeleton in skeletons()
-        for group in method.on.get(skeleton.kind, ())
-        for flask in method.flasks
-        for celsius, hours in flask.runs
     ]
+    for plans in campaigns:
+        rng.shuffle(plans)
+    rng.shuffle(campaigns)
+    return [plans for plans in campaigns if plans]
 
 
 def _draw_runs(entries: int, seed: int) -> list[Run]:
@@ -103,25 +110,31 @@ def _draw_runs(entries: int, seed: int) -> list[Run]:
     Raises ValueError where there are not so many.
     """
     rng = random.Random(seed)
-    decks = [_plans(method) for method in METHODS]
-    for deck in decks:
-        rng.shuffle(deck)
-    shares = [method.share for method in METHODS]
+    decks = {method.word + method.title: (_campaigns(method, rng), method.share) for method in METHODS}
     days = (LAST_DAY - FIRST_DAY).days
-    runs: list[Run] = []
-    taken: set[str] = set()
+    runs: dict[str, Run] = {}
     while len(runs) < entries:
-        deck = rng.choices(decks, shares)[0]
-        if not deck:
-            if not any(decks):
-                raise ValueError(f"there are only {len(runs)} different experiments")
-            continue
+        left = [(campaigns, share) for campaigns, share in decks.values() if campaigns]
+        if not left:
+            raise ValueError(f"there are only {len(runs)} different experiments")
+        campaigns, _ = rng.choices(left, [share for _, share in left])[0]
+        plan = _draw_plan(campaigns, rng)
         entry = mint_identifier(rng.choice)
-        if entry not in taken:
-            taken.add(entry)
-            day = FIRST_DAY + dt.timedelta(days=len(runs) * days // entries)
-            runs.append(_draw_run(deck.pop(), entry, len(runs), day, rng))
-    return runs
+        while entry in runs:
+            entry = mint_identifier(rng.choice)
+        day = FIRST_DAY + dt.timedelta(days=len(runs) * days // entries)
+        runs[entry] = _draw_run(plan, entry, len(runs), day, rng)
+    return list(runs.values())
+
+
+def _draw_plan(campaigns: list[list[Plan]], rng: random.Random) -> Plan:
+    """Take a plan of the campaign that is under way, which ends when it has none left or by chance."""
+    plan = campaigns[-1].pop()
+    if not campaigns[-1]:
+        campaigns.pop()
+    elif rng.random() < MOVING_ON:
+        campaigns.insert(0, campaigns.pop())
+    return plan
 
 
 def _draw_run(plan: Plan, entry: str, number: int, day: dt.date, rng: random.Random) -> Run:
@@ -203,7 +216,7 @@ def _record(run: Run, links: Links) -> dict[str, Any]:
             "work_up": _work_up(run),
             "outcome": _failed(run) if method.mechanism == "none" else _went(run),
             "evidence": _evidence(run),
-            "procedure": _procedure(run) if run.number % 3 == 0 else None,
+            "procedure": _procedure(run) if run.number % 4 else None,
             "take_away": _take_away(run),
             "scale_limit": f"{2 * run.scale_mmol} mmol without a new review" if method.scope else None,
             "safety_review": {
@@ -227,8 +240,8 @@ def _record(run: Run, links: Links) -> dict[str, Any]:
     )
 
 
-def _without_gaps(record: dict[str, Any]) -> dict[str, Any]:
-    return {key: value for key, value in record.items() if value not in (None, [], "")}
+def _without_gaps(part: dict[str, Any]) -> dict[str, Any]:
+    return {key: value for key, value in part.items() if value not in (None, [])}
 
 
 def _title(plan: Plan) -> str:
@@ -251,16 +264,17 @@ def _reagent(plan: Plan) -> Substance:
 
 def _substrate(run: Run) -> dict[str, Any]:
     plan = run.plan
-    chiral = plan.skeleton.stereo == "single enantiomer"
-    return {
-        "name": plan.substrate.name,
-        "smiles": plan.substrate.smiles,
-        "stereo": plan.skeleton.stereo,
-        **({"ee": "99 %"} if chiral else {}),
-        "class": list(plan.skeleton.classes),
-        "leaving_group": plan.group.word,
-        "mass": _grams(run, plan.substrate, 100),
-    }
+    return _without_gaps(
+        {
+            "name": plan.substrate.name,
+            "smiles": plan.substrate.smiles,
+            "stereo": plan.skeleton.stereo,
+            "ee": "99 %" if plan.skeleton.inverted else None,
+            "class": list(plan.skeleton.classes),
+            "leaving_group": plan.group.word,
+            "mass": _grams(run, plan.substrate, 100),
+        }
+    )
 
 
 def _grams(run: Run, compound: Named, percent: int | None = None) -> str:
@@ -300,7 +314,9 @@ def _stage(run: Run) -> dict[str, Any]:
     at_reflux = plan.celsius >= boils.get(plan.flask.solvents[0][0], 500)
     gone = f"GC, {plan.group.word} < {101 - run.converted} %"
     failed = method.mechanism == "none"
-    return {
+    is_salt = method.reagent is not None and "." in method.reagent.smiles
+    stirred = f"stirred at {300 + 50 * (run.number % 5)} rpm, the salt stays in part undissolved"
+    stage = {
         "add": [*(name for name, _ in plan.flask.solvents), *charged, plan.substrate.name],
         "temperature": f"{plan.celsius} °C",
         "measured": "internal" if run.number % 5 else "bath",
@@ -308,15 +324,17 @@ def _stage(run: Run) -> dict[str, Any]:
         "vessel": "reflux" if at_reflux else "open",
         "atmosphere": "nitrogen",
         "end_point": f"stopped after {plan.hours} h, unchanged by GC since the start" if failed else gone,
-        **({"note": f"stirred at {300 + 50 * (run.number % 5)} rpm, the salt stays in part undissolved"} if run.number % 2 else {}),
+        "note": stirred if is_salt and run.number % 2 else None,
     }
+    return _without_gaps(stage)
 
 
 def _work_up(run: Run) -> list[str]:
     method = run.plan.method
+    silica, eluent = 2 * run.scale_mmol + 20, f"n-heptane with {2 + run.number % 9} % ethyl acetate"
     purified = (
-        f"concentrated at 35 °C and {20 + 10 * (run.number % 4)} mbar, filtered through {4 + run.scale_mmol // 2} g silica",
-        f"concentrated at 30 °C, chromatography on {2 * run.scale_mmol + 20} g silica, n-heptane with {2 + run.number % 9} % ethyl acetate",
+        f"concentrated at 35 °C and {20 + 10 * (run.number % 4)} mbar, filtered through {silica // 4} g silica",
+        f"concentrated at 30 °C, chromatography on {silica} g silica, {eluent}",
         "washed with 2 × 15 mL brine, dried over sodium sulfate, concentrated at 35 °C and 20 mbar",
     )[run.number % 3]
     waste = [f"waste: {method.waste}"] if method.waste else []
@@ -379,7 +397,7 @@ def _course(run: Run) -> str:
 
 
 def _basis(run: Run) -> str:
-    if run.plan.skeleton.stereo == "single enantiomer" and run.plan.method.fragment:
+    if run.plan.skeleton.inverted and run.plan.method.fragment:
         return "chiral HPLC of product"
     return "product structure" if run.number % 2 else "product ratio"
 
@@ -405,18 +423,17 @@ def _failed(run: Run) -> dict[str, Any]:
 
 def _evidence(run: Run) -> list[str]:
     more = ("13C NMR", "GC-MS", "IR", "GC with reference substances", "melting point")
-    chiral = run.plan.skeleton.stereo == "single enantiomer" and bool(run.plan.method.fragment)
+    chiral = run.plan.skeleton.inverted and run.plan.method.fragment
     return ["1H NMR", more[run.number % len(more)], *(["chiral HPLC against the racemate"] if chiral else [])]
 
 
 def _procedure(run: Run) -> str:
-    plan = run.plan
-    first = " and ".join(name for name, _ in plan.flask.solvents)
+    plan, minutes = run.plan, 10 + run.number % 17
+    hours = sorted({max(1, plan.hours // 4), max(2, plan.hours // 2), plan.hours})
     return (
-        f"The solvent ({first}) was degassed with nitrogen for {10 + run.number % 11} min. The reagent went in as a fine"
-        f" powder, then the substrate in one portion; the mixture reached {plan.celsius} °C within"
-        f" {10 + run.number % 17} min and was sampled after {max(1, plan.hours // 4)} h, {max(2, plan.hours // 2)} h and"
-        f" {plan.hours} h."
+        f"The solvent ({plan.solvent}) was degassed with nitrogen for {minutes // 2} min. Reagent and substrate went in"
+        f" as listed, the substrate in one portion; the mixture reached {plan.celsius} °C within {minutes} min and was"
+        f" sampled after {', '.join(map(str, hours[:-1]))} and {hours[-1]} h."
     )
 
 
@@ -445,14 +462,21 @@ class _Writer(yaml.CSafeDumper):
 def generated_texts(entries: int, seed: int = SEED) -> Iterator[tuple[str, str]]:
     """Yield path below the entries folder and text of each record."""
     for run, links in _link(_draw_runs(entries, seed)):
-        text = yaml.dump(_record(run, links), Dumper=_Writer, sort_keys=False, allow_unicode=True, width=10_000)
-        yield f"{run.plan.method.word.replace(' ', '-')}/{run.entry}.yml", text
+        yield f"{run.plan.method.word.replace(' ', '-')}/{run.entry}.yml", _yaml(_record(run, links))
+
+
+def settings_text() -> str:
+    """Return the settings of the book, which say that it is invented."""
+    return _yaml(SETTINGS)
+
+
+def _yaml(data: dict[str, Any]) -> str:
+    return yaml.dump(data, Dumper=_Writer, sort_keys=False, allow_unicode=True, width=10_000)
 
 
 def write_generated_book(folder: Path, entries: int, seed: int = SEED) -> None:
     """Write settings and records into `folder`, which need not exist."""
-    settings = yaml.dump(SETTINGS, Dumper=_Writer, sort_keys=False, allow_unicode=True, width=10_000)
-    for path, text in (("handbook.yml", settings), *generated_texts(entries, seed)):
+    for path, text in (("handbook.yml", settings_text()), *generated_texts(entries, seed)):
         place = folder / path
         place.parent.mkdir(parents=True, exist_ok=True)
         place.write_text(text, "utf-8", newline="\n")

@@ -40,12 +40,19 @@ class Skeleton:
     alkenes: tuple[Named, ...] = ()
 
 
-_STEMS = dict(enumerate("but pent hex hept oct non dec undec dodec tridec tetradec".split(), start=4))
-_ALKYLS = {4: "butyl", 5: "pentyl", 6: "hexyl", 7: "heptyl", 8: "octyl", 9: "nonyl", 10: "decyl", 11: "undecyl"} | {
-    12: "dodecyl",
-    13: "tridecyl",
-    14: "tetradecyl",
+_STEMS = {
+    4: "but",
+    5: "pent",
+    6: "hex",
+    7: "hept",
+    8: "oct",
+    9: "non",
+    10: "dec",
+    11: "undec",
+    12: "dodec",
+    13: "tridec",
 }
+_ALKYLS = {n: f"{stem}yl" for n, stem in _STEMS.items()}
 # Substituents of a ring, and the ring written so that its side chain follows.
 _RINGS = (
     Named("", "c1ccc(cc1)"),
@@ -125,7 +132,9 @@ def _rings_on_chains() -> Iterator[Skeleton]:
     for ring, (n, chain) in product((*_RINGS, *_DONOR_RINGS, *_POOR_RINGS), chains):
         if n == 2:
             styrene = Named(f"{ring.name}styrene", f"{ring.smiles}C=C")
-            yield Skeleton("aryl-ethyl", f"2-{_phenyl(ring)}ethyl", f"{ring.smiles}CC", ("primary",), alkenes=(styrene,))
+            yield Skeleton(
+                "aryl-ethyl", f"2-{_phenyl(ring)}ethyl", f"{ring.smiles}CC", ("primary",), alkenes=(styrene,)
+            )
         else:
             yield Skeleton("primary", f"{n}-{_phenyl(ring)}{chain}", f"{ring.smiles}{'C' * n}", ("primary",))
             oxy = f"{n}-({ring.name}phenoxy){chain}" if ring.name else f"{n}-phenoxy{chain}"
@@ -326,7 +335,7 @@ METHODS: tuple[Method, ...] = (
         title="{} iodide",
         reagent=Substance("sodium iodide", "[Na+].[I-]", 2.0),
         quench="60 mL water with 1 g sodium thiosulfate, extract with 3 × 20 mL n-heptane",
-        share=3,
+        share=5,
     ),
     Method(
         word="acetate",
@@ -443,8 +452,8 @@ METHODS: tuple[Method, ...] = (
         title="{} methyl ether",
         helper=Substance("2,6-lutidine", "Cc1cccc(C)n1", 1.3, use="buffer"),
         yields=(60, 80),
-        alkene=(8, 25),
-        share=8,
+        alkene=(5, 15),
+        share=5,
     ),
     Method(
         word="no reaction",

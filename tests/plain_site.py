@@ -1,31 +1,27 @@
-"""The book as a plain MkDocs and Material site with hand-written pages: what a build is compared with.
+"""A built site as plain MkDocs and Material pages, as a group without this tool would write them by hand.
 
-One Markdown page for each page of ours, with the same facts (the scheme once, as inline SVG), stock search on and
-only the indexes in the menu; no plugin of ours, nothing padded.
+Every page becomes one Markdown page with the same headings, tables, lists and texts, and with its first drawing as
+inline SVG; stock search is on, the menu holds only what ours holds, and nothing is padded. It is made from the HTML
+of the site, so that both have the same content whatever the templates do.
 """
 
+import html
 import json
 import re
-from collections.abc import Iterator
-from pathlib import Path
+import shutil
+from collections.abc import Callable, Iterable, Iterator
+from dataclasses import dataclass, field
+from html.parser import HTMLParser
+from itertools import groupby
+from pathlib import Path, PurePosixPath
+from typing import Any
 
 import yaml
-from jinja2 import Environment, FileSystemLoader, StrictUndefined
-
-from builder.book import Book
-from builder.checks.register import all_rules
-from builder.publish.entry_view import surroundings_of, view_entry
-from builder.publish.facets import facet_indexes
-from builder.publish.list_pages import newest_first
-from builder.publish.rule_pages import view_rule
-from builder.publish.summary import summarise
 
 __all__ = ["write_plain_site"]
 
-TEMPLATES = Path(__file__).parent / "data" / "plain_site"
-CONFIG = {
-    "site_name": "Plain site for comparison",
-    "site_url": "https://handbook.example/generated/",
+CONFIG: dict[str, Any] = {
+    "site_name": "Plain pages for comparison",
     "theme": {
         "name": "material",
         "language": "en",
@@ -35,67 +31,181 @@ CONFIG = {
     "plugins": ["search"],
     "validation": {"nav": {"omitted_files": "ignore"}},
 }
+_PARTS = re.compile(r"<main\b[^>]*>(.*?)</main>|<aside\b[^>]*>(.*?)</aside>", re.DOTALL)
+_TITLE = re.compile(r"<title>(.*?)</title>", re.DOTALL)
+_DRAWING = re.compile(r"<svg\b.*?</svg>", re.DOTALL)
 _SPECIAL = re.compile(r"[\\`*_\[\]<>|]")
+_HEADINGS = ("h1", "h2", "h3", "h4")
+_SECTIONS = ("aside", "details", "div", "figure", "footer", "header", "section")
+_BLOCKS = frozenset((*_HEADINGS, *_SECTIONS, "caption", "dl", "figcaption", "ol", "p", "pre", "summary", "table", "ul"))
+_LEFT_OUT = frozenset({"button", "form", "nav", "script", "template"})
+"""Controls, and the contents of the page, which the theme makes for itself."""
+_VOID = frozenset({"br", "hr", "img", "input", "link", "meta", "wbr"})
 
 
-def write_plain_site(book: Book, folder: Path) -> Path:
-    """Write the site's source into `folder`; return the path of its mkdocs.yml."""
-    menu: dict[str, str] = {}
-    for path, label, text in _pages(book):
-        page = folder / "docs" / path / "index.md"
-        page.parent.mkdir(parents=True, exist_ok=True)
-        page.write_text(text.lstrip(), "utf-8")
-        if label:
-            menu[label] = f"{path}index.md"
+def write_plain_site(site: Path, folder: Path) -> Path:
+    """Write the source of a plain site with the pages of `site` into `folder`; return the path of its mkdocs.yml."""
+    menu: list[dict[str, str]] = []
+    for page in sorted(site.rglob("index.html")):
+        text = page.read_text("utf-8")
+        place = page.relative_to(site).with_suffix(".md")
+        source = folder / "docs" / place
+        source.parent.mkdir(parents=True, exist_ok=True)
+        source.write_text(_markdown_page(text), "utf-8")
+        for download in (*page.parent.glob("*.yml"), *page.parent.glob("*.svg")):
+            shutil.copy(download, source.parent)
+        if len(place.parts) <= 2:  # the indexes of sections; what lies below them stays out of the menu
+            menu.append({_title(text): place.as_posix()})
     config = folder / "mkdocs.yml"
-    nav = [{label: path} for label, path in menu.items()]
-    config.write_text(yaml.safe_dump(CONFIG | {"nav": nav}, sort_keys=False), "utf-8")
+    config.write_text(yaml.safe_dump(CONFIG | {"nav": menu}, sort_keys=False, allow_unicode=True), "utf-8")
     return config
 
 
-def _pages(book: Book) -> Iterator[tuple[str, str, str]]:
-    """Yield address, label in the menu (empty for pages outside it) and Markdown of each page."""
-    rules = sorted(all_rules().values(), key=lambda rule: rule.id)
-    around = surroundings_of(book, rules)
-    summaries = {entry.id: summarise(entry) for entry in book.entries}
-    newest = newest_first(summaries.values())
-    indexes = facet_indexes(book.entries)
-    facets = [(index.facet.title, f"lists/{index.facet.key}/", len(index.values)) for index in indexes]
-    yield "", "State of the book", _list(book, "", book.settings.title, facets, newest[:5])
-    yield "lists/", "Entries", _list(book, "../", "Entries", [(a, f"../{b}", c) for a, b, c in facets], newest)
-    for index in indexes:
-        facet = index.facet
-        values = [(value.value, f"{value.slug}/", len(value.entries)) for value in index.values]
-        yield f"lists/{facet.key}/", facet.title, _list(book, "../../", f"By {facet.title.lower()}", values)
-        for value in index.values:
-            rows = newest_first([summaries[entry.id] for entry in value.entries])
-            title = f"{facet.title}: {value.value}"
-            yield f"lists/{facet.key}/{value.slug}/", "", _list(book, "../../../", title, [], rows)
-    views = [view_rule(rule, book) for rule in rules]
-    listed = [(f"{view.title}: {view.statement}", f"{view.id}/", len(view.touched)) for view in views]
-    yield "rules/", "Rules", _list(book, "../", "Rules", listed)
-    for view in views:
-        yield f"rules/{view.id}/", "", _render("rule.md", rule=view, notice=book.settings.standing_notice)
-    for entry in book.entries:
-        view = view_entry(entry, around)
-        yield f"e/{entry.id}/", "", _render("entry.md", view=view, notice=book.settings.standing_notice)
+def _title(text: str) -> str:
+    found = _TITLE.search(text)
+    assert found is not None
+    return html.unescape(found[1]).partition(" · ")[0]
 
 
-def _list(book: Book, root: str, title: str, links: object, summaries: object = ()) -> str:
-    notice = book.settings.standing_notice
-    return _render("list.md", root=root, title=title, links=links, summaries=summaries, notice=notice)
+def _markdown_page(text: str) -> str:
+    body = "\n".join(main or aside for main, aside in _PARTS.findall(text))
+    drawing = next((found[0] for found in _DRAWING.finditer(body) if 'role="img"' in found[0]), "")
+    tree = _Tree()
+    tree.feed(_DRAWING.sub(lambda found: "<wbr>" if found[0] == drawing else "", body))
+    blocks = [block.replace(_PLACE_OF_DRAWING, f"<figure>{drawing}</figure>") for block in _blocks(tree.root)]
+    return "\n\n".join([f"---\ntitle: {json.dumps(_title(text), ensure_ascii=False)}\n---", *blocks]) + "\n"
 
 
-def _render(template: str, **values: object) -> str:
-    return _ENVIRONMENT.get_template(template).render(**values)
+# --- HTML as a tree -----------------------------------------------------------------------------------------
 
 
-def _markdown(text: str) -> str:
-    """Return plain text so that Markdown shows it as it is."""
-    return _SPECIAL.sub(r"\\\g<0>", text)
+@dataclass
+class _Node:
+    tag: str
+    attributes: dict[str, str]
+    inside: "list[_Node | str]" = field(default_factory=list)
 
 
-_ENVIRONMENT = Environment(
-    loader=FileSystemLoader(TEMPLATES), undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True, autoescape=False
-)
-_ENVIRONMENT.filters |= {"md": _markdown, "json": lambda text: json.dumps(text, ensure_ascii=False)}
+class _Tree(HTMLParser):
+    """Reads a piece of HTML into nodes."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.root = _Node("div", {})
+        self._open = [self.root]
+
+    def handle_starttag(self, tag: str, attrs: list[tuple[str, str | None]]) -> None:
+        node = _Node(tag, {name: value or "" for name, value in attrs})
+        self._open[-1].inside.append(node)
+        if tag not in _VOID:
+            self._open.append(node)
+
+    def handle_endtag(self, tag: str) -> None:
+        closed = self._open.pop()
+        assert closed.tag == tag, f"<{closed.tag}> ends as </{tag}>"
+
+    def handle_data(self, data: str) -> None:
+        self._open[-1].inside.append(data)
+
+
+# --- the tree as Markdown -----------------------------------------------------------------------------------
+
+_PLACE_OF_DRAWING = "\0"
+
+
+def _blocks(node: _Node) -> Iterator[str]:
+    """Yield the paragraphs, lists, tables and headings of a node; loose text between them is a paragraph."""
+    writer = _WRITERS.get(node.tag)
+    if writer is not None:
+        text = writer(node)
+        yield from [text] if text else []
+        return
+    for is_block, parts in groupby(node.inside, key=_is_block):
+        if is_block:
+            for part in parts:
+                yield from _blocks(part) if part.tag not in _LEFT_OUT else ()
+        elif text := _inline(parts):
+            yield text
+
+
+def _is_block(part: "_Node | str") -> bool:
+    return isinstance(part, _Node) and part.tag in _BLOCKS
+
+
+def _inline(parts: "Iterable[_Node | str]") -> str:
+    """Return parts as one run of Markdown; blocks among them are parted by line breaks, as in a cell of a table."""
+    pieces: list[str] = []
+    for part in parts:
+        if isinstance(part, str):
+            pieces.append(_SPECIAL.sub(r"\\\g<0>", re.sub(r"\s+", " ", part)))
+        elif part.tag not in _LEFT_OUT:
+            text = _INLINE.get(part.tag, _plain)(part)
+            pieces.append(f"{text}<br>" if part.tag in _BLOCKS and text else text)
+    return "".join(pieces).strip().removesuffix("<br>")
+
+
+def _plain(node: _Node) -> str:
+    return _inline(node.inside)
+
+
+def _text(node: _Node) -> str:
+    return "".join(part if isinstance(part, str) else _text(part) for part in node.inside)
+
+
+def _link(node: _Node) -> str:
+    address = node.attributes.get("href", "")
+    is_page = address.endswith("/") and "//" not in address
+    return f"[{_plain(node)}]({PurePosixPath(address) / 'index.md' if is_page else address})"
+
+
+def _around(before: str, after: str) -> Callable[[_Node], str]:
+    def write(node: _Node) -> str:
+        text = _plain(node)
+        return f"{before}{text}{after}" if text else ""
+
+    return write
+
+
+_INLINE: dict[str, Callable[[_Node], str]] = {
+    "a": _link,
+    "b": _around("**", "**"),
+    "br": lambda _: "<br>",
+    "code": lambda node: f"`{_text(node)}`",
+    "sub": _around("<sub>", "</sub>"),
+    "wbr": lambda _: _PLACE_OF_DRAWING,
+}
+
+
+def _items(marker: str) -> Callable[[_Node], str]:
+    return lambda node: "\n".join(f"{marker} {_plain(item)}" for item in _below(node, "li"))
+
+
+def _definitions(node: _Node) -> str:
+    pairs = zip(_below(node, "dt"), _below(node, "dd"), strict=True)
+    return "\n".join(f"- **{_plain(term)}**: {_plain(meaning)}" for term, meaning in pairs)
+
+
+def _table(node: _Node) -> str:
+    rows = [f"| {' | '.join(_plain(cell) for cell in _below(row, 'th', 'td'))} |" for row in _below(node, "tr")]
+    caption = [f"{_plain(each)}\n" for each in _below(node, "caption")]
+    return "\n".join([*caption, rows[0], "|---" * (rows[0].count(" | ") + 1) + "|", *rows[1:]])
+
+
+def _below(node: _Node, *tags: str) -> list[_Node]:
+    """Return the nearest nodes of these tags below a node."""
+    found: list[_Node] = []
+    for part in node.inside:
+        if isinstance(part, _Node):
+            found += [part] if part.tag in tags else _below(part, *tags)
+    return found
+
+
+_WRITERS: dict[str, Callable[[_Node], str]] = {
+    **{heading: _around(f"{'#' * level} ", "") for level, heading in enumerate(_HEADINGS, start=1)},
+    **dict.fromkeys(("p", "summary", "figcaption"), _plain),
+    "ul": _items("-"),
+    "ol": _items("1."),
+    "dl": _definitions,
+    "table": _table,
+    "pre": lambda node: f"```\n{_text(node).strip()}\n```",
+}
