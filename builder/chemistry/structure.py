@@ -8,7 +8,7 @@ drawing speak of the same atom. `Structure.typed_order` leads back to the author
 import logging
 import re
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
@@ -237,6 +237,18 @@ class Structure:
             )
             for atom in self.mol.GetAtoms()
         )
+
+    @cached_property
+    def elements(self) -> Mapping[str, int]:
+        """Return how many atoms of each element there are, by symbol, hydrogen and its isotopes left out."""
+        atoms = (self.mol.GetAtomWithIdx(at) for at in range(self.mol.GetNumAtoms()))
+        return Counter(atom.GetSymbol() for atom in atoms if atom.GetAtomicNum() != 1)
+
+    @cached_property
+    def signs(self) -> frozenset[int]:
+        """Return the signs of the formal charges in it, +1 and -1."""
+        atoms = (self.mol.GetAtomWithIdx(at) for at in range(self.mol.GetNumAtoms()))
+        return frozenset(1 if atom.GetFormalCharge() > 0 else -1 for atom in atoms if atom.GetFormalCharge())
 
     @cached_property
     def symmetry_classes(self) -> tuple[int, ...]:
