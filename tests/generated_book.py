@@ -33,7 +33,7 @@ SETTINGS: dict[str, Any] = {
     "format": 1,
     "title": "Generated book for measurements",
     "group": "No group (generated)",
-    "notice": "Generated to measure the tool: every entry is invented and nothing was run; not for use, not to be cited.",
+    "notice": "Generated to measure the tool: every entry is invented and nothing was run: not for use, not to cite.",
     "invented": True,
     "people": [{"code": code, "shown_as": f"{code} (invented)"} for code in (*PEOPLE, SAFETY)],
 }
