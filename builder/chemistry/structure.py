@@ -263,6 +263,8 @@ class Structure:
     @cached_property
     def without_stereocentres(self) -> "Structure":
         """Return the structure with no tetrahedral configuration drawn; double bonds keep theirs."""
+        if "@" not in self.smiles:
+            return self
         plain = Chem.Mol(self.mol)
         for atom in plain.GetAtoms():
             atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
@@ -271,6 +273,8 @@ class Structure:
     @cached_property
     def fragments(self) -> tuple["Structure", ...]:
         """Return the separate species, carbon-bearing ones first, then larger first, then by SMILES."""
+        if "." not in self.smiles:
+            return (self,)
         pieces = [parse_smiles(piece) for piece in self.smiles.split(".")]
         return tuple(sorted(pieces, key=lambda s: (not _has_carbon(s), -s.heavy_atom_count, s.smiles)))
 
@@ -293,6 +297,8 @@ class Structure:
     @cached_property
     def mirror_image(self) -> "Structure":
         """Return the enantiomer; undrawn stereocentres stay undrawn."""
+        if "@" not in self.smiles:
+            return self
         mirrored = Chem.Mol(self.mol)
         for atom in mirrored.GetAtoms():
             if atom.GetChiralTag() in _TETRAHEDRAL:
@@ -505,18 +511,30 @@ def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
         mol = Chem.RemoveHs(raw, sanitize=False)
         Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
         place = {a.GetIntProp("_written"): a.GetIdx() for a in _atoms_of(mol)}
-    # RDKit's canonical SMILES is not always a fixed point of reading and writing; another round makes it one.
-    canonical, smiles = mol, ""
-    for _ in range(4):
-        again = Chem.MolToSmiles(canonical)
+    text = Chem.MolToSmiles(mol)
+    order = {old: new for new, old in enumerate(output_order(mol))}
+    smiles, numbers, canonical = _settled(text)
+    written = tuple(numbers[order[place[at]]] for at in range(raw.GetNumAtoms()) if at in place)
+    return Structure(smiles, typed or smiles, written, canonical)
+
+
+@lru_cache(maxsize=8192)
+def _settled(text: str) -> tuple[str, tuple[AtomId, ...], Chem.Mol]:
+    """Return the canonical SMILES that reading and writing RDKit's leads to, each atom's place in it, the molecule.
+
+    Most often it is RDKit's own; another round, or two, makes a fixed point of the others. However a structure was
+    typed, it shares the molecule.
+    """
+    smiles, mol = text, Chem.MolFromSmiles(text)
+    numbers = list(range(mol.GetNumAtoms()))
+    for _ in range(3):
+        again = Chem.MolToSmiles(mol)
         if again == smiles:
             break
-        smiles = again
-        order = {old: new for new, old in enumerate(output_order(canonical))}
-        place = {key: order[at] for key, at in place.items()}
-        canonical = Chem.MolFromSmiles(smiles)
-    written = tuple(place[at] for at in range(raw.GetNumAtoms()) if at in place)
-    return Structure(smiles, typed or smiles, written, canonical)
+        order = {old: new for new, old in enumerate(output_order(mol))}
+        numbers = [order[at] for at in numbers]
+        smiles, mol = again, Chem.MolFromSmiles(again)
+    return smiles, tuple(numbers), mol
 
 
 def output_order(mol: Chem.Mol) -> list[int]:
