@@ -8,7 +8,7 @@ drawing speak of the same atom. `Structure.typed_order` leads back to the author
 import logging
 import re
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
@@ -200,7 +200,7 @@ class Structure:
     @cached_property
     def mass(self) -> float:
         """Return the average molar mass in g/mol; the mass of the isotope for a labelled atom."""
-        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in self.mol.GetAtoms())
+        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in _atoms_of(self.mol))
 
     @cached_property
     def charge(self) -> int:
@@ -215,28 +215,45 @@ class Structure:
     @cached_property
     def radical_electrons(self) -> int:
         """Return the number of unpaired electrons, most often a bracket atom that lacks its hydrogens."""
-        return sum(atom.GetNumRadicalElectrons() for atom in self.mol.GetAtoms())
+        return sum(atom.GetNumRadicalElectrons() for atom in _atoms_of(self.mol))
 
     @cached_property
     def atoms(self) -> tuple[Atom, ...]:
         """Return the atoms by AtomId, as plain values."""
-        rings = self.mol.GetRingInfo()
+        neighbours: list[list[tuple[AtomId, float]]] = [[] for _ in range(self.mol.GetNumAtoms())]
+        for bond in map(self.mol.GetBondWithIdx, range(self.mol.GetNumBonds())):
+            begin, end, order = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx(), bond.GetBondTypeAsDouble()
+            neighbours[begin].append((end, order))
+            neighbours[end].append((begin, order))
+        ring_sizes: list[list[int]] = [[] for _ in neighbours]
+        for ring in self.mol.GetRingInfo().AtomRings():
+            for at in ring:
+                ring_sizes[at].append(len(ring))
         return tuple(
             Atom(
-                id=atom.GetIdx(),
+                id=at,
                 symbol=atom.GetSymbol(),
                 charge=atom.GetFormalCharge(),
                 hydrogens=atom.GetTotalNumHs(),
                 isotope=atom.GetIsotope(),
                 aromatic=atom.GetIsAromatic(),
-                hybridisation=str(atom.GetHybridization()).lower(),
-                neighbours=tuple(
-                    sorted((b.GetOtherAtomIdx(atom.GetIdx()), b.GetBondTypeAsDouble()) for b in atom.GetBonds())
-                ),
-                ring_sizes=tuple(sorted(rings.AtomRingSizes(atom.GetIdx()))),
+                hybridisation=atom.GetHybridization().name.lower(),
+                neighbours=tuple(sorted(neighbours[at])),
+                ring_sizes=tuple(sorted(ring_sizes[at])),
             )
-            for atom in self.mol.GetAtoms()
+            for at, atom in enumerate(_atoms_of(self.mol))
         )
+
+    @cached_property
+    def elements(self) -> Mapping[str, int]:
+        """Return how many atoms of each element there are, by symbol, hydrogen and its isotopes left out."""
+        return Counter(atom.GetSymbol() for atom in _atoms_of(self.mol) if atom.GetAtomicNum() != 1)
+
+    @cached_property
+    def signs(self) -> frozenset[int]:
+        """Return the signs of the formal charges in it, +1 and -1."""
+        charges = (atom.GetFormalCharge() for atom in _atoms_of(self.mol))
+        return frozenset(1 if charge > 0 else -1 for charge in charges if charge)
 
     @cached_property
     def symmetry_classes(self) -> tuple[int, ...]:
@@ -246,6 +263,8 @@ class Structure:
     @cached_property
     def without_stereocentres(self) -> "Structure":
         """Return the structure with no tetrahedral configuration drawn; double bonds keep theirs."""
+        if "@" not in self.smiles:
+            return self
         plain = Chem.Mol(self.mol)
         for atom in plain.GetAtoms():
             atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
@@ -254,6 +273,8 @@ class Structure:
     @cached_property
     def fragments(self) -> tuple["Structure", ...]:
         """Return the separate species, carbon-bearing ones first, then larger first, then by SMILES."""
+        if "." not in self.smiles:
+            return (self,)
         pieces = [parse_smiles(piece) for piece in self.smiles.split(".")]
         return tuple(sorted(pieces, key=lambda s: (not _has_carbon(s), -s.heavy_atom_count, s.smiles)))
 
@@ -276,6 +297,8 @@ class Structure:
     @cached_property
     def mirror_image(self) -> "Structure":
         """Return the enantiomer; undrawn stereocentres stay undrawn."""
+        if "@" not in self.smiles:
+            return self
         mirrored = Chem.Mol(self.mol)
         for atom in mirrored.GetAtoms():
             if atom.GetChiralTag() in _TETRAHEDRAL:
@@ -337,6 +360,11 @@ class Structure:
         ranks = self.symmetry_classes
         around = [ranks[n.GetIdx()] for n in self.mol.GetAtomWithIdx(info.centeredOn).GetNeighbors()]
         return len(set(around)) < len(around)
+
+
+def _atoms_of(mol: Chem.Mol) -> "map[Chem.Atom]":
+    """Return the atoms of a molecule one by one; RDKit's own iterator asks for the number of atoms at every step."""
+    return map(mol.GetAtomWithIdx, range(mol.GetNumAtoms()))
 
 
 def bridgeheads_of(mol: Chem.Mol) -> frozenset[int]:
@@ -478,38 +506,52 @@ def _from_molblock(block: str) -> Structure:
         return _from_mol(raw, None)
 
 
+_WILDCARD, _HYDROGEN, _AROMATIC_OUTSIDE_A_RING = map(Chem.MolFromSmarts, ("[#0]", "[#1]", "*!@:*"))
+
+
 def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
     """Return the Structure of a sanitised molecule, its atoms put into canonical order."""
-    atoms = [raw.GetAtomWithIdx(at) for at in range(raw.GetNumAtoms())]
-    if any(atom.GetAtomicNum() == 0 for atom in atoms):
+    if raw.HasSubstructMatch(_WILDCARD):
         raise StructureError("wildcard atom", "write a definite atom in its place")
-    if any(bond.GetBondType() == Chem.BondType.AROMATIC and not bond.IsInRing() for bond in raw.GetBonds()):
+    if raw.HasSubstructMatch(_AROMATIC_OUTSIDE_A_RING):
         raise StructureError("aromatic bond outside a ring", "write a single or double bond in place of :")
     mol = raw
-    place = {at: at for at in range(len(atoms))}
-    if any(atom.GetAtomicNum() == 1 for atom in atoms):
-        for atom in atoms:
+    place = {at: at for at in range(raw.GetNumAtoms())}
+    if raw.HasSubstructMatch(_HYDROGEN):
+        for atom in _atoms_of(raw):
             atom.SetIntProp("_written", atom.GetIdx())
         mol = Chem.RemoveHs(raw, sanitize=False)
         Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
-        place = {a.GetIntProp("_written"): a.GetIdx() for a in mol.GetAtoms()}
-    # RDKit's canonical SMILES is not always a fixed point of reading and writing; another round makes it one.
-    canonical, smiles = mol, ""
-    for _ in range(4):
-        again = Chem.MolToSmiles(canonical)
+        place = {a.GetIntProp("_written"): a.GetIdx() for a in _atoms_of(mol)}
+    text = Chem.MolToSmiles(mol)
+    order = {old: new for new, old in enumerate(output_order(mol))}
+    smiles, numbers, canonical = _settled(text)
+    written = tuple(numbers[order[place[at]]] for at in range(raw.GetNumAtoms()) if at in place)
+    return Structure(smiles, typed or smiles, written, canonical)
+
+
+@lru_cache(maxsize=8192)
+def _settled(text: str) -> tuple[str, tuple[AtomId, ...], Chem.Mol]:
+    """Return the canonical SMILES that reading and writing RDKit's leads to, each atom's place in it, the molecule.
+
+    Most often it is RDKit's own; another round, or two, makes a fixed point of the others. However a structure was
+    typed, it shares the molecule.
+    """
+    smiles, mol = text, Chem.MolFromSmiles(text)
+    numbers = list(range(mol.GetNumAtoms()))
+    for _ in range(3):
+        again = Chem.MolToSmiles(mol)
         if again == smiles:
             break
-        smiles = again
-        order = {old: new for new, old in enumerate(output_order(canonical))}
-        place = {key: order[at] for key, at in place.items()}
-        canonical = Chem.MolFromSmiles(smiles)
-    written = tuple(place[at] for at in range(len(atoms)) if at in place)
-    return Structure(smiles, typed or smiles, written, canonical)
+        order = {old: new for new, old in enumerate(output_order(mol))}
+        numbers = [order[at] for at in numbers]
+        smiles, mol = again, Chem.MolFromSmiles(again)
+    return smiles, tuple(numbers), mol
 
 
 def output_order(mol: Chem.Mol) -> list[int]:
     """Return the atoms of a molecule in the order of the SMILES just written of it; for this room only."""
-    return [int(at) for at in mol.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"]]
+    return [int(at) for at in mol.GetProp("_smilesAtomOutputOrder").strip("[],").split(",")]
 
 
 def _restore(smiles: str, typed: str, typed_order: tuple[AtomId, ...]) -> Structure:

@@ -8,6 +8,7 @@ linked by AtomId. `UnbalancedTransformation` is raised where atoms or charge wou
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
 from enum import StrEnum
+from functools import lru_cache
 
 from rdkit import Chem
 
@@ -46,6 +47,9 @@ __all__ = [
     "violates_bredt",
 ]
 
+REMEMBERED = 512
+"""Edits kept of each sort: the search for products and the engine ask for the same ones."""
+
 SMALLEST_TRANS_RING = 8
 """Members of the smallest ring that holds a trans double bond, and so a bridgehead double bond: cyclooctene.
 
@@ -74,7 +78,8 @@ class Edit:
     protons_released: protons given to the surroundings; negative where protons were taken up.
     effect: inversion or retention at the carbon, anti or syn for an elimination or addition.
     geometry: E or Z of a double bond the edit has made, where it has one.
-    from_substrate, from_nucleophile: atom of the input -> atom of `product`, for atoms that are in it.
+    from_substrate, from_nucleophile: atom of the input -> atom of `product`, for atoms that are in it; never changed,
+    for edits are remembered.
     """
 
     product: Structure
@@ -104,6 +109,7 @@ class Cation:
     from_substrate: dict[AtomId, AtomId]
 
 
+@lru_cache(maxsize=REMEMBERED)
 def substitute(substrate: Structure, site: ReactiveSite, nucleophile: Nucleophile, *, inversion: bool = True) -> Edit:
     """Return the substitution of the leaving group of a site by the nucleophile.
 
@@ -138,6 +144,7 @@ def cyclise(substrate: Structure, site: ReactiveSite, group: Nucleophile, *, inv
     return _edit(bench, alpha, effect)
 
 
+@lru_cache(maxsize=REMEMBERED)
 def eliminate(
     substrate: Structure, site: ReactiveSite, beta_carbon: AtomId, *, effect: StereoEffect = StereoEffect.ANTI
 ) -> tuple[Edit, ...]:

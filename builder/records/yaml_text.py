@@ -240,9 +240,11 @@ class _Constructor:
     def _remark_on_comment(self, node: yaml.ScalarNode, path: ValuePath) -> None:
         """Remark on a text that goes on behind " #3", where YAML reads a comment; "# so" is one."""
         cut = self._rest_of_line(node).partition(" # ")[0].rstrip()
+        if not re.match(r" +#[^\s#]", cut):
+            return
         key = next((step for step in reversed(path) if isinstance(step, str)), "")
         start, end = node.start_mark, node.end_mark
-        if not re.match(r" +#[^\s#]", cut) or key not in _TEXT_KEYS or start.line != end.line:
+        if key not in _TEXT_KEYS or start.line != end.line:
             return
         whole = quoted(node.value + cut)
         message = f'{key} is read as "{node.value}", and what follows # as a comment'
@@ -381,7 +383,8 @@ class _Constructor:
 
     def _rest_of_line(self, node: yaml.Node) -> str:
         start = node.end_mark.index
-        return self.text[start:].partition("\n")[0]
+        end = self.text.find("\n", start)
+        return self.text[start:] if end < 0 else self.text[start:end]
 
 
 def _named(path: ValuePath) -> str:
