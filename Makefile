@@ -37,7 +37,7 @@ lint: .venv/.ready ## formatter, linter, types, import contracts
 test-all: system-test lint ## everything in `make test`, and the slow suites
 	$(BIN)/pytest -n $(WORKERS)
 
-bench: .venv/.ready ## what an entry, a prediction and a build of 1,000 entries cost; five minutes
+bench: .venv/.ready ## what an entry, a prediction, a build of 1,000 entries and the search cost; some minutes
 	$(BIN)/python -m tests.bench
 
 eval: .venv/.ready ## the engine against published reactions

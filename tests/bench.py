@@ -1,4 +1,4 @@
-"""What an entry, a prediction and a whole build cost: `make bench`.
+"""What an entry, a prediction, a whole build and the search cost: `make bench`.
 
 usage: python -m tests.bench [--batch]    --batch adds 10,000 predictions, on one process and on two; some minutes
 
@@ -36,6 +36,7 @@ from builder.publish.schemes import entry_scheme
 from builder.records.reader import Reading, read_record
 from tests.build_bench import print_build
 from tests.outcomes import CaseSet, answer_to, load_cases
+from tests.search_bench import print_search
 
 ROOT = Path(__file__).parents[1]
 TODAY = dt.date(2026, 12, 1)
@@ -194,6 +195,7 @@ def main() -> int:
     print_entries()
     print_predictions()
     print_build()
+    print_search()
     if "--batch" in sys.argv:
         print_batch()
     return 0
