@@ -24,6 +24,7 @@ from builder.finding import Level
 from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.frame import INKS_STYLE, Furniture, MenuItem, content_policy, inks_style
+from builder.publish.memory import load_memory, save_memory
 from builder.publish.page import Asset, Page, headings_of, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
@@ -53,7 +54,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
     def __init__(self) -> None:
         """Start with nothing remembered of an earlier build."""
         super().__init__()
-        self.memory: Memory = {}
+        self.memory: Memory | None = None
 
     def on_startup(self, *, command: Literal["build", "gh-deploy", "serve"], dirty: bool) -> None:  # noqa: ARG002
         """Note whether pages are built to be published, or served to their author; keeps the plugin between edits."""
@@ -65,14 +66,16 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         _add_our_theme(config)
         folder = Path(config.docs_dir)
         load_ring_templates()
+        self.memory = self.memory or load_memory(folder)
         self.book = open_book(
             folder,
             today=build_date(),
             keep=portrait_of,
             progress=watched,
-            processes=usual_processes(),
-            memory=self.memory if self.is_live else None,
+            processes=1 if self.is_live else usual_processes(),
+            memory=self.memory,
         )
+        save_memory(folder, self.memory)
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
         write_report(BuildReport(len(self.book.entries), len(failing)))

@@ -162,11 +162,14 @@ def print_build(entries: int = 1000) -> None:
         ours.mkdir()
         config = write_book(ours, generated_texts(entries), settings_text())
         our_cost = _least(measured(mkdocs_command(config), mkdocs_environment()) for _ in range(REPEATS))
+        again = mkdocs_environment() | {"XDG_CACHE_HOME": str(Path(scratch) / "cache")}
+        measured(mkdocs_command(config), again)
+        our_second = _least(measured(mkdocs_command(config), again) for _ in range(REPEATS))
         plain_config = write_plain_site(ours / "site", plain)
         plain_cost = _least(
             measured(mkdocs_command(plain_config, strict=False), mkdocs_environment()) for _ in range(REPEATS)
         )
-        _print_costs(entries, ours / "site", our_cost, plain / "site", plain_cost)
+        _print_costs(entries, ours / "site", our_cost, our_second, plain / "site", plain_cost)
         _print_weights(ours / "site")
 
 
@@ -175,16 +178,17 @@ def _least(costs: Iterable[Cost]) -> Cost:
     return min(costs, key=lambda cost: cost.cpu_s)
 
 
-def _print_costs(entries: int, our_site: Path, ours: Cost, plain_site: Path, plain: Cost) -> None:
+def _print_costs(entries: int, our_site: Path, ours: Cost, second: Cost, plain_site: Path, plain: Cost) -> None:
     print(f"\nwhole build of {entries} generated entries, least of {REPEATS}, load {os.getloadavg()[0]:.1f}")
     print(f"{'':<10}{'pages':>8}{'CPU s':>8}{'ms/page':>9}{'wall s':>8}{'peak PSS MB':>13}{'RSS MB':>8}")
-    for name, site, cost in (("ours", our_site, ours), ("plain", plain_site, plain)):
+    for name, site, cost in (("ours", our_site, ours), ("second", our_site, second), ("plain", plain_site, plain)):
         pages = sum(1 for _ in site.rglob("*.html"))
         print(
             f"{name:<10}{pages:>8}{cost.cpu_s:>8.1f}{1000 * cost.cpu_s / pages:>9.1f}{cost.wall_s:>8.1f}"
             f"{cost.pss_mb:>13.0f}{cost.rss_mb:>8.0f}"
         )
-    _print_goal("ratio", ours.cpu_s / plain.cpu_s, RATIO, "of the CPU time of plain pages")
+    _print_goal("ratio", ours.cpu_s / plain.cpu_s, RATIO, "of the CPU time of plain pages, nothing remembered")
+    _print_goal("second", second.cpu_s / plain.cpu_s, RATIO, "the same, records remembered from the build before")
     _print_goal("memory", ours.pss_mb, MEMORY_MB, "MB over all processes at one moment")
 
 

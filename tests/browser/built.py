@@ -71,4 +71,5 @@ def mkdocs_environment() -> dict[str, str]:
         "PYTHONHASHSEED": "0",
         "PYTHONUTF8": "1",
         "SOURCE_DATE_EPOCH": DAY,
+        "XDG_CACHE_HOME": os.devnull,  # every build begins anew
     }
