@@ -5,10 +5,12 @@ It is never read from the book's folder: what lies there may come from anybody, 
 
 import hashlib
 import pickle
+from contextlib import suppress
 from functools import cache
 from importlib.metadata import version
 from importlib.resources import files
 from pathlib import Path
+from tempfile import NamedTemporaryFile
 
 from platformdirs import user_cache_path
 
@@ -46,15 +48,12 @@ def load_memory(book: Path) -> Memory:
 def save_memory(book: Path, memory: Memory) -> None:
     """Leave what is remembered for the next build; where nothing can be written, nothing is."""
     place = _place(book)
-    beside = place.with_suffix(".part")
-    try:
+    with suppress(OSError):
         place.parent.mkdir(parents=True, exist_ok=True)
-        with beside.open("wb") as file:
+        with NamedTemporaryFile(dir=place.parent, suffix=".part", delete=False) as file:
             pickle.dump(tool_identity(), file)
             pickle.dump(memory.held, file, protocol=pickle.HIGHEST_PROTOCOL)
-        beside.replace(place)
-    except OSError:
-        beside.unlink(missing_ok=True)
+        Path(file.name).replace(place)
 
 
 def _place(book: Path) -> Path:

@@ -1,5 +1,6 @@
 """What a build remembers: only what is still true, and pages made from it are the same to the byte."""
 
+import os
 import pickle
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -90,6 +91,13 @@ def test_a_spoilt_memory_is_none(folder: Path, tmp_path: Path, cut: int) -> None
     save_memory(folder, memory)
     (place,) = (tmp_path / "cache").rglob("*.pickle")
     place.write_bytes(place.read_bytes()[:cut])
+    assert load_memory(folder).held == {}
+
+
+def test_a_build_goes_on_where_nothing_can_be_remembered(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setenv("XDG_CACHE_HOME", os.devnull)
+    _opened(folder, memory := Memory())
+    save_memory(folder, memory)
     assert load_memory(folder).held == {}
 
 
