@@ -21,11 +21,14 @@ __all__ = [
     "MAX_HEAVY_ATOMS",
     "MAX_RINGS",
     "MAX_STEREO_ELEMENTS",
+    "SMALLEST_TRANS_RING",
     "Atom",
     "AtomId",
     "Stereocentres",
     "Structure",
     "StructureError",
+    "atoms_of",
+    "bonds_of",
     "bridgeheads_of",
     "name_atom",
     "output_order",
@@ -46,6 +49,12 @@ MAX_RINGS = 40
 """Independent rings (bonds - atoms + pieces); protects ring perception, which explodes on dense cages."""
 MAX_STEREO_ELEMENTS = 60
 """Stereocentres and stereo double bonds as written; protects canonical ranking and stereo perception."""
+
+SMALLEST_TRANS_RING = 8
+"""Members of the smallest ring that holds a trans double bond, and so a bridgehead double bond: cyclooctene.
+
+Source: iupac-gold, Bredt's rule; trans-cyclooctene is the smallest isolable trans-cycloalkene (march-2013).
+"""
 
 _INORGANIC_CATIONS = frozenset({"Li", "Na", "K", "Rb", "Cs", "Mg", "Ca", "Ba", "Ag", "Cu", "Zn", "Tl", "Hg", "Cd"})
 _INORGANIC_ANIONS = frozenset(
@@ -200,7 +209,7 @@ class Structure:
     @cached_property
     def mass(self) -> float:
         """Return the average molar mass in g/mol; the mass of the isotope for a labelled atom."""
-        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in _atoms_of(self.mol))
+        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in atoms_of(self.mol))
 
     @cached_property
     def charge(self) -> int:
@@ -215,13 +224,13 @@ class Structure:
     @cached_property
     def radical_electrons(self) -> int:
         """Return the number of unpaired electrons, most often a bracket atom that lacks its hydrogens."""
-        return sum(atom.GetNumRadicalElectrons() for atom in _atoms_of(self.mol))
+        return sum(atom.GetNumRadicalElectrons() for atom in atoms_of(self.mol))
 
     @cached_property
     def atoms(self) -> tuple[Atom, ...]:
         """Return the atoms by AtomId, as plain values."""
         neighbours: list[list[tuple[AtomId, float]]] = [[] for _ in range(self.mol.GetNumAtoms())]
-        for bond in map(self.mol.GetBondWithIdx, range(self.mol.GetNumBonds())):
+        for bond in bonds_of(self.mol):
             begin, end, order = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx(), bond.GetBondTypeAsDouble()
             neighbours[begin].append((end, order))
             neighbours[end].append((begin, order))
@@ -241,18 +250,18 @@ class Structure:
                 neighbours=tuple(sorted(neighbours[at])),
                 ring_sizes=tuple(sorted(ring_sizes[at])),
             )
-            for at, atom in enumerate(_atoms_of(self.mol))
+            for at, atom in enumerate(atoms_of(self.mol))
         )
 
     @cached_property
     def elements(self) -> Mapping[str, int]:
         """Return how many atoms of each element there are, by symbol, hydrogen and its isotopes left out."""
-        return Counter(atom.GetSymbol() for atom in _atoms_of(self.mol) if atom.GetAtomicNum() != 1)
+        return Counter(atom.GetSymbol() for atom in atoms_of(self.mol) if atom.GetAtomicNum() != 1)
 
     @cached_property
     def signs(self) -> frozenset[int]:
         """Return the signs of the formal charges in it, +1 and -1."""
-        charges = (atom.GetFormalCharge() for atom in _atoms_of(self.mol))
+        charges = (atom.GetFormalCharge() for atom in atoms_of(self.mol))
         return frozenset(1 if charge > 0 else -1 for charge in charges if charge)
 
     @cached_property
@@ -266,7 +275,7 @@ class Structure:
         if "@" not in self.smiles:
             return self
         plain = Chem.Mol(self.mol)
-        for atom in plain.GetAtoms():
+        for atom in atoms_of(plain):
             atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
         return parse_smiles(Chem.MolToSmiles(plain))
 
@@ -290,7 +299,7 @@ class Structure:
     def without_isotopes(self) -> "Structure":
         """Return the structure with every isotope label taken off."""
         plain = Chem.Mol(self.mol)
-        for atom in plain.GetAtoms():
+        for atom in atoms_of(plain):
             atom.SetIsotope(0)
         return parse_smiles(Chem.MolToSmiles(Chem.RemoveHs(plain)))
 
@@ -300,7 +309,7 @@ class Structure:
         if "@" not in self.smiles:
             return self
         mirrored = Chem.Mol(self.mol)
-        for atom in mirrored.GetAtoms():
+        for atom in atoms_of(mirrored):
             if atom.GetChiralTag() in _TETRAHEDRAL:
                 atom.InvertChirality()
         return parse_smiles(Chem.MolToSmiles(mirrored))
@@ -362,9 +371,17 @@ class Structure:
         return len(set(around)) < len(around)
 
 
-def _atoms_of(mol: Chem.Mol) -> "map[Chem.Atom]":
-    """Return the atoms of a molecule one by one; RDKit's own iterator asks for the number of atoms at every step."""
+def atoms_of(mol: Chem.Mol) -> "map[Chem.Atom]":
+    """Return the atoms of an RDKit molecule one by one; for this room only.
+
+    RDKit's own iterator counts the atoms at every step.
+    """
     return map(mol.GetAtomWithIdx, range(mol.GetNumAtoms()))
+
+
+def bonds_of(mol: Chem.Mol) -> "map[Chem.Bond]":
+    """Return the bonds of an RDKit molecule one by one; for this room only."""
+    return map(mol.GetBondWithIdx, range(mol.GetNumBonds()))
 
 
 def bridgeheads_of(mol: Chem.Mol) -> frozenset[int]:
@@ -431,7 +448,7 @@ def parse_smiles(text: str) -> Structure:
             raise _explain_syntax(text, complaints)
         _refuse_excess(raw, _stereo_in_text(text))
         if ":" in text:
-            for atom in raw.GetAtoms():
+            for atom in atoms_of(raw):
                 atom.SetAtomMapNum(0)
         _sanitise(raw, text)
     return _from_mol(raw, text)
@@ -518,11 +535,11 @@ def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
     mol = raw
     place = {at: at for at in range(raw.GetNumAtoms())}
     if raw.HasSubstructMatch(_HYDROGEN):
-        for atom in _atoms_of(raw):
+        for atom in atoms_of(raw):
             atom.SetIntProp("_written", atom.GetIdx())
         mol = Chem.RemoveHs(raw, sanitize=False)
         Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
-        place = {a.GetIntProp("_written"): a.GetIdx() for a in _atoms_of(mol)}
+        place = {a.GetIntProp("_written"): a.GetIdx() for a in atoms_of(mol)}
     text = Chem.MolToSmiles(mol)
     order = {old: new for new, old in enumerate(output_order(mol))}
     smiles, numbers, canonical = _settled(text)
@@ -619,9 +636,9 @@ def _stereo_in_text(smiles: str) -> int:
 
 def _stereo_in_file(raw: Chem.Mol) -> int:
     """Return the wedged and double bonds of a molecule from a file, an upper bound of its stereo elements."""
-    wedged = sum(1 for bond in raw.GetBonds() if bond.GetBondDir() != Chem.BondDir.NONE)
-    double = sum(1 for bond in raw.GetBonds() if bond.GetBondType() == Chem.BondType.DOUBLE)
-    chiral = sum(1 for a in raw.GetAtoms() if a.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED)
+    wedged = sum(1 for bond in bonds_of(raw) if bond.GetBondDir() != Chem.BondDir.NONE)
+    double = sum(1 for bond in bonds_of(raw) if bond.GetBondType() == Chem.BondType.DOUBLE)
+    chiral = sum(1 for a in atoms_of(raw) if a.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED)
     return wedged + double + chiral
 
 
@@ -705,7 +722,7 @@ def _in_rdkit_words(text: str, complaints: list[str]) -> StructureError:
 
 
 def _has_carbon(structure: Structure) -> bool:
-    return any(atom.GetAtomicNum() == 6 for atom in structure.mol.GetAtoms())
+    return any(atom.GetAtomicNum() == 6 for atom in atoms_of(structure.mol))
 
 
 def _is_inorganic_counter_ion(structure: Structure) -> bool:

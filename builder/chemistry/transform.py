@@ -15,7 +15,7 @@ from rdkit import Chem
 from builder.chemistry.ledger import GAP, HYDROGEN, Alkene, Centre, Piece, UnbalancedTransformation, Workbench
 from builder.chemistry.patterns import Electrons, load_activations
 from builder.chemistry.perception import Nucleophile, ReactiveSite, moved_azole
-from builder.chemistry.structure import AtomId, Structure, parse_smiles
+from builder.chemistry.structure import SMALLEST_TRANS_RING, AtomId, Structure, bonds_of, parse_smiles
 
 __all__ = [
     "Cation",
@@ -49,12 +49,6 @@ __all__ = [
 
 REMEMBERED = 512
 """Edits kept of each sort: the search for products and the engine ask for the same ones."""
-
-SMALLEST_TRANS_RING = 8
-"""Members of the smallest ring that holds a trans double bond, and so a bridgehead double bond: cyclooctene.
-
-Source: iupac-gold, Bredt's rule; trans-cyclooctene is the smallest isolable trans-cycloalkene (march-2013).
-"""
 
 
 class StereoEffect(StrEnum):
@@ -843,7 +837,7 @@ def _set_geometry(bench: Workbench, ends: tuple[int, int], cis: bool) -> bool:
 
 
 def _has_drawn_alkene(structure: Structure) -> bool:
-    return any(bond.GetStereo() > Chem.BondStereo.STEREOANY for bond in structure.mol.GetBonds())
+    return any(bond.GetStereo() > Chem.BondStereo.STEREOANY for bond in bonds_of(structure.mol))
 
 
 def _with_geometries(
