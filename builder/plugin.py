@@ -10,7 +10,7 @@ from mkdocs.config.base import Config
 from mkdocs.config.config_options import Choice
 from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
-from mkdocs.plugins import BasePlugin
+from mkdocs.plugins import BasePlugin, get_plugin_logger
 from mkdocs.structure.files import File, Files, InclusionLevel
 from mkdocs.structure.nav import Navigation
 from mkdocs.structure.pages import Page as MkDocsPage
@@ -34,6 +34,8 @@ from builder.publish.search_index import Listed, listed_of, search_assets
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
 _FAVICON_OF_MATERIAL = "assets/images/favicon.png"
+log = get_plugin_logger("handbook")
+
 _UNUSED = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
 """What the theme brings and no page of ours loads."""
 
@@ -79,8 +81,10 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
         write_report(BuildReport(len(self.book.entries), len(failing)))
-        if failing:
+        if failing and not self.is_live:
             raise PluginError(f"the book cannot be published\n{render_text(failing, folder)}")
+        if failing:  # a record that is being written keeps nobody from reading the others
+            log.warning("left out, or not fit to be published yet:\n%s", render_text(failing, folder))
         self.pages = build_pages(self.book)
         _configure(config, self.book, self.pages)
 
