@@ -54,9 +54,7 @@ def state_of_book(book: Book[Portrait], summaries: Mapping[str, Summary]) -> Sta
     verdicts = Counter(entry.verdict for entry in book.entries)
     return StateOfBook(
         entries=len(book.entries),
-        by_verdict=tuple(
-            (str(verdict), verdict.name.lower().replace("_", "-"), verdicts[verdict]) for verdict in Verdict
-        ),
+        by_verdict=tuple((str(verdict), verdict.key, verdicts[verdict]) for verdict in Verdict),
         failures=sum(summary.is_failure for summary in summaries.values()),
         drafts=statuses.count(Status.DRAFT),
         retired=statuses.count(Status.SUPERSEDED) + statuses.count(Status.WITHDRAWN),
