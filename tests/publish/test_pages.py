@@ -1,6 +1,5 @@
 """Every page of a small book: sound HTML, live links, no bare numbers, nothing from a record taken as HTML."""
 
-import pickle
 import re
 from collections.abc import Callable
 from itertools import pairwise
@@ -156,11 +155,6 @@ def test_a_withdrawn_entry_keeps_its_page_and_says_why() -> None:
 def test_an_empty_book_has_a_site() -> None:
     front = build_pages(book_of())[0]
     assert "The book is empty" in front.body
-
-
-def test_portraits_are_plain_data(book: Book[Portrait]) -> None:
-    for entry in book.entries:
-        assert pickle.loads(pickle.dumps(entry.kept)) == entry.kept
 
 
 def test_the_menu_is_short_and_ends_with_the_guides(pages: dict[str, Page]) -> None:
