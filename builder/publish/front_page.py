@@ -111,5 +111,5 @@ def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: 
             indexes=indexes,
             root="",
         ),
-        menu=("State",),
+        menu="State",
     )

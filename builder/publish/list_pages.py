@@ -70,7 +70,7 @@ def list_pages(
                 sequences=len(sequences),
                 root="../",
             ),
-            menu=("Entries",),
+            menu="Entries",
         ),
         Page(
             kind="list",

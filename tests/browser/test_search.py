@@ -58,8 +58,7 @@ def demo() -> Book[Portrait]:
 def _bare_site(folder: Path, index: Iterable[Asset]) -> Path:
     """Write pages with nothing on them but the box, one for each palette, and the index it is to look in."""
     jinja = Environment(loader=FileSystemLoader(ROOT / "site_overrides" / "partials"), autoescape=True)
-    jinja.filters["url"] = str
-    box = jinja.get_template("hb-search.html").render(base_url=".")
+    box = jinja.get_template("hb-search.html").render(root="./")
     shutil.copytree(ROOT / "site_overrides" / "assets", folder / "assets")
     for asset in index:
         (folder / asset.path).write_bytes(asset.data)
