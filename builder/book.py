@@ -4,11 +4,12 @@ import datetime as dt
 import gc
 import hashlib
 import re
-from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from enum import StrEnum
-from multiprocessing import get_start_method
+from multiprocessing import get_context
 from pathlib import Path
 from typing import Any, Generic, TypeVar, overload
 
@@ -33,12 +34,8 @@ Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
 
 SHARE = 64
 """Records that one process reads; fewer are not worth starting one."""
-
-
-def _unwatched(done: Iterator["Examined[Any]"], _: int) -> Iterable["Examined[Any]"]:
-    return done
-
-
+_CHUNK = 8
+"""Records that a process takes at a time, so that none waits long for the slowest."""
 _RECORD_NAME = re.compile(r"NS[^/]*\.yml")
 _ASIDE = {"archive", "schema"}  # folders that hold frozen revisions and the JSON Schema, no current records
 
@@ -51,10 +48,19 @@ class Verdict(StrEnum):
     EXPLAINED = "explained"
     NOT_COVERED = "not covered"
 
+    @property
+    def key(self) -> str:
+        """Return the verdict as a word of addresses and style sheets."""
+        return self.replace(" ", "-")
+
 
 def whole(case: Case) -> Case:
     """Keep a case as it is."""
     return case
+
+
+def _unwatched(done: Iterator["Examined[Any]"], _: int) -> Iterable["Examined[Any]"]:
+    return done
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,11 +99,6 @@ class Book(Generic[Kept]):
     entries: tuple[Entry[Kept], ...]
     findings: tuple[Finding, ...]
     files: tuple[Path, ...]
-
-    @property
-    def by_id(self) -> Mapping[str, Entry[Kept]]:
-        """Return the entries by identifier."""
-        return {entry.id: entry for entry in self.entries}
 
     def count(self, level: Level) -> int:
         """Return how many open findings of this level the book has."""
@@ -143,7 +144,8 @@ class _Desk(Generic[Kept]):
 
     def key(self, path: Path) -> str:
         """Return a key of all that has a say in what becomes of a file, this tool apart."""
-        about = (self.name(path), self.settings.model_dump_json(), self.today, self.keep.__qualname__)
+        keep = getattr(self.keep, "__qualname__", type(self.keep).__qualname__)
+        about = (self.name(path), self.settings.model_dump_json(), self.today, keep)
         return hashlib.sha256(repr(about).encode() + path.read_bytes()).hexdigest()
 
     def examine(self, path: Path) -> Examined[Kept]:
@@ -238,20 +240,32 @@ def _examined(
 def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:
     """Yield what becomes of each file, in the order of the files.
 
-    Where processes are forked, the first file is read here, with all tables it takes, and each process is given up
-    after its share: a book of any length takes the memory of a short one.
+    Where processes are forked, the first file is read here, with all tables it takes, and the processes are given up
+    after their shares: a book of any length takes the memory of a short one.
     """
     processes = min(processes, len(files) // SHARE)
     if processes < 2:
         yield from map(desk.examine, files)
         return
-    is_forked = get_start_method() == "fork"
+    context = get_context()
+    if context.get_start_method() != "fork":
+        with ProcessPoolExecutor(processes, context) as pool:
+            yield from pool.map(desk.examine, files, chunksize=_CHUNK)
+        return
     yield desk.examine(files[0])
-    step = processes * SHARE if is_forked else len(files)
+    step = processes * SHARE
     for start in range(1, len(files), step):
-        gc.freeze()  # what the collector leaves alone stays shared with the processes
-        with ProcessPoolExecutor(processes) as pool:
-            yield from pool.map(desk.examine, files[start : start + step], chunksize=SHARE // 8)
+        with _left_alone_by_the_collector(), ProcessPoolExecutor(processes, context) as pool:
+            yield from pool.map(desk.examine, files[start : start + step], chunksize=_CHUNK)
+
+
+@contextmanager
+def _left_alone_by_the_collector() -> Iterator[None]:
+    """Keep the collector off what there is: memory that nobody writes to stays shared with forked processes."""
+    gc.freeze()
+    try:
+        yield
+    finally:
         gc.unfreeze()
 
 

@@ -38,6 +38,7 @@ from builder.mechanism.improve import improvements, is_as_wanted
 from builder.mechanism.rate_terms import FITTED_TABLE
 from builder.publish.build import AddressError, NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
 from builder.publish.console import put_up_with_any_console
+from builder.publish.figures import how_many
 from builder.publish.forecast_text import render_forecast
 from builder.publish.progress import counted, stepped, watched
 from builder.records.settings import SETTINGS_FILE
@@ -154,8 +155,7 @@ def build(config: Path, site: Path) -> None:
     except SiteBuildError as error:
         click.echo(str(error), err=True)
         sys.exit(FINDINGS if error.report is not None and error.report.failing else MISUSE)
-    entries = "1 entry" if report.entries == 1 else f"{report.entries} entries"
-    click.echo(f"{entries} published in {site}/")
+    click.echo(f"{how_many(report.entries, 'entry', 'entries')} published in {site}/")
 
 
 @handbook.command()
@@ -350,7 +350,7 @@ def _predict_batch(batch: Path, output: Path, processes: int) -> None:
             results.write(f"{answer.text}\n")
             done, bad = done + 1, bad + answer.is_error
             advance(answer.size)
-    click.echo(f"{done} line{'' if done == 1 else 's'} answered in {output}, {bad} of them with an error", err=True)
+    click.echo(f"{how_many(done, 'line', 'lines')} answered in {output}, {bad} of them with an error", err=True)
     if bad:
         sys.exit(FINDINGS)
 

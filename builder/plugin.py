@@ -4,17 +4,19 @@ import re
 from html import escape
 from pathlib import Path
 from typing import Any, Literal
-from urllib.parse import quote
+from urllib.parse import quote, urlsplit
 
+from markupsafe import Markup
 from mkdocs.config.base import Config
 from mkdocs.config.config_options import Choice
 from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
 from mkdocs.plugins import BasePlugin, get_plugin_logger
 from mkdocs.structure.files import File, Files, InclusionLevel
-from mkdocs.structure.nav import Navigation
+from mkdocs.structure.nav import Navigation, Section
 from mkdocs.structure.pages import Page as MkDocsPage
 from mkdocs.structure.toc import AnchorLink, TableOfContents
+from mkdocs.utils import get_theme_dir
 from mkdocs.utils.templates import TemplateContext
 
 from builder.book import Book, Memory, open_book
@@ -30,14 +32,15 @@ from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.progress import watched
 from builder.publish.search_index import Listed, listed_of, search_assets
+from builder.records.settings import Settings
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
 _FAVICON_OF_MATERIAL = "assets/images/favicon.png"
 log = get_plugin_logger("handbook")
 
-_UNUSED = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
-"""What the theme brings and no page of ours loads."""
+_UNUSED_OF_MATERIAL = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
+"""What Material brings and no page of ours loads."""
 
 
 class HandbookConfig(Config):  # type: ignore[no-untyped-call]  # MkDocs leaves __init_subclass__ untyped
@@ -86,21 +89,25 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         if failing:  # a record that is being written keeps nobody from reading the others
             log.warning("left out, or not fit to be published yet:\n%s", render_text(failing, folder))
         self.pages = build_pages(self.book)
-        _configure(config, self.book, self.pages)
+        _configure(config, self.book.settings)
 
     def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
-        """Add the pages and their downloads; of the book's own files only Markdown and the logo are published."""
-        for file in list(files):
-            is_ours = file.src_dir == config.docs_dir and file.src_uri != self.book.settings.logo
-            if (is_ours and not file.is_documentation_page()) or file.src_uri.startswith(_UNUSED):
-                files.remove(file)
+        """Add the pages and their downloads, and the menu unless mkdocs.yml has one."""
+        for file in _unwanted(files, config):
+            files.remove(file)
+        own = {file.dest_uri: file.src_uri for file in files.documentation_pages()}
+        instead = {}
         assets = [inks_style(self.book.settings.accent)]
         for page in self.pages:
-            if page.file not in files.src_uris:  # a group may write a page of its own in place of ours
-                files.append(_VirtualPage(page, config).file)
+            file = _VirtualPage(page, config).file
+            if file.dest_uri in own:  # a group may write a page of its own in place of ours
+                instead[page.file] = own[file.dest_uri]
+            else:
+                files.append(file)
                 assets += page.assets
         for asset in assets:
             files.append(_published(asset, config))
+        config.nav = config.nav or menu_of(self.pages, instead)
         return files
 
     def on_page_context(
@@ -142,6 +149,19 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         return env
 
 
+def _unwanted(files: Files, config: MkDocsConfig) -> list[File]:
+    """Return what is not published: of the book all but Markdown and what the frame shows, of Material what is idle."""
+    theme, material = config.theme, get_theme_dir("material")
+    shown = {theme["favicon"], theme.get("logo"), *config.extra_css, *map(str, config.extra_javascript)}
+
+    def is_wanted(file: File) -> bool:
+        if file.src_dir == config.docs_dir:
+            return file.is_documentation_page() or file.src_uri in shown
+        return file.src_dir != material or not file.src_uri.startswith(_UNUSED_OF_MATERIAL)
+
+    return [file for file in files if not is_wanted(file)]
+
+
 def _published(asset: Asset, config: MkDocsConfig) -> File:
     return File.generated(config, asset.path, content=asset.data, inclusion=InclusionLevel.INCLUDED)
 
@@ -151,18 +171,33 @@ def _listed(file: File) -> Listed | None:
     page = file.page
     if isinstance(page, _VirtualPage):
         return listed_of(page.page)
-    return Listed(page.url, str(page.title), str(page.meta.get("description", ""))) if page else None
+    return Listed(page.url, _plain(page.title), _plain(page.meta.get("description", ""))) if page else None
 
 
-def _menu(nav: Navigation, section: str) -> tuple[MenuItem, ...]:
-    """Return the top of the menu, an item of which leads to its first page; section: path of the one to mark."""
+def _plain(title: object) -> str:
+    """Return as plain text what MkDocs gives as HTML (a heading) or as typed (front matter, mkdocs.yml)."""
+    return Markup(title).striptags()  # noqa: S704 - nothing of it is marked safe any more
+
+
+def _menu(nav: Navigation, section: str, root: str) -> tuple[MenuItem, ...]:
+    """Return the top of the menu, an item of which leads to its first page.
+
+    section: path of the page to mark. root: from the page to the site's root.
+    """
     items = []
     for item in nav.items:
         first = item
         while first.children:
             first = first.children[0]
-        items.append(MenuItem(str(item.title), first.url or "", bool(item.active) or first.url == (section or None)))
+        if not isinstance(first, Section):  # an empty one leads nowhere
+            is_here = bool(item.active) or (section != "" and first.url in {section, f"{section}index.html"})
+            items.append(MenuItem(_plain(item.title), _href(first.url or "", root), is_here))
     return tuple(items)
+
+
+def _href(url: str, root: str) -> str:
+    """Return an address below the site's root, or one elsewhere, as a link of a page."""
+    return url if urlsplit(url).scheme or url.startswith("/") else root + url.removeprefix("./")
 
 
 class _VirtualPage(MkDocsPage):
@@ -173,7 +208,7 @@ class _VirtualPage(MkDocsPage):
         file = File.generated(config, page.file, content="", inclusion=place)
         if page.source is not None:
             file.edit_uri = quote(page.source)
-        super().__init__(escape(page.menu[-1] if page.menu else page.title), file, config)
+        super().__init__(escape(page.menu or page.title), file, config)
         self.page = page
 
     def read_source(self, config: MkDocsConfig) -> None:  # noqa: ARG002 - MkDocs calls it so
@@ -182,7 +217,6 @@ class _VirtualPage(MkDocsPage):
         self.meta = {
             "title": escape(page.title),
             "description": escape(page.description),
-            "kind": page.kind,
             "section": page.section,
         }
         if not page.indexed:
@@ -228,12 +262,10 @@ def _theme_folder() -> Path:
     return inside if inside.is_dir() else package.with_name(inside.name)
 
 
-def _configure(config: MkDocsConfig, book: Book[Portrait], pages: tuple[Page, ...]) -> None:
-    """Take title, addresses and logo from the book's settings; the menu too, unless mkdocs.yml has one."""
-    settings = book.settings
+def _configure(config: MkDocsConfig, settings: Settings) -> None:
+    """Take title, addresses and logo from the book's settings."""
     config.site_name = escape(settings.title)
     config.site_url = config.site_url or settings.site_address
     config.edit_uri = config.edit_uri or settings.edit_address
-    config.nav = config.nav or menu_of(pages)
     if settings.logo:
         config.theme["logo"] = settings.logo

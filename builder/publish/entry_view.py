@@ -11,13 +11,9 @@ from urllib.parse import quote
 
 from builder.book import Book, Entry, Verdict
 from builder.finding import Finding, Level
-from builder.publish.charges import (
-    AmountView,
-    StageView,
-    amounts_as_tsv,
-)
+from builder.publish.charges import AmountView, StageView, amounts_as_tsv
 from builder.publish.expected import ExpectedView
-from builder.publish.figures import joined
+from builder.publish.figures import capital, joined
 from builder.publish.measured import MeasuredLine, rate_constant_text
 from builder.publish.neighbours import SequenceView, Variant, same_product, sequences, variant_of, view_sequence
 from builder.publish.portrait import CompoundView, Portrait
@@ -291,7 +287,7 @@ def _claim(record: Record) -> tuple[Fact, ...]:
 
 def _in_words(record: Record) -> str:
     results = joined(map(str, record.outcome.result), " and ")
-    return f"{results[:1].upper()}{results[1:]}."
+    return f"{capital(results)}."
 
 
 def _failure(record: Record) -> tuple[Fact, ...]:
@@ -423,7 +419,7 @@ def _citation(entry: Entry[Portrait], settings: Settings) -> str:
     record = entry.record
     return joined(
         (
-            f"{settings.group or settings.title}",
+            settings.group or settings.title,
             f"“{record.title}”",
             settings.title if settings.group else "",
             f"entry {entry.id}",

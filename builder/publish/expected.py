@@ -84,11 +84,11 @@ def _main_product(case: Case, forecast: Forecast) -> str:
         return ""
     main = max(forecast.products, key=lambda each: each.share)
     bounds = share_bounds(forecast, lambda each: each.structure == main.structure)
-    products = case.record.outcome.products
     names = [
         f"{product.name} ({product.label})"
-        for index, product in enumerate(products)
-        if is_same_product(case.structures[("outcome", "products", index)], main.structure)
+        for index, product in enumerate(case.record.outcome.products)
+        if (drawn := case.structures.get(("outcome", "products", index))) is not None
+        and is_same_product(drawn, main.structure)
     ]
     share = expected_text(bounds.share, (bounds.low, bounds.high))
     return f"{names[0] if names else main.structure.smiles}, {share} of what reacts"

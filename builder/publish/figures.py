@@ -8,10 +8,12 @@ from builder.records.quantities import Quantity
 
 __all__ = [
     "amount_text",
+    "capital",
     "concentration_text",
     "duration_text",
     "equivalents_text",
     "formula_parts",
+    "how_many",
     "joined",
     "mass_text",
     "molar_mass_text",
@@ -120,6 +122,20 @@ def formula_parts(formula: str) -> tuple[tuple[str, str], ...]:
         return ((formula, ""),)
     pairs = re.findall(r"([A-Z][a-z]?)(\d*)", match["atoms"])
     return (*pairs, (match["charge"], "")) if match["charge"] else tuple(pairs)
+
+
+def capital(text: str) -> str:
+    """Return `text` with a capital at its beginning, and the rest as it is."""
+    return f"{text[:1].upper()}{text[1:]}"
+
+
+def how_many(number: int, one: str, many: str) -> str:
+    """Return a number with its noun.
+
+    >>> how_many(1, "entry", "entries"), how_many(0, "entry", "entries")
+    ('1 entry', '0 entries')
+    """
+    return f"{number} {one if number == 1 else many}"
 
 
 def joined(parts: Iterable[str], joint: str = ", ") -> str:

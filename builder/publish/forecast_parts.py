@@ -12,7 +12,7 @@ from builder.mechanism.outlook import expected_text, percent_text
 from builder.mechanism.question import Question
 from builder.mechanism.rate_terms import fitted_parameters
 from builder.mechanism.rules import GATES
-from builder.publish.figures import duration_text, joined
+from builder.publish.figures import capital, duration_text, how_many, joined
 from builder.records.vocabulary import ELIMINATIONS, Course, Mechanism
 from builder.sources import source_text
 
@@ -85,7 +85,7 @@ class Closed:
 
 def as_sentence(text: str) -> str:
     """Return `text` with a capital and a full stop."""
-    return f"{text[:1].upper()}{text[1:]}{'' if text.endswith('.') else '.'}"
+    return f"{capital(text)}{'' if text.endswith('.') else '.'}"
 
 
 def signed(value: float) -> str:
@@ -198,7 +198,7 @@ def _source(contribution: Contribution) -> str:
     terms = fitted_parameters()
     rows = terms[contribution.key].rows if contribution.key in terms else 0
     if rows:
-        return f"fitted, {rows} row{'s' if rows > 1 else ''}"
+        return f"fitted, {how_many(rows, 'row', 'rows')}"
     return "estimated" if contribution.source == "estimated-here" else source_text(contribution.source)
 
 

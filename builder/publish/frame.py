@@ -46,10 +46,10 @@ def inks_style(accent: Accent | None) -> Asset:
 
 @dataclass(frozen=True, slots=True)
 class MenuItem:
-    """One item of the menu: label as HTML text, address below the site's root, whether the page stands in it."""
+    """One item of the menu: plain label, address as a link of the page, whether the page stands in it."""
 
     label: str
-    url: str
+    href: str
     is_here: bool
 
 

@@ -8,6 +8,7 @@ from builder.book import Book, Verdict
 from builder.finding import Level
 from builder.publish.entry_view import next_review
 from builder.publish.facets import FacetIndex
+from builder.publish.figures import how_many
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary, newest_first
@@ -54,9 +55,7 @@ def state_of_book(book: Book[Portrait], summaries: Mapping[str, Summary]) -> Sta
     verdicts = Counter(entry.verdict for entry in book.entries)
     return StateOfBook(
         entries=len(book.entries),
-        by_verdict=tuple(
-            (str(verdict), verdict.name.lower().replace("_", "-"), verdicts[verdict]) for verdict in Verdict
-        ),
+        by_verdict=tuple((str(verdict), verdict.key, verdicts[verdict]) for verdict in Verdict),
         failures=sum(summary.is_failure for summary in summaries.values()),
         drafts=statuses.count(Status.DRAFT),
         retired=statuses.count(Status.SUPERSEDED) + statuses.count(Status.WITHDRAWN),
@@ -96,11 +95,12 @@ def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: 
         verdict: [summary for summary in current if summary.verdict == verdict]
         for verdict in (Verdict.CONTRARY, Verdict.EXPLAINED)
     }
+    entries = how_many(len(book.entries), "entry", "entries")
     return Page(
         kind="front",
         path="",
         title=book.settings.title,
-        description=f"{book.settings.title}: {len(book.entries)} entries of conditions, each checked and cited.",
+        description=f"{book.settings.title}: conditions in {entries}, each checked and cited.",
         write=deferred(
             "front.html",
             settings=book.settings,
@@ -113,5 +113,5 @@ def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: 
             indexes=indexes,
             root="",
         ),
-        menu=("State",),
+        menu="State",
     )

@@ -80,7 +80,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
                 house_rules=book.settings.house_rules,
                 root="../",
             ),
-            menu=("Add",),
+            menu="Add",
         ),
         Page(
             kind="guide",
@@ -88,7 +88,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
             title="How to cite",
             description="Identifier, revision and digest name one experiment for good.",
             write=deferred("how_to_cite.html", settings=book.settings, root="../"),
-            menu=("Cite",),
+            menu="Cite",
         ),
     )
 

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 
 from builder.book import Book, Verdict
 from builder.publish.facets import Facet, FacetIndex, FacetValue
+from builder.publish.figures import how_many, joined
 from builder.publish.neighbours import SequenceView
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
@@ -24,6 +25,13 @@ class Tally:
     failed: int
     retired: int
     lately: str
+
+    @property
+    def words(self) -> str:
+        """Return the numbers in words, those that are none left out; empty where nothing can be said."""
+        numbers = (self.in_line, self.differ, self.failed, self.retired)
+        words = ("in line", "contrary or explained", "failed", "superseded or withdrawn")
+        return joined(f"{number} {word}" for number, word in zip(numbers, words, strict=True) if number)
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,7 +69,7 @@ def list_pages(
             kind="list",
             path="lists/",
             title="Entries",
-            description=f"All {len(book.entries)} entries, and the lists by which to find them.",
+            description=f"{how_many(len(book.entries), 'entry', 'entries')}, and the lists by which to find them.",
             write=deferred(
                 "lists.html",
                 indexes=indexes,
@@ -70,13 +78,13 @@ def list_pages(
                 sequences=len(sequences),
                 root="../",
             ),
-            menu=("Entries",),
+            menu="Entries",
         ),
         Page(
             kind="list",
             path="lists/sequences/",
             title="Sequences",
-            description=f"{len(sequences)} sequences in which the product of one entry is the substrate of the next.",
+            description="Runs of entries in which each makes the substrate of the next.",
             write=deferred("sequences.html", sequences=sequences, root="../../"),
             section="lists/",
         ),
@@ -106,7 +114,7 @@ def _value_page(facet: Facet, value: FacetValue, summaries: Mapping[str, Summary
         kind="list",
         path=f"lists/{facet.key}/{value.slug}/",
         title=f"{facet.title}: {value.value}",
-        description=f"{len(rows)} entries with {facet.title.lower()} {value.value}.",
+        description=f"{how_many(len(rows), 'entry', 'entries')} with {facet.title.lower()} {value.value}.",
         write=deferred(
             "facet_value.html", facet=facet, value=value.value, summaries=rows, tally=tally(rows), root="../../../"
         ),

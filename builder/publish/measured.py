@@ -25,8 +25,8 @@ class MeasuredLine:
     """One measurement as shown.
 
     what: yield, conversion, recovered, ee, er, dr or ratio. text: the number with its kind, "88 % isolated yield".
-    of: labels it speaks of. names: of
-    the one product, or of several with their labels. basis: scale, runs, method and the like.
+    of: labels it speaks of. names: of the one product, or of several with their labels.
+    basis: scale, runs, method and the like.
     """
 
     what: str

@@ -12,18 +12,7 @@ from builder.publish.figures import joined
 from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary
 
-__all__ = ["SequenceView", "Step", "Variant", "same_product", "sequences", "variant_of", "view_sequence"]
-
-LONGEST = 12
-"""Steps after which a sequence is cut, so that a ring of records that precede one another ends."""
-
-
-@dataclass(frozen=True, slots=True)
-class Step:
-    """One step of a sequence: its number and its entry."""
-
-    number: int
-    summary: Summary
+__all__ = ["SequenceView", "Variant", "same_product", "sequences", "variant_of", "view_sequence"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,7 +22,7 @@ class SequenceView:
     words: str
     wide: Markup
     tall: Markup
-    steps: tuple[Step, ...]
+    steps: tuple[Summary, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,7 +35,6 @@ class Variant:
     solvent: str
     temperature: str
     time: str
-    scale: str
 
 
 def variant_of(entry: Entry[Portrait], summary: Summary) -> Variant:
@@ -59,12 +47,14 @@ def variant_of(entry: Entry[Portrait], summary: Summary) -> Variant:
         solvent=facts["Solvent"],
         temperature=facts["Temperature"],
         time=facts["Time"],
-        scale=facts["Scale"],
     )
 
 
 def sequences(entries: Iterable[Entry[Portrait]]) -> tuple[tuple[Entry[Portrait], ...], ...]:
-    """Return every run of entries that make each other's substrate, from its first step to each of its last ones."""
+    """Return every run of entries that make each other's substrate, from its first step to each of its last ones.
+
+    An entry follows the first of those it names; so no run comes back to itself.
+    """
     by_id = {entry.id: entry for entry in entries}
     after: dict[str, list[Entry[Portrait]]] = {}
     for entry in by_id.values():
@@ -76,7 +66,7 @@ def sequences(entries: Iterable[Entry[Portrait]]) -> tuple[tuple[Entry[Portrait]
     ]
     while waiting:
         run = waiting.pop(0)
-        further = [entry for entry in after.get(run[-1].id, ()) if entry not in run and len(run) < LONGEST]
+        further = after.get(run[-1].id, ())
         waiting += [(*run, entry) for entry in further]
         if not further:
             found.append(run)
@@ -108,5 +98,5 @@ def view_sequence(run: Sequence[Entry[Portrait]], summaries: Mapping[str, Summar
     words, ident = joined((start, *names), " to "), f"sequence-{run[-1].id}"
     wide = draw_scheme(drawn, name=words, ident=f"{ident}-wide", layout="wide")
     tall = draw_scheme(drawn, name=words, ident=f"{ident}-tall", layout="tall")
-    steps = tuple(Step(number, summaries[entry.id]) for number, entry in enumerate(run, start=1))
+    steps = tuple(summaries[entry.id] for entry in run)
     return SequenceView(words, Markup(wide), Markup(tall), steps)  # noqa: S704 - our own drawings, as in schemes

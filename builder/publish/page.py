@@ -1,13 +1,12 @@
 """Page and Asset: what the publishing rooms hand over, and all that a site generator needs to know of it."""
 
 import re
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
+from types import MappingProxyType
+from typing import Literal
 
-__all__ = ["Asset", "Heading", "Menu", "Page", "Written", "headings_of", "menu_of"]
-
-Menu = list[dict[str, "str | Menu"] | str]
-"""Entries of a menu: a label with a page's source, a label with a menu below it, or a section's own page."""
+__all__ = ["Asset", "Heading", "Page", "Written", "headings_of", "menu_of"]
 
 _HEADING = re.compile(r'<h2 id="(?P<id>[^"]+)"[^>]*>(?P<title>[^<]+)</h2>')
 
@@ -44,11 +43,10 @@ class Page:
     title, description: plain text, not escaped.
     write: gives the HTML of the page, anew on every call, so that a large site need not be held at once; every link in
         it is relative.
-    kind: what the page is (entry, list, rule, guide, front), for its style.
     section: path of the page in the menu under which this one belongs, where that is another.
     source: file behind the page, below the book's folder, for the edit link.
-    menu: labels under which the page stands in the menu, outermost first; none keeps it out.
-    indexed: whether search engines and the site's own search may list it.
+    menu: label under which the page stands in the menu; none keeps it out.
+    indexed: whether search engines may list it.
     assets: files that belong to the page.
     """
 
@@ -56,10 +54,10 @@ class Page:
     title: str
     write: Callable[[], Written]
     description: str
-    kind: str
+    kind: Literal["entry", "front", "guide", "list", "rule"]
     section: str = ""
     source: str | None = None
-    menu: tuple[str, ...] = ()
+    menu: str = ""
     indexed: bool = True
     assets: tuple[Asset, ...] = field(default=())
 
@@ -79,17 +77,9 @@ def headings_of(body: str) -> tuple[Heading, ...]:
     return tuple(Heading(match["id"], match["title"]) for match in _HEADING.finditer(body))
 
 
-def menu_of(pages: Iterable[Page]) -> Menu:
-    """Return the menu of the pages that want to stand in one, in the order given."""
-    menu: Menu = []
-    sections: dict[tuple[str, ...], Menu] = {(): menu}
-    listed = [page for page in pages if page.menu]
-    with_children = {page.menu[:-1] for page in listed}
-    for page in listed:
-        above = sections[page.menu[:-1]]
-        if page.menu in with_children:
-            sections[page.menu] = [page.file]
-            above.append({page.menu[-1]: sections[page.menu]})
-        else:
-            above.append({page.menu[-1]: page.file})
-    return menu
+def menu_of(pages: Iterable[Page], instead: Mapping[str, str] = MappingProxyType({})) -> list[dict[str, str]]:
+    """Return the menu of the pages that want to stand in one, in the order given: label and file of each.
+
+    instead: files that stand in place of some of the pages, by the file of the page.
+    """
+    return [{page.menu: instead.get(page.file, page.file)} for page in pages if page.menu]

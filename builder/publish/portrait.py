@@ -114,7 +114,7 @@ def summarise(entry: Entry[Portrait]) -> Summary:
         conditions=entry.kept.conditions,
         outcome=entry.kept.outcome,
         verdict=str(entry.verdict),
-        verdict_key=entry.verdict.name.lower().replace("_", "-"),
+        verdict_key=entry.verdict.key,
         take_away=record.take_away or "",
         status=str(record.status),
         is_failure=not any(result.gives_products for result in results) or record.outcome.failure is not None,

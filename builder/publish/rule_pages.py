@@ -147,7 +147,7 @@ def rule_pages(book: Book[Portrait], rules: Sequence[AnyRule]) -> tuple[Page, ..
         title="Rules",
         description=f"The {len(views)} rules by which records are checked, each with its reason and source.",
         write=deferred("rules.html", groups=[group for group in groups if group[2]], root="../"),
-        menu=("Rules",),
+        menu="Rules",
     )
     known = {view.id for view in views}
     return (index, *(_rule_page(view, known) for view in views))

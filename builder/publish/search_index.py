@@ -67,14 +67,14 @@ class _Words:
 
 
 def listed_of(page: Page) -> Listed | None:
-    """Return a page of ours as the search offers it; None for entries, which stand in it apart, and unlisted pages.
+    """Return a page of ours as the search offers it; None for entries, which stand in it apart, and the front page.
 
     A rule is meant by its id.
     """
-    section, _, rest = page.path.partition("/")
-    if not page.indexed or not page.path or section == "e":
+    if page.kind in {"entry", "front"}:
         return None
-    return Listed(page.path, page.title, page.description, rest.rstrip("/") if section == "rules" else "")
+    key = page.path.removeprefix("rules/").rstrip("/") if page.kind == "rule" else ""
+    return Listed(page.path, page.title, page.description, key)
 
 
 def search_assets(entries: Sequence[Entry[Portrait]], listed: Iterable[Listed]) -> tuple[Asset, Asset]:

@@ -1,10 +1,11 @@
-"""The one Jinja environment: every value is escaped, an unknown name is an error."""
+"""The one Jinja environment: every value is escaped, an unknown name is an error; two functions for words."""
 
 from collections.abc import Callable
 from functools import cache
 
 from jinja2 import Environment, PackageLoader, StrictUndefined
 
+from builder.publish.figures import capital, how_many
 from builder.publish.page import Written
 
 __all__ = ["deferred", "render"]
@@ -25,7 +26,7 @@ def deferred(template: str, /, **values: object) -> Callable[[], Written]:
 
 @cache
 def _environment() -> Environment:
-    return Environment(
+    environment = Environment(
         loader=PackageLoader("builder.publish"),
         autoescape=True,
         undefined=StrictUndefined,
@@ -33,3 +34,6 @@ def _environment() -> Environment:
         lstrip_blocks=True,
         keep_trailing_newline=True,
     )
+    environment.globals["how_many"] = how_many
+    environment.filters["capital"] = capital
+    return environment

@@ -47,8 +47,8 @@
   // --- the list -------------------------------------------------------------------------------------------------
 
   function address(path) {
-    const target = new URL(`${form.dataset.root}/${path}`, location.href);
-    if (target.protocol === "file:") target.pathname += "index.html";
+    const target = new URL(form.dataset.root + path, location.href);
+    if (target.protocol === "file:" && target.pathname.endsWith("/")) target.pathname += "index.html";
     return target.href;
   }
 

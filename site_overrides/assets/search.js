@@ -8,6 +8,7 @@
 globalThis.handbookFinder = (() => {
   const ENTRY = 9, KEY = 8, NAME = 7, LOOSE = 6, FILED = 5, START = 4, INSIDE = 3, TITLE = 2, TEXT = 1;
   const KEYS = ["formulas", "cas", "inchikey", "smiles", "variants"];
+  /** Words of a query that are looked at; whoever pastes a page shall not wait for it. */
   const MOST_WORDS = 10;
   /** Weight of a query that was found as it stands; more than its words can weigh apart. */
   const WHOLE = 1000;
@@ -195,7 +196,7 @@ globalThis.handbookFinder = (() => {
         if (drawn) {
           keys.formulas.each(` ${drawn.formula} `, (compound) => {
             const [smiles] = compounds.smiles[compound].split(" ");
-            if (smiles && outline(smiles).outline === drawn.outline) add(compound, NAME, "SMILES drawn otherwise");
+            if (smiles && outline(smiles)?.outline === drawn.outline) add(compound, NAME, "SMILES drawn otherwise");
           });
         }
       }
@@ -303,6 +304,7 @@ globalThis.handbookFinder = (() => {
         .filter((word) => word.length > 3);
       const everything = [...names.map((each) => each.folded), facetLines, ...texts.map(([, , lines]) => lines)];
       const words = wordsOf(fold(text));
+      if (words.length > MOST_WORDS) return "";
       const better = words.map((word) => {
         if (word.length < 4 || everything.some((lines) => lines.text.includes(word))) return word;
         let least = word.length < 8 ? 1 : 2, nearest = "";

@@ -55,28 +55,6 @@ def test_what_has_not_changed_is_not_examined_again(folder: Path, examined: list
     assert second == first
 
 
-def test_a_changed_record_is_examined_again_and_a_removed_one_forgotten(folder: Path, examined: list[str]) -> None:
-    _opened(folder, memory := Memory())
-    changed = folder / "NS2H8WDRW.yml"
-    changed.write_text(changed.read_text("utf-8").replace("NaN3", "NaN3 ") + "\ntake_away: another\n", "utf-8")
-    (folder / "NS9PZ4GK7.yml").unlink()
-    examined.clear()
-    book = _opened(folder, memory)
-    assert examined == ["NS2H8WDRW"]
-    assert book.by_id["NS2H8WDRW"].record.take_away == "another"
-    assert "entries/NS9PZ4GK7.yml" not in memory.held
-
-
-@pytest.mark.parametrize("line", ["people: [{code: bench-9, shown_as: somebody}]\n", "review_interval_months: 12\n"])
-def test_other_settings_are_asked_of_every_record_again(folder: Path, examined: list[str], line: str) -> None:
-    _opened(folder, memory := Memory())
-    settings = folder / "handbook.yml"
-    settings.write_text(settings.read_text("utf-8") + line, "utf-8")
-    examined.clear()
-    _opened(folder, memory)
-    assert sorted(examined) == sorted(RECORDS)
-
-
 def test_another_tool_begins_anew(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     _opened(folder, memory := Memory())
     save_memory(folder, memory)

@@ -1,6 +1,5 @@
 """Every page of a small book: sound HTML, live links, no bare numbers, nothing from a record taken as HTML."""
 
-import pickle
 import re
 from collections.abc import Callable
 from itertools import pairwise
@@ -8,7 +7,7 @@ from urllib.parse import urldefrag, urljoin
 
 import pytest
 
-from builder.book import Book
+from builder.book import Book, Verdict
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait
@@ -154,13 +153,25 @@ def test_a_withdrawn_entry_keeps_its_page_and_says_why() -> None:
 
 
 def test_an_empty_book_has_a_site() -> None:
-    front = build_pages(book_of())[0]
-    assert "The book is empty" in front.body
+    pages = {page.path: page for page in build_pages(book_of())}
+    assert "The book is empty" in pages[""].body
+    assert "0 entries." in pages["lists/"].body
+    assert all(page.body for page in pages.values())
 
 
-def test_portraits_are_plain_data(book: Book[Portrait]) -> None:
-    for entry in book.entries:
-        assert pickle.loads(pickle.dumps(entry.kept)) == entry.kept
+def test_a_single_entry_is_not_many() -> None:
+    pages = build_pages(book_of(entry_of(text_of("NS7K3QFMC"), verdict=Verdict.NOT_COVERED)), rules=())
+    said = [text for page in pages for text in (page.description, *Markup(page.body).texts)]
+    assert [text for text in said if re.search(r"\b1 [a-z ]*(entries|queries|cautions|sequences|drafts)\b", text)] == []
+    assert "1 entry." in said  # of all entries there is nothing to be counted apart
+
+
+def test_a_button_is_called_what_it_reads(pages: dict[str, Page]) -> None:
+    # WCAG 2.2, 2.5.3: speech input finds a control by the words on it.
+    body = "".join(page.body + page.write().rail for page in pages.values())
+    named = re.findall(r'<button[^>]* aria-label="([^"]*)"[^>]*>([^<]*)<', body)
+    assert ("Copy SMILES of sodium azide", "Copy") in named
+    assert [pair for pair in named if pair[1] not in pair[0]] == []
 
 
 def test_the_menu_is_short_and_ends_with_the_guides(pages: dict[str, Page]) -> None:
