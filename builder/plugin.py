@@ -32,7 +32,7 @@ from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.progress import watched
 from builder.publish.search_index import Listed, listed_of, search_assets
-from builder.records.settings import Settings
+from builder.records.settings import SETTINGS_FILE, Settings
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
@@ -92,7 +92,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         _configure(config, self.book.settings)
 
     def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
-        """Add the pages and their downloads, and the menu unless mkdocs.yml has one."""
+        """Add the pages and their downloads, and unless mkdocs.yml has one a menu: ours, then the group's own pages."""
         for file in _unwanted(files, config):
             files.remove(file)
         own = {file.dest_uri: file.src_uri for file in files.documentation_pages()}
@@ -107,7 +107,8 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
                 assets += page.assets
         for asset in assets:
             files.append(_published(asset, config))
-        config.nav = config.nav or menu_of(self.pages, instead)
+        beside = sorted(uri for uri in own.values() if "/" not in uri and uri not in instead.values())
+        config.nav = config.nav or [*menu_of(self.pages, instead), *beside]
         return files
 
     def on_page_context(
@@ -267,5 +268,7 @@ def _configure(config: MkDocsConfig, settings: Settings) -> None:
     config.site_name = escape(settings.title)
     config.site_url = config.site_url or settings.site_address
     config.edit_uri = config.edit_uri or settings.edit_address
+    if settings.logo and not (Path(config.docs_dir) / settings.logo).is_file():
+        raise PluginError(f"{SETTINGS_FILE}: there is no logo {settings.logo}; name a file below {config.docs_dir}")
     if settings.logo:
         config.theme["logo"] = settings.logo

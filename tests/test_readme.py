@@ -21,7 +21,7 @@ def _findings(tmp_path: Path, record: str) -> str:
     folder = tmp_path / "entries"
     folder.mkdir()
     (folder / "handbook.yml").write_text("format: 1\ntitle: A book for tests\n", "utf-8")
-    (folder / "NS4T9XQ2N.yml").write_text(record, "utf-8")
+    (folder / "NSKF9EQ3S.yml").write_text(record, "utf-8")
     heavy = [f for f in open_book(folder, today=TODAY).findings if f.level in {Level.ERROR, Level.QUERY}]
     return render_text(heavy, folder)
 

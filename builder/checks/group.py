@@ -7,7 +7,6 @@ from dataclasses import dataclass
 from builder.finding import Level
 from builder.records.model import Record
 from builder.records.settings import Settings
-from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Path, rule
 
@@ -192,7 +191,7 @@ def _title(record: Record) -> str | None:
 
 def _is_in_force(record: Record) -> bool:
     """Say whether an entry still holds: its successor may well bear its title and speak of its notebook page."""
-    return record.status not in {Status.SUPERSEDED, Status.WITHDRAWN}
+    return not record.status.is_retired
 
 
 def _repeated(book: Gathering, key: Callable[[Record], Hashable], at: Path, message: str, mend: str) -> Found:

@@ -34,8 +34,10 @@ MOST_VARIANTS = 7
 """Other ways to the same product that a page lists."""
 
 _GRAVITY = ("stop", "warn", "note")
+_MILD = _GRAVITY[-1]
 _STANDING = {
-    Verdict.IN_LINE: "What was seen and what the engine expects agree.",
+    Verdict.IN_LINE: "Product, course, mechanism and yields lie within what the engine can defend; a time longer than"
+    " forecast is not held against an entry.",
     Verdict.CONTRARY: "What was seen and what the engine expects differ, and no reason has been accepted yet.",
     Verdict.EXPLAINED: "What was seen differs from what the engine expects; a reviewer has accepted the reason.",
     Verdict.NOT_COVERED: "The engine has no say in this reaction.",
@@ -85,12 +87,13 @@ class ProductView:
 
 @dataclass(frozen=True, slots=True)
 class FindingView:
-    """One finding; rule_page says whether the book has a page for its rule."""
+    """One finding; rule_page says whether the book has a page for its rule, is_grave that it is never folded away."""
 
     level: str
     rule: str
     title: str
     rule_page: bool
+    is_grave: bool
     message: str
     why: str
     mend: str
@@ -319,6 +322,7 @@ def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingV
         rule=finding.rule,
         title=around.rules.get(finding.rule, finding.rule),
         rule_page=finding.rule in around.rules,
+        is_grave=finding.data.get("severity", _MILD) != _MILD,
         message=finding.message,
         why=finding.why,
         mend=finding.mend,

@@ -3,18 +3,23 @@
 import math
 from dataclasses import dataclass
 
+from markupsafe import Markup
+
 from builder.checks.case import Case
 from builder.checks.forecasts import is_same_product, share_bounds
+from builder.chemistry.scheme import DrawnCompound, draw_structure
 from builder.mechanism.forecast import Forecast
 from builder.mechanism.outlook import expected_text, percent_text
-from builder.publish.figures import duration_text
-from builder.publish.forecast_parts import Closed, Why, closed_gates, verdict_sentence, why
+from builder.publish.figures import duration_text, significant
+from builder.publish.forecast_parts import Closed, Why, closed_gates, main_pathway, verdict_sentence, why
 from builder.publish.summary import Fact
 
 __all__ = ["ExpectedView", "ShareView", "expected_view", "why_nothing_is_expected"]
 
 SHOWN = 0.01
 """Share of converted substrate from which a mechanism is named."""
+NINETY_PERCENT = 1.645
+"""Standard errors on either side that hold nine cases in ten of a normal distribution."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,10 +37,12 @@ class ShareView:
 class ExpectedView:
     """What the engine expects under the conditions of a record, and why.
 
-    needless: pathways for which the substrate lacks what they need.
+    drawing: the main product, where the record does not name it. needless: pathways for which the substrate lacks what
+    they need.
     """
 
     sentence: str
+    drawing: Markup
     shares: tuple[ShareView, ...]
     facts: tuple[Fact, ...]
     why: Why | None
@@ -48,14 +55,16 @@ def expected_view(case: Case) -> ExpectedView | None:
     question, forecast = case.question, case.forecast
     if question is None or forecast is None:
         return None
+    product, drawing = _main_product(case, forecast)
     facts = (
-        Fact("Main product", _main_product(case, forecast)),
+        Fact("Main product", product),
         Fact("Conversion", expected_text(forecast.conversion, forecast.conversion_interval), "in the stated time"),
-        Fact("Half-life", _half_life(forecast)),
+        Fact("Half-life", _half_life(forecast), _within(forecast)),
     )
     closed, needless = closed_gates(forecast)
     return ExpectedView(
         sentence=verdict_sentence(question, forecast),
+        drawing=drawing,
         shares=_shares(forecast),
         facts=tuple(fact for fact in facts if fact.value),
         why=why(question, forecast),
@@ -79,9 +88,10 @@ def _shares(forecast: Forecast) -> tuple[ShareView, ...]:
     return tuple(found)
 
 
-def _main_product(case: Case, forecast: Forecast) -> str:
+def _main_product(case: Case, forecast: Forecast) -> tuple[str, Markup]:
+    """Return the main product in words, and drawn where no product of the record is it."""
     if not forecast.products:
-        return ""
+        return "", Markup()
     main = max(forecast.products, key=lambda each: each.share)
     bounds = share_bounds(forecast, lambda each: each.structure == main.structure)
     names = [
@@ -91,7 +101,19 @@ def _main_product(case: Case, forecast: Forecast) -> str:
         and is_same_product(drawn, main.structure)
     ]
     share = expected_text(bounds.share, (bounds.low, bounds.high))
-    return f"{names[0] if names else main.structure.smiles}, {share} of what reacts"
+    if names:
+        return f"{names[0]}, {share} of what reacts", Markup()
+    smiles = main.structure.smiles
+    svg = draw_structure(DrawnCompound(main.structure), name=smiles, ident=f"{case.record.entry}-expected")
+    return f"none that the record names, {share} of what reacts: {smiles}", Markup(svg)  # noqa: S704 - as in schemes
+
+
+def _within(forecast: Forecast) -> str:
+    """Return how far the half-life may be off; empty where there is none."""
+    if not forecast.pathways or forecast.half_life_s is None or math.isinf(forecast.half_life_s):
+        return ""
+    factor = 10 ** (NINETY_PERCENT * main_pathway(forecast).error)
+    return f"within a factor of {significant(factor, 1 if factor < 10 else 2)}, nine times in ten"
 
 
 def _half_life(forecast: Forecast) -> str:

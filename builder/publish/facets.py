@@ -106,5 +106,5 @@ FACETS: tuple[Facet, ...] = (
     Facet(
         "result", "Result", lambda entry: tuple(map(str, entry.record.outcome.result)), lambda: tuple(map(str, Result))
     ),
-    Facet("verdict", "Verdict", lambda entry: (str(entry.verdict),)),
+    Facet("verdict", "Verdict", lambda entry: () if entry.record.status.is_retired else (str(entry.verdict),)),
 )

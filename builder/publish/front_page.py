@@ -24,7 +24,7 @@ SHOWN_OF_A_KIND = 6
 
 @dataclass(frozen=True, slots=True)
 class StateOfBook:
-    """What stands in the book today; every number counts entries, save the two of findings."""
+    """What stands in the book today; every number counts entries, save those of queries and cautions."""
 
     entries: int
     by_verdict: tuple[tuple[str, str, int], ...]
@@ -52,13 +52,13 @@ def state_of_book(book: Book[Portrait], summaries: Mapping[str, Summary]) -> Sta
     """Return the counts of the front page; by_verdict holds word, key and number."""
     reviews = [next_review(entry.record, book.settings) for entry in book.entries]
     statuses = [entry.record.status for entry in book.entries]
-    verdicts = Counter(entry.verdict for entry in book.entries)
+    verdicts = Counter(entry.verdict for entry in book.entries if not summaries[entry.id].is_retired)
     return StateOfBook(
         entries=len(book.entries),
         by_verdict=tuple((str(verdict), verdict.key, verdicts[verdict]) for verdict in Verdict),
         failures=sum(summary.is_failure for summary in summaries.values()),
         drafts=statuses.count(Status.DRAFT),
-        retired=statuses.count(Status.SUPERSEDED) + statuses.count(Status.WITHDRAWN),
+        retired=sum(status.is_retired for status in statuses),
         unreviewed=reviews.count(None),
         overdue=sum(due is not None and due < book.today for due in reviews),
         single_runs=sum((entry.record.performed.runs or 1) == 1 for entry in book.entries),

@@ -64,6 +64,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
     """Return the two guides."""
     schema = record_schema(site_class_names(), leaving_group_names())
     meanings = site_class_meanings()
+    example = next((entry.id for entry in book.entries if not entry.record.status.is_retired), "NS4T9XQ2N")
     return (
         Page(
             kind="guide",
@@ -87,7 +88,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
             path="how-to-cite/",
             title="How to cite",
             description="Identifier, revision and digest name one experiment for good.",
-            write=deferred("how_to_cite.html", settings=book.settings, root="../"),
+            write=deferred("how_to_cite.html", settings=book.settings, example=example, root="../"),
             menu="Cite",
         ),
     )

@@ -22,6 +22,7 @@ class Tally:
     entries: int
     in_line: int
     differ: int
+    not_covered: int
     failed: int
     retired: int
     lately: str
@@ -29,8 +30,8 @@ class Tally:
     @property
     def words(self) -> str:
         """Return the numbers in words, those that are none left out; empty where nothing can be said."""
-        numbers = (self.in_line, self.differ, self.failed, self.retired)
-        words = ("in line", "contrary or explained", "failed", "superseded or withdrawn")
+        numbers = (self.in_line, self.differ, self.not_covered, self.failed, self.retired)
+        words = ("in line", "contrary or explained", "not covered", "failed", "superseded or withdrawn")
         return joined(f"{number} {word}" for number, word in zip(numbers, words, strict=True) if number)
 
 
@@ -43,13 +44,14 @@ class _Row:
 
 
 def tally(summaries: Iterable[Summary]) -> Tally:
-    """Return the numbers of a list; what is contrary or explained counts as differing."""
+    """Return the numbers of a list; contrary and explained ones differ, what is retired has no verdict."""
     listed = newest_first(summaries)
-    verdicts = [summary.verdict for summary in listed]
+    verdicts = [summary.verdict for summary in listed if not summary.is_retired]
     return Tally(
         entries=len(listed),
         in_line=verdicts.count(Verdict.IN_LINE),
         differ=verdicts.count(Verdict.CONTRARY) + verdicts.count(Verdict.EXPLAINED),
+        not_covered=verdicts.count(Verdict.NOT_COVERED),
         failed=sum(summary.is_failure for summary in listed),
         retired=sum(summary.is_retired for summary in listed),
         lately=next((summary.take_away for summary in listed if summary.take_away), ""),

@@ -40,7 +40,7 @@ class Summary:
     @property
     def is_retired(self) -> bool:
         """Say whether the entry is superseded or withdrawn."""
-        return self.status in {Status.SUPERSEDED, Status.WITHDRAWN}
+        return Status(self.status).is_retired
 
 
 def newest_first(summaries: Iterable[Summary]) -> tuple[Summary, ...]:

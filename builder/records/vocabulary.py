@@ -75,6 +75,11 @@ class Status(StrEnum):
     SUPERSEDED = "superseded"
     WITHDRAWN = "withdrawn"
 
+    @property
+    def is_retired(self) -> bool:
+        """Say whether an entry of this status no longer holds."""
+        return self in {Status.SUPERSEDED, Status.WITHDRAWN}
+
 
 class Result(StrEnum):
     """What was seen to happen, in the order of importance."""

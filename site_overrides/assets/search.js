@@ -165,6 +165,11 @@ globalThis.handbookFinder = (() => {
       const page = pages.key.indexOf(text.toLowerCase());
       if (page >= 0) return new Map([[count + page, { tier: ENTRY, weight: 0, why: "" }]]);
       const reference = solid(fold(text)), found = new Map();
+      if (/^NS[0-9A-Z]{2,6}$/.test(upper)) {
+        entries.id.forEach((each, place) => {
+          if (each.startsWith(upper)) found.set(place, { tier: ENTRY, weight: 0, why: "identifier, so far" });
+        });
+      }
       notebooks.forEach((each, place) => {
         if (each && each === reference) found.set(place, { tier: ENTRY, weight: 0, why: "notebook reference" });
       });
@@ -307,6 +312,7 @@ globalThis.handbookFinder = (() => {
       if (words.length > MOST_WORDS) return "";
       const better = words.map((word) => {
         if (word.length < 4 || everything.some((lines) => lines.text.includes(word))) return word;
+        if (/[a-z]\d|\d[a-z]/.test(word)) return ""; // a formula or a key: near is another one
         let least = word.length < 8 ? 1 : 2, nearest = "";
         for (const other of vocabulary) {
           const steps = distance(word, other, least);

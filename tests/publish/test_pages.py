@@ -163,7 +163,7 @@ def test_a_single_entry_is_not_many() -> None:
     pages = build_pages(book_of(entry_of(text_of("NS7K3QFMC"), verdict=Verdict.NOT_COVERED)), rules=())
     said = [text for page in pages for text in (page.description, *Markup(page.body).texts)]
     assert [text for text in said if re.search(r"\b1 [a-z ]*(entries|queries|cautions|sequences|drafts)\b", text)] == []
-    assert "1 entry." in said  # of all entries there is nothing to be counted apart
+    assert "1 entry: 1 not covered." in said
 
 
 def test_a_button_is_called_what_it_reads(pages: dict[str, Page]) -> None:
