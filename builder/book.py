@@ -3,7 +3,7 @@
 import datetime as dt
 import gc
 import re
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -100,6 +100,11 @@ class Book(Generic[Kept]):
     entries: tuple[Entry[Kept], ...]
     findings: tuple[Finding, ...]
     files: tuple[Path, ...]
+
+    @property
+    def by_id(self) -> Mapping[str, Entry[Kept]]:
+        """Return the entries by identifier."""
+        return {entry.id: entry for entry in self.entries}
 
     def count(self, level: Level) -> int:
         """Return how many open findings of this level the book has."""
@@ -202,14 +207,12 @@ def open_book(
 def _recall(desk: _Desk[Kept], memory: Memory, path: Path) -> Examined[Kept]:
     """Return what becomes of a file, from memory where neither it nor what it is examined by has changed."""
     key = (desk, path.read_bytes())
-    known, last = memory.get(path, (None, None))
-    if last is not None and known == key:
-        return last
-    examined = desk.examine(path)
-    record = examined.reading.record
-    if record is None or record.rxn_file is None:  # else another file has a say as well
-        memory[path] = (key, examined)
-    return examined
+    if path not in memory or memory[path][0] != key:
+        memory[path] = (key, desk.examine(path))
+        record = memory[path][1].reading.record
+        if record is not None and record.rxn_file is not None:  # another file has a say as well
+            return memory.pop(path)[1]
+    return memory[path][1]
 
 
 def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:
