@@ -37,8 +37,8 @@ lint: .venv/.ready ## formatter, linter, types, import contracts
 test-all: system-test lint ## everything in `make test`, and the slow suites
 	$(BIN)/pytest -n $(WORKERS)
 
-bench: .venv/.ready ## milliseconds per entry to read, check, draw and emit
-	$(BIN)/python tests/bench.py
+bench: .venv/.ready ## what an entry, a prediction, a build of 1,000 entries and the search cost; some minutes
+	$(BIN)/python -m tests.bench
 
 eval: .venv/.ready ## the engine against published reactions
 	$(BIN)/python tests/eval.py

@@ -2,13 +2,13 @@
 
 import datetime as dt
 import gc
+import hashlib
 import re
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from enum import StrEnum
-from functools import partial
 from multiprocessing import get_context
 from pathlib import Path
 from typing import Any, Generic, TypeVar, overload
@@ -31,7 +31,6 @@ __all__ = ["Book", "Entry", "Examined", "Memory", "Verdict", "examine", "judge",
 Kept = TypeVar("Kept")
 Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
 """Passes on what is done, given how much there will be."""
-Memory = dict[Path, tuple[object, "Examined[Any]"]]
 
 SHARE = 64
 """Records that one process reads; fewer are not worth starting one."""
@@ -126,6 +125,16 @@ class Examined(Generic[Kept]):
 
 
 @dataclass(frozen=True, slots=True)
+class Memory:
+    """What became of each file the last time it was examined: by its name, a key of all that has a say, and what came.
+
+    A record that names an RXN file is never held: that file has a say as well.
+    """
+
+    held: dict[str, tuple[str, "Examined[Any]"]] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
 class _Desk(Generic[Kept]):
     """Where the records of one book are examined; can be sent to another process if `keep` can."""
 
@@ -134,9 +143,18 @@ class _Desk(Generic[Kept]):
     today: dt.date
     keep: Callable[[Case], Kept]
 
+    def name(self, path: Path) -> str:
+        """Return a file's name as findings show it."""
+        return _shown(path, self.folder)
+
+    def key(self, path: Path) -> str:
+        """Return a key of all that has a say in what becomes of a file, this tool apart."""
+        about = (self.name(path), self.settings.model_dump_json(), self.today, self.keep.__qualname__)
+        return hashlib.sha256(repr(about).encode() + path.read_bytes()).hexdigest()
+
     def examine(self, path: Path) -> Examined[Kept]:
         """Read and check one file on its own."""
-        reading = read_record(path, _shown(path, self.folder))
+        reading = read_record(path, self.name(path))
         named = reading.record.rxn_file if reading.record else None
         rxn = _attachment(path.parent / named.path, self.folder) if named else None
         return examine(reading, self.settings, self.today, rxn, keep=self.keep)
@@ -169,15 +187,14 @@ def open_book(
     keep: what to keep of each case, for whoever needs more of an entry than its record and findings.
     progress: wraps the files as they are done, for a progress bar.
     processes: over how many the records are spread; what `keep` returns must then be plain data.
-    memory: what came of each file the last time; a file that is as it was is not read again. One process does it then.
+    memory: what became of each file the last time; what has not changed is not examined again. It is kept up to date.
     Nothing a file holds raises; OSError passes for a folder that cannot be read.
     """
     folder = folder.resolve()
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
     desk = _Desk(folder, settings, today, keep)
-    done = _in_order(desk, files, processes) if memory is None else map(partial(_recall, desk, memory), files)
-    examined = list(progress(done, len(files)))
+    examined = _examined(desk, files, processes, progress, memory if memory is not None else Memory())
     settled = judge(examined, settings)
     entries = [
         Entry(
@@ -204,15 +221,24 @@ def open_book(
     )
 
 
-def _recall(desk: _Desk[Kept], memory: Memory, path: Path) -> Examined[Kept]:
-    """Return what becomes of a file, from memory where neither it nor what it is examined by has changed."""
-    key = (desk, path.read_bytes())
-    if path not in memory or memory[path][0] != key:
-        memory[path] = (key, desk.examine(path))
-        record = memory[path][1].reading.record
-        if record is not None and record.rxn_file is not None:  # another file has a say as well
-            return memory.pop(path)[1]
-    return memory[path][1]
+def _examined(
+    desk: _Desk[Kept], files: Sequence[Path], processes: int, progress: Progress, memory: Memory
+) -> list[Examined[Kept]]:
+    """Return what becomes of each file, in the order of the files, from memory where it can be."""
+    keys = {path: desk.key(path) for path in files if path.stat().st_size <= MAX_BYTES}
+    recalled = {
+        path: memory.held[desk.name(path)][1]
+        for path, key in keys.items()
+        if memory.held.get(desk.name(path), ("",))[0] == key
+    }
+    fresh = [path for path in files if path not in recalled]
+    found = recalled | dict(zip(fresh, progress(_in_order(desk, fresh, processes), len(fresh)), strict=True))
+    memory.held.clear()
+    for path, key in keys.items():
+        record = found[path].reading.record
+        if record is None or record.rxn_file is None:
+            memory.held[desk.name(path)] = (key, found[path])
+    return [found[path] for path in files]
 
 
 def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:

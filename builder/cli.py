@@ -36,7 +36,7 @@ from builder.mechanism.engine import predict as forecast_of
 from builder.mechanism.fit_report import RESIDUALS_TABLE, fit_report, fitted_table, residuals_table
 from builder.mechanism.improve import improvements, is_as_wanted
 from builder.mechanism.rate_terms import FITTED_TABLE
-from builder.publish.build import NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
+from builder.publish.build import AddressError, NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
 from builder.publish.console import put_up_with_any_console
 from builder.publish.figures import how_many
 from builder.publish.forecast_text import render_forecast
@@ -53,10 +53,19 @@ _BOOK = click.option(
     show_default=True,
     help="The folder with the records and handbook.yml.",
 )
+
+
+def _a_book(_: click.Context, __: click.Parameter, config: Path) -> Path:
+    if not config.is_file():
+        raise click.UsageError(f"there is no {config} here: go to the folder of a book, or `handbook start` one")
+    return config
+
+
 _CONFIG = click.option(
     "--config",
-    type=click.Path(exists=True, dir_okay=False, path_type=Path),
+    type=click.Path(dir_okay=False, path_type=Path),
     default=Path("mkdocs.yml"),
+    callback=_a_book,
     show_default=True,
     help="The book's mkdocs.yml.",
 )
@@ -159,7 +168,11 @@ def serve(config: Path, address: str) -> None:
     Example:
       handbook serve --address 127.0.0.1:8123
     """
-    sys.exit(serve_site(config, address))
+    try:
+        code = serve_site(config, address)
+    except AddressError as error:
+        raise click.UsageError(str(error)) from error
+    sys.exit(code)
 
 
 @handbook.command()

@@ -11,7 +11,7 @@ from mkdocs.config.base import Config
 from mkdocs.config.config_options import Choice
 from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
-from mkdocs.plugins import BasePlugin
+from mkdocs.plugins import BasePlugin, get_plugin_logger
 from mkdocs.structure.files import File, Files, InclusionLevel
 from mkdocs.structure.nav import Navigation, Section
 from mkdocs.structure.pages import Page as MkDocsPage
@@ -26,6 +26,7 @@ from builder.finding import Level
 from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
 from builder.publish.frame import INKS_STYLE, Furniture, MenuItem, content_policy, inks_style
+from builder.publish.memory import load_memory, save_memory
 from builder.publish.page import Asset, Page, headings_of, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
@@ -38,6 +39,8 @@ __all__ = ["HandbookConfig", "HandbookPlugin"]
 _FAVICON_OF_MATERIAL = "assets/images/favicon.png"
 _UNUSED_OF_MATERIAL = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
 """What Material brings and no page of ours loads."""
+
+log = get_plugin_logger("handbook")
 
 
 class HandbookConfig(Config):  # type: ignore[no-untyped-call]  # MkDocs leaves __init_subclass__ untyped
@@ -56,7 +59,7 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
     def __init__(self) -> None:
         """Start with nothing remembered of an earlier build."""
         super().__init__()
-        self.memory: Memory = {}
+        self.memory: Memory | None = None
 
     def on_startup(self, *, command: Literal["build", "gh-deploy", "serve"], dirty: bool) -> None:  # noqa: ARG002
         """Note whether pages are built to be published, or served to their author; keeps the plugin between edits."""
@@ -68,19 +71,23 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         _add_our_theme(config)
         folder = Path(config.docs_dir)
         load_ring_templates()
+        self.memory = self.memory or load_memory(folder)
         self.book = open_book(
             folder,
             today=build_date(),
             keep=portrait_of,
             progress=watched,
-            processes=usual_processes(),
-            memory=self.memory if self.is_live else None,
+            processes=1 if self.is_live else usual_processes(),
+            memory=self.memory,
         )
+        save_memory(folder, self.memory)
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
         write_report(BuildReport(len(self.book.entries), len(failing)))
-        if failing:
+        if failing and not self.is_live:
             raise PluginError(f"the book cannot be published\n{render_text(failing, folder)}")
+        if failing:  # a record that is being written keeps nobody from reading the others
+            log.warning("left out, or not fit to be published yet:\n%s", render_text(failing, folder))
         self.pages = build_pages(self.book)
         _configure(config, self.book.settings)
 

@@ -1,6 +1,6 @@
-"""What an entry and a prediction cost: `make bench`.
+"""What an entry, a prediction, a whole build and the search cost: `make bench`.
 
-usage: bench.py [--batch]     --batch adds 10,000 predictions, on one process and on two; some minutes
+usage: python -m tests.bench [--batch]    --batch adds 10,000 predictions, on one process and on two; some minutes
 
 Milliseconds of CPU time per entry over the demonstration book, in one process, and each as a ratio to a baseline of
 the same run: PyYAML's own C loader over the same files, which only builds values. Ratios can be compared between
@@ -24,7 +24,6 @@ from types import ModuleType
 from typing import Any
 
 import yaml
-from outcomes import CaseSet, answer_to, load_cases
 from rdkit import Chem
 
 from builder.book import Book, examine, open_book
@@ -35,6 +34,9 @@ from builder.mechanism.products import search_routes
 from builder.publish.pages import build_pages
 from builder.publish.schemes import entry_scheme
 from builder.records.reader import Reading, read_record
+from tests.build_bench import print_build
+from tests.outcomes import CaseSet, answer_to, load_cases
+from tests.search_bench import print_search
 
 ROOT = Path(__file__).parents[1]
 TODAY = dt.date(2026, 12, 1)
@@ -192,6 +194,8 @@ def main() -> int:
     """Print the tables."""
     print_entries()
     print_predictions()
+    print_build()
+    print_search()
     if "--batch" in sys.argv:
         print_batch()
     return 0

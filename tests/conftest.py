@@ -1,9 +1,12 @@
 """Options and fixtures of the whole suite."""
 
+import os
 from collections.abc import Callable
 from pathlib import Path
 
 import pytest
+
+os.environ["XDG_CACHE_HOME"] = os.devnull  # builds remember nothing, unless a test says where
 
 GOLDEN = Path(__file__).parent / "golden"
 

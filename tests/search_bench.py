@@ -1,9 +1,8 @@
-# ruff: noqa: T201 - its print is what it is for
-"""What the search box costs in a browser: `python tests/search_bench.py [--queries]`.
+"""What the search box costs in a browser: `python -m tests.search_bench [--queries]`.
 
 Size of the index, and CPU time of the page from asking for its scripts to the first answer, and of queries: over the
 demonstration book and over two books made of it by giving its compounds other substituents. In headless Chromium.
-usage: search_bench.py [--queries]     --queries prints each query
+usage: python -m tests.search_bench [--queries]     --queries prints each query
 """
 
 import datetime as dt
@@ -21,10 +20,9 @@ from typing import Any
 
 from playwright.sync_api import Browser, CDPSession, sync_playwright
 
-sys.path.insert(0, str(Path(__file__).parents[1]))
-
 from builder.book import open_book
 from builder.publish.pages import build_pages
+from builder.publish.portrait import portrait_of
 from builder.publish.search_index import as_script, listed_of, search_data, search_notes
 from tests.browser.chromium import ARGUMENTS, CHROMIUM
 
@@ -178,7 +176,7 @@ def print_search(*, each: bool = False) -> None:
     if CHROMIUM is None:
         print("\nsearch: no chromium on this machine")
         return
-    book = open_book(ROOT / "entries", today=TODAY)
+    book = open_book(ROOT / "entries", today=TODAY, keep=portrait_of)
     data = search_data(book.entries, [page for page in map(listed_of, build_pages(book)) if page])
     notes = search_notes(book.entries)
     groups = {"common": COMMON, "rare": RARE, "several": SEVERAL, "nothing": NOTHING}

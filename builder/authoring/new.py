@@ -61,7 +61,7 @@ outcome:
   products:
     - label: A
       name: {gap}
-      smiles: {gap}
+      smiles: '{gap}'
       use: desired
   measured:
     - {{yield: {gap}, of: A, kind: isolated}}

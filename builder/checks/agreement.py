@@ -3,7 +3,6 @@
 import re
 from collections import Counter
 from collections.abc import Iterator, Sequence
-from functools import lru_cache
 
 from builder.checks.case import Case
 from builder.checks.derivation import SOUGHT, is_desired, product_paths, routes_by_product, search
@@ -243,10 +242,10 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
         return
     have: Counter[str] = Counter()
     for structure in (*case.flask, case.substrate):
-        for _ in range(MEET_IN_ONE_PRODUCT):
-            have += _elements(structure)
+        for element, number in structure.elements.items():
+            have[element] += MEET_IN_ONE_PRODUCT * number
     for path in product_paths(case):
-        extra = _elements(case.structures[path]) - have
+        extra = Counter(case.structures[path].elements) - have
         if extra:
             element = min(extra)
             absent = not have[element]
@@ -443,15 +442,6 @@ def _shown_effects(product: Structure, routes: Sequence[Route]) -> set[str]:
     }
     told = {StereoEffect.INVERSION, StereoEffect.RETENTION, StereoEffect.ANTI, StereoEffect.SYN}
     return {str(effect) for effect in effects} if effects <= told else set()
-
-
-@lru_cache(maxsize=512)
-def _elements_of(structure: Structure) -> tuple[tuple[str, int], ...]:
-    return tuple(sorted(Counter(atom.symbol for atom in structure.atoms if atom.symbol != "H").items()))
-
-
-def _elements(structure: Structure) -> Counter[str]:
-    return Counter(dict(_elements_of(structure)))
 
 
 def _has_partner(case: Case) -> bool:

@@ -237,7 +237,8 @@ def find_hazards(presents: tuple[Present, ...], hottest_c: float) -> tuple[Hazar
     for present in presents:
         for kind in present.kinds:
             by_kind.setdefault(kind, []).append(present)
-    return tuple(hazard for caution in load_cautions() for hazard in _hazards_of(caution, by_kind, hottest_c))
+    asked = (caution for caution in load_cautions() if caution.first.name in by_kind)
+    return tuple(hazard for caution in asked for hazard in _hazards_of(caution, by_kind, hottest_c))
 
 
 def by_meeting(hazards: Iterable[Hazard]) -> tuple[tuple[Hazard, ...], ...]:
@@ -254,7 +255,7 @@ def _hazards_of(caution: Caution, by_kind: Mapping[str, Sequence[Present]], hott
         return
     firsts = [
         present
-        for present in by_kind.get(caution.first.name, ())
+        for present in by_kind[caution.first.name]
         if caution.condition is None or caution.condition.holds(present, hottest_c)
     ]
     if caution.second is None:

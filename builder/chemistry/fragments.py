@@ -1,9 +1,10 @@
 """Fragment: a substructure that can be asked for, so that rooms above chemistry need no RDKit."""
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 from rdkit import Chem
 
+from builder.chemistry.query import Query
 from builder.chemistry.structure import Structure
 
 __all__ = ["MAX_MATCHES", "Fragment"]
@@ -17,8 +18,7 @@ _MAX_QUERY_ATOMS = 40
 class Fragment:
     """A connected substructure, equal by its SMARTS."""
 
-    smarts: str
-    query: Chem.Mol = field(repr=False, compare=False)
+    query: Query
 
     @classmethod
     def from_smarts(cls, text: str) -> "Fragment":
@@ -26,20 +26,18 @@ class Fragment:
 
         Raises ValueError for text that is no SMARTS, is in several pieces, or has more than 40 atoms.
         """
-        query = Chem.MolFromSmarts(text) if text.strip() else None
-        if query is None:
-            raise ValueError(f"{text!r} is no SMARTS")
-        if len(Chem.GetMolFrags(query)) > 1:
+        query = Query.from_smarts(text)
+        if len(Chem.GetMolFrags(query.mol)) > 1:
             raise ValueError(f"{text!r} is in several pieces; ask for each by itself")
-        if query.GetNumAtoms() > _MAX_QUERY_ATOMS:
+        if query.mol.GetNumAtoms() > _MAX_QUERY_ATOMS:
             raise ValueError(f"{text!r} has more than {_MAX_QUERY_ATOMS} atoms")
-        query.UpdatePropertyCache(strict=False)
-        return cls(text, query)
+        query.mol.UpdatePropertyCache(strict=False)
+        return cls(query)
 
     def is_in(self, structure: Structure) -> bool:
         """Answer whether the structure holds the fragment."""
-        return bool(structure.mol.HasSubstructMatch(self.query))
+        return self.query.is_in(structure)
 
     def count_in(self, structure: Structure) -> int:
         """Return how many different sets of atoms of the structure match, at most `MAX_MATCHES`."""
-        return len(structure.mol.GetSubstructMatches(self.query, uniquify=True, maxMatches=MAX_MATCHES))
+        return len(structure.mol.GetSubstructMatches(self.query.mol, uniquify=True, maxMatches=MAX_MATCHES))

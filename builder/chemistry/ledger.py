@@ -14,7 +14,7 @@ from functools import lru_cache
 
 from rdkit import Chem
 
-from builder.chemistry.structure import AtomId, Structure, output_order, parse_smiles
+from builder.chemistry.structure import AtomId, Structure, atoms_of, bonds_of, output_order, parse_smiles
 
 __all__ = ["GAP", "HYDROGEN", "Alkene", "Centre", "Piece", "UnbalancedTransformation", "Workbench", "drawn_centres"]
 
@@ -94,7 +94,7 @@ def _lay_out(source: Chem.Mol) -> tuple[Chem.Mol, dict[int, Centre], dict[frozen
     mol = Chem.Mol(source)
     Chem.Kekulize(mol, clearAromaticFlags=True)
     centres: dict[int, Centre] = {}
-    for atom in mol.GetAtoms():
+    for atom in atoms_of(mol):
         hydrogens = atom.GetTotalNumHs()
         atom.SetNoImplicit(True)
         atom.SetNumExplicitHs(hydrogens)
@@ -105,7 +105,7 @@ def _lay_out(source: Chem.Mol) -> tuple[Chem.Mol, dict[int, Centre], dict[frozen
                 centres[atom.GetIdx()] = Centre(order, 1 if tag == _ANTICLOCKWISE else -1)
         atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
     alkenes: dict[frozenset[int], Alkene] = {}
-    for bond in mol.GetBonds():
+    for bond in bonds_of(mol):
         if bond.GetStereo() in _CIS or bond.GetStereo() in _TRANS:
             ends = (bond.GetBeginAtomIdx(), bond.GetEndAtomIdx())
             first, second = bond.GetStereoAtoms()
@@ -286,7 +286,7 @@ class Workbench:
         Raises UnbalancedTransformation if atoms, hydrogens or charge do not add up, or a valence is impossible.
         """
         mol = Chem.RWMol(self.mol)
-        atoms = [mol.GetAtomWithIdx(at) for at in range(mol.GetNumAtoms())]
+        atoms = list(atoms_of(mol))
         _rewrite_charges(mol, atoms)
         self._write_stereo(mol)
         for atom in atoms:
@@ -346,7 +346,7 @@ def _inventory(structures: Iterable[Structure]) -> Counter[str]:
 def _composition(structure: Structure) -> tuple[tuple[str, int], ...]:
     """Return the atoms by element and isotope, with charge and unpaired electrons, of one structure."""
     count: Counter[str] = Counter()
-    for atom in structure.mol.GetAtoms():
+    for atom in atoms_of(structure.mol):
         count[f"{atom.GetIsotope() or ''}{atom.GetSymbol()}"] += 1
         count["H"] += atom.GetTotalNumHs()
     count["charge"] += structure.charge

@@ -3,14 +3,12 @@
 Every pattern is a row of a TSV table beside this module; a fault in a table is ours and raises ValueError.
 """
 
-from collections import Counter
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import cache
 from math import isfinite
 
-from rdkit import Chem
-
+from builder.chemistry.query import Query
 from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
@@ -22,7 +20,6 @@ __all__ = [
     "ClassPattern",
     "Electrons",
     "LeavingGroupPattern",
-    "Query",
     "Reach",
     "load_activations",
     "load_aryl_substituents",
@@ -70,21 +67,6 @@ class Reach(StrEnum):
     ANY = "any"
     INSIDE = "inside"
     STRONG_BASE = "strong base"
-
-
-@dataclass(frozen=True)
-class Query:
-    """A compiled SMARTS.
-
-    places: for each atom number written in the SMARTS, its index in a match.
-    elements: atoms of each element (by atomic number) it cannot do without.
-    signs: signs of formal charge (+1, -1) it cannot do without.
-    """
-
-    mol: Chem.Mol
-    places: dict[int, int]
-    elements: dict[int, int]
-    signs: frozenset[int]
 
 
 @dataclass(frozen=True)
@@ -149,19 +131,13 @@ class ArylPattern:
 
 def _compile(name: str, smarts: str, numbers: set[int]) -> Query:
     """Return the compiled SMARTS, which must mark the atoms with these numbers."""
-    mol: Chem.Mol | None = Chem.MolFromSmarts(smarts)
-    if mol is None:
-        raise ValueError(f"{name}: {smarts} is no SMARTS")
-    places = {a.GetAtomMapNum(): a.GetIdx() for a in mol.GetAtoms() if a.GetAtomMapNum()}
-    if not numbers <= places.keys():
+    try:
+        query = Query.from_smarts(smarts)
+    except ValueError as fault:
+        raise ValueError(f"{name}: {fault}") from fault
+    if not numbers <= query.places.keys():
         raise ValueError(f"{name}: {smarts} must mark atoms {sorted(numbers)}")
-    for atom in mol.GetAtoms():
-        atom.SetAtomMapNum(0)
-    # RDKit gives a query atom the atomic number 0, and no charge, where it allows several.
-    elements = Counter(a.GetAtomicNum() for a in mol.GetAtoms() if a.GetAtomicNum() > 1)
-    charges = [a.GetFormalCharge() for a in mol.GetAtoms()]
-    signs = frozenset((1 if charge > 0 else -1) for charge in charges if charge)
-    return Query(mol, places, dict(elements), signs)
+    return query
 
 
 def _finite(name: str, number: str) -> float:

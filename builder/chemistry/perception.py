@@ -4,7 +4,6 @@ All patterns are rows of the tables that `patterns` loads. Every answer is in At
 however the author ordered the atoms.
 """
 
-from collections import Counter
 from dataclasses import dataclass, replace
 from enum import StrEnum
 from functools import cache, lru_cache
@@ -17,7 +16,6 @@ from builder.chemistry.patterns import (
     ClassPattern,
     Electrons,
     LeavingGroupPattern,
-    Query,
     Reach,
     load_attack_patterns,
     load_class_patterns,
@@ -35,6 +33,7 @@ __all__ = [
     "Nucleophile",
     "ReactiveSite",
     "SiteStereo",
+    "atoms_that_stay",
     "attacking_atoms",
     "expected_class_names",
     "leaving_group_names",
@@ -51,10 +50,6 @@ NO_LEAVING_GROUP = "none"
 """The leaving group of an addition to an alkene or alkyne."""
 
 STRAINED_RING_SIZES = (3, 4)
-
-MAX_MATCHES = 400
-"""Matches looked at per pattern; with at most 200 heavy atoms and patterns of small reach none is cut short in
-ordinary structures, and a polymer of one repeated group stays fast."""
 
 
 class Hybridisation(StrEnum):
@@ -284,6 +279,19 @@ def sites_of(structure: Structure, leaving_group: str) -> tuple[ReactiveSite, ..
     return tuple(s for s in perceive_sites(structure) if s.leaving_group == leaving_group)
 
 
+def atoms_that_stay(structure: Structure, site: ReactiveSite) -> frozenset[AtomId]:
+    """Return the atoms still tied to the alpha carbon once its bond to the leaving atom is cut."""
+    alpha = site.alpha_carbon
+    kept, waiting = {alpha}, [alpha]
+    while waiting:
+        at = waiting.pop()
+        around = {near for near, _ in structure.atoms[at].neighbours} - kept
+        around -= {site.leaving_atom} if at == alpha else set()
+        kept |= around
+        waiting += around
+    return frozenset(kept)
+
+
 def attacking_atoms(structure: Structure) -> tuple[Nucleophile, ...]:
     """Return the atoms that can attack another molecule, the one that attacks first first; empty if none can.
 
@@ -322,40 +330,12 @@ def _attack_order(nucleophile: Nucleophile) -> tuple[int, int, str, AtomId]:
     return (_kind_order()[n.kind], n.preference, n.species.smiles, n.atom)
 
 
-@dataclass(frozen=True)
-class _Searched:
-    """A molecule with its elements and charges counted, so that most patterns are passed over at a glance."""
-
-    mol: Chem.Mol
-    elements: dict[int, int]
-    signs: frozenset[int]
-
-    def matches(self, query: Query) -> tuple[tuple[int, ...], ...]:
-        """Return every match, symmetric ones too; at most MAX_MATCHES, so that no polymer can stall it."""
-        if not query.signs <= self.signs:
-            return ()
-        for element, number in query.elements.items():
-            if self.elements.get(element, 0) < number:
-                return ()
-        return tuple(self.mol.GetSubstructMatches(query.mol, uniquify=False, maxMatches=MAX_MATCHES))
-
-
-@lru_cache(maxsize=512)
-def _searched(structure: Structure) -> _Searched:
-    mol = structure.mol
-    atoms = [mol.GetAtomWithIdx(at) for at in range(mol.GetNumAtoms())]
-    charges = {atom.GetFormalCharge() for atom in atoms}
-    signs = frozenset((1 if charge > 0 else -1) for charge in charges if charge)
-    return _Searched(mol, Counter(atom.GetAtomicNum() for atom in atoms), signs)
-
-
 def _leaving_pairs(structure: Structure) -> dict[tuple[int, int], LeavingGroupPattern]:
     """Return each pair of alpha carbon and leaving atom; a carbon that bears a charge holds on to its groups."""
-    searched = _searched(structure)
     pairs: dict[tuple[int, int], LeavingGroupPattern] = {}
     for row in load_leaving_groups():
         places = row.query.places
-        for match in searched.matches(row.query):
+        for match in row.query.matches(structure):
             alpha, leaving = match[places[1]], match[places[2]]
             if not structure.mol.GetAtomWithIdx(alpha).GetFormalCharge():
                 pairs.setdefault((alpha, leaving), row)
@@ -367,13 +347,12 @@ _Classes = dict[int, list[tuple[ClassPattern, int | None]]]
 
 
 def _classes(structure: Structure) -> _Classes:
-    searched = _searched(structure)
     found: _Classes = {}
     for row in load_class_patterns():
         if row.query is None or row.kind is not ClassKind.SITE:
             continue
         places = row.query.places
-        for match in searched.matches(row.query):
+        for match in row.query.matches(structure):
             other = match[places[3]] if 3 in places else None
             found.setdefault(match[places[1]], []).append((row, other))
     return found
@@ -491,7 +470,7 @@ def _addition_sites(structure: Structure) -> list[ReactiveSite]:
     for row in load_class_patterns():
         if row.kind is not ClassKind.ADDITION or row.query is None:
             continue
-        for match in _searched(structure).matches(row.query):
+        for match in row.query.matches(structure):
             for alpha, partner in ((match[0], match[1]), (match[1], match[0])):
                 atom = mol.GetAtomWithIdx(alpha)
                 words = {row.name} | ({"bridgehead"} if alpha in caged else set())
@@ -529,7 +508,7 @@ def _attacking_atoms_of(species: Structure) -> tuple[Nucleophile, ...]:
     taken: set[object] = set()
     found = []
     for row in load_attack_patterns():
-        for match in sorted(_searched(species).matches(row.query)):
+        for match in sorted(row.query.matches(species)):
             spots = {number: match[place] for number, place in row.query.places.items()}
             hydride = row.electrons is Electrons.HYDRIDE_TRANSFER
             atom = spots[4] if hydride else spots[1]

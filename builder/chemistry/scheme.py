@@ -162,7 +162,8 @@ class _Block(NamedTuple):
                 yield from part.items(dx + x, dy + y)
             else:
                 right, down = dx + x, dy + y
-                yield part._replace(x=part.x + right, y=part.y + down, box=part.box.moved(right, down))
+                box = part.box.moved(right, down)
+                yield Placed(part.kind, part.body, box, part.x + right, part.y + down, part.scale)
 
 
 def _block(parts: "Iterable[tuple[float, float, _Block | Placed]]") -> _Block:

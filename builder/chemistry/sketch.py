@@ -20,7 +20,7 @@ from rdkit.Chem import rdCoordGen, rdDepictor
 from rdkit.Geometry import Point3D
 
 from builder.chemistry.plane import Point
-from builder.chemistry.structure import AtomId, Structure, parse_smiles
+from builder.chemistry.structure import SMALLEST_TRANS_RING, AtomId, Structure, atoms_of, bonds_of, parse_smiles
 
 __all__ = ["Line", "Sketch", "SketchAtom", "SketchBond", "connected", "load_ring_templates", "mol_block", "sketch"]
 
@@ -81,7 +81,7 @@ def sketch(structure: Structure, model: Structure | None = None) -> Sketch:
     rings = [(frozenset(ring), ring) for ring in mol.GetRingInfo().AtomRings()]
     neighbours = _neighbours(mol)
     ends = []
-    for bond in mol.GetBonds():
+    for bond in bonds_of(mol):
         a, b = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
         line = Line.WAVY if bond.GetIdx() in wavy else Line.PLAIN
         if bond.GetIdx() in wedges:
@@ -99,7 +99,7 @@ def sketch(structure: Structure, model: Structure | None = None) -> Sketch:
             neighbours=tuple(neighbours[index]),
             piece=pieces[index],
         )
-        for index, atom in enumerate(mol.GetAtoms())
+        for index, atom in enumerate(atoms_of(mol))
     )
     bonds = tuple(
         SketchBond(a, b, order, line, _ring_to_lean_into(a, b, rings, doubles) if order == 2 else ())
@@ -158,7 +158,7 @@ def _laid_out(structure: Structure) -> Chem.Mol:
     mol = Chem.Mol(structure.mol)
     fused = [
         atom.GetIdx()
-        for atom in mol.GetAtoms()
+        for atom in atoms_of(mol)
         if atom.GetChiralTag() != _NOT_CHIRAL
         and atom.GetTotalNumHs() == 1
         and atom.GetDegree() == 3
@@ -222,7 +222,7 @@ def _close_pairs(mol: Chem.Mol) -> list[tuple[int, int]]:
 def _neighbours(mol: Chem.Mol) -> list[list[int]]:
     """Return, for each atom, its neighbours in the order of its bonds, on which chirality tags rest."""
     neighbours: list[list[int]] = [[] for _ in range(mol.GetNumAtoms())]
-    for bond in mol.GetBonds():
+    for bond in bonds_of(mol):
         a, b = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
         neighbours[a].append(b)
         neighbours[b].append(a)
@@ -300,7 +300,7 @@ def _fit(moved: Sequence[complex], fixed: Sequence[complex], flip: bool) -> tupl
 
 
 def _has_stereocentre(mol: Chem.Mol) -> bool:
-    return any(atom.GetChiralTag() in _TETRAHEDRAL for atom in mol.GetAtoms())
+    return any(atom.GetChiralTag() in _TETRAHEDRAL for atom in atoms_of(mol))
 
 
 def _wedges_within(mol: Chem.Mol, name: Mapping[int, int]) -> set[tuple[int, int, Line]]:
@@ -335,7 +335,7 @@ def _shared_atoms(structure: Structure, model: Structure) -> tuple[tuple[tuple[A
     for skeleton, query, wanted in _carbon_skeletons(model):
         matches = structure.mol.GetSubstructMatches(query, uniquify=False, maxMatches=64)
         if matches:
-            degrees = [atom.GetDegree() for atom in structure.mol.GetAtoms()]
+            degrees = [atom.GetDegree() for atom in atoms_of(structure.mol)]
             scored = sorted((sum(abs(degrees[i] - d) for i, d in zip(m, wanted, strict=True)), m) for m in matches)
             best = [match for score, match in scored if score == scored[0][0]]
             return tuple(tuple(zip(match, skeleton, strict=True)) for match in best[:_MOST_PAIRINGS])
@@ -350,7 +350,7 @@ def _carbon_skeletons(structure: Structure) -> tuple[tuple[tuple[AtomId, ...], C
     """Return the sets of carbons joined by carbon-carbon bonds, largest first, as query, with their degrees."""
     mol = structure.mol
     neighbours = _neighbours(mol)
-    left = {atom.GetIdx() for atom in mol.GetAtoms() if atom.GetAtomicNum() == 6}
+    left = {atom.GetIdx() for atom in atoms_of(mol) if atom.GetAtomicNum() == 6}
     found = []
     while left:
         piece = connected(min(left), left, neighbours)
@@ -392,7 +392,7 @@ def connected(start: int, within: Iterable[int], neighbours: Sequence[Sequence[i
 
 def _wedges(mol: Chem.Mol, places: Sequence[complex]) -> dict[int, tuple[int, Line]]:
     """Return, by bond, the stereocentre at which a wedge starts, and which wedge it is."""
-    centres = {atom.GetIdx(): atom for atom in mol.GetAtoms() if atom.GetChiralTag() in _TETRAHEDRAL}
+    centres = {atom.GetIdx(): atom for atom in atoms_of(mol) if atom.GetChiralTag() in _TETRAHEDRAL}
     chosen: dict[int, tuple[int, Line]] = {}
     options = {index: _bonds_to_wedge(atom, centres, places) for index, atom in centres.items()}
     # Those with least choice go first, so that no centre is left without a bond.
@@ -478,7 +478,7 @@ def _is_even(order: Sequence[int]) -> bool:
 
 def _wavy_bonds(mol: Chem.Mol) -> set[int]:
     """Return one single bond for each double bond that could be E or Z and is neither."""
-    if not any(_may_be_undefined(bond) for bond in mol.GetBonds()):
+    if not any(_may_be_undefined(bond) for bond in bonds_of(mol)):
         return set()
     wavy = set()
     for info in Chem.FindPotentialStereo(Chem.Mol(mol), cleanIt=False, flagPossible=True):
@@ -492,6 +492,8 @@ def _wavy_bonds(mol: Chem.Mol) -> set[int]:
 def _may_be_undefined(bond: Chem.Bond) -> bool:
     """Answer whether a double bond has no configuration drawn and is not cumulated, as in allenes and azides."""
     if bond.GetBondType() != Chem.BondType.DOUBLE or bond.GetStereo() not in _NOT_DRAWN:
+        return False
+    if 0 < bond.GetOwningMol().GetRingInfo().MinBondRingSize(bond.GetIdx()) < SMALLEST_TRANS_RING:
         return False
     ends = (bond.GetBeginAtom(), bond.GetEndAtom())
     return all(

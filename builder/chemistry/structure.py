@@ -8,7 +8,7 @@ drawing speak of the same atom. `Structure.typed_order` leads back to the author
 import logging
 import re
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
@@ -21,11 +21,14 @@ __all__ = [
     "MAX_HEAVY_ATOMS",
     "MAX_RINGS",
     "MAX_STEREO_ELEMENTS",
+    "SMALLEST_TRANS_RING",
     "Atom",
     "AtomId",
     "Stereocentres",
     "Structure",
     "StructureError",
+    "atoms_of",
+    "bonds_of",
     "bridgeheads_of",
     "name_atom",
     "output_order",
@@ -46,6 +49,12 @@ MAX_RINGS = 40
 """Independent rings (bonds - atoms + pieces); protects ring perception, which explodes on dense cages."""
 MAX_STEREO_ELEMENTS = 60
 """Stereocentres and stereo double bonds as written; protects canonical ranking and stereo perception."""
+
+SMALLEST_TRANS_RING = 8
+"""Members of the smallest ring that holds a trans double bond, and so a bridgehead double bond: cyclooctene.
+
+Source: iupac-gold, Bredt's rule; trans-cyclooctene is the smallest isolable trans-cycloalkene (march-2013).
+"""
 
 _INORGANIC_CATIONS = frozenset({"Li", "Na", "K", "Rb", "Cs", "Mg", "Ca", "Ba", "Ag", "Cu", "Zn", "Tl", "Hg", "Cd"})
 _INORGANIC_ANIONS = frozenset(
@@ -200,7 +209,7 @@ class Structure:
     @cached_property
     def mass(self) -> float:
         """Return the average molar mass in g/mol; the mass of the isotope for a labelled atom."""
-        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in self.mol.GetAtoms())
+        return sum(a.GetMass() + a.GetTotalNumHs() * _MASS_OF_H for a in atoms_of(self.mol))
 
     @cached_property
     def charge(self) -> int:
@@ -215,28 +224,45 @@ class Structure:
     @cached_property
     def radical_electrons(self) -> int:
         """Return the number of unpaired electrons, most often a bracket atom that lacks its hydrogens."""
-        return sum(atom.GetNumRadicalElectrons() for atom in self.mol.GetAtoms())
+        return sum(atom.GetNumRadicalElectrons() for atom in atoms_of(self.mol))
 
     @cached_property
     def atoms(self) -> tuple[Atom, ...]:
         """Return the atoms by AtomId, as plain values."""
-        rings = self.mol.GetRingInfo()
+        neighbours: list[list[tuple[AtomId, float]]] = [[] for _ in range(self.mol.GetNumAtoms())]
+        for bond in bonds_of(self.mol):
+            begin, end, order = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx(), bond.GetBondTypeAsDouble()
+            neighbours[begin].append((end, order))
+            neighbours[end].append((begin, order))
+        ring_sizes: list[list[int]] = [[] for _ in neighbours]
+        for ring in self.mol.GetRingInfo().AtomRings():
+            for at in ring:
+                ring_sizes[at].append(len(ring))
         return tuple(
             Atom(
-                id=atom.GetIdx(),
+                id=at,
                 symbol=atom.GetSymbol(),
                 charge=atom.GetFormalCharge(),
                 hydrogens=atom.GetTotalNumHs(),
                 isotope=atom.GetIsotope(),
                 aromatic=atom.GetIsAromatic(),
-                hybridisation=str(atom.GetHybridization()).lower(),
-                neighbours=tuple(
-                    sorted((b.GetOtherAtomIdx(atom.GetIdx()), b.GetBondTypeAsDouble()) for b in atom.GetBonds())
-                ),
-                ring_sizes=tuple(sorted(rings.AtomRingSizes(atom.GetIdx()))),
+                hybridisation=atom.GetHybridization().name.lower(),
+                neighbours=tuple(sorted(neighbours[at])),
+                ring_sizes=tuple(sorted(ring_sizes[at])),
             )
-            for atom in self.mol.GetAtoms()
+            for at, atom in enumerate(atoms_of(self.mol))
         )
+
+    @cached_property
+    def elements(self) -> Mapping[str, int]:
+        """Return how many atoms of each element there are, by symbol, hydrogen and its isotopes left out."""
+        return Counter(atom.GetSymbol() for atom in atoms_of(self.mol) if atom.GetAtomicNum() != 1)
+
+    @cached_property
+    def signs(self) -> frozenset[int]:
+        """Return the signs of the formal charges in it, +1 and -1."""
+        charges = (atom.GetFormalCharge() for atom in atoms_of(self.mol))
+        return frozenset(1 if charge > 0 else -1 for charge in charges if charge)
 
     @cached_property
     def symmetry_classes(self) -> tuple[int, ...]:
@@ -246,14 +272,18 @@ class Structure:
     @cached_property
     def without_stereocentres(self) -> "Structure":
         """Return the structure with no tetrahedral configuration drawn; double bonds keep theirs."""
+        if "@" not in self.smiles:
+            return self
         plain = Chem.Mol(self.mol)
-        for atom in plain.GetAtoms():
+        for atom in atoms_of(plain):
             atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
         return parse_smiles(Chem.MolToSmiles(plain))
 
     @cached_property
     def fragments(self) -> tuple["Structure", ...]:
         """Return the separate species, carbon-bearing ones first, then larger first, then by SMILES."""
+        if "." not in self.smiles:
+            return (self,)
         pieces = [parse_smiles(piece) for piece in self.smiles.split(".")]
         return tuple(sorted(pieces, key=lambda s: (not _has_carbon(s), -s.heavy_atom_count, s.smiles)))
 
@@ -269,15 +299,17 @@ class Structure:
     def without_isotopes(self) -> "Structure":
         """Return the structure with every isotope label taken off."""
         plain = Chem.Mol(self.mol)
-        for atom in plain.GetAtoms():
+        for atom in atoms_of(plain):
             atom.SetIsotope(0)
         return parse_smiles(Chem.MolToSmiles(Chem.RemoveHs(plain)))
 
     @cached_property
     def mirror_image(self) -> "Structure":
         """Return the enantiomer; undrawn stereocentres stay undrawn."""
+        if "@" not in self.smiles:
+            return self
         mirrored = Chem.Mol(self.mol)
-        for atom in mirrored.GetAtoms():
+        for atom in atoms_of(mirrored):
             if atom.GetChiralTag() in _TETRAHEDRAL:
                 atom.InvertChirality()
         return parse_smiles(Chem.MolToSmiles(mirrored))
@@ -337,6 +369,19 @@ class Structure:
         ranks = self.symmetry_classes
         around = [ranks[n.GetIdx()] for n in self.mol.GetAtomWithIdx(info.centeredOn).GetNeighbors()]
         return len(set(around)) < len(around)
+
+
+def atoms_of(mol: Chem.Mol) -> "map[Chem.Atom]":
+    """Return the atoms of an RDKit molecule one by one; for this room only.
+
+    RDKit's own iterator counts the atoms at every step.
+    """
+    return map(mol.GetAtomWithIdx, range(mol.GetNumAtoms()))
+
+
+def bonds_of(mol: Chem.Mol) -> "map[Chem.Bond]":
+    """Return the bonds of an RDKit molecule one by one; for this room only."""
+    return map(mol.GetBondWithIdx, range(mol.GetNumBonds()))
 
 
 def bridgeheads_of(mol: Chem.Mol) -> frozenset[int]:
@@ -403,7 +448,7 @@ def parse_smiles(text: str) -> Structure:
             raise _explain_syntax(text, complaints)
         _refuse_excess(raw, _stereo_in_text(text))
         if ":" in text:
-            for atom in raw.GetAtoms():
+            for atom in atoms_of(raw):
                 atom.SetAtomMapNum(0)
         _sanitise(raw, text)
     return _from_mol(raw, text)
@@ -478,38 +523,52 @@ def _from_molblock(block: str) -> Structure:
         return _from_mol(raw, None)
 
 
+_WILDCARD, _HYDROGEN, _AROMATIC_OUTSIDE_A_RING = map(Chem.MolFromSmarts, ("[#0]", "[#1]", "*!@:*"))
+
+
 def _from_mol(raw: Chem.Mol, typed: str | None) -> Structure:
     """Return the Structure of a sanitised molecule, its atoms put into canonical order."""
-    atoms = [raw.GetAtomWithIdx(at) for at in range(raw.GetNumAtoms())]
-    if any(atom.GetAtomicNum() == 0 for atom in atoms):
+    if raw.HasSubstructMatch(_WILDCARD):
         raise StructureError("wildcard atom", "write a definite atom in its place")
-    if any(bond.GetBondType() == Chem.BondType.AROMATIC and not bond.IsInRing() for bond in raw.GetBonds()):
+    if raw.HasSubstructMatch(_AROMATIC_OUTSIDE_A_RING):
         raise StructureError("aromatic bond outside a ring", "write a single or double bond in place of :")
     mol = raw
-    place = {at: at for at in range(len(atoms))}
-    if any(atom.GetAtomicNum() == 1 for atom in atoms):
-        for atom in atoms:
+    place = {at: at for at in range(raw.GetNumAtoms())}
+    if raw.HasSubstructMatch(_HYDROGEN):
+        for atom in atoms_of(raw):
             atom.SetIntProp("_written", atom.GetIdx())
         mol = Chem.RemoveHs(raw, sanitize=False)
         Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
-        place = {a.GetIntProp("_written"): a.GetIdx() for a in mol.GetAtoms()}
-    # RDKit's canonical SMILES is not always a fixed point of reading and writing; another round makes it one.
-    canonical, smiles = mol, ""
-    for _ in range(4):
-        again = Chem.MolToSmiles(canonical)
+        place = {a.GetIntProp("_written"): a.GetIdx() for a in atoms_of(mol)}
+    text = Chem.MolToSmiles(mol)
+    order = {old: new for new, old in enumerate(output_order(mol))}
+    smiles, numbers, canonical = _settled(text)
+    written = tuple(numbers[order[place[at]]] for at in range(raw.GetNumAtoms()) if at in place)
+    return Structure(smiles, typed or smiles, written, canonical)
+
+
+@lru_cache(maxsize=8192)
+def _settled(text: str) -> tuple[str, tuple[AtomId, ...], Chem.Mol]:
+    """Return the canonical SMILES that reading and writing RDKit's leads to, each atom's place in it, the molecule.
+
+    Most often it is RDKit's own; another round, or two, makes a fixed point of the others. However a structure was
+    typed, it shares the molecule.
+    """
+    smiles, mol = text, Chem.MolFromSmiles(text)
+    numbers = list(range(mol.GetNumAtoms()))
+    for _ in range(3):
+        again = Chem.MolToSmiles(mol)
         if again == smiles:
             break
-        smiles = again
-        order = {old: new for new, old in enumerate(output_order(canonical))}
-        place = {key: order[at] for key, at in place.items()}
-        canonical = Chem.MolFromSmiles(smiles)
-    written = tuple(place[at] for at in range(len(atoms)) if at in place)
-    return Structure(smiles, typed or smiles, written, canonical)
+        order = {old: new for new, old in enumerate(output_order(mol))}
+        numbers = [order[at] for at in numbers]
+        smiles, mol = again, Chem.MolFromSmiles(again)
+    return smiles, tuple(numbers), mol
 
 
 def output_order(mol: Chem.Mol) -> list[int]:
     """Return the atoms of a molecule in the order of the SMILES just written of it; for this room only."""
-    return [int(at) for at in mol.GetPropsAsDict(True, True)["_smilesAtomOutputOrder"]]
+    return [int(at) for at in mol.GetProp("_smilesAtomOutputOrder").strip("[],").split(",")]
 
 
 def _restore(smiles: str, typed: str, typed_order: tuple[AtomId, ...]) -> Structure:
@@ -577,9 +636,9 @@ def _stereo_in_text(smiles: str) -> int:
 
 def _stereo_in_file(raw: Chem.Mol) -> int:
     """Return the wedged and double bonds of a molecule from a file, an upper bound of its stereo elements."""
-    wedged = sum(1 for bond in raw.GetBonds() if bond.GetBondDir() != Chem.BondDir.NONE)
-    double = sum(1 for bond in raw.GetBonds() if bond.GetBondType() == Chem.BondType.DOUBLE)
-    chiral = sum(1 for a in raw.GetAtoms() if a.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED)
+    wedged = sum(1 for bond in bonds_of(raw) if bond.GetBondDir() != Chem.BondDir.NONE)
+    double = sum(1 for bond in bonds_of(raw) if bond.GetBondType() == Chem.BondType.DOUBLE)
+    chiral = sum(1 for a in atoms_of(raw) if a.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED)
     return wedged + double + chiral
 
 
@@ -663,7 +722,7 @@ def _in_rdkit_words(text: str, complaints: list[str]) -> StructureError:
 
 
 def _has_carbon(structure: Structure) -> bool:
-    return any(atom.GetAtomicNum() == 6 for atom in structure.mol.GetAtoms())
+    return any(atom.GetAtomicNum() == 6 for atom in atoms_of(structure.mol))
 
 
 def _is_inorganic_counter_ion(structure: Structure) -> bool:

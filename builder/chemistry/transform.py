@@ -8,13 +8,14 @@ linked by AtomId. `UnbalancedTransformation` is raised where atoms or charge wou
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
 from enum import StrEnum
+from functools import lru_cache
 
 from rdkit import Chem
 
 from builder.chemistry.ledger import GAP, HYDROGEN, Alkene, Centre, Piece, UnbalancedTransformation, Workbench
 from builder.chemistry.patterns import Electrons, load_activations
 from builder.chemistry.perception import Nucleophile, ReactiveSite, moved_azole
-from builder.chemistry.structure import AtomId, Structure, parse_smiles
+from builder.chemistry.structure import SMALLEST_TRANS_RING, AtomId, Structure, bonds_of, parse_smiles
 
 __all__ = [
     "Cation",
@@ -46,11 +47,8 @@ __all__ = [
     "violates_bredt",
 ]
 
-SMALLEST_TRANS_RING = 8
-"""Members of the smallest ring that holds a trans double bond, and so a bridgehead double bond: cyclooctene.
-
-Source: iupac-gold, Bredt's rule; trans-cyclooctene is the smallest isolable trans-cycloalkene (march-2013).
-"""
+REMEMBERED = 512
+"""Edits kept of each sort: the search for products and the engine ask for the same ones."""
 
 
 class StereoEffect(StrEnum):
@@ -74,7 +72,8 @@ class Edit:
     protons_released: protons given to the surroundings; negative where protons were taken up.
     effect: inversion or retention at the carbon, anti or syn for an elimination or addition.
     geometry: E or Z of a double bond the edit has made, where it has one.
-    from_substrate, from_nucleophile: atom of the input -> atom of `product`, for atoms that are in it.
+    from_substrate, from_nucleophile: atom of the input -> atom of `product`, for atoms that are in it; never changed,
+    for edits are remembered.
     """
 
     product: Structure
@@ -104,6 +103,7 @@ class Cation:
     from_substrate: dict[AtomId, AtomId]
 
 
+@lru_cache(maxsize=REMEMBERED)
 def substitute(substrate: Structure, site: ReactiveSite, nucleophile: Nucleophile, *, inversion: bool = True) -> Edit:
     """Return the substitution of the leaving group of a site by the nucleophile.
 
@@ -138,6 +138,7 @@ def cyclise(substrate: Structure, site: ReactiveSite, group: Nucleophile, *, inv
     return _edit(bench, alpha, effect)
 
 
+@lru_cache(maxsize=REMEMBERED)
 def eliminate(
     substrate: Structure, site: ReactiveSite, beta_carbon: AtomId, *, effect: StereoEffect = StereoEffect.ANTI
 ) -> tuple[Edit, ...]:
@@ -836,7 +837,7 @@ def _set_geometry(bench: Workbench, ends: tuple[int, int], cis: bool) -> bool:
 
 
 def _has_drawn_alkene(structure: Structure) -> bool:
-    return any(bond.GetStereo() > Chem.BondStereo.STEREOANY for bond in structure.mol.GetBonds())
+    return any(bond.GetStereo() > Chem.BondStereo.STEREOANY for bond in bonds_of(structure.mol))
 
 
 def _with_geometries(

@@ -86,7 +86,7 @@ class Kinetics:
             width += step
             if step <= _PRECISION * (start.tau + width):
                 break
-        return start.time + self._duration(start, width)
+        return start.time + self._over(start, width)[0]
 
     def conversion_at(self, time_s: float) -> float:
         """Return the conversion at a time, 0 to 1."""
@@ -148,19 +148,19 @@ class Kinetics:
             if not counting and not self.first_order_per_s:
                 break
             step = min([-here.substrate * math.expm1(-STEP) / self._fall(here.tau), *(STEP / k for k in counting)])
-            time = here.time + self._duration(here, step)
-            here = _Point(here.tau + step, time, self._left(here.tau + step))
-            if not math.isfinite(time) or here.tau <= points[-1].tau:
+            duration, left = self._over(here, step)
+            here = _Point(here.tau + step, here.time + duration, left)
+            if not math.isfinite(here.time) or here.tau <= points[-1].tau:
                 break
             points.append(here)
         return tuple(points)
 
-    def _duration(self, start: _Point, width: float) -> float:
-        """Return the time that passes over a width of τ from a grid point, by Simpson's rule."""
+    def _over(self, start: _Point, width: float) -> tuple[float, float]:
+        """Return the time that passes over a width of τ from a grid point, by Simpson's rule, and what is then left."""
         middle, end = self._left(start.tau + width / 2), self._left(start.tau + width)
         if min(middle, end) <= 0:
-            return math.inf
-        return width / 6 * (1 / start.substrate + 4 / middle + 1 / end)
+            return math.inf, end
+        return width / 6 * (1 / start.substrate + 4 / middle + 1 / end), end
 
     def _tau_at(self, time_s: float) -> float:
         """Return τ at a time; that of the end of the grid beyond it."""
@@ -169,7 +169,8 @@ class Kinetics:
             return start.tau
         width = 0.0
         for _ in range(60):  # t(τ) is convex and grows
-            step = (time_s - start.time - self._duration(start, width)) * self._left(start.tau + width)
+            duration, left = self._over(start, width)
+            step = (time_s - start.time - duration) * left
             width += step
             if abs(step) <= _PRECISION * (start.tau + width):
                 break

@@ -5,7 +5,7 @@ closure or opening, addition or fragmentation, in at most two such events after 
 phosphorus are alkylated up to four times.
 """
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Container, Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from enum import StrEnum
 from functools import lru_cache, partial
@@ -45,6 +45,7 @@ from builder.chemistry.transform import (
 from builder.mechanism.flask_roles import FlaskRole, roles_in
 from builder.mechanism.reaction import SiteInPlay
 from builder.mechanism.rules import Gate, closing_gates
+from builder.mechanism.screen import Screen, screen_for
 from builder.records.vocabulary import Mechanism
 
 __all__ = ["MEET_IN_ONE_PRODUCT", "Event", "Route", "Search", "search_routes"]
@@ -135,14 +136,18 @@ class _Budget:
 
 @dataclass(frozen=True, slots=True)
 class _Flask:
-    """Everything charged beside the substrate, and the budget of the search that carries out edits with it."""
+    """Everything charged beside the substrate, and the budget of the search that carries out edits with it.
+
+    screen: says which edits are carried out at all; None carries out every one.
+    """
 
     species: tuple[Structure, ...]
     budget: _Budget
+    screen: Screen | None = None
 
     def with_more(self, freed: Iterable[Structure]) -> "_Flask":
         """Return the flask after something has been set free in it; the budget is shared."""
-        return _Flask((*self.species, *freed), self.budget)
+        return replace(self, species=(*self.species, *freed))
 
     def lets_attack(self, nucleophile: Nucleophile) -> bool:
         """Say whether a nucleophile acts in this flask: a weak carbon acid only does beside a strong base."""
@@ -150,6 +155,8 @@ class _Flask:
 
     def one(self, edit: "partial[T]") -> tuple[T, ...]:
         """Return what an edit makes; nothing where it would lose atoms or outgrow all bounds: that is no way at all."""
+        if self.screen is not None and not self.screen(edit):
+            return ()
         changed = edit.args[0]
         self.budget.spend((changed.structure if isinstance(changed, Cation) else changed).heavy_atom_count)
         try:
@@ -209,17 +216,26 @@ def search_routes(
     product is still without an open route; closed ones are given only where there is no open one. The budget counts
     work, not time, so that a search ends alike on every machine.
     """
-    wanted = [_constitutions(product) for product in products]
-    found: list[list[Route]] = [[] for _ in products]
-    flask = _Flask(species, _Budget(BUDGET))
+    neutral = [_with_pieces(product) for product in products]
+    wanted = [{each.flat_smiles for each in structures} for structures in neutral]
+    screen = screen_for(each for structures in neutral for each in structures)
+    near = _found(wanted, islice(_rounds(sites, _Flask(species, _Budget(BUDGET), screen)), 1))
+    if all(routes and not routes[0].closed_by for routes in near.routes):
+        return near  # most products take one event, and few of the edits can give their atoms
+    return _found(wanted, _rounds(sites, _Flask(species, _Budget(BUDGET))))
+
+
+def _found(wanted: Sequence[Container[str]], rounds: Iterable[Iterator[Route]]) -> Search:
+    """Return the routes to each of the constitutions wanted, entering a round only where one is still needed."""
+    found: list[list[Route]] = [[] for _ in wanted]
     was_cut = False
     try:
-        for one_round in _rounds(sites, flask):
+        for one_round in rounds:
             open_places = [place for place, routes in enumerate(found) if all(route.closed_by for route in routes)]
             if not open_places:
                 break
             for route in one_round:
-                made = _constitution(route.product)
+                made = neutral_form(route.product).flat_smiles
                 for place in open_places:
                     if made in wanted[place]:
                         found[place].append(route)
@@ -228,13 +244,9 @@ def search_routes(
     return Search(tuple(tuple(r for r in routes if not r.closed_by) or tuple(routes) for routes in found), was_cut)
 
 
-def _constitution(structure: Structure) -> str:
-    return neutral_form(structure).flat_smiles
-
-
-def _constitutions(product: Structure) -> set[str]:
-    """Return the flat SMILES of a recorded product and of each of its pieces."""
-    return {_constitution(piece) for piece in product.fragments} | {_constitution(product)}
+def _with_pieces(product: Structure) -> frozenset[Structure]:
+    """Return the neutral form of a recorded product and of each of its pieces."""
+    return frozenset(neutral_form(piece) for piece in (*product.fragments, product))
 
 
 # --- one event --------------------------------------------------------------------------------------------
@@ -264,8 +276,9 @@ def _events_at(start: Structure, site: ReactiveSite, flask: _Flask) -> Iterator[
         return
     has_stereo = start.stereocentres.specified > 0
     for nucleophile in _attackers(flask):
-        for inversion in (True, False) if has_stereo else (True,):
-            for edit in flask.one(partial(substitute, start, site, nucleophile, inversion=inversion)):
+        inverting = partial(substitute, start, site, nucleophile)
+        for way in (inverting, partial(inverting, inversion=False)) if has_stereo else (inverting,):
+            for edit in flask.one(way):
                 yield from _products_of(start, site, (Event.SUBSTITUTION,), edit)
         for edit in flask.several(partial(transpose_allylic, start, site, nucleophile)):
             yield from _products_of(start, site, (Event.TRANSPOSITION,), edit)

@@ -8,13 +8,24 @@ import datetime as dt
 import json
 import os
 import shutil
+import signal
+import socket
 import subprocess
 import sys
 import tempfile
 from dataclasses import asdict, dataclass
 from pathlib import Path
 
-__all__ = ["BuildReport", "NotOurSiteError", "SiteBuildError", "build_date", "build_site", "serve_site", "write_report"]
+__all__ = [
+    "AddressError",
+    "BuildReport",
+    "NotOurSiteError",
+    "SiteBuildError",
+    "build_date",
+    "build_site",
+    "serve_site",
+    "write_report",
+]
 
 REPORT_VARIABLE = "HANDBOOK_BUILD_REPORT"
 """Names the file in which the plugin leaves its BuildReport for `build_site`."""
@@ -39,6 +50,10 @@ class SiteBuildError(Exception):
     def __init__(self, message: str, report: BuildReport | None) -> None:
         super().__init__(message)
         self.report = report
+
+
+class AddressError(Exception):
+    """Nothing can be served at an address: it is none, or another program has it."""
 
 
 class NotOurSiteError(Exception):
@@ -73,7 +88,18 @@ def build_site(config: Path, site: Path) -> BuildReport:
 
 
 def serve_site(config: Path, address: str) -> int:
-    """Serve the book and rebuild on every change; return the exit code of MkDocs."""
+    """Serve the book and rebuild on every change; return the exit code of MkDocs.
+
+    Raises AddressError where nothing can be served, before the book is read.
+    """
+    host, _, port = address.rpartition(":")
+    if not host or not port.isdecimal():
+        raise AddressError(f'"{address}" is no address to serve at; write it like 127.0.0.1:8000')
+    try:
+        with socket.create_server((host, int(port))):
+            pass
+    except (OSError, OverflowError) as error:
+        raise AddressError(f"nothing can be served at {address}: {error}; name another with --address") from error
     return _mkdocs("serve", "-f", str(config), "-a", address)
 
 
@@ -123,4 +149,13 @@ def _mkdocs(*arguments: str, report: Path | None = None) -> int:
     if report is not None:
         environment[REPORT_VARIABLE] = str(report)
     command = [sys.executable, "-m", "mkdocs", *arguments]
-    return subprocess.run(command, env=environment, check=False).returncode  # noqa: S603 - our own arguments
+    with subprocess.Popen(command, env=environment) as child:  # noqa: S603 - our own arguments
+        before = signal.signal(
+            signal.SIGTERM, lambda *_: child.terminate()
+        )  # or it would outlive us, and keep its port
+        try:
+            return child.wait()
+        except KeyboardInterrupt:
+            return child.wait()
+        finally:
+            signal.signal(signal.SIGTERM, before)

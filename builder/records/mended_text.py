@@ -14,7 +14,10 @@ from builder.finding import Finding, Place
 from builder.records.rules import reading_rule
 from builder.rule import Fault
 
-__all__ = ["STRUCTURE_KEYS", "GluedPair", "MendedText", "quoted"]
+__all__ = ["STRUCTURE_KEYS", "GluedPair", "MendedText", "Span", "quoted"]
+
+Span = tuple[int, int, int]
+"""Line, column and end column, counted as in Place; a record has a hundred and more, few of which anyone asks for."""
 
 _LONGEST_LINE = 8_000
 """Twice the longest text a record may hold; beyond it no slip of a writer is looked for."""
@@ -94,11 +97,15 @@ class MendedText:
 
     def place(self, line: int, column: int, end_column: int) -> Place:
         """Return the place in the file as written of a 0-based position in the mended text."""
+        return Place(self.file, *self.span(line, column, end_column))
+
+    def span(self, line: int, column: int, end_column: int) -> Span:
+        """Return line, column and end column of that place."""
         if not self._shifts:
-            return Place(self.file, line + 1, column + 1, end_column + 1)
+            return line + 1, column + 1, end_column + 1
         shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
         end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
-        return Place(self.file, line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1)
+        return line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1
 
     def mend_margins(self) -> list[Finding]:
         """Put plain spaces where others indent a key; YAML would take those for a part of its name."""

@@ -8,14 +8,14 @@ every key and value. Where the text is no YAML for a reason with one exact mend 
 
 import re
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from decimal import Decimal
 
 import yaml
 from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave out the re-export
 
 from builder.finding import Finding, Place
-from builder.records.mended_text import STRUCTURE_KEYS, GluedPair, MendedText, quoted
+from builder.records.mended_text import STRUCTURE_KEYS, GluedPair, MendedText, Span, quoted
 from builder.records.quantities import comma_error, is_beyond_measure
 from builder.records.rules import reading_rule
 from builder.records.specimen import GAP
@@ -51,11 +51,11 @@ _BOOLEANS = {"true": True, "True": True, "TRUE": True, "false": False, "False": 
 
 @dataclass(frozen=True, slots=True)
 class Places:
-    """Where every key and value of one file stands."""
+    """Where every key and value of one file stands; spans, of which a place is made when it is asked for."""
 
     file: str
-    values: Mapping[ValuePath, Place] = field(default_factory=dict)
-    keys: Mapping[ValuePath, Place] = field(default_factory=dict)
+    values: Mapping[ValuePath, Span] = field(default_factory=dict)
+    keys: Mapping[ValuePath, Span] = field(default_factory=dict)
 
     def of(self, path: ValuePath, *, on_key: bool = False) -> Place:
         """Return the place of the value at `path`, or of the key of its nearest existing parent.
@@ -64,12 +64,11 @@ class Places:
         """
         path = self._as_written(path)
         if path in self.values and not on_key:
-            return self.values[path]
+            return Place(self.file, *self.values[path])
         while path:
-            if path in self.keys:
-                return self.keys[path]
-            if path in self.values:
-                return self.values[path]
+            span = self.keys.get(path) or self.values.get(path)
+            if span is not None:
+                return Place(self.file, *span)
             path = path[:-1]
         return Place(self.file, 1, 1, 2)
 
@@ -150,8 +149,8 @@ class _Constructor:
     def __init__(self, mended: MendedText) -> None:
         self.mended = mended
         self.text = mended.text
-        self.values: dict[ValuePath, Place] = {}
-        self.keys: dict[ValuePath, Place] = {}
+        self.values: dict[ValuePath, Span] = {}
+        self.keys: dict[ValuePath, Span] = {}
         self.findings: list[Finding] = []
         self._count = 0
 
@@ -166,7 +165,7 @@ class _Constructor:
     ) -> None:
         """Add a finding of a reading rule at `node`."""
         fault = Fault(at=(), message=message, mend=mend, fix=fix)
-        self.findings.append(reading_rule(rule).finding(fault, self._place(node, until)))
+        self.findings.append(reading_rule(rule).finding(fault, Place(self.mended.file, *self._span(node, until))))
 
     def construct(self, node: yaml.Node, path: ValuePath) -> Plain:
         """Return the plain value of `node`.
@@ -179,7 +178,7 @@ class _Constructor:
             raise _TooMuchError("alias-overgrown", message, mend, None)
         if len(path) > MAX_DEPTH:
             raise _TooMuchError("nesting-too-deep", f"more than {MAX_DEPTH} levels", "close the brackets earlier", node)
-        self.values[path] = self._place(node)
+        self.values[path] = self._span(node)
         self._refuse_tag(node)
         if path and path[-1] in STRUCTURE_KEYS and self._is_bare_collection(node, path):
             return self._unquoted_smiles(node)
@@ -240,9 +239,11 @@ class _Constructor:
     def _remark_on_comment(self, node: yaml.ScalarNode, path: ValuePath) -> None:
         """Remark on a text that goes on behind " #3", where YAML reads a comment; "# so" is one."""
         cut = self._rest_of_line(node).partition(" # ")[0].rstrip()
+        if not re.match(r" +#[^\s#]", cut):
+            return
         key = next((step for step in reversed(path) if isinstance(step, str)), "")
         start, end = node.start_mark, node.end_mark
-        if not re.match(r" +#[^\s#]", cut) or key not in _TEXT_KEYS or start.line != end.line:
+        if key not in _TEXT_KEYS or start.line != end.line:
             return
         whole = quoted(node.value + cut)
         message = f'{key} is read as "{node.value}", and what follows # as a comment'
@@ -296,7 +297,7 @@ class _Constructor:
                     key, value_node = self._taken_apart(glued, key_node)
             key_path = (*path, key)
             if key in made:
-                first = self.keys[key_path].line
+                first, *_ = self.keys[key_path]
                 self.report(
                     "duplicate-key",
                     key_node,
@@ -304,7 +305,7 @@ class _Constructor:
                     "keep one of them",
                 )
                 continue
-            self.keys[key_path] = self._place(key_node)
+            self.keys[key_path] = self._span(key_node)
             made[key] = self.construct(value_node, key_path)
             last = key
         return made
@@ -323,13 +324,14 @@ class _Constructor:
         return glued.key, yaml.ScalarNode("", glued.value, node.start_mark, node.end_mark)
 
     def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
-        begun, end = self.values[(*path, last)], self._place(rest)
-        place = replace(begun, end_column=end.end_column) if end.line == begun.line else begun
-        self.values[(*path, last)] = place
+        begun, end = self.values[(*path, last)], self._span(rest)
+        span = (*begun[:2], end[2]) if end[0] == begun[0] else begun
+        self.values[(*path, last)] = span
+        place = Place(self.mended.file, *span)
         space = self.text[rest.start_mark.index - 1]
         whole = f"{made[last]},{space if space.isspace() else ''}{rest.value}"
         made[last] = whole
-        self.findings = [f for f in self.findings if f.place != begun]
+        self.findings = [f for f in self.findings if f.place != Place(self.mended.file, *begun)]
         comma = comma_error(whole, is_bare=last == "equivalents")
         if comma:
             fault = Fault(at=(), message=comma.message, mend=comma.mend, fix=comma.fix)
@@ -355,7 +357,7 @@ class _Constructor:
 
     def _joined(self, run: Sequence[yaml.Node], path: ValuePath) -> str:
         whole = ",".join(str(item.value) for item in run)
-        self.values[path] = self._place(run[0], run[-1])
+        self.values[path] = self._span(run[0], run[-1])
         message = f"{whole} is read as {len(run)} values"
         self.report("text-split-at-comma", run[0], message, f"write {quoted(whole)}", quoted(whole), until=run[-1])
         return whole
@@ -373,15 +375,16 @@ class _Constructor:
                 "drop it, or quote a text that begins with !",
             )
 
-    def _place(self, node: yaml.Node, until: yaml.Node | None = None) -> Place:
+    def _span(self, node: yaml.Node, until: yaml.Node | None = None) -> Span:
         end = (until or node).end_mark
         start = node.start_mark
         end_column = end.column if end.line == start.line else start.column + 1
-        return self.mended.place(start.line, start.column, max(end_column, start.column + 1))
+        return self.mended.span(start.line, start.column, max(end_column, start.column + 1))
 
     def _rest_of_line(self, node: yaml.Node) -> str:
         start = node.end_mark.index
-        return self.text[start:].partition("\n")[0]
+        end = self.text.find("\n", start)
+        return self.text[start:] if end < 0 else self.text[start:end]
 
 
 def _named(path: ValuePath) -> str:

@@ -30,16 +30,19 @@ class Build:
     site: Path
 
 
-def write_book(folder: Path, texts: Iterable[tuple[str, str]]) -> Path:
+def write_book(folder: Path, texts: Iterable[tuple[str, str]], settings: str = SETTINGS) -> Path:
     """Write mkdocs.yml, settings and records (path below entries, text) into `folder`; return the config's path."""
     shutil.copy(ROOT / "mkdocs.yml", folder)
-    (folder / "entries").mkdir()
-    (folder / "entries" / "handbook.yml").write_text(SETTINGS, "utf-8")
-    for path, text in texts:
+    for path, text in (("handbook.yml", settings), *texts):
         place = folder / "entries" / path
         place.parent.mkdir(parents=True, exist_ok=True)
         place.write_text(text, "utf-8")
     return folder / "mkdocs.yml"
+
+
+def files_of(folder: Path) -> dict[str, bytes]:
+    """Return every file below a folder by its path there."""
+    return {path.relative_to(folder).as_posix(): path.read_bytes() for path in folder.rglob("*") if path.is_file()}
 
 
 def good_texts() -> list[tuple[str, str]]:
@@ -47,16 +50,26 @@ def good_texts() -> list[tuple[str, str]]:
     return [(f"{name}.yml", (GOOD / f"{name}.yml").read_text("utf-8")) for name in RECORDS]
 
 
-def build(config: Path, *, seed: str = "0") -> Build:
-    """Run `mkdocs build --strict` as a user would."""
-    site = config.parent / "site"
-    environment = {
+def build(config: Path, **environment: str) -> Build:
+    """Run `mkdocs build --strict` as a user would; environment: variables that differ from the usual ones."""
+    variables = {**mkdocs_environment(), **environment}
+    ran = subprocess.run(mkdocs_command(config), env=variables, capture_output=True, text=True, check=False)
+    return Build(ran.returncode, ran.stdout + ran.stderr, config.parent / "site")
+
+
+def mkdocs_command(config: Path, *, strict: bool = True) -> list[str]:
+    """Return the command that builds the site beside its mkdocs.yml."""
+    how = ["--strict"] if strict else []
+    return [sys.executable, "-m", "mkdocs", "build", *how, "-f", str(config), "-d", str(config.parent / "site")]
+
+
+def mkdocs_environment() -> dict[str, str]:
+    """Return the environment of a build on a fixed day."""
+    return {
         **os.environ,
         "NO_MKDOCS_2_WARNING": "1",
-        "PYTHONHASHSEED": seed,
+        "PYTHONHASHSEED": "0",
         "PYTHONUTF8": "1",
         "SOURCE_DATE_EPOCH": DAY,
+        "XDG_CACHE_HOME": os.devnull,  # every build begins anew
     }
-    command = [sys.executable, "-m", "mkdocs", "build", "--strict", "-f", str(config), "-d", str(site)]
-    ran = subprocess.run(command, env=environment, capture_output=True, text=True, check=False)
-    return Build(ran.returncode, ran.stdout + ran.stderr, site)

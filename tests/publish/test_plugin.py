@@ -8,7 +8,7 @@ import pytest
 
 from builder.chemistry.inks import palette_css
 from builder.publish.frame import CONTENT_POLICY, content_policy
-from tests.browser.built import RECORDS, ROOT, Build, build, good_texts, write_book
+from tests.browser.built import RECORDS, ROOT, Build, build, files_of, good_texts, write_book
 from tests.publish.handmade import Markup, asked_of_other_hosts
 
 EVIL = '"><imgx src=x onerror=alert(1)>'
@@ -22,10 +22,6 @@ def built(tmp_path_factory: pytest.TempPathFactory) -> Build:
     text = texts.pop("NSC0W7N51.yml").replace(title, f"title: '{EVIL}'")
     texts[f"{HOSTILE_FOLDER}/NSC0W7N51.yml"] = text + f"take_away: '</title>{EVIL}'\n"
     return build(write_book(tmp_path_factory.mktemp("book"), texts.items()))
-
-
-def _files(site: Path) -> dict[str, bytes]:
-    return {path.relative_to(site).as_posix(): path.read_bytes() for path in site.rglob("*") if path.is_file()}
 
 
 def test_the_strict_build_is_clean(built: Build) -> None:
@@ -114,7 +110,7 @@ def test_titles_of_the_groups_own_are_text(own: Build) -> None:
 
 
 def test_of_the_groups_files_those_are_published_that_the_frame_shows(own: Build) -> None:
-    published = _files(own.site)
+    published = files_of(own.site)
     assert {"assets/images/logo.svg", "own.css"} <= published.keys()
     assert "notes.txt" not in published
     assert [name for name in published if name.startswith(("assets/images/", "assets/javascripts/"))] == [
@@ -183,7 +179,7 @@ def test_an_error_stops_the_build_and_leaves_the_last_site(tmp_path: Path) -> No
     assert failed.code == 1
     assert "entries/NS2H8WDRW.yml:25:18: error quantity-without-unit" in failed.out
     assert "Traceback" not in failed.out
-    assert _files(failed.site) == {"index.html": b"the last good site"}
+    assert files_of(failed.site) == {"index.html": b"the last good site"}
 
 
 def test_the_same_book_gives_the_same_bytes(tmp_path: Path) -> None:
@@ -191,11 +187,11 @@ def test_the_same_book_gives_the_same_bytes(tmp_path: Path) -> None:
     one.mkdir()
     two.mkdir(parents=True)
     first, second = (
-        build(write_book(one, good_texts()), seed="1"),
-        build(write_book(two, reversed(good_texts())), seed="2"),
+        build(write_book(one, good_texts()), PYTHONHASHSEED="1"),
+        build(write_book(two, reversed(good_texts())), PYTHONHASHSEED="2"),
     )
     assert first.code == second.code == 0
-    assert _files(first.site) == _files(second.site)
+    assert files_of(first.site) == files_of(second.site)
 
 
 def test_the_inks_of_the_drawings_reach_the_pages(built: Build) -> None:
