@@ -2,6 +2,7 @@
 
 import re
 from collections.abc import Callable
+from dataclasses import replace
 from itertools import pairwise
 from urllib.parse import urldefrag, urljoin
 
@@ -14,7 +15,7 @@ from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait
 from builder.records.settings import Settings
-from tests.publish.handmade import GOOD, Markup, book_of, entry_of, text_of
+from tests.publish.handmade import CAUTION, GOOD, Markup, book_of, entry_of, text_of
 
 EVIL = "<imgx src=x onerror=alert(1)>"  # no element that the reader knows and refuses
 GOLDEN_PAGES = {
@@ -181,6 +182,13 @@ def test_a_button_is_called_what_it_reads(pages: dict[str, Page]) -> None:
     named = re.findall(r'<button[^>]* aria-label="([^"]*)"[^>]*>([^<]*)<', body)
     assert ("Copy SMILES of sodium azide", "Copy") in named
     assert [pair for pair in named if pair[1] not in pair[0]] == []
+
+
+def test_a_rule_counts_each_entry_once() -> None:
+    entry = entry_of(text_of("NSC0W7N51"), CAUTION, replace(CAUTION, message="DMF: harms the unborn"))
+    body = next(page.body for page in build_pages(book_of(entry)) if page.path == "rules/")
+    assert "touches 1 entry" in body
+    assert "touches 2" not in body
 
 
 DUE = [
