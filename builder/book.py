@@ -4,7 +4,7 @@ import datetime as dt
 import gc
 import hashlib
 import re
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass, field
@@ -99,6 +99,11 @@ class Book(Generic[Kept]):
     entries: tuple[Entry[Kept], ...]
     findings: tuple[Finding, ...]
     files: tuple[Path, ...]
+
+    @property
+    def by_id(self) -> Mapping[str, Entry[Kept]]:
+        """Return the entries by identifier."""
+        return {entry.id: entry for entry in self.entries}
 
     def count(self, level: Level) -> int:
         """Return how many open findings of this level the book has."""
@@ -271,10 +276,14 @@ def _left_alone_by_the_collector() -> Iterator[None]:
 
 def _attachment(path: Path, folder: Path) -> bytes | None:
     """Return the content of a file that a record names; None unless it is a small file inside the book."""
-    real = path.resolve()
-    if not real.is_relative_to(folder) or not real.is_file() or real.stat().st_size > MAX_BYTES:
+    if not _is_inside(path, folder) or path.stat().st_size > MAX_BYTES:
         return None
-    return real.read_bytes()
+    return path.read_bytes()
+
+
+def _is_inside(path: Path, folder: Path) -> bool:
+    """Say whether a path leads to a file of the book, links followed."""
+    return path.is_file() and path.resolve().is_relative_to(folder)
 
 
 @overload
@@ -332,7 +341,7 @@ def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:
         if not _RECORD_NAME.fullmatch(path.name):
             fault = Fault(at=(), message="this is no record's name", mend="call it after its entry, NS….yml")
             findings.append(reading_rule("file-misnamed").finding(fault, Place(_shown(path, folder), 1, 1, 2)))
-        elif not path.is_file() or not path.resolve().is_relative_to(folder):
+        elif not _is_inside(path, folder):
             fault = Fault(at=(), message="this is no plain file of the book", mend="put the record itself here")
             findings.append(reading_rule("file-unreachable").finding(fault, Place(_shown(path, folder), 1, 1, 2)))
         else:
@@ -353,7 +362,8 @@ def _open_settings(folder: Path) -> tuple[Settings, list[Finding]]:
     settings, findings, places = read_settings(path, _shown(path, folder))
     if settings is None:
         return plain, list(findings)
-    return settings, [*findings, *check_settings(House(settings, tool_version()), places)]
+    has_logo = settings.logo is None or _is_inside(folder / settings.logo, folder)
+    return settings, [*findings, *check_settings(House(settings, tool_version(), has_logo=has_logo), places)]
 
 
 def _verdict(findings: tuple[Finding, ...], *, is_covered: bool) -> Verdict:

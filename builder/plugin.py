@@ -32,15 +32,15 @@ from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait, portrait_of
 from builder.publish.progress import watched
 from builder.publish.search_index import Listed, listed_of, search_assets
-from builder.records.settings import SETTINGS_FILE, Settings
+from builder.records.settings import Settings
 
 __all__ = ["HandbookConfig", "HandbookPlugin"]
 
 _FAVICON_OF_MATERIAL = "assets/images/favicon.png"
-log = get_plugin_logger("handbook")
-
 _UNUSED_OF_MATERIAL = ("assets/javascripts/", "assets/stylesheets/palette.", "assets/images/")
 """What Material brings and no page of ours loads."""
+
+log = get_plugin_logger("handbook")
 
 
 class HandbookConfig(Config):  # type: ignore[no-untyped-call]  # MkDocs leaves __init_subclass__ untyped
@@ -268,7 +268,5 @@ def _configure(config: MkDocsConfig, settings: Settings) -> None:
     config.site_name = escape(settings.title)
     config.site_url = config.site_url or settings.site_address
     config.edit_uri = config.edit_uri or settings.edit_address
-    if settings.logo and not (Path(config.docs_dir) / settings.logo).is_file():
-        raise PluginError(f"{SETTINGS_FILE}: there is no logo {settings.logo}; name a file below {config.docs_dir}")
     if settings.logo:
         config.theme["logo"] = settings.logo

@@ -56,4 +56,8 @@ def play(example: str) -> tuple[Finding, ...]:
 
 def _play_settings(example: str) -> tuple[Finding, ...]:
     settings, findings, places = read_into(Settings, f"format: 1\ntitle: A book for tests\n{example}\n", "handbook.yml")
-    return (*findings, *check_settings(House(settings, TOOL), places)) if settings else findings
+    return (*findings, *check_settings(_house(settings), places)) if settings else findings
+
+
+def _house(settings: Settings) -> House:
+    return House(settings, TOOL, has_logo=settings.logo in {None, "logo.svg"})

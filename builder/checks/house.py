@@ -1,4 +1,4 @@
-"""The settings of a book: is the tool the one it was checked with, can its colours be read."""
+"""The settings of a book: is the tool the one it was checked with, can its colours be read, is its logo there."""
 
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -17,10 +17,14 @@ DISTRIBUTION = "condition-handbook"
 
 @dataclass(frozen=True, slots=True)
 class House:
-    """The settings of a book, and the version of the tool that looks at it."""
+    """The settings of a book, and the version of the tool that looks at it.
+
+    has_logo: whether the file they name as logo lies in the book's folder; true where they name none.
+    """
 
     settings: Settings
     tool: str
+    has_logo: bool = True
 
 
 def tool_version() -> str:
@@ -80,4 +84,21 @@ def engine_differs(house: House) -> Iterator[Fault]:
         )
 
 
-HOUSE_CHECKS = (accent_is_faint, engine_differs)
+@rule(
+    id="logo-missing",
+    title="A logo that is not in the book",
+    source="record-format",
+    fires_on=("# handbook.yml\nlogo: nowhere.svg",),
+    silent_on=("# handbook.yml\nlogo: logo.svg  # which lies beside the settings", "# handbook.yml\nlicence: CC0-1.0"),
+)
+def logo_is_missing(house: House) -> Iterator[Fault]:
+    """The logo is a file in the folder of the book.
+
+    Every page shows it. What lies elsewhere is not published, also where a link in the folder leads there.
+    """
+    if not house.has_logo:
+        message = f"{house.settings.logo} is no file of the book"
+        yield Fault(at=("logo",), message=message, mend="put it beside the settings, or drop the line")
+
+
+HOUSE_CHECKS = (accent_is_faint, engine_differs, logo_is_missing)

@@ -72,7 +72,7 @@ def amounts_as_tsv(rows: Iterable[AmountView]) -> str:
         (row.name, row.role, row.equivalents.text, row.amount.text, row.mass.text, row.volume.text, row.molar_mass)
         for row in rows
     ]
-    return "\n".join("\t".join(line) for line in (head, *lines))
+    return "\n".join("\t".join(" ".join(cell.split()) for cell in line) for line in (head, *lines))
 
 
 def _charged(record: Record, path: Path) -> Charged:

@@ -4,6 +4,7 @@ Plain text and numbers, not escaped; the templates escape.
 """
 
 import datetime as dt
+from calendar import monthrange
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import partial
@@ -368,7 +369,7 @@ def next_review(record: Record, settings: Settings) -> dt.date | None:
         return record.reviewed.due
     months = record.reviewed.date.month - 1 + settings.review_interval_months
     year, month = record.reviewed.date.year + months // 12, months % 12 + 1
-    return dt.date(year, month, min(record.reviewed.date.day, 28))
+    return dt.date(year, month, min(record.reviewed.date.day, monthrange(year, month)[1]))
 
 
 def _review(record: Record, settings: Settings) -> str:

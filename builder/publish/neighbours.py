@@ -53,17 +53,20 @@ def variant_of(entry: Entry[Portrait], summary: Summary) -> Variant:
 def sequences(entries: Iterable[Entry[Portrait]]) -> tuple[tuple[Entry[Portrait], ...], ...]:
     """Return every run of entries that make each other's substrate, from its first step to each of its last ones.
 
-    An entry follows the first of those it names; so no run comes back to itself.
+    An entry follows the first of those it names; so no run comes back to itself. One that the book does not hold, as
+    while it is being written, is passed over.
     """
     by_id = {entry.id: entry for entry in entries}
     after: dict[str, list[Entry[Portrait]]] = {}
+    first = []
     for entry in by_id.values():
-        for before in (entry.record.preceded_by or ())[:1]:
+        before = next((each for each in entry.record.preceded_by or () if each in by_id), None)
+        if before is None:
+            first.append(entry)
+        else:
             after.setdefault(before, []).append(entry)
     found: list[tuple[Entry[Portrait], ...]] = []
-    waiting: list[tuple[Entry[Portrait], ...]] = [
-        (entry,) for entry in by_id.values() if entry.id in after and not entry.record.preceded_by
-    ]
+    waiting: list[tuple[Entry[Portrait], ...]] = [(entry,) for entry in first if entry.id in after]
     while waiting:
         run = waiting.pop(0)
         further = after.get(run[-1].id, ())

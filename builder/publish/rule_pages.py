@@ -9,6 +9,7 @@ from builder.book import Book, Verdict
 from builder.chemistry.scheme import DrawnCompound, draw_structure
 from builder.chemistry.structure import parse_smiles
 from builder.finding import Finding, Level
+from builder.publish.figures import how_many
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
 from builder.publish.templating import deferred
@@ -60,6 +61,14 @@ class RuleView:
     is_gate: bool
     touched: tuple[TouchedEntry, ...]
     in_line: tuple[TouchedEntry, ...]
+
+    @property
+    def reach(self) -> str:
+        """Return in words how many entries it bears on, however often each; empty where there is none."""
+        touched, in_line = ({each.id for each in listed} for listed in (self.touched, self.in_line))
+        if self.is_gate and (touched or in_line):
+            return f"{len(in_line)} in line, {len(touched)} contrary"
+        return f"touches {how_many(len(touched), 'entry', 'entries')}" if touched else ""
 
 
 _LEVEL_TITLES = {

@@ -23,6 +23,22 @@ def _found(tmp_path: Path, more: str) -> tuple[Finding, ...]:
     return open_book(folder, today=TODAY).findings
 
 
+def test_a_logo_is_a_file_of_the_book(tmp_path: Path) -> None:
+    (tmp_path / "elsewhere.svg").write_text("<svg/>", "utf-8")
+    (missing,) = _found(tmp_path, "logo: logo.svg")
+    assert (missing.rule, missing.level, str(missing.place)) == (
+        "logo-missing",
+        Level.ERROR,
+        "entries/handbook.yml:3:7",
+    )
+    (tmp_path / "entries" / "logo.svg").symlink_to(tmp_path / "elsewhere.svg")
+    outside = open_book(tmp_path / "entries", today=TODAY).findings
+    assert [finding.rule for finding in outside] == ["logo-missing"]
+    (tmp_path / "entries" / "logo.svg").unlink()
+    (tmp_path / "entries" / "logo.svg").write_text("<svg/>", "utf-8")
+    assert open_book(tmp_path / "entries", today=TODAY).findings == ()
+
+
 def test_another_version_is_a_query_at_the_pin(tmp_path: Path) -> None:
     (finding,) = _found(tmp_path, "engine: 0.0.9")
     assert (finding.rule, finding.level) == ("engine-differs", Level.QUERY)

@@ -34,6 +34,7 @@ RUNS = [
     ({"A": "", "B": "", "C": "BA"}, {"BC"}),  # the first that is named
     ({"A": "B", "B": "A"}, set()),  # a ring has no first step
     ({"A": "", "B": "A", "C": "D", "D": "C"}, {"AB"}),
+    ({"B": "A", "C": "B", "D": "AC"}, {"BCD"}),  # A is not in the book
 ]
 
 

@@ -2,17 +2,20 @@
 
 import re
 from collections.abc import Callable
+from dataclasses import replace
 from itertools import pairwise
 from urllib.parse import urldefrag, urljoin
 
 import pytest
 
 from builder.book import Book, Verdict
+from builder.publish.charges import amounts_as_tsv
+from builder.publish.entry_view import next_review
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait
 from builder.records.settings import Settings
-from tests.publish.handmade import GOOD, Markup, book_of, entry_of, text_of
+from tests.publish.handmade import CAUTION, GOOD, Markup, book_of, entry_of, text_of
 
 EVIL = "<imgx src=x onerror=alert(1)>"  # no element that the reader knows and refuses
 GOLDEN_PAGES = {
@@ -110,6 +113,13 @@ def test_derived_amounts_are_told_from_typed_ones(pages: dict[str, Page]) -> Non
     assert "Solvent in all 40.0 mL, substrate 0.250 mol/L in it" in body
 
 
+def test_copied_amounts_keep_their_columns() -> None:
+    entry = entry_of(text_of("NSC0W7N51").replace("name: sodium azide", 'name: "sodium\\tazide\\n(fresh)"'))
+    rows = [row.split("\t") for row in amounts_as_tsv(entry.kept.amounts).split("\n")]
+    assert {len(row) for row in rows} == {7}
+    assert "sodium azide (fresh)" in {row[0] for row in rows}
+
+
 def test_the_record_can_be_taken_away_as_written(pages: dict[str, Page]) -> None:
     files = {asset.path: asset.data for asset in pages["e/NSC0W7N51/"].assets}
     assert files["e/NSC0W7N51/NSC0W7N51.yml"] == (GOOD / "NSC0W7N51.yml").read_bytes()
@@ -172,6 +182,28 @@ def test_a_button_is_called_what_it_reads(pages: dict[str, Page]) -> None:
     named = re.findall(r'<button[^>]* aria-label="([^"]*)"[^>]*>([^<]*)<', body)
     assert ("Copy SMILES of sodium azide", "Copy") in named
     assert [pair for pair in named if pair[1] not in pair[0]] == []
+
+
+def test_a_rule_counts_each_entry_once() -> None:
+    entry = entry_of(text_of("NSC0W7N51"), CAUTION, replace(CAUTION, message="DMF: harms the unborn"))
+    body = next(page.body for page in build_pages(book_of(entry)) if page.path == "rules/")
+    assert "touches 1 entry" in body
+    assert "touches 2" not in body
+
+
+DUE = [
+    # reviewed, months between reviews, due again
+    ("2026-03-20", 24, "2028-03-20"),
+    ("2026-11-30", 3, "2027-02-28"),  # no 30th there
+    ("2026-12-31", 1, "2027-01-31"),
+]
+
+
+@pytest.mark.parametrize(("reviewed", "months", "due"), DUE)
+def test_a_review_is_due_again_on_its_day_of_the_month(reviewed: str, months: int, due: str) -> None:
+    record = entry_of(text_of("NSC0W7N51") + f"reviewed: {{by: bench-2, date: {reviewed}}}\n").record
+    settings = Settings(format=1, title="A book for tests", review_interval_months=months)
+    assert str(next_review(record, settings)) == due
 
 
 def test_the_menu_is_short_and_ends_with_the_guides(pages: dict[str, Page]) -> None:

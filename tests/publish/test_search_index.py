@@ -71,10 +71,14 @@ def test_columns_are_of_one_length(book: Book) -> None:
 
 
 def test_no_text_runs_over_its_line() -> None:
-    text = text_of("NSC0W7N51") + "procedure: |\n  first this\n  then\tthat\n"
-    entry = entry_of(text.replace("name: sodium azide", 'name: "sodium  azide"'))
+    text = text_of("NSC0W7N51").replace("name: sodium azide", 'name: "sodium\\tazide"')
+    title = "One-pot mesylation and azidation of (S)-octan-2-ol"
+    text = text.replace(title, '"One-pot\\nmesylation and azidation of (S)-octan-2-ol"')
+    entry = entry_of(text + "procedure: |\n  first this\n  then\tthat\n")
+    data = _data(entry)
     assert "first this then that" in search_notes([entry])[0]
-    assert not [column for column in _data(entry)["entries"].values() if "\n" in str(column[0])]
+    assert data["entries"]["title"] == [title]
+    assert "sodium azide" in data["compounds"]["names"]
 
 
 def test_entries_are_filed_by_claim_group_and_status(book: Book) -> None:
