@@ -1,7 +1,7 @@
 """Every name the tables have for a structure: those of solvents, reagents, nucleophiles and salts, and synonyms.tsv."""
 
 from collections.abc import Mapping
-from functools import cache
+from functools import cache, lru_cache
 
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.naming import names_in
@@ -15,6 +15,7 @@ __all__ = ["cas_of", "names_of", "structure_named"]
 _TABLE = "synonyms.tsv"
 
 
+@lru_cache(maxsize=1024)
 def names_of(structure: Structure) -> tuple[str, ...]:
     """Return every name, abbreviation and line formula the tables have for a structure, each once.
 
