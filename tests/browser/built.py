@@ -68,6 +68,7 @@ def mkdocs_environment() -> dict[str, str]:
     return {
         **os.environ,
         "NO_MKDOCS_2_WARNING": "1",
+        "PYTHONDONTWRITEBYTECODE": "",  # compiled once, as everywhere but in some containers
         "PYTHONHASHSEED": "0",
         "PYTHONUTF8": "1",
         "SOURCE_DATE_EPOCH": DAY,
