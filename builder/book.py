@@ -32,7 +32,7 @@ Kept = TypeVar("Kept")
 Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
 """Passes on what is done, given how much there will be."""
 
-SHARE = 64
+SHARE = 128
 """Records that one process reads; fewer are not worth starting one."""
 _CHUNK = 8
 """Records that a process takes at a time, so that none waits long for the slowest."""
@@ -124,14 +124,15 @@ class Examined(Generic[Kept]):
     kept: Kept | None = None
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)
 class Memory:
     """What became of each file the last time it was examined: by its name, a key of all that has a say, and what came.
 
-    A record that names an RXN file is never held: that file has a say as well.
+    A record that names an RXN file is never held: that file has a say as well. has_changed: since it was made.
     """
 
     held: dict[str, tuple[str, "Examined[Any]"]] = field(default_factory=dict)
+    has_changed: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -234,11 +235,13 @@ def _examined(
     }
     fresh = [path for path in files if path not in recalled]
     found = recalled | dict(zip(fresh, progress(_in_order(desk, fresh, processes), len(fresh)), strict=True))
+    names = set(memory.held)
     memory.held.clear()
     for path, key in keys.items():
         record = found[path].reading.record
         if record is None or record.rxn_file is None:
             memory.held[desk.name(path)] = (key, found[path])
+    memory.has_changed |= bool(fresh) or names != set(memory.held)
     return [found[path] for path in files]
 
 

@@ -80,7 +80,8 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
             processes=1 if self.is_live else usual_processes(),
             memory=self.memory,
         )
-        save_memory(folder, self.memory)
+        if self.memory.has_changed and not self.is_live:
+            save_memory(folder, self.memory)
         least = Level(self.config.fail_on).weight
         failing = [f for f in self.book.findings if f.accepted is None and f.level.weight >= least]
         write_report(BuildReport(len(self.book.entries), len(failing)))

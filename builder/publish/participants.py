@@ -1,6 +1,7 @@
 """Who takes part in a reaction: every compound of a record with its role, and all by which it may be looked up."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 from builder.checks.case import Case, compounds_of
 from builder.chemistry.structure import Structure
@@ -100,6 +101,7 @@ def _role_and_weight(path: Path, compound: Compound, record: Record) -> tuple[st
     return words, 2
 
 
+@lru_cache(maxsize=512)
 def _identity(structure: Structure) -> Identity:
     ions = structure.fragments if len(structure.fragments) > 1 else ()
     variants = dict.fromkeys((structure.flat_smiles, *(ion.smiles for ion in ions)))
