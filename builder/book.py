@@ -18,6 +18,7 @@ from builder.checks.case import Case, open_case
 from builder.checks.group import Gathering, Member
 from builder.checks.house import House, tool_version
 from builder.checks.run import check_group, check_record, check_settings, settle
+from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
 from builder.records.model import Record
@@ -148,11 +149,16 @@ class _Desk(Generic[Kept]):
         """Return a file's name as findings show it."""
         return _shown(path, self.folder)
 
-    def key(self, path: Path) -> str:
-        """Return a key of all that has a say in what becomes of a file, this tool apart."""
+    def keys(self, files: Iterable[Path]) -> dict[Path, str]:
+        """Return for each file a key of all that has a say in what becomes of it, this tool apart."""
         keep = getattr(self.keep, "__qualname__", type(self.keep).__qualname__)
-        about = (self.name(path), self.settings.model_dump_json(), self.today, keep)
-        return hashlib.sha256(repr(about).encode() + path.read_bytes()).hexdigest()
+        about = hashlib.sha256(repr((self.settings.model_dump_json(), self.today, keep)).encode())
+        found = {}
+        for path in files:
+            key = about.copy()
+            key.update(self.name(path).encode() + b"\0" + path.read_bytes())
+            found[path] = key.hexdigest()
+        return found
 
     def examine(self, path: Path) -> Examined[Kept]:
         """Read and check one file on its own."""
@@ -196,7 +202,11 @@ def open_book(
     settings, findings = _open_settings(folder)
     files, misnamed = record_files(folder)
     desk = _Desk(folder, settings, today, keep)
-    examined = _examined(desk, files, processes, progress, memory if memory is not None else Memory())
+    examined = list(
+        progress(_in_order(desk, files, processes), len(files))
+        if memory is None
+        else _recalled(desk, files, processes, progress, memory)
+    )
     settled = judge(examined, settings)
     entries = [
         Entry(
@@ -223,11 +233,11 @@ def open_book(
     )
 
 
-def _examined(
+def _recalled(
     desk: _Desk[Kept], files: Sequence[Path], processes: int, progress: Progress, memory: Memory
 ) -> list[Examined[Kept]]:
     """Return what becomes of each file, in the order of the files, from memory where it can be."""
-    keys = {path: desk.key(path) for path in files if path.stat().st_size <= MAX_BYTES}
+    keys = desk.keys(path for path in files if path.stat().st_size <= MAX_BYTES)
     recalled = {
         path: memory.held[desk.name(path)][1]
         for path, key in keys.items()
@@ -248,8 +258,8 @@ def _examined(
 def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Iterator[Examined[Kept]]:
     """Yield what becomes of each file, in the order of the files.
 
-    Where processes are forked, the first file is read here, with all tables it takes, and the processes are given up
-    after their shares: a book of any length takes the memory of a short one.
+    Where processes are forked, what each would load is loaded here first, and the processes are given up after their
+    shares: a book of any length takes the memory of a short one.
     """
     processes = min(processes, len(files) // SHARE)
     if processes < 2:
@@ -260,7 +270,8 @@ def _in_order(desk: _Desk[Kept], files: Sequence[Path], processes: int) -> Itera
         with ProcessPoolExecutor(processes, context) as pool:
             yield from pool.map(desk.examine, files, chunksize=_CHUNK)
         return
-    yield desk.examine(files[0])
+    load_ring_templates()
+    yield desk.examine(files[0])  # with all the tables that takes
     step = processes * SHARE
     for start in range(1, len(files), step):
         with _left_alone_by_the_collector(), ProcessPoolExecutor(processes, context) as pool:

@@ -21,7 +21,6 @@ from mkdocs.utils.templates import TemplateContext
 
 from builder.book import Book, Memory, open_book
 from builder.checks.report import render_text
-from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Level
 from builder.mechanism.batch import usual_processes
 from builder.publish.build import BuildReport, build_date, write_report
@@ -70,7 +69,6 @@ class HandbookPlugin(BasePlugin[HandbookConfig]):  # type: ignore[no-untyped-cal
         _refuse_a_talking_theme(config)
         _add_our_theme(config)
         folder = Path(config.docs_dir)
-        load_ring_templates()
         self.memory = self.memory or load_memory(folder)
         self.book = open_book(
             folder,

@@ -18,6 +18,7 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
+from builder.mechanism.forecast import Z90
 from builder.mechanism.observations.tables import ShareKind, load_rates, load_shares
 from builder.mechanism.observing import Seen, SilentError, observed_logit, see_rate, see_share
 from builder.mechanism.rate_terms import Parameters, RateTerm, load_rate_terms
@@ -26,7 +27,6 @@ __all__ = ["Calibration", "Residual", "calibrate"]
 
 ROUNDS = 3
 HUBER = 2.5
-Z90 = 1.6448536269514722
 _MODEL = "model."
 _DIGITS = 3
 _PARTITION = ("e1.", "shift.", "capture.", "e2.trans")

@@ -13,7 +13,7 @@ from builder.chemistry.perception import Hybridisation, ReactiveSite, perceive_s
 from builder.chemistry.structure import Structure
 from builder.mechanism.departure import Departure, departures
 from builder.mechanism.flask import Flask, fill_flask
-from builder.mechanism.forecast import Contribution, Forecast, Forecasted, PathwayReport, Reason
+from builder.mechanism.forecast import Z90, Contribution, Forecast, Forecasted, PathwayReport, Reason
 from builder.mechanism.kinetics import Flow, Kinetics
 from builder.mechanism.log_rate import combined, root_of_squares
 from builder.mechanism.pathways.addition import addition_pathways
@@ -39,8 +39,6 @@ TOO_SLOW = 4.0
 """log10 units below the fastest pathway at which an ionisation is not worth the search for its cation's shifts."""
 _NO_FLOW = 1e-9
 """Share of all flow below which a pathway is dropped before the kinetics."""
-Z90 = 1.6448536269514722
-"""Half width of a 90 % interval in standard errors of a normal distribution."""
 _LN10 = math.log(10.0)
 
 

@@ -6,7 +6,11 @@ from builder.chemistry.structure import Structure
 from builder.mechanism.rate_terms import Term
 from builder.records.vocabulary import Course, Mechanism
 
-__all__ = ["Contribution", "Forecast", "Forecasted", "PathwayReport", "Reason"]
+__all__ = ["Z90", "Contribution", "Forecast", "Forecasted", "PathwayReport", "Reason"]
+
+
+Z90 = 1.6448536269514722
+"""Half width of a 90 % interval in standard errors of a normal distribution."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -150,9 +150,8 @@ def _mkdocs(*arguments: str, report: Path | None = None) -> int:
         environment[REPORT_VARIABLE] = str(report)
     command = [sys.executable, "-m", "mkdocs", *arguments]
     with subprocess.Popen(command, env=environment) as child:  # noqa: S603 - our own arguments
-        before = signal.signal(
-            signal.SIGTERM, lambda *_: child.terminate()
-        )  # or it would outlive us, and keep its port
+        # Ended alone, we would leave the child behind, and it would keep its port. An interrupt reaches it by itself.
+        before = signal.signal(signal.SIGTERM, lambda *_: child.terminate())
         try:
             return child.wait()
         except KeyboardInterrupt:

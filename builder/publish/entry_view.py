@@ -11,6 +11,7 @@ from functools import partial
 from urllib.parse import quote
 
 from builder.book import Book, Entry, Verdict
+from builder.checks.cautions import Severity
 from builder.finding import Finding, Level
 from builder.publish.charges import AmountView, StageView, amounts_as_tsv
 from builder.publish.expected import ExpectedView
@@ -34,8 +35,6 @@ DIGEST_SHOWN = 12
 MOST_VARIANTS = 7
 """Other ways to the same product that a page lists."""
 
-_GRAVITY = ("stop", "warn", "note")
-_MILD = _GRAVITY[-1]
 _STANDING = {
     Verdict.IN_LINE: "Product, course, mechanism and yields lie within what the engine can defend; a time longer than"
     " forecast is not held against an entry.",
@@ -313,7 +312,11 @@ def _of_level(findings: list[FindingView], level: Level) -> tuple[FindingView, .
 def _gravest_first(findings: Iterable[Finding]) -> list[Finding]:
     """Return the cautions, those that need a safety review first; else in the order of the record."""
     cautions = [finding for finding in findings if finding.level is Level.CAUTION]
-    return sorted(cautions, key=lambda finding: _GRAVITY.index(str(finding.data.get("severity", _GRAVITY[-1]))))
+    return sorted(cautions, key=lambda finding: -_severity(finding).weight)
+
+
+def _severity(finding: Finding) -> Severity:
+    return Severity(str(finding.data.get("severity", Severity.NOTE)))
 
 
 def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingView:
@@ -323,7 +326,7 @@ def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingV
         rule=finding.rule,
         title=around.rules.get(finding.rule, finding.rule),
         rule_page=finding.rule in around.rules,
-        is_grave=finding.data.get("severity", _MILD) != _MILD,
+        is_grave=_severity(finding) is not Severity.NOTE,
         message=finding.message,
         why=finding.why,
         mend=finding.mend,

@@ -8,7 +8,7 @@ from markupsafe import Markup
 from builder.checks.case import Case
 from builder.checks.forecasts import is_same_product, share_bounds
 from builder.chemistry.scheme import DrawnCompound, draw_structure
-from builder.mechanism.forecast import Forecast
+from builder.mechanism.forecast import Z90, Forecast
 from builder.mechanism.outlook import expected_text, percent_text
 from builder.publish.figures import duration_text, significant
 from builder.publish.forecast_parts import Closed, Why, closed_gates, main_pathway, verdict_sentence, why
@@ -18,8 +18,6 @@ __all__ = ["ExpectedView", "ShareView", "expected_view", "why_nothing_is_expecte
 
 SHOWN = 0.01
 """Share of converted substrate from which a mechanism is named."""
-NINETY_PERCENT = 1.645
-"""Standard errors on either side that hold nine cases in ten of a normal distribution."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,7 +110,7 @@ def _within(forecast: Forecast) -> str:
     """Return how far the half-life may be off; empty where there is none."""
     if not forecast.pathways or forecast.half_life_s is None or math.isinf(forecast.half_life_s):
         return ""
-    factor = 10 ** (NINETY_PERCENT * main_pathway(forecast).error)
+    factor = 10 ** (Z90 * main_pathway(forecast).error)
     return f"within a factor of {significant(factor, 1 if factor < 10 else 2)}, nine times in ten"
 
 

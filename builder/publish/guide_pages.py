@@ -2,6 +2,7 @@
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from pathlib import Path
 from typing import Any
 
 from builder.book import Book
@@ -64,7 +65,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
     """Return the two guides."""
     schema = record_schema(site_class_names(), leaving_group_names())
     meanings = site_class_meanings()
-    example = next((entry.id for entry in book.entries if not entry.record.status.is_retired), "NS4T9XQ2N")
+    example = next((entry.id for entry in book.entries if not entry.record.status.is_retired), Path(SPECIMEN_FILE).stem)
     return (
         Page(
             kind="guide",

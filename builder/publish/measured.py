@@ -1,6 +1,6 @@
 """Measurements in words: a number never stands without its kind, its product, its scale and its runs."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from builder.publish.figures import amount_text, joined, quantity_text
@@ -65,13 +65,13 @@ def measured_line(line: Measurement, record: Record, scale_mol: float | None) ->
     return MeasuredLine(line.what, _text(line), of, _named(of, names), basis)
 
 
-def outcome_headline(record: Record, scale_mol: float | None) -> str:
+def outcome_headline(record: Record, lines: Sequence[MeasuredLine]) -> str:
     """Return the outcome in one line: what happened, and the number that says how well.
 
+    lines: every measurement of the record as shown.
     Yields of the desired products come first, then ratios, conversion, what was recovered, the rate constant.
     """
     outcome = record.outcome
-    lines = measured_lines(record, scale_mol)
     wanted = {product.label for product in record.desired}
     yields = [line for line in lines if line.what == "yield" and wanted & set(line.of)]
     chosen = [f"{line.brief} ({line.basis})" for line in yields[:2]]

@@ -82,11 +82,12 @@ def portrait_of(case: Case) -> Portrait:
     """Return everything a page shows of a case."""
     substrate = case.structures.get(("substrate",))
     forecast = case.forecast
+    strip, lines = conditions_strip(case), measured_lines(case.record, scale_mol(case))
     return Portrait(
-        conditions=conditions_line(case),
-        outcome=outcome_headline(case.record, scale_mol(case)),
-        strip=conditions_strip(case),
-        lines=measured_lines(case.record, scale_mol(case)),
+        conditions=conditions_line(strip),
+        outcome=outcome_headline(case.record, lines),
+        strip=strip,
+        lines=lines,
         scheme=entry_scheme(case),
         expected=expected_view(case),
         nothing_expected=why_nothing_is_expected(case),

@@ -1,7 +1,8 @@
 """Rules -> their pages: statement, reason, source, examples, and the entries each one touches."""
 
-from collections.abc import Container, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import partial
 
 from markupsafe import Markup
 
@@ -16,7 +17,7 @@ from builder.publish.templating import deferred
 from builder.rule import Rule
 from builder.sources import source_text
 
-__all__ = ["RuleView", "TouchedEntry", "rule_pages", "view_rule"]
+__all__ = ["RuleView", "TouchedEntry", "rule_pages"]
 
 AnyRule = Rule[object, object]
 
@@ -85,14 +86,41 @@ _LEVEL_WORDS = {
 }
 
 
-def view_rule(rule: AnyRule, book: Book[Portrait]) -> RuleView:
+@dataclass(frozen=True, slots=True)
+class _Reach:
+    """What rules say of the entries of a book, by the id of the rule.
+
+    touched: findings of a rule, or made because the gate of that name is shut.
+    closed: what a gate closes in the forecast of an entry that is not contrary.
+    """
+
+    touched: Mapping[str, Sequence[TouchedEntry]]
+    closed: Mapping[str, Sequence[TouchedEntry]]
+
+
+def _reach_of_rules(book: Book[Portrait]) -> _Reach:
+    """Return what every rule says of the entries, in the order of the entries."""
+    touched: dict[str, list[TouchedEntry]] = {}
+    closed: dict[str, list[TouchedEntry]] = {}
+    for entry in book.entries:
+        about = partial(TouchedEntry, entry.id, entry.record.title)
+        for finding in entry.findings:
+            for rule_id in {finding.rule, *_gates_of(finding)}:
+                touched.setdefault(rule_id, []).append(about(finding.message, finding.accepted or ""))
+        for gate in entry.kept.gates if entry.verdict is not Verdict.CONTRARY else ():
+            closed.setdefault(gate.rule, []).append(about(gate.text))
+    return _Reach(touched, closed)
+
+
+def _gates_of(finding: Finding) -> list[str]:
+    gates = finding.data.get("gates")
+    return gates if isinstance(gates, list) else []
+
+
+def _view_rule(rule: AnyRule, reach: _Reach) -> RuleView:
     """Return everything the page of `rule` shows."""
-    touched = tuple(
-        TouchedEntry(entry.id, entry.record.title, finding.message, finding.accepted or "")
-        for entry in book.entries
-        for finding in entry.findings
-        if _speaks_of(finding, rule.id)
-    )
+    touched = tuple(reach.touched.get(rule.id, ()))
+    contrary = {each.id for each in touched}
     return RuleView(
         id=rule.id,
         title=rule.title,
@@ -107,25 +135,8 @@ def view_rule(rule: AnyRule, book: Book[Portrait]) -> RuleView:
         silent_on=_examples(rule.silent_on, f"{rule.id}-silent", is_gate=bool(rule.effect)),
         is_gate=bool(rule.effect),
         touched=touched,
-        in_line=_in_line(rule, book, {each.id for each in touched}) if rule.effect else (),
+        in_line=tuple(each for each in reach.closed.get(rule.id, ()) if each.id not in contrary),
     )
-
-
-def _in_line(gate: AnyRule, book: Book[Portrait], contrary: Container[str]) -> tuple[TouchedEntry, ...]:
-    """Return the entries in whose forecast the gate closes a pathway, and which show nothing against it."""
-    return tuple(
-        TouchedEntry(entry.id, entry.record.title, closed.text)
-        for entry in book.entries
-        if entry.verdict is not Verdict.CONTRARY and entry.id not in contrary
-        for closed in entry.kept.gates
-        if closed.rule == gate.id
-    )
-
-
-def _speaks_of(finding: Finding, rule_id: str) -> bool:
-    """Say whether a finding is one of the rule's, or was made because the gate of that name is shut."""
-    gates = finding.data.get("gates", ())
-    return finding.rule == rule_id or (isinstance(gates, list) and rule_id in gates)
 
 
 def _examples(examples: tuple[str, ...], ident: str, *, is_gate: bool) -> tuple[ExampleView, ...]:
@@ -142,7 +153,8 @@ def _drawing(smiles: str, ident: str) -> Markup:
 
 def rule_pages(book: Book[Portrait], rules: Sequence[AnyRule]) -> tuple[Page, ...]:
     """Return the index of rules and a page for each."""
-    views = [view_rule(rule, book) for rule in sorted(rules, key=lambda rule: rule.id)]
+    reach = _reach_of_rules(book)
+    views = [_view_rule(rule, reach) for rule in sorted(rules, key=lambda rule: rule.id)]
     groups = [
         ("Gates of the engine", "What opens or closes a mechanism at a site.", [v for v in views if v.is_gate]),
         *(

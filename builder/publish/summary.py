@@ -55,10 +55,10 @@ def scale_mol(case: Case) -> float | None:
     return case.amounts.substrate.amount_mol
 
 
-def conditions_line(case: Case) -> str:
-    """Return the conditions in one line."""
+def conditions_line(strip: Iterable[Fact]) -> str:
+    """Return the conditions of a strip in one line."""
     labels = {"Nucleophile", "Base", "Reagents", "Solvent", "Temperature", "Time"}
-    facts = [fact for fact in conditions_strip(case) if fact.label in labels]
+    facts = [fact for fact in strip if fact.label in labels]
     return joined(
         joined((f.value, f"({f.detail})" if f.detail and f.label == "Nucleophile" else ""), " ") for f in facts
     )
