@@ -41,7 +41,8 @@
       if (finder) return;
       loading = null;
       count.textContent = "The index of the book could not be read; try again, or take the lists.";
-    });
+    }).finally(() => list.setAttribute("aria-busy", "false"));
+    list.setAttribute("aria-busy", "true"); // hits may change once more, when the long texts are there
   }
 
   // --- the list -------------------------------------------------------------------------------------------------

@@ -319,6 +319,7 @@ def _search(tab: "sync_api.Page", query: str) -> None:
     tab.locator("#hb-query").focus()
     tab.keyboard.type(query)
     _wait_for_count(tab, "found$")
+    sync_api.expect(tab.locator("[role=listbox]")).to_have_attribute("aria-busy", "false")
 
 
 def _ids(tab: "sync_api.Page") -> list[str]:
