@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 from difflib import get_close_matches
 from functools import cache
 from pathlib import Path
-from typing import Any, TypeVar, get_args
+from typing import Any, TypeVar, get_args, get_origin
 
 from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
@@ -15,11 +15,11 @@ from builder.finding import Finding, Level, Place
 from builder.records.model import UNION_TAGS, Record
 from builder.records.rules import reading_rule
 from builder.records.settings import Settings
-from builder.records.yaml_text import Places, Plain, read_plain
+from builder.records.yaml_text import Places, Plain, Plainly, read_plain
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["MAX_BYTES", "Reading", "read_bytes", "read_into", "read_record", "read_settings"]
+__all__ = ["MAX_BYTES", "Reading", "read_bytes", "read_into", "read_record", "read_settings", "read_values"]
 
 MAX_BYTES = 256 * 1024
 """Largest file that is read: a record, or an RXN file beside it."""
@@ -65,7 +65,11 @@ def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Fin
 
 def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:
     """Read YAML text into `model`: the value (None where any error was found), findings, and places."""
-    plainly = read_plain(text, shown_as)
+    return read_values(model, read_plain(text, shown_as))
+
+
+def read_values(model: type[Model], plainly: Plainly) -> tuple[Model | None, tuple[Finding, ...], Places]:
+    """Read plain values into `model` as `read_into` does, wherever they and their places come from."""
     findings = list(plainly.findings)
     made = None
     if isinstance(plainly.value, dict):
@@ -264,8 +268,12 @@ def _keys_of(model: type[BaseModel]) -> tuple[str, ...]:
 def _models_at(model: type[BaseModel], path: ValuePath) -> tuple[type[BaseModel], ...]:
     """Return the models that may stand at `path`, to name the keys they have."""
     owners: tuple[type[BaseModel], ...] = (model,)
+    is_free = False
     for step in path:
-        if isinstance(step, str):
+        if is_free:  # a key of the writer's own, below which stands what the mapping holds
+            is_free = False
+        elif isinstance(step, str):
+            is_free = any(_is_free(owner, step) for owner in owners)
             owners = tuple(
                 found
                 for owner in owners
@@ -274,6 +282,14 @@ def _models_at(model: type[BaseModel], path: ValuePath) -> tuple[type[BaseModel]
                 for found in _models_in(info.annotation)
             )
     return owners
+
+
+def _is_free(model: type[BaseModel], key: str) -> bool:
+    """Say whether the keys of the mapping under `key` are the writer's own."""
+    return any(
+        (info.alias or name) == key and get_origin(info.annotation) is dict
+        for name, info in model.model_fields.items()
+    )
 
 
 def _models_in(annotation: object) -> tuple[type[BaseModel], ...]:

@@ -22,7 +22,7 @@ from builder.records.specimen import GAP
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["Places", "Plain", "Plainly", "read_plain"]
+__all__ = ["Places", "Plain", "Plainly", "is_read_alike", "read_plain"]
 
 MAX_DEPTH = 16
 MAX_VALUES = 20_000
@@ -51,11 +51,15 @@ _BOOLEANS = {"true": True, "True": True, "TRUE": True, "false": False, "False": 
 
 @dataclass(frozen=True, slots=True)
 class Places:
-    """Where every key and value of one file stands; spans, of which a place is made when it is asked for."""
+    """Where every key and value of one file stands; spans, of which a place is made when it is asked for.
+
+    whole: what is shown for the whole, as where a key of the top level is missing.
+    """
 
     file: str
     values: Mapping[ValuePath, Span] = field(default_factory=dict)
     keys: Mapping[ValuePath, Span] = field(default_factory=dict)
+    whole: Span = (1, 1, 2)
 
     def of(self, path: ValuePath, *, on_key: bool = False) -> Place:
         """Return the place of the value at `path`, or of the key of its nearest existing parent.
@@ -70,7 +74,7 @@ class Places:
             if span is not None:
                 return Place(self.file, *span)
             path = path[:-1]
-        return Place(self.file, 1, 1, 2)
+        return Place(self.file, *self.whole)
 
     def _as_written(self, path: ValuePath) -> ValuePath:
         written: ValuePath = ()
@@ -385,6 +389,17 @@ class _Constructor:
         start = node.end_mark.index
         end = self.text.find("\n", start)
         return self.text[start:] if end < 0 else self.text[start:end]
+
+
+def is_read_alike(text: str) -> bool:
+    """Say whether every YAML reader takes the bare scalar `text` for a text, as far as its characters permit that."""
+    return not (
+        text in _WORDS
+        or text.casefold() in {word.casefold() for word in _BOOLEANS}
+        or _FLOAT.fullmatch(text)
+        or _ALTERED_NUMBER.fullmatch(text)
+        or _OTHERWISE_IN_1_1.fullmatch(text)
+    )
 
 
 def _named(path: ValuePath) -> str:

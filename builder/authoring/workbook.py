@@ -1,0 +1,175 @@
+"""An .xlsx workbook -> a Sheet; the only home of openpyxl.
+
+A workbook comes from anybody, and is a zip of XML: what it unpacks to is bounded, a document type is refused (and with
+it every entity), and nothing in it is run. Formulas count by the result that was saved with them.
+"""
+
+import datetime as dt
+import io
+import re
+import zipfile
+import zlib
+from collections.abc import Iterator, Mapping
+from decimal import Decimal
+from itertools import zip_longest
+from typing import Any
+from xml.parsers import expat
+
+from openpyxl import load_workbook
+
+from builder.authoring.sheet import Cell, Sheet, SheetError, sheet_of
+
+__all__ = ["read_workbook"]
+
+MAX_UNPACKED = 200 * 1024 * 1024
+MAX_PARTS = 2_000
+_BROKEN = (ValueError, KeyError, TypeError, AttributeError, IndexError, OSError, zipfile.BadZipFile, zlib.error)
+"""What openpyxl raises for a workbook that no spreadsheet program wrote."""
+
+
+def read_workbook(data: bytes, name: str, *, sheet: str | None, heading_row: int | None = None) -> Sheet:
+    """Read one sheet of a workbook.
+
+    sheet: its name; the only one, or the only visible one, if None.
+    Raises SheetError for a file that is no workbook, is too large unpacked, or leaves open which sheet is meant.
+    """
+    _refuse_bombs(data, name)
+    try:
+        results = load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
+        formulas = load_workbook(io.BytesIO(data), read_only=True, data_only=False, keep_links=False)
+    except (*_BROKEN, SyntaxError) as error:
+        raise SheetError(f"{name} is no workbook that can be read ({error}): save it anew as .xlsx") from error
+    chosen = _chosen(results.worksheets, name, sheet)
+    shown, typed = results[chosen], formulas[chosen]
+    for each in (shown, typed):
+        each.reset_dimensions()  # a declared size may be wrong, or a billion cells
+    try:
+        return sheet_of(f"{name}!{chosen}", _rows(shown, typed), heading_row)
+    except (*_BROKEN, SyntaxError) as error:
+        raise SheetError(f"{name}!{chosen} cannot be read ({error}): save it anew as .xlsx") from error
+
+
+def _chosen(sheets: list[Any], name: str, wanted: str | None) -> str:
+    titles = [str(sheet.title) for sheet in sheets]
+    if wanted is not None:
+        if wanted not in titles:
+            raise SheetError(f'{name} has no sheet "{wanted}": it has {", ".join(titles)}')
+        return wanted
+    visible = [str(sheet.title) for sheet in sheets if sheet.sheet_state == "visible"] or titles
+    if len(visible) != 1:
+        raise SheetError(f"{name} has {len(visible)} sheets; name one by --sheet: {', '.join(visible)}")
+    return visible[0]
+
+
+def _refuse_bombs(data: bytes, name: str) -> None:
+    try:
+        with zipfile.ZipFile(io.BytesIO(data)) as parts:
+            listed = parts.infolist()
+            if len(listed) > MAX_PARTS or sum(part.file_size for part in listed) > MAX_UNPACKED:
+                raise SheetError(f"{name} unpacks to more than {MAX_UNPACKED // 1024**2} MB: import it in parts")
+            for part in listed:
+                if part.filename.endswith((".xml", ".rels")):
+                    _refuse_document_type(parts, part, name)
+    except (zipfile.BadZipFile, zlib.error, NotImplementedError, RuntimeError, EOFError) as error:
+        raise SheetError(f"{name} is no .xlsx workbook: save it as .xlsx or as CSV UTF-8") from error
+
+
+class _HasBegunError(Exception):
+    """The first element was reached: no document type can follow."""
+
+
+def _refuse_document_type(parts: zipfile.ZipFile, part: zipfile.ZipInfo, name: str) -> None:
+    def refuse(*_: object) -> None:
+        raise SheetError(f"{name} declares a document type in {part.filename}, which no spreadsheet program writes")
+
+    def stop(*_: object) -> None:
+        raise _HasBegunError
+
+    parser = expat.ParserCreate()
+    parser.StartDoctypeDeclHandler, parser.StartElementHandler = refuse, stop
+    with parts.open(part) as content:
+        try:
+            while chunk := content.read(65_536):
+                parser.Parse(chunk)
+        except _HasBegunError:
+            return
+        except expat.ExpatError as error:
+            raise SheetError(f"{name} holds broken XML in {part.filename}: save it anew") from error
+
+
+def _rows(results: Any, formulas: Any) -> Iterator[tuple[int, Mapping[int, Cell]]]:
+    pairs = zip_longest(results.iter_rows(), formulas.iter_rows(), fillvalue=())
+    for number, (shown, typed) in enumerate(pairs, start=1):
+        cells = {}
+        for column, (result, formula) in enumerate(zip_longest(shown, typed)):
+            cell = _cell(result, None if formula is None else formula.value)
+            if cell is not None:
+                cells[column] = cell
+        yield number, cells
+
+
+def _cell(result: Any, typed: Any) -> Cell | None:
+    """Return a cell; None where it is empty."""
+    value = None if result is None else result.value
+    if value is None:
+        if typed is None or not str(typed).strip():
+            return None
+        trouble = ("the formula has no saved result", "open the workbook, let it calculate, and save it")
+        return Cell(str(typed), trouble)
+    number_format = str(result.number_format or "General")
+    match value:
+        case bool():
+            return Cell("true" if value else "false")
+        case int() | float():
+            return Cell(number_as_shown(value, number_format))
+        case dt.datetime() | dt.date():
+            return _date(value)
+        case dt.time() | dt.timedelta():
+            return _time(value)
+    text = str(value).replace("_x000D_", "").strip()
+    if result.data_type == "e":
+        return Cell(text, (f"the formula ends in {text}", "mend the formula, or type the value"))
+    return Cell(text) if text else None
+
+
+def number_as_shown(value: float, number_format: str) -> str:
+    """Return a number with all its digits, and the zeros and the percent sign that its format shows besides.
+
+    A float has 15 digits that mean something; 0.1 + 0.2 of a formula is 0.3.
+
+    >>> number_as_shown(1.2, "0.00"), number_as_shown(0.88, "0%"), number_as_shown(4, "000"), number_as_shown(2.083, "0.0")
+    ('1.20', '88 %', '004', '2.083')
+    """
+    number = Decimal(format(value, ".15g"))
+    shown = re.sub(r'"[^"]*"|\[[^\]]*\]|\\.', "", number_format.partition(";")[0])
+    if "%" in shown:
+        number = number.scaleb(2)
+    decimals = re.search(r"[0#]\.(0+)", shown)
+    digits = -int(number.as_tuple().exponent)
+    if digits < 0:
+        number, digits = number.quantize(Decimal(1)), 0
+    if decimals and "E" not in shown.upper():
+        digits = max(digits, len(decimals[1]))
+        number = number.quantize(Decimal(1).scaleb(-digits)) if digits < 28 else number
+    text = format(number, "f")
+    if re.fullmatch(r"0{2,}", shown.strip()) and text.isdecimal():
+        text = text.zfill(len(shown.strip()))
+    return f"{text} %" if "%" in shown else text
+
+
+def _date(value: dt.date) -> Cell:
+    if isinstance(value, dt.datetime) and value.time() != dt.time():
+        said = f"the spreadsheet holds the date and time {value.isoformat(' ', 'minutes')}"
+        return Cell(value.isoformat(" ", "minutes"), (said, "format the column as text and type the value again"))
+    day = value.date() if isinstance(value, dt.datetime) else value
+    return Cell(day.isoformat(), is_date=True)
+
+
+def _time(value: dt.time | dt.timedelta) -> Cell:
+    """Return a cell that was turned into a time of the day, as ratios are: 97:3 is shown as 97:03:00."""
+    whole = value.hour * 3600 + value.minute * 60 + value.second if isinstance(value, dt.time) else round(value.total_seconds())
+    hours, minutes, seconds = whole // 3600, whole // 60 % 60, whole % 60
+    shown = f"{hours}:{minutes:02}:{seconds:02}"
+    ratio = f"{hours}:{minutes}" + (f":{seconds}" if seconds else "")
+    mend = f"format the column as text and type it again: {ratio} if it was a ratio, with h or min if it was a time"
+    return Cell(shown, (f"the spreadsheet turned what was typed into the time {shown}", mend))
