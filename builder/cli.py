@@ -16,11 +16,15 @@ from typing import Any, NoReturn
 
 import click
 
+from builder.authoring.column_map import ColumnMap, first_map
+from builder.authoring.import_report import as_plain, cell_table, import_text
+from builder.authoring.import_sheet import NoKeyError, State, open_sheet, plan_import, write_import
 from builder.authoring.new import write_new_record
 from builder.authoring.schema import schemas, write_schemas
+from builder.authoring.sheet import SheetError
 from builder.authoring.start import StartError, start_book
 from builder.authoring.whole_file import written_whole
-from builder.book import Book, open_book
+from builder.book import Book, open_book, record_files
 from builder.checks.case import Case
 from builder.checks.forecast_cautions import forecast_cautions
 from builder.checks.house import DISTRIBUTION
@@ -38,10 +42,22 @@ from builder.mechanism.improve import improvements, is_as_wanted
 from builder.mechanism.rate_terms import FITTED_TABLE
 from builder.publish.build import AddressError, NotOurSiteError, SiteBuildError, build_date, build_site, serve_site
 from builder.publish.console import put_up_with_any_console
+from builder.publish.export import (
+    BYTE_ORDER_MARK,
+    CLEARED_FOR,
+    Exported,
+    csv_text,
+    exported_records,
+    jsonl_text,
+    within,
+)
 from builder.publish.figures import how_many
 from builder.publish.forecast_text import render_forecast
 from builder.publish.progress import counted, stepped, watched
+from builder.records.reader import read_file_into, read_settings
 from builder.records.settings import SETTINGS_FILE
+from builder.records.vocabulary import Status
+from builder.records.yaml_text import Places
 
 __all__ = ["main"]
 
@@ -194,6 +210,127 @@ def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> Non
     except StructureError as error:
         raise click.UsageError(f"{error.reason}; {error.mend}") from error
     click.echo(f"{path}: fill in what says TO FILL IN, then `handbook check {path}`")
+
+
+@handbook.command("import")
+@click.argument("sheet_file", metavar="SHEET", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.option("--map", "map_file", type=click.Path(exists=True, dir_okay=False, path_type=Path), help="Of its columns.")
+@click.option("--sheet", help="Which sheet of a workbook.")
+@click.option("--into", type=click.Path(file_okay=False, path_type=Path), help="Folder of the book for new records.")
+@click.option("--dry-run", is_flag=True, help="Say what would happen, and write nothing.")
+@click.option("--sound-rows", is_flag=True, help="Write the sound rows although others are refused.")
+@click.option("--update", is_flag=True, help="Let drafts follow the sheet that nobody has edited since their import.")
+@click.option("--write-map", type=click.Path(dir_okay=False, path_type=Path), help="Write a first map, and stop.")
+@click.option("--report", type=click.Path(dir_okay=False, path_type=Path), help="Write the cells to mend as CSV.")
+@_BOOK
+@_JSON
+def import_(
+    *,
+    sheet_file: Path,
+    map_file: Path | None,
+    sheet: str | None,
+    into: Path | None,
+    write_map: Path | None,
+    report: Path | None,
+    book: Path,
+    as_json: bool,
+    **flags: bool,
+) -> None:
+    """Make records from the rows of SHEET (.csv, .xlsx, or .jsonl of `handbook export`), one a row.
+
+    Every cell that cannot be read is named, and unless --sound-rows is given nothing is written while there is one.
+    The key of a row (the notebook page, if the map names no other) decides which entry it makes: the same row makes the
+    same entry every time, and one that is there already is left as it is.
+
+    \b
+    Example:
+      handbook import screen.xlsx --write-map screen.yml
+      handbook import screen.xlsx --map screen.yml --dry-run --report cells.csv
+      handbook import screen.xlsx --map screen.yml --into entries/screen
+    """
+    folder = (into or book).resolve()
+    if not folder.is_relative_to(book.resolve()):
+        raise click.UsageError(f"--into {into} is no folder inside the book {book}")
+    column_map, places = _column_map(map_file)
+    try:
+        rows = open_sheet(sheet_file, sheet=sheet or column_map.sheet, heading_row=column_map.heading_row)
+        if write_map is not None:
+            _write_new(write_map, first_map(rows))
+            return
+        with counted("reading rows", len(rows.rows)) as advance:
+            settings = book / SETTINGS_FILE
+            planned = plan_import(
+                rows,
+                column_map,
+                places,
+                book=book.resolve(),
+                settings=read_settings(settings, settings.name)[0] if settings.is_file() else None,
+                into=folder,
+                may_update=flags["update"],
+                advance=advance,
+            )
+    except (SheetError, NoKeyError) as error:
+        raise click.UsageError(str(error)) from error
+    if report is not None:
+        with written_whole(report) as file:
+            file.write(cell_table(planned))
+    written = () if flags["dry_run"] else write_import(planned, sound_rows=flags["sound_rows"])
+    text = import_text(planned, written, is_dry=flags["dry_run"])
+    click.echo(json.dumps(as_plain(planned, written), indent=2) if as_json else text)
+    if planned.findings or planned.of(State.DIFFERS):
+        sys.exit(FINDINGS)
+
+
+def _column_map(path: Path | None) -> tuple[ColumnMap, Places]:
+    if path is None:
+        return ColumnMap(), Places("")
+    column_map, findings, places = read_file_into(ColumnMap, path, path.name)
+    if column_map is None:
+        click.echo(render_text(findings, path.parent))
+        sys.exit(FINDINGS)
+    return column_map, places
+
+
+def _write_new(path: Path, text: str) -> None:
+    try:
+        with path.open("x", encoding="utf-8", newline="\n") as file:
+            file.write(text)
+    except FileExistsError as error:
+        raise click.UsageError(f"{path} is there already: name a new file") from error
+    click.echo(f"{path}: a first map, guessed from the headings; read it, then import with --map {path}")
+
+
+@handbook.command()
+@click.option("--format", "form", type=click.Choice(["csv", "jsonl"]), default="csv", show_default=True)
+@click.option("--only", type=click.Choice(list(CLEARED_FOR)), help="Keep back what is not cleared, or not published.")
+@click.option("--status", multiple=True, type=click.Choice(list(Status)), help="Of the entries wanted. Repeat it.")
+@click.option("--output", type=click.Path(dir_okay=False, path_type=Path), help="A file instead of the terminal.")
+@_BOOK
+def export(form: str, only: str | None, status: tuple[Status, ...], output: Path | None, book: Path) -> None:
+    """Write the records as one table, a row each, from which `handbook import` makes them again without loss.
+
+    Columns are named like stages.1.temperature, and every value is as it was typed; comments are left out.
+
+    \b
+    Example:
+      handbook export --output book.csv
+      handbook export --format jsonl --only cleared --status current --output cleared.jsonl
+    """
+    files, _ = record_files(book.resolve())
+    found = list(watched(exported_records(book.resolve(), files), len(files)))
+    unread = [each for each in found if isinstance(each, str)]
+    records = within((each for each in found if isinstance(each, Exported)), only, status)
+    text = csv_text(records) if form == "csv" else jsonl_text(records)
+    if output is None:
+        sys.stdout.buffer.write(text.encode())
+    else:
+        with written_whole(output) as file:
+            file.write((BYTE_ORDER_MARK if form == "csv" else "") + text)
+    click.echo(how_many(len(records), "entry", "entries") + " exported", err=True)
+    for path in unread:
+        click.echo(f"{path} cannot be read and is left out: see `handbook check`", err=True)
+    if unread:
+        sys.exit(FINDINGS)
 
 
 @handbook.command()

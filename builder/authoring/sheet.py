@@ -1,5 +1,4 @@
-"""A sheet of rows as somebody keeps it: what CSV, workbook and JSON Lines files have in common, and the first and last
-of them read.
+"""A sheet of rows as somebody keeps it, whatever the file; CSV and JSON Lines are read here.
 
 A cell is text, as typed or shown. What a spreadsheet program made of it is kept beside it, for there a ratio turns into
 a time and a CAS number into a date without anybody being told.
@@ -13,7 +12,22 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 
-__all__ = ["MAX_COLUMNS", "MAX_ROWS", "MAX_SHEET_BYTES", "Cell", "Row", "Sheet", "SheetError", "column_letters"]
+from builder.records.flat import unguarded
+
+__all__ = [
+    "MAX_COLUMNS",
+    "MAX_ROWS",
+    "MAX_SHEET_BYTES",
+    "Cell",
+    "Row",
+    "Sheet",
+    "SheetError",
+    "bytes_of",
+    "column_letters",
+    "read_csv",
+    "read_jsonl",
+    "sheet_of",
+]
 
 MAX_SHEET_BYTES = 20 * 1024 * 1024
 MAX_ROWS = 20_000
@@ -141,7 +155,8 @@ def _csv_rows(text: str, delimiter: str, shown_as: str) -> Iterator[tuple[int, M
 
 
 def _csv_cell(text: str) -> Cell:
-    return Cell(text[1:] if re.match(r"'['=+\-@\t\r]", text) else text.strip())
+    bare = unguarded(text)
+    return Cell(bare if bare != text else text.strip())
 
 
 def _decoded(data: bytes) -> tuple[str, tuple[str, ...]]:
@@ -171,7 +186,7 @@ def read_jsonl(data: bytes, shown_as: str) -> Sheet:
     """
     text, notes = _decoded(data)
     columns: dict[str, int] = {}
-    rows = []
+    rows: list[Row] = []
     for number, line in enumerate(text.split("\n"), start=1):
         if not line.strip():
             continue
@@ -183,7 +198,9 @@ def read_jsonl(data: bytes, shown_as: str) -> Sheet:
             raise SheetError(f"{shown_as}:{number} is no object of texts: quote every value, numbers too")
         cells = {columns.setdefault(name, len(columns)): Cell(value) for name, value in held.items() if value}
         if len(columns) > MAX_COLUMNS or len(rows) == MAX_ROWS:
-            raise SheetError(f"{shown_as} has more than {MAX_ROWS:,} lines or {MAX_COLUMNS:,} names: import it in parts")
+            raise SheetError(
+                f"{shown_as} has more than {MAX_ROWS:,} lines or {MAX_COLUMNS:,} names: import it in parts"
+            )
         rows.append(Row(number, cells))
     if not rows:
         raise SheetError(f"{shown_as} has no lines")

@@ -1,12 +1,12 @@
-"""Write a file whole or not at all: readers see the old one or the new one, never a part."""
+"""Write a file whole or not at all, and several all or none: readers see the old or the new, never a part."""
 
 import os
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 from typing import TextIO
 
-__all__ = ["written_whole"]
+__all__ = ["write_all", "written_whole"]
 
 
 @contextmanager
@@ -26,3 +26,31 @@ def written_whole(path: Path) -> Iterator[TextIO]:
         beside.replace(target)
     finally:
         beside.unlink(missing_ok=True)
+
+
+def write_all(texts: Mapping[Path, str]) -> None:
+    """Write several files of UTF-8 text, all or none; folders that are missing are made.
+
+    Where one of them cannot be written, or the work is interrupted, every file is as it was before.
+    Raises OSError as `written_whole` does.
+    """
+    before = {path: path.read_bytes() if path.exists() else None for path in texts}
+    made: list[Path] = []
+    try:
+        for folder in dict.fromkeys(path.parent for path in texts):
+            missing = [each for each in (folder, *folder.parents) if not each.exists()]
+            for each in reversed(missing):
+                each.mkdir()
+                made.append(each)
+        for path, text in texts.items():
+            with written_whole(path) as file:
+                file.write(text)
+    except BaseException:
+        for path, data in before.items():
+            if data is None:
+                path.unlink(missing_ok=True)
+            elif path.read_bytes() != data:
+                path.write_bytes(data)
+        for folder in reversed(made):
+            folder.rmdir()
+        raise

@@ -7,9 +7,10 @@ it every entity), and nothing in it is run. Formulas count by the result that wa
 import datetime as dt
 import io
 import re
+import warnings
 import zipfile
 import zlib
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from decimal import Decimal
 from itertools import zip_longest
 from typing import Any
@@ -23,7 +24,18 @@ __all__ = ["read_workbook"]
 
 MAX_UNPACKED = 200 * 1024 * 1024
 MAX_PARTS = 2_000
-_BROKEN = (ValueError, KeyError, TypeError, AttributeError, IndexError, OSError, zipfile.BadZipFile, zlib.error)
+_MEANS_SOMETHING = Decimal(10) ** 15
+_BROKEN = (
+    expat.ExpatError,
+    ValueError,
+    KeyError,
+    TypeError,
+    AttributeError,
+    IndexError,
+    OSError,
+    zipfile.BadZipFile,
+    zlib.error,
+)
 """What openpyxl raises for a workbook that no spreadsheet program wrote."""
 
 
@@ -35,8 +47,9 @@ def read_workbook(data: bytes, name: str, *, sheet: str | None, heading_row: int
     """
     _refuse_bombs(data, name)
     try:
-        results = load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
-        formulas = load_workbook(io.BytesIO(data), read_only=True, data_only=False, keep_links=False)
+        with warnings.catch_warnings(action="ignore"):  # openpyxl warns of decoration that it does not keep
+            results = load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
+            formulas = load_workbook(io.BytesIO(data), read_only=True, data_only=False, keep_links=False)
     except (*_BROKEN, SyntaxError) as error:
         raise SheetError(f"{name} is no workbook that can be read ({error}): save it anew as .xlsx") from error
     chosen = _chosen(results.worksheets, name, sheet)
@@ -44,7 +57,8 @@ def read_workbook(data: bytes, name: str, *, sheet: str | None, heading_row: int
     for each in (shown, typed):
         each.reset_dimensions()  # a declared size may be wrong, or a billion cells
     try:
-        return sheet_of(f"{name}!{chosen}", _rows(shown, typed), heading_row)
+        with warnings.catch_warnings(action="ignore"):
+            return sheet_of(f"{name}!{chosen}", _rows(shown, typed), heading_row, _notes(data, chosen))
     except (*_BROKEN, SyntaxError) as error:
         raise SheetError(f"{name}!{chosen} cannot be read ({error}): save it anew as .xlsx") from error
 
@@ -97,6 +111,60 @@ def _refuse_document_type(parts: zipfile.ZipFile, part: zipfile.ZipInfo, name: s
             raise SheetError(f"{name} holds broken XML in {part.filename}: save it anew") from error
 
 
+def _notes(data: bytes, sheet: str) -> tuple[str, ...]:
+    """Return what the cells themselves do not tell: rows that are hidden, values that stand for several rows."""
+    hidden: list[str] = []
+    merged: list[str] = []
+
+    def look(tag: str, about: dict[str, str]) -> None:
+        match tag.rpartition(":")[2]:
+            case "row" if about.get("hidden") in {"1", "true"}:
+                hidden.append(about.get("r", "?"))
+            case "mergeCell" if len(set(re.findall(r"\d+", about.get("ref", "")))) > 1:
+                merged.append(about["ref"])
+
+    with zipfile.ZipFile(io.BytesIO(data)) as parts:
+        part = _part_of(parts, sheet)
+        if part is not None:
+            _look_through(parts, part, look)
+    notes = []
+    if hidden:
+        notes.append(f"hidden rows are read as well: {_some(hidden)}")
+    if merged:
+        notes.append(f"merged cells hold their value in their first row only: {_some(merged)}")
+    return tuple(notes)
+
+
+def _some(listed: list[str]) -> str:
+    return ", ".join(listed[:8]) + (f" and {len(listed) - 8} more" if len(listed) > 8 else "")
+
+
+def _part_of(parts: zipfile.ZipFile, sheet: str) -> str | None:
+    """Return the part of a workbook that holds a sheet; None where it is not in the usual place."""
+    ids: dict[str, str] = {}
+    targets: dict[str, str] = {}
+
+    def look(_: str, about: dict[str, str]) -> None:
+        if "name" in about and "r:id" in about:
+            ids[about["name"]] = about["r:id"]
+        elif "Id" in about and "Target" in about:
+            targets[about["Id"]] = about["Target"]
+
+    for part in ("xl/workbook.xml", "xl/_rels/workbook.xml.rels"):
+        if part in parts.namelist():
+            _look_through(parts, part, look)
+    target = targets.get(ids.get(sheet, ""), "").removeprefix("/xl/")
+    return f"xl/{target}" if target and f"xl/{target}" in parts.namelist() else None
+
+
+def _look_through(parts: zipfile.ZipFile, part: str, look: Callable[[str, dict[str, str]], None]) -> None:
+    parser = expat.ParserCreate()
+    parser.StartElementHandler = look
+    with parts.open(part) as content:
+        while chunk := content.read(65_536):
+            parser.Parse(chunk)
+
+
 def _rows(results: Any, formulas: Any) -> Iterator[tuple[int, Mapping[int, Cell]]]:
     pairs = zip_longest(results.iter_rows(), formulas.iter_rows(), fillvalue=())
     for number, (shown, typed) in enumerate(pairs, start=1):
@@ -137,20 +205,17 @@ def number_as_shown(value: float, number_format: str) -> str:
 
     A float has 15 digits that mean something; 0.1 + 0.2 of a formula is 0.3.
 
-    >>> number_as_shown(1.2, "0.00"), number_as_shown(0.88, "0%"), number_as_shown(4, "000"), number_as_shown(2.083, "0.0")
-    ('1.20', '88 %', '004', '2.083')
+    >>> number_as_shown(1.2, "0.00"), number_as_shown(0.88, "0%"), number_as_shown(4, "000")
+    ('1.20', '88 %', '004')
     """
     number = Decimal(format(value, ".15g"))
     shown = re.sub(r'"[^"]*"|\[[^\]]*\]|\\.', "", number_format.partition(";")[0])
     if "%" in shown:
         number = number.scaleb(2)
     decimals = re.search(r"[0#]\.(0+)", shown)
-    digits = -int(number.as_tuple().exponent)
-    if digits < 0:
-        number, digits = number.quantize(Decimal(1)), 0
-    if decimals and "E" not in shown.upper():
-        digits = max(digits, len(decimals[1]))
-        number = number.quantize(Decimal(1).scaleb(-digits)) if digits < 28 else number
+    if decimals and "E" not in shown.upper() and abs(number) < _MEANS_SOMETHING:
+        digits = max(len(decimals[1]), -int(number.as_tuple().exponent))
+        number = number.quantize(Decimal(1).scaleb(-digits)) if digits < 12 else number
     text = format(number, "f")
     if re.fullmatch(r"0{2,}", shown.strip()) and text.isdecimal():
         text = text.zfill(len(shown.strip()))
@@ -167,7 +232,11 @@ def _date(value: dt.date) -> Cell:
 
 def _time(value: dt.time | dt.timedelta) -> Cell:
     """Return a cell that was turned into a time of the day, as ratios are: 97:3 is shown as 97:03:00."""
-    whole = value.hour * 3600 + value.minute * 60 + value.second if isinstance(value, dt.time) else round(value.total_seconds())
+    whole = (
+        value.hour * 3600 + value.minute * 60 + value.second
+        if isinstance(value, dt.time)
+        else round(value.total_seconds())
+    )
     hours, minutes, seconds = whole // 3600, whole // 60 % 60, whole % 60
     shown = f"{hours}:{minutes:02}:{seconds:02}"
     ratio = f"{hours}:{minutes}" + (f":{seconds}" if seconds else "")

@@ -20,7 +20,21 @@ from builder.records.model import Record
 from builder.records.yaml_text import Plain
 from builder.rule import Path
 
-__all__ = ["Shape", "Unflattened", "column_names", "column_order", "flatten", "in_format_order", "in_one_cell", "shape_at", "unflatten"]
+__all__ = [
+    "Shape",
+    "Unflattened",
+    "canonical_name",
+    "column_names",
+    "column_order",
+    "flatten",
+    "guarded",
+    "in_format_order",
+    "in_one_cell",
+    "name_of",
+    "shape_at",
+    "unflatten",
+    "unguarded",
+]
 
 _NUMBER = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]{1,3})?")
 _MAX_ITEMS = 1000
@@ -137,6 +151,22 @@ def _way(column: str) -> tuple[Path, Shape] | None:
     return path, shape
 
 
+def canonical_name(column: str) -> str:
+    """Return a column name with the numbers of all its items.
+
+    Raises KeyError for a column that no record has.
+    """
+    way = _way(column)
+    if way is None:
+        raise KeyError(column)
+    return name_of(way[0])
+
+
+def name_of(path: Path) -> str:
+    """Return the column name of a place in a record."""
+    return ".".join(str(step + 1) if isinstance(step, int) else step for step in path)
+
+
 def shape_at(column: str) -> Shape | None:
     """Return the shape of what stands under a column name; None where no cell of a record bears that name."""
     way = _way(column)
@@ -210,6 +240,19 @@ def _cells(value: Plain, shape: Shape, name: str) -> Iterator[tuple[str, str]]:
 
 def _typed(value: Plain) -> str:
     return str(value).lower() if isinstance(value, bool) else str(value)
+
+
+def guarded(text: str) -> str:
+    """Return a cell of a CSV file that no spreadsheet program runs as a formula: an apostrophe before = + - @.
+
+    A text that begins with an apostrophe gets another, so that `unguarded` gives every text back.
+    """
+    return f"'{text}" if re.match(r"['=+\-@\t\r]", text) else text
+
+
+def unguarded(text: str) -> str:
+    """Return what `guarded` was given."""
+    return text[1:] if re.match(r"'['=+\-@\t\r]", text) else text
 
 
 def in_one_cell(items: Iterable[str]) -> str:

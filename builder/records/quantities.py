@@ -21,6 +21,7 @@ __all__ = [
     "comma_error",
     "decimal_text",
     "is_beyond_measure",
+    "is_unit",
     "number_text",
     "parse_percent",
     "parse_quantity",
@@ -318,6 +319,11 @@ class Percent:
 def units_of(dimension: Dimension) -> tuple[str, ...]:
     """Return the symbols of the permitted units, canonical first."""
     return tuple(unit.symbol for unit in _UNITS[dimension])
+
+
+def is_unit(text: str) -> bool:
+    """Say whether `text` is a spelling of a permitted unit of any dimension."""
+    return any(text in spellings for spellings in _BY_SPELLING.values())
 
 
 def is_beyond_measure(number: str) -> bool:

@@ -19,7 +19,16 @@ from builder.records.yaml_text import Places, Plain, Plainly, read_plain
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["MAX_BYTES", "Reading", "read_bytes", "read_into", "read_record", "read_settings", "read_values"]
+__all__ = [
+    "MAX_BYTES",
+    "Reading",
+    "read_bytes",
+    "read_file_into",
+    "read_into",
+    "read_record",
+    "read_settings",
+    "read_values",
+]
 
 MAX_BYTES = 256 * 1024
 """Largest file that is read: a record, or an RXN file beside it."""
@@ -57,10 +66,15 @@ def read_bytes(data: bytes, shown_as: str) -> Reading:
 
 def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Finding, ...], Places]:
     """Read the settings of a book by the same rules as a record."""
+    return read_file_into(Settings, path, shown_as)
+
+
+def read_file_into(model: type[Model], path: Path, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:
+    """Read a YAML file into `model` as `read_into` does; OSError passes for one that cannot be opened."""
     text = _text_of(path, shown_as)
     if isinstance(text, Finding):
         return None, (text,), Places(shown_as)
-    return read_into(Settings, text, shown_as)
+    return read_into(model, text, shown_as)
 
 
 def read_into(model: type[Model], text: str, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:
@@ -287,8 +301,7 @@ def _models_at(model: type[BaseModel], path: ValuePath) -> tuple[type[BaseModel]
 def _is_free(model: type[BaseModel], key: str) -> bool:
     """Say whether the keys of the mapping under `key` are the writer's own."""
     return any(
-        (info.alias or name) == key and get_origin(info.annotation) is dict
-        for name, info in model.model_fields.items()
+        (info.alias or name) == key and get_origin(info.annotation) is dict for name, info in model.model_fields.items()
     )
 
 

@@ -1,8 +1,7 @@
-"""Plain values of a record -> the YAML that a chemist would have typed: keys in the order of the format, and in quotes
-what YAML would alter.
+"""Plain values of a record -> the YAML that a chemist would have typed.
 
-SMILES and ratios stand in single quotes; block style wherever a name or free text stands, flow style only for codes,
-labels, words and quantities, which hold no comma.
+Keys come in the order of the format, and what YAML would alter stands in quotes. SMILES and ratios always do, in single
+ones; block style stands wherever a name or free text does, flow style only for codes, labels, words and quantities.
 """
 
 import re

@@ -1,0 +1,295 @@
+"""What the columns of a sheet mean: a heading -> a column of the flat record, with its unit and its words.
+
+A heading that is a column name already needs no map, and a unit in its brackets is understood: "Yield (%)". What is
+left is written down once, in a small YAML file, and read by the rules of every other file here.
+"""
+
+import re
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field
+from decimal import Decimal
+from difflib import get_close_matches
+from typing import Annotated
+
+from pydantic import BeforeValidator, Discriminator, Field, Tag
+
+from builder.authoring.sheet import Sheet
+from builder.records.fields import Count, Flag, Line, OneOrMany, faulty
+from builder.records.flat import canonical_name, column_names, shape_at
+from builder.records.mended_text import quoted
+from builder.records.model import Part
+from builder.records.quantities import is_unit
+
+__all__ = [
+    "DEFAULTS",
+    "IGNORED",
+    "ColumnMap",
+    "Target",
+    "first_map",
+    "likely_column",
+    "split_unit",
+    "target_of",
+    "tidy",
+]
+
+IGNORED = "ignore"
+DEFAULTS = {"format": "1", "revision": "1", "status": "draft"}
+"""What a row need not say."""
+
+_UNIT_IN_HEADING = re.compile(
+    r"(?P<bare>.*?\S)\s*(?:\((?P<round>[^()]+)\)|\[(?P<square>[^\[\]]+)\]|/\s*(?P<slash>\S.*))"
+)
+
+
+def _column_or_ignored(value: object) -> object:
+    return value if value == IGNORED else _column_name(value)
+
+
+def _column_name(value: object) -> object:
+    if not isinstance(value, str) or shape_at(value) is not None:
+        return value
+    near = likely_column(value)
+    hint = f'; did you mean "{near}"?' if near else ""
+    mend = f"write {near or 'one that `handbook export` writes'}, or {IGNORED}"
+    raise faulty("value-not-permitted", f'no record has a column "{value:.80}"{hint}', mend, near)
+
+
+def _as_typed(value: object) -> object:
+    if isinstance(value, bool):
+        return str(value).lower()
+    return str(value) if isinstance(value, (int, Decimal)) else value
+
+
+Name = Annotated[Line, BeforeValidator(_column_name)]
+Goal = Annotated[Line, BeforeValidator(_column_or_ignored)]
+Typed = Annotated[Line, BeforeValidator(_as_typed)]
+
+
+class Column(Part):
+    """Where one column of the sheet goes: the unit of its bare numbers, and words that stand for values."""
+
+    to: Goal
+    unit: Line | None = None
+    words: dict[str, Typed] = Field(default_factory=dict)
+
+
+def _name_or_more(value: object) -> str:
+    return "<text>" if isinstance(value, str) else "<more>"
+
+
+class ColumnMap(Part):
+    """The map of one kind of sheet.
+
+    sheet, heading_row: where the headings stand. key: the headings that together tell rows apart.
+    columns: by heading. constants: what holds for every row, by column name; {substrate.name} is filled in.
+    words: whole cells that stand for a value, in any column. decimal_comma: 2,083 is read as 2.083.
+    """
+
+    sheet: Line | None = None
+    heading_row: Count | None = None
+    key: OneOrMany[Line] | None = None
+    columns: dict[
+        str,
+        Annotated[Annotated[Goal, Tag("<text>")] | Annotated[Column, Tag("<more>")], Discriminator(_name_or_more)],
+    ] = Field(default_factory=dict)
+    constants: dict[Name, Typed] = Field(default_factory=dict)
+    words: dict[str, Typed] = Field(default_factory=dict)
+    decimal_comma: Flag = False
+
+
+@dataclass(frozen=True, slots=True)
+class Target:
+    """Where the cells of one column go.
+
+    name: of the flat column, with all its numbers. unit: of bare numbers. words: by cell.
+    """
+
+    name: str
+    unit: str | None = None
+    words: Mapping[str, str] = field(default_factory=dict)
+
+
+def tidy(heading: str) -> str:
+    """Return a heading on one line."""
+    return " ".join(heading.split())
+
+
+def target_of(heading: str, column_map: ColumnMap) -> Target | str | None:
+    """Return where a heading leads; IGNORED where the map says so, None where nothing is known of it."""
+    bare, unit = split_unit(heading)
+    mapped = next((goal for named, goal in column_map.columns.items() if tidy(named) == heading), None)
+    if isinstance(mapped, Column):
+        if mapped.to == IGNORED:
+            return IGNORED
+        return Target(canonical_name(mapped.to), mapped.unit or unit, {**column_map.words, **mapped.words})
+    name = mapped or next((each for each in (heading, bare) if shape_at(each) is not None), None)
+    if name is None or name == IGNORED:
+        return name
+    return Target(canonical_name(name), unit, column_map.words)
+
+
+def split_unit(heading: str) -> tuple[str, str | None]:
+    """Return a heading and the unit that stands behind it, in brackets or after a slash; None where there is none.
+
+    >>> split_unit("Temp (°C)"), split_unit("m / g"), split_unit("Exp. no. (old)")
+    (('Temp', '°C'), ('m', 'g'), ('Exp. no. (old)', None))
+    """
+    found = _UNIT_IN_HEADING.fullmatch(heading)
+    unit = found and (found["round"] or found["square"] or found["slash"]).strip()
+    return (found["bare"], unit) if found and unit and is_unit(unit) else (heading, None)
+
+
+# --- guesses --------------------------------------------------------------------------------------------------
+
+_USUAL_HEADINGS = {
+    # as people head their columns, folded -> the column of a record; common practice, no source
+    "entry": "entry",
+    "id": "entry",
+    "title": "title",
+    "date": "performed.date",
+    "performed": "performed.date",
+    "run on": "performed.date",
+    "chemist": "performed.by",
+    "operator": "performed.by",
+    "by": "performed.by",
+    "who": "performed.by",
+    "runs": "performed.runs",
+    "status": "status",
+    "notebook": "notebook",
+    "notebook page": "notebook",
+    "page": "notebook",
+    "exp": "notebook",
+    "exp no": "notebook",
+    "experiment": "notebook",
+    "experiment no": "notebook",
+    "reaction no": "notebook",
+    "substrate": "substrate.name",
+    "starting material": "substrate.name",
+    "sm": "substrate.name",
+    "substrate name": "substrate.name",
+    "substrate smiles": "substrate.smiles",
+    "sm smiles": "substrate.smiles",
+    "smiles": "substrate.smiles",
+    "substrate mass": "substrate.mass",
+    "mass": "substrate.mass",
+    "scale": "substrate.amount",
+    "amount": "substrate.amount",
+    "substrate amount": "substrate.amount",
+    "substrate class": "substrate.class",
+    "class": "substrate.class",
+    "leaving group": "substrate.leaving_group",
+    "lg": "substrate.leaving_group",
+    "nucleophile": "nucleophile.1.name",
+    "nu": "nucleophile.1.name",
+    "reagent": "nucleophile.1.name",
+    "nucleophile smiles": "nucleophile.1.smiles",
+    "reagent smiles": "nucleophile.1.smiles",
+    "equiv": "nucleophile.1.equivalents",
+    "eq": "nucleophile.1.equivalents",
+    "equivalents": "nucleophile.1.equivalents",
+    "nucleophile equiv": "nucleophile.1.equivalents",
+    "base": "base.1.name",
+    "base smiles": "base.1.smiles",
+    "base equiv": "base.1.equivalents",
+    "additive": "reagents.1.name",
+    "additive smiles": "reagents.1.smiles",
+    "additive equiv": "reagents.1.equivalents",
+    "solvent": "solvent.1.name",
+    "solvent volume": "solvent.1.volume",
+    "volume": "solvent.1.volume",
+    "co solvent": "solvent.2.name",
+    "cosolvent": "solvent.2.name",
+    "concentration": "concentration",
+    "conc": "concentration",
+    "temp": "stages.1.temperature",
+    "t": "stages.1.temperature",
+    "temperature": "stages.1.temperature",
+    "time": "stages.1.time",
+    "reaction time": "stages.1.time",
+    "vessel": "stages.1.vessel",
+    "atmosphere": "stages.1.atmosphere",
+    "gas": "stages.1.atmosphere",
+    "end point": "stages.1.end_point",
+    "work up": "work_up",
+    "workup": "work_up",
+    "result": "outcome.result",
+    "mechanism": "outcome.claim.mechanism",
+    "product": "outcome.products.1.name",
+    "product name": "outcome.products.1.name",
+    "product smiles": "outcome.products.1.smiles",
+    "yield": "outcome.measured.1.yield",
+    "isolated yield": "outcome.measured.1.yield",
+    "product mass": "outcome.measured.1.mass",
+    "conversion": "outcome.measured.2.conversion",
+    "conv": "outcome.measured.2.conversion",
+    "ee": "outcome.measured.3.ee",
+    "er": "outcome.measured.3.er",
+    "dr": "outcome.measured.3.dr",
+    "ratio": "outcome.measured.4.ratio",
+    "analysis": "evidence",
+    "analytics": "evidence",
+    "procedure": "procedure",
+    "remark": "take_away",
+    "conclusion": "take_away",
+    "safety": "safety_review.scope",
+}
+
+
+def likely_column(heading: str) -> str | None:
+    """Return the column that a heading most likely means, whatever its capitals, points and unit; None for no idea."""
+    bare, _ = split_unit(heading)
+    folded = re.sub(r"[\W_]+", " ", bare).strip().casefold()
+    if folded in _USUAL_HEADINGS:
+        return _USUAL_HEADINGS[folded]
+    names = {re.sub(r"[\W_]+", " ", name).casefold(): name for name in column_names()}
+    without_numbers = {re.sub(r" 1(?= |$)", "", name): column for name, column in names.items()}
+    known = {**without_numbers, **names, **_USUAL_HEADINGS}
+    near = get_close_matches(folded, known, n=1, cutoff=0.8)
+    return known[near[0]] if near else None
+
+
+def first_map(sheet: Sheet) -> str:
+    """Return a map to go on from: each heading with the likeliest column, its unit and an example from the sheet."""
+    lines = [
+        f"# What the columns of {tidy(sheet.shown_as)} mean. Each was guessed from its heading: read them all.",
+        "# Columns are named as `handbook export --format csv` heads them; what a record does not keep says ignore.",
+    ]
+    targets: dict[str, str] = {}
+    body: list[str] = []
+    for column, heading in enumerate(map(tidy, sheet.headings)):
+        if not heading:
+            continue
+        direct = target_of(heading, ColumnMap())
+        guess = direct.name if isinstance(direct, Target) else likely_column(heading)
+        taken = guess in targets.values()
+        unit = split_unit(heading)[1]
+        to = IGNORED if guess is None or taken else guess
+        targets[heading] = to
+        value = f"{{to: {to}, unit: {quoted(unit)}}}" if unit and to != IGNORED else to
+        body.append(f"  {quoted(heading)}: {value}  # {_example(sheet, column)}")
+    keys = [heading for heading, to in targets.items() if to in {"entry", "notebook"}]
+    lines.append(f"key: [{', '.join(map(quoted, keys[:1]))}]  # what tells rows apart" if keys else _NO_KEY)
+    return "\n".join([*lines, "columns:", *body, "constants:", *_constants(targets.values())]) + "\n"
+
+
+_NO_KEY = "# key: []  # headings that tell rows apart; they must go into the record, notebook best"
+
+
+def _example(sheet: Sheet, column: int) -> str:
+    found = next((row.cells[column].text for row in sheet.rows if column in row.cells), None)
+    return "empty" if found is None else f"such as {tidy(found)[:40]}"
+
+
+def _constants(names: Iterable[str]) -> list[str]:
+    given = set(names)
+    wanted = {
+        "status": "draft",
+        "title": "'{substrate.name} and {nucleophile.1.name} in {solvent.1.name}'",
+        "performed.by": "bench-1",
+        "outcome.result": "substitution",
+        "outcome.products.1.label": "A",
+        "outcome.products.1.use": "desired",
+        "outcome.measured.1.of": "A",
+        "outcome.measured.1.kind": "isolated",
+    }
+    return [f"  {name}: {value}" for name, value in wanted.items() if name not in given]
