@@ -82,7 +82,8 @@ class ColumnMap(Part):
 
     sheet, heading_row: where the headings stand. key: the headings that together tell rows apart.
     columns: by heading. constants: what holds for every row, by column name; {substrate.name} is filled in.
-    words: whole cells that stand for a value, in any column. decimal_comma: 2,083 is read as 2.083.
+    words, empty: whole cells that stand for a value, or for nothing, in any column.
+    decimal_comma: 2,083 is read as 2.083.
     """
 
     sheet: Line | None = None
@@ -94,6 +95,7 @@ class ColumnMap(Part):
     ] = Field(default_factory=dict)
     constants: dict[Name, Typed] = Field(default_factory=dict)
     words: dict[str, Typed] = Field(default_factory=dict)
+    empty: OneOrMany[Line] | None = None
     decimal_comma: Flag = False
 
 
@@ -269,9 +271,14 @@ def first_map(sheet: Sheet) -> str:
         body.append(f"  {quoted(heading)}: {value}  # {_example(sheet, column)}")
     keys = [heading for heading, to in targets.items() if to in {"entry", "notebook"}]
     lines.append(f"key: [{', '.join(map(quoted, keys[:1]))}]  # what tells rows apart" if keys else _NO_KEY)
-    return "\n".join([*lines, "columns:", *body, "constants:", *_constants(targets.values())]) + "\n"
+    return "\n".join([*lines, "columns:", *body, "constants:", *_constants(targets.values()), *_MORE]) + "\n"
 
 
+_MORE = (
+    "# words: {r.t.: 22 °C}  # whole cells that stand for a value",
+    "# empty: [n/a]          # whole cells that stand for nothing",
+    "# decimal_comma: true   # 2,083 is read as 2.083",
+)
 _NO_KEY = "# key: []  # headings that tell rows apart; they must go into the record, notebook best"
 
 

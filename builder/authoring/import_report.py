@@ -11,7 +11,7 @@ from builder.records.flat import guarded
 __all__ = ["as_plain", "cell_table", "import_text"]
 
 MOST_SHOWN = 200
-"""Cells that a terminal is shown; --report has them all."""
+"""Faults that a terminal is shown; --report has them all."""
 
 _SAID = {
     State.NEW: "new",
@@ -25,19 +25,25 @@ _SAID = {
 def import_text(planned: Import, written: Sequence[RowResult], *, is_dry: bool) -> str:
     """Return the findings by cell, the differences by column, and the counts at the end."""
     lines = [f"note: {note}" for note in planned.sheet.notes]
-    for each in planned.findings[:MOST_SHOWN]:
-        lines += _finding_lines(each)
-    if len(planned.findings) > MOST_SHOWN:
-        lines.append(f"{len(planned.findings) - MOST_SHOWN} more; --report FILE.csv lists all")
+    alike: dict[tuple[str, ...], list[CellFinding]] = {}
+    for each in planned.findings:
+        alike.setdefault((each.heading, each.value, each.finding.rule, each.finding.message), []).append(each)
+    for cells in list(alike.values())[:MOST_SHOWN]:
+        lines += _finding_lines(planned, cells)
+    if len(alike) > MOST_SHOWN:
+        lines.append(f"{len(alike) - MOST_SHOWN} more; --report FILE.csv lists all")
     for result in planned.of(State.DIFFERS):
         lines += _difference_lines(planned, result)
     return "\n".join([*lines, _counts(planned), _end(planned, written, is_dry=is_dry)])
 
 
-def _finding_lines(each: CellFinding) -> list[str]:
-    what = f'{each.heading} "{each.value}": ' if each.heading and each.value != each.heading else ""
-    said = each.finding
-    return [f"{each.where}: {said.level} {said.rule}: {what}{said.message}", f"  fix:  {said.mend}"]
+def _finding_lines(planned: Import, cells: Sequence[CellFinding]) -> list[str]:
+    """Return what is said of cells that hold the same under the same heading; each of them is named."""
+    first, *others = cells
+    what = f'{first.heading} "{first.value}": ' if first.heading and first.value != first.heading else ""
+    where = ", ".join([first.where, *(each.where.removeprefix(f"{planned.sheet.shown_as}:") for each in others)])
+    said = first.finding
+    return [f"{where}: {said.level} {said.rule}: {what}{said.message}", f"  fix:  {said.mend}"]
 
 
 def _difference_lines(planned: Import, result: RowResult) -> list[str]:

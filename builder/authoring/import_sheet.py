@@ -277,6 +277,7 @@ def _key(
     if not key and not findings and "entry" not in names:
         raise NoKeyError(
             "nothing tells the rows apart: map a column to notebook, or name the headings that do as key: in the map"
+            " (--write-map FILE makes a first map)"
         )
     return tuple(key), findings
 
@@ -345,9 +346,10 @@ def _content(desk: _Desk, row: Row, findings: list[CellFinding]) -> _Content:
     """Return what the row says; a cell that its own kind speaks against is noted as a finding, and still taken."""
     cells: dict[str, str] = {}
     column_of: dict[str, int] = {}
+    empty = desk.column_map.empty or ()
     for column, target in desk.targets.items():
         cell = row.cells.get(column)
-        if cell is None:
+        if cell is None or cell.text in empty:
             continue
         if target.name in cells:
             message = f"{target.name} stands in the column {tidy(desk.sheet.headings[column_of[target.name]])} as well"
@@ -402,6 +404,7 @@ def _perceive(cells: dict[str, str]) -> frozenset[str]:
     try:
         site = next(iter(perceive_sites(parse_smiles(cells["substrate.smiles"]))), None)
     except StructureError:
+        cells.update(dict.fromkeys(wanted, "not perceived"))  # the SMILES is told of; these would be as missing
         return frozenset()
     if site is None:
         return frozenset()
@@ -441,13 +444,11 @@ def _read_record(
         name: spots.add(column=_source_column(desk, content, name), constant=content.constants.get(name))
         for name in content.cells
     }
-    values = {path: spans[name] for path, name in unflattened.columns.items()}
-    parts: dict[ValuePath, tuple[int, int, int]] = {}
-    for path in values:
+    values: dict[ValuePath, tuple[int, int, int]] = {path: spans[name] for path, name in unflattened.columns.items()}
+    for path in tuple(values):
         for end in range(1, len(path)):
-            if path[:end] not in parts and path[:end] not in values:
-                parts[path[:end]] = spots.add(part=name_of(path[:end]))
-    places = Places(desk.sheet.shown_as, values, parts, whole=spots.add())
+            values.setdefault(path[:end], spots.add(part=name_of(path[:end])))
+    places = Places(desk.sheet.shown_as, values, whole=spots.add())
     own = (*_cell_troubles(desk, row, content, spans), *_structure_troubles(desk, content, spans))
     record, found, _ = read_values(Record, Plainly(unflattened.value, places, own))
     errors = [finding for finding in found if finding.level is Level.ERROR]
@@ -471,7 +472,8 @@ def _cell_troubles(desk: _Desk, row: Row, content: _Content, spans: Spans) -> It
         cell = row.cells[column]
         place = Place(desk.sheet.shown_as, *spans[name])
         if cell.trouble is not None:
-            yield replace(_finding("cell-altered", *cell.trouble), place=place)
+            trouble = cell.trouble
+            yield replace(_finding(trouble.rule, trouble.message, trouble.mend), place=place)
         elif cell.is_date and name.rpartition(".")[2] not in _DATES:
             message = f"the spreadsheet turned what was typed into the date {cell.text}"
             yield replace(_finding("cell-altered", message, "format the column as text and type it again"), place=place)
@@ -586,6 +588,7 @@ def write_import(planned: Import, *, sound_rows: bool) -> tuple[RowResult, ...]:
 
 _WHY = {
     "cell-altered": "A value is what was typed; a spreadsheet program turns ratios into times and names into dates.",
+    "cell-without-result": "A formula counts by the result that was saved with it.",
     "column-twice": "Each value of a record comes from one cell.",
     "heading-unknown": "Every column goes into the record, or is ignored on purpose.",
     "row-identity-taken": "An identifier belongs to one experiment for ever.",

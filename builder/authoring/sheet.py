@@ -22,6 +22,7 @@ __all__ = [
     "Row",
     "Sheet",
     "SheetError",
+    "Trouble",
     "bytes_of",
     "column_letters",
     "read_csv",
@@ -39,16 +40,25 @@ class SheetError(Exception):
 
 
 @dataclass(frozen=True, slots=True)
+class Trouble:
+    """What speaks against a cell before its text is read: a slug of its sort, the message, and how to mend it."""
+
+    rule: str
+    message: str
+    mend: str
+
+
+@dataclass(frozen=True, slots=True)
 class Cell:
     """One cell that holds something.
 
     text: as typed or shown, without spaces around it.
-    trouble: why the cell cannot be taken as it stands, and how to mend it; None where nothing is known against it.
+    trouble: why the cell cannot be taken as it stands; None where nothing is known against it.
     is_date: the cell holds a day of the calendar, and text is its ISO form.
     """
 
     text: str
-    trouble: tuple[str, str] | None = None
+    trouble: Trouble | None = None
     is_date: bool = False
 
 

@@ -18,7 +18,7 @@ from xml.parsers import expat
 
 from openpyxl import load_workbook
 
-from builder.authoring.sheet import Cell, Sheet, SheetError, sheet_of
+from builder.authoring.sheet import Cell, Sheet, SheetError, Trouble, sheet_of
 
 __all__ = ["read_workbook"]
 
@@ -182,8 +182,8 @@ def _cell(result: Any, typed: Any) -> Cell | None:
     if value is None:
         if typed is None or not str(typed).strip():
             return None
-        trouble = ("the formula has no saved result", "open the workbook, let it calculate, and save it")
-        return Cell(str(typed), trouble)
+        mend = "open the workbook, let it calculate, and save it"
+        return Cell(str(typed), Trouble("cell-without-result", "the formula has no saved result", mend))
     number_format = str(result.number_format or "General")
     match value:
         case bool():
@@ -196,7 +196,8 @@ def _cell(result: Any, typed: Any) -> Cell | None:
             return _time(value)
     text = str(value).replace("_x000D_", "").strip()
     if result.data_type == "e":
-        return Cell(text, (f"the formula ends in {text}", "mend the formula, or type the value"))
+        trouble = Trouble("cell-without-result", f"the formula ends in {text}", "mend it, or type the value")
+        return Cell(text, trouble)
     return Cell(text) if text else None
 
 
@@ -225,7 +226,8 @@ def number_as_shown(value: float, number_format: str) -> str:
 def _date(value: dt.date) -> Cell:
     if isinstance(value, dt.datetime) and value.time() != dt.time():
         said = f"the spreadsheet holds the date and time {value.isoformat(' ', 'minutes')}"
-        return Cell(value.isoformat(" ", "minutes"), (said, "format the column as text and type the value again"))
+        trouble = Trouble("cell-altered", said, "format the column as text and type the value again")
+        return Cell(value.isoformat(" ", "minutes"), trouble)
     day = value.date() if isinstance(value, dt.datetime) else value
     return Cell(day.isoformat(), is_date=True)
 
@@ -241,4 +243,4 @@ def _time(value: dt.time | dt.timedelta) -> Cell:
     shown = f"{hours}:{minutes:02}:{seconds:02}"
     ratio = f"{hours}:{minutes}" + (f":{seconds}" if seconds else "")
     mend = f"format the column as text and type it again: {ratio} if it was a ratio, with h or min if it was a time"
-    return Cell(shown, (f"the spreadsheet turned what was typed into the time {shown}", mend))
+    return Cell(shown, Trouble("cell-altered", f"the spreadsheet turned what was typed into the time {shown}", mend))
