@@ -27,7 +27,19 @@ from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.rule import Fault
 
-__all__ = ["Book", "Entry", "Examined", "Memory", "Verdict", "examine", "judge", "open_book", "record_files", "whole"]
+__all__ = [
+    "Book",
+    "Entry",
+    "Examined",
+    "Memory",
+    "Verdict",
+    "examine",
+    "is_aside",
+    "judge",
+    "open_book",
+    "record_files",
+    "whole",
+]
 
 Kept = TypeVar("Kept")
 Progress = Callable[[Iterator["Examined[Any]"], int], Iterable["Examined[Any]"]]
@@ -347,8 +359,7 @@ def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:
     findings: list[Finding] = []
     for path in sorted(folder.rglob("*")):
         inside = path.relative_to(folder)
-        hidden = any(part.startswith(".") for part in inside.parts)
-        if hidden or _ASIDE & set(inside.parts[:-1]) or path.suffix.lower() not in {".yml", ".yaml"}:
+        if is_aside(inside.parent) or path.name.startswith(".") or path.suffix.lower() not in {".yml", ".yaml"}:
             continue
         if str(inside) == SETTINGS_FILE:
             continue
@@ -361,6 +372,11 @@ def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:
         else:
             files.append(path)
     return tuple(files), findings
+
+
+def is_aside(folder: Path) -> bool:
+    """Say whether a folder, by its path inside a book, is one from which no current records are read."""
+    return bool(_ASIDE & set(folder.parts)) or any(part.startswith(".") for part in folder.parts)
 
 
 def _shown(path: Path, folder: Path) -> str:

@@ -24,7 +24,7 @@ from builder.authoring.schema import schemas, write_schemas
 from builder.authoring.sheet import SheetError
 from builder.authoring.start import StartError, start_book
 from builder.authoring.whole_file import written_whole
-from builder.book import Book, open_book, record_files
+from builder.book import Book, is_aside, open_book, record_files
 from builder.checks.case import Case
 from builder.checks.forecast_cautions import forecast_cautions
 from builder.checks.house import DISTRIBUTION
@@ -251,6 +251,8 @@ def import_(
     folder = (into or book).resolve()
     if not folder.is_relative_to(book.resolve()):
         raise click.UsageError(f"--into {into} is no folder inside the book {book}")
+    if is_aside(folder.relative_to(book.resolve())):
+        raise click.UsageError(f"--into {into}: no records are read from there")
     column_map, places = _column_map(map_file)
     try:
         rows = open_sheet(sheet_file, sheet=sheet or column_map.sheet, heading_row=column_map.heading_row)

@@ -22,15 +22,27 @@ from builder.authoring.whole_file import write_all
 from builder.authoring.workbook import read_workbook
 from builder.book import record_files
 from builder.checks.structures import structure_is_unreadable
-from builder.chemistry.perception import NO_LEAVING_GROUP, perceive_sites
+from builder.chemistry.perception import perceive_sites
 from builder.chemistry.structure import StructureError, parse_inchi, parse_smiles
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
-from builder.records.flat import Unflattened, canonical_name, column_order, flatten, name_of, unflatten
+from builder.records.flat import (
+    Scalar,
+    Unflattened,
+    canonical_name,
+    column_order,
+    flatten,
+    name_of,
+    shape_at,
+    unflatten,
+)
 from builder.records.identifiers import mint_identifier
 from builder.records.model import Record
+from builder.records.quantities import comma_error
 from builder.records.reader import read_bytes, read_record, read_values
+from builder.records.rules import reading_rule
 from builder.records.settings import Settings
+from builder.records.specimen import GAP
 from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places, Plainly, read_plain
 from builder.records.yaml_writing import record_yaml
@@ -53,7 +65,7 @@ _DATES = frozenset({"date", "due"})
 _BARE_NUMBER = re.compile(
     r"[<>≤≥]?\s*[-+\u2010-\u2013\u2212]?[\d.,]*\d[\d.,]*(?:[eE][-+]?\d+)?(?:\s*(?:[-\u2010-\u2013\u2212]|to)\s*[-+\u2212]?[\d.,]+)?"
 )
-_DECIMAL_COMMA = re.compile(r"(?<![\d.,])(\d+),(\d+)(?![\d.,])")
+_LONGEST_NUMBER = 60
 _GAP = re.compile(r"\{([a-z_0-9.]+)\}")
 _MARK = re.compile(r"^# imported from .*; content ([0-9a-f]{16})$", re.MULTILINE)
 
@@ -366,9 +378,15 @@ def _content(desk: _Desk, row: Row, findings: list[CellFinding]) -> _Content:
 def _text(cell: Cell, target: Target, column_map: ColumnMap) -> str:
     """Return a cell as it would be typed into a record."""
     text = target.words.get(cell.text, cell.text)
-    if column_map.decimal_comma and _BARE_NUMBER.match(text):
-        text = _DECIMAL_COMMA.sub(r"\1.\2", text)
-    return f"{text} {target.unit}" if target.unit and _BARE_NUMBER.fullmatch(text) else text
+    if len(text) > _LONGEST_NUMBER:
+        return text
+    if target.unit and _BARE_NUMBER.fullmatch(text):
+        text = f"{text} {target.unit}"
+    if column_map.decimal_comma and text.count(",") == 1 and "." not in text:
+        shape = shape_at(target.name)
+        is_number = comma_error(text, is_bare=shape is not None and shape.scalar is Scalar.NUMBER) is not None
+        text = text.replace(",", ".") if is_number else text
+    return text
 
 
 def _constants(desk: _Desk, cells: dict[str, str], column_of: Mapping[str, int]) -> dict[str, str]:
@@ -410,7 +428,7 @@ def _perceive(cells: dict[str, str]) -> frozenset[str]:
         return frozenset()
     found = {
         "substrate.class": "; ".join(sorted(site.classes)),
-        "substrate.leaving_group": site.leaving_group or NO_LEAVING_GROUP,
+        "substrate.leaving_group": site.leaving_group,
     }
     cells.update({name: found[name] for name in wanted if found[name]})
     return frozenset(wanted & set(cells))
@@ -471,6 +489,9 @@ def _cell_troubles(desk: _Desk, row: Row, content: _Content, spans: Spans) -> It
     for name, column in content.column_of.items():
         cell = row.cells[column]
         place = Place(desk.sheet.shown_as, *spans[name])
+        if GAP in cell.text:
+            fault = Fault(at=(), message="this is still to fill in", mend="write the value, or empty the cell")
+            yield reading_rule("gap-left-open").finding(fault, place)
         if cell.trouble is not None:
             trouble = cell.trouble
             yield replace(_finding(trouble.rule, trouble.message, trouble.mend), place=place)
@@ -508,9 +529,17 @@ def _settle(
     assert isinstance(unflattened.value, dict)  # noqa: S101 - a row has columns
     wanted = flatten(unflattened.value)
     path = desk.files.get(record.entry)
-    text = _file_text(desk, row, unflattened, content, wanted)
-    if read_bytes(text.encode(), record.entry).record != record:
+    text = _file_text(desk, row, unflattened, content)
+    written = read_bytes(text.encode(), record.entry)
+    if errors := [finding for finding in written.findings if finding.level is Level.ERROR]:
+        findings.append(_at_cell(desk, row, None, errors[0]))  # such as a record that is too long for a file
+        return RowResult(row.number, State.REFUSED, record.entry)
+    if written.record != record:
         raise AssertionError(f"what row {row.number} writes is not what it says")
+    if path is None and (desk.into / f"{record.entry}.yml").exists():
+        message = f"{record.entry}.yml is there, and is no record of the book"
+        findings.append(_row_finding(desk, row, "row-identity-taken", message, "move it away"))
+        return RowResult(row.number, State.REFUSED, record.entry)
     if path is None:
         return RowResult(row.number, State.NEW, record.entry, desk.into / f"{record.entry}.yml", text)
     held = read_record(path, path.name)
@@ -523,7 +552,7 @@ def _settle(
         findings.append(_row_finding(desk, row, "row-identity-taken", message, mend))
         return RowResult(row.number, State.REFUSED, record.entry)
     mark = _MARK.search(held.text)
-    is_edited = mark is None or mark[1] != _content_mark(has)
+    is_edited = mark is None or mark[1] != _content_mark(held.text[mark.end() + 1 :])
     names = typed if is_edited else {**dict.fromkeys(has), **dict.fromkeys(wanted)}
     differences = tuple(
         Difference(name, _where(desk, row, content, typed.get(name)), wanted.get(name), has.get(name))
@@ -554,22 +583,21 @@ def _other_key(desk: _Desk, content: _Content, has: Mapping[str, str]) -> str:
     return ""
 
 
-def _file_text(desk: _Desk, row: Row, unflattened: Unflattened, content: _Content, wanted: Mapping[str, str]) -> str:
+def _file_text(desk: _Desk, row: Row, unflattened: Unflattened, content: _Content) -> str:
     assert isinstance(unflattened.value, dict)  # noqa: S101 - a row has columns
     source = "".join(c if c.isprintable() else " " for c in tidy(desk.sheet.shown_as))
-    head = (
-        f"# yaml-language-server: $schema={desk.schema}\n"
-        f"# imported from {source}, row {row.number}; content {_content_mark(wanted)}\n"
-    )
     paths = {name: at for at, name in unflattened.columns.items()}
     remarks = {paths[name]: "perceived from the SMILES" for name in content.perceived if name in paths}
-    return record_yaml(unflattened.value, head=head, remarks=remarks)
+    body = record_yaml(unflattened.value, remarks=remarks)
+    return (
+        f"# yaml-language-server: $schema={desk.schema}\n"
+        f"# imported from {source}, row {row.number}; content {_content_mark(body)}\n{body}"
+    )
 
 
-def _content_mark(cells: Mapping[str, str]) -> str:
-    """Return sixteen hexadecimal digits that change whenever a value of the record does, and with nothing else."""
-    text = json.dumps(dict(sorted(cells.items())), ensure_ascii=False)
-    return hashlib.sha256(text.encode("utf-8", "surrogatepass")).hexdigest()[:16]
+def _content_mark(body: str) -> str:
+    """Return sixteen hexadecimal digits by which a record tells whether anything in it was edited, comments too."""
+    return hashlib.sha256(body.encode()).hexdigest()[:16]
 
 
 def write_import(planned: Import, *, sound_rows: bool) -> tuple[RowResult, ...]:
@@ -626,7 +654,9 @@ def _at_cell(desk: _Desk, row: Row, column: int | None, finding: Finding) -> Cel
 def _placed(desk: _Desk, row: Row, spots: _Spots, finding: Finding) -> CellFinding:
     """Return a finding of the reader, whose place is the number of a spot, at its cell, constant or row."""
     column, constant, part = spots.known[finding.place.column - 1]
-    if constant is not None:
+    if constant is not None and _GAP.search(desk.column_map.constants[constant]):
+        finding = replace(finding, message=f"{constant}: {finding.message}")
+    elif constant is not None:
         place = desk.map_places.of(("constants", constant))
         value = desk.column_map.constants[constant]
         return CellFinding(str(place), 0, None, constant, value, finding)

@@ -33,6 +33,7 @@ __all__ = [
 MAX_SHEET_BYTES = 20 * 1024 * 1024
 MAX_ROWS = 20_000
 MAX_COLUMNS = 1_000
+_LONE_SURROGATE = re.compile("[\ud800-\udfff]")
 
 
 class SheetError(Exception):
@@ -206,6 +207,8 @@ def read_jsonl(data: bytes, shown_as: str) -> Sheet:
             raise SheetError(f"{shown_as}:{number} is no JSON ({error}): write one object a line") from error
         if not isinstance(held, dict) or not all(isinstance(value, str) for value in held.values()):
             raise SheetError(f"{shown_as}:{number} is no object of texts: quote every value, numbers too")
+        if _LONE_SURROGATE.search("".join(held.values())):
+            raise SheetError(f"{shown_as}:{number} holds half a character (\\ud800 to \\udfff): write it whole")
         cells = {columns.setdefault(name, len(columns)): Cell(value) for name, value in held.items() if value}
         if len(columns) > MAX_COLUMNS or len(rows) == MAX_ROWS:
             raise SheetError(

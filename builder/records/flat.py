@@ -17,10 +17,12 @@ from typing import Annotated, Any, Literal, Union, get_args, get_origin
 from pydantic import BaseModel, BeforeValidator
 
 from builder.records.model import Record
+from builder.records.quantities import is_beyond_measure
 from builder.records.yaml_text import Plain
 from builder.rule import Path
 
 __all__ = [
+    "Scalar",
     "Shape",
     "Unflattened",
     "canonical_name",
@@ -36,7 +38,7 @@ __all__ = [
     "unguarded",
 ]
 
-_NUMBER = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]{1,3})?")
+_NUMBER = re.compile(r"[-+]?(\.[0-9]+|(0|[1-9][0-9]*)(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _MAX_ITEMS = 1000
 """Of a numbered column; beyond it a heading is a slip, not a list."""
 
@@ -336,7 +338,7 @@ def _value(text: str, shape: Shape) -> Plain:
 
 
 def _number(text: str) -> Plain:
-    if not _NUMBER.fullmatch(text) or len(text) > 60:
+    if not _NUMBER.fullmatch(text) or is_beyond_measure(text):
         return text
     return int(text) if re.fullmatch(r"[-+]?[0-9]+", text) else Decimal(text)
 

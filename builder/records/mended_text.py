@@ -253,7 +253,8 @@ class MendedText:
         above = self._line_above(number)
         if above is None or lines[above].rstrip().endswith(":"):
             return []
-        is_item = lines[number].lstrip().startswith("- ")
+        line = lines[number] if number < len(lines) else ""  # the text may end where something more is wanted
+        is_item = line.lstrip().startswith("- ")
         levels: set[int] = set()
         lowest = len(self.text)
         for line in reversed(lines[max(0, above - _FARTHEST_LINE) : above + 1]):

@@ -22,17 +22,16 @@ _FLOW_LISTS = frozenset({"by", "class", "of", "points", "preceded_by", "related"
 _SINGLE = frozenset({"class", "of"})
 """Lists that are written without brackets where they have one item."""
 _PLAIN_BREAKS = re.compile(r": |:$| #|\s$|^- |[\x00-\x1f\x7f-\x9f\u2028\u2029\ufeff]")
-_BREAKS = re.compile("[\x00-\x1f\x7f-\x9f\u2028\u2029\ufeff]")
+_BREAKS = re.compile("[\x00-\x1f\x7f-\x9f\u2028\u2029\ufeff\ufffe\uffff]")
 
 
-def record_yaml(record: Mapping[str, Plain], *, head: str = "", remarks: Mapping[Path, str] | None = None) -> str:
-    """Return a record file.
+def record_yaml(record: Mapping[str, Plain], *, remarks: Mapping[Path, str] | None = None) -> str:
+    """Return the text of a record file.
 
-    head: comment lines before the first key, each with its line end.
     remarks: comments behind the values at these paths, for values that have a line of their own.
     """
     lines = _mapping(in_format_order(record), (), "", remarks or {})
-    return head + "".join(f"{line}\n" for line in lines)
+    return "".join(f"{line}\n" for line in lines)
 
 
 def _mapping(values: Mapping[str, Plain], path: Path, margin: str, remarks: Mapping[Path, str]) -> Iterator[str]:

@@ -349,6 +349,7 @@ HOSTILE: dict[str, tuple[Callable[[], bytes], str]] = {
     "UTF-16": (lambda: specimen_text().encode("utf-16"), "file-not-text"),
     "Latin-1": (lambda: with_example("title: 60 °C").encode("latin-1"), "file-not-text"),
     "an open quote": (lambda: with_example("title: 'never closed").encode(), "yaml-unreadable"),
+    "an open bracket at the end": (lambda: b"title: [", "yaml-unreadable"),
     "a merge key": (lambda: with_example("<<: {title: merged}").encode(), "key-unknown"),
     "a list as key": (lambda: with_example("? [a, b]\n: c").encode(), "value-wrong-type"),
     "a tag on a key": (lambda: with_example("# without notebook\n!!str notebook: BK2/112").encode(), "tag-refused"),
