@@ -209,6 +209,7 @@ EDITS = {
     # what a person did to the record since -> what a changed sheet may do with --update
     "another value": ("20 mL", "25 mL"),
     "a status": ("status: draft", "status: current"),
+    "a comment": ("performed:", "# run twice\nperformed:"),
 }
 
 
@@ -311,6 +312,30 @@ def test_a_bad_constant_is_told_once_in_the_map(run: Run, book: Path) -> None:
     assert code == 1
 
 
+def test_a_decimal_comma_is_none_in_a_name(run: Run, book: Path) -> None:
+    column_map = book.parent / "map.yml"
+    column_map.write_text("decimal_comma: true\n", "utf-8")
+    row = SOUND | {"substrate.form": "2,4", "stages.note": "2,4-isomer", "solvent.volume": "2,5 mL"}
+    assert run("import", _csv(book.parent / "a.csv", row), "--map", column_map, "--book", book)[0] == 0
+    (path,) = _records(book).values()
+    text = path.read_text("utf-8")
+    assert "form: 2,4\n" in text
+    assert "note: 2,4-isomer\n" in text
+    assert "volume: 2.5 mL\n" in text
+
+
+def test_a_title_filled_in_too_long_is_told_at_its_row(run: Run, book: Path) -> None:
+    column_map = book.parent / "map.yml"
+    column_map.write_text("constants: {title: '{substrate.name} in {solvent.1.name}'}\n", "utf-8")
+    short = {key: value for key, value in SOUND.items() if key != "title"}
+    rows = [short, short | {"notebook": "XB1/002", "solvent.name": "x" * 200}]
+    code, out = run("import", _csv(book.parent / "a.csv", *rows), "--map", column_map, "--book", book, "--sound-rows")
+    assert out.startswith("a.csv:3: error value-not-permitted: title: the text has 217 characters\n")
+    (path,) = _records(book).values()
+    assert "title: 1-bromobutane in DMF\n" in path.read_text("utf-8")
+    assert code == 1
+
+
 def test_what_every_row_lacks_is_told_once(run: Run, book: Path) -> None:
     rows = [{key: value for key, value in SOUND.items() if key != "title"} | {"notebook": f"XB1/{n}"} for n in range(5)]
     _, out = run("import", _csv(book.parent / "a.csv", *rows), "--book", book)
@@ -343,6 +368,8 @@ def test_a_constant_of_an_item_holds_where_the_row_has_the_item(run: Run, book: 
         ("decimal_comma: true\n", "1,37", "mass: 1.37 g"),
         ("words: {two: 2.0}\n", "two", "mass: 2.0 g"),
         ("", "1370 mg", "mass: 1370 mg"),
+        ("empty: [-]\nconstants: {substrate.amount: 10 mmol}\n", "-", "amount: 10 mmol"),
+        ("decimal_comma: true\nconstants: {substrate.form: '2,4-isomer, 3,5 %'}\n", "1", "form: 2,4-isomer, 3,5 %"),
     ],
 )
 def test_cells_are_read_as_the_map_says(run: Run, book: Path, more: str, cell: str, typed: str) -> None:
@@ -474,6 +501,28 @@ ALTERED = [
 ]
 
 
+REFUSED = [
+    # columns of a row, the first finding, how many there are
+    ({"take_away": "TO FILL IN"}, "a.csv:V2: error gap-left-open", 1),
+    ({"work_up": "; ".join(["w"] * 40_000)}, "a.csv:2: error alias-overgrown", 1),
+    ({"nucleophile": "solvent"}, "a.csv:H2: error column-twice", 3),
+    ({"performed.runs": "007"}, "a.csv:V2: error value-wrong-type", 1),
+    ({"outcome.failure.repeated": "yes"}, "a.csv:V2: error boolean-word", 1),
+    ({"stages.2.temperature": "5 °C"}, "a.csv:2: error key-missing: stages.2: time is missing", 1),
+    ({"substrate.smiles": "CCCC"}, "a.csv:2: error key-missing: substrate: class is missing", 2),
+    ({"substrate.smiles": "CC(C"}, "a.csv:F2: error structure-unreadable", 1),
+]
+
+
+@pytest.mark.parametrize(("more", "said", "count"), REFUSED)
+def test_refused_at_the_cell(run: Run, book: Path, more: dict[str, str], said: str, count: int) -> None:
+    row = SOUND | more | ({"outcome.failure.cause": "x"} if "outcome.failure.repeated" in more else {})
+    code, out = run("import", _csv(book.parent / "a.csv", row), "--book", book, "--sound-rows")
+    assert out.startswith(said)
+    assert out.count(": error ") == count
+    assert (code, _records(book)) == (1, {})
+
+
 @pytest.mark.parametrize(("key", "value", "said", "mend"), ALTERED)
 def test_what_a_spreadsheet_turned_is_named(
     run: Run, book: Path, key: str, value: object, said: str, mend: str
@@ -548,9 +597,17 @@ def test_an_entry_is_no_path(run: Run, book: Path, entry: str) -> None:
     assert (code, [path.name for path in book.parent.rglob("*.yml")]) == (1, ["handbook.yml"])
 
 
-def test_records_stay_inside_the_book(run: Run, book: Path) -> None:
-    code, out = run("import", _csv(book.parent / "a.csv", SOUND), "--book", book, "--into", book.parent / "away")
-    assert "is no folder inside the book" in out
+@pytest.mark.parametrize(
+    ("into", "said"),
+    [
+        ("../away", "is no folder inside the book"),
+        ("archive", "no records are read from there"),
+        (".git/x", "no records are read from there"),
+    ],
+)
+def test_records_go_where_records_are_read(run: Run, book: Path, into: str, said: str) -> None:
+    code, out = run("import", _csv(book.parent / "a.csv", SOUND), "--book", book, "--into", book / into)
+    assert said in out
     assert code == 2
 
 
