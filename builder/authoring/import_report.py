@@ -5,7 +5,8 @@ import io
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from builder.authoring.import_sheet import CellFinding, Import, RowResult, State
+from builder.authoring.import_row import CellFinding
+from builder.authoring.import_sheet import Import, RowResult, State
 from builder.records.flat import guarded
 
 __all__ = ["as_plain", "cell_table", "import_text"]

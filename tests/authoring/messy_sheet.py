@@ -123,6 +123,7 @@ SEEDED: dict[str, tuple[Any, str]] = {
 SEEDED_ROWS = {
     # row: what is done to it, and the rule that must name the row
     35: ("no key", "row-without-key"),
+    2: ("its key stands in row 37 again", "row-repeated"),
     37: ("the key of row 2 again", "row-repeated"),
     39: ("no solvent", "key-missing"),
 }
