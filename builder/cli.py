@@ -253,6 +253,8 @@ def import_(
         raise click.UsageError(f"--into {into} is no folder inside the book {book}")
     if is_aside(folder.relative_to(book.resolve())):
         raise click.UsageError(f"--into {into}: no records are read from there")
+    if report is not None and report.resolve() == sheet_file.resolve():
+        raise click.UsageError("--report is the sheet itself; give another file")
     column_map, places = _column_map(map_file)
     try:
         rows = open_sheet(sheet_file, sheet=sheet or column_map.sheet, heading_row=column_map.heading_row)
@@ -305,10 +307,12 @@ def _write_new(path: Path, text: str) -> None:
 @handbook.command()
 @click.option("--format", "form", type=click.Choice(["csv", "jsonl"]), default="csv", show_default=True)
 @click.option("--only", type=click.Choice(list(CLEARED_FOR)), help="Keep back what is not cleared, or not published.")
-@click.option("--status", multiple=True, type=click.Choice(list(Status)), help="Of the entries wanted. Repeat it.")
+@click.option(
+    "--status", multiple=True, type=click.Choice([status.value for status in Status]), help="Of the entries. Repeat it."
+)
 @click.option("--output", type=click.Path(dir_okay=False, path_type=Path), help="A file instead of the terminal.")
 @_BOOK
-def export(form: str, only: str | None, status: tuple[Status, ...], output: Path | None, book: Path) -> None:
+def export(form: str, only: str | None, status: tuple[str, ...], output: Path | None, book: Path) -> None:
     """Write the records as one table, a row each, from which `handbook import` makes them again without loss.
 
     Columns are named like stages.1.temperature, and every value is as it was typed; comments are left out.
@@ -321,7 +325,7 @@ def export(form: str, only: str | None, status: tuple[Status, ...], output: Path
     files, _ = record_files(book.resolve())
     found = list(watched(exported_records(book.resolve(), files), len(files)))
     unread = [each for each in found if isinstance(each, str)]
-    records = within((each for each in found if isinstance(each, Exported)), only, status)
+    records = within((each for each in found if isinstance(each, Exported)), only, [Status(word) for word in status])
     text = csv_text(records) if form == "csv" else jsonl_text(records)
     if output is None:
         sys.stdout.buffer.write(text.encode())

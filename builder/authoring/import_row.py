@@ -32,6 +32,9 @@ from builder.rule import Path as ValuePath
 __all__ = ["CellFinding", "Desk", "RowContent", "RowReading", "at_cell", "own_finding", "read_row", "row_finding"]
 
 _DATES = frozenset({"date", "due"})
+_RATIOS = frozenset({"er", "dr"})
+_TIME_OF_DAY = re.compile(r"(\d+):(\d\d):\d\d")
+_AS_TEXT = "format the column as text and type it again"
 _BARE_NUMBER = re.compile(
     r"[<>≤≥]?\s*[-+\u2010-\u2013\u2212]?[\d.,]*\d[\d.,]*(?:[eE][-+]?\d+)?(?:\s*(?:[-\u2010-\u2013\u2212]|to)\s*[-+\u2212]?[\d.,]+)?"
 )
@@ -283,11 +286,12 @@ def _cell_troubles(desk: Desk, row: Row, content: RowContent, spans: Spans) -> I
         if cell.trouble is not None:
             trouble = cell.trouble
             yield replace(own_finding(trouble.rule, trouble.message, trouble.mend), place=place)
+        elif name.rpartition(".")[2] in _RATIOS and (turned := _TIME_OF_DAY.fullmatch(cell.text)):
+            message = f"this is the time {cell.text}, and was perhaps the ratio {int(turned[1])}:{int(turned[2])}"
+            yield replace(own_finding("cell-altered", message, _AS_TEXT), place=place)
         elif cell.is_date and name.rpartition(".")[2] not in _DATES:
             message = f"the spreadsheet turned what was typed into the date {cell.text}"
-            yield replace(
-                own_finding("cell-altered", message, "format the column as text and type it again"), place=place
-            )
+            yield replace(own_finding("cell-altered", message, _AS_TEXT), place=place)
 
 
 def _structure_troubles(desk: Desk, content: RowContent, spans: Spans) -> Iterator[Finding]:

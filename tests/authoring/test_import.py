@@ -114,7 +114,7 @@ def test_every_unreadable_cell_is_named_and_nothing_is_written(run: Run, book: P
     assert (code, _records(book)) == (1, {})
 
 
-@pytest.mark.parametrize("form", ["csv", "jsonl"])
+@pytest.mark.parametrize("form", ["csv", "jsonl", "xlsx"])
 def test_the_rest_is_identical_after_export_and_import(
     run: Run, book: Path, messy: tuple[Path, Path], form: str
 ) -> None:
@@ -123,7 +123,10 @@ def test_the_rest_is_identical_after_export_and_import(
     first = _records(book)
     assert len(first) == 24
     table, other = book.parent / f"table.{form}", _new_book(book.parent / "other")
-    assert run("export", "--book", book, "--format", form, "--output", table)[0] == 0
+    if form == "xlsx":
+        _as_workbook(run("export", "--book", book, "--format", "jsonl")[1], table)
+    else:
+        assert run("export", "--book", book, "--format", form, "--output", table)[0] == 0
     assert run("import", table, "--book", other)[0] == 0
     second = _records(other)
     assert second.keys() == first.keys()
@@ -132,6 +135,18 @@ def test_the_rest_is_identical_after_export_and_import(
         assert before.record is not None
         assert after.record == before.record
         assert digest(after.record) == digest(before.record)
+
+
+def _as_workbook(lines: str, path: Path) -> None:
+    """Save exported records as a workbook, every cell as text, as somebody does who takes care."""
+    records = [json.loads(line) for line in lines.splitlines() if line.startswith("{")]
+    names = list(dict.fromkeys(name for record in records for name in record))
+    workbook = Workbook()
+    sheet = workbook.active
+    assert sheet is not None
+    for row in (names, *([record.get(name) for name in names] for record in records)):
+        sheet.append(row)
+    workbook.save(path)
 
 
 def test_significant_digits_survive_the_workbook(run: Run, book: Path, messy: tuple[Path, Path]) -> None:
@@ -506,6 +521,7 @@ REFUSED = [
     ({"take_away": "TO FILL IN"}, "a.csv:V2: error gap-left-open", 1),
     ({"work_up": "; ".join(["w"] * 40_000)}, "a.csv:2: error alias-overgrown", 1),
     ({"nucleophile": "solvent"}, "a.csv:H2: error column-twice", 3),
+    ({"substrate.er": "97:03:00"}, "a.csv:V2: error cell-altered", 1),
     ({"performed.runs": "007"}, "a.csv:V2: error value-wrong-type", 1),
     ({"outcome.failure.repeated": "yes"}, "a.csv:V2: error boolean-word", 1),
     ({"stages.2.temperature": "5 °C"}, "a.csv:2: error key-missing: stages.2: time is missing", 1),
