@@ -9,7 +9,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from decimal import Decimal
 from difflib import get_close_matches
-from typing import Annotated
+from typing import Annotated, Literal
 
 from pydantic import BeforeValidator, Discriminator, Field, Tag
 
@@ -26,6 +26,7 @@ __all__ = [
     "ColumnMap",
     "Target",
     "first_map",
+    "iso_date",
     "likely_column",
     "split_unit",
     "target_of",
@@ -60,16 +61,21 @@ def _as_typed(value: object) -> object:
     return str(value) if isinstance(value, (int, Decimal)) else value
 
 
+DateOrder = Literal["D.M.Y", "D/M/Y", "M/D/Y", "D-M-Y", "Y/M/D"]
 Name = Annotated[Line, BeforeValidator(_column_name)]
 Goal = Annotated[Line, BeforeValidator(_column_or_ignored)]
 Typed = Annotated[Line, BeforeValidator(_as_typed)]
 
 
 class Column(Part):
-    """Where one column of the sheet goes: the unit of its bare numbers, and words that stand for values."""
+    """Where one column of the sheet goes: the unit of its bare numbers, and words that stand for values.
+
+    date: the order in which its dates are typed, where it is not 2026-03-14.
+    """
 
     to: Goal
     unit: Line | None = None
+    date: DateOrder | None = None
     words: dict[str, Typed] = Field(default_factory=dict)
 
 
@@ -103,11 +109,12 @@ class ColumnMap(Part):
 class Target:
     """Where the cells of one column go.
 
-    name: of the flat column, with all its numbers. unit: of bare numbers. words: by cell.
+    name: of the flat column, with all its numbers. unit: of bare numbers. date: the order of dates. words: by cell.
     """
 
     name: str
     unit: str | None = None
+    date: str | None = None
     words: Mapping[str, str] = field(default_factory=dict)
 
 
@@ -123,11 +130,24 @@ def target_of(heading: str, column_map: ColumnMap) -> Target | str | None:
     if isinstance(mapped, Column):
         if mapped.to == IGNORED:
             return IGNORED
-        return Target(canonical_name(mapped.to), mapped.unit or unit, {**column_map.words, **mapped.words})
+        return Target(canonical_name(mapped.to), mapped.unit or unit, mapped.date, {**column_map.words, **mapped.words})
     name = mapped or next((each for each in (heading, bare) if shape_at(each) is not None), None)
     if name is None or name == IGNORED:
         return name
-    return Target(canonical_name(name), unit, column_map.words)
+    return Target(canonical_name(name), unit, words=column_map.words)
+
+
+def iso_date(text: str, order: str) -> str:
+    """Return a date typed in an order such as D.M.Y as 2026-03-14; text that is none stays as it is.
+
+    >>> iso_date("3/14/2026", "M/D/Y"), iso_date("14.3.26", "D.M.Y")
+    ('2026-03-14', '14.3.26')
+    """
+    sign = order[1]
+    typed = dict(zip(order.split(sign), (part.strip() for part in text.split(sign)), strict=False))
+    if text.count(sign) != 2 or not all(map(str.isdecimal, typed.values())) or len(typed["Y"]) != 4:
+        return text
+    return f"{typed['Y']}-{typed['M']:0>2}-{typed['D']:0>2}"
 
 
 def split_unit(heading: str) -> tuple[str, str | None]:

@@ -12,7 +12,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 
-from builder.authoring.column_map import DEFAULTS, ColumnMap, Target, tidy
+from builder.authoring.column_map import DEFAULTS, ColumnMap, Target, iso_date, tidy
 from builder.authoring.sheet import Cell, Row, Sheet
 from builder.checks.structures import structure_is_unreadable
 from builder.chemistry.perception import perceive_sites
@@ -169,6 +169,8 @@ def _text(cell: Cell, target: Target, column_map: ColumnMap) -> str:
     text = target.words.get(cell.text, cell.text)
     if len(text) > _LONGEST_NUMBER:
         return text
+    if target.date and not cell.is_date:
+        return iso_date(text, target.date)
     if target.unit and _BARE_NUMBER.fullmatch(text):
         text = f"{text} {target.unit}"
     if column_map.decimal_comma and text.count(",") == 1 and "." not in text:
@@ -359,6 +361,8 @@ def _placed(desk: Desk, row: Row, spots: _Spots, finding: Finding) -> CellFindin
         finding = replace(finding, message=f"{part}: {finding.message}")
     if finding.rule == "quantity-without-unit":
         finding = replace(finding, mend=f"{finding.mend}, or give the column its unit in the map")
+    if column in desk.targets and desk.targets[column].name.rpartition(".")[2] in _DATES:
+        finding = replace(finding, mend=f"{finding.mend}, or name the order of its dates in the map, as date: D.M.Y")
     if finding.rule == "key-missing" and column is None:
         finding = replace(finding, mend=f"{finding.mend} as a column, or under constants: in the map")
     return at_cell(desk, row, column, finding)

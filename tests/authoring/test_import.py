@@ -327,6 +327,24 @@ def test_a_bad_constant_is_told_once_in_the_map(run: Run, book: Path) -> None:
     assert code == 1
 
 
+@pytest.mark.parametrize(
+    ("order", "typed", "said"),
+    [
+        ("D.M.Y", "14.3.2026", "date: 2026-03-14"),
+        ("M/D/Y", "3/14/2026", "date: 2026-03-14"),
+        ("M/D/Y", "2026-03-14", "date: 2026-03-14"),
+        ("D/M/Y", "3/14/2026", "2026-14-03 is no day of the calendar"),
+        ("D.M.Y", "14.3.26", '"14.3.26" is not a date'),
+    ],
+)
+def test_dates_in_the_order_of_the_map(run: Run, book: Path, order: str, typed: str, said: str) -> None:
+    column_map = book.parent / "map.yml"
+    column_map.write_text(f"columns: {{performed.date: {{to: performed.date, date: {order}}}}}\n", "utf-8")
+    sheet = _csv(book.parent / "a.csv", SOUND | {"performed.date": typed})
+    _, out = run("import", sheet, "--map", column_map, "--book", book)
+    assert said in out + "".join(path.read_text("utf-8") for path in _records(book).values())
+
+
 def test_a_decimal_comma_is_none_in_a_name(run: Run, book: Path) -> None:
     column_map = book.parent / "map.yml"
     column_map.write_text("decimal_comma: true\n", "utf-8")
