@@ -62,7 +62,7 @@ class Desk:
     """All that a row is read with, and held against.
 
     targets: by column. map_places: where the map has its constants. files: of the book, by identifier.
-    schema: relative path to the JSON Schema from where records go.
+    into: the folder for new records. schema: the JSON Schema of records; both absolute.
     """
 
     sheet: Sheet
@@ -73,7 +73,7 @@ class Desk:
     files: Mapping[str, Path]
     retired: frozenset[str]
     into: Path
-    schema: str
+    schema: Path
     may_update: bool
 
 
@@ -361,7 +361,7 @@ def _placed(desk: Desk, row: Row, spots: _Spots, finding: Finding) -> CellFindin
         finding = replace(finding, message=f"{part}: {finding.message}")
     if finding.rule == "quantity-without-unit":
         finding = replace(finding, mend=f"{finding.mend}, or give the column its unit in the map")
-    if column in desk.targets and desk.targets[column].name.rpartition(".")[2] in _DATES:
+    if column is not None and column in desk.targets and desk.targets[column].name.rpartition(".")[2] in _DATES:
         finding = replace(finding, mend=f"{finding.mend}, or name the order of its dates in the map, as date: D.M.Y")
     if finding.rule == "key-missing" and column is None:
         finding = replace(finding, mend=f"{finding.mend} as a column, or under constants: in the map")

@@ -31,7 +31,7 @@ from builder.authoring.workbook import read_workbook
 from builder.book import record_files
 from builder.finding import Level
 from builder.records.digest import digest
-from builder.records.flat import Unflattened, column_order, flatten, name_of
+from builder.records.flat import column_order, flatten, name_of
 from builder.records.model import Record
 from builder.records.reader import read_bytes, read_record
 from builder.records.settings import Settings
@@ -143,7 +143,7 @@ def plan_import(
 ) -> Import:
     """Read every row and say what would become of it; nothing is written.
 
-    book: its folder. into: where new records go, the book or a folder inside it.
+    book: its folder, absolute. into: where new records go, the book or a folder inside it.
     may_update: a draft that nobody has edited since its import follows the sheet.
     advance: told of each row done. Raises NoKeyError where nothing tells which entry a row makes.
     """
@@ -158,7 +158,7 @@ def plan_import(
         files={path.stem: path for path in record_files(book)[0]},
         retired=frozenset(settings.retired if settings else ()),
         into=into,
-        schema=Path(os.path.relpath(book / "schema" / "record-1.json", into)).as_posix(),
+        schema=book / "schema" / "record-1.json",
         may_update=may_update,
     )
     readings: list[tuple[Row, RowReading]] = []
@@ -261,7 +261,7 @@ def _settle(desk: Desk, row: Row, reading: RowReading, record: Record, findings:
     assert isinstance(unflattened.value, dict)  # noqa: S101 - a row has columns
     wanted = flatten(unflattened.value)
     path = desk.files.get(record.entry)
-    text = _file_text(desk, row, unflattened, content)
+    text = _file_text(desk, row, reading, path.parent if path is not None else desk.into)
     written = read_bytes(text.encode(), record.entry)
     if errors := [finding for finding in written.findings if finding.level is Level.ERROR]:
         findings.append(at_cell(desk, row, None, errors[0]))  # such as a record that is too long for a file
@@ -315,14 +315,17 @@ def _other_key(desk: Desk, content: RowContent, has: Mapping[str, str]) -> str:
     return ""
 
 
-def _file_text(desk: Desk, row: Row, unflattened: Unflattened, content: RowContent) -> str:
+def _file_text(desk: Desk, row: Row, reading: RowReading, folder: Path) -> str:
+    """Return the file that a row makes in a folder."""
+    content, unflattened = reading.content, reading.unflattened
+    schema = Path(os.path.relpath(desk.schema, folder)).as_posix()
     assert isinstance(unflattened.value, dict)  # noqa: S101 - a row has columns
     source = "".join(c if c.isprintable() else " " for c in tidy(desk.sheet.shown_as))
     paths = {name: at for at, name in unflattened.columns.items()}
     remarks = {paths[name]: "perceived from the SMILES" for name in content.perceived if name in paths}
     body = record_yaml(unflattened.value, remarks=remarks)
     return (
-        f"# yaml-language-server: $schema={desk.schema}\n"
+        f"# yaml-language-server: $schema={schema}\n"
         f"# imported from {source}, row {row.number}; content {_content_mark(body)}\n{body}"
     )
 
@@ -350,14 +353,12 @@ def _gathered(desk: Desk, findings: Sequence[CellFinding]) -> Iterator[CellFindi
     alike = Counter((each.finding.rule, each.finding.message) for each in missing)
     everywhere = {said for said, times in alike.items() if times == len(desk.sheet.rows) > 1}
     told = set()
-    ordered = sorted(findings, key=lambda each: (each.row, -1 if each.column is None else each.column))
-    for each in ordered:
+    for each in sorted(findings, key=lambda each: (each.row, -1 if each.column is None else each.column)):
         said = (each.finding.rule, each.finding.message)
-        if each.column is None and (each.row == 0 or said in everywhere):
-            if (each.where if each.row == 0 else "", *said) in told:
+        is_everywhere = each.row > 0 and each.column is None and said in everywhere
+        shown = replace(each, where=f"{desk.sheet.shown_as}: every row") if is_everywhere else each
+        if is_everywhere or each.row == 0:
+            if (shown.where, *said) in told:
                 continue
-            told.add((each.where if each.row == 0 else "", *said))
-            if each.row and said in everywhere:
-                yield replace(each, where=f"{desk.sheet.shown_as}: every row")
-                continue
-        yield each
+            told.add((shown.where, *said))
+        yield shown

@@ -214,9 +214,13 @@ def test_a_changed_cell_is_told_and_not_written(run: Run, book: Path) -> None:
 def test_a_draft_follows_the_sheet_when_told_to(run: Run, book: Path) -> None:
     run("import", _csv(book.parent / "a.csv", SOUND), "--book", book)
     sheet = _csv(book.parent / "a.csv", CHANGED)
-    assert run("import", sheet, "--book", book, "--update")[0] == 0
     (path,) = _records(book).values()
+    (book / "moved").mkdir()
+    path = path.rename(book / "moved" / path.name)
+    assert run("import", sheet, "--book", book, "--update")[0] == 0
     assert "yield: 84 %" in path.read_text("utf-8")
+    assert path.read_text("utf-8").startswith("# yaml-language-server: $schema=../schema/record-1.json\n")
+    assert list(_records(book).values()) == [path]
     assert run("import", sheet, "--book", book)[1].endswith("1 row: 1 unchanged\nnothing written\n")
 
 
