@@ -37,6 +37,8 @@ IGNORED = "ignore"
 DEFAULTS = {"format": "1", "revision": "1", "status": "draft"}
 """What a row need not say."""
 
+_LONGEST_HEADING = 100
+"""Beyond it nothing is guessed."""
 _UNIT_IN_HEADING = re.compile(
     r"(?P<bare>.*?\S)\s*(?:\((?P<round>[^()]+)\)|\[(?P<square>[^\[\]]+)\]|/\s*(?P<slash>\S.*))"
 )
@@ -156,7 +158,7 @@ def split_unit(heading: str) -> tuple[str, str | None]:
     >>> split_unit("Temp (°C)"), split_unit("m / g"), split_unit("Exp. no. (old)")
     (('Temp', '°C'), ('m', 'g'), ('Exp. no. (old)', None))
     """
-    found = _UNIT_IN_HEADING.fullmatch(heading)
+    found = _UNIT_IN_HEADING.fullmatch(heading) if len(heading) <= _LONGEST_HEADING else None
     unit = found and (found["round"] or found["square"] or found["slash"]).strip()
     return (found["bare"], unit) if found and unit and is_unit(unit) else (heading, None)
 
@@ -259,6 +261,8 @@ _USUAL_HEADINGS = {
 
 def likely_column(heading: str) -> str | None:
     """Return the column that a heading most likely means, whatever its capitals, points and unit; None for no idea."""
+    if len(heading) > _LONGEST_HEADING:
+        return None
     bare, _ = split_unit(heading)
     folded = re.sub(r"[\W_]+", " ", bare).strip().casefold()
     if folded in _USUAL_HEADINGS:

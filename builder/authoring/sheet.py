@@ -33,6 +33,7 @@ __all__ = [
 MAX_SHEET_BYTES = 20 * 1024 * 1024
 MAX_ROWS = 20_000
 MAX_COLUMNS = 1_000
+_SAID_DELIMITER = re.compile(r"sep=([,;\t])[\r\n]")
 _LONE_SURROGATE = re.compile("[\ud800-\udfff]")
 
 
@@ -159,8 +160,9 @@ def _csv_rows(text: str, delimiter: str, shown_as: str) -> Iterator[tuple[int, M
     reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
     try:
         for number, row in enumerate(reader, start=1):
+            is_said = number == 1 and _SAID_DELIMITER.match(text)
             cells = {column: _csv_cell(cell) for column, cell in enumerate(row) if cell.strip()}
-            yield number, cells
+            yield number, {} if is_said else cells
     except csv.Error as error:
         raise SheetError(f"{shown_as} line {reader.line_num} is no CSV: {error}; look at its quotes") from error
 
@@ -182,6 +184,9 @@ def _decoded(data: bytes) -> tuple[str, tuple[str, ...]]:
 
 def _delimiter(text: str) -> str:
     """Return what sets the cells of the first line that holds something apart."""
+    said = _SAID_DELIMITER.match(text)
+    if said:
+        return said[1]
     first = next((line for line in text.splitlines() if line.strip(" ,;\t")), "")
     bare = re.sub(r'"[^"]*"', "", first)
     return max(",;\t", key=bare.count)

@@ -466,6 +466,19 @@ def test_csv_as_programs_write_it(run: Run, book: Path, delimiter: str, encoding
     assert "temperature: 60 °C" in path.read_text("utf-8")
 
 
+def test_a_line_that_names_the_delimiter_is_no_heading(run: Run, book: Path) -> None:
+    sheet = _csv(book.parent / "a.csv", SOUND | {"title": "one, two, three"}, delimiter=";")
+    sheet.write_bytes(b"sep=;\r\n" + sheet.read_bytes())
+    assert run("import", sheet, "--book", book)[0] == 0
+
+
+def test_headings_below_a_title(run: Run, book: Path) -> None:
+    sheet = _csv(book.parent / "a.csv", SOUND)
+    sheet.write_bytes(b"Screening of azides\r\n\r\n" + sheet.read_bytes())
+    (book.parent / "map.yml").write_text("heading_row: 3\n", "utf-8")
+    assert run("import", sheet, "--map", book.parent / "map.yml", "--book", book)[0] == 0
+
+
 def test_a_formula_in_a_text_is_guarded_and_comes_back(run: Run, book: Path) -> None:
     texts = ["=1+1", "+49", "-78 °C bath", "@home", "'quoted", "'=x"]
     rows = [SOUND | {"notebook": f"XB1/{n}", "take_away": text} for n, text in enumerate(texts)]
