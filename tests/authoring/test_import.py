@@ -178,7 +178,10 @@ def test_the_whole_demonstration_book_survives(run: Run, book: Path, form: str) 
     there = {path.stem: path for path in demo.rglob("NS*.yml")}
     assert made.keys() == there.keys()
     for entry, path in there.items():
-        assert read_record(made[entry], path.name).record == read_record(path, path.name).record
+        before, after = read_record(path, path.name).record, read_record(made[entry], path.name).record
+        assert before is not None
+        assert after == before
+        assert digest(after) == digest(before)
 
 
 # --- rows and the entries they made ---------------------------------------------------------------------------------
