@@ -20,6 +20,7 @@ from builder.checks.house import HOUSE_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
+from builder.checks.yields import YIELD_CHECKS
 from builder.finding import Level
 from builder.mechanism.rules import GATES
 from builder.records.rules import READING_RULES
@@ -42,6 +43,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *KINETIC_CHECKS,
             *STAGE_CHECKS,
             *STRUCTURE_CHECKS,
+            *YIELD_CHECKS,
         ),
         key=lambda rule: rule.id,
     )
