@@ -80,32 +80,46 @@ def balance_is_above_100(case: Case) -> Iterator[Fault]:
     level=Level.QUERY,
     source="common-practice",
     needs=("balance-above-100",),
-    fires_on=(outcome_example("{yield: 61 %, of: A, kind: assay}, {recovered: 5 %, of: substrate}"),),
+    fires_on=(
+        outcome_example("{yield: 61 %, of: A, kind: assay}, {recovered: 5 %, of: substrate}"),
+        outcome_example("{yield: 61 %, of: A, kind: assay}, {conversion: 99 %}"),
+    ),
     silent_on=(
         outcome_example("{yield: 81 %, of: A, kind: assay}, {recovered: 15 %, of: substrate}"),
+        outcome_example("{yield: 81 %, of: A, kind: assay}, {conversion: 88 %}"),
         outcome_example("{yield: 61 %, of: A, kind: isolated}, {recovered: 5 %, of: substrate}"),
+        outcome_example("{yield: 61 %, of: A, kind: assay, note: much tar}, {conversion: 99 %}"),
     ),
 )
 def balance_is_open(case: Case) -> Iterator[Fault]:
-    """Where everything was measured in the mixture, yields and recovered substrate reach 90 %.
+    """Where everything was measured in the mixture, yields and the substrate left over reach 90 %.
 
-    Asked only where no isolated yield enters, every product has its own number, and something says what became of
-    the rest of the substrate. A volatile alkene that left with the gas is the usual gap.
+    What is left over was recovered, or follows from the conversion. Asked only where no isolated yield enters and every
+    product has its own number; elsewhere the balance stays open, and says nothing. A volatile alkene that left with the
+    gas is the usual gap, and a note on one of the measurements closes it.
     """
-    yields, recovered = _yields(case), _highest(case, "recovered")
+    yields, left = _yields(case), _left_over(case)
     kinds = {line.kind for _, line, _ in lines_of(case, "yield")}
     complete = frozenset().union(*yields) == {product.label for product in case.record.outcome.products}
     yielded = _total(yields)
-    if kinds != {YieldKind.ASSAY} or not complete or recovered is None or yielded is None:
+    if kinds != {YieldKind.ASSAY} or not complete or left is None or yielded is None:
         return
-    total = yielded + recovered
-    if total.high < OPEN_BELOW:
+    total = yielded + left
+    if total.high < OPEN_BELOW and not any(line.note for line in case.record.outcome.measured):
         yield Fault(
             at=("outcome", "measured"),
             message=f"only {total.stated:g} % of the substrate is accounted for",
             mend="name what else formed, or say in a note where it went",
             data={"total_percent": round(total.stated, 1)},
         )
+
+
+def _left_over(case: Case) -> Span | None:
+    """Return the substrate that did not react: recovered, else what the conversion leaves; None if neither says."""
+    recovered, conversion = _highest(case, "recovered"), _highest(case, "conversion")
+    if recovered is not None or conversion is None:
+        return recovered
+    return Span(100.0 - conversion.stated, max(0.0, 100.0 - conversion.high), 100.0 - conversion.low)
 
 
 @rule(
