@@ -6,7 +6,7 @@ from itertools import combinations
 from operator import add
 
 from builder.checks.case import Case
-from builder.checks.measured import METHOD_POINTS, Span, lines_of
+from builder.checks.measured import METHOD_POINTS, Span, exactly, lines_of
 from builder.finding import Level
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import YieldKind
@@ -14,9 +14,9 @@ from builder.rule import Fault, rule
 
 __all__ = ["BALANCE_CHECKS"]
 
-OPEN_BELOW = 90.0
-FULL_ABOVE = 105.0
-_NOTHING = Span(0.0, 0.0, 0.0)
+SURPLUS_POINTS = 5.0
+OPEN_POINTS = 10.0
+_WHOLE = exactly(100.0)
 
 
 def _yields(case: Case) -> dict[frozenset[str], Span]:
@@ -34,7 +34,7 @@ def _total(groups: Mapping[frozenset[str], Span]) -> Span | None:
     outer = {group: span for group, span in groups.items() if not any(group < other for other in groups)}
     if any(one & other for one, other in combinations(outer, 2)):
         return None
-    return reduce(add, outer.values(), _NOTHING)
+    return reduce(add, outer.values(), exactly(0.0))
 
 
 def _highest(case: Case, what: str) -> Span | None:
@@ -64,8 +64,8 @@ def balance_is_above_100(case: Case) -> Iterator[Fault]:
     yielded = _total(_yields(case))
     if yielded is None:
         return
-    total = yielded + (_highest(case, "recovered") or _NOTHING)
-    if total.low > FULL_ABOVE:
+    total = yielded + (_highest(case, "recovered") or exactly(0.0))
+    if total.is_above(_WHOLE, SURPLUS_POINTS):
         yield Fault(
             at=("outcome", "measured"),
             message=f"yields and recovered substrate add up to {total.stated:g} %",
@@ -105,7 +105,7 @@ def balance_is_open(case: Case) -> Iterator[Fault]:
     if kinds != {YieldKind.ASSAY} or not complete or left is None or yielded is None:
         return
     total = yielded + left
-    if total.high < OPEN_BELOW and not any(line.note for line in case.record.outcome.measured):
+    if _WHOLE.is_above(total, OPEN_POINTS) and not any(line.note for line in case.record.outcome.measured):
         yield Fault(
             at=("outcome", "measured"),
             message=f"only {total.stated:g} % of the substrate is accounted for",
@@ -119,7 +119,7 @@ def _left_over(case: Case) -> Span | None:
     recovered, conversion = _highest(case, "recovered"), _highest(case, "conversion")
     if recovered is not None or conversion is None:
         return recovered
-    return Span(100.0 - conversion.stated, max(0.0, 100.0 - conversion.high), 100.0 - conversion.low)
+    return Span(max(0.0, 100.0 - conversion.high), 100.0 - conversion.low, conversion.half)
 
 
 @rule(
@@ -144,9 +144,10 @@ def recovered_is_above_unconverted(case: Case) -> Iterator[Fault]:
     conversion = max(conversions, key=lambda span: span.low, default=None)
     if conversion is None:
         return
-    margin = 0.0 if conversion.stated >= 100.0 else METHOD_POINTS
+    margin = 0.0 if conversion.low >= 100.0 else METHOD_POINTS
+    unconverted = Span(100.0 - conversion.low, 100.0 - conversion.low, conversion.half)
     for path, line, span in lines_of(case, "recovered"):
-        if span.low > 100.0 - conversion.low + margin:
+        if span.is_above(unconverted, margin):
             yield Fault(
                 at=(*path, "recovered"),
                 message=f"{line.value} recovered at {conversion.stated:g} % conversion",
@@ -172,13 +173,13 @@ def yield_is_above_conversion(case: Case) -> Iterator[Fault]:
 
     Selectivity is yield over conversion and cannot exceed one.
     """
-    conversions = [(span.high, line.value) for _, line, span in lines_of(case, "conversion")]
+    conversions = [(span, line.value) for _, line, span in lines_of(case, "conversion")]
     total = _total(_yields(case))
     first = next((path for path, _, _ in lines_of(case, "yield")), None)
     if not conversions or first is None or total is None:
         return
-    highest, typed = max(conversions, key=lambda each: each[0])
-    if total.low > highest + METHOD_POINTS:
+    highest, typed = max(conversions, key=lambda each: each[0].high)
+    if total.is_above(highest, METHOD_POINTS):
         yield Fault(
             at=(*first, "yield"),
             message=f"{total.stated:g} % yield at {typed} conversion",

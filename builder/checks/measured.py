@@ -1,4 +1,4 @@
-"""What the lines of `measured` say as numbers: each a span that honest rounding leaves open."""
+"""What the lines of `measured` say as numbers, with what honest rounding leaves open."""
 
 import math
 from collections.abc import Iterator
@@ -11,7 +11,16 @@ from builder.records.model import Measurement, Substrate
 from builder.records.quantities import Percent
 from builder.rule import Path
 
-__all__ = ["METHOD_POINTS", "Span", "excess_of_substrate", "excess_span", "half_unit", "lines_of", "percent_span"]
+__all__ = [
+    "METHOD_POINTS",
+    "Span",
+    "exactly",
+    "excess_of_substrate",
+    "excess_span",
+    "half_unit",
+    "lines_of",
+    "percent_span",
+]
 
 METHOD_POINTS = 3.0
 """What two methods may differ by, in per cent of substrate; common practice, no source."""
@@ -19,18 +28,27 @@ METHOD_POINTS = 3.0
 
 @dataclass(frozen=True, slots=True)
 class Span:
-    """A measured percentage: what is stated, and between which values it lies once rounding is undone.
+    """Between which percentages a measured value lies, and what its typed digits leave open besides.
 
-    stated: the typed number; 0 for "< 2 %", whose span begins there. low, high: half a unit in the last typed digit
-    wider; high is infinite for "> 98 %".
+    low, high: a plain number is both; "< 2 %" begins at 0, "> 98 %" has no upper end.
+    half: half a unit in the last typed digit, in points.
     """
 
-    stated: float
     low: float
     high: float
+    half: float
+
+    @property
+    def stated(self) -> float:
+        """Return the number to count with: as typed, 0 for an upper limit."""
+        return self.low
 
     def __add__(self, other: "Span") -> "Span":
-        return Span(self.stated + other.stated, self.low + other.low, self.high + other.high)
+        return Span(self.low + other.low, self.high + other.high, self.half + other.half)
+
+    def is_above(self, other: "Span", points: float) -> bool:
+        """Say whether this exceeds another by more than `points`, or by more than rounding where that is wider."""
+        return self.low - other.high > max(points, self.half + other.half)
 
 
 def half_unit(number: Decimal) -> float:
@@ -39,12 +57,17 @@ def half_unit(number: Decimal) -> float:
     return 0.5 * 10.0**exponent if isinstance(exponent, int) else 0.0
 
 
+def exactly(percent: float) -> Span:
+    """Return the span of a number that was not measured, such as the 100 % of a whole."""
+    return Span(percent, percent, 0.0)
+
+
 def percent_span(percent: Percent) -> Span:
     """Return the span of "88 %", "< 2 %" or "> 98 %"."""
     half = half_unit(percent.quantity.number)
     if percent.is_upper_limit:
-        return Span(0.0, 0.0, percent.magnitude + half)
-    return Span(percent.magnitude, percent.magnitude - half, math.inf if percent.is_limit else percent.magnitude + half)
+        return Span(0.0, percent.magnitude, half)
+    return Span(percent.magnitude, math.inf if percent.is_limit else percent.magnitude, half)
 
 
 def lines_of(case: Case, what: str) -> Iterator[tuple[Path, Measurement, Span]]:
@@ -61,18 +84,13 @@ def excess_span(ee: Percent | None, er: Ratio | None) -> Span | None:
     """
     if ee is not None:
         span = percent_span(ee)
-        if ee.is_limit or span.stated >= 0:
-            return Span(span.stated, max(0.0, span.low), min(100.0, span.high))
-        return Span(-span.stated, max(0.0, -span.high), min(100.0, -span.low))
+        if ee.is_limit or span.low >= 0:
+            return Span(span.low, min(100.0, span.high), span.half)
+        return Span(-span.low, -span.low, span.half)
     if er is None:
         return None
-    (minor, minor_half), (major, major_half) = sorted((float(n), half_unit(n)) for n in er.numbers)
-    least = _excess(max(major - major_half, 0.0), minor + minor_half)
-    return Span(er.excess_percent, max(0.0, least), _excess(major + major_half, max(minor - minor_half, 0.0)))
-
-
-def _excess(major: float, minor: float) -> float:
-    return 100.0 * (major - minor) / (major + minor)
+    total, halves = float(sum(er.numbers)), sum(map(half_unit, er.numbers))
+    return Span(er.excess_percent, er.excess_percent, 100.0 * halves / total)
 
 
 def excess_of_substrate(substrate: Substrate) -> Span | None:

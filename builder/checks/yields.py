@@ -7,7 +7,7 @@ from functools import cache
 
 from builder.checks.case import Case
 from builder.checks.derivation import routes_by_product
-from builder.checks.measured import METHOD_POINTS, Span, half_unit, lines_of
+from builder.checks.measured import METHOD_POINTS, Span, exactly, half_unit, lines_of
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
@@ -95,7 +95,7 @@ def isolated_is_above_assay(case: Case) -> Iterator[Fault]:
         by_assay, assay = assays.get(frozenset(line.of or ()), (None, None))
         if by_assay is None or assay is None or line.kind is not YieldKind.ISOLATED:
             continue
-        if span.low > assay.high + METHOD_POINTS:
+        if span.is_above(assay, METHOD_POINTS):
             yield Fault(
                 at=(*path, "yield"),
                 message=f"{line.value} isolated, {by_assay.value} by assay",
@@ -117,7 +117,7 @@ def yield_is_above_100(case: Case) -> Iterator[Fault]:
     """
     for what in ("yield", "conversion", "recovered"):
         for path, line, span in lines_of(case, what):
-            if span.low > 100.0 + ABOVE_100_POINTS or span.stated < 0.0 or span.high < 0.0:
+            if span.is_above(exactly(100.0), ABOVE_100_POINTS) or min(span.low, span.high) < 0.0:
                 yield Fault(at=(*path, what), message=f"{what} of {line.value}", mend="correct it, or state the purity")
 
 
@@ -212,7 +212,7 @@ def yield_disagrees_with_mass(case: Case) -> Iterator[Fault]:
 
 def _points_off(span: Span, expected: float, half_digits: float) -> float:
     """Return by how many points a yield lies outside the tolerance around the expected one; not above 0 if within."""
-    return max(span.low - expected, expected - span.high, 0.0) - YIELD_MASS_POINTS - expected * half_digits
+    return max(span.low - expected, expected - span.high) - YIELD_MASS_POINTS - span.half - expected * half_digits
 
 
 def _product(case: Case, line: Measurement) -> Structure | None:
