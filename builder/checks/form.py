@@ -4,13 +4,9 @@ import datetime as dt
 from collections import Counter
 from collections.abc import Iterator
 
-from pydantic import BaseModel
-
 from builder.checks.case import Case
-from builder.finding import Level
 from builder.mechanism.amounts import Role, charged_rows
 from builder.records.model import Record, Solvent
-from builder.records.quantities import Dimension
 from builder.records.specimen import ONE_PRODUCT, TWO_PRODUCTS, outcome_example
 from builder.rule import Fault, Path, rule
 
@@ -228,31 +224,6 @@ def quantity_is_missing(case: Case) -> Iterator[Fault]:
 
 
 @rule(
-    id="rate-constant-order",
-    title="A rate constant whose unit is of another order",
-    source="iupac-gold",
-    fires_on=(outcome_example(more="rate_constant: {order: 2, value: 9.2e-6 1/s, temperature: 25.0 °C}"),),
-    silent_on=(outcome_example(more="rate_constant: {order: 2, value: 9.2e-6 L/(mol s), temperature: 25.0 °C}"),),
-)
-def rate_constant_is_of_another_order(case: Case) -> Iterator[Fault]:
-    """A first-order rate constant is in 1/s, a second-order one in L/(mol s).
-
-    The unit is the order: if they disagree, one of them was misread.
-    """
-    constant = case.record.outcome.rate_constant
-    if constant is None:
-        return
-    wanted = {1: Dimension.RATE_CONSTANT_1, 2: Dimension.RATE_CONSTANT_2}[constant.order]
-    for key, quantity in (("value", constant.value), ("spread", constant.spread)):
-        if quantity is not None and quantity.dimension is not wanted:
-            yield Fault(
-                at=("outcome", "rate_constant", key),
-                message=f"{quantity} is no rate constant of order {constant.order}",
-                mend="correct the unit or the order",
-            )
-
-
-@rule(
     id="spread-without-repeats",
     title="A spread from a single measurement",
     source="common-practice",
@@ -301,39 +272,6 @@ def stage_adds_what_is_not_listed(case: Case) -> Iterator[Fault]:
                 )
 
 
-@rule(
-    id="text-vague",
-    title="A free text with a word that says nothing",
-    level=Level.REMARK,
-    source="common-practice",
-    fires_on=("take_away: worked well",),
-    silent_on=("take_away: 81 % in 16 h; elimination below 5 %.",),
-)
-def text_says_nothing(case: Case) -> Iterator[Fault]:
-    """Take-away and notes say a number or a cause, not that it worked well.
-
-    "Worked well", "standard work-up" and "dry solvent" mean something else to every reader.
-    """
-    for path, text in _texts(case.record):
-        for vague in _VAGUE:
-            if vague in text.casefold():
-                yield Fault(at=path, message=f'"{vague}" says nothing', mend="write what was done, with numbers")
-
-
-def _texts(part: object, path: Path = ()) -> Iterator[tuple[Path, str]]:
-    """Yield every text of a record with its path."""
-    if isinstance(part, BaseModel):
-        for name, info in type(part).model_fields.items():
-            yield from _texts(getattr(part, name), (*path, info.alias or name))
-    elif isinstance(part, tuple):
-        for index, item in enumerate(part):
-            yield from _texts(item, (*path, index))
-    elif isinstance(part, str):
-        yield path, part
-
-
-_VAGUE = ("worked well", "standard work-up", "standard workup", "usual work-up", "as usual")
-
 FORM_CHECKS = (
     course_stands_twice,
     dates_are_out_of_order,
@@ -342,8 +280,6 @@ FORM_CHECKS = (
     label_stands_twice,
     label_is_unknown,
     quantity_is_missing,
-    rate_constant_is_of_another_order,
     spread_comes_from_one_measurement,
     stage_adds_what_is_not_listed,
-    text_says_nothing,
 )

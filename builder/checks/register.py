@@ -22,6 +22,7 @@ from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.ratios import RATIO_CHECKS
 from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
+from builder.checks.words import WORD_CHECKS
 from builder.checks.yields import YIELD_CHECKS
 from builder.finding import Level
 from builder.mechanism.rules import GATES
@@ -47,6 +48,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *RATIO_CHECKS,
             *STAGE_CHECKS,
             *STRUCTURE_CHECKS,
+            *WORD_CHECKS,
             *YIELD_CHECKS,
         ),
         key=lambda rule: rule.id,
