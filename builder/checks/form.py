@@ -5,6 +5,7 @@ from collections import Counter
 from collections.abc import Iterator
 
 from builder.checks.case import Case
+from builder.finding import Level
 from builder.mechanism.amounts import Role, charged_rows
 from builder.records.model import Record, Solvent
 from builder.records.specimen import ONE_PRODUCT, TWO_PRODUCTS, outcome_example
@@ -50,31 +51,47 @@ def course_stands_twice(case: Case) -> Iterator[Fault]:
     id="dates-out-of-order",
     title="Dates that cannot follow each other",
     source="common-practice",
-    fires_on=("reviewed: {by: bench-1, date: 2026-01-20}", "performed: {date: 2126-03-14, by: [bench-2]}"),
-    silent_on=("reviewed: {by: bench-1, date: 2026-03-14, due: 2027-03-14}",),
+    fires_on=(
+        "reviewed: {by: bench-1, date: 2026-01-20}",
+        "performed: {date: 2126-03-14, by: [bench-2]}",
+        "status: withdrawn\nwithdrawn: {date: 2026-02-01, because: another structure, by: bench-1}",
+        "safety_review: {by: safety-1, date: 2026-03-16, scope: azide at 10 mmol}",
+    ),
+    silent_on=(
+        "reviewed: {by: bench-1, date: 2026-03-14, due: 2027-03-14}",
+        "status: withdrawn\nwithdrawn: {date: 2026-06-01, because: another structure, by: bench-1}",
+        "safety_review: {by: safety-1, date: 2026-03-14, scope: azide at 10 mmol}",
+    ),
 )
 def dates_are_out_of_order(case: Case) -> Iterator[Fault]:
     """An experiment is performed before it is reviewed, reviewed before the next review is due, and all before today.
 
-    A slipped digit in a year is the usual cause, and it would sort the entry into the wrong place.
+    A slipped digit in a year is the usual cause, and it would sort the entry into the wrong place. It is superseded or
+    withdrawn after it was performed. Its hazards are reviewed before it is run: a later review is a query.
     """
-    performed, reviewed = case.record.performed, case.record.reviewed
+    performed = case.record.performed.date
     for path, day in _dates(case.record):
         if day > case.today + dt.timedelta(days=1):  # it may be tomorrow already where the writer is
             yield Fault(at=path, message=f"{path[0]} on {day}, after today, {case.today}", mend="correct the date")
-    if reviewed is None:
-        return
-    if reviewed.date < performed.date:
-        yield Fault(
-            at=("reviewed", "date"),
-            message=f"reviewed on {reviewed.date}, before it was performed on {performed.date}",
-            mend="correct one of the two dates",
-        )
-    if reviewed.due is not None and reviewed.due <= reviewed.date:
+        elif day < performed and path[0] in {"reviewed", "superseded", "withdrawn"}:
+            yield Fault(
+                at=path,
+                message=f"{path[0]} on {day}, before it was performed on {performed}",
+                mend="correct one of the two dates",
+            )
+    reviewed, safety = case.record.reviewed, case.record.safety_review
+    if reviewed is not None and reviewed.due is not None and reviewed.due <= reviewed.date:
         yield Fault(
             at=("reviewed", "due"),
             message=f"due again on {reviewed.due}, not after the review on {reviewed.date}",
             mend="give a later day",
+        )
+    if safety is not None and safety.date > performed:
+        yield Fault(
+            at=("safety_review", "date"),
+            message=f"the hazards were reviewed on {safety.date}, after the run on {performed}",
+            mend="correct one of the two dates, or accept this with the reason",
+            level=Level.QUERY,
         )
 
 

@@ -12,12 +12,14 @@ from builder.checks.cautions import CAUTION_CHECKS
 from builder.checks.charged import CHARGED_CHECKS
 from builder.checks.completeness import COMPLETENESS_CHECKS
 from builder.checks.conditions import CONDITION_CHECKS
+from builder.checks.copies import COPY_CHECKS
 from builder.checks.erosion import EROSION_CHECKS
 from builder.checks.excess import EXCESS_CHECKS
 from builder.checks.forecasts import FORECAST_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
 from builder.checks.house import HOUSE_CHECKS
+from builder.checks.identity import IDENTITY_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.ratios import RATIO_CHECKS
 from builder.checks.stages import STAGE_CHECKS
@@ -40,10 +42,12 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *CHARGED_CHECKS,
             *COMPLETENESS_CHECKS,
             *CONDITION_CHECKS,
+            *COPY_CHECKS,
             *EROSION_CHECKS,
             *EXCESS_CHECKS,
             *FORECAST_CHECKS,
             *FORM_CHECKS,
+            *IDENTITY_CHECKS,
             *KINETIC_CHECKS,
             *RATIO_CHECKS,
             *STAGE_CHECKS,

@@ -593,6 +593,9 @@ def _refuse_what_is_no_smiles(text: str) -> None:
         raise StructureError("no structure", _WRITE_SMILES)
     if len(text) > MAX_CHARACTERS:
         raise StructureError(f"longer than {MAX_CHARACTERS} characters", "write only the species that reacts")
+    extension = re.search(r"\s+\|(?P<said>[^|]*)\|?", text)
+    if extension:
+        raise _extended(extension["said"], extension.start())
     space = re.search(r"\s", text)
     if space:
         raise StructureError("space in a SMILES", "write the SMILES alone, its name under `name`", space.start())
@@ -613,6 +616,19 @@ def _refuse_what_is_no_smiles(text: str) -> None:
         if _SMARTS_IN_BRACKET.search(bracket.group(1)):
             mend = "write a definite atom, with its hydrogens and charge"
             raise StructureError(f"search pattern {bracket.group()} in a SMILES", mend, bracket.start())
+
+
+_STEREO_GROUPS = {"&": "stereo: racemate", "o": "stereo: unknown enantiomer", "a": "stereo: single enantiomer"}
+
+
+def _extended(said: str, position: int) -> StructureError:
+    """Return the error for a CXSMILES extension, which says the stereo of a whole bottle beside the structure.
+
+    Read on, it would be lost: a racemate written |&1:1| has the InChIKey of the enantiomer that is drawn.
+    """
+    words = [word for sign, word in _STEREO_GROUPS.items() if re.search(rf"(^|,){sign}\d*:", said)]
+    instead = f", and {' or '.join(words)} beside it" if words else ""
+    return StructureError("CXSMILES extension", f"write the SMILES alone{instead}", position)
 
 
 def _refuse_excess(raw: Chem.Mol, stereo_elements: int) -> None:

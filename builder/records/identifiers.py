@@ -1,12 +1,16 @@
-"""Entry identifiers: NS, six random Crockford base-32 characters, one ISO 7064 MOD 37,36 check character."""
+"""Identifiers and their check characters.
+
+Of entries: NS, six random Crockford base-32 characters, one ISO 7064 MOD 37,36 check character. Of people: ORCID, with
+one of ISO 7064 MOD 11-2.
+"""
 
 import re
 import secrets
 from collections.abc import Callable
 
-from stdnum.iso7064 import mod_37_36
+from stdnum.iso7064 import mod_11_2, mod_37_36
 
-__all__ = ["IDENTIFIER_PATTERN", "is_identifier", "mend_identifier", "mint_identifier"]
+__all__ = ["IDENTIFIER_PATTERN", "has_orcid_check_character", "is_identifier", "mend_identifier", "mint_identifier"]
 
 CROCKFORD = "0123456789ABCDEFGHJKMNPQRSTVWXYZ"
 IDENTIFIER_PATTERN = f"^NS[{CROCKFORD}]{{7}}$"
@@ -37,3 +41,11 @@ def mend_identifier(text: str) -> str | None:
     tidy = re.sub(r"[\s-]", "", text).upper()
     mended = tidy[:2] + tidy[2:].translate(_MISREAD)
     return mended if mended != text and is_identifier(mended) else None
+
+
+def has_orcid_check_character(address: str) -> bool:
+    """Say whether the sixteenth character of an ORCID address is the ISO 7064 MOD 11-2 one of the fifteen before.
+
+    address: https://orcid.org/ and four groups of four; its shape is checked elsewhere.
+    """
+    return bool(mod_11_2.is_valid(address.rpartition("/")[2].replace("-", "")))

@@ -2,14 +2,22 @@
 
 from typing import Annotated
 
-from pydantic import Field
+from pydantic import AfterValidator, Field
 
-from builder.records.fields import Count, EntryId, Flag, FormatNumber, Line, RelativePath, Shape
+from builder.records.fields import Count, EntryId, Flag, FormatNumber, Line, RelativePath, Shape, faulty
+from builder.records.identifiers import has_orcid_check_character
 from builder.records.model import Part
 
 __all__ = ["SETTINGS_FILE", "Accent", "Person", "Settings"]
 
 SETTINGS_FILE = "handbook.yml"
+
+
+def _orcid(address: str) -> str:
+    if not has_orcid_check_character(address):
+        message = f"the check character of {address} is wrong"
+        raise faulty("value-not-permitted", message, "copy it again from the page of the person")
+    return address
 
 
 Address = Annotated[
@@ -23,8 +31,9 @@ Orcid = Annotated[
     Shape(
         r"^https://orcid\.org/[0-9]{4}-[0-9]{4}-[0-9]{4}-[0-9]{3}[0-9X]$",
         "is not an ORCID address",
-        "write it like https://orcid.org/0000-0000-0000-0000",
+        "write it like https://orcid.org/0000-0000-0000-0001",
     ),
+    AfterValidator(_orcid),
 ]
 Colour = Annotated[
     str,

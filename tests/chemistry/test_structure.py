@@ -45,6 +45,7 @@ REFUSED = [
     ("C[C;H2]C", "search pattern [C;H2] in a SMILES", 1),
     ("C[R1]", "search pattern [R1] in a SMILES", 1),
     ("CBr methyl bromide", "space in a SMILES", 3),
+    ("CC[C@H](C)Br |&1:2|", "CXSMILES extension", 12),
 ]
 
 
@@ -234,6 +235,21 @@ def test_a_structure_survives_pickling() -> None:
 
 def test_atom_map_numbers_do_not_make_another_substance() -> None:
     assert parse_smiles("[CH3:1][CH2:2][Br:3]") == parse_smiles("CCBr")
+
+
+@pytest.mark.parametrize(
+    ("extension", "word"),
+    [
+        ("|&1:2|", "stereo: racemate"),
+        ("|o1:2|", "stereo: unknown enantiomer"),
+        ("|a:2|", "stereo: single enantiomer"),
+        ("|$;;R;$,&1:2|", "stereo: racemate"),
+    ],
+)
+def test_a_stereo_group_is_refused_with_the_word_for_it(extension: str, word: str) -> None:
+    with pytest.raises(StructureError) as refused:
+        parse_smiles(f"CC[C@H](C)Br {extension}")
+    assert word in refused.value.mend
 
 
 def test_stereo_key_keeps_three_states_apart_and_racemates_together() -> None:

@@ -7,7 +7,13 @@ from hypothesis import given
 from hypothesis import strategies as st
 from stdnum.iso7064 import mod_37_36
 
-from builder.records.identifiers import CROCKFORD, is_identifier, mend_identifier, mint_identifier
+from builder.records.identifiers import (
+    CROCKFORD,
+    has_orcid_check_character,
+    is_identifier,
+    mend_identifier,
+    mint_identifier,
+)
 
 EXAMPLES = ["NS4T9XQ2N", "NS3V6TDMZ", "NS7K3QFMC", "NS2H8WDRW", "NSC0W7N51", "NS9PZ4GK7"]
 
@@ -58,3 +64,11 @@ def test_two_swapped_neighbours_are_seen(text: str, place: int) -> None:
 def test_the_alphabet_is_that_of_crockford() -> None:
     # Crockford, Base 32 (crockford.com, from memory): digits and capitals without I, L, O, U.
     assert "".join(c for c in string.digits + string.ascii_uppercase if c not in "ILOU") == CROCKFORD
+
+
+def test_the_check_character_of_a_person_is_that_of_the_standard() -> None:
+    # ORCID, "Structure of the ORCID Identifier": 0000-0002-1825-0097, the fictional example person (from memory).
+    assert has_orcid_check_character("https://orcid.org/0000-0002-1825-0097")
+    # The same page shows an X: 0000-0002-1694-233X (from memory).
+    assert has_orcid_check_character("https://orcid.org/0000-0002-1694-233X")
+    assert not has_orcid_check_character("https://orcid.org/0000-0002-1825-0079")
