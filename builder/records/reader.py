@@ -100,7 +100,7 @@ def read_values(model: type[Model], plainly: Plainly) -> tuple[Model | None, tup
     elif plainly.value is not None:
         fault = Fault(at=(), message="the file holds no keys", mend="write lines like title: …")
         findings.append(reading_rule("value-wrong-type").finding(fault, plainly.places.of(())))
-    kept = tuple(sorted(_one_per_place(findings), key=lambda finding: finding.sort_key))
+    kept = _gaps_as_one(sorted(_one_per_place(findings), key=lambda finding: finding.sort_key))
     return (None if any(f.level is Level.ERROR for f in kept) else made), kept, plainly.places
 
 
@@ -151,6 +151,35 @@ def _one_per_place(findings: list[Finding]) -> Iterator[Finding]:
             yield finding
         if finding.level is Level.ERROR:
             wrong.add(spot)
+
+
+_GAP_RULE = "gap-left-open"
+
+
+def _gaps_as_one(findings: list[Finding]) -> tuple[Finding, ...]:
+    """Return the findings with all gaps of a skeleton told at the first: a fresh one has a score of them."""
+    gaps = [finding for finding in findings if finding.rule == _GAP_RULE]
+    if len(gaps) < 2:
+        return tuple(findings)
+    lines = sorted({finding.place.line for finding in gaps})
+    message = f"{len(gaps)} values are still to fill in, on lines {_runs(lines)}"
+    told = replace(gaps[0], message=message, mend="write the values, or drop the keys", data={"lines": lines})
+    return tuple(told if finding is gaps[0] else finding for finding in findings if finding not in gaps[1:])
+
+
+def _runs(numbers: list[int]) -> str:
+    """Return ascending numbers with neighbours drawn together.
+
+    >>> _runs([6, 9, 11, 12, 13])
+    '6, 9, 11 to 13'
+    """
+    runs: list[list[int]] = []
+    for number in numbers:
+        if runs and number == runs[-1][-1] + 1:
+            runs[-1].append(number)
+        else:
+            runs.append([number])
+    return ", ".join(str(run[0]) if len(run) == 1 else f"{run[0]} to {run[-1]}" for run in runs)
 
 
 # --- pydantic's complaints in the chemist's words -----------------------------------------------------------

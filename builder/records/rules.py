@@ -110,7 +110,8 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         source="record-format",
         text="""What `handbook new` left to fill in is filled in.
 
-        A key that nobody can fill is taken out, so that its absence is seen.""",
+        A key that nobody can fill is taken out, so that its absence is seen. All gaps of a record are told in one
+        finding, with their lines.""",
         fires_on=(f"notebook: {GAP}", f"stages: [{{temperature: {GAP}, time: 16 h}}]"),
         silent_on=("notebook: BK2/112",),
     ),

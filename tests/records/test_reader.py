@@ -252,13 +252,18 @@ def test_a_comment_set_apart_is_one(comment: str) -> None:
     assert _read(with_example(f"title: Azide {comment}")).findings == ()
 
 
-def test_one_run_shows_every_gap_and_nothing_else_on_it() -> None:
+def test_one_finding_tells_every_gap_and_nothing_else_stands_on_one() -> None:
     text = with_example(
         "title: TO FILL IN\nnotebook: 'TO FILL IN'\nsolvent: TO FILL IN\nevidence: [TO FILL IN]\n"
         "stages: [{temperature: TO FILL IN, time: 16, vessel: TO FILL IN (which)}]"
     )
-    rules = [finding.rule for finding in _read(text).findings]
-    assert sorted(rules) == ["gap-left-open"] * 6 + ["quantity-without-unit"]
+    found = {finding.rule: finding for finding in _read(text).findings}
+    assert sorted(found) == ["gap-left-open", "quantity-without-unit"]
+    lines = [number for number, line in enumerate(text.splitlines(), start=1) if "TO FILL IN" in line]
+    gap = found["gap-left-open"]
+    assert gap.message.startswith("6 values are still to fill in, on lines ")
+    assert gap.data == {"lines": lines}
+    assert gap.place.line == lines[0]
 
 
 @pytest.mark.parametrize(("example", "rule", "quoted", "fix"), TRAPS, ids=[row[0][:40] for row in TRAPS])
