@@ -225,7 +225,10 @@ def conversion_is_off_the_rate(case: Case) -> Iterator[Fault]:
     title="A rate constant far from the one the engine expects",
     level=Level.QUERY,
     source="estimated-here",
-    needs=("rate-constant-order", *AGREEMENT_READS, "mechanism-contrary"),
+    needs=(
+        *AGREEMENT_READS,
+        *("rate-constant-order", "time-course-off-rate", "conversion-off-rate", "mechanism-contrary"),
+    ),
     fires_on=(outcome_example(more="rate_constant: {order: 2, value: 5 L/(mol s), temperature: 60 °C}"),),
     silent_on=(outcome_example(more="rate_constant: {order: 2, value: 1.0e-3 L/(mol s), temperature: 60 °C}"),),
 )
