@@ -4,12 +4,15 @@ from decimal import Decimal
 from importlib import resources
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from builder.checks.copies import SAMPLE_MASSES
+from builder.checks.excess import DISAGREE_POINTS
 from builder.checks.measured import exactly, excess_span, half_unit, percent_span
 from builder.records.fields import Ratio
 from builder.records.quantities import parse_percent
-from builder.records.specimen import outcome_example
+from builder.records.specimen import TWO_PRODUCTS, outcome_example
 from tests.specimens import play
 
 
@@ -117,3 +120,42 @@ def test_two_molecules_of_substrate_may_be_in_one_of_product() -> None:
 def test_the_masses_of_the_sample_are_those_of_the_sample() -> None:
     sample = resources.files("builder.authoring").joinpath("starter", "entries", "sample.yml").read_text("utf-8")
     assert all(f"mass: {mass}" in sample for mass in SAMPLE_MASSES)
+
+
+@settings(derandomize=True, deadline=None, max_examples=200)
+@given(
+    major=st.floats(50.0, 99.9),
+    digits_of_er=st.integers(0, 1),
+    digits_of_ee=st.integers(0, 1),
+)
+def test_honest_rounding_of_ee_and_er_never_disagrees(major: float, digits_of_er: int, digits_of_ee: int) -> None:
+    ee = percent_span(parse_percent(f"{2 * major - 100:.{digits_of_ee}f} %"))
+    from_er = excess_span(None, _er(f"{major:.{digits_of_er}f}:{100 - major:.{digits_of_er}f}"))
+    assert from_er is not None
+    assert not ee.is_above(from_er, DISAGREE_POINTS)
+    assert not from_er.is_above(ee, DISAGREE_POINTS)
+
+
+@pytest.mark.parametrize(
+    ("ratio", "by", "rules"),
+    [
+        ("A:B = 97:3", "GC", set()),
+        ("A:B = 2:1", "1H NMR", set()),
+        ("A:B = 3.2:1", "1H NMR", set()),
+        ("A:B = 2.45:1.00", "1H NMR", set()),
+        ("A:B = 100:7", "GC", set()),
+        ("A:B = 20:1", "1H NMR", set()),
+        ("A:B = 66.7:33.4", "GC", set()),  # 100.1, rounded
+        ("A:B = 97:2", "GC", set()),  # 97.4 and 2.4 with 0.2 of something else, rounded
+        ("A:B = 96:2", "GC", {"ratio-sum-odd"}),
+        ("A:B = 65:30", "1H NMR", {"ratio-sum-odd"}),
+        ("A:B = 97.3:2.7", "1H NMR", {"ratio-overprecise"}),
+        ("A:B = 97.31:2.69", "GC", {"ratio-overprecise"}),
+        ("A:B = 97.31:2.69", "weighing", set()),
+    ],
+)
+def test_ratios(ratio: str, by: str, rules: set[str]) -> None:
+    line = f"{{ratio: '{ratio}', by: {by}, calibrated: true}}"
+    found = play(outcome_example("{yield: 81 %, of: [A, B], kind: assay, by: GC}", line, products=TWO_PRODUCTS))
+    asked = {"ratio-sum-odd", "ratio-overprecise", "ratio-not-calibrated", "ratio-unreadable"}
+    assert {finding.rule for finding in found} & asked == rules
