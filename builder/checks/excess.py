@@ -2,6 +2,7 @@
 
 import re
 from collections.abc import Iterator
+from dataclasses import dataclass
 
 from builder.checks.case import Case
 from builder.checks.measured import Span, exactly, excess_of_substrate, excess_span
@@ -9,7 +10,7 @@ from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import Role, charged_rows
 from builder.records.fields import Ratio
-from builder.records.model import Measurement, Product, Substrate
+from builder.records.model import Measurement, Substrate
 from builder.records.quantities import Percent
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import StereoKind
@@ -74,11 +75,10 @@ def ee_is_above_substrate(case: Case) -> Iterator[Fault]:
         return
     for path, line, span in _excesses(case):
         if line.of != ("substrate",) and span.is_above(start, RISE_POINTS):
+            found = f"{line.ee} ee" if line.ee is not None else f"{line.er}, {span.stated:.3g} % ee,"
             yield Fault(
                 at=path,
-                message=f"{line.value} is {span.stated:.3g} % ee, from a substrate of {start.stated:.3g} % ee"
-                if isinstance(line.value, Ratio)
-                else f"{line.value} ee from a substrate of {start.stated:.3g} % ee",
+                message=f"{found} from a substrate of {start.stated:.3g} % ee",
                 mend="correct one of them, or name the crystallisation in work_up",
                 level=Level.QUERY if _has_chiral_help(case) else None,
             )
@@ -233,37 +233,51 @@ def excess_does_not_name_its_isomer(case: Case) -> Iterator[Fault]:
     `stereo: unknown enantiomer` or `not determined` says so, and a remark asks for what would tell the isomers apart,
     the order of the peaks.
     """
-    for at, name, word, structure in _speaking_of(case):
-        if structure is None or not structure.stereocentres.unspecified:
+    for each in _spoken_of(case):
+        if each.structure is None or not each.structure.stereocentres.unspecified:
             continue
-        unnamed = word in _UNNAMED
+        is_unknown = each.stereo in _UNNAMED
+        if is_unknown and each.is_noted:
+            continue
         yield Fault(
-            at=at,
-            message=f"the drawing of {name} does not say which isomer is the major one",
+            at=each.at,
+            message=f"the drawing of {each.name} does not say which isomer is the major one",
             mend="say in a note which peak is the major one"
-            if unnamed
+            if is_unknown
             else "draw the major isomer, or write stereo: unknown enantiomer",
-            level=Level.REMARK if unnamed else None,
+            level=Level.REMARK if is_unknown else None,
         )
 
 
-def _speaking_of(case: Case) -> Iterator[tuple[Path, str, StereoKind | None, Structure | None]]:
-    """Yield each excess that is there: its path, and name, stereo word and structure of what it speaks of."""
-    positions: dict[str, tuple[int, Product]] = {
-        product.label: (index, product) for index, product in enumerate(case.record.outcome.products)
-    }
+@dataclass(frozen=True, slots=True)
+class _SpokenOf:
+    """What an excess speaks of: where the excess stands, and name, stereo word and structure of the compound.
+
+    is_noted: a note may name the major isomer by other means; a substrate has no line that could carry one.
+    """
+
+    at: Path
+    name: str
+    stereo: StereoKind | None
+    structure: Structure | None
+    is_noted: bool
+
+
+def _spoken_of(case: Case) -> Iterator[_SpokenOf]:
+    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
     for index, line in enumerate(case.record.outcome.measured):
-        if not _is_excess(line.ee, line.er, line.dr) or line.note:
+        if not _is_excess(line.ee, line.er, line.dr):
             continue
         for label in line.of or ():
             if label in positions:
-                place, product = positions[label]
-                structure = case.structures.get(("outcome", "products", place))
-                yield ("outcome", "measured", index, line.what), f"product {label}", product.stereo, structure
+                path = ("outcome", "products", positions[label])
+                stereo = case.record.outcome.products[positions[label]].stereo
+                at: Path = ("outcome", "measured", index, line.what)
+                yield _SpokenOf(at, f"product {label}", stereo, case.structures.get(path), line.note is not None)
     substrate = case.record.substrate
     if _is_excess(substrate.ee, substrate.er, None):
-        key = _typed_key(substrate)
-        yield ("substrate", key), substrate.name, substrate.stereo, case.structures.get(("substrate",))
+        at = ("substrate", _typed_key(substrate))
+        yield _SpokenOf(at, substrate.name, substrate.stereo, case.structures.get(("substrate",)), is_noted=True)
 
 
 def _is_excess(ee: Percent | None, er: Ratio | None, dr: Ratio | None) -> bool:

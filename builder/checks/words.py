@@ -3,6 +3,7 @@
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cache
 
 from pydantic import BaseModel
 
@@ -67,6 +68,11 @@ _VAGUE = (
         "how much",
     ),
 )
+_LIKELY = re.compile(
+    r"r\.?t\b|temperature|over ?night|o/n|weekend|excess|\bcat|drop|dry|usual|work|went|some|little|bit of|few drops",
+    re.IGNORECASE,
+)
+"""A piece of each of them: a text without any is done with."""
 _QUOTED = re.compile(r'"[^"]*"|“[^”]*”|‘[^’]*’|«[^»]*»')
 _NOT_READ = frozenset({*STRUCTURES, "cas", "name", "entry", "by", "accepted", "rxn_file"})
 """Structures, names and methods are no prose; what is accepted has its reason already."""
@@ -108,6 +114,8 @@ def text_says_nothing(case: Case) -> Iterator[Fault]:
 
 def _vague_words(text: str) -> Iterator[tuple[str, _Vague]]:
     """Yield the vague words of a text that nothing in their clause tells."""
+    if not _LIKELY.search(text):
+        return
     for clause in re.split(r";|\.\s", _QUOTED.sub(" ", text)):
         for vague in _VAGUE:
             found = vague.word.search(clause)
@@ -125,16 +133,23 @@ def _is_told_elsewhere(case: Case, path: Path, vague: _Vague) -> bool:
 
 def _texts(part: object, path: Path = ()) -> Iterator[tuple[Path, str]]:
     """Yield every text of a record that is prose, with its path."""
-    if isinstance(part, BaseModel):
-        for name, info in type(part).model_fields.items():
-            key = info.alias or name
-            if key not in _NOT_READ:
-                yield from _texts(getattr(part, name), (*path, key))
+    if isinstance(part, str):
+        yield path, part
     elif isinstance(part, tuple):
         for index, item in enumerate(part):
             yield from _texts(item, (*path, index))
-    elif isinstance(part, str):
-        yield path, part
+    elif isinstance(part, BaseModel):
+        for name, key in _prose_of(type(part)):
+            value = getattr(part, name)
+            if value is not None:
+                yield from _texts(value, (*path, key))
+
+
+@cache
+def _prose_of(model: type[BaseModel]) -> tuple[tuple[str, str], ...]:
+    """Return attribute and key of the fields of a part of a record that are read."""
+    named = ((name, info.alias or name) for name, info in model.model_fields.items())
+    return tuple((name, key) for name, key in named if key not in _NOT_READ)
 
 
 WORD_CHECKS = (text_says_nothing,)

@@ -14,6 +14,8 @@ from builder.records.identifiers import (
     mend_identifier,
     mint_identifier,
 )
+from builder.records.reader import read_into
+from builder.records.settings import Settings
 
 EXAMPLES = ["NS4T9XQ2N", "NS3V6TDMZ", "NS7K3QFMC", "NS2H8WDRW", "NSC0W7N51", "NS9PZ4GK7"]
 
@@ -72,3 +74,13 @@ def test_the_check_character_of_a_person_is_that_of_the_standard() -> None:
     # The same page shows an X: 0000-0002-1694-233X (from memory).
     assert has_orcid_check_character("https://orcid.org/0000-0002-1694-233X")
     assert not has_orcid_check_character("https://orcid.org/0000-0002-1825-0079")
+
+
+def test_settings_refuse_an_orcid_with_a_slip() -> None:
+    text = (
+        "format: 1\ntitle: A book\npeople: [{code: b-1, shown_as: one, orcid: https://orcid.org/0000-0002-1825-0079}]"
+    )
+    settings, findings, _ = read_into(Settings, text, "handbook.yml")
+    assert settings is None
+    assert [(finding.rule, finding.place.line) for finding in findings] == [("value-not-permitted", 3)]
+    assert "check character" in findings[0].message
