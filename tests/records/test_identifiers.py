@@ -71,8 +71,9 @@ def test_the_alphabet_is_that_of_crockford() -> None:
 def test_the_check_character_of_a_person_is_that_of_the_standard() -> None:
     # ORCID, "Structure of the ORCID Identifier": 0000-0002-1825-0097, the fictional example person (from memory).
     assert has_orcid_check_character("https://orcid.org/0000-0002-1825-0097")
-    # The same page shows an X: 0000-0002-1694-233X (from memory).
-    assert has_orcid_check_character("https://orcid.org/0000-0002-1694-233X")
+    # The worked examples of ISO 7064, MOD 11-2: 079 has X, 0794 has 0 (from memory).
+    assert has_orcid_check_character("https://orcid.org/079X")
+    assert has_orcid_check_character("https://orcid.org/07940")
     assert not has_orcid_check_character("https://orcid.org/0000-0002-1825-0079")
 
 
