@@ -22,7 +22,7 @@ from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
 from builder.records.model import Record
-from builder.records.reader import MAX_BYTES, Reading, read_record, read_settings
+from builder.records.reader import MAX_BYTES, Reading, gaps_as_one, read_record, read_settings
 from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.rule import Fault
@@ -331,7 +331,7 @@ def examine(
     rxn: content of the RXN file that the record names. keep: what to keep of its case.
     """
     if reading.record is None:
-        return Examined(reading, reading.findings)
+        return Examined(reading, gaps_as_one(reading.findings))
     case = open_case(reading.record, reading.file, settings, today, rxn)
     checked = check_record(case, reading.places)
     found = (*reading.findings, *checked.findings)

@@ -1,7 +1,7 @@
 """A record file -> Record, with the place of every value and every fault of the file at once."""
 
 import re
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from difflib import get_close_matches
 from functools import cache
@@ -22,6 +22,7 @@ from builder.rule import Path as ValuePath
 __all__ = [
     "MAX_BYTES",
     "Reading",
+    "gaps_as_one",
     "read_bytes",
     "read_file_into",
     "read_into",
@@ -100,7 +101,7 @@ def read_values(model: type[Model], plainly: Plainly) -> tuple[Model | None, tup
     elif plainly.value is not None:
         fault = Fault(at=(), message="the file holds no keys", mend="write lines like title: …")
         findings.append(reading_rule("value-wrong-type").finding(fault, plainly.places.of(())))
-    kept = _gaps_as_one(sorted(_one_per_place(findings), key=lambda finding: finding.sort_key))
+    kept = tuple(sorted(_one_per_place(findings), key=lambda finding: finding.sort_key))
     return (None if any(f.level is Level.ERROR for f in kept) else made), kept, plainly.places
 
 
@@ -156,7 +157,7 @@ def _one_per_place(findings: list[Finding]) -> Iterator[Finding]:
 _GAP_RULE = "gap-left-open"
 
 
-def _gaps_as_one(findings: list[Finding]) -> tuple[Finding, ...]:
+def gaps_as_one(findings: Sequence[Finding]) -> tuple[Finding, ...]:
     """Return the findings with all gaps of a skeleton told at the first: a fresh one has a score of them."""
     gaps = [finding for finding in findings if finding.rule == _GAP_RULE]
     if len(gaps) < 2:

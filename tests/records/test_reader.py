@@ -10,7 +10,7 @@ from pydantic import AfterValidator, BaseModel, BeforeValidator
 from builder.finding import Finding, Level
 from builder.records.fields import Line
 from builder.records.model import Record
-from builder.records.reader import Reading, read_bytes, read_record, read_settings
+from builder.records.reader import Reading, gaps_as_one, read_bytes, read_record, read_settings
 from builder.records.settings import Settings
 from builder.records.specimen import outcome_example, specimen_text, with_example
 from builder.records.yaml_text import read_plain
@@ -252,16 +252,18 @@ def test_a_comment_set_apart_is_one(comment: str) -> None:
     assert _read(with_example(f"title: Azide {comment}")).findings == ()
 
 
-def test_one_finding_tells_every_gap_and_nothing_else_stands_on_one() -> None:
+def test_every_gap_is_found_in_its_place_and_all_are_told_at_once() -> None:
     text = with_example(
         "title: TO FILL IN\nnotebook: 'TO FILL IN'\nsolvent: TO FILL IN\nevidence: [TO FILL IN]\n"
         "stages: [{temperature: TO FILL IN, time: 16, vessel: TO FILL IN (which)}]"
     )
-    found = {finding.rule: finding for finding in _read(text).findings}
-    assert sorted(found) == ["gap-left-open", "quantity-without-unit"]
+    found = _read(text).findings
+    assert sorted(finding.rule for finding in found) == ["gap-left-open"] * 6 + ["quantity-without-unit"]
+    told = {finding.rule: finding for finding in gaps_as_one(found)}
+    assert sorted(told) == ["gap-left-open", "quantity-without-unit"]
     lines = [number for number, line in enumerate(text.splitlines(), start=1) if "TO FILL IN" in line]
-    gap = found["gap-left-open"]
-    assert gap.message.startswith("6 values are still to fill in, on lines ")
+    gap = told["gap-left-open"]
+    assert gap.message == f"6 values are still to fill in, on lines {lines[0]} to {lines[-1]}"
     assert gap.data == {"lines": lines}
     assert gap.place.line == lines[0]
 
