@@ -220,6 +220,7 @@ def _typed_key(substrate: Substrate) -> str:
         _outcome("{er: '98:2', of: A, by: chiral HPLC}", _with_word("mixture", "CCC(C)N=[N+]=[N-]")),
         _CHIRAL.replace("CC[C@H](C)Br", "CCC(C)Br").replace("single enantiomer", "mixture"),
         _outcome("{er: '98:2', of: A, by: chiral HPLC}", _with_word("unknown enantiomer", "CCC(C)N=[N+]=[N-]")),
+        _outcome("{ee: -96 %, of: A, by: chiral HPLC}"),
     ),
     silent_on=(
         _outcome("{ee: 96 %, of: A, by: chiral HPLC}"),
@@ -231,9 +232,13 @@ def excess_does_not_name_its_isomer(case: Case) -> Iterator[Fault]:
 
     96 % ee of which enantiomer? Without it neither inversion nor retention can be told. Where it is honestly not known,
     `stereo: unknown enantiomer` or `not determined` says so, and a remark asks for what would tell the isomers apart,
-    the order of the peaks.
+    the order of the peaks. A negative ee speaks of the mirror image of what is drawn.
     """
     for each in _spoken_of(case):
+        if each.is_mirrored:
+            message = f"a negative ee says that the major isomer is the mirror image of the drawing of {each.name}"
+            yield Fault(at=each.at, message=message, mend="draw the major isomer, and write the ee without its sign")
+            continue
         if each.structure is None or not each.structure.stereocentres.unspecified:
             continue
         is_unknown = each.stereo in _UNNAMED
@@ -253,6 +258,7 @@ def excess_does_not_name_its_isomer(case: Case) -> Iterator[Fault]:
 class _SpokenOf:
     """What an excess speaks of: where the excess stands, and name, stereo word and structure of the compound.
 
+    is_mirrored: the number is negative, so that the mirror image of the drawing is the major isomer.
     is_noted: a note may name the major isomer by other means; a substrate has no line that could carry one.
     """
 
@@ -260,6 +266,7 @@ class _SpokenOf:
     name: str
     stereo: StereoKind | None
     structure: Structure | None
+    is_mirrored: bool
     is_noted: bool
 
 
@@ -273,11 +280,17 @@ def _spoken_of(case: Case) -> Iterator[_SpokenOf]:
                 path = ("outcome", "products", positions[label])
                 stereo = case.record.outcome.products[positions[label]].stereo
                 at: Path = ("outcome", "measured", index, line.what)
-                yield _SpokenOf(at, f"product {label}", stereo, case.structures.get(path), line.note is not None)
+                structure, is_noted = case.structures.get(path), line.note is not None
+                yield _SpokenOf(at, f"product {label}", stereo, structure, _is_negative(line.ee), is_noted)
     substrate = case.record.substrate
     if _is_excess(substrate.ee, substrate.er, None):
         at = ("substrate", _typed_key(substrate))
-        yield _SpokenOf(at, substrate.name, substrate.stereo, case.structures.get(("substrate",)), is_noted=True)
+        structure = case.structures.get(("substrate",))
+        yield _SpokenOf(at, substrate.name, substrate.stereo, structure, _is_negative(substrate.ee), is_noted=True)
+
+
+def _is_negative(ee: Percent | None) -> bool:
+    return ee is not None and ee.magnitude < -RACEMIC_BELOW
 
 
 def _is_excess(ee: Percent | None, er: Ratio | None, dr: Ratio | None) -> bool:
