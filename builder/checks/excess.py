@@ -51,9 +51,29 @@ def _excesses(case: Case) -> Iterator[tuple[Path, Measurement, Span]]:
 
 
 @rule(
+    id="ee-above-100",
+    title="An ee above 100 %",
+    source="iupac-gold",
+    fires_on=(_outcome("{ee: 104 %, of: A, by: chiral HPLC}").replace("ee: 97 %", "dr: '98:2'"),),
+    silent_on=(_outcome("{ee: 96 %, of: A, by: chiral HPLC}"),),
+)
+def ee_is_above_100(case: Case) -> Iterator[Fault]:
+    """An ee lies between -100 and 100 %.
+
+    It is a difference of two fractions that add up to one; more is a slip of the keyboard.
+    """
+    measured = enumerate(case.record.outcome.measured)
+    typed: list[tuple[Path, Percent | None]] = [(("outcome", "measured", i, "ee"), line.ee) for i, line in measured]
+    for at, ee in (*typed, (("substrate", "ee"), case.record.substrate.ee)):
+        if ee is not None and abs(ee.magnitude) > 100.0:
+            yield Fault(at=at, message=f"an ee of {ee}", mend="correct the number")
+
+
+@rule(
     id="ee-above-substrate",
     title="The ee rose on the way",
     source="common-practice",
+    needs=("ee-above-100",),
     fires_on=(
         _outcome("{ee: 99.5 %, of: A, by: chiral HPLC}"),
         _outcome("{ee: '> 99 %', of: A, by: chiral HPLC}").replace("ee: 97 %", "er: '97.5:2.5'"),
@@ -157,7 +177,7 @@ def _has_chiral_help(case: Case) -> bool:
     source="iupac-gold",
     needs=(
         *("structure-unreadable", "label-unknown", "stereo-contradicts-structure"),
-        *("ee-without-chirality", "ee-from-racemate"),
+        *("ee-above-100", "ee-without-chirality", "ee-from-racemate"),
     ),
     fires_on=(
         _outcome("{ee: 96 %, of: A, by: chiral HPLC}", _with_word("racemate")),
@@ -303,6 +323,7 @@ def _is_excess(ee: Percent | None, er: Ratio | None, dr: Ratio | None) -> bool:
     title="A purity of isomers without its limit of detection",
     level=Level.QUERY,
     source="common-practice",
+    needs=("ee-above-100",),
     fires_on=(
         _outcome("{er: '100:0', of: A, by: chiral HPLC}"),
         _outcome("{ee: 100 %, of: A, by: chiral HPLC}").replace("ee: 97 %", "ee: '> 99 %'"),
@@ -328,7 +349,7 @@ def excess_has_no_limit(case: Case) -> Iterator[Fault]:
         (("substrate", key), substrate.ee if key == "ee" else None, ratio) for key, ratio in _of_substrate(substrate)
     ]
     for at, ee, ratio in lines:
-        if ee is not None and not ee.is_limit and abs(ee.magnitude) >= 100.0:
+        if ee is not None and not ee.is_limit and abs(ee.magnitude) == 100.0:
             yield Fault(
                 at=at, message=f"{ee} leaves nothing undetected", mend="write '> 99 %', with the limit you have"
             )
@@ -348,6 +369,7 @@ def _of_substrate(substrate: Substrate) -> Iterator[tuple[str, Ratio | None]]:
 
 
 EXCESS_CHECKS = (
+    ee_is_above_100,
     ee_is_above_substrate,
     ee_and_er_disagree,
     ee_comes_from_a_racemate,
