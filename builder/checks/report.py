@@ -88,7 +88,10 @@ def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
 
 
 def summary(findings: Sequence[Finding], records: int) -> str:
-    """Return one line: how many records, how many open findings of each level; and one on what can be mended."""
+    """Return a line that says how many records and open findings of each level there are.
+
+    A line follows for each house rule not kept, and one on what can be mended.
+    """
     open_findings = [finding for finding in findings if finding.accepted is None]
     counts = [(level, sum(finding.level is level for finding in open_findings)) for level in Level]
     words = [f"{count} {_plural(level, count)}" for level, count in counts if count]
@@ -96,8 +99,23 @@ def summary(findings: Sequence[Finding], records: int) -> str:
     words += [f"{accepted} accepted"] if accepted else []
     checked = f"{records} record{'s' * (records != 1)} checked"
     sure = sum(finding.is_sure for finding in open_findings)
-    hint = f"\n{sure} of these can be mended: `handbook check --diff` shows how, --fix does it" if sure else ""
-    return f"{checked}: {', '.join(words) if words else 'nothing found'}{hint}"
+    mends = [f"{sure} of these can be mended: `handbook check --diff` shows how, --fix does it"] if sure else []
+    return "\n".join([f"{checked}: {', '.join(words) if words else 'nothing found'}", *_house_rules(findings), *mends])
+
+
+def _house_rules(findings: Iterable[Finding]) -> list[str]:
+    """Return a line for each house rule that was found not to be kept: how often, and how often that was accepted."""
+    found: dict[tuple[object, object], list[Finding]] = {}
+    for finding in findings:
+        if "house_rule" in finding.data:
+            found.setdefault((finding.data["house_rule"], finding.data["because"]), []).append(finding)
+    lines = []
+    for (rule, because), of_rule in found.items():
+        accepted = sum(finding.accepted is not None for finding in of_rule)
+        counts = [(len(of_rule) - accepted, "not kept"), (accepted, "set aside with a reason")]
+        said = ", ".join(f"{said} {count} time{'s' * (count != 1)}" for count, said in counts if count)
+        lines.append(f"house rule: {rule} – {because}: {said}")
+    return lines
 
 
 def _plural(level: Level, count: int) -> str:

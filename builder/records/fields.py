@@ -37,6 +37,7 @@ from builder.rule import Path
 
 __all__ = [
     "Amount",
+    "AmountOrMass",
     "CasNumber",
     "Concentration",
     "Count",
@@ -229,6 +230,15 @@ Strength = Annotated[
     _either(Dimension.CONCENTRATION, Dimension.FRACTION, "2.5 mol/L", "48 %"),
 ]
 """Of a solution: concentration, or percentage by mass."""
+
+
+def _amount_or_mass(value: object) -> Quantity:
+    return _first_that_reads(value, Dimension.AMOUNT, Dimension.MASS)
+
+
+AmountOrMass = Annotated[
+    Quantity, BeforeValidator(_amount_or_mass), _either(Dimension.AMOUNT, Dimension.MASS, "10 mmol", "5 g")
+]
 
 RateConstantValue = Annotated[
     Quantity,

@@ -22,6 +22,7 @@ from builder.rule import Path as ValuePath
 __all__ = [
     "MAX_BYTES",
     "Reading",
+    "key_paths",
     "read_bytes",
     "read_file_into",
     "read_into",
@@ -298,6 +299,18 @@ def _value_at(plain: Plain, path: ValuePath) -> Plain:
 @cache
 def _keys_of(model: type[BaseModel]) -> tuple[str, ...]:
     return tuple(field.alias or name for name, field in model.model_fields.items())
+
+
+@cache
+def key_paths(model: type[BaseModel]) -> frozenset[str]:
+    """Return every key of a model with the way to it, joined by dots: stages.atmosphere."""
+    below = {
+        f"{info.alias or name}.{path}"
+        for name, info in model.model_fields.items()
+        for part in _models_in(info.annotation)
+        for path in key_paths(part)
+    }
+    return frozenset({*_keys_of(model), *below})
 
 
 def _models_at(model: type[BaseModel], path: ValuePath) -> tuple[type[BaseModel], ...]:

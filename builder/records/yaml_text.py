@@ -37,6 +37,7 @@ _TEXT_KEYS = frozenset(
     {"add", "atmosphere", "basis", "because", "by", "cause", "end_point", "evidence", "finding", "form", "name"}
     | {"note", "notebook", "procedure", "scale_limit", "scope", "take_away", "title", "what", "work_up"}
     | {"code", "contact", "group", "house_rules", "licence", "notice", "shown_as"}
+    | {"banned_solvents", "instead", "required", "reviewers", "rule"}
 )
 """Of record and settings; a test holds them to the models, which the text is read without."""
 
