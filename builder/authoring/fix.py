@@ -5,7 +5,6 @@ edited stretches reads as before, digit for digit. All mends of a file are tried
 halves are, until those that do not hold are left out.
 """
 
-import os
 import re
 from bisect import bisect_right
 from collections import Counter
@@ -15,6 +14,7 @@ from difflib import unified_diff
 from functools import lru_cache
 from itertools import accumulate
 from pathlib import Path
+from stat import S_IMODE
 from typing import Any
 
 from builder.authoring.whole_file import written_whole
@@ -89,7 +89,7 @@ def write_mended(mended: Mended) -> bool:
     mode = mended.path.stat().st_mode
     with written_whole(mended.path) as file:
         file.write(mended.after)
-    os.chmod(mended.path, mode)  # noqa: PTH101
+    mended.path.chmod(S_IMODE(mode))
     return True
 
 
@@ -244,23 +244,22 @@ class _Trial:
         if any(rules_now[rule] > rules[rule] - mended for rule, mended in Counter(f.rule for f in chosen).items()):
             return False
         if leaves(was.value) == leaves(now.value):
-            return not self._new_errors_on({finding.place.line for finding in chosen}, found)
-        return not self._new_errors(found) and _untouched(was, self.text, edited.before) == _untouched(
+            return self._are_fewer(chosen, edited, found)
+        return not self._has_new_errors(found) and _untouched(was, self.text, edited.before) == _untouched(
             now, edited.text, edited.after
         )
 
-    def _new_errors_on(self, lines: set[int], found: Sequence[Finding]) -> bool:
-        """Say whether as many errors as before, or more, are on lines of which one was mended.
+    def _are_fewer(self, chosen: Sequence[Finding], edited: _Edited, found: Sequence[Finding]) -> bool:
+        """Say whether the errors that were mended are missing from the edited lines, and no other came there.
 
         Elsewhere an edit that changes no value can bring none: what is found there was hidden.
         """
-        was, now = (
-            Counter(each.place.line for each in findings if each.level is Level.ERROR and each.place.line in lines)
-            for findings in (self.findings, found)
-        )
-        return any(count >= was[line] for line, count in now.items())
+        mended = sum(finding.level is Level.ERROR for finding in chosen)
+        was = _errors_on(self.findings, self.text, edited.before)
+        still_there = [(start, end) for start, end in edited.after if start < end]
+        return _errors_on(found, edited.text, still_there) <= was - mended
 
-    def _new_errors(self, found: Sequence[Finding]) -> bool:
+    def _has_new_errors(self, found: Sequence[Finding]) -> bool:
         """Say whether there are more errors of a rule than there were.
 
         Where the record could not be read, its chemistry could not be checked, and what is found there is not new.
@@ -270,6 +269,13 @@ class _Trial:
         )
         could_be_read = not any(rule in _READING for rule in was)
         return any(count > was[rule] for rule, count in now.items() if could_be_read or rule in _READING)
+
+
+def _errors_on(findings: Iterable[Finding], text: str, edited: Sequence[Span]) -> int:
+    """Return how many errors stand on lines of which a stretch was edited."""
+    starts = _lines_of(text).starts
+    lines = {bisect_right(starts, start) for start, _ in edited}
+    return sum(each.level is Level.ERROR and each.place.line in lines for each in findings)
 
 
 def _plainly(text: str) -> Plainly:

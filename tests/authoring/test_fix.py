@@ -54,6 +54,7 @@ TRAPS = [
     ("title: azide: the second try", "title: 'azide: the second try'"),
     ("title: 42", "title: '42'"),
     ("title: one\ntitle: one", "title: one"),
+    ("title: one\ntitle: one\nstatus: nonsense", "title: one\nstatus: nonsense"),
     (f"{SUBSTRATE}\n  name: 2-bromobutane", SUBSTRATE),
     (f"{SUBSTRATE}\n  name: 2-bromobutane  # again", f"{SUBSTRATE}\n  # also typed: name: 2-bromobutane  # again"),
     (
@@ -220,6 +221,34 @@ def test_whatever_is_mended_all_else_stays(noted: tuple[str, list[str]], is_offe
     if applied and {each.rule for each in applied} <= {"smiles-unquoted", "yaml-unreadable", "number-altered"}:
         before, now = (read_plain(each.lstrip("\ufeff").replace("\r\n", "\n"), "") for each in (text, after))
         assert leaves(before.value) == leaves(now.value)
+
+
+ENTRIES = sorted((Path(__file__).parents[2] / "entries").rglob("NS*.yml"))[::4]
+SLIPS = {
+    # what a writer does to a sound record: what is sought in it, what is put there
+    "SMILES without quotes": (r"smiles: '(\[[^']*)'", r"smiles: \1"),
+    "line twice": (r"(?m)^(title: .*\n)", r"\1\1"),
+    "nested line twice": (r"(?m)^(    atmosphere: .*\n)", r"\1\1"),
+    "key mistyped": ("    measured: ", "    masured: "),
+    "no-break space in the margin": (r"\n  class:", "\n\u00a0\u00a0class:"),
+    "no space behind the colon": (r"\n  class: ", r"\n  class:"),
+    "decimal comma": (r"mass: (\d+)\.(\d{1,2}) g\n", r"mass: \1,\2 g\n"),
+    "date with dots": (r"date: (\d{4})-(\d\d)-(1[3-9]|[23]\d)", r"date: \3.\2.\1"),
+}
+
+
+@pytest.mark.parametrize("end", ["\n", "\r\n"], ids=["LF", "CRLF"])
+@pytest.mark.parametrize("slip", SLIPS)
+def test_a_slip_in_an_entry_of_the_book_is_mended_to_the_byte(slip: str, end: str) -> None:
+    sought, put = SLIPS[slip]
+    spoiled = 0
+    for path in ENTRIES:
+        sound = path.read_text("utf-8")
+        text = re.sub(sought, put, sound).replace("\n", end)
+        after, _ = mend(text, _look, _is_sure)
+        assert after == sound.replace("\n", end), path.name
+        spoiled += re.search(sought, sound) is not None
+    assert spoiled >= 5
 
 
 # --- files of a book ------------------------------------------------------------------------------------------
