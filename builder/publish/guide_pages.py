@@ -58,9 +58,9 @@ def house_rule_row(line: str | HouseRule) -> HouseRuleRow:
     """Return what the page says of a house rule; a sentence stands as it is."""
     if isinstance(line, str):
         return HouseRuleRow(line, "", "")
-    since = f", for experiments from {line.since}" if line.since else ""
-    answer = " unless a record accepts it with a reason" if line.weight is Level.QUERY else ""
-    how = f"checked: {line.level}{answer}{since}" if line.demand else ""
+    since = f" from {line.since} on" if line.since else ""
+    answer = "may be set aside with a reason" if line.weight is Level.QUERY else "without exception"
+    how = f"checked{since}, {answer}" if line.demand else ""
     return HouseRuleRow(capital(line.statement), line.because, how)
 
 

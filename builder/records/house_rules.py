@@ -11,7 +11,7 @@ A line of text is shown only. A rule with one demand is checked, and always says
 import re
 from typing import Annotated, Literal, Self
 
-from pydantic import Discriminator, Field, Tag, model_validator
+from pydantic import AfterValidator, Discriminator, Field, Tag, WithJsonSchema, model_validator
 
 from builder.finding import Level
 from builder.records.fields import AmountOrMass, Count, Date, Flag, Line, OneOrMany, PersonCode, Shape, faulty
@@ -29,6 +29,15 @@ Likeness = Annotated[
     ),
 ]
 """A text in which # stands for any whole number and * for any text."""
+
+
+def _agreed(value: bool) -> bool:
+    if not value:
+        raise faulty("value-not-permitted", "false demands nothing", "write true, or take the rule out")
+    return value
+
+
+Agreed = Annotated[Flag, AfterValidator(_agreed), WithJsonSchema({"const": True})]
 
 DEMANDS = (
     "banned_solvents",
@@ -73,9 +82,9 @@ class HouseRule(Part):
     title_at_most: Count | None = None
     notebook_like: Likeness | None = None
     codes_like: Likeness | None = None
-    codes_listed: Flag | None = None
+    codes_listed: Agreed | None = None
     reviewers: OneOrMany[PersonCode] | None = None
-    reviewed_by_another: Flag | None = None
+    reviewed_by_another: Agreed | None = None
     because: Annotated[Line, Field(max_length=300)]
     instead: Annotated[Line, Field(max_length=300)] | None = None
     level: Literal["error", "query"] = "query"
@@ -100,7 +109,7 @@ class HouseRule(Part):
         return next(iter(self._demands()), "")
 
     def _demands(self) -> list[str]:
-        return [demand for demand in DEMANDS if getattr(self, demand) not in {None, False}]
+        return [demand for demand in DEMANDS if getattr(self, demand) is not None]
 
     @property
     def weight(self) -> Level:

@@ -1,7 +1,9 @@
 """House rules: how they are written, what they find in a record, and where a broken or accepted one is named."""
 
+import json
 from pathlib import Path
 
+import jsonschema
 import pytest
 
 from builder.book import open_book
@@ -12,8 +14,10 @@ from builder.checks.run import check_settings
 from builder.finding import Finding, Level
 from builder.records.house_rules import HouseRule, is_like
 from builder.records.reader import read_into
+from builder.records.schema import settings_schema
 from builder.records.settings import Settings
 from builder.records.specimen import SPECIMEN_FILE, outcome_example, with_example
+from builder.records.yaml_text import read_plain
 from tests.specimens import TODAY, TOOL, examine_text, judge
 
 
@@ -33,6 +37,12 @@ def _found(rules: str, example: str, more: str = "") -> list[Finding]:
 DMF = "solvent: [{name: DMF, volume: 20 mL}]\nstages: [{temperature: 60 °C, time: 16 h}]"
 NO_DMF = "  - banned_solvents: [dimethylformamide]\n    because: toxic for reproduction\n"
 FAILED = "outcome:\n  result: [no reaction]\n  sought: CCC(C)N=[N+]=[N-]\n  failure: {cause: cold}"
+
+
+def _plain(text: str) -> object:
+    """Return YAML as a JSON Schema sees it."""
+    value = read_plain(text, "").value
+    return json.loads(json.dumps(value, default=float))
 
 
 def test_a_finding_names_the_rule_and_its_reason() -> None:
@@ -185,7 +195,8 @@ def test_what_nobody_knows_is_found_in_the_settings(rule: str, message: str, fix
 REFUSED = [
     ("{banned_solvents: DMF}", "key-missing", "because is missing"),
     ("{banned_solvents: DMF, measured: internal, because: x}", "house-rule-not-one", "one demand a rule; this one has"),
-    ("{codes_listed: false, because: x}", "house-rule-not-one", "this house rule demands nothing"),
+    ("{because: x}", "house-rule-not-one", "this house rule demands nothing"),
+    ("{codes_listed: false, because: x}", "value-not-permitted", "false demands nothing"),
     ("{rule: x, of: azide salt, because: x}", "house-rule-not-one", "of goes with at_most"),
     ("{banned_solvent: DMF, because: x}", "key-unknown", 'did you mean "banned_solvents"?'),
     ("{at_most: lots, because: x}", "quantity-unreadable", '"lots"'),
@@ -205,6 +216,12 @@ def test_bad_rules_are_told_where_they_stand(rule: str, rule_id: str, message: s
     assert findings[0].place.line == 5
 
 
+@pytest.mark.parametrize("rule", [row[0] for row in REFUSED])
+def test_an_editor_refuses_them_by_the_schema(rule: str) -> None:
+    validator = jsonschema.Draft202012Validator(settings_schema())
+    assert not validator.is_valid({"format": 1, "title": "A book", "house_rules": [_plain(rule)]})
+
+
 STATEMENTS = [
     ("banned_solvents: [DMF, NMP, DMAc]", "no DMF, NMP or DMAc"),
     ("at_most: 10 mmol", "at most 10 mmol of substrate"),
@@ -219,8 +236,10 @@ STATEMENTS = [
 
 @pytest.mark.parametrize(("keys", "statement"), STATEMENTS, ids=[row[1] for row in STATEMENTS])
 def test_a_rule_says_itself_in_words(keys: str, statement: str) -> None:
-    ((_, rule),) = _settings(f"  - {keys}\n    because: agreed\n").checked_rules
+    text = f"  - {keys}\n    because: agreed\n"
+    ((_, rule),) = _settings(text).checked_rules
     assert rule.statement == statement
+    jsonschema.validate({"format": 1, "title": "A book", "house_rules": _plain(text)}, settings_schema())
 
 
 def test_settings_with_rules_can_be_remembered() -> None:

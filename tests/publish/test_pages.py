@@ -244,7 +244,7 @@ def test_house_rules_are_listed_with_their_reasons() -> None:
     items = [" ".join(re.sub("<[^>]+>", " ", item).split()) for item in re.findall("<li>.*?</li>", listed, re.DOTALL)]
     assert items == [
         "A failed run is entered like any other.",
-        "No HMPA or DMF – toxic checked: error, for experiments from 2026-04-01",
+        "No HMPA or DMF – toxic checked from 2026-04-01 on, without exception",
         "Four eyes – one overlooks",
-        "Temperature measured: internal – a bath says little checked: query unless a record accepts it with a reason",
+        "Temperature measured: internal – a bath says little checked, may be set aside with a reason",
     ]
