@@ -6,7 +6,8 @@ halves are, until those that do not hold are left out.
 """
 
 import re
-from bisect import bisect_right
+import sys
+from bisect import bisect_right, insort
 from collections import Counter
 from collections.abc import Callable, Collection, Iterable, Sequence
 from dataclasses import dataclass, replace
@@ -228,8 +229,9 @@ class _Trial:
         apart = []
         for finding in chosen:
             spans = [self._span(edit) for edit in exact_edits(finding, self.text)]
-            if spans and not any(start <= end_b and start_b <= end for start, end in spans for start_b, end_b in taken):
-                taken += spans
+            if spans and not any(_meets(span, taken) for span in spans):
+                for span in spans:
+                    insort(taken, span)
                 apart.append(finding)
         return apart
 
@@ -269,6 +271,13 @@ class _Trial:
         )
         could_be_read = not any(rule in _READING for rule in was)
         return any(count > was[rule] for rule, count in now.items() if could_be_read or rule in _READING)
+
+
+def _meets(span: Span, taken: Sequence[Span]) -> bool:
+    """Say whether a stretch overlaps or touches one of `taken`, which are sorted and apart."""
+    start, end = span
+    at = bisect_right(taken, (end, sys.maxsize))
+    return at > 0 and taken[at - 1][1] >= start
 
 
 def _errors_on(findings: Iterable[Finding], text: str, edited: Sequence[Span]) -> int:

@@ -109,6 +109,8 @@ def person_is_unknown(book: Gathering) -> Found:
     Asked only of books that list people; a code stands for a person in citations and reviews.
     """
     for member in book.members:
+        if any(each.demand == "codes_listed" for _, each in member.settings.checked_rules):
+            continue  # the house rule says it, with its own reason
         known = {person.code for person in member.settings.people}
         for path, code in person_codes(member.record) if known else ():
             if code not in known:

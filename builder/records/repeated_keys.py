@@ -1,6 +1,7 @@
 """A key that stands again, as edits of the file: taken out where it says the same, else kept as a comment."""
 
 import re
+from functools import lru_cache
 
 import yaml
 
@@ -27,7 +28,7 @@ def repeated_pair_edits(
         return ()
     if mapping.flow_style:
         return _out_of_braces(mended.text, key, value) if is_same else ()
-    lines = mended.text.split("\n")[first : last + 1]
+    lines = _lines(mended.text)[first : last + 1]
     if is_same and not any(map(_COMMENT.search, lines)):
         return (Edit(first + 1, 1, last + 2, 1, ""),)
     column = key.start_mark.column
@@ -37,6 +38,11 @@ def repeated_pair_edits(
         Edit(number + 1, margin + 1, number + 1, margin + 1, "# " if number > first else ALSO_TYPED)
         for number, margin in margins.items()
     )
+
+
+@lru_cache(maxsize=1)
+def _lines(text: str) -> list[str]:
+    return text.split("\n")
 
 
 def _out_of_braces(text: str, key: yaml.ScalarNode, value: yaml.Node) -> tuple[Edit, ...]:

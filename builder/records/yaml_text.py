@@ -314,10 +314,10 @@ class _Constructor:
             key_path = (*path, key)
             if key in made:
                 first, *_ = self.keys[key_path]
-                fault = Fault(at=(), message=f'"{key}" stands again; first on line {first}', mend="keep one of them")
+                is_same = leaves(made[key]) == leaves(self._read_aside(value_node, key_path))
+                mend = "take this one out, it says the same" if is_same else "keep one of them"
+                fault = Fault(at=(), message=f'"{key}" stands again; first on line {first}', mend=mend)
                 found = reading_rule("duplicate-key").finding(fault, Place(self.mended.file, *self._span(key_node)))
-                again = self._read_aside(value_node, key_path)
-                is_same = leaves(made[key]) == leaves(again)
                 edits = repeated_pair_edits(self.mended, node, key_node, value_node, is_same=is_same)
                 self.findings.append(replace(found, edits=edits, is_sure=is_same and bool(edits)))
                 continue

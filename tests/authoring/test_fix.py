@@ -136,6 +136,7 @@ HELD_BACK = [
     # mends that would do harm: the true key is there already, the number is none that fits, the value goes on
     "stages: [{temprature: 60 °C, temperature: 60 °C, time: 16 h}]",
     "revision: 0x1",
+    "status: cur\n  rrent",
     f"neat: true\nsovent:\n  - name: DMF\n    volume: 20 mL\n{SUBSTRATE}\n# without solvent",
     "title: 'open\nnotebook: 0042",
     outcome_example("{yield: 81 %, of: A, kind: isolated, kind: assay}"),
@@ -358,6 +359,13 @@ def test_a_fix_takes_the_quotes_of_what_it_replaces(fix: str, typed: str, put: s
     )
     (edit,) = exact_edits(finding, text)
     assert (edit.text, edit.column, edit.end_column) == (put, 6, 6 + len(typed))
+
+
+def test_a_hostile_file_does_not_take_long() -> None:
+    text = specimen_text() + "title: Azide displacement\n" * 4000 + "notebook: 0042\n" * 4000
+    after, applied = mend(text, _look, _is_mendable)
+    assert len(applied) >= 7000
+    assert len(_look(after)) < len(_look(text))
 
 
 def test_the_specimen_wants_no_mend() -> None:
