@@ -85,9 +85,12 @@ def scale_is_exceeded(case: Case) -> Iterator[Fault]:
         for path, name, found in _amounts(case, each.of, each.at_most):
             limit = each.at_most.magnitude
             if found > limit * (1 + TOLERANCE):
-                unit = "mmol" if each.at_most.dimension is Dimension.AMOUNT else "g"
-                shown = f"{found * (1000 if unit == 'mmol' else 1):.3g} {unit} of {name}"
-                yield _fault(each, path, shown, each.instead or f"run it at {each.at_most} or below")
+                yield _fault(
+                    each,
+                    path,
+                    f"{_in_unit_of(each.at_most, found)} of {name}",
+                    each.instead or f"run it at {each.at_most} or below",
+                )
 
 
 @rule(
@@ -390,6 +393,12 @@ def _amounts(case: Case, kinds: tuple[str, ...] | None, limit: Quantity) -> Iter
             found = substrate.amount_mol * (1.0 if is_amount else present.structure.mass)
         if found is not None:
             yield present.path, present.name, found
+
+
+def _in_unit_of(limit: Quantity, found: float) -> str:
+    """Return an amount, in the canonical unit, with three digits in the unit of a limit."""
+    rounded = float(f"{found / limit.magnitude * float(limit.number):.3g}")
+    return f"{rounded:,.10g} {limit.unit}"
 
 
 def _lacking(value: object, keys: list[str], path: Path) -> Iterator[Path]:

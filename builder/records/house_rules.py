@@ -39,21 +39,23 @@ def _agreed(value: bool) -> bool:
 
 Agreed = Annotated[Flag, AfterValidator(_agreed), WithJsonSchema({"const": True})]
 
-DEMANDS = (
-    "banned_solvents",
-    "at_most",
-    "yield_kinds",
-    "required",
-    "measured",
-    "title_like",
-    "title_at_most",
-    "notebook_like",
-    "codes_like",
-    "codes_listed",
-    "reviewers",
-    "reviewed_by_another",
-)
-"""What a house rule can demand, one in a rule."""
+_IN_WORDS = {
+    "banned_solvents": "no {either}",
+    "at_most": "at most {either} of {of}",
+    "yield_kinds": "a yield that is {either}",
+    "required": "{both} stated",
+    "measured": "temperature measured: {either}",
+    "title_like": "a title like “{either}”",
+    "title_at_most": "a title of at most {either} characters",
+    "notebook_like": "a notebook page like “{either}”",
+    "codes_like": "person codes like “{either}”",
+    "codes_listed": "every person code stands under people",
+    "reviewers": "reviewed by {either}",
+    "reviewed_by_another": "reviewed by somebody who did not run it",
+}
+"""What a house rule can demand, one in a rule, and how that is said where it has no words of its own."""
+
+DEMANDS = tuple(_IN_WORDS)
 
 
 class HouseRule(Part):
@@ -130,22 +132,6 @@ def is_like(text: str, likeness: str) -> bool:
     """Say whether a text is like 'BK#/#', where # stands for any whole number and * for any text."""
     parts = {"#": "[0-9]+", "*": ".*"}
     return re.fullmatch("".join(parts.get(sign) or re.escape(sign) for sign in likeness), text) is not None
-
-
-_IN_WORDS = {
-    "banned_solvents": "no {either}",
-    "at_most": "at most {either} of {of}",
-    "yield_kinds": "a yield that is {either}",
-    "required": "{both} stated",
-    "measured": "temperature measured: {either}",
-    "title_like": "a title like “{either}”",
-    "title_at_most": "a title of at most {either} characters",
-    "notebook_like": "a notebook page like “{either}”",
-    "codes_like": "person codes like “{either}”",
-    "codes_listed": "every person code stands under people",
-    "reviewers": "reviewed by {either}",
-    "reviewed_by_another": "reviewed by somebody who did not run it",
-}
 
 
 def _joined(value: object, word: str) -> str:

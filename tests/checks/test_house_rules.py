@@ -122,6 +122,7 @@ SCALES = [
     ("9.5 mmol", "organic azide", "", ["10 mmol of 2-azidobutane"]),
     ("0.9 g", "organic azide", "", ["0.991 g of 2-azidobutane"]),  # 10 mmol of 99.14 g/mol
     ("1.3 g", "", "", ["1.37 g of 2-bromobutane"]),  # 10 mmol of 137.02 g/mol
+    ("0.000004 kg", "", "", ["0.00137 kg of 2-bromobutane"]),
     ("20 mmol", "[azide salt, organic azide]", "", []),
 ]
 
