@@ -48,7 +48,7 @@ Span = tuple[int, int]
 class Mended:
     """A file with what was mended in it; the texts with their byte-order mark and line ends.
 
-    file: as findings show it. applied: places as they were before the first edit of their line.
+    file: as findings show it. applied: places in the text as it was when each was mended.
     """
 
     file: str

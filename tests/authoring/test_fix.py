@@ -12,16 +12,12 @@ from hypothesis import strategies as st
 from builder.authoring.fix import Mended, diff_of, exact_edits, mend, mended_files, write_mended
 from builder.book import open_book
 from builder.finding import Finding
-from builder.records.reader import read_bytes
 from builder.records.specimen import SPECIMEN_FILE, outcome_example, specimen_text, with_example
 from builder.records.yaml_text import leaves, read_plain
+from tests.slips import ENTRIES, SLIPS, Slip, look
 from tests.specimens import TODAY
 
 BAD = sorted((Path(__file__).parents[1] / "data" / "records" / "bad").rglob("*.yml"))
-
-
-def _look(text: str) -> tuple[Finding, ...]:
-    return read_bytes(text.encode(), SPECIMEN_FILE).findings
 
 
 def _is_sure(finding: Finding) -> bool:
@@ -95,7 +91,7 @@ TRAPS = [
 @pytest.mark.parametrize(("typed", "mended"), TRAPS, ids=[re.sub(r"\W+", "-", row[0])[-40:] for row in TRAPS])
 def test_what_can_be_meant_in_one_way_is_mended(typed: str, mended: str | None) -> None:
     text = with_example(typed)
-    after, applied = mend(text, _look, _is_sure)
+    after, applied = mend(text, look, _is_sure)
     assert after == (text if mended is None else with_example(mended))
     assert (applied == ()) == (mended is None)
 
@@ -122,8 +118,8 @@ OFFERED = [
 @pytest.mark.parametrize(("typed", "mended"), OFFERED, ids=[row[1][:40] for row in OFFERED])
 def test_what_is_only_likely_is_offered(typed: str, mended: str) -> None:
     text = with_example(typed)
-    assert mend(text, _look, _is_sure) == (text, ())
-    assert mend(text, _look, _is_mendable)[0] == _with(mended)
+    assert mend(text, look, _is_sure) == (text, ())
+    assert mend(text, look, _is_mendable)[0] == _with(mended)
 
 
 def _with(example: str) -> str:
@@ -146,20 +142,20 @@ HELD_BACK = [
 @pytest.mark.parametrize("typed", HELD_BACK)
 def test_a_mend_that_does_not_hold_is_not_made(typed: str) -> None:
     text = with_example(typed)
-    assert mend(text, _look, _is_mendable) == (text, ())
+    assert mend(text, look, _is_mendable) == (text, ())
 
 
 def test_one_mend_that_does_not_hold_keeps_back_no_other() -> None:
     typed = "notebook: 0042\nstages: [{temprature: 60 °C, temperature: 60 °C, time: 16 hours}]\ntitle: 42"
     mended = typed.replace("0042", "'0042'").replace("hours", "h").replace(" 42", " '42'")
-    after, applied = mend(with_example(typed), _look, _is_sure)
+    after, applied = mend(with_example(typed), look, _is_sure)
     assert after == with_example(mended)
     assert sorted(each.rule for each in applied) == ["number-altered", "quantity-unknown-unit", "value-wrong-type"]
 
 
 def test_a_mend_that_brings_another_to_light_is_followed_by_it() -> None:
     text = with_example(f"{SUBSTRATE}\n  ee: 99\n  ee: 99")
-    after, applied = mend(text, _look, _is_sure)
+    after, applied = mend(text, look, _is_sure)
     assert after == with_example(f"{SUBSTRATE}\n  ee: 99 %")
     assert [each.rule for each in applied].count("duplicate-key") == 1
 
@@ -212,8 +208,8 @@ def noted_records(draw: st.DrawFn) -> tuple[str, list[str]]:
 def test_whatever_is_mended_all_else_stays(noted: tuple[str, list[str]], is_offered: bool) -> None:
     text, notes = noted
     wanted = _is_mendable if is_offered else _is_sure
-    after, applied = mend(text, _look, wanted)
-    assert mend(after, _look, wanted) == (after, ()), "twice is not once"
+    after, applied = mend(text, look, wanted)
+    assert mend(after, look, wanted) == (after, ()), "twice is not once"
     assert [note for note in notes if after.count(note) != 1] == []
     assert after.startswith("\ufeff") == text.startswith("\ufeff")
     if "\r\n" in text:
@@ -224,32 +220,14 @@ def test_whatever_is_mended_all_else_stays(noted: tuple[str, list[str]], is_offe
         assert leaves(before.value) == leaves(now.value)
 
 
-ENTRIES = sorted((Path(__file__).parents[2] / "entries").rglob("NS*.yml"))[::4]
-SLIPS = {
-    # what a writer does to a sound record: what is sought in it, what is put there
-    "SMILES without quotes": (r"smiles: '(\[[^']*)'", r"smiles: \1"),
-    "line twice": (r"(?m)^(title: .*\n)", r"\1\1"),
-    "nested line twice": (r"(?m)^(    atmosphere: .*\n)", r"\1\1"),
-    "key mistyped": ("    measured: ", "    masured: "),
-    "no-break space in the margin": (r"\n  class:", "\n\u00a0\u00a0class:"),
-    "no space behind the colon": (r"\n  class: ", r"\n  class:"),
-    "decimal comma": (r"mass: (\d+)\.(\d{1,2}) g\n", r"mass: \1,\2 g\n"),
-    "date with dots": (r"date: (\d{4})-(\d\d)-(1[3-9]|[23]\d)", r"date: \3.\2.\1"),
-}
-
-
 @pytest.mark.parametrize("end", ["\n", "\r\n"], ids=["LF", "CRLF"])
-@pytest.mark.parametrize("slip", SLIPS)
-def test_a_slip_in_an_entry_of_the_book_is_mended_to_the_byte(slip: str, end: str) -> None:
-    sought, put = SLIPS[slip]
-    spoiled = 0
-    for path in ENTRIES:
-        sound = path.read_text("utf-8")
-        text = re.sub(sought, put, sound).replace("\n", end)
-        after, _ = mend(text, _look, _is_sure)
-        assert after == sound.replace("\n", end), path.name
-        spoiled += re.search(sought, sound) is not None
-    assert spoiled >= 5
+@pytest.mark.parametrize("slip", SLIPS, ids=lambda slip: slip.name)
+def test_a_slip_in_an_entry_of_the_book_is_mended_to_the_byte(slip: Slip, end: str) -> None:
+    sound = [text for path in ENTRIES if slip.spoil(text := path.read_text("utf-8")) != text][:25]
+    assert sound
+    for text in sound:
+        after, _ = mend(slip.spoil(text).replace("\n", end), look, _is_sure)
+        assert after == text.replace("\n", end)
 
 
 # --- files of a book ------------------------------------------------------------------------------------------
@@ -344,7 +322,7 @@ WRITTEN = [
 
 @pytest.mark.parametrize(("fix", "typed", "put"), WRITTEN)
 def test_a_fix_takes_the_quotes_of_what_it_replaces(fix: str, typed: str, put: str) -> None:
-    found = _look(with_example("notebook: 0042"))[0]
+    found = look(with_example("notebook: 0042"))[0]
     text = f"key: {typed}\n"
     place = type(found.place)(SPECIMEN_FILE, 1, 6, 6 + len(typed))
     finding = Finding(
@@ -363,10 +341,10 @@ def test_a_fix_takes_the_quotes_of_what_it_replaces(fix: str, typed: str, put: s
 
 def test_a_hostile_file_does_not_take_long() -> None:
     text = specimen_text() + "title: Azide displacement\n" * 4000 + "notebook: 0042\n" * 4000
-    after, applied = mend(text, _look, _is_mendable)
+    after, applied = mend(text, look, _is_mendable)
     assert len(applied) >= 7000
-    assert len(_look(after)) < len(_look(text))
+    assert len(look(after)) < len(look(text))
 
 
 def test_the_specimen_wants_no_mend() -> None:
-    assert mend(specimen_text(), _look, _is_mendable) == (specimen_text(), ())
+    assert mend(specimen_text(), look, _is_mendable) == (specimen_text(), ())
