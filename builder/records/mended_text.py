@@ -6,7 +6,7 @@ Reading goes on with the mended text, so that one run reports everything; places
 import re
 from dataclasses import dataclass
 from itertools import takewhile
-from typing import Self
+from typing import NamedTuple, Self
 
 import yaml
 
@@ -16,8 +16,15 @@ from builder.rule import Fault
 
 __all__ = ["STRUCTURE_KEYS", "GluedPair", "MendedText", "Span", "quoted"]
 
-Span = tuple[int, int, int, bool]
-"""What a Place holds beside its file; a record has a hundred and more, few of which anyone asks for."""
+
+class Span(NamedTuple):
+    """What a Place holds beside its file; a record has a hundred and more, few of which anyone asks for."""
+
+    line: int
+    column: int
+    end_column: int
+    goes_on: bool = False
+
 
 _LONGEST_LINE = 8_000
 """Twice the longest text a record may hold; beyond it no slip of a writer is looked for."""
@@ -106,10 +113,10 @@ class MendedText:
     def span(self, line: int, column: int, end_column: int, *, goes_on: bool = False) -> Span:
         """Return that place without its file."""
         if not self._shifts:
-            return line + 1, column + 1, end_column + 1, goes_on
+            return Span(line + 1, column + 1, end_column + 1, goes_on)
         shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
         end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
-        return line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1, goes_on
+        return Span(line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1, goes_on)
 
     def mend_margins(self) -> list[Finding]:
         """Put plain spaces where others indent a key; YAML would take those for a part of its name."""

@@ -53,6 +53,9 @@ _WORDS = {"": None, "null": None, "Null": None, "NULL": None, "~": None}
 _BOOLEANS = {"true": True, "True": True, "TRUE": True, "false": False, "False": False, "FALSE": False}
 
 
+_FIRST_CHARACTER = Span(1, 1, 2)
+
+
 @dataclass(frozen=True, slots=True)
 class Places:
     """Where every key and value of one file stands; spans, of which a place is made when it is asked for.
@@ -63,7 +66,7 @@ class Places:
     file: str
     values: Mapping[ValuePath, Span] = field(default_factory=dict)
     keys: Mapping[ValuePath, Span] = field(default_factory=dict)
-    whole: Span = (1, 1, 2)
+    whole: Span = _FIRST_CHARACTER
 
     def of(self, path: ValuePath, *, on_key: bool = False) -> Place:
         """Return the place of the value at `path`, or of the key of its nearest existing parent.
@@ -349,7 +352,8 @@ class _Constructor:
 
     def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
         begun, end = self.values[(*path, last)], self._span(rest)
-        span = (*begun[:2], end[2], begun[3]) if end[0] == begun[0] else (*begun[:3], True)
+        on_one_line = end.line == begun.line
+        span = begun._replace(end_column=end.end_column) if on_one_line else begun._replace(goes_on=True)
         self.values[(*path, last)] = span
         place = Place(self.mended.file, *span)
         space = self.text[rest.start_mark.index - 1]
