@@ -26,6 +26,7 @@ from builder.records.reader import read_bytes
 from builder.records.rules import READING_RULES
 from builder.records.settings import SETTINGS_FILE
 from builder.records.yaml_text import Plainly, leaves, read_plain
+from builder.records.yaml_writing import is_bare
 
 __all__ = ["Mended", "diff_of", "exact_edits", "mend", "mended_files", "with_exact_edits", "write_mended"]
 
@@ -39,7 +40,8 @@ _BOM = "\ufeff"
 _LINE = re.compile(r"[^\r\n]*(?:\r\n|\r|\n|$)")
 _READING = frozenset(rule.id for rule in READING_RULES)
 _NUMBER_OR_FLAG = re.compile(r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?|true|false")
-_PLAIN_TEXT = re.compile(r"(?![-?:] )[^\s\[\]{},&*!|>'\"%@`#=~][^\[\]{},\n]*")
+_SIGN = re.compile(r"^(?:[<≤≥] ?)?[-+−]?(?=\d)")
+_PAIR = re.compile(r"[a-z_]+: .*")
 
 Span = tuple[int, int]
 
@@ -326,5 +328,4 @@ def _as_written(fix: str, written: str, *, before: str) -> str:
     key = re.search(r"(\w+): *$", before)
     if fix.startswith("[") and not (key and key[1] in STRUCTURE_KEYS):
         return fix
-    is_plain = _PLAIN_TEXT.fullmatch(fix) and not re.search(r": |:$| #", fix)
-    return fix if is_plain or re.fullmatch(r"[a-z_]+: .*", fix) else quoted(fix)
+    return fix if _PAIR.fullmatch(fix) or is_bare(_SIGN.sub("", fix), is_in_flow=True) else quoted(fix)

@@ -314,6 +314,7 @@ WRITTEN = [
     ("2", "'2.0'", "2"),
     ("N,N-dimethylformamide", "N,N-dimethylformamid", "'N,N-dimethylformamide'"),
     ("< 2 %", "<2 pct", "< 2 %"),
+    ("-78 °C", "-78 degC", "-78 °C"),
     ("> 2 %", "'>2 pct'", "'> 2 %'"),
     ("[primary, allylic]", "primary", "[primary, allylic]"),
     ("it's", '"its"', '"it\'s"'),
