@@ -22,9 +22,18 @@ from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
 from builder.records.model import Record
-from builder.records.reader import MAX_BYTES, Reading, gaps_as_one, read_record, read_settings
+from builder.records.reader import (
+    MAX_BYTES,
+    Reading,
+    gaps_as_one,
+    read_bytes,
+    read_record,
+    read_settings,
+    read_settings_bytes,
+)
 from builder.records.rules import reading_rule
 from builder.records.settings import SETTINGS_FILE, Settings
+from builder.records.yaml_text import Places
 from builder.rule import Fault
 
 __all__ = [
@@ -34,6 +43,7 @@ __all__ = [
     "Memory",
     "Verdict",
     "examine",
+    "examined_again",
     "is_aside",
     "judge",
     "open_book",
@@ -174,7 +184,10 @@ class _Desk(Generic[Kept]):
 
     def examine(self, path: Path) -> Examined[Kept]:
         """Read and check one file on its own."""
-        reading = read_record(path, self.name(path))
+        return self.examine_reading(read_record(path, self.name(path)), path)
+
+    def examine_reading(self, reading: Reading, path: Path) -> Examined[Kept]:
+        """Check what was read as the file at `path`."""
         named = reading.record.rxn_file if reading.record else None
         rxn = _attachment(path.parent / named.path, self.folder) if named else None
         return examine(reading, self.settings, self.today, rxn, keep=self.keep)
@@ -338,6 +351,22 @@ def examine(
     return Examined(reading, found, checked.unasked, is_covered(case), keep(case))
 
 
+def examined_again(book: Book[Any], file: str, data: bytes) -> tuple[Finding, ...]:
+    """Return what reading and checks would find, were `data` what a file of the book holds; the other files apart.
+
+    file: as findings show it.
+    """
+    path = book.folder.parent / file
+    if path == book.folder / SETTINGS_FILE:
+        return tuple(_checked_settings(*read_settings_bytes(data, file), book.folder)[1])
+    desk = _Desk(book.folder, book.settings, book.today, _nothing)
+    return desk.examine_reading(read_bytes(data, file), path).findings
+
+
+def _nothing(_: Case) -> None:
+    """Keep nothing of a case."""
+
+
 def judge(examined: Sequence[Examined[Any]], settings: Settings) -> dict[str, tuple[Finding, ...]]:
     """Return the final findings by file: each record's own, those against the others, acceptances applied."""
     readings = [each.reading for each in examined]
@@ -389,9 +418,16 @@ def _open_settings(folder: Path) -> tuple[Settings, list[Finding]]:
     if not path.is_file():
         fault = Fault(at=(), message=f"the book has no {SETTINGS_FILE}", mend="start it with format: 1 and title: …")
         return plain, [reading_rule("key-missing").finding(fault, Place(_shown(path, folder), 1, 1, 2))]
-    settings, findings, places = read_settings(path, _shown(path, folder))
+    settings, findings = _checked_settings(*read_settings(path, _shown(path, folder)), folder)
+    return settings or plain, findings
+
+
+def _checked_settings(
+    settings: Settings | None, findings: Sequence[Finding], places: Places, folder: Path
+) -> tuple[Settings | None, list[Finding]]:
+    """Return settings as read with the findings of their own checks."""
     if settings is None:
-        return plain, list(findings)
+        return None, list(findings)
     has_logo = settings.logo is None or _is_inside(folder / settings.logo, folder)
     return settings, [*findings, *check_settings(House(settings, tool_version(), has_logo=has_logo), places)]
 

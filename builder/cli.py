@@ -17,6 +17,7 @@ from typing import Any, NoReturn
 import click
 
 from builder.authoring.column_map import ColumnMap, first_map
+from builder.authoring.fix import Mended, diff_of, mended_files, with_exact_edits, write_mended
 from builder.authoring.import_report import as_plain, cell_table, import_text
 from builder.authoring.import_sheet import NoKeyError, State, open_sheet, plan_import, write_import
 from builder.authoring.new import write_new_record
@@ -117,27 +118,70 @@ def handbook() -> None:
     type=click.Choice([level.value for level in Level]),
     help="The lightest level to show.  [default: query; remark for FILES and JSON]",
 )
-def check(files: tuple[Path, ...], book: Path, as_json: bool, fail_on: str, show: str | None) -> None:
+@click.option(
+    "--fix",
+    is_flag=True,
+    help="Mend what can only be meant in one way: quotes, spaces, spelled-out units, mistyped keys, a key repeated.",
+)
+@click.option(
+    "--offered",
+    multiple=True,
+    metavar="RULE",
+    help="With --fix or --diff: mend also what this rule only offers, such as the nearest known name. Repeat it.",
+)
+@click.option("--diff", is_flag=True, help="Show what --fix would change, and write nothing; with --fix, what it did.")
+def check(
+    *,
+    files: tuple[Path, ...],
+    book: Path,
+    as_json: bool,
+    fail_on: str,
+    show: str | None,
+    fix: bool,
+    offered: tuple[str, ...],
+    diff: bool,
+) -> None:
     """Check every record of the book, or show the findings of FILES only.
 
-    Accepted queries are shown with the remarks.
+    Accepted queries are shown with the remarks. --fix changes what it mends and nothing else in a file: comments,
+    order, quotes and line ends stay. --diff ends with 1 if there is something to mend.
 
     \b
     Example:
       handbook check
       handbook check entries/azides/NS4T9XQ2N.yml --fail-on query
+      handbook check --diff
+      handbook check --fix --offered temperature-looks-kelvin
     """
+    if offered and not (fix or diff):
+        raise click.UsageError("--offered goes with --fix or --diff")
+    if unknown := [each for each in offered if each not in all_rules()]:
+        raise click.UsageError(f'no rule is called "{unknown[0]}"{_near(unknown[0], all_rules())}')
+    if diff and as_json:
+        raise click.UsageError("--diff prints a diff; --json lists the same edits, so give one of them")
     opened = _open(book)
     shown, records = _selected(opened, files)
+    mended = mended_files(opened, shown, offered) if fix or diff else []
+    if diff:
+        click.echo("".join(map(diff_of, mended)), nl=False)
+    if diff and not fix:
+        sys.exit(FINDINGS if mended else 0)
+    if mended:
+        _write(mended)
+        opened = _open(book)
+        shown, records = _selected(opened, files)
     threshold = Level(show) if show else (Level.REMARK if as_json or files else Level.QUERY)
     visible = [
         finding
         for finding in shown
         if finding.level.weight >= threshold.weight and (finding.accepted is None or threshold is Level.REMARK)
     ]
+    applied = [finding for each in mended for finding in each.applied]
     if as_json:
-        click.echo(render_json(visible))
+        click.echo(render_json(with_exact_edits(opened, visible), applied if fix else None))
     else:
+        for finding in applied:
+            click.echo(f"{finding.place}: mended {finding.rule}: {finding.message}")
         if visible:
             click.echo(render_text(visible, book))
         click.echo(summary(shown, records))
@@ -527,6 +571,12 @@ def calibrate(write: bool, report: Path | None) -> None:
     click.echo(fit_report(found), nl=False)
     for path in texts:
         click.echo(f"wrote {path}", err=True)
+
+
+def _write(mended: Iterable[Mended]) -> None:
+    for each in mended:
+        if not write_mended(each):
+            raise click.UsageError(f"{each.file} was changed meanwhile and is left as it is; run this again")
 
 
 def _nothing(_: Case) -> None:

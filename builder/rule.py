@@ -27,6 +27,8 @@ class Fault:
 
     at: path of the value. Where it is missing from the file, its nearest existing parent is shown.
     on_key: point at the key rather than at the value.
+    fix: the exact text to stand at the place instead. is_sure: it can only be meant so, and `check --fix` puts it in
+        without asking; a fix that is likely, such as the nearest known name, is only offered.
     level, source: where they differ from the rule's own.
     """
 
@@ -35,6 +37,7 @@ class Fault:
     mend: str
     on_key: bool = False
     fix: str | None = None
+    is_sure: bool = False
     data: Mapping[str, object] = field(default_factory=dict)
     level: Level | None = None
     source: str | None = None
@@ -74,6 +77,7 @@ class Rule(Generic[Subject_contra, Answer_co]):
             source=fault.source or self.source,
             place=place,
             fix=fault.fix,
+            is_sure=fault.is_sure,
             data=fault.data,
         )
 

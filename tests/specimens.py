@@ -33,17 +33,22 @@ def play(example: str) -> tuple[Finding, ...]:
     """Return all findings of an example: YAML over the specimen, further records behind `---`.
 
     `# file: PATH` names the file of a record, `# retired: ID` an identifier that the settings retire, `# people: CODES`
-    the people they list. An example that begins with `# handbook.yml` is keys of the settings instead.
+    the people they list, `# house: {…}` a house rule. An example that begins with `# handbook.yml` is keys of the
+    settings instead.
     """
     if example.startswith("# handbook.yml"):
         return _play_settings(example)
     retired = re.findall(r"^# retired: (\S+)$", example, re.MULTILINE)
+    house = re.search(r"^# house: (.+)$", example, re.MULTILINE)
     people = re.search(r"^# people: (.+)$", example, re.MULTILINE)
-    settings = Settings(
-        format=1,
-        title="A book for tests",
-        retired=tuple(retired),
-        people=tuple(Person(code=code, shown_as=code) for code in people[1].split()) if people else (),
+    typed = f"format: 1\ntitle: A book for tests\nhouse_rules: [{house[1] if house else ''}]\n"
+    ruled, findings, _ = read_into(Settings, typed, "handbook.yml")
+    assert ruled is not None, findings
+    settings = ruled.model_copy(
+        update={
+            "retired": tuple(retired),
+            "people": tuple(Person(code=code, shown_as=code) for code in people[1].split()) if people else (),
+        }
     )
     parts = [part.removeprefix("\n") for part in re.split(r"^---$", example, flags=re.MULTILINE)]
     examined = []

@@ -1,6 +1,7 @@
 """The command at its edges: exit codes, JSON, help with examples, nothing half-written."""
 
 import json
+import re
 import shutil
 import subprocess
 import sys
@@ -127,6 +128,56 @@ def test_json_has_stable_keys(run: Run, book: Path) -> None:
     assert ran.code == 1
 
 
+def test_what_can_be_mended_is_shown_then_done(run: Run, book: Path) -> None:
+    _break(book, "notebook: 0042  # lot\nstatus: Current\ntitle: one\ntitle: two")
+    path = book / "azides" / "NS4T9XQ2N.yml"
+    before = path.read_text("utf-8")
+    ran = run("check", "--book", book)
+    assert "  fix:  write '0042'  [--fix]\n" in ran.out
+    assert "  fix:  keep one of them  [--fix --offered duplicate-key]\n" in ran.out
+    assert ran.out.endswith("\n2 of these can be mended: `handbook check --diff` shows how, --fix does it\n")
+
+    ran = run("check", "--book", book, "--diff")
+    assert ran.code == 1
+    changed = [line for line in ran.out.splitlines() if re.match(r"[-+](?![-+])", line)]
+    assert changed == ["-notebook: 0042  # lot", "-status: Current", "+notebook: '0042'  # lot", "+status: current"]
+    assert path.read_text("utf-8") == before
+
+    ran = run("check", "--book", book, "--fix")
+    assert ran.code == 1
+    assert re.search(r"NS4T9XQ2N.yml:\d+:11: mended number-altered: 0042 is read as another number\n", ran.out)
+    assert ran.out.endswith("1 record checked: 1 error\n")
+    after = before.replace("0042", "'0042'").replace("Current", "current")
+    assert path.read_text("utf-8") == after
+
+    assert run("check", "--book", book, "--diff").code == 0
+    ran = run("check", "--book", book, "--fix", "--diff", "--offered", "duplicate-key")
+    assert "-title: two\n+# also typed: title: two\n" in ran.out
+    assert ran.code == 0
+    assert path.read_text("utf-8") == after.replace("title: two", "# also typed: title: two")
+
+
+def test_json_carries_the_edits(run: Run, book: Path) -> None:
+    _break(book, "solvent: [{name: DMF, volume: '1,5 mL'}]")
+    ran = run("check", "--book", book, "--json")
+    (finding,) = (each for each in json.loads(ran.out)["findings"] if each["rule"] == "quantity-decimal-comma")
+    line = finding["line"]
+    place = {"line": line, "column": 31, "end_line": line, "end_column": 39}
+    assert (finding["fix"], finding["is_sure"], finding["edits"]) == ("1.5 mL", True, [{**place, "text": "'1.5 mL'"}])
+    told = json.loads(run("check", "--book", book, "--fix", "--json").out)
+    assert [each["rule"] for each in told["mended"]] == ["quantity-decimal-comma"]
+    assert not [each for each in told["findings"] if each["level"] == "error"]
+
+
+def test_only_the_named_files_are_mended(run: Run, book: Path) -> None:
+    _break(book, "notebook: 0042")
+    second = book / "NS7K3QFMC.yml"
+    second.write_text(with_example("entry: NS7K3QFMC\ntitle: Another\nnotebook: 0043"), "utf-8")
+    run("check", second, "--book", book, "--fix")
+    assert "notebook: '0043'\n" in second.read_text("utf-8")
+    assert "notebook: 0042\n" in (book / "azides" / "NS4T9XQ2N.yml").read_text("utf-8")
+
+
 def test_a_folder_counts_its_records(run: Run, book: Path) -> None:
     (book / "NS7K3QFMC.yml").write_text(with_example("entry: NS7K3QFMC\ntitle: Another\nnotebook: BK2/113"), "utf-8")
     (book / "azides" / "NS3V6TDMZ.yml").write_text(
@@ -161,6 +212,9 @@ def test_nothing_but_export_needs_cairo() -> None:
 MISUSE = [
     ("check", "--book", "nowhere"),
     ("check", "--fail-on", "doom"),
+    ("check", "--offered", "duplicate-key"),
+    ("check", "--fix", "--offered", "duplicate"),
+    ("check", "--diff", "--json"),
     ("rule", "no-such-rule"),
     ("frobnicate",),
 ]

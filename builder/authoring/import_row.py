@@ -20,6 +20,7 @@ from builder.chemistry.structure import StructureError, parse_inchi, parse_smile
 from builder.finding import Finding, Level, Place
 from builder.records.flat import Scalar, Unflattened, canonical_name, name_of, shape_at, unflatten
 from builder.records.identifiers import mint_identifier
+from builder.records.mended_text import Span
 from builder.records.model import Record
 from builder.records.quantities import comma_error
 from builder.records.reader import read_values
@@ -87,10 +88,10 @@ class _Spots:
     row: int
     known: list[tuple[int | None, str | None, str]] = field(default_factory=list)
 
-    def add(self, *, column: int | None = None, constant: str | None = None, part: str = "") -> tuple[int, int, int]:
+    def add(self, *, column: int | None = None, constant: str | None = None, part: str = "") -> Span:
         """Return the span that stands for a spot."""
         self.known.append((column, constant, part))
-        return (self.row, len(self.known), len(self.known) + 1)
+        return Span(self.row, len(self.known), len(self.known) + 1)
 
 
 @dataclass(frozen=True, slots=True)
@@ -255,7 +256,7 @@ def _read_record(
         name: spots.add(column=_source_column(desk, content, name), constant=content.constants.get(name))
         for name in content.cells
     }
-    values: dict[ValuePath, tuple[int, int, int]] = {path: spans[name] for path, name in unflattened.columns.items()}
+    values: dict[ValuePath, Span] = {path: spans[name] for path, name in unflattened.columns.items()}
     for path in tuple(values):
         for end in range(1, len(path)):
             values.setdefault(path[:end], spots.add(part=name_of(path[:end])))
@@ -274,7 +275,7 @@ def _source_column(desk: Desk, content: RowContent, name: str) -> int | None:
     return content.column_of.get(name)
 
 
-Spans = Mapping[str, tuple[int, int, int]]
+Spans = Mapping[str, Span]
 
 
 def _cell_troubles(desk: Desk, row: Row, content: RowContent, spans: Spans) -> Iterator[Finding]:

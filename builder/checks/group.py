@@ -109,14 +109,17 @@ def person_is_unknown(book: Gathering) -> Found:
     Asked only of books that list people; a code stands for a person in citations and reviews.
     """
     for member in book.members:
+        if any(each.demand == "codes_listed" for _, each in member.settings.checked_rules):
+            continue  # the house rule says it, with its own reason
         known = {person.code for person in member.settings.people}
-        for path, code in _person_codes(member.record) if known else ():
+        for path, code in person_codes(member.record) if known else ():
             if code not in known:
                 fault = Fault(at=path, message=f"{code} is not among the people of this book", mend=_add_person(code))
                 yield member, fault
 
 
-def _person_codes(record: Record) -> Iterator[tuple[Path, str]]:
+def person_codes(record: Record) -> Iterator[tuple[Path, str]]:
+    """Yield every code of a person in a record, with its path."""
     yield from ((("performed", "by", index), code) for index, code in enumerate(record.performed.by))
     stamps = {"reviewed": record.reviewed, "safety_review": record.safety_review, "withdrawn": record.withdrawn}
     yield from (((key, "by"), stamp.by) for key, stamp in stamps.items() if stamp is not None)

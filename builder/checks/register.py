@@ -19,6 +19,7 @@ from builder.checks.forecasts import FORECAST_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
 from builder.checks.house import HOUSE_CHECKS
+from builder.checks.house_rules import HOUSE_RULE_CHECKS, house_rule_is_unclear
 from builder.checks.identity import IDENTITY_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.ratios import RATIO_CHECKS
@@ -31,7 +32,7 @@ from builder.mechanism.rules import GATES
 from builder.records.rules import READING_RULES
 from builder.rule import Fault, Rule, card
 
-__all__ = ["ACCEPTANCE_RULES", "RECORD_CHECKS", "all_rules", "record_rules"]
+__all__ = ["ACCEPTANCE_RULES", "RECORD_CHECKS", "SETTINGS_CHECKS", "all_rules", "record_rules"]
 
 RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
     sorted(
@@ -48,6 +49,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *FORECAST_CHECKS,
             *FORM_CHECKS,
             *IDENTITY_CHECKS,
+            *HOUSE_RULE_CHECKS,
             *KINETIC_CHECKS,
             *RATIO_CHECKS,
             *STAGE_CHECKS,
@@ -58,6 +60,8 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
         key=lambda rule: rule.id,
     )
 )
+
+SETTINGS_CHECKS = (*HOUSE_CHECKS, house_rule_is_unclear)
 
 _DISAGREEING = """\
 substrate: {name: tert-butyl bromide, smiles: 'CC(C)(C)Br', class: tertiary, leaving_group: bromide, amount: 10 mmol}
@@ -118,7 +122,7 @@ ACCEPTANCE_RULES = (
 @cache
 def record_rules() -> tuple[Rule[object, object], ...]:
     """Return the cards of every rule that speaks about records and settings, in order of id."""
-    checks: tuple[Rule[Any, object], ...] = (*RECORD_CHECKS, *GROUP_CHECKS, *HOUSE_CHECKS)
+    checks: tuple[Rule[Any, object], ...] = (*RECORD_CHECKS, *GROUP_CHECKS, *SETTINGS_CHECKS)
     cards = [*READING_RULES, *ACCEPTANCE_RULES, *(_card_of(check) for check in checks)]
     return tuple(sorted(cards, key=lambda rule: rule.id))
 

@@ -2,6 +2,7 @@
 
 import json
 from collections.abc import Callable, Iterable, Sequence
+from dataclasses import asdict
 from functools import cache
 from itertools import groupby
 from pathlib import Path
@@ -50,9 +51,15 @@ def _quoting(folder: Path) -> Callable[[str, int], str | None]:
     return line_of
 
 
-def render_json(findings: Iterable[Finding]) -> str:
-    """Return `{"findings": [...]}`; the keys of a finding are stable."""
-    return json.dumps({"findings": [_plain(finding) for finding in findings]}, indent=2)
+def render_json(findings: Iterable[Finding], mended: Iterable[Finding] | None = None) -> str:
+    """Return `{"findings": [...]}`, and those that were "mended" where it was tried; the keys of a finding are stable.
+
+    The edits of a finding are those that `fix` comes to, in lines and columns counted from 1, the end exclusive.
+    """
+    plain = {"findings": [_plain(finding) for finding in findings]}
+    if mended is not None:
+        plain["mended"] = [_plain(finding) for finding in mended]
+    return json.dumps(plain, indent=2)
 
 
 def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
@@ -81,14 +88,34 @@ def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
 
 
 def summary(findings: Sequence[Finding], records: int) -> str:
-    """Return one line: how many records, how many open findings of each level."""
+    """Return a line that says how many records and open findings of each level there are.
+
+    A line follows for each house rule not kept, and one on what can be mended.
+    """
     open_findings = [finding for finding in findings if finding.accepted is None]
     counts = [(level, sum(finding.level is level for finding in open_findings)) for level in Level]
     words = [f"{count} {_plural(level, count)}" for level, count in counts if count]
     accepted = len(findings) - len(open_findings)
     words += [f"{accepted} accepted"] if accepted else []
     checked = f"{records} record{'s' * (records != 1)} checked"
-    return f"{checked}: {', '.join(words) if words else 'nothing found'}"
+    sure = sum(finding.is_sure for finding in open_findings)
+    mends = [f"{sure} of these can be mended: `handbook check --diff` shows how, --fix does it"] if sure else []
+    return "\n".join([f"{checked}: {', '.join(words) if words else 'nothing found'}", *_house_rules(findings), *mends])
+
+
+def _house_rules(findings: Iterable[Finding]) -> list[str]:
+    """Return a line for each house rule that was found not to be kept: how often, and how often that was accepted."""
+    found: dict[tuple[object, object], list[Finding]] = {}
+    for finding in findings:
+        if "house_rule" in finding.data:
+            found.setdefault((finding.data["house_rule"], finding.data["because"]), []).append(finding)
+    lines = []
+    for (rule, because), of_rule in found.items():
+        accepted = sum(finding.accepted is not None for finding in of_rule)
+        counts = [(len(of_rule) - accepted, "not kept"), (accepted, "set aside with a reason")]
+        said = ", ".join(f"{said} {count} time{'s' * (count != 1)}" for count, said in counts if count)
+        lines.append(f"house rule: {rule} – {because}: {said}")
+    return lines
 
 
 def _plural(level: Level, count: int) -> str:
@@ -107,9 +134,15 @@ def _block(finding: Finding, line: str | None) -> str:
     if finding.accepted is not None:
         parts.append(f"  accepted: {finding.accepted}")
     else:
-        parts.append(f"  fix:  {finding.mend}")
+        parts.append(f"  fix:  {finding.mend}{_how_applied(finding)}")
     parts.append(f"  more: handbook rule {finding.rule}")
     return "\n".join(parts) + "\n"
+
+
+def _how_applied(finding: Finding) -> str:
+    if finding.fix is None and not finding.edits:
+        return ""
+    return "  [--fix]" if finding.is_sure else f"  [--fix --offered {finding.rule}]"
 
 
 def _plain(finding: Finding) -> dict[str, Any]:
@@ -120,6 +153,8 @@ def _plain(finding: Finding) -> dict[str, Any]:
         "why": finding.why,
         "mend": finding.mend,
         "fix": finding.fix,
+        "edits": [asdict(edit) for edit in finding.edits],
+        "is_sure": finding.is_sure,
         "source": source_text(finding.source),
         "file": finding.place.file,
         "line": finding.place.line,

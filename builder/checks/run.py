@@ -7,8 +7,8 @@ from typing import Any
 
 from builder.checks.case import Case
 from builder.checks.group import GROUP_CHECKS, Gathering
-from builder.checks.house import HOUSE_CHECKS, House
-from builder.checks.register import ACCEPTANCE_RULES, RECORD_CHECKS, record_rules
+from builder.checks.house import House
+from builder.checks.register import ACCEPTANCE_RULES, RECORD_CHECKS, SETTINGS_CHECKS, record_rules
 from builder.finding import Finding, Level
 from builder.records.model import Acceptance
 from builder.records.yaml_text import Places
@@ -68,7 +68,7 @@ def check_settings(house: House, places: Places) -> list[Finding]:
     """Return the findings of the checks over the settings of a book."""
     return [
         _finding(check, fault, places)
-        for check in HOUSE_CHECKS
+        for check in SETTINGS_CHECKS
         if check.look is not None
         for fault in check.look(house)
     ]

@@ -103,6 +103,16 @@ class FindingView:
 
 
 @dataclass(frozen=True, slots=True)
+class HouseRuleView:
+    """A house rule that an entry does not keep; accepted and accepted_by are empty where nobody has answered it."""
+
+    statement: str
+    because: str
+    accepted: str
+    accepted_by: str
+
+
+@dataclass(frozen=True, slots=True)
 class Tombstone:
     """Why an entry no longer holds."""
 
@@ -125,6 +135,7 @@ class EntryView:
     strip: tuple[Fact, ...]
     claim: tuple[Fact, ...]
     standing: str
+    house_rules: tuple[HouseRuleView, ...]
     expected: ExpectedView | None
     nothing_expected: str
     results: str
@@ -222,6 +233,7 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
         strip=portrait.strip,
         claim=_claim(record),
         standing=_STANDING[entry.verdict],
+        house_rules=_house_rules(entry.findings, record, settings),
         expected=portrait.expected,
         nothing_expected=portrait.nothing_expected,
         results=_in_words(record),
@@ -319,8 +331,27 @@ def _severity(finding: Finding) -> Severity:
     return Severity(str(finding.data.get("severity", Severity.NOTE)))
 
 
+def _house_rules(findings: Iterable[Finding], record: Record, settings: Settings) -> tuple[HouseRuleView, ...]:
+    """Return the house rules that are not kept, each once."""
+    found = [
+        HouseRuleView(
+            statement=str(finding.data["house_rule"]),
+            because=str(finding.data["because"]),
+            accepted=finding.accepted or "",
+            accepted_by=_person(by, settings) if (by := _accepted_by(finding, record)) else "",
+        )
+        for finding in findings
+        if "house_rule" in finding.data
+    ]
+    return tuple(dict.fromkeys(found))
+
+
+def _accepted_by(finding: Finding, record: Record) -> str:
+    return next((a.by for a in record.accepted if a.finding == finding.rule), "") if finding.accepted else ""
+
+
 def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingView:
-    by = next((a.by for a in record.accepted if a.finding == finding.rule), "") if finding.accepted else ""
+    by = _accepted_by(finding, record)
     return FindingView(
         level=str(finding.level),
         rule=finding.rule,

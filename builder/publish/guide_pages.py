@@ -7,13 +7,16 @@ from typing import Any
 
 from builder.book import Book
 from builder.chemistry.perception import leaving_group_names, site_class_meanings, site_class_names
+from builder.finding import Level
+from builder.publish.figures import capital
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
 from builder.publish.templating import deferred
+from builder.records.house_rules import HouseRule
 from builder.records.schema import record_schema
 from builder.records.specimen import SPECIMEN_FILE, specimen_text
 
-__all__ = ["FormatPart", "FormatRow", "format_parts", "guide_pages"]
+__all__ = ["FormatPart", "FormatRow", "HouseRuleRow", "format_parts", "guide_pages", "house_rule_row"]
 
 _SUBSTANCE = "Nucleophile"
 """The part whose keys every charged substance has; the others list only what they add."""
@@ -40,6 +43,25 @@ class FormatPart:
     meaning: str
     beyond: str
     rows: tuple[FormatRow, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class HouseRuleRow:
+    """A house rule as people read it: what, why, and how it is checked; the last two may be empty."""
+
+    statement: str
+    because: str
+    how: str
+
+
+def house_rule_row(line: str | HouseRule) -> HouseRuleRow:
+    """Return what the page says of a house rule; a sentence stands as it is."""
+    if isinstance(line, str):
+        return HouseRuleRow(line, "", "")
+    since = f" from {line.since} on" if line.since else ""
+    answer = "may be set aside with a reason" if line.weight is Level.QUERY else "without exception"
+    how = f"checked{since}, {answer}" if line.demand else ""
+    return HouseRuleRow(capital(line.statement), line.because, how)
 
 
 def format_parts(schema: Mapping[str, Any]) -> tuple[FormatPart, ...]:
@@ -79,7 +101,7 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
                 format_parts=format_parts(schema),
                 classes=[(name, meanings[name]) for name in site_class_names()],
                 leaving_groups=leaving_group_names(),
-                house_rules=book.settings.house_rules,
+                house_rules=[house_rule_row(line) for line in book.settings.house_rules],
                 root="../",
             ),
             menu="Add",

@@ -37,6 +37,7 @@ from builder.rule import Path
 
 __all__ = [
     "Amount",
+    "AmountOrMass",
     "CasNumber",
     "Concentration",
     "Count",
@@ -90,12 +91,14 @@ _CAS = re.compile(r"([0-9]{2,7})-([0-9]{2})-([0-9])")
 _CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029]")
 
 
-def faulty(rule: str, message: str, mend: str, fix: str | None = None, *, at: Path = ()) -> PydanticCustomError:
+def faulty(
+    rule: str, message: str, mend: str, fix: str | None = None, *, at: Path = (), is_sure: bool = False
+) -> PydanticCustomError:
     """Return the error by which a field names the reading rule it broke, with its exact mend.
 
-    at: the way from the value that is validated to the one at fault.
+    at: the way from the value that is validated to the one at fault. is_sure: as in Fault.
     """
-    context: dict[str, Any] = {"mend": mend, "fix": fix, "message": message, "at": at}
+    context: dict[str, Any] = {"mend": mend, "fix": fix, "message": message, "at": at, "is_sure": is_sure}
     return PydanticCustomError(rule, "{message}", context)
 
 
@@ -108,7 +111,7 @@ def _quantity(
     try:
         quantity = parse(value)
     except QuantityError as error:
-        raise faulty(error.rule, error.message, error.mend, error.fix) from None
+        raise faulty(error.rule, error.message, error.mend, error.fix, is_sure=error.is_sure) from None
     low, high, unit = _bounds(quantity)
     if least is not None and (low < least or (open_below and low == least)):
         bound = "more than" if open_below else "at least"
@@ -228,6 +231,15 @@ Strength = Annotated[
 ]
 """Of a solution: concentration, or percentage by mass."""
 
+
+def _amount_or_mass(value: object) -> Quantity:
+    return _first_that_reads(value, Dimension.AMOUNT, Dimension.MASS)
+
+
+AmountOrMass = Annotated[
+    Quantity, BeforeValidator(_amount_or_mass), _either(Dimension.AMOUNT, Dimension.MASS, "10 mmol", "5 g")
+]
+
 RateConstantValue = Annotated[
     Quantity,
     BeforeValidator(_rate_constant),
@@ -242,7 +254,9 @@ def _text(value: object) -> str:
     if isinstance(value, str):
         return value
     if isinstance(value, (int, Decimal)) and not isinstance(value, bool):
-        raise faulty("value-wrong-type", f"{value} is read as a number", f"write '{value}'", f"'{value}'")
+        is_as_typed = "E" not in str(value)
+        mend = f"write '{value}'"
+        raise faulty("value-wrong-type", f"{value} is read as a number", mend, f"'{value}'", is_sure=is_as_typed)
     if isinstance(value, bool):
         raise faulty("value-wrong-type", "a text is wanted", f"write '{str(value).lower()}'")
     raise faulty("value-wrong-type", "a text is wanted here, not a list or mapping", "write one text, quoted")
@@ -311,7 +325,7 @@ class Shape:
         likely = (text.strip(), text.strip().lower())
         fix = next((f"'{tidy}'" for tidy in likely if re.fullmatch(self.pattern, tidy)), None)
         mend = f"write {fix}" if fix else self.mend
-        raise faulty("value-not-permitted", f'"{text:.80}" {self.refusal}', mend, fix)
+        raise faulty("value-not-permitted", f'"{text:.80}" {self.refusal}', mend, fix, is_sure=True)
 
 
 Sha256 = Annotated[
@@ -343,7 +357,9 @@ def _date(value: object) -> dt.date:
         except ValueError:
             raise faulty("value-not-permitted", f"{value} is no day of the calendar", "correct the date") from None
     fix = _iso_date(str(value))
-    raise faulty("value-not-permitted", f'"{value}" is not a date', f"write {fix or 'it like 2026-03-14'}", fix)
+    is_sure = fix is not None and int(fix[-2:]) > 12  # or the month may have been meant first
+    mend = f"write {fix or 'it like 2026-03-14'}"
+    raise faulty("value-not-permitted", f'"{value}" is not a date', mend, fix, is_sure=is_sure)
 
 
 def _iso_date(text: str) -> str | None:
@@ -393,7 +409,8 @@ def _whole(value: object) -> int:
     digits = re.fullmatch(r"([0-9]{1,9})(?:\.0*)?", str(value))
     fix = digits[1] if digits else None
     typed = str(value).lower() if isinstance(value, bool) else value
-    raise faulty("value-wrong-type", f'"{typed}" is not a whole number', f"write {fix or 'one, such as 2'}", fix)
+    mend = f"write {fix or 'one, such as 2'}"
+    raise faulty("value-wrong-type", f'"{typed}" is not a whole number', mend, fix, is_sure=True)
 
 
 Count = Annotated[int, Field(ge=1, le=10_000), BeforeValidator(_whole)]
@@ -407,7 +424,7 @@ def _flag(value: object) -> bool:
     word = str(value).casefold()
     if word in {"yes", "on", "y", "no", "off", "n"}:
         fix = "true" if word in {"yes", "on", "y"} else "false"
-        raise faulty("boolean-word", f'"{value}" is a word, not true or false', f"write {fix}", fix)
+        raise faulty("boolean-word", f'"{value}" is a word, not true or false', f"write {fix}", fix, is_sure=True)
     raise faulty("value-wrong-type", f'"{value}" is not true or false', "write true or false")
 
 
@@ -422,8 +439,8 @@ def _number(value: object) -> Decimal:
             mend = f"write {fix}, without quotes or unit"
         elif isinstance(value, str) and re.fullmatch(r"[0-9]+,[0-9]+", value):
             fix = value.replace(",", ".")
-            raise faulty("quantity-decimal-comma", f'"{value}" has a decimal comma', f"write {fix}", fix)
-        raise faulty("value-wrong-type", f'"{value}" is not a number', mend, fix)
+            raise faulty("quantity-decimal-comma", f'"{value}" has a decimal comma', f"write {fix}", fix, is_sure=True)
+        raise faulty("value-wrong-type", f'"{value}" is not a number', mend, fix, is_sure=True)
     return Decimal(value)
 
 
@@ -494,7 +511,7 @@ def _ratio(value: object, pattern: str, refusal: str, example: str) -> Ratio:
     if not re.fullmatch(pattern, text):
         tidy = re.sub(r"\s*=\s*", " = ", re.sub(r"\s*[:/]\s*", ":", text.strip()))
         fix = f"'{tidy}'" if re.fullmatch(pattern, tidy) else None
-        raise faulty("ratio-unreadable", f'"{text:.80}" is not {refusal}', f"write {fix or example}", fix)
+        raise faulty("ratio-unreadable", f'"{text:.80}" is not {refusal}', f"write {fix or example}", fix, is_sure=True)
     labels, _, typed = text.rpartition(" = ")
     parts = tuple(tuple(part.split("+")) for part in labels.split(":")) if labels else ()
     if any(is_beyond_measure(number) for number in typed.split(":")):

@@ -6,7 +6,7 @@ Reading goes on with the mended text, so that one run reports everything; places
 import re
 from dataclasses import dataclass
 from itertools import takewhile
-from typing import Self
+from typing import NamedTuple, Self
 
 import yaml
 
@@ -16,8 +16,15 @@ from builder.rule import Fault
 
 __all__ = ["STRUCTURE_KEYS", "GluedPair", "MendedText", "Span", "quoted"]
 
-Span = tuple[int, int, int]
-"""Line, column and end column, counted as in Place; a record has a hundred and more, few of which anyone asks for."""
+
+class Span(NamedTuple):
+    """What a Place holds beside its file; a record has a hundred and more, few of which anyone asks for."""
+
+    line: int
+    column: int
+    end_column: int
+    goes_on: bool = False
+
 
 _LONGEST_LINE = 8_000
 """Twice the longest text a record may hold; beyond it no slip of a writer is looked for."""
@@ -99,13 +106,17 @@ class MendedText:
         """Return the place in the file as written of a 0-based position in the mended text."""
         return Place(self.file, *self.span(line, column, end_column))
 
-    def span(self, line: int, column: int, end_column: int) -> Span:
-        """Return line, column and end column of that place."""
+    def is_as_written(self, first: int, last: int) -> bool:
+        """Say whether the lines from `first` to `last`, counted from 0, stand in the file as they stand here."""
+        return not any(first <= line <= last for line, _, _ in self._shifts)
+
+    def span(self, line: int, column: int, end_column: int, *, goes_on: bool = False) -> Span:
+        """Return that place without its file."""
         if not self._shifts:
-            return line + 1, column + 1, end_column + 1
+            return Span(line + 1, column + 1, end_column + 1, goes_on)
         shift = sum(more for on, behind, more in self._shifts if on == line and behind < column)
         end_shift = sum(more for on, behind, more in self._shifts if on == line and behind < end_column)
-        return line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1
+        return Span(line + 1, column - shift + 1, max(end_column - end_shift, column - shift + 1) + 1, goes_on)
 
     def mend_margins(self) -> list[Finding]:
         """Put plain spaces where others indent a key; YAML would take those for a part of its name."""
@@ -168,8 +179,10 @@ class MendedText:
         line = self._line(number)
         margin = line[: len(line) - len(line.lstrip())]
         if "\t" in margin:
-            indent = self._nearest_level(number, len(margin.expandtabs(2)))
-            return self._replace(number, 0, margin, " " * indent, "yaml-unreadable", "a tab in the margin")
+            width = len(margin.expandtabs(2))
+            indent = self._nearest_level(number, width)
+            said, is_sure = "a tab in the margin", indent == width
+            return self._replace(number, 0, margin, " " * indent, "yaml-unreadable", said, is_sure=is_sure)
         flow = self._flow_smiles(line)
         if flow is not None:
             return self._quote(number, flow.start("value"), flow["value"], "smiles-unquoted")
@@ -205,11 +218,20 @@ class MendedText:
         return self._replace(number, column, value, fix, rule, f"YAML cannot read {value}", f"write {fix}")
 
     def _replace(
-        self, number: int, column: int, old: str, new: str, rule: str, message: str, mend: str = "indent with spaces"
+        self,
+        number: int,
+        column: int,
+        old: str,
+        new: str,
+        rule: str,
+        message: str,
+        mend: str = "indent with spaces",
+        *,
+        is_sure: bool = True,
     ) -> Finding:
         """Put `new` in the place of `old`, and return the finding that says so."""
         end = column + len(old)
-        fault = Fault(at=(), message=message, mend=mend, fix=new)
+        fault = Fault(at=(), message=message, mend=mend, fix=new, is_sure=is_sure)
         finding = reading_rule(rule).finding(fault, self.place(number, column, end))
         lines = self.text.split("\n")
         lines[number] = lines[number][:column] + new + lines[number][end:]

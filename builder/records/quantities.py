@@ -201,17 +201,20 @@ _SPELLED_OUT = {
 
 
 class QuantityError(ValueError):
-    """A text that is no quantity of the wanted dimension; carries the rule it breaks and the exact mend."""
+    """A text that is no quantity of the wanted dimension; carries the rule it breaks and the exact mend.
 
-    def __init__(self, rule: str, message: str, mend: str, fix: str | None = None) -> None:
+    is_sure: `fix` is the only thing that can be meant.
+    """
+
+    def __init__(self, rule: str, message: str, mend: str, fix: str | None = None, *, is_sure: bool = False) -> None:
         super().__init__(message)
-        self.rule, self.message, self.mend, self.fix = rule, message, mend, fix
+        self.rule, self.message, self.mend, self.fix, self.is_sure = rule, message, mend, fix, is_sure
 
     def within(self, before: str, after: str) -> "QuantityError":
         """Return the same error of a longer text: what it offers keeps what stands before and after."""
         mend = re.sub(r'"(?:[^"]+ to )?([^"]*)"', lambda offer: f'"{before}{offer[1]}{after}"', self.mend)
         fix = None if self.fix is None else f"{before}{self.fix}{after}"
-        return QuantityError(self.rule, self.message, mend, fix)
+        return QuantityError(self.rule, self.message, mend, fix, is_sure=self.is_sure)
 
 
 @dataclass(frozen=True, slots=True)
@@ -495,6 +498,7 @@ def _no_unit(number: str, dimension: Dimension) -> QuantityError:
         f"the {dimension} has no unit",
         f"write {' or '.join(offers)}",
         fix=fix.strip('"') if fix else None,
+        is_sure=fix is not None,
     )
 
 
@@ -550,7 +554,9 @@ def _grouped_error(text: str, tidy: str) -> QuantityError:
         said = f'"{text}" has its thousands set apart'
         offers = [re.sub(r"[^+\-0-9]", "", groups["digits"]) + groups["rest"].replace(",", ".")]
     mend = "write " + " or ".join(f'"{offer}"' for offer in offers)
-    return QuantityError("quantity-decimal-comma", said, mend, fix=offers[0] if len(offers) == 1 else None)
+    return QuantityError(
+        "quantity-decimal-comma", said, mend, fix=offers[0] if len(offers) == 1 else None, is_sure=True
+    )
 
 
 def _several_error(text: str, tidy: str, dimension: Dimension) -> QuantityError | None:
@@ -569,7 +575,7 @@ def _several_error(text: str, tidy: str, dimension: Dimension) -> QuantityError 
         return None
     number, symbol = exact[0]
     fix = f"{format(number.normalize(), 'f')} {symbol}"
-    return QuantityError("quantity-arithmetic", f'"{text}" is a sum, not a number', f'write "{fix}"', fix)
+    return QuantityError("quantity-arithmetic", f'"{text}" is a sum, not a number', f'write "{fix}"', fix, is_sure=True)
 
 
 def _power_of_ten_error(text: str, tidy: str, dimension: Dimension) -> QuantityError | None:
@@ -577,7 +583,8 @@ def _power_of_ten_error(text: str, tidy: str, dimension: Dimension) -> QuantityE
     if match is None or match["unit"] not in _BY_SPELLING[dimension]:
         return None
     fix = f"{match['factor']}e{match['power'].translate(_RAISED)} {match['unit']}"
-    return QuantityError("quantity-unreadable", f'the power of ten in "{text}" is written out', f'write "{fix}"', fix)
+    said = f'the power of ten in "{text}" is written out'
+    return QuantityError("quantity-unreadable", said, f'write "{fix}"', fix, is_sure=True)
 
 
 def _range_error(text: str, tidy: str, dimension: Dimension) -> QuantityError | None:
@@ -609,7 +616,8 @@ def _unit_error(text: str, number: str, spelling: str, dimension: Dimension) -> 
                 f"use one of: {permitted}",
             )
     folded = {known.casefold(): unit.symbol for known, unit in _BY_SPELLING[dimension].items()}
-    likely = folded.get(spelling.casefold()) or _SPELLED_OUT.get(spelling.casefold())
+    spelled_out = _SPELLED_OUT.get(spelling.casefold())
+    likely = folded.get(spelling.casefold()) or spelled_out
     if likely and likely in units_of(dimension):
         fixed = f"{number} {likely}"
         return QuantityError(
@@ -617,6 +625,7 @@ def _unit_error(text: str, number: str, spelling: str, dimension: Dimension) -> 
             f'unknown unit "{spelling}"; did you mean "{likely}"?',
             f'write "{fixed}"',
             fix=fixed,
+            is_sure=likely == spelled_out,  # where capitals alone differ, MPa may stand for mPa
         )
     mend = f"use one of: {permitted}"
     if spelling in {"°F", "F"}:

@@ -23,11 +23,13 @@ __all__ = [
     "MAX_BYTES",
     "Reading",
     "gaps_as_one",
+    "key_paths",
     "read_bytes",
     "read_file_into",
     "read_into",
     "read_record",
     "read_settings",
+    "read_settings_bytes",
     "read_values",
 ]
 
@@ -70,9 +72,19 @@ def read_settings(path: Path, shown_as: str) -> tuple[Settings | None, tuple[Fin
     return read_file_into(Settings, path, shown_as)
 
 
+def read_settings_bytes(data: bytes, shown_as: str) -> tuple[Settings | None, tuple[Finding, ...], Places]:
+    """Read settings from bytes, as `read_settings` does."""
+    return _text_into(Settings, _decode(data, shown_as), shown_as)
+
+
 def read_file_into(model: type[Model], path: Path, shown_as: str) -> tuple[Model | None, tuple[Finding, ...], Places]:
     """Read a YAML file into `model` as `read_into` does; OSError passes for one that cannot be opened."""
-    text = _text_of(path, shown_as)
+    return _text_into(model, _text_of(path, shown_as), shown_as)
+
+
+def _text_into(
+    model: type[Model], text: str | Finding, shown_as: str
+) -> tuple[Model | None, tuple[Finding, ...], Places]:
     if isinstance(text, Finding):
         return None, (text,), Places(shown_as)
     return read_into(model, text, shown_as)
@@ -197,7 +209,8 @@ def _form_finding(detail: ErrorDetails, plain: Plain, places: Places, model: typ
         return _found("key-unknown", _unknown_key(_key_path(detail), model), places)
     if "mend" in context:
         at = (*path, *context["at"])
-        fault = Fault(at=at, message=context["message"], mend=context["mend"], fix=context["fix"])
+        mended = {"mend": context["mend"], "fix": context["fix"], "is_sure": context["is_sure"]}
+        fault = Fault(at=at, message=context["message"], **mended)
         return _found(kind, fault, places)
     if kind in {"enum", "literal_error"}:
         return _found("value-not-permitted", _not_permitted(path, value, context), places)
@@ -260,11 +273,17 @@ def _meant(detail: ErrorDetails, model: type[BaseModel]) -> ValuePath:
     return (*path[:-1], _unknown_key(path, model).fix or "")
 
 
-def _nearest(typed: str, known: Iterable[str]) -> str | None:
-    """Return the known word that was most likely meant, whatever its capitals."""
+def _nearest(typed: str, known: Iterable[str]) -> tuple[str, ...]:
+    """Return the two known words that were most likely meant, whatever their capitals; fewer where none is near."""
     folded = {word.casefold(): word for word in known}
-    near = get_close_matches(typed.casefold(), folded, n=1, cutoff=0.6)
-    return folded[near[0]] if near else None
+    near = get_close_matches(typed.casefold(), folded, n=2, cutoff=0.6)
+    return tuple(folded[word] for word in near)
+
+
+def _is_another_spelling(typed: str, word: str) -> bool:
+    """Say whether capitals, spaces, hyphens and underlines are all that sets two words apart."""
+    one, other = (re.sub(r"[\s_-]", "", each.casefold()) for each in (typed, word))
+    return one == other
 
 
 def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
@@ -272,21 +291,24 @@ def _unknown_key(path: ValuePath, model: type[BaseModel]) -> Fault:
     known = sorted({name for owner in _models_at(model, path[:-1]) for name in _keys_of(owner)})
     near = _nearest(key, known)
     if near:
-        message, mend = f'unknown key "{key}"; did you mean "{near}"?', f"write {near}"
-        return Fault(at=path, on_key=True, message=message, mend=mend, fix=near)
+        message, mend = f'unknown key "{key}"; did you mean "{near[0]}"?', f"write {near[0]}"
+        is_sure = len(near) == 1 or _is_another_spelling(key, near[0])
+        return Fault(at=path, on_key=True, message=message, mend=mend, fix=near[0], is_sure=is_sure)
     return Fault(at=path, on_key=True, message=f'unknown key "{key}"', mend=f"known keys here: {', '.join(known)}")
 
 
 def _not_permitted(path: ValuePath, value: Plain, context: Mapping[str, Any]) -> Fault:
     permitted = re.findall(r"'((?:[^'\\]|\\.)*)'|\"((?:[^\"\\]|\\.)*)\"|(\d+)", str(context.get("expected", "")))
     words = [next(word for word in found if word) for found in permitted]
-    fix = _nearest(str(value), words)
+    near = _nearest(str(value), words)
+    fix = near[0] if near else None
     hint = f'; did you mean "{fix}"?' if fix else ""
     return Fault(
         at=path,
         message=f'"{value}" is not permitted here{hint}',
         mend=f"use one of: {', '.join(words)}" if len(words) > 1 else f"write {words[0]}",
         fix=fix,
+        is_sure=fix is not None and _is_another_spelling(str(value), fix),
     )
 
 
@@ -307,6 +329,18 @@ def _value_at(plain: Plain, path: ValuePath) -> Plain:
 @cache
 def _keys_of(model: type[BaseModel]) -> tuple[str, ...]:
     return tuple(field.alias or name for name, field in model.model_fields.items())
+
+
+@cache
+def key_paths(model: type[BaseModel]) -> frozenset[str]:
+    """Return every key of a model with the way to it, joined by dots: stages.atmosphere."""
+    below = {
+        f"{info.alias or name}.{path}"
+        for name, info in model.model_fields.items()
+        for part in _models_in(info.annotation)
+        for path in key_paths(part)
+    }
+    return frozenset({*_keys_of(model), *below})
 
 
 def _models_at(model: type[BaseModel], path: ValuePath) -> tuple[type[BaseModel], ...]:

@@ -116,6 +116,20 @@ READING_RULES: tuple[Rule[object, object], ...] = (
         silent_on=("notebook: BK2/112",),
     ),
     card(
+        id="house-rule-not-one",
+        title="A house rule without exactly one demand",
+        level=Level.ERROR,
+        source="record-format",
+        text="""A house rule is one agreement with one reason: a sentence, or one demand that is checked.
+
+        Two demands in one rule would share a reason and be accepted together.""",
+        fires_on=(
+            "# handbook.yml\nhouse_rules: [{banned_solvents: DMF, measured: internal, because: agreed}]",
+            "# handbook.yml\nhouse_rules: [{because: agreed}]",
+        ),
+        silent_on=("# handbook.yml\nhouse_rules: [{banned_solvents: DMF, because: toxic for reproduction}]",),
+    ),
+    card(
         id="key-missing",
         title="A required key is missing",
         level=Level.ERROR,

@@ -11,6 +11,7 @@ from typing import Any
 from pydantic import BaseModel
 from pydantic.json_schema import GenerateJsonSchema, JsonSchemaValue
 
+from builder.records.house_rules import DEMANDS
 from builder.records.model import KINDS_OF_MEASUREMENT, QUANTITIES_OF_SUBSTRATE, STRUCTURES, Record
 from builder.records.settings import Settings
 from builder.records.vocabulary import Result, Status
@@ -54,7 +55,11 @@ def record_schema(classes: Iterable[str], leaving_groups: Iterable[str]) -> dict
 
 def settings_schema() -> dict[str, Any]:
     """Return the schema of `entries/handbook.yml`."""
-    return _schema_of(Settings, "Settings of a condition handbook")
+    schema = _schema_of(Settings, "Settings of a condition handbook")
+    rule = schema["$defs"]["HouseRule"]
+    rule["allOf"] = [{"oneOf": [*map(_has, DEMANDS), {"not": _one_of(*DEMANDS)}]}, _one_of("rule", *DEMANDS)]
+    rule["dependentRequired"] = {"of": ["at_most"]}
+    return schema
 
 
 def _text_or(text: JsonSchemaValue, more: JsonSchemaValue) -> JsonSchemaValue:

@@ -5,6 +5,7 @@ from typing import Annotated
 from pydantic import AfterValidator, Field
 
 from builder.records.fields import Count, EntryId, Flag, FormatNumber, Line, RelativePath, Shape, faulty
+from builder.records.house_rules import HouseRule, HouseRuleLine
 from builder.records.identifiers import has_orcid_check_character
 from builder.records.model import Part
 
@@ -62,6 +63,8 @@ class Person(Part):
 class Settings(Part):
     """Title, address, people, house rules of a book.
 
+    house_rules: sentences that are shown, and rules that are checked.
+
     notice: shown on every page. invented: the book is a demonstration, and every page says so.
     site_address: full address under which the site is published, for citations.
     review_interval_months: after how long an entry without its own due date wants another look.
@@ -79,12 +82,19 @@ class Settings(Part):
     logo: RelativePath | None = None
     accent: Accent | None = None
     people: tuple[Person, ...] = ()
-    house_rules: tuple[Line, ...] = ()
+    house_rules: tuple[HouseRuleLine, ...] = ()
     review_interval_months: Count = 24
     licence: Line = "LicenseRef-Internal"
     engine: Version | None = None
     contact: Line | None = None
     retired: tuple[EntryId, ...] = ()
+
+    @property
+    def checked_rules(self) -> tuple[tuple[int, HouseRule], ...]:
+        """Return the house rules that demand something, each with its position in the list."""
+        return tuple(
+            (index, each) for index, each in enumerate(self.house_rules) if isinstance(each, HouseRule) and each.demand
+        )
 
     @property
     def standing_notice(self) -> str:

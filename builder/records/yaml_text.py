@@ -8,7 +8,7 @@ every key and value. Where the text is no YAML for a reason with one exact mend 
 
 import re
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from decimal import Decimal
 
 import yaml
@@ -17,16 +17,19 @@ from yaml.cyaml import CParser  # type: ignore[attr-defined]  # the stubs leave 
 from builder.finding import Finding, Place
 from builder.records.mended_text import STRUCTURE_KEYS, GluedPair, MendedText, Span, quoted
 from builder.records.quantities import comma_error, is_beyond_measure
+from builder.records.repeated_keys import repeated_pair_edits
 from builder.records.rules import reading_rule
 from builder.records.specimen import GAP
 from builder.rule import Fault
 from builder.rule import Path as ValuePath
 
-__all__ = ["Places", "Plain", "Plainly", "is_read_alike", "read_plain"]
+__all__ = ["Places", "Plain", "Plainly", "is_read_alike", "leaves", "read_plain"]
 
 MAX_DEPTH = 16
 MAX_VALUES = 20_000
 MAX_MENDS = 25
+_MOST_PLACES = 6
+"""Of a number that is still easier to read in full than as a power of ten."""
 
 Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 
@@ -34,6 +37,7 @@ _TEXT_KEYS = frozenset(
     {"add", "atmosphere", "basis", "because", "by", "cause", "end_point", "evidence", "finding", "form", "name"}
     | {"note", "notebook", "procedure", "scale_limit", "scope", "take_away", "title", "what", "work_up"}
     | {"code", "contact", "group", "house_rules", "licence", "notice", "shown_as"}
+    | {"banned_solvents", "instead", "required", "reviewers", "rule"}
 )
 """Of record and settings; a test holds them to the models, which the text is read without."""
 
@@ -49,6 +53,9 @@ _WORDS = {"": None, "null": None, "Null": None, "NULL": None, "~": None}
 _BOOLEANS = {"true": True, "True": True, "TRUE": True, "false": False, "False": False, "FALSE": False}
 
 
+_FIRST_CHARACTER = Span(1, 1, 2)
+
+
 @dataclass(frozen=True, slots=True)
 class Places:
     """Where every key and value of one file stands; spans, of which a place is made when it is asked for.
@@ -59,7 +66,7 @@ class Places:
     file: str
     values: Mapping[ValuePath, Span] = field(default_factory=dict)
     keys: Mapping[ValuePath, Span] = field(default_factory=dict)
-    whole: Span = (1, 1, 2)
+    whole: Span = _FIRST_CHARACTER
 
     def of(self, path: ValuePath, *, on_key: bool = False) -> Place:
         """Return the place of the value at `path`, or of the key of its nearest existing parent.
@@ -91,6 +98,16 @@ class Plainly:
     value: Plain
     places: Places
     findings: tuple[Finding, ...]
+
+
+def leaves(plain: Plain, path: ValuePath = ()) -> dict[ValuePath, tuple[str, str]]:
+    """Return every single value of a file by its path, with its kind; numbers with every digit that was typed."""
+    if isinstance(plain, dict) and plain:
+        return {at: leaf for key, value in plain.items() for at, leaf in leaves(value, (*path, key)).items()}
+    if isinstance(plain, list) and plain:
+        return {at: leaf for index, value in enumerate(plain) for at, leaf in leaves(value, (*path, index)).items()}
+    typed = plain.as_tuple() if isinstance(plain, Decimal) else plain
+    return {path: (type(plain).__name__, str(typed))}
 
 
 def read_plain(text: str, file: str) -> Plainly:
@@ -168,7 +185,7 @@ class _Constructor:
         until: yaml.Node | None = None,
     ) -> None:
         """Add a finding of a reading rule at `node`."""
-        fault = Fault(at=(), message=message, mend=mend, fix=fix)
+        fault = Fault(at=(), message=message, mend=mend, fix=fix, is_sure=fix is not None)
         self.findings.append(reading_rule(rule).finding(fault, Place(self.mended.file, *self._span(node, until))))
 
     def construct(self, node: yaml.Node, path: ValuePath) -> Plain:
@@ -259,9 +276,7 @@ class _Constructor:
         number = Decimal(text) if _FLOAT.fullmatch(text) else None
         fix = quoted(text)
         if number is not None:
-            mantissa, exponent = text.lower().split("e")
-            point = "" if "." in mantissa else ".0"
-            fix = f"{mantissa}{point}e{int(exponent):+d}"
+            fix = _for_every_reader(number)
         self.report("yaml-1-1-reads-otherwise", node, f"an older reader alters {text}", f"write {fix}", fix)
         return text if number is None else number
 
@@ -302,17 +317,25 @@ class _Constructor:
             key_path = (*path, key)
             if key in made:
                 first, *_ = self.keys[key_path]
-                self.report(
-                    "duplicate-key",
-                    key_node,
-                    f'"{key}" stands again; first on line {first}',
-                    "keep one of them",
-                )
+                is_same = leaves(made[key]) == leaves(self._read_aside(value_node, key_path))
+                mend = "take this one out, it says the same" if is_same else "keep one of them"
+                fault = Fault(at=(), message=f'"{key}" stands again; first on line {first}', mend=mend)
+                found = reading_rule("duplicate-key").finding(fault, Place(self.mended.file, *self._span(key_node)))
+                edits = repeated_pair_edits(self.mended, node, key_node, value_node, is_same=is_same)
+                self.findings.append(replace(found, edits=edits, is_sure=is_same and bool(edits)))
                 continue
             self.keys[key_path] = self._span(key_node)
             made[key] = self.construct(value_node, key_path)
             last = key
         return made
+
+    def _read_aside(self, node: yaml.Node, path: ValuePath) -> Plain:
+        """Return the value of a node that is no part of the record, counted towards the bounds as any other."""
+        aside = _Constructor(self.mended)
+        aside._count = self._count
+        value = aside.construct(node, path)
+        self._count = aside._count
+        return value
 
     def _is_without_colon(self, node: yaml.MappingNode, key: yaml.ScalarNode, value: yaml.Node) -> bool:
         """Say whether a "key" of a flow mapping is none: the rest of a text split at its comma, or "class:primary"."""
@@ -329,7 +352,8 @@ class _Constructor:
 
     def _join(self, made: dict[str, Plain], last: str, rest: yaml.ScalarNode, path: ValuePath) -> None:
         begun, end = self.values[(*path, last)], self._span(rest)
-        span = (*begun[:2], end[2]) if end[0] == begun[0] else begun
+        on_one_line = end.line == begun.line
+        span = begun._replace(end_column=end.end_column) if on_one_line else begun._replace(goes_on=True)
         self.values[(*path, last)] = span
         place = Place(self.mended.file, *span)
         space = self.text[rest.start_mark.index - 1]
@@ -338,10 +362,11 @@ class _Constructor:
         self.findings = [f for f in self.findings if f.place != Place(self.mended.file, *begun)]
         comma = comma_error(whole, is_bare=last == "equivalents")
         if comma:
-            fault = Fault(at=(), message=comma.message, mend=comma.mend, fix=comma.fix)
+            fault = Fault(at=(), message=comma.message, mend=comma.mend, fix=comma.fix, is_sure=comma.is_sure)
             self.findings.append(reading_rule(comma.rule).finding(fault, place))
             return
-        fault = Fault(at=(), message=f"{last} is split at its comma", mend=f"write {quoted(whole)}", fix=quoted(whole))
+        message, mend = f"{last} is split at its comma", f"write {quoted(whole)}"
+        fault = Fault(at=(), message=message, mend=mend, fix=quoted(whole), is_sure=True)
         self.findings.append(reading_rule("text-split-at-comma").finding(fault, place))
 
     def _whole_names(self, node: yaml.SequenceNode) -> Iterator[list[yaml.Node]]:
@@ -382,8 +407,9 @@ class _Constructor:
     def _span(self, node: yaml.Node, until: yaml.Node | None = None) -> Span:
         end = (until or node).end_mark
         start = node.start_mark
-        end_column = end.column if end.line == start.line else start.column + 1
-        return self.mended.span(start.line, start.column, max(end_column, start.column + 1))
+        goes_on = end.line != start.line
+        end_column = start.column + 1 if goes_on else end.column
+        return self.mended.span(start.line, start.column, max(end_column, start.column + 1), goes_on=goes_on)
 
     def _rest_of_line(self, node: yaml.Node) -> str:
         start = node.end_mark.index
@@ -404,6 +430,15 @@ def is_read_alike(text: str) -> bool:
 
 def _named(path: ValuePath) -> str:
     return next((f'"{step}"' for step in reversed(path) if isinstance(step, str)), "the file")
+
+
+def _for_every_reader(number: Decimal) -> str:
+    """Return a number with a power of ten so that YAML 1.1 reads it as one as well, its digits kept."""
+    exponent = number.as_tuple().exponent
+    if isinstance(exponent, int) and -_MOST_PLACES <= exponent <= 0:
+        return format(number, "f")
+    mantissa, _, power = f"{number:E}".partition("E")
+    return f"{mantissa}{'' if '.' in mantissa else '.'}e{int(power):+d}"
 
 
 def _is_locant(node: yaml.Node) -> bool:

@@ -13,7 +13,7 @@ from builder.records.mended_text import quoted
 from builder.records.yaml_text import Plain, is_read_alike
 from builder.rule import Path
 
-__all__ = ["record_yaml"]
+__all__ = ["is_bare", "record_yaml"]
 
 _QUOTED_KEYS = frozenset({"smiles", "inchi", "er", "dr", "ratio"})
 _FREE_TEXT = frozenset({"name", "by", "note", "basis", "because", "scope", "cause", "what", "file", "path"})
@@ -91,7 +91,7 @@ def _scalar(key: str, value: Plain, *, is_in_flow: bool) -> str:
     text = str(value)
     if _BREAKS.search(text):
         return _double_quoted(text)
-    return text if key not in _QUOTED_KEYS and _is_bare(text, is_in_flow=is_in_flow) else quoted(text)
+    return text if key not in _QUOTED_KEYS and is_bare(text, is_in_flow=is_in_flow) else quoted(text)
 
 
 def _number(value: int | Decimal) -> str:
@@ -108,7 +108,7 @@ def _double_quoted(text: str) -> str:
     return '"' + _BREAKS.sub(lambda found: f"\\u{ord(found[0]):04x}", escaped) + '"'
 
 
-def _is_bare(text: str, *, is_in_flow: bool) -> bool:
+def is_bare(text: str, *, is_in_flow: bool) -> bool:
     """Say whether YAML reads `text` without quotes as it stands."""
     is_plain = bool(re.match(r"[(\w]", text)) and is_read_alike(text) and not _PLAIN_BREAKS.search(text)
     return is_plain and not (is_in_flow and re.search(r"[,\[\]{}]", text))

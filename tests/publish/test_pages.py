@@ -1,5 +1,6 @@
 """Every page of a small book: sound HTML, live links, no bare numbers, nothing from a record taken as HTML."""
 
+import datetime as dt
 import re
 from collections.abc import Callable
 from dataclasses import replace
@@ -14,8 +15,9 @@ from builder.publish.entry_view import next_review
 from builder.publish.page import Page, menu_of
 from builder.publish.pages import build_pages
 from builder.publish.portrait import Portrait
+from builder.records.house_rules import HouseRule
 from builder.records.settings import Settings
-from tests.publish.handmade import CAUTION, GOOD, Markup, book_of, entry_of, text_of
+from tests.publish.handmade import CAUTION, GOOD, QUERY, Markup, book_of, entry_of, text_of
 
 EVIL = "<imgx src=x onerror=alert(1)>"  # no element that the reader knows and refuses
 GOLDEN_PAGES = {
@@ -209,3 +211,40 @@ def test_a_review_is_due_again_on_its_day_of_the_month(reviewed: str, months: in
 def test_the_menu_is_short_and_ends_with_the_guides(pages: dict[str, Page]) -> None:
     menu = menu_of(pages.values())
     assert [next(iter(item)) for item in menu if isinstance(item, dict)] == ["State", "Entries", "Rules", "Add", "Cite"]
+
+
+ANSWER = "Accepted by bench-1: DMSO oxidises it"
+HOUSE = {"house_rule": "no DMF", "because": "toxic for reproduction"}
+
+
+def test_the_verdict_names_the_house_rule_that_is_not_kept_or_set_aside() -> None:
+    broken = replace(QUERY, rule="house-solvent-banned", data=HOUSE)
+    accepted = replace(broken, accepted="DMSO oxidises it")
+    text = text_of("NS9PZ4GK7")
+    answered = text + "accepted: [{finding: house-solvent-banned, because: DMSO oxidises it, by: bench-1}]\n"
+    for record, finding, said in (
+        (text, broken, "House rule not kept: no DMF – toxic for reproduction."),
+        (answered, accepted, f"House rule set aside: no DMF – toxic for reproduction. {ANSWER}"),
+    ):
+        pages = {page.path: page for page in build_pages(book_of(entry_of(record, finding, finding)))}
+        (ruling,) = re.findall(r'<section class="hb-ruling.*?</section>', pages["e/NS9PZ4GK7/"].body, re.DOTALL)
+        assert " ".join(" ".join(Markup(ruling).texts).split()).count(said) == 1
+
+
+def test_house_rules_are_listed_with_their_reasons() -> None:
+    rules = (
+        "A failed run is entered like any other.",
+        HouseRule(banned_solvents=("HMPA", "DMF"), because="toxic", level="error", since=dt.date(2026, 4, 1)),
+        HouseRule(rule="four eyes", because="one overlooks"),
+        HouseRule(measured=("internal",), because="a bath says little"),
+    )
+    settings = Settings(format=1, title="A book", house_rules=rules)
+    pages = {page.path: page for page in build_pages(book_of(settings=settings))}
+    (listed,) = re.findall(r'<section aria-labelledby="house-rules">.*?</ul>', pages["how-to-add/"].body, re.DOTALL)
+    items = [" ".join(re.sub("<[^>]+>", " ", item).split()) for item in re.findall("<li>.*?</li>", listed, re.DOTALL)]
+    assert items == [
+        "A failed run is entered like any other.",
+        "No HMPA or DMF – toxic checked from 2026-04-01 on, without exception",
+        "Four eyes – one overlooks",
+        "Temperature measured: internal – a bath says little checked, may be set aside with a reason",
+    ]
