@@ -18,6 +18,7 @@ from builder.checks.case import Case, open_case
 from builder.checks.group import Gathering, Member
 from builder.checks.house import House, tool_version
 from builder.checks.run import check_group, check_record, check_settings, settle
+from builder.checks.standing import Standing, standing_of
 from builder.chemistry.sketch import load_ring_templates
 from builder.finding import Finding, Level, Place
 from builder.records.digest import digest
@@ -91,7 +92,8 @@ class Entry(Generic[Kept]):
     """One publishable record with all that is known about it.
 
     file: as findings show it, the name of the book's folder first, with forward slashes. text: its YAML as written.
-    digest: SHA-256 of its scientific content, hexadecimal. kept: what `open_book` was asked to keep of its case.
+    digest: SHA-256 of its scientific content, hexadecimal. standing: what of it is held against other entries.
+    kept: what `open_book` was asked to keep of its case.
     """
 
     record: Record
@@ -100,6 +102,7 @@ class Entry(Generic[Kept]):
     digest: str
     findings: tuple[Finding, ...]
     verdict: Verdict
+    standing: Standing
     kept: Kept
 
     @property
@@ -138,12 +141,14 @@ class Examined(Generic[Kept]):
     """One file as read and checked on its own, and what was kept of its case; None where no record could be made of it.
 
     unasked: ids of the checks that could not be asked. is_covered: whether the engine has a say in it.
+    standing: what of it is held against other records; None likewise.
     """
 
     reading: Reading
     findings: tuple[Finding, ...]
     unasked: frozenset[str] = frozenset()
     is_covered: bool = False
+    standing: Standing | None = None
     kept: Kept | None = None
 
 
@@ -241,10 +246,11 @@ def open_book(
             digest=digest(each.reading.record),
             findings=settled[each.reading.file],
             verdict=_verdict(settled[each.reading.file], is_covered=each.is_covered),
+            standing=each.standing,
             kept=each.kept,
         )
         for each in examined
-        if each.reading.record is not None
+        if each.reading.record is not None and each.standing is not None
     ]
     publishable = [entry for entry in entries if not _has_error(entry.findings)]
     everything = [*findings, *misnamed, *(finding for each in settled.values() for finding in each)]
@@ -348,7 +354,7 @@ def examine(
     case = open_case(reading.record, reading.file, settings, today, rxn)
     checked = check_record(case, reading.places)
     found = (*reading.findings, *checked.findings)
-    return Examined(reading, found, checked.unasked, is_covered(case), keep(case))
+    return Examined(reading, found, checked.unasked, is_covered(case), standing_of(case), keep(case))
 
 
 def examined_again(book: Book[Any], file: str, data: bytes) -> tuple[Finding, ...]:
@@ -369,9 +375,12 @@ def _nothing(_: Case) -> None:
 
 def judge(examined: Sequence[Examined[Any]], settings: Settings) -> dict[str, tuple[Finding, ...]]:
     """Return the final findings by file: each record's own, those against the others, acceptances applied."""
-    readings = [each.reading for each in examined]
-    members = tuple(Member(r.file, r.record, settings, r.places) for r in readings if r.record is not None)
-    unread = frozenset(Path(reading.file).stem for reading in readings if reading.record is None)
+    members = tuple(
+        Member(each.reading.file, each.reading.record, settings, each.reading.places, each.standing)
+        for each in examined
+        if each.reading.record is not None and each.standing is not None
+    )
+    unread = frozenset(Path(each.reading.file).stem for each in examined if each.reading.record is None)
     against_others = check_group(Gathering(members, unread))
     settled: dict[str, tuple[Finding, ...]] = {}
     for each in examined:

@@ -4,8 +4,10 @@ from collections import defaultdict
 from collections.abc import Callable, Hashable, Iterator
 from dataclasses import dataclass
 
+from builder.checks.kinship import Kin, Relation, contradictions, kin_of, near_same_pairs
+from builder.checks.standing import Standing
 from builder.finding import Level
-from builder.records.model import Record
+from builder.records.model import EvidenceFile, Record
 from builder.records.settings import Settings
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Path, rule
@@ -15,12 +17,13 @@ __all__ = ["GROUP_CHECKS", "Gathering", "Member"]
 
 @dataclass(frozen=True, slots=True)
 class Member:
-    """One record of the book, with its file as findings show it and the places of its values."""
+    """One record of the book: its file as findings show it, the places of its values, and how it stands to others."""
 
     file: str
     record: Record
     settings: Settings
     places: Places
+    standing: Standing
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,6 +37,61 @@ class Gathering:
 Found = Iterator[tuple[Member, Fault]]
 
 _SECOND = "# file: other/NS7K3QFMC.yml\nentry: NS7K3QFMC\ntitle: Another displacement\nnotebook: BK2/113"
+
+
+_ONCE_MORE = """\
+---
+# file: other/NS7K3QFMC.yml
+entry: NS7K3QFMC
+title: Another displacement
+notebook: BK3/007
+performed: {date: 2026-03-18, by: [bench-3]}
+"""
+_TWO_OF_CARBONATE = """\
+base: {name: potassium carbonate, smiles: '[K+].[K+].[O-]C([O-])=O', equivalents: 2.0}
+"""
+_IN_DMSO = """\
+solvent: [{name: DMSO, volume: 20 mL}]
+stages: [{add: [2-bromobutane, sodium azide, DMSO], temperature: 60 °C, measured: internal, time: 16 h, vessel: open}]
+"""
+_HALF_OF_IT = """\
+outcome:
+  result: [substitution, elimination]
+  claim: {mechanism: SN2, course: not determined, basis: [product structure]}
+  products:
+    - {label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]', use: desired, stereo: racemate}
+    - {label: B, name: but-1-ene, smiles: 'CCC=C', use: by-product}
+  measured: [{yield: 52 %, of: A, kind: assay, by: 1H NMR}, {yield: 35 %, of: B, kind: assay, by: GC}]
+"""
+_SPECTRUM = "evidence: [{what: 1H NMR, file: spectra/a.jdx, sha256: " + 64 * "a" + "}]\n"
+_OTHER_SPECTRUM = "evidence: [{what: 1H NMR, file: spectra/a.jdx, sha256: " + 64 * "b" + "}]\n"
+
+
+@rule(
+    id="duplicate-entry",
+    title="One experiment in two records",
+    level=Level.QUERY,
+    source="common-practice",
+    fires_on=("---\n" + _SECOND,),
+    silent_on=(_ONCE_MORE, _ONCE_MORE + _TWO_OF_CARBONATE + _HALF_OF_IT),
+)
+def entry_is_a_duplicate(book: Gathering) -> Found:
+    """The same experiment stands in one record.
+
+    Two records of one reaction under near-same conditions whose outcomes agree are one experiment typed twice where
+    they were run on one day, by the same people, on one scale; or where substrate and product weigh the same to the
+    last digit, which no two runs do. A run on another day or by somebody else is a repeat: it is worth having, is shown
+    beside the first, and may as well be counted there under `runs`. Records that share a notebook page are left to
+    notebook-page-twice.
+    """
+    mend = "keep one of them, correct the date or the masses, or accept this with the reason"
+    for one, other in near_same_pairs(_standing_in_force(book)):
+        pages = {member.record.notebook for member, _ in (one, other)}
+        shares_page = len(pages) == 1 and None not in pages
+        if not shares_page and kin_of(one[1], other[1]).relation is Relation.DUPLICATES:
+            for member, twin in ((one[0], other[0]), (other[0], one[0])):
+                message = f"{twin.record.entry} is the same reaction under near-same conditions with the same outcome"
+                yield member, Fault(at=("performed", "date"), message=message, mend=mend)
 
 
 @rule(
@@ -73,6 +131,33 @@ def entry_stands_twice(book: Gathering) -> Found:
 
 
 @rule(
+    id="evidence-twice",
+    title="One evidence file behind two records",
+    level=Level.QUERY,
+    source="common-practice",
+    fires_on=(_SPECTRUM + "---\n" + _SECOND + "\n" + _SPECTRUM,),
+    silent_on=(_SPECTRUM + "---\n" + _SECOND + "\n" + _OTHER_SPECTRUM,),
+)
+def evidence_stands_twice(book: Gathering) -> Found:
+    """An evidence file belongs to one experiment.
+
+    Files are told apart by their SHA-256, not by their names. One spectrum behind two records is one experiment entered
+    twice, or the wrong file behind one of them; where it shows both, as a calibration does, say so.
+    """
+    holders: defaultdict[str, dict[str, tuple[Member, Path]]] = defaultdict(dict)
+    for member, _ in _standing_in_force(book):
+        for index, item in enumerate(member.record.evidence):
+            if isinstance(item, EvidenceFile):
+                holders[item.sha256].setdefault(member.file, (member, ("evidence", index, "sha256")))
+    mend = "name the right file, merge the records, or accept this with the reason"
+    for sharing in holders.values():
+        for member, at in sharing.values():
+            others = [other.record.entry for other, _ in sharing.values() if other is not member]
+            if others:
+                yield member, Fault(at=at, message=f"{' and '.join(others)} names this file too", mend=mend)
+
+
+@rule(
     id="notebook-page-twice",
     title="Two records from one notebook page",
     level=Level.QUERY,
@@ -93,6 +178,49 @@ def notebook_page_stands_twice(book: Gathering) -> Found:
         "this page stands in {0} too",
         mend,
     )
+
+
+@rule(
+    id="outcomes-contradict",
+    title="Outcomes that contradict each other",
+    level=Level.QUERY,
+    source="common-practice",
+    fires_on=(_ONCE_MORE + _TWO_OF_CARBONATE + _HALF_OF_IT,),
+    silent_on=(_ONCE_MORE, _ONCE_MORE + _IN_DMSO + _HALF_OF_IT),
+)
+def outcomes_contradict(book: Gathering) -> Found:
+    """The same reaction under near-same conditions gives the same outcome.
+
+    The reaction is the same where substrate with its kind of stereo, nucleophile (or base), leaving group and desired
+    products are. Stages are near-same where the hottest ones are within 10 K, each solvent within 10 points of the
+    volume, the equivalents of what attacks within a factor of 1.25, the concentration within 2, the time within 3 (1.5
+    where the shorter run stopped below 95 % conversion). Base, reagents, order of addition and all the rest are not
+    asked: they are what may explain it, and the pages of both entries list them side by side.
+
+    Outcomes contradict where yields, conversions or shares are more than 10 points apart, or an ee more than 3; where
+    both state a spread, where the spreads do not meet (5 points of yield and 1 of ee are always allowed). An isolated
+    yield is a lower bound of what was formed, an area share is held against area shares only, and a product that was
+    sought and not found counts as none.
+
+    Nothing is rejected and nothing averaged: both observations stand. What is wanted is the reason, in both records.
+    """
+    mend = "correct the one that is wrong, state in both what differs, or accept this with the reason"
+    for one, other, _ in contradictions(_standing_in_force(book)):
+        for member, against in ((one, other), (other, one)):
+            yield member, _contradiction(kin_of(member.standing, against.standing), against.record.entry, mend)
+
+
+def _contradiction(kin: Kin, other: str, mend: str) -> Fault:
+    most, telling = kin.disagreements[0], kin.telling
+    reason = f"they differ in {telling.text}" if telling else "the records state nothing that would explain it"
+    message = f"{most.text_against(other)}; {reason}"
+    return Fault(
+        at=most.here.at, message=message, mend=mend, data={"other": other, "points_apart": round(most.apart, 1)}
+    )
+
+
+def _standing_in_force(book: Gathering) -> list[tuple[Member, Standing]]:
+    return [(member, member.standing) for member in book.members if _is_in_force(member.record)]
 
 
 @rule(
@@ -175,9 +303,12 @@ def title_stands_twice(book: Gathering) -> Found:
 
 
 GROUP_CHECKS = (
+    entry_is_a_duplicate,
     entry_is_retired,
     entry_stands_twice,
+    evidence_stands_twice,
     notebook_page_stands_twice,
+    outcomes_contradict,
     person_is_unknown,
     reference_is_unknown,
     title_stands_twice,

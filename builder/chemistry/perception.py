@@ -44,6 +44,7 @@ __all__ = [
     "site_class_meanings",
     "site_class_names",
     "sites_of",
+    "stem_of",
 ]
 
 NO_LEAVING_GROUP = "none"
@@ -290,6 +291,19 @@ def atoms_that_stay(structure: Structure, site: ReactiveSite) -> frozenset[AtomI
         kept |= around
         waiting += around
     return frozenset(kept)
+
+
+@lru_cache(maxsize=512)
+def stem_of(structure: Structure, site: ReactiveSite) -> str:
+    """Return the SMILES of what stays when the group leaves: no configuration, the alpha carbon marked ([CH2:1]).
+
+    It is the same for a bromide and a tosylate; for an addition it is the whole molecule.
+    """
+    stays = range(len(structure.atoms)) if site.is_addition else sorted(atoms_that_stay(structure, site))
+    flat = Chem.Mol(structure.mol)
+    Chem.RemoveStereochemistry(flat)
+    flat.GetAtomWithIdx(site.alpha_carbon).SetAtomMapNum(1)
+    return Chem.MolFragmentToSmiles(flat, atomsToUse=list(stays))
 
 
 def attacking_atoms(structure: Structure) -> tuple[Nucleophile, ...]:

@@ -29,7 +29,7 @@ from builder.records.quantities import Dimension, Temperature
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Path
 
-__all__ = ["question_from_record"]
+__all__ = ["COMPARABLE_K", "question_from_record"]
 
 COMPARABLE_K = 10.0
 """Stages no further than this below the hottest add to the time; common practice, no source."""

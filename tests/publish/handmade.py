@@ -7,6 +7,7 @@ from pathlib import Path
 
 from builder.book import Book, Entry, Verdict
 from builder.checks.case import Case, open_case
+from builder.checks.standing import standing_of
 from builder.finding import Finding, Level, Place
 from builder.publish.portrait import Portrait, portrait_of
 from builder.records.digest import digest
@@ -71,7 +72,7 @@ def entry_of(
     """Return the entry of a record, with these findings and no others."""
     case = case_of(text, settings)
     record = case.record
-    return Entry(record, case.file, text, digest(record), findings, verdict, portrait_of(case))
+    return Entry(record, case.file, text, digest(record), findings, verdict, standing_of(case), portrait_of(case))
 
 
 def book_of(*entries: Entry[Portrait], settings: Settings = SETTINGS) -> Book[Portrait]:

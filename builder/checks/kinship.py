@@ -1,0 +1,123 @@
+"""Which entries belong together: those that contradict or repeat each other, and those of one series.
+
+Every relation is derived from the standings, none is typed; each holds both ways.
+"""
+
+from collections import defaultdict
+from collections.abc import Callable, Hashable, Iterable, Iterator
+from dataclasses import dataclass
+from enum import StrEnum
+from itertools import combinations
+from typing import TypeVar
+
+from builder.checks.comparison import (
+    Difference,
+    Disagreement,
+    are_near_same,
+    differences,
+    disagreements,
+    is_near,
+    is_one_experiment,
+    telling_difference,
+)
+from builder.checks.standing import Standing, Variable
+
+__all__ = ["VARIED", "Kin", "Relation", "contradictions", "families", "kin_of", "near_same_pairs"]
+
+T = TypeVar("T", bound=Hashable)
+
+
+class Relation(StrEnum):
+    """What one entry is to another."""
+
+    CONTRADICTS = "contradicts"
+    REPEATS = "repeats"
+    DUPLICATES = "same experiment twice"
+    VARIANT = "variant of"
+
+
+VARIED = (
+    Variable.SOLVENT,
+    Variable.TEMPERATURE,
+    Variable.LEAVING_GROUP,
+    Variable.NUCLEOPHILE,
+    Variable.BASE,
+    Variable.REAGENTS,
+    Variable.EQUIVALENTS,
+    Variable.SUBSTRATE,
+    Variable.SCALE,
+)
+"""What series are made of; time and concentration go along with these, and make none of their own."""
+
+
+@dataclass(frozen=True, slots=True)
+class Kin:
+    """What another entry (there) is to an entry (here)."""
+
+    relation: Relation
+    here: Standing
+    there: Standing
+
+    @property
+    def disagreements(self) -> tuple[Disagreement, ...]:
+        """Return the numbers that cannot both be the rule, the furthest apart first."""
+        return disagreements(self.here, self.there)
+
+    @property
+    def differences(self) -> tuple[Difference, ...]:
+        """Return what differs in the conditions, the most telling first."""
+        return differences(self.here, self.there)
+
+    @property
+    def telling(self) -> Difference | None:
+        """Return what most likely makes the difference; None where nothing that matters does."""
+        return telling_difference(self.here, self.there)
+
+    @property
+    def varied(self) -> tuple[Variable, ...]:
+        """Return the variables in which the other is a variant of this one."""
+        return tuple(variable for variable in VARIED if not is_near(variable, self.here, self.there))
+
+
+def near_same_pairs(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[tuple[T, Standing], tuple[T, Standing]]]:
+    """Yield every pair that ran one reaction under near-same conditions.
+
+    Only entries with one reaction key are compared, so a book takes time in proportion to its length.
+    """
+    for sharing in _by((item for item in items if item[1].key), lambda standing: standing.key):
+        for one, other in combinations(sharing, 2):
+            if are_near_same(one[1], other[1]):
+                yield one, other
+
+
+def contradictions(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[T, T, Kin]]:
+    """Yield every pair that contradicts each other, with what the second is to the first."""
+    for (one, mine), (other, theirs) in near_same_pairs(items):
+        kin = kin_of(mine, theirs)
+        if kin.relation is Relation.CONTRADICTS:
+            yield one, other, kin
+
+
+def kin_of(one: Standing, other: Standing) -> Kin:
+    """Return what an entry with the second standing is to one with the first, both of one transformation."""
+    if not are_near_same(one, other):
+        return Kin(Relation.VARIANT, one, other)
+    if disagreements(one, other):
+        return Kin(Relation.CONTRADICTS, one, other)
+    return Kin(Relation.DUPLICATES if is_one_experiment(one, other) else Relation.REPEATS, one, other)
+
+
+def families(items: Iterable[tuple[T, Standing]]) -> dict[T, tuple[T, ...]]:
+    """Return with each entry the others of its transformation, in the order given."""
+    found: dict[T, tuple[T, ...]] = {}
+    for sharing in _by((item for item in items if item[1].transformation), lambda standing: standing.transformation):
+        for one, _ in sharing:
+            found[one] = tuple(other for other, _ in sharing if other != one)
+    return found
+
+
+def _by(items: Iterable[tuple[T, Standing]], key: Callable[[Standing], str]) -> Iterable[list[tuple[T, Standing]]]:
+    sharing: defaultdict[str, list[tuple[T, Standing]]] = defaultdict(list)
+    for item in items:
+        sharing[key(item[1])].append(item)
+    return sharing.values()
