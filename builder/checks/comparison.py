@@ -1,5 +1,7 @@
 """When two entries were run under near-same conditions, in what they differ, and when their outcomes contradict.
 
+The tolerances stand below; they are common practice and have no source. `outcomes-contradict` states them to readers.
+
 Everything here is symmetric: what holds of one entry against another holds the other way round.
 """
 
@@ -11,7 +13,6 @@ from builder.records.vocabulary import YieldKind
 
 __all__ = [
     "DECISIVE",
-    "TOLERANCES",
     "Difference",
     "Disagreement",
     "are_near_same",
@@ -39,20 +40,6 @@ COMPLETE_PERCENT = 95.0
 NEAR_SCALE = 3.0
 """Factor between the amounts of substrate; up to it the same flask and stirrer serve."""
 
-TOLERANCES: tuple[tuple[str, str], ...] = (
-    ("temperature", f"hottest stages within {NEAR_K:g} K"),
-    ("solvent", f"the same solvents, each within {NEAR_VOLUME_POINTS:g} points of the volume"),
-    ("equivalents of what attacks", f"within a factor of {NEAR_EQUIVALENTS:g}"),
-    ("concentration", f"within a factor of {NEAR_CONCENTRATION:g}"),
-    (
-        "time",
-        f"within a factor of {NEAR_TIME:g}, or {NEAR_TIME_UNDER_WAY:g} where the shorter run stopped"
-        f" below {COMPLETE_PERCENT:g} % conversion",
-    ),
-    ("vessel", "batch and flow are apart; else no matter"),
-)
-"""What makes stages near-same; common practice, no source."""
-
 YIELD_POINTS = 10.0
 """Yields, conversions and shares further apart than this contradict; trade practice, no source."""
 EE_POINTS = 3.0
@@ -76,10 +63,9 @@ class Difference:
     there: str
     is_near: bool
 
-    @property
-    def text(self) -> str:
-        """Return it as part of a sentence."""
-        return f"{self.variable}: {self.here} here, {self.there} there"
+    def text(self, here: str = "here", there: str = "there") -> str:
+        """Return it as part of a sentence; here, there: what to call the two."""
+        return f"{self.variable}: {self.here} {here}, {self.there} {there}"
 
 
 @dataclass(frozen=True, slots=True)
@@ -101,9 +87,9 @@ class Disagreement:
         """Order by weight; among equals by what was seen, whichever entry it stands in."""
         return (self.weight, sorted((self.here.text, self.there.text)))
 
-    def text_against(self, other: str) -> str:
-        """Return it as part of a sentence; other: the identifier of the entry that is there."""
-        seen = f"{self.here.text} here, {self.there.text} in {other}"
+    def text(self, here: str, there: str) -> str:
+        """Return it as part of a sentence; here, there: what to call the two, with what belongs to each number."""
+        seen = f"{self.here.text} {here}, {self.there.text} {there}"
         return seen if self.here.label in self.here.text else f"{self.here.label}: {seen}"
 
 

@@ -12,7 +12,7 @@ from builder.records.settings import Settings
 from builder.records.yaml_text import Places
 from builder.rule import Fault, Path, rule
 
-__all__ = ["GROUP_CHECKS", "Gathering", "Member"]
+__all__ = ["GROUP_CHECKS", "Gathering", "Member", "outcomes_contradict"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -212,8 +212,8 @@ def outcomes_contradict(book: Gathering) -> Found:
 
 def _contradiction(kin: Kin, other: str, mend: str) -> Fault:
     most, telling = kin.disagreements[0], kin.telling
-    reason = f"they differ in {telling.text}" if telling else "the records state nothing that would explain it"
-    message = f"{most.text_against(other)}; {reason}"
+    reason = f"they differ in {telling.text()}" if telling else "the records state nothing that would explain it"
+    message = f"{most.text('here', f'in {other}')}; {reason}"
     return Fault(
         at=most.here.at, message=message, mend=mend, data={"other": other, "points_apart": round(most.apart, 1)}
     )

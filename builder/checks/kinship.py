@@ -104,7 +104,10 @@ def kin_of(one: Standing, other: Standing) -> Kin:
         return Kin(Relation.VARIANT, one, other)
     if disagreements(one, other):
         return Kin(Relation.CONTRADICTS, one, other)
-    return Kin(Relation.DUPLICATES if is_one_experiment(one, other) else Relation.REPEATS, one, other)
+    if is_one_experiment(one, other):
+        return Kin(Relation.DUPLICATES, one, other)
+    as_variant = Kin(Relation.VARIANT, one, other)
+    return as_variant if as_variant.varied else Kin(Relation.REPEATS, one, other)
 
 
 def families(items: Iterable[tuple[T, Standing]]) -> dict[T, tuple[T, ...]]:

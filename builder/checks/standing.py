@@ -87,7 +87,7 @@ class Standing:
     """What of a case is held against other entries.
 
     key: the reaction key; empty where the substrate could not be read. transformation: what stays of the substrate and
-    what is wanted, whatever the leaving group and whoever attacks; empty likewise.
+    what is wanted, whatever the leaving group and whoever attacks; empty likewise. wanted: keys of the wanted products.
     temperature_c: of the hottest stage, in °C. time_s: of the stages about as hot, in s. volumes: of each solvent, in
     per cent of them all, None where the record cannot tell. concentration in mol/L, scale in mol.
     attacks: Variable.BASE where the base is what attacks. weighed: masses of substrate and product as typed.
@@ -96,6 +96,7 @@ class Standing:
 
     key: str
     transformation: str
+    wanted: tuple[str, ...]
     attacks: Variable
     nucleophiles: tuple[Charge, ...]
     bases: tuple[Charge, ...]
@@ -123,6 +124,7 @@ def standing_of(case: Case) -> Standing:
     return Standing(
         key=_reaction_key(case),
         transformation=_transformation(case),
+        wanted=tuple(sorted(_wanted(case))),
         attacks=Variable.BASE if not record.nucleophiles and record.bases else Variable.NUCLEOPHILE,
         nucleophiles=_charges(case, Role.NUCLEOPHILE),
         bases=_charges(case, Role.BASE),

@@ -6,7 +6,7 @@ Plain text and numbers, not escaped; the templates escape.
 import datetime as dt
 from calendar import monthrange
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from urllib.parse import quote
 
@@ -16,6 +16,14 @@ from builder.finding import Finding, Level
 from builder.publish.charges import AmountView, StageView, amounts_as_tsv
 from builder.publish.expected import ExpectedView
 from builder.publish.figures import capital, joined
+from builder.publish.kindred import (
+    CONTRADICTION_RULE,
+    ContradictionView,
+    Relatives,
+    Series,
+    relatives_of,
+    view_kindred,
+)
 from builder.publish.measured import MeasuredLine, rate_constant_text
 from builder.publish.neighbours import SequenceView, Variant, same_product, sequences, variant_of, view_sequence
 from builder.publish.portrait import CompoundView, Portrait
@@ -61,7 +69,7 @@ class Surroundings:
     summaries: of every entry by identifier. rules: title by id, of those that have a page.
     links: to the entries that name this one, by its identifier.
     sequences: those an entry is a step of. variants: every entry as a row; others: identifiers of those that were after
-    the same product, newest first.
+    the same product from another substrate, newest first. relatives: from which the kin of an entry is told.
     """
 
     folder: str
@@ -73,6 +81,7 @@ class Surroundings:
     sequences: Mapping[str, tuple[SequenceView, ...]]
     variants: Mapping[str, Variant]
     others: Mapping[str, tuple[str, ...]]
+    relatives: Relatives
 
 
 @dataclass(frozen=True, slots=True)
@@ -160,6 +169,9 @@ class EntryView:
     stamp: tuple[Fact, ...]
     review: str
     review_overdue: bool
+    contradictions: tuple[ContradictionView, ...]
+    contradiction_rule: str
+    series: tuple[Series, ...]
     links: tuple[Link, ...]
     sequences: tuple[SequenceView, ...]
     variants: tuple[Variant, ...]
@@ -176,6 +188,7 @@ def surroundings_of(
     book: Book[Portrait], summaries: Mapping[str, Summary], rules: Iterable[Rule[object, object]]
 ) -> Surroundings:
     """Return what every entry's page needs to know of the book."""
+    relatives = relatives_of(book.entries)
     links: dict[str, list[Link]] = {}
     for entry in book.entries:
         for other, relation in _backward(entry.record):
@@ -190,9 +203,14 @@ def surroundings_of(
         sequences=_sequences(book.entries, summaries),
         variants={entry.id: variant_of(entry, summaries[entry.id]) for entry in book.entries},
         others={
-            entry_id: tuple(summary.id for summary in newest_first(summaries[other.id] for other in others))
+            entry_id: tuple(
+                summary.id
+                for summary in newest_first(summaries[other.id] for other in others)
+                if summary.id not in relatives.families.get(entry_id, ())
+            )
             for entry_id, others in same_product(book.entries).items()
         },
+        relatives=relatives,
     )
 
 
@@ -223,6 +241,7 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
     findings = [_finding(finding, record, around) for finding in entry.findings]
     of_level = partial(_of_level, findings)
     others = around.others.get(entry.id, ())
+    kindred = view_kindred(entry.id, around.relatives, around.summaries)
     rate, course = record.outcome.rate_constant, record.outcome.time_course
     return EntryView(
         summary=around.summaries[entry.id],
@@ -255,7 +274,7 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
         if course
         else (),
         queries=tuple(finding for finding in of_level(Level.QUERY) if not finding.accepted),
-        accepted=tuple(finding for finding in findings if finding.accepted),
+        accepted=tuple(finding for finding in findings if finding.accepted and finding.rule != CONTRADICTION_RULE),
         remarks=of_level(Level.REMARK),
         amounts=portrait.amounts,
         amounts_note=portrait.amounts_note,
@@ -268,7 +287,10 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
         stamp=_stamp(entry, settings),
         review=_review(record, settings),
         review_overdue=_is_overdue(record, settings, around.today),
-        links=_links(record, around),
+        contradictions=kindred.contradictions,
+        contradiction_rule=CONTRADICTION_RULE if CONTRADICTION_RULE in around.rules else "",
+        series=kindred.series,
+        links=_links(record, around, kindred.relations),
         sequences=around.sequences.get(entry.id, ()),
         variants=tuple(around.variants[each] for each in (entry.id, *others[:MOST_VARIANTS])) if others else (),
         further_variants=max(len(others) - MOST_VARIANTS, 0),
@@ -428,15 +450,21 @@ _INWARD: Mapping[str | int, str] = {"preceded_by": "leads to", "related": "relat
 _OUTWARD: Mapping[str | int, str] = {"preceded_by": "made from the product of", "related": "related"}
 
 
-def _links(record: Record, around: Surroundings) -> tuple[Link, ...]:
-    """Return the links to other entries, each once: those the record names, then those that name it."""
+def _links(record: Record, around: Surroundings, relations: Mapping[str, str]) -> tuple[Link, ...]:
+    """Return the links to other entries, each once: those the record names, then those that name it.
+
+    relations: what an entry is to this one, by identifier, where that can be told; it says more than "related".
+    """
     named = [(entry_id, _OUTWARD[path[0]]) for path, entry_id in record.references if path[0] in _OUTWARD]
     forward = [_link(entry_id, relation, around) for entry_id, relation in named]
     found: dict[str, Link] = {}
     for link in (*forward, *around.links.get(record.entry, ())):
         if link.id not in found or found[link.id].relation == "related":  # anything else says more
             found[link.id] = link
-    return tuple(found.values())
+    return tuple(
+        replace(link, relation=relations.get(link.id, link.relation)) if link.relation == "related" else link
+        for link in found.values()
+    )
 
 
 def _link(entry_id: str, relation: str, around: Surroundings) -> Link:

@@ -9,6 +9,7 @@ from builder.finding import Level
 from builder.publish.entry_view import next_review
 from builder.publish.facets import FacetIndex
 from builder.publish.figures import how_many
+from builder.publish.kindred import ContradictionPair
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
 from builder.publish.summary import Summary, newest_first
@@ -19,12 +20,12 @@ __all__ = ["StateOfBook", "ThinSpot", "front_page", "state_of_book", "thin_spots
 
 NEWEST_SHOWN = 6
 SHOWN_OF_A_KIND = 6
-"""Entries that the front page lists as contrary, explained or failed; the lists hold all."""
+"""Entries that the front page lists as contrary, explained, failed or contradicted; the lists hold all."""
 
 
 @dataclass(frozen=True, slots=True)
 class StateOfBook:
-    """What stands in the book today; every number counts entries, save those of queries and cautions."""
+    """What stands in the book today; numbers count entries, save those of queries, cautions and contradictions."""
 
     entries: int
     by_verdict: tuple[tuple[str, str, int], ...]
@@ -36,6 +37,8 @@ class StateOfBook:
     single_runs: int
     open_queries: int
     cautions: int
+    contradictions: int
+    open_contradictions: int
     on: str
 
 
@@ -48,8 +51,10 @@ class ThinSpot:
     never: tuple[str, ...]
 
 
-def state_of_book(book: Book[Portrait], summaries: Mapping[str, Summary]) -> StateOfBook:
-    """Return the counts of the front page; by_verdict holds word, key and number."""
+def state_of_book(
+    book: Book[Portrait], summaries: Mapping[str, Summary], pairs: Sequence[ContradictionPair]
+) -> StateOfBook:
+    """Return the counts of the front page; by_verdict holds word, key and number. pairs: those that contradict."""
     reviews = [next_review(entry.record, book.settings) for entry in book.entries]
     statuses = [entry.record.status for entry in book.entries]
     verdicts = Counter(entry.verdict for entry in book.entries if not summaries[entry.id].is_retired)
@@ -64,6 +69,8 @@ def state_of_book(book: Book[Portrait], summaries: Mapping[str, Summary]) -> Sta
         single_runs=sum((entry.record.performed.runs or 1) == 1 for entry in book.entries),
         open_queries=book.count(Level.QUERY),
         cautions=book.count(Level.CAUTION),
+        contradictions=len(pairs),
+        open_contradictions=sum(pair.is_open for pair in pairs),
         on=book.today.isoformat(),
     )
 
@@ -88,8 +95,13 @@ def thin_spots(indexes: Sequence[FacetIndex], summaries: Mapping[str, Summary]) 
     return tuple(spot for spot in found if spot.once or spot.never)
 
 
-def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: Sequence[FacetIndex]) -> Page:
-    """Return the front page."""
+def front_page(
+    book: Book[Portrait],
+    summaries: Mapping[str, Summary],
+    indexes: Sequence[FacetIndex],
+    pairs: Sequence[ContradictionPair],
+) -> Page:
+    """Return the front page; pairs: the entries that contradict each other, those first that want a reason."""
     current = [summary for summary in newest_first(summaries.values()) if not summary.is_retired]
     by_verdict = {
         verdict: [summary for summary in current if summary.verdict == verdict]
@@ -104,11 +116,12 @@ def front_page(book: Book[Portrait], summaries: Mapping[str, Summary], indexes: 
         write=deferred(
             "front.html",
             settings=book.settings,
-            state=state_of_book(book, summaries),
+            state=state_of_book(book, summaries, pairs),
             newest=current[:NEWEST_SHOWN],
             contrary=by_verdict[Verdict.CONTRARY][:SHOWN_OF_A_KIND],
             explained=by_verdict[Verdict.EXPLAINED][:SHOWN_OF_A_KIND],
             failures=[summary for summary in current if summary.is_failure][:SHOWN_OF_A_KIND],
+            pairs=pairs[:SHOWN_OF_A_KIND],
             thin=thin_spots(indexes, summaries),
             indexes=indexes,
             root="",

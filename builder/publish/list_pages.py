@@ -1,4 +1,4 @@
-"""Lists of entries: all of them, by each value of each facet, and the sequences they make."""
+"""Lists of entries: all of them, by each value of each facet, the sequences they make, those that contradict."""
 
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from builder.book import Book, Verdict
 from builder.publish.facets import Facet, FacetIndex, FacetValue
 from builder.publish.figures import how_many, joined
+from builder.publish.kindred import ContradictionPair
 from builder.publish.neighbours import SequenceView
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait
@@ -63,8 +64,9 @@ def list_pages(
     summaries: Mapping[str, Summary],
     indexes: Sequence[FacetIndex],
     sequences: Sequence[SequenceView],
+    pairs: Sequence[ContradictionPair],
 ) -> tuple[Page, ...]:
-    """Return the page of all entries, the page of sequences, and per facet an index and a page per value."""
+    """Return the pages of all entries, of sequences and of contradictions, per facet an index and a page per value."""
     everything = newest_first(summaries.values())
     pages = [
         Page(
@@ -78,6 +80,7 @@ def list_pages(
                 summaries=everything,
                 tally=tally(everything),
                 sequences=len(sequences),
+                contradictions=len(pairs),
                 root="../",
             ),
             menu="Entries",
@@ -88,6 +91,14 @@ def list_pages(
             title="Sequences",
             description="Runs of entries in which each makes the substrate of the next.",
             write=deferred("sequences.html", sequences=sequences, root="../../"),
+            section="lists/",
+        ),
+        Page(
+            kind="list",
+            path="lists/contradictions/",
+            title="Contradictions",
+            description="Pairs of entries that ran one reaction under near-same conditions with another outcome.",
+            write=deferred("contradictions.html", pairs=pairs, root="../../"),
             section="lists/",
         ),
     ]

@@ -8,6 +8,7 @@ from builder.publish.entry_view import surroundings_of
 from builder.publish.facets import facet_indexes
 from builder.publish.front_page import front_page
 from builder.publish.guide_pages import guide_pages
+from builder.publish.kindred import contradicting_pairs
 from builder.publish.list_pages import list_pages
 from builder.publish.page import Page
 from builder.publish.portrait import Portrait, summarise
@@ -28,9 +29,10 @@ def build_pages(book: Book[Portrait], rules: Sequence[Rule[object, object]] | No
     indexes = facet_indexes(book.entries)
     around = surroundings_of(book, summaries, rules)
     runs = dict.fromkeys(run for entry in book.entries for run in around.sequences.get(entry.id, ()))
+    pairs = contradicting_pairs(around.relatives, summaries)
     return (
-        front_page(book, summaries, indexes),
-        *list_pages(book, summaries, indexes, tuple(runs)),
+        front_page(book, summaries, indexes, pairs),
+        *list_pages(book, summaries, indexes, tuple(runs), pairs),
         *rule_pages(book, rules),
         *guide_pages(book),
         *(entry_page(entry, around) for entry in book.entries),

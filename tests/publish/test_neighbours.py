@@ -71,7 +71,8 @@ def test_of_many_ways_to_a_product_the_newest_are_listed_after_this_one() -> Non
     names = "ABCDEFGHIJ"[: MOST_VARIANTS + 2]
     performed = ENTRY.record.performed
     days = [performed.model_copy(update={"date": dt.date(2026, 1, day)}) for day in range(1, len(names) + 1)]
-    entries = [_called(name, performed=day) for name, day in zip(names, days, strict=True)]
+    apart = [replace(ENTRY, standing=replace(ENTRY.standing, transformation=name)) for name in names]
+    entries = [_called(name, entry, performed=day) for name, entry, day in zip(names, apart, days, strict=True)]
     around = surroundings_of(book_of(*entries), {entry.id: summarise(entry) for entry in entries}, ())
     view = view_entry(entries[0], around)
     assert "".join(row.summary.id for row in view.variants) == "A" + names[:1:-1]
