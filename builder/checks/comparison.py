@@ -5,8 +5,9 @@ The tolerances stand below; they are common practice and have no source. `outcom
 Everything here is symmetric: what holds of one entry against another holds the other way round.
 """
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
+from itertools import product
 
 from builder.checks.standing import NOT_STATED, Charge, Seen, Standing, Variable
 from builder.records.vocabulary import YieldKind
@@ -195,7 +196,7 @@ _NEAR: Mapping[Variable, Callable[[Standing, Standing], bool]] = {
     Variable.SOLVENT: _near_solvents,
     Variable.NUCLEOPHILE: lambda a, b: (
         _same_species(a.nucleophiles, b.nucleophiles)
-        if a.nucleophiles
+        if a.nucleophiles or b.nucleophiles
         else a.words[Variable.NUCLEOPHILE] == b.words[Variable.NUCLEOPHILE]
     ),
     Variable.EQUIVALENTS: _near_equivalents,
@@ -216,21 +217,37 @@ _BYSTANDERS = frozenset({Variable.RUNS, Variable.BY, Variable.DATE})
 def disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
     """Return the numbers of two outcomes that cannot both be the rule, the furthest apart first.
 
-    Of each quantity the comparison that says most; sums over a formula only where no product disagrees by itself.
+    Yields of one kind are compared where both have that kind, else across kinds. Sums over a formula are left out where
+    a product disagrees by itself.
     """
-    found: dict[str, Disagreement] = {}
-    theirs: dict[str, list[Seen]] = {}
-    for seen in other.seen:
-        theirs.setdefault(seen.what, []).append(seen)
-    for mine in one.seen:
-        for there in theirs.get(mine.what, ()):
-            each = _disagreement(mine, there)
-            if each is not None and (mine.what not in found or each.rank > found[mine.what].rank):
-                found[mine.what] = each
-    alone = [each for each in found.values() if not each.here.is_sum]
-    by_product = any(each.here.what.startswith("yield") for each in alone)
-    kept = alone if by_product else list(found.values())
+    mine, theirs = _by_quantity(one.seen), _by_quantity(other.seen)
+    found = [_most_apart(mine[what], theirs[what]) for what in mine.keys() & theirs.keys()]
+    kept = [each for each in found if each is not None]
+    if any(each.here.what.startswith("yield") and not each.here.is_sum for each in kept):
+        kept = [each for each in kept if not each.here.is_sum]
     return tuple(sorted(kept, key=lambda each: (-each.weight, each.here.what)))
+
+
+def _by_quantity(seen: Iterable[Seen]) -> dict[str, dict[YieldKind | None, Seen]]:
+    """Return what was seen by quantity and kind; several numbers for one are taken as the range they span."""
+    found: dict[str, dict[YieldKind | None, Seen]] = {}
+    for each in seen:
+        kinds = found.setdefault(each.what, {})
+        known = kinds.get(each.kind)
+        kinds[each.kind] = each if known is None else _spanned(known, each)
+    return found
+
+
+def _spanned(one: Seen, other: Seen) -> Seen:
+    low, high = min(one.low, other.low), max(one.high, other.high)
+    return replace(one, low=low, high=high, text=f"{one.text} and {other.text}")
+
+
+def _most_apart(mine: Mapping[YieldKind | None, Seen], theirs: Mapping[YieldKind | None, Seen]) -> Disagreement | None:
+    shared = mine.keys() & theirs.keys()
+    pairs = [(kind, kind) for kind in shared] or list(product(mine, theirs))
+    found = [_disagreement(mine[one], theirs[other]) for one, other in pairs]
+    return max((each for each in found if each is not None), key=lambda each: each.rank, default=None)
 
 
 def _disagreement(one: Seen, other: Seen) -> Disagreement | None:
