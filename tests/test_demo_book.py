@@ -12,6 +12,8 @@ from indigo.inchi import IndigoInchi
 
 from builder.book import Book, Entry, Verdict, open_book
 from builder.checks.case import Case
+from builder.checks.kinship import Kin, Relation, contradictions, families, kin_of
+from builder.checks.standing import Standing, Variable
 from builder.chemistry.patterns import load_attack_patterns
 from builder.chemistry.perception import (
     attacking_atoms,
@@ -268,19 +270,35 @@ def _related(status: Status = Status.CURRENT) -> list[tuple[Entry[Case], Entry[C
     return [(a, b) for a, b in pairs if b.id in (a.record.related or ()) and a.id in (b.record.related or ())]
 
 
-def test_pairs_contradict_each_other_under_like_conditions() -> None:
-    assert len([pair for pair in _related() if _contradict(*pair)]) >= 2
+def _in_force() -> dict[str, Standing]:
+    return {entry.id: entry.standing for entry in _book().entries if not entry.record.status.is_retired}
 
 
-def _contradict(one: Entry[Case], other: Entry[Case]) -> bool:
-    """Say whether the same substrate gave other products in the same solvent at the same temperature."""
-    names = [{solvent.name for solvent in entry.record.solvents} for entry in (one, other)]
-    return (
-        one.kept.substrate == other.kept.substrate
-        and one.record.stages[-1].temperature == other.record.stages[-1].temperature
-        and bool(names[0] & names[1])
-        and set(_products(one)) != set(_products(other))
-    )
+def test_pairs_contradict_each_other_and_both_sides_say_why() -> None:
+    pairs = {frozenset((one, other)): kin for one, other, kin in contradictions(_in_force().items())}
+    assert frozenset(("NSE9RPEB2", "NSPZFX5QX")) in pairs  # peroxide in the alkene
+    assert frozenset(("NSFZPQCJ2", "NSZ5DDC5X")) in pairs  # two equivalents of carbonate
+    accepting = {e.id for e in _book().entries if "outcomes-contradict" in {a.finding for a in e.record.accepted}}
+    assert accepting == frozenset().union(*pairs)
+    assert all(kin.telling is not None for kin in pairs.values())
+
+
+@pytest.mark.parametrize("variable", [Variable.SOLVENT, Variable.LEAVING_GROUP, Variable.SCALE])
+def test_a_series_varies_one_thing_alone(variable: Variable) -> None:
+    assert (variable,) in {kin.varied for kin in _kin() if kin.relation is Relation.VARIANT}
+
+
+def test_a_run_is_repeated_by_other_hands() -> None:
+    assert Relation.REPEATS in {kin.relation for kin in _kin()}
+
+
+def _kin() -> list[Kin]:
+    standings = _in_force()
+    return [
+        kin_of(standings[one], standings[other])
+        for one, others in families(standings.items()).items()
+        for other in others
+    ]
 
 
 def test_a_series_runs_through_leaving_groups() -> None:

@@ -64,6 +64,11 @@ class Difference:
     there: str
     is_near: bool
 
+    @property
+    def may_explain(self) -> bool:
+        """Say whether it could be the reason of another outcome; who ran it, and when, explains nothing by itself."""
+        return not self.is_near and self.variable not in _BYSTANDERS
+
     def text(self, here: str = "here", there: str = "there") -> str:
         """Return it as part of a sentence; here, there: what to call the two."""
         return f"{self.variable}: {self.here} {here}, {self.there} {there}"
@@ -132,8 +137,7 @@ def _said(variable: Variable, one: Standing, other: Standing) -> tuple[str, str]
 
 def telling_difference(one: Standing, other: Standing) -> Difference | None:
     """Return what most likely makes the difference; None where nothing that matters does."""
-    candidates = [each for each in differences(one, other) if each.variable not in _BYSTANDERS and not each.is_near]
-    return candidates[0] if candidates else None
+    return next((each for each in differences(one, other) if each.may_explain), None)
 
 
 def _within(factor: float, one: float | None, other: float | None) -> bool:

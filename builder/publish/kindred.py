@@ -45,12 +45,16 @@ _REPEAT_SAYS = (Variable.DATE, Variable.BY)
 
 @dataclass(frozen=True, slots=True)
 class ComparedRow:
-    """A quantity or variable of two entries; mark: contradicts, differs, near-same or same."""
+    """A quantity or variable of two entries.
+
+    mark: contradicts, differs, near-same or same. stands_out: it disagrees, or may be why the outcomes do.
+    """
 
     label: str
     here: str
     there: str
     mark: str
+    stands_out: bool
 
 
 @dataclass(frozen=True, slots=True)
@@ -193,7 +197,7 @@ def _contradiction(
         rows=(
             *(_number(each) for each in kin.disagreements),
             *(_condition(each) for each in differing),
-            *(ComparedRow(str(v), kin.here.words[v], kin.there.words[v], "same") for v in shown),
+            *(ComparedRow(str(v), kin.here.words[v], kin.there.words[v], "same", stands_out=False) for v in shown),
         ),
         same=joined(
             (
@@ -218,11 +222,12 @@ def _basis(standing: Standing) -> str:
 
 
 def _number(each: Disagreement) -> ComparedRow:
-    return ComparedRow(each.here.label, each.here.text, each.there.text, "contradicts")
+    return ComparedRow(each.here.label, each.here.text, each.there.text, "contradicts", stands_out=True)
 
 
 def _condition(each: Difference) -> ComparedRow:
-    return ComparedRow(str(each.variable), each.here, each.there, "near-same" if each.is_near else "differs")
+    mark = "near-same" if each.is_near else "differs"
+    return ComparedRow(str(each.variable), each.here, each.there, mark, stands_out=each.may_explain)
 
 
 # --- repeats and series -------------------------------------------------------------------------------------

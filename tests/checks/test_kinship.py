@@ -1,0 +1,89 @@
+"""Which entries belong together: derived, whatever the order of the records, and only within one reaction."""
+
+import itertools
+from dataclasses import replace
+
+import pytest
+
+from builder.checks import kinship
+from builder.checks.comparison import are_near_same
+from builder.checks.kinship import Relation, contradictions, families, kin_of, near_same_pairs
+from builder.checks.standing import Standing, Variable, standing_of
+from builder.records.specimen import with_example
+from tests.publish.handmade import case_of
+
+ELIMINATED = """\
+performed: {date: 2026-03-18, by: [bench-3]}
+base: {name: potassium carbonate, smiles: '[K+].[K+].[O-]C([O-])=O', equivalents: 2.0}
+outcome:
+  result: [substitution]
+  products: [{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]', use: desired, stereo: racemate}]
+  measured: [{yield: 52 %, of: A, kind: assay}]
+"""
+AGAIN = "performed: {date: 2026-03-18, by: [bench-3]}\n"
+SUBSTRATE = "substrate: {{name: a, smiles: '{}', stereo: racemate, class: secondary, leaving_group: {}, amount: {}}}\n"
+RELATIONS = {
+    "itself": ("", Relation.DUPLICATES, ()),
+    "once more": (AGAIN, Relation.REPEATS, ()),
+    "with carbonate, and half of it eliminated": (ELIMINATED, Relation.CONTRADICTS, (Variable.BASE,)),
+    "in DMSO": ("solvent: [{name: DMSO, volume: 20 mL}]\n", Relation.VARIANT, (Variable.SOLVENT,)),
+    "hotter": ("stages: [{temperature: 80 °C, time: 16 h}]\n", Relation.VARIANT, (Variable.TEMPERATURE,)),
+    "the chloride": (
+        SUBSTRATE.format("CCC(C)Cl", "chloride", "10 mmol"),
+        Relation.VARIANT,
+        (Variable.LEAVING_GROUP,),
+    ),
+    "potassium azide": (
+        AGAIN + "nucleophile: {name: potassium azide, smiles: '[K+].[N-]=[N+]=[N-]', equivalents: 1.5}\n",
+        Relation.VARIANT,
+        (Variable.NUCLEOPHILE,),
+    ),
+    "a mole": (
+        AGAIN + SUBSTRATE.format("CCC(C)Br", "bromide", "1 mol") + "solvent: [{name: DMF, volume: 2 L}]\n",
+        Relation.VARIANT,
+        (Variable.SCALE,),
+    ),
+}
+
+
+def _standing(example: str = "") -> Standing:
+    return standing_of(case_of(with_example(example)))
+
+
+@pytest.mark.parametrize(
+    ("example", "relation", "varied"), [pytest.param(*row, id=name) for name, row in RELATIONS.items()]
+)
+def test_what_an_entry_is_to_another(example: str, relation: Relation, varied: tuple[Variable, ...]) -> None:
+    one, other = _standing(), _standing(example)
+    for kin in (kin_of(one, other), kin_of(other, one)):
+        assert (kin.relation, kin.varied) == (relation, varied)
+
+
+def test_the_order_of_the_records_does_not_matter() -> None:
+    book = {name: _standing(example) for name, (example, _, _) in RELATIONS.items()}
+    found = set()
+    for order in itertools.islice(itertools.permutations(book), 0, None, 1000):
+        pairs = contradictions((name, book[name]) for name in order)
+        found.add(frozenset(frozenset((one, other)) for one, other, _ in pairs))
+    against = "with carbonate, and half of it eliminated"
+    assert found == {
+        frozenset(frozenset((against, name)) for name in ("itself", "once more", "potassium azide", "a mole"))
+    }
+
+
+def test_a_family_is_one_transformation() -> None:
+    book = {"A": _standing(), "B": _standing(AGAIN), "C": replace(_standing(), transformation=""), "D": _standing()}
+    assert families(book.items()) == {"A": ("B", "D"), "B": ("A", "D"), "D": ("A", "B")}
+
+
+def test_only_entries_of_one_reaction_are_compared(monkeypatch: pytest.MonkeyPatch) -> None:
+    compared = []
+
+    def counting(one: Standing, other: Standing) -> bool:
+        compared.append((one.key, other.key))
+        return are_near_same(one, other)
+
+    monkeypatch.setattr(kinship, "are_near_same", counting)
+    standing = _standing()
+    book = [(str(n), replace(standing, key=f"reaction {n // 2}")) for n in range(1000)]
+    assert len(list(near_same_pairs(book))) == len(compared) == 500
