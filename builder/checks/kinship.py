@@ -4,7 +4,7 @@ Every relation is derived from the standings, none is typed; each holds both way
 """
 
 from collections import defaultdict
-from collections.abc import Callable, Hashable, Iterable, Iterator
+from collections.abc import Callable, Hashable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from enum import StrEnum
 from itertools import combinations
@@ -22,7 +22,7 @@ from builder.checks.comparison import (
 )
 from builder.checks.standing import Standing, Variable
 
-__all__ = ["VARIED", "Kin", "Relation", "contradictions", "families", "kin_of", "near_same_pairs"]
+__all__ = ["GO_ALONG", "VARIED", "Kin", "Relation", "contradictions", "families", "kin_of", "near_same_pairs"]
 
 T = TypeVar("T", bound=Hashable)
 
@@ -47,7 +47,9 @@ VARIED = (
     Variable.SUBSTRATE,
     Variable.SCALE,
 )
-"""What series are made of; time and concentration go along with these, and make none of their own."""
+"""What series are made of."""
+GO_ALONG = (Variable.TIME, Variable.CONCENTRATION, Variable.VESSEL)
+"""What is changed along with the rest, and makes a series only where nothing else differs."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -75,8 +77,11 @@ class Kin:
 
     @property
     def varied(self) -> tuple[Variable, ...]:
-        """Return the variables in which the other is a variant of this one."""
-        return tuple(variable for variable in VARIED if not is_near(variable, self.here, self.there))
+        """Return the variables in which the other is a variant of this one; empty where only the drawing differs."""
+        return self._apart(VARIED) or self._apart(GO_ALONG)
+
+    def _apart(self, variables: Sequence[Variable]) -> tuple[Variable, ...]:
+        return tuple(variable for variable in variables if not is_near(variable, self.here, self.there))
 
 
 def near_same_pairs(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[tuple[T, Standing], tuple[T, Standing]]]:
@@ -106,8 +111,8 @@ def kin_of(one: Standing, other: Standing) -> Kin:
         return Kin(Relation.CONTRADICTS, one, other)
     if is_one_experiment(one, other):
         return Kin(Relation.DUPLICATES, one, other)
-    as_variant = Kin(Relation.VARIANT, one, other)
-    return as_variant if as_variant.varied else Kin(Relation.REPEATS, one, other)
+    is_variant = not all(is_near(variable, one, other) for variable in VARIED)
+    return Kin(Relation.VARIANT if is_variant else Relation.REPEATS, one, other)
 
 
 def families(items: Iterable[tuple[T, Standing]]) -> dict[T, tuple[T, ...]]:

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from builder.book import Entry
 from builder.checks.comparison import Difference, Disagreement, is_near
 from builder.checks.group import outcomes_contradict
-from builder.checks.kinship import VARIED, Kin, Relation, contradictions, families, kin_of
+from builder.checks.kinship import GO_ALONG, VARIED, Kin, Relation, contradictions, families, kin_of
 from builder.checks.standing import NOT_STATED, Standing, Variable
 from builder.publish.figures import capital, joined
 from builder.publish.portrait import Portrait
@@ -37,8 +37,6 @@ _SEVERAL = "several at once"
 _REPEATS = "repeats"
 _ALWAYS_SHOWN = (Variable.SCALE, Variable.RUNS)
 """Stand beside every outcome, the same or not."""
-_GO_ALONG = (Variable.TIME, Variable.CONCENTRATION)
-"""What a series does not vary of its own, and shows where it differs."""
 _NOTHING_SAID = frozenset({NOT_STATED, "none"})
 _REPEAT_SAYS = (Variable.DATE, Variable.BY)
 
@@ -247,7 +245,7 @@ def _all_series(here: str, kin: Mapping[str, Kin], summaries: Mapping[str, Summa
 
 def _series(name: str, here: str, group: Mapping[str, Kin], summaries: Mapping[str, Summary]) -> Series:
     listed = newest_first(summaries[other] for other in group)[:MOST_IN_SERIES]
-    varied = tuple(variable for variable in VARIED if any(variable in each.varied for each in group.values()))
+    varied = tuple(v for v in (*VARIED, *GO_ALONG) if any(v in each.varied for each in group.values()))
     said = _REPEAT_SAYS if name == _REPEATS else varied
     standing = next(iter(group.values())).here
     return Series(
@@ -265,8 +263,8 @@ def _series(name: str, here: str, group: Mapping[str, Kin], summaries: Mapping[s
 
 
 def _row(summary: Summary, kin: Kin, said: Sequence[Variable]) -> SeriesRow:
-    along = (v for v in _GO_ALONG if v not in said and not is_near(v, kin.here, kin.there))
-    detail = joined(f"{variable} {kin.there.words[variable]}" for variable in along)
+    along = (v for v in GO_ALONG if v not in said and not is_near(v, kin.here, kin.there))
+    detail = joined(f"{v} {text}" for v in along if (text := kin.there.words[v]) not in _NOTHING_SAID)
     return SeriesRow(summary, _value(kin.there, said), detail, _outcome(kin.there), is_here=False)
 
 
@@ -279,7 +277,9 @@ def _outcome(standing: Standing) -> str:
 
 
 def _value(standing: Standing, said: Sequence[Variable]) -> str:
-    """Return one variable as it stands, several with their names."""
+    """Return one variable as it stands, several with their names; without any, only the drawing differs."""
+    if not said:
+        return "structures drawn otherwise"
     if len(said) == 1 or said == _REPEAT_SAYS:
         return joined(standing.words[variable] for variable in said)
     return joined((f"{variable} {standing.words[variable]}" for variable in said), "; ")

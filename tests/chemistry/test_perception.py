@@ -14,6 +14,7 @@ from builder.chemistry.perception import (
     site_class_meanings,
     site_class_names,
     sites_of,
+    stem_of,
 )
 from builder.chemistry.structure import name_atom, parse_smiles
 
@@ -171,6 +172,24 @@ def test_every_leaving_group_of_the_list_is_perceived_somewhere() -> None:
         if group != "perchlorate":
             assert sites_of(parse_smiles(smiles), group), group
     assert groups == set(leaving_groups())
+
+
+STEMS = [
+    # substrate, leaving group, what stays with its alpha carbon marked
+    ("CCCCBr", "bromide", "CCC[CH2:1]"),
+    ("CCCCOS(=O)(=O)c1ccc(C)cc1", "tosylate", "CCC[CH2:1]"),
+    ("CC[C@H](C)OS(C)(=O)=O", "mesylate", "CC[CH:1]C"),
+    ("CC[C@@H](C)Br", "bromide", "CC[CH:1]C"),
+    ("CCCC[N+](C)(C)C.[I-]", "ammonium", "CCC[CH2:1]"),
+    ("CC1CO1", "epoxide", "CC1O[CH2:1]1"),
+    ("CC1=CCCCC1", "none", "CC1=[CH:1]CCCC1"),
+]
+
+
+@pytest.mark.parametrize(("smiles", "group", "stem"), STEMS)
+def test_a_stem_is_the_same_whatever_leaves(smiles: str, group: str, stem: str) -> None:
+    substrate = parse_smiles(smiles)
+    assert stem in {stem_of(substrate, site) for site in sites_of(substrate, group)}
 
 
 @pytest.mark.parametrize(
