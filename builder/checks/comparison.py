@@ -9,7 +9,8 @@ from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import product
 
-from builder.checks.standing import NOT_STATED, Charge, Seen, Standing, Variable
+from builder.checks.seen import Seen
+from builder.checks.standing import NOT_STATED, Charge, Standing, Variable
 from builder.records.vocabulary import YieldKind
 
 __all__ = [

@@ -19,7 +19,8 @@ from builder.checks.comparison import (
     telling_difference,
 )
 from builder.checks.group import outcomes_contradict
-from builder.checks.standing import Charge, Seen, Standing, Variable, standing_of
+from builder.checks.seen import Seen
+from builder.checks.standing import Charge, Standing, Variable, standing_of
 from builder.records.specimen import with_example
 from builder.records.vocabulary import YieldKind
 from tests.publish.handmade import case_of
