@@ -5,10 +5,17 @@ from builder.chemistry.neutral import neutral_form
 from builder.chemistry.perception import stem_of
 from builder.chemistry.structure import Structure, stereo_key
 from builder.mechanism.amounts import Role
-from builder.records.model import Product
+from builder.records.model import Product, Record
 from builder.records.vocabulary import NucleophileWord, ProductUse, StereoKind
 
-__all__ = ["product_key", "product_structure", "reaction_key", "transformation_key", "wanted_products"]
+__all__ = [
+    "attacking_role",
+    "product_key",
+    "product_structure",
+    "reaction_key",
+    "transformation_key",
+    "wanted_products",
+]
 
 
 def reaction_key(case: Case) -> str:
@@ -28,12 +35,16 @@ def reaction_key(case: Case) -> str:
     return " | ".join(parts)
 
 
+def attacking_role(record: Record) -> Role:
+    """Return the role of what attacks: a base where no nucleophile is charged, nor named by its word."""
+    return Role.BASE if record.nucleophile in {None, NucleophileWord.NONE} else Role.NUCLEOPHILE
+
+
 def _partners(case: Case) -> list[str]:
     """Return what attacks, sorted: nucleophiles without counter-ions or the word in their place, else the bases."""
-    word = case.record.nucleophile
-    if isinstance(word, NucleophileWord) and word is not NucleophileWord.NONE:
-        return [str(word)]
-    role = Role.NUCLEOPHILE if case.record.nucleophiles else Role.BASE
+    role = attacking_role(case.record)
+    if role is Role.NUCLEOPHILE and not case.record.nucleophiles:
+        return [str(case.record.nucleophile)]
     rows = [row for row in case.amounts.rows if row.role is role]
     found = [(case.structures.get(row.path), row.name) for row in rows]
     return sorted(_without_cations(structure) if structure else name.casefold() for structure, name in found)

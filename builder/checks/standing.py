@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from enum import StrEnum
 
 from builder.checks.case import Case
-from builder.checks.reaction_key import reaction_key, transformation_key, wanted_products
+from builder.checks.reaction_key import attacking_role, reaction_key, transformation_key, wanted_products
 from builder.checks.seen import Seen, seen_in
 from builder.mechanism.amounts import AmountRow, Role, charged_rows
 from builder.mechanism.from_record import COMPARABLE_K
@@ -100,7 +100,7 @@ def standing_of(case: Case) -> Standing:
         key=reaction_key(case),
         transformation=transformation_key(case),
         wanted=tuple(sorted(wanted_products(case))),
-        attacks=Variable.BASE if not record.nucleophiles and record.bases else Variable.NUCLEOPHILE,
+        attacks=Variable.BASE if attacking_role(record) is Role.BASE else Variable.NUCLEOPHILE,
         nucleophiles=_charges(case, Role.NUCLEOPHILE),
         bases=_charges(case, Role.BASE),
         reagents=_charges(case, Role.REAGENT),
@@ -167,7 +167,7 @@ def _words(case: Case, solvents: tuple[str, ...], volumes: tuple[float, ...] | N
     record, amounts, stages = case.record, case.amounts, case.record.stages
     people = {person.code: person.shown_as for person in case.settings.people}
     concentration, scale = amounts.concentration_mol_per_l, amounts.substrate.amount_mol
-    attacking = Role.NUCLEOPHILE if record.nucleophiles or not record.bases else Role.BASE
+    attacking = attacking_role(record)
     return {
         Variable.BASE: _listed(case, Role.BASE, with_amounts=attacking is Role.NUCLEOPHILE),
         Variable.REAGENTS: _listed(case, Role.REAGENT, with_amounts=True),

@@ -88,6 +88,24 @@ def test_the_time_at_the_highest_temperature_counts() -> None:
     assert found.words[Variable.TEMPERATURE] == "0 °C → 55 °C → 60 °C"
 
 
+SOLVOLYSIS = "nucleophile: solvent\n"
+WITH_A_BASE = "base: {name: sodium hydrogencarbonate, smiles: '[Na+].OC([O-])=O', equivalents: 2}\n"
+ATTACKS = {
+    "the nucleophile": ("", Variable.NUCLEOPHILE, "1.50 equiv"),
+    "the nucleophile beside a base": (WITH_A_BASE, Variable.NUCLEOPHILE, "1.50 equiv"),
+    "the solvent beside a base": (SOLVOLYSIS + WITH_A_BASE, Variable.NUCLEOPHILE, "none"),
+    "the base alone": ("nucleophile: none\n" + WITH_A_BASE, Variable.BASE, "2.00 equiv"),
+}
+
+
+@pytest.mark.parametrize(
+    ("example", "attacks", "equivalents"), [pytest.param(*row, id=name) for name, row in ATTACKS.items()]
+)
+def test_the_equivalents_are_those_of_what_attacks(example: str, attacks: Variable, equivalents: str) -> None:
+    found = _standing(example)
+    assert (found.attacks, found.words[Variable.EQUIVALENTS]) == (attacks, equivalents)
+
+
 def test_solvents_are_known_by_any_of_their_names() -> None:
     one = _standing("solvent: [{name: ethanol, volume: 16 mL}, {name: water, volume: 4 mL}]\n")
     other = _standing(
