@@ -98,7 +98,7 @@ def test_lists_hold_the_pairs_with_scale_and_runs(pages: dict[str, Page]) -> Non
     for path in ("", "lists/contradictions/"):
         text = " ".join(Markup(pages[path].body).texts)
         assert "against With carbonate" in text.replace("Azide displacement of 2-bromobutane ", "")
-        assert "81 % assay yield (10.0 mmol, n = 2) in NS4T9XQ2N" in text
+        assert "81 % isolated yield (10.0 mmol, n = 2) in NS4T9XQ2N" in text
         assert "base: none in NS4T9XQ2N, potassium carbonate, 2.00 equiv in NS7K3QFMC" in text
 
 
