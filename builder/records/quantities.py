@@ -29,6 +29,7 @@ __all__ = [
     "quantity_pattern",
     "temperature_pattern",
     "units_of",
+    "writing_aids",
 ]
 
 
@@ -333,6 +334,28 @@ def is_beyond_measure(number: str) -> bool:
     """Say whether a number is longer, or its power of ten larger, than any measurement; safe for hostile text."""
     _, _, exponent = number.lower().partition("e")
     return len(number) > _MAX_NUMBER_LENGTH or (bool(exponent) and abs(int(exponent)) > _MAX_EXPONENT)
+
+
+def writing_aids() -> dict[str, object]:
+    """Return as plain data what a mend at the keyboard needs: units with their spellings, and words that are no unit.
+
+    units: by dimension; value × factor + offset is in the first unit of the dimension. vague: word -> what to write.
+    spelled_out: word -> unit. longest, most_exponent: of a number.
+    """
+    return {
+        "units": {str(dimension): [_unit_aid(unit, units[0]) for unit in units] for dimension, units in _UNITS.items()},
+        "vague": _VAGUE,
+        "spelled_out": _SPELLED_OUT,
+        "longest": _MAX_NUMBER_LENGTH,
+        "most_exponent": _MAX_EXPONENT,
+    }
+
+
+def _unit_aid(unit: _Unit, canonical: _Unit) -> dict[str, object]:
+    if unit.pint == "kelvin":
+        return {"symbol": unit.symbol, "spellings": unit.spellings, "factor": 1.0, "offset": -273.15}
+    factor = 1.0 if unit is canonical else float(_factor(unit.pint, canonical.pint))
+    return {"symbol": unit.symbol, "spellings": unit.spellings, "factor": factor, "offset": 0.0}
 
 
 def quantity_pattern(dimension: Dimension, *, is_positive: bool) -> str:
