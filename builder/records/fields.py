@@ -36,6 +36,7 @@ from builder.records.quantities import (
 from builder.rule import Path
 
 __all__ = [
+    "MARKUP",
     "Amount",
     "AmountOrMass",
     "CasNumber",
@@ -131,7 +132,9 @@ def _bounds(quantity: Quantity | Percent | Temperature) -> tuple[float, float, s
     return one.magnitude, one.magnitude, units_of(one.dimension)[0]
 
 
-def _schema(pattern: str, *examples: str, measures: Sequence[Dimension], bounds: tuple[float, float]) -> WithJsonSchema:
+def _schema(
+    pattern: str, *examples: str, measures: Sequence[Dimension], bounds: tuple[float, float], open_below: bool = True
+) -> WithJsonSchema:
     """Return the schema of a quantity; what no keyword of JSON Schema says stands under keywords of our own, x-….
 
     bounds: the least and the most, in the canonical unit of each dimension.
@@ -143,7 +146,7 @@ def _schema(pattern: str, *examples: str, measures: Sequence[Dimension], bounds:
             "examples": list(examples),
             "x-measures": [str(dimension) for dimension in measures],
             "x-units": [unit for dimension in measures for unit in units_of(dimension)],
-            "x-bounds": list(bounds),
+            "x-bounds": {"above" if open_below else "least": bounds[0], "most": bounds[1]},
         }
     )
 
@@ -218,6 +221,7 @@ TypedPercent = Annotated[
         "88 %",
         measures=[Dimension.FRACTION],
         bounds=_PERCENTAGES,
+        open_below=False,
     ),
 ]
 
@@ -291,7 +295,7 @@ def _smiles(value: object) -> str:
     return _text(value)
 
 
-_MARKUP = re.compile(
+MARKUP = re.compile(
     r"</?(?:a|b|base|body|br|button|code|div|em|embed|font|form|frame|h[1-6]|head|hr|html|i|iframe|img|input|link|math"
     r"|meta|object|p|pre|script|select|small|span|strong|style|sub|sup|svg|table|td|template|textarea|tr|u)\b[^<>]*>?"
     r"|\bjavascript:",
@@ -305,7 +309,7 @@ def _line(text: str) -> str:
         raise faulty("empty-value", "the text is empty", "write it, or leave the key out")
     if _CONTROL.search(text):
         raise faulty("file-not-text", "the text holds a control character", "delete it")
-    markup = _MARKUP.search(text)
+    markup = MARKUP.search(text)
     if markup:
         mend = "write plain text: ¹³C, H₂O, 5 < 7 with spaces; it is shown as it is typed"
         raise faulty("markup-in-text", f"{markup[0]} looks like HTML", mend)

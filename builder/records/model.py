@@ -317,9 +317,7 @@ class Measurement(Part):
     er: NumberRatio | None = Field(default=None, description="enantiomer ratio")
     dr: NumberRatio | None = Field(default=None, description="diastereomer ratio")
     ratio: LabelledRatio | None = Field(default=None, description="labels, then numbers")
-    of: Labels | None = Field(
-        default=None, description="label of the product, several for a mixture; substrate where that was measured"
-    )
+    of: Labels | None = Field(default=None, description="label of the product; substrate where that was measured")
     kind: YieldKind | None = Field(default=None, description="weighed, measured against a standard, or bare area")
     by: Line | None = Field(default=None, description="method")
     mass: Mass | None = Field(default=None, description="mass isolated")

@@ -35,6 +35,7 @@ TEMPLATES = {
     "rule-gate": "rules/sn2-closed-tertiary/",
     "rule-check": "rules/yield-above-100/",
     "how-to-add": "how-to-add/",
+    "form": "how-to-add/form/",
     "how-to-cite": "how-to-cite/",
     "own-page": "fume-hoods/",
     "missing": "404.html",
