@@ -1,4 +1,4 @@
-"""The form that writes an entry: by keyboard alone, what it says of slips, its draft, and its files passing the check."""
+"""The form that writes an entry: by keyboard alone, what it says of slips, its draft, its files in the check."""
 
 import dataclasses
 import gzip
@@ -661,7 +661,7 @@ def test_browser_and_reader_take_and_refuse_the_same(name: str, desk: "sync_api.
     place, kind, pieces = QUANTITIES[name]
     adapter: TypeAdapter[Any] = TypeAdapter(Annotated[kind, "read as a record reads it"])
 
-    @settings(max_examples=12, **SETTINGS_OF_BATCHES)
+    @settings(max_examples=6, **SETTINGS_OF_BATCHES)
     @given(_texts(*pieces))
     def compare(texts: list[str]) -> None:
         texts = [text for text in texts if text.strip()]
@@ -747,7 +747,7 @@ _NOTE = st.lists(_LINE | st.just("") | st.just("  deep"), min_size=1, max_size=4
 
 
 def test_every_text_survives_to_the_reader(desk: "sync_api.Page") -> None:
-    @settings(max_examples=15, **SETTINGS_OF_BATCHES)
+    @settings(max_examples=8, **SETTINGS_OF_BATCHES)
     @given(st.lists(st.tuples(_TYPED, _TYPED, _TYPED, _TYPED, _NOTE.filter(bool)), min_size=15, max_size=15))
     def compare(texts: list[tuple[str, ...]]) -> None:
         texts = [each for each in texts if not any(fields.MARKUP.search(text) for text in each)]
