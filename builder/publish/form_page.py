@@ -108,7 +108,6 @@ _ONLY_FOR = {
     "kind": ("yield",),
     "mass": ("yield", "recovered"),
     "purity": ("yield", "recovered"),
-    "calibrated": ("yield", "conversion", "recovered", "ratio"),
 }
 _STARTS = frozenset({"nucleophile", "solvent", "products", "measured"})
 """Lists of which nearly every record has one, beside those that are required."""
@@ -224,6 +223,8 @@ def _field(
         field["opens_after"] = {"result": _OPENS_AFTER[key]}
     if key == "of" and "of" in field:
         field["words"] = ["substrate"]
+    if key == "title":
+        field["wide"] = True
     if key in _LONG:
         field["long"] = True
     if key in _STARTS:

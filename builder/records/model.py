@@ -323,7 +323,7 @@ class Measurement(Part):
     mass: Mass | None = Field(default=None, description="mass isolated")
     purity: Purity | None = Field(default=None, description="content of the isolated product by mass")
     calibrated: Flag | None = Field(default=None, description="whether responses were calibrated")
-    spread: TypedPercent | None = Field(default=None, description="standard deviation over the runs")
+    spread: TypedPercent | None = Field(default=None, description="standard deviation over the runs", examples=["3 %"])
     n: Count | None = Field(default=None, description="number of measurements")
     note: Line | None = Field(default=None, description="anything else about this number")
 
@@ -421,7 +421,7 @@ def _require_products(outcome: "Outcome") -> None:
 class Outcome(Part):
     """Result, claim, products and measurements."""
 
-    result: OneOrMany[Result] = Field(description="what was seen to happen")
+    result: OneOrMany[Result] = Field(description="what was seen to happen, the most important first")
     claim: Claim | None = Field(default=None, description="what you hold happened, and why")
     products: tuple[Product, ...] = Field(default=(), description="each product under a label")
     sought: Annotated[Sought, BeforeValidator(_sought, json_schema_input_type=str | Sought)] | None = Field(

@@ -30,7 +30,7 @@
     control.setAttribute("aria-describedby", hint ? `${hinted.id} ${said.id}` : said.id);
     if (field.required) control.setAttribute("aria-required", "true");
     const label = element("label", { htmlFor: control.id }, field.label, ...needOf(field));
-    return { el: element("div", { className: "hb-field" }, label, hinted, control, said), said };
+    return { el: element("div", { className: field.wide ? "hb-field hb-field--broad" : "hb-field" }, label, hinted, control, said), said };
   }
 
   const needOf = (field) => (field.required ? [" ", element("span", { className: "hb-field__need" }, "required")] : []);
@@ -161,13 +161,17 @@
     const el = element("fieldset", { className: "hb-field hb-field--wide" }, legend, hint,
       element("div", { className: isLong ? "hb-choices hb-choices--columns" : "hb-choices" }, ...choices), said);
     el.setAttribute("aria-describedby", `${hint.id} ${said.id}`);
-    const chosen = () => boxes.filter((box) => box.checked).map((box) => box.value);
+    let order = []; // as they were ticked: the first is the most important
+    const chosen = () => order;
     const node = {
       el, field, isTouched: false,
       value: () => (chosen().length ? { items: chosen().map((text) => ({ style: "text", text })) } : undefined),
       plain: () => (chosen().length ? chosen() : undefined),
       raw: () => (chosen().length ? chosen() : undefined),
-      load: (raw) => { for (const box of boxes) box.checked = [].concat(raw ?? []).includes(box.value); },
+      load(raw) {
+        order = [].concat(raw ?? []);
+        for (const box of boxes) box.checked = order.includes(box.value);
+      },
       focus: () => boxes[0].focus(),
       say: sayer(said, () => []),
       review: (report, isWanted) =>
@@ -175,7 +179,10 @@
     };
     for (const box of boxes) {
       box.setAttribute("aria-describedby", said.id);
-      box.addEventListener("change", () => changed(node));
+      box.addEventListener("change", () => {
+        order = [...order.filter((word) => word !== box.value), ...(box.checked ? [box.value] : [])];
+        changed(node);
+      });
     }
     return node;
   }
@@ -289,7 +296,7 @@
   /** Texts, a line each, and parts behind them in one list. */
   function mixedNode(field) {
     const texts = listNode({ ...field, of: field.text });
-    const parts = groupsNode({ ...field, label: `${field.label}: ${field.one}s`, required: false });
+    const parts = groupsNode({ ...field, label: `${field.label}: ${field.one}s`, means: "", required: false });
     const all = () => [texts, parts].flatMap((node) => node.value()?.items ?? []);
     return {
       el: element("div", {}, texts.el, parts.el), field,
@@ -577,7 +584,13 @@
   const draft = kept();
   if (draft) {
     entry = draft.entry;
-    for (const [key, node] of tops) if (draft.raw[key] !== undefined) node.load(draft.raw[key]);
+    for (const [key, node] of tops) {
+      try {
+        if (draft.raw[key] !== undefined) node.load(draft.raw[key]);
+      } catch {
+        announce(`${node.field.label} was kept by an earlier version of the form and cannot be shown.`);
+      }
+    }
   } else {
     // One of each kind that nearly every record has stands ready.
     for (const node of [...tops.values()].flatMap((top) => [top, ...(top.nodes?.values() ?? [])])) {

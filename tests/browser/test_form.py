@@ -11,6 +11,7 @@ from typing import Annotated, Any
 
 import material
 import pytest
+import yaml
 from hypothesis import HealthCheck, Phase, given, settings
 from hypothesis import strategies as st
 from jinja2 import Environment
@@ -751,9 +752,9 @@ def test_every_text_survives_to_the_reader(desk: "sync_api.Page") -> None:
     @given(st.lists(st.tuples(_TYPED, _TYPED, _TYPED, _TYPED, _NOTE.filter(bool)), min_size=15, max_size=15))
     def compare(texts: list[tuple[str, ...]]) -> None:
         texts = [each for each in texts if not any(fields.MARKUP.search(text) for text in each)]
-        for (title, name, step, method, note), yaml in zip(texts, desk.evaluate(_WRITTEN, texts), strict=True):
-            reading = read_bytes(yaml.encode(), "NS4T9XQ2N.yml")
-            assert reading.findings == (), yaml
+        for (title, name, step, method, note), written in zip(texts, desk.evaluate(_WRITTEN, texts), strict=True):
+            reading = read_bytes(written.encode(), "NS4T9XQ2N.yml")
+            assert reading.findings == (), written
             record = reading.record
             assert record is not None
             (stage,) = record.stages
@@ -762,3 +763,76 @@ def test_every_text_survives_to_the_reader(desk: "sync_api.Page") -> None:
             assert (record.outcome.measured[0].by, record.procedure) == (method, note)
 
     compare()
+
+
+# --- every record of the book, through the form ---------------------------------------------------------------
+
+
+def _draft(kept: Any, field: Any, form: Any) -> Any:
+    """Return what a draft of the form keeps for a value of a record, as its YAML is typed."""
+    listed = kept if isinstance(kept, list) else [kept]
+    match field["is"]:
+        case "part":
+            return _draft_of_part({"name": kept, "smiles": kept} if isinstance(kept, str) else kept, field, form)
+        case "choice":
+            return (
+                {"word": kept}
+                if isinstance(kept, str)
+                else {"items": [_draft(each, field["of"], form) for each in listed]}
+            )
+        case "mixed":
+            texts = [each for each in listed if isinstance(each, str)]
+            files = [_draft(each, field["of"], form) for each in listed if not isinstance(each, str)]
+            return {"text": "\n".join(texts), "items": files}
+        case "points":
+            return "\n".join(" ".join(point) for point in listed)
+        case "list" if field["of"]["is"] == "part":
+            return [_draft(each, field["of"], form) for each in listed]
+        case "list" if field["of"]["is"] == "word":
+            return listed
+        case "list":
+            return (", " if field["of"].get("format") in {"person", "label", "entry"} else "\n").join(listed)
+        case _:
+            return kept
+
+
+def _draft_of_part(kept: Any, field: Any, form: Any) -> dict[str, Any]:
+    about = form["parts"][field["part"]]
+    draft = {each["key"]: _draft(kept[each["key"]], each, form) for each in about["fields"] if each["key"] in kept}
+    return draft | {"?": next((key for key in about.get("exactly", ()) if key in kept), None)}
+
+
+DEMO = sorted((ROOT / "entries").glob("**/NS*.yml"))
+FEW = [path for path in DEMO if path.parent.name != "archive"][::20]
+_KEEP = "(draft) => localStorage.setItem(`handbook-form ${location.pathname}`, JSON.stringify(draft))"
+
+
+@pytest.mark.parametrize(
+    "path", [pytest.param(path, marks=() if path in FEW else pytest.mark.slow) for path in DEMO], ids=str
+)
+def test_a_record_comes_out_of_the_form_as_it_went_in(path: Path, desk: "sync_api.Page") -> None:
+    text = path.read_text("utf-8")
+    typed = yaml.load(text, yaml.BaseLoader)
+    form = desk.evaluate("handbookFormat")
+    fields_of_record = form["parts"][form["record"]]["fields"]
+    raw = {
+        field["key"]: _draft(typed[field["key"]], field, form) for field in fields_of_record if field["key"] in typed
+    }
+    if typed["status"] in {"superseded", "withdrawn"}:
+        raw["status"] = "current"
+    try:
+        desk.evaluate(_KEEP, {"entry": "NS4T9XQ2N", "raw": raw})
+        desk.reload()
+        written = str(desk.locator("#hb-form-yaml").text_content())
+        open_problems = desk.locator("#hb-form-mend li").all_text_contents()
+    finally:
+        desk.evaluate("localStorage.clear()")
+        desk.reload()
+    before = read_bytes(text.encode(), path.name).record
+    reading = read_bytes(written.encode(), "NS4T9XQ2N.yml")
+    assert before is not None
+    assert reading.findings == ()
+    assert reading.record is not None
+    later = {"entry", "revision", "accepted", "superseded", "withdrawn", "status"}
+    assert reading.record.model_dump(exclude=later) == before.model_dump(exclude=later)
+    assert [each for each in open_problems if "The book knows" not in each] == []
