@@ -385,21 +385,19 @@
       const lack = record.lacking(condition, plain);
       const keys = lack?.keys.filter((key) => node.nodes.has(key)) ?? [];
       if (!keys.length) continue;
-      const isHow = lack.how === "none" ? "none" : keys.length > 1 ? lack.how : "all";
       const [first, ...others] = keys.map((key) => node.nodes.get(key).field.label);
       const labels = [first, ...others.map(lower)], last = labels.length > 1 ? labels.pop() : null;
-      const joined = labels.join(", ") + (last ? ` ${isHow === "any" ? "or" : "and"} ${last}` : "");
-      report(node.nodes.get(keys[0]), isHow === "none" ? { says: `Leave out ${lower(joined)}, or what excludes it.` } : missing(joined));
+      const joined = labels.join(", ") + (last ? ` ${lack.how === "any" ? "or" : "and"} ${last}` : "");
+      report(node.nodes.get(keys[0]), lack.how === "not" ? { says: `Leave out ${lower(joined)}, or what excludes it.` } : missing(joined));
     }
   }
 
   /** Unfolds the parts that belong to a word once it is chosen. */
   function openAfter(fields, nodes) {
-    for (const each of fields) {
-      const [[key, words]] = Object.entries(each.opens_after ?? { "": [] });
-      if (!nodes.get(key)?.plain()?.some((word) => words.includes(word)) || each.wasOpened) continue;
-      each.wasOpened = true;
-      nodes.get(each.key).el.open = true;
+    for (const { key, opens_after: after } of fields) {
+      const node = nodes.get(key);
+      const isDue = Object.entries(after ?? {}).some(([other, words]) => nodes.get(other).plain()?.some((word) => words.includes(word)));
+      if (isDue && !node.wasOpened) node.el.open = node.wasOpened = true;
     }
   }
 
@@ -490,7 +488,8 @@
   // The record as a part, for its required keys and conditions.
   const whole = { nodes: tops, field: {}, plain: () => Object.fromEntries([...tops].map(([key, node]) => [key, node.plain()])) };
 
-  let isAttempted = false;
+  let isAttempted = false; // the file was asked for, so what is missing is shown beside its field
+  let isWarned = false; // what is doubtful was told, and nothing has changed since
   let problems = [];
 
   function review() {
@@ -547,6 +546,7 @@
 
   /** A node's text has changed: what was shown of it is looked at at once, what is new after a pause. */
   function changed(node) {
+    isWarned = false;
     keep();
     review();
     clearTimeout(waiting);
@@ -618,8 +618,11 @@
     isAttempted = true;
     review();
     const summary = document.getElementById("hb-form-summary");
-    if (problems.length) {
-      announce(`${problems.length} to see to before the file can be downloaded`);
+    const isDoubtful = problems.length > 0 && problems.every((problem) => problem.isDoubt);
+    if (problems.length && !(isDoubtful && isWarned)) {
+      isWarned = isDoubtful;
+      announce(isDoubtful ? "If it is right all the same, press Download again" : `${problems.length} to see to before the download`);
+      document.getElementById("hb-form-doubt").hidden = !isDoubtful;
       summary.focus();
       return;
     }

@@ -87,7 +87,8 @@ globalThis.handbookRecord = (format) => {
     if (!spelling) {
       const units = symbols(control);
       const fixes = units.slice(0, 2).map((unit) => `${number} ${unit}`);
-      if (unitOf(control, "K")) fixes[1] = `${Math.round(Number(number) + 273)} K`; // the same temperature, if it was °C
+      const shifted = aids.units[control.measures[0]].find((unit) => unit.offset);
+      if (shifted) fixes[1] = `${Math.round(Number(number) - shifted.offset)} ${shifted.symbol}`; // of the same temperature
       const more = units.length > 2 ? `; units: ${units.join(", ")}` : "";
       return { says: `The unit is missing: write ${listed(fixes)}${more}.`, fixes };
     }
@@ -159,12 +160,12 @@ globalThis.handbookRecord = (format) => {
     ratio: ratioProblem,
     smiles: (text) => {
       const fault = globalThis.handbookChemistry.fault(text);
-      return fault ? { says: `This is not a SMILES: ${fault}.` } : null;
+      return fault ? { says: `This is not a SMILES: ${fault}.`, isDoubt: true } : null;
     },
     inchi: (text) => (/^InChI=1S?\/\S+$/.test(text) ? null : { says: "An InChI begins with InChI=1S/." }),
     person: (text) => {
       const isKnown = !format.people.length || format.people.includes(text);
-      return isKnown ? null : { says: `The book knows ${listed(format.people)}; ask its editor to add ${text}.` };
+      return isKnown ? null : { says: `The book knows ${listed(format.people)}; ask its editor to add ${text}.`, isDoubt: true };
     },
     label: (text, { labels, words }) =>
       (!labels || labels.has(text) || words?.includes(text) ? null : { says: `No product has the label ${text}.` }),
@@ -197,7 +198,10 @@ globalThis.handbookRecord = (format) => {
     return Number(plain) > most || plain.length > aids.longest ? { says: `Write at most ${most ?? "what was measured"}.` } : null;
   }
 
-  /** What is wrong with a text as typed, with texts to put in its place where there are; null for nothing. */
+  /**
+   * What is wrong with a text as typed, with texts to put in its place where there are; null for nothing.
+   * isDoubt: the writer may know better, about a structure drawn in an uncommon way or a person the book does not list.
+   */
   function problem(control, typed, context = {}) {
     const text = typed.trim();
     if (!text) return null;
@@ -221,7 +225,7 @@ globalThis.handbookRecord = (format) => {
     for (const [key, below] of Object.entries(node.properties ?? {})) {
       if (value?.[key] !== undefined && lacking(below, value[key])) return { keys: [key], how: "all" };
     }
-    if (node.not && !lacking(node.not, value)) return { keys: node.not.required ?? [], how: "none" };
+    if (node.not && !lacking(node.not, value)) return { keys: node.not.required ?? [], how: "not" };
     for (const each of node.allOf ?? []) {
       const lack = lacking(each, value);
       if (lack) return lack;

@@ -609,6 +609,38 @@ _SMALL_TARGETS = """() => [...document.querySelectorAll("#hb-form :is(button, se
   .map((each) => each.outerHTML)"""
 
 
+DRAFT = {
+    "status": "draft",
+    "title": "Solvolysis of 2-bromobutane, nothing seen",
+    "performed": {"date": "2026-03-14", "by": "bench-2"},
+    "substrate": {
+        "name": "2-bromobutane",
+        "smiles": "CCC(C)Br",
+        "amount": "10 mmol",
+        "class": ["secondary"],
+        "leaving_group": "bromide",
+    },
+    "nucleophile": {"word": "solvent"},
+    "solvent": [{"name": "ethanol", "volume": "20 mL"}],
+    "stages": [{"temperature": "25 °C", "time": "1 h"}],
+    "outcome": {"result": ["no reaction"]},
+}
+
+
+def test_a_doubt_is_told_and_does_not_keep_the_file_back(fresh: "sync_api.Page", tmp_path: Path) -> None:
+    fresh.evaluate(_KEEP, {"entry": "NS4T9XQ2N", "raw": DRAFT})
+    fresh.reload()
+    assert fresh.locator("#hb-form-state").text_content() == "Ready to download"
+    by = _control(fresh, Step("who", "By", "-"))
+    by.fill("bench-9")
+    download = fresh.get_by_role("button", name="Download")
+    download.click()
+    assert fresh.get_by_text("press Download again").first.is_visible()
+    with fresh.expect_download() as waiting:
+        download.click()
+    assert "by: [bench-9]" in waiting.value.path().read_text("utf-8")
+
+
 # --- the same grammar on both sides ---------------------------------------------------------------------------
 
 

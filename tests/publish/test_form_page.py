@@ -1,7 +1,9 @@
 """The data of the form: the whole format, in sections, with nothing said twice."""
 
 import json
+import re
 from collections.abc import Iterator, Mapping
+from pathlib import Path
 from typing import Any
 
 import pytest
@@ -11,6 +13,7 @@ from builder.publish.form_page import LEFT_OUT, SECTIONS, SET_BY_THE_FORM, form_
 from builder.publish.page import Page
 from builder.records.schema import record_schema
 
+ROOT = Path(__file__).parents[2]
 SCHEMA = record_schema(site_class_names(), leaving_group_names())
 DATA: Any = form_data(SCHEMA, taken=["NS7K3QFMC", "NS2H8WDRW"], people=["bench-1"])
 CONTROLS = {"choice", "fixed", "integer", "list", "mixed", "number", "part", "points", "text", "word"}
@@ -42,6 +45,15 @@ def test_every_part_and_key_of_the_schema_is_in_the_data() -> None:
 def test_the_script_knows_every_kind_of_control() -> None:
     fields = [field for part in DATA["parts"].values() for field in part["fields"]]
     assert {each["is"] for field in fields for each in _controls(field)} == CONTROLS
+
+
+@pytest.mark.parametrize("script", ["form.js", "record.js"])
+def test_the_scripts_hold_no_word_or_unit_of_the_format(script: str) -> None:
+    text = (ROOT / "site_overrides" / "assets" / script).read_text("utf-8")
+    written = {double or single for double, single in re.findall(r'"([^"\n]*)"|\'([^\'\n]*)\'', text)}
+    words = {word for part in SCHEMA["$defs"].values() for word in map(str, part.get("enum", ()))}
+    units = {unit["symbol"] for units in DATA["aids"]["units"].values() for unit in units}
+    assert written & (words | units | {*site_class_names(), *leaving_group_names()}) == set()
 
 
 def test_identifiers_of_the_book_are_not_drawn_again() -> None:
