@@ -17,8 +17,8 @@
     return made;
   }
 
-  const button = (text, onclick, className = "hb-copy") => element("button", { type: "button", className, onclick }, text);
-  const lower = (label) => (/^[A-Z][a-z]/.test(label) && !label.startsWith("InChI") ? label[0].toLowerCase() + label.slice(1) : label);
+  const button = (text, onclick) => element("button", { type: "button", className: "hb-copy", onclick }, text);
+  const lower = (label) => label.replace(/^[A-Z](?=[a-z]+(?![A-Za-z]))/, (letter) => letter.toLowerCase()); // not InChI
 
   const missing = (label) => ({ says: `${label} missing.`, isMissing: true });
 
@@ -30,7 +30,8 @@
     control.setAttribute("aria-describedby", hint ? `${hinted.id} ${said.id}` : said.id);
     if (field.required) control.setAttribute("aria-required", "true");
     const label = element("label", { htmlFor: control.id }, field.label, ...needOf(field));
-    return { el: element("div", { className: field.wide ? "hb-field hb-field--broad" : "hb-field" }, label, hinted, control, said), said };
+    const className = field.wide ? "hb-field hb-field--broad" : "hb-field";
+    return { el: element("div", { className }, label, hinted, control, said), said };
   }
 
   const needOf = (field) => (field.required ? [" ", element("span", { className: "hb-field__need" }, "required")] : []);
@@ -90,7 +91,8 @@
     return node;
   }
 
-  const context = (labels) => ({ labels: labels && new Set(labelsDefined().map((node) => node.text())), words: labels?.words });
+  /** What a text that names labels is held against: those of the products, and words that stand beside them. */
+  const known = (words) => ({ labels: new Set(labelsDefined().map((node) => node.text())), words });
 
   function leafNode(field) {
     if (field.is === "word") return wordNode(field);
@@ -104,7 +106,7 @@
     const node = textNode(field, control, {
       parse: (text) => ({ style, text: field.measures ? record.tidy(text) : text }),
       plain: (text) => (isNumber ? Number(text) : text),
-      problemOf: (text) => record.problem(field, text, context(field.format === "ratio" ? {} : null)) ?? labelTwice(node, text),
+      problemOf: (text) => record.problem(field, text, field.format === "ratio" ? known() : {}) ?? labelTwice(node, text),
     });
     return node;
   }
@@ -144,9 +146,9 @@
       plain: split,
       problemOf: (text) => {
         const items = split(text), twice = items.find((item, at) => items.indexOf(item) < at);
-        const labels = field.of.format === "label" ? field : null;
+        const context = field.of.format === "label" ? known(field.words) : {};
         if (twice && isShort) return { says: `${twice} stands twice.` };
-        return items.map((item) => record.problem(field.of, item, context(labels))).find(Boolean) ?? null;
+        return items.map((item) => record.problem(field.of, item, context)).find(Boolean) ?? null;
       },
     });
   }
@@ -154,7 +156,8 @@
   function wordsNode(field) {
     const name = freshId(), said = element("div", { className: "hb-field__said", id: `${name}-said` });
     const boxes = field.of.words.map((word) => element("input", { type: "checkbox", value: word, id: freshId() }));
-    const choices = boxes.map((box) => element("label", { className: "hb-choice", htmlFor: box.id }, box, ` ${box.value}`));
+    const labelOf = (box) => element("label", { className: "hb-choice", htmlFor: box.id }, box, ` ${box.value}`);
+    const choices = boxes.map(labelOf);
     const legend = element("legend", {}, field.label, ...needOf(field));
     const hint = element("p", { className: "hb-field__hint", id: `${name}-hint` }, field.means);
     const isLong = boxes.length > 9;
@@ -189,19 +192,22 @@
 
   /** Points of a time course: a line each, its numbers apart by spaces. */
   function pointsNode(field) {
-    const lines = (text) => text.split("\n").map((line) => line.trim()).filter(Boolean).map((line) => line.split(/[\s;|]+/));
+    const lines = (text) => text.trim().split(/\s*\n\s*/).map((line) => line.split(/[\s;|]+/));
+    const pointOf = (numbers) => ({ items: numbers.map((text) => ({ style: "plain", text })) });
     return textNode({ ...field, example: "" }, element("textarea", { rows: 4, placeholder: "0 0\n2 6.4" }), {
       hint: `${field.means}; one point a line`,
-      parse: (text) => ({ isData: true, items: lines(text).map((point) => ({ items: point.map((each) => ({ style: "plain", text: each })) })) }),
+      parse: (text) => ({ isData: true, items: lines(text).map(pointOf) }),
       plain: (text) => lines(text).map((point) => point.map(Number)),
       problemOf: (text) => {
         const points = lines(text), times = points.map(([time]) => Number(time));
         const odd = points.find((point) => point.length !== field.of.length);
         if (odd) return { says: `“${odd.join(" ")}” is not ${field.of.length} numbers.` };
-        const wrong = points.flatMap((point) => point.map((each, at) => record.problem(field.of[at], each))).find(Boolean);
+        const found = points.flatMap((point) => point.map((each, at) => record.problem(field.of[at], each)));
+        const wrong = found.find(Boolean);
         if (wrong) return { says: wrong.says };
         if (points.length < 2) return { says: "Write at least two points." };
-        return times.some((time, at) => time <= times[at - 1]) ? { says: "Write the points in the order of time." } : null;
+        const isBack = times.some((time, at) => time <= times[at - 1]);
+        return isBack ? { says: "Write the points in the order of time." } : null;
       },
     });
   }
@@ -276,7 +282,8 @@
   function choiceNode(field) {
     const control = element("select", {}, element("option", { value: "" }, "substances, listed below"),
       ...field.words.map((word) => element("option", { value: word }, `the word “${word}”`)));
-    const word = textNode({ ...field, required: false, label: "Given as", means: "" }, control, { parse: String, problemOf: () => null });
+    const given = { ...field, required: false, label: "Given as", means: "" };
+    const word = textNode(given, control, { parse: String, problemOf: () => null });
     const groups = groupsNode(field, { isShown: () => !word.text(), extra: [word.el] });
     const show = () => { groups.body.hidden = Boolean(word.text()); };
     control.addEventListener("input", show);
@@ -317,7 +324,7 @@
 
   // --- parts ------------------------------------------------------------------------------------------------------
 
-  const NODES = { part: (field) => partNode(field), list: listNode, choice: choiceNode, mixed: mixedNode, points: pointsNode };
+  const NODES = { part: partNode, list: listNode, choice: choiceNode, mixed: mixedNode, points: pointsNode };
   const nodeOf = (field) => (NODES[field.is] ?? leafNode)(field);
 
   function partNode(field) {
@@ -331,24 +338,28 @@
     const legend = element("legend", {}, field.label);
     const more = folded.length ? [foldedFields(fields, folded)] : [];
     const isFolded = !field.required && !field.isItem;
-    const el = isFolded
-      ? element("details", { className: "hb-more hb-part" }, element("summary", {}, field.label, element("span", { className: "hb-field__hint" }, ` ${field.means}`)), grid, ...more, said)
-      : element(field.isItem ? "fieldset" : "div", { className: field.isItem ? "hb-part" : "" }, ...(field.isItem ? [legend] : []), grid, ...more, said);
+    const body = [grid, ...more, said];
+    const el = isFolded ? element("details", { className: "hb-more hb-part" }, summaryOf(field), ...body)
+      : field.isItem ? element("fieldset", { className: "hb-part" }, legend, ...body)
+        : element("div", {}, ...body);
     const what = about.exactly && choiceOfKind(about, fields, nodes, grid);
     const isRead = (key) => !nodes.get(key).el.hidden;
-    const given = (read) => fields.map(({ key }) => [key, isRead(key) ? read(nodes.get(key)) : undefined]).filter(([, value]) => value !== undefined);
-    const isEmpty = () => fields.every(({ key }) => !isRead(key) || nodes.get(key).isAuto || nodes.get(key).value() === undefined);
+    const shown = () => [...nodes].filter(([key]) => isRead(key));
+    const given = (read) => shown().map(([key, each]) => [key, read(each)]).filter(([, value]) => value !== undefined);
+    const isEmpty = () => shown().every(([, each]) => each.isAuto || each.value() === undefined);
+    const autos = () => [...nodes.keys()].filter((key) => nodes.get(key).isAuto);
     const node = {
       el, field, legend, nodes,
       value: () => (isEmpty() ? undefined : { keys: given((each) => each.value()) }),
       plain: () => (isEmpty() ? undefined : Object.fromEntries(given((each) => each.plain()))),
-      raw: () => ({ ...Object.fromEntries([...nodes].map(([key, each]) => [key, each.raw()])), ...(what && { "?": what.raw() }), ...autos() }),
+      raw: () => ({ ...Object.fromEntries([...nodes].map(([key, each]) => [key, each.raw()])), "?": what?.raw(), "!": autos() }),
       load(raw) {
         for (const [key, each] of nodes) if (raw?.[key] !== undefined) each.load(raw[key]);
         for (const key of raw?.["!"] ?? []) nodes.get(key).isAuto = true;
         if (what && raw?.["?"]) what.choose(raw["?"]);
         if (isFolded && !isEmpty()) el.open = true;
-        for (const fold of more) fold.open = fields.some((each) => each.seldom && nodes.get(each.key).value() !== undefined);
+        const isUsed = fields.some((each) => each.seldom && nodes.get(each.key).value() !== undefined);
+        for (const fold of more) fold.open = isUsed;
       },
       focus: () => (what ?? nodes.get(fields[0].key)).focus(),
       say: sayer(said, () => []),
@@ -361,7 +372,7 @@
       },
       review(report, isWanted) {
         const isAsked = (isWanted && !isFolded) || !isEmpty();
-        for (const { key } of fields) if (isRead(key)) nodes.get(key).review(report, isAsked && !(what && about.exactly.includes(key)));
+        for (const [key, each] of shown()) each.review(report, isAsked && !about.exactly?.includes(key));
         report(node, null);
         if (!isAsked) return;
         if (what) return what.review(report, nodes);
@@ -369,14 +380,17 @@
         openAfter(fields, nodes);
       },
     };
-    const autos = () => ({ "!": [...nodes].filter(([, each]) => each.isAuto).map(([key]) => key) });
     return node;
   }
 
   function foldedFields(fields, folded) {
     const names = fields.filter((each) => each.seldom).map((each) => lower(each.label));
-    return element("details", { className: "hb-more hb-form__more" }, element("summary", {}, `More: ${names.join(", ")}`), element("div", { className: "hb-fields" }, ...folded));
+    const summary = element("summary", {}, `More: ${names.join(", ")}`);
+    return element("details", { className: "hb-more hb-form__more" }, summary, element("div", { className: "hb-fields" }, ...folded));
   }
+
+  const summaryOf = (field) =>
+    element("summary", {}, field.label, element("span", { className: "hb-field__hint" }, ` ${field.means}`));
 
   /** Tells which keys a part lacks by the conditions of the schema, beside the first of them. */
   function reviewConditions(about, node, report) {
@@ -388,7 +402,8 @@
       const [first, ...others] = keys.map((key) => node.nodes.get(key).field.label);
       const labels = [first, ...others.map(lower)], last = labels.length > 1 ? labels.pop() : null;
       const joined = labels.join(", ") + (last ? ` ${lack.how === "any" ? "or" : "and"} ${last}` : "");
-      report(node.nodes.get(keys[0]), lack.how === "not" ? { says: `Leave out ${lower(joined)}, or what excludes it.` } : missing(joined));
+      const isTooMuch = lack.how === "not";
+      report(node.nodes.get(keys[0]), isTooMuch ? { says: `Leave out ${lower(joined)}, or what excludes it.` } : missing(joined));
     }
   }
 
@@ -396,7 +411,8 @@
   function openAfter(fields, nodes) {
     for (const { key, opens_after: after } of fields) {
       const node = nodes.get(key);
-      const isDue = Object.entries(after ?? {}).some(([other, words]) => nodes.get(other).plain()?.some((word) => words.includes(word)));
+      const isSaid = ([other, words]) => nodes.get(other).plain()?.some((word) => words.includes(word));
+      const isDue = Object.entries(after ?? {}).some(isSaid);
       if (isDue && !node.wasOpened) node.el.open = node.wasOpened = true;
     }
   }
@@ -409,8 +425,8 @@
     grid.prepend(el);
     const show = () => {
       for (const each of fields) {
-        const isOther = about.exactly.includes(each.key) ? each.key !== control.value : each.only_for && !each.only_for.includes(control.value);
-        nodes.get(each.key).el.hidden = Boolean(isOther);
+        const goesWith = about.exactly.includes(each.key) ? [each.key] : each.only_for;
+        nodes.get(each.key).el.hidden = Boolean(goesWith && !goesWith.includes(control.value));
       }
     };
     control.addEventListener("input", () => {
@@ -429,8 +445,9 @@
         const node = nodes.get(control.value);
         if (!node.text()) report(node, missing(node.field.label));
         for (const condition of about.conditions ?? []) {
-          const lack = record.lacking(condition, { [control.value]: "", ...Object.fromEntries([...nodes].map(([key, each]) => [key, each.el.hidden ? undefined : each.plain()])) });
-          for (const key of condition.oneOf ? [] : lack?.keys ?? []) report(nodes.get(key), missing(nodes.get(key).field.label));
+          const seen = [...nodes].filter(([, each]) => !each.el.hidden).map(([key, each]) => [key, each.plain()]);
+          const lack = record.lacking(condition, { ...Object.fromEntries(seen), [control.value]: node.text() });
+          for (const key of lack?.keys ?? []) report(nodes.get(key), missing(nodes.get(key).field.label));
         }
       },
     };
@@ -451,12 +468,14 @@
   }
 
   function labelsDefined() {
-    return [...tops.values()].flatMap((node) => [...leaves(node)]).filter((node) => node.field?.format === "label" && node.text?.());
+    const all = [...tops.values()].flatMap((node) => [...leaves(node)]);
+    return all.filter((node) => node.field.format === "label" && node.text());
   }
 
   for (const section of format.sections) {
     const title = element("h2", { id: section.id }, section.title);
-    const body = section.folded ? element("details", { className: "hb-more" }, element("summary", {}, "Seldom needed for a first draft")) : element("div");
+    const folded = () => element("details", { className: "hb-more" }, element("summary", {}, "Seldom needed for a first draft"));
+    const body = section.folded ? folded() : element("div");
     if (section.lead) body.append(element("p", { className: "hb-detail" }, section.lead));
     const grid = element("div", { className: "hb-fields" });
     for (const key of section.keys) {
@@ -478,8 +497,9 @@
   function written() {
     const keys = [];
     for (const field of fields) {
-      const set = field.format === "entry" && field.required ? entry : field.is === "fixed" ? field.text : tops.has(field.key) ? null : String(field.least);
-      const value = set === null ? tops.get(field.key).value() : { style: "plain", text: set };
+      // What no section holds the form sets itself: the version of the format, the entry, the first revision.
+      const set = () => ({ style: "plain", text: field.text ?? (field.format === "entry" ? entry : String(field.least)) });
+      const value = tops.has(field.key) ? tops.get(field.key).value() : set();
       if (value !== undefined) keys.push([field.key, value]);
     }
     return record.yaml({ keys });
@@ -621,7 +641,8 @@
     const isDoubtful = problems.length > 0 && problems.every((problem) => problem.isDoubt);
     if (problems.length && !(isDoubtful && isWarned)) {
       isWarned = isDoubtful;
-      announce(isDoubtful ? "If it is right all the same, press Download again" : `${problems.length} to see to before the download`);
+      const count = `${problems.length} to see to before the download`;
+      announce(isDoubtful ? "If it is right all the same, press Download again" : count);
       document.getElementById("hb-form-doubt").hidden = !isDoubtful;
       summary.focus();
       return;

@@ -23,25 +23,24 @@ globalThis.handbookRecord = (format) => {
   /** A fresh identifier; drawn again where the check character is none of its letters, or the book has it. */
   function mint(random = (count) => crypto.getRandomValues(new Uint8Array(count))) {
     for (;;) {
-      const drawn = Array.from(random(identifier.drawn), (byte) => identifier.letters[byte % identifier.letters.length]);
-      const body = identifier.prefix + drawn.join("");
+      const { prefix, letters, drawn } = identifier;
+      const body = prefix + Array.from(random(drawn), (byte) => letters[byte % letters.length]).join("");
       const minted = body + checkCharacter(body);
-      if (identifier.letters.includes(minted.at(-1)) && !taken.has(minted)) return minted;
+      if (letters.includes(minted.at(-1)) && !taken.has(minted)) return minted;
     }
   }
 
   // --- quantities -------------------------------------------------------------------------------------------------
 
   const escaped = (text) => text.replace(/[.*+?^${}()|[\]\\/]/g, "\\$&");
-  const LOOKALIKES = { "\u2212": "-", "\u2010": "-", "\u2011": "-", "\u2012": "-", "\u2013": "-", "\u03bc": "µ" };
-  const tidy = (text) => text.trim().replace(/\s+/g, " ").replace(/[\u2212\u2010-\u2013\u03bc]/g, (sign) => LOOKALIKES[sign]);
+  const tidy = (text) => text.trim().replace(/\s+/g, " ").replace(/[\u2212\u2010-\u2013]/g, "-").replace(/\u03bc/g, "µ");
   const NUMBER = "[+-]?(?:[0-9]+(?:\\.[0-9]*)?|\\.[0-9]+)(?:[eE][+-]?[0-9]+)?";
   const spellings = new Map();
   for (const [dimension, units] of Object.entries(aids.units)) {
     const known = units.flatMap((unit) => unit.spellings.map((spelling) => [spelling, unit]));
     spellings.set(dimension, new Map(known));
   }
-  const symbols = (control) => control.measures.flatMap((dimension) => aids.units[dimension].map((unit) => unit.symbol));
+  const symbols = (control) => control.measures.flatMap((each) => aids.units[each].map((unit) => unit.symbol));
   const unitOf = (control, spelling) => control.measures.map((each) => spellings.get(each).get(spelling)).find(Boolean);
   const listed = (words) => (words.length > 1 ? `${words.slice(0, -1).join(", ")} or ${words.at(-1)}` : words[0]);
   const isBeyondMeasure = (number) =>
@@ -51,7 +50,8 @@ globalThis.handbookRecord = (format) => {
   function valuesOf(control, text) {
     const units = control.measures.flatMap((dimension) => [...spellings.get(dimension).keys()]);
     const unit = units.sort((a, b) => b.length - a.length).map(escaped).join("|");
-    const found = new RegExp(`^[<>≤≥]? ?(?:(${NUMBER}) ?(${unit})?(?: to | ?- ?))?(${NUMBER}) ?(${unit})$`, "i").exec(text);
+    const start = `(?:(${NUMBER}) ?(${unit})?(?: to | ?- ?))?`;
+    const found = new RegExp(`^[<>≤≥]? ?${start}(${NUMBER}) ?(${unit})$`, "i").exec(text);
     if (!found) return [];
     const [, low, lowUnit = found[4], high, highUnit] = found;
     const value = (number, spelling) => {
@@ -66,7 +66,8 @@ globalThis.handbookRecord = (format) => {
     const unit = aids.units[control.measures[0]][0].symbol;
     for (const { number, value } of valuesOf(control, text)) {
       if (isBeyondMeasure(number)) return { says: "This number is beyond any measurement." };
-      if (value <= above || value < least) return { says: `This is impossible: write more than ${above ?? least} ${unit}.` };
+      const isTooLow = value <= above || value < least;
+      if (isTooLow) return { says: `This is impossible: write more than ${above ?? least} ${unit}.` };
       if (value > most * (1 + 1e-12)) return { says: `This is impossible: write at most ${most} ${unit}.` };
     }
     return null;
@@ -88,7 +89,8 @@ globalThis.handbookRecord = (format) => {
       const units = symbols(control);
       const fixes = units.slice(0, 2).map((unit) => `${number} ${unit}`);
       const shifted = aids.units[control.measures[0]].find((unit) => unit.offset);
-      if (shifted) fixes[1] = `${Math.round(Number(number) - shifted.offset)} ${shifted.symbol}`; // of the same temperature
+      // In kelvin the same temperature is another number.
+      if (shifted) fixes[1] = `${Math.round(Number(number) - shifted.offset)} ${shifted.symbol}`;
       const more = units.length > 2 ? `; units: ${units.join(", ")}` : "";
       return { says: `The unit is missing: write ${listed(fixes)}${more}.`, fixes };
     }
@@ -132,7 +134,8 @@ globalThis.handbookRecord = (format) => {
   }
 
   function entryProblem(text) {
-    return checkCharacter(text.slice(0, -1)) === text.at(-1) ? null : { says: "The last character does not fit: look for a slip." };
+    const isRight = checkCharacter(text.slice(0, -1)) === text.at(-1);
+    return isRight ? null : { says: "The last character does not fit: look for a slip." };
   }
 
   function ratioProblem(text, { labels }) {
@@ -165,7 +168,8 @@ globalThis.handbookRecord = (format) => {
     inchi: (text) => (/^InChI=1S?\/\S+$/.test(text) ? null : { says: "An InChI begins with InChI=1S/." }),
     person: (text) => {
       const isKnown = !format.people.length || format.people.includes(text);
-      return isKnown ? null : { says: `The book knows ${listed(format.people)}; ask its editor to add ${text}.`, isDoubt: true };
+      const says = `The book knows ${listed(format.people)}; ask its editor to add ${text}.`;
+      return isKnown ? null : { says, isDoubt: true };
     },
     label: (text, { labels, words }) =>
       (!labels || labels.has(text) || words?.includes(text) ? null : { says: `No product has the label ${text}.` }),
@@ -176,13 +180,14 @@ globalThis.handbookRecord = (format) => {
 
   function textProblem(control, text, context) {
     if (UNPRINTABLE.test(text)) return { says: "There is a character that cannot be printed: delete it." };
-    if (text.length > (control.maxLength ?? Infinity)) return { says: `This is too long: at most ${control.maxLength} characters.` };
+    if (text.length > control.maxLength) return { says: `This is too long: at most ${control.maxLength} characters.` };
     const markup = MARKUP.exec(text)?.[0];
     if (markup) return { says: `${markup} looks like HTML: write plain text.` };
     if (control.pattern && !new RegExp(control.pattern).test(text)) {
       const mend = MENDS[control.format];
       if (mend) return mend(control, text);
-      return { says: control.example ? `Write it like ${control.example}.` : "This does not have the shape that is wanted." };
+      const likely = control.example ? `Write it like ${control.example}.` : "This does not have the shape that is wanted.";
+      return { says: likely };
     }
     return FORMS[control.format]?.(text, context) ?? null;
   }
@@ -191,11 +196,14 @@ globalThis.handbookRecord = (format) => {
     const isWhole = control.is === "integer";
     const [, number] = /^(-?(?:\d+(?:[.,]\d+)?|[.,]\d+))\s*(?:equiv\.?|eq\.?|equivalents?)?$/i.exec(text) ?? [];
     const plain = number?.replace(",", ".").replace(/^(-?)\./, "$10.").replace(/^(-?)0+(?=\d)/, "$1");
-    if (plain === undefined || (isWhole && /\D/.test(plain))) return { says: isWhole ? "Write a whole number." : `Write a bare number, such as ${control.example || "1.5"}.` };
+    if (plain === undefined || (isWhole && /\D/.test(plain))) {
+      return { says: isWhole ? "Write a whole number." : `Write a bare number, such as ${control.example || "1.5"}.` };
+    }
     if (plain !== text) return { says: `Write ${plain}.`, fixes: [plain] };
     const { least, above, most } = control;
     if (Number(plain) < least || Number(plain) <= above) return { says: "Write a larger number." };
-    return Number(plain) > most || plain.length > aids.longest ? { says: `Write at most ${most ?? "what was measured"}.` } : null;
+    const isTooLarge = Number(plain) > most || plain.length > aids.longest;
+    return isTooLarge ? { says: `Write at most ${most ?? "what was measured"}.` } : null;
   }
 
   /**
@@ -233,7 +241,8 @@ globalThis.handbookRecord = (format) => {
     for (const [many, how] of [[node.anyOf, "any"], [node.oneOf, "one"]]) {
       const lacks = many?.map((each) => lacking(each, value)) ?? [];
       const holds = lacks.filter((lack) => !lack).length;
-      if (many && (how === "any" ? !holds : holds !== 1)) return { keys: lacks.flatMap((lack) => lack?.keys ?? []), how };
+      const isMet = how === "any" ? holds > 0 : holds === 1;
+      if (many && !isMet) return { keys: lacks.flatMap((lack) => lack?.keys ?? []), how };
     }
     const branch = node.if && (lacking(node.if, value) ? node.else : node.then);
     return branch ? lacking(branch, value) : null;
@@ -247,7 +256,8 @@ globalThis.handbookRecord = (format) => {
 
   /** Whether both YAML 1.1 and 1.2 read this as the text it is, without quotes, in block style. */
   function isPlain(text) {
-    return PLAIN.test(text) && !RESERVED.test(text) && /\p{L}/u.test(text) && !/^[\d._,+e-]*$/i.test(text) && !/^0[xob]/i.test(text);
+    const isNumber = !/\p{L}/u.test(text) || /^[\d._,+e-]*$/i.test(text) || /^0[xob]/i.test(text);
+    return PLAIN.test(text) && !RESERVED.test(text) && !isNumber;
   }
 
   function scalar({ text, style }, margin) {
@@ -260,8 +270,8 @@ globalThis.handbookRecord = (format) => {
 
   /** A list on one line, where nothing in it holds a comma or a sign that means something there; else null. */
   function onOneLine(list) {
-    const texts = list.items.map((item) => (item.items ? onOneLine(item) : item.text.includes("\n") ? null : scalar(item, "")));
-    const isFit = (text, item) => text !== null && (item.items || /^[\p{L}\p{N}][\p{L}\p{N} ._%+-]*$/u.test(text));
+    const texts = list.items.map((item) => (item.items ? onOneLine(item) : scalar(item, "")));
+    const isFit = (text, item) => text !== null && (item.items || /^[\p{L}\p{N}-][\p{L}\p{N} ._%+-]*$/u.test(text));
     const line = `[${texts.join(", ")}]`;
     return texts.every((text, at) => isFit(text, list.items[at])) && (line.length <= 90 || list.isData) ? line : null;
   }
