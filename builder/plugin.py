@@ -218,6 +218,8 @@ class _VirtualPage(MkDocsPage):
             "title": escape(page.title),
             "description": escape(page.description),
             "section": page.section,
+            "styles": page.styles,
+            "scripts": page.scripts,
         }
         if not page.indexed:
             self.meta["robots"] = "noindex"

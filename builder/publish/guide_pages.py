@@ -24,11 +24,12 @@ _SUBSTANCE = "Nucleophile"
 
 @dataclass(frozen=True, slots=True)
 class FormatRow:
-    """One key of a part of the record: whether it is required there, and what it takes."""
+    """One key of a part of the record: whether it is required there, what it takes, and what that says."""
 
     key: str
     required: bool
     takes: str
+    meaning: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -123,7 +124,7 @@ def _format_part(part: Mapping[str, Any], places: Sequence[str], schema: Mapping
     beyond = "nucleophile" if part["title"] != _SUBSTANCE and substance <= set(properties) else ""
     required = part.get("required", ())
     rows = tuple(
-        FormatRow(name, name in required, _takes(node, schema))
+        FormatRow(name, name in required, _takes(node, schema), node["description"])
         for name, node in properties.items()
         if not beyond or name not in substance
     )
@@ -165,6 +166,8 @@ def _takes(node: Mapping[str, Any], schema: Mapping[str, Any]) -> str:
         return f"{_takes(one, schema)}, or a list"
     if choices := _choices(node):
         return " or ".join(dict.fromkeys(_takes(choice, schema) for choice in choices))
+    if "x-units" in node:
+        return f"such as {node['examples'][0]} ({', '.join(node['x-units'])})"
     if "examples" in node:
         return f"such as {node['examples'][0]}"
     if "prefixItems" in node:
@@ -172,7 +175,7 @@ def _takes(node: Mapping[str, Any], schema: Mapping[str, Any]) -> str:
     if node.get("type") == "array":
         item = node.get("items")
         return f"a list: {_takes(item, schema)}" if isinstance(item, dict) else "a list"
-    return _PLAIN.get(node.get("format") or node.get("type", ""), "text")
+    return _PLAIN.get(node.get("type", ""), "text")
 
 
-_PLAIN = {"date": "a date, 2026-03-14", "integer": "a whole number", "number": "a number", "boolean": "true | false"}
+_PLAIN = {"integer": "a whole number", "number": "a number", "boolean": "true | false"}

@@ -48,6 +48,7 @@ class Page:
     menu: label under which the page stands in the menu; none keeps it out.
     indexed: whether search engines may list it.
     assets: files that belong to the page.
+    styles, scripts: what it loads beyond the frame's own, paths below the site's root; scripts in their order.
     """
 
     path: str
@@ -60,6 +61,8 @@ class Page:
     menu: str = ""
     indexed: bool = True
     assets: tuple[Asset, ...] = field(default=())
+    styles: tuple[str, ...] = ()
+    scripts: tuple[str, ...] = ()
 
     @property
     def file(self) -> str:

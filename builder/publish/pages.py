@@ -6,6 +6,7 @@ from builder.book import Book
 from builder.checks.register import all_rules
 from builder.publish.entry_view import surroundings_of
 from builder.publish.facets import facet_indexes
+from builder.publish.form_page import form_page
 from builder.publish.front_page import front_page
 from builder.publish.guide_pages import guide_pages
 from builder.publish.kindred import contradicting_pairs
@@ -35,5 +36,6 @@ def build_pages(book: Book[Portrait], rules: Sequence[Rule[object, object]] | No
         *list_pages(book, summaries, indexes, tuple(runs), pairs),
         *rule_pages(book, rules),
         *guide_pages(book),
+        form_page(book),
         *(entry_page(entry, around) for entry in book.entries),
     )

@@ -2,7 +2,7 @@
 
 import datetime as dt
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from decimal import Decimal
 from functools import partial
@@ -36,6 +36,7 @@ from builder.records.quantities import (
 from builder.rule import Path
 
 __all__ = [
+    "MARKUP",
     "Amount",
     "AmountOrMass",
     "CasNumber",
@@ -47,6 +48,7 @@ __all__ = [
     "Equivalents",
     "Flag",
     "FormatNumber",
+    "InchiText",
     "Label",
     "LabelledRatio",
     "Labels",
@@ -130,8 +132,23 @@ def _bounds(quantity: Quantity | Percent | Temperature) -> tuple[float, float, s
     return one.magnitude, one.magnitude, units_of(one.dimension)[0]
 
 
-def _schema(pattern: str, *examples: str) -> WithJsonSchema:
-    return WithJsonSchema({"type": "string", "pattern": rf"^\s*({pattern})\s*$", "examples": list(examples)})
+def _schema(
+    pattern: str, *examples: str, measures: Sequence[Dimension], bounds: tuple[float, float], open_below: bool = True
+) -> WithJsonSchema:
+    """Return the schema of a quantity; what no keyword of JSON Schema says stands under keywords of our own, x-….
+
+    bounds: the least and the most, in the canonical unit of each dimension.
+    """
+    return WithJsonSchema(
+        {
+            "type": "string",
+            "pattern": rf"^\s*({pattern})\s*$",
+            "examples": list(examples),
+            "x-measures": [str(dimension) for dimension in measures],
+            "x-units": [unit for dimension in measures for unit in units_of(dimension)],
+            "x-bounds": {"above" if open_below else "least": bounds[0], "most": bounds[1]},
+        }
+    )
 
 
 _MOST = {
@@ -154,7 +171,8 @@ Wide of anything real, so that only slips and hostile numbers meet them; from me
 def _measure(dimension: Dimension, example: str) -> tuple[BeforeValidator, WithJsonSchema]:
     parse = partial(parse_quantity, dimension=dimension)
     check = partial(_reader, parse, 0.0, _MOST[dimension], True)
-    return BeforeValidator(check), _schema(quantity_pattern(dimension, is_positive=True), example)
+    pattern = quantity_pattern(dimension, is_positive=True)
+    return BeforeValidator(check), _schema(pattern, example, measures=[dimension], bounds=(0.0, _MOST[dimension]))
 
 
 def _reader(
@@ -188,15 +206,23 @@ Density = Annotated[Quantity, *_density]
 Concentration = Annotated[Quantity, *_concentration]
 Share = Annotated[Quantity, *_share]
 Purity = Annotated[Quantity, *_purity]
+_TEMPERATURES = (-273.15, 1500.0)
+_PERCENTAGES = (-100.0, 1000.0)
 TypedTemperature = Annotated[
     Temperature,
-    BeforeValidator(partial(_reader, parse_temperature, -273.15, 1500.0, True)),
-    _schema(temperature_pattern(), "60 °C"),
+    BeforeValidator(partial(_reader, parse_temperature, *_TEMPERATURES, True)),
+    _schema(temperature_pattern(), "60 °C", measures=[Dimension.TEMPERATURE], bounds=_TEMPERATURES),
 ]
 TypedPercent = Annotated[
     Percent,
-    BeforeValidator(partial(_reader, parse_percent, -100.0, 1000.0, False)),
-    _schema(rf"([<>≤≥]\s*)?{quantity_pattern(Dimension.FRACTION, is_positive=False)}", "88 %"),
+    BeforeValidator(partial(_reader, parse_percent, *_PERCENTAGES, False)),
+    _schema(
+        rf"([<>≤≥]\s*)?{quantity_pattern(Dimension.FRACTION, is_positive=False)}",
+        "88 %",
+        measures=[Dimension.FRACTION],
+        bounds=_PERCENTAGES,
+        open_below=False,
+    ),
 ]
 
 
@@ -221,7 +247,8 @@ def _rate_constant(value: object) -> Quantity:
 
 def _either(first: Dimension, second: Dimension, *examples: str) -> WithJsonSchema:
     patterns = (quantity_pattern(dimension, is_positive=True) for dimension in (first, second))
-    return _schema("|".join(patterns), *examples)
+    bounds = (0.0, max(_MOST[first], _MOST[second]))
+    return _schema("|".join(patterns), *examples, measures=[first, second], bounds=bounds)
 
 
 Strength = Annotated[
@@ -268,7 +295,7 @@ def _smiles(value: object) -> str:
     return _text(value)
 
 
-_MARKUP = re.compile(
+MARKUP = re.compile(
     r"</?(?:a|b|base|body|br|button|code|div|em|embed|font|form|frame|h[1-6]|head|hr|html|i|iframe|img|input|link|math"
     r"|meta|object|p|pre|script|select|small|span|strong|style|sub|sup|svg|table|td|template|textarea|tr|u)\b[^<>]*>?"
     r"|\bjavascript:",
@@ -282,11 +309,16 @@ def _line(text: str) -> str:
         raise faulty("empty-value", "the text is empty", "write it, or leave the key out")
     if _CONTROL.search(text):
         raise faulty("file-not-text", "the text holds a control character", "delete it")
-    markup = _MARKUP.search(text)
+    markup = MARKUP.search(text)
     if markup:
         mend = "write plain text: ¹³C, H₂O, 5 < 7 with spaces; it is shown as it is typed"
         raise faulty("markup-in-text", f"{markup[0]} looks like HTML", mend)
     return text
+
+
+def _form(name: str, *examples: str) -> Any:
+    """Say in the JSON Schema, by its keyword `format`, what a text stands for beyond its pattern."""
+    return Field(json_schema_extra={"format": name, "examples": list(examples)})
 
 
 Line = Annotated[
@@ -297,7 +329,9 @@ Line = Annotated[
 ]
 """Free text; escaped wherever it is shown."""
 
-SmilesText = Annotated[str, BeforeValidator(_smiles), AfterValidator(_line), Field(min_length=1, max_length=2000)]
+_StructureText = Annotated[str, BeforeValidator(_smiles), AfterValidator(_line), Field(min_length=1, max_length=2000)]
+SmilesText = Annotated[_StructureText, _form("smiles", "CCC(C)Br")]
+InchiText = Annotated[_StructureText, _form("inchi", "InChI=1S/CH4/h1H4")]
 
 
 @dataclass(frozen=True, slots=True)
@@ -305,18 +339,19 @@ class Shape:
     """A text of one shape: refused in the writer's words, and the same pattern in the JSON Schema.
 
     pattern: of the whole text, in what Python and ECMAScript share.
-    refusal: goes on where the quoted text stops.
+    refusal: goes on where the quoted text stops. form: what the text stands for, the schema's `format`.
     """
 
     pattern: str
     refusal: str
     mend: str
+    form: str = ""
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
         return core_schema.no_info_before_validator_function(self._read, handler(source))
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
-        return {"type": "string", "pattern": self.pattern}
+        return {"type": "string", "pattern": self.pattern} | ({"format": self.form} if self.form else {})
 
     def _read(self, value: object) -> str:
         text = _text(value)
@@ -344,7 +379,7 @@ RelativePath = Annotated[
     ),
 ]
 Label = Annotated[
-    str, Shape(rf"^{_LABEL}{{1,12}}$", "is not a label", "write at most 12 letters and digits, such as A")
+    str, Shape(rf"^{_LABEL}{{1,12}}$", "is not a label", "write at most 12 letters and digits, such as A", "label")
 ]
 
 
@@ -373,7 +408,7 @@ def _iso_date(text: str) -> str | None:
 Date = Annotated[
     dt.date,
     BeforeValidator(_date),
-    WithJsonSchema({"type": "string", "format": "date", "pattern": f"^{_DAY.pattern}$"}),
+    WithJsonSchema({"type": "string", "format": "date", "pattern": f"^{_DAY.pattern}$", "examples": ["2026-03-14"]}),
 ]
 
 
@@ -386,7 +421,11 @@ def _entry_id(value: object) -> str:
     raise faulty("value-not-permitted", f'"{text}" is not an entry identifier', hint, mended)
 
 
-EntryId = Annotated[str, BeforeValidator(_entry_id), WithJsonSchema({"type": "string", "pattern": IDENTIFIER_PATTERN})]
+EntryId = Annotated[
+    str,
+    BeforeValidator(_entry_id),
+    WithJsonSchema({"type": "string", "format": "entry", "pattern": IDENTIFIER_PATTERN, "examples": ["NS4T9XQ2N"]}),
+]
 
 
 def _cas(value: object) -> str:
@@ -400,7 +439,11 @@ def _cas(value: object) -> str:
     return text
 
 
-CasNumber = Annotated[str, BeforeValidator(_cas), WithJsonSchema({"type": "string", "pattern": f"^{_CAS.pattern}$"})]
+CasNumber = Annotated[
+    str,
+    BeforeValidator(_cas),
+    WithJsonSchema({"type": "string", "format": "cas", "pattern": f"^{_CAS.pattern}$", "examples": ["26628-22-8"]}),
+]
 
 
 def _whole(value: object) -> int:
@@ -448,7 +491,7 @@ Equivalents = Annotated[
     Decimal,
     BeforeValidator(_number),
     Field(gt=0, le=1000),
-    WithJsonSchema({"type": "number", "exclusiveMinimum": 0, "maximum": 1000}),
+    WithJsonSchema({"type": "number", "exclusiveMinimum": 0, "maximum": 1000, "examples": [1.5]}),
 ]
 
 
@@ -469,7 +512,7 @@ Point = Annotated[
 ]
 """Of a time course: time in its unit, and percent."""
 
-PersonCode = Annotated[Line, Field(max_length=40)]
+PersonCode = Annotated[Line, Field(max_length=40), _form("person", "bench-2")]
 
 
 # --- ratios -----------------------------------------------------------------------------------------------
@@ -539,12 +582,19 @@ def _number_ratio(value: object) -> Ratio:
 LabelledRatio = Annotated[
     Ratio,
     BeforeValidator(_labelled_ratio),
-    WithJsonSchema({"type": "string", "pattern": f"^{_RATIO_LABELS} = {_RATIO_NUMBERS}$", "examples": ["A:B = 65:35"]}),
+    WithJsonSchema(
+        {
+            "type": "string",
+            "format": "ratio",
+            "pattern": f"^{_RATIO_LABELS} = {_RATIO_NUMBERS}$",
+            "examples": ["A:B = 65:35"],
+        }
+    ),
 ]
 NumberRatio = Annotated[
     Ratio,
     BeforeValidator(_number_ratio),
-    WithJsonSchema({"type": "string", "pattern": f"^{_RATIO_OF_TWO}$", "examples": ["97:3"]}),
+    WithJsonSchema({"type": "string", "format": "ratio", "pattern": f"^{_RATIO_OF_TWO}$", "examples": ["97:3"]}),
 ]
 
 

@@ -10,7 +10,14 @@ from collections.abc import Callable
 
 from stdnum.iso7064 import mod_11_2, mod_37_36
 
-__all__ = ["IDENTIFIER_PATTERN", "has_orcid_check_character", "is_identifier", "mend_identifier", "mint_identifier"]
+__all__ = [
+    "CROCKFORD",
+    "IDENTIFIER_PATTERN",
+    "has_orcid_check_character",
+    "is_identifier",
+    "mend_identifier",
+    "mint_identifier",
+]
 
 CROCKFORD = "0123456789ABCDEFGHJKMNPQRSTVWXYZ"
 IDENTIFIER_PATTERN = f"^NS[{CROCKFORD}]{{7}}$"

@@ -20,6 +20,7 @@ from builder.records.fields import (
     Equivalents,
     Flag,
     FormatNumber,
+    InchiText,
     Label,
     LabelledRatio,
     Labels,
@@ -111,49 +112,49 @@ class Part(BaseModel):
 class Performed(Part):
     """The experiment: day, people by their codes, number of runs under these conditions."""
 
-    date: Date
-    by: OneOrMany[PersonCode]
-    runs: Count | None = None
+    date: Date = Field(description="day the reaction was started")
+    by: OneOrMany[PersonCode] = Field(description="codes of those who ran it")
+    runs: Count | None = Field(default=None, description="number of runs under these conditions")
 
 
 class Reviewed(Part):
     """The review stamp; a date of the version control system is none."""
 
-    by: PersonCode
-    date: Date
-    due: Date | None = None
+    by: PersonCode = Field(description="code of the reviewer")
+    date: Date = Field(description="day of the review")
+    due: Date | None = Field(default=None, description="day on which it wants another look")
 
 
 class SafetyReview(Part):
     """Who looked at the hazards, and for what scope."""
 
-    by: PersonCode
-    date: Date
-    scope: Line
+    by: PersonCode = Field(description="code of who looked at the hazards")
+    date: Date = Field(description="day of that look")
+    scope: Line = Field(description="what it covers: hazard and scale")
 
 
 class Superseded(Part):
     """Why another entry stands in this one's place."""
 
-    by: EntryId
-    date: Date
-    because: Line
+    by: EntryId = Field(description="identifier of the entry that takes this one's place")
+    date: Date = Field(description="day it took its place")
+    because: Line = Field(description="what is better there")
 
 
 class Withdrawn(Part):
     """Why this entry no longer holds."""
 
-    date: Date
-    because: Line
-    by: PersonCode
+    date: Date = Field(description="day of the withdrawal")
+    because: Line = Field(description="what turned out to be wrong")
+    by: PersonCode = Field(description="code of who withdrew it")
 
 
 class Acceptance(Part):
     """A reviewed disagreement with one rule; it never lifts an error."""
 
-    finding: Line
-    because: Line
-    by: PersonCode
+    finding: Line = Field(description="id of the rule that is disagreed with")
+    because: Line = Field(description="why the record is right all the same")
+    by: PersonCode = Field(description="code of the reviewer who accepts it")
 
 
 # --- what was charged -------------------------------------------------------------------------------------
@@ -166,11 +167,11 @@ QUANTITIES_OF_SUBSTRATE = ("mass", "amount", "volume")
 class Compound(Part):
     """A named structure: from SMILES, InChI or a component of the record's RXN file."""
 
-    name: Line
-    smiles: SmilesText | None = None
-    inchi: SmilesText | None = None
-    from_rxn: RxnComponent | None = None
-    cas: CasNumber | None = None
+    name: Line = Field(description="name a colleague would search for")
+    smiles: SmilesText | None = Field(default=None, description="structure, counter-ions included")
+    inchi: InchiText | None = Field(default=None, description="structure, in place of a SMILES")
+    from_rxn: RxnComponent | None = Field(default=None, description="component of the RXN file, in place of a SMILES")
+    cas: CasNumber | None = Field(default=None, description="CAS number of what was in the bottle")
 
     @property
     def has_structure(self) -> bool:
@@ -181,14 +182,14 @@ class Compound(Part):
 class Charged(Compound):
     """A compound with the quantity charged; the first of mass, amount, volume, equivalents is used."""
 
-    mass: Mass | None = None
-    amount: Amount | None = None
-    volume: Volume | None = None
-    equivalents: Equivalents | None = None
-    purity: Purity | None = None
-    form: Line | None = None
-    density: Density | None = None
-    strength: Strength | None = None
+    mass: Mass | None = Field(default=None, description="mass weighed, as it came out of the bottle")
+    amount: Amount | None = Field(default=None, description="amount of substance")
+    volume: Volume | None = Field(default=None, description="volume measured; a liquid by volume wants its density too")
+    equivalents: Equivalents | None = Field(default=None, description="per mole of substrate")
+    purity: Purity | None = Field(default=None, description="content of the bottle by mass")
+    form: Line | None = Field(default=None, description="as bought: 60 % in oil, pellets, monohydrate")
+    density: Density | None = Field(default=None, description="of the liquid as measured")
+    strength: Strength | None = Field(default=None, description="of a solution: concentration, or percent by mass")
 
     @property
     def has_quantity(self) -> bool:
@@ -199,12 +200,14 @@ class Charged(Compound):
 class Substrate(Charged):
     """The molecule that bears the leaving group; its amount is the measure of all equivalents."""
 
-    stereo: StereoKind | None = None
-    ee: TypedPercent | None = None
-    er: NumberRatio | None = None
-    dr: NumberRatio | None = None
-    classes: OneOrMany[Line] = Field(alias="class")
-    leaving_group: Line
+    stereo: StereoKind | None = Field(default=None, description="what the bottle holds, whatever is drawn")
+    ee: TypedPercent | None = Field(default=None, description="enantiomeric excess")
+    er: NumberRatio | None = Field(default=None, description="enantiomer ratio")
+    dr: NumberRatio | None = Field(default=None, description="diastereomer ratio")
+    classes: OneOrMany[Line] = Field(
+        alias="class", description="kind of the reacting carbon; several where several apply"
+    )
+    leaving_group: Line = Field(description="group that leaves; none for an addition")
 
     @model_validator(mode="after")
     def _needs_structure_and_quantity(self) -> Self:
@@ -222,20 +225,20 @@ class Nucleophile(Charged):
 class Reagent(Charged):
     """Whatever else went in, with the use it had."""
 
-    use: ReagentUse
+    use: ReagentUse = Field(description="why it is in the flask")
 
 
 class Solvent(Charged):
     """One solvent by volume, or by its fraction of the solvent volume."""
 
-    fraction: Share | None = None
+    fraction: Share | None = Field(default=None, description="share of the solvent volume, in place of a volume")
 
 
 class RxnFile(Part):
     """A CTfile RXN beside the record that holds the structures; named with its SHA-256, never followed outside."""
 
-    path: RelativePath
-    sha256: Sha256
+    path: RelativePath = Field(description="file beside the record")
+    sha256: Sha256 = Field(description="SHA-256 of that file")
 
 
 # --- how it was run ---------------------------------------------------------------------------------------
@@ -244,26 +247,26 @@ class RxnFile(Part):
 class Formed(Compound):
     """The compound that a stage gives, isolated or not."""
 
-    smiles: SmilesText
-    isolated: Flag | None = None
-    stereo: StereoKind | None = None
+    smiles: SmilesText = Field(description="structure of what the stage gives")
+    isolated: Flag | None = Field(default=None, description="whether it was isolated before the next stage")
+    stereo: StereoKind | None = Field(default=None, description="what is held after the stage")
 
 
 class Stage(Part):
     """One stage of the procedure: what is added, at which temperature, for how long, in which vessel."""
 
-    add: OneOrMany[Line] | None = None
-    over: Time | None = None
-    temperature: TypedTemperature
-    measured: Thermometer | None = None
-    time: Time
-    vessel: Vessel | None = None
-    atmosphere: Line | None = None
-    pressure: Pressure | None = None
-    vessel_volume: Volume | None = None
-    end_point: Line | None = None
-    gives: Formed | None = None
-    note: Line | None = None
+    add: OneOrMany[Line] | None = Field(default=None, description="what goes in, by the names above, in that order")
+    over: Time | None = Field(default=None, description="time the addition took")
+    temperature: TypedTemperature = Field(description="as read; 0 °C to 25 °C for a ramp, 20–25 °C for a band")
+    measured: Thermometer | None = Field(default=None, description="where the temperature was read")
+    time: Time = Field(description="time held, the addition apart")
+    vessel: Vessel | None = Field(default=None, description="how it was contained")
+    atmosphere: Line | None = Field(default=None, description="gas above it: nitrogen, argon, air")
+    pressure: Pressure | None = Field(default=None, description="pressure in the vessel")
+    vessel_volume: Volume | None = Field(default=None, description="inner volume of the vessel")
+    end_point: Line | None = Field(default=None, description="how the end was recognised")
+    gives: Formed | None = Field(default=None, description="what is formed before the next stage")
+    note: Line | None = Field(default=None, description="anything else the next person must know")
 
 
 # --- what came out ----------------------------------------------------------------------------------------
@@ -272,19 +275,19 @@ class Stage(Part):
 class Claim(Part):
     """What the writer holds happened, and on which evidence."""
 
-    mechanism: Mechanism
-    course: Course | None = None
-    basis: OneOrMany[Line] | None = None
+    mechanism: Mechanism = Field(description="mechanism you hold for the main product")
+    course: Course | None = Field(default=None, description="stereochemical course, if one holds for all products")
+    basis: OneOrMany[Line] | None = Field(default=None, description="the evidence it rests on")
 
 
 class Product(Compound):
     """One product under its label."""
 
-    label: Label
-    smiles: SmilesText | None = None
-    use: ProductUse | None = None
-    stereo: StereoKind | None = None
-    course: Course | None = None
+    label: Label = Field(description="short label by which measurements name it")
+    smiles: SmilesText | None = Field(default=None, description="structure")
+    use: ProductUse | None = Field(default=None, description="wanted or not")
+    stereo: StereoKind | None = Field(default=None, description="what was found, whatever is drawn")
+    course: Course | None = Field(default=None, description="stereochemical course, where products differ in it")
 
     @model_validator(mode="after")
     def _needs_structure(self) -> Self:
@@ -307,22 +310,22 @@ KINDS_OF_MEASUREMENT = ("yield", "conversion", "recovered", "ee", "er", "dr", "r
 class Measurement(Part):
     """One measurement: exactly one of yield, conversion, recovered, ee, er, dr and ratio."""
 
-    yield_: TypedPercent | None = Field(default=None, alias="yield")
-    conversion: TypedPercent | None = None
-    recovered: TypedPercent | None = None
-    ee: TypedPercent | None = None
-    er: NumberRatio | None = None
-    dr: NumberRatio | None = None
-    ratio: LabelledRatio | None = None
-    of: Labels | None = None
-    kind: YieldKind | None = None
-    by: Line | None = None
-    mass: Mass | None = None
-    purity: Purity | None = None
-    calibrated: Flag | None = None
-    spread: TypedPercent | None = None
-    n: Count | None = None
-    note: Line | None = None
+    yield_: TypedPercent | None = Field(default=None, alias="yield", description="of theory")
+    conversion: TypedPercent | None = Field(default=None, description="of substrate consumed")
+    recovered: TypedPercent | None = Field(default=None, description="of substrate found again")
+    ee: TypedPercent | None = Field(default=None, description="enantiomeric excess; negative for the other enantiomer")
+    er: NumberRatio | None = Field(default=None, description="enantiomer ratio")
+    dr: NumberRatio | None = Field(default=None, description="diastereomer ratio")
+    ratio: LabelledRatio | None = Field(default=None, description="labels, then numbers")
+    of: Labels | None = Field(default=None, description="label of the product; substrate where that was measured")
+    kind: YieldKind | None = Field(default=None, description="weighed, measured against a standard, or bare area")
+    by: Line | None = Field(default=None, description="method")
+    mass: Mass | None = Field(default=None, description="mass isolated")
+    purity: Purity | None = Field(default=None, description="content of the isolated product by mass")
+    calibrated: Flag | None = Field(default=None, description="whether responses were calibrated")
+    spread: TypedPercent | None = Field(default=None, description="standard deviation over the runs", examples=["3 %"])
+    n: Count | None = Field(default=None, description="number of measurements")
+    note: Line | None = Field(default=None, description="anything else about this number")
 
     @model_validator(mode="after")
     def _holds_one(self) -> Self:
@@ -356,11 +359,11 @@ def _attribute(kind: str) -> str:
 class TimeCourse(Part):
     """Points of (time, percent) followed during the reaction."""
 
-    follows: Literal["conversion", "yield", "recovered", "ee"]
-    of: Labels | None = None
-    by: Line | None = None
-    time_unit: Literal["s", "min", "h", "d"]
-    points: Annotated[tuple[Point, ...], Field(min_length=2, max_length=1000)]
+    follows: Literal["conversion", "yield", "recovered", "ee"] = Field(description="what was followed")
+    of: Labels | None = Field(default=None, description="label of what was followed")
+    by: Line | None = Field(default=None, description="method")
+    time_unit: Literal["s", "min", "h", "d"] = Field(description="unit of the times")
+    points: Annotated[tuple[Point, ...], Field(min_length=2, max_length=1000)] = Field(description="time and percent")
 
     @model_validator(mode="after")
     def _goes_forward_within_bounds(self) -> Self:
@@ -389,21 +392,21 @@ class TimeCourse(Part):
 class RateConstant(Part):
     """A measured rate constant with its order, spread, number of runs and temperature."""
 
-    order: Order
-    value: RateConstantValue
-    spread: RateConstantValue | None = None
-    n: Count | None = None
-    temperature: TypedTemperature
-    of: Line | None = None
-    by: Line | None = None
+    order: Order = Field(description="overall order")
+    value: RateConstantValue = Field(description="rate constant")
+    spread: RateConstantValue | None = Field(default=None, description="standard deviation")
+    n: Count | None = Field(default=None, description="number of runs")
+    temperature: TypedTemperature = Field(description="temperature it was measured at")
+    of: Line | None = Field(default=None, description="what it is the rate constant of")
+    by: Line | None = Field(default=None, description="method")
 
 
 class Failure(Part):
     """Why a reaction failed, and how sure one is."""
 
-    cause: Line
-    basis: Line | None = None
-    repeated: Flag | None = None
+    cause: Line = Field(description="suspected cause")
+    basis: Line | None = Field(default=None, description="what the suspicion rests on")
+    repeated: Flag | None = Field(default=None, description="whether it failed again")
 
 
 def _require_products(outcome: "Outcome") -> None:
@@ -418,14 +421,16 @@ def _require_products(outcome: "Outcome") -> None:
 class Outcome(Part):
     """Result, claim, products and measurements."""
 
-    result: OneOrMany[Result]
-    claim: Claim | None = None
-    products: tuple[Product, ...] = ()
-    sought: Annotated[Sought, BeforeValidator(_sought, json_schema_input_type=str | Sought)] | None = None
-    measured: tuple[Measurement, ...] = ()
-    time_course: TimeCourse | None = None
-    rate_constant: RateConstant | None = None
-    failure: Failure | None = None
+    result: OneOrMany[Result] = Field(description="what was seen to happen, the most important first")
+    claim: Claim | None = Field(default=None, description="what you hold happened, and why")
+    products: tuple[Product, ...] = Field(default=(), description="each product under a label")
+    sought: Annotated[Sought, BeforeValidator(_sought, json_schema_input_type=str | Sought)] | None = Field(
+        default=None, description="product that a failed reaction was meant to give"
+    )
+    measured: tuple[Measurement, ...] = Field(default=(), description="one measurement a line")
+    time_course: TimeCourse | None = Field(default=None, description="conversion or yield against time")
+    rate_constant: RateConstant | None = Field(default=None, description="measured rate constant")
+    failure: Failure | None = Field(default=None, description="why it failed, as far as one knows")
 
     @model_validator(mode="after")
     def _went_or_not(self) -> Self:
@@ -436,9 +441,9 @@ class Outcome(Part):
 class EvidenceFile(Part):
     """A file behind the record, named by relative path and SHA-256; it is never opened."""
 
-    what: Line
-    file: RelativePath
-    sha256: Sha256
+    what: Line = Field(description="what the file holds")
+    file: RelativePath = Field(description="where it lies, beside the record")
+    sha256: Sha256 = Field(description="SHA-256 of the file")
 
 
 # --- the record -------------------------------------------------------------------------------------------
@@ -470,36 +475,46 @@ UNION_TAGS = frozenset({"<text>", "<more>"})
 class Record(Part):
     """One experiment, as its file holds it."""
 
-    format: FormatNumber
-    entry: EntryId
-    revision: Count
-    status: Status
-    title: Annotated[Line, Field(max_length=160)]
-    performed: Performed
-    reviewed: Reviewed | None = None
-    notebook: Line | None = None
-    rxn_file: RxnFile | None = None
-    substrate: Substrate
-    nucleophile: NucleophileField | None = None
-    base: OneOrMany[Nucleophile] | None = None
-    reagents: tuple[Reagent, ...] = ()
-    solvent: OneOrMany[Solvent] | None = None
-    neat: Flag | None = None
-    concentration: Concentration | None = None
-    stages: OneOrMany[Stage]
-    work_up: OneOrMany[Line] | None = None
-    outcome: Outcome
-    evidence: tuple[Evidence, ...] = ()
-    procedure: Line | None = None
-    take_away: Line | None = None
-    scale_limit: Line | None = None
-    accepted: tuple[Acceptance, ...] = ()
-    safety_review: SafetyReview | None = None
-    related: OneOrMany[EntryId] | None = None
-    preceded_by: OneOrMany[EntryId] | None = None
-    disclosure: Disclosure | None = None
-    superseded: Superseded | None = None
-    withdrawn: Withdrawn | None = None
+    format: FormatNumber = Field(description="version of the record format")
+    entry: EntryId = Field(description="identifier; the file is named after it")
+    revision: Count = Field(description="1 for a new entry")
+    status: Status = Field(description="draft until reviewed, then current")
+    title: Annotated[Line, Field(max_length=160)] = Field(description="what a colleague reads in a list")
+    performed: Performed = Field(description="who ran it, and when")
+    reviewed: Reviewed | None = Field(default=None, description="who reviewed the record, and when")
+    notebook: Line | None = Field(default=None, description="book and page")
+    rxn_file: RxnFile | None = Field(default=None, description="CTfile RXN that holds the structures")
+    substrate: Substrate = Field(description="molecule that bears the leaving group, or the alkene")
+    nucleophile: NucleophileField | None = Field(
+        default=None, description="what attacks carbon; several where they compete"
+    )
+    base: OneOrMany[Nucleophile] | None = Field(default=None, description="what takes a proton")
+    reagents: tuple[Reagent, ...] = Field(default=(), description="whatever else went in")
+    solvent: OneOrMany[Solvent] | None = Field(default=None, description="each solvent, by volume or fraction")
+    neat: Flag | None = Field(default=None, description="true in place of a solvent")
+    concentration: Concentration | None = Field(
+        default=None, description="of substrate per solvent volume, where solvents stand by fractions"
+    )
+    stages: OneOrMany[Stage] = Field(description="one for a single-stage reaction")
+    work_up: OneOrMany[Line] | None = Field(default=None, description="steps in order, the quench first")
+    outcome: Outcome = Field(description="what came out, and how it was measured")
+    evidence: tuple[Evidence, ...] = Field(
+        default=(), description="methods by which the products were identified, and files behind the record"
+    )
+    procedure: Line | None = Field(default=None, description="the procedure in prose, if there is more to say")
+    take_away: Line | None = Field(default=None, description="one sentence a colleague reads in a list")
+    scale_limit: Line | None = Field(default=None, description="largest scale this is fit for, and why")
+    accepted: tuple[Acceptance, ...] = Field(
+        default=(), description="disagreements with a rule that a reviewer has accepted"
+    )
+    safety_review: SafetyReview | None = Field(
+        default=None, description="who looked at the hazards, and for what scope"
+    )
+    related: OneOrMany[EntryId] | None = Field(default=None, description="entries that belong beside this one")
+    preceded_by: OneOrMany[EntryId] | None = Field(default=None, description="entries this one starts from")
+    disclosure: Disclosure | None = Field(default=None, description="who may see the entry")
+    superseded: Superseded | None = Field(default=None, description="what takes its place; goes with status superseded")
+    withdrawn: Withdrawn | None = Field(default=None, description="why it no longer holds; goes with status withdrawn")
 
     @model_validator(mode="after")
     def _hangs_together(self) -> Self:

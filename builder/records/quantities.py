@@ -29,6 +29,7 @@ __all__ = [
     "quantity_pattern",
     "temperature_pattern",
     "units_of",
+    "writing_aids",
 ]
 
 
@@ -154,7 +155,7 @@ _QUANTITY = re.compile(rf"(?P<number>{_NUMBER})\s*(?P<unit>\S.*)?")
 _SPACES = re.compile(r"[\s\u00a0\u2000-\u200a\u202f\u205f]+")
 _LOOKALIKES = str.maketrans({"\u2212": "-", "\u2012": "-", "\u2013": "-", "\u03bc": "µ", "\u2010": "-", "\u2011": "-"})
 _RAMP = re.compile(r" [tT][oO] ")
-_LOW = rf"(?P<low>{_NUMBER})(?P<low_unit> ?[^\s\d+-](?:[^-]*[^\s-])?)?"
+_LOW = rf"(?P<low>(?>{_NUMBER}))(?P<low_unit> ?[^\s\d+-](?:[^-]*[^\s-])?)?"
 _BAND = re.compile(rf"{_LOW}(?:-| - )(?P<high>{_NUMBER} ?\D.*)")
 _RANGE = re.compile(rf"{_LOW} ?- ?(?P<high>{_UNSIGNED}) ?(?P<unit>\D.*)")
 _POWER_OF_TEN = re.compile(
@@ -333,6 +334,28 @@ def is_beyond_measure(number: str) -> bool:
     """Say whether a number is longer, or its power of ten larger, than any measurement; safe for hostile text."""
     _, _, exponent = number.lower().partition("e")
     return len(number) > _MAX_NUMBER_LENGTH or (bool(exponent) and abs(int(exponent)) > _MAX_EXPONENT)
+
+
+def writing_aids() -> dict[str, object]:
+    """Return as plain data what a mend at the keyboard needs: units with their spellings, and words that are no unit.
+
+    units: by dimension; value × factor + offset is in the first unit of the dimension. vague: word -> what to write.
+    spelled_out: word -> unit. longest, most_exponent: of a number.
+    """
+    return {
+        "units": {str(dimension): [_unit_aid(unit, units[0]) for unit in units] for dimension, units in _UNITS.items()},
+        "vague": _VAGUE,
+        "spelled_out": _SPELLED_OUT,
+        "longest": _MAX_NUMBER_LENGTH,
+        "most_exponent": _MAX_EXPONENT,
+    }
+
+
+def _unit_aid(unit: _Unit, canonical: _Unit) -> dict[str, object]:
+    if unit.pint == "kelvin":
+        return {"symbol": unit.symbol, "spellings": unit.spellings, "factor": 1.0, "offset": -273.15}
+    factor = 1.0 if unit is canonical else float(_factor(unit.pint, canonical.pint))
+    return {"symbol": unit.symbol, "spellings": unit.spellings, "factor": factor, "offset": 0.0}
 
 
 def quantity_pattern(dimension: Dimension, *, is_positive: bool) -> str:

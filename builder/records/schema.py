@@ -42,13 +42,13 @@ def record_schema(classes: Iterable[str], leaving_groups: Iterable[str]) -> dict
     substrate = parts["Substrate"]["properties"]
     one_class = {"type": "string", "enum": sorted(classes)}
     many_classes = {"type": "array", "items": one_class, "minItems": 1}
-    substrate["class"] = {"if": {"type": "array"}, "then": many_classes, "else": one_class}
-    substrate["leaving_group"] = {"type": "string", "enum": sorted({*leaving_groups, "none"})}
+    _replace(substrate, "class", {"if": {"type": "array"}, "then": many_classes, "else": one_class})
+    _replace(substrate, "leaving_group", {"type": "string", "enum": sorted({*leaving_groups, "none"})})
     schema["allOf"] = [_one_of("nucleophile", "base"), _SOLVENT_OR_NEAT, *map(_with_status, _STATUS_KEYS)]
     parts["Substrate"]["allOf"] = [_one_of(*STRUCTURES), _one_of(*QUANTITIES_OF_SUBSTRATE)]
     parts["Product"]["allOf"] = [_one_of(*STRUCTURES)]
     parts["Measurement"]["allOf"] = [{"oneOf": [_has(kind) for kind in KINDS_OF_MEASUREMENT]}, _YIELD_OF_A_KIND]
-    parts["Outcome"]["properties"]["sought"] = _text_or({"type": "string"}, {"$ref": "#/$defs/Sought"})
+    _replace(parts["Outcome"]["properties"], "sought", _text_or({"type": "string"}, {"$ref": "#/$defs/Sought"}))
     parts["Outcome"]["allOf"] = [_WHAT_WENT_IS_SHOWN]
     return schema
 
@@ -65,6 +65,11 @@ def settings_schema() -> dict[str, Any]:
 def _text_or(text: JsonSchemaValue, more: JsonSchemaValue) -> JsonSchemaValue:
     """Say what a text must be and what anything else; with anyOf an editor could not point into `more`."""
     return {"if": {"type": "string"}, "then": text, "else": more}
+
+
+def _replace(properties: dict[str, Any], key: str, takes: JsonSchemaValue) -> None:
+    """Put what a key takes in the place of what the models say of it; its meaning stays."""
+    properties[key] = {"description": properties[key]["description"], **takes}
 
 
 def _has(*keys: str) -> dict[str, Any]:

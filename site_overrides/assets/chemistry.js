@@ -105,5 +105,32 @@ globalThis.handbookChemistry = (() => {
     return { formula: inHillOrder(counts, charge), outline: atoms.map((atom) => atom.mark).sort().join() };
   }
 
-  return { hill, outline };
+  const NAMES = { B: "boron", C: "carbon", N: "nitrogen", O: "oxygen", P: "phosphorus", S: "sulfur" };
+
+  /** What a SMILES as typed has wrong with it, in a chemist's words; "" for nothing that can be told without a toolkit. */
+  function fault(smiles) {
+    if (/\s/.test(smiles)) return "there is a space in it";
+    const outside = smiles.replace(/\[[^[\]]*\]/g, "*");
+    if (/[[\]]/.test(outside)) return "a bracket [ ] has only one end";
+    const [odd] = outside.replace(/Br|Cl|[BCNOPSFI]|[bcnops]|[-=#$:/\\.()*%\d]/g, "");
+    if (odd) return `${odd} is no sign of one; an element beyond B C N O P S F Cl Br I stands in [ ]`;
+    const count = (sign) => outside.split(sign).length - 1;
+    if (count("(") !== count(")")) return "a branch ( ) has only one end";
+    const rings = outside.match(/%\d\d|\d/g) ?? [];
+    const open = rings.find((ring) => rings.filter((other) => other === ring).length % 2);
+    if (open) return `ring ${open} is not closed`;
+    const atoms = atomsOf(smiles);
+    if (!atoms?.length) return "it cannot be read as one";
+    const full = atoms.find((atom) => atom.known === undefined && !atom.isFlat && isOverfull(atom));
+    if (!full) return "";
+    const bonds = `${NAMES[full.element] ?? full.element} with ${full.bonds} bonds`;
+    return full.element === "N" ? `${bonds}; one with a charge is written [N+]` : bonds;
+  }
+
+  /** Whether an atom without brackets has more bonds than it can; nitro and azido groups may be drawn without charges. */
+  function isOverfull({ element, bonds }) {
+    return bonds > VALENCES[element].at(-1) || (element === "N" && bonds === 4);
+  }
+
+  return { hill, outline, fault };
 })();

@@ -37,6 +37,7 @@ TEMPLATES = {
     "rule-gate": "rules/sn2-closed-tertiary/",
     "rule-check": "rules/yield-above-100/",
     "how-to-add": "how-to-add/",
+    "form": "how-to-add/form/",
     "how-to-cite": "how-to-cite/",
     "own-page": "fume-hoods/",
     "missing": "404.html",
@@ -183,6 +184,15 @@ def test_a_chosen_paper_stays_until_the_system_is_followed_again(desk: "sync_api
         desk.reload()
         seen.append(desk.evaluate("document.documentElement.dataset.paper ?? 'system'"))
     assert seen == ["light", "dark", "system"]
+
+
+def test_the_form_is_at_work_below_a_sub_path(desk: "sync_api.Page", address: str) -> None:
+    desk.goto(address + "how-to-add/form/")
+    desk.get_by_label("Temperature").first.fill("60")
+    desk.get_by_label("Temperature").first.blur()
+    assert desk.get_by_text("The unit is missing: write 60 °C or 333 K.").first.is_visible()
+    new_file = desk.get_by_role("link", name="open a new file there")
+    assert new_file.get_attribute("href") == "https://forge.example/book/new/main/entries/"
 
 
 def test_one_scheme_is_shown_and_named(tab: "sync_api.Page", address: str) -> None:

@@ -54,6 +54,14 @@ def test_every_part_of_the_schema_is_listed_once() -> None:
     assert len(PARTS) == len(format_parts(SCHEMA))
 
 
+def test_every_key_has_a_meaning_of_its_own() -> None:
+    for part in (SCHEMA, *SCHEMA["$defs"].values()):
+        said = {key: node.get("description", "") for key, node in part.get("properties", {}).items()}
+        assert all(said.values()), [key for key, text in said.items() if not text]
+        twice = [key for key, text in said.items() if list(said.values()).count(text) > 1]
+        assert twice == [], part["title"]
+
+
 @pytest.mark.parametrize("model", _models_below(Record), ids=lambda model: model.__name__)
 def test_a_part_lists_every_key_of_its_model(model: type[BaseModel]) -> None:
     part = _part_of(model)

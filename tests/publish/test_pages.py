@@ -26,6 +26,7 @@ GOLDEN_PAGES = {
     "entry-failure.html": "e/NS2H8WDRW/",
     "list-by-solvent.html": "lists/solvent/ethanol/",
     "rule-gate.html": "rules/sn1-closed-methyl/",
+    "form.html": "how-to-add/form/",
 }
 _DRAWING = re.compile(r'<svg [^>]*class="hb-drawing.*?</svg>', re.DOTALL)
 _FORECAST = re.compile(r'(<h2 id="expected">|<summary>Why the engine).*?(</section>|</details>)', re.DOTALL)
