@@ -42,12 +42,14 @@ __all__ = [
     "Entry",
     "Examined",
     "Memory",
+    "Shelf",
     "Verdict",
     "examine",
     "examined_again",
     "is_aside",
     "judge",
     "open_book",
+    "read_shelf",
     "record_files",
     "whole",
 ]
@@ -193,9 +195,12 @@ class _Desk(Generic[Kept]):
 
     def examine_reading(self, reading: Reading, path: Path) -> Examined[Kept]:
         """Check what was read as the file at `path`."""
-        named = reading.record.rxn_file if reading.record else None
-        rxn = _attachment(path.parent / named.path, self.folder) if named else None
-        return examine(reading, self.settings, self.today, rxn, keep=self.keep)
+        return examine(reading, self.settings, self.today, self.rxn(reading.record, path), keep=self.keep)
+
+    def rxn(self, record: Record | None, path: Path) -> bytes | None:
+        """Return the content of the RXN file that a record names, if it may be read."""
+        named = record.rxn_file if record else None
+        return _attachment(path.parent / named.path, self.folder) if named else None
 
 
 @overload
@@ -389,6 +394,36 @@ def judge(examined: Sequence[Examined[Any]], settings: Settings) -> dict[str, tu
         accepted = reading.record.accepted if reading.record is not None else None
         settled[reading.file] = found if accepted is None else settle(accepted, reading.places, found, each.unasked)
     return settled
+
+
+@dataclass(frozen=True, slots=True)
+class Shelf:
+    """The records of a book, read and not checked; a case is opened when somebody asks for it.
+
+    records: by identifier, in the order of the files, with the path of each.
+    """
+
+    records: Mapping[str, tuple[Record, Path]]
+    _desk: _Desk[Case]
+
+    def case(self, entry: str) -> Case:
+        """Open the case of a record.
+
+        Raises KeyError for an identifier that no readable record bears.
+        """
+        (record, path), desk = self.records[entry], self._desk
+        return open_case(record, desk.name(path), desk.settings, desk.today, desk.rxn(record, path))
+
+
+def read_shelf(folder: Path, today: dt.date) -> Shelf:
+    """Read every record below `folder`, as far as it can be read.
+
+    Nothing a file holds raises; OSError passes for a folder that cannot be read.
+    """
+    folder = folder.resolve()
+    desk = _Desk(folder, _open_settings(folder)[0], today, whole)
+    read = ((read_record(path, desk.name(path)).record, path) for path in record_files(folder)[0])
+    return Shelf({record.entry: (record, path) for record, path in read if record is not None}, desk)
 
 
 def record_files(folder: Path) -> tuple[tuple[Path, ...], list[Finding]]:

@@ -17,10 +17,11 @@ from typing import Any, NoReturn
 import click
 
 from builder.authoring.column_map import ColumnMap, first_map
+from builder.authoring.dialogue import Prompts, Silence
 from builder.authoring.fix import Mended, diff_of, mended_files, with_exact_edits, write_mended
 from builder.authoring.import_report import as_plain, cell_table, import_text
 from builder.authoring.import_sheet import NoKeyError, State, open_sheet, plan_import, write_import
-from builder.authoring.new import write_new_record
+from builder.authoring.new import Stated, draft_record, folder_inside, write_draft
 from builder.authoring.schema import schemas, write_schemas
 from builder.authoring.sheet import SheetError
 from builder.authoring.start import StartError, start_book
@@ -31,7 +32,6 @@ from builder.checks.forecast_cautions import forecast_cautions
 from builder.checks.house import DISTRIBUTION
 from builder.checks.register import all_rules
 from builder.checks.report import render_json, render_rule, render_text, summary
-from builder.chemistry.structure import StructureError
 from builder.finding import Finding, Level
 from builder.mechanism.answer import answer_of, change_of, how_read
 from builder.mechanism.asking import AskingError, question_from_words, read_wish
@@ -55,7 +55,8 @@ from builder.publish.export import (
 from builder.publish.figures import how_many
 from builder.publish.forecast_text import render_forecast
 from builder.publish.progress import counted, stepped, watched
-from builder.records.reader import read_file_into, read_settings
+from builder.records.quantities import QuantityError
+from builder.records.reader import MAX_BYTES, read_file_into, read_settings
 from builder.records.settings import SETTINGS_FILE
 from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places
@@ -86,6 +87,7 @@ _CONFIG = click.option(
     show_default=True,
     help="The book's mkdocs.yml.",
 )
+_RXN = click.Path(exists=True, dir_okay=False, path_type=Path)
 _JSON = click.option("--json", "as_json", is_flag=True, help="Print JSON for machines instead of text.")
 
 
@@ -96,7 +98,7 @@ def handbook() -> None:
 
     \b
     Example:
-      handbook new 'CCC(C)Br' --nucleophile '[Na+].[N-]=[N+]=[N-]'
+      handbook new 2-bromobutane --nucleophile 'sodium thiophenolate'
       handbook check
       handbook build
     """
@@ -236,24 +238,71 @@ def serve(config: Path, address: str) -> None:
 
 
 @handbook.command()
-@click.argument("substrate")
-@click.option("--nucleophile", help="SMILES of the nucleophile or base, counter-ion included.")
-@click.option("--by", "person", default="bench-1", show_default=True, help="Your code.")
+@click.argument("substrate", required=False)
+@click.option("--nucleophile", help="Name or SMILES, counter-ion included; or solvent, internal, none.")
+@click.option("--base", help="Name or SMILES of an added base.")
+@click.option("--rxn", type=_RXN, help="A CTfile RXN (V2000 or V3000) with substrate, nucleophile and product.")
+@click.option("--leaving-group", help="Where several could leave; none for an addition to a multiple bond.")
+@click.option("--stereo", help='What the bottle holds: "single enantiomer", racemate, ...')
+@click.option("--amount", help='Of the substrate: "10 mmol" or "1.37 g".')
+@click.option("--equivalents", help="Of the nucleophile, or else of the base.")
+@click.option("--solvent", "solvents", multiple=True, metavar="NAME[:VOLUME|:FRACTION]", help='Or "neat". Repeat it.')
+@click.option("--temperature", help='With its unit: "60 °C", "0 °C to 25 °C".')
+@click.option("--time", help='With its unit: "16 h".')
+@click.option("--want", metavar="RESULT|MECHANISM|SMILES", help="Which product is the desired one.  [default: main]")
+@click.option("--from", "origin", metavar="NS…|nearest", help="Take solvent, stages and work-up of that entry.")
+@click.option("--title", help="In one line.  [default: from the names]")
+@click.option("--by", "person", envvar="HANDBOOK_BY", show_envvar=True, help="Your code in handbook.yml.")
+@click.option("--in", "inside", metavar="FOLDER", help="A folder of the book; it is made if need be.")
+@click.option("--yes", is_flag=True, help="Ask nothing: what is missing stays open.")
+@click.option("--print", "to_terminal", is_flag=True, help="Print the record instead of writing it.")
 @_BOOK
-def new(substrate: str, nucleophile: str | None, person: str, book: Path) -> None:
-    """Write a new record for SUBSTRATE (a SMILES) under a fresh identifier.
+def new(*, book: Path, inside: str | None, rxn: Path | None, yes: bool, to_terminal: bool, **words: Any) -> None:
+    """Write a new record for SUBSTRATE (name or SMILES) under a fresh identifier.
+
+    What follows from the structures is filled in: class, leaving group, products to confirm with their forecast. What
+    is missing is asked for on a terminal; elsewhere, or with --yes, it says TO FILL IN with what belongs there. No
+    file is ever overwritten.
 
     \b
     Example:
-      handbook new 'CCC(C)Br' --nucleophile '[Na+].[N-]=[N+]=[N-]' --by bench-2
+      handbook new                                              asks for everything
+      handbook new 2-bromobutane --nucleophile 'sodium thiophenolate' --amount '10 mmol'
+      handbook new 'CCCCCCC(C)OS(C)(=O)=O' --nucleophile KSAc --from nearest --in alkylations
+      handbook new 'tert-butyl chloride' --nucleophile solvent --solvent ethanol:80% --solvent water:20%
+      handbook new --rxn drawn.rxn --solvent 'DMF:20 mL' --temperature '60 °C' --time '16 h' --print
     """
-    if not re.fullmatch(r"[A-Za-z0-9.-]{1,40}", person):
+    person = words["person"]
+    if person and not re.fullmatch(r"[A-Za-z0-9.-]{1,40}", person):
         raise click.UsageError(f'"{person}" is no person code: letters, digits, dot and hyphen')
+    typed = {name: value for name, value in words.items() if value}
+    is_live = not yes and sys.stdin.isatty() and sys.stdout.isatty()
+    dialogue = Prompts() if is_live else Silence()
     try:
-        path = write_new_record(book, substrate, nucleophile, date=_today(), person=person)
-    except StructureError as error:
-        raise click.UsageError(f"{error.reason}; {error.mend}") from error
-    click.echo(f"{path}: fill in what says TO FILL IN, then `handbook check {path}`")
+        folder = folder_inside(book, inside)
+        stated = Stated(**typed, rxn="" if rxn is None else _small_text(rxn))
+        draft = draft_record(stated, folder, _today(), dialogue)
+    except AskingError as error:
+        raise click.UsageError(str(error)) from error
+    except QuantityError as error:
+        raise click.UsageError(f"{error.message}; {error.mend}") from error
+    if to_terminal:
+        click.echo(draft.text, nl=False)
+        return
+    path = folder / f"{draft.entry}.yml"
+    if is_live:
+        click.echo(f"\n{draft.text}", err=True)
+        if not dialogue.agrees(f"Write {path}?"):
+            click.echo("nothing is written")
+            return
+    write_draft(draft, folder)
+    click.echo(f"{path}: {how_many(draft.gaps, 'place', 'places')} TO FILL IN, then `handbook check {path}`")
+
+
+def _small_text(path: Path) -> str:
+    if path.stat().st_size > MAX_BYTES:
+        raise click.UsageError(f"{path} has more than {MAX_BYTES // 1024} kB; give one reaction")
+    return path.read_bytes().decode("utf-8-sig", errors="replace")
 
 
 @handbook.command("import")

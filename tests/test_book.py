@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 
 from builder import book as book_module
-from builder.book import Book, Memory, open_book
+from builder.book import Book, Memory, open_book, read_shelf
 from builder.checks.case import Case
 from builder.records.specimen import with_example
 from tests.browser.built import GOOD, RECORDS
@@ -86,3 +86,16 @@ def test_a_record_that_names_a_file_is_read_again_with_it(folder: Path) -> None:
     after = open_book(folder, today=TODAY, keep=_name, memory=memory)
     assert "NS4T9XQ2N" in {entry.id for entry in before.entries}
     assert "NS4T9XQ2N" not in {entry.id for entry in after.entries}
+
+
+def test_a_shelf_holds_what_can_be_read_and_opens_it_when_asked(folder: Path) -> None:
+    (folder / "NS4T9XQ2N.yml").write_text(with_example("status: finished"), "utf-8")
+    shelf = read_shelf(folder, TODAY)
+    assert sorted(shelf.records) == sorted(RECORDS)
+    for entry, (record, path) in shelf.records.items():
+        case = shelf.case(entry)
+        assert case.record == record
+        assert case.file == f"entries/{path.name}"
+        assert ("substrate",) in case.structures
+    with pytest.raises(KeyError):
+        shelf.case("NS4T9XQ2N")

@@ -267,18 +267,21 @@ def test_rules_can_be_listed(run: Run) -> None:
 
 
 def test_a_new_record_is_a_skeleton_whose_gaps_are_found(run: Run, book: Path) -> None:
-    ran = run("new", "CC[C@H](C)Br", "--nucleophile", "[Na+].[N-]=[N+]=[N-]", "--by", "bench-2", "--book", book)
+    ran = run("new", "CC[C@H](C)Br", "--nucleophile", "NaSPh", "--by", "bench-2", "--in", "sulfides", "--book", book)
     assert ran.code == 0
-    (path,) = book.glob("NS*.yml")
+    (path,) = (book / "sulfides").glob("NS*.yml")
     assert is_identifier(path.stem)
     text = path.read_text("utf-8")
     assert "smiles: 'CC[C@H](C)Br'" in text
     assert "class: [secondary]" in text
     assert "leaving_group: bromide" in text
-    assert "stereo: TO FILL IN" in text
+    assert "by: bench-2" in text
+    gaps = re.findall(r"^[^#\n]*TO FILL IN", text, re.MULTILINE)
+    assert ran.out == f"{path}: {len(gaps)} places TO FILL IN, then `handbook check {path}`\n"
+    assert "nucleophile: NaSPh, SMILES [Na+].[S-]c1ccccc1" in ran.err
     reading = read_record(path, path.name)
-    lines = {text.splitlines()[finding.place.line - 1] for finding in reading.findings}
-    assert lines
+    lines = [text.splitlines()[finding.place.line - 1] for finding in reading.findings]
+    assert len(lines) == len(gaps)
     assert all("TO FILL IN" in line for line in lines)
 
 
@@ -290,12 +293,46 @@ def test_a_new_record_in_a_folder_of_the_book_finds_its_schema(run: Run, book: P
     assert (path.parent / schema).resolve() == (book / "schema" / "record-1.json").resolve()
 
 
-@pytest.mark.parametrize("arguments", [("C1CC",), ("CCBr", "--by", "a: b, c]")], ids=["SMILES", "person"])
-def test_new_refuses_what_it_cannot_read_and_writes_nothing(run: Run, book: Path, arguments: tuple[str, ...]) -> None:
+def test_a_new_record_is_printed_and_not_written(run: Run, book: Path) -> None:
     before = sorted(book.rglob("*"))
-    ran = run("new", *arguments, "--book", book)
-    assert ran.code == 2
+    ran = run("new", "CCBr", "--nucleophile", "NaI", "--print", "--book", book)
+    assert ran.out.startswith("# yaml-language-server: $schema=schema/record-1.json\nformat: 1\n")
     assert sorted(book.rglob("*")) == before
+
+
+def test_nobody_is_signed_for_unless_somebody_says_so(run: Run, book: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.delenv("HANDBOOK_BY", raising=False)
+    assert "  by: TO FILL IN" in run("new", "CCBr", "--print", "--book", book).out
+    monkeypatch.setenv("HANDBOOK_BY", "bench-3")
+    assert "  by: bench-3\n" in run("new", "CCBr", "--print", "--book", book).out
+
+
+@pytest.mark.parametrize(
+    ("arguments", "message"),
+    [
+        (("C1CC",), "unclosed ring 1 (character 2)"),
+        (("CCBr", "--by", "a: b, c]"), "is no person code"),
+        (("CCBr", "--in", "../elsewhere"), "lies outside the book"),
+        (("CCBr", "--temperature", "rt"), "what the thermometer showed"),
+        ((), "no substrate is given"),
+    ],
+    ids=["SMILES", "person", "folder", "temperature", "nothing"],
+)
+def test_new_refuses_what_it_cannot_read_and_writes_nothing(
+    run: Run, book: Path, arguments: tuple[str, ...], message: str
+) -> None:
+    before = sorted(book.parent.rglob("*"))
+    ran = run("new", *arguments, "--book", book)
+    assert (ran.code, ran.out) == (2, "")
+    assert message in ran.err
+    assert sorted(book.parent.rglob("*")) == before
+
+
+def test_a_drawing_too_large_to_be_one_is_misuse(run: Run, book: Path, tmp_path: Path) -> None:
+    (tmp_path / "big.rxn").write_text("$RXN\n" * 60_000, "utf-8")
+    ran = run("new", "--rxn", tmp_path / "big.rxn", "--book", book)
+    assert ran.code == 2
+    assert "big.rxn has more than 256 kB" in ran.err
 
 
 def test_schema_is_written_and_printed(run: Run, book: Path) -> None:

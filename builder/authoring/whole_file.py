@@ -6,7 +6,7 @@ from contextlib import contextmanager
 from pathlib import Path
 from typing import TextIO
 
-__all__ = ["write_all", "written_whole"]
+__all__ = ["write_all", "written_new", "written_whole"]
 
 
 @contextmanager
@@ -54,3 +54,36 @@ def write_all(texts: Mapping[Path, str]) -> None:
         for folder in reversed(made):
             folder.rmdir()
         raise
+
+
+@contextmanager
+def written_new(path: Path) -> Iterator[TextIO]:
+    """Open a file beside `path` for UTF-8 text with plain line ends, and put it in its place at the end, if it is free.
+
+    Where the body raises, or is interrupted, nothing is left. Raises FileExistsError where something stands at `path`,
+    which stays as it is; OSError where the folder may not be written.
+    """
+    if os.path.lexists(path):
+        raise FileExistsError(17, "is there already and is never overwritten", str(path))
+    beside = path.with_name(f".{path.name}.{os.getpid()}.part")
+    try:
+        with beside.open("x", encoding="utf-8", newline="\n") as file:
+            yield file
+        _put_without_replacing(beside, path)
+    finally:
+        beside.unlink(missing_ok=True)
+
+
+def _put_without_replacing(beside: Path, path: Path) -> None:
+    """Give a file its name if nothing bears it, also where the file system knows no hard links."""
+    try:
+        path.hardlink_to(beside)
+    except FileExistsError:
+        raise
+    except OSError:
+        with path.open("xb") as file:
+            try:
+                file.write(beside.read_bytes())
+            except BaseException:
+                path.unlink()
+                raise

@@ -21,6 +21,7 @@ __all__ = [
     "has_undrawn_species",
     "in_play",
     "is_activated",
+    "precursors_of",
     "species_in_flask",
     "with_halides_set_free",
 ]
@@ -164,6 +165,11 @@ def _halide_donors() -> tuple[_HalideDonor, ...]:
 def _bearers(record: Record, structures: Mapping[Path, Structure]) -> tuple[Structure, ...]:
     paths: list[Path] = [("substrate",), *(("stages", index, "gives") for index in range(len(record.stages)))]
     return tuple(structures[path] for path in paths if path in structures)
+
+
+def precursors_of(group: str) -> tuple[str, ...]:
+    """Return the groups that can be made into this one in the flask."""
+    return tuple(precursor for precursor, _ in _precursors().get(group, ()))
 
 
 @cache

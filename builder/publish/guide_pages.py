@@ -14,7 +14,7 @@ from builder.publish.portrait import Portrait
 from builder.publish.templating import deferred
 from builder.records.house_rules import HouseRule
 from builder.records.schema import record_schema
-from builder.records.specimen import SPECIMEN_FILE, specimen_text
+from builder.records.specimen import SPECIMEN_FILE, sample_text
 
 __all__ = ["FormatPart", "FormatRow", "HouseRuleRow", "format_parts", "guide_pages", "house_rule_row"]
 
@@ -97,8 +97,8 @@ def guide_pages(book: Book[Portrait]) -> tuple[Page, ...]:
             description="From the bench to the book: write the record, check it, ask for review.",
             write=deferred(
                 "how_to_add.html",
-                specimen=specimen_text(),
-                specimen_file=SPECIMEN_FILE,
+                sample=sample_text(),
+                sample_file=SPECIMEN_FILE,
                 format_parts=format_parts(schema),
                 classes=[(name, meanings[name]) for name in site_class_names()],
                 leaving_groups=leaving_group_names(),

@@ -1,10 +1,10 @@
-"""The specimen record: a good one, on which the examples of rules are played."""
+"""Two good records: the specimen, on which the examples of rules are played, and a sample to be shown."""
 
 import re
 from functools import cache
 from importlib import resources
 
-__all__ = ["GAP", "SPECIMEN_FILE", "outcome_example", "specimen_text", "with_example"]
+__all__ = ["GAP", "SPECIMEN_FILE", "outcome_example", "sample_text", "specimen_text", "with_example"]
 
 SPECIMEN_FILE = "NS4T9XQ2N.yml"
 _BLOCK = re.compile(r"^(?P<key>[A-Za-z_]+):.*(?:\n(?:[ \-].*|$))*", re.MULTILINE)
@@ -23,6 +23,11 @@ def outcome_example(*lines: str, products: str = ONE_PRODUCT, more: str = "") ->
     extra = "".join(f"  {line}\n" for line in more.splitlines())
     measured = f"  measured: [{', '.join(lines)}]" if lines else ""
     return f"outcome:\n  result: [substitution]\n{extra}  products: [{products}]\n{measured}".rstrip("\n")
+
+
+def sample_text() -> str:
+    """Return the YAML of a record as people keep them, invented, of substances one may well imitate."""
+    return resources.files("builder.records").joinpath("sample.yml").read_text("utf-8")
 
 
 @cache

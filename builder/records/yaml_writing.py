@@ -13,7 +13,7 @@ from builder.records.mended_text import quoted
 from builder.records.yaml_text import Plain, is_read_alike
 from builder.rule import Path
 
-__all__ = ["is_bare", "record_yaml"]
+__all__ = ["is_bare", "record_yaml", "text_yaml"]
 
 _QUOTED_KEYS = frozenset({"smiles", "inchi", "er", "dr", "ratio"})
 _FREE_TEXT = frozenset({"name", "by", "note", "basis", "because", "scope", "cause", "what", "file", "path"})
@@ -32,6 +32,11 @@ def record_yaml(record: Mapping[str, Plain], *, remarks: Mapping[Path, str] | No
     """
     lines = _mapping(in_format_order(record), (), "", remarks or {})
     return "".join(f"{line}\n" for line in lines)
+
+
+def text_yaml(text: str) -> str:
+    """Return a free text as it stands behind its key in block style."""
+    return _scalar("", text, is_in_flow=False)
 
 
 def _mapping(values: Mapping[str, Plain], path: Path, margin: str, remarks: Mapping[Path, str]) -> Iterator[str]:

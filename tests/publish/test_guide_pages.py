@@ -1,5 +1,6 @@
 """How to add lists the whole format: every part and every key, held to the models the reader reads with."""
 
+import datetime as dt
 import inspect
 from collections.abc import Iterator
 from typing import Any, get_args, get_origin
@@ -7,10 +8,15 @@ from typing import Any, get_args, get_origin
 import pytest
 from pydantic import BaseModel
 
+from builder.book import examine
 from builder.chemistry.perception import leaving_group_names, site_class_names
+from builder.finding import Level
 from builder.publish.guide_pages import FormatPart, format_parts
 from builder.records.model import Nucleophile, Record
+from builder.records.reader import read_bytes
 from builder.records.schema import record_schema
+from builder.records.settings import Settings
+from builder.records.specimen import SPECIMEN_FILE, sample_text
 from tests.publish.handmade import Markup
 
 SCHEMA = record_schema(site_class_names(), leaving_group_names())
@@ -83,3 +89,10 @@ def test_what_a_key_takes(places: tuple[str, ...], key: str, takes: str) -> None
 def test_a_part_stands_under_each_of_its_keys(markup: dict[str, Markup]) -> None:
     assert _part_of(Nucleophile).places == ("nucleophile", "base")
     assert "nucleophile, base" in markup["how-to-add/"].values("aria-label")
+
+
+def test_the_record_that_is_shown_is_sound_and_harmless() -> None:
+    reading = read_bytes(sample_text().encode(), SPECIMEN_FILE)
+    found = examine(reading, Settings(format=1, title="A book"), dt.date(2026, 12, 1)).findings
+    assert {(finding.level, finding.rule) for finding in found} <= {(Level.CAUTION, "hazard-species")}
+    assert not any("explosive" in finding.message for finding in found)
