@@ -40,8 +40,9 @@ test-all: system-test lint ## everything in `make test`, and the slow suites
 bench: .venv/.ready ## what an entry, a prediction, a build of 1,000 entries and the search cost; some minutes
 	$(BIN)/python -m tests.bench
 
-eval: .venv/.ready ## the engine against published reactions
+eval: .venv/.ready ## the engine against published reactions, and the checks against slips made on purpose
 	$(BIN)/python tests/eval.py
+	$(BIN)/python -m tests.eval_checks
 
 screenshots: system-test .venv/.ready ## pictures of every template on both papers at two widths, into build/screenshots/
 	$(BIN)/pytest -n $(WORKERS) -q tests/browser/test_site.py -k every_template --screenshots build/screenshots
