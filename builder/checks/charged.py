@@ -1,12 +1,11 @@
-"""What was charged: amounts that follow, quantities typed twice, room in the vessel."""
+"""What was charged: amounts that follow, and quantities typed twice."""
 
 from collections.abc import Iterator
 
 from builder.checks.case import Case
 from builder.finding import Level
-from builder.mechanism.amounts import QUANTITY_ORDER, Role, charged_rows, moles_from, present_solvents, rounding_of
+from builder.mechanism.amounts import QUANTITY_ORDER, Role, charged_rows, moles_from, rounding_of
 from builder.records.model import Charged
-from builder.records.vocabulary import Vessel
 from builder.rule import Fault, Path, rule
 
 __all__ = ["CHARGED_CHECKS"]
@@ -133,36 +132,7 @@ def _concentration_disagreement(case: Case) -> Iterator[Fault]:
         )
 
 
-@rule(
-    id="vessel-overfilled",
-    title="A vessel filled beyond two thirds",
-    level=Level.QUERY,
-    source="common-practice",
-    fires_on=("stages: [{temperature: 60 °C, time: 16 h, vessel: sealed, vessel_volume: 25 mL}]",),
-    silent_on=("stages: [{temperature: 60 °C, time: 16 h, vessel: sealed, vessel_volume: 50 mL}]",),
-)
-def vessel_is_overfilled(case: Case) -> Iterator[Fault]:
-    """A vessel is filled to at most two thirds; in a sealed one more is an error.
-
-    A liquid that expands or boils needs the room, and a full sealed vessel bursts.
-    """
-    for index, stage in enumerate(case.record.stages):
-        volumes = [case.record.solvents[i].volume for i in present_solvents(case.record, index)]
-        if stage.vessel_volume is None or not volumes or None in volumes:
-            continue
-        filled = sum(volume.magnitude for volume in volumes if volume is not None)
-        share = filled / stage.vessel_volume.magnitude
-        if share > 2 / 3 * 1.001:
-            yield Fault(
-                at=("stages", index, "vessel_volume"),
-                message=f"{filled * 1000:.3g} mL of solvent fill {100 * share:.0f} % of the vessel",
-                mend="use a larger vessel, or correct its volume",
-                level=Level.ERROR if stage.vessel in {Vessel.SEALED, Vessel.MICROWAVE} else None,
-            )
-
-
 CHARGED_CHECKS = (
     amount_cannot_be_derived,
     quantities_disagree,
-    vessel_is_overfilled,
 )

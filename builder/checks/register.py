@@ -25,6 +25,7 @@ from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.ratios import RATIO_CHECKS
 from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
+from builder.checks.vessel import VESSEL_CHECKS
 from builder.checks.words import WORD_CHECKS
 from builder.checks.yields import YIELD_CHECKS
 from builder.finding import Level
@@ -56,6 +57,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *STRUCTURE_CHECKS,
             *WORD_CHECKS,
             *YIELD_CHECKS,
+            *VESSEL_CHECKS,
         ),
         key=lambda rule: rule.id,
     )

@@ -28,6 +28,7 @@ __all__ = [
     "gases_from",
     "gases_of_record",
     "load_gases",
+    "present_in",
 ]
 
 ATMOSPHERE_BAR = 1.01325
@@ -126,11 +127,29 @@ def gases_of_record(
     """
     last = len(record.stages) - 1
     index = last if stage is None else stage
-    formed = gases_from(_present(record, structures, amounts, index))
+    formed = gases_from(present_in(record, structures, amounts, index))
     if stage:
-        before = {(each.gas, each.cause): each for each in gases_from(_present(record, structures, amounts, stage - 1))}
+        before = {
+            (each.gas, each.cause): each for each in gases_from(present_in(record, structures, amounts, stage - 1))
+        }
         formed = tuple(each for each in (_since(one, before.get((one.gas, one.cause))) for one in formed) if each)
     return (*formed, *_gaseous_products(record, structures, amounts)) if index == last else formed
+
+
+def present_in(
+    record: Record, structures: Mapping[Path, Structure], amounts: Amounts, stage: int
+) -> tuple[Present, ...]:
+    """Return what is in the flask during a stage with its moles; solvents by the density of the table.
+
+    What has no structure is left out; what an earlier stage made or used up is not followed.
+    """
+    present: list[Present] = []
+    for row in present_rows(record, amounts, stage):
+        solvent = find_solvent(row.name, None) if row.path[0] == "solvent" else None
+        structure = structures.get(row.path) or (parse_smiles(solvent.smiles) if solvent else None)
+        if structure is not None:
+            present.append(Present(row.path, structure, _moles(row, structure)))
+    return tuple(present)
 
 
 def _since(formed: GasFormed, before: GasFormed | None) -> GasFormed | None:
@@ -140,16 +159,6 @@ def _since(formed: GasFormed, before: GasFormed | None) -> GasFormed | None:
     if formed.moles is None or before.moles is None or formed.moles <= before.moles * 1.001:
         return None
     return GasFormed(formed.gas, formed.moles - before.moles, formed.cause, formed.paths, formed.source)
-
-
-def _present(record: Record, structures: Mapping[Path, Structure], amounts: Amounts, stage: int) -> tuple[Present, ...]:
-    present: list[Present] = []
-    for row in present_rows(record, amounts, stage):
-        solvent = find_solvent(row.name, None) if row.path[0] == "solvent" else None
-        structure = structures.get(row.path) or (parse_smiles(solvent.smiles) if solvent else None)
-        if structure is not None:
-            present.append(Present(row.path, structure, _moles(row, structure)))
-    return tuple(present)
 
 
 def _moles(row: AmountRow, structure: Structure) -> float | None:

@@ -24,7 +24,7 @@ def test_molar_volume(temperature_c: float, pressure_bar: float, litres: float) 
 
 
 def test_pressure_in_a_closed_vessel() -> None:
-    # THF at 80 °C: 1.56 bar of vapour (group practice) and air shut in at 25 °C, warmed: 1.01325 × 353.15/298.15 = 1.200.
+    # THF at 80 °C: 1.56 bar of vapour (group practice); air shut in at 25 °C, 1.01325 × 353.15/298.15 = 1.200 bar.
     assert closed_vessel_bar(80.0, 1.56) == pytest.approx(2.76, abs=LAST_PRINTED_DIGIT)
     # 10 mmol of gas in 20 mL at 25 °C: 0.24790 bar L over 0.020 L is 12.39 bar more.
     assert closed_vessel_bar(25.0, 0.0, gas_moles=0.01, headspace_l=0.02) == pytest.approx(
@@ -84,7 +84,7 @@ def test_moles_of_gas(charged: list[tuple[str, float | None]], gases: dict[str, 
     assert _by_formula(gases_from(_flask(*charged))) == pytest.approx(gases)
 
 
-# Boiling points in the package chemicals 1.5.2, by CAS number; it prints tenths, compilations differ by a kelvin or two.
+# Boiling points in the package chemicals 1.5.2, by CAS number; compilations differ by a kelvin or two.
 @pytest.mark.parametrize(
     ("formula", "cas"),
     [
