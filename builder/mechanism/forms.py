@@ -59,7 +59,8 @@ def forms_of(structure: Structure) -> tuple[Form, ...]:
     """Return the other forms in which a substance may be on the balance.
 
     structure: as drawn, a salt or hydrate included. Hydrates of salts and acids, the anhydrous form; hydrochlorides
-    and the like of what has basic nitrogen; free base, free acid, bare anion and other cations of a salt; salts of acids.
+    and the like of what has basic nitrogen; of a salt the free base, free acid, bare anion and other cations; of an
+    acid its salts.
     """
     return tuple(form for form in _all_forms(structure) if abs(form.molar_mass - structure.mass) > 0.05)
 

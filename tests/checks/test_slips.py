@@ -29,7 +29,7 @@ def _found(example: str, rule: str = "quantities-disagree") -> list[Finding]:
         (AZIDE % "mass: 975 mg, equivalents: 1.8", "no common slip fits"),
         (
             AZIDE % "mass: 0.975 g, purity: 92 %, amount: 15.0 mmol",
-            "the purity fits: 15.0 mmol holds if 92 % were 100 %",
+            "the purity fits: 15.0 mmol holds if 92 % were",
         ),
         (AZIDE % "mass: 0.630 g, amount: 15.0 mmol", "the mass fits the anion alone (42.02 g/mol)"),
         (ACETATE % "mass: 2.041 g, amount: 15.0 mmol", "the mass fits the trihydrate (136.08 g/mol)"),
@@ -39,7 +39,7 @@ def _found(example: str, rule: str = "quantities-disagree") -> list[Finding]:
         (IODIDE % "mass: 150 mg, equivalents: 10", "a factor of 100 fits: 10 mol% is 0.1 equivalents"),
         # 1.65 mL taken as 1.65 g are 15.0 mmol (110.18 g/mol); at 1.078 g/mL they weigh 1.779 g, 16.1 mmol.
         (
-            "nucleophile: {name: thiophenol, smiles: Sc1ccccc1, volume: 1.65 mL, density: 1.078 g/mL, amount: 15.0 mmol}",
+            "nucleophile: {name: PhSH, smiles: Sc1ccccc1, volume: 1.65 mL, density: 1.078 g/mL, amount: 15.0 mmol}",
             "the density fits: 15.0 mmol holds if 1 mL weighed 1 g instead of 1.078 g/mL",
         ),
     ],
