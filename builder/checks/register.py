@@ -12,6 +12,7 @@ from builder.checks.cautions import CAUTION_CHECKS
 from builder.checks.charged import CHARGED_CHECKS
 from builder.checks.completeness import COMPLETENESS_CHECKS
 from builder.checks.conditions import CONDITION_CHECKS
+from builder.checks.conserved import CONSERVED_CHECKS
 from builder.checks.copies import COPY_CHECKS
 from builder.checks.erosion import EROSION_CHECKS
 from builder.checks.excess import EXCESS_CHECKS
@@ -47,6 +48,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *CONDITION_CHECKS,
             *COPY_CHECKS,
             *EROSION_CHECKS,
+            *CONSERVED_CHECKS,
             *EXCESS_CHECKS,
             *FORECAST_CHECKS,
             *FORM_CHECKS,
