@@ -80,8 +80,8 @@ def centre_is_out_of_scope(case: Case) -> Iterator[Fault]:
 def leaving_group_is_in_the_product(case: Case) -> Iterator[Fault]:
     """The product of a substitution has one leaving group less than the substrate.
 
-    Asked of a desired product to which no open way is known, where the nucleophile does not bring the group itself. Then
-    the substrate was copied into the product, or the nucleophile was drawn onto another carbon.
+    Asked of a desired product to which no open way is known, where the nucleophile does not bring the group itself.
+    Then the substrate was copied into the product, or the nucleophile was drawn onto another carbon.
     """
     group = case.record.substrate.leaving_group
     if not _claims_substitution(case) or _brings(case, group):
@@ -107,8 +107,8 @@ def leaving_group_is_in_the_product(case: Case) -> Iterator[Fault]:
 def nucleophile_is_not_in_the_product(case: Case) -> Iterator[Fault]:
     """The product of a substitution holds an atom that attacked: nitrogen of an azide, carbon of a cyanide.
 
-    Counted by element against what stays of the substrate; asked of a desired product to which no open way is known. The
-    elements say it, wherever the atom was drawn.
+    Counted by element against what stays of the substrate; asked of a desired product to which no open way is known.
+    The elements say it, wherever the atom was drawn.
     """
     named = [
         (substance.name, {atom.symbol for atom in attacking_atoms(case.structures[path])})
@@ -137,7 +137,7 @@ def _claims_substitution(case: Case) -> bool:
 
 
 def _without_way(case: Case) -> Iterator[tuple[Path, Structure]]:
-    """Yield the desired products to which no open way is known, where all was drawn and the search was not cut short."""
+    """Yield the desired products to which no open way is known; none where something is not drawn."""
     if case.has_undrawn_species or not case.sites or search(case).was_cut:
         return
     for path, routes in routes_by_product(case).items():

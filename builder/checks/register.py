@@ -24,6 +24,7 @@ from builder.checks.house_rules import HOUSE_RULE_CHECKS, house_rule_is_unclear
 from builder.checks.identity import IDENTITY_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
 from builder.checks.limits import LIMIT_CHECKS
+from builder.checks.promised import PROMISED_CHECKS
 from builder.checks.ratios import RATIO_CHECKS
 from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
@@ -57,6 +58,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *KINETIC_CHECKS,
             *RATIO_CHECKS,
             *LIMIT_CHECKS,
+            *PROMISED_CHECKS,
             *STAGE_CHECKS,
             *STRUCTURE_CHECKS,
             *WORD_CHECKS,

@@ -1,6 +1,6 @@
 """Forms: the hydrates and salts a substance may have been weighed as, with their molar masses; loads forms.tsv."""
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import cache
@@ -9,7 +9,7 @@ from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
-__all__ = ["Form", "FormKind", "form_names", "forms_of", "forms_that_fit", "partner_count"]
+__all__ = ["Form", "FormKind", "forms_of", "forms_that_fit", "hydrate_waters", "partner_count"]
 
 _BASIC_NITROGEN = Fragment.from_smarts("[$([NX3;+0;!$(N-[C,S,P]=[O,S,N]);!$(N~[N,O])]),$([nX2;+0]),$([NX2;+0]=C)]")
 _ACIDIC = Fragment.from_smarts(
@@ -112,10 +112,9 @@ def partner_count(structure: Structure, name: str) -> int:
     return 0 if alone else sum(piece.smiles == partner.structure.smiles for piece in structure.fragments)
 
 
-@cache
-def form_names() -> dict[str, FormKind]:
-    """Return the names of all forms in the table with their kind."""
-    return {name: partner.kind for name, partner in _partners().items()}
+def hydrate_waters() -> Mapping[str, float]:
+    """Return the molecules of water in each hydrate by its name: 2 for the dihydrate."""
+    return {each.name: each.count for each in _of(FormKind.WATER)}
 
 
 def _acids_in(structure: Structure, acid: _Partner) -> int:
