@@ -12,6 +12,7 @@ from builder.rule import Fault, rule
 __all__ = ["CHARGED_CHECKS"]
 
 LEAST_MOL_PER_L, MOST_MOL_PER_L = 0.005, 5.0  # common practice, no source
+LEAST_EQUIVALENTS, MOST_EQUIVALENTS = 0.001, 100.0
 CATALYST_AT_MOST = 1.05  # equivalents
 _DISPERSED = ("dispersion", "dispersed", "in oil", "mineral oil", "in paraffin")
 
@@ -149,13 +150,14 @@ def concentration_is_implausible(case: Case) -> Iterator[Fault]:
     """The substrate is between 0.005 and 5 mol/L in the solvent.
 
     Stronger, and the solvent is an additive (2-bromobutane is 9 mol/L neat); weaker, and 100 mmol would need 20 L. A
-    factor of 1000 in volume or mass shows here. Rate measurements, which are dilute on purpose, are left alone.
+    factor of 1000 in volume or mass shows here. Rate measurements may be dilute on purpose.
     """
     concentration = case.amounts.concentration_mol_per_l
     outcome = case.record.outcome
-    if concentration is None or outcome.rate_constant is not None or outcome.time_course is not None:
+    is_measured = outcome.rate_constant is not None or outcome.time_course is not None
+    if concentration is None:
         return
-    if not LEAST_MOL_PER_L <= concentration <= MOST_MOL_PER_L:
+    if concentration > MOST_MOL_PER_L or (concentration < LEAST_MOL_PER_L and not is_measured):
         at = ("concentration",) if case.record.concentration is not None else ("solvent", 0)
         yield Fault(
             at=at,
@@ -221,11 +223,44 @@ def catalyst_is_in_excess(case: Case) -> Iterator[Fault]:
             )
 
 
+@rule(
+    id="equivalents-implausible",
+    title="An excess or a trace that is hardly meant",
+    level=Level.QUERY,
+    source="common-practice",
+    needs=("quantities-disagree", "concentration-implausible", "catalyst-above-stoichiometric"),
+    fires_on=(
+        "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', amount: 15 mol}",
+        "base: {name: sodium hydroxide, smiles: '[Na+].[OH-]', mass: 0.20 mg}",
+    ),
+    silent_on=(
+        "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', amount: 15 mmol}",
+        "reagents: [{name: sodium iodide, smiles: '[Na+].[I-]', use: catalyst, equivalents: 0.01}]",
+    ),
+)
+def equivalents_are_implausible(case: Case) -> Iterator[Fault]:
+    """What is charged beside the solvent is between a thousandth of the substrate and a hundred times as much.
+
+    Beyond, a prefix has slipped: mg for g, mol for mmol, L for mL. A reagent in larger excess is a solvent, and is
+    listed as one.
+    """
+    for row in case.amounts.rows[1:]:
+        is_out = row.equivalents is not None and not LEAST_EQUIVALENTS <= row.equivalents <= MOST_EQUIVALENTS
+        if row.role is not Role.SOLVENT and row.equivalents is not None and row.amount_mol is not None and is_out:
+            yield Fault(
+                at=(*row.path, row.typed),
+                message=f"{moles_text(row.amount_mol)} of {row.name} are {row.equivalents:.2g} equivalents",
+                mend="look for mg against g, mol against mmol, L against mL; or accept it with the reason",
+                data={"equivalents": row.equivalents},
+            )
+
+
 CHARGED_CHECKS = (
     amount_cannot_be_derived,
     catalyst_is_in_excess,
     concentration_is_implausible,
     dispersion_lacks_its_purity,
+    equivalents_are_implausible,
     quantities_disagree,
 )
 

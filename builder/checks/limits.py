@@ -4,12 +4,12 @@ from collections import Counter
 from collections.abc import Iterator
 
 from builder.checks.case import Case
-from builder.checks.derivation import is_desired, routes_by_product
+from builder.checks.derivation import is_desired, product_paths, routes_by_product
 from builder.checks.slips import moles_text
 from builder.chemistry.fragments import Fragment
-from builder.chemistry.structure import Structure
 from builder.finding import Level
-from builder.mechanism.amounts import AmountRow, Role, rounding_of
+from builder.mechanism.amounts import Role, rounding_of
+from builder.mechanism.gas import Present, present_in
 from builder.mechanism.stoichiometry import proton_capacity, staying_elements, supply_of
 from builder.records.model import Charged, Measurement
 from builder.records.specimen import outcome_example
@@ -31,6 +31,16 @@ _BETWEEN_TWO = f"([{_WITHDRAWING}])[{_WITHDRAWING}]"
 _ACTIVE_METHYLENE = Fragment.from_smarts(f"[$([CH2]{_BETWEEN_TWO}),$([CH-]{_BETWEEN_TWO})]")
 _STILL_ACIDIC = Fragment.from_smarts(f"[CX4;!H0]{_BETWEEN_TWO}")
 _AZIDE = "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', equivalents: %s}\n"
+_LOSES_A_PROTON = Fragment.from_smarts(
+    "[$([OX2;H1]-c),$([OX2;H1]-[C,P]=[OX1]),$([SX2;H1]-[#6]),$([nX3;H1]),$([NX3;H1](-[C,S]=O)-[C,S]=O),"
+    f"$([CX4;!H0]{_BETWEEN_TWO})]"
+)
+_PHENOL = (
+    "nucleophile: {name: phenol, smiles: Oc1ccccc1, equivalents: 1.1}\n"
+    "base: {name: a base, smiles: '[K+].CC(C)(C)[O-]', equivalents: %s}\n"
+    "stages: [{temperature: 60 °C, time: 16 h}]\n"
+)
+_PHENYL_ETHER = "{label: A, name: 2-phenoxybutane, smiles: 'CCC(C)Oc1ccccc1', use: desired}"
 _READS = ("structure-unreadable", "leaving-group-not-found", "product-not-reachable")
 _OVER_ALKYLATION = (
     ("a primary or secondary amine", _AMINE, _STILL_ATTACKS),
@@ -58,14 +68,15 @@ def yield_is_above_the_reagent(case: Case) -> Iterator[Fault]:
 
     How many molecules of substrate and reagent one product holds is counted from the atoms: sulfide takes two alkyl
     groups, phosphorus tribromide gives three bromides, carbonate takes two protons. Everything charged that could
-    supply the atoms counts together, a solvent without end. An E2 or E1cB needs a proton taken for each alkene.
+    supply the atoms counts together; a solvent that is whole in the product has no end. An E2 or E1cB needs a proton
+    taken for each alkene.
     """
     for path, line, bound in _bounded_lines(case):
         if bound is None or line.yield_ is None or line.yield_.is_upper_limit:
             continue
         allowed, names, charged = bound
         measured = line.yield_.magnitude
-        if measured > allowed + POINTS:
+        if measured > allowed * (1.0 + _rounding(case)) + POINTS:
             yield Fault(
                 at=(*path, "yield"),
                 message=f"{line.yield_} of {'+'.join(line.of or ())}, but {names} ({moles_text(charged)})"
@@ -97,21 +108,56 @@ def reagent_is_below_one(case: Case) -> Iterator[Fault]:
     substrate is in excess by design, no yield can reach 100 %; accept this with that reason, so that nobody reads the
     number as a poor one.
     """
-    seen: set[tuple[str, ...]] = set()
-    for _, line, bound in _bounded_lines(case):
-        if bound is None or line.of is None or line.of in seen:
-            continue
-        seen.add(line.of)
-        allowed, names, charged = bound
-        slack = 1.0 - SHORT_BELOW + _rounding(case)
-        if allowed < 100.0 * (1.0 - slack):
+    for path in product_paths(case):
+        bound = _bound(case, path) if is_desired(case, path) else None
+        if bound is not None and bound[0] < 100.0 * (SHORT_BELOW - _rounding(case)):
+            allowed, names, charged = bound
             yield Fault(
-                at=_place_of_reagent(case),
-                message=f"{names} ({moles_text(charged)}) allow at most {allowed:.3g} % of {'+'.join(line.of)}, for"
-                f" yields are counted on {_substrate_text(case)}",
+                at=_place_of(case, Role.NUCLEOPHILE, Role.BASE),
+                message=f"{names} ({moles_text(charged)}) allow at most {allowed:.3g} % of"
+                f" {case.structures[path].formula}, for yields are counted on {_substrate_text(case)}",
                 mend="correct an amount, or accept this: the substrate is in excess by design",
                 data={"most_percent": round(allowed, 1)},
             )
+            return
+
+
+@rule(
+    id="base-below-one",
+    title="Less base than protons are set free",
+    level=Level.QUERY,
+    source="common-practice",
+    needs=("yield-above-reagent",),
+    fires_on=(_PHENOL % "0.10" + outcome_example("{yield: 75 %, of: A, kind: assay}", products=_PHENYL_ETHER),),
+    silent_on=(
+        _PHENOL % "1.0" + outcome_example("{yield: 75 %, of: A, kind: assay}", products=_PHENYL_ETHER),
+        _PHENOL.replace("[K+].CC(C)(C)[O-]", "[K+].[K+].[O-]C([O-])=O") % "0.60"
+        + outcome_example("{yield: 75 %, of: A, kind: assay}", products=_PHENYL_ETHER),
+    ),
+)
+def base_is_below_one(case: Case) -> Iterator[Fault]:
+    """Where an acidic nucleophile sets a proton free with each product, the base listed can take them all.
+
+    Asked of phenols, thiols, acids, azoles, imides and active methylene compounds charged neutral beside a `base`, with
+    a group that leaves as an anion of its own. Carbonate takes two protons; every basic species charged counts, and a
+    basic solvent takes all. Without base left the anion is gone, and what does the rest is another mechanism.
+    """
+    substrate = case.amounts.substrate.amount_mol
+    drawn = [row for row in case.amounts.rows if row.role is Role.NUCLEOPHILE and row.path in case.structures]
+    acidic = [row.name for row in drawn if _LOSES_A_PROTON.is_in(case.structures[row.path])]
+    leaves_free = any(each.site.leaving_atom is not None and not each.site.leaving_ring_size for each in case.sites)
+    taken = _protons(case)
+    if not substrate or not case.record.bases or not acidic or not leaves_free or taken is None:
+        return
+    protons, names, _ = taken
+    if Result.SUBSTITUTION in case.record.outcome.result and protons < (SHORT_BELOW - _rounding(case)) * substrate:
+        yield Fault(
+            at=_place_of(case, Role.BASE),
+            message=f"{names} take {moles_text(protons)} of protons, and {' and '.join(acidic)} with"
+            f" {_substrate_text(case)} set as many free as product forms",
+            mend="correct the amount of base, or accept this with what takes the acid",
+            data={"protons_mol": round(protons, 6)},
+        )
 
 
 @rule(
@@ -152,7 +198,7 @@ def order_of_addition_is_open(case: Case) -> Iterator[Fault]:
     """
     if any(stage.add for stage in case.record.stages) or case.record.procedure is not None:
         return
-    desired = [s for path, s in _products(case).items() if is_desired(case, path)]
+    desired = [case.structures[path] for path in product_paths(case) if is_desired(case, path)]
     for index, _ in enumerate(case.record.nucleophiles):
         row = case.amounts.at(("nucleophile", index))
         structure = case.structures.get(("nucleophile", index))
@@ -169,15 +215,10 @@ def order_of_addition_is_open(case: Case) -> Iterator[Fault]:
                 return
 
 
-LIMIT_CHECKS = (order_of_addition_is_open, reagent_is_below_one, yield_is_above_the_reagent)
+LIMIT_CHECKS = (base_is_below_one, order_of_addition_is_open, reagent_is_below_one, yield_is_above_the_reagent)
 
 _Bound = tuple[float, str, float]
 """The highest yield in percent, the names of what sets it, and how much of that was charged (mol)."""
-
-
-def _products(case: Case) -> dict[Path, Structure]:
-    paths: list[Path] = [("outcome", "products", index) for index in range(len(case.record.outcome.products))]
-    return {path: case.structures[path] for path in paths if path in case.structures}
 
 
 def _bounded_lines(case: Case) -> Iterator[tuple[Path, Measurement, _Bound | None]]:
@@ -189,9 +230,9 @@ def _bounded_lines(case: Case) -> Iterator[tuple[Path, Measurement, _Bound | Non
         paths: list[Path] = [("outcome", "products", positions[label]) for label in line.of if label in positions]
         if paths and all(path in case.structures and is_desired(case, path) for path in paths):
             bounds = [_bound(case, path) for path in paths]
-            known = [bound for bound in bounds if bound is not None]
-            bound = max(known, key=lambda each: each[0]) if len(known) == len(bounds) else None
-            yield ("outcome", "measured", index), line, bound
+            known = {bound[1]: bound for bound in bounds if bound is not None}  # by what sets it
+            together = (sum(b[0] for b in known.values()), " and ".join(known), sum(b[2] for b in known.values()))
+            yield ("outcome", "measured", index), line, None if None in bounds else together
 
 
 def _bound(case: Case, path: Path) -> _Bound | None:
@@ -202,22 +243,23 @@ def _bound(case: Case, path: Path) -> _Bound | None:
         return None
     if all(route.eliminates for route in routes):
         return _bound_by_base(case, substrate)
-    if Result.SUBSTITUTION not in case.record.outcome.result or any(route.eliminates for route in routes):
+    if Result.SUBSTITUTION not in case.record.outcome.result:
         return None
     staying = staying_elements(routes[0].start, routes[0].site)
-    if set(Counter(case.structures[path].elements) - Counter(staying)) <= _FROM_WATER:
+    gained = set(Counter(case.structures[path].elements) - Counter(staying))
+    if gained <= _FROM_WATER:
         return None
+    supplied = [(each, supply_of(case.structures[path], staying, each.structure)) for each in _charged(case)[1:]]
     total, names, charged = 0.0, [], 0.0
-    for row in case.amounts.rows[1:]:
-        structure = case.structures.get(row.path)
-        supply = supply_of(case.structures[path], staying, structure) if structure is not None else None
-        if supply is None:
+    for each, supply in supplied:
+        is_solvent = each.path[0] == "solvent"
+        if supply is None or (is_solvent and supply.left_over):
             continue
-        if row.role is Role.SOLVENT or row.amount_mol is None:
+        if each.moles is None or is_solvent:
             return None
-        total += 100.0 * row.amount_mol * supply.per_molecule * supply.substrates / substrate
-        names.append(row.name)
-        charged += row.amount_mol
+        total += 100.0 * each.moles * supply.per_molecule * supply.substrates / substrate
+        names.append(case.amounts.at(each.path).name)
+        charged += each.moles
     return (total, " and ".join(names), charged) if names else None
 
 
@@ -226,18 +268,31 @@ def _bound_by_base(case: Case, substrate_mol: float) -> _Bound | None:
     claim = case.record.outcome.claim
     if claim is None or claim.mechanism not in {Mechanism.E2, Mechanism.E1CB} or not case.record.bases:
         return None
+    taken = _protons(case)
+    return None if taken is None else (100.0 * taken[0] / substrate_mol, *taken[1:])
+
+
+def _protons(case: Case) -> _Bound | None:
+    """Return how many protons (mol) can be taken, by what, and how much of it; None where a solvent is basic.
+
+    None, too, where nothing takes a proton or an amount is unknown.
+    """
     protons, names, charged = 0.0, [], 0.0
-    for row in case.amounts.rows:
-        structure = case.structures.get(row.path)
-        capacity = proton_capacity(structure) if structure is not None else 0
+    for each in _charged(case):
+        capacity = proton_capacity(each.structure)
         if not capacity:
             continue
-        if row.role is Role.SOLVENT or row.amount_mol is None:
+        if each.moles is None or each.path[0] == "solvent":
             return None
-        protons += capacity * row.amount_mol
-        names.append(row.name)
-        charged += row.amount_mol
-    return (100.0 * protons / substrate_mol, " and ".join(names), charged) if names else None
+        protons += capacity * each.moles
+        names.append(case.amounts.at(each.path).name)
+        charged += each.moles
+    return (protons, " and ".join(names), charged) if names else None
+
+
+def _charged(case: Case) -> tuple[Present, ...]:
+    """Return all that was charged, the substrate first; solvents that are not drawn by the table."""
+    return present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
 
 
 def _substrate_text(case: Case) -> str:
@@ -251,6 +306,6 @@ def _rounding(case: Case) -> float:
     return rounding_of(case.record.substrate) + max((rounding_of(each) for each in partners), default=0.0)
 
 
-def _place_of_reagent(case: Case) -> Path:
-    rows: list[AmountRow] = [row for row in case.amounts.rows if row.role in {Role.NUCLEOPHILE, Role.BASE}]
-    return (*rows[0].path, rows[0].typed) if rows and rows[0].typed else ("substrate",)
+def _place_of(case: Case, *roles: Role) -> Path:
+    rows = [row for row in case.amounts.rows if row.role in roles and row.typed]
+    return (*rows[0].path, rows[0].typed) if rows else ("substrate",)

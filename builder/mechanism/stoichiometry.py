@@ -25,10 +25,12 @@ class Supply:
 
     substrates: molecules of substrate in one molecule of product. per_molecule: molecules of product that one of the
     reagent can serve: 3 for phosphorus tribromide and an alkyl bromide, 0.5 where two end up in one product.
+    left_over: atoms of both, hydrogen apart, that the product does not hold.
     """
 
     substrates: int
     per_molecule: float
+    left_over: int = 0
 
 
 def staying_elements(on: Structure, site: ReactiveSite) -> Mapping[str, int]:
@@ -54,12 +56,12 @@ def supply_of(product: Structure, staying: Mapping[str, int], reagent: Structure
             best = min(best or (left, substrates, reagents), (left, substrates, reagents))
     if best is None:
         return None
-    _, substrates, reagents = best
+    left, substrates, reagents = best
     needed = wanted - Counter({element: substrates * number for element, number in staying.items()})
     if not needed:
         return None
     served = min(reagents * offered[element] // number for element, number in needed.items())
-    return Supply(substrates, max(served, 1) / reagents)
+    return Supply(substrates, max(served, 1) / reagents, left)
 
 
 def proton_capacity(structure: Structure) -> int:
