@@ -249,7 +249,7 @@ def equivalents_are_implausible(case: Case) -> Iterator[Fault]:
         if row.role is not Role.SOLVENT and row.equivalents is not None and row.amount_mol is not None and is_out:
             yield Fault(
                 at=(*row.path, row.typed),
-                message=f"{moles_text(row.amount_mol)} of {row.name} are {row.equivalents:.2g} equivalents",
+                message=f"{moles_text(row.amount_mol)} of {row.name} are {_number(row.equivalents)} equivalents",
                 mend="look for mg against g, mol against mmol, L against mL; or accept it with the reason",
                 data={"equivalents": row.equivalents},
             )
@@ -263,6 +263,10 @@ CHARGED_CHECKS = (
     equivalents_are_implausible,
     quantities_disagree,
 )
+
+
+def _number(value: float) -> str:
+    return f"{value:.0f}" if value >= 10 else f"{value:.2g}"
 
 
 def _apart(ratio: float) -> str:

@@ -79,8 +79,8 @@ def yield_is_above_the_reagent(case: Case) -> Iterator[Fault]:
         if measured > allowed * (1.0 + _rounding(case)) + POINTS:
             yield Fault(
                 at=(*path, "yield"),
-                message=f"{line.yield_} of {'+'.join(line.of or ())}, but {names} ({moles_text(charged)})"
-                f" allow at most {allowed:.3g} % on {_substrate_text(case)}",
+                message=f"{line.yield_} of {'+'.join(line.of or ())}, but at most {allowed:.3g} % can come of"
+                f" {moles_text(charged)} of {names} and {_substrate_text(case)}",
                 mend="the amounts are believed: correct the yield, an amount, or list what else took part",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -114,8 +114,8 @@ def reagent_is_below_one(case: Case) -> Iterator[Fault]:
             allowed, names, charged = bound
             yield Fault(
                 at=_place_of(case, Role.NUCLEOPHILE, Role.BASE),
-                message=f"{names} ({moles_text(charged)}) allow at most {allowed:.3g} % of"
-                f" {case.structures[path].formula}, for yields are counted on {_substrate_text(case)}",
+                message=f"at most {allowed:.3g} % of {case.structures[path].formula} can come of"
+                f" {moles_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
                 mend="correct an amount, or accept this: the substrate is in excess by design",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -153,8 +153,8 @@ def base_is_below_one(case: Case) -> Iterator[Fault]:
     if Result.SUBSTITUTION in case.record.outcome.result and protons < (SHORT_BELOW - _rounding(case)) * substrate:
         yield Fault(
             at=_place_of(case, Role.BASE),
-            message=f"{names} take {moles_text(protons)} of protons, and {' and '.join(acidic)} with"
-            f" {_substrate_text(case)} set as many free as product forms",
+            message=f"{moles_text(protons)} of protons can be taken by {names}, while {' and '.join(acidic)} with"
+            f" {_substrate_text(case)} sets one free for each product",
             mend="correct the amount of base, or accept this with what takes the acid",
             data={"protons_mol": round(protons, 6)},
         )
