@@ -12,6 +12,7 @@ from builder.rule import Fault, rule
 __all__ = ["CHARGED_CHECKS"]
 
 LEAST_MOL_PER_L, MOST_MOL_PER_L = 0.005, 5.0  # common practice, no source
+USUAL_MOL_PER_L, USUAL_MOL = 0.3, 0.01  # only to tell which of two numbers a thousand apart has slipped
 LEAST_EQUIVALENTS, MOST_EQUIVALENTS = 0.001, 100.0
 CATALYST_AT_MOST = 1.05  # equivalents
 _DISPERSED = ("dispersion", "dispersed", "in oil", "mineral oil", "in paraffin")
@@ -92,7 +93,7 @@ def quantities_disagree(case: Case) -> Iterator[Fault]:
         for kind, value in known.items():
             level = level_of(value / known[used], rounding_of(substance, used) + rounding_of(substance, kind))
             if kind != used and level is not None:
-                told = Disagreement(substance, structure, used, known[used], kind, value, substrate_mol)
+                told = Disagreement(substance, structure, used, known[used], kind, value, _usual_mol(case, role))
                 yield Fault(
                     at=(*path, kind),
                     message=f"{typed_text(substance, used)} of {substance.name} is {moles_text(known[used])},"
@@ -263,6 +264,14 @@ CHARGED_CHECKS = (
     equivalents_are_implausible,
     quantities_disagree,
 )
+
+
+def _usual_mol(case: Case, role: Role) -> float:
+    """Return about how much of a substance is usual: as much as substrate; of that, for 0.3 mol/L, else 10 mmol."""
+    volume, substrate_mol = case.amounts.solvent_volume_l, case.amounts.substrate.amount_mol
+    if role is Role.SUBSTRATE or not substrate_mol:
+        return USUAL_MOL_PER_L * volume if volume else USUAL_MOL
+    return substrate_mol
 
 
 def _number(value: float) -> str:

@@ -108,7 +108,7 @@ def nucleophile_is_not_in_the_product(case: Case) -> Iterator[Fault]:
     """The product of a substitution holds an atom that attacked: nitrogen of an azide, carbon of a cyanide.
 
     Counted by element against what stays of the substrate; asked of a desired product to which no open way is known.
-    The elements say it, wherever the atom was drawn.
+    The elements say it, wherever the atom was drawn; of a hydride, which brings no element, nothing is asked.
     """
     named = [
         (substance.name, {atom.symbol for atom in attacking_atoms(case.structures[path])})
@@ -116,7 +116,7 @@ def nucleophile_is_not_in_the_product(case: Case) -> Iterator[Fault]:
         if role is Role.NUCLEOPHILE and path in case.structures
     ]
     attackers = set().union(*(symbols for _, symbols in named))
-    if not attackers or not _claims_substitution(case):
+    if not attackers or "H" in attackers or not _claims_substitution(case):
         return
     for path, product in _without_way(case):
         if not attackers & _gained(case, product):

@@ -34,7 +34,10 @@ _LARGER = {small: large for large, small in _SMALLER.items()}
 
 @dataclass(frozen=True, slots=True)
 class Disagreement:
-    """Two typed quantities of one substance and the moles that each stands for; `used` is the one believed."""
+    """Two typed quantities of one substance and the moles that each stands for; `used` is the one believed.
+
+    usual_mol: about how much of it one would expect in this flask, by which a slipped prefix is told.
+    """
 
     substance: Charged
     structure: Structure | None
@@ -42,7 +45,7 @@ class Disagreement:
     used_mol: float
     other: str
     other_mol: float
-    substrate_mol: float | None
+    usual_mol: float
 
     @property
     def tolerance(self) -> float:
@@ -100,9 +103,8 @@ def _prefix(told: Disagreement) -> Iterator[str]:
     ratio = told.other_mol / told.used_mol
     if not (told.fits(ratio, 1000.0) or told.fits(ratio, 0.001)):
         return
-    usual = told.substrate_mol or 0.01
-    distance = {told.used: abs(log10(told.used_mol / usual)), told.other: abs(log10(told.other_mol / usual))}
-    suspect = max(distance, key=lambda kind: distance[kind])
+    sides = {told.used: told.used_mol, told.other: told.other_mol}
+    suspect = max(sides, key=lambda kind: abs(log10(sides[kind] / told.usual_mol)))
     is_too_large = (told.other_mol > told.used_mol) == (suspect == told.other)
     typed = getattr(told.substance, suspect)
     units = _SMALLER if is_too_large else _LARGER

@@ -14,7 +14,7 @@ from builder.mechanism.amounts import AmountRow, Amounts, present_rows
 from builder.mechanism.log_rate import GAS_CONSTANT
 from builder.mechanism.solvents import find_solvent
 from builder.records.model import Record
-from builder.records.vocabulary import YieldKind
+from builder.records.vocabulary import NucleophileWord, YieldKind
 from builder.rule import Path
 from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
@@ -35,6 +35,7 @@ ATMOSPHERE_BAR = 1.01325
 ZERO_C_IN_K = 273.15
 PERMANENT_BELOW_C = -50.0  # boils lower: no solvent at the bench holds back much of it; common practice, no source
 _BAR_L_PER_J = 0.01
+_STRONG_ACID = "Cl"  # stands for whatever acid the leaving group makes
 
 
 @dataclass(frozen=True, slots=True)
@@ -123,11 +124,13 @@ def gases_of_record(
 
     stage: only those that form in this stage, so that what left an open flask earlier is not counted; products form
     in the last stage. None: those of all stages.
-    Of a product its stated yield counts, else as much as there was substrate.
+    Of a product its stated yield counts, else as much as there was substrate. A solvolysis sets one acid free for each
+    substrate, which drives carbon dioxide out of a hydrogencarbonate that was meant as buffer.
     """
     last = len(record.stages) - 1
     index = last if stage is None else stage
-    formed = gases_from(present_in(record, structures, amounts, index))
+    present = present_in(record, structures, amounts, index)
+    formed = gases_from((*present, *_acid_set_free(record, amounts)) if index == last else present)
     if stage:
         before = {
             (each.gas, each.cause): each for each in gases_from(present_in(record, structures, amounts, stage - 1))
@@ -150,6 +153,13 @@ def present_in(
         if structure is not None:
             present.append(Present(row.path, structure, _moles(row, structure)))
     return tuple(present)
+
+
+def _acid_set_free(record: Record, amounts: Amounts) -> tuple[Present, ...]:
+    """Return the strong acid that a solvolysis leaves, as much as there was substrate; empty for other reactions."""
+    if record.nucleophile != NucleophileWord.SOLVENT:
+        return ()
+    return (Present(("substrate",), parse_smiles(_STRONG_ACID), amounts.substrate.amount_mol),)
 
 
 def _since(formed: GasFormed, before: GasFormed | None) -> GasFormed | None:

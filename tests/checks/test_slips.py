@@ -5,6 +5,9 @@ import pytest
 from builder.finding import Finding
 from tests.specimens import play
 
+SUBSTRATE = (  # 137.02 g/mol
+    "substrate: {name: 2-bromobutane, smiles: 'CCC(C)Br', class: secondary, leaving_group: bromide, %s}"
+)
 AZIDE = "nucleophile: {name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', %s}"  # 65.01 g/mol
 ACETATE = "nucleophile: {name: sodium acetate, smiles: '[Na+].CC([O-])=O', %s}"  # 82.03; trihydrate 136.08
 AMINE = "nucleophile: {name: benzylamine, smiles: NCc1ccccc1, %s}"  # 107.16; hydrochloride 143.61; 0.981 g/mL
@@ -25,6 +28,8 @@ def _found(example: str, rule: str = "quantities-disagree") -> list[Finding]:
             AZIDE % "mass: 0.975 g, amount: 15.0 mol",
             "a factor of 1000 fits: amount 15.0 mol was probably meant in mmol",
         ),
+        (SUBSTRATE % "mass: 1.370 kg, amount: 10.0 mmol", "mass 1.370 kg was probably meant in g"),
+        (SUBSTRATE % "mass: 1.370 g, amount: 10.0 mol", "amount 10.0 mol was probably meant in mmol"),
         (AZIDE % "mass: 0.975 mg, equivalents: 1.5", "mass 0.975 mg was probably meant in g"),
         (AZIDE % "mass: 975 mg, equivalents: 1.8", "no common slip fits"),
         (

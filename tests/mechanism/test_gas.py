@@ -4,7 +4,17 @@ import pytest
 from chemicals import Tb
 
 from builder.chemistry.structure import parse_smiles
-from builder.mechanism.gas import GasFormed, Present, closed_vessel_bar, gas_volume_l, gases_from, load_gases
+from builder.mechanism.gas import (
+    GasFormed,
+    Present,
+    closed_vessel_bar,
+    gas_volume_l,
+    gases_from,
+    gases_of_record,
+    load_gases,
+)
+from builder.records.specimen import outcome_example, with_example
+from tests.specimens import examine_text
 
 LAST_PRINTED_DIGIT = 0.005
 
@@ -126,3 +136,38 @@ def test_which_gases_are_permanent() -> None:
     gases = load_gases()
     permanent = {"H2", "N2", "CO", "NO", "CH4", "C2H4", "C2H2", "HCl", "HBr", "CO2", "H2S"}
     assert {formula for formula, gas in gases.items() if gas.is_permanent} == permanent
+
+
+SOLVOLYSIS = (
+    "substrate: {name: tert-butyl chloride, smiles: 'CC(C)(C)Cl', class: tertiary, leaving_group: chloride,"
+    " amount: 10 mmol}\nnucleophile: solvent\nsolvent: [{name: ethanol, volume: 20 mL}]\n"
+    "reagents: [{name: a buffer, smiles: '%s', use: buffer, equivalents: 1.5}]\n"
+    "stages: [{temperature: 25 °C, time: 16 h, vessel: sealed}]"
+)
+
+
+@pytest.mark.parametrize(
+    ("buffer", "gases"),
+    [
+        # R-Cl + HOEt + NaHCO3 -> R-OEt + NaCl + H2O + CO2: one for each substrate
+        (HYDROGENCARBONATE, {"CO2": 0.010}),
+        ("Cc1cccc(C)n1", {}),
+        ("[Na+].CC([O-])=O", {}),
+    ],
+)
+def test_a_solvolysis_sets_acid_free(buffer: str, gases: dict[str, float]) -> None:
+    case = examine_text(with_example(SOLVOLYSIS % buffer)).kept
+    assert case is not None
+    formed = gases_of_record(case.record, case.structures, case.amounts)
+    assert _by_formula(formed) == pytest.approx(gases)
+
+
+def test_a_product_that_is_a_gas() -> None:
+    # 78 % of 10 mmol, as the yield says
+    outcome = outcome_example(
+        "{yield: 78 %, of: A, kind: assay}", products="{label: A, name: isobutene, smiles: C=C(C)C, use: desired}"
+    )
+    case = examine_text(with_example(outcome)).kept
+    assert case is not None
+    formed = gases_of_record(case.record, case.structures, case.amounts)
+    assert _by_formula(formed) == pytest.approx({"i-C4H8": 0.0078})
