@@ -4,7 +4,7 @@ from collections import Counter
 from collections.abc import Iterator
 
 from builder.checks.case import Case
-from builder.checks.derivation import SOUGHT, expected_product, is_desired, routes_by_product, search
+from builder.checks.derivation import SOUGHT, expected_product, is_desired, product_paths, routes_by_product, search
 from builder.chemistry.perception import NO_LEAVING_GROUP, Hybridisation, attacking_atoms, sites_of
 from builder.chemistry.structure import Structure
 from builder.mechanism.amounts import Role, charged_rows
@@ -80,13 +80,14 @@ def centre_is_out_of_scope(case: Case) -> Iterator[Fault]:
 def leaving_group_is_in_the_product(case: Case) -> Iterator[Fault]:
     """The product of a substitution has one leaving group less than the substrate.
 
-    Asked of a desired product to which no open way is known, where the nucleophile does not bring the group itself.
-    Then the substrate was copied into the product, or the nucleophile was drawn onto another carbon.
+    Asked of a desired product that is the substrate once more, or to which no open way is known, where the group is not
+    charged by itself. Then the substrate was copied into the product, or the nucleophile drawn onto another carbon.
     """
     group = case.record.substrate.leaving_group
-    if not _claims_substitution(case) or _brings(case, group):
+    if not case.sites or group == NO_LEAVING_GROUP or not _claims_substitution(case) or _brings_the_group(case):
         return
-    for path, product in _without_way(case):
+    copied = {path: s for path, s in _desired(case).items() if _is_substrate(case, s)}
+    for path, product in (dict(_without_way(case)) | copied).items():
         before = min(_number_of(each.on, group) for each in case.sites)
         if before and _number_of(product, group) >= before:
             yield Fault(
@@ -136,24 +137,30 @@ def _claims_substitution(case: Case) -> bool:
     return Result.SUBSTITUTION in result and not {Result.ELIMINATION, Result.REARRANGEMENT} & set(result)
 
 
+def _desired(case: Case) -> dict[Path, Structure]:
+    paths = [path for path in product_paths(case) if path != SOUGHT and is_desired(case, path)]
+    return {path: case.structures[path] for path in paths}
+
+
 def _without_way(case: Case) -> Iterator[tuple[Path, Structure]]:
     """Yield the desired products to which no open way is known; none where something is not drawn."""
     if case.has_undrawn_species or not case.sites or search(case).was_cut:
         return
-    for path, routes in routes_by_product(case).items():
-        is_closed = all(route.closed_by for route in routes)
-        if is_closed and path != SOUGHT and is_desired(case, path):
-            yield path, case.structures[path]
+    routes = routes_by_product(case)
+    for path, product in _desired(case).items():
+        if all(route.closed_by for route in routes[path]):
+            yield path, product
 
 
-def _brings(case: Case, group: str) -> bool:
-    """Say whether a nucleophile attacks with the element that leaves, so that the group may be in the product."""
-    leaving = {
-        each.on.atoms[each.site.leaving_atom].symbol for each in case.sites if each.site.leaving_atom is not None
-    }
-    return group == NO_LEAVING_GROUP or any(
-        atom.symbol in leaving for species in case.flask for atom in attacking_atoms(species)
-    )
+def _brings_the_group(case: Case) -> bool:
+    """Say whether the group that leaves is also charged by itself, so that it may rightly be in the product."""
+    left = [Counter(each.on.elements) - Counter(staying_elements(each.on, each.site)) for each in case.sites]
+    return any(Counter(piece.elements) in left for species in case.flask for piece in species.fragments)
+
+
+def _is_substrate(case: Case, product: Structure) -> bool:
+    """Say whether a product is the substrate once more, whatever configuration is drawn."""
+    return product.flat == case.substrate.flat
 
 
 def _number_of(structure: Structure, group: str) -> int:
