@@ -1,4 +1,4 @@
-"""What the amounts charged allow: yields that a reagent does not cover, and an order of addition that matters."""
+"""What the amounts charged allow: yields that no reagent or base covers, and an order of addition that matters."""
 
 from collections import Counter
 from collections.abc import Iterator
@@ -21,6 +21,7 @@ __all__ = ["LIMIT_CHECKS"]
 POINTS = 2.0  # of the method that measured the yield; common practice, no source
 AT_LEAST_ONE = 1.02  # equivalents of nucleophile, at which the substrate still counts as one equivalent or more
 SHORT_BELOW = 0.98  # equivalents; honest weighing is within 2 %
+_SUBSTITUTES = {Result.SUBSTITUTION, Result.RING_OPENING}
 _FROM_WATER = {"O"}  # an alcohol may come of moisture or of the work-up
 _AMINE = Fragment.from_smarts("[NX3;H1,H2,H3;+0;!$(N-[C,S,P]=[O,S,N]);!$(N-c);!$(N~[N,O])]")
 _STILL_ATTACKS = Fragment.from_smarts("[NX3;+0;!$(N-[C,S,P]=[O,S,N]);!$(N-c);!$(N~[N,O])]")
@@ -144,17 +145,18 @@ def base_is_below_one(case: Case) -> Iterator[Fault]:
     """
     substrate = case.amounts.substrate.amount_mol
     drawn = [row for row in case.amounts.rows if row.role is Role.NUCLEOPHILE and row.path in case.structures]
-    acidic = [row.name for row in drawn if _LOSES_A_PROTON.is_in(case.structures[row.path])]
+    acidic = [row for row in drawn if _LOSES_A_PROTON.is_in(case.structures[row.path])]
     leaves_free = any(each.site.leaving_atom is not None and not each.site.leaving_ring_size for each in case.sites)
     taken = _protons(case)
     if not substrate or not case.record.bases or not acidic or not leaves_free or taken is None:
         return
     protons, names, _ = taken
-    if Result.SUBSTITUTION in case.record.outcome.result and protons < (SHORT_BELOW - _rounding(case)) * substrate:
+    set_free = min(substrate, sum(row.amount_mol if row.amount_mol is not None else substrate for row in acidic))
+    if _SUBSTITUTES & set(case.record.outcome.result) and protons < (SHORT_BELOW - _rounding(case)) * set_free:
         yield Fault(
             at=_place_of(case, Role.BASE),
-            message=f"{moles_text(protons)} of protons can be taken by {names}, while {' and '.join(acidic)} with"
-            f" {_substrate_text(case)} sets one free for each product",
+            message=f"{moles_text(protons)} of protons can be taken by {names}, while"
+            f" {' and '.join(row.name for row in acidic)} sets {moles_text(set_free)} free",
             mend="correct the amount of base, or accept this with what takes the acid",
             data={"protons_mol": round(protons, 6)},
         )
@@ -243,7 +245,7 @@ def _bound(case: Case, path: Path) -> _Bound | None:
         return None
     if all(route.eliminates for route in routes):
         return _bound_by_base(case, substrate)
-    if Result.SUBSTITUTION not in case.record.outcome.result:
+    if not _SUBSTITUTES & set(case.record.outcome.result):
         return None
     staying = staying_elements(routes[0].start, routes[0].site)
     gained = set(Counter(case.structures[path].elements) - Counter(staying))
