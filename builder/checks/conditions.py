@@ -21,6 +21,7 @@ MARGIN_K = 3.0  # a thermometer's honest error; common practice, no source
 REFLUX_MARGIN_K = 5.0
 ROOM_C = 35.0  # a gas stirred into a solvent at the temperature of the room is a matter of solubility
 MIXTURE_MARGIN_K = 10.0  # how far Raoult's law is trusted above the bubble point; common practice, no source
+_VAPOUR = "vapour-pressure-tables"
 CLOSED_VESSELS = frozenset({Vessel.SEALED, Vessel.MICROWAVE})
 
 
@@ -62,9 +63,11 @@ def temperature_is_above_boiling(case: Case) -> Iterator[Fault]:
             continue
         ideal = bubble_point_c(tuple(parts), pressure) if len(parts) > 1 else None
         if hottest > boiling[1] + MARGIN_K:
-            limit, what, level = boiling[1], "the boiling point", Level.QUERY if stage.vessel is Vessel.FLOW else None
+            limit, what, source = boiling[1], "the boiling point", _source(stage)
+            level = Level.QUERY if stage.vessel is Vessel.FLOW else None
         elif ideal is not None and hottest > ideal + MIXTURE_MARGIN_K:
-            limit, what, level = ideal, "where this mixture, taken as ideal, begins to boil", Level.QUERY
+            limit, what, source = ideal, "where this mixture, taken as ideal, begins to boil", _VAPOUR
+            level = Level.QUERY
         else:
             continue
         yield Fault(
@@ -72,6 +75,7 @@ def temperature_is_above_boiling(case: Case) -> Iterator[Fault]:
             message=f"{stage.temperature} is above {what}, {limit:.0f} °C{_at_pressure(stage)}",
             mend="give the internal temperature, say measured: bath, or name the sealed vessel or the pressure",
             level=level,
+            source=source,
             data={"boiling_point_c": round(limit, 1)},
         )
 
@@ -119,6 +123,7 @@ def reflux_is_off_the_boiling_point(case: Case) -> Iterator[Fault]:
                 at=("stages", index, "temperature"),
                 message=f"reflux at {where}, while the solvent boils at {_span(low, high)} °C{_at_pressure(stage)}",
                 mend="correct the temperature, or the vessel; away from 1 atm state the pressure",
+                source=_source(stage),
             )
 
 
@@ -319,6 +324,11 @@ def _parts(case: Case, stage: int) -> list[tuple[Solvent, float]] | None:
 
 def _pressure_bar(stage: Stage) -> float:
     return ATMOSPHERE_BAR if stage.pressure is None else stage.pressure.magnitude
+
+
+def _source(stage: Stage) -> str | None:
+    """Return where a boiling point comes from; None for the solvent table, the rules' own source."""
+    return None if stage.pressure is None else _VAPOUR
 
 
 def _at_pressure(stage: Stage) -> str:

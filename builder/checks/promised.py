@@ -23,6 +23,7 @@ _METALS: Mapping[str, str] = {
     "silver": "Ag",
 }
 _HALIDES: Mapping[str, str] = {"hydrochloride": "HCl", "hydrobromide": "HBr", "hydroiodide": "HI"}
+WORDS_OF_A_FORM = 3  # "sodium salt, anhydrous"; a longer text tells where it came from
 _WORD = re.compile(r"[a-z]+")
 _HOW_MANY = re.compile(r"^(?:di|tri)(?=[a-z])")
 
@@ -62,6 +63,7 @@ def form_is_not_drawn(case: Case) -> Iterator[Fault]:
     A sodium salt drawn as the acid, a hydrochloride drawn as the base, a hydrate drawn dry: amounts are derived from
     the drawing, so with a typed mass, or a volume with density, this is an error. Read are the names of alkali metals
     and silver, hydrochloride, hydrobromide, hydroiodide, and hydrates by number; `anhydrous` and `free base` deny them.
+    A `form` of more than three words tells how it was made, and is not read.
     """
     for path, _, substance in charged_rows(case.record):
         structure = case.structures.get(path)
@@ -85,7 +87,8 @@ PROMISED_CHECKS = (form_is_not_drawn,)
 
 def _lack(substance: Charged, structure: Structure) -> _Lack | None:
     """Return the first word that the drawing does not keep; None where it keeps all."""
-    texts = {"name": substance.name.casefold(), "form": (substance.form or "").casefold()}
+    form = (substance.form or "").casefold()
+    texts = {"name": substance.name.casefold(), "form": form if len(form.split()) <= WORDS_OF_A_FORM else ""}
     for key, text in texts.items():
         for word in _WORD.findall(text):
             lack = _lack_of_word(word, key, structure)

@@ -119,7 +119,7 @@ def gas_needs_more_than_the_headspace(case: Case) -> Iterator[Fault]:
 @rule(
     id="pressure-above-rating",
     title="More pressure than is stated for a closed vessel",
-    source="common-practice",
+    source="vapour-pressure-tables",
     needs=("structure-unreadable", "gas-above-headspace"),
     fires_on=(
         "solvent: [{name: THF, volume: 20 mL}]\n" + _sealed(", pressure: 2 bar").replace("60 °C", "150 °C"),

@@ -45,6 +45,7 @@ def test_what_is_not_drawn(substance: str, level: Level, words: str) -> None:
         "name: methylamine, form: hydrochloride, smiles: 'C[NH3+].[Cl-]', mass: 1.01 g",
         "name: lithium iodide dihydrate, smiles: '[Li+].[I-].O.O', mass: 2.5 g",
         "name: sodium hydroxide, form: solution in water, smiles: '[Na+].[OH-]', volume: 10 mL, strength: 1.0 mol/L",
+        "name: phenol, form: set free in the flask from sodium phenoxide, smiles: Oc1ccccc1, amount: 15 mmol",
         "name: morpholine, form: anhydrous, smiles: C1COCCN1, mass: 1.0 g",
         "name: Rongalite, smiles: 'OCS(=O)[O-].[Na+].O.O', form: dihydrate, mass: 1.0 g",
     ],
