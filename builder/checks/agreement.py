@@ -5,7 +5,7 @@ from collections import Counter
 from collections.abc import Iterator, Sequence
 
 from builder.checks.case import Case
-from builder.checks.derivation import SOUGHT, is_desired, product_paths, routes_by_product, search
+from builder.checks.derivation import SOUGHT, expected_product, is_desired, product_paths, routes_by_product, search
 from builder.chemistry.neutral import neutral_form
 from builder.chemistry.perception import NO_LEAVING_GROUP
 from builder.chemistry.structure import Structure
@@ -93,9 +93,10 @@ _PRIMARY = (
 )
 
 
-_ARYL = (
-    "substrate: {name: chlorobenzene, smiles: Clc1ccccc1, class: aryl, leaving_group: chloride, amount: 10 mmol}\n"
-    "stages: [{temperature: 60 °C, time: 16 h}]\n" + _product("[N-]=[N+]=Nc1ccccc1")
+_BRIDGEHEAD = (
+    "substrate: {name: 1-bromonorbornane, smiles: BrC12CCC(CC1)C2, class: [tertiary, bridgehead],"
+    " leaving_group: bromide, amount: 10 mmol}\nstages: [{temperature: 60 °C, time: 16 h}]\n"
+    + _product("[N-]=[N+]=NC12CCC(CC1)C2")
 )
 
 
@@ -324,8 +325,11 @@ def _named(gates: Sequence[Gate]) -> str:
     title="A product that does not follow",
     level=Level.QUERY,
     source="iupac-gold",
-    needs=(*AGREEMENT_READS, "element-from-nowhere"),
-    fires_on=(_product("CCCN=[N+]=[N-]"), _ARYL),
+    needs=(
+        *AGREEMENT_READS,
+        *("element-from-nowhere", "centre-out-of-scope", "leaving-group-in-product", "nucleophile-not-in-product"),
+    ),
+    fires_on=(_product("CCCN=[N+]=[N-]"), _BRIDGEHEAD),
     silent_on=(_product("CCC(C)N=[N+]=[N-]"), _product("C=CCC")),
 )
 def product_is_not_reachable(case: Case) -> Iterator[Fault]:
@@ -333,7 +337,7 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
 
     Sought in one or two events: substitution at the declared group, elimination, up to three shifts of a cation,
     allylic transposition, ring closure and opening, addition, fragmentation. A product beyond that is usually a slip
-    in a SMILES.
+    in a SMILES; what the engine expects instead is named.
 
     Some last steps are known besides: Ritter, Kornblum and Hass–Bender, the hydrolysis of iminium and isothiouronium
     salts, loss of carbon dioxide. Known limits, to be accepted with a reason: any other hydrolysis or oxidation as the
@@ -356,7 +360,8 @@ def product_is_not_reachable(case: Case) -> Iterator[Fault]:
         elif not routes:
             yield Fault(
                 at=(*path, "smiles"),
-                message="this product does not follow from the substrate and what was charged",
+                message="this product does not follow from the substrate and what was charged"
+                + (f"; {expected} would" if (expected := expected_product(case)) else ""),
                 mend="correct the SMILES, list what is missing, or accept product-not-reachable with a reason",
             )
         elif routes[0].closed_by and path != SOUGHT and not is_contrary:

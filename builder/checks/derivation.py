@@ -5,7 +5,7 @@ from builder.mechanism.products import Route, Search, search_routes
 from builder.records.vocabulary import ProductUse
 from builder.rule import Path
 
-__all__ = ["SOUGHT", "is_desired", "main_route", "product_paths", "routes_by_product", "search"]
+__all__ = ["SOUGHT", "expected_product", "is_desired", "main_route", "product_paths", "routes_by_product", "search"]
 
 SOUGHT: Path = ("outcome", "sought")
 
@@ -39,3 +39,9 @@ def main_route(case: Case) -> Route | None:
     """Return the shortest route to the first wanted product that has one."""
     routes = (each[0] for path, each in routes_by_product(case).items() if each and is_desired(case, path))
     return next(routes, None)
+
+
+def expected_product(case: Case) -> str:
+    """Return the SMILES of the main product that the engine forecasts; empty where it forecasts none."""
+    forecast = case.forecast
+    return forecast.products[0].structure.smiles if forecast is not None and forecast.products else ""

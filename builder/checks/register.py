@@ -12,6 +12,7 @@ from builder.checks.cautions import CAUTION_CHECKS
 from builder.checks.charged import CHARGED_CHECKS
 from builder.checks.completeness import COMPLETENESS_CHECKS
 from builder.checks.conditions import CONDITION_CHECKS
+from builder.checks.conserved import CONSERVED_CHECKS
 from builder.checks.copies import COPY_CHECKS
 from builder.checks.erosion import EROSION_CHECKS
 from builder.checks.excess import EXCESS_CHECKS
@@ -22,9 +23,12 @@ from builder.checks.house import HOUSE_CHECKS
 from builder.checks.house_rules import HOUSE_RULE_CHECKS, house_rule_is_unclear
 from builder.checks.identity import IDENTITY_CHECKS
 from builder.checks.kinetics import KINETIC_CHECKS
+from builder.checks.limits import LIMIT_CHECKS
+from builder.checks.promised import PROMISED_CHECKS
 from builder.checks.ratios import RATIO_CHECKS
 from builder.checks.stages import STAGE_CHECKS
 from builder.checks.structures import STRUCTURE_CHECKS
+from builder.checks.vessel import VESSEL_CHECKS
 from builder.checks.words import WORD_CHECKS
 from builder.checks.yields import YIELD_CHECKS
 from builder.finding import Level
@@ -43,6 +47,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *CHARGED_CHECKS,
             *COMPLETENESS_CHECKS,
             *CONDITION_CHECKS,
+            *CONSERVED_CHECKS,
             *COPY_CHECKS,
             *EROSION_CHECKS,
             *EXCESS_CHECKS,
@@ -51,9 +56,12 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *IDENTITY_CHECKS,
             *HOUSE_RULE_CHECKS,
             *KINETIC_CHECKS,
+            *LIMIT_CHECKS,
+            *PROMISED_CHECKS,
             *RATIO_CHECKS,
             *STAGE_CHECKS,
             *STRUCTURE_CHECKS,
+            *VESSEL_CHECKS,
             *WORD_CHECKS,
             *YIELD_CHECKS,
         ),

@@ -17,6 +17,7 @@ __all__ = [
     "charged_rows",
     "derive_amounts",
     "moles_from",
+    "present_rows",
     "present_solvents",
     "rounding_of",
 ]
@@ -95,9 +96,20 @@ def charged_rows(record: Record) -> tuple[tuple[Path, Role, Charged], ...]:
 
 def present_solvents(record: Record, stage: int) -> tuple[int, ...]:
     """Return the positions of the solvents that are in the flask during a stage: all but those that go in later."""
+    absent = _added_later(record, stage)
+    return tuple(i for i, solvent in enumerate(record.solvents) if solvent.name not in absent)
+
+
+def present_rows(record: Record, amounts: Amounts, stage: int) -> tuple[AmountRow, ...]:
+    """Return the rows of all that is in the flask during a stage: all but what goes in later."""
+    absent = _added_later(record, stage)
+    return tuple(row for row in amounts.rows if row.name not in absent)
+
+
+def _added_later(record: Record, stage: int) -> set[str]:
     so_far = {name for each in record.stages[: stage + 1] for name in each.add or ()}
     later = {name for each in record.stages[stage + 1 :] for name in each.add or ()}
-    return tuple(i for i, solvent in enumerate(record.solvents) if solvent.name not in later - so_far)
+    return later - so_far
 
 
 def derive_amounts(record: Record, structures: Mapping[Path, Structure]) -> Amounts:

@@ -14,6 +14,7 @@ __all__ = ["FlaskRole", "roles_in"]
 class FlaskRole(StrEnum):
     """One role; the table's header explains each."""
 
+    HEAT_OF_ADDITION = "heat of addition"
     RADICAL_INITIATOR = "radical initiator"
     STRONG_BASE = "strong base"
     TWO_ELECTRON_DONOR = "two-electron donor"

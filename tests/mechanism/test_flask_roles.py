@@ -32,4 +32,27 @@ ROLES = [
 @pytest.mark.parametrize(("smiles", "word"), ROLES, ids=[row[0] for row in ROLES])
 def test_roles(smiles: str, word: str) -> None:
     expected = {FlaskRole(word)} if word else set()
-    assert roles_in([parse_smiles(smiles)]) == expected
+    assert roles_in([parse_smiles(smiles)]) - {FlaskRole.HEAT_OF_ADDITION} == expected
+
+
+@pytest.mark.parametrize(
+    ("smiles", "is_hot"),
+    [
+        ("[Na+].[H-]", True),
+        ("[Li+].CC(C)[N-]C(C)C", True),
+        ("[Li]CCCC", True),
+        ("CS(=O)(=O)Cl", True),
+        ("O=S(Cl)Cl", True),
+        ("CC(=O)Cl", True),
+        ("BrP(Br)Br", True),
+        ("OS(=O)(=O)O", True),
+        ("COS(=O)(=O)OC", True),
+        ("COS(C)(=O)=O", False),
+        ("CC(=O)OC(C)=O", False),
+        ("[Na+].CC[O-]", False),
+        ("[Na+].[N-]=[N+]=[N-]", False),
+        ("CCBr", False),
+    ],
+)
+def test_heat_of_addition(smiles: str, *, is_hot: bool) -> None:
+    assert (FlaskRole.HEAT_OF_ADDITION in roles_in([parse_smiles(smiles)])) == is_hot
