@@ -160,7 +160,7 @@ def _twice_the_concentration(document: Any) -> Path | None:
     if "concentration" not in document or not solvents or not all("volume" in each for each in solvents):
         return None
     number, unit = document["concentration"].split()
-    document["concentration"] = f"{float(number) * 2:.3g} {unit}"
+    document["concentration"] = f"{float(number) * 2:#.3g} {unit}"
     return ("concentration",)
 
 

@@ -38,6 +38,7 @@ CONTRARY_RULES = frozenset(
         "no-reaction-against-forecast",
         "product-not-forecast",
         "product-not-reachable",
+        "rate-constant-against-forecast",
         "ratio-against-forecast",
         "rearrangement-not-named",
         "yield-above-forecast",

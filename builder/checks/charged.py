@@ -6,6 +6,7 @@ from builder.checks.case import Case
 from builder.checks.slips import Disagreement, explained, is_saline_hydride, level_of, moles_text, typed_text
 from builder.finding import Level
 from builder.mechanism.amounts import QUANTITY_ORDER, Role, charged_rows, moles_from, rounding_of
+from builder.records.model import Charged
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Fault, rule
 
@@ -91,9 +92,11 @@ def quantities_disagree(case: Case) -> Iterator[Fault]:
         if used is None:
             continue
         for kind, value in known.items():
-            level = level_of(value / known[used], rounding_of(substance, used) + rounding_of(substance, kind))
+            rounding = _rounding(case, substance, used) + _rounding(case, substance, kind)
+            level = level_of(value / known[used], rounding)
             if kind != used and level is not None:
-                told = Disagreement(substance, structure, used, known[used], kind, value, _usual_mol(case, role))
+                usual = _usual_mol(case, role)
+                told = Disagreement(substance, structure, used, known[used], kind, value, usual, rounding)
                 yield Fault(
                     at=(*path, kind),
                     message=f"{typed_text(substance, used)} of {substance.name} is {moles_text(known[used])},"
@@ -103,6 +106,11 @@ def quantities_disagree(case: Case) -> Iterator[Fault]:
                     data={"ratio": round(value / known[used], 4)},
                 )
     yield from _concentration_disagreement(case)
+
+
+def _rounding(case: Case, substance: Charged, kind: str) -> float:
+    """Return by how much rounding may put an amount off; equivalents are rounded twice, the substrate being one."""
+    return rounding_of(substance, kind) + (rounding_of(case.record.substrate) if kind == "equivalents" else 0.0)
 
 
 def _concentration_disagreement(case: Case) -> Iterator[Fault]:

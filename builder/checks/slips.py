@@ -2,12 +2,11 @@
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from math import log10
+from math import log, log1p, log10
 
 from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure
 from builder.finding import Level
-from builder.mechanism.amounts import rounding_of
 from builder.mechanism.forms import forms_that_fit
 from builder.records.model import Charged
 from builder.records.quantities import Dimension, Quantity
@@ -37,6 +36,7 @@ class Disagreement:
     """Two typed quantities of one substance and the moles that each stands for; `used` is the one believed.
 
     usual_mol: about how much of it one would expect in this flask, by which a slipped prefix is told.
+    rounding: by how much rounding may put the two apart, relative.
     """
 
     substance: Charged
@@ -46,11 +46,12 @@ class Disagreement:
     other: str
     other_mol: float
     usual_mol: float
+    rounding: float
 
     @property
     def tolerance(self) -> float:
         """Return how closely a slip must fit: 2 %, or honest rounding where that is wider."""
-        return max(QUERY_ABOVE, rounding_of(self.substance, self.used) + rounding_of(self.substance, self.other))
+        return max(QUERY_ABOVE, self.rounding)
 
     def fits(self, ratio: float, factor: float) -> bool:
         """Say whether a ratio of moles is that factor within the tolerance."""
@@ -62,10 +63,11 @@ def level_of(ratio: float, rounding: float) -> Level | None:
 
     rounding: half a unit in the last typed digits, relative, of all numbers that enter.
     """
-    off = abs(ratio - 1.0)
-    if off <= max(QUERY_ABOVE, rounding):
+    off = abs(log(ratio))
+    rounded = -log1p(-min(rounding, 0.99))  # 18 mmol may stand for 17.5, of which half a mmol is more than of 18
+    if off <= max(log1p(QUERY_ABOVE), rounded):
         return None
-    return Level.ERROR if off > max(ERROR_ABOVE, rounding) else Level.QUERY
+    return Level.ERROR if off > max(log1p(ERROR_ABOVE), rounded) else Level.QUERY
 
 
 def explained(told: Disagreement) -> str:

@@ -3,14 +3,14 @@
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass
-from functools import cache
 
 from builder.checks.case import Case
 from builder.checks.derivation import routes_by_product
 from builder.checks.measured import METHOD_POINTS, Span, exactly, half_unit, lines_of
-from builder.chemistry.structure import Structure, parse_smiles
+from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
+from builder.mechanism.forms import forms_of
 from builder.mechanism.products import Event
 from builder.records.model import Measurement
 from builder.records.specimen import outcome_example
@@ -272,65 +272,9 @@ def _suspects(case: Case, line: Measurement, product: Structure) -> Iterator[_Su
             yield _Suspect(substrate_mol / row.amount_mol, words)
     yield _Suspect(2.0, "the yield fits two molecules of substrate in one of product")
     yield _Suspect(0.5, "the yield fits two molecules of product from one of substrate")
-    for name, added in _forms_of(product):
-        whole = product.mass + added
-        yield _Suspect(product.mass / whole, f"the mass fits the {name} of the product, {whole:.1f} g/mol")
-
-
-@cache
-def _added_masses() -> tuple[tuple[str, float, str], ...]:
-    """Return what a product may have been weighed with: name, mass added in g/mol, group of the product it needs."""
-    water, acids = parse_smiles("O").mass, (("hydrochloride", "Cl"), ("hydrobromide", "Br"), ("hydroiodide", "I"))
-    more = (("trifluoroacetate", "OC(=O)C(F)(F)F"), ("tosylate", "Cc1ccc(cc1)S(=O)(=O)O"), ("acetate", "CC(=O)O"))
-    salts = (("sodium salt", "[Na+]"), ("potassium salt", "[K+]"), ("lithium salt", "[Li+]"))
-    proton = parse_smiles("[H+]").mass
-    return (
-        *((name, count * water, "") for name, count in (("hemihydrate", 0.5), ("monohydrate", 1), ("dihydrate", 2))),
-        *((name, parse_smiles(smiles).mass, "base") for name, smiles in (*acids, *more)),
-        *((name, parse_smiles(smiles).mass - proton, "acid") for name, smiles in salts),
-    )
-
-
-def _forms_of(product: Structure) -> Iterator[tuple[str, float]]:
-    """Yield the hydrates and salts that a product can form, each with the mass it adds, g/mol."""
-    is_salt = "." in product.smiles
-    groups = {""}
-    groups |= {"base"} if not is_salt and _has_basic_nitrogen(product) else set()
-    groups |= {"acid"} if not is_salt and _has_acidic_hydrogen(product) else set()
-    yield from ((name, added) for name, added, needed in _added_masses() if needed in groups)
-
-
-def _has_basic_nitrogen(structure: Structure) -> bool:
-    """Say whether a nitrogen is that of an amine: uncharged, with single bonds to carbon, none of it an acyl group."""
-    atoms = structure.atoms
-    return any(
-        atom.symbol == "N"
-        and atom.charge == 0
-        and all(
-            order == 1 and atoms[other].symbol == "C" and not _is_acyl(structure, other)
-            for other, order in atom.neighbours
-        )
-        for atom in atoms
-    )
-
-
-def _is_acyl(structure: Structure, carbon: int) -> bool:
-    atoms = structure.atoms
-    return any(order == 2 and atoms[other].symbol in {"O", "S", "N"} for other, order in atoms[carbon].neighbours)
-
-
-def _has_acidic_hydrogen(structure: Structure) -> bool:
-    """Say whether an OH or SH sits on an acyl group, an aromatic ring or sulfur."""
-    atoms = structure.atoms
-    return any(
-        atom.symbol in {"O", "S"}
-        and atom.hydrogens > 0
-        and any(
-            atoms[other].aromatic or atoms[other].symbol == "S" or _is_acyl(structure, other)
-            for other, _ in atom.neighbours
-        )
-        for atom in atoms
-    )
+    for form in forms_of(product):
+        words = f"the mass fits {form.name} of the product, {form.molar_mass:.1f} g/mol"
+        yield _Suspect(product.mass / form.molar_mass, words)
 
 
 YIELD_CHECKS = (

@@ -152,11 +152,21 @@ def moles_from(kind: str, substance: Charged, structure: Structure | None, subst
     return mass_g * _content(substance) / structure.mass
 
 
+_FACTORS = {"mass": ("purity", "strength"), "volume": ("density", "purity", "strength")}
+"""What an amount is worked out with, beside the quantity itself."""
+
+
 def rounding_of(substance: Charged, kind: str | None = None) -> float:
-    """Return half a unit in the last typed digit, relative: of the quantity of this kind, else of the one in use."""
-    typed = getattr(substance, kind or _typed(substance) or "mass")
+    """Return by how much honest rounding may put an amount off, relative.
+
+    Half a unit in the last typed digit of the quantity of this kind, else of the one in use, and of the purity,
+    strength and density with which it is worked out.
+    """
+    kind = kind or _typed(substance) or "mass"
+    typed = getattr(substance, kind)
     if isinstance(typed, Quantity):
-        return typed.half_digit
+        factors: list[Quantity | None] = [getattr(substance, each) for each in _FACTORS.get(kind, ())]
+        return typed.half_digit + sum(factor.half_digit for factor in factors if factor is not None)
     exponent = typed.as_tuple().exponent if typed is not None else 0
     return 0.5 * 10.0**exponent / float(typed) if typed and isinstance(exponent, int) else 0.0
 
