@@ -28,7 +28,7 @@ from rdkit import Chem
 
 from builder.book import Book, examine, open_book
 from builder.checks.case import Case, forecast_for
-from builder.checks.cautions import find_hazards
+from builder.checks.hazards.meetings import find_hazards
 from builder.checks.register import RECORD_CHECKS
 from builder.checks.run import check_record
 from builder.mechanism.batch import Answer, answers, lines_of

@@ -17,6 +17,7 @@ USUAL_MOL_PER_L, USUAL_MOL = 0.3, 0.01  # only to tell which of two numbers a th
 LEAST_EQUIVALENTS, MOST_EQUIVALENTS = 0.001, 100.0
 CATALYST_AT_MOST = 1.05  # equivalents
 _DISPERSED = ("dispersion", "dispersed", "in oil", "mineral oil", "in paraffin")
+_REVIEWED = "safety_review: {by: safety-1, date: 2026-03-12, scope: sodium hydride in DMF at 15 mmol}"
 
 
 @rule(
@@ -64,7 +65,8 @@ def amount_cannot_be_derived(case: Case) -> Iterator[Fault]:
         "nucleophile: {name: sodium acetate, smiles: '[Na+].CC([O-])=O.O.O.O', mass: 2.04 g, amount: 15.0 mmol}\n"
         "stages: [{temperature: 60 °C, time: 16 h}]\noutcome: {result: [no reaction], measured: [{recovered: 96 %, of:"
         " substrate}]}",
-        "base: {name: sodium hydride, smiles: '[Na+].[H-]', mass: 0.60 g, purity: 60 %, amount: 15.0 mmol}",
+        "base: {name: sodium hydride, smiles: '[Na+].[H-]', mass: 0.60 g, purity: 60 %, amount: 15.0 mmol}\n"
+        + _REVIEWED,
         "concentration: 0.5 mol/L",
         "concentration: 0.530 mol/L\n"
         "substrate: {name: 2-bromobutane, smiles: 'CCC(C)Br', class: secondary, leaving_group: bromide, mass: 1.4 g}",
@@ -182,8 +184,10 @@ def concentration_is_implausible(case: Case) -> Iterator[Fault]:
     source="common-practice",
     fires_on=("base: {name: sodium hydride, smiles: '[Na+].[H-]', form: 60 % dispersion in oil, mass: 0.60 g}",),
     silent_on=(
-        "base: {name: sodium hydride, smiles: '[Na+].[H-]', form: 60 % dispersion in oil, mass: 0.60 g, purity: 60 %}",
-        "base: {name: sodium hydride, smiles: '[Na+].[H-]', form: 60 % dispersion in oil, amount: 15 mmol}",
+        "base: {name: sodium hydride, smiles: '[Na+].[H-]', form: 60 % dispersion in oil, mass: 0.60 g, purity: 60 %}\n"
+        + _REVIEWED,
+        "base: {name: sodium hydride, smiles: '[Na+].[H-]', form: 60 % dispersion in oil, amount: 15 mmol}\n"
+        + _REVIEWED,
     ),
 )
 def dispersion_lacks_its_purity(case: Case) -> Iterator[Fault]:

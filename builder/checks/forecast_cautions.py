@@ -5,7 +5,8 @@ As with records it is a screen of structures, never a clearance; quench and work
 
 from collections.abc import Iterator
 
-from builder.checks.cautions import WHO_DECIDES, Hazard, Present, Severity, Whereabouts, by_meeting, find_hazards
+from builder.checks.hazards.cautions import WHO_DECIDES, Setting, Severity
+from builder.checks.hazards.meetings import Hazard, Present, Whereabouts, by_meeting, find_hazards
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.asking import ABSOLUTE_ZERO_C
 from builder.mechanism.forecast import Forecast
@@ -22,7 +23,7 @@ def forecast_cautions(question: Question, forecast: Forecast) -> tuple[dict[str,
     Each has id, severity (stop, warn, note), text, precaution, source and decides (who does). Of several milder
     cautions for the same substances the gravest stands for all; every `stop` stands for itself.
     """
-    hazards = find_hazards(_presents(question, forecast), question.temperature_k + ABSOLUTE_ZERO_C)
+    hazards = find_hazards(_presents(question, forecast), Setting(question.temperature_k + ABSOLUTE_ZERO_C))
     shown = [hazard for group in by_meeting(hazards) for hazard in _to_show(group)]
     shown.sort(key=lambda hazard: -hazard.caution.severity.weight)
     return tuple(map(_plain, shown))

@@ -10,8 +10,10 @@ from difflib import get_close_matches
 from functools import cache
 
 from builder.checks.case import Case
-from builder.checks.cautions import Whereabouts, load_substance_kinds, presents_of
 from builder.checks.group import person_codes
+from builder.checks.hazards.kinds import load_substance_kinds
+from builder.checks.hazards.meetings import Whereabouts
+from builder.checks.hazards.presents import presents_of
 from builder.checks.house import House
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows

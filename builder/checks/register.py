@@ -8,7 +8,6 @@ from typing import Any
 from builder.checks.agreement import AGREEMENT_CHECKS
 from builder.checks.balance import BALANCE_CHECKS
 from builder.checks.case import Case
-from builder.checks.cautions import CAUTION_CHECKS
 from builder.checks.charged import CHARGED_CHECKS
 from builder.checks.completeness import COMPLETENESS_CHECKS
 from builder.checks.conditions import CONDITION_CHECKS
@@ -19,6 +18,8 @@ from builder.checks.excess import EXCESS_CHECKS
 from builder.checks.forecasts import FORECAST_CHECKS
 from builder.checks.form import FORM_CHECKS
 from builder.checks.group import GROUP_CHECKS
+from builder.checks.hazards.rules import HAZARD_CHECKS
+from builder.checks.hazards.screens import SCREEN_CHECKS
 from builder.checks.house import HOUSE_CHECKS
 from builder.checks.house_rules import HOUSE_RULE_CHECKS, house_rule_is_unclear
 from builder.checks.identity import IDENTITY_CHECKS
@@ -43,7 +44,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
         (
             *AGREEMENT_CHECKS,
             *BALANCE_CHECKS,
-            *CAUTION_CHECKS,
+            *HAZARD_CHECKS,
             *CHARGED_CHECKS,
             *COMPLETENESS_CHECKS,
             *CONDITION_CHECKS,
@@ -59,6 +60,7 @@ RECORD_CHECKS: tuple[Rule[Case, Iterable[Fault]], ...] = tuple(
             *LIMIT_CHECKS,
             *PROMISED_CHECKS,
             *RATIO_CHECKS,
+            *SCREEN_CHECKS,
             *STAGE_CHECKS,
             *STRUCTURE_CHECKS,
             *VESSEL_CHECKS,

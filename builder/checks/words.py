@@ -93,7 +93,7 @@ _NOT_READ = frozenset({*STRUCTURES, "cas", "name", "entry", "by", "accepted", "r
     ),
     silent_on=(
         "take_away: 81 % in 16 h; elimination below 5 %.",
-        "work_up: ['dry over MgSO4, dry-loaded on 20 g silica, excess azide destroyed with nitrite']",
+        "work_up: ['dry over MgSO4, dry-loaded on 20 g silica, excess azide stays in the water']",
         "stages: [{temperature: 60 °C, time: 16 h, note: 'cooled with dry ice, bromide dropwise over 15 min'}]",
         "stages: [{temperature: 60 °C, time: 16 h, note: 'azide in 0.5 equiv excess, DMF with 30 ppm water'}]",
         "evidence: ['the catalytic hydrogenation gives butan-2-amine', '\"Dropwise\", BK1/001']",

@@ -6,7 +6,7 @@ gases.tsv, what gives them off in gas_sources.tsv.
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, lru_cache
 
 from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure, parse_smiles
@@ -220,10 +220,12 @@ class _Source:
 
 def _formed(source: _Source, present: Sequence[Present]) -> GasFormed | None:
     """Return what one source gives off; None where something it needs is not there, or nothing is left over."""
-    givers = [each for each in present if source.gives.is_in(each.structure)]
-    partners = [each for each in present if source.partner is not None and source.partner.is_in(each.structure)]
-    lacks_company = source.beside is not None and not any(source.beside.is_in(each.structure) for each in present)
-    if not givers or (source.partner is not None and not partners) or lacks_company:
+    givers = [each for each in present if _is_in(source.gives, each.structure)]
+    if not givers:
+        return None
+    partners = [each for each in present if source.partner is not None and _is_in(source.partner, each.structure)]
+    lacks_company = source.beside is not None and not any(_is_in(source.beside, each.structure) for each in present)
+    if (source.partner is not None and not partners) or lacks_company:
         return None
     given = _times(source.per_gives, _sites(source.gives, givers))
     if source.partner is not None:
@@ -235,6 +237,11 @@ def _formed(source: _Source, present: Sequence[Present]) -> GasFormed | None:
         return None
     paths = dict.fromkeys(each.path for each in (*givers, *partners))
     return GasFormed(source.gas, moles, source.cause, tuple(paths), source.source)
+
+
+@lru_cache(maxsize=4096)
+def _is_in(fragment: Fragment, structure: Structure) -> bool:
+    return fragment.is_in(structure)
 
 
 def _sites(fragment: Fragment, present: Sequence[Present]) -> float | None:

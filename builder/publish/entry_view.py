@@ -11,7 +11,7 @@ from functools import partial
 from urllib.parse import quote
 
 from builder.book import Book, Entry, Verdict
-from builder.checks.cautions import Severity
+from builder.checks.hazards.cautions import Severity
 from builder.finding import Finding, Level
 from builder.publish.charges import AmountView, StageView, amounts_as_tsv
 from builder.publish.expected import ExpectedView
@@ -27,6 +27,7 @@ from builder.publish.kindred import (
 from builder.publish.measured import MeasuredLine, rate_constant_text
 from builder.publish.neighbours import SequenceView, Variant, same_product, sequences, variant_of, view_sequence
 from builder.publish.portrait import CompoundView, Portrait
+from builder.publish.safety import SafetyView
 from builder.publish.schemes import Scheme
 from builder.publish.summary import Fact, Summary, newest_first
 from builder.records.model import EvidenceFile, Record
@@ -140,6 +141,7 @@ class EntryView:
     revision: int
     tombstone: Tombstone | None
     cautions: tuple[FindingView, ...]
+    safety: SafetyView
     scheme: Scheme | None
     strip: tuple[Fact, ...]
     claim: tuple[Fact, ...]
@@ -248,6 +250,7 @@ def view_entry(entry: Entry[Portrait], around: Surroundings) -> EntryView:
         revision=record.revision,
         tombstone=_tombstone(record, around),
         cautions=tuple(_finding(finding, record, around) for finding in _gravest_first(entry.findings)),
+        safety=portrait.safety,
         scheme=portrait.scheme,
         strip=portrait.strip,
         claim=_claim(record),

@@ -74,7 +74,7 @@ SECTIONS = (
     Section(
         "rest",
         "The rest",
-        ("procedure", "scale_limit", "related", "preceded_by", "disclosure", "reviewed", "rxn_file"),
+        ("procedure", "scale_limit", "thermal", "related", "preceded_by", "disclosure", "reviewed", "rxn_file"),
         folded=True,
     ),
 )
@@ -95,6 +95,8 @@ _SPELLED = {
     "cas": "CAS number",
     "sha256": "SHA-256",
     "rxn_file": "RXN file",
+    "td24": "T_D24",
+    "mtt": "MTT",
     "ee": "ee",
     "er": "er",
     "dr": "dr",

@@ -4,6 +4,7 @@ from collections.abc import Sequence
 
 from builder.book import Book
 from builder.checks.register import all_rules
+from builder.publish.caution_pages import caution_page
 from builder.publish.entry_view import surroundings_of
 from builder.publish.facets import facet_indexes
 from builder.publish.form_page import form_page
@@ -35,6 +36,7 @@ def build_pages(book: Book[Portrait], rules: Sequence[Rule[object, object]] | No
         front_page(book, summaries, indexes, pairs),
         *list_pages(book, summaries, indexes, tuple(runs), pairs),
         *rule_pages(book, rules),
+        caution_page(book),
         *guide_pages(book),
         form_page(book),
         *(entry_page(entry, around) for entry in book.entries),

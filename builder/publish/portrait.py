@@ -16,6 +16,7 @@ from builder.publish.figures import formula_parts, molar_mass_text
 from builder.publish.forecast_parts import GATE_IDS, Closed
 from builder.publish.measured import MeasuredLine, measured_lines, outcome_headline, yield_caption
 from builder.publish.participants import Participant, participants_of, role_of
+from builder.publish.safety import SafetyView, view_safety
 from builder.publish.schemes import Scheme, arrow_of, entry_scheme
 from builder.publish.summary import Fact, Summary, conditions_line, conditions_strip, scale_mol
 from builder.records.model import Charged
@@ -76,6 +77,7 @@ class Portrait:
     start: str
     goal: Goal | None
     arrow: Arrow
+    safety: SafetyView
 
 
 def portrait_of(case: Case) -> Portrait:
@@ -101,6 +103,7 @@ def portrait_of(case: Case) -> Portrait:
         start=substrate.typed if substrate is not None else "",
         goal=_goal(case),
         arrow=arrow_of(case),
+        safety=view_safety(case),
     )
 
 

@@ -48,12 +48,14 @@ __all__ = [
     "Equivalents",
     "Flag",
     "FormatNumber",
+    "HeatCapacity",
     "InchiText",
     "Label",
     "LabelledRatio",
     "Labels",
     "Line",
     "Mass",
+    "MolarEnthalpy",
     "NumberRatio",
     "OneOrMany",
     "Order",
@@ -162,8 +164,11 @@ _MOST = {
     Dimension.FRACTION: 100.0,
     Dimension.RATE_CONSTANT_1: 1e15,
     Dimension.RATE_CONSTANT_2: 1e15,
+    Dimension.MOLAR_ENTHALPY: 1e4,
+    Dimension.HEAT_CAPACITY: 20.0,
 }
-"""In canonical units: ten tonnes, ten years, just above the densest metal (22.6 g/mL), faster than any vibration.
+"""In canonical units: ten tonnes, ten years, just above the densest metal (22.6 g/mL), faster than any vibration,
+more heat than any step gives off, more than liquid hydrogen holds (10 J/(g K)).
 
 Wide of anything real, so that only slips and hostile numbers meet them; from memory."""
 
@@ -197,6 +202,8 @@ _concentration = _measure(Dimension.CONCENTRATION, "0.5 mol/L")
 _share = _measure(Dimension.FRACTION, "80 %")
 _purity = _measure(Dimension.FRACTION, "98 %")
 
+_heat_capacity = _measure(Dimension.HEAT_CAPACITY, "1.8 J/(g K)")
+
 Mass = Annotated[Quantity, *_mass]
 Amount = Annotated[Quantity, *_amount]
 Volume = Annotated[Quantity, *_volume]
@@ -206,6 +213,20 @@ Density = Annotated[Quantity, *_density]
 Concentration = Annotated[Quantity, *_concentration]
 Share = Annotated[Quantity, *_share]
 Purity = Annotated[Quantity, *_purity]
+HeatCapacity = Annotated[Quantity, *_heat_capacity]
+_ENTHALPIES = (-_MOST[Dimension.MOLAR_ENTHALPY], _MOST[Dimension.MOLAR_ENTHALPY])
+MolarEnthalpy = Annotated[
+    Quantity,
+    BeforeValidator(partial(_reader, partial(parse_quantity, dimension=Dimension.MOLAR_ENTHALPY), *_ENTHALPIES, False)),
+    _schema(
+        quantity_pattern(Dimension.MOLAR_ENTHALPY, is_positive=False),
+        "-100 kJ/mol",
+        measures=[Dimension.MOLAR_ENTHALPY],
+        bounds=_ENTHALPIES,
+        open_below=False,
+    ),
+]
+"""Signed: negative where heat is given off."""
 _TEMPERATURES = (-273.15, 1500.0)
 _PERCENTAGES = (-100.0, 1000.0)
 TypedTemperature = Annotated[

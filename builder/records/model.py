@@ -20,12 +20,14 @@ from builder.records.fields import (
     Equivalents,
     Flag,
     FormatNumber,
+    HeatCapacity,
     InchiText,
     Label,
     LabelledRatio,
     Labels,
     Line,
     Mass,
+    MolarEnthalpy,
     NumberRatio,
     OneOrMany,
     Order,
@@ -76,6 +78,7 @@ __all__ = [
     "Failure",
     "Measurement",
     "Nucleophile",
+    "Onset",
     "Outcome",
     "Performed",
     "Product",
@@ -90,6 +93,7 @@ __all__ = [
     "Stage",
     "Substrate",
     "Superseded",
+    "Thermal",
     "TimeCourse",
     "Withdrawn",
 ]
@@ -446,6 +450,33 @@ class EvidenceFile(Part):
     sha256: Sha256 = Field(description="SHA-256 of the file")
 
 
+class Onset(Part):
+    """Where a measured decomposition of the reaction mass begins, and how it was measured."""
+
+    temperature: TypedTemperature = Field(description="where decomposition begins")
+    by: Line = Field(description="how it was measured: DSC in a closed crucible, ARC")
+
+
+class Thermal(Part):
+    """Thermal data as given, from which the heat of the reaction is screened; outside the digest."""
+
+    reaction_enthalpy: MolarEnthalpy | None = Field(
+        default=None, description="for each mole of substrate, negative where heat is given off"
+    )
+    heat_capacity: HeatCapacity | None = Field(default=None, description="of the reaction mass")
+    accumulation: Share | None = Field(
+        default=None, description="unreacted share at the worst moment; 100 % where all is charged at once"
+    )
+    onset: Onset | None = Field(default=None, description="of decomposition, as measured")
+    td24: TypedTemperature | None = Field(
+        default=None, description="from which decomposition takes 24 h to its maximum rate"
+    )
+    mtt: TypedTemperature | None = Field(
+        default=None, description="maximum temperature for technical reasons: boiling point, or where the relief opens"
+    )
+    source: Line = Field(description="where the data come from: calorimeter and run")
+
+
 # --- the record -------------------------------------------------------------------------------------------
 
 
@@ -507,6 +538,7 @@ class Record(Part):
     accepted: tuple[Acceptance, ...] = Field(
         default=(), description="disagreements with a rule that a reviewer has accepted"
     )
+    thermal: Thermal | None = Field(default=None, description="thermal data, from which the heat is screened")
     safety_review: SafetyReview | None = Field(
         default=None, description="who looked at the hazards, and for what scope"
     )

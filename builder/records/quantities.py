@@ -47,6 +47,8 @@ class Dimension(StrEnum):
     FRACTION = "percentage"
     RATE_CONSTANT_1 = "first-order rate constant"
     RATE_CONSTANT_2 = "second-order rate constant"
+    MOLAR_ENTHALPY = "molar enthalpy"
+    HEAT_CAPACITY = "specific heat capacity"
 
 
 @dataclass(frozen=True, slots=True)
@@ -118,6 +120,14 @@ _UNITS: dict[Dimension, tuple[_Unit, ...]] = {
         _Unit("L/(mol min)", "liter/mole/minute", ("L/(mol min)", "L/mol/min", "M-1 min-1", "M⁻¹ min⁻¹")),
         _Unit("L/(mol h)", "liter/mole/hour", ("L/(mol h)", "L/mol/h", "M-1 h-1", "M⁻¹ h⁻¹")),
     ),
+    Dimension.MOLAR_ENTHALPY: (_Unit("kJ/mol", "kilojoule/mole", ("kJ/mol", "kJ mol-1", "kJ mol⁻¹")),),
+    Dimension.HEAT_CAPACITY: (
+        _Unit(
+            "J/(g K)",
+            "joule/gram/kelvin",
+            ("J/(g K)", "J/(g*K)", "J/(g·K)", "J/g/K", "J g-1 K-1", "kJ/(kg K)", "kJ/(kg*K)", "kJ/(kg·K)"),
+        ),
+    ),
 }
 _BY_SPELLING = {
     dimension: {spelling: unit for unit in units for spelling in unit.spellings} for dimension, units in _UNITS.items()
@@ -142,6 +152,7 @@ kelvin = [temperature]; offset: 0
 degC = kelvin; offset: 273.15
 liter = 1e-3 * meter ** 3
 pascal = kilogram / meter / second ** 2
+joule = kilogram * meter ** 2 / second ** 2
 bar = 1e5 * pascal
 atm = 101325 * pascal
 """
@@ -223,7 +234,8 @@ class Quantity:
     """A number with its unit, as typed and in the canonical unit of its dimension.
 
     number: the typed decimal, digits kept. unit: our symbol for the typed unit.
-    value: in the canonical unit of the dimension (g, mol, L, s, °C, mol/L, g/mL, bar, %, 1/s, L/(mol s)).
+    value: in the canonical unit of the dimension (g, mol, L, s, °C, mol/L, g/mL, bar, %, 1/s, L/(mol s), kJ/mol,
+    J/(g K)).
     """
 
     dimension: Dimension

@@ -35,7 +35,7 @@ Plain = str | int | Decimal | bool | None | list["Plain"] | dict[str, "Plain"]
 
 _TEXT_KEYS = frozenset(
     {"add", "atmosphere", "basis", "because", "by", "cause", "end_point", "evidence", "finding", "form", "name"}
-    | {"note", "notebook", "procedure", "scale_limit", "scope", "take_away", "title", "what", "work_up"}
+    | {"note", "notebook", "procedure", "scale_limit", "scope", "source", "take_away", "title", "what", "work_up"}
     | {"code", "contact", "group", "house_rules", "licence", "notice", "shown_as"}
     | {"banned_solvents", "instead", "required", "reviewers", "rule"}
 )

@@ -36,6 +36,7 @@ TEMPLATES = {
     "rules": "rules/",
     "rule-gate": "rules/sn2-closed-tertiary/",
     "rule-check": "rules/yield-above-100/",
+    "cautions": "cautions/",
     "how-to-add": "how-to-add/",
     "form": "how-to-add/form/",
     "how-to-cite": "how-to-cite/",

@@ -8,18 +8,14 @@ import pytest
 from chemicals import Carcinogen
 
 from builder.checks.case import Case, open_case
-from builder.checks.cautions import (
-    CAUTION_CHECKS,
-    Caution,
-    CautionKind,
-    Present,
-    Severity,
-    Whereabouts,
-    find_hazards,
-    load_cautions,
-    load_substance_kinds,
-    presents_of,
-)
+from builder.checks.hazards.cautions import Caution, CautionKind, Setting, Severity, load_cautions
+from builder.checks.hazards.formed import load_formations
+from builder.checks.hazards.kinds import load_substance_kinds
+from builder.checks.hazards.meetings import Present, Whereabouts, find_hazards
+from builder.checks.hazards.mutagens import load_mutagen_alerts
+from builder.checks.hazards.presents import presents_of
+from builder.checks.hazards.rules import HAZARD_CHECKS
+from builder.checks.hazards.screens import SCREEN_CHECKS
 from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import parse_smiles
 from builder.finding import Level
@@ -27,9 +23,10 @@ from builder.records.reader import read_bytes
 from builder.records.settings import Settings
 from builder.records.specimen import SPECIMEN_FILE, specimen_text, with_example
 from builder.rule import Fault, Rule
+from tests.specimens import findings_of
 
 GOOD = Path(__file__).parents[1] / "data" / "records" / "good"
-RULES = {check.id: check for check in CAUTION_CHECKS}
+RULES = {check.id: check for check in (*HAZARD_CHECKS, *SCREEN_CHECKS)}
 ROOM_TEMPERATURE_C = 20.0
 
 
@@ -45,18 +42,22 @@ def faults(rule_id: str, text: str) -> list[Fault]:
     return list(look(case_of(text)))
 
 
-def experiment(example: str) -> tuple[tuple[Present, ...], float]:
-    """Read an example of the table: SMILES, "lines of the work-up" and @temperature, joined by ++."""
+def experiment(example: str) -> tuple[tuple[Present, ...], Setting]:
+    """Read an example of the table: SMILES, "lines of the work-up" and what begins with @, joined by ++."""
     presents: list[Present] = []
-    hottest_c = ROOM_TEMPERATURE_C
+    hottest_c, is_closed, eliminates = ROOM_TEMPERATURE_C, False, False
     for index, part in enumerate(example.split(" ++ ")):
-        if part.startswith("@"):
+        if part == "@closed":
+            is_closed = True
+        elif part == "@eliminates":
+            eliminates = True
+        elif part.startswith("@"):
             hottest_c = float(part[1:])
         elif part.startswith('"'):
             presents.append(Present(("work_up", index), part.strip('"'), Whereabouts.WORK_UP))
         else:
             presents.append(Present(("reagents", index), part, Whereabouts.FLASK, parse_smiles(part)))
-    return tuple(presents), hottest_c
+    return tuple(presents), Setting(hottest_c, is_closed, eliminates)
 
 
 def ids_of(example: str) -> set[str]:
@@ -83,8 +84,10 @@ def test_row_reads_well(caution: Caution) -> None:
 
 
 def test_every_kind_of_substance_is_used() -> None:
-    used = {kind for caution in load_cautions() for kind in (caution.first, caution.second, caution.company)}
-    assert {kind.name for kind in used if kind} | {"basic amine"} == set(load_substance_kinds())
+    asked = {kind for caution in load_cautions() for kind in (caution.first, caution.second, caution.company)}
+    used = {kind.name for kind in asked if kind} | {alert.kind for alert in load_mutagen_alerts()}
+    used |= {kind for formation in load_formations() for kind in formation.of}
+    assert used | {"basic amine"} == set(load_substance_kinds())
 
 
 SODIUM_AZIDE = "[Na+].[N-]=[N+]=[N-]"
@@ -312,7 +315,7 @@ def test_organic_azides_are_graded_by_carbon_ratio(smiles: str, severity: Severi
     assert max(grades, key=lambda grade: grade.weight) is severity
 
 
-@pytest.mark.parametrize("check", CAUTION_CHECKS, ids=lambda check: check.id)
+@pytest.mark.parametrize("check", HAZARD_CHECKS, ids=lambda check: check.id)
 def test_rule_examples(check: Rule) -> None:
     for example in check.fires_on:
         assert faults(check.id, with_example(example)), example
@@ -361,7 +364,7 @@ def test_alkylating_agents_are_graded() -> None:
 def test_a_plain_alkylating_agent_counts_where_it_is_charged_and_not_as_product() -> None:
     bromide = parse_smiles("CCC(C)Br")
     for whereabouts, ids in [(Whereabouts.FLASK, ["alkylating-agent"]), (Whereabouts.PRODUCT, [])]:
-        hazards = find_hazards((Present(("x",), "2-bromobutane", whereabouts, bromide),), ROOM_TEMPERATURE_C)
+        hazards = find_hazards((Present(("x",), "2-bromobutane", whereabouts, bromide),), Setting(ROOM_TEMPERATURE_C))
         assert [hazard.caution.id for hazard in hazards] == ids
 
 
@@ -418,8 +421,25 @@ def test_substance_without_structure_is_judged_by_its_name() -> None:
     assert [fault.at for fault in faults("hazard-unreviewed", text)] == [("reagents", 0)]
 
 
+def test_a_mild_pair_that_shows_in_several_places_is_said_once() -> None:
+    acids = "reagents: [{name: acetic acid, smiles: CC(=O)O, use: acid, amount: 1 mmol}]"
+    nitrite = "nucleophile: {name: sodium nitrite, smiles: '[Na+].[O-]N=O', equivalents: 1.5}"
+    lines = "work_up: ['acidified with 2 mol/L hydrochloric acid', 'washed with dilute acid']"
+    found = faults("hazard-pair", with_example(f"{nitrite}\n{acids}\n{lines}"))
+    assert [fault.data["caution"] for fault in found].count("nitrite-acid") == 1
+
+
+def test_a_hazard_cannot_be_accepted_away() -> None:
+    accepted = "accepted: [{finding: hazard-out-of-scope, because: 'we know it', by: bench-1}]"
+    hydride = "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 12 mmol}]"
+    found = findings_of(with_example(f"{hydride}\n{accepted}").encode(), SPECIMEN_FILE)
+    assert {"hazard-out-of-scope", "acceptance-of-error"} <= {f.rule for f in found if f.level is Level.ERROR}
+
+
 def test_levels() -> None:
-    assert {check.id: check.level for check in CAUTION_CHECKS} == {
+    assert {check.id: check.level for check in HAZARD_CHECKS} == {
+        "hazard-out-of-scope": Level.ERROR,
+        "safety-scope-exceeded": Level.ERROR,
         "hazard-unreviewed": Level.ERROR,
         "hazard-pair": Level.CAUTION,
         "hazard-species": Level.CAUTION,
