@@ -3,9 +3,9 @@
 import pytest
 
 from builder.records.specimen import with_example
+from tests.blocking import BLOCKING, NO_REVIEW, Blocking, blocked, signed
 from tests.checks.test_cautions import faults
 
-NO_REVIEW = "# without safety_review\n"
 DCM = "solvent: [{name: dichloromethane, volume: 20 mL}]"
 HYDRIDE = "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 10 mmol}]"
 NITRITE = "reagents: [{name: sodium nitrite, smiles: '[Na+].[O-]N=O', use: additive, amount: 1 mmol}]"
@@ -14,34 +14,13 @@ CYANIDE = (
     "work_up: ['acidify with 2 mol/L HCl']"
 )
 ACID_QUENCH = "work_up: ['quench with 1 mol/L hydrochloric acid']"
-NITRITE_QUENCH = "work_up: ['azide destroyed with sodium nitrite, acid last']"
-
-BLOCKING = "hazard-unreviewed", "hazard-out-of-scope"
 
 
-def scope(text: str) -> str:
-    return f"safety_review: {{by: safety-1, date: 2026-03-12, scope: '{text}'}}\n"
-
-
-def blocked(text: str) -> set[str]:
-    return {str(fault.data["caution"]) for rule in BLOCKING for fault in faults(rule, with_example(text))}
-
-
-@pytest.mark.parametrize(
-    ("example", "caution"),
-    [
-        (DCM, "azide-dichloromethane"),
-        (HYDRIDE, "hydride-amide-solvent"),  # the specimen runs in DMF
-        (NITRITE, "nitrite-amide-solvent"),
-        (CYANIDE, "cyanide-acid"),
-        (ACID_QUENCH, "azide-acid"),
-        (NITRITE_QUENCH, "nitrite-amide-solvent"),
-        ("work_up: ['extract with 3 × 20 mL dichloromethane']", "azide-dichloromethane"),
-        ("work_up: ['transferred with a copper spatula']", "azide-heavy-metal"),
-    ],
-)
-def test_it_blocks_until_signed(example: str, caution: str) -> None:
-    assert caution in blocked(NO_REVIEW + example)
+@pytest.mark.parametrize("each", BLOCKING, ids=lambda each: each.done)
+def test_it_blocks_until_its_scope_is_signed(each: Blocking) -> None:
+    assert each.caution in blocked(NO_REVIEW + each.example)
+    assert each.caution in blocked(signed("lasers in hood 3") + each.example)
+    assert each.caution not in blocked(signed(each.scope) + each.example)
 
 
 @pytest.mark.parametrize(
@@ -60,11 +39,11 @@ def test_it_blocks_until_signed(example: str, caution: str) -> None:
     ],
 )
 def test_a_scope_covers_what_it_names(words: str, example: str, left: set[str]) -> None:
-    assert blocked(scope(words) + example) == left
+    assert blocked(signed(words) + example) == left
 
 
 def test_azide_does_not_cover_cyanide_and_the_message_says_what_the_scope_must_name() -> None:
-    found = faults("hazard-out-of-scope", with_example(scope("azide at 10 mmol") + CYANIDE))
+    found = faults("hazard-out-of-scope", with_example(signed("azide at 10 mmol") + CYANIDE))
     cyanide = next(fault for fault in found if fault.data["caution"] == "cyanide-acid")
     assert cyanide.message.endswith("the safety review names azide, not cyanide")
     assert "named in the scope of safety_review" in cyanide.mend
@@ -86,11 +65,11 @@ def test_azide_does_not_cover_cyanide_and_the_message_says_what_the_scope_must_n
     ],
 )
 def test_an_amount_in_the_scope_is_not_exceeded(words: str, held: str | None) -> None:
-    found = faults("safety-scope-exceeded", with_example(scope(words)))
+    found = faults("safety-scope-exceeded", with_example(signed(words)))
     assert [str(fault.data["held"]) for fault in found] == ([held] if held else [])
 
 
 def test_the_excess_names_both_amounts() -> None:
-    (fault,) = faults("safety-scope-exceeded", with_example(scope("azide at 5 mmol")))
+    (fault,) = faults("safety-scope-exceeded", with_example(signed("azide at 5 mmol")))
     assert fault.message == "sodium azide: 10 mmol, and the safety review covers 5 mmol"
     assert fault.at == ("nucleophile", 0)
