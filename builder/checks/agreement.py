@@ -238,7 +238,7 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
     """Every element of a product was charged, and there is carbon enough for it.
 
     Atoms are conserved: a chlorine in the product was in the flask. Hydrogen is not counted, air and moisture
-    are no reagents.
+    are no reagents. The counter-ion of a product may come of the work-up, where there is one.
     """
     if case.has_undrawn_species:
         return
@@ -247,7 +247,8 @@ def element_comes_from_nowhere(case: Case) -> Iterator[Fault]:
         for element, number in structure.elements.items():
             have[element] += MEET_IN_ONE_PRODUCT * number
     for path in product_paths(case):
-        extra = Counter(case.structures[path].elements) - have
+        product = case.structures[path] if case.record.work_up is None else case.structures[path].without_counter_ions
+        extra = Counter(product.elements) - have
         if extra:
             element = min(extra)
             absent = not have[element]

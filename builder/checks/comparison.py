@@ -27,6 +27,8 @@ __all__ = [
 
 NEAR_K = 10.0
 """Between the hottest stages: a rate doubles or trebles."""
+NEAR_K_UNDER_WAY = 3.0
+"""The same, where the colder run had not come to its end: the hotter one was simply further on."""
 NEAR_VOLUME_POINTS = 10.0
 """Of the solvent volume, for each solvent; one that is absent counts as 0, so that a little water is near-same."""
 NEAR_EQUIVALENTS = 1.25
@@ -137,8 +139,9 @@ def _said(variable: Variable, one: Standing, other: Standing) -> tuple[str, str]
 
 
 def telling_difference(one: Standing, other: Standing) -> Difference | None:
-    """Return what most likely makes the difference; None where nothing that matters does."""
-    return next((each for each in differences(one, other) if each.may_explain), None)
+    """Return what most likely makes the difference, else what differs at all; None where nothing that matters does."""
+    found = [each for each in differences(one, other) if each.variable not in _BYSTANDERS]
+    return next((each for each in found if each.may_explain), found[0] if found else None)
 
 
 def _within(factor: float, one: float | None, other: float | None) -> bool:
@@ -191,8 +194,17 @@ def _near_solvents(one: Standing, other: Standing) -> bool:
 
 def _near_time(one: Standing, other: Standing) -> bool:
     shorter = min((one, other), key=lambda each: each.time_s)
-    was_under_way = shorter.conversion is not None and shorter.conversion < COMPLETE_PERCENT
-    return _within(NEAR_TIME_UNDER_WAY if was_under_way else NEAR_TIME, one.time_s, other.time_s)
+    return _within(NEAR_TIME_UNDER_WAY if _was_under_way(shorter) else NEAR_TIME, one.time_s, other.time_s)
+
+
+def _near_temperature(one: Standing, other: Standing) -> bool:
+    colder = min((one, other), key=lambda each: each.temperature_c)
+    allowed = NEAR_K_UNDER_WAY if _was_under_way(colder) else NEAR_K
+    return abs(one.temperature_c - other.temperature_c) <= allowed + _ROUNDING
+
+
+def _was_under_way(each: Standing) -> bool:
+    return each.conversion is not None and each.conversion < COMPLETE_PERCENT
 
 
 _NEAR: Mapping[Variable, Callable[[Standing, Standing], bool]] = {
@@ -205,7 +217,7 @@ _NEAR: Mapping[Variable, Callable[[Standing, Standing], bool]] = {
         else a.words[Variable.NUCLEOPHILE] == b.words[Variable.NUCLEOPHILE]
     ),
     Variable.EQUIVALENTS: _near_equivalents,
-    Variable.TEMPERATURE: lambda a, b: abs(a.temperature_c - b.temperature_c) <= NEAR_K + _ROUNDING,
+    Variable.TEMPERATURE: _near_temperature,
     Variable.CONCENTRATION: lambda a, b: _within(NEAR_CONCENTRATION, a.concentration, b.concentration),
     Variable.TIME: _near_time,
     Variable.SCALE: lambda a, b: _within(NEAR_SCALE, a.scale, b.scale),
