@@ -194,8 +194,9 @@ def outcomes_contradict(book: Gathering) -> Found:
     The reaction is the same where substrate with its kind of stereo, nucleophile (or base), leaving group and desired
     products are. Stages are near-same where the hottest ones are within 10 K (3 K where the colder run stopped below
     95 % conversion), each solvent within 10 points of the volume, the equivalents of what attacks within a factor of
-    1.25, the concentration within 2, the time within 3 (1.5 where the shorter run stopped below 95 %). Base, reagents, order of addition and all the rest are not
-    asked: they are what may explain it, and the pages of both entries list them side by side.
+    1.25, the concentration within 2, the time within 3 (1.5 where the shorter run stopped below 95 %). Base, reagents,
+    order of addition and all the rest are not asked: they are what may explain it, and the pages of both entries list
+    them side by side.
 
     Outcomes contradict where yields, conversions or shares are more than 10 points apart, or an ee more than 3; where
     both state a spread, where the spreads do not meet (5 points of yield and 1 of ee are always allowed). An isolated
