@@ -14,10 +14,11 @@ from builder.checks.group import person_codes
 from builder.checks.hazards.kinds import load_substance_kinds
 from builder.checks.hazards.meetings import Whereabouts
 from builder.checks.hazards.presents import presents_of
+from builder.checks.hazards.words import is_denied
 from builder.checks.house import House
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
-from builder.mechanism.solvents import Solvent, find_solvent, load_solvents, nearest_solvents
+from builder.mechanism.solvents import Solvent, find_solvent, load_solvents, nearest_solvents, solvent_of
 from builder.records.house_rules import HouseRule, is_like
 from builder.records.model import Part, Record
 from builder.records.quantities import Dimension, Quantity
@@ -50,13 +51,14 @@ def _under(keys: str, example: str = "") -> str:
     ),
     silent_on=(
         _under(_DMF, _OTHER + "\nwork_up: [washed with brine without NMP]"),
+        _under(_DMF, _OTHER + "\nwork_up: [extracted with ethyl acetate rather than any DMF]"),
         _under(_LATER, "solvent: [{name: DMF, volume: 20 mL}]\nstages: [{temperature: 60 °C, time: 16 h}]"),
     ),
 )
 def solvent_is_banned(case: Case) -> Iterator[Fault]:
     """A solvent that the house has banned is not charged, under any of its names, nor used in the work-up.
 
-    Names in the work-up count unless they are denied, as in "without DMF".
+    Names in the work-up count unless they are denied, as in "without DMF" or "avoid any DMF".
     """
     for each in _in_force(case, "banned_solvents"):
         banned = {known.name for name in each.banned_solvents or () if (known := find_solvent(name))}
@@ -340,18 +342,16 @@ def _fault(each: HouseRule, at: Path, found: str, mend: str) -> Fault:
 def _solvents(case: Case) -> Iterator[tuple[Path, str, str]]:
     """Yield every use of a known solvent: path, name as typed, name in the table."""
     for path, _, substance in charged_rows(case.record):
-        structure = case.structures.get(path)
-        known = find_solvent(substance.name, structure.smiles if structure else None)
+        known = solvent_of(substance.name, case.structures.get(path))
         if known is not None:
             yield (*path, "name"), substance.name, known.name
     for index, line in enumerate(case.record.work_up or ()):
         for match in _solvent_names().finditer(line):
             known = find_solvent(match["name"])
-            if known is not None and not _DENIED.search(line[: match.start()]):
+            if known is not None and not is_denied(line, match.start()):
                 yield ("work_up", index), match["name"], known.name
 
 
-_DENIED = re.compile(r"\b(?:no|not|without|free of|free from|instead of)\s+$", re.IGNORECASE)
 _AMBIGUOUS = frozenset({"ether", "glycol"})
 """Names of one solvent that stand in the names of many other substances."""
 
