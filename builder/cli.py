@@ -186,7 +186,7 @@ def check(
             click.echo(f"{finding.place}: mended {finding.rule}: {finding.message}")
         if visible:
             click.echo(render_text(visible, book))
-        click.echo(summary(shown, records))
+        click.echo(summary(shown, records, were_mended=fix))
     _end(shown, Level(fail_on))
 
 

@@ -64,7 +64,8 @@ def solvent_is_banned(case: Case) -> Iterator[Fault]:
         banned = {known.name for name in each.banned_solvents or () if (known := find_solvent(name))}
         for path, name, solvent in _solvents(case):
             if solvent in banned:
-                yield _fault(each, path, f"{name} is used", each.instead or "use another solvent")
+                instead = f"the house says: {each.instead}" if each.instead else "use another solvent"
+                yield _fault(each, path, f"{name} is used", instead)
 
 
 @rule(
@@ -93,7 +94,7 @@ def scale_is_exceeded(case: Case) -> Iterator[Fault]:
                     each,
                     path,
                     f"{_in_unit_of(each.at_most, found)} of {name}",
-                    each.instead or f"run it at {each.at_most} or below",
+                    each.instead or f"next time run it at {each.at_most} or below; accept this with what was agreed",
                 )
 
 
@@ -140,6 +141,8 @@ def key_is_missing(case: Case) -> Iterator[Fault]:
     """
     for each in _in_force(case, "required"):
         for keys in each.required or ():
+            if keys not in key_paths(Record):
+                continue  # house-rule-unclear tells
             for path in _lacking(case.record, keys.split("."), ()):
                 yield _fault(each, path, f"{keys} is not stated", f"add {path[-1]}: …")
 
