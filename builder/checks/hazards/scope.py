@@ -3,11 +3,12 @@
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from builder.checks.case import Case, compounds_of
+from builder.checks.case import Case
 from builder.checks.hazards.cautions import Severity
 from builder.checks.hazards.kinds import load_substance_kinds
 from builder.checks.hazards.meetings import Hazard, Present, Whereabouts
-from builder.checks.hazards.scope_amounts import Bound, bounds_of
+from builder.checks.hazards.presents import presents_of
+from builder.checks.hazards.scope_amounts import Bound, Charge, bounds_of
 from builder.checks.hazards.words import read_scope
 from builder.mechanism.amounts import AmountRow, Role
 
@@ -15,6 +16,8 @@ __all__ = ["Excess", "excesses", "is_covered", "is_mass_reviewed", "scope_lacks"
 
 TOLERANCE = 1.05
 """A record may exceed an amount of its scope by the rounding of either; common practice, no source."""
+
+_SUBSTANCES = frozenset({Whereabouts.FLASK, Whereabouts.PRODUCT})
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,8 +54,7 @@ def scope_lacks(scope: str, hazard: Hazard) -> str:
 def _firsts(hazard: Hazard) -> Iterator[Present]:
     """Yield the substances that the first kind of the caution stands for."""
     for present in (hazard.at, *hazard.others):
-        is_substance = present.whereabouts in {Whereabouts.FLASK, Whereabouts.PRODUCT}
-        if is_substance and hazard.caution.first.name in present.kinds:
+        if present.whereabouts in _SUBSTANCES and hazard.caution.first.name in present.kinds:
             yield present
 
 
@@ -99,7 +101,15 @@ def _bounds(case: Case) -> tuple[Bound, ...]:
     review = case.record.safety_review
     if review is None:
         return ()
-    return bounds_of(review.scope, frozenset(each.name.casefold() for _, each in compounds_of(case.record)))
+    presents = [present for present in presents_of(case) if present.whereabouts in _SUBSTANCES]
+    solvents = [present for present in presents if present.path[0] == "solvent"]
+    others = [present for present in presents if present.path[0] != "solvent"]
+    return bounds_of(review.scope, Charge(*_kinds_and_names(others), *_kinds_and_names(solvents)))
+
+
+def _kinds_and_names(presents: list[Present]) -> tuple[frozenset[str], frozenset[str]]:
+    kinds = frozenset().union(*(present.kinds for present in presents))
+    return kinds, frozenset(present.name.casefold() for present in presents)
 
 
 def _bounds_on(bounds: tuple[Bound, ...], present: Present) -> list[Bound]:

@@ -2,7 +2,8 @@
 
 An amount speaks of what is named right behind it ("5 mmol of azide"), else of the nearest thing named before it, across
 commas and brackets; names joined by "and", "or" or "with" share one. A name speaks of one amount of each unit, so that
-"azide at 5 mmol, hydrogen up to 20 mmol" never lifts azide to 20 mmol. A medium ("in DMF") is spoken of by none.
+"azide at 5 mmol, hydrogen up to 20 mmol" never lifts azide to 20 mmol. None speaks of a medium ("in DMF", or a
+solvent of the record).
 """
 
 import re
@@ -13,24 +14,28 @@ from itertools import pairwise
 
 from builder.checks.hazards.words import Mention, is_denied, read_scope
 
-__all__ = ["Bound", "bounds_of"]
+__all__ = ["Bound", "Charge", "bounds_of"]
 
 _SPELLINGS = {
-    "mol": {"kmol": 1e3, "mol": 1.0, "mmol": 1e-3, "µmol": 1e-6, "umol": 1e-6},
-    "g": {"kg": 1e3, "g": 1.0, "mg": 1e-3, "µg": 1e-6, "ug": 1e-6},
-    "L": {"L": 1.0, "l": 1.0, "mL": 1e-3, "ml": 1e-3, "µL": 1e-6, "µl": 1e-6, "uL": 1e-6, "ul": 1e-6},
+    "mol": {"kmol": 1e3, "mol": 1.0, "mole": 1.0, "mmol": 1e-3, "millimol": 1e-3, "millimole": 1e-3}
+    | {"µmol": 1e-6, "umol": 1e-6},
+    "g": {"kg": 1e3, "kilogram": 1e3, "g": 1.0, "gram": 1.0, "mg": 1e-3, "milligram": 1e-3, "µg": 1e-6, "ug": 1e-6},
+    "L": {"l": 1.0, "litre": 1.0, "liter": 1.0, "ml": 1e-3, "µl": 1e-6, "ul": 1e-6},
 }
 _UNITS = {spelling: (factor, unit) for unit, spellings in _SPELLINGS.items() for spelling, factor in spellings.items()}
 _AMOUNT = re.compile(
     r"(?<![\d.])(?<!\d,)"
     r"(?P<number>(?:\d{1,3}(?:[ \u00a0\u2009\u202f]\d{3})+|\d+)(?:[.,]\d+)?(?:[eE][-+]?\d+)?)"
-    rf"\s*(?P<unit>{'|'.join(sorted(_UNITS, key=len, reverse=True))})\b"
+    rf"\s*(?P<unit>{'|'.join(sorted(_UNITS, key=len, reverse=True))})s?\b"
     r"(?!\s*(?:[/·*%]|-%|per (?:[mµu]?[Ll]|lit(?:re|er)|[kmµ]?g|m?mol|min|h|hour|minute)\b"
-    r"|(?:[mµu]?[Ll]|g|mol|min|h)\s?(?:\^?-1|⁻¹)))"
+    r"|(?:[mµu]?[Ll]|g|mol|min|h)\s?(?:\^?-1|⁻¹)))",
+    re.IGNORECASE,
 )
 """A number with a unit, in English or with a decimal comma; no concentration, rate, ratio or percentage of moles."""
 _AT = re.compile(r"\s*(?:at|up to|at most|max\.?|not over|below|under|about|ca\.?|[:=≤<~])?\s*")
-_OF = re.compile(r"\s+(?:each\s+)?(?:of\s+)?(?:(?:an?|the|any|dry|solid|pure|neat|crude|fresh|total)\s+)*")
+_OF = re.compile(
+    r"\s+(?:each\s+)?(?:of\s+)?(?:(?:an?|the|any|dry|solid|liquid|gaseous|aqueous|pure|neat|crude|fresh|total)\s+)*"
+)
 _RANGE = re.compile(r"\s*(?:to|or|[-–])\s*")
 _JOINT = re.compile(r"\s*(?:,?\s*(?:and|or|with|plus)\b|[/&+])\s*(?:(?:an?|the|any)\s+)?")
 _LIST = re.compile(r"\s*,\s*")
@@ -69,16 +74,31 @@ class _Subject:
     names: frozenset[str]
 
 
+@dataclass(frozen=True, slots=True)
+class Charge:
+    """What a record has: the kinds of its solvents and of all else, and the names of both, folded."""
+
+    kinds: frozenset[str]
+    names: frozenset[str]
+    solvent_kinds: frozenset[str] = frozenset()
+    solvent_names: frozenset[str] = frozenset()
+
+    def is_solvent(self, kinds: frozenset[str], names: frozenset[str]) -> bool:
+        """Answer whether kinds and names are those of a solvent and of nothing else that is here."""
+        is_other = kinds & self.kinds or names & self.names
+        return not is_other and bool(kinds & self.solvent_kinds or names & self.solvent_names)
+
+
 @lru_cache(maxsize=256)
-def bounds_of(scope: str, names: frozenset[str]) -> tuple[Bound, ...]:
-    """Return the amounts of a scope in their order; names: those of the substances in the record, folded."""
+def bounds_of(scope: str, charge: Charge) -> tuple[Bound, ...]:
+    """Return the amounts of a scope in their order, as they are to be read of what a record has."""
     scope = scope.replace("\u03bc", "µ")  # the Greek letter, which many keyboards give
-    subjects = _subjects(scope, names)
+    subjects = _subjects(scope, charge)
     bounds: list[Bound] = []
     spoken: set[tuple[_Subject, str]] = set()
     last: tuple[int, str, _Subject | None] = (0, "", None)
     for match in _AMOUNT.finditer(scope):
-        factor, unit = _UNITS[match["unit"]]
+        factor, unit = _UNITS[match["unit"].lower()]
         if unit == "L" and (_IN.search(scope[: match.start()]) or _SOLUTION.match(scope, match.end())):
             continue
         subject = _spoken_of(scope, match, subjects, {each for each, of in spoken if of == unit})
@@ -103,9 +123,10 @@ def _spoken_of(
     return next((each for each in behind if _OF.fullmatch(scope[match.end() : each.start])), nearest)
 
 
-def _subjects(scope: str, names: frozenset[str]) -> tuple[_Subject, ...]:
+def _subjects(scope: str, charge: Charge) -> tuple[_Subject, ...]:
     """Return what a scope names, but for media, in its order; joined names together."""
-    found = list(_without_media(scope, _named(scope, names)))
+    named = _named(scope, charge.names | charge.solvent_names)
+    found = [each for each in _without_media(scope, named) if not charge.is_solvent(each.kinds, each.names)]
     gaps = [scope[one.end : other.start] for one, other in pairwise(found)]
     groups: list[list[_Subject]] = []
     for index, each in enumerate(found):

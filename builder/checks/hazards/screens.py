@@ -53,7 +53,7 @@ safety_review: {{by: safety-1, date: 2026-03-12, scope: '{scope}'}}
     source="azide-guideline",
     fires_on=(
         _TWO_AZIDOBUTANE.format(amount="72.98 mmol", kind="isolated", scope="azide at 100 mmol"),
-        _TWO_AZIDOBUTANE.format(amount="72.98 mmol", kind="isolated", scope="azide at 100 mmol, azide up to 6 g"),
+        _TWO_AZIDOBUTANE.format(amount="72.98 mmol", kind="isolated", scope="azide at 100 mmol, azide up to 5.5 g"),
     ),
     silent_on=(
         _TWO_AZIDOBUTANE.format(amount="50 mmol", kind="isolated", scope="azide at 50 mmol"),
