@@ -5,12 +5,12 @@ from collections.abc import Iterator
 
 from builder.checks.case import Case
 from builder.checks.derivation import is_desired, product_paths, routes_by_product
-from builder.checks.slips import moles_text
 from builder.chemistry.fragments import Fragment
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
 from builder.mechanism.gas import Present, present_in
 from builder.mechanism.stoichiometry import proton_capacity, staying_elements, supply_of
+from builder.records.figures import amount_text
 from builder.records.model import Charged, Measurement
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Mechanism, Result, YieldKind
@@ -81,7 +81,7 @@ def yield_is_above_the_reagent(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=(*path, "yield"),
                 message=f"{line.yield_} of {'+'.join(line.of or ())}, but at most {allowed:.3g} % can come of"
-                f" {moles_text(charged)} of {names} and {_substrate_text(case)}",
+                f" {amount_text(charged)} of {names} and {_substrate_text(case)}",
                 mend="the amounts are believed: correct the yield, an amount, or list what else took part",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -116,7 +116,7 @@ def reagent_is_below_one(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=_place_of(case, Role.NUCLEOPHILE, Role.BASE),
                 message=f"at most {allowed:.3g} % of {case.structures[path].formula} can come of"
-                f" {moles_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
+                f" {amount_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
                 mend="correct an amount, or accept this: the substrate is in excess by design",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -155,8 +155,8 @@ def base_is_below_one(case: Case) -> Iterator[Fault]:
     if _SUBSTITUTES & set(case.record.outcome.result) and protons < (SHORT_BELOW - _rounding(case)) * set_free:
         yield Fault(
             at=_place_of(case, Role.BASE),
-            message=f"{moles_text(protons)} of protons can be taken by {names}, while"
-            f" {' and '.join(row.name for row in acidic)} sets {moles_text(set_free)} free",
+            message=f"{amount_text(protons)} of protons can be taken by {names}, while"
+            f" {' and '.join(row.name for row in acidic)} sets {amount_text(set_free)} free",
             mend="correct the amount of base, or accept this with what takes the acid",
             data={"protons_mol": round(protons, 6)},
         )
@@ -299,7 +299,7 @@ def _charged(case: Case) -> tuple[Present, ...]:
 
 def _substrate_text(case: Case) -> str:
     row = case.amounts.substrate
-    return f"{moles_text(row.amount_mol or 0.0)} of {row.name}"
+    return f"{amount_text(row.amount_mol or 0.0)} of {row.name}"
 
 
 def _rounding(case: Case) -> float:

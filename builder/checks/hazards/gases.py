@@ -15,6 +15,7 @@ from builder.chemistry.structure import Structure, parse_smiles
 from builder.finding import Level
 from builder.mechanism import gas
 from builder.mechanism.gas import Gas, GasFormed, gas_volume_l, gases_from, gases_of_record, present_in
+from builder.records.figures import amount_text, volume_text
 from builder.rule import Path
 
 __all__ = ["GasEvolved", "GasOutlet", "gases_evolved", "load_gas_outlets"]
@@ -71,8 +72,7 @@ class GasEvolved:
         if self.moles is None:
             return "amount unknown"
         volume = gas_volume_l(self.moles)
-        amount = f"{self.moles * 1e3:.3g} mmol" if self.moles < 1.0 else f"{self.moles:.3g} mol"
-        return f"at most {amount}, {volume:.2g} L at 25 °C and 1 atm"
+        return f"at most {amount_text(self.moles)}, {volume_text(volume)} at 25 °C and 1 atm"
 
 
 @cache
