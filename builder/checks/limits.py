@@ -8,7 +8,7 @@ from builder.checks.derivation import is_desired, product_paths, routes_by_produ
 from builder.chemistry.fragments import Fragment
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
-from builder.mechanism.gas import Present, present_in
+from builder.mechanism.gas import InFlask, present_in
 from builder.mechanism.stoichiometry import proton_capacity, staying_elements, supply_of
 from builder.records.figures import amount_text
 from builder.records.model import Charged, Measurement
@@ -225,11 +225,10 @@ _Bound = tuple[float, str, float]
 
 def _bounded_lines(case: Case) -> Iterator[tuple[Path, Measurement, _Bound | None]]:
     """Yield the measured yields of desired products, by weight or against a standard, each with what bounds it."""
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
     for index, line in enumerate(case.record.outcome.measured):
         if line.yield_ is None or line.kind is YieldKind.AREA or line.of is None:
             continue
-        paths: list[Path] = [("outcome", "products", positions[label]) for label in line.of if label in positions]
+        paths = case.product_paths(line.of)
         if paths and all(path in case.structures and is_desired(case, path) for path in paths):
             bounds = [_bound(case, path) for path in paths]
             known = {bound[1]: bound for bound in bounds if bound is not None}  # by what sets it
@@ -292,7 +291,7 @@ def _protons(case: Case) -> _Bound | None:
     return (protons, " and ".join(names), charged) if names else None
 
 
-def _charged(case: Case) -> tuple[Present, ...]:
+def _charged(case: Case) -> tuple[InFlask, ...]:
     """Return all that was charged, the substrate first; solvents that are not drawn by the table."""
     return present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
 
