@@ -72,7 +72,7 @@ SECTIONS = (
         "safety",
         "Safety review",
         ("safety_review",),
-        "Azides, cyanides, hydrides, peroxides and their like may need one: the build asks for it where a hazard is grave.",
+        "Azides, cyanides, hydrides, peroxides and their like may need one: the build asks where a hazard is grave.",
     ),
     Section(
         "rest",
