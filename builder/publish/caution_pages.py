@@ -46,12 +46,13 @@ class CautionView:
 
 @dataclass(frozen=True, slots=True)
 class LimitTable:
-    """One table of limits: caption, headings, and rows of text."""
+    """One table of limits: caption, headings, rows of text; source: where all rows are from, stated once."""
 
     title: str
     caption: str
     columns: tuple[str, ...]
     rows: tuple[tuple[str, ...], ...]
+    source: str
 
 
 def caution_page(book: Book[Portrait]) -> Page:
@@ -113,65 +114,69 @@ def _range(low: float, below: float) -> str:
     return f"{low:g} and more" if math.isinf(below) else f"{low:g} to below {below:g}"
 
 
+def _table(title: str, caption: str, columns: Sequence[str], rows: Mapping[tuple[str, ...], str]) -> LimitTable:
+    """Return a table of rows by their source, which becomes a column of its own where it is not the same for all."""
+    sources = tuple(dict.fromkeys(rows.values()))
+    if len(sources) == 1:
+        return LimitTable(title, caption, tuple(columns), tuple(rows), sources[0])
+    return LimitTable(title, caption, (*columns, "Source"), tuple((*row, rows[row]) for row in rows), "")
+
+
 def _limits() -> Sequence[LimitTable]:
     return (
-        LimitTable(
+        _table(
             "Organic azides",
             "How much may be isolated, by (C + O)/N",
-            ("(C + O)/N", "Isolated", "Source"),
-            tuple(
+            ("(C + O)/N", "Isolated"),
+            {
                 (
                     _range(row.ratio_from, row.ratio_below),
                     row.words,
-                    f"{source_text(row.source)}, {row.revision}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, {row.revision}, read {row.read}"
                 for row in load_azide_limits()
-            ),
+            },
         ),
-        LimitTable(
+        _table(
             "Mutagenic impurities",
             "Acceptable intake in µg a day; drug substances only, not for the cohort of concern; the local quality unit"
             " decides",
-            ("Treatment", "One impurity", "All together", "Source"),
-            tuple(
+            ("Treatment", "One impurity", "All together"),
+            {
                 (
                     row.treatment,
                     f"{row.one:g} µg a day",
                     f"{row.several:g} µg a day",
-                    f"{source_text(row.source)}, {row.revision}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, {row.revision}, read {row.read}"
                 for row in load_intake_limits()
-            ),
+            },
         ),
-        LimitTable(
+        _table(
             "Restricted solvents",
             "Exposure of workers that may not be exceeded (DNEL)",
-            ("Solvent", "Where", "In air", "On the skin", "From", "Source"),
-            tuple(
+            ("Solvent", "In air", "On the skin", "Where", "From"),
+            {
                 (
                     row.name,
-                    f"{row.jurisdiction}, entry {row.entry}",
                     f"{row.inhalation} mg/m³",
                     f"{row.dermal} mg/kg a day",
+                    f"{row.jurisdiction}, entry {row.entry}",
                     row.since,
-                    f"{source_text(row.source)}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, read {row.read}"
                 for row in load_restrictions().values()
-            ),
+            },
         ),
-        LimitTable(
+        _table(
             "Residual solvents",
             "Limits in a drug substance at a dose of 10 g a day",
-            ("Solvent", "Class", "At most", "PDE", "Source"),
-            tuple(
+            ("Solvent", "Class", "At most", "PDE"),
+            {
                 (
                     row.name,
                     str(row.solvent_class),
                     f"{row.most_ppm:g} ppm",
                     f"{row.pde_mg:g} mg a day",
-                    f"{source_text(row.source)}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, read {row.read}"
                 for row in load_residual_limits().values()
-            ),
+            },
         ),
     )
