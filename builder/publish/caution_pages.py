@@ -46,13 +46,13 @@ class CautionView:
 
 @dataclass(frozen=True, slots=True)
 class LimitTable:
-    """One table of limits: caption, headings, rows of text; source: where all rows are from, stated once."""
+    """One table of limits: caption, headings, rows of text; sources: of all rows, or numbered for a last column."""
 
     title: str
     caption: str
     columns: tuple[str, ...]
     rows: tuple[tuple[str, ...], ...]
-    source: str
+    sources: tuple[str, ...]
 
 
 def caution_page(book: Book[Portrait]) -> Page:
@@ -115,11 +115,12 @@ def _range(low: float, below: float) -> str:
 
 
 def _table(title: str, caption: str, columns: Sequence[str], rows: Mapping[tuple[str, ...], str]) -> LimitTable:
-    """Return a table of rows by their source, which becomes a column of its own where it is not the same for all."""
+    """Return a table from rows and the source of each; each source is stated once, with a number if there are more."""
     sources = tuple(dict.fromkeys(rows.values()))
     if len(sources) == 1:
-        return LimitTable(title, caption, tuple(columns), tuple(rows), sources[0])
-    return LimitTable(title, caption, (*columns, "Source"), tuple((*row, rows[row]) for row in rows), "")
+        return LimitTable(title, caption, tuple(columns), tuple(rows), sources)
+    numbered = tuple((*row, str(sources.index(source) + 1)) for row, source in rows.items())
+    return LimitTable(title, caption, (*columns, "Source"), numbered, sources)
 
 
 def _limits() -> Sequence[LimitTable]:
@@ -168,13 +169,13 @@ def _limits() -> Sequence[LimitTable]:
         _table(
             "Residual solvents",
             "Limits in a drug substance at a dose of 10 g a day",
-            ("Solvent", "Class", "At most", "PDE"),
+            ("Solvent", "Class", "At most, ppm", "PDE, mg a day"),
             {
                 (
                     row.name,
                     str(row.solvent_class),
-                    f"{row.most_ppm:g} ppm",
-                    f"{row.pde_mg:g} mg a day",
+                    f"{row.most_ppm:g}",
+                    f"{row.pde_mg:g}",
                 ): f"{source_text(row.source)}, read {row.read}"
                 for row in load_residual_limits().values()
             },
