@@ -5,13 +5,14 @@ bleach of a scrubber), nor a warning in brackets ("kept basic (hydrogen sulfide 
 """
 
 import re
+import unicodedata
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from functools import cache, lru_cache
 
 from builder.checks.hazards.kinds import SubstanceKind, load_substance_kinds
 
-__all__ = ["Named", "ScopeWords", "kinds_named_in", "read_scope"]
+__all__ = ["Named", "ScopeWords", "kinds_named_in", "plain", "read_scope"]
 
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|below|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
 _DENIAL = re.compile(
@@ -21,6 +22,8 @@ _STOP = re.compile(r",(?!\s(?:and )?then (?!\w*(?:ed|ify)\b))|[;:()]|\.\s")
 """What ends a clause; ", then bleach" goes on with the same vessel, ", then acidified" does not."""
 _CLAUSE_END = re.compile(rf"{_STOP.pattern}|\bbut\b|\bthen\b")
 _THOUGHT = re.compile(r"\bwould\b")  # "acid would set it free"
+_NEUTRALISED = "neutrali"  # begins the words that name an acid only where nothing says what it is done with
+_BY_WHAT = re.compile(r"\b(?:with|by|using)\s(?!care\b|stirring\b|ice\b|(?:\w+\s)?cooling\b)", re.IGNORECASE)
 _REACH_OF_DENIAL = 4  # words: "never let it touch copper"
 _PARTING = re.compile(
     r"\b(?:apart|away) from(?:(?:\s[\w-]+){0,4}|(?:\s[\w-]+){1,3}(?:,(?:\s[\w-]+){1,3})+\s(?:and|or))\s$", re.IGNORECASE
@@ -52,7 +55,11 @@ class Named:
 
 @lru_cache(maxsize=512)
 def kinds_named_in(text: str) -> Named:
-    """Return the kinds a text names; "no acid", "acid-free" and "Lewis acid" name no acid."""
+    """Return the kinds a text names; "no acid", "acid-free" and "Lewis acid" name no acid.
+
+    Subscripts and superscripts count as the digits they are: CH₂Cl₂.
+    """
+    text = plain(text)
     here: set[str] = set()
     behind: set[str] = set()
     found = list(_names_in(text))
@@ -60,6 +67,8 @@ def kinds_named_in(text: str) -> Named:
         kinds = _vocabulary().kinds_by_word.get(name, frozenset()) - here
         if not kinds or _is_denied(text, start) or _is_warning(text, start):
             continue
+        if name.startswith(_NEUTRALISED) and _BY_WHAT.search(_clause_at(text, start)):
+            continue  # what it is done with is named itself, if it is an acid
         inside = [other for other, low, high in found if low <= start and end <= high]
         masked = frozenset().union(*(_vocabulary().kinds_masked.get(other, frozenset()) for other in inside))
         is_behind = _OTHER_VESSEL.search(_clause_at(text, start)) is not None
@@ -87,6 +96,7 @@ def read_scope(text: str) -> ScopeWords:
 
     Besides their words kinds are named by what reviewers call them: azide, hydride, alkylator.
     """
+    text = plain(text)
     vocabulary = _vocabulary()
     named: set[str] = set()
     excluded: set[str] = set()
@@ -104,6 +114,11 @@ def read_scope(text: str) -> ScopeWords:
     longest = [(a, b) for a, b in spans if not any(c <= a and b <= d and (a, b) != (c, d) for c, d in spans)]
     words = tuple(dict.fromkeys(text[start:end] for start, end in longest))
     return ScopeWords(frozenset(named), words, frozenset(excluded - named))
+
+
+def plain(text: str) -> str:
+    """Return a text in the letters and digits that names are written in: CH₂Cl₂ as CH2Cl2, a narrow space as space."""
+    return unicodedata.normalize("NFKC", text).replace("\u2010", "-")
 
 
 def _names_in(text: str) -> Iterator[tuple[str, int, int]]:
