@@ -4,8 +4,10 @@ import pytest
 from chemicals import Carcinogen
 
 from builder.checks.hazards.azides import azide_limit, load_azide_limits
+from builder.checks.hazards.cautions import load_cautions
 from builder.checks.hazards.formed import formed_by, load_formations
 from builder.checks.hazards.formulae import carbon_ratio, carbons_per_azide, oxygen_balance_percent
+from builder.checks.hazards.gases import load_gas_outlets
 from builder.checks.hazards.ghs import labelled, load_ghs, load_statements
 from builder.checks.hazards.meetings import find_hazards
 from builder.checks.hazards.mutagens import alert_of, load_intake_limits, ppm
@@ -195,6 +197,16 @@ def test_solvents_of_limits_are_those_of_the_solvent_table() -> None:
         ("CN(C)C=O", "H360D"),
         ("CCOCC", "EUH019"),
         ("O=S(Cl)Cl", "EUH029"),
+        # After a chemist's review (ATP 2020, 18th ATP, and suppliers' sheets; from memory).
+        ("C1CO1", "H360Fd"),
+        ("CC(C)CC(C)=O", "H351"),
+        ("O[N+](=O)[O-]", "H331"),
+        ("[K+].[C-]#N", "H372"),
+        ("[Na+].[BH4-]", "H360FD"),
+        ("C=CCBr", "H350"),
+        ("[Na+].[N-]=[N+]=[N-]", "H310"),
+        ("OC=O", "H331"),
+        ("C[N+](=O)[O-]", "H361"),
     ],
 )
 def test_statements_that_matter_most(smiles: str, code: str) -> None:
@@ -231,3 +243,11 @@ def test_a_scrubber_is_another_vessel(text: str, is_chlorine: bool) -> None:
     presents, setting = experiment(f'CC(=O)O ++ "{text}"')
     ids = {hazard.caution.id for hazard in find_hazards(presents, setting)}
     assert ("hypochlorite-acid" in ids) is is_chlorine
+
+
+def test_the_words_on_azide_destruction_put_nitrite_before_acid_and_keep_it_out_of_the_scrubber() -> None:
+    explosive = next(each for each in load_gas_outlets() if each.hazard == "explosive")
+    assert "scrubber" not in explosive.outlet
+    assert "afterwards with nitrite and acid" in explosive.outlet
+    precaution = next(each for each in load_cautions() if each.id == "azide-acid").precaution
+    assert precaution.index("nitrite first") < precaution.index("acid slowly")

@@ -11,7 +11,7 @@ from builder.table import NOTHING, rows_of, table_text
 
 __all__ = ["SubstanceKind", "hazard_table", "kinds_of", "load_substance_kinds"]
 
-_PH_RANGE = re.compile(r"pH (\d+)-(\d+)")
+_PH_RANGE = re.compile(r"pH (\d+(?:\.\d+)?)-(\d+(?:\.\d+)?)")
 _HYDROGEN_HALIDES = frozenset({"Cl", "Br", "I"})
 
 
@@ -41,7 +41,7 @@ def hazard_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]
 def load_substance_kinds() -> dict[str, SubstanceKind]:
     """Return the kinds of substance by name, in table order.
 
-    Raises ValueError for blanks, names given twice, bad SMARTS, and rows with neither SMARTS nor words.
+    Raises ValueError for blanks, names given twice, bad SMARTS, and rows with neither SMARTS nor words nor pH.
     """
     found: dict[str, SubstanceKind] = {}
     for row in hazard_table("substance_kinds.tsv", ("name", "smarts", "words", "note")):
@@ -56,8 +56,8 @@ def load_substance_kinds() -> dict[str, SubstanceKind]:
             ph_ranges=tuple((float(match[1]), float(match[2])) for match in ranges),
             note="" if row["note"] == NOTHING else row["note"],
         )
-        if kind.name in found or not (kind.fragments or kind.words):
-            raise ValueError(f"substance_kinds.tsv: {kind.name}: given twice, or without SMARTS and words")
+        if kind.name in found or not (kind.fragments or kind.words or kind.ph_ranges):
+            raise ValueError(f"substance_kinds.tsv: {kind.name}: given twice, or without SMARTS, words and pH")
         found[kind.name] = kind
     return found
 

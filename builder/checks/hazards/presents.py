@@ -18,12 +18,16 @@ __all__ = ["hazards_of", "presents_of"]
 def hazards_of(case: Case) -> tuple[Hazard, ...]:
     """Return the hazards of a record, in the order of the table of cautions."""
     stages = case.record.stages
+    forms_alkene = Result.ELIMINATION in case.record.outcome.result
+    presents = presents_of(case)
+    bases = [present for present in presents if present.path[0] == "base"]
     setting = Setting(
         hottest_c=max(stage.temperature.highest_c for stage in stages),
         is_closed=any(stage.vessel in CLOSED_VESSELS for stage in stages),
-        eliminates=Result.ELIMINATION in case.record.outcome.result and not case.record.bases,
+        eliminates=forms_alkene and not bases,
+        eliminates_weakly=forms_alkene and all("hydrogencarbonate" in base.kinds for base in bases),
     )
-    return find_hazards(presents_of(case), setting)
+    return find_hazards(presents, setting)
 
 
 def presents_of(case: Case) -> tuple[Present, ...]:

@@ -15,6 +15,12 @@ from builder.checks.hazards.kinds import SubstanceKind, load_substance_kinds
 __all__ = ["Named", "ScopeWords", "kinds_named_in", "plain", "read_scope"]
 
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|below|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
+_PH_FLOOR = re.compile(
+    r"(?:\bpH\s*(?:(?:is |kept |stays )?(?:above|over|at least|not below|never below)|>=|[≥>])"
+    r"|\b(?:not|never) below pH)\s*(\d+(?:\.\d+)?)"
+)
+_CEILING = re.compile(r"(?:\b(?:below|under|up to)|[<≤]=?)\s*(?:pH\s*)?$")
+_HIGHEST_PH = 14.0
 _DENIAL = re.compile(
     r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|instead of|rather than)\b", re.IGNORECASE
 )
@@ -75,9 +81,12 @@ def kinds_named_in(text: str) -> Named:
         here |= (kinds - masked) & (_WHEREVER if is_behind else kinds)
         behind |= (kinds - masked) - _WHEREVER if is_behind else frozenset()
     values = list(_stated_ph(text))
-    for kind in load_substance_kinds().values() if values else ():
-        if any(low <= value < high for low, high in kind.ph_ranges for value in values):
-            here.add(kind.name)
+    floors = [*(value for value, is_ceiling in values if not is_ceiling), *_least_ph(text)]
+    for kind in load_substance_kinds().values() if values or floors else ():
+        for low, high in kind.ph_ranges:
+            is_open = high > _HIGHEST_PH
+            if any(low <= value for value in floors) if is_open else any(low <= value < high for value, _ in values):
+                here.add(kind.name)
     return Named(frozenset(here), frozenset(behind))
 
 
@@ -205,8 +214,14 @@ def _clause_at(text: str, start: int) -> str:
     return text[begins : ends.start() if ends else len(text)]
 
 
-def _stated_ph(text: str) -> Iterator[float]:
-    """Yield the pH values a line names; one that must not be reached ("not below pH 5") is none."""
+def _stated_ph(text: str) -> Iterator[tuple[float, bool]]:
+    """Yield the pH values a line names, and whether each is a ceiling; one that must not be reached is none."""
     for match in _PH.finditer(text):
         if not _is_denied(text, match.start()):
-            yield float(match[1])
+            yield float(match[1]), _CEILING.search(text[: match.start(1)]) is not None
+
+
+def _least_ph(text: str) -> Iterator[float]:
+    """Yield the pH values below which a line says it does not go."""
+    for match in _PH_FLOOR.finditer(text):
+        yield float(match[1])
