@@ -150,8 +150,8 @@ def _meetings(
 
     What was charged counts first, then the work-up, every line of it for a `stop` and the first for others. A note
     counts only where nothing else shows the pair; two lines of text only for a `stop` of which nothing was charged.
-    Work-up: the second must be named there. Scrubber: the first goes over from the flask. Isolation: as work-up, and the
-    first may be obtained or only named.
+    Work-up: the second must be named there. Scrubber: the first goes over from the flask. Isolation: as work-up, and
+    the first may be obtained or only named.
     """
     if caution.kind in {CautionKind.WORK_UP, CautionKind.SCRUBBER}:
         places = _TEXT if caution.kind is CautionKind.SCRUBBER else {Whereabouts.WORK_UP}
