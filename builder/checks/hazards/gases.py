@@ -4,6 +4,7 @@ What the text of the work-up names (water, acid, hydrogencarbonate, nitrite) is 
 every volume is an upper bound.
 """
 
+import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cache
@@ -20,6 +21,7 @@ from builder.rule import Path
 __all__ = ["GasEvolved", "GasOutlet", "gases_evolved", "load_gas_outlets"]
 
 _EXCESS_MOL = 1e6
+_TAKEN_OFF = re.compile(r"\b(?:acid|solvent)\s(?:was\s)?(?:taken|distilled|stripped) off\b", re.IGNORECASE)
 _GIVES_GAS_WITH: Mapping[str, frozenset[str]] = {
     "acid": frozenset(
         {"carbonate", "azide salt", "cyanide source", "sulfide salt", "complex hydride", "silyl azide or cyanide"}
@@ -132,24 +134,26 @@ def _all_formed(case: Case, presents: Sequence[Present]) -> Iterator[tuple[GasFo
     """Yield each gas with the place it comes from: of the flask, and of each line of the work-up that adds something.
 
     A solvent does not count in the work-up, where most of it is gone by then and how much is not said, but for an acid,
-    which what it is washed with has to use up.
+    which what it is washed with has to use up; unless a line says that it was taken off.
     """
     for formed in gases_of_record(case.record, case.structures, case.amounts):
         yield formed, next(iter(formed.paths), ("stages",))
-    charged = [
-        each
-        for each in present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
-        if each.path[0] != "solvent" or "acid" in kinds_of(each.structure)
-    ]
+    charged = present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
+    lines = [each for each in presents if each.whereabouts is Whereabouts.WORK_UP]
+    taken_off = next((line.path for line in lines if _TAKEN_OFF.search(line.name)), None)
     kinds = frozenset().union(*(each.kinds for each in presents if each.whereabouts is Whereabouts.FLASK))
-    for line in presents:
-        if line.whereabouts is not Whereabouts.WORK_UP:
-            continue
+    for line in lines:
+        is_left = taken_off is None or line.path < taken_off
+        reacting = [each for each in charged if each.path[0] != "solvent" or (is_left and _is_acid(each))]
         named = sorted(kind for kind in line.kinds & _NAMED.keys() if kinds & _GIVES_GAS_WITH[kind])
         added = [gas.Present(line.path, _stand_in(kind), _EXCESS_MOL) for kind in named]
-        for formed in gases_from((*charged, *added)) if added else ():
+        for formed in gases_from((*reacting, *added)) if added else ():
             if line.path in formed.paths and (formed.moles is None or formed.moles < _EXCESS_MOL / 10):
                 yield formed, line.path
+
+
+def _is_acid(each: gas.Present) -> bool:
+    return "acid" in kinds_of(each.structure)
 
 
 @cache
