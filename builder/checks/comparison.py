@@ -5,7 +5,7 @@ The tolerances stand below; they are common practice and have no source. `outcom
 Everything here is symmetric: what holds of one entry against another holds the other way round.
 """
 
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import product
 
@@ -20,13 +20,17 @@ __all__ = [
     "are_near_same",
     "differences",
     "disagreements",
+    "disagreements_in",
     "is_near",
     "is_one_experiment",
+    "seen_by_quantity",
     "telling_difference",
 ]
 
 NEAR_K = 10.0
 """Between the hottest stages: a rate doubles or trebles."""
+NEAR_K_UNDER_WAY = 3.0
+"""The same, where the colder run had not come to its end: the hotter one was simply further on."""
 NEAR_VOLUME_POINTS = 10.0
 """Of the solvent volume, for each solvent; one that is absent counts as 0, so that a little water is near-same."""
 NEAR_EQUIVALENTS = 1.25
@@ -105,6 +109,8 @@ class Disagreement:
 
 def are_near_same(one: Standing, other: Standing) -> bool:
     """Say whether two entries ran the same reaction under near-same conditions, base and reagents apart."""
+    if abs(one.temperature_c - other.temperature_c) > NEAR_K + _ROUNDING:
+        return False  # the cheapest first: in a book of many runs of one reaction most pairs end here
     if not one.key or one.key != other.key or one.is_flow != other.is_flow:
         return False
     return all(is_near(each, one, other) for each in DECISIVE)
@@ -118,14 +124,13 @@ def is_near(variable: Variable, one: Standing, other: Standing) -> bool:
     return one.words[variable] == other.words[variable]
 
 
-def differences(one: Standing, other: Standing) -> tuple[Difference, ...]:
-    """Return what differs, the most telling first."""
-    found = (
-        Difference(variable, *_said(variable, one, other), is_near(variable, one, other))
-        for variable in Variable
-        if one.words[variable] != other.words[variable]
-    )
-    return tuple(each for each in found if each.here != each.there)
+def differences(one: Standing, other: Standing) -> Iterator[Difference]:
+    """Yield what differs, the most telling first."""
+    for variable in Variable:
+        if one.words[variable] != other.words[variable]:
+            here, there = _said(variable, one, other)
+            if here != there:
+                yield Difference(variable, here, there, is_near(variable, one, other))
 
 
 def _said(variable: Variable, one: Standing, other: Standing) -> tuple[str, str]:
@@ -137,8 +142,9 @@ def _said(variable: Variable, one: Standing, other: Standing) -> tuple[str, str]
 
 
 def telling_difference(one: Standing, other: Standing) -> Difference | None:
-    """Return what most likely makes the difference; None where nothing that matters does."""
-    return next((each for each in differences(one, other) if each.may_explain), None)
+    """Return what most likely makes the difference, else what differs at all; None where nothing that matters does."""
+    found = [each for each in differences(one, other) if each.variable not in _BYSTANDERS]
+    return next((each for each in found if each.may_explain), found[0] if found else None)
 
 
 def _within(factor: float, one: float | None, other: float | None) -> bool:
@@ -177,6 +183,8 @@ def _attackers(each: Standing) -> tuple[Charge, ...]:
 
 
 def _near_solvents(one: Standing, other: Standing) -> bool:
+    if one.solvents == other.solvents and one.volumes == other.volumes:
+        return True
     if one.volumes is None or other.volumes is None:
         return one.solvents == other.solvents
     mine = dict(zip(one.solvents, one.volumes, strict=True))
@@ -191,8 +199,17 @@ def _near_solvents(one: Standing, other: Standing) -> bool:
 
 def _near_time(one: Standing, other: Standing) -> bool:
     shorter = min((one, other), key=lambda each: each.time_s)
-    was_under_way = shorter.conversion is not None and shorter.conversion < COMPLETE_PERCENT
-    return _within(NEAR_TIME_UNDER_WAY if was_under_way else NEAR_TIME, one.time_s, other.time_s)
+    return _within(NEAR_TIME_UNDER_WAY if _was_under_way(shorter) else NEAR_TIME, one.time_s, other.time_s)
+
+
+def _near_temperature(one: Standing, other: Standing) -> bool:
+    colder = min((one, other), key=lambda each: each.temperature_c)
+    allowed = NEAR_K_UNDER_WAY if _was_under_way(colder) else NEAR_K
+    return abs(one.temperature_c - other.temperature_c) <= allowed + _ROUNDING
+
+
+def _was_under_way(each: Standing) -> bool:
+    return each.conversion is not None and each.conversion < COMPLETE_PERCENT
 
 
 _NEAR: Mapping[Variable, Callable[[Standing, Standing], bool]] = {
@@ -205,7 +222,7 @@ _NEAR: Mapping[Variable, Callable[[Standing, Standing], bool]] = {
         else a.words[Variable.NUCLEOPHILE] == b.words[Variable.NUCLEOPHILE]
     ),
     Variable.EQUIVALENTS: _near_equivalents,
-    Variable.TEMPERATURE: lambda a, b: abs(a.temperature_c - b.temperature_c) <= NEAR_K + _ROUNDING,
+    Variable.TEMPERATURE: _near_temperature,
     Variable.CONCENTRATION: lambda a, b: _within(NEAR_CONCENTRATION, a.concentration, b.concentration),
     Variable.TIME: _near_time,
     Variable.SCALE: lambda a, b: _within(NEAR_SCALE, a.scale, b.scale),
@@ -219,13 +236,21 @@ _BYSTANDERS = frozenset({Variable.RUNS, Variable.BY, Variable.DATE})
 # --- outcomes -----------------------------------------------------------------------------------------------
 
 
+SeenByQuantity = Mapping[str, Mapping[YieldKind | None, Seen]]
+"""What was seen in one entry, by quantity and kind."""
+
+
 def disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
     """Return the numbers of two outcomes that cannot both be the rule, the furthest apart first.
 
     Yields of one kind are compared where both have that kind, else across kinds. Sums over a formula are left out where
     a product disagrees by itself.
     """
-    mine, theirs = _by_quantity(one.seen), _by_quantity(other.seen)
+    return disagreements_in(seen_by_quantity(one), seen_by_quantity(other))
+
+
+def disagreements_in(mine: SeenByQuantity, theirs: SeenByQuantity) -> tuple[Disagreement, ...]:
+    """Return the same of what was seen, sorted out once for each entry that is held against many."""
     found = [_most_apart(mine[what], theirs[what]) for what in mine.keys() & theirs.keys()]
     kept = [each for each in found if each is not None]
     if any(each.here.what.startswith("yield") and not each.here.is_sum for each in kept):
@@ -233,10 +258,10 @@ def disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
     return tuple(sorted(kept, key=lambda each: (-each.weight, each.here.what)))
 
 
-def _by_quantity(seen: Iterable[Seen]) -> dict[str, dict[YieldKind | None, Seen]]:
+def seen_by_quantity(standing: Standing) -> SeenByQuantity:
     """Return what was seen by quantity and kind; several numbers for one are taken as the range they span."""
     found: dict[str, dict[YieldKind | None, Seen]] = {}
-    for each in seen:
+    for each in standing.seen:
         kinds = found.setdefault(each.what, {})
         known = kinds.get(each.kind)
         kinds[each.kind] = each if known is None else _spanned(known, each)

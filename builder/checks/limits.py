@@ -1,19 +1,20 @@
 """What the amounts charged allow: yields that no reagent or base covers, and an order of addition that matters."""
 
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 
 from builder.checks.case import Case
 from builder.checks.derivation import is_desired, product_paths, routes_by_product
-from builder.checks.slips import moles_text
 from builder.chemistry.fragments import Fragment
+from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
-from builder.mechanism.gas import Present, present_in
-from builder.mechanism.stoichiometry import proton_capacity, staying_elements, supply_of
+from builder.mechanism.gas import InFlask, present_in
+from builder.mechanism.stoichiometry import Supply, proton_capacity, staying_elements, supply_of
+from builder.records.figures import amount_text
 from builder.records.model import Charged, Measurement
 from builder.records.specimen import outcome_example
-from builder.records.vocabulary import Mechanism, Result, YieldKind
+from builder.records.vocabulary import Mechanism, ReagentUse, Result, YieldKind
 from builder.rule import Fault, Path, rule
 
 __all__ = ["LIMIT_CHECKS"]
@@ -22,6 +23,7 @@ POINTS = 2.0  # of the method that measured the yield; common practice, no sourc
 AT_LEAST_ONE = 1.02  # equivalents of nucleophile, at which the substrate still counts as one equivalent or more
 SHORT_BELOW = 0.98  # equivalents; honest weighing is within 2 %
 _SUBSTITUTES = {Result.SUBSTITUTION, Result.RING_OPENING}
+_HELPERS = {ReagentUse.BASE, ReagentUse.BUFFER, ReagentUse.CATALYST}
 _FROM_WATER = {"O"}  # an alcohol may come of moisture or of the work-up
 _AMINE = Fragment.from_smarts("[NX3;H1,H2,H3;+0;!$(N-[C,S,P]=[O,S,N]);!$(N-c);!$(N~[N,O])]")
 _STILL_ATTACKS = Fragment.from_smarts("[NX3;+0;!$(N-[C,S,P]=[O,S,N]);!$(N-c);!$(N~[N,O])]")
@@ -57,6 +59,10 @@ _OVER_ALKYLATION = (
     needs=(*_READS, "label-unknown", "quantities-disagree"),
     fires_on=(
         _AZIDE % "0.70" + outcome_example("{yield: 81 %, of: A, kind: assay}"),
+        _AZIDE % "0.60"
+        + "base: {name: triethylamine, smiles: 'CCN(CC)CC', equivalents: 2.0}\n"
+        + "stages: [{temperature: 60 °C, time: 16 h}]\n"
+        + outcome_example("{yield: 81 %, of: A, kind: assay}"),
         "base: {name: potassium tert-butoxide, smiles: '[K+].CC(C)(C)[O-]', equivalents: 0.60}\n# without nucleophile\n"
         "stages: [{temperature: 60 °C, time: 16 h}]\n"
         "outcome: {result: [elimination], claim: {mechanism: E2}, products: [{label: A, name: but-1-ene, smiles: C=CCC,"
@@ -69,7 +75,8 @@ def yield_is_above_the_reagent(case: Case) -> Iterator[Fault]:
 
     How many molecules of substrate and reagent one product holds is counted from the atoms: sulfide takes two alkyl
     groups, phosphorus tribromide gives three bromides, carbonate takes two protons. Everything charged that could
-    supply the atoms counts together; a solvent that is whole in the product has no end. An E2 or E1cB needs a proton
+    supply the atoms counts together, beside a nucleophile no base, catalyst or buffer; a solvent that is whole in the
+    product has no end. An E2 or E1cB needs a proton
     taken for each alkene.
     """
     for path, line, bound in _bounded_lines(case):
@@ -81,7 +88,7 @@ def yield_is_above_the_reagent(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=(*path, "yield"),
                 message=f"{line.yield_} of {'+'.join(line.of or ())}, but at most {allowed:.3g} % can come of"
-                f" {moles_text(charged)} of {names} and {_substrate_text(case)}",
+                f" {amount_text(charged)} of {names} and {_substrate_text(case)}",
                 mend="the amounts are believed: correct the yield, an amount, or list what else took part",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -116,7 +123,7 @@ def reagent_is_below_one(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=_place_of(case, Role.NUCLEOPHILE, Role.BASE),
                 message=f"at most {allowed:.3g} % of {case.structures[path].formula} can come of"
-                f" {moles_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
+                f" {amount_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
                 mend="correct an amount, or accept this: the substrate is in excess by design",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -155,8 +162,8 @@ def base_is_below_one(case: Case) -> Iterator[Fault]:
     if _SUBSTITUTES & set(case.record.outcome.result) and protons < (SHORT_BELOW - _rounding(case)) * set_free:
         yield Fault(
             at=_place_of(case, Role.BASE),
-            message=f"{moles_text(protons)} of protons can be taken by {names}, while"
-            f" {' and '.join(row.name for row in acidic)} sets {moles_text(set_free)} free",
+            message=f"{amount_text(protons)} of protons can be taken by {names}, while"
+            f" {' and '.join(row.name for row in acidic)} sets {amount_text(set_free)} free",
             mend="correct the amount of base, or accept this with what takes the acid",
             data={"protons_mol": round(protons, 6)},
         )
@@ -225,11 +232,10 @@ _Bound = tuple[float, str, float]
 
 def _bounded_lines(case: Case) -> Iterator[tuple[Path, Measurement, _Bound | None]]:
     """Yield the measured yields of desired products, by weight or against a standard, each with what bounds it."""
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
     for index, line in enumerate(case.record.outcome.measured):
         if line.yield_ is None or line.kind is YieldKind.AREA or line.of is None:
             continue
-        paths: list[Path] = [("outcome", "products", positions[label]) for label in line.of if label in positions]
+        paths = case.product_paths(line.of)
         if paths and all(path in case.structures and is_desired(case, path) for path in paths):
             bounds = [_bound(case, path) for path in paths]
             known = {bound[1]: bound for bound in bounds if bound is not None}  # by what sets it
@@ -251,18 +257,39 @@ def _bound(case: Case, path: Path) -> _Bound | None:
     gained = set(Counter(case.structures[path].elements) - Counter(staying))
     if gained <= _FROM_WATER:
         return None
-    supplied = [(each, supply_of(case.structures[path], staying, each.structure)) for each in _charged(case)[1:]]
+    supplied = _supplied(case, case.structures[path], staying)
     total, names, charged = 0.0, [], 0.0
     for each, supply in supplied:
-        is_solvent = each.path[0] == "solvent"
-        if supply is None or (is_solvent and supply.left_over):
-            continue
-        if each.moles is None or is_solvent:
+        if each.moles is None or each.path[0] == "solvent":
             return None
         total += 100.0 * each.moles * supply.per_molecule * supply.substrates / substrate
         names.append(case.amounts.at(each.path).name)
         charged += each.moles
     return (total, " and ".join(names), charged) if names else None
+
+
+def _supplied(case: Case, product: Structure, staying: Mapping[str, int]) -> list[tuple[InFlask, Supply]]:
+    """Return what could have given a product its atoms, each with how.
+
+    A solvent must be whole in the product. Beside a nucleophile that could, neither a base, catalyst or buffer counts
+    nor what would take several molecules for one of product: carbonate is no source of the oxygen of a phenyl ether.
+    """
+    found = [(each, supply_of(product, staying, each.structure)) for each in _charged(case)[1:]]
+    able = [(each, supply) for each, supply in found if supply and not (each.path[0] == "solvent" and supply.left_over)]
+    if not any(each.path[0] == "nucleophile" for each, _ in able):
+        return able
+    return [
+        (each, supply)
+        for each, supply in able
+        if each.path[0] in {"nucleophile", "solvent"}
+        or (supply.per_molecule >= 1.0 and not _only_helps(case, each.path))
+    ]
+
+
+def _only_helps(case: Case, path: Path) -> bool:
+    if path[0] != "reagents":
+        return path[0] == "base"
+    return case.record.reagents[int(path[1])].use in _HELPERS
 
 
 def _bound_by_base(case: Case, substrate_mol: float) -> _Bound | None:
@@ -292,14 +319,14 @@ def _protons(case: Case) -> _Bound | None:
     return (protons, " and ".join(names), charged) if names else None
 
 
-def _charged(case: Case) -> tuple[Present, ...]:
+def _charged(case: Case) -> tuple[InFlask, ...]:
     """Return all that was charged, the substrate first; solvents that are not drawn by the table."""
     return present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
 
 
 def _substrate_text(case: Case) -> str:
     row = case.amounts.substrate
-    return f"{moles_text(row.amount_mol or 0.0)} of {row.name}"
+    return f"{amount_text(row.amount_mol or 0.0)} of {row.name}"
 
 
 def _rounding(case: Case) -> float:

@@ -271,8 +271,8 @@ def test_pages_opened_from_a_folder_lead_on(desk: "sync_api.Page", site: Path) -
     desk.on("console", lambda message: said.append(message.text))
     desk.goto((site / "index.html").as_uri())
     desk.locator(".hb-row__title a").first.click()
+    sync_api.expect(desk.locator(".hb-card .hb-id")).to_be_visible()
     assert desk.url.endswith("/index.html")
-    assert desk.locator(".hb-card .hb-id").is_visible()
     assert said == []
 
 

@@ -44,6 +44,9 @@ NEAR_OR_NOT: list[tuple[str, dict[str, Any], bool]] = [
     ("nothing changed", {}, True),
     ("10 K hotter", {"temperature_c": 70.0}, True),
     ("10.5 K hotter", {"temperature_c": 70.5}, False),
+    ("3 K colder and under way", {"temperature_c": 57.0, "conversion": 80.0}, True),
+    ("5 K colder and under way", {"temperature_c": 55.0, "conversion": 80.0}, False),
+    ("5 K hotter and under way for all that", {"temperature_c": 65.0, "conversion": 80.0}, True),
     ("a factor 3 longer", {"time_s": 48 * H}, True),
     ("more than a factor 3 longer", {"time_s": 49 * H}, False),
     ("shorter and complete", {"time_s": 8 * H}, True),
@@ -79,7 +82,7 @@ def test_near_same(changed: dict[str, Any], near: bool) -> None:
 def test_the_rule_tells_readers_the_tolerances() -> None:
     told = outcomes_contradict.reason
     names = [name for name in vars(comparison) if name.startswith("NEAR_") and name != "NEAR_SCALE"]
-    assert len(names) == 6
+    assert len(names) == 7
     for name in (*names, "COMPLETE_PERCENT", "YIELD_POINTS", "EE_POINTS", "LEAST_YIELD_POINTS", "LEAST_EE_POINTS"):
         assert f"{getattr(comparison, name):g}" in told, name
 
@@ -298,4 +301,4 @@ def test_what_holds_of_one_against_another_holds_the_other_way_round(one: Standi
 @given(_STANDINGS)
 def test_an_entry_is_at_one_with_itself(one: Standing) -> None:
     assert are_near_same(one, one) is bool(one.key)
-    assert differences(one, one) == ()
+    assert not list(differences(one, one))

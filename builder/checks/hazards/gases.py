@@ -14,8 +14,8 @@ from builder.checks.hazards.kinds import hazard_table, kinds_of
 from builder.checks.hazards.meetings import Present, Whereabouts
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.finding import Level
-from builder.mechanism import gas
-from builder.mechanism.gas import Gas, GasFormed, gas_volume_l, gases_from, gases_of_record, present_in
+from builder.mechanism.gas import Gas, GasFormed, InFlask, gas_volume_l, gases_from, gases_of_record, present_in
+from builder.records.figures import amount_text, volume_text
 from builder.rule import Path
 
 __all__ = ["GasEvolved", "GasOutlet", "gases_evolved", "load_gas_outlets"]
@@ -85,8 +85,7 @@ class GasEvolved:
         if self.moles is None:
             return "amount unknown"
         volume = gas_volume_l(self.moles)
-        amount = f"{self.moles * 1e3:.3g} mmol" if self.moles < 1.0 else f"{self.moles:.3g} mol"
-        return f"at most {amount}, {volume:.2g} L at 25 °C and 1 atm"
+        return f"at most {amount_text(self.moles)}, {volume_text(volume)} at 25 °C and 1 atm"
 
 
 @cache
@@ -146,13 +145,13 @@ def _all_formed(case: Case, presents: Sequence[Present]) -> Iterator[tuple[GasFo
         is_left = taken_off is None or line.path < taken_off
         reacting = [each for each in charged if each.path[0] != "solvent" or (is_left and _is_acid(each))]
         named = sorted(kind for kind in line.kinds & _NAMED.keys() if kinds & _GIVES_GAS_WITH[kind])
-        added = [gas.Present(line.path, _stand_in(kind), _EXCESS_MOL) for kind in named]
+        added = [InFlask(line.path, _stand_in(kind), _EXCESS_MOL) for kind in named]
         for formed in gases_from((*reacting, *added)) if added else ():
             if line.path in formed.paths and (formed.moles is None or formed.moles < _EXCESS_MOL / 10):
                 yield formed, line.path
 
 
-def _is_acid(each: gas.Present) -> bool:
+def _is_acid(each: InFlask) -> bool:
     return "acid" in kinds_of(each.structure)
 
 

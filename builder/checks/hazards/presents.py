@@ -7,8 +7,8 @@ from builder.checks.conditions import CLOSED_VESSELS
 from builder.checks.hazards.cautions import Setting, Severity
 from builder.checks.hazards.formed import formed_by
 from builder.checks.hazards.meetings import Hazard, Present, Whereabouts, find_hazards
-from builder.chemistry.structure import Structure, parse_smiles
-from builder.mechanism.solvents import find_solvent
+from builder.chemistry.structure import Structure
+from builder.mechanism.solvents import structure_of
 from builder.records.model import Compound, Product
 from builder.records.vocabulary import ProductUse, Result
 from builder.rule import Path
@@ -78,8 +78,4 @@ def _texts(case: Case) -> Iterator[Present]:
 
 
 def _substance(case: Case, path: Path, compound: Compound, whereabouts: Whereabouts) -> Present:
-    structure = case.structures.get(path)
-    if structure is None:
-        solvent = find_solvent(compound.name)
-        structure = parse_smiles(solvent.smiles) if solvent else None
-    return Present(path, compound.name, whereabouts, structure)
+    return Present(path, compound.name, whereabouts, structure_of(compound.name, case.structures.get(path)))

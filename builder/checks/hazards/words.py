@@ -12,7 +12,7 @@ from functools import cache, lru_cache
 
 from builder.checks.hazards.kinds import SubstanceKind, load_substance_kinds
 
-__all__ = ["Named", "ScopeWords", "kinds_named_in", "plain", "read_scope"]
+__all__ = ["Mention", "Named", "ScopeWords", "is_denied", "kinds_named_in", "plain", "read_scope"]
 
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|below|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
 _PH_FLOOR = re.compile(
@@ -71,7 +71,7 @@ def kinds_named_in(text: str) -> Named:
     found = list(_names_in(text))
     for name, start, end in found:
         kinds = _vocabulary().kinds_by_word.get(name, frozenset()) - here
-        if not kinds or _is_denied(text, start) or _is_warning(text, start):
+        if not kinds or is_denied(text, start) or _is_warning(text, start):
             continue
         if name.startswith(_NEUTRALISED) and _BY_WHAT.search(_clause_at(text, start)):
             continue  # what it is done with is named itself, if it is an acid
@@ -91,12 +91,25 @@ def kinds_named_in(text: str) -> Named:
 
 
 @dataclass(frozen=True, slots=True)
+class Mention:
+    """A name in a text that the text does not deny: where it starts and ends, and the kinds that it stands for."""
+
+    start: int
+    end: int
+    kinds: frozenset[str]
+
+
+@dataclass(frozen=True, slots=True)
 class ScopeWords:
-    """What the scope of a safety review names, kinds and the words themselves, and the kinds it excludes."""
+    """What the scope of a safety review names, kinds and the words themselves, and the kinds it excludes.
+
+    mentions: the names in their order, of names inside each other the longest only.
+    """
 
     named: frozenset[str]
     words: tuple[str, ...]
     excluded: frozenset[str]
+    mentions: tuple[Mention, ...]
 
 
 @lru_cache(maxsize=512)
@@ -107,27 +120,28 @@ def read_scope(text: str) -> ScopeWords:
     """
     text = plain(text)
     vocabulary = _vocabulary()
-    named: set[str] = set()
     excluded: set[str] = set()
-    spans: list[tuple[int, int]] = []
+    spans: dict[tuple[int, int], frozenset[str]] = {}
     found = list(_names_in(text))
     for name, start, end in found:
         kinds = vocabulary.kinds_by_word.get(name, frozenset()) | vocabulary.kinds_by_scope_word.get(name, frozenset())
         inside = [other for other, low, high in found if low <= start and end <= high]
         kinds -= frozenset().union(*(vocabulary.kinds_masked.get(other, frozenset()) for other in inside))
-        if _is_denied(text, start):
+        if is_denied(text, start):
             excluded |= kinds
         elif kinds:
-            named |= kinds
-            spans.append((start, end))
+            spans[start, end] = spans.get((start, end), frozenset()) | kinds
+    named = frozenset().union(*spans.values())
     longest = [(a, b) for a, b in spans if not any(c <= a and b <= d and (a, b) != (c, d) for c, d in spans)]
     words = tuple(dict.fromkeys(text[start:end] for start, end in longest))
-    return ScopeWords(frozenset(named), words, frozenset(excluded - named))
+    mentions = tuple(Mention(start, end, spans[start, end]) for start, end in sorted(longest))
+    return ScopeWords(named, words, frozenset(excluded - named), mentions)
 
 
 def plain(text: str) -> str:
-    """Return a text in the letters and digits that names are written in: CH₂Cl₂ as CH2Cl2, a narrow space as space."""
-    return unicodedata.normalize("NFKC", text).replace("\u2010", "-")
+    """Return a text of the same length in the letters and digits that names are written in: CH₂Cl₂ as CH2Cl2."""
+    letters = (unicodedata.normalize("NFKC", letter) for letter in text)
+    return "".join(shown if len(shown) == 1 else letter for shown, letter in zip(letters, text, strict=True))
 
 
 def _names_in(text: str) -> Iterator[tuple[str, int, int]]:
@@ -187,7 +201,7 @@ def _gathered(pairs: Iterable[tuple[str, str]]) -> dict[str, frozenset[str]]:
     return {key: frozenset(values) for key, values in found.items()}
 
 
-def _is_denied(text: str, start: int) -> bool:
+def is_denied(text: str, start: int) -> bool:
     """Answer whether what is named at `start` is said to be absent, kept apart, or only thought of ("would")."""
     before = text[:start]
     clause = _CLAUSE_END.split(before)[-1]
@@ -217,7 +231,7 @@ def _clause_at(text: str, start: int) -> str:
 def _stated_ph(text: str) -> Iterator[tuple[float, bool]]:
     """Yield the pH values a line names, and whether each is a ceiling; one that must not be reached is none."""
     for match in _PH.finditer(text):
-        if not _is_denied(text, match.start()):
+        if not is_denied(text, match.start()):
             yield float(match[1]), _CEILING.search(text[: match.start(1)]) is not None
 
 
