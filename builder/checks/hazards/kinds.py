@@ -31,6 +31,10 @@ class SubstanceKind:
     ph_ranges: tuple[tuple[float, float], ...]
     note: str
 
+    def holds_ph(self, value: float) -> bool:
+        """Answer whether a pH lies in one of its ranges."""
+        return any(low <= value < high for low, high in self.ph_ranges)
+
 
 def hazard_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
     """Yield the rows of a table of this room by column; ValueError as `rows_of`."""

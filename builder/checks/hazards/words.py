@@ -27,6 +27,13 @@ _DENIAL = re.compile(
 _STOP = re.compile(r",(?!\s(?:and )?then (?!\w*(?:ed|ify)\b))|[;:()]|\.\s")
 """What ends a clause; ", then bleach" goes on with the same vessel, ", then acidified" does not."""
 _CLAUSE_END = re.compile(rf"{_STOP.pattern}|\bbut\b|\bthen\b")
+_ONLY_BASIC = re.compile(
+    r"\b(?:basic|alkaline) (?:quench|work-?up)|\bkept (?:basic|alkaline)"
+    r"|\bpH\s*(?:above|over|at least|>=|[≥>])\s*(?:9|1\d)"
+    r"|\babove pH (?:9|1\d)",
+    re.IGNORECASE,
+)
+_ACIDS = frozenset({"acid", "weak acid"})
 _THOUGHT = re.compile(r"\bwould\b")  # "acid would set it free"
 _NEUTRALISED = "neutrali"  # begins the words that name an acid only where nothing says what it is done with
 _BY_WHAT = re.compile(r"\b(?:with|by|using)\s(?!care\b|stirring\b|ice\b|(?:\w+\s)?cooling\b)", re.IGNORECASE)
@@ -116,7 +123,8 @@ class ScopeWords:
 def read_scope(text: str) -> ScopeWords:
     """Return what the scope of a safety review names and excludes ("no acid").
 
-    Besides their words kinds are named by what reviewers call them: azide, hydride, alkylator.
+    Besides their words kinds are named by what reviewers call them: azide, hydride, alkylator; and by the lowest pH a
+    scope allows: "no acid below pH 8" names the weak acids that hold it. "Basic quench" excludes acid.
     """
     text = plain(text)
     vocabulary = _vocabulary()
@@ -131,7 +139,10 @@ def read_scope(text: str) -> ScopeWords:
             excluded |= kinds
         elif kinds:
             spans[start, end] = spans.get((start, end), frozenset()) | kinds
-    named = frozenset().union(*spans.values())
+    if _ONLY_BASIC.search(text):
+        excluded |= _ACIDS
+    by_ph = {kind.name for kind in load_substance_kinds().values() if any(map(kind.holds_ph, _any_ph(text)))}
+    named = frozenset().union(*spans.values(), by_ph - excluded)
     longest = [(a, b) for a, b in spans if not any(c <= a and b <= d and (a, b) != (c, d) for c, d in spans)]
     words = tuple(dict.fromkeys(text[start:end] for start, end in longest))
     mentions = tuple(Mention(start, end, spans[start, end]) for start, end in sorted(longest))
@@ -226,6 +237,13 @@ def _clause_at(text: str, start: int) -> str:
     begins = max((match.end() for match in _STOP.finditer(text[:start])), default=0)
     ends = _STOP.search(text, start)
     return text[begins : ends.start() if ends else len(text)]
+
+
+def _any_ph(text: str) -> Iterator[float]:
+    """Yield every pH a text states, a limit that must not be passed too."""
+    for match in _PH.finditer(text):
+        yield float(match[1])
+    yield from _least_ph(text)
 
 
 def _stated_ph(text: str) -> Iterator[tuple[float, bool]]:
