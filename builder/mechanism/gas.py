@@ -4,7 +4,7 @@ Screening estimates for checks and cautions, not a safety assessment: complete r
 gases.tsv, what gives them off in gas_sources.tsv.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping, Sequence, Set
 from dataclasses import dataclass
 from functools import cache, lru_cache
 
@@ -36,6 +36,7 @@ ATMOSPHERE_BAR = 1.01325
 ZERO_C_IN_K = 273.15
 PERMANENT_BELOW_C = -50.0  # boils lower: no solvent at the bench holds back much of it; common practice, no source
 _BAR_L_PER_J = 0.01
+_AMMONIUM, _TRIMETHYLAMINE = "ammonium", "Me3N"
 _STRONG_ACID = "Cl"  # stands for whatever acid the leaving group makes
 
 
@@ -137,7 +138,10 @@ def gases_of_record(
             (each.gas, each.cause): each for each in gases_from(present_in(record, structures, amounts, stage - 1))
         }
         formed = tuple(each for each in (_since(one, before.get((one.gas, one.cause))) for one in formed) if each)
-    return (*formed, *_gaseous_products(record, structures, amounts)) if index == last else formed
+    if index != last:
+        return formed
+    left = _amine_set_free(record, structures, amounts)
+    return (*formed, *left, *_gaseous_products(record, structures, amounts, {each.gas for each in left}))
 
 
 def present_in(
@@ -163,6 +167,20 @@ def _acid_set_free(record: Record, amounts: Amounts) -> tuple[InFlask, ...]:
     return (InFlask(("substrate",), parse_smiles(_STRONG_ACID), amounts.substrate.amount_mol),)
 
 
+def _amine_set_free(record: Record, structures: Mapping[Path, Structure], amounts: Amounts) -> tuple[GasFormed, ...]:
+    """Return the trimethylamine of a leaving group, as much as there was substrate; empty for other leaving groups."""
+    substrate = structures.get(("substrate",))
+    if record.substrate.leaving_group != _AMMONIUM or substrate is None or not _is_in(_trimethylammonium(), substrate):
+        return ()
+    gas = load_gases()[_TRIMETHYLAMINE]
+    return (GasFormed(gas, amounts.substrate.amount_mol, "the leaving group", (("substrate",),), gas.source),)
+
+
+@cache
+def _trimethylammonium() -> Fragment:
+    return Fragment.from_smarts("[NX4;+](-[CH3])(-[CH3])(-[CH3])-[CX4;!$([CH3])]")
+
+
 def _since(formed: GasFormed, before: GasFormed | None) -> GasFormed | None:
     """Return what formed after the stage before; None where nothing did, or an unknown amount had."""
     if before is None:
@@ -182,12 +200,15 @@ def _moles(row: AmountRow, structure: Structure) -> float | None:
     return row.volume_l * 1000.0 * solvent.density_g_ml / structure.mass
 
 
-def _gaseous_products(record: Record, structures: Mapping[Path, Structure], amounts: Amounts) -> tuple[GasFormed, ...]:
+def _gaseous_products(
+    record: Record, structures: Mapping[Path, Structure], amounts: Amounts, counted: Set[Gas]
+) -> tuple[GasFormed, ...]:
+    """Return the products that are gases, but for those that are counted already."""
     found: list[GasFormed] = []
     for index, product in enumerate(record.outcome.products):
         path: Path = ("outcome", "products", index)
         gas = _by_smiles().get(structures[path].smiles) if path in structures else None
-        if gas is not None:
+        if gas is not None and gas not in counted:
             yields = [
                 line.yield_.magnitude
                 for line in record.outcome.measured

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from enum import StrEnum
 
 from builder.chemistry.structure import Structure
-from builder.mechanism.amounts import AmountRow, Amounts, Role
+from builder.mechanism.amounts import AmountRow, Amounts, Role, present_rows
 from builder.mechanism.solvents import solvent_of
 from builder.records.model import Record
 from builder.rule import Path
@@ -23,6 +23,7 @@ __all__ = [
     "ThermalSeverity",
     "adiabatic_rise_k",
     "criticality_class",
+    "mass_ratio",
     "mtsr_c",
     "reaction_mass_g",
     "thermal_screen",
@@ -143,7 +144,10 @@ def thermal_screen(
     if enthalpy is not None and capacity is not None and scale is not None and mass_g is not None:
         rise = adiabatic_rise_k(enthalpy.magnitude, scale, mass_g, capacity.magnitude)
     accumulation = given.accumulation if given else None
-    mtsr = None if rise is None or accumulation is None else mtsr_c(process_c, accumulation.magnitude / 100.0, rise)
+    mtsr = None
+    if rise is not None and accumulation is not None and mass_g is not None:
+        ratio = mass_ratio(record, structures, amounts, mass_g)
+        mtsr = mtsr_c(process_c, accumulation.magnitude / 100.0, rise, ratio)
     wanted_for_mtsr = (*wanted_for_rise, *(["accumulation"] if accumulation is None else []))
     td24, mtt = (given.td24, given.mtt) if given else (None, None)
     criticality = None
@@ -165,6 +169,23 @@ def thermal_screen(
         criticality=criticality,
         missing={what: inputs for what, inputs in missing.items() if inputs},
     )
+
+
+def mass_ratio(record: Record, structures: Mapping[Path, Structure], amounts: Amounts, mass_g: float) -> float:
+    """Return the mass of everything charged over that in the flask when a dosed reaction has accumulated most.
+
+    mass_g: of everything charged. Dosed is what goes in last in the first stage that states how long its addition took;
+    most has accumulated when one equivalent of it is in. 1 where nothing is dosed.
+    """
+    for index, stage in enumerate(record.stages):
+        if stage.over is not None and stage.add:
+            masses = {row.name: _mass_of(row, structures.get(row.path)) or 0.0 for row in amounts.rows}
+            here = sum(masses[row.name] for row in present_rows(record, amounts, index))
+            dosed = next((row for row in amounts.rows if row.name == stage.add[-1]), None)
+            equivalents = 1.0 if dosed is None or dosed.equivalents is None else max(1.0, dosed.equivalents)
+            not_yet = 0.0 if dosed is None else masses[dosed.name] * (1.0 - 1.0 / equivalents)
+            return mass_g / (here - not_yet)
+    return 1.0
 
 
 def reaction_mass_g(amounts: Amounts, structures: Mapping[Path, Structure]) -> tuple[float | None, tuple[str, ...]]:

@@ -11,7 +11,7 @@ from builder.checks.case import Case, open_case
 from builder.checks.hazards.cautions import Caution, CautionKind, Setting, Severity, load_cautions
 from builder.checks.hazards.formed import load_formations
 from builder.checks.hazards.kinds import load_substance_kinds
-from builder.checks.hazards.meetings import Present, Whereabouts, find_hazards
+from builder.checks.hazards.meetings import Present, Whereabouts, by_meeting, find_hazards
 from builder.checks.hazards.mutagens import load_mutagen_alerts
 from builder.checks.hazards.presents import presents_of
 from builder.checks.hazards.rules import HAZARD_CHECKS
@@ -45,19 +45,21 @@ def faults(rule_id: str, text: str) -> list[Fault]:
 def experiment(example: str) -> tuple[tuple[Present, ...], Setting]:
     """Read an example of the table: SMILES, "lines of the work-up" and what begins with @, joined by ++."""
     presents: list[Present] = []
-    hottest_c, is_closed, eliminates = ROOM_TEMPERATURE_C, False, False
+    hottest_c, is_closed, base = ROOM_TEMPERATURE_C, False, ""
     for index, part in enumerate(example.split(" ++ ")):
         if part == "@closed":
             is_closed = True
-        elif part == "@eliminates":
-            eliminates = True
+        elif part.startswith("@eliminates"):
+            base = part
         elif part.startswith("@"):
             hottest_c = float(part[1:])
         elif part.startswith('"'):
             presents.append(Present(("work_up", index), part.strip('"'), Whereabouts.WORK_UP))
         else:
             presents.append(Present(("reagents", index), part, Whereabouts.FLASK, parse_smiles(part)))
-    return tuple(presents), Setting(hottest_c, is_closed, eliminates)
+    return tuple(presents), Setting(
+        hottest_c, is_closed, base == "@eliminates", base in {"@eliminates", "@eliminates-weakly"}
+    )
 
 
 def ids_of(example: str) -> set[str]:
@@ -84,7 +86,7 @@ def test_row_reads_well(caution: Caution) -> None:
 
 
 def test_every_kind_of_substance_is_used() -> None:
-    asked = {kind for caution in load_cautions() for kind in (caution.first, caution.second, caution.company)}
+    asked = {kind for c in load_cautions() for kind in (c.first, c.second, c.company, c.unless, c.where)}
     used = {kind.name for kind in asked if kind} | {alert.kind for alert in load_mutagen_alerts()}
     used |= {kind for formation in load_formations() for kind in formation.of}
     assert used | {"basic amine"} == set(load_substance_kinds())
@@ -221,6 +223,18 @@ def test_ordinary_pair_is_not_flagged(first: str, second: str) -> None:
         "kept away from light, washed with water and acid",
         "wash with vinegar",
         "Lewis acid filtered off, quench with dilute acid",
+        "extract with 3 × 20 mL CH₂Cl₂",
+        "extract with dichlormethane",
+        "quench with NH₄Cl solution",
+        "neutralise with 2 mol/L H₂SO₄",
+        "wash with sat. CuSO₄",
+        "wash with 1N hydrochloric",
+        "stir with Amberlyst 15 (H+ form)",
+        "Dowex 50W (H+) added, filtered",
+        "pour onto dry ice",
+        "neutralise, extract with MTBE",
+        "neutralised with ice cooling",
+        "thioacetic acid added",
     ],
 )
 def test_work_up_that_endangers_an_azide(line: str) -> None:
@@ -244,6 +258,8 @@ def test_work_up_that_endangers_an_azide(line: str) -> None:
         "kept apart from heavy metals, amines and acid",
         "azide water, never into acid",
         "amino acid stays in the aqueous layer",
+        "neutralise the mixture with NaHCO3",
+        "cooled with dry ice",
         "filtered through acid-washed sand",
         "fatty acid esters stay behind",
         "extract with THF and ethyl acetate, wash with NaHCO3 and brine, dry over Na2SO4",
@@ -279,7 +295,102 @@ def test_longer_names_and_denied_names_are_no_acid_acetone_or_bleach(line: str, 
 
 def test_bleach_in_the_work_up_meets_cyanide_and_its_solvent() -> None:
     for solvent, caution in [("CS(C)=O", "dmso-oxidant"), ("CN(C)C=O", "dmf-oxidant")]:
-        assert {caution, "cyanide-hypochlorite"} <= ids_of(f'{POTASSIUM_CYANIDE} ++ {solvent} ++ "bleach, pH 12"')
+        ids = ids_of(f'{POTASSIUM_CYANIDE} ++ {solvent} ++ "bleach, pH 12"')
+        assert {caution, "cyanide-hypochlorite-alkaline"} <= ids
+
+
+@pytest.mark.parametrize(
+    ("line", "is_grave"),
+    [
+        ("destroy with bleach", True),
+        ("destroy with bleach, pH 10", True),
+        ("destroy with bleach, kept below pH 11", True),
+        ("into bleach at pH 11", False),
+        ("into bleach, pH kept above 10.5", False),
+        ("into bleach, pH >= 10.5 throughout", False),
+        ("into bleach, never below pH 11", False),
+        ("into bleach, pH above 9", True),
+    ],
+)
+def test_bleach_on_cyanide_is_grave_unless_the_line_states_an_alkaline_ph(line: str, is_grave: bool) -> None:
+    ids = ids_of(f'{POTASSIUM_CYANIDE} ++ "{line}"') - {"cyanide"}
+    assert ids == {"cyanide-hypochlorite" if is_grave else "cyanide-hypochlorite-alkaline"}
+
+
+def test_what_depends_on_the_vessel_or_the_heat_is_shown_beside_what_the_substance_is() -> None:
+    presents, setting = experiment("CI ++ @closed ++ @100")
+    shown = {group[0].caution.id for group in by_meeting(find_hazards(presents, setting))}
+    assert shown == {"methyl-halide", "low-boiling-reagent-closed"}
+
+
+@pytest.mark.parametrize("whereabouts", [Whereabouts.FLASK, Whereabouts.PRODUCT])
+def test_an_organic_azide_is_not_distilled_whether_charged_or_obtained(whereabouts: Whereabouts) -> None:
+    azide = Present(("x",), "butyl azide", whereabouts, parse_smiles("CCCCN=[N+]=[N-]"))
+    line = Present(("work_up", 0), "distil butyl azide at 20 mbar, 60 °C", Whereabouts.WORK_UP)
+    found = {h.caution.id for h in find_hazards((azide, line), Setting(ROOM_TEMPERATURE_C)) if h.others}
+    assert found == {"organic-azide-distilled"}
+
+
+@pytest.mark.parametrize(
+    ("lines", "fires"),
+    [
+        ('"extract with chloroform"', True),
+        ('"quench with water" ++ "extract with chloroform"', True),
+        ('"acidify to pH 5" ++ "extract with chloroform"', False),
+        ('"acidify to pH 5" ++ "basify with NaOH" ++ "extract with chloroform"', True),
+    ],
+)
+def test_chloroform_is_safe_only_below_the_acid(lines: str, fires: bool) -> None:
+    assert ("chloroform-strong-base" in ids_of(f"[Na+].[OH-] ++ {lines}")) is fires
+
+
+@pytest.mark.parametrize(
+    ("line", "caution"),
+    [
+        ("extract with diethyl ether, distilled to dryness", "peroxide-former-dryness"),
+        ("extract with diethyl ether, to dryness", "peroxide-former-dryness"),
+        ("extract with diethyl ether, evaporate to dryness", "peroxide-former-evaporated"),
+    ],
+)
+def test_an_ether_taken_to_dryness_is_quoted_once(line: str, caution: str) -> None:
+    (hazard,) = find_hazards(*experiment(f'CCO ++ "{line}"'))
+    assert hazard.caution.id == caution
+    assert hazard.message.startswith(f'"{line}": ')
+
+
+@pytest.mark.parametrize(
+    ("smiles", "caution"),
+    [
+        ("OCCF", "fluoroacetate"),
+        ("CCOC(=O)CF", "fluoroacetate"),
+        ("CC(=O)OCC(F)(F)F", None),
+        ("S", "hydrogen-sulfide"),
+        ("CCCO[N+](=O)[O-]", "nitrate-ester"),
+        ("CS(=O)(=O)OCCNCCOS(C)(=O)=O", "mustard"),
+        ("CS(=O)(=O)OCCSc1ccccc1", "beta-halo-sulfide-amine"),
+        ("CS(=O)(=O)OCCCSc1ccccc1", None),
+        ("CCOCCl", "alpha-halo-ether"),
+        ("BrC1CCCCO1", None),
+    ],
+)
+def test_what_kills_needs_a_review(smiles: str, caution: str | None) -> None:
+    stops = {h.caution.id for h in find_hazards(*experiment(smiles)) if h.caution.severity is Severity.STOP}
+    assert caution in stops if caution else not stops
+
+
+def test_no_precaution_leads_a_strong_base_into_dmso() -> None:
+    bases = {"strong base", "saline hydride", "hydroxide, alkoxide or amide base", "alkoxide, amide or hydride base"}
+    for caution in load_cautions():
+        if {caution.first.name, caution.second.name if caution.second else ""} & bases:
+            assert not re.search(r"\bDMSO\b|\bDMF\b|\bNMP\b", caution.precaution), caution.id
+
+
+def test_n_ethylpyrrolidone_counts_as_an_amide_solvent() -> None:
+    assert {"hydride-amide-solvent", "reprotoxic-amide"} <= ids_of("[Na+].[H-] ++ CCN1CCCC1=O")
+
+
+def test_hydrogencarbonate_beside_cyanide_is_no_base() -> None:
+    assert "cyanide-elimination" in ids_of(f"{POTASSIUM_CYANIDE} ++ @eliminates-weakly")
 
 
 def test_an_organometallic_is_seen_at_its_quench() -> None:
@@ -289,7 +400,7 @@ def test_an_organometallic_is_seen_at_its_quench() -> None:
 
 
 def test_text_is_quoted_once_and_only_where_it_adds_something() -> None:
-    bleach = f'{POTASSIUM_CYANIDE} ++ "cyanide water into bleach" ++ "bleach decanted"'
+    bleach = f'{POTASSIUM_CYANIDE} ++ "cyanide water into bleach at pH 12" ++ "bleach at pH 12 decanted"'
     assert [h.at.path for h in find_hazards(*experiment(bleach)) if h.others] == [("work_up", 1)]
     only_text = 'CCO ++ "wash with NaOH" ++ "extract with chloroform"'
     assert [h.caution.id for h in find_hazards(*experiment(only_text)) if h.others] == ["chloroform-strong-base"]

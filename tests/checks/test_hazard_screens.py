@@ -4,11 +4,14 @@ import pytest
 from chemicals import Carcinogen
 
 from builder.checks.hazards.azides import azide_limit, load_azide_limits
+from builder.checks.hazards.cautions import load_cautions
 from builder.checks.hazards.formed import formed_by, load_formations
 from builder.checks.hazards.formulae import carbon_ratio, carbons_per_azide, oxygen_balance_percent
+from builder.checks.hazards.gases import gases_evolved, load_gas_outlets
 from builder.checks.hazards.ghs import labelled, load_ghs, load_statements
 from builder.checks.hazards.meetings import find_hazards
 from builder.checks.hazards.mutagens import alert_of, load_intake_limits
+from builder.checks.hazards.presents import presents_of
 from builder.checks.hazards.screens import mutagenic_species
 from builder.checks.hazards.solvent_limits import load_residual_limits, load_restrictions
 from builder.chemistry.structure import parse_smiles
@@ -245,6 +248,16 @@ def test_solvents_of_limits_are_those_of_the_solvent_table() -> None:
         ("CN(C)C=O", "H360D"),
         ("CCOCC", "EUH019"),
         ("O=S(Cl)Cl", "EUH029"),
+        # After a chemist's review (ATP 2020, 18th ATP, and suppliers' sheets; from memory).
+        ("C1CO1", "H360Fd"),
+        ("CC(C)CC(C)=O", "H351"),
+        ("O[N+](=O)[O-]", "H331"),
+        ("[K+].[C-]#N", "H372"),
+        ("[Na+].[BH4-]", "H360FD"),
+        ("C=CCBr", "H350"),
+        ("[Na+].[N-]=[N+]=[N-]", "H310"),
+        ("OC=O", "H331"),
+        ("C[N+](=O)[O-]", "H361"),
     ],
 )
 def test_statements_that_matter_most(smiles: str, code: str) -> None:
@@ -281,3 +294,48 @@ def test_a_scrubber_is_another_vessel(text: str, is_chlorine: bool) -> None:
     presents, setting = experiment(f'CC(=O)O ++ "{text}"')
     ids = {hazard.caution.id for hazard in find_hazards(presents, setting)}
     assert ("hypochlorite-acid" in ids) is is_chlorine
+
+
+def test_the_words_on_azide_destruction_put_nitrite_before_acid_and_keep_it_out_of_the_scrubber() -> None:
+    explosive = next(each for each in load_gas_outlets() if each.hazard == "explosive")
+    assert "scrubber" not in explosive.outlet
+    assert "afterwards with nitrite and acid" in explosive.outlet
+    precaution = next(each for each in load_cautions() if each.id == "azide-acid").precaution
+    assert precaution.index("nitrite first") < precaution.index("acid slowly")
+
+
+BUTANOL_AND_HBR = (
+    "substrate: {{name: 1-butanol, smiles: CCCCO, class: primary, leaving_group: hydroxyl, amount: 0.7 mol}}\n"
+    "nucleophile: {{name: hydrogen bromide, smiles: Br, equivalents: 1.2}}\n"
+    "solvent: [{{name: {solvent}, volume: 100 mL}}]\n"
+    "work_up: ['wash with {wash}']\n"
+    "outcome: {{result: [substitution], measured: [{{yield: 81 %, of: A, kind: assay, by: GC}}],"
+    " products: [{{label: A, name: {product}, use: desired}}]}}"
+)
+BROMIDE, ETHER = "1-bromobutane, smiles: CCCCBr", "dibutyl ether, smiles: CCCCOCCCC"
+
+
+@pytest.mark.parametrize("wash", ["10 % Na2CO3", "K2CO3", "sat. sodium hydrogen carbonate", "bicarb", "NaHCO₃"])
+def test_acid_washed_with_any_carbonate_gives_carbon_dioxide(wash: str) -> None:
+    # HBr + NaHCO3 -> NaBr + H2O + CO2: 0.84 mol of hydrogen bromide
+    case = case_of(with_example(BUTANOL_AND_HBR.format(solvent="toluene", wash=wash, product=BROMIDE)))
+    (evolved,) = [each for each in gases_evolved(case, presents_of(case)) if each.at == ("work_up", 0)]
+    assert evolved.gas.formula == "CO2"
+    assert evolved.moles == pytest.approx(0.84)
+
+
+def test_an_acid_that_is_the_solvent_counts_in_the_wash_until_it_is_taken_off() -> None:
+    text = BUTANOL_AND_HBR.format(solvent="acetic acid", wash="NaHCO3", product=BROMIDE)
+    with_solvent, without = (
+        max(each.moles or 0.0 for each in gases_evolved(case, presents_of(case)) if each.gas.formula == "CO2")
+        for case in map(case_of, map(with_example, (text, text.replace("wash with", "acid taken off, washed with"))))
+    )
+    assert with_solvent > 2.0  # 100 mL of acetic acid, 1.05 g/mL and 60.05 g/mol, is 1.75 mol
+    assert without == pytest.approx(0.84)
+
+
+@pytest.mark.parametrize(("product", "is_said"), [(BROMIDE, False), (ETHER, True)])
+def test_a_halide_that_is_wanted_is_no_impurity(product: str, is_said: bool) -> None:
+    text = BUTANOL_AND_HBR.format(solvent="toluene", wash="water", product=product)
+    said = {fault.data["caution"] for fault in faults("hazard-pair", with_example(text))}
+    assert ("sulfonic-acid-alcohol" in said) is is_said

@@ -8,6 +8,8 @@ from tests.checks.test_cautions import faults
 
 DCM = "solvent: [{name: dichloromethane, volume: 20 mL}]"
 HYDRIDE = "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 10 mmol}]"
+HYDRIDE_IN_DMSO = f"{HYDRIDE}\nnucleophile: solvent\nsolvent: [{{name: DMSO, volume: 20 mL}}]"
+BUFFER = "reagents: [{name: ammonium chloride, smiles: '[NH4+].[Cl-]', use: buffer, amount: 20 mmol}]"
 NITRITE = "reagents: [{name: sodium nitrite, smiles: '[Na+].[O-]N=O', use: additive, amount: 1 mmol}]"
 CYANIDE = (
     "reagents: [{name: potassium cyanide, smiles: '[K+].[C-]#N', use: additive, amount: 1 mmol}]\n"
@@ -26,11 +28,25 @@ def test_it_blocks_until_its_scope_is_signed(each: Blocking) -> None:
 @pytest.mark.parametrize(
     ("words", "example", "left"),
     [
-        ("azide at 10 mmol", DCM, set()),
-        ("azide at 10 mmol", ACID_QUENCH, set()),
+        ("azide at 10 mmol", DCM, {"azide-dichloromethane"}),
+        ("azide at 10 mmol", ACID_QUENCH, {"azide-acid"}),
+        ("azide at 10 mmol with acid", ACID_QUENCH, set()),
+        ("azide at 10 mmol in DMSO, basic quench", ACID_QUENCH, {"azide-acid"}),
+        ("azide at 10 mmol, kept basic", ACID_QUENCH, {"azide-acid"}),
+        ("azide at 10 mmol, pH >= 9", ACID_QUENCH, {"azide-acid"}),
+        ("azide at 10 mmol, acidified to pH 2", ACID_QUENCH, set()),
+        ("azide at 10 mmol", BUFFER, {"azide-weak-acid"}),
+        ("azide at 10 mmol, no acid below pH 8", BUFFER, set()),
+        ("azide at 10 mmol, no acid below pH 5", ACID_QUENCH, {"azide-acid"}),
+        ("azide at 10 mmol", "work_up: ['filtered through a brass sieve']", {"azide-heavy-metal"}),
+        ("azide at 10 mmol, cyanide at 1 mmol, acid last", CYANIDE, set()),
+        ("azide and cyanide at 10 mmol", CYANIDE, {"azide-acid", "cyanide-acid"}),
+        ("azide and sodium hydride at 10 mmol in THF", HYDRIDE, {"hydride-amide-solvent"}),
+        ("sodium hydride at 10 mmol in THF", HYDRIDE_IN_DMSO, {"hydride-dmso"}),
+        ("sodium hydride at 10 mmol in DMSO", HYDRIDE_IN_DMSO, set()),
         ("sodium azide at 15 mmol in DCM", DCM, set()),
         ("azide at 10 mmol", HYDRIDE, {"hydride-amide-solvent"}),
-        ("azide and hydride at 10 mmol", HYDRIDE, set()),
+        ("azide and hydride at 10 mmol in DMF", HYDRIDE, set()),
         ("azide at 10 mmol", NITRITE, {"nitrite-amide-solvent"}),
         ("azide at 10 mmol, nitrite with DMF, no amine", NITRITE, set()),
         ("azide at 10 mmol, no acid", ACID_QUENCH, {"azide-acid"}),
@@ -45,7 +61,7 @@ def test_a_scope_covers_what_it_names(words: str, example: str, left: set[str]) 
 def test_azide_does_not_cover_cyanide_and_the_message_says_what_the_scope_must_name() -> None:
     found = faults("hazard-out-of-scope", with_example(signed("azide at 10 mmol") + CYANIDE))
     cyanide = next(fault for fault in found if fault.data["caution"] == "cyanide-acid")
-    assert cyanide.message.endswith("the safety review names azide, not cyanide")
+    assert cyanide.message.endswith("the safety review names azide, not cyanide and acid")
     assert "named in the scope of safety_review" in cyanide.mend
     assert "local rules and qualified people decide" in cyanide.mend
 

@@ -77,6 +77,20 @@ ACETIC, SODIUM_HYDRIDE, PYRIDINE = "CC(=O)O", "[Na+].[H-]", "c1ccncc1"
         ([("[Na+].[BH4-]", 1.0), (ACETIC, 8.0)], {"H2": 4.0}),
         ([("O=S(Cl)Cl", 1.5), ("CCCCO", 1.0)], {"SO2": 1.0, "HCl": 1.0}),
         ([("O=S(Cl)Cl", 1.5), ("CCCCO", 1.0), (PYRIDINE, 1.0)], {"SO2": 1.0}),
+        # SOCl2 + H2O -> SO2 + 2 HCl; PBr3 + 3 H2O -> H3PO3 + 3 HBr; PCl5 + 4 H2O -> H3PO4 + 5 HCl
+        ([("O=S(Cl)Cl", 1.5), ("O", 9.0)], {"SO2": 1.5, "HCl": 3.0}),
+        ([("BrP(Br)Br", 1.0), ("O", 9.0)], {"HBr": 3.0}),
+        ([("ClP(Cl)(Cl)(Cl)Cl", 1.0), ("O", 9.0)], {"HCl": 5.0}),
+        ([("O=P(Cl)(Cl)Cl", 1.0), ("O", 9.0)], {"HCl": 3.0}),
+        ([("BrP(Br)Br", 1.0), ("CCCCO", 3.0)], {}),
+        ([("C[Si](C)(C)N=[N+]=[N-]", 1.0), ("Cl", 2.0)], {"HN3": 1.0}),
+        ([("C[Si](C)(C)C#N", 1.0), ("O", 2.0)], {"HCN": 1.0}),
+        ([("C[Si](C)(C)C#N", 1.0), ("CCOC(C)=O", 2.0)], {}),
+        ([("CC[Mg]Br", 1.0), ("O", 9.0)], {"C2H6": 1.0}),
+        ([("CC(C)[Mg]Cl", 1.0), ("O", 9.0)], {"C3H8": 1.0}),
+        ([("CCCC[Mg]Cl", 1.0), ("O", 9.0)], {"C4H10": 1.0}),
+        ([("CC(C)(C)[Li]", 1.0), ("O", 9.0)], {"i-C4H10": 1.0}),
+        ([("C=C[Mg]Br", 1.0), ("O", 9.0)], {"C2H4": 1.0}),
         ([("CS(=O)(=O)Cl", 1.1), ("CCCCO", 1.0)], {"HCl": 1.0}),
         ([("CS(=O)(=O)Cl", 1.1), ("CCCCO", 1.0), ("CCN(CC)CC", 1.5)], {}),
         ([("CC(C)(C)OC(=O)NCCBr", 1.0), ("OC(=O)C(F)(F)F", 0.1)], {"CO2": 1.0, "i-C4H8": 1.0}),
@@ -104,6 +118,9 @@ def test_moles_of_gas(charged: list[tuple[str, float | None]], gases: dict[str, 
         ("NO", "10102-43-9"),
         ("CH4", "74-82-8"),
         ("C2H4", "74-85-1"),
+        ("C2H6", "74-84-0"),
+        ("C3H8", "74-98-6"),
+        ("i-C4H10", "75-28-5"),
         ("HCl", "7647-01-0"),
         ("HBr", "10035-10-6"),
         ("H2S", "7783-06-4"),
@@ -134,7 +151,7 @@ def test_boiling_points_of_gases(formula: str, cas: str) -> None:
 
 def test_which_gases_are_permanent() -> None:
     gases = load_gases()
-    permanent = {"H2", "N2", "CO", "NO", "CH4", "C2H4", "C2H2", "HCl", "HBr", "CO2", "H2S"}
+    permanent = {"H2", "N2", "CO", "NO", "CH4", "C2H4", "C2H6", "C2H2", "HCl", "HBr", "CO2", "H2S"}
     assert {formula for formula, gas in gases.items() if gas.is_permanent} == permanent
 
 
@@ -171,3 +188,17 @@ def test_a_product_that_is_a_gas() -> None:
     assert case is not None
     formed = gases_of_record(case.record, case.structures, case.amounts)
     assert _by_formula(formed) == pytest.approx({"i-C4H8": 0.0078})
+
+
+def test_trimethylamine_leaves_as_a_gas() -> None:
+    # RNMe3+ + B- -> alkene + NMe3 + BH: one for each substrate
+    case = examine_text(
+        with_example(
+            "substrate: {name: trimethyl(pentan-2-yl)ammonium iodide, smiles: 'CCCC(C)[N+](C)(C)C.[I-]',"
+            " class: secondary, leaving_group: ammonium, amount: 20 mmol}\nnucleophile: none\n"
+            "outcome: {result: [no reaction], measured: [{recovered: 96 %, of: substrate, by: GC}]}"
+        )
+    ).kept
+    assert case is not None
+    formed = gases_of_record(case.record, case.structures, case.amounts)
+    assert _by_formula(formed) == pytest.approx({"Me3N": 0.020})

@@ -7,7 +7,9 @@ from builder.mechanism.thermal import (
     ThermalSeverity,
     adiabatic_rise_k,
     criticality_class,
+    mass_ratio,
     mtsr_c,
+    reaction_mass_g,
     thermal_screen,
     thermal_severity,
 )
@@ -109,3 +111,34 @@ def test_a_solvent_without_density_is_named() -> None:
     screen = thermal_screen(case.record, case.structures, case.amounts)
     assert screen.mass_g is None
     assert screen.missing["adiabatic rise"] == ("the mass or density of unknown oil",)
+
+
+@pytest.mark.parametrize(
+    ("stages", "ratio"),
+    [
+        # By hand: 10 mmol 2-bromobutane 1.370 g, 20 mL toluene 17.34 g (0.867 g/mL), 50 mmol acetic acid 3.003 g, of
+        # which 4/5 are not in when one equivalent is: 21.71/(21.71 - 2.40) = 1.124.
+        ("stages: [{temperature: 60 °C, time: 4 h}]", 1.0),
+        ("stages: [{add: [toluene, 2-bromobutane, acetic acid], temperature: 60 °C, time: 4 h}]", 1.0),
+        ("stages: [{add: [toluene, 2-bromobutane, acetic acid], over: 1 h, temperature: 60 °C, time: 4 h}]", 1.124),
+        ("stages: [{add: [toluene, acetic acid, 2-bromobutane], over: 1 h, temperature: 60 °C, time: 4 h}]", 1.0),
+    ],
+)
+def test_a_dosed_reaction_is_lighter_when_most_has_accumulated(stages: str, ratio: float) -> None:
+    charge = (
+        "substrate: {name: 2-bromobutane, smiles: 'CCC(C)Br', class: secondary, leaving_group: bromide,"
+        " amount: 10 mmol}\nnucleophile: {name: acetic acid, smiles: CC(=O)O, amount: 50 mmol}\n"
+        f"solvent: [{{name: toluene, volume: 20 mL}}]\n{stages}"
+    )
+    case = case_of(with_example(charge))
+    mass_g, unweighed = reaction_mass_g(case.amounts, case.structures)
+    assert mass_g is not None, unweighed
+    assert mass_ratio(case.record, case.structures, case.amounts, mass_g) == pytest.approx(ratio, abs=0.002)
+
+
+def test_the_mtsr_of_a_dosed_run_counts_the_mass_that_is_there() -> None:
+    dosed = f"{ALL}}}\nstages: [{{add: [DMF, 2-bromobutane, sodium azide], over: 1 h, temperature: 60 °C, time: 4 h}}]"
+    at_once, over = (screen_of(text).mtsr_c for text in (dosed.replace(" over: 1 h,", ""), dosed))
+    assert at_once is not None
+    assert over is not None
+    assert over > at_once

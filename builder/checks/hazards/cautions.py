@@ -43,6 +43,8 @@ class CautionKind(StrEnum):
     PAIR = "pair"
     SOLUTION = "solution"
     QUENCH = "quench"
+    NEUTRALISED = "neutralised"
+    ISOLATION = "isolation"
     WORK_UP = "work-up"
     SCRUBBER = "scrubber"
 
@@ -60,6 +62,7 @@ class Measure(StrEnum):
 
 CLOSED = "closed vessel"
 ELIMINATES = "elimination without base"
+ELIMINATES_WEAKLY = "elimination without strong base"
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,12 +70,13 @@ class Setting:
     """How an experiment is run, as far as cautions ask.
 
     hottest_c: highest temperature of any stage, °C. eliminates: an alkene forms and no base is charged, so that the
-    nucleophile takes up the proton.
+    nucleophile takes up the proton. eliminates_weakly: the same, or no base but hydrogencarbonate is charged.
     """
 
     hottest_c: float
     is_closed: bool = False
     eliminates: bool = False
+    eliminates_weakly: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,7 +99,8 @@ class Condition:
 class Caution:
     """One row of cautions.tsv; second, condition and company are None where the row has none.
 
-    company: a kind that must be there too. in_closed_vessel, on_elimination: holds only there, or only then.
+    company: a kind that must be there too. unless, where: a kind that the place of the second must not, or must, belong
+    to as well. in_closed_vessel, on_elimination, on_weak_elimination: holds only there, or only then.
     """
 
     id: str
@@ -105,8 +110,11 @@ class Caution:
     second: SubstanceKind | None
     condition: Condition | None
     company: SubstanceKind | None
+    unless: SubstanceKind | None
+    where: SubstanceKind | None
     in_closed_vessel: bool
     on_elimination: bool
+    on_weak_elimination: bool
     hazard: str
     precaution: str
     source: str
@@ -115,7 +123,17 @@ class Caution:
 
     def is_open_to(self, setting: Setting) -> bool:
         """Answer whether the vessel and the reaction are such that it can apply."""
-        return (setting.is_closed or not self.in_closed_vessel) and (setting.eliminates or not self.on_elimination)
+        return (
+            (setting.is_closed or not self.in_closed_vessel)
+            and (setting.eliminates or not self.on_elimination)
+            and (setting.eliminates_weakly or not self.on_weak_elimination)
+        )
+
+    @property
+    def depends_on_setting(self) -> bool:
+        """Say whether it holds because of how the experiment is run; a size or ratio is the substance's own."""
+        is_of_temperature = self.condition is not None and self.condition.measure is Measure.TEMPERATURE
+        return is_of_temperature or self.in_closed_vessel or self.on_elimination or self.on_weak_elimination
 
     @property
     def how(self) -> str:
@@ -127,13 +145,22 @@ class Caution:
         """Return the further demand in words, empty where there is none."""
         if self.company is not None:
             return f"with {self.company.name}"
-        if self.in_closed_vessel or self.on_elimination:
-            return f"in a {CLOSED}" if self.in_closed_vessel else ELIMINATES
+        if self.unless is not None:
+            return f"unless {self.unless.name}"
+        if self.where is not None:
+            return f"where {self.where.name}"
+        if self.in_closed_vessel:
+            return f"in a {CLOSED}"
+        if self.on_elimination or self.on_weak_elimination:
+            return ELIMINATES if self.on_elimination else ELIMINATES_WEAKLY
         if self.condition is None:
             return ""
         unit = " °C" if self.condition.measure is Measure.TEMPERATURE else ""
         sign = {"<": "below", "<=": "up to", ">=": "from"}[self.condition.sign]
         return f"{self.condition.measure} {sign} {self.condition.limit:g}{unit}"
+
+
+_PLAIN_DEMANDS = frozenset({NOTHING, CLOSED, ELIMINATES, ELIMINATES_WEAKLY})
 
 
 def _size(measure: Measure, structure: Structure | None) -> float | None:
@@ -160,8 +187,9 @@ def _caution(row: dict[str, str]) -> Caution:
     kind, kinds = CautionKind(row["kind"]), load_substance_kinds()
     is_of_one = kind in _OF_ONE
     demand = row["condition"]
-    company = demand.removeprefix("with ") if demand.startswith("with ") else None
-    wanted = [row["first"], *([] if is_of_one else [row["second"]]), *([company] if company else [])]
+    word, _, other = demand.partition(" ")
+    named = other if word in {"with", "unless", "where"} else None
+    wanted = [row["first"], *([] if is_of_one else [row["second"]]), *([named] if named else [])]
     if unknown := [name for name in wanted if name not in kinds]:
         raise ValueError(f"cautions.tsv: {row['id']}: unknown kind of substance {unknown[0]}")
     return Caution(
@@ -170,10 +198,13 @@ def _caution(row: dict[str, str]) -> Caution:
         severity=Severity(row["severity"]),
         first=kinds[row["first"]],
         second=None if is_of_one else kinds[row["second"]],
-        condition=None if company or demand in {NOTHING, CLOSED, ELIMINATES} else _condition(demand),
-        company=kinds[company] if company else None,
+        condition=None if named or demand in _PLAIN_DEMANDS else _condition(demand),
+        company=kinds[other] if word == "with" else None,
+        unless=kinds[other] if word == "unless" else None,
+        where=kinds[other] if word == "where" else None,
         in_closed_vessel=demand == CLOSED,
         on_elimination=demand == ELIMINATES,
+        on_weak_elimination=demand == ELIMINATES_WEAKLY,
         hazard=row["hazard"],
         precaution=row["precaution"],
         source=row["source"],

@@ -4,12 +4,13 @@ What the text of the work-up names (water, acid, hydrogencarbonate, nitrite) is 
 every volume is an upper bound.
 """
 
+import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cache
 
 from builder.checks.case import Case
-from builder.checks.hazards.kinds import hazard_table
+from builder.checks.hazards.kinds import hazard_table, kinds_of
 from builder.checks.hazards.meetings import Present, Whereabouts
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.finding import Level
@@ -20,13 +21,24 @@ from builder.rule import Path
 __all__ = ["GasEvolved", "GasOutlet", "gases_evolved", "load_gas_outlets"]
 
 _EXCESS_MOL = 1e6
+_TAKEN_OFF = re.compile(r"\b(?:acid|solvent)\s(?:was\s)?(?:taken|distilled|stripped) off\b", re.IGNORECASE)
 _GIVES_GAS_WITH: Mapping[str, frozenset[str]] = {
-    "acid": frozenset({"carbonate", "azide salt", "cyanide source", "sulfide salt", "complex hydride"}),
+    "acid": frozenset(
+        {"carbonate", "azide salt", "cyanide source", "sulfide salt", "complex hydride", "silyl azide or cyanide"}
+    ),
     "ammonium salt": frozenset({"strong base", "cyanide source", "sulfide salt", "azide salt"}),
     "hydrogencarbonate": frozenset({"acid"}),
+    "carbonate": frozenset({"acid"}),
     "nitrite": frozenset({"azide salt", "primary or secondary amine", "ammonium salt"}),
     "water or alcohol": frozenset(
-        {"saline hydride", "complex hydride", "alkali metal", "organolithium or Grignard", "chlorinating agent"}
+        {
+            "saline hydride",
+            "complex hydride",
+            "alkali metal",
+            "organolithium or Grignard",
+            "chlorinating agent",
+            "silyl azide or cyanide",
+        }
     ),
 }
 """Kinds that what the work-up names gives gas with, asked before the table of gases, which takes longer."""
@@ -34,6 +46,7 @@ _NAMED = {
     "acid": "Cl",
     "ammonium salt": "[NH4+].[Cl-]",
     "hydrogencarbonate": "[Na+].OC([O-])=O",
+    "carbonate": "[Na+].OC([O-])=O",  # where the acid meets it first, as in a funnel, gas forms before it is used up
     "nitrite": "[Na+].[O-]N=O",
     "water or alcohol": "O",
 }
@@ -46,6 +59,7 @@ class GasOutlet:
 
     hazard: str
     least_l: float
+    least_funnel_l: float
     level: Level
     outlet: str
     source: str
@@ -78,8 +92,15 @@ class GasEvolved:
 def load_gas_outlets() -> tuple[GasOutlet, ...]:
     """Return the outlets, the gravest hazard first; ValueError for blanks, unknown levels and sources."""
     return tuple(
-        GasOutlet(row["hazard"], float(row["least_l"]), Level(row["level"]), row["outlet"], row["source"])
-        for row in hazard_table("gas_outlets.tsv", ("hazard", "least_l", "level", "outlet", "source"))
+        GasOutlet(
+            row["hazard"],
+            float(row["least_l"]),
+            float(row["least_funnel_l"]),
+            Level(row["level"]),
+            row["outlet"],
+            row["source"],
+        )
+        for row in hazard_table("gas_outlets.tsv", ("hazard", "least_l", "least_funnel_l", "level", "outlet", "source"))
     )
 
 
@@ -91,7 +112,10 @@ def gases_evolved(case: Case, presents: Sequence[Present]) -> tuple[GasEvolved, 
     found: dict[str, GasEvolved] = {}
     for formed, at in _all_formed(case, presents):
         outlet = next((each for each in load_gas_outlets() if each.hazard in formed.gas.hazard), None)
-        if outlet is None or (formed.moles is not None and gas_volume_l(formed.moles) < outlet.least_l):
+        if outlet is None:
+            continue
+        least_l = outlet.least_funnel_l if at[0] == "work_up" else outlet.least_l
+        if formed.moles is not None and gas_volume_l(formed.moles) < least_l:
             continue
         is_product = at[0] == "outcome"
         key = f"product {formed.moles}" if is_product else formed.gas.formula
@@ -108,24 +132,27 @@ def gases_evolved(case: Case, presents: Sequence[Present]) -> tuple[GasEvolved, 
 def _all_formed(case: Case, presents: Sequence[Present]) -> Iterator[tuple[GasFormed, Path]]:
     """Yield each gas with the place it comes from: of the flask, and of each line of the work-up that adds something.
 
-    A solvent does not count in the work-up: most of it is gone by then, and how much is not said.
+    A solvent does not count in the work-up, where most of it is gone by then and how much is not said, but for an acid,
+    which what it is washed with has to use up; unless a line says that it was taken off.
     """
     for formed in gases_of_record(case.record, case.structures, case.amounts):
         yield formed, next(iter(formed.paths), ("stages",))
-    charged = [
-        each
-        for each in present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
-        if each.path[0] != "solvent"
-    ]
+    charged = present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
+    lines = [each for each in presents if each.whereabouts is Whereabouts.WORK_UP]
+    taken_off = next((line.path for line in lines if _TAKEN_OFF.search(line.name)), None)
     kinds = frozenset().union(*(each.kinds for each in presents if each.whereabouts is Whereabouts.FLASK))
-    for line in presents:
-        if line.whereabouts is not Whereabouts.WORK_UP:
-            continue
+    for line in lines:
+        is_left = taken_off is None or line.path < taken_off
+        reacting = [each for each in charged if each.path[0] != "solvent" or (is_left and _is_acid(each))]
         named = sorted(kind for kind in line.kinds & _NAMED.keys() if kinds & _GIVES_GAS_WITH[kind])
         added = [InFlask(line.path, _stand_in(kind), _EXCESS_MOL) for kind in named]
-        for formed in gases_from((*charged, *added)) if added else ():
+        for formed in gases_from((*reacting, *added)) if added else ():
             if line.path in formed.paths and (formed.moles is None or formed.moles < _EXCESS_MOL / 10):
                 yield formed, line.path
+
+
+def _is_acid(each: InFlask) -> bool:
+    return "acid" in kinds_of(each.structure)
 
 
 @cache

@@ -11,7 +11,7 @@ from builder.table import NOTHING, rows_of, table_text
 
 __all__ = ["SubstanceKind", "hazard_table", "kinds_of", "load_substance_kinds"]
 
-_PH_RANGE = re.compile(r"pH (\d+)-(\d+)")
+_PH_RANGE = re.compile(r"pH (\d+(?:\.\d+)?)-(\d+(?:\.\d+)?)")
 _HYDROGEN_HALIDES = frozenset({"Cl", "Br", "I"})
 
 
@@ -31,6 +31,10 @@ class SubstanceKind:
     ph_ranges: tuple[tuple[float, float], ...]
     note: str
 
+    def holds_ph(self, value: float) -> bool:
+        """Answer whether a pH lies in one of its ranges."""
+        return any(low <= value < high for low, high in self.ph_ranges)
+
 
 def hazard_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]]:
     """Yield the rows of a table of this room by column; ValueError as `rows_of`."""
@@ -41,7 +45,7 @@ def hazard_table(name: str, columns: tuple[str, ...]) -> Iterator[dict[str, str]
 def load_substance_kinds() -> dict[str, SubstanceKind]:
     """Return the kinds of substance by name, in table order.
 
-    Raises ValueError for blanks, names given twice, bad SMARTS, and rows with neither SMARTS nor words.
+    Raises ValueError for blanks, names given twice, bad SMARTS, and rows with neither SMARTS nor words nor pH.
     """
     found: dict[str, SubstanceKind] = {}
     for row in hazard_table("substance_kinds.tsv", ("name", "smarts", "words", "note")):
@@ -56,8 +60,8 @@ def load_substance_kinds() -> dict[str, SubstanceKind]:
             ph_ranges=tuple((float(match[1]), float(match[2])) for match in ranges),
             note="" if row["note"] == NOTHING else row["note"],
         )
-        if kind.name in found or not (kind.fragments or kind.words):
-            raise ValueError(f"substance_kinds.tsv: {kind.name}: given twice, or without SMARTS and words")
+        if kind.name in found or not (kind.fragments or kind.words or kind.ph_ranges):
+            raise ValueError(f"substance_kinds.tsv: {kind.name}: given twice, or without SMARTS, words and pH")
         found[kind.name] = kind
     return found
 

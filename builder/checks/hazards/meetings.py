@@ -63,7 +63,7 @@ class Hazard:
     @property
     def message(self) -> str:
         """Return who meets whom, and what comes of it."""
-        if not self.others:
+        if self.others in {(), (self.at,)}:
             return f"{self.at.shown}: {self.caution.hazard}"
         met = " and ".join(dict.fromkeys(other.shown for other in self.others))
         return f"{met} with {self.at.shown}: {self.caution.hazard}"
@@ -93,11 +93,15 @@ def find_hazards(presents: tuple[Present, ...], setting: Setting) -> tuple[Hazar
 
 
 def by_meeting(hazards: Iterable[Hazard]) -> tuple[tuple[Hazard, ...], ...]:
-    """Return the hazards of the same substances in the same place together, the gravest first."""
-    meetings: dict[tuple[Path, frozenset[Path]], list[Hazard]] = {}
+    """Return the hazards of the same substances in the same place together, the gravest first.
+
+    What depends on temperature, vessel or reaction stands for itself: no property of the substance tells it.
+    """
+    meetings: dict[tuple[Path, frozenset[Path], str], list[Hazard]] = {}
     for hazard in hazards:
         partners = frozenset(other.path for other in hazard.others)
-        meetings.setdefault((hazard.at.path, partners), []).append(hazard)
+        own = hazard.caution.id if hazard.caution.depends_on_setting else ""
+        meetings.setdefault((hazard.at.path, partners, own), []).append(hazard)
     return tuple(tuple(sorted(each, key=lambda h: -h.caution.severity.weight)) for each in meetings.values())
 
 
@@ -125,6 +129,12 @@ def _hazards_of(
     seconds: Sequence[Present] = at_hand.get(caution.second.name, ())
     if caution.kind is CautionKind.QUENCH:
         seconds = _before_it_is_destroyed(seconds, by_kind)
+    if caution.kind is CautionKind.NEUTRALISED:
+        seconds = _while_it_is_basic(seconds, by_kind[caution.first.name], by_kind.get("acid", ()))
+    if caution.unless is not None:
+        seconds = [present for present in seconds if caution.unless.name not in present.kinds]
+    if caution.where is not None:
+        seconds = [present for present in seconds if caution.where.name in present.kinds]
     if not firsts or not seconds:
         return
     meetings: dict[Present, list[Present]] = {}
@@ -140,11 +150,17 @@ def _meetings(
 
     What was charged counts first, then the work-up, every line of it for a `stop` and the first for others. A note
     counts only where nothing else shows the pair; two lines of text only for a `stop` of which nothing was charged.
-    Work-up: the second must be named there. Scrubber: the first goes over from the flask.
+    Work-up: the second must be named there. Scrubber: the first goes over from the flask. Isolation: as work-up, and
+    the first may be obtained or only named.
     """
     if caution.kind in {CautionKind.WORK_UP, CautionKind.SCRUBBER}:
         places = _TEXT if caution.kind is CautionKind.SCRUBBER else {Whereabouts.WORK_UP}
         yield from ((at, first) for first in _in(firsts, Whereabouts.FLASK) for at in _in(seconds, *places)[:1])
+        return
+    if caution.kind is CautionKind.ISOLATION:
+        lines = _in(seconds, Whereabouts.WORK_UP) or _in(seconds, Whereabouts.NOTE)
+        substances = _in(firsts, Whereabouts.FLASK, Whereabouts.PRODUCT)
+        yield from ((at, first) for first in substances or _in(firsts, *_TEXT)[:1] for at in lines[:1])
         return
     charged = [
         (second, first) for first in _in(firsts, Whereabouts.FLASK) for second in _in(seconds, Whereabouts.FLASK)
@@ -167,6 +183,20 @@ def _before_it_is_destroyed(presents: Sequence[Present], by_kind: Mapping[str, S
     destroying = [*by_kind.get("water or alcohol", ()), *by_kind.get("acid", ())]
     last = min((present.path for present in _in(destroying, Whereabouts.WORK_UP)), default=None)
     return [p for p in presents if p.whereabouts is not Whereabouts.WORK_UP or last is None or p.path <= last]
+
+
+def _while_it_is_basic(
+    presents: Sequence[Present], bases: Sequence[Present], acids: Sequence[Present]
+) -> list[Present]:
+    """Leave out the lines of the work-up above which an acid was the last to go in, not a base; water alone is none."""
+    added_bases, added_acids = _in(bases, Whereabouts.WORK_UP), _in(acids, Whereabouts.WORK_UP)
+
+    def is_basic_at(path: Path) -> bool:
+        acid = max((each.path for each in added_acids if each.path < path), default=None)
+        base = max((each.path for each in added_bases if each.path <= path), default=None)
+        return acid is None or (base is not None and base >= acid)
+
+    return [each for each in presents if each.whereabouts is not Whereabouts.WORK_UP or is_basic_at(each.path)]
 
 
 def _named(

@@ -4,25 +4,54 @@ from collections.abc import Iterator
 
 from builder.checks.case import Case, compounds_of
 from builder.checks.conditions import CLOSED_VESSELS
-from builder.checks.hazards.cautions import Setting
+from builder.checks.hazards.cautions import Setting, Severity
+from builder.checks.hazards.formed import formed_by
 from builder.checks.hazards.meetings import Hazard, Present, Whereabouts, find_hazards
+from builder.chemistry.structure import Structure
 from builder.mechanism.solvents import structure_of
-from builder.records.model import Compound
-from builder.records.vocabulary import Result
+from builder.records.model import Compound, Product
+from builder.records.vocabulary import ProductUse, Result
 from builder.rule import Path
 
 __all__ = ["hazards_of", "presents_of"]
 
 
 def hazards_of(case: Case) -> tuple[Hazard, ...]:
-    """Return the hazards of a record, in the order of the table of cautions."""
+    """Return the hazards of a record, in the order of the table of cautions.
+
+    What is only good to know of a by-product is left out where the by-product is what the reaction is run for.
+    """
     stages = case.record.stages
+    forms_alkene = Result.ELIMINATION in case.record.outcome.result
+    presents = presents_of(case)
+    bases = [present for present in presents if present.path[0] == "base"]
     setting = Setting(
         hottest_c=max(stage.temperature.highest_c for stage in stages),
         is_closed=any(stage.vessel in CLOSED_VESSELS for stage in stages),
-        eliminates=Result.ELIMINATION in case.record.outcome.result and not case.record.bases,
+        eliminates=forms_alkene and not bases,
+        eliminates_weakly=forms_alkene and all("hydrogencarbonate" in base.kinds for base in bases),
     )
-    return find_hazards(presents_of(case), setting)
+    wanted = _wanted(case)
+    found = find_hazards(presents, setting)
+    return tuple(hazard for hazard in found if not _gives_only_what_is_wanted(hazard, presents, wanted))
+
+
+def _wanted(case: Case) -> frozenset[Structure]:
+    """Return the structures of the products that are no by-products, and of what is sought."""
+    wanted = {
+        path
+        for path, compound in compounds_of(case.record)
+        if path == ("outcome", "sought")
+        or (isinstance(compound, Product) and compound.use is not ProductUse.BY_PRODUCT)
+    }
+    return frozenset(case.structures[path] for path in wanted & case.structures.keys())
+
+
+def _gives_only_what_is_wanted(hazard: Hazard, presents: tuple[Present, ...], wanted: frozenset[Structure]) -> bool:
+    if hazard.caution.severity is not Severity.NOTE or not hazard.others:
+        return False
+    formed = [species.structure for species in formed_by((hazard,), presents)]
+    return bool(formed) and wanted.issuperset(formed)
 
 
 def presents_of(case: Case) -> tuple[Present, ...]:

@@ -58,8 +58,11 @@ def hazard_is_unreviewed(case: Case) -> Iterator[Fault]:
         "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 12 mmol}]",
         "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 10 mmol, no acid'}\n"
         "work_up: ['quench with 1 mol/L hydrochloric acid']",
+        "safety_review: {by: safety-1, date: 2026-03-12, scope: azide at 10 mmol}\n"
+        "work_up: ['quench with 1 mol/L hydrochloric acid']",
     ),
     silent_on=(
+        "safety_review: {by: safety-1, date: 2026-03-12, scope: azide at 10 mmol with hydrochloric acid}\n"
         "work_up: ['quench with 1 mol/L hydrochloric acid']",
         "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 10 mmol, sodium hydride in DMF at 12 mmol'}\n"
         "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 12 mmol}]",
@@ -68,9 +71,9 @@ def hazard_is_unreviewed(case: Case) -> Iterator[Fault]:
 def hazard_is_out_of_scope(case: Case) -> Iterator[Fault]:
     """A safety review lifts the hazards that its scope names, and no others.
 
-    A scope names a hazard by the kind of substance (azide, cyanide, hydride) or by the name in the record. "Azide at 10
-    mmol" covers what an azide can do; it does not cover a cyanide, and "no acid" takes acid out. Who signs for one
-    hazard has not looked at the other.
+    A scope names a hazard by the kind of substance (azide, cyanide, hydride) or by the name in the record, and both
+    partners of a pair. "Azide at 10 mmol" covers what an azide does by itself; it covers neither a cyanide nor azide
+    with acid, and "no acid" or "basic quench" takes acid out. Who signs for one hazard has not looked at the other.
     """
     review = case.record.safety_review
     if review is None:
@@ -130,8 +133,9 @@ def safety_scope_is_exceeded(case: Case) -> Iterator[Fault]:
     level=Level.CAUTION,
     source="bretherick-2017",
     fires_on=(
+        "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 10 mmol, extracted with dichloromethane'}\n"
         "work_up: ['extract with 3 × 20 mL CH2Cl2']",
-        "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 12 mmol}]",
+        "base: [{name: sodium hydride, smiles: '[Na+].[H-]', amount: 12 mmol}]\nwork_up: ['quench with methanol']",
         "reagents: [{name: methanesulfonyl chloride, smiles: 'CS(=O)(=O)Cl', use: activator, amount: 12 mmol}]",
     ),
     silent_on=("work_up: ['quench: 60 mL water, keep above pH 9', 'extract with 3 × 20 mL ethyl acetate']",),

@@ -37,24 +37,30 @@ def is_covered(case: Case, hazard: Hazard) -> bool:
 
 
 def scope_lacks(scope: str, hazard: Hazard) -> str:
-    """Return what a scope says amiss of a hazard: "names azide, not cyanide", "excludes acid"; empty if it covers it.
+    """Return what a scope says amiss of a hazard: "names azide, not acid", "excludes acid"; empty if it covers it.
 
-    It covers what it names by kind ("azide at 10 mmol") or by the name of the substance, unless it excludes the partner
-    ("no acid").
+    It covers a pair of which it names both partners, by kind ("azide at 10 mmol in DMSO") or by the name of the
+    substance, and excludes neither ("no acid", "basic quench"): who looked at the azide has not looked at the acid.
     """
     read, caution = read_scope(scope), hazard.caution
-    if caution.second is not None and caution.second.name in read.excluded:
-        return f"excludes {_word_of(caution.second.name)}, which is here"
+    partners = [caution.first.name, *([caution.second.name] if caution.second is not None else [])]
+    if excluded := [kind for kind in partners if kind in read.excluded]:
+        return f"excludes {_word_of(excluded[0])}, which is here"
     folded = scope.casefold()
-    if caution.first.name in read.named or any(p.name.casefold() in folded for p in _firsts(hazard)):
+    unnamed = [
+        kind
+        for kind in partners
+        if kind not in read.named and not any(p.name.casefold() in folded for p in _substances(hazard, kind))
+    ]
+    if not unnamed:
         return ""
-    return f"names {' and '.join(read.words) or 'no substance'}, not {_word_of(caution.first.name)}"
+    return f"names {' and '.join(read.words) or 'no substance'}, not {' and '.join(map(_word_of, unnamed))}"
 
 
-def _firsts(hazard: Hazard) -> Iterator[Present]:
-    """Yield the substances that the first kind of the caution stands for."""
+def _substances(hazard: Hazard, kind: str) -> Iterator[Present]:
+    """Yield the substances of a hazard that are of a kind."""
     for present in (hazard.at, *hazard.others):
-        if present.whereabouts in _SUBSTANCES and hazard.caution.first.name in present.kinds:
+        if present.whereabouts in _SUBSTANCES and kind in present.kinds:
             yield present
 
 

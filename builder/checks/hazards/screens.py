@@ -100,6 +100,8 @@ def _second_opinions(azide: AzideView) -> str:
 # --- heat -------------------------------------------------------------------------------------------------------
 
 _THERMAL = "thermal: {{reaction_enthalpy: {enthalpy} kJ/mol, heat_capacity: 1.8 J/(g K), source: RC1 run 12{more}}}"
+ONSET_MARGIN_K = 100.0
+"""What an onset by DSC must lie above the MTSR where T_D24 is not known; common practice, no source."""
 _GRAVE = frozenset({CriticalityClass.THREE, CriticalityClass.FOUR, CriticalityClass.FIVE})
 
 
@@ -111,24 +113,29 @@ _GRAVE = frozenset({CriticalityClass.THREE, CriticalityClass.FOUR, CriticalityCl
     fires_on=(
         f"# without solvent\nneat: true\n{_THERMAL.format(enthalpy='-180', more='')}",
         _THERMAL.format(enthalpy="-60", more=", accumulation: 100 %, onset: {temperature: 65 °C, by: DSC}"),
+        _THERMAL.format(enthalpy="-60", more=", accumulation: 40 %, onset: {temperature: 110 °C, by: DSC}"),
     ),
     silent_on=(
         _THERMAL.format(enthalpy="-60", more=", accumulation: 100 %"),
         _THERMAL.format(enthalpy="-60", more=", accumulation: 40 %, onset: {temperature: 180 °C, by: DSC}"),
+        _THERMAL.format(
+            enthalpy="-60", more=", accumulation: 40 %, onset: {temperature: 110 °C, by: DSC}, td24: 90 °C, mtt: 153 °C"
+        ),
     ),
 )
 def reaction_can_run_away(case: Case) -> Iterator[Fault]:
     """The heat of a reaction, let go at once, lies above a limit: adiabatic rise, MTSR or criticality class.
 
     From given data only: a rise of 50 K and more, or any where gas forms; a maximum temperature of the synthesis
-    reaction (MTSR) that reaches the measured onset of decomposition; or class 3 to 5 of Stoessel. Silence is no
+    reaction (MTSR) that reaches the measured onset of decomposition, or comes within 100 K of it where no T_D24 is
+    given, for a scan sees decomposition later than a batch that stays warm; or class 3 to 5 of Stoessel. Silence is no
     clearance: it is a screening estimate, and without the data nothing is assessed.
     """
     if case.record.thermal is None:
         return
     forms_gas = bool(gases_of_record(case.record, case.structures, case.amounts))
     screen = thermal_screen(case.record, case.structures, case.amounts, forms_gas=forms_gas)
-    said = [*_rise_said(screen), *_temperatures_said(screen)]
+    said = [*_rise_said(screen), *_temperatures_said(screen, has_td24=case.record.thermal.td24 is not None)]
     if said:
         yield Fault(
             at=("thermal",),
@@ -144,9 +151,13 @@ def _rise_said(screen: ThermalScreen) -> Iterator[str]:
         yield f"adiabatic rise {screen.rise_k:.1f} K, severity {screen.severity}{gas}"
 
 
-def _temperatures_said(screen: ThermalScreen) -> Iterator[str]:
-    if screen.mtsr_c is not None and screen.onset_c is not None and screen.mtsr_c >= screen.onset_c:
-        yield f"MTSR {one_decimal(screen.mtsr_c)} °C reaches the onset of decomposition at {screen.onset_c:g} °C"
+def _temperatures_said(screen: ThermalScreen, *, has_td24: bool) -> Iterator[str]:
+    if screen.mtsr_c is not None and screen.onset_c is not None:
+        nears = f"MTSR {one_decimal(screen.mtsr_c)} °C {{}} the onset of decomposition at {screen.onset_c:g} °C"
+        if screen.mtsr_c >= screen.onset_c:
+            yield nears.format("reaches")
+        elif not has_td24 and screen.onset_c - screen.mtsr_c < ONSET_MARGIN_K:
+            yield nears.format(f"comes within {ONSET_MARGIN_K:g} K of") + ", and no T_D24 is given"
     if screen.criticality in _GRAVE:
         yield f"criticality class {screen.criticality} of 5"
 

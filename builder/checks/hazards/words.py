@@ -5,22 +5,38 @@ bleach of a scrubber), nor a warning in brackets ("kept basic (hydrogen sulfide 
 """
 
 import re
+import unicodedata
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from functools import cache, lru_cache
 
 from builder.checks.hazards.kinds import SubstanceKind, load_substance_kinds
 
-__all__ = ["Mention", "Named", "ScopeWords", "is_denied", "kinds_named_in", "read_scope"]
+__all__ = ["Mention", "Named", "ScopeWords", "is_denied", "kinds_named_in", "plain", "read_scope"]
 
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|below|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
+_PH_FLOOR = re.compile(
+    r"(?:\bpH\s*(?:(?:is |kept |stays )?(?:above|over|at least|not below|never below)|>=|[≥>])"
+    r"|\b(?:not|never) below pH)\s*(\d+(?:\.\d+)?)"
+)
+_CEILING = re.compile(r"(?:\b(?:below|under|up to)|[<≤]=?)\s*(?:pH\s*)?$")
+_HIGHEST_PH = 14.0
 _DENIAL = re.compile(
     r"\b(?:no|not|non|never|without|avoid|avoiding|free of|free from|instead of|rather than)\b", re.IGNORECASE
 )
 _STOP = re.compile(r",(?!\s(?:and )?then (?!\w*(?:ed|ify)\b))|[;:()]|\.\s")
 """What ends a clause; ", then bleach" goes on with the same vessel, ", then acidified" does not."""
 _CLAUSE_END = re.compile(rf"{_STOP.pattern}|\bbut\b|\bthen\b")
+_ONLY_BASIC = re.compile(
+    r"\b(?:basic|alkaline) (?:quench|work-?up)|\bkept (?:basic|alkaline)"
+    r"|\bpH\s*(?:above|over|at least|>=|[≥>])\s*(?:9|1\d)"
+    r"|\babove pH (?:9|1\d)",
+    re.IGNORECASE,
+)
+_ACIDS = frozenset({"acid", "weak acid"})
 _THOUGHT = re.compile(r"\bwould\b")  # "acid would set it free"
+_NEUTRALISED = "neutrali"  # begins the words that name an acid only where nothing says what it is done with
+_BY_WHAT = re.compile(r"\b(?:with|by|using)\s(?!care\b|stirring\b|ice\b|(?:\w+\s)?cooling\b)", re.IGNORECASE)
 _REACH_OF_DENIAL = 4  # words: "never let it touch copper"
 _PARTING = re.compile(
     r"\b(?:apart|away) from(?:(?:\s[\w-]+){0,4}|(?:\s[\w-]+){1,3}(?:,(?:\s[\w-]+){1,3})+\s(?:and|or))\s$", re.IGNORECASE
@@ -52,7 +68,11 @@ class Named:
 
 @lru_cache(maxsize=512)
 def kinds_named_in(text: str) -> Named:
-    """Return the kinds a text names; "no acid", "acid-free" and "Lewis acid" name no acid."""
+    """Return the kinds a text names; "no acid", "acid-free" and "Lewis acid" name no acid.
+
+    Subscripts and superscripts count as the digits they are: CH₂Cl₂.
+    """
+    text = plain(text)
     here: set[str] = set()
     behind: set[str] = set()
     found = list(_names_in(text))
@@ -60,15 +80,20 @@ def kinds_named_in(text: str) -> Named:
         kinds = _vocabulary().kinds_by_word.get(name, frozenset()) - here
         if not kinds or is_denied(text, start) or _is_warning(text, start):
             continue
+        if name.startswith(_NEUTRALISED) and _BY_WHAT.search(_clause_at(text, start)):
+            continue  # what it is done with is named itself, if it is an acid
         inside = [other for other, low, high in found if low <= start and end <= high]
         masked = frozenset().union(*(_vocabulary().kinds_masked.get(other, frozenset()) for other in inside))
         is_behind = _OTHER_VESSEL.search(_clause_at(text, start)) is not None
         here |= (kinds - masked) & (_WHEREVER if is_behind else kinds)
         behind |= (kinds - masked) - _WHEREVER if is_behind else frozenset()
     values = list(_stated_ph(text))
-    for kind in load_substance_kinds().values() if values else ():
-        if any(low <= value < high for low, high in kind.ph_ranges for value in values):
-            here.add(kind.name)
+    floors = [*(value for value, is_ceiling in values if not is_ceiling), *_least_ph(text)]
+    for kind in load_substance_kinds().values() if values or floors else ():
+        for low, high in kind.ph_ranges:
+            is_open = high > _HIGHEST_PH
+            if any(low <= value for value in floors) if is_open else any(low <= value < high for value, _ in values):
+                here.add(kind.name)
     return Named(frozenset(here), frozenset(behind))
 
 
@@ -98,8 +123,10 @@ class ScopeWords:
 def read_scope(text: str) -> ScopeWords:
     """Return what the scope of a safety review names and excludes ("no acid").
 
-    Besides their words kinds are named by what reviewers call them: azide, hydride, alkylator.
+    Besides their words kinds are named by what reviewers call them: azide, hydride, alkylator; and by the lowest pH a
+    scope allows: "no acid below pH 8" names the weak acids that hold it. "Basic quench" excludes acid.
     """
+    text = plain(text)
     vocabulary = _vocabulary()
     excluded: set[str] = set()
     spans: dict[tuple[int, int], frozenset[str]] = {}
@@ -112,11 +139,20 @@ def read_scope(text: str) -> ScopeWords:
             excluded |= kinds
         elif kinds:
             spans[start, end] = spans.get((start, end), frozenset()) | kinds
-    named = frozenset().union(*spans.values())
+    if _ONLY_BASIC.search(text):
+        excluded |= _ACIDS
+    by_ph = {kind.name for kind in load_substance_kinds().values() if any(map(kind.holds_ph, _any_ph(text)))}
+    named = frozenset().union(*spans.values(), by_ph - excluded)
     longest = [(a, b) for a, b in spans if not any(c <= a and b <= d and (a, b) != (c, d) for c, d in spans)]
     words = tuple(dict.fromkeys(text[start:end] for start, end in longest))
     mentions = tuple(Mention(start, end, spans[start, end]) for start, end in sorted(longest))
     return ScopeWords(named, words, frozenset(excluded - named), mentions)
+
+
+def plain(text: str) -> str:
+    """Return a text of the same length in the letters and digits that names are written in: CH₂Cl₂ as CH2Cl2."""
+    letters = (unicodedata.normalize("NFKC", letter) for letter in text)
+    return "".join(shown if len(shown) == 1 else letter for shown, letter in zip(letters, text, strict=True))
 
 
 def _names_in(text: str) -> Iterator[tuple[str, int, int]]:
@@ -203,8 +239,21 @@ def _clause_at(text: str, start: int) -> str:
     return text[begins : ends.start() if ends else len(text)]
 
 
-def _stated_ph(text: str) -> Iterator[float]:
-    """Yield the pH values a line names; one that must not be reached ("not below pH 5") is none."""
+def _any_ph(text: str) -> Iterator[float]:
+    """Yield every pH a text states, a limit that must not be passed too."""
+    for match in _PH.finditer(text):
+        yield float(match[1])
+    yield from _least_ph(text)
+
+
+def _stated_ph(text: str) -> Iterator[tuple[float, bool]]:
+    """Yield the pH values a line names, and whether each is a ceiling; one that must not be reached is none."""
     for match in _PH.finditer(text):
         if not is_denied(text, match.start()):
-            yield float(match[1])
+            yield float(match[1]), _CEILING.search(text[: match.start(1)]) is not None
+
+
+def _least_ph(text: str) -> Iterator[float]:
+    """Yield the pH values below which a line says it does not go."""
+    for match in _PH_FLOOR.finditer(text):
+        yield float(match[1])
