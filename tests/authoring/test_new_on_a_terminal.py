@@ -71,7 +71,7 @@ SCRIPT = [
     ("Base (name or SMILES): ", ""),
     ("Number: ", "racemate"),
     ("(10 mmol or 1.37 g): ", "10 mmol"),
-    ("[Y/n]: ", "y"),
+    ("[y/N]: ", "y"),
     ("Number: ", "bench-2"),
 ]
 

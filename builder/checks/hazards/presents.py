@@ -1,6 +1,6 @@
 """What cautions look at in a record: its substances, and the lines of text that may name others."""
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 
 from builder.checks.case import Case, compounds_of
 from builder.checks.conditions import CLOSED_VESSELS
@@ -15,15 +15,21 @@ from builder.rule import Path
 __all__ = ["hazards_of", "presents_of"]
 
 
-def hazards_of(case: Case) -> tuple[Hazard, ...]:
-    """Return the hazards of a record, in the order of the table of cautions."""
+def hazards_of(case: Case, also: Iterable[Present] = ()) -> tuple[Hazard, ...]:
+    """Return the hazards of a record, in the order of the table of cautions.
+
+    also: what is present besides, such as products that are forecast; what the record has already counts once.
+    """
     stages = case.record.stages
     setting = Setting(
         hottest_c=max(stage.temperature.highest_c for stage in stages),
         is_closed=any(stage.vessel in CLOSED_VESSELS for stage in stages),
         eliminates=Result.ELIMINATION in case.record.outcome.result and not case.record.bases,
     )
-    return find_hazards(presents_of(case), setting)
+    presents = presents_of(case)
+    known = {present.structure.smiles for present in presents if present.structure is not None}
+    more = (each for each in also if each.structure is None or each.structure.smiles not in known)
+    return find_hazards((*presents, *more), setting)
 
 
 def presents_of(case: Case) -> tuple[Present, ...]:
