@@ -229,7 +229,7 @@ def test_a_filled_record_passes_the_checks(
 
 REFUSED = [
     (Stated(substrate="2-bromobutan"), 'unknown substrate "2-bromobutan"; did you mean "2-bromobutane"?'),
-    (Stated(substrate="dimethylnonsense"), "give a name of the tables, or its SMILES"),
+    (Stated(substrate="dimethylnonsense"), "the tables do not know this name: give its SMILES"),
     (Stated(substrate="CCC(C"), "branch that is not closed (character 4)"),
     (Stated(substrate="CCBr", nucleophile="sodium azid"), 'did you mean "sodium azide"?'),
     (Stated(substrate="CCBr", base="potasium carbonate"), 'did you mean "potassium carbonate"?'),
