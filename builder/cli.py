@@ -250,7 +250,7 @@ def serve(config: Path, address: str) -> None:
 @click.option("--temperature", help='With its unit: "60 °C", "0 °C to 25 °C".')
 @click.option("--time", help='With its unit: "16 h".')
 @click.option("--want", metavar="RESULT|MECHANISM|SMILES", help="Which product is the desired one.  [default: main]")
-@click.option("--from", "origin", metavar="NS…|nearest", help="Take solvent, stages and work-up of that entry.")
+@click.option("--from", "origin", metavar="NS…|nearest", help="Take solvent, stages and work-up of that entry, if any.")
 @click.option("--title", help="In one line.  [default: from the names]")
 @click.option("--by", "person", envvar="HANDBOOK_BY", show_envvar=True, help="Your code in handbook.yml.")
 @click.option("--in", "inside", metavar="FOLDER", help="A folder of the book; it is made if need be.")

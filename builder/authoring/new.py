@@ -30,7 +30,6 @@ from builder.checks.hazards.cautions import Severity
 from builder.checks.hazards.meetings import Hazard
 from builder.checks.nearest import Likeness, attacker_of, nearest
 from builder.chemistry.perception import attacking_atoms
-from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.asking import AskingError
 from builder.mechanism.compounds import Identified, identified, identify
@@ -171,17 +170,18 @@ def _what_reacts(stated: Stated, today: dt.date, dialogue: Dialogue) -> Plan:
     if named is None and drawing is not None:
         named = identified(drawing.substrate)
     if named is None:
-        named = dialogue.may_say("Substrate (name or SMILES)", lambda answer: identify(answer, "substrate"))
+        named = dialogue.may_say("Substrate (name or SMILES)", _read_substrate)
     if named is None:
         raise AskingError("no substrate is given", "write `handbook new SUBSTRATE`, or give --rxn FILE")
+    if not stated.nucleophile and drawing is None:
+        _refuse_a_lone_nucleophile(named)
     nucleophile, base = _attackers(stated, drawing, dialogue)
     if isinstance(nucleophile, Identified) and is_swapped(named, nucleophile):
         named, nucleophile = _swapped(named, nucleophile, dialogue)
     molecule = named.structure
     if molecule is None:
         raise AskingError(f"{named.name} has no one structure", "give the SMILES of what bears the leaving group")
-    if nucleophile is None:
-        _refuse_a_lone_nucleophile(named, molecule)
+    _refuse_a_lone_nucleophile(named)
     _tell_readings(named, nucleophile, base, dialogue)
     named = _with_name(named, "substrate", dialogue)
     if isinstance(nucleophile, Identified):
@@ -247,10 +247,18 @@ def _swapped(first: Identified, second: Identified, dialogue: Dialogue) -> tuple
     raise AskingError(said, f"write `handbook new '{_called(second)}' --nucleophile '{_called(first)}'`")
 
 
-def _refuse_a_lone_nucleophile(substrate: Identified, structure: Structure) -> None:
+def _read_substrate(answer: str) -> Identified:
+    substrate = identify(answer, "substrate")
+    _refuse_a_lone_nucleophile(substrate)
+    return substrate
+
+
+def _refuse_a_lone_nucleophile(substrate: Identified) -> None:
     """Refuse an ion or a salt as substrate that has nothing to leave: it is the nucleophile."""
-    is_ionic = any(piece.charge for piece in structure.fragments)
-    if is_ionic and attacking_atoms(structure) and not leaving_sites(structure):
+    structure = substrate.structure
+    if structure is None or all(not piece.charge for piece in structure.fragments):
+        return
+    if attacking_atoms(structure) and not leaving_sites(structure):
         called = _called(substrate)
         mend = f"write `handbook new SUBSTRATE --nucleophile '{called}'`"
         raise AskingError(f"{called} attacks, and bears nothing that leaves", mend)
@@ -380,7 +388,7 @@ def _origin(stated: str, near: Case | None, shelf: Shelf, plan: Plan, dialogue: 
         if stated and not plan.attacks_or_takes_protons:
             raise AskingError("the nearest entry depends on what attacks", "state nucleophile or base")
         if stated:
-            raise AskingError(said, "leave --from out, or name an entry")
+            dialogue.tell(f"{said}: solvent, stages and work-up are not taken from any")
         return None
     offer = f"{near.record.entry}, {near.record.title} ({offer_of(near)})"
     if stated or dialogue.agrees(f"Take solvent, stages and work-up of the nearest entry, {offer}?", by_enter=False):

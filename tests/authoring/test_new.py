@@ -234,6 +234,7 @@ REFUSED = [
     (Stated(substrate="CCBr", nucleophile="sodium azid"), 'did you mean "sodium azide"?'),
     (Stated(substrate="CCBr", base="potasium carbonate"), 'did you mean "potassium carbonate"?'),
     (Stated(substrate="NaN3"), "NaN3 attacks, and bears nothing that leaves"),
+    (Stated(substrate="NaN3", nucleophile="K2CO3"), "NaN3 attacks, and bears nothing that leaves"),
     (Stated(substrate="NaN3", nucleophile="CCCBr"), "write `handbook new 'propyl bromide' --nucleophile 'NaN3'`"),
     (Stated(substrate="BrBr", nucleophile="C=CC"), "bromine attacks, and C=CC is attacked"),
     (Stated(substrate="CCBr", origin=NEAREST), "state nucleophile or base"),
@@ -249,7 +250,6 @@ REFUSED = [
     (Stated(substrate="CCBr", equivalents="some"), "no number of equivalents"),
     (Stated(substrate="CCBr", equivalents="0"), "out of range"),
     (Stated(substrate="CCBr", nucleophile="NaN3", origin="NS4T9XQ2M"), 'did you mean "NS4T9XQ2N"?'),
-    (Stated(substrate="C=CC", nucleophile="HBr", origin=NEAREST), "no entry has this class (alkene)"),
     (Stated(substrate="CCBr", title="<b>bold</b>"), "looks like HTML"),
     (Stated(), "no substrate is given"),
     (Stated(rxn="$RXN\n"), "RXN block without counts"),
@@ -361,6 +361,22 @@ def test_mirror_images_are_one_product_with_their_ratio(book: Path) -> None:
     assert "enantiomers 5" in line
     assert text.count("CCO[C@") == 1
     assert "    # - {ee: 97 %, of: A, by: chiral HPLC}" in text.splitlines()
+
+
+@pytest.mark.parametrize("stated", [Stated(), Stated(substrate="NaN3"), Stated(substrate="NaN3", base="K2CO3")])
+def test_what_only_attacks_is_refused_as_substrate_before_anything_else_is_asked(book: Path, stated: Stated) -> None:
+    somebody = Answers("NaN3")
+    with pytest.raises(AskingError, match="NaN3 attacks, and bears nothing that leaves"):
+        _draft(book, stated, somebody)
+    assert somebody.questions == ([] if stated.substrate else ["Substrate (name or SMILES)"])
+
+
+def test_the_nearest_entry_is_done_without_where_none_is_near(book: Path) -> None:
+    told = Told()
+    text = _draft(book, Stated(substrate="C=CC", nucleophile="HBr", origin=NEAREST), told).text
+    said = "no entry has this class (alkene) and attacking atom in common"
+    assert f"{said}: solvent, stages and work-up are not taken from any" in told.lines
+    assert "temperature: TO FILL IN" in text
 
 
 # --- from an entry, from a drawing ----------------------------------------------------------------------------
