@@ -17,6 +17,7 @@ from builder.checks.agreement import CONTRARY_RULES, is_covered
 from builder.checks.case import Case, open_case
 from builder.checks.group import Gathering, Member
 from builder.checks.house import House, tool_version
+from builder.checks.kinship import Kin
 from builder.checks.run import check_group, check_record, check_settings, settle
 from builder.checks.standing import Standing, standing_of
 from builder.chemistry.sketch import load_ring_templates
@@ -119,6 +120,8 @@ class Book(Generic[Kept]):
 
     folder: absolute. entries: in order of identifier; only records without errors are among them.
     findings: of all files, sorted by place. files: absolute paths of every record read.
+    near_same: every two entries in force of one reaction under near-same conditions, by their identifiers in order,
+    with what the second is to the first.
     """
 
     folder: Path
@@ -127,6 +130,7 @@ class Book(Generic[Kept]):
     entries: tuple[Entry[Kept], ...]
     findings: tuple[Finding, ...]
     files: tuple[Path, ...]
+    near_same: tuple[tuple[str, str, Kin], ...]
 
     @property
     def by_id(self) -> Mapping[str, Entry[Kept]]:
@@ -242,7 +246,8 @@ def open_book(
         if memory is None
         else _recalled(desk, files, processes, progress, memory)
     )
-    settled = judge(examined, settings)
+    gathering = _gathering(examined, settings)
+    settled = _settled(examined, gathering)
     entries = [
         Entry(
             record=each.reading.record,
@@ -266,7 +271,16 @@ def open_book(
         entries=tuple(sorted(publishable, key=lambda entry: entry.id)),
         findings=tuple(sorted(everything, key=lambda finding: finding.sort_key)),
         files=files,
+        near_same=_between(publishable, gathering),
     )
+
+
+def _between(entries: Iterable[Entry[Any]], gathering: Gathering) -> tuple[tuple[str, str, Kin], ...]:
+    """Return the pairs of a gathering of which both are among these entries, the lower identifier first, in order."""
+    listed = {entry.id for entry in entries}
+    pairs = ((one.record.entry, other.record.entry, kin) for one, other, kin in gathering.near_same)
+    turned = ((a, b, kin) if a < b else (b, a, kin.mirrored) for a, b, kin in pairs if {a, b} <= listed)
+    return tuple(sorted(turned, key=lambda pair: pair[:2]))
 
 
 def _recalled(
@@ -380,13 +394,21 @@ def _nothing(_: Case) -> None:
 
 def judge(examined: Sequence[Examined[Any]], settings: Settings) -> dict[str, tuple[Finding, ...]]:
     """Return the final findings by file: each record's own, those against the others, acceptances applied."""
+    return _settled(examined, _gathering(examined, settings))
+
+
+def _gathering(examined: Sequence[Examined[Any]], settings: Settings) -> Gathering:
     members = tuple(
         Member(each.reading.file, each.reading.record, settings, each.reading.places, each.standing)
         for each in examined
         if each.reading.record is not None and each.standing is not None
     )
     unread = frozenset(Path(each.reading.file).stem for each in examined if each.reading.record is None)
-    against_others = check_group(Gathering(members, unread))
+    return Gathering(members, unread)
+
+
+def _settled(examined: Sequence[Examined[Any]], gathering: Gathering) -> dict[str, tuple[Finding, ...]]:
+    against_others = check_group(gathering)
     settled: dict[str, tuple[Finding, ...]] = {}
     for each in examined:
         reading = each.reading

@@ -8,7 +8,7 @@ import json
 import os
 import re
 import sys
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from difflib import get_close_matches
 from importlib.resources import files
 from pathlib import Path
@@ -25,7 +25,7 @@ from builder.authoring.new import Stated, draft_record, folder_inside, write_dra
 from builder.authoring.schema import schemas, write_schemas
 from builder.authoring.sheet import SheetError
 from builder.authoring.start import StartError, start_book
-from builder.authoring.whole_file import written_whole
+from builder.authoring.whole_file import written_new, written_whole
 from builder.book import Book, is_aside, open_book, record_files
 from builder.checks.case import Case
 from builder.checks.forecast_cautions import forecast_cautions
@@ -57,6 +57,7 @@ from builder.publish.forecast_text import render_forecast
 from builder.publish.progress import counted, stepped, watched
 from builder.records.quantities import QuantityError
 from builder.records.reader import MAX_BYTES, read_file_into, read_settings
+from builder.records.schema import RECORD_SCHEMA
 from builder.records.settings import SETTINGS_FILE
 from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places
@@ -186,7 +187,7 @@ def check(
             click.echo(f"{finding.place}: mended {finding.rule}: {finding.message}")
         if visible:
             click.echo(render_text(visible, book))
-        click.echo(summary(shown, records))
+        click.echo(summary(shown, records, were_mended=fix))
     _end(shown, Level(fail_on))
 
 
@@ -346,8 +347,9 @@ def import_(
         raise click.UsageError(f"--into {into} is no folder inside the book {book}")
     if is_aside(folder.relative_to(book.resolve())):
         raise click.UsageError(f"--into {into}: no records are read from there")
-    if report is not None and report.resolve() == sheet_file.resolve():
-        raise click.UsageError("--report is the sheet itself; give another file")
+    for option, target in (("--report", report), ("--write-map", write_map)):
+        if target is not None:
+            _refuse_loss(option, target, {"the sheet": sheet_file, "the map": map_file}, book)
     column_map, places = _column_map(map_file)
     try:
         rows = open_sheet(sheet_file, sheet=sheet or column_map.sheet, heading_row=column_map.heading_row)
@@ -378,6 +380,15 @@ def import_(
         sys.exit(FINDINGS)
 
 
+def _refuse_loss(option: str, target: Path, read: Mapping[str, Path | None], book: Path) -> None:
+    """Refuse to write over what is read, or among the records."""
+    for what, path in read.items():
+        if path is not None and target.exists() and target.samefile(path):
+            raise click.UsageError(f"{option} is {what} itself; give another file")
+    if target.resolve().is_relative_to(book.resolve()):
+        raise click.UsageError(f"{option} {target} lies inside the book {book}; give a file outside")
+
+
 def _column_map(path: Path | None) -> tuple[ColumnMap, Places]:
     if path is None:
         return ColumnMap(), Places("")
@@ -390,7 +401,7 @@ def _column_map(path: Path | None) -> tuple[ColumnMap, Places]:
 
 def _write_new(path: Path, text: str) -> None:
     try:
-        with path.open("x", encoding="utf-8", newline="\n") as file:
+        with written_new(path) as file:
             file.write(text)
     except FileExistsError as error:
         raise click.UsageError(f"{path} is there already: name a new file") from error
@@ -418,7 +429,8 @@ def export(form: str, only: str | None, status: tuple[str, ...], output: Path | 
     files, _ = record_files(book.resolve())
     found = list(watched(exported_records(book.resolve(), files), len(files)))
     unread = [each for each in found if isinstance(each, str)]
-    records = within((each for each in found if isinstance(each, Exported)), only, [Status(word) for word in status])
+    going = within((each for each in found if isinstance(each, Exported)), only, [Status(word) for word in status])
+    records = going.records
     text = csv_text(records) if form == "csv" else jsonl_text(records)
     if output is None:
         sys.stdout.buffer.write(text.encode())
@@ -426,6 +438,8 @@ def export(form: str, only: str | None, status: tuple[str, ...], output: Path | 
         with written_whole(output) as file:
             file.write((BYTE_ORDER_MARK if form == "csv" else "") + text)
     click.echo(how_many(len(records), "entry", "entries") + " exported", err=True)
+    for entry, column in going.left_out.items():
+        click.echo(f"{entry} is left out, for its {column} names an entry that is kept back", err=True)
     for path in unread:
         click.echo(f"{path} cannot be read and is left out: see `handbook check`", err=True)
     if unread:
@@ -473,7 +487,7 @@ def schema(to_terminal: bool, book: Path) -> None:
       handbook schema --print
     """
     if to_terminal:
-        click.echo(json.dumps(schemas()["record-1.json"], indent=2))
+        click.echo(json.dumps(schemas()[RECORD_SCHEMA.name], indent=2))
         return
     for path in write_schemas(book):
         click.echo(str(path))

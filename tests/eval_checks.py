@@ -13,7 +13,7 @@ import sys
 from collections import Counter, defaultdict
 from collections.abc import Sequence
 
-from tests import slips
+from tests import keyboard_slips
 from tests.blocking import blocking_table
 from tests.honest_records import COUNT, honest_records
 from tests.import_table import import_table
@@ -55,7 +55,7 @@ def main(words: Sequence[str]) -> int:
     misses = "--misses" in words
     print_mistakes(misses=misses)
     print_honest(misses=misses)
-    for table in (slips.table(), blocking_table(), import_table()):
+    for table in (keyboard_slips.table(), blocking_table(), import_table()):
         print(f"\n{table}", end="")
     return 0
 

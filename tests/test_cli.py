@@ -335,6 +335,19 @@ def test_a_drawing_too_large_to_be_one_is_misuse(run: Run, book: Path, tmp_path:
     assert "big.rxn has more than 256 kB" in ran.err
 
 
+def test_schemas_are_written_both_or_none(run: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    replace, calls = Path.replace, iter(range(2))
+
+    def fails_at_the_second(self: Path, target: Path) -> Path:
+        if next(calls) == 1:
+            raise OSError(28, "no space left")
+        return replace(self, target)
+
+    monkeypatch.setattr(Path, "replace", fails_at_the_second)
+    assert run("schema", "--book", tmp_path).code == 2
+    assert list(tmp_path.iterdir()) == []
+
+
 def test_schema_is_written_and_printed(run: Run, book: Path) -> None:
     run("schema", "--book", book)
     written = json.loads((book / "schema" / "record-1.json").read_text("utf-8"))

@@ -11,7 +11,7 @@ from decimal import Decimal
 from difflib import get_close_matches
 from typing import Annotated, Literal
 
-from pydantic import BeforeValidator, Discriminator, Field, Tag
+from pydantic import AfterValidator, BeforeValidator, Discriminator, Field, Tag
 
 from builder.authoring.sheet import Sheet
 from builder.records.fields import Count, Flag, Line, OneOrMany, faulty
@@ -23,6 +23,7 @@ from builder.records.quantities import is_unit
 __all__ = [
     "DEFAULTS",
     "IGNORED",
+    "IN_BRACES",
     "ColumnMap",
     "Target",
     "first_map",
@@ -37,6 +38,8 @@ IGNORED = "ignore"
 DEFAULTS = {"format": "1", "revision": "1", "status": "draft"}
 """What a row need not say."""
 
+IN_BRACES = re.compile(r"\{([^{}]*)\}")
+"""What a constant has filled in from the row: the name of a column."""
 _LONGEST_HEADING = 100
 """Beyond it nothing is guessed."""
 _UNIT_IN_HEADING = re.compile(
@@ -49,12 +52,24 @@ def _column_or_ignored(value: object) -> object:
 
 
 def _column_name(value: object) -> object:
-    if not isinstance(value, str) or shape_at(value) is not None:
-        return value
-    near = likely_column(value)
+    if isinstance(value, str):
+        _refuse_unknown(value, f", or {IGNORED}")
+    return value
+
+
+def _names_in_braces(value: str) -> str:
+    for name in IN_BRACES.findall(value):
+        _refuse_unknown(name, " between the braces")
+    return value
+
+
+def _refuse_unknown(name: str, or_else: str) -> None:
+    if shape_at(name) is not None:
+        return
+    near = likely_column(name)
     hint = f'; did you mean "{near}"?' if near else ""
-    mend = f"write {near or 'one that `handbook export` writes'}, or {IGNORED}"
-    raise faulty("value-not-permitted", f'no record has a column "{value:.80}"{hint}', mend, near)
+    mend = f"write {near or 'one that `handbook export` writes'}{or_else}"
+    raise faulty("value-not-permitted", f'no record has a column "{name:.80}"{hint}', mend, near)
 
 
 def _as_typed(value: object) -> object:
@@ -67,6 +82,7 @@ DateOrder = Literal["D.M.Y", "D/M/Y", "M/D/Y", "D-M-Y", "Y/M/D"]
 Name = Annotated[Line, BeforeValidator(_column_name)]
 Goal = Annotated[Line, BeforeValidator(_column_or_ignored)]
 Typed = Annotated[Line, BeforeValidator(_as_typed)]
+Constant = Annotated[Typed, AfterValidator(_names_in_braces)]
 
 
 class Column(Part):
@@ -101,7 +117,7 @@ class ColumnMap(Part):
         str,
         Annotated[Annotated[Goal, Tag("<text>")] | Annotated[Column, Tag("<more>")], Discriminator(_name_or_more)],
     ] = Field(default_factory=dict)
-    constants: dict[Name, Typed] = Field(default_factory=dict)
+    constants: dict[Name, Constant] = Field(default_factory=dict)
     words: dict[str, Typed] = Field(default_factory=dict)
     empty: OneOrMany[Line] | None = None
     decimal_comma: Flag = False

@@ -15,7 +15,6 @@ from difflib import unified_diff
 from functools import lru_cache
 from itertools import accumulate
 from pathlib import Path
-from stat import S_IMODE
 from typing import Any
 
 from builder.authoring.whole_file import written_whole
@@ -89,10 +88,8 @@ def write_mended(mended: Mended) -> bool:
     """Write a mended file; False if it changed since it was read, and then it is left as it is."""
     if mended.path.read_bytes() != mended.before.encode():
         return False
-    mode = mended.path.stat().st_mode
     with written_whole(mended.path) as file:
         file.write(mended.after)
-    mended.path.chmod(S_IMODE(mode))
     return True
 
 

@@ -12,7 +12,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 
-from builder.authoring.column_map import DEFAULTS, ColumnMap, Target, iso_date, tidy
+from builder.authoring.column_map import DEFAULTS, IN_BRACES, ColumnMap, Target, iso_date, tidy
 from builder.authoring.sheet import Cell, Row, Sheet
 from builder.checks.structures import structure_is_unreadable
 from builder.chemistry.perception import perceive_sites
@@ -40,7 +40,6 @@ _BARE_NUMBER = re.compile(
     r"[<>≤≥]?\s*[-+\u2010-\u2013\u2212]?[\d.,]*\d[\d.,]*(?:[eE][-+]?\d+)?(?:\s*(?:[-\u2010-\u2013\u2212]|to)\s*[-+\u2212]?[\d.,]+)?"
 )
 _LONGEST_NUMBER = 60
-_GAP = re.compile(r"\{([a-z_0-9.]+)\}")
 
 
 @dataclass(frozen=True, slots=True)
@@ -63,7 +62,7 @@ class Desk:
     """All that a row is read with, and held against.
 
     targets: by column. map_places: where the map has its constants. files: of the book, by identifier.
-    into: the folder for new records. schema: the JSON Schema of records; both absolute.
+    book, into: its folder, and the one for new records; both absolute.
     """
 
     sheet: Sheet
@@ -74,7 +73,7 @@ class Desk:
     files: Mapping[str, Path]
     retired: frozenset[str]
     into: Path
-    schema: Path
+    book: Path
     may_update: bool
 
 
@@ -195,7 +194,7 @@ def _constants(desk: Desk, cells: dict[str, str], column_of: Mapping[str, int]) 
         heads = set(_items(name)) & mapped
         if name in cells or not heads <= given:
             continue
-        cells[name] = " ".join(_GAP.sub(lambda gap: cells.get(gap[1], ""), value).split())
+        cells[name] = " ".join(IN_BRACES.sub(lambda found: cells.get(canonical_name(found[1]), ""), value).split())
         added[name] = typed
     return added
 
@@ -352,7 +351,7 @@ def at_cell(desk: Desk, row: Row, column: int | None, finding: Finding) -> CellF
 def _placed(desk: Desk, row: Row, spots: _Spots, finding: Finding) -> CellFinding:
     """Return a finding of the reader, whose place is the number of a spot, at its cell, constant or row."""
     column, constant, part = spots.known[finding.place.column - 1]
-    if constant is not None and _GAP.search(desk.column_map.constants[constant]):
+    if constant is not None and IN_BRACES.search(desk.column_map.constants[constant]):
         finding = replace(finding, message=f"{constant}: {finding.message}")
     elif constant is not None:
         place = desk.map_places.of(("constants", constant))

@@ -6,7 +6,6 @@ of the row alone; what became of that entry since is told by a mark that the rec
 """
 
 import hashlib
-import os
 import re
 from collections import Counter
 from collections.abc import Callable, Iterator, Mapping, Sequence
@@ -25,6 +24,7 @@ from builder.authoring.import_row import (
     read_row,
     row_finding,
 )
+from builder.authoring.schema import schema_seen_from
 from builder.authoring.sheet import Row, Sheet, SheetError, bytes_of, read_csv, read_jsonl
 from builder.authoring.whole_file import write_all
 from builder.authoring.workbook import read_workbook
@@ -34,6 +34,7 @@ from builder.records.digest import digest
 from builder.records.flat import column_order, flatten, name_of
 from builder.records.model import Record
 from builder.records.reader import read_bytes, read_record
+from builder.records.schema import modeline
 from builder.records.settings import Settings
 from builder.records.vocabulary import Status
 from builder.records.yaml_text import Places, read_plain
@@ -158,7 +159,7 @@ def plan_import(
         files={path.stem: path for path in record_files(book)[0]},
         retired=frozenset(settings.retired if settings else ()),
         into=into,
-        schema=book / "schema" / "record-1.json",
+        book=book,
         may_update=may_update,
     )
     readings: list[tuple[Row, RowReading]] = []
@@ -318,14 +319,13 @@ def _other_key(desk: Desk, content: RowContent, has: Mapping[str, str]) -> str:
 def _file_text(desk: Desk, row: Row, reading: RowReading, folder: Path) -> str:
     """Return the file that a row makes in a folder."""
     content, unflattened = reading.content, reading.unflattened
-    schema = Path(os.path.relpath(desk.schema, folder)).as_posix()
     assert isinstance(unflattened.value, dict)  # noqa: S101 - a row has columns
     source = "".join(c if c.isprintable() else " " for c in tidy(desk.sheet.shown_as))
     paths = {name: at for at, name in unflattened.columns.items()}
     remarks = {paths[name]: "perceived from the SMILES" for name in content.perceived if name in paths}
     body = record_yaml(unflattened.value, remarks=remarks)
     return (
-        f"# yaml-language-server: $schema={schema}\n"
+        f"{modeline(schema_seen_from(folder, desk.book))}\n"
         f"# imported from {source}, row {row.number}; content {_content_mark(body)}\n{body}"
     )
 

@@ -1,7 +1,6 @@
 """`handbook new`: from what a chemist is about to run, a record to be completed at the bench."""
 
 import datetime as dt
-import os
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from difflib import get_close_matches
@@ -21,6 +20,7 @@ from builder.authoring.partners import (
     stereo_of,
 )
 from builder.authoring.plan import NEAT, Plan, PlannedReagent, PlannedStage, safety_case, trial_case
+from builder.authoring.schema import schema_seen_from
 from builder.authoring.skeleton import skeleton
 from builder.authoring.whole_file import written_new
 from builder.book import Shelf, is_aside, read_shelf
@@ -101,7 +101,7 @@ def draft_record(stated: Stated, folder: Path, today: dt.date, dialogue: Dialogu
     plan, guide = _how_it_is_run(plan, stated, shelf, dialogue)
     plan = replace(plan, person=_person(stated, settings, dialogue), title=_title(plan, stated, shelf))
     entry = _free_identifier(book, settings)
-    schema = Path(os.path.relpath(book / "schema" / "record-1.json", folder.resolve())).as_posix()
+    schema = schema_seen_from(folder, book)
     _refuse_what_no_reader_takes(skeleton(plan, (), None, entry=entry, schema=schema), entry)
     forecast, hazards = _forecast(plan, guide, dialogue)
     expected = expected_products(forecast, want, plan.products, plan.stereo)

@@ -97,7 +97,7 @@ class Plan:
     @property
     def molecule(self) -> Structure:
         """Return the structure of the substrate, which is known from the start."""
-        assert self.substrate.structure is not None  # noqa: S101 - `identify_substrate` admits nothing else
+        assert self.substrate.structure is not None  # noqa: S101 - `new` refuses a substrate without one
         return self.substrate.structure
 
     @property

@@ -1,20 +1,22 @@
 """`handbook schema`: write the JSON Schemas that editors bind to."""
 
 import json
-from pathlib import Path
+import os
+from pathlib import Path, PurePath
 from typing import Any
 
+from builder.authoring.whole_file import write_all
 from builder.chemistry.perception import leaving_group_names, site_class_names
-from builder.records.schema import record_schema, settings_schema
+from builder.records.schema import RECORD_SCHEMA, SETTINGS_SCHEMA, record_schema, settings_schema
 
-__all__ = ["schema_texts", "schemas", "write_schemas"]
+__all__ = ["schema_seen_from", "schema_texts", "schemas", "write_schemas"]
 
 
 def schemas() -> dict[str, dict[str, Any]]:
     """Return the schemas by file name."""
     return {
-        "record-1.json": record_schema(site_class_names(), leaving_group_names()),
-        "handbook-1.json": settings_schema(),
+        RECORD_SCHEMA.name: record_schema(site_class_names(), leaving_group_names()),
+        SETTINGS_SCHEMA.name: settings_schema(),
     }
 
 
@@ -24,12 +26,12 @@ def schema_texts() -> dict[str, str]:
 
 
 def write_schemas(book: Path) -> tuple[Path, ...]:
-    """Write the schemas to `schema/` inside the book; return the files."""
-    folder = book / "schema"
-    folder.mkdir(parents=True, exist_ok=True)
-    written = []
-    for name, text in schema_texts().items():
-        path = folder / name
-        path.write_text(text, encoding="utf-8", newline="\n")
-        written.append(path)
-    return tuple(written)
+    """Write the schemas into the book, both or none; return the files."""
+    texts = {book / RECORD_SCHEMA.parent / name: text for name, text in schema_texts().items()}
+    write_all(texts)
+    return tuple(texts)
+
+
+def schema_seen_from(folder: Path, book: Path) -> PurePath:
+    """Return the path to the schema of records from a folder of their book."""
+    return PurePath(os.path.relpath((book / RECORD_SCHEMA).resolve(), folder.resolve()))

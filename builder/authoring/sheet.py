@@ -207,12 +207,12 @@ def read_jsonl(data: bytes, shown_as: str) -> Sheet:
         if not line.strip():
             continue
         try:
-            held = json.loads(line)
+            held = json.loads(line, parse_int=float)  # any number is refused below, however long it is
         except (json.JSONDecodeError, RecursionError) as error:
             raise SheetError(f"{shown_as}:{number} is no JSON ({error}): write one object a line") from error
         if not isinstance(held, dict) or not all(isinstance(value, str) for value in held.values()):
             raise SheetError(f"{shown_as}:{number} is no object of texts: quote every value, numbers too")
-        if _LONE_SURROGATE.search("".join(held.values())):
+        if _LONE_SURROGATE.search("".join((*held, *held.values()))):
             raise SheetError(f"{shown_as}:{number} holds half a character (\\ud800 to \\udfff): write it whole")
         cells = {columns.setdefault(name, len(columns)): Cell(value) for name, value in held.items() if value}
         if len(columns) > MAX_COLUMNS or len(rows) == MAX_ROWS:

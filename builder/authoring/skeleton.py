@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from decimal import Decimal
 from enum import StrEnum
+from pathlib import PurePath
 
 from builder.authoring.expectation import Expected
 from builder.authoring.plan import Plan, PlannedSolvent, PlannedStage, moles_of
@@ -10,6 +11,7 @@ from builder.chemistry.structure import Structure
 from builder.mechanism.compounds import Identified, identified
 from builder.mechanism.forecast import Forecast
 from builder.records.mended_text import quoted
+from builder.records.schema import modeline
 from builder.records.specimen import GAP
 from builder.records.vocabulary import (
     Course,
@@ -36,7 +38,7 @@ def skeleton(
     forecast: Forecast | None,
     *,
     entry: str,
-    schema: str,
+    schema: PurePath,
     warnings: Mapping[int, Sequence[str]] | None = None,
 ) -> str:
     """Return the YAML of a record that holds a plan, for its writer to complete.
@@ -93,8 +95,8 @@ def _digits(number: float) -> str:
 # --- blocks ---------------------------------------------------------------------------------------------------
 
 
-def _head(plan: Plan, entry: str, schema: str) -> Iterator[str]:
-    yield f"# yaml-language-server: $schema={schema}"
+def _head(plan: Plan, entry: str, schema: PurePath) -> Iterator[str]:
+    yield modeline(schema)
     yield _line(0, "format", "1")
     yield _line(0, "entry", entry)
     yield _line(0, "revision", "1")

@@ -4,6 +4,7 @@ import os
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
+from stat import S_IMODE
 from typing import TextIO
 
 __all__ = ["write_all", "written_new", "written_whole"]
@@ -13,7 +14,8 @@ __all__ = ["write_all", "written_new", "written_whole"]
 def written_whole(path: Path) -> Iterator[TextIO]:
     """Open a file beside `path` for UTF-8 text with plain line ends, and put it in its place at the end.
 
-    Where the body raises, or is interrupted, `path` stays as it was. A link is followed.
+    Where the body raises, or is interrupted, `path` stays as it was. A link is followed, and a file that is replaced
+    keeps its permissions.
     Raises OSError where the folder is missing or may not be written, or `path` is something other than a file.
     """
     target = path.resolve()
@@ -22,6 +24,8 @@ def written_whole(path: Path) -> Iterator[TextIO]:
     beside = target.with_name(f".{target.name}.{os.getpid()}.part")
     try:
         with beside.open("w", encoding="utf-8", newline="\n") as file:
+            if target.exists():
+                beside.chmod(S_IMODE(target.stat().st_mode))
             yield file
         beside.replace(target)
     finally:
@@ -75,15 +79,19 @@ def written_new(path: Path) -> Iterator[TextIO]:
 
 
 def _put_without_replacing(beside: Path, path: Path) -> None:
-    """Give a file its name if nothing bears it, also where the file system knows no hard links."""
+    """Give a file its name if nothing bears it.
+
+    Where the file system knows no hard links, an empty file takes the name first: a reader may meet that one for a
+    moment, and it is left if the machine stops there, but never a part of the text.
+    """
     try:
         path.hardlink_to(beside)
     except FileExistsError:
         raise
     except OSError:
-        with path.open("xb") as file:
-            try:
-                file.write(beside.read_bytes())
-            except BaseException:
-                path.unlink()
-                raise
+        path.touch(exist_ok=False)
+        try:
+            beside.replace(path)
+        except BaseException:
+            path.unlink()
+            raise

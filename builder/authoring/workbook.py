@@ -12,18 +12,22 @@ import zipfile
 import zlib
 from collections.abc import Callable, Iterator, Mapping
 from decimal import Decimal
-from itertools import zip_longest
 from typing import Any
 from xml.parsers import expat
 
 from openpyxl import load_workbook
+from openpyxl.cell.read_only import EMPTY_CELL
 
-from builder.authoring.sheet import Cell, Sheet, SheetError, Trouble, sheet_of
+from builder.authoring.sheet import MAX_COLUMNS, MAX_ROWS, Cell, Sheet, SheetError, Trouble, sheet_of
 
 __all__ = ["read_workbook"]
 
 MAX_UNPACKED = 200 * 1024 * 1024
 MAX_PARTS = 2_000
+MAX_CELLS = MAX_ROWS * MAX_COLUMNS
+"""Looked at in one sheet, empty ones before and between the others included."""
+LAST_ROW = 1_048_576
+"""Where spreadsheet programs end a sheet; from memory."""
 _MEANS_SOMETHING = Decimal(10) ** 15
 _BROKEN = (
     expat.ExpatError,
@@ -54,13 +58,15 @@ def read_workbook(data: bytes, name: str, *, sheet: str | None, heading_row: int
         raise SheetError(f"{name} is no workbook that can be read ({error}): save it anew as .xlsx") from error
     chosen = _chosen(results.worksheets, name, sheet)
     shown, typed = results[chosen], formulas[chosen]
+    shown_as = f"{name}!{chosen}"
     for each in (shown, typed):
         each.reset_dimensions()  # a declared size may be wrong, or a billion cells
     try:
         with warnings.catch_warnings(action="ignore"):
-            return sheet_of(f"{name}!{chosen}", _rows(shown, typed), heading_row, _notes(data, chosen))
+            notes = _notes(data, chosen, shown_as)
+            return sheet_of(shown_as, _rows(shown, typed, shown_as), heading_row, notes)
     except (*_BROKEN, SyntaxError) as error:
-        raise SheetError(f"{name}!{chosen} cannot be read ({error}): save it anew as .xlsx") from error
+        raise SheetError(f"{shown_as} cannot be read ({error}): save it anew as .xlsx") from error
 
 
 def _chosen(sheets: list[Any], name: str, wanted: str | None) -> str:
@@ -82,8 +88,7 @@ def _refuse_bombs(data: bytes, name: str) -> None:
             if len(listed) > MAX_PARTS or sum(part.file_size for part in listed) > MAX_UNPACKED:
                 raise SheetError(f"{name} unpacks to more than {MAX_UNPACKED // 1024**2} MB: import it in parts")
             for part in listed:
-                if part.filename.endswith((".xml", ".rels")):
-                    _refuse_document_type(parts, part, name)
+                _refuse_document_type(parts, part, name)
     except (zipfile.BadZipFile, zlib.error, NotImplementedError, RuntimeError, EOFError) as error:
         raise SheetError(f"{name} is no .xlsx workbook: save it as .xlsx or as CSV UTF-8") from error
 
@@ -93,6 +98,11 @@ class _HasBegunError(Exception):
 
 
 def _refuse_document_type(parts: zipfile.ZipFile, part: zipfile.ZipInfo, name: str) -> None:
+    """Refuse a part with a document type, whatever it is called: what names it decides whether it is read as XML.
+
+    A part that is no XML is refused where its name says that it should be.
+    """
+
     def refuse(*_: object) -> None:
         raise SheetError(f"{name} declares a document type in {part.filename}, which no spreadsheet program writes")
 
@@ -108,16 +118,23 @@ def _refuse_document_type(parts: zipfile.ZipFile, part: zipfile.ZipInfo, name: s
         except _HasBegunError:
             return
         except expat.ExpatError as error:
+            if not part.filename.lower().endswith((".xml", ".rels")):
+                return
             raise SheetError(f"{name} holds broken XML in {part.filename}: save it anew") from error
 
 
-def _notes(data: bytes, sheet: str) -> tuple[str, ...]:
-    """Return what the cells themselves do not tell: rows that are hidden, values that stand for several rows."""
+def _notes(data: bytes, sheet: str, shown_as: str) -> tuple[str, ...]:
+    """Return what the cells themselves do not tell: rows that are hidden, values that stand for several rows.
+
+    Raises SheetError for a row beyond the last there can be, before anybody walks there.
+    """
     hidden: list[str] = []
     merged: list[str] = []
 
     def look(tag: str, about: dict[str, str]) -> None:
         match tag.rpartition(":")[2]:
+            case "row" if float(about.get("r", 0)) > LAST_ROW:
+                raise _beyond_last_row(shown_as)
             case "row" if about.get("hidden") in {"1", "true"}:
                 hidden.append(about.get("r", "?"))
             case "mergeCell" if len(set(re.findall(r"\d+", about.get("ref", "")))) > 1:
@@ -133,6 +150,10 @@ def _notes(data: bytes, sheet: str) -> tuple[str, ...]:
     if merged:
         notes.append(f"merged cells hold their value in their first row only: {_some(merged)}")
     return tuple(notes)
+
+
+def _beyond_last_row(shown_as: str) -> SheetError:
+    return SheetError(f"{shown_as} has a row beyond {LAST_ROW:,}, where every sheet ends: save it anew as .xlsx")
 
 
 def _some(listed: list[str]) -> str:
@@ -165,20 +186,29 @@ def _look_through(parts: zipfile.ZipFile, part: str, look: Callable[[str, dict[s
             parser.Parse(chunk)
 
 
-def _rows(results: Any, formulas: Any) -> Iterator[tuple[int, Mapping[int, Cell]]]:
-    pairs = zip_longest(results.iter_rows(), formulas.iter_rows(), fillvalue=())
-    for number, (shown, typed) in enumerate(pairs, start=1):
-        cells = {}
-        for column, (result, formula) in enumerate(zip_longest(shown, typed)):
-            cell = _cell(result, None if formula is None else formula.value)
-            if cell is not None:
-                cells[column] = cell
-        yield number, cells
+def _rows(results: Any, formulas: Any, shown_as: str) -> Iterator[tuple[int, Mapping[int, Cell]]]:
+    """Yield numbered rows, from the results and the formulas of one and the same sheet.
+
+    Raises SheetError where a few cells, set far apart, would make a long walk.
+    """
+    walked = 0
+    for number, (shown, typed) in enumerate(zip(results.iter_rows(), formulas.iter_rows(), strict=True), start=1):
+        walked += len(shown)
+        if number > LAST_ROW:
+            raise _beyond_last_row(shown_as)
+        if walked > MAX_CELLS:
+            raise SheetError(f"{shown_as} spans more than {MAX_CELLS:,} cells: delete the empty columns on its right")
+        read = (
+            (column, _cell(result, formula.value))
+            for column, (result, formula) in enumerate(zip(shown, typed, strict=True))
+            if formula is not EMPTY_CELL
+        )
+        yield number, {column: cell for column, cell in read if cell is not None}
 
 
 def _cell(result: Any, typed: Any) -> Cell | None:
     """Return a cell; None where it is empty."""
-    value = None if result is None else result.value
+    value = result.value
     if value is None:
         if typed is None or not str(typed).strip():
             return None

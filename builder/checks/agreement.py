@@ -204,26 +204,38 @@ def course_contradicts_structure(case: Case) -> Iterator[Fault]:
     level=Level.QUERY,
     source="iupac-gold",
     needs=(*AGREEMENT_READS, "course-twice"),
-    fires_on=(_PRIMARY + _product("CCCCN=[N+]=[N-]", "claim: {mechanism: SN2, course: inversion}"),),
+    fires_on=(
+        _PRIMARY + _product("CCCCN=[N+]=[N-]", "claim: {mechanism: SN2, course: inversion}"),
+        _product("CCC(C)N=[N+]=[N-]", "claim: {mechanism: SN2, course: inversion}"),
+    ),
     silent_on=(_chiral("CC[C@@H](C)N=[N+]=[N-]", "inversion"),),
 )
 def course_has_no_stereocentre(case: Case) -> Iterator[Fault]:
-    """Inversion, retention or racemisation is claimed only where the reacting carbon is a stereocentre.
+    """Inversion, retention or racemisation is claimed only where the reacting carbon is a stereocentre that shows it.
 
-    Elsewhere the course is `not applicable`, or `not determined` where a racemate hides it.
+    Elsewhere the course is `not applicable`; it is `not determined` where a racemate with that one stereocentre hides
+    it: both mirror images come out, whatever happened to each.
     """
     marks = {each.site.alpha_carbon in each.on.stereocentre_marks for each in case.sites}
-    if not marks or True in marks:
+    if not marks:
         return
     told = {Course.INVERSION, Course.RETENTION, Course.RACEMISATION, Course.PARTIAL_INVERSION, Course.DOUBLE_INVERSION}
     claim = case.record.outcome.claim
-    if claim is not None and claim.course in told:
-        yield Fault(
-            at=("outcome", "claim", "course"),
-            message=f"{claim.course} is claimed, but the reacting carbon is no stereocentre",
-            mend="write course: not applicable",
-            fix=str(Course.NOT_APPLICABLE),
-        )
+    if claim is None or claim.course not in told:
+        return
+    at: Path = ("outcome", "claim", "course")
+    if True not in marks:
+        message = f"{claim.course} is claimed, but the reacting carbon is no stereocentre"
+        yield Fault(at=at, message=message, mend="write course: not applicable", fix=str(Course.NOT_APPLICABLE))
+    elif _is_plain_racemate(case):
+        message = f"{claim.course} is claimed of a racemate with one stereocentre, which cannot show it"
+        mend = "write course: not determined, or correct stereo: of the substrate"
+        yield Fault(at=at, message=message, mend=mend, fix=str(Course.NOT_DETERMINED))
+
+
+def _is_plain_racemate(case: Case) -> bool:
+    is_racemate = case.record.substrate.stereo is StereoKind.RACEMATE
+    return is_racemate and len(case.substrate.stereocentre_marks) == 1
 
 
 @rule(

@@ -5,7 +5,7 @@ The tolerances stand below; they are common practice and have no source. `outcom
 Everything here is symmetric: what holds of one entry against another holds the other way round.
 """
 
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import product
 
@@ -20,8 +20,10 @@ __all__ = [
     "are_near_same",
     "differences",
     "disagreements",
+    "disagreements_in",
     "is_near",
     "is_one_experiment",
+    "seen_by_quantity",
     "telling_difference",
 ]
 
@@ -107,6 +109,8 @@ class Disagreement:
 
 def are_near_same(one: Standing, other: Standing) -> bool:
     """Say whether two entries ran the same reaction under near-same conditions, base and reagents apart."""
+    if abs(one.temperature_c - other.temperature_c) > NEAR_K + _ROUNDING:
+        return False  # the cheapest first: in a book of many runs of one reaction most pairs end here
     if not one.key or one.key != other.key or one.is_flow != other.is_flow:
         return False
     return all(is_near(each, one, other) for each in DECISIVE)
@@ -120,14 +124,13 @@ def is_near(variable: Variable, one: Standing, other: Standing) -> bool:
     return one.words[variable] == other.words[variable]
 
 
-def differences(one: Standing, other: Standing) -> tuple[Difference, ...]:
-    """Return what differs, the most telling first."""
-    found = (
-        Difference(variable, *_said(variable, one, other), is_near(variable, one, other))
-        for variable in Variable
-        if one.words[variable] != other.words[variable]
-    )
-    return tuple(each for each in found if each.here != each.there)
+def differences(one: Standing, other: Standing) -> Iterator[Difference]:
+    """Yield what differs, the most telling first."""
+    for variable in Variable:
+        if one.words[variable] != other.words[variable]:
+            here, there = _said(variable, one, other)
+            if here != there:
+                yield Difference(variable, here, there, is_near(variable, one, other))
 
 
 def _said(variable: Variable, one: Standing, other: Standing) -> tuple[str, str]:
@@ -180,6 +183,8 @@ def _attackers(each: Standing) -> tuple[Charge, ...]:
 
 
 def _near_solvents(one: Standing, other: Standing) -> bool:
+    if one.solvents == other.solvents and one.volumes == other.volumes:
+        return True
     if one.volumes is None or other.volumes is None:
         return one.solvents == other.solvents
     mine = dict(zip(one.solvents, one.volumes, strict=True))
@@ -231,13 +236,21 @@ _BYSTANDERS = frozenset({Variable.RUNS, Variable.BY, Variable.DATE})
 # --- outcomes -----------------------------------------------------------------------------------------------
 
 
+SeenByQuantity = Mapping[str, Mapping[YieldKind | None, Seen]]
+"""What was seen in one entry, by quantity and kind."""
+
+
 def disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
     """Return the numbers of two outcomes that cannot both be the rule, the furthest apart first.
 
     Yields of one kind are compared where both have that kind, else across kinds. Sums over a formula are left out where
     a product disagrees by itself.
     """
-    mine, theirs = _by_quantity(one.seen), _by_quantity(other.seen)
+    return disagreements_in(seen_by_quantity(one), seen_by_quantity(other))
+
+
+def disagreements_in(mine: SeenByQuantity, theirs: SeenByQuantity) -> tuple[Disagreement, ...]:
+    """Return the same of what was seen, sorted out once for each entry that is held against many."""
     found = [_most_apart(mine[what], theirs[what]) for what in mine.keys() & theirs.keys()]
     kept = [each for each in found if each is not None]
     if any(each.here.what.startswith("yield") and not each.here.is_sum for each in kept):
@@ -245,10 +258,10 @@ def disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
     return tuple(sorted(kept, key=lambda each: (-each.weight, each.here.what)))
 
 
-def _by_quantity(seen: Iterable[Seen]) -> dict[str, dict[YieldKind | None, Seen]]:
+def seen_by_quantity(standing: Standing) -> SeenByQuantity:
     """Return what was seen by quantity and kind; several numbers for one are taken as the range they span."""
     found: dict[str, dict[YieldKind | None, Seen]] = {}
-    for each in seen:
+    for each in standing.seen:
         kinds = found.setdefault(each.what, {})
         known = kinds.get(each.kind)
         kinds[each.kind] = each if known is None else _spanned(known, each)

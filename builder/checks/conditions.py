@@ -7,7 +7,7 @@ from builder.finding import Level
 from builder.mechanism.amounts import Role, charged_rows, present_rows, present_solvents
 from builder.mechanism.flask_roles import FlaskRole, roles_in
 from builder.mechanism.gas import ATMOSPHERE_BAR
-from builder.mechanism.solvents import Solvent, find_solvent, freezing_point_c, nearest_solvents
+from builder.mechanism.solvents import Solvent, freezing_point_c, nearest_solvents, solvent_of
 from builder.mechanism.vapour_pressure import boiling_range_c, bubble_point_c
 from builder.mechanism.volatiles import find_volatile
 from builder.records.model import Stage
@@ -305,8 +305,7 @@ CONDITION_CHECKS = (
 
 
 def _row(case: Case, index: int) -> Solvent | None:
-    structure = case.structures.get(("solvent", index))
-    return find_solvent(case.record.solvents[index].name, structure.smiles if structure else None)
+    return solvent_of(case.record.solvents[index].name, case.structures.get(("solvent", index)))
 
 
 def _parts(case: Case, stage: int) -> list[tuple[Solvent, float]] | None:

@@ -3,8 +3,9 @@
 from collections import defaultdict
 from collections.abc import Callable, Hashable, Iterator
 from dataclasses import dataclass
+from functools import cached_property
 
-from builder.checks.kinship import Kin, Relation, contradictions, kin_of, near_same_pairs
+from builder.checks.kinship import Kin, Relation, near_same_kin
 from builder.checks.standing import Standing
 from builder.finding import Level
 from builder.records.model import EvidenceFile, Record
@@ -26,12 +27,23 @@ class Member:
     standing: Standing
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Gathering:
     """All records of a book. unread: names of the files of which no record could be made."""
 
     members: tuple[Member, ...]
     unread: frozenset[str] = frozenset()
+
+    @cached_property
+    def in_force(self) -> tuple[Member, ...]:
+        """Return the members that still hold."""
+        return tuple(member for member in self.members if _is_in_force(member.record))
+
+    @cached_property
+    def near_same(self) -> tuple[tuple[Member, Member, Kin], ...]:
+        """Return every two members in force of one reaction under near-same conditions, worked out once."""
+        standings = [(index, member.standing) for index, member in enumerate(self.in_force)]
+        return tuple((self.in_force[one], self.in_force[other], kin) for one, other, kin in near_same_kin(standings))
 
 
 Found = Iterator[tuple[Member, Fault]]
@@ -85,11 +97,10 @@ def entry_is_a_duplicate(book: Gathering) -> Found:
     notebook-page-twice.
     """
     mend = "keep one of them, correct the date or the masses, or accept this with the reason"
-    for one, other in near_same_pairs(_standing_in_force(book)):
-        pages = {member.record.notebook for member, _ in (one, other)}
-        shares_page = len(pages) == 1 and None not in pages
-        if not shares_page and kin_of(one[1], other[1]).relation is Relation.DUPLICATES:
-            for member, twin in ((one[0], other[0]), (other[0], one[0])):
+    for one, other, kin in book.near_same:
+        shares_page = one.record.notebook == other.record.notebook is not None
+        if not shares_page and kin.relation is Relation.DUPLICATES:
+            for member, twin in ((one, other), (other, one)):
                 message = f"{twin.record.entry} is the same reaction under near-same conditions with the same outcome"
                 yield member, Fault(at=("performed", "date"), message=message, mend=mend)
 
@@ -145,7 +156,7 @@ def evidence_stands_twice(book: Gathering) -> Found:
     twice, or the wrong file behind one of them; where it shows both, as a calibration does, say so.
     """
     holders: defaultdict[str, dict[str, tuple[Member, Path]]] = defaultdict(dict)
-    for member, _ in _standing_in_force(book):
+    for member in book.in_force:
         for index, item in enumerate(member.record.evidence):
             if isinstance(item, EvidenceFile):
                 holders[item.sha256].setdefault(member.file, (member, ("evidence", index, "sha256")))
@@ -206,9 +217,10 @@ def outcomes_contradict(book: Gathering) -> Found:
     Nothing is rejected and nothing averaged: both observations stand. What is wanted is the reason, in both records.
     """
     mend = "correct the one that is wrong, state in both what differs, or accept this with the reason"
-    for one, other, _ in contradictions(_standing_in_force(book)):
-        for member, against in ((one, other), (other, one)):
-            yield member, _contradiction(kin_of(member.standing, against.standing), against.record.entry, mend)
+    for one, other, kin in book.near_same:
+        if kin.relation is Relation.CONTRADICTS:
+            yield one, _contradiction(kin, other.record.entry, mend)
+            yield other, _contradiction(kin.mirrored, one.record.entry, mend)
 
 
 def _contradiction(kin: Kin, other: str, mend: str) -> Fault:
@@ -218,10 +230,6 @@ def _contradiction(kin: Kin, other: str, mend: str) -> Fault:
     return Fault(
         at=most.here.at, message=message, mend=mend, data={"other": other, "points_apart": round(most.apart, 1)}
     )
-
-
-def _standing_in_force(book: Gathering) -> list[tuple[Member, Standing]]:
-    return [(member, member.standing) for member in book.members if _is_in_force(member.record)]
 
 
 @rule(

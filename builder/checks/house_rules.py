@@ -14,10 +14,11 @@ from builder.checks.group import person_codes
 from builder.checks.hazards.kinds import load_substance_kinds
 from builder.checks.hazards.meetings import Whereabouts
 from builder.checks.hazards.presents import presents_of
+from builder.checks.hazards.words import is_denied
 from builder.checks.house import House
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
-from builder.mechanism.solvents import Solvent, find_solvent, load_solvents, nearest_solvents
+from builder.mechanism.solvents import Solvent, find_solvent, load_solvents, nearest_solvents, solvent_of
 from builder.records.house_rules import HouseRule, is_like
 from builder.records.model import Part, Record
 from builder.records.quantities import Dimension, Quantity
@@ -50,19 +51,21 @@ def _under(keys: str, example: str = "") -> str:
     ),
     silent_on=(
         _under(_DMF, _OTHER + "\nwork_up: [washed with brine without NMP]"),
+        _under(_DMF, _OTHER + "\nwork_up: [extracted with ethyl acetate rather than any DMF]"),
         _under(_LATER, "solvent: [{name: DMF, volume: 20 mL}]\nstages: [{temperature: 60 °C, time: 16 h}]"),
     ),
 )
 def solvent_is_banned(case: Case) -> Iterator[Fault]:
     """A solvent that the house has banned is not charged, under any of its names, nor used in the work-up.
 
-    Names in the work-up count unless they are denied, as in "without DMF".
+    Names in the work-up count unless they are denied, as in "without DMF" or "avoid any DMF".
     """
     for each in _in_force(case, "banned_solvents"):
         banned = {known.name for name in each.banned_solvents or () if (known := find_solvent(name))}
         for path, name, solvent in _solvents(case):
             if solvent in banned:
-                yield _fault(each, path, f"{name} is used", each.instead or "use another solvent")
+                instead = f"the house says: {each.instead}" if each.instead else "use another solvent"
+                yield _fault(each, path, f"{name} is used", instead)
 
 
 @rule(
@@ -91,7 +94,7 @@ def scale_is_exceeded(case: Case) -> Iterator[Fault]:
                     each,
                     path,
                     f"{_in_unit_of(each.at_most, found)} of {name}",
-                    each.instead or f"run it at {each.at_most} or below",
+                    each.instead or f"next time run it at {each.at_most} or below; accept this with what was agreed",
                 )
 
 
@@ -138,6 +141,8 @@ def key_is_missing(case: Case) -> Iterator[Fault]:
     """
     for each in _in_force(case, "required"):
         for keys in each.required or ():
+            if keys not in key_paths(Record):
+                continue  # house-rule-unclear tells
             for path in _lacking(case.record, keys.split("."), ()):
                 yield _fault(each, path, f"{keys} is not stated", f"add {path[-1]}: …")
 
@@ -340,18 +345,16 @@ def _fault(each: HouseRule, at: Path, found: str, mend: str) -> Fault:
 def _solvents(case: Case) -> Iterator[tuple[Path, str, str]]:
     """Yield every use of a known solvent: path, name as typed, name in the table."""
     for path, _, substance in charged_rows(case.record):
-        structure = case.structures.get(path)
-        known = find_solvent(substance.name, structure.smiles if structure else None)
+        known = solvent_of(substance.name, case.structures.get(path))
         if known is not None:
             yield (*path, "name"), substance.name, known.name
     for index, line in enumerate(case.record.work_up or ()):
         for match in _solvent_names().finditer(line):
             known = find_solvent(match["name"])
-            if known is not None and not _DENIED.search(line[: match.start()]):
+            if known is not None and not is_denied(line, match.start()):
                 yield ("work_up", index), match["name"], known.name
 
 
-_DENIED = re.compile(r"\b(?:no|not|without|free of|free from|instead of)\s+$", re.IGNORECASE)
 _AMBIGUOUS = frozenset({"ether", "glycol"})
 """Names of one solvent that stand in the names of many other substances."""
 

@@ -5,8 +5,9 @@ Every relation is derived from the standings, none is typed; each holds both way
 
 from collections import defaultdict
 from collections.abc import Callable, Hashable, Iterable, Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from enum import StrEnum
+from functools import cached_property
 from itertools import combinations
 from typing import TypeVar
 
@@ -16,13 +17,15 @@ from builder.checks.comparison import (
     are_near_same,
     differences,
     disagreements,
+    disagreements_in,
     is_near,
     is_one_experiment,
+    seen_by_quantity,
     telling_difference,
 )
 from builder.checks.standing import Standing, Variable
 
-__all__ = ["GO_ALONG", "VARIED", "Kin", "Relation", "contradictions", "families", "kin_of", "near_same_pairs"]
+__all__ = ["GO_ALONG", "VARIED", "Kin", "Relation", "families", "kin_of", "near_same_kin"]
 
 T = TypeVar("T", bound=Hashable)
 
@@ -52,30 +55,35 @@ GO_ALONG = (Variable.TIME, Variable.CONCENTRATION, Variable.VESSEL)
 """What is changed along with the rest, and makes a series only where nothing else differs."""
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Kin:
-    """What another entry (there) is to an entry (here)."""
+    """What another entry (there) is to an entry (here).
+
+    disagreements: the numbers that cannot both be the rule, the furthest apart first.
+    """
 
     relation: Relation
     here: Standing
     there: Standing
+    disagreements: tuple[Disagreement, ...] = ()
 
     @property
-    def disagreements(self) -> tuple[Disagreement, ...]:
-        """Return the numbers that cannot both be the rule, the furthest apart first."""
-        return disagreements(self.here, self.there)
+    def mirrored(self) -> "Kin":
+        """Return what the entry here is to the other."""
+        turned = tuple(replace(each, here=each.there, there=each.here) for each in self.disagreements)
+        return Kin(self.relation, self.there, self.here, turned)
 
     @property
     def differences(self) -> tuple[Difference, ...]:
         """Return what differs in the conditions, the most telling first."""
-        return differences(self.here, self.there)
+        return tuple(differences(self.here, self.there))
 
     @property
     def telling(self) -> Difference | None:
         """Return what most likely makes the difference; None where nothing that matters does."""
         return telling_difference(self.here, self.there)
 
-    @property
+    @cached_property
     def varied(self) -> tuple[Variable, ...]:
         """Return the variables in which the other is a variant of this one; empty where only the drawing differs."""
         return self._apart(VARIED) or self._apart(GO_ALONG)
@@ -84,31 +92,29 @@ class Kin:
         return tuple(variable for variable in variables if not is_near(variable, self.here, self.there))
 
 
-def near_same_pairs(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[tuple[T, Standing], tuple[T, Standing]]]:
-    """Yield every pair that ran one reaction under near-same conditions.
+def near_same_kin(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[T, T, Kin]]:
+    """Yield every pair that ran one reaction under near-same conditions, with what the second is to the first.
 
-    Only entries with one reaction key are compared, so a book takes time in proportion to its length.
+    Only entries with one reaction key are compared, each with each: a book takes time in proportion to its length as
+    long as few entries share a key, and for n of one key in proportion to n².
     """
     for sharing in _by((item for item in items if item[1].key), lambda standing: standing.key):
-        for one, other in combinations(sharing, 2):
-            if are_near_same(one[1], other[1]):
-                yield one, other
-
-
-def contradictions(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[T, T, Kin]]:
-    """Yield every pair that contradicts each other, with what the second is to the first."""
-    for (one, mine), (other, theirs) in near_same_pairs(items):
-        kin = kin_of(mine, theirs)
-        if kin.relation is Relation.CONTRADICTS:
-            yield one, other, kin
+        seen = [(name, standing, seen_by_quantity(standing)) for name, standing in sharing]
+        for (one, mine, mine_seen), (other, theirs, theirs_seen) in combinations(seen, 2):
+            if are_near_same(mine, theirs):
+                yield one, other, _near_same_kin(mine, theirs, disagreements_in(mine_seen, theirs_seen))
 
 
 def kin_of(one: Standing, other: Standing) -> Kin:
     """Return what an entry with the second standing is to one with the first, both of one transformation."""
     if not are_near_same(one, other):
         return Kin(Relation.VARIANT, one, other)
-    if disagreements(one, other):
-        return Kin(Relation.CONTRADICTS, one, other)
+    return _near_same_kin(one, other, disagreements(one, other))
+
+
+def _near_same_kin(one: Standing, other: Standing, apart: tuple[Disagreement, ...]) -> Kin:
+    if apart:
+        return Kin(Relation.CONTRADICTS, one, other, apart)
     if is_one_experiment(one, other):
         return Kin(Relation.DUPLICATES, one, other)
     is_variant = not all(is_near(variable, one, other) for variable in VARIED)

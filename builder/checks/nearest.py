@@ -6,8 +6,8 @@ from dataclasses import dataclass
 from builder.checks.case import Case
 from builder.chemistry.likeness import similarity
 from builder.chemistry.perception import attacking_atoms
-from builder.chemistry.structure import Structure, parse_smiles
-from builder.mechanism.solvents import find_solvent
+from builder.chemistry.structure import Structure
+from builder.mechanism.solvents import structure_of
 from builder.records.vocabulary import NucleophileWord
 
 __all__ = ["Likeness", "attacker_of", "likeness_of", "nearest"]
@@ -80,9 +80,6 @@ def nearest(asked: Likeness, cases: Iterable[Case]) -> tuple[tuple[Case, Likenes
 
 def _solvents(case: Case) -> Iterator[Structure]:
     for place, solvent in enumerate(case.record.solvents):
-        drawn = case.structures.get(("solvent", place))
-        row = None if drawn is not None else find_solvent(solvent.name)
-        if drawn is not None:
-            yield drawn
-        elif row is not None:
-            yield parse_smiles(row.smiles)
+        structure = structure_of(solvent.name, case.structures.get(("solvent", place)))
+        if structure is not None:
+            yield structure

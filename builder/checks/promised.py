@@ -4,12 +4,13 @@ import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
-from builder.checks.case import Case
+from builder.checks.case import Case, compounds_of
 from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import charged_rows
 from builder.mechanism.forms import forms_of, hydrate_waters, partner_count
 from builder.records.model import Charged
+from builder.records.vocabulary import StereoKind
 from builder.rule import Fault, rule
 
 __all__ = ["PROMISED_CHECKS"]
@@ -82,7 +83,46 @@ def form_is_not_drawn(case: Case) -> Iterator[Fault]:
         )
 
 
-PROMISED_CHECKS = (form_is_not_drawn,)
+_ABSOLUTE = re.compile(r"\((?:\d*[a-z]?[RS](?:,\s?)?)+\)-")
+_RACEMIC = re.compile(r"(?:\(±\)|rac|\(RS\)|DL)-")
+
+
+@rule(
+    id="name-against-stereo",
+    title="A name of one mirror image for a racemate, or the other way round",
+    level=Level.QUERY,
+    source="iupac-gold",
+    fires_on=(
+        "substrate: {name: (S)-2-bromobutane, smiles: 'CCC(C)Br', stereo: racemate, class: secondary, leaving_group:"
+        " bromide, amount: 10 mmol}",
+        "substrate: {name: rac-2-bromobutane, smiles: 'CC[C@H](C)Br', stereo: single enantiomer, class: secondary,"
+        " leaving_group: bromide, amount: 10 mmol}\n"
+        "outcome: {result: [substitution], products: [{label: A, name: 2-azidobutane, smiles: 'CCC(C)N=[N+]=[N-]'}],"
+        " measured: [{yield: 81 %, of: A, kind: assay}]}",
+    ),
+    silent_on=(
+        "substrate: {name: 2-bromobutane, smiles: 'CCC(C)Br', stereo: racemate, class: secondary, leaving_group:"
+        " bromide, amount: 10 mmol}",
+    ),
+)
+def name_is_against_stereo(case: Case) -> Iterator[Fault]:
+    """A name that begins with (R)- or (S)- is of one mirror image, one with rac- or (±)- of both.
+
+    Whoever reads the list sees the name alone. Starred descriptors, such as (2R*,3S*)-, are relative and fit both.
+    """
+    for path, compound in compounds_of(case.record):
+        stereo = getattr(compound, "stereo", None)
+        for pattern, against in ((_ABSOLUTE, StereoKind.RACEMATE), (_RACEMIC, StereoKind.SINGLE_ENANTIOMER)):
+            found = pattern.match(compound.name)
+            if found and stereo is against:
+                yield Fault(
+                    at=(*path, "name"),
+                    message=f"{found[0]} in the name, and stereo: {stereo}",
+                    mend="correct the name or the stereo word; the drawing goes with them",
+                )
+
+
+PROMISED_CHECKS = (form_is_not_drawn, name_is_against_stereo)
 
 
 def _lack(substance: Charged, structure: Structure) -> _Lack | None:

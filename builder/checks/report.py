@@ -87,10 +87,11 @@ def render_rule(rule: Rule[object, object], *, as_json: bool) -> str:
     return "\n".join(parts)
 
 
-def summary(findings: Sequence[Finding], records: int) -> str:
+def summary(findings: Sequence[Finding], records: int, *, were_mended: bool = False) -> str:
     """Return a line that says how many records and open findings of each level there are.
 
     A line follows for each house rule not kept, and one on what can be mended.
+    were_mended: what could be mended by itself has been, so that what is left needs a person.
     """
     open_findings = [finding for finding in findings if finding.accepted is None]
     counts = [(level, sum(finding.level is level for finding in open_findings)) for level in Level]
@@ -99,7 +100,11 @@ def summary(findings: Sequence[Finding], records: int) -> str:
     words += [f"{accepted} accepted"] if accepted else []
     checked = f"{records} record{'s' * (records != 1)} checked"
     sure = sum(finding.is_sure for finding in open_findings)
-    mends = [f"{sure} of these can be mended: `handbook check --diff` shows how, --fix does it"] if sure else []
+    if were_mended:
+        hand = f"{sure} of these could not be mended without a change elsewhere in the file: mend by hand"
+    else:
+        hand = f"{sure} of these can be mended: `handbook check --diff` shows how, --fix does it"
+    mends = [hand] if sure else []
     return "\n".join([f"{checked}: {', '.join(words) if words else 'nothing found'}", *_house_rules(findings), *mends])
 
 

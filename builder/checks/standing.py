@@ -13,7 +13,7 @@ from builder.checks.reaction_key import attacking_role, reaction_key, transforma
 from builder.checks.seen import Seen, seen_in
 from builder.mechanism.amounts import AmountRow, Role, charged_rows
 from builder.mechanism.from_record import COMPARABLE_K
-from builder.mechanism.solvents import find_solvent
+from builder.mechanism.solvents import solvent_of
 from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord, Vessel
 
@@ -94,7 +94,7 @@ def standing_of(case: Case) -> Standing:
     """Return what of a case is held against other entries."""
     record, amounts = case.record, case.amounts
     hottest, time_s = _heat(record.stages)
-    solvents, volumes = _solvents(record)
+    solvents, volumes = _solvents(case)
     seen = seen_in(case)
     return Standing(
         key=reaction_key(case),
@@ -129,11 +129,13 @@ def _heat(stages: Sequence[Stage]) -> tuple[float, float]:
     return hottest, sum(stage.time.magnitude for stage in as_hot)
 
 
-def _solvents(record: Record) -> tuple[tuple[str, ...], tuple[float, ...] | None]:
-    """Return the solvents by their names in the table, sorted, and their shares of the volume in per cent."""
-    known = {solvent.name: find_solvent(solvent.name) for solvent in record.solvents}
-    names = [row.name if (row := known[solvent.name]) else solvent.name.casefold() for solvent in record.solvents]
-    typed = [solvent.volume or solvent.fraction for solvent in record.solvents]
+def _solvents(case: Case) -> tuple[tuple[str, ...], tuple[float, ...] | None]:
+    """Return the solvents by their names in the table, sorted, and their shares of the volume in per cent.
+
+    A drawn solvent is what is drawn, whatever is on its bottle: one that the table lacks goes by its SMILES.
+    """
+    names = _solvent_names(case)
+    typed = [solvent.volume or solvent.fraction for solvent in case.record.solvents]
     parts: defaultdict[str, float] = defaultdict(float)
     for name, quantity in zip(names, typed, strict=True):
         parts[name] += quantity.magnitude if quantity is not None else 0.0
@@ -143,6 +145,15 @@ def _solvents(record: Record) -> tuple[tuple[str, ...], tuple[float, ...] | None
     alike = len({quantity.dimension for quantity in typed if quantity is not None}) == 1 and None not in typed
     total = sum(parts.values())
     return in_order, tuple(100.0 * parts[name] / total for name in in_order) if alike and total else None
+
+
+def _solvent_names(case: Case) -> list[str]:
+    names = []
+    for index, solvent in enumerate(case.record.solvents):
+        drawn = case.structures.get(("solvent", index))
+        known = solvent_of(solvent.name, drawn)
+        names.append(known.name if known else drawn.smiles if drawn else solvent.name.casefold())
+    return names
 
 
 def _charges(case: Case, role: Role) -> tuple[Charge, ...]:
@@ -171,7 +182,7 @@ def _words(case: Case, solvents: tuple[str, ...], volumes: tuple[float, ...] | N
     return {
         Variable.BASE: _listed(case, Role.BASE, with_amounts=attacking is Role.NUCLEOPHILE),
         Variable.REAGENTS: _listed(case, Role.REAGENT, with_amounts=True),
-        Variable.SOLVENT: _solvent_words(solvents, volumes),
+        Variable.SOLVENT: _solvent_words(case, solvents, volumes),
         Variable.NUCLEOPHILE: str(record.nucleophile)
         if isinstance(record.nucleophile, NucleophileWord)
         else _listed(case, Role.NUCLEOPHILE, with_amounts=False),
@@ -203,10 +214,12 @@ def _equivalents(row: AmountRow) -> str:
     return f"{_three(row.equivalents)} equiv" if row.equivalents is not None else "amount not known"
 
 
-def _solvent_words(solvents: tuple[str, ...], volumes: tuple[float, ...] | None) -> str:
+def _solvent_words(case: Case, solvents: tuple[str, ...], volumes: tuple[float, ...] | None) -> str:
+    typed = dict(zip(_solvent_names(case), (solvent.name for solvent in case.record.solvents), strict=True))
+    shown = [name if solvent_of(name, None) else typed[name] for name in solvents]
     if volumes is None or len(solvents) < 2:
-        return " + ".join(solvents) or "none (neat)"
-    return " + ".join(f"{name} {share:.3g} vol%" for name, share in zip(solvents, volumes, strict=True))
+        return " + ".join(shown) or "none (neat)"
+    return " + ".join(f"{name} {share:.3g} vol%" for name, share in zip(shown, volumes, strict=True))
 
 
 def _substrate_words(case: Case) -> str:

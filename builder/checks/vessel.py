@@ -13,7 +13,7 @@ from builder.mechanism.gas import (
     gases_of_record,
     present_in,
 )
-from builder.mechanism.solvents import Solvent, find_solvent
+from builder.mechanism.solvents import Solvent, solvent_of
 from builder.mechanism.vapour_pressure import mixture_bar
 from builder.mechanism.volatiles import Volatile, find_volatile
 from builder.records.vocabulary import Vessel
@@ -250,7 +250,7 @@ def _boiling_parts(case: Case, stage: int) -> list[tuple[Solvent | Volatile, flo
     parts: list[tuple[Solvent | Volatile, float | None]] = []
     for each in present:
         if each.path[0] == "solvent":
-            solvent = find_solvent(substances[each.path].name, each.structure.smiles)
+            solvent = solvent_of(substances[each.path].name, each.structure)
             parts += [(solvent, each.moles)] if solvent is not None else []
         elif substances[each.path].strength is None:
             volatile = find_volatile(each.structure.smiles)

@@ -12,7 +12,7 @@ from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.amounts import AmountRow, Amounts, present_rows
 from builder.mechanism.log_rate import GAS_CONSTANT
-from builder.mechanism.solvents import find_solvent
+from builder.mechanism.solvents import solvent_of, structure_of
 from builder.records.model import Record
 from builder.records.vocabulary import NucleophileWord, YieldKind
 from builder.rule import Path
@@ -148,8 +148,8 @@ def present_in(
     """
     present: list[Present] = []
     for row in present_rows(record, amounts, stage):
-        solvent = find_solvent(row.name, None) if row.path[0] == "solvent" else None
-        structure = structures.get(row.path) or (parse_smiles(solvent.smiles) if solvent else None)
+        drawn = structures.get(row.path)
+        structure = structure_of(row.name, drawn) if row.path[0] == "solvent" else drawn
         if structure is not None:
             present.append(Present(row.path, structure, _moles(row, structure)))
     return tuple(present)
@@ -175,7 +175,7 @@ def _moles(row: AmountRow, structure: Structure) -> float | None:
     """Return the moles of a row; of a solvent measured by volume, by the density of the table."""
     if row.amount_mol is not None or row.volume_l is None:
         return row.amount_mol
-    solvent = find_solvent(row.name, structure.smiles)
+    solvent = solvent_of(row.name, structure)
     if solvent is None or solvent.density_g_ml is None:
         return None
     return row.volume_l * 1000.0 * solvent.density_g_ml / structure.mass

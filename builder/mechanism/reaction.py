@@ -9,7 +9,7 @@ from builder.chemistry.perception import NO_LEAVING_GROUP, ReactiveSite, attacki
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.amounts import charged_rows
 from builder.mechanism.rules import Situation
-from builder.mechanism.solvents import find_solvent
+from builder.mechanism.solvents import structure_of
 from builder.records.model import Record
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Path
@@ -101,7 +101,7 @@ def _kinds_of(species: Iterable[Structure]) -> frozenset[str]:
 def has_undrawn_species(record: Record, structures: Mapping[Path, Structure]) -> bool:
     """Say whether something was charged whose structure nobody knows, so that what follows from it cannot be told."""
     return any(
-        path not in structures and (path[0] != "solvent" or find_solvent(substance.name) is None)
+        path not in structures and (path[0] != "solvent" or structure_of(substance.name, None) is None)
         for path, _, substance in charged_rows(record)
     )
 
@@ -110,10 +110,8 @@ def species_in_flask(record: Record, structures: Mapping[Path, Structure]) -> It
     """Yield the structure of everything charged but the substrate; solvents by their table row where undrawn."""
     charged = []
     for path, _, substance in charged_rows(record)[1:]:
-        structure = structures.get(path)
-        if structure is None and path[0] == "solvent":
-            row = find_solvent(substance.name, None)
-            structure = parse_smiles(row.smiles) if row else None
+        drawn = structures.get(path)
+        structure = structure_of(substance.name, drawn) if path[0] == "solvent" else drawn
         if structure is not None:
             charged.append(structure)
     yield from with_halides_set_free(charged)

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 from enum import StrEnum
 from functools import cache
 
-from builder.chemistry.structure import parse_smiles
+from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.naming import NameIndex, names_in
 from builder.sources import load_sources
 from builder.table import NOTHING, refuse_twice, rows_of, table_text
@@ -24,6 +24,8 @@ __all__ = [
     "freezing_point_c",
     "load_solvents",
     "nearest_solvents",
+    "solvent_of",
+    "structure_of",
 ]
 
 TRACE = 0.01
@@ -109,6 +111,19 @@ def find_solvent(name: str, smiles: str | None = None) -> Solvent | None:
     if smiles is not None:
         return _by_smiles().get(smiles)
     return _index().find(name) or _index().find(_GRADES.sub("", name.strip().lower()))
+
+
+def solvent_of(name: str, structure: Structure | None) -> Solvent | None:
+    """Return the solvent that a substance of a record is: by its structure where one is drawn, else by its name."""
+    return find_solvent(name, structure.smiles if structure is not None else None)
+
+
+def structure_of(name: str, structure: Structure | None) -> Structure | None:
+    """Return the structure of a substance: as drawn, else that of the solvent of this name; None for others."""
+    if structure is not None:
+        return structure
+    solvent = find_solvent(name)
+    return parse_smiles(solvent.smiles) if solvent is not None else None
 
 
 def nearest_solvents(name: str) -> tuple[str, ...]:

@@ -10,7 +10,7 @@ from enum import StrEnum
 
 from builder.chemistry.structure import Structure
 from builder.mechanism.amounts import AmountRow, Amounts, Role
-from builder.mechanism.solvents import find_solvent
+from builder.mechanism.solvents import solvent_of
 from builder.records.model import Record
 from builder.rule import Path
 
@@ -180,7 +180,7 @@ def reaction_mass_g(amounts: Amounts, structures: Mapping[Path, Structure]) -> t
 def _mass_of(row: AmountRow, structure: Structure | None) -> float | None:
     if row.mass_g is not None or row.volume_l is None:
         return row.mass_g
-    solvent = find_solvent(row.name, structure.smiles if structure else None)
+    solvent = solvent_of(row.name, structure)
     if solvent is None or solvent.density_g_ml is None or (row.role is not Role.SOLVENT and row.typed != "volume"):
         return None
     return row.volume_l * 1000.0 * solvent.density_g_ml

@@ -190,7 +190,7 @@ def surroundings_of(
     book: Book[Portrait], summaries: Mapping[str, Summary], rules: Iterable[Rule[object, object]]
 ) -> Surroundings:
     """Return what every entry's page needs to know of the book."""
-    relatives = relatives_of(book.entries)
+    relatives = relatives_of(book)
     links: dict[str, list[Link]] = {}
     for entry in book.entries:
         for other, relation in _backward(entry.record):

@@ -7,17 +7,27 @@ import csv
 import io
 import json
 from collections.abc import Collection, Iterable, Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from builder.records.digest import digest
-from builder.records.flat import column_order, flatten, guarded
+from builder.records.flat import column_order, flatten, guarded, in_one_cell, name_of
 from builder.records.model import Record
 from builder.records.reader import read_record
 from builder.records.vocabulary import Disclosure, Status
 from builder.records.yaml_text import read_plain
+from builder.rule import Path as ValuePath
 
-__all__ = ["BYTE_ORDER_MARK", "CLEARED_FOR", "Exported", "csv_text", "exported_records", "jsonl_text", "within"]
+__all__ = [
+    "BYTE_ORDER_MARK",
+    "CLEARED_FOR",
+    "Exported",
+    "Outgoing",
+    "csv_text",
+    "exported_records",
+    "jsonl_text",
+    "within",
+]
 
 BYTE_ORDER_MARK = "\ufeff"
 """Begins a CSV file, for by it spreadsheet programs know UTF-8."""
@@ -27,7 +37,6 @@ CLEARED_FOR: Mapping[str, frozenset[Disclosure]] = {
     "published": frozenset({Disclosure.PUBLISHED}),
 }
 """What `--only` lets out; a record without disclosure is internal."""
-_REFERENCES = ("related", "preceded_by")
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,30 +58,53 @@ def exported_records(folder: Path, files: Iterable[Path]) -> Iterator[Exported |
             yield Exported(reading.record, digest(reading.record), flatten(read_plain(reading.text, path.name).value))
 
 
-def within(records: Iterable[Exported], only: str | None, statuses: Collection[Status]) -> tuple[Exported, ...]:
+@dataclass(frozen=True, slots=True)
+class Outgoing:
+    """The records that go out.
+
+    left_out: by entry that could go out but cannot do without naming one that may not, the column in which it does.
+    """
+
+    records: tuple[Exported, ...]
+    left_out: Mapping[str, str] = field(default_factory=dict)
+
+
+def within(records: Iterable[Exported], only: str | None, statuses: Collection[Status]) -> Outgoing:
     """Return the records that may go out: by what is cleared, and by status; None and no status let all of them out.
 
-    Where some are kept back for their disclosure, the others no longer name them as related or preceding.
+    Where some are kept back for their disclosure, the others no longer name them. A list of entries is left with those
+    that are exported. Where one entry is named that is not cleared, as in superseded.by, the record would not be read
+    without the name: it is left out.
     """
-    all_of_them = tuple(records)
-    kept = [
-        each
-        for each in all_of_them
-        if (only is None or each.record.disclosure in CLEARED_FOR[only])
-        and (not statuses or each.record.status in statuses)
-    ]
+    cleared = [each for each in records if only is None or each.record.disclosure in CLEARED_FOR[only]]
+    chosen = [each for each in cleared if not statuses or each.record.status in statuses]
     if only is None:
-        return tuple(kept)
+        return Outgoing(tuple(chosen))
+    may_be_named = {each.record.entry for each in cleared}
+    left_out = {
+        each.record.entry: name_of(path)
+        for each in chosen
+        for path, entry in each.record.references
+        if not _is_listed(path) and entry not in may_be_named
+    }
+    kept = [each for each in chosen if each.record.entry not in left_out]
     known = {each.record.entry for each in kept}
-    return tuple(Exported(each.record, each.digest, dict(_without_references(each, known))) for each in kept)
+    return Outgoing(tuple(replace(each, cells=_cells_naming(each, known)) for each in kept), left_out)
 
 
-def _without_references(exported: Exported, known: Collection[str]) -> Iterator[tuple[str, str]]:
-    for name, text in exported.cells.items():
-        if name in _REFERENCES:
-            text = "; ".join(entry for entry in text.split("; ") if entry in known)  # noqa: PLW2901 - the same cell
-        if text:
-            yield name, text
+def _is_listed(path: ValuePath) -> bool:
+    """Say whether an entry is one of several that are named together, so that the record can do without."""
+    return isinstance(path[-1], int)
+
+
+def _cells_naming(exported: Exported, known: Collection[str]) -> dict[str, str]:
+    """Return the cells of a record whose lists of entries name known ones only."""
+    lists: dict[str, list[str]] = {}
+    for path, entry in exported.record.references:
+        if _is_listed(path):
+            lists.setdefault(name_of(path[:-1]), []).extend([entry] if entry in known else [])
+    cells = {**exported.cells, **{name: in_one_cell(entries) for name, entries in lists.items()}}
+    return {name: text for name, text in cells.items() if text}
 
 
 def csv_text(records: Iterable[Exported]) -> str:

@@ -18,7 +18,7 @@ from builder.records.fields import MARKUP
 from builder.records.identifiers import CROCKFORD
 from builder.records.model import KINDS_OF_MEASUREMENT
 from builder.records.quantities import writing_aids
-from builder.records.schema import record_schema
+from builder.records.schema import RECORD_SCHEMA, modeline, record_schema
 from builder.records.specimen import specimen_text
 from builder.records.vocabulary import Result, Status
 
@@ -159,7 +159,7 @@ def form_data(schema: Mapping[str, Any], *, taken: Sequence[str], people: Sequen
         "aids": {**writing_aids(), "markup": MARKUP.pattern},
         "identifier": {"prefix": "NS", "letters": CROCKFORD, "drawn": 6, "taken": "".join(sorted(taken))},
         "people": list(people),
-        "modeline": "# yaml-language-server: $schema=schema/record-1.json",
+        "modeline": modeline(RECORD_SCHEMA),
     }
 
 

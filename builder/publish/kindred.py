@@ -3,13 +3,13 @@
 Observations stand side by side as they were made; nothing is averaged.
 """
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-from builder.book import Entry
+from builder.book import Book
 from builder.checks.comparison import Difference, Disagreement, is_near
 from builder.checks.group import outcomes_contradict
-from builder.checks.kinship import GO_ALONG, VARIED, Kin, Relation, contradictions, families, kin_of
+from builder.checks.kinship import GO_ALONG, VARIED, Kin, Relation, families
 from builder.checks.standing import NOT_STATED, Standing, Variable
 from builder.publish.figures import capital, joined
 from builder.publish.portrait import Portrait
@@ -126,17 +126,27 @@ class ContradictionPair:
 class Relatives:
     """What is needed of a book to tell the kin of an entry: of entries in force, by identifier.
 
+    near_same: what the second of two is to the first, by both, where they ran near-same; either way round.
     reasons: why an entry accepts that it is contradicted.
     """
 
     standings: Mapping[str, Standing]
     families: Mapping[str, tuple[str, ...]]
+    near_same: Mapping[tuple[str, str], Kin]
     reasons: Mapping[str, str]
 
+    def kin(self, here: str, there: str) -> Kin:
+        """Return what an entry is to another of its family."""
+        if (here, there) in self.near_same:
+            return self.near_same[here, there]
+        if (there, here) in self.near_same:
+            return self.near_same[there, here].mirrored
+        return Kin(Relation.VARIANT, self.standings[here], self.standings[there])
 
-def relatives_of(entries: Iterable[Entry[Portrait]]) -> Relatives:
-    """Return what is needed to tell the kin of any of these entries; what no longer holds has none."""
-    in_force = [entry for entry in entries if not entry.record.status.is_retired]
+
+def relatives_of(book: Book[Portrait]) -> Relatives:
+    """Return what is needed to tell the kin of any entry; what no longer holds has none."""
+    in_force = [entry for entry in book.entries if not entry.record.status.is_retired]
     standings = {entry.id: entry.standing for entry in in_force}
     reasons = {
         entry.id: finding.accepted
@@ -144,7 +154,8 @@ def relatives_of(entries: Iterable[Entry[Portrait]]) -> Relatives:
         for finding in entry.findings
         if finding.rule == CONTRADICTION_RULE and finding.accepted
     }
-    return Relatives(standings, families(standings.items()), reasons)
+    near_same = {(one, other): kin for one, other, kin in book.near_same}
+    return Relatives(standings, families(standings.items()), near_same, reasons)
 
 
 def contradicting_pairs(relatives: Relatives, summaries: Mapping[str, Summary]) -> tuple[ContradictionPair, ...]:
@@ -157,16 +168,15 @@ def contradicting_pairs(relatives: Relatives, summaries: Mapping[str, Summary]) 
             kin.telling.text(f"in {one}", f"in {other}") if kin.telling else "",
             is_open=not {one, other} <= relatives.reasons.keys(),
         )
-        for one, other, kin in contradictions(sorted(relatives.standings.items()))
+        for (one, other), kin in relatives.near_same.items()
+        if kin.relation is Relation.CONTRADICTS
     ]
     return tuple(sorted(pairs, key=lambda pair: not pair.is_open))
 
 
 def view_kindred(entry_id: str, relatives: Relatives, summaries: Mapping[str, Summary]) -> Kindred:
     """Return what the book holds of the reaction of an entry."""
-    here = relatives.standings.get(entry_id)
-    others = relatives.families.get(entry_id, ())
-    kin = {other: kin_of(here, relatives.standings[other]) for other in others} if here is not None else {}
+    kin = {other: relatives.kin(entry_id, other) for other in relatives.families.get(entry_id, ())}
     against = sorted(
         ((other, each) for other, each in kin.items() if each.relation is Relation.CONTRADICTS),
         key=lambda pair: (-pair[1].disagreements[0].weight, pair[0]),

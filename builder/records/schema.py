@@ -6,6 +6,7 @@ schema can see (a check digit, the days of the calendar, the order of points).
 """
 
 from collections.abc import Iterable
+from pathlib import PurePath, PurePosixPath
 from typing import Any
 
 from pydantic import BaseModel
@@ -16,7 +17,11 @@ from builder.records.model import KINDS_OF_MEASUREMENT, QUANTITIES_OF_SUBSTRATE,
 from builder.records.settings import Settings
 from builder.records.vocabulary import Result, Status
 
-__all__ = ["record_schema", "settings_schema"]
+__all__ = ["RECORD_SCHEMA", "SETTINGS_SCHEMA", "modeline", "record_schema", "settings_schema"]
+
+RECORD_SCHEMA = PurePosixPath("schema/record-1.json")
+SETTINGS_SCHEMA = PurePosixPath("schema/handbook-1.json")
+"""Where the schemas lie inside a book."""
 
 _DRAFT = "https://json-schema.org/draft/2020-12/schema"
 
@@ -33,6 +38,11 @@ class _Generator(GenerateJsonSchema):
 
     def field_title_should_be_set(self, schema: Any) -> bool:  # noqa: ARG002 - the signature is pydantic's
         return False
+
+
+def modeline(schema: PurePath) -> str:
+    """Return the first line of a record, by which editors find its schema: a path from the folder of the record."""
+    return f"# yaml-language-server: $schema={schema.as_posix()}"
 
 
 def record_schema(classes: Iterable[str], leaving_groups: Iterable[str]) -> dict[str, Any]:

@@ -14,7 +14,7 @@ from builder.book import open_book
 from builder.finding import Finding
 from builder.records.specimen import SPECIMEN_FILE, outcome_example, specimen_text, with_example
 from builder.records.yaml_text import leaves, read_plain
-from tests.slips import ENTRIES, SLIPS, Slip, look
+from tests.keyboard_slips import ENTRIES, SLIPS, Slip, look
 from tests.specimens import TODAY
 
 BAD = sorted((Path(__file__).parents[1] / "data" / "records" / "bad").rglob("*.yml"))

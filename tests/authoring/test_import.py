@@ -311,6 +311,15 @@ BAD_MAPS = [
     ),
     ("columns:\n  Temp: {to: title, units: g}\n", 'map.yml:2:21: error key-unknown: unknown key "units"; did you mean'),
     ("colums: {}\n", 'map.yml:1:1: error key-unknown: unknown key "colums"; did you mean "columns"?'),
+    (
+        "constants:\n  title: '{substrate.name} in {typo.name}'\n",
+        'map.yml:2:10: error value-not-permitted: no record has a column "typo.name"',
+    ),
+    (
+        "constants: {title: 'In {solvent.nam}'}\n",
+        'map.yml:1:20: error value-not-permitted: no record has a column "solvent.nam"; did you mean "solvent.1.name"?',
+    ),
+    ("constants: {title: '{Solvent}'}\n", 'map.yml:1:20: error value-not-permitted: no record has a column "Solvent"'),
     ("constants: {ignore: x}\n", 'map.yml:1:13: error value-not-permitted: no record has a column "ignore"'),
 ]
 
@@ -374,6 +383,16 @@ def test_a_title_filled_in_too_long_is_told_at_its_row(run: Run, book: Path) -> 
     (path,) = _records(book).values()
     assert "title: 1-bromobutane in DMF\n" in path.read_text("utf-8")
     assert code == 1
+
+
+@pytest.mark.parametrize("solvent", ["solvent.name", "solvent.1.name"])
+def test_a_column_in_braces_is_named_with_its_number_or_without(run: Run, book: Path, solvent: str) -> None:
+    column_map = book.parent / "map.yml"
+    column_map.write_text(f"constants: {{title: '{{substrate.name}} in {{{solvent}}}'}}\n", "utf-8")
+    row = {key: value for key, value in SOUND.items() if key != "title"}
+    run("import", _csv(book.parent / "a.csv", row), "--map", column_map, "--book", book)
+    (path,) = _records(book).values()
+    assert "title: 1-bromobutane in DMF\n" in path.read_text("utf-8")
 
 
 def test_what_every_row_lacks_is_told_once(run: Run, book: Path) -> None:
@@ -612,11 +631,50 @@ def _with_part(path: Path, name: str, text: str) -> Path:
     return _zipped(path, {**parts, name: text})
 
 
+def _with_rows(path: Path, *rows: str) -> Path:
+    """Return a workbook with more rows below its own, as XML."""
+    with zipfile.ZipFile(_saved(path, lambda _: None)) as file:
+        text = file.read("xl/worksheets/sheet1.xml").decode()
+    return _with_part(path, "xl/worksheets/sheet1.xml", text.replace("</sheetData>", f"{''.join(rows)}</sheetData>"))
+
+
+def _empty_row(number: int | str, column: str = "A") -> str:
+    return f'<row r="{number}"><c r="{column}{number}"/></row>'
+
+
+def _elsewhere(path: Path) -> Path:
+    """Return a workbook whose sheet lies outside the folder of workbooks."""
+    with zipfile.ZipFile(path) as file:
+        parts = {each: file.read(each).decode() for each in file.namelist()}
+    parts["sheets/one.xml"] = parts.pop("xl/worksheets/sheet1.xml")
+    return _zipped(
+        path, {name: text.replace("/xl/worksheets/sheet1.xml", "/sheets/one.xml") for name, text in parts.items()}
+    )
+
+
 _ENTITIES = '<!DOCTYPE x [<!ENTITY a "aaaa"><!ENTITY b "&a;&a;&a;">]><worksheet><x>&b;</x></worksheet>'
 HARM: dict[str, tuple[Callable[[Path], Path], str]] = {
     "entities": (
         lambda path: _with_part(path, "xl/worksheets/sheet1.xml", _ENTITIES),
         "declares a document type in xl/worksheets/sheet1.xml",
+    ),
+    "entities in a part of another name": (
+        lambda path: _with_part(path, "xl/worksheets/sheet1.XML", _ENTITIES),
+        "declares a document type in xl/worksheets/sheet1.XML",
+    ),
+    "entities in a part without an ending": (
+        lambda path: _with_part(path, "xl/sheet", _ENTITIES),
+        "declares a document type in xl/sheet",
+    ),
+    "a row where no sheet is": (lambda path: _with_rows(path, _empty_row(2_000_000_000)), "has a row beyond 1,048,576"),
+    "a row further than that": (lambda path: _with_rows(path, _empty_row("9" * 400)), "has a row beyond 1,048,576"),
+    "a row where no sheet is, in an unusual part": (
+        lambda path: _elsewhere(_with_rows(path, _empty_row(4_000_000))),
+        "has a row beyond 1,048,576",
+    ),
+    "many rows up to the last column": (
+        lambda path: _with_rows(path, *(_empty_row(3 + n, "XFD") for n in range(1_300))),
+        "spans more than 20,000,000 cells",
     ),
     "no workbook": (lambda path: _zipped(path, {"a.txt": "x"}), "is no workbook that can be read"),
     "no zip": (lambda path: path.write_bytes(b"PK\x03\x04 and no more") and path, "is no .xlsx workbook"),
@@ -633,6 +691,80 @@ def test_a_workbook_that_means_harm_is_refused(run: Run, book: Path, make: Calla
     code, out = run("import", make(book.parent / "a.xlsx"), "--book", book)
     assert said in out
     assert (code, _records(book)) == (2, {})
+
+
+def test_a_picture_in_a_workbook_is_no_broken_xml(run: Run, book: Path) -> None:
+    sheet = _with_part(book.parent / "a.xlsx", "xl/media/image1.png", "\x89PNG\r\n\x1a\n\0\0\0\rIHDR")
+    assert run("import", sheet, "--book", book)[0] == 0
+
+
+def test_empty_cells_far_to_the_right_are_no_columns(run: Run, book: Path) -> None:
+    sheet = _with_rows(book.parent / "a.xlsx", _empty_row(3, "XFD"), _empty_row(1_048_576))
+    assert run("import", sheet, "--book", book)[0] == 0
+
+
+HARMFUL_LINES = [
+    ('{"a": ' + "9" * 5_000 + "}", "a.jsonl:1 is no object of texts: quote every value, numbers too"),
+    ('{"a\\ud800": "x"}', "a.jsonl:1 holds half a character"),
+    ('{"a": "\\udfff"}', "a.jsonl:1 holds half a character"),
+]
+
+
+@pytest.mark.parametrize(("line", "said"), HARMFUL_LINES)
+@pytest.mark.parametrize("writes_map", [False, True])
+def test_a_line_that_is_none_is_told(run: Run, book: Path, line: str, said: str, *, writes_map: bool) -> None:
+    sheet, column_map = book.parent / "a.jsonl", book.parent / "a.yml"
+    sheet.write_text(line, "utf-8")
+    code, out = run("import", sheet, "--book", book, *(["--write-map", column_map] if writes_map else []))
+    assert said in out
+    assert (code, column_map.exists()) == (2, False)
+
+
+# --- what an import writes besides ----------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("option", ["--report", "--write-map"])
+@pytest.mark.parametrize(
+    ("target", "said"),
+    [
+        ("a.csv", "is the sheet itself"),
+        ("map.yml", "is the map itself"),
+        ("link.yml", "is the map itself"),
+        ("entries/handbook.yml", "lies inside the book"),
+        ("entries/new/cells.csv", "lies inside the book"),
+    ],
+)
+def test_nothing_is_written_over_what_is_read(run: Run, book: Path, option: str, target: str, said: str) -> None:
+    folder = book.parent
+    (folder / "map.yml").write_text("columns: {}\n", "utf-8")
+    (folder / "link.yml").symlink_to(folder / "map.yml")
+    _csv(folder / "a.csv", SOUND | {"stages.temperature": "hot"})
+    before = {path: path.read_bytes() for path in folder.rglob("*") if path.is_file()}
+    code, out = run("import", folder / "a.csv", "--map", folder / "map.yml", option, folder / target, "--book", book)
+    assert f"{option} " in out
+    assert said in out
+    assert code == 2
+    assert {path: path.read_bytes() for path in folder.rglob("*") if path.is_file()} == before
+
+
+def test_a_map_that_fails_leaves_nothing(run: Run, book: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def fails(*_: object) -> None:
+        raise OSError(28, "no space left")
+
+    monkeypatch.setattr(Path, "hardlink_to", fails)
+    monkeypatch.setattr(Path, "replace", fails)
+    sheet, column_map = _csv(book.parent / "a.csv", SOUND), book.parent / "a.yml"
+    code, _ = run("import", sheet, "--write-map", column_map, "--book", book)
+    assert (code, sorted(path.name for path in book.parent.iterdir())) == (2, ["a.csv", "entries"])
+
+
+def test_an_updated_draft_keeps_its_permissions(run: Run, book: Path) -> None:
+    run("import", _csv(book.parent / "a.csv", SOUND), "--book", book)
+    (path,) = _records(book).values()
+    path.chmod(0o640)
+    run("import", _csv(book.parent / "a.csv", CHANGED), "--book", book, "--update")
+    assert "yield: 84 %" in path.read_text("utf-8")
+    assert path.stat().st_mode & 0o777 == 0o640
 
 
 def test_a_declared_size_is_not_believed(run: Run, book: Path) -> None:

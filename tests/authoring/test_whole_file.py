@@ -1,10 +1,11 @@
 """A file is written whole or not at all."""
 
+import os
 from pathlib import Path
 
 import pytest
 
-from builder.authoring.whole_file import written_new, written_whole
+from builder.authoring.whole_file import write_all, written_new, written_whole
 
 
 def test_the_file_changes_at_the_end_only(tmp_path: Path) -> None:
@@ -38,6 +39,18 @@ def test_a_link_stays_a_link(tmp_path: Path) -> None:
         file.write("new")
     assert link.is_symlink()
     assert target.read_text("utf-8") == "new"
+
+
+def test_a_file_that_is_replaced_keeps_its_permissions(tmp_path: Path) -> None:
+    one, other = tmp_path / "one.yml", tmp_path / "other.yml"
+    for path, mode in ((one, 0o600), (other, 0o444)):
+        path.write_text("old", "utf-8")
+        path.chmod(mode)
+    with written_whole(one) as file:
+        file.write("new")
+    write_all({other: "new"})
+    assert [path.stat().st_mode & 0o777 for path in (one, other)] == [0o600, 0o444]
+    assert [path.read_text("utf-8") for path in (one, other)] == ["new", "new"]
 
 
 def test_what_is_no_file_is_not_replaced(tmp_path: Path) -> None:
@@ -95,7 +108,9 @@ def test_a_new_file_needs_no_hard_links(tmp_path: Path, monkeypatch: pytest.Monk
     path = tmp_path / "new.yml"
     with written_new(path) as file:
         file.write("whole")
+        written = os.fstat(file.fileno())
     assert path.read_text("utf-8") == "whole"
+    assert os.path.samestat(path.stat(), written)  # moved, not copied: nobody can meet a part
     with pytest.raises(FileExistsError), written_new(path) as file:
         file.write("again")
     assert list(tmp_path.iterdir()) == [path]

@@ -56,7 +56,7 @@ def test_a_finding_names_the_rule_and_its_reason() -> None:
 def test_a_rule_in_its_own_words_is_named_so() -> None:
     (found,) = _found(f"{NO_DMF}    rule: no amide solvents\n    instead: take DMSO\n    level: error\n", DMF)
     assert found.message.endswith("house rule: no amide solvents – toxic for reproduction")
-    assert (found.level, found.mend) == (Level.ERROR, "take DMSO")
+    assert (found.level, found.mend) == (Level.ERROR, "the house says: take DMSO")
 
 
 ACCEPTED = DMF + "\naccepted: [{finding: house-solvent-banned, because: 'DMSO oxidises it', by: bench-1}]"
@@ -265,3 +265,10 @@ def test_a_book_with_a_broken_rule_is_checked_over_processes(tmp_path: Path) -> 
     book = open_book(folder, today=TODAY)
     assert [each.rule for each in book.findings if each.level is Level.QUERY] == ["house-solvent-banned"]
     assert isinstance(book.entries[0].kept, Case)
+
+
+def test_a_key_nobody_knows_is_told_by_the_settings_and_stops_no_check() -> None:
+    rule = "  - required: [stages.endpoint, work_up]\n    because: the next run needs it\n"
+    assert [finding.message.partition(";")[0] for finding in _found(rule, "# without work_up")] == [
+        "work_up is not stated"
+    ]

@@ -8,7 +8,7 @@ from hypothesis import strategies as st
 
 from builder.checks import kinship
 from builder.checks.comparison import are_near_same
-from builder.checks.kinship import Relation, contradictions, families, kin_of, near_same_pairs
+from builder.checks.kinship import Relation, families, kin_of, near_same_kin
 from builder.checks.standing import Standing, Variable, standing_of
 from builder.records.specimen import with_example
 from tests.publish.handmade import case_of
@@ -68,6 +68,7 @@ def test_what_an_entry_is_to_another(example: str, relation: Relation, varied: t
     one, other = _standing(), _standing(example)
     for kin in (kin_of(one, other), kin_of(other, one)):
         assert (kin.relation, kin.varied) == (relation, varied)
+    assert kin_of(one, other).mirrored == kin_of(other, one)
 
 
 BOOK = {name: _standing(example) for name, (example, _, _) in RELATIONS.items()}
@@ -76,7 +77,8 @@ ELIMINATES = "with carbonate, and half of it eliminated"
 
 @given(st.permutations(list(BOOK)))
 def test_the_order_of_the_records_does_not_matter(order: list[str]) -> None:
-    pairs = {frozenset((one, other)) for one, other, _ in contradictions((name, BOOK[name]) for name in order)}
+    near = near_same_kin((name, BOOK[name]) for name in order)
+    pairs = {frozenset((one, other)) for one, other, kin in near if kin.relation is Relation.CONTRADICTS}
     assert pairs == {frozenset((ELIMINATES, name)) for name in ("itself", "once more", "potassium azide", "a mole")}
 
 
@@ -95,4 +97,4 @@ def test_only_entries_of_one_reaction_are_compared(monkeypatch: pytest.MonkeyPat
     monkeypatch.setattr(kinship, "are_near_same", counting)
     standing = _standing()
     book = [(str(n), replace(standing, key=f"reaction {n // 2}")) for n in range(1000)]
-    assert len(list(near_same_pairs(book))) == len(compared) == 500
+    assert len(list(near_same_kin(book))) == len(compared) == 500

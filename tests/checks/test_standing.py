@@ -114,5 +114,21 @@ def test_solvents_are_known_by_any_of_their_names() -> None:
     assert (one.solvents, one.volumes) == (other.solvents, other.volumes) == (("ethanol", "water"), (80.0, 20.0))
 
 
+BOTTLES = {
+    "one the table has": ("DMF (bottle 7)", "CN(C)C=O", ("DMF",), "DMF"),
+    "one the table lacks": ("Cyrene, fresh", "O=C1CCC2OCC1O2", ("O=C1CCC2OCC1O2",), "Cyrene, fresh"),
+    "nothing drawn": ("Cyrene, fresh", "", ("cyrene, fresh",), "Cyrene, fresh"),
+}
+
+
+@pytest.mark.parametrize(
+    ("name", "smiles", "solvents", "words"), [pytest.param(*row, id=name) for name, row in BOTTLES.items()]
+)
+def test_a_drawn_solvent_is_what_is_drawn(name: str, smiles: str, solvents: tuple[str, ...], words: str) -> None:
+    drawn = f", smiles: '{smiles}'" if smiles else ""
+    found = _standing(f"solvent: [{{name: '{name}'{drawn}, volume: 20 mL}}]\n")
+    assert (found.solvents, found.words[Variable.SOLVENT]) == (solvents, words)
+
+
 def test_it_is_plain_data() -> None:
     assert pickle.loads(pickle.dumps(_standing())) == _standing()

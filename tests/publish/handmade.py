@@ -7,6 +7,7 @@ from pathlib import Path
 
 from builder.book import Book, Entry, Verdict
 from builder.checks.case import Case, open_case
+from builder.checks.kinship import near_same_kin
 from builder.checks.standing import standing_of
 from builder.finding import Finding, Level, Place
 from builder.publish.portrait import Portrait, portrait_of
@@ -79,7 +80,9 @@ def book_of(*entries: Entry[Portrait], settings: Settings = SETTINGS) -> Book[Po
     """Return a book of these entries."""
     findings = tuple(finding for entry in entries for finding in entry.findings)
     in_order = tuple(sorted(entries, key=lambda entry: entry.id))
-    return Book(Path("entries"), settings, TODAY, in_order, findings, tuple(Path(entry.file) for entry in entries))
+    near_same = tuple(near_same_kin((entry.id, entry.standing) for entry in in_order))
+    files = tuple(Path(entry.file) for entry in entries)
+    return Book(Path("entries"), settings, TODAY, in_order, findings, files, near_same)
 
 
 class Markup(HTMLParser):

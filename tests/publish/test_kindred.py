@@ -29,7 +29,6 @@ outcome:
 BASE = "base: {name: potassium carbonate, smiles: '[K+].[K+].[O-]C([O-])=O', equivalents: 2.0}\n"
 REASON = "accepted: [{finding: outcomes-contradict, because: carbonate <imgx onerror=a()> or none, by: bench-1}]\n"
 RUN = "performed: {{date: 2026-03-1{}, by: [{}], runs: 1}}\nnotebook: BK3/{}\ntitle: {}\n"
-_BLOCK = r'<section class="hb-aside" aria-labelledby="in-our-hands">.*?</section>'
 TEXTS = {
     PLAIN: "related: [NS3V6TDMZ]\n" + REASON,
     CARBONATE: RUN.format(5, "bench-3", 1, "With carbonate") + BASE + HALF,
@@ -90,7 +89,7 @@ def test_a_reason_is_wanted_of_both(book: Book[Portrait], tmp_path: Path) -> Non
 
 def _open_and_all(book: Book[Portrait]) -> tuple[int, int]:
     summaries = {entry.id: summarise(entry) for entry in book.entries}
-    state = state_of_book(book, summaries, contradicting_pairs(relatives_of(book.entries), summaries))
+    state = state_of_book(book, summaries, contradicting_pairs(relatives_of(book), summaries))
     return state.open_contradictions, state.contradictions
 
 
@@ -110,7 +109,7 @@ def test_of_a_long_series_the_newest_are_listed(tmp_path: Path) -> None:
     names = [mint_identifier(lambda signs, n=n: signs[n]) for n in range(MOST_IN_SERIES + 3)]
     book = _book(tmp_path, {name: RUN.format(n % 10, "bench-2", n, f"Run {n}") for n, name in enumerate(names)})
     summaries = {entry.id: summarise(entry) for entry in book.entries}
-    (series,) = view_kindred(names[0], relatives_of(book.entries), summaries).series
+    (series,) = view_kindred(names[0], relatives_of(book), summaries).series
     assert series.title == "Repeated under near-same conditions"
     assert [row.summary.id for row in series.rows] == [names[0], *names[:2:-1]][: MOST_IN_SERIES + 1]
     assert series.further == 2

@@ -6,8 +6,7 @@ from builder.checks.case import Case, compounds_of
 from builder.checks.conditions import CLOSED_VESSELS
 from builder.checks.hazards.cautions import Setting
 from builder.checks.hazards.meetings import Hazard, Present, Whereabouts, find_hazards
-from builder.chemistry.structure import parse_smiles
-from builder.mechanism.solvents import find_solvent
+from builder.mechanism.solvents import structure_of
 from builder.records.model import Compound
 from builder.records.vocabulary import Result
 from builder.rule import Path
@@ -56,8 +55,4 @@ def _texts(case: Case) -> Iterator[Present]:
 
 
 def _substance(case: Case, path: Path, compound: Compound, whereabouts: Whereabouts) -> Present:
-    structure = case.structures.get(path)
-    if structure is None:
-        solvent = find_solvent(compound.name)
-        structure = parse_smiles(solvent.smiles) if solvent else None
-    return Present(path, compound.name, whereabouts, structure)
+    return Present(path, compound.name, whereabouts, structure_of(compound.name, case.structures.get(path)))

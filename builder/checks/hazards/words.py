@@ -11,7 +11,7 @@ from functools import cache, lru_cache
 
 from builder.checks.hazards.kinds import SubstanceKind, load_substance_kinds
 
-__all__ = ["Named", "ScopeWords", "kinds_named_in", "read_scope"]
+__all__ = ["Named", "ScopeWords", "is_denied", "kinds_named_in", "read_scope"]
 
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|below|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
 _DENIAL = re.compile(
@@ -58,7 +58,7 @@ def kinds_named_in(text: str) -> Named:
     found = list(_names_in(text))
     for name, start, end in found:
         kinds = _vocabulary().kinds_by_word.get(name, frozenset()) - here
-        if not kinds or _is_denied(text, start) or _is_warning(text, start):
+        if not kinds or is_denied(text, start) or _is_warning(text, start):
             continue
         inside = [other for other, low, high in found if low <= start and end <= high]
         masked = frozenset().union(*(_vocabulary().kinds_masked.get(other, frozenset()) for other in inside))
@@ -96,7 +96,7 @@ def read_scope(text: str) -> ScopeWords:
         kinds = vocabulary.kinds_by_word.get(name, frozenset()) | vocabulary.kinds_by_scope_word.get(name, frozenset())
         inside = [other for other, low, high in found if low <= start and end <= high]
         kinds -= frozenset().union(*(vocabulary.kinds_masked.get(other, frozenset()) for other in inside))
-        if _is_denied(text, start):
+        if is_denied(text, start):
             excluded |= kinds
         elif kinds:
             named |= kinds
@@ -163,7 +163,7 @@ def _gathered(pairs: Iterable[tuple[str, str]]) -> dict[str, frozenset[str]]:
     return {key: frozenset(values) for key, values in found.items()}
 
 
-def _is_denied(text: str, start: int) -> bool:
+def is_denied(text: str, start: int) -> bool:
     """Answer whether what is named at `start` is said to be absent, kept apart, or only thought of ("would")."""
     before = text[:start]
     clause = _CLAUSE_END.split(before)[-1]
@@ -193,5 +193,5 @@ def _clause_at(text: str, start: int) -> str:
 def _stated_ph(text: str) -> Iterator[float]:
     """Yield the pH values a line names; one that must not be reached ("not below pH 5") is none."""
     for match in _PH.finditer(text):
-        if not _is_denied(text, match.start()):
+        if not is_denied(text, match.start()):
             yield float(match[1])

@@ -1,6 +1,6 @@
 """Slips of the keyboard put into sound records, and how many `check --fix` mends to the byte.
 
-`python -m tests.slips` prints the table over every entry of the book.
+`python -m tests.keyboard_slips` prints the table over every entry of the book.
 """
 
 import re
