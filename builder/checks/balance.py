@@ -45,9 +45,7 @@ def _are_halves(case: Case, one: frozenset[str], other: frozenset[str]) -> bool:
 
     Then their atoms, hydrogen apart, are those of the substrate and of nothing, or of one species of the flask.
     """
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
-    paths = [("outcome", "products", positions[label]) for label in (*one, *other) if label in positions]
-    drawn = [case.structures[path] for path in paths if path in case.structures]
+    drawn = [case.structures[path] for path in case.product_paths((*one, *other)) if path in case.structures]
     substrate = case.structures.get(("substrate",))
     if substrate is None or len(one) != 1 or len(other) != 1 or len(drawn) != 2:
         return False

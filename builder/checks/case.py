@@ -2,7 +2,7 @@
 
 import datetime as dt
 import hashlib
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -54,6 +54,11 @@ class Case:
         Raises KeyError where it could not be read; checks that use it need `structure-unreadable` to be silent.
         """
         return self.structures[("substrate",)]
+
+    def product_paths(self, labels: Iterable[str] | None) -> list[Path]:
+        """Return the paths of the products that bear these labels; labels that none bears are left out."""
+        positions = {product.label: index for index, product in enumerate(self.record.outcome.products)}
+        return [("outcome", "products", positions[label]) for label in labels or () if label in positions]
 
     @property
     def forecast(self) -> Forecast | None:

@@ -3,9 +3,10 @@
 from collections.abc import Iterator
 
 from builder.checks.case import Case
-from builder.checks.slips import Disagreement, explained, is_saline_hydride, level_of, moles_text, typed_text
+from builder.checks.slips import Mismatch, explained, is_saline_hydride, level_of, typed_text
 from builder.finding import Level
 from builder.mechanism.amounts import QUANTITY_ORDER, Role, charged_rows, moles_from, rounding_of
+from builder.records.figures import amount_text, concentration_text, equivalents_text, significant, volume_text
 from builder.records.model import Charged
 from builder.records.vocabulary import ReagentUse
 from builder.rule import Fault, rule
@@ -98,11 +99,11 @@ def quantities_disagree(case: Case) -> Iterator[Fault]:
             level = level_of(value / known[used], rounding)
             if kind != used and level is not None:
                 usual = _usual_mol(case, role)
-                told = Disagreement(substance, structure, used, known[used], kind, value, usual, rounding)
+                told = Mismatch(substance, structure, used, known[used], kind, value, usual, rounding)
                 yield Fault(
                     at=(*path, kind),
-                    message=f"{typed_text(substance, used)} of {substance.name} is {moles_text(known[used])},"
-                    f" {typed_text(substance, kind)} is {moles_text(value)}: {_apart(value / known[used])} apart",
+                    message=f"{typed_text(substance, used)} of {substance.name} is {amount_text(known[used])},"
+                    f" {typed_text(substance, kind)} is {amount_text(value)}: {_apart(value / known[used])} apart",
                     mend=f"{explained(told)}; the {used} is believed and used, so correct it or the {kind}",
                     level=level,
                     data={"ratio": round(value / known[used], 4)},
@@ -128,15 +129,15 @@ def _concentration_disagreement(case: Case) -> Iterator[Fault]:
         return
     total = sum(row.volume_l for row in case.amounts.rows if row.volume_l is not None)
     if level_of(typed.magnitude / (moles / total), rounding) is None:
-        why = f"it fits the total of all liquids, {total * 1000:.3g} mL; concentration is per solvent volume"
+        why = f"it fits the total of all liquids, {volume_text(total)}; concentration is per solvent volume"
     elif any(level_of(typed.magnitude / (moles / volume) / factor, rounding) is None for factor in (1000.0, 0.001)):
         why = "a factor of 1000 fits: mmol/L against mol/L"
     else:
         why = "amount and volumes are believed"
     yield Fault(
         at=("concentration",),
-        message=f"{typed} typed; {moles_text(moles)} in {volume * 1000:.3g} mL of solvent are"
-        f" {moles / volume:.3g} mol/L",
+        message=f"{typed} typed; {amount_text(moles)} in {volume_text(volume)} of solvent are"
+        f" {concentration_text(moles / volume)}",
         mend=f"{why}; correct the number, or drop it: with volumes given it is derived",
         level=level,
     )
@@ -172,7 +173,7 @@ def concentration_is_implausible(case: Case) -> Iterator[Fault]:
         at = ("concentration",) if case.record.concentration is not None else ("solvent", 0)
         yield Fault(
             at=at,
-            message=f"the substrate is {concentration:.2g} mol/L in the solvent",
+            message=f"the substrate is {concentration_text(concentration)} in the solvent",
             mend="look for mL against L, mg against g; write neat: true where the solvent is none; or accept it",
         )
 
@@ -207,7 +208,7 @@ def dispersion_lacks_its_purity(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=(*path, "mass"),
                 message=f"{substance.mass} of {substance.name} counts as pure: "
-                f"{moles_text(substance.mass.magnitude / structure.mass)}",
+                f"{amount_text(substance.mass.magnitude / structure.mass)}",
                 mend="add purity: 60 %, as the label says; for the pure solid write purity: 95 % or its form",
                 level=None if is_dispersed else Level.REMARK,
             )
@@ -231,7 +232,7 @@ def catalyst_is_in_excess(case: Case) -> Iterator[Fault]:
             meant = f"; {row.equivalents:g} mol% would be {row.equivalents / 100:g}" if row.equivalents >= 2 else ""
             yield Fault(
                 at=(*row.path, row.typed),
-                message=f"{row.equivalents:.3g} equivalents of {row.name}, a catalyst",
+                message=f"{equivalents_text(row.equivalents)} equivalents of {row.name}, a catalyst",
                 mend=f"correct the number{meant}, or its use",
             )
 
@@ -262,7 +263,8 @@ def equivalents_are_implausible(case: Case) -> Iterator[Fault]:
         if row.role is not Role.SOLVENT and row.equivalents is not None and row.amount_mol is not None and is_out:
             yield Fault(
                 at=(*row.path, row.typed),
-                message=f"{moles_text(row.amount_mol)} of {row.name} are {_number(row.equivalents)} equivalents",
+                message=f"{amount_text(row.amount_mol)} of {row.name} are"
+                f" {equivalents_text(row.equivalents)} equivalents",
                 mend="look for mg against g, mol against mmol, L against mL; or accept it with the reason",
                 data={"equivalents": row.equivalents},
             )
@@ -286,9 +288,9 @@ def _usual_mol(case: Case, role: Role) -> float:
     return substrate_mol
 
 
-def _number(value: float) -> str:
-    return f"{value:.0f}" if value >= 10 else f"{value:.2g}"
-
-
 def _apart(ratio: float) -> str:
-    return f"a factor of {max(ratio, 1 / ratio):.3g}" if not 1 / 1.5 < ratio < 1.5 else f"{100 * abs(ratio - 1):.1f} %"
+    return (
+        f"a factor of {significant(max(ratio, 1 / ratio))}"
+        if not 1 / 1.5 < ratio < 1.5
+        else f"{100 * abs(ratio - 1):.1f} %"
+    )

@@ -5,6 +5,7 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 from builder.checks.case import Case
+from builder.checks.measured import is_chromatography
 from builder.chemistry.perception import NO_LEAVING_GROUP, attacking_atoms
 from builder.chemistry.structure import Structure
 from builder.finding import Level
@@ -100,7 +101,6 @@ def record_is_incomplete(case: Case) -> Iterator[Fault]:
 
 _WATER = re.compile(r"\b(water|ppm|dried|dry|sieves?|anhydrous|distilled|moisture|Karl Fischer)\b", re.IGNORECASE)
 _WEIGHED_OR_SEEN = {YieldKind.ISOLATED, YieldKind.ASSAY}
-_CHROMATOGRAPHY = re.compile(r"\b(GC|HPLC|UPLC|LC|SFC)\b")
 ENOUGH_TO_TAKE_THE_ACID = 1.9
 """Equivalents of an amine from which one half can take up the acid that the other sets free."""
 HIGH_YIELD = 95.0
@@ -198,7 +198,7 @@ def _methods(case: Case) -> Asked:
 
 def _calibration(case: Case) -> Asked:
     """Ask of ratios by chromatography whether they are calibrated; enantiomers need no factor."""
-    lines = [line for line in _measured(case, "ratio", "dr") if _CHROMATOGRAPHY.search(line.by or "")]
+    lines = [line for line in _measured(case, "ratio", "dr") if is_chromatography(line.by)]
     return all(line.calibrated is not None for line in lines) if lines else None
 
 

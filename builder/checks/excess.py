@@ -291,14 +291,12 @@ class _SpokenOf:
 
 
 def _spoken_of(case: Case) -> Iterator[_SpokenOf]:
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
     for index, line in enumerate(case.record.outcome.measured):
         if not _is_excess(line.ee, line.er, line.dr):
             continue
         for label in line.of or ():
-            if label in positions:
-                path = ("outcome", "products", positions[label])
-                stereo = case.record.outcome.products[positions[label]].stereo
+            for path in case.product_paths((label,)):
+                stereo = case.record.outcome.products[int(path[-1])].stereo
                 at: Path = ("outcome", "measured", index, line.what)
                 structure, is_noted = case.structures.get(path), line.note is not None
                 yield _SpokenOf(at, f"product {label}", stereo, structure, _is_negative(line.ee), is_noted)

@@ -28,7 +28,6 @@ FAR_FROM_FORECAST = 30.0
 _SECONDS = {"s": 1.0, "min": 60.0, "h": 3600.0, "d": 86400.0}
 _FIRST_ORDER = {Mechanism.SN1, Mechanism.E1, Mechanism.NGP, Mechanism.ADE}
 
-_ASSAY = "{yield: 81 %, of: A, kind: assay}"
 _FOLLOWED = "time_course: {follows: %s, time_unit: h, points: [[0, 0], [4, 12.4], [24, 54.8]]}\n"
 _CONSTANT = "rate_constant: {order: 1, value: %s, temperature: 60 °C}"
 _SECOND = "rate_constant: {order: 2, value: %s L/(mol s), temperature: 60 °C}"

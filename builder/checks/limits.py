@@ -5,13 +5,13 @@ from collections.abc import Iterator, Mapping
 
 from builder.checks.case import Case
 from builder.checks.derivation import is_desired, product_paths, routes_by_product
-from builder.checks.slips import moles_text
 from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
-from builder.mechanism.gas import Present, present_in
+from builder.mechanism.gas import InFlask, present_in
 from builder.mechanism.stoichiometry import Supply, proton_capacity, staying_elements, supply_of
+from builder.records.figures import amount_text
 from builder.records.model import Charged, Measurement
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import Mechanism, ReagentUse, Result, YieldKind
@@ -88,7 +88,7 @@ def yield_is_above_the_reagent(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=(*path, "yield"),
                 message=f"{line.yield_} of {'+'.join(line.of or ())}, but at most {allowed:.3g} % can come of"
-                f" {moles_text(charged)} of {names} and {_substrate_text(case)}",
+                f" {amount_text(charged)} of {names} and {_substrate_text(case)}",
                 mend="the amounts are believed: correct the yield, an amount, or list what else took part",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -123,7 +123,7 @@ def reagent_is_below_one(case: Case) -> Iterator[Fault]:
             yield Fault(
                 at=_place_of(case, Role.NUCLEOPHILE, Role.BASE),
                 message=f"at most {allowed:.3g} % of {case.structures[path].formula} can come of"
-                f" {moles_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
+                f" {amount_text(charged)} of {names}, for yields are counted on {_substrate_text(case)}",
                 mend="correct an amount, or accept this: the substrate is in excess by design",
                 data={"most_percent": round(allowed, 1)},
             )
@@ -162,8 +162,8 @@ def base_is_below_one(case: Case) -> Iterator[Fault]:
     if _SUBSTITUTES & set(case.record.outcome.result) and protons < (SHORT_BELOW - _rounding(case)) * set_free:
         yield Fault(
             at=_place_of(case, Role.BASE),
-            message=f"{moles_text(protons)} of protons can be taken by {names}, while"
-            f" {' and '.join(row.name for row in acidic)} sets {moles_text(set_free)} free",
+            message=f"{amount_text(protons)} of protons can be taken by {names}, while"
+            f" {' and '.join(row.name for row in acidic)} sets {amount_text(set_free)} free",
             mend="correct the amount of base, or accept this with what takes the acid",
             data={"protons_mol": round(protons, 6)},
         )
@@ -232,11 +232,10 @@ _Bound = tuple[float, str, float]
 
 def _bounded_lines(case: Case) -> Iterator[tuple[Path, Measurement, _Bound | None]]:
     """Yield the measured yields of desired products, by weight or against a standard, each with what bounds it."""
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
     for index, line in enumerate(case.record.outcome.measured):
         if line.yield_ is None or line.kind is YieldKind.AREA or line.of is None:
             continue
-        paths: list[Path] = [("outcome", "products", positions[label]) for label in line.of if label in positions]
+        paths = case.product_paths(line.of)
         if paths and all(path in case.structures and is_desired(case, path) for path in paths):
             bounds = [_bound(case, path) for path in paths]
             known = {bound[1]: bound for bound in bounds if bound is not None}  # by what sets it
@@ -269,7 +268,7 @@ def _bound(case: Case, path: Path) -> _Bound | None:
     return (total, " and ".join(names), charged) if names else None
 
 
-def _supplied(case: Case, product: Structure, staying: Mapping[str, int]) -> list[tuple[Present, Supply]]:
+def _supplied(case: Case, product: Structure, staying: Mapping[str, int]) -> list[tuple[InFlask, Supply]]:
     """Return what could have given a product its atoms, each with how.
 
     A solvent must be whole in the product. Beside a nucleophile that could, neither a base, catalyst or buffer counts
@@ -320,14 +319,14 @@ def _protons(case: Case) -> _Bound | None:
     return (protons, " and ".join(names), charged) if names else None
 
 
-def _charged(case: Case) -> tuple[Present, ...]:
+def _charged(case: Case) -> tuple[InFlask, ...]:
     """Return all that was charged, the substrate first; solvents that are not drawn by the table."""
     return present_in(case.record, case.structures, case.amounts, len(case.record.stages) - 1)
 
 
 def _substrate_text(case: Case) -> str:
     row = case.amounts.substrate
-    return f"{moles_text(row.amount_mol or 0.0)} of {row.name}"
+    return f"{amount_text(row.amount_mol or 0.0)} of {row.name}"
 
 
 def _rounding(case: Case) -> float:

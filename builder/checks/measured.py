@@ -1,29 +1,51 @@
 """What the lines of `measured` say as numbers, with what honest rounding leaves open."""
 
 import math
+import re
 from collections.abc import Iterator
 from dataclasses import dataclass
-from decimal import Decimal
 
 from builder.checks.case import Case
 from builder.records.fields import Ratio
 from builder.records.model import Measurement, Substrate
-from builder.records.quantities import Percent
+from builder.records.quantities import Percent, half_unit
 from builder.rule import Path
 
 __all__ = [
     "METHOD_POINTS",
     "Span",
+    "analysis_in",
     "exactly",
     "excess_of_substrate",
     "excess_span",
-    "half_unit",
+    "is_chromatography",
+    "is_nmr",
     "lines_of",
     "percent_span",
 ]
 
 METHOD_POINTS = 3.0
 """What two methods may differ by, in per cent of substrate; common practice, no source."""
+
+_CHROMATOGRAPHY = re.compile(r"\b(?:GC|HPLC|UPLC|LC|SFC)\b")
+_NMR = re.compile(r"q?NMR\b")
+_ANALYSIS = re.compile(rf"{_CHROMATOGRAPHY.pattern}|{_NMR.pattern}|\btitration\b")
+
+
+def is_chromatography(method: str | None) -> bool:
+    """Say whether a method, as typed under `by`, is one of chromatography."""
+    return _CHROMATOGRAPHY.search(method or "") is not None
+
+
+def is_nmr(method: str | None) -> bool:
+    """Say whether a method, as typed under `by`, is NMR."""
+    return _NMR.search(method or "") is not None
+
+
+def analysis_in(method: str | None) -> str:
+    """Return what a method determines an amount by without a balance ("GC", "qNMR"); empty where it names nothing."""
+    found = _ANALYSIS.search(method or "")
+    return found[0] if found else ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,12 +71,6 @@ class Span:
     def is_above(self, other: "Span", points: float) -> bool:
         """Say whether this exceeds another by more than `points`, or by more than rounding where that is wider."""
         return self.low - other.high > max(points, self.half + other.half)
-
-
-def half_unit(number: Decimal) -> float:
-    """Return half a unit in the last typed digit of a number, in the unit of the number."""
-    exponent = number.as_tuple().exponent
-    return 0.5 * 10.0**exponent if isinstance(exponent, int) else 0.0
 
 
 def exactly(percent: float) -> Span:

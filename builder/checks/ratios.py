@@ -1,13 +1,13 @@
 """Ratios of products and of isomers: what they add up to, their digits, their calibration, the yields beside them."""
 
-import re
 from collections.abc import Iterator, Mapping
 
 from builder.checks.case import Case
-from builder.checks.measured import METHOD_POINTS, Span, half_unit, lines_of
+from builder.checks.measured import METHOD_POINTS, Span, is_chromatography, is_nmr, lines_of
 from builder.finding import Level
 from builder.records.fields import Ratio
 from builder.records.model import Measurement
+from builder.records.quantities import half_unit
 from builder.records.specimen import TWO_PRODUCTS, outcome_example
 from builder.records.vocabulary import YieldKind
 from builder.rule import Fault, Path, rule
@@ -17,7 +17,7 @@ __all__ = ["RATIO_CHECKS"]
 SUM_POINTS = 0.5
 _LIKE_PERCENT = (80.0, 120.0)
 """Sums between these were meant as per cent; an estimate made here."""
-_TOO_FINE_PERCENT = ((re.compile(r"\bq?NMR\b"), 0.1), (re.compile(r"\b(GC|HPLC|UPLC|LC|SFC)\b"), 0.01))
+_TOO_FINE_PERCENT = ((is_nmr, 0.1), (is_chromatography, 0.01))
 """Method, and the last digit beyond what it can vouch for, in per cent of the whole; common practice, no source."""
 _HALF = 0.51  # of that digit, with room for parts that do not add up to 100 exactly
 
@@ -134,7 +134,7 @@ def ratio_is_not_calibrated(case: Case) -> Iterator[Fault]:
     need no factor; two enantiomers have the same one.
     """
     for path, line, _ in _ratios(case):
-        if line.what in {"ratio", "dr"} and line.calibrated is False and "NMR" not in (line.by or ""):
+        if line.what in {"ratio", "dr"} and line.calibrated is False and not is_nmr(line.by):
             yield Fault(
                 at=(*path[:-1], "calibrated"),
                 message="this ratio is one of areas, not of amounts",
@@ -165,7 +165,7 @@ def ratio_is_overprecise(case: Case) -> Iterator[Fault]:
     Integrals are good to a per cent or two, areas to a tenth of one; a further digit claims what was not measured.
     """
     for index, line in enumerate(case.record.outcome.measured):
-        too_fine = next((digit for method, digit in _TOO_FINE_PERCENT if method.search(line.by or "")), None)
+        too_fine = next((digit for method, digit in _TOO_FINE_PERCENT if method(line.by)), None)
         if too_fine is None or line.what not in {"ratio", "er", "dr", "ee"}:
             continue
         if isinstance(line.value, Ratio):

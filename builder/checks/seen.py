@@ -3,8 +3,10 @@
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from math import isinf
 
 from builder.checks.case import Case
+from builder.checks.measured import percent_span
 from builder.checks.reaction_key import product_key, product_structure
 from builder.chemistry.neutral import neutral_form
 from builder.records.fields import Ratio
@@ -179,9 +181,8 @@ class _Outcome:
 
 def _bounds(value: Percent) -> tuple[float, float]:
     """Return between which percentages a measured value lies."""
-    if not value.is_limit:
-        return value.magnitude, value.magnitude
-    return (0.0, value.magnitude) if value.is_upper_limit else (value.magnitude, 100.0)
+    span = percent_span(value)
+    return span.low, 100.0 if isinf(span.high) else span.high
 
 
 def _spread(line: Measurement) -> float | None:

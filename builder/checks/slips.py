@@ -14,11 +14,10 @@ from builder.records.quantities import Dimension, Quantity
 __all__ = [
     "ERROR_ABOVE",
     "QUERY_ABOVE",
-    "Disagreement",
+    "Mismatch",
     "explained",
     "is_saline_hydride",
     "level_of",
-    "moles_text",
     "typed_text",
 ]
 
@@ -32,7 +31,7 @@ _LARGER = {small: large for large, small in _SMALLER.items()}
 
 
 @dataclass(frozen=True, slots=True)
-class Disagreement:
+class Mismatch:
     """Two typed quantities of one substance and the moles that each stands for; `used` is the one believed.
 
     usual_mol: about how much of it one would expect in this flask, by which a slipped prefix is told.
@@ -70,7 +69,7 @@ def level_of(ratio: float, rounding: float) -> Level | None:
     return Level.ERROR if off > max(log1p(ERROR_ABOVE), rounded) else Level.QUERY
 
 
-def explained(told: Disagreement) -> str:
+def explained(told: Mismatch) -> str:
     """Return which slip fits the difference, the likeliest first; a plain word where none does."""
     return next(_slips(told), "no common slip fits")
 
@@ -81,17 +80,12 @@ def typed_text(substance: Charged, kind: str) -> str:
     return f"{typed} equivalents" if kind == "equivalents" else str(typed)
 
 
-def moles_text(moles: float) -> str:
-    """Return an amount with three digits, in mol or mmol."""
-    return f"{moles:.3g} mol" if moles >= 1.0 else f"{moles * 1000:.3g} mmol"
-
-
 def is_saline_hydride(structure: Structure) -> bool:
     """Say whether this is sodium hydride or its like, which is sold in oil."""
     return _SALINE_HYDRIDE.is_in(structure)
 
 
-def _slips(told: Disagreement) -> Iterator[str]:
+def _slips(told: Mismatch) -> Iterator[str]:
     yield from _prefix(told)
     yield from _mol_percent(told)
     for weighed, ratio in _weighed_sides(told):
@@ -100,7 +94,7 @@ def _slips(told: Disagreement) -> Iterator[str]:
         yield from _form(told, weighed, ratio)
 
 
-def _prefix(told: Disagreement) -> Iterator[str]:
+def _prefix(told: Mismatch) -> Iterator[str]:
     """Yield the quantity whose unit is a thousand off: the one that is farther from a usual amount."""
     ratio = told.other_mol / told.used_mol
     if not (told.fits(ratio, 1000.0) or told.fits(ratio, 0.001)):
@@ -116,13 +110,13 @@ def _prefix(told: Disagreement) -> Iterator[str]:
         yield f"a factor of 1000 fits: look at the unit of {told.used} and {told.other}"
 
 
-def _mol_percent(told: Disagreement) -> Iterator[str]:
+def _mol_percent(told: Mismatch) -> Iterator[str]:
     if told.other == "equivalents" and told.fits(told.other_mol / told.used_mol, 100.0):
         share = told.substance.equivalents
         yield f"a factor of 100 fits: {share} mol% is {share / 100 if share else 0} equivalents"
 
 
-def _weighed_sides(told: Disagreement) -> Iterator[tuple[str, float]]:
+def _weighed_sides(told: Mismatch) -> Iterator[tuple[str, float]]:
     """Yield each weighed or measured quantity with the ratio of the other's moles to its own."""
     if told.used in _WEIGHED and not _is_solution(told, told.used):
         yield told.used, told.other_mol / told.used_mol
@@ -130,12 +124,12 @@ def _weighed_sides(told: Disagreement) -> Iterator[tuple[str, float]]:
         yield told.other, told.used_mol / told.other_mol
 
 
-def _is_solution(told: Disagreement, kind: str) -> bool:
+def _is_solution(told: Mismatch, kind: str) -> bool:
     strength = told.substance.strength
     return kind == "volume" and strength is not None and strength.dimension is Dimension.CONCENTRATION
 
 
-def _content(told: Disagreement, weighed: str, ratio: float) -> Iterator[str]:
+def _content(told: Mismatch, weighed: str, ratio: float) -> Iterator[str]:
     """Yield a purity left out: the other number is that of all that was weighed, or of a dispersion."""
     for word, content in (("purity", told.substance.purity), ("strength", told.substance.strength)):
         if content is not None and content.dimension is Dimension.FRACTION:
@@ -147,19 +141,19 @@ def _content(told: Disagreement, weighed: str, ratio: float) -> Iterator[str]:
         yield f"the {weighed} fits a 60 % dispersion in oil: add purity: 60 %"
 
 
-def _against(told: Disagreement, weighed: str) -> str:
+def _against(told: Mismatch, weighed: str) -> str:
     """Return the quantity that stands against the weighed one."""
     return typed_text(told.substance, told.other if weighed == told.used else told.used)
 
 
-def _density(told: Disagreement, weighed: str, ratio: float) -> Iterator[str]:
+def _density(told: Mismatch, weighed: str, ratio: float) -> Iterator[str]:
     density = told.substance.density
     tells = weighed == "volume" and density is not None and abs(density.magnitude - 1.0) > told.tolerance
     if tells and density is not None and told.fits(ratio, 1.0 / density.magnitude):
         yield f"the density fits: {_against(told, weighed)} holds if 1 mL weighed 1 g instead of {density}"
 
 
-def _form(told: Disagreement, weighed: str, ratio: float) -> Iterator[str]:
+def _form(told: Mismatch, weighed: str, ratio: float) -> Iterator[str]:
     """Yield the form of the substance whose molar mass the weighed quantity and the other moles would need."""
     if told.structure is None:
         return

@@ -14,6 +14,7 @@ from builder.checks.seen import Seen, seen_in
 from builder.mechanism.amounts import AmountRow, Role, charged_rows
 from builder.mechanism.from_record import COMPARABLE_K
 from builder.mechanism.solvents import solvent_of
+from builder.records.figures import amount_text, concentration_text, equivalents_text
 from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord, Vessel
 
@@ -191,13 +192,13 @@ def _words(case: Case, solvents: tuple[str, ...], volumes: tuple[float, ...] | N
         Variable.ORDER: _in_order(_additions(stage, record) for stage in stages) or NOT_STATED,
         Variable.EQUIVALENTS: ", ".join(_equivalents(row) for row in amounts.rows if row.role is attacking) or "none",
         Variable.TEMPERATURE: _in_order(str(stage.temperature) for stage in stages),
-        Variable.CONCENTRATION: f"{_three(concentration)} mol/L" if concentration is not None else "not known",
+        Variable.CONCENTRATION: concentration_text(concentration) if concentration is not None else "not known",
         Variable.TIME: " → ".join(str(stage.time) for stage in stages),
         Variable.QUALITY: "; ".join(_qualities(record)) or NOT_STATED,
         Variable.VESSEL: _in_order(str(stage.vessel or NOT_STATED) for stage in stages),
         Variable.ATMOSPHERE: _in_order(stage.atmosphere or NOT_STATED for stage in stages),
         Variable.THERMOMETER: _in_order(str(stage.measured or NOT_STATED) for stage in stages),
-        Variable.SCALE: f"{_three(scale * 1000)} mmol" if scale is not None else "not known",
+        Variable.SCALE: amount_text(scale) if scale is not None else "not known",
         Variable.RUNS: f"n = {record.performed.runs}" if record.performed.runs else "n not stated",
         Variable.BY: ", ".join(people.get(code, code) for code in record.performed.by),
         Variable.DATE: record.performed.date.isoformat(),
@@ -211,7 +212,7 @@ def _listed(case: Case, role: Role, *, with_amounts: bool) -> str:
 
 
 def _equivalents(row: AmountRow) -> str:
-    return f"{_three(row.equivalents)} equiv" if row.equivalents is not None else "amount not known"
+    return f"{equivalents_text(row.equivalents)} equiv" if row.equivalents is not None else "amount not known"
 
 
 def _solvent_words(case: Case, solvents: tuple[str, ...], volumes: tuple[float, ...] | None) -> str:
@@ -249,8 +250,3 @@ def _in_order(values: Iterable[str]) -> str:
     """Return the values of the stages in order; one where all are the same."""
     listed = list(filter(None, values))
     return " → ".join(listed if len(set(listed)) > 1 else listed[:1])
-
-
-def _three(value: float) -> str:
-    """Return a number with three significant digits."""
-    return f"{value:#.3g}".rstrip(".") if value < 1000 else f"{value:.0f}"

@@ -180,12 +180,11 @@ def ee_without_chirality(case: Case) -> Iterator[Fault]:
 
     A meso compound or an alkene without stereocentre has no enantiomer to be in excess.
     """
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
     for index, line in enumerate(case.record.outcome.measured):
         if line.what not in {"ee", "er"}:
             continue
         for label in line.of or ():
-            path = ("outcome", "products", positions[label]) if label in positions else ("substrate",)
+            path = next(iter(case.product_paths((label,))), ("substrate",))
             structure = case.structures.get(path)
             if structure is not None and structure.is_achiral and not structure.stereocentres.unspecified:
                 yield Fault(

@@ -16,6 +16,7 @@ from builder.mechanism.gas import (
 from builder.mechanism.solvents import Solvent, solvent_of
 from builder.mechanism.vapour_pressure import mixture_bar
 from builder.mechanism.volatiles import Volatile, find_volatile
+from builder.records.figures import volume_text
 from builder.records.vocabulary import Vessel
 from builder.rule import Fault, rule
 
@@ -67,7 +68,7 @@ def vessel_is_overfilled(case: Case) -> Iterator[Fault]:
         if share > FULL * 1.001:
             yield Fault(
                 at=("stages", index, "vessel_volume"),
-                message=f"{liquid * 1000:.3g} mL of liquid fill at least {100 * share:.0f} % of the vessel",
+                message=f"{volume_text(liquid)} of liquid fill at least {100 * share:.0f} % of the vessel",
                 mend="use a larger vessel, or correct its volume",
                 level=Level.ERROR if stage.vessel in CLOSED_VESSELS else None,
             )
@@ -109,8 +110,8 @@ def gas_needs_more_than_the_headspace(case: Case) -> Iterator[Fault]:
             causes = ", ".join(dict.fromkeys(f"{each.gas.name} from {each.cause}" for each in formed))
             yield Fault(
                 at=("stages", index, "vessel"),
-                message=f"up to {volume * 1000:.3g} mL of gas (25 °C, 1 atm) in a closed vessel with"
-                f" {headspace * 1000:.3g} mL of headspace{taken_as}: {causes}",
+                message=f"up to {volume_text(volume)} of gas (25 °C, 1 atm) in a closed vessel with"
+                f" {volume_text(headspace)} of headspace{taken_as}: {causes}",
                 mend="let the gas out (vessel: gas collected), give the vessel's volume, or correct the amounts",
                 data={"gas_mol": round(_total(formed), 6), "headspace_l": round(headspace, 6)},
             )

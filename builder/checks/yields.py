@@ -6,13 +6,14 @@ from dataclasses import dataclass
 
 from builder.checks.case import Case
 from builder.checks.derivation import routes_by_product
-from builder.checks.measured import METHOD_POINTS, Span, exactly, half_unit, lines_of
+from builder.checks.measured import METHOD_POINTS, Span, analysis_in, exactly, lines_of
 from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.amounts import Role, rounding_of
 from builder.mechanism.forms import forms_of
 from builder.mechanism.products import Event
 from builder.records.model import Measurement
+from builder.records.quantities import half_unit
 from builder.records.specimen import outcome_example
 from builder.records.vocabulary import YieldKind
 from builder.rule import Fault, Path, rule
@@ -121,7 +122,6 @@ def yield_is_above_100(case: Case) -> Iterator[Fault]:
                 yield Fault(at=(*path, what), message=f"{what} of {line.value}", mend="correct it, or state the purity")
 
 
-_BY_INSTRUMENT = re.compile(r"\b(GC|HPLC|UPLC|LC|q?NMR|SFC|titration)\b")
 _WEIGHED = re.compile(r"weigh|balance|purity", re.IGNORECASE)
 
 
@@ -151,9 +151,9 @@ def yield_kind_is_contradicted(case: Case) -> Iterator[Fault]:
     for path, line, _ in lines_of(case, "yield"):
         method = line.by or ""
         if line.kind is YieldKind.ISOLATED and line.mass is None:
-            found = _BY_INSTRUMENT.search(method)
+            found = analysis_in(method)
             if found and not _WEIGHED.search(method):
-                yield _other_kind(path, f"an isolated yield is weighed, this one is by {found[1]}", "assay")
+                yield _other_kind(path, f"an isolated yield is weighed, this one is by {found}", "assay")
         elif line.kind is YieldKind.AREA and line.mass is not None:
             yield _other_kind(path, f"an area share has no mass, and {line.mass} was weighed", "isolated")
         elif line.kind is YieldKind.AREA and line.calibrated:
@@ -217,15 +217,10 @@ def _points_off(span: Span, expected: float, half_digits: float) -> float:
 
 def _product(case: Case, line: Measurement) -> Structure | None:
     """Return the structure of a line's product, or of the first of several isomers; None if formulae differ."""
-    found = [case.structures.get(path) for path in _paths(case, line)]
+    found = [case.structures.get(path) for path in case.product_paths(line.of)]
     drawn = [structure for structure in found if structure is not None]
     is_one = bool(drawn) and len(drawn) == len(found) and len({each.formula for each in drawn}) == 1
     return drawn[0] if is_one else None
-
-
-def _paths(case: Case, line: Measurement) -> list[Path]:
-    positions = {product.label: index for index, product in enumerate(case.record.outcome.products)}
-    return [("outcome", "products", positions[label]) for label in line.of or () if label in positions]
 
 
 def _substrates_in(case: Case, line: Measurement) -> range:
@@ -235,7 +230,7 @@ def _substrates_in(case: Case, line: Measurement) -> range:
     events do not tell, so both are believed.
     """
     routes = routes_by_product(case)
-    ways = [routes[path][0].events for path in _paths(case, line) if routes.get(path)]
+    ways = [routes[path][0].events for path in case.product_paths(line.of) if routes.get(path)]
     return range(1, max((1, *(events.count(Event.SUBSTITUTION) for events in ways))) + 1)
 
 

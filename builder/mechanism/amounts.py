@@ -6,7 +6,7 @@ from enum import StrEnum
 
 from builder.chemistry.structure import Structure
 from builder.records.model import Charged, Record
-from builder.records.quantities import Dimension, Quantity
+from builder.records.quantities import Dimension, Quantity, half_unit
 from builder.rule import Path
 
 __all__ = [
@@ -167,8 +167,7 @@ def rounding_of(substance: Charged, kind: str | None = None) -> float:
     if isinstance(typed, Quantity):
         factors: list[Quantity | None] = [getattr(substance, each) for each in _FACTORS.get(kind, ())]
         return typed.half_digit + sum(factor.half_digit for factor in factors if factor is not None)
-    exponent = typed.as_tuple().exponent if typed is not None else 0
-    return 0.5 * 10.0**exponent / float(typed) if typed and isinstance(exponent, int) else 0.0
+    return half_unit(typed) / float(typed) if typed else 0.0
 
 
 def _moles(substance: Charged, structure: Structure | None, substrate_mol: float | None) -> float | None:

@@ -20,9 +20,10 @@ from builder.table import NOTHING, refuse_twice, rows_of, table_text
 
 __all__ = [
     "ATMOSPHERE_BAR",
+    "ZERO_C_IN_K",
     "Gas",
     "GasFormed",
-    "Present",
+    "InFlask",
     "closed_vessel_bar",
     "gas_volume_l",
     "gases_from",
@@ -55,7 +56,7 @@ class Gas:
 
 
 @dataclass(frozen=True, slots=True)
-class Present:
+class InFlask:
     """A substance in the flask. moles: None where the record cannot tell."""
 
     path: Path
@@ -108,7 +109,7 @@ def closed_vessel_bar(
     return vapour_bar + warmed + formed
 
 
-def gases_from(present: Sequence[Present]) -> tuple[GasFormed, ...]:
+def gases_from(present: Sequence[InFlask]) -> tuple[GasFormed, ...]:
     """Return the gases that these substances give off together, in the order of gas_sources.tsv.
 
     Complete reaction is assumed: the moles are upper bounds.
@@ -141,25 +142,25 @@ def gases_of_record(
 
 def present_in(
     record: Record, structures: Mapping[Path, Structure], amounts: Amounts, stage: int
-) -> tuple[Present, ...]:
+) -> tuple[InFlask, ...]:
     """Return what is in the flask during a stage with its moles; solvents by the density of the table.
 
     What has no structure is left out; what an earlier stage made or used up is not followed.
     """
-    present: list[Present] = []
+    present: list[InFlask] = []
     for row in present_rows(record, amounts, stage):
         drawn = structures.get(row.path)
         structure = structure_of(row.name, drawn) if row.path[0] == "solvent" else drawn
         if structure is not None:
-            present.append(Present(row.path, structure, _moles(row, structure)))
+            present.append(InFlask(row.path, structure, _moles(row, structure)))
     return tuple(present)
 
 
-def _acid_set_free(record: Record, amounts: Amounts) -> tuple[Present, ...]:
+def _acid_set_free(record: Record, amounts: Amounts) -> tuple[InFlask, ...]:
     """Return the strong acid that a solvolysis leaves, as much as there was substrate; empty for other reactions."""
     if record.nucleophile != NucleophileWord.SOLVENT:
         return ()
-    return (Present(("substrate",), parse_smiles(_STRONG_ACID), amounts.substrate.amount_mol),)
+    return (InFlask(("substrate",), parse_smiles(_STRONG_ACID), amounts.substrate.amount_mol),)
 
 
 def _since(formed: GasFormed, before: GasFormed | None) -> GasFormed | None:
@@ -218,7 +219,7 @@ class _Source:
     source: str
 
 
-def _formed(source: _Source, present: Sequence[Present]) -> GasFormed | None:
+def _formed(source: _Source, present: Sequence[InFlask]) -> GasFormed | None:
     """Return what one source gives off; None where something it needs is not there, or nothing is left over."""
     givers = [each for each in present if _is_in(source.gives, each.structure)]
     if not givers:
@@ -244,7 +245,7 @@ def _is_in(fragment: Fragment, structure: Structure) -> bool:
     return fragment.is_in(structure)
 
 
-def _sites(fragment: Fragment, present: Sequence[Present]) -> float | None:
+def _sites(fragment: Fragment, present: Sequence[InFlask]) -> float | None:
     """Return the moles of matches; None where a substance that matches has no amount."""
     counts = [(fragment.count_in(each.structure), each.moles) for each in present]
     total = 0.0
@@ -259,7 +260,7 @@ def _times(factor: float, moles: float | None) -> float | None:
     return None if moles is None else factor * moles
 
 
-def _less(moles: float | None, taker: Fragment | None, present: Sequence[Present]) -> float | None:
+def _less(moles: float | None, taker: Fragment | None, present: Sequence[InFlask]) -> float | None:
     """Return the moles that are left when each match of `taker` has taken one."""
     taken = _sites(taker, present) if taker is not None else 0.0
     return None if moles is None or taken is None else max(0.0, moles - taken)

@@ -6,6 +6,7 @@ read before the first question, and nothing is extrapolated: outside the range o
 """
 
 import csv
+import math
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache, lru_cache
@@ -13,7 +14,7 @@ from importlib import resources
 from typing import Protocol
 
 from builder.chemistry.structure import parse_smiles
-from builder.mechanism.gas import ATMOSPHERE_BAR
+from builder.mechanism.gas import ATMOSPHERE_BAR, ZERO_C_IN_K
 from builder.mechanism.solvents import Solvent, boiling_point_c
 
 __all__ = [
@@ -26,7 +27,6 @@ __all__ = [
     "vapour_pressure",
 ]
 
-ZERO_C_IN_K = 273.15
 NEAR_ATMOSPHERE = 0.02  # relative: within it the boiling points of the solvent table hold
 _STEP_K = 0.05  # how fine a boiling point is solved; the correlations are no better than some tenths of a kelvin
 _STRIDE_K = 10.0
@@ -218,12 +218,9 @@ def _correlations(cas: str) -> tuple[_Correlation, ...]:
         found.append(_Correlation("equation of Perry's table 2-8", low, high, _closed(EQ101, *coefficients)))
     if not found and (row := _rows(_LANDOLT).get(cas)):  # twenty times the size of the others
         a, b, c, low, high = numbers(row, "A", "B", "C", "Tmin", "Tmax")
-        law = _closed(Antoine, a, b, c, _E)
+        law = _closed(Antoine, a, b, c, math.e)  # the base of that table
         found.append(_Correlation("Antoine equation, Landolt-Börnstein", low, high, law))
     return tuple(found)
-
-
-_E = 2.718281828459045  # base of the Antoine equation in that table
 
 
 def _closed(equation: Callable[..., float], *coefficients: float) -> Callable[[float], float]:

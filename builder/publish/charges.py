@@ -5,16 +5,16 @@ from dataclasses import dataclass
 
 from builder.checks.case import Case
 from builder.mechanism.amounts import AmountRow
-from builder.publish.figures import (
+from builder.publish.figures import joined
+from builder.publish.summary import Fact, concentration
+from builder.records.figures import (
     amount_text,
     equivalents_text,
-    joined,
     mass_text,
     molar_mass_text,
     quantity_text,
     volume_text,
 )
-from builder.publish.summary import Fact, concentration
 from builder.records.model import Charged, Record, Stage
 from builder.rule import Path
 

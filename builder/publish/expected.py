@@ -10,9 +10,9 @@ from builder.checks.forecasts import is_same_product, share_bounds
 from builder.chemistry.scheme import DrawnCompound, draw_structure
 from builder.mechanism.forecast import Z90, Forecast
 from builder.mechanism.outlook import expected_text, percent_text
-from builder.publish.figures import duration_text, significant
 from builder.publish.forecast_parts import Closed, Why, closed_gates, main_pathway, verdict_sentence, why
 from builder.publish.summary import Fact
+from builder.records.figures import duration_text, significant
 
 __all__ = ["ExpectedView", "ShareView", "expected_view", "why_nothing_is_expected"]
 

@@ -12,7 +12,8 @@ from builder.mechanism.outlook import expected_text, percent_text
 from builder.mechanism.question import Question
 from builder.mechanism.rate_terms import fitted_parameters
 from builder.mechanism.rules import GATES
-from builder.publish.figures import capital, duration_text, how_many, joined
+from builder.publish.figures import capital, how_many, joined
+from builder.records.figures import duration_text
 from builder.records.vocabulary import ELIMINATIONS, Course, Mechanism
 from builder.sources import source_text
 

@@ -10,7 +10,7 @@ from builder.mechanism.improve import Improvement
 from builder.mechanism.outlook import expected_text, percent_text
 from builder.mechanism.question import Question
 from builder.mechanism.rate_terms import fitted_parameters
-from builder.publish.figures import equivalents_text, joined
+from builder.publish.figures import joined
 from builder.publish.forecast_parts import (
     GATE_IDS,
     TermLine,
@@ -23,6 +23,7 @@ from builder.publish.forecast_parts import (
     verdict_sentence,
     why,
 )
+from builder.records.figures import equivalents_text
 from builder.records.vocabulary import Course, Mechanism
 
 __all__ = ["render_forecast"]

@@ -3,8 +3,9 @@
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-from builder.publish.figures import amount_text, joined, quantity_text
+from builder.publish.figures import joined
 from builder.records.fields import Ratio
+from builder.records.figures import amount_text, quantity_text
 from builder.records.model import Measurement, Outcome, Performed, RateConstant, Record
 from builder.records.quantities import Percent
 from builder.records.vocabulary import ProductUse

@@ -12,13 +12,14 @@ from builder.chemistry.perception import attacking_atoms
 from builder.chemistry.scheme import Arrow
 from builder.publish.charges import AmountView, StageView, amounts_note, view_amounts, view_stages
 from builder.publish.expected import ExpectedView, expected_view, why_nothing_is_expected
-from builder.publish.figures import formula_parts, molar_mass_text
+from builder.publish.figures import formula_parts
 from builder.publish.forecast_parts import GATE_IDS, Closed
 from builder.publish.measured import MeasuredLine, measured_lines, outcome_headline, yield_caption
 from builder.publish.participants import Participant, participants_of, role_of
 from builder.publish.safety import SafetyView, view_safety
 from builder.publish.schemes import Scheme, arrow_of, entry_scheme
 from builder.publish.summary import Fact, Summary, conditions_line, conditions_strip, scale_mol
+from builder.records.figures import molar_mass_text
 from builder.records.model import Charged
 from builder.records.vocabulary import NucleophileWord
 from builder.rule import Path

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from builder.checks.case import Case
 from builder.checks.hazards.azides import AzideView, azides_of
 from builder.checks.hazards.formed import FormedSpecies, formed_by
-from builder.checks.hazards.formulae import RULE_OF_SIX
+from builder.checks.hazards.formulae import RULE_OF_SIX, one_decimal
 from builder.checks.hazards.ghs import Labelled, labelled
 from builder.checks.hazards.meetings import Present
 from builder.checks.hazards.mutagens import limits_text
@@ -63,12 +63,7 @@ def view_safety(case: Case) -> SafetyView:
         unlabelled=tuple(p.name for p, row in known if row is None),
         solvents=tuple(fact for p in charged if p.path[0] == "solvent" for fact in _solvent(p)),
         azides=tuple(map(_azide, azides_of(case))),
-        formed=tuple(
-            Fact(
-                species.name, species.structure.smiles if species.structure else "", f"from {_listed(species.origins)}"
-            )
-            for species in formed_by(hazards_of(case), presents)
-        ),
+        formed=tuple(map(_formed, formed_by(hazards_of(case), presents))),
         mutagens=tuple(_mutagens(case)),
         heat=tuple(_heat(case)),
     )
@@ -105,12 +100,12 @@ def _formed(species: FormedSpecies) -> Fact:
 
 def _azide(azide: AzideView) -> Fact:
     keeps = "kept" if azide.carbons_per_azide >= RULE_OF_SIX else "broken"
-    mass = "" if azide.mass_g is None else f", {azide.mass_g:.3g} g here"
+    mass = "" if azide.mass_g is None else f", {azide.mass_text} here"
     where = "" if azide.is_isolated else " (in solution)"
     return Fact(
         azide.name,
         f"(C + O)/N {azide.ratio:.2f}: {azide.limit.words}{mass}{where}",
-        f"rule of six {keeps}; oxygen balance {azide.oxygen_balance:.1f} %, no measure of azides;"
+        f"rule of six {keeps}; oxygen balance {one_decimal(azide.oxygen_balance)} %, no measure of azides;"
         f" {source_text(azide.limit.source)}, read {azide.limit.read}",
     )
 
@@ -129,8 +124,8 @@ def _heat(case: Case) -> Iterator[Fact]:
     """Yield adiabatic rise, MTSR and criticality, each with its value or with what is missing for it."""
     forms_gas = bool(gases_of_record(case.record, case.structures, case.amounts))
     screen = thermal_screen(case.record, case.structures, case.amounts, forms_gas=forms_gas)
-    rise = f"{screen.rise_k:.1f} K, severity {screen.severity}" if screen.rise_k is not None else ""
-    mtsr = f"{screen.mtsr_c:.1f} °C" if screen.mtsr_c is not None else ""
+    rise = f"{one_decimal(screen.rise_k)} K, severity {screen.severity}" if screen.rise_k is not None else ""
+    mtsr = f"{one_decimal(screen.mtsr_c)} °C" if screen.mtsr_c is not None else ""
     criticality = f"class {screen.criticality} of 5" if screen.criticality is not None else ""
     if not any((rise, mtsr, criticality)) and case.record.thermal is None:
         yield Fact(

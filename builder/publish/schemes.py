@@ -10,8 +10,9 @@ from builder.chemistry.inks import standalone
 from builder.chemistry.perception import ReactiveSite, sites_of
 from builder.chemistry.scheme import Arrow, DrawnCompound, draw_scheme, legend
 from builder.chemistry.structure import AtomId, Structure
-from builder.publish.figures import equivalents_text, joined
+from builder.publish.figures import joined
 from builder.publish.measured import yield_caption
+from builder.records.figures import equivalents_text
 from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord
 from builder.rule import Path

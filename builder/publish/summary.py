@@ -5,8 +5,9 @@ from dataclasses import dataclass
 
 from builder.checks.case import Case
 from builder.mechanism.amounts import AmountRow
-from builder.publish.figures import amount_text, concentration_text, equivalents_text, joined, quantity_text
+from builder.publish.figures import joined
 from builder.publish.measured import runs_text
+from builder.records.figures import amount_text, concentration_text, equivalents_text, quantity_text
 from builder.records.model import Record, Stage
 from builder.records.vocabulary import NucleophileWord, Status
 

@@ -20,6 +20,7 @@ __all__ = [
     "Temperature",
     "comma_error",
     "decimal_text",
+    "half_unit",
     "is_beyond_measure",
     "is_unit",
     "number_text",
@@ -229,6 +230,12 @@ class QuantityError(ValueError):
         return QuantityError(self.rule, self.message, mend, fix, is_sure=self.is_sure)
 
 
+def half_unit(number: Decimal) -> float:
+    """Return half a unit in the last typed digit of a number, in the unit of the number; 0 for one without digits."""
+    exponent = number.as_tuple().exponent
+    return float(Decimal(5).scaleb(exponent - 1)) if isinstance(exponent, int) else 0.0
+
+
 @dataclass(frozen=True, slots=True)
 class Quantity:
     """A number with its unit, as typed and in the canonical unit of its dimension.
@@ -251,11 +258,8 @@ class Quantity:
     @property
     def half_digit(self) -> float:
         """Return half a unit in the last typed digit, relative to the value: the width of honest rounding."""
-        if not self.number:
-            return 0.0
-        exponent = self.number.as_tuple().exponent
-        assert isinstance(exponent, int)  # noqa: S101 - the grammar admits finite numbers only
-        return abs(float(Decimal(5).scaleb(exponent - 1) / self.number))
+        size = abs(float(self.number))
+        return half_unit(self.number) / size if size else 0.0
 
     @property
     def canonical(self) -> str:

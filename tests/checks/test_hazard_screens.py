@@ -8,11 +8,12 @@ from builder.checks.hazards.formed import formed_by, load_formations
 from builder.checks.hazards.formulae import carbon_ratio, carbons_per_azide, oxygen_balance_percent
 from builder.checks.hazards.ghs import labelled, load_ghs, load_statements
 from builder.checks.hazards.meetings import find_hazards
-from builder.checks.hazards.mutagens import alert_of, load_intake_limits, ppm
+from builder.checks.hazards.mutagens import alert_of, load_intake_limits
 from builder.checks.hazards.screens import mutagenic_species
 from builder.checks.hazards.solvent_limits import load_residual_limits, load_restrictions
 from builder.chemistry.structure import parse_smiles
 from builder.mechanism.solvents import load_solvents
+from builder.publish.safety import view_safety
 from builder.records.specimen import with_example
 from tests.checks.test_cautions import case_of, experiment, faults
 
@@ -48,6 +49,60 @@ def test_oxygen_balance_of_2_azidobutane() -> None:
 def test_the_ranges_of_azides_meet_and_each_says_when_it_was_read() -> None:
     assert [limit.ratio_from for limit in load_azide_limits()] == [0, 1, 3]
     assert all(limit.read for limit in load_azide_limits())
+
+
+TWO_AZIDES = """\
+substrate: {{name: 2-bromopentane, smiles: 'CCCC(C)Br', class: secondary, leaving_group: bromide, amount: {amount}}}
+nucleophile: {{name: sodium azide, smiles: '[Na+].[N-]=[N+]=[N-]', equivalents: 1.3}}
+outcome:
+  result: [substitution, rearrangement]
+  products:
+    - {{label: A, name: 2-azidopentane, smiles: 'CCCC(C)N=[N+]=[N-]', use: desired}}
+    - {{label: B, name: 3-azidopentane, smiles: 'CCC(CC)N=[N+]=[N-]', use: by-product}}
+  measured: [{measured}]
+safety_review: {{by: safety-1, date: 2026-03-12, scope: '{scope}'}}
+"""
+
+
+@pytest.mark.parametrize(
+    ("measured", "masses"),
+    [
+        # 437 mmol of azidopentane, 113.16 g/mol, weigh 49.4 g; 85 % are 42.0 g; both may be isolated up to 5 g.
+        ("{yield: 85 %, of: [A, B], kind: isolated, mass: 42 g}", ["at most 42 g", "at most 42 g"]),
+        ("{yield: 85 %, of: [A, B], kind: isolated}", ["at most 42 g", "at most 42 g"]),
+        ("{yield: 85 %, of: [A, B], kind: assay, mass: 42 g}", []),
+        # Of one alone, its own number counts: 2 % of 49.4 g are 1 g.
+        ("{yield: 85 %, of: [A, B], kind: isolated, mass: 42 g}, {yield: 2 %, of: B, kind: assay}", ["at most 42 g"]),
+        ("{yield: 80 %, of: A, kind: isolated, mass: 39.5 g}", ["39.5 g"]),
+    ],
+)
+def test_azides_weighed_together_are_each_at_most_that(measured: str, masses: list[str]) -> None:
+    text = TWO_AZIDES.format(amount="437 mmol", measured=measured, scope="azide at 600 mmol")
+    found = faults("azide-over-limit", with_example(text))
+    assert [fault.message.split(": ")[1].split(", and")[0] for fault in found] == masses
+
+
+def test_the_mass_that_the_mend_names_is_enough_in_the_scope() -> None:
+    # By hand: 85 % of 64.0 mmol, 113.16 g/mol, are 6.156 g, shown as 6.16 g; of 63.97 mmol 6.153 g, shown as 6.15 g.
+    for amount, shown in (("64.0 mmol", "6.16 g"), ("63.97 mmol", "6.15 g")):
+        line = "{yield: 85 %, of: A, kind: isolated}"
+        (fault,) = faults(
+            "azide-over-limit", with_example(TWO_AZIDES.format(amount=amount, measured=line, scope="azide at 90 mmol"))
+        )
+        assert f"have {shown} reviewed" in fault.mend
+        for allowed, is_over in ((shown, False), ("5.8 g", True)):
+            text = TWO_AZIDES.format(amount=amount, measured=line, scope=f"azide at 90 mmol, azide up to {allowed}")
+            assert bool(faults("azide-over-limit", with_example(text))) is is_over
+
+
+def test_a_negative_balance_is_shown_with_the_true_minus() -> None:
+    # By hand for C5H11N3, 113.16 g/mol: -1600 (2 · 5 + 11/2)/113.16 = -219.2 %.
+    text = with_example(
+        TWO_AZIDES.format(amount="64 mmol", measured="{yield: 85 %, of: A, kind: isolated}", scope="azide at 64 mmol")
+    )
+    (fault,) = faults("azide-over-limit", text)
+    assert "oxygen balance −219.2 %" in fault.message
+    assert all("oxygen balance −219.2 %" in fact.detail for fact in view_safety(case_of(text)).azides)
 
 
 # --- what forms -------------------------------------------------------------------------------------------------
@@ -117,11 +172,6 @@ def test_intake_limits_are_those_of_the_guideline() -> None:
     assert [limit.one for limit in load_intake_limits()] == [120, 20, 10, 1.5]
     assert [limit.several for limit in load_intake_limits()] == [120, 60, 30, 5]
     assert {limit.revision for limit in load_intake_limits()} == {"R2, 2023"}
-
-
-@pytest.mark.parametrize(("intake", "dose", "limit"), [(1.5, 1.0, 1.5), (1.5, 0.1, 15.0), (120.0, 10.0, 12.0)])
-def test_limit_in_the_substance(intake: float, dose: float, limit: float) -> None:
-    assert ppm(intake, dose) == pytest.approx(limit)  # µg a day over g a day, by hand
 
 
 def test_a_nitrosamine_that_can_form_never_gets_the_threshold() -> None:

@@ -9,9 +9,9 @@ from hypothesis import strategies as st
 
 from builder.checks.copies import SAMPLE_MASSES
 from builder.checks.excess import DISAGREE_POINTS
-from builder.checks.measured import exactly, excess_span, half_unit, percent_span
+from builder.checks.measured import exactly, excess_span, percent_span
 from builder.records.fields import Ratio
-from builder.records.quantities import parse_percent
+from builder.records.quantities import half_unit, parse_percent
 from builder.records.specimen import TWO_PRODUCTS, outcome_example
 from tests.specimens import play
 

@@ -63,7 +63,7 @@ def test_the_slip_is_named(example: str, words: str) -> None:
         (
             "concentration: 0.333 mol/L\n"
             "base: {name: sodium hydroxide, smiles: '[Na+].[OH-]', volume: 10 mL, strength: 1.0 mol/L}",
-            "fits the total of all liquids, 30 mL",
+            "fits the total of all liquids, 30.0 mL",
         ),
     ],
 )

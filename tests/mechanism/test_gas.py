@@ -6,7 +6,7 @@ from chemicals import Tb
 from builder.chemistry.structure import parse_smiles
 from builder.mechanism.gas import (
     GasFormed,
-    Present,
+    InFlask,
     closed_vessel_bar,
     gas_volume_l,
     gases_from,
@@ -47,8 +47,8 @@ def test_a_gas_needs_a_headspace() -> None:
         closed_vessel_bar(25.0, 0.0, gas_moles=0.01)
 
 
-def _flask(*charged: tuple[str, float | None]) -> list[Present]:
-    return [Present(("reagents", i), parse_smiles(smiles), moles) for i, (smiles, moles) in enumerate(charged)]
+def _flask(*charged: tuple[str, float | None]) -> list[InFlask]:
+    return [InFlask(("reagents", i), parse_smiles(smiles), moles) for i, (smiles, moles) in enumerate(charged)]
 
 
 def _by_formula(formed: tuple[GasFormed, ...]) -> dict[str, float | None]:

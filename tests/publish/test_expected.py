@@ -4,8 +4,8 @@ import pytest
 
 from builder.mechanism.outlook import expected_text, percent_text
 from builder.publish.expected import ExpectedView, expected_view, why_nothing_is_expected
-from builder.publish.figures import duration_text
 from builder.publish.forecast_parts import GATE_IDS
+from builder.records.figures import duration_text
 from tests.publish.handmade import case_of, text_of
 
 

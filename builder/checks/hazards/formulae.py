@@ -5,7 +5,7 @@ from functools import cache
 from builder.chemistry.fragments import Fragment
 from builder.chemistry.structure import Structure
 
-__all__ = ["RULE_OF_SIX", "carbon_ratio", "carbons_per_azide", "oxygen_balance_percent"]
+__all__ = ["RULE_OF_SIX", "carbon_ratio", "carbons_per_azide", "one_decimal", "oxygen_balance_percent"]
 
 RULE_OF_SIX = 6
 """Carbon atoms, or atoms of their size, that each azide group wants: the second opinion. Source: azide-guideline."""
@@ -46,3 +46,12 @@ def oxygen_balance_percent(structure: Structure) -> float:
     counts = plain.elements
     hydrogens = sum(atom.hydrogens for atom in plain.atoms)
     return -1600.0 * (2 * counts.get("C", 0) + hydrogens / 2 - counts.get("O", 0)) / plain.mass
+
+
+def one_decimal(value: float) -> str:
+    """Return a number with one decimal and, below zero, the true minus.
+
+    >>> one_decimal(-219.16)
+    '−219.2'
+    """
+    return f"{value:.1f}".replace("-", "−")

@@ -13,8 +13,8 @@ from builder.checks.hazards.kinds import hazard_table
 from builder.checks.hazards.meetings import Present, Whereabouts
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.finding import Level
-from builder.mechanism import gas
-from builder.mechanism.gas import Gas, GasFormed, gas_volume_l, gases_from, gases_of_record, present_in
+from builder.mechanism.gas import Gas, GasFormed, InFlask, gas_volume_l, gases_from, gases_of_record, present_in
+from builder.records.figures import amount_text, volume_text
 from builder.rule import Path
 
 __all__ = ["GasEvolved", "GasOutlet", "gases_evolved", "load_gas_outlets"]
@@ -71,8 +71,7 @@ class GasEvolved:
         if self.moles is None:
             return "amount unknown"
         volume = gas_volume_l(self.moles)
-        amount = f"{self.moles * 1e3:.3g} mmol" if self.moles < 1.0 else f"{self.moles:.3g} mol"
-        return f"at most {amount}, {volume:.2g} L at 25 °C and 1 atm"
+        return f"at most {amount_text(self.moles)}, {volume_text(volume)} at 25 °C and 1 atm"
 
 
 @cache
@@ -123,7 +122,7 @@ def _all_formed(case: Case, presents: Sequence[Present]) -> Iterator[tuple[GasFo
         if line.whereabouts is not Whereabouts.WORK_UP:
             continue
         named = sorted(kind for kind in line.kinds & _NAMED.keys() if kinds & _GIVES_GAS_WITH[kind])
-        added = [gas.Present(line.path, _stand_in(kind), _EXCESS_MOL) for kind in named]
+        added = [InFlask(line.path, _stand_in(kind), _EXCESS_MOL) for kind in named]
         for formed in gases_from((*charged, *added)) if added else ():
             if line.path in formed.paths and (formed.moles is None or formed.moles < _EXCESS_MOL / 10):
                 yield formed, line.path

@@ -10,7 +10,7 @@ from builder.checks.hazards.kinds import hazard_table, kinds_of, load_substance_
 from builder.chemistry.structure import Structure
 from builder.table import NOTHING
 
-__all__ = ["IntakeLimit", "MutagenAlert", "alert_of", "limits_text", "load_intake_limits", "load_mutagen_alerts", "ppm"]
+__all__ = ["IntakeLimit", "MutagenAlert", "alert_of", "limits_text", "load_intake_limits", "load_mutagen_alerts"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -75,15 +75,6 @@ def alert_of(structure: Structure) -> MutagenAlert | None:
     """Return the first alert that a structure shows, None where it shows none."""
     kinds = kinds_of(structure)
     return next((alert for alert in load_mutagen_alerts() if alert.kind in kinds), None)
-
-
-def ppm(intake_ug_per_day: float, dose_g_per_day: float) -> float:
-    """Return the concentration limit in a drug substance, µg/g, at a dose.
-
-    >>> ppm(1.5, 1.0), ppm(1.5, 0.1)
-    (1.5, 15.0)
-    """
-    return intake_ug_per_day / dose_g_per_day
 
 
 def limits_text() -> str:

@@ -98,17 +98,22 @@ def _uncovered(case: Case) -> Iterator[Hazard]:
     fires_on=(
         "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 5 mmol'}",
         "safety_review: {by: safety-1, date: 2026-03-12, scope: 'sodium azide up to 0.5 g'}",
+        "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide in DMF (at most 5 mmol)'}",
     ),
     silent_on=(
         "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 10 mmol'}",
         "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide, 20 mL of a solution'}",
+        "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 20 mmol and nitrite at 1 mmol'}",
     ),
 )
 def safety_scope_is_exceeded(case: Case) -> Iterator[Fault]:
     """Nothing is charged in a larger amount than the scope of the safety review states.
 
-    Moles in a scope may be those of the substance or of the substrate, the scale of the run; a mass is that of the
-    substance. A larger run needs a review of its own: heat and gas grow with the mass, cooling with the surface.
+    An amount speaks of what is named right behind it, else of the nearest thing named before it, by kind or by its name
+    in the record, and once of each; what names several has the largest. Moles may be those of the substance or of the
+    substrate, the scale of the run; a mass or volume is that of the substance as charged. Where a scope ties no amount
+    to anything it names, the amount is the scale of the run. A larger run needs a review of its own: heat and gas grow
+    with the mass, cooling with the surface.
     """
     for excess in excesses(case, presents_of(case)):
         yield Fault(

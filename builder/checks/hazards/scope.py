@@ -1,34 +1,23 @@
 """What the scope of a safety review covers: the hazards it names, up to the amounts it states."""
 
-import re
 from collections.abc import Iterator
 from dataclasses import dataclass
-from functools import lru_cache
 
 from builder.checks.case import Case
 from builder.checks.hazards.cautions import Severity
 from builder.checks.hazards.kinds import load_substance_kinds
 from builder.checks.hazards.meetings import Hazard, Present, Whereabouts
+from builder.checks.hazards.presents import presents_of
+from builder.checks.hazards.scope_amounts import Bound, Charge, bounds_of
 from builder.checks.hazards.words import read_scope
+from builder.mechanism.amounts import AmountRow, Role
 
-__all__ = ["Excess", "allowed_g", "excesses", "is_covered", "scope_lacks"]
+__all__ = ["Excess", "excesses", "is_covered", "is_mass_reviewed", "scope_lacks"]
 
 TOLERANCE = 1.05
 """A record may exceed an amount of its scope by the rounding of either; common practice, no source."""
 
-_CLAUSE = re.compile(r"[,;()]")
-_AMOUNT = re.compile(r"(?<![\d.])(\d+(?:\.\d+)?)\s*(mmol|mol|kg|mg|g)\b(?!/)")
-_UNITS = {"mol": (1.0, "mol"), "mmol": (1e-3, "mol"), "kg": (1e3, "g"), "g": (1.0, "g"), "mg": (1e-3, "g")}
-
-
-@dataclass(frozen=True, slots=True)
-class Bound:
-    """An amount that a scope states: the kinds it speaks of, mol or g, and as typed."""
-
-    kinds: frozenset[str]
-    value: float
-    unit: str
-    typed: str
+_SUBSTANCES = frozenset({Whereabouts.FLASK, Whereabouts.PRODUCT})
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,8 +54,7 @@ def scope_lacks(scope: str, hazard: Hazard) -> str:
 def _firsts(hazard: Hazard) -> Iterator[Present]:
     """Yield the substances that the first kind of the caution stands for."""
     for present in (hazard.at, *hazard.others):
-        is_substance = present.whereabouts in {Whereabouts.FLASK, Whereabouts.PRODUCT}
-        if is_substance and hazard.caution.first.name in present.kinds:
+        if present.whereabouts in _SUBSTANCES and hazard.caution.first.name in present.kinds:
             yield present
 
 
@@ -80,49 +68,68 @@ def _word_of(kind: str) -> str:
 
 
 def excesses(case: Case, presents: tuple[Present, ...]) -> Iterator[Excess]:
-    """Yield the substances of which a record charges more than the scope states.
+    """Yield the substances of which a record charges more than the scope states, each once.
 
-    Moles may be meant of the substance or of the substrate, the scale of the run: the smaller counts. A mass is that of
-    the substance as charged.
+    Moles may be meant of the substance or of the substrate, the scale of the run: the smaller counts. A mass or volume
+    is that of the substance as charged. Where no amount of a scope is tied to anything it names ("lachrymator at 10
+    mmol"), they are the scale of the run and hold for the substrate: so people write it, and a scope that states a size
+    never covers a larger run. Beside a tied amount they bind nothing ("hydrogen up to 20 mmol"), and lift nothing.
     """
-    review = case.record.safety_review
-    if review is None:
-        return
-    scale = case.amounts.substrate.amount_mol
-    rows = {row.path: row for row in case.amounts.rows}
-    for bound in _bounds(review.scope):
-        for present in presents:
-            row = rows.get(present.path)
-            if row is None or not (bound.kinds & present.kinds) or row.role.value == "solvent":
-                continue
-            if bound.unit == "g":
-                held = row.mass_g
-            else:
-                held = row.amount_mol if scale is None or row.amount_mol is None else min(scale, row.amount_mol)
-            if held is not None and held > bound.value * TOLERANCE:
-                yield Excess(present, _shown(held, bound.unit), bound.typed)
+    bounds, rows = _bounds(case), {row.path: row for row in case.amounts.rows}
+    is_scale = not any(bound.is_tied for bound in bounds)
+    for present in presents:
+        row = rows.get(present.path)
+        if row is None or row.role is Role.SOLVENT:
+            continue
+        is_meant = is_scale and row.role is Role.SUBSTRATE
+        speaking = [bound for bound in bounds if bound.unit != "L"] if is_meant else _bounds_on(bounds, present)
+        for unit in ("mol", "g", "L"):
+            most = _most(speaking, unit)
+            held = _held(row, unit, case.amounts.substrate.amount_mol)
+            if most is not None and held is not None and held > most.value * TOLERANCE:
+                yield Excess(present, _shown(held, unit), most.typed)
                 break
 
 
-def allowed_g(case: Case, present: Present) -> float | None:
-    """Return the largest mass in g that the scope states of a kind of substance; None where it states none."""
+def is_mass_reviewed(case: Case, present: Present, mass_g: float) -> bool:
+    """Answer whether the scope states a mass of a substance that is as large as this, in g."""
+    most = _most(_bounds_on(_bounds(case), present), "g")
+    return most is not None and mass_g <= most.value * TOLERANCE
+
+
+def _bounds(case: Case) -> tuple[Bound, ...]:
     review = case.record.safety_review
-    bounds = _bounds(review.scope) if review is not None else ()
-    return max((each.value for each in bounds if each.unit == "g" and each.kinds & present.kinds), default=None)
+    if review is None:
+        return ()
+    presents = [present for present in presents_of(case) if present.whereabouts in _SUBSTANCES]
+    solvents = [present for present in presents if present.path[0] == "solvent"]
+    others = [present for present in presents if present.path[0] != "solvent"]
+    return bounds_of(review.scope, Charge(*_kinds_and_names(others), *_kinds_and_names(solvents)))
 
 
-@lru_cache(maxsize=256)
-def _bounds(scope: str) -> tuple[Bound, ...]:
-    found: list[Bound] = []
-    for clause in _CLAUSE.split(scope):
-        kinds = read_scope(clause).named
-        for match in _AMOUNT.finditer(clause) if kinds else ():
-            factor, unit = _UNITS[match[2]]
-            found.append(Bound(kinds, float(match[1]) * factor, unit, match[0]))
-    return tuple(found)
+def _kinds_and_names(presents: list[Present]) -> tuple[frozenset[str], frozenset[str]]:
+    kinds = frozenset().union(*(present.kinds for present in presents))
+    return kinds, frozenset(present.name.casefold() for present in presents)
+
+
+def _bounds_on(bounds: tuple[Bound, ...], present: Present) -> list[Bound]:
+    """Return the bounds that speak of a substance by its name, else those that speak of its kind."""
+    by_name = [bound for bound in bounds if present.name.casefold() in bound.names]
+    return by_name or [bound for bound in bounds if bound.kinds & present.kinds]
+
+
+def _most(bounds: list[Bound], unit: str) -> Bound | None:
+    """Return the largest bound in a unit: "cyanide at 30 mmol, hydrogen cyanide up to 19 mmol" allows 30 mmol."""
+    return max((bound for bound in bounds if bound.unit == unit), key=lambda bound: bound.value, default=None)
+
+
+def _held(row: AmountRow, unit: str, scale_mol: float | None) -> float | None:
+    if unit != "mol":
+        return row.mass_g if unit == "g" else row.volume_l
+    return row.amount_mol if scale_mol is None or row.amount_mol is None else min(scale_mol, row.amount_mol)
 
 
 def _shown(value: float, unit: str) -> str:
-    if unit == "mol" and value < 1.0:
-        return f"{1e3 * value:.3g} mmol"
-    return f"{value:.3g} {unit}"
+    if unit == "g" or value >= 1.0:
+        return f"{value:.3g} {unit}"
+    return f"{1e3 * value:.3g} m{unit}"

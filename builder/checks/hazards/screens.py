@@ -8,14 +8,14 @@ from dataclasses import dataclass
 
 from builder.checks.case import Case, compounds_of
 from builder.checks.hazards.azides import AzideView, azides_of
-from builder.checks.hazards.cautions import WHO_DECIDES
+from builder.checks.hazards.cautions import WHO_DECIDES, Severity
 from builder.checks.hazards.formed import formed_by
-from builder.checks.hazards.formulae import RULE_OF_SIX
+from builder.checks.hazards.formulae import RULE_OF_SIX, one_decimal
 from builder.checks.hazards.gases import gases_evolved
 from builder.checks.hazards.meetings import Whereabouts
 from builder.checks.hazards.mutagens import MutagenAlert, alert_of, limits_text
 from builder.checks.hazards.presents import hazards_of, presents_of
-from builder.checks.hazards.scope import allowed_g
+from builder.checks.hazards.scope import is_mass_reviewed
 from builder.checks.hazards.solvent_limits import load_restrictions
 from builder.finding import Level
 from builder.mechanism.gas import gas_volume_l, gases_of_record
@@ -53,7 +53,7 @@ safety_review: {{by: safety-1, date: 2026-03-12, scope: '{scope}'}}
     source="azide-guideline",
     fires_on=(
         _TWO_AZIDOBUTANE.format(amount="72.98 mmol", kind="isolated", scope="azide at 100 mmol"),
-        _TWO_AZIDOBUTANE.format(amount="72.98 mmol", kind="isolated", scope="azide at 100 mmol, azide up to 6 g"),
+        _TWO_AZIDOBUTANE.format(amount="72.98 mmol", kind="isolated", scope="azide at 100 mmol, azide up to 5.5 g"),
     ),
     silent_on=(
         _TWO_AZIDOBUTANE.format(amount="50 mmol", kind="isolated", scope="azide at 50 mmol"),
@@ -65,26 +65,26 @@ def azide_is_over_limit(case: Case) -> Iterator[Fault]:
     """An organic azide is isolated only up to the mass that its carbon to nitrogen ratio allows, unless reviewed.
 
     Below 1 carbon and oxygen atom per nitrogen atom it is not isolated at all, between 1 and 3 up to 5 g, from 3 on up
-    to 20 g. The mass is the one weighed, else scale times yield; what stays in solution does not count. A safety review
-    lifts it where its scope states a mass of azide as large as that. The rule of six and the oxygen balance stand
-    beside it as second opinions.
+    to 20 g. The mass is the one weighed, else scale times yield, with others in a mixture as an upper bound; what stays
+    in solution does not count. A safety review lifts it where its scope states a mass of azide as large as that. The
+    rule of six and the oxygen balance stand beside it as second opinions.
     """
     for azide in azides_of(case):
-        allowed = allowed_g(case, azide.present)
-        if azide.is_over and not (allowed is not None and azide.mass_g is not None and azide.mass_g <= allowed):
+        mass_g = azide.mass_g
+        if azide.is_over and mass_g is not None and not is_mass_reviewed(case, azide.present, mass_g):
             yield Fault(
                 at=azide.path,
-                message=f"{azide.name}: {_shown_g(azide.mass_g)}, and (C + O)/N {azide.ratio:.2f} says "
+                message=f"{azide.name}: {azide.mass_text}, and (C + O)/N {azide.ratio:.2f} says "
                 f"{azide.limit.words}; {_second_opinions(azide)}",
-                mend=f"keep it in solution, or run it in parts; otherwise have {_shown_g(azide.mass_g)} reviewed and"
+                mend=f"keep it in solution, or run it in parts; otherwise have {mass_g:.3g} g reviewed and"
                 f" named in the scope of safety_review; {WHO_DECIDES}",
                 data={
                     "carbon_ratio": round(azide.ratio, 2),
-                    "mass_g": azide.mass_g,
+                    "mass_g": mass_g,
                     "most_g": azide.limit.most_g,
                     "carbons_per_azide": azide.carbons_per_azide,
                     "oxygen_balance_percent": round(azide.oxygen_balance, 1),
-                    "severity": "stop",
+                    "severity": Severity.STOP.value,
                 },
                 source=azide.limit.source,
             )
@@ -92,11 +92,9 @@ def azide_is_over_limit(case: Case) -> Iterator[Fault]:
 
 def _second_opinions(azide: AzideView) -> str:
     keeps = "keeps" if azide.carbons_per_azide >= RULE_OF_SIX else "breaks"
-    return f"it {keeps} the rule of six; oxygen balance {azide.oxygen_balance:.1f} %, which says little of azides"
-
-
-def _shown_g(mass_g: float | None) -> str:
-    return "mass unknown" if mass_g is None else f"{mass_g:.3g} g"
+    return (
+        f"it {keeps} the rule of six; oxygen balance {one_decimal(azide.oxygen_balance)} %, which says little of azides"
+    )
 
 
 # --- heat -------------------------------------------------------------------------------------------------------
@@ -136,7 +134,7 @@ def reaction_can_run_away(case: Case) -> Iterator[Fault]:
             at=("thermal",),
             message=f"{'; '.join(said)}; {SCREEN_ONLY}",
             mend=f"dose instead of charging at once, dilute, measure the heat before any larger scale; {WHO_DECIDES}",
-            data={"rise_k": screen.rise_k, "mtsr_c": screen.mtsr_c, "severity": "warn"},
+            data={"rise_k": screen.rise_k, "mtsr_c": screen.mtsr_c, "severity": Severity.WARN.value},
         )
 
 
@@ -148,7 +146,7 @@ def _rise_said(screen: ThermalScreen) -> Iterator[str]:
 
 def _temperatures_said(screen: ThermalScreen) -> Iterator[str]:
     if screen.mtsr_c is not None and screen.onset_c is not None and screen.mtsr_c >= screen.onset_c:
-        yield f"MTSR {screen.mtsr_c:.1f} °C reaches the onset of decomposition at {screen.onset_c:g} °C"
+        yield f"MTSR {one_decimal(screen.mtsr_c)} °C reaches the onset of decomposition at {screen.onset_c:g} °C"
     if screen.criticality in _GRAVE:
         yield f"criticality class {screen.criticality} of 5"
 
@@ -214,7 +212,7 @@ def gas_is_evolved(case: Case) -> Iterator[Fault]:
                 "gas": evolved.gas.formula,
                 "moles": evolved.moles,
                 "volume_l": None if evolved.moles is None else round(gas_volume_l(evolved.moles), 3),
-                "severity": "warn" if evolved.outlet.level is Level.CAUTION else "note",
+                "severity": (Severity.WARN if evolved.outlet.level is Level.CAUTION else Severity.NOTE).value,
             },
             level=evolved.outlet.level,
             source=evolved.outlet.source,

@@ -11,7 +11,7 @@ from functools import cache, lru_cache
 
 from builder.checks.hazards.kinds import SubstanceKind, load_substance_kinds
 
-__all__ = ["Named", "ScopeWords", "is_denied", "kinds_named_in", "read_scope"]
+__all__ = ["Mention", "Named", "ScopeWords", "is_denied", "kinds_named_in", "read_scope"]
 
 _PH = re.compile(r"\bpH\s*(?:of|to|is|about|around|below|ca\.?|[=~≈<≤>≥])?\s*(\d+(?:\.\d+)?)")
 _DENIAL = re.compile(
@@ -73,12 +73,25 @@ def kinds_named_in(text: str) -> Named:
 
 
 @dataclass(frozen=True, slots=True)
+class Mention:
+    """A name in a text that the text does not deny: where it starts and ends, and the kinds that it stands for."""
+
+    start: int
+    end: int
+    kinds: frozenset[str]
+
+
+@dataclass(frozen=True, slots=True)
 class ScopeWords:
-    """What the scope of a safety review names, kinds and the words themselves, and the kinds it excludes."""
+    """What the scope of a safety review names, kinds and the words themselves, and the kinds it excludes.
+
+    mentions: the names in their order, of names inside each other the longest only.
+    """
 
     named: frozenset[str]
     words: tuple[str, ...]
     excluded: frozenset[str]
+    mentions: tuple[Mention, ...]
 
 
 @lru_cache(maxsize=512)
@@ -88,9 +101,8 @@ def read_scope(text: str) -> ScopeWords:
     Besides their words kinds are named by what reviewers call them: azide, hydride, alkylator.
     """
     vocabulary = _vocabulary()
-    named: set[str] = set()
     excluded: set[str] = set()
-    spans: list[tuple[int, int]] = []
+    spans: dict[tuple[int, int], frozenset[str]] = {}
     found = list(_names_in(text))
     for name, start, end in found:
         kinds = vocabulary.kinds_by_word.get(name, frozenset()) | vocabulary.kinds_by_scope_word.get(name, frozenset())
@@ -99,11 +111,12 @@ def read_scope(text: str) -> ScopeWords:
         if is_denied(text, start):
             excluded |= kinds
         elif kinds:
-            named |= kinds
-            spans.append((start, end))
+            spans[start, end] = spans.get((start, end), frozenset()) | kinds
+    named = frozenset().union(*spans.values())
     longest = [(a, b) for a, b in spans if not any(c <= a and b <= d and (a, b) != (c, d) for c, d in spans)]
     words = tuple(dict.fromkeys(text[start:end] for start, end in longest))
-    return ScopeWords(frozenset(named), words, frozenset(excluded - named))
+    mentions = tuple(Mention(start, end, spans[start, end]) for start, end in sorted(longest))
+    return ScopeWords(named, words, frozenset(excluded - named), mentions)
 
 
 def _names_in(text: str) -> Iterator[tuple[str, int, int]]:

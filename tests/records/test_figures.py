@@ -2,16 +2,7 @@
 
 import pytest
 
-from builder.publish.facets import slug_of
-from builder.publish.figures import (
-    amount_text,
-    equivalents_text,
-    formula_parts,
-    mass_text,
-    quantity_text,
-    significant,
-    volume_text,
-)
+from builder.records.figures import amount_text, equivalents_text, mass_text, quantity_text, significant, volume_text
 from builder.records.quantities import Dimension, parse_quantity
 
 
@@ -46,6 +37,9 @@ def test_three_significant_digits(value: float, text: str) -> None:
         (volume_text, 5e-5, "50.0 µL"),
         (equivalents_text, 1.5, "1.50"),
         (equivalents_text, 0.05, "0.0500"),
+        (equivalents_text, 1500.0, "1500"),
+        (amount_text, 0.9996, "1000 mmol"),
+        (volume_text, 20.0, "20.0 L"),
     ],
 )
 def test_derived_quantities_choose_a_readable_unit(text_of, value: float, text: str) -> None:
@@ -63,24 +57,3 @@ def test_derived_quantities_choose_a_readable_unit(text_of, value: float, text: 
 )
 def test_typed_quantities_keep_their_digits(typed: str, dimension: Dimension, text: str) -> None:
     assert quantity_text(parse_quantity(typed, dimension)) == text
-
-
-@pytest.mark.parametrize(
-    ("formula", "parts"),
-    [
-        ("C8H17N3", (("C", "8"), ("H", "17"), ("N", "3"))),
-        ("C2H5O-", (("C", "2"), ("H", "5"), ("O", ""), ("-", ""))),
-        ("H4N+", (("H", "4"), ("N", ""), ("+", ""))),
-        ("C4H4O4-2", (("C", "4"), ("H", "4"), ("O", "4"), ("-2", ""))),
-    ],
-)
-def test_formulae_are_split_for_subscripts(formula: str, parts: tuple[tuple[str, str], ...]) -> None:
-    assert formula_parts(formula) == parts
-
-
-@pytest.mark.parametrize(
-    ("text", "slug"),
-    [("sodium azide", "sodium-azide"), ("SN2'", "sn2"), ("../../x", "x"), ("Ω", ""), ("tert-butanol", "tert-butanol")],
-)
-def test_slugs_are_plain(text: str, slug: str) -> None:
-    assert slug_of(text) == slug
