@@ -436,6 +436,13 @@ class Shelf:
         (record, path), desk = self.records[entry], self._desk
         return open_case(record, desk.name(path), desk.settings, desk.today, desk.rxn(record, path))
 
+    def is_sound(self, entry: str) -> bool:
+        """Say whether reading and checking a record by itself finds no error.
+
+        Raises KeyError as `case` does.
+        """
+        return not _has_error(self._desk.examine(self.records[entry][1]).findings)
+
 
 def read_shelf(folder: Path, today: dt.date) -> Shelf:
     """Read every record below `folder`, as far as it can be read.

@@ -16,14 +16,15 @@ from typing import Any, NoReturn
 
 import click
 
-from builder.authoring.column_map import ColumnMap, first_map
+from builder.authoring.column_map import ColumnMap
 from builder.authoring.dialogue import Prompts, Silence
+from builder.authoring.first_map import FirstMap, first_map
 from builder.authoring.fix import Mended, diff_of, mended_files, with_exact_edits, write_mended
 from builder.authoring.import_report import as_plain, cell_table, import_text
 from builder.authoring.import_sheet import NoKeyError, State, open_sheet, plan_import, write_import
 from builder.authoring.new import Stated, draft_record, folder_inside, write_draft
 from builder.authoring.schema import schemas, write_schemas
-from builder.authoring.sheet import SheetError
+from builder.authoring.sheet import Sheet, SheetError, likely_heading_row
 from builder.authoring.start import StartError, start_book
 from builder.authoring.whole_file import written_new, written_whole
 from builder.book import Book, is_aside, open_book, record_files
@@ -251,7 +252,7 @@ def serve(config: Path, address: str) -> None:
 @click.option("--temperature", help='With its unit: "60 °C", "0 °C to 25 °C".')
 @click.option("--time", help='With its unit: "16 h".')
 @click.option("--want", metavar="RESULT|MECHANISM|SMILES", help="Which product is the desired one.  [default: main]")
-@click.option("--from", "origin", metavar="NS…|nearest", help="Take solvent, stages and work-up of that entry.")
+@click.option("--from", "origin", metavar="NS…|nearest", help="Take solvent, stages and work-up of that entry, if any.")
 @click.option("--title", help="In one line.  [default: from the names]")
 @click.option("--by", "person", envvar="HANDBOOK_BY", show_envvar=True, help="Your code in handbook.yml.")
 @click.option("--in", "inside", metavar="FOLDER", help="A folder of the book; it is made if need be.")
@@ -310,6 +311,7 @@ def _small_text(path: Path) -> str:
 @click.argument("sheet_file", metavar="SHEET", type=click.Path(exists=True, dir_okay=False, path_type=Path))
 @click.option("--map", "map_file", type=click.Path(exists=True, dir_okay=False, path_type=Path), help="Of its columns.")
 @click.option("--sheet", help="Which sheet of a workbook.")
+@click.option("--heading-row", type=click.IntRange(min=1), help="Where the headings stand.  [default: the first row]")
 @click.option("--into", type=click.Path(file_okay=False, path_type=Path), help="Folder of the book for new records.")
 @click.option("--dry-run", is_flag=True, help="Say what would happen, and write nothing.")
 @click.option("--sound-rows", is_flag=True, help="Write the sound rows although others are refused.")
@@ -318,11 +320,12 @@ def _small_text(path: Path) -> str:
 @click.option("--report", type=click.Path(dir_okay=False, path_type=Path), help="Write the cells to mend as CSV.")
 @_BOOK
 @_JSON
-def import_(
+def import_(  # noqa: PLR0913 - an argument for each option
     *,
     sheet_file: Path,
     map_file: Path | None,
     sheet: str | None,
+    heading_row: int | None,
     into: Path | None,
     write_map: Path | None,
     report: Path | None,
@@ -352,7 +355,11 @@ def import_(
             _refuse_loss(option, target, {"the sheet": sheet_file, "the map": map_file}, book)
     column_map, places = _column_map(map_file)
     try:
-        rows = open_sheet(sheet_file, sheet=sheet or column_map.sheet, heading_row=column_map.heading_row)
+        sheet, heading_row = sheet or column_map.sheet, heading_row or column_map.heading_row
+        rows = open_sheet(sheet_file, sheet=sheet, heading_row=heading_row)
+        if heading_row is None and (below := likely_heading_row(rows)) is not None:
+            _tell_of_headings(rows, below, may_go_on=write_map is not None)
+            rows = open_sheet(sheet_file, sheet=sheet, heading_row=below)
         if write_map is not None:
             _write_new(write_map, first_map(rows))
             return
@@ -399,13 +406,24 @@ def _column_map(path: Path | None) -> tuple[ColumnMap, Places]:
     return column_map, places
 
 
-def _write_new(path: Path, text: str) -> None:
+def _tell_of_headings(rows: Sheet, below: int, *, may_go_on: bool) -> None:
+    """Say that the headings stand below a title; refuse to go on where the map was not made for that."""
+    said = f"{rows.shown_as}: the headings seem to stand in row {below}, below a title in row {rows.heading_row}"
+    if not may_go_on:
+        mend = f"say --heading-row {below}, or heading_row: {below} in the map"
+        raise SheetError(f"{said}; {mend} (or {rows.heading_row} if they do not)")
+    click.echo(f"{said}; the map says heading_row: {below}", err=True)
+
+
+def _write_new(path: Path, first: FirstMap) -> None:
     try:
         with written_new(path) as file:
-            file.write(text)
+            file.write(first.text)
     except FileExistsError as error:
         raise click.UsageError(f"{path} is there already: name a new file") from error
-    click.echo(f"{path}: a first map, guessed from the headings; read it, then import with --map {path}")
+    if first.ignored:
+        click.echo(f"not kept, unless the map says where they go: {', '.join(first.ignored)}", err=True)
+    click.echo(f"{path}: a first map, guessed from the headings; read and complete it, then import with --map {path}")
 
 
 @handbook.command()

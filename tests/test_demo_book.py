@@ -12,7 +12,7 @@ from indigo.inchi import IndigoInchi
 
 from builder.book import Book, Entry, Verdict, open_book
 from builder.checks.case import Case
-from builder.checks.kinship import Kin, Relation, families, kin_of
+from builder.checks.kinship import Kin, Relation, families
 from builder.checks.standing import Standing, Variable
 from builder.chemistry.patterns import load_attack_patterns
 from builder.chemistry.perception import (
@@ -294,12 +294,11 @@ def test_a_run_is_repeated_by_other_hands() -> None:
 
 
 def _kin() -> list[Kin]:
+    """Return what each is to each of its family, one way round."""
     standings = _in_force()
-    return [
-        kin_of(standings[one], standings[other])
-        for one, others in families(standings.items()).items()
-        for other in others
-    ]
+    near = {(one, other): kin for one, other, kin in _book().near_same}
+    pairs = [(one, other) for one, others in families(standings.items()).items() for other in others if one < other]
+    return [near.get(pair, Kin(Relation.VARIANT, standings[pair[0]], standings[pair[1]])) for pair in pairs]
 
 
 def test_a_series_runs_through_leaving_groups() -> None:

@@ -5,7 +5,7 @@ left is written down once, in a small YAML file, and read by the rules of every 
 """
 
 import re
-from collections.abc import Iterable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from decimal import Decimal
 from difflib import get_close_matches
@@ -13,10 +13,8 @@ from typing import Annotated, Literal
 
 from pydantic import AfterValidator, BeforeValidator, Discriminator, Field, Tag
 
-from builder.authoring.sheet import Sheet
 from builder.records.fields import Count, Flag, Line, OneOrMany, faulty
 from builder.records.flat import canonical_name, column_names, shape_at
-from builder.records.mended_text import quoted
 from builder.records.model import Part
 from builder.records.quantities import is_unit
 
@@ -26,7 +24,6 @@ __all__ = [
     "IN_BRACES",
     "ColumnMap",
     "Target",
-    "first_map",
     "iso_date",
     "likely_column",
     "split_unit",
@@ -288,55 +285,3 @@ def likely_column(heading: str) -> str | None:
     known = {**without_numbers, **names, **_USUAL_HEADINGS}
     near = get_close_matches(folded, known, n=1, cutoff=0.8)
     return known[near[0]] if near else None
-
-
-def first_map(sheet: Sheet) -> str:
-    """Return a map to go on from: each heading with the likeliest column, its unit and an example from the sheet."""
-    lines = [
-        f"# What the columns of {tidy(sheet.shown_as)} mean. Each was guessed from its heading: read them all.",
-        "# Columns are named as `handbook export --format csv` heads them; what a record does not keep says ignore.",
-    ]
-    targets: dict[str, str] = {}
-    body: list[str] = []
-    for column, heading in enumerate(map(tidy, sheet.headings)):
-        if not heading:
-            continue
-        direct = target_of(heading, ColumnMap())
-        guess = direct.name if isinstance(direct, Target) else likely_column(heading)
-        taken = guess in targets.values()
-        unit = split_unit(heading)[1]
-        to = IGNORED if guess is None or taken else guess
-        targets[heading] = to
-        value = f"{{to: {to}, unit: {quoted(unit)}}}" if unit and to != IGNORED else to
-        body.append(f"  {quoted(heading)}: {value}  # {_example(sheet, column)}")
-    keys = [heading for heading, to in targets.items() if to in {"entry", "notebook"}]
-    lines.append(f"key: [{', '.join(map(quoted, keys[:1]))}]  # what tells rows apart" if keys else _NO_KEY)
-    return "\n".join([*lines, "columns:", *body, "constants:", *_constants(targets.values()), *_MORE]) + "\n"
-
-
-_MORE = (
-    "# words: {r.t.: 22 °C}  # whole cells that stand for a value",
-    "# empty: [n/a]          # whole cells that stand for nothing",
-    "# decimal_comma: true   # 2,083 is read as 2.083",
-)
-_NO_KEY = "# key: []  # headings that tell rows apart; they must go into the record, notebook best"
-
-
-def _example(sheet: Sheet, column: int) -> str:
-    found = next((row.cells[column].text for row in sheet.rows if column in row.cells), None)
-    return "empty" if found is None else f"such as {tidy(found)[:40]}"
-
-
-def _constants(names: Iterable[str]) -> list[str]:
-    given = set(names)
-    wanted = {
-        "status": "draft",
-        "title": "'{substrate.name} and {nucleophile.1.name} in {solvent.1.name}'",
-        "performed.by": "bench-1",
-        "outcome.result": "substitution",
-        "outcome.products.1.label": "A",
-        "outcome.products.1.use": "desired",
-        "outcome.measured.1.of": "A",
-        "outcome.measured.1.kind": "isolated",
-    }
-    return [f"  {name}: {value}" for name, value in wanted.items() if name not in given]

@@ -40,8 +40,11 @@ class Dialogue(Protocol):
         read: raises AskingError or QuantityError for what it cannot take, and the question comes again.
         """
 
-    def agrees(self, question: str) -> bool:
-        """Return whether the answer is yes, which it is unless somebody says no; no where nobody answers."""
+    def agrees(self, question: str, *, by_enter: bool = True) -> bool:
+        """Return whether the answer is yes; no where nobody answers.
+
+        by_enter: what an empty answer means.
+        """
 
 
 WIDTH = 100
@@ -84,7 +87,7 @@ class Silence:
         """Leave it open."""
         return None
 
-    def agrees(self, question: str) -> bool:  # noqa: ARG002 - nobody is asked
+    def agrees(self, question: str, *, by_enter: bool = True) -> bool:  # noqa: ARG002 - nobody is asked
         """Take nothing for granted."""
         return False
 
@@ -134,7 +137,7 @@ class Prompts:
             except QuantityError as fault:
                 self.tell(f"  {fault.message}; {fault.mend}")
 
-    def agrees(self, question: str) -> bool:
+    def agrees(self, question: str, *, by_enter: bool = True) -> bool:
         """Ask for yes or no."""
         _let_interrupts_through()
-        return click.confirm(question, default=True, err=True)
+        return click.confirm(question, default=by_enter, err=True)

@@ -19,16 +19,17 @@ from builder.authoring.partners import (
     read_solvents,
     stereo_of,
 )
-from builder.authoring.plan import NEAT, Plan, PlannedReagent, PlannedStage, trial_case
+from builder.authoring.plan import NEAT, Plan, PlannedReagent, PlannedStage, safety_case, trial_case
 from builder.authoring.schema import schema_seen_from
 from builder.authoring.skeleton import skeleton
 from builder.authoring.whole_file import written_new
 from builder.book import Shelf, is_aside, read_shelf
 from builder.checks.case import Case
-from builder.checks.forecast_cautions import forecast_cautions
+from builder.checks.forecast_cautions import plain_caution, planned_hazards
+from builder.checks.hazards.cautions import Severity
+from builder.checks.hazards.meetings import Hazard
 from builder.checks.nearest import Likeness, attacker_of, nearest
 from builder.chemistry.perception import attacking_atoms
-from builder.chemistry.structure import Structure
 from builder.finding import Level
 from builder.mechanism.asking import AskingError
 from builder.mechanism.compounds import Identified, identified, identify
@@ -40,7 +41,7 @@ from builder.records.quantities import parse_temperature
 from builder.records.reader import read_bytes, read_settings
 from builder.records.settings import SETTINGS_FILE, Settings
 from builder.records.specimen import GAP
-from builder.records.vocabulary import NucleophileWord
+from builder.records.vocabulary import NucleophileWord, Status
 
 __all__ = ["NEAREST", "Draft", "Stated", "book_around", "draft_record", "folder_inside", "write_draft"]
 
@@ -102,9 +103,9 @@ def draft_record(stated: Stated, folder: Path, today: dt.date, dialogue: Dialogu
     entry = _free_identifier(book, settings)
     schema = schema_seen_from(folder, book)
     _refuse_what_no_reader_takes(skeleton(plan, (), None, entry=entry, schema=schema), entry)
-    forecast = _forecast(plan, guide, dialogue)
+    forecast, hazards = _forecast(plan, guide, dialogue)
     expected = expected_products(forecast, want, plan.products, plan.stereo)
-    text = skeleton(plan, expected, forecast, entry=entry, schema=schema)
+    text = skeleton(plan, expected, forecast, entry=entry, schema=schema, warnings=_work_up_warnings(hazards))
     return Draft(entry, text, sum(line.partition(" # ")[0].count(GAP) for line in text.splitlines()))
 
 
@@ -169,17 +170,18 @@ def _what_reacts(stated: Stated, today: dt.date, dialogue: Dialogue) -> Plan:
     if named is None and drawing is not None:
         named = identified(drawing.substrate)
     if named is None:
-        named = dialogue.may_say("Substrate (name or SMILES)", lambda answer: identify(answer, "substrate"))
+        named = dialogue.may_say("Substrate (name or SMILES)", _read_substrate)
     if named is None:
         raise AskingError("no substrate is given", "write `handbook new SUBSTRATE`, or give --rxn FILE")
+    if not stated.nucleophile and drawing is None:
+        _refuse_a_lone_nucleophile(named)
     nucleophile, base = _attackers(stated, drawing, dialogue)
     if isinstance(nucleophile, Identified) and is_swapped(named, nucleophile):
         named, nucleophile = _swapped(named, nucleophile, dialogue)
     molecule = named.structure
     if molecule is None:
         raise AskingError(f"{named.name} has no one structure", "give the SMILES of what bears the leaving group")
-    if nucleophile is None:
-        _refuse_a_lone_nucleophile(named, molecule)
+    _refuse_a_lone_nucleophile(named)
     _tell_readings(named, nucleophile, base, dialogue)
     named = _with_name(named, "substrate", dialogue)
     if isinstance(nucleophile, Identified):
@@ -245,10 +247,18 @@ def _swapped(first: Identified, second: Identified, dialogue: Dialogue) -> tuple
     raise AskingError(said, f"write `handbook new '{_called(second)}' --nucleophile '{_called(first)}'`")
 
 
-def _refuse_a_lone_nucleophile(substrate: Identified, structure: Structure) -> None:
+def _read_substrate(answer: str) -> Identified:
+    substrate = identify(answer, "substrate")
+    _refuse_a_lone_nucleophile(substrate)
+    return substrate
+
+
+def _refuse_a_lone_nucleophile(substrate: Identified) -> None:
     """Refuse an ion or a salt as substrate that has nothing to leave: it is the nucleophile."""
-    is_ionic = any(piece.charge for piece in structure.fragments)
-    if is_ionic and attacking_atoms(structure) and not leaving_sites(structure):
+    structure = substrate.structure
+    if structure is None or all(not piece.charge for piece in structure.fragments):
+        return
+    if attacking_atoms(structure) and not leaving_sites(structure):
         called = _called(substrate)
         mend = f"write `handbook new SUBSTRATE --nucleophile '{called}'`"
         raise AskingError(f"{called} attacks, and bears nothing that leaves", mend)
@@ -339,7 +349,7 @@ def _asked_conditions(plan: Plan, dialogue: Dialogue) -> Plan:
 
 
 def _nearest(plan: Plan, shelf: Shelf) -> Case | None:
-    """Return the nearest entry that went, still holds, and has site class and attacking atom in common."""
+    """Return the nearest current entry without errors that went, and has site class and attacking atom in common."""
     if not plan.leaving_group or not plan.attacks_or_takes_protons:
         return None
     nucleophile = plan.nucleophile.structure if isinstance(plan.nucleophile, Identified) else plan.nucleophile
@@ -352,13 +362,15 @@ def _nearest(plan: Plan, shelf: Shelf) -> Case | None:
     asked = Likeness(plan.molecule, frozenset(plan.classes), attacker)
     worth_a_look = (entry for entry, (record, _) in shelf.records.items() if _may_guide(record, plan))
     found = nearest(asked, map(shelf.case, worth_a_look))
-    return next((case for case, like in found if like.resembles(asked)), None)
+    alike = (case for case, like in found if like.resembles(asked))
+    return next((case for case in alike if shelf.is_sound(case.record.entry)), None)
 
 
 def _may_guide(record: Record, plan: Plan) -> bool:
-    """Say whether an entry still holds, gave products, and names a class of the plan."""
+    """Say whether an entry is current, gave products, and names a class of the plan."""
     went = any(result.gives_products for result in record.outcome.result)
-    return went and not record.status.is_retired and not set(plan.classes).isdisjoint(record.substrate.classes)
+    is_current = record.status is Status.CURRENT
+    return went and is_current and not set(plan.classes).isdisjoint(record.substrate.classes)
 
 
 def _origin(stated: str, near: Case | None, shelf: Shelf, plan: Plan, dialogue: Dialogue) -> Case | None:
@@ -368,21 +380,31 @@ def _origin(stated: str, near: Case | None, shelf: Shelf, plan: Plan, dialogue: 
             near_id = get_close_matches(stated.upper(), shelf.records, n=1)
             mend = f'did you mean "{near_id[0]}"?' if near_id else f"name one that is, or --from {NEAREST}"
             raise AskingError(f"{stated:.40} is no readable entry of the book", mend)
-        return shelf.case(stated.upper())
+        origin = shelf.case(stated.upper())
+        _tell_of_its_standing(origin.record, shelf, dialogue)
+        return origin
     if near is None:
         said = f"no entry has this class ({', '.join(plan.classes) or 'none'}) and attacking atom in common"
         if stated and not plan.attacks_or_takes_protons:
             raise AskingError("the nearest entry depends on what attacks", "state nucleophile or base")
         if stated:
-            raise AskingError(said, "leave --from out, or name an entry")
+            dialogue.tell(f"{said}: solvent, stages and work-up are not taken from any")
         return None
     offer = f"{near.record.entry}, {near.record.title} ({offer_of(near)})"
-    if stated or dialogue.agrees(f"Take solvent, stages and work-up of the nearest entry, {offer}?"):
+    if stated or dialogue.agrees(f"Take solvent, stages and work-up of the nearest entry, {offer}?", by_enter=False):
         dialogue.tell(f"taken from {offer}")
         return near
     if not dialogue.is_live:
         dialogue.tell(f"nearest entry: {offer}; --from {NEAREST} takes its solvent, stages and work-up")
     return None
+
+
+def _tell_of_its_standing(record: Record, shelf: Shelf, dialogue: Dialogue) -> None:
+    """Tell of an entry that was named although it would not have been offered."""
+    if record.status is not Status.CURRENT:
+        dialogue.tell(f"{record.entry} is not current ({record.status}): judge what is taken from it")
+    if not shelf.is_sound(record.entry):
+        dialogue.tell(f"{record.entry} has errors: `handbook check` names them; judge what is taken from it")
 
 
 def _tell_what_is_not_taken(plan: Plan, origin: Case, dialogue: Dialogue) -> None:
@@ -430,23 +452,35 @@ def _warmth(stage: PlannedStage) -> float:
 # --- what is to be expected -----------------------------------------------------------------------------------
 
 
-def _forecast(plan: Plan, guide: Case | None, dialogue: Dialogue) -> Forecast | None:
-    """Return the forecast for the plan, and tell of it; where it has no conditions, for those of the guide."""
+def _forecast(plan: Plan, guide: Case | None, dialogue: Dialogue) -> tuple[Forecast | None, tuple[Hazard, ...]]:
+    """Return forecast and hazards of the plan, and tell of them; where it has no conditions, in those of the guide."""
     case, like = trial_case(plan), ""
     if case is None and guide is not None:
-        case, like = trial_case(run_in(plan, guide)), f", run like {guide.record.entry}"
+        plan, like = run_in(plan, guide), f", run like {guide.record.entry}"
+        case = trial_case(plan)
+    forecast = None if case is None else case.forecast
     if case is None:
         dialogue.tell("nothing is forecast: that takes a leaving group, a nucleophile or base, solvent and temperature")
-        return None
-    forecast = case.forecast
-    if case.question is None or forecast is None:
+    elif forecast is None:
         dialogue.tell(f"nothing is forecast: {case.unasked or 'the engine does not cover this'}")
-        return None
-    dialogue.tell(f"forecast: {forecast_line(case, forecast)}{like}")
-    cautions = forecast_cautions(case.question, forecast)
-    grave = [caution for caution in cautions if caution["severity"] == "stop"]
-    milder = [caution for caution in cautions if caution["severity"] != "stop"][:MOST_CAUTIONS]
-    for caution in (*grave, *milder):
+    else:
+        dialogue.tell(f"forecast: {forecast_line(case, forecast)}{like}")
+    hazards = planned_hazards(safety_case(plan), forecast)
+    grave = [hazard for hazard in hazards if hazard.caution.severity is Severity.STOP]
+    milder = [hazard for hazard in hazards if hazard.caution.severity is not Severity.STOP][:MOST_CAUTIONS]
+    for caution in map(plain_caution, (*grave, *milder)):
         grade, text = _GRADES[caution["severity"]], f"{caution['text']}; {caution['precaution']}"
         dialogue.tell(f"{grade}: {text} [{caution['source']}; {caution['decides']}]")
-    return forecast
+    return forecast, hazards
+
+
+def _work_up_warnings(hazards: Sequence[Hazard]) -> dict[int, list[str]]:
+    """Return what is to be said above each step of a work-up that is hazardous with what it meets."""
+    found: dict[int, list[str]] = {}
+    for hazard in hazards:
+        match hazard.at.path:
+            case ("work_up", int(place)):
+                met = " and ".join(dict.fromkeys(other.shown for other in hazard.others))
+                grade = _GRADES[hazard.caution.severity.value]
+                found.setdefault(place, []).append(f"{grade}: with {met}: {hazard.caution.hazard}")
+    return found

@@ -2,7 +2,7 @@
 
 import datetime as dt
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from decimal import Decimal
 from typing import Any
 
@@ -15,7 +15,7 @@ from builder.records.quantities import Dimension, parse_quantity
 from builder.records.settings import Settings
 from builder.records.vocabulary import NucleophileWord, ReagentUse, Result, StereoKind
 
-__all__ = ["NEAT", "Plan", "PlannedReagent", "PlannedSolvent", "PlannedStage", "moles_of", "trial_case"]
+__all__ = ["NEAT", "Plan", "PlannedReagent", "PlannedSolvent", "PlannedStage", "moles_of", "safety_case", "trial_case"]
 
 NEAT = "neat"
 
@@ -124,6 +124,7 @@ _VOLUME_ML = 20.0
 _EQUIVALENTS = Decimal("1.5")
 _CATALYST = Decimal("0.1")
 _TIME = "24 h"
+_ROOM = "25 °C"
 
 
 def trial_case(plan: Plan) -> Case | None:
@@ -134,6 +135,26 @@ def trial_case(plan: Plan) -> Case | None:
     is_open = not plan.leaving_group or not plan.classes or not plan.attacks_or_takes_protons
     if is_open or not (plan.solvents or plan.is_neat) or not any(stage.temperature for stage in plan.stages):
         return None
+    return _opened(plan)
+
+
+def safety_case(plan: Plan) -> Case:
+    """Return the plan as the checks of hazards would look at it, its work-up included, however much is still open."""
+    partner = plan.nucleophile if plan.attacks_or_takes_protons else NucleophileWord.NONE
+    warm = any(stage.temperature for stage in plan.stages)
+    return _opened(
+        replace(
+            plan,
+            classes=plan.classes or ("primary",),
+            leaving_group=plan.leaving_group or "none",
+            nucleophile=partner,
+            is_neat=plan.is_neat or not plan.solvents,
+            stages=plan.stages if warm else (PlannedStage(_ROOM),),
+        )
+    )
+
+
+def _opened(plan: Plan) -> Case:
     record = Record.model_validate(_trial(plan))
     return open_case(record, "", Settings(format=1, title="Trial"), plan.date)
 
@@ -151,7 +172,7 @@ def _trial(plan: Plan) -> dict[str, Any]:
         "status": "draft",
         "title": "Trial",
         "performed": {"date": plan.date.isoformat(), "by": ["nobody"]},
-        "substrate": {**_drawn(plan.substrate, "substrate"), **substrate},
+        "substrate": {**_drawn(plan.substrate, "the substrate"), **substrate},
         "stages": [_trial_stage(stage) for stage in plan.stages if stage.temperature],
         "outcome": {"result": [Result.NO_REACTION.value]},
     }
@@ -159,12 +180,14 @@ def _trial(plan: Plan) -> dict[str, Any]:
         found["nucleophile"] = plan.nucleophile.value
     elif plan.nucleophile is not None:
         ratio = {"equivalents": plan.equivalents or _EQUIVALENTS}
-        found["nucleophile"] = {**_drawn(plan.nucleophile, "nucleophile"), **ratio}
+        found["nucleophile"] = {**_drawn(plan.nucleophile, "the nucleophile"), **ratio}
     if plan.base is not None:
         ratio = {"equivalents": plan.base_equivalents or plan.equivalents or _EQUIVALENTS}
-        found["base"] = {**_drawn(plan.base, "base"), **ratio}
+        found["base"] = {**_drawn(plan.base, "the base"), **ratio}
     if plan.reagents:
         found["reagents"] = [_trial_reagent(reagent) for reagent in plan.reagents]
+    if plan.work_up:
+        found["work_up"] = list(plan.work_up)
     if plan.is_neat:
         return {**found, "neat": True}
     if any(solvent.fraction for solvent in plan.solvents):
@@ -179,7 +202,8 @@ def _drawn(compound: Identified, otherwise: str) -> dict[str, str]:
 
 def _trial_stage(stage: PlannedStage) -> dict[str, Any]:
     held = {"temperature": stage.temperature, "time": stage.time or _TIME}
-    return {**held, "vessel": stage.vessel} if stage.vessel else held
+    known = {"vessel": stage.vessel, "atmosphere": stage.atmosphere}
+    return {**held, **{key: text for key, text in known.items() if text}}
 
 
 def _trial_reagent(reagent: PlannedReagent) -> dict[str, Any]:

@@ -11,6 +11,7 @@ import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
+from statistics import median
 
 from builder.records.flat import unguarded
 
@@ -25,6 +26,7 @@ __all__ = [
     "Trouble",
     "bytes_of",
     "column_letters",
+    "likely_heading_row",
     "read_csv",
     "read_jsonl",
     "sheet_of",
@@ -33,6 +35,8 @@ __all__ = [
 MAX_SHEET_BYTES = 20 * 1024 * 1024
 MAX_ROWS = 20_000
 MAX_COLUMNS = 1_000
+LOOKED_AT = 20
+"""Rows among which headings are looked for."""
 _SAID_DELIMITER = re.compile(r"sep=([,;\t])[\r\n]")
 _LONE_SURROGATE = re.compile("[\ud800-\udfff]")
 
@@ -136,6 +140,22 @@ def sheet_of(
         raise SheetError(f"{shown_as} has no rows below its headings")
     width = max(len(headings), *(max(row.cells) + 1 for row in kept))
     return Sheet(shown_as, headings + ("",) * (width - len(headings)), tuple(kept), found_at, notes=notes)
+
+
+def likely_heading_row(sheet: Sheet) -> int | None:
+    """Return the number of the row that looks like headings where the one that was taken is only a title above them.
+
+    A title fills less than half as many cells as rows usually do; headings fill more, differ, and are mostly words.
+    """
+    usual = median(len(row.cells) for row in sheet.rows)
+    if sheet.names_columns or 2 * sum(map(bool, sheet.headings)) >= usual:
+        return None
+    for row in sheet.rows[:LOOKED_AT]:
+        texts = [cell.text for cell in row.cells.values()]
+        words = sum(text[0].isalpha() for text in texts)
+        if 2 * len(texts) >= usual and len(set(texts)) == len(texts) and 4 * words >= 3 * len(texts):
+            return row.number
+    return None
 
 
 # --- comma-separated ------------------------------------------------------------------------------------------

@@ -1,6 +1,6 @@
 """The YAML of a planned record: what is known as values, what is open as gaps with what belongs there."""
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from decimal import Decimal
 from enum import StrEnum
 from pathlib import PurePath
@@ -33,11 +33,18 @@ LABELS = "ABCDEFGHIJKLMNOPQRSTUVWXYZ"
 
 
 def skeleton(
-    plan: Plan, expected: Sequence[Expected], forecast: Forecast | None, *, entry: str, schema: PurePath
+    plan: Plan,
+    expected: Sequence[Expected],
+    forecast: Forecast | None,
+    *,
+    entry: str,
+    schema: PurePath,
+    warnings: Mapping[int, Sequence[str]] | None = None,
 ) -> str:
     """Return the YAML of a record that holds a plan, for its writer to complete.
 
     expected: products to confirm, the wanted one first. schema: path to the JSON Schema from the record's folder.
+    warnings: what is to stand above a step of the work-up, by its place.
     """
     blocks = (
         _head(plan, entry, schema),
@@ -45,7 +52,7 @@ def skeleton(
         _partners(plan),
         _solvents(plan),
         _stages(plan),
-        _work_up(plan),
+        _work_up(plan, warnings or {}),
         _outcome(expected, forecast),
         _tail(plan),
     )
@@ -236,13 +243,15 @@ def _stage(stage: PlannedStage, plan: Plan) -> Iterator[str]:
     yield from (f"    # {plan.origin}, {was}" for was in stage.was)
 
 
-def _work_up(plan: Plan) -> Iterator[str]:
+def _work_up(plan: Plan, warnings: Mapping[int, Sequence[str]]) -> Iterator[str]:
     if not plan.work_up:
         yield "# work_up:"
         yield "#   - the quench first, with amounts and temperature"
         return
     yield _line(0, "work_up", "", _taken(plan, "amounts are for the scale there"))
-    yield from (f"  - {_text(step)}" for step in plan.work_up)
+    for place, step in enumerate(plan.work_up):
+        yield from (f"  # {warning}" for warning in warnings.get(place, ()))
+        yield f"  - {_text(step)}"
 
 
 def _outcome(expected: Sequence[Expected], forecast: Forecast | None) -> Iterator[str]:

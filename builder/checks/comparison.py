@@ -20,7 +20,6 @@ __all__ = [
     "are_near_same",
     "differences",
     "disagreements",
-    "disagreements_in",
     "is_near",
     "is_one_experiment",
     "seen_by_quantity",
@@ -240,17 +239,12 @@ SeenByQuantity = Mapping[str, Mapping[YieldKind | None, Seen]]
 """What was seen in one entry, by quantity and kind."""
 
 
-def disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
+def disagreements(mine: SeenByQuantity, theirs: SeenByQuantity) -> tuple[Disagreement, ...]:
     """Return the numbers of two outcomes that cannot both be the rule, the furthest apart first.
 
-    Yields of one kind are compared where both have that kind, else across kinds. Sums over a formula are left out where
-    a product disagrees by itself.
+    mine, theirs: of `seen_by_quantity`, worked out once for each entry. Yields of one kind are compared where both have
+    that kind, else across kinds. Sums over a formula are left out where a product disagrees by itself.
     """
-    return disagreements_in(seen_by_quantity(one), seen_by_quantity(other))
-
-
-def disagreements_in(mine: SeenByQuantity, theirs: SeenByQuantity) -> tuple[Disagreement, ...]:
-    """Return the same of what was seen, sorted out once for each entry that is held against many."""
     found = [_most_apart(mine[what], theirs[what]) for what in mine.keys() & theirs.keys()]
     kept = [each for each in found if each is not None]
     if any(each.here.what.startswith("yield") and not each.here.is_sum for each in kept):

@@ -1,12 +1,15 @@
 """Cautions for a flask that is only planned: the tables of cautions over what is charged and what is forecast.
 
-As with records it is a screen of structures, never a clearance; quench and work-up are not known and not judged.
+As with records it is a screen of structures, never a clearance. Quench and work-up are judged where the plan is a
+record that has them; a question has none.
 """
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 
+from builder.checks.case import Case
 from builder.checks.hazards.cautions import WHO_DECIDES, Setting, Severity
 from builder.checks.hazards.meetings import Hazard, Present, Whereabouts, by_meeting, find_hazards
+from builder.checks.hazards.presents import hazards_of
 from builder.chemistry.structure import Structure, parse_smiles
 from builder.mechanism.asking import ABSOLUTE_ZERO_C
 from builder.mechanism.forecast import Forecast
@@ -14,7 +17,7 @@ from builder.mechanism.question import Ingredient, Question
 from builder.mechanism.reagents import Dose
 from builder.sources import source_text
 
-__all__ = ["forecast_cautions"]
+__all__ = ["forecast_cautions", "plain_caution", "planned_hazards"]
 
 
 def forecast_cautions(question: Question, forecast: Forecast) -> tuple[dict[str, str], ...]:
@@ -24,9 +27,20 @@ def forecast_cautions(question: Question, forecast: Forecast) -> tuple[dict[str,
     cautions for the same substances the gravest stands for all; every `stop` stands for itself.
     """
     hazards = find_hazards(_presents(question, forecast), Setting(question.temperature_k + ABSOLUTE_ZERO_C))
-    shown = [hazard for group in by_meeting(hazards) for hazard in _to_show(group)]
-    shown.sort(key=lambda hazard: -hazard.caution.severity.weight)
-    return tuple(map(_plain, shown))
+    return tuple(map(plain_caution, _gravest_first(hazards)))
+
+
+def planned_hazards(case: Case, forecast: Forecast | None) -> tuple[Hazard, ...]:
+    """Return the hazards of a record that is planned, its work-up and atmosphere included, gravest first.
+
+    forecast: of what it is expected to give, which the record need not hold yet.
+    """
+    return _gravest_first(hazards_of(case, () if forecast is None else _forecast(forecast)))
+
+
+def _gravest_first(hazards: Iterable[Hazard]) -> tuple[Hazard, ...]:
+    shown = (hazard for group in by_meeting(hazards) for hazard in _to_show(group))
+    return tuple(sorted(shown, key=lambda hazard: -hazard.caution.severity.weight))
 
 
 def _to_show(group: tuple[Hazard, ...]) -> tuple[Hazard, ...]:
@@ -34,7 +48,8 @@ def _to_show(group: tuple[Hazard, ...]) -> tuple[Hazard, ...]:
     return stops or group[:1]
 
 
-def _plain(hazard: Hazard) -> dict[str, str]:
+def plain_caution(hazard: Hazard) -> dict[str, str]:
+    """Return a hazard as `forecast_cautions` gives it."""
     caution = hazard.caution
     return {
         "id": caution.id,

@@ -17,7 +17,6 @@ from builder.checks.comparison import (
     are_near_same,
     differences,
     disagreements,
-    disagreements_in,
     is_near,
     is_one_experiment,
     seen_by_quantity,
@@ -25,7 +24,7 @@ from builder.checks.comparison import (
 )
 from builder.checks.standing import Standing, Variable
 
-__all__ = ["GO_ALONG", "VARIED", "Kin", "Relation", "families", "kin_of", "near_same_kin"]
+__all__ = ["GO_ALONG", "VARIED", "Kin", "Relation", "families", "near_same_kin"]
 
 T = TypeVar("T", bound=Hashable)
 
@@ -102,14 +101,7 @@ def near_same_kin(items: Iterable[tuple[T, Standing]]) -> Iterator[tuple[T, T, K
         seen = [(name, standing, seen_by_quantity(standing)) for name, standing in sharing]
         for (one, mine, mine_seen), (other, theirs, theirs_seen) in combinations(seen, 2):
             if are_near_same(mine, theirs):
-                yield one, other, _near_same_kin(mine, theirs, disagreements_in(mine_seen, theirs_seen))
-
-
-def kin_of(one: Standing, other: Standing) -> Kin:
-    """Return what an entry with the second standing is to one with the first, both of one transformation."""
-    if not are_near_same(one, other):
-        return Kin(Relation.VARIANT, one, other)
-    return _near_same_kin(one, other, disagreements(one, other))
+                yield one, other, _near_same_kin(mine, theirs, disagreements(mine_seen, theirs_seen))
 
 
 def _near_same_kin(one: Standing, other: Standing, apart: tuple[Disagreement, ...]) -> Kin:

@@ -55,12 +55,15 @@ def identified(structure: Structure) -> Identified:
 _WORD = re.compile(r"[A-Za-z]*(?:[abd-mp-rt-z][a-z]{2}|[a-z]{4})", re.ASCII)
 """Letters as in a word; aromatic atoms in a row (ccnc) are seldom four without a digit or bracket between."""
 
+_HEAD = re.compile(r"^(?:[\d,()+±'*-]|(?:rac|meso|cis|trans|syn|anti|endo|exo|tert|sec|DL|[A-Za-z])(?=[,)-]))+")
+"""Locants and stereodescriptors before the first word of a name."""
+
 
 def _refusal(typed: str, what: str, fault: StructureError) -> AskingError:
     near = nearest_names(typed)
     if near:
         return AskingError(f'unknown {what} "{typed:.60}"', f'did you mean "{near[0]}"?')
-    if " " in typed or _WORD.match(typed.lstrip("0123456789,-()")):
-        return AskingError(f'unknown {what} "{typed:.60}"', "give a name of the tables, or its SMILES")
+    if " " in typed or _WORD.match(_HEAD.sub("", typed, count=1)) or (typed and not re.search("[A-Za-z*]", typed)):
+        return AskingError(f'unknown {what} "{typed:.60}"', "the tables do not know this name: give its SMILES")
     where = "" if fault.position is None else f" (character {fault.position + 1})"
     return AskingError(f'{what} "{typed:.60}": {fault.reason}{where}', fault.mend)

@@ -28,6 +28,42 @@ def names_in(cell: str) -> tuple[str, ...]:
     return () if cell == NOTHING else tuple(cell.split("|"))
 
 
+_BRACKET = r"\((?:\d*[rsez][*]?,?|[\d,]+|±|[+-]|rac)+\)"
+_PREFIX = r"(?<![a-z])(?:rac|meso|cis|trans|syn|anti|endo|exo|tert|sec|iso|alpha|beta|gamma|dl|[nistompdlrsez])"
+_PLACES = re.compile(rf"{_BRACKET}|{_PREFIX}(?=[-,])|(?<![a-z])\d+(?:,\d+)*(?=-)|(?<=-)\d+(?=-|$)")
+"""Locants, stereodescriptors and the prefixes of branched chains: what tells isomers apart in a name."""
+_DIGITS = re.compile(r"\d+")
+
+
+_LENGTHS = re.compile("dodec|undec|meth|prop|pent|hept|eth|but|hex|oct|non|dec")
+"""How many carbon atoms a chain has."""
+
+
+def _letters(name: str) -> str:
+    """Return the letters of a name, without locants, stereodescriptors and digits."""
+    return _DIGITS.sub("", name_key(_PLACES.sub("", _folded(name))))
+
+
+def _may_be_a_slip(typed: str, known: str) -> bool:
+    """Say whether a known name is what somebody may have meant, and not that of another compound."""
+    typed, known = _folded(typed), _folded(known)
+    if sorted(_PLACES.findall(typed)) != sorted(_PLACES.findall(known)):
+        return False
+    lengths = _LENGTHS.findall(typed)
+    if lengths and lengths != _LENGTHS.findall(known):
+        return False
+    same_digits = _DIGITS.findall(typed) == _DIGITS.findall(known)
+    return bool(_letters(typed)) and (same_digits or _letters(typed) != _letters(known))
+
+
+def _folded(name: str) -> str:
+    return name.casefold().translate(_LETTERS).replace("−", "-").replace("‐", "-").replace("‑", "-").strip()
+
+
+NEAR_MISSES = 3
+"""Names that are looked at besides those with the same letters in another order."""
+
+
 class NameIndex(Generic[Named]):
     """Things by each of their names.
 
@@ -47,12 +83,14 @@ class NameIndex(Generic[Named]):
     def nearest(self, name: str) -> tuple[str, ...]:
         """Return known names that `name` may be a slip of, nearest first, one per thing; empty if it is known.
 
-        Letters in the wrong order ("LAD") come first, then spellings that differ by little.
+        Letters in the wrong order ("LAD") come first, then spellings that differ by little. Names that differ in
+        locants, stereodescriptors or the length of a chain, or in nothing but digits, are other compounds, no slips.
         """
         key = name_key(name)
         if key in self._things:
             return ()
         swapped = [other for other in self._spellings if sorted(other) == sorted(key)]
-        close = [*swapped, *get_close_matches(key, self._spellings, n=3, cutoff=0.8)]
+        close = [*swapped, *get_close_matches(key, self._spellings, n=NEAR_MISSES, cutoff=0.8)]
+        close = [other for other in close if _may_be_a_slip(name, self._spellings[other])]
         spelling_of = {id(self._things[other]): self._spellings[other] for other in reversed(close)}
         return tuple(reversed(spelling_of.values()))

@@ -51,12 +51,13 @@ class CautionView:
 
 @dataclass(frozen=True, slots=True)
 class LimitTable:
-    """One table of limits: caption, headings, and rows of text."""
+    """One table of limits: caption, headings, rows of text; sources: of all rows, or numbered for a last column."""
 
     title: str
     caption: str
     columns: tuple[str, ...]
     rows: tuple[tuple[str, ...], ...]
+    sources: tuple[str, ...]
 
 
 def caution_page(book: Book[Portrait]) -> Page:
@@ -118,65 +119,70 @@ def _range(low: float, below: float) -> str:
     return f"{low:g} and more" if math.isinf(below) else f"{low:g} to below {below:g}"
 
 
+def _table(title: str, caption: str, columns: Sequence[str], rows: Mapping[tuple[str, ...], str]) -> LimitTable:
+    """Return a table from rows and the source of each; each source is stated once, with a number if there are more."""
+    sources = tuple(dict.fromkeys(rows.values()))
+    if len(sources) == 1:
+        return LimitTable(title, caption, tuple(columns), tuple(rows), sources)
+    numbered = tuple((*row, str(sources.index(source) + 1)) for row, source in rows.items())
+    return LimitTable(title, caption, (*columns, "Source"), numbered, sources)
+
+
 def _limits() -> Sequence[LimitTable]:
     return (
-        LimitTable(
+        _table(
             "Organic azides",
             "How much may be isolated, by (C + O)/N",
-            ("(C + O)/N", "Isolated", "Source"),
-            tuple(
+            ("(C + O)/N", "Isolated"),
+            {
                 (
                     _range(row.ratio_from, row.ratio_below),
                     row.words,
-                    f"{source_text(row.source)}, {row.revision}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, {row.revision}, read {row.read}"
                 for row in load_azide_limits()
-            ),
+            },
         ),
-        LimitTable(
+        _table(
             "Mutagenic impurities",
             "Acceptable intake in µg a day; drug substances only, not for the cohort of concern; the local quality unit"
             " decides",
-            ("Treatment", "One impurity", "All together", "Source"),
-            tuple(
+            ("Treatment", "One impurity", "All together"),
+            {
                 (
                     row.treatment,
                     f"{row.one:g} µg a day",
                     f"{row.several:g} µg a day",
-                    f"{source_text(row.source)}, {row.revision}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, {row.revision}, read {row.read}"
                 for row in load_intake_limits()
-            ),
+            },
         ),
-        LimitTable(
+        _table(
             "Restricted solvents",
             "Exposure of workers that may not be exceeded (DNEL)",
-            ("Solvent", "Where", "In air", "On the skin", "From", "Source"),
-            tuple(
+            ("Solvent", "In air", "On the skin", "Where", "From"),
+            {
                 (
                     row.name,
-                    f"{row.jurisdiction}, entry {row.entry}",
                     f"{row.inhalation} mg/m³",
                     f"{row.dermal} mg/kg a day",
+                    f"{row.jurisdiction}, entry {row.entry}",
                     row.since,
-                    f"{source_text(row.source)}, read {row.read}",
-                )
+                ): f"{source_text(row.source)}, read {row.read}"
                 for row in load_restrictions().values()
-            ),
+            },
         ),
-        LimitTable(
+        _table(
             "Residual solvents",
             "Limits in a drug substance at a dose of 10 g a day",
-            ("Solvent", "Class", "At most", "PDE", "Source"),
-            tuple(
+            ("Solvent", "Class", "At most, ppm", "PDE, mg a day"),
+            {
                 (
                     row.name,
                     str(row.solvent_class),
-                    f"{row.most_ppm:g} ppm",
-                    f"{row.pde_mg:g} mg a day",
-                    f"{source_text(row.source)}, read {row.read}",
-                )
+                    f"{row.most_ppm:g}",
+                    f"{row.pde_mg:g}",
+                ): f"{source_text(row.source)}, read {row.read}"
                 for row in load_residual_limits().values()
-            ),
+            },
         ),
     )

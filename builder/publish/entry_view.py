@@ -44,6 +44,8 @@ DIGEST_SHOWN = 12
 MOST_VARIANTS = 7
 """Other ways to the same product that a page lists."""
 
+_HAZARD = "hazard-"
+"""Rules whose reason is the same for every hazard: what is told of one stands in its message and in what to do."""
 _STANDING = {
     Verdict.IN_LINE: "Product, course, mechanism and yields lie within what the engine can defend; a time longer than"
     " forecast is not held against an entry.",
@@ -384,7 +386,7 @@ def _finding(finding: Finding, record: Record, around: Surroundings) -> FindingV
         rule_page=finding.rule in around.rules,
         is_grave=_severity(finding) is not Severity.NOTE,
         message=finding.message,
-        why=finding.why,
+        why="" if finding.rule.startswith(_HAZARD) else finding.why,
         mend=finding.mend,
         source=source_text(str(finding.data.get("source", finding.source))),
         accepted=finding.accepted or "",

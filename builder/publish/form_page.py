@@ -69,7 +69,10 @@ SECTIONS = (
     Section("work-up", "Work-up", ("work_up",)),
     Section("evidence", "Evidence and take-away", ("evidence", "take_away")),
     Section(
-        "safety", "Safety review", ("safety_review",), "Azide, cyanide and their like cannot be published without."
+        "safety",
+        "Safety review",
+        ("safety_review",),
+        "Azides, cyanides, hydrides, peroxides and their like may need one: the build asks where a hazard is grave.",
     ),
     Section(
         "rest",
@@ -117,6 +120,8 @@ _LONG = frozenset({"procedure", "note", "take_away", "cause", "scope", "scale_li
 """Texts that want more than a line."""
 _FAILED = tuple(str(result) for result in Result if not result.gives_products)
 _OPENS_AFTER = {"sought": _FAILED, "failure": _FAILED}
+_CHARGED = ("substrate", "nucleophile", "base", "reagents", "solvent")
+"""Keys under which the substances stand that a stage adds by name."""
 _SHAPED = ("pattern", "format", "maxLength", "x-measures", "x-units", "x-bounds")
 
 
@@ -225,6 +230,8 @@ def _field(
         field["opens_after"] = {"result": _OPENS_AFTER[key]}
     if key == "of" and "of" in field:
         field["words"] = ["substrate"]
+    if part == "Stage" and key == "add":
+        field["names_of"] = list(_CHARGED)
     if key == "title":
         field["wide"] = True
     if key in _LONG:

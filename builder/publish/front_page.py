@@ -22,6 +22,13 @@ NEWEST_SHOWN = 6
 SHOWN_OF_A_KIND = 6
 """Entries that the front page lists as contrary, explained, failed or contradicted; the lists hold all."""
 
+_MEANINGS = {
+    Verdict.IN_LINE: "what was seen is what the engine can defend",
+    Verdict.CONTRARY: "what was seen differs from that, and no reason is accepted yet",
+    Verdict.EXPLAINED: "it differs, and a reviewer has accepted the reason",
+    Verdict.NOT_COVERED: "the engine has no say in this reaction",
+}
+
 
 @dataclass(frozen=True, slots=True)
 class StateOfBook:
@@ -117,6 +124,7 @@ def front_page(
             "front.html",
             settings=book.settings,
             state=state_of_book(book, summaries, pairs),
+            meanings=[(str(verdict), words) for verdict, words in _MEANINGS.items()],
             newest=current[:NEWEST_SHOWN],
             contrary=by_verdict[Verdict.CONTRARY][:SHOWN_OF_A_KIND],
             explained=by_verdict[Verdict.EXPLAINED][:SHOWN_OF_A_KIND],

@@ -104,5 +104,6 @@ def molar_mass_text(g_per_mol: float) -> str:
 
 
 def _scaled(value: float, steps: tuple[tuple[float, float, str], ...]) -> str:
-    factor, unit = next((factor, unit) for least, factor, unit in steps if abs(value) >= least)
+    fitting = (step for step in steps if abs(value) >= step[0])
+    _, factor, unit = next(fitting) if value else steps[1]  # nothing has no size of its own
     return f"{significant(value * factor)} {unit}"

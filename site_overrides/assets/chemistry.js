@@ -101,8 +101,7 @@ globalThis.handbookChemistry = (() => {
       const marks = atoms.map(({ mark, near }) => hashed([mark, ...near.map((other) => other.mark).sort()].join()));
       atoms.forEach((atom, i) => { atom.mark = String(marks[i]); });
     }
-    const charge = atoms.reduce((sum, atom) => sum + atom.charge, 0);
-    return { formula: inHillOrder(counts, charge), outline: atoms.map((atom) => atom.mark).sort().join() };
+    return { formula: inHillOrder(counts, charge(smiles)), outline: atoms.map((atom) => atom.mark).sort().join() };
   }
 
   const NAMES = { B: "boron", C: "carbon", N: "nitrogen", O: "oxygen", P: "phosphorus", S: "sulfur" };
@@ -127,10 +126,13 @@ globalThis.handbookChemistry = (() => {
     return full.element === "N" ? `${bonds}; one with a charge is written [N+]` : bonds;
   }
 
+  /** The net charge of a SMILES as typed; 0 for what is none. */
+  const charge = (smiles) => (atomsOf(smiles) ?? []).reduce((sum, atom) => sum + atom.charge, 0);
+
   /** Whether an atom without brackets has more bonds than it can; nitro and azido groups may be drawn without charges. */
   function isOverfull({ element, bonds }) {
     return bonds > VALENCES[element].at(-1) || (element === "N" && bonds === 4);
   }
 
-  return { hill, outline, fault };
+  return { hill, outline, fault, charge };
 })();

@@ -87,7 +87,7 @@
       node.isAuto = false;
       changed(node);
     });
-    control.addEventListener("blur", () => { if (node.text()) touch(node); });
+    control.addEventListener("blur", () => { if (node.text()) afterPress(() => touch(node)); });
     return node;
   }
 
@@ -148,9 +148,18 @@
         const items = split(text), twice = items.find((item, at) => items.indexOf(item) < at);
         const context = field.of.format === "label" ? known(field.words) : {};
         if (twice && isShort) return { says: `${twice} stands twice.` };
+        if (field.names_of) return unnamed(field, items);
         return items.map((item) => record.problem(field.of, item, context)).find(Boolean) ?? null;
       },
     });
+  }
+
+  /** What is said where an item is the name of none of the substances that stand under the keys field.names_of. */
+  function unnamed(field, items) {
+    const names = field.names_of.flatMap((key) => tops.get(key).plain() ?? []).map((each) => each.name).filter(Boolean);
+    const odd = items.find((item) => !names.includes(item));
+    const known = names.length ? `write ${names.join(", ")}` : "name them first";
+    return odd === undefined ? null : { says: `“${odd}” is not the name of a substance above: ${known}.` };
   }
 
   function wordsNode(field) {
@@ -570,7 +579,27 @@
     keep();
     review();
     clearTimeout(waiting);
-    waiting = setTimeout(() => touch(node), 900);
+    waiting = setTimeout(() => afterPress(() => touch(node)), 900);
+  }
+
+  // What is said of a field moves what stands below it: not while a button, a box or a link there is being pressed.
+  let isPressed = false;
+  const delayed = [];
+
+  function afterPress(act) {
+    if (isPressed) delayed.push(act);
+    else act();
+  }
+
+  function released() {
+    isPressed = false;
+    for (const act of delayed.splice(0)) act();
+  }
+
+  // A finger presses twice: as a pointer, then as the mouse it stands for. A list that opens may swallow the release.
+  for (const kind of ["pointerdown", "mousedown"]) addEventListener(kind, () => { isPressed = true; }, true);
+  for (const kind of ["pointerup", "pointercancel", "mouseup", "keydown", "input"]) {
+    addEventListener(kind, () => { if (isPressed) setTimeout(released); }, true); // the click comes first
   }
 
   function touch(node) {

@@ -138,6 +138,15 @@ globalThis.handbookRecord = (format) => {
     return isRight ? null : { says: "The last character does not fit: look for a slip." };
   }
 
+  function smilesProblem(text) {
+    const { fault, charge } = globalThis.handbookChemistry;
+    const wrong = fault(text), net = wrong ? 0 : charge(text);
+    if (wrong) return { says: `This is not a SMILES: ${wrong}.`, isDoubt: true };
+    const sign = net < 0 ? "\u2212" : "+";
+    const says = `This is an ion without its counter-ion, charge ${sign}${Math.abs(net)}: write both, such as [Na+].[OH-].`;
+    return net ? { says, isDoubt: true } : null;
+  }
+
   function ratioProblem(text, { labels }) {
     const [parts, numbers] = text.includes(" = ") ? text.split(" = ") : [null, text];
     if (numbers.split(":").some(isBeyondMeasure)) return { says: "A number here is beyond any measurement." };
@@ -161,10 +170,7 @@ globalThis.handbookRecord = (format) => {
     date: (text) => dateProblem(text),
     entry: (text) => entryProblem(text),
     ratio: ratioProblem,
-    smiles: (text) => {
-      const fault = globalThis.handbookChemistry.fault(text);
-      return fault ? { says: `This is not a SMILES: ${fault}.`, isDoubt: true } : null;
-    },
+    smiles: smilesProblem,
     inchi: (text) => (/^InChI=1S?\/\S+$/.test(text) ? null : { says: "An InChI begins with InChI=1S/." }),
     person: (text) => {
       const isKnown = !format.people.length || format.people.includes(text);

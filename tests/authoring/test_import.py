@@ -4,6 +4,7 @@ import csv
 import datetime as dt
 import io
 import json
+import re
 import zipfile
 from collections.abc import Callable
 from pathlib import Path
@@ -447,10 +448,52 @@ def test_a_first_map_is_read_again(run: Run, book: Path, messy: tuple[Path, Path
     text = column_map.read_text("utf-8")
     assert "'Temp / °C': {to: stages.1.temperature, unit: '°C'}  # such as 50\n" in text
     assert "'Fridge shelf': ignore" in text
-    _, out = run("import", sheet, "--map", column_map, "--book", book, "--dry-run")
+    code, out = run("import", sheet, "--map", column_map, "--book", book, "--dry-run")
+    assert code == 1
+    assert re.findall(r"first.yml:(\d+):\d+: error gap-left-open", out)
+    filled = text.replace("TO FILL IN", "isolated", 2).replace("result: isolated", "result: substitution")
+    (book.parent / "filled.yml").write_text(filled, "utf-8")
+    _, out = run("import", sheet, "--map", book.parent / "filled.yml", "--book", book, "--dry-run")
     assert "heading-unknown" not in out
+    assert "gap-left-open" not in out
     assert run("import", sheet, "--write-map", column_map, "--book", book)[0] == 2
     assert column_map.read_text("utf-8") == text
+
+
+AS_KEPT = [
+    # heading, cells, what the map says
+    ("Run", ["1", "2", "3"], "ignore  # NOT KEPT: such as 1"),
+    ("Runs", ["1", "2", "3"], "ignore  # NOT KEPT: such as 1"),
+    ("Runs", ["2", "2", "2"], "performed.runs  # such as 2"),
+    ("Product", ["CCCCN=[N+]=[N-]", "CCCC#N", "CCCCI"], "outcome.products.1.smiles  # such as CCCCN=[N+]=[N-]"),
+    ("Product", ["butyl azide", "HI", "CO"], "outcome.products.1.name  # such as butyl azide"),
+    ("V (mL)", ["20", "20", "10"], "{to: solvent.1.volume, unit: 'mL'}  # such as 20"),
+    ("t", ["16 h", "2 h", "3 h"], "stages.1.time  # such as 16 h"),
+    ("t (°C)", ["60", "60", "25"], "{to: stages.1.temperature, unit: '°C'}  # such as 60"),
+    ("Shelf", ["B2", "B2", "B3"], "ignore  # NOT KEPT: such as B2"),
+    ("Shelf", ["", "", ""], "ignore  # empty"),
+]
+
+
+@pytest.mark.parametrize(("heading", "cells", "said"), AS_KEPT)
+def test_a_first_map_looks_at_the_cells_and_says_what_is_not_kept(
+    run: Run, book: Path, heading: str, cells: list[str], said: str
+) -> None:
+    rows = [{"Exp": f"XB1/{number}", heading: cell} for number, cell in enumerate(cells)]
+    column_map = book.parent / "first.yml"
+    code, out = run("import", _csv(book.parent / "a.csv", *rows), "--write-map", column_map, "--book", book)
+    text = column_map.read_text("utf-8")
+    assert f"  '{heading}': {said}\n" in text
+    assert (f"not kept, unless the map says where they go: {heading}\n" in out) == ("NOT KEPT" in said)
+    assert code == 0
+
+
+def test_a_first_map_says_no_fact_that_nobody_said(run: Run, book: Path) -> None:
+    column_map = book.parent / "first.yml"
+    run("import", _csv(book.parent / "a.csv", {"Exp": "XB1/1"}), "--write-map", column_map, "--book", book)
+    text = column_map.read_text("utf-8")
+    for name in ("performed.by", "outcome.result", "outcome.measured.1.kind"):
+        assert f"  {name}: TO FILL IN  # " in text
 
 
 HEADINGS = [
@@ -499,6 +542,31 @@ def test_headings_below_a_title(run: Run, book: Path) -> None:
     sheet.write_bytes(b"Screening of azides\r\n\r\n" + sheet.read_bytes())
     (book.parent / "map.yml").write_text("heading_row: 3\n", "utf-8")
     assert run("import", sheet, "--map", book.parent / "map.yml", "--book", book)[0] == 0
+
+
+def _below_a_title(workbook: Any) -> None:
+    sheet = workbook.active
+    sheet.insert_rows(1, 2)
+    sheet["A1"] = "Screening of azides"
+
+
+@pytest.mark.parametrize("ending", ["csv", "xlsx"])
+def test_headings_below_a_title_are_found(run: Run, book: Path, ending: str) -> None:
+    sheet, column_map = book.parent / f"a.{ending}", book.parent / "first.yml"
+    if ending == "xlsx":
+        _saved(sheet, _below_a_title)
+    else:
+        _csv(sheet, SOUND)
+        sheet.write_bytes(b"Screening of azides\r\n\r\n" + sheet.read_bytes())
+    said = "the headings seem to stand in row 3, below a title in row 1; "
+    code, out = run("import", sheet, "--book", book)
+    assert f"{said}say --heading-row 3, or heading_row: 3 in the map (or 1 if they do not)" in out
+    assert (code, _records(book)) == (2, {})
+    code, out = run("import", sheet, "--write-map", column_map, "--book", book)
+    assert f"{said}the map says heading_row: 3" in out
+    assert "\nheading_row: 3\n" in column_map.read_text("utf-8")
+    assert "  'substrate.smiles': substrate.smiles  # such as CCCCBr\n" in column_map.read_text("utf-8")
+    assert run("import", sheet, "--heading-row", "3", "--book", book)[0] == 0
 
 
 def test_a_formula_in_a_text_is_guarded_and_comes_back(run: Run, book: Path) -> None:

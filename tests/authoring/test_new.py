@@ -2,6 +2,8 @@
 
 import datetime as dt
 from collections.abc import Callable, Sequence
+from dataclasses import replace
+from itertools import takewhile
 from pathlib import Path
 from typing import TypeVar
 
@@ -72,8 +74,9 @@ class Answers(Told):
         answer = self._next(question)
         return read(answer) if answer else None
 
-    def agrees(self, question: str) -> bool:
-        return self._next(question) == "y"
+    def agrees(self, question: str, *, by_enter: bool = True) -> bool:
+        answer = self._next(question)
+        return by_enter if not answer else answer == "y"
 
 
 def _draft(book: Path, stated: Stated, dialogue: Told | None = None) -> Draft:
@@ -226,11 +229,12 @@ def test_a_filled_record_passes_the_checks(
 
 REFUSED = [
     (Stated(substrate="2-bromobutan"), 'unknown substrate "2-bromobutan"; did you mean "2-bromobutane"?'),
-    (Stated(substrate="dimethylnonsense"), "give a name of the tables, or its SMILES"),
+    (Stated(substrate="dimethylnonsense"), "the tables do not know this name: give its SMILES"),
     (Stated(substrate="CCC(C"), "branch that is not closed (character 4)"),
     (Stated(substrate="CCBr", nucleophile="sodium azid"), 'did you mean "sodium azide"?'),
     (Stated(substrate="CCBr", base="potasium carbonate"), 'did you mean "potassium carbonate"?'),
     (Stated(substrate="NaN3"), "NaN3 attacks, and bears nothing that leaves"),
+    (Stated(substrate="NaN3", nucleophile="K2CO3"), "NaN3 attacks, and bears nothing that leaves"),
     (Stated(substrate="NaN3", nucleophile="CCCBr"), "write `handbook new 'propyl bromide' --nucleophile 'NaN3'`"),
     (Stated(substrate="BrBr", nucleophile="C=CC"), "bromine attacks, and C=CC is attacked"),
     (Stated(substrate="CCBr", origin=NEAREST), "state nucleophile or base"),
@@ -246,7 +250,6 @@ REFUSED = [
     (Stated(substrate="CCBr", equivalents="some"), "no number of equivalents"),
     (Stated(substrate="CCBr", equivalents="0"), "out of range"),
     (Stated(substrate="CCBr", nucleophile="NaN3", origin="NS4T9XQ2M"), 'did you mean "NS4T9XQ2N"?'),
-    (Stated(substrate="C=CC", nucleophile="HBr", origin=NEAREST), "no entry has this class (alkene)"),
     (Stated(substrate="CCBr", title="<b>bold</b>"), "looks like HTML"),
     (Stated(), "no substrate is given"),
     (Stated(rxn="$RXN\n"), "RXN block without counts"),
@@ -360,6 +363,22 @@ def test_mirror_images_are_one_product_with_their_ratio(book: Path) -> None:
     assert "    # - {ee: 97 %, of: A, by: chiral HPLC}" in text.splitlines()
 
 
+@pytest.mark.parametrize("stated", [Stated(), Stated(substrate="NaN3"), Stated(substrate="NaN3", base="K2CO3")])
+def test_what_only_attacks_is_refused_as_substrate_before_anything_else_is_asked(book: Path, stated: Stated) -> None:
+    somebody = Answers("NaN3")
+    with pytest.raises(AskingError, match="NaN3 attacks, and bears nothing that leaves"):
+        _draft(book, stated, somebody)
+    assert somebody.questions == ([] if stated.substrate else ["Substrate (name or SMILES)"])
+
+
+def test_the_nearest_entry_is_done_without_where_none_is_near(book: Path) -> None:
+    told = Told()
+    text = _draft(book, Stated(substrate="C=CC", nucleophile="HBr", origin=NEAREST), told).text
+    said = "no entry has this class (alkene) and attacking atom in common"
+    assert f"{said}: solvent, stages and work-up are not taken from any" in told.lines
+    assert "temperature: TO FILL IN" in text
+
+
 # --- from an entry, from a drawing ----------------------------------------------------------------------------
 
 
@@ -393,7 +412,9 @@ def test_a_forecast_like_an_entry_has_its_mixture_of_solvents(book: Path) -> Non
         "entry: NS7K3QFMC\nsubstrate: {name: tert-butyl bromide, smiles: 'CC(C)(C)Br', class: tertiary, "
         "leaving_group: bromide, amount: 10 mmol}\nnucleophile: solvent\n"
         "solvent: [{name: ethanol, volume: 80 mL}, {name: water, volume: 20 mL}]\n"
-        "stages: [{temperature: 25 °C, time: 4 h}]\n"
+        "stages: [{temperature: 25 °C, time: 4 h}]\nwork_up: [evaporate]\n# without safety_review\n"
+        "outcome: {result: [substitution], products: [{label: A, name: tert-butyl ethyl ether, smiles: 'CCOC(C)(C)C', "
+        "stereo: achiral, use: desired}], measured: [{yield: 40 %, of: A, kind: assay, by: GC}]}\n"
     )
     (book / "NS7K3QFMC.yml").write_text(mixed, "utf-8")
     alike, stated = Told(), Told()
@@ -425,6 +446,58 @@ def test_the_nearest_entry_is_named_where_nobody_is_asked(book: Path) -> None:
     assert "related: [NS4T9XQ2N]  # the nearest entry" in text
     assert "temperature: TO FILL IN" in text
     assert any("run like NS4T9XQ2N" in line for line in told.lines)
+
+
+def _acidified(book: Path, old: str = "status: current", new: str = "status: current", review: str = "") -> None:
+    """Let the only entry of a book, an azide in DMF, be worked up with nitrite, acid and dichloromethane."""
+    steps = "work_up: ['20% sodium nitrite, then 2 M sulfuric acid to pH 2', extract with dichloromethane]\n"
+    text = with_example(f"{steps}{review}").replace(old, new)
+    assert new in text
+    (book / "NS4T9XQ2N.yml").write_text(text, "utf-8")
+
+
+AZIDE = Stated(substrate="CCCCCCC(C)Br", nucleophile="NaN3", stereo="racemate", title="2-Azidooctane")
+HAS_ERRORS = "# without safety_review\n"
+
+
+@pytest.mark.parametrize(
+    ("status", "review"), [("status: draft", ""), ("status: current", HAS_ERRORS)], ids=["draft", "with errors"]
+)
+def test_a_draft_or_an_entry_with_errors_is_not_offered(book: Path, status: str, review: str) -> None:
+    _acidified(book, new=status, review=review)
+    somebody = Answers()
+    text = _draft(book, AZIDE, somebody).text
+    assert [question for question in somebody.questions if question.startswith("Take")] == []
+    assert "sulfuric" not in text
+    assert "NS4T9XQ2N" not in text
+
+
+def test_conditions_of_another_entry_are_taken_only_on_a_yes(book: Path) -> None:
+    somebody = Answers("2-bromooctane", "10 mmol", "")
+    text = _draft(book, AZIDE, somebody).text
+    assert somebody.questions[2].startswith("Take solvent, stages and work-up of the nearest entry, NS4T9XQ2N")
+    assert "temperature: TO FILL IN" in text
+
+
+def test_hazards_of_a_work_up_that_is_taken_are_told_and_stand_above_its_steps(book: Path) -> None:
+    _acidified(book, new="status: draft")
+    told = Told()
+    lines = _draft(book, replace(AZIDE, origin="NS4T9XQ2N"), told).text.splitlines()
+    stops = [line for line in told.lines if line.startswith("STOP: NaN3 with ")]
+    assert any("sulfuric acid to pH 2" in line for line in stops)
+    assert any("extract with dichloromethane" in line for line in stops)
+    assert "NS4T9XQ2N is not current (draft): judge what is taken from it" in told.lines
+    for step in ("sulfuric acid to pH 2", "extract with dichloromethane"):
+        (place,) = [number for number, line in enumerate(lines) if step in line and line.startswith("  - ")]
+        above = takewhile(lambda line: line.startswith("  # "), reversed(lines[:place]))
+        assert any(line.startswith("  # STOP: with NaN3: ") for line in above)
+
+
+def test_hazards_are_told_where_nothing_can_be_forecast(book: Path) -> None:
+    told = Told()
+    _draft(book, Stated(substrate="CCCCBr", nucleophile="NaN3", solvents=["dichloromethane"]), told)
+    assert any(line.startswith("nothing is forecast") for line in told.lines)
+    assert any(line.startswith("STOP: NaN3 with dichloromethane") for line in told.lines)
 
 
 # file, substrate, nucleophile, base, leaving group, product A

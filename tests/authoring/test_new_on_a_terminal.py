@@ -65,13 +65,14 @@ def book(tmp_path: Path) -> Path:
 
 
 SCRIPT = [
-    ("Substrate (name or SMILES): ", "2-bromobutan"),
+    ("Substrate (name or SMILES): ", "NaN3"),
+    ("--nucleophile 'NaN3'`\r\nSubstrate (name or SMILES): ", "2-bromobutan"),
     ('did you mean "2-bromobutane"?\r\nSubstrate (name or SMILES): ', "2-bromobutane"),
     ("Nucleophile (name, SMILES, solvent or internal): ", "NaN3"),
     ("Base (name or SMILES): ", ""),
     ("Number: ", "racemate"),
     ("(10 mmol or 1.37 g): ", "10 mmol"),
-    ("[Y/n]: ", "y"),
+    ("[y/N]: ", "y"),
     ("Number: ", "bench-2"),
 ]
 

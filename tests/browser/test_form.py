@@ -403,6 +403,9 @@ SLIPS = [
     (SMILES, "C[N](C)(C)C", "", []),
     (SMILES, "CN(C)(C)C", "This is not a SMILES: nitrogen with 4 bonds; one with a charge is written [N+].", []),
     (SMILES, "NaN3", "This is not a SMILES: a is no sign of one; an element beyond", []),
+    (SMILES, "[N-]=[N+]=[N-]", "This is an ion without its counter-ion, charge \u22121: write both, such as", []),
+    (SMILES, "[Na+].[N-]=[N+]=[N-]", "", []),
+    (Step("stages", "Add", "-"), "sodium azid", "“sodium azid” is not the name of a substance above: name them", []),
     (DATE, "14.3.2026", "Write 2026-03-14.", ["2026-03-14"]),
     (DATE, "2026-02-30", "2026-02-30 is no day of the calendar.", []),
     (DATE, "March", "Write year, month and day, such as 2026-03-14.", []),
@@ -456,6 +459,34 @@ def test_a_fix_is_written_by_its_button(fresh: "sync_api.Page") -> None:
     fresh.get_by_role("button", name="Write 60 °C").click()
     assert control.input_value() == "60 °C"
     assert control.get_attribute("aria-invalid") is None
+
+
+@pytest.mark.parametrize("hold_ms", [0, 1200], ids=["clicked", "held"])
+def test_what_is_said_of_a_slip_takes_no_click_away(hold_ms: int, fresh: "sync_api.Page") -> None:
+    er, box = _control(fresh, Step("substrate", "er", "-")), _control(fresh, Step("substrate", "secondary"))
+    er.fill("97/3")
+    box.scroll_into_view_if_needed()
+    at = box.bounding_box()
+    assert at is not None
+    fresh.mouse.move(at["x"] + at["width"] / 2, at["y"] + at["height"] / 2)
+    fresh.mouse.down()
+    fresh.wait_for_timeout(hold_ms)
+    fresh.mouse.up()
+    assert box.is_checked()
+    fresh.get_by_text("Write 97:3.").first.wait_for()
+    assert er.get_attribute("aria-invalid") == "true"
+
+
+def test_what_a_stage_adds_is_named_as_it_is_listed(fresh: "sync_api.Page") -> None:
+    _control(fresh, Step("substrate", "Name", "-")).fill("2-bromobutane")
+    _control(fresh, Step("attack", "Name", "-")).fill("sodium azide")
+    adds = _control(fresh, Step("stages", "Add", "-"))
+    adds.fill("2-bromobutane\nsodium azid")
+    adds.blur()
+    said = "“sodium azid” is not the name of a substance above: write 2-bromobutane, sodium azide."
+    assert said in str(fresh.locator("#hb-form-mend").text_content())
+    adds.fill("2-bromobutane\nsodium azide")
+    assert adds.get_attribute("aria-invalid") is None
 
 
 def test_a_slip_is_announced_once_typing_pauses(fresh: "sync_api.Page") -> None:

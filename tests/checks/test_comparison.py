@@ -11,11 +11,13 @@ from hypothesis import strategies as st
 from builder.checks import comparison
 from builder.checks.comparison import (
     DECISIVE,
+    Disagreement,
     are_near_same,
     differences,
     disagreements,
     is_near,
     is_one_experiment,
+    seen_by_quantity,
     telling_difference,
 )
 from builder.checks.group import outcomes_contradict
@@ -31,6 +33,10 @@ H = 3600.0
 @cache
 def _standing(example: str = "") -> Standing:
     return standing_of(case_of(with_example(example)))
+
+
+def _disagreements(one: Standing, other: Standing) -> tuple[Disagreement, ...]:
+    return disagreements(seen_by_quantity(one), seen_by_quantity(other))
 
 
 def _changed(**fields: Any) -> Standing:
@@ -171,21 +177,21 @@ LOST_ON_THE_COLUMN = (_yield(60), _yield(82, ASSAY))
 )
 def test_contradiction(here: Seen, there: Seen, contradict: bool) -> None:
     one, other = _changed(seen=(here,)), _changed(seen=(there,))
-    assert bool(disagreements(one, other)) is contradict
-    assert bool(disagreements(other, one)) is contradict
+    assert bool(_disagreements(one, other)) is contradict
+    assert bool(_disagreements(other, one)) is contradict
 
 
 def test_one_kind_is_compared_with_the_same_kind_where_both_have_it() -> None:
-    assert disagreements(_changed(seen=LOST_ON_THE_COLUMN), _changed(seen=(_yield(85),)))
-    assert not disagreements(_changed(seen=LOST_ON_THE_COLUMN), _changed(seen=(_yield(85, ASSAY),)))
+    assert _disagreements(_changed(seen=LOST_ON_THE_COLUMN), _changed(seen=(_yield(85),)))
+    assert not _disagreements(_changed(seen=LOST_ON_THE_COLUMN), _changed(seen=(_yield(85, ASSAY),)))
 
 
 def test_two_numbers_for_one_quantity_are_a_range() -> None:
-    assert not disagreements(_changed(seen=(_ee(98), _ee(80))), _changed(seen=(_ee(90),)))
+    assert not _disagreements(_changed(seen=(_ee(98), _ee(80))), _changed(seen=(_ee(90),)))
 
 
 def test_the_furthest_apart_comes_first() -> None:
-    found = disagreements(_changed(seen=(_yield(80), _ee(98))), _changed(seen=(_yield(60), _ee(80))))
+    found = _disagreements(_changed(seen=(_yield(80), _ee(98))), _changed(seen=(_yield(60), _ee(80))))
     assert [each.here.label for each in found] == ["ee of A", "yield of A"]  # 18 points of 3, 20 of 10
 
 
@@ -212,7 +218,7 @@ def test_a_joint_yield_is_shared_out_by_the_ratio() -> None:
 
 def test_sums_over_a_formula_are_compared_where_products_are_not() -> None:
     one_alkene = BUTENE.replace("isolated}, ", "isolated}, {yield: 4 %, of: B, kind: assay}")
-    found = disagreements(_standing(OCTENES), _standing(one_alkene))
+    found = _disagreements(_standing(OCTENES), _standing(one_alkene))
     assert [each.here.label for each in found] == ["yield of all C4H8"]
 
 
@@ -227,7 +233,7 @@ outcome:
 def test_a_failure_contradicts_a_success() -> None:
     one, other = _standing(), _standing(FAILED)
     assert are_near_same(one, other)
-    assert [each.here.label for each in disagreements(one, other)] == ["conversion", "yield of 2-azidobutane"]
+    assert [each.here.label for each in _disagreements(one, other)] == ["conversion", "yield of 2-azidobutane"]
 
 
 # --- one experiment, or two -----------------------------------------------------------------------------------------
@@ -294,7 +300,7 @@ def test_what_holds_of_one_against_another_holds_the_other_way_round(one: Standi
     assert are_near_same(one, other) == are_near_same(other, one)
     for variable in (*DECISIVE, Variable.BASE, Variable.NUCLEOPHILE, Variable.SCALE):
         assert is_near(variable, one, other) == is_near(variable, other, one), variable
-    there, back = disagreements(one, other), disagreements(other, one)
+    there, back = _disagreements(one, other), _disagreements(other, one)
     assert [(each.here, each.there) for each in there] == [(each.there, each.here) for each in back]
 
 

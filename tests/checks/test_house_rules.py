@@ -59,6 +59,22 @@ def test_a_rule_in_its_own_words_is_named_so() -> None:
     assert (found.level, found.mend) == (Level.ERROR, "the house says: take DMSO")
 
 
+NO_DCM = "  - banned_solvents: [dichloromethane]\n    because: agreed\n"
+WORK_UPS = {
+    "extracted with DCM": True,
+    "diluted with water, then DCM": True,
+    "never DCM": False,
+    "avoid any DCM": False,
+    "extracted with ethyl acetate rather than DCM": False,
+    "extracted without any DCM": False,
+}
+
+
+@pytest.mark.parametrize(("line", "is_used"), WORK_UPS.items())
+def test_a_denied_solvent_of_the_work_up_is_not_used(line: str, is_used: bool) -> None:
+    assert bool(_found(NO_DCM, f"work_up: ['{line}']")) is is_used
+
+
 ACCEPTED = DMF + "\naccepted: [{finding: house-solvent-banned, because: 'DMSO oxidises it', by: bench-1}]"
 
 

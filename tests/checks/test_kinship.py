@@ -8,7 +8,7 @@ from hypothesis import strategies as st
 
 from builder.checks import kinship
 from builder.checks.comparison import are_near_same
-from builder.checks.kinship import Relation, families, kin_of, near_same_kin
+from builder.checks.kinship import Kin, Relation, families, near_same_kin
 from builder.checks.standing import Standing, Variable, standing_of
 from builder.records.specimen import with_example
 from tests.publish.handmade import case_of
@@ -61,14 +61,20 @@ def _standing(example: str = "") -> Standing:
     return standing_of(case_of(with_example(example)))
 
 
+def _kin(one: Standing, other: Standing) -> Kin:
+    """Return what the second is to the first, both of one transformation."""
+    near = near_same_kin([("one", one), ("other", other)])
+    return next((kin for _, _, kin in near), Kin(Relation.VARIANT, one, other))
+
+
 @pytest.mark.parametrize(
     ("example", "relation", "varied"), [pytest.param(*row, id=name) for name, row in RELATIONS.items()]
 )
 def test_what_an_entry_is_to_another(example: str, relation: Relation, varied: tuple[Variable, ...]) -> None:
     one, other = _standing(), _standing(example)
-    for kin in (kin_of(one, other), kin_of(other, one)):
+    for kin in (_kin(one, other), _kin(other, one)):
         assert (kin.relation, kin.varied) == (relation, varied)
-    assert kin_of(one, other).mirrored == kin_of(other, one)
+    assert _kin(one, other).mirrored == _kin(other, one)
 
 
 BOOK = {name: _standing(example) for name, (example, _, _) in RELATIONS.items()}

@@ -40,6 +40,7 @@ def test_three_significant_digits(value: float, text: str) -> None:
         (equivalents_text, 1500.0, "1500"),
         (amount_text, 0.9996, "1000 mmol"),
         (volume_text, 20.0, "20.0 L"),
+        (volume_text, 0.0, "0 mL"),
     ],
 )
 def test_derived_quantities_choose_a_readable_unit(text_of, value: float, text: str) -> None:

@@ -1,6 +1,6 @@
 """What cautions look at in a record: its substances, and the lines of text that may name others."""
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 
 from builder.checks.case import Case, compounds_of
 from builder.checks.conditions import CLOSED_VESSELS
@@ -16,14 +16,16 @@ from builder.rule import Path
 __all__ = ["hazards_of", "presents_of"]
 
 
-def hazards_of(case: Case) -> tuple[Hazard, ...]:
+def hazards_of(case: Case, also: Iterable[Present] = ()) -> tuple[Hazard, ...]:
     """Return the hazards of a record, in the order of the table of cautions.
 
     What is only good to know of a by-product is left out where the by-product is what the reaction is run for.
+    also: what is present besides, such as products that are forecast; what the record has already counts once.
     """
     stages = case.record.stages
     forms_alkene = Result.ELIMINATION in case.record.outcome.result
     presents = presents_of(case)
+    presents = (*presents, *_besides(presents, also))
     bases = [present for present in presents if present.path[0] == "base"]
     setting = Setting(
         hottest_c=max(stage.temperature.highest_c for stage in stages),
@@ -34,6 +36,12 @@ def hazards_of(case: Case) -> tuple[Hazard, ...]:
     wanted = _wanted(case)
     found = find_hazards(presents, setting)
     return tuple(hazard for hazard in found if not _gives_only_what_is_wanted(hazard, presents, wanted))
+
+
+def _besides(own: tuple[Present, ...], also: Iterable[Present]) -> Iterator[Present]:
+    """Yield what is present besides, without what the record has already."""
+    known = {present.structure.smiles for present in own if present.structure is not None}
+    yield from (each for each in also if each.structure is None or each.structure.smiles not in known)
 
 
 def _wanted(case: Case) -> frozenset[Structure]:
