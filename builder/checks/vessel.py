@@ -38,6 +38,7 @@ def _sealed(more: str) -> str:
 _CARBONATE_AND_ACID = (
     "reagents: [{name: sodium hydrogencarbonate, smiles: '[Na+].OC([O-])=O', use: buffer, amount: 20 mmol},"
     " {name: acetic acid, smiles: 'CC(=O)O', use: acid, amount: 10 mmol}]\n"
+    "safety_review: {by: safety-1, date: 2026-03-12, scope: azide with acetic acid}\n"
 )
 
 

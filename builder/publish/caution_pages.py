@@ -21,11 +21,16 @@ _MEETING = {
     CautionKind.PAIR: "anywhere in the sequence",
     CautionKind.SOLUTION: "in one flask",
     CautionKind.QUENCH: "before it is destroyed",
+    CautionKind.NEUTRALISED: "while the mixture is basic",
+    CautionKind.ISOLATION: "at the isolation",
     CautionKind.WORK_UP: "at the quench or work-up",
     CautionKind.SCRUBBER: "as gas into a scrubber",
 }
 _GROUPS = {
-    Severity.STOP: ("Not without a safety review", "An error until the scope of a safety review names it."),
+    Severity.STOP: (
+        "Not without a safety review",
+        "An error until the scope of a safety review names it, both partners of a pair.",
+    ),
     Severity.WARN: ("Serious", "Shown as a caution on every entry that it touches."),
     Severity.NOTE: ("Good to know", "Shown as a remark."),
 }

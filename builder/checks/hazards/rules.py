@@ -25,6 +25,7 @@ __all__ = ["HAZARD_CHECKS"]
         "reagents: [{name: ammonium chloride, smiles: '[NH4+].[Cl-]', use: buffer, amount: 20 mmol}]",
     ),
     silent_on=(
+        "safety_review: {by: safety-1, date: 2026-03-12, scope: 'azide at 10 mmol, extracted with dichloromethane'}\n"
         "work_up: ['extract with 3 × 20 mL CH2Cl2']",
         "# without safety_review\nwork_up: ['quench with water, no acid', 'extract with ethyl acetate']",
     ),
