@@ -444,6 +444,8 @@ def export(form: str, only: str | None, status: tuple[str, ...], output: Path | 
       handbook export --output book.csv
       handbook export --format jsonl --only cleared --status current --output cleared.jsonl
     """
+    if output is not None:
+        _refuse_loss("--output", output, {}, book)
     files, _ = record_files(book.resolve())
     found = list(watched(exported_records(book.resolve(), files), len(files)))
     unread = [each for each in found if isinstance(each, str)]

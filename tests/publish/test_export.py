@@ -84,6 +84,15 @@ def test_whoever_exports_is_told_what_is_left_out(book: Path, capsysbinary: pyte
     assert not stop.value.code
 
 
+def test_a_table_is_not_written_among_the_records(book: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (record, *_) = sorted(book.rglob("NS*.yml"))
+    before = record.read_bytes()
+    with pytest.raises(SystemExit) as ended:
+        cli.main(["export", "--book", str(book), "--output", str(record)])
+    assert (ended.value.code, record.read_bytes()) == (2, before)
+    assert "lies inside the book" in capsys.readouterr().err
+
+
 def test_a_superseded_record_may_name_what_is_cleared_and_not_chosen(book: Path) -> None:
     _add_superseded(book)
     (record,) = within(_exported(book), "cleared", [Status.SUPERSEDED]).records
