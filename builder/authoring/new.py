@@ -25,7 +25,7 @@ from builder.authoring.skeleton import skeleton
 from builder.authoring.whole_file import written_new
 from builder.book import Shelf, is_aside, read_shelf
 from builder.checks.case import Case
-from builder.checks.forecast_cautions import plain_caution, planned_hazards
+from builder.checks.forecast_cautions import MOST_CAUTIONS, plain_caution, planned_hazards
 from builder.checks.hazards.cautions import Severity
 from builder.checks.hazards.meetings import Hazard
 from builder.checks.nearest import Likeness, attacker_of, nearest
@@ -49,9 +49,6 @@ NEAREST = "nearest"
 """In place of an identifier: whichever entry comes nearest."""
 LONGEST_TITLE = 160
 """Characters; the model of the record allows no more."""
-MOST_CAUTIONS = 4
-"""Cautions told besides those graded stop, which are all told."""
-_GRADES = {"stop": "STOP", "warn": "CAUTION", "note": "NOTE"}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -469,7 +466,7 @@ def _forecast(plan: Plan, guide: Case | None, dialogue: Dialogue) -> tuple[Forec
     grave = [hazard for hazard in hazards if hazard.caution.severity is Severity.STOP]
     milder = [hazard for hazard in hazards if hazard.caution.severity is not Severity.STOP][:MOST_CAUTIONS]
     for caution in map(plain_caution, (*grave, *milder)):
-        grade, text = _GRADES[caution["severity"]], f"{caution['text']}; {caution['precaution']}"
+        grade, text = Severity(caution["severity"]).word, f"{caution['text']}; {caution['precaution']}"
         dialogue.tell(f"{grade}: {text} [{caution['source']}; {caution['decides']}]")
     return forecast, hazards
 
@@ -481,6 +478,6 @@ def _work_up_warnings(hazards: Sequence[Hazard]) -> dict[int, list[str]]:
         match hazard.at.path:
             case ("work_up", int(place)):
                 met = " and ".join(dict.fromkeys(other.shown for other in hazard.others))
-                grade = _GRADES[hazard.caution.severity.value]
+                grade = hazard.caution.severity.word
                 found.setdefault(place, []).append(f"{grade}: with {met}: {hazard.caution.hazard}")
     return found

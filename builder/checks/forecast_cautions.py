@@ -17,7 +17,10 @@ from builder.mechanism.question import Ingredient, Question
 from builder.mechanism.reagents import Dose
 from builder.sources import source_text
 
-__all__ = ["forecast_cautions", "plain_caution", "planned_hazards"]
+__all__ = ["MOST_CAUTIONS", "forecast_cautions", "plain_caution", "planned_hazards"]
+
+MOST_CAUTIONS = 4
+"""Cautions told besides those graded stop, which are all told."""
 
 
 def forecast_cautions(question: Question, forecast: Forecast) -> tuple[dict[str, str], ...]:

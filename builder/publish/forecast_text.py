@@ -4,6 +4,8 @@ import math
 from collections.abc import Iterable, Iterator, Sequence
 from textwrap import shorten, wrap
 
+from builder.checks.forecast_cautions import MOST_CAUTIONS
+from builder.checks.hazards.cautions import Severity
 from builder.mechanism.asking import ABSOLUTE_ZERO_C, WITHOUT_EFFECT, Read, Reading
 from builder.mechanism.forecast import Contribution, Forecast, Forecasted, Reason
 from builder.mechanism.improve import Improvement
@@ -32,9 +34,6 @@ WIDTH = 100
 CALIBRATED_C = (0.0, 150.0)
 """Temperatures the terms were fitted between; the header of rate_terms.tsv says so."""
 MOST_PRODUCTS = 6
-MOST_CAUTIONS = 4
-"""Cautions shown besides those graded stop, which are all shown."""
-_GRADES = {"stop": "STOP", "warn": "CAUTION", "note": "NOTE"}
 
 
 def render_forecast(
@@ -229,8 +228,8 @@ def _cautions(cautions: Sequence[dict[str, str]]) -> list[str]:
     end = "It is a screen, not a clearance: local rules and qualified people decide."
     if not cautions:
         return wrap(f"Cautions: none in the table for what is drawn. {end}", WIDTH)
-    grave = [caution for caution in cautions if caution["severity"] == "stop"]
-    milder = {caution["id"]: caution for caution in reversed(cautions) if caution["severity"] != "stop"}
+    grave = [caution for caution in cautions if caution["severity"] == Severity.STOP]
+    milder = {caution["id"]: caution for caution in reversed(cautions) if caution["severity"] != Severity.STOP}
     shown = [*grave, *[caution for caution in cautions if caution in milder.values()][:MOST_CAUTIONS]]
     lines = [line for caution in shown for line in _caution_lines(caution)]
     rest = len(cautions) - len(shown)
@@ -239,7 +238,7 @@ def _cautions(cautions: Sequence[dict[str, str]]) -> list[str]:
 
 def _caution_lines(caution: dict[str, str]) -> Iterable[str]:
     source = shorten(caution["source"], 44, placeholder=" …")
-    grade, precaution = _GRADES[caution["severity"]], as_sentence(caution["precaution"])
+    grade, precaution = Severity(caution["severity"]).word, as_sentence(caution["precaution"])
     return _hanging(f"{grade}: {caution['text']}. {precaution} [{source}]")
 
 

@@ -15,8 +15,8 @@ from builder.publish.portrait import Portrait
 from builder.publish.search_index import as_script
 from builder.publish.templating import render
 from builder.records.fields import MARKUP
-from builder.records.identifiers import CROCKFORD
-from builder.records.model import KINDS_OF_MEASUREMENT
+from builder.records.identifiers import CROCKFORD, DRAWN, PREFIX
+from builder.records.model import CHARGED_KEYS, KINDS_OF_MEASUREMENT
 from builder.records.quantities import writing_aids
 from builder.records.schema import RECORD_SCHEMA, modeline, record_schema
 from builder.records.specimen import specimen_text
@@ -120,7 +120,6 @@ _LONG = frozenset({"procedure", "note", "take_away", "cause", "scope", "scale_li
 """Texts that want more than a line."""
 _FAILED = tuple(str(result) for result in Result if not result.gives_products)
 _OPENS_AFTER = {"sought": _FAILED, "failure": _FAILED}
-_CHARGED = ("substrate", "nucleophile", "base", "reagents", "solvent")
 """Keys under which the substances stand that a stage adds by name."""
 _SHAPED = ("pattern", "format", "maxLength", "x-measures", "x-units", "x-bounds")
 
@@ -162,7 +161,7 @@ def form_data(schema: Mapping[str, Any], *, taken: Sequence[str], people: Sequen
         "sections": [asdict(section) for section in SECTIONS],
         "parts": {part["title"]: _part(part, schema) for part in parts},
         "aids": {**writing_aids(), "markup": MARKUP.pattern},
-        "identifier": {"prefix": "NS", "letters": CROCKFORD, "drawn": 6, "taken": "".join(sorted(taken))},
+        "identifier": {"prefix": PREFIX, "letters": CROCKFORD, "drawn": DRAWN, "taken": "".join(sorted(taken))},
         "people": list(people),
         "modeline": modeline(RECORD_SCHEMA),
     }
@@ -231,7 +230,7 @@ def _field(
     if key == "of" and "of" in field:
         field["words"] = ["substrate"]
     if part == "Stage" and key == "add":
-        field["names_of"] = list(_CHARGED)
+        field["names_of"] = list(CHARGED_KEYS)
     if key == "title":
         field["wide"] = True
     if key in _LONG:

@@ -20,11 +20,10 @@ from builder.checks.hazards.solvent_limits import load_residual_limits, load_res
 from builder.mechanism.gas import gases_of_record
 from builder.mechanism.thermal import SCREEN_ONLY, THERMAL_SOURCE, thermal_screen
 from builder.publish.summary import Fact
+from builder.records.model import CHARGED_KEYS
 from builder.sources import source_text
 
 __all__ = ["LabelView", "SafetyView", "view_safety"]
-
-_CHARGED = frozenset({"substrate", "nucleophile", "base", "reagents", "solvent"})
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,7 +55,7 @@ class SafetyView:
 def view_safety(case: Case) -> SafetyView:
     """Return what the page of a case shows beside its cautions."""
     presents = presents_of(case)
-    charged = list({p.name: p for p in presents if p.path[0] in _CHARGED}.values())
+    charged = list({p.name: p for p in presents if p.path[0] in CHARGED_KEYS}.values())
     known = [(p, labelled(p.structure) if p.structure is not None else None) for p in charged]
     return SafetyView(
         labels=tuple(_label(p.name, row) for p, row in known if row is not None),

@@ -12,7 +12,9 @@ from stdnum.iso7064 import mod_11_2, mod_37_36
 
 __all__ = [
     "CROCKFORD",
+    "DRAWN",
     "IDENTIFIER_PATTERN",
+    "PREFIX",
     "has_orcid_check_character",
     "is_identifier",
     "mend_identifier",
@@ -20,7 +22,10 @@ __all__ = [
 ]
 
 CROCKFORD = "0123456789ABCDEFGHJKMNPQRSTVWXYZ"
-IDENTIFIER_PATTERN = f"^NS[{CROCKFORD}]{{7}}$"
+PREFIX = "NS"
+DRAWN = 6
+"""Characters drawn at random, behind which the check character stands."""
+IDENTIFIER_PATTERN = f"^{PREFIX}[{CROCKFORD}]{{{DRAWN + 1}}}$"
 _SHAPE = re.compile(IDENTIFIER_PATTERN)
 _MISREAD = str.maketrans("ILOU", "110V")  # Crockford's decoding of I, L, O; U has none, V is its look-alike
 
@@ -32,7 +37,7 @@ def mint_identifier(choose: Callable[[str], str] = secrets.choice) -> str:
     Draws again when the check character would be I, L, O or U, which Crockford's alphabet leaves out.
     """
     while True:
-        body = "NS" + "".join(choose(CROCKFORD) for _ in range(6))
+        body = PREFIX + "".join(choose(CROCKFORD) for _ in range(DRAWN))
         check = mod_37_36.calc_check_digit(body)
         if check in CROCKFORD:
             return body + check

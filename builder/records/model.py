@@ -67,6 +67,7 @@ from builder.records.vocabulary import (
 from builder.rule import Path
 
 __all__ = [
+    "CHARGED_KEYS",
     "KINDS_OF_MEASUREMENT",
     "QUANTITIES_OF_SUBSTRATE",
     "STRUCTURES",
@@ -166,6 +167,8 @@ class Acceptance(Part):
 
 STRUCTURES = ("smiles", "inchi", "from_rxn")
 QUANTITIES_OF_SUBSTRATE = ("mass", "amount", "volume")
+CHARGED_KEYS = ("substrate", "nucleophile", "base", "reagents", "solvent")
+"""The keys under which a record lists what was charged."""
 
 
 class Compound(Part):

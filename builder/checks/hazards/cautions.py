@@ -30,6 +30,11 @@ class Severity(StrEnum):
         return {"stop": 2, "warn": 1, "note": 0}[self.value]
 
     @property
+    def word(self) -> str:
+        """Return it as it stands before a caution on a terminal and in a record."""
+        return {"stop": "STOP", "warn": "CAUTION", "note": "NOTE"}[self.value]
+
+    @property
     def level(self) -> Level:
         """Return the level at which it is reported once a `stop` has its safety review."""
         return Level.REMARK if self is Severity.NOTE else Level.CAUTION
